@@ -1,0 +1,2 @@
+//! The `etchwise` program.
+fn main() {}

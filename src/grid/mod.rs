@@ -1,1 +1,16 @@
-//! grid.
+//! From an outline to a masked square grid: which nodes are fluid, and how far their arms reach.
+
+mod coverage;
+mod crossings;
+mod lattice;
+mod mask;
+mod resolution;
+
+pub(crate) use coverage::coverage;
+pub use crossings::{Crossing, LineCrossings};
+pub use lattice::{Lattice, WallEdge};
+pub use mask::{
+    ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Block, Colour, Mask, NO_EDGE, NO_NODE, Run, Segment,
+    WallNode,
+};
+pub use resolution::{BYTES_PER_NODE, LEAST_CELLS_ACROSS, ResolutionError, spacing};

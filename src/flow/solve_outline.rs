@@ -1,0 +1,414 @@
+//! The main job: from an outline to its [`SectionFlow`].
+
+use std::time::Instant;
+
+use crate::geometry::{Corner, Outline, largest_inscribed_circle};
+use crate::grid::{Lattice, LineCrossings, Mask, ResolutionError, spacing};
+use crate::measured::Estimate;
+use crate::solve::{Field, Hierarchy, SolveControl, Solved};
+use crate::warning::{Code, Warning};
+
+use super::extrapolation::extrapolate;
+use super::field::DenseField;
+use super::grid_integrals::GridIntegrals;
+use super::identities::identities;
+use super::peak::{GridPeak, peak};
+use super::section_flow::{
+    GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
+};
+use super::wall_shear::{corners_of, wall_shear};
+
+/// Cells across the smallest lumen that the accuracy search starts from.
+const FIRST_CELLS_ACROSS: f64 = 64.0;
+/// Cells across beyond which the accuracy search does not go by itself.
+const LAST_CELLS_ACROSS: f64 = 1024.0;
+/// Fluid nodes beyond which the accuracy search does not go by itself.
+const LAST_NODES: f64 = 2e7;
+/// Residual as a share of `1 / cells_across^2`: far enough below the discretisation error that
+/// extrapolation over the grids is not disturbed.
+const RESIDUAL_SHARE: f64 = 0.002;
+/// Relative error of `K` that the default grid aims at.
+pub const DEFAULT_ACCURACY: f64 = 1e-4;
+
+/// What to solve for.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct SolveOptions {
+    /// Cells across the largest circle that fits into the smallest lumen; `None` refines until the
+    /// estimated error of `K` is within `accuracy`.
+    pub cells_across: Option<f64>,
+    /// Relative error of `K` aimed at when `cells_across` is `None`.
+    pub accuracy: f64,
+    /// Where the lower left corner of the section falls between lattice lines, each in [0, 1).
+    pub grid_offset: [f64; 2],
+    /// Memory that one solve may use, bytes.
+    pub memory_limit: f64,
+}
+
+impl Default for SolveOptions {
+    fn default() -> Self {
+        Self {
+            cells_across: None,
+            accuracy: DEFAULT_ACCURACY,
+            grid_offset: [0.0; 2],
+            memory_limit: 8e9,
+        }
+    }
+}
+
+/// Why a section was not solved.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[non_exhaustive]
+pub enum FlowError {
+    /// The grid was refused.
+    #[error(transparent)]
+    Resolution(#[from] ResolutionError),
+    /// No lattice node falls into the section.
+    #[error("no node of the grid (spacing {spacing:.3e} m) falls into the section")]
+    NoFluidNode {
+        /// Node distance, m.
+        spacing: f64,
+    },
+    /// The outline has no area.
+    #[error("the section has no area ({area:.3e} m^2)")]
+    NoArea {
+        /// Area, m^2.
+        area: f64,
+    },
+}
+
+impl FlowError {
+    /// What the user can do.
+    pub fn hint(&self) -> String {
+        match self {
+            Self::Resolution(error) => error.hint(),
+            Self::NoFluidNode { .. } => "use a larger --cells-across".to_owned(),
+            Self::NoArea { .. } => "run `etchwise check` on the outline".to_owned(),
+        }
+    }
+}
+
+/// A solved section: the answers, and the field they came from.
+#[derive(Debug)]
+pub struct SolvedSection {
+    /// The answers.
+    pub flow: SectionFlow,
+    lattice: Lattice,
+    mask: Mask,
+    phi: Field,
+}
+
+impl SolvedSection {
+    /// The field on a plain lattice of at most about `most_nodes` nodes, thinned if need be.
+    pub fn dense_field(&self, most_nodes: usize) -> DenseField {
+        DenseField::new(&self.lattice, &self.mask, &self.phi, most_nodes)
+    }
+}
+
+/// Solves a section.
+///
+/// - `outline`: valid (see `Outline::problems`), metres
+///
+/// # Errors
+/// [`FlowError`] when the grid is refused or the outline holds no fluid.
+///
+/// # Examples
+/// ```
+/// use etchwise::{flow::{SolveOptions, solve_outline}, geometry::Outline};
+/// let a = 100e-6;
+/// let square = Outline::single(vec![[0.0, 0.0], [a, 0.0], [a, a], [0.0, a]]);
+/// let flow = solve_outline(&square, &SolveOptions::default())?.flow;
+/// assert!((flow.fanning_dh - 14.227077).abs() < 2e-4);
+/// # Ok::<(), etchwise::flow::FlowError>(())
+/// ```
+pub fn solve_outline(
+    outline: &Outline,
+    options: &SolveOptions,
+) -> Result<SolvedSection, FlowError> {
+    let outline = outline.clone().oriented();
+    let area = outline.area();
+    if area.is_nan() || area <= 0.0 {
+        return Err(FlowError::NoArea { area });
+    }
+    let diameter = outline
+        .lumens
+        .iter()
+        .map(|lumen| 2.0 * largest_inscribed_circle(lumen).radius)
+        .fold(f64::INFINITY, f64::min);
+    let attempt = |cells: f64| solve_at(&outline, diameter, cells, options);
+    let Some(cells) = options.cells_across else {
+        return refine(&outline, diameter, options, attempt);
+    };
+    attempt(cells)
+}
+
+/// Doubles the cells across until the estimated error of `K` is within the accuracy.
+fn refine(
+    outline: &Outline,
+    diameter: f64,
+    options: &SolveOptions,
+    attempt: impl Fn(f64) -> Result<SolvedSection, FlowError>,
+) -> Result<SolvedSection, FlowError> {
+    let mut cells = FIRST_CELLS_ACROSS;
+    let mut solved = attempt(cells)?;
+    while solved.flow.conductance.relative() > options.accuracy {
+        let next = 2.0 * cells;
+        let nodes = outline.area() * (next / diameter).powi(2);
+        if next > LAST_CELLS_ACROSS
+            || nodes > LAST_NODES
+            || spacing(outline, diameter, next, options.memory_limit).is_err()
+        {
+            break;
+        }
+        cells = next;
+        solved = attempt(cells)?;
+    }
+    let reached = solved.flow.conductance.relative();
+    if reached > options.accuracy {
+        solved.flow.warnings.push(Warning {
+            code: Code::AccuracyNotReached,
+            message: format!(
+                "the estimated numerical error of the conductance is {:.2} %, above the {:.2} % aimed at",
+                100.0 * reached,
+                100.0 * options.accuracy
+            ),
+            advice: "ask for a finer grid with --cells-across".to_owned(),
+            numbers: vec![("reached", reached), ("asked", options.accuracy)],
+        });
+    }
+    Ok(solved)
+}
+
+/// What one grid of the sequence said.
+struct GridAnswer {
+    stride: u32,
+    nodes: usize,
+    wall_nodes: usize,
+    solved: Solved,
+    integrals: GridIntegrals,
+    peak: GridPeak,
+}
+
+fn solve_at(
+    outline: &Outline,
+    diameter: f64,
+    cells_across: f64,
+    options: &SolveOptions,
+) -> Result<SolvedSection, FlowError> {
+    let start = Instant::now();
+    let spacing = spacing(outline, diameter, cells_across, options.memory_limit)?;
+    let lattice = Lattice::new(outline, spacing, options.grid_offset);
+    let rows = LineCrossings::rows(&lattice);
+    let columns = LineCrossings::columns(&lattice);
+    let mut hierarchy =
+        Hierarchy::new(&lattice, &rows, &columns).ok_or(FlowError::NoFluidNode { spacing })?;
+    let control = SolveControl {
+        residual: RESIDUAL_SHARE / (cells_across * cells_across),
+        most_cycles: 100,
+    };
+    let mut answers = Vec::new();
+    hierarchy.solve(control, |grid, solved| {
+        answers.push(GridAnswer {
+            stride: grid.mask.stride,
+            nodes: grid.mask.nodes(),
+            wall_nodes: grid.mask.wall.iter().map(Vec::len).sum(),
+            solved,
+            integrals: GridIntegrals::new(&grid.mask, &grid.phi),
+            peak: peak(&grid.mask, &grid.phi),
+        });
+    });
+    answers.reverse();
+    let (mask, phi) = hierarchy.into_finest();
+    let seconds = start.elapsed().as_secs_f64();
+    let grid = GridReport {
+        spacing,
+        fluid_nodes: mask.nodes(),
+        cells_across,
+        inscribed_diameter: diameter,
+    };
+    let flow = assemble(outline, &lattice, (&mask, &phi), &answers, (grid, seconds));
+    Ok(SolvedSection {
+        flow,
+        lattice,
+        mask,
+        phi,
+    })
+}
+
+fn assemble(
+    outline: &Outline,
+    lattice: &Lattice,
+    (mask, phi): (&Mask, &Field),
+    answers: &[GridAnswer],
+    (grid, seconds): (GridReport, f64),
+) -> SectionFlow {
+    let geometry = geometry(outline);
+    let corners = corners_of(outline, grid.spacing);
+    let exponent = leading_exponent(&corners);
+    // Grids with hardly any nodes say nothing about the limit.
+    let useful = answers.iter().take_while(|a| a.nodes >= 9).count().max(1);
+    let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
+        let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
+        extrapolate(&values, exponent)
+    };
+    let h = grid.spacing;
+    let conductance = over_grids(&|a| a.integrals.conductance).scaled(h.powi(4));
+    let square = over_grids(&|a| a.integrals.square).scaled(h.powi(6));
+    let cube = over_grids(&|a| a.integrals.cube).scaled(h.powi(8));
+    let top = over_grids(&|a| a.peak.value).scaled(h * h);
+    let shear = wall_shear(outline, lattice, mask, phi, corners.clone());
+    let finest = answers.first().map(|a| a.integrals).unwrap_or_default();
+    let (area, diameter) = (geometry.area, geometry.hydraulic_diameter);
+    let fanning_dh = diameter * diameter * area / (2.0 * conductance.value);
+    let identities = identities(
+        outline,
+        &corners,
+        &shear.samples,
+        conductance.value,
+        (finest, h.powi(4)),
+        grid.cells_across,
+    );
+    let mut flow = SectionFlow {
+        conductance,
+        conductance_finest_grid: finest.conductance * h.powi(4),
+        fanning_dh,
+        darcy_dh: 4.0 * fanning_dh,
+        fanning_sqrt_area: 2.0 * area.powf(2.5) / (geometry.wetted_perimeter * conductance.value),
+        peak: Peak {
+            phi: top.value,
+            to_mean: ratio(top, conductance, 1, area),
+            at: answers
+                .first()
+                .map_or([0.0; 2], |a| lattice.position(a.peak.at)),
+        },
+        momentum_factor: ratio(square, conductance, 2, area),
+        kinetic_energy_factor: ratio(cube, conductance, 3, area * area),
+        wall_shear: shear,
+        solver: solver_report(answers, h, seconds),
+        grid,
+        geometry,
+        identities,
+        warnings: Vec::new(),
+    };
+    flow.warnings = warnings(&flow, mask.pinned.len());
+    flow
+}
+
+/// `moment * factor / K^power` with its error.
+fn ratio(moment: Estimate, conductance: Estimate, power: i32, factor: f64) -> Estimate {
+    let value = moment.value * factor / conductance.value.powi(power);
+    // Both errors come from the same grids; their sum is the careful choice.
+    let relative = moment.relative() + f64::from(power) * conductance.relative();
+    Estimate {
+        value,
+        error: value * relative,
+    }
+}
+
+fn geometry(outline: &Outline) -> SectionGeometry {
+    let (low, high) = outline.bounds().unwrap_or(([0.0; 2], [0.0; 2]));
+    let (area, wetted_perimeter) = (outline.area(), outline.wetted_perimeter());
+    SectionGeometry {
+        area,
+        wetted_perimeter,
+        hydraulic_diameter: 4.0 * area / wetted_perimeter,
+        width: high[0] - low[0],
+        height: high[1] - low[1],
+        lumens: outline.lumens.len(),
+        islands: outline.lumens.iter().map(|l| l.islands.len()).sum(),
+        vertices: outline.loops().map(|l| l.points.len()).sum(),
+    }
+}
+
+/// Exponent `2 pi / omega` of the sharpest re-entrant corner, `None` without one.
+fn leading_exponent(corners: &[Vec<Corner>]) -> Option<f64> {
+    let widest = corners
+        .iter()
+        .flatten()
+        .map(Corner::fluid_angle)
+        .fold(0.0, f64::max);
+    // A crack cannot open further than the full turn.
+    let widest = widest.min(std::f64::consts::TAU);
+    (widest > std::f64::consts::PI).then(|| std::f64::consts::TAU / widest)
+}
+
+fn solver_report(answers: &[GridAnswer], spacing: f64, seconds: f64) -> SolverReport {
+    let levels = answers
+        .iter()
+        .map(|a| LevelReport {
+            spacing: spacing * f64::from(a.stride),
+            fluid_nodes: a.nodes,
+            wall_nodes: a.wall_nodes,
+            cycles: a.solved.cycles,
+            conductance: a.integrals.conductance * spacing.powi(4),
+        })
+        .collect();
+    let finest = answers.first().map(|a| a.solved);
+    SolverReport {
+        cycles: finest.map_or(0, |s| s.cycles),
+        residual: finest.map_or(0.0, |s| s.residual),
+        converged: answers.iter().all(|a| a.solved.converged),
+        convergence_factor: finest.map_or(0.0, |s| s.convergence_factor),
+        accelerated: answers.iter().any(|a| a.solved.accelerated),
+        seconds,
+        levels,
+    }
+}
+
+fn warnings(flow: &SectionFlow, lost_islands: usize) -> Vec<Warning> {
+    let mut warnings = Vec::new();
+    for identity in flow.identities.iter().filter(|i| !i.holds) {
+        warnings.push(Warning {
+            code: Code::IdentityFailed,
+            message: format!(
+                "{}: off by {:.2} %, allowed {:.2} % on this grid",
+                identity.formula,
+                100.0 * identity.relative_difference,
+                100.0 * identity.tolerance
+            ),
+            advice: "the wall shear and its mean are less sure than the conductance; try a finer grid \
+                     with --cells-across and compare"
+                .to_owned(),
+            numbers: vec![
+                ("relative_difference", identity.relative_difference),
+                ("tolerance", identity.tolerance),
+            ],
+        });
+    }
+    if !flow.solver.converged {
+        warnings.push(Warning {
+            code: Code::SolverSlow,
+            message: format!(
+                "the solver stopped after {} cycles at a residual of {:.1e}",
+                flow.solver.cycles, flow.solver.residual
+            ),
+            advice: "the estimated error does not cover this; try another --cells-across".to_owned(),
+            numbers: vec![("residual", flow.solver.residual)],
+        });
+    }
+    if let Some(&[x, y]) = flow.wall_shear.singular_corners.first() {
+        let count = flow.wall_shear.singular_corners.len();
+        warnings.push(Warning {
+            code: Code::ShearSingular,
+            message: format!(
+                "{count} re-entrant corner(s), the first at ({:.3}, {:.3}) \u{b5}m: the wall shear of the \
+                 sharp outline has no bound there, so the largest value depends on the grid",
+                x * 1e6,
+                y * 1e6
+            ),
+            advice: "use the mean wall shear, or give the corner the radius it really has".to_owned(),
+            numbers: vec![("corners", count as f64), ("x_m", x), ("y_m", y)],
+        });
+    }
+    if lost_islands > 0 {
+        warnings.push(Warning {
+            code: Code::ThinPart,
+            message: format!(
+                "{lost_islands} island(s) are smaller than a cell of {:.3e} m and stand as single wall nodes",
+                flow.grid.spacing
+            ),
+            advice: "use a larger --cells-across so that every island spans a few cells".to_owned(),
+            numbers: vec![("islands", lost_islands as f64), ("spacing_m", flow.grid.spacing)],
+        });
+    }
+    warnings
+}

@@ -1,0 +1,136 @@
+//! Corners of a loop as a grid of a given spacing sees them.
+//!
+//! The turning of the wall is summed over a window of one spacing, so that an arc smaller than the grid
+//! counts as the corner it looks like, while a zigzag of the outline within the window cancels out.
+
+use super::outline::{Loop, Point};
+
+/// A corner of the wall.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Corner {
+    /// Arc length from the first vertex of the loop, m.
+    pub arc_length: f64,
+    /// Where, m.
+    pub at: Point,
+    /// Turning angle, radians: positive where the fluid angle is below 180 degrees (convex), negative
+    /// where it is above (re-entrant), for a loop with the fluid on its left.
+    pub turning: f64,
+}
+
+impl Corner {
+    /// Angle on the fluid side, radians.
+    pub fn fluid_angle(&self) -> f64 {
+        std::f64::consts::PI - self.turning
+    }
+}
+
+/// Corners whose turning within `window` is at least `least_turning` radians, in order along the loop.
+///
+/// - `wall`: fluid on the left
+/// - `window`: arc length over which turning is summed, m
+pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
+    let vertices = turnings(wall);
+    let length = wall.length();
+    let n = vertices.len();
+    let mut found: Vec<Corner> = Vec::new();
+    if n < 3 {
+        return found;
+    }
+    // Two pointers over the loop unrolled three times keep the window sum.
+    let place = |k: usize| vertices[k % n].0 + length * ((k / n) as f64 - 1.0);
+    let (mut low, mut high, mut sum) = (n, n, 0.0);
+    while place(low - 1) >= place(n) - 0.5 * window && low > 1 {
+        low -= 1;
+        sum += vertices[low % n].1;
+    }
+    let mut last_candidate = f64::NEG_INFINITY;
+    for k in n..2 * n {
+        while high < 3 * n && place(high) <= place(k) + 0.5 * window {
+            sum += vertices[high % n].1;
+            high += 1;
+        }
+        while place(low) < place(k) - 0.5 * window {
+            sum -= vertices[low % n].1;
+            low += 1;
+        }
+        if sum.abs() < least_turning {
+            continue;
+        }
+        let corner = Corner {
+            arc_length: vertices[k - n].0,
+            at: wall.points[k - n],
+            turning: sum,
+        };
+        // Neighbouring candidates are one corner; a vertex that turns most stands for it.
+        let joins = corner.arc_length - last_candidate < 0.5 * window;
+        last_candidate = corner.arc_length;
+        match found.last_mut() {
+            Some(last) if joins && last.turning.signum() == sum.signum() => {
+                if sum.abs() > last.turning.abs() + 1e-9 {
+                    *last = corner;
+                }
+            }
+            _ => found.push(corner),
+        }
+    }
+    found
+}
+
+/// Arc length and turning angle of every vertex.
+fn turnings(wall: &Loop) -> Vec<(f64, f64)> {
+    let n = wall.points.len();
+    let mut arc = 0.0;
+    (0..n)
+        .map(|k| {
+            let (a, b, c) = (
+                wall.points[(k + n - 1) % n],
+                wall.points[k],
+                wall.points[(k + 1) % n],
+            );
+            let (ux, uy) = (b[0] - a[0], b[1] - a[1]);
+            let (vx, vy) = (c[0] - b[0], c[1] - b[1]);
+            let entry = (arc, (ux * vy - uy * vx).atan2(ux * vx + uy * vy));
+            arc += vx.hypot(vy);
+            entry
+        })
+        .collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn an_l_shape_has_five_convex_corners_and_one_re_entrant_one() {
+        let l = Loop::new(vec![
+            [0.0, 0.0],
+            [2.0, 0.0],
+            [2.0, 1.0],
+            [1.0, 1.0],
+            [1.0, 2.0],
+            [0.0, 2.0],
+        ]);
+        let found = corners(&l, 0.1, 0.2);
+        let re_entrant: Vec<_> = found.iter().filter(|c| c.turning < 0.0).collect();
+        assert_eq!(found.len(), 6);
+        assert_eq!(re_entrant.len(), 1);
+        assert_eq!(re_entrant[0].at, [1.0, 1.0]);
+        assert!((re_entrant[0].fluid_angle().to_degrees() - 270.0).abs() < 1e-9);
+    }
+
+    #[test]
+    fn a_small_arc_is_one_corner_and_a_large_circle_is_none() {
+        let circle = |r: f64| {
+            Loop::new(
+                (0..720)
+                    .map(|k| {
+                        let t = f64::from(k).to_radians() / 2.0;
+                        [r * t.cos(), r * t.sin()]
+                    })
+                    .collect(),
+            )
+        };
+        assert!(corners(&circle(1.0), 0.02, 0.2).is_empty());
+        assert!(!corners(&circle(1.0), 2.0, 0.2).is_empty());
+    }
+}

@@ -1,0 +1,573 @@
+//! Fluid nodes of one grid of the hierarchy, in two colours, with the arms that the wall cuts.
+//!
+//! Only fluid nodes are stored. A row of fluid nodes without a wall between neighbours is a [`Run`].
+//! Nodes are coloured by the parity of `i + j`; every neighbour of an even node is odd and the other way
+//! round, and within a run the nodes of one colour and all four neighbours are contiguous in memory.
+//! Nodes whose four arms are whole are listed as [`Segment`]s, the others one by one as [`WallNode`]s.
+//!
+//! A grid of stride `s` keeps every s-th line of the lattice, so its nodes are a subset of the finer
+//! grid's and both see the same crossings: the wall never moves between grids. Arms end at the exact
+//! crossing with the outline. A node closer to the wall than [`ON_WALL`] counts as wall.
+
+use super::crossings::LineCrossings;
+use super::lattice::Lattice;
+
+/// Distance in lattice units below which a node counts as lying on the wall.
+pub(super) const ON_WALL: f64 = 1e-8;
+/// Marks an arm that ends at a node taken out of the fluid, where no outline edge is known.
+pub const NO_EDGE: u32 = u32::MAX;
+/// Marks an arm that ends at the wall, so that it has no neighbour.
+pub const NO_NODE: u32 = u32::MAX;
+/// Index of the arm towards falling `i`.
+pub const ARM_LEFT: usize = 0;
+/// Index of the arm towards rising `i`.
+pub const ARM_RIGHT: usize = 1;
+/// Index of the arm towards falling `j`.
+pub const ARM_DOWN: usize = 2;
+/// Index of the arm towards rising `j`.
+pub const ARM_UP: usize = 3;
+/// Even nodes in a block, about; a block is the unit of parallel work.
+const BLOCK_NODES: u32 = 8192;
+
+/// Colour of a node: parity of `i + j`.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Colour {
+    /// `i + j` even.
+    Even = 0,
+    /// `i + j` odd.
+    Odd = 1,
+}
+
+impl Colour {
+    /// The other colour.
+    #[must_use]
+    pub fn other(self) -> Self {
+        match self {
+            Self::Even => Self::Odd,
+            Self::Odd => Self::Even,
+        }
+    }
+
+    fn of(i: u32, j: u32) -> Self {
+        if (i + j).is_multiple_of(2) {
+            Self::Even
+        } else {
+            Self::Odd
+        }
+    }
+}
+
+/// Fluid nodes next to each other in one row, with no wall between them.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Run {
+    /// Column of the first node.
+    pub first: u32,
+    /// Number of nodes.
+    pub len: u32,
+    /// Row.
+    pub row: u32,
+    /// Storage index of the first node of each colour at or after `first`.
+    pub base: [u32; 2],
+    /// Storage index of the first node when all nodes are counted row by row.
+    pub natural: u32,
+}
+
+impl Run {
+    /// Colour and storage index of the node in column `i` of this run.
+    pub fn node(&self, i: u32) -> (Colour, u32) {
+        let colour = Colour::of(i, self.row);
+        (colour, self.base[colour as usize] + (i - self.first) / 2)
+    }
+
+    /// One past the last column.
+    pub fn end(&self) -> u32 {
+        self.first + self.len
+    }
+}
+
+/// Nodes of one colour in a row whose four arms are whole: `start + k` has the other-colour neighbours
+/// `left + k`, `left + k + 1`, `down + k` and `up + k`.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Segment {
+    /// Storage index of the first node.
+    pub start: u32,
+    /// Number of nodes.
+    pub len: u32,
+    /// Other-colour index of the left neighbour of the first node.
+    pub left: u32,
+    /// Other-colour index of the lower neighbour of the first node.
+    pub down: u32,
+    /// Other-colour index of the upper neighbour of the first node.
+    pub up: u32,
+    /// Column of the first node; the next ones follow at distance two.
+    pub i: u32,
+    /// Row.
+    pub j: u32,
+}
+
+/// A fluid node with at least one arm cut by the wall.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct WallNode {
+    /// Storage index within its colour.
+    pub node: u32,
+    /// Other-colour index of the neighbour along each arm, [`NO_NODE`] where the wall cuts it.
+    pub neighbour: [u32; 4],
+    /// Length of each arm in units of this grid's spacing; 1 where it is whole.
+    pub arm: [f64; 4],
+    /// Outline edge that ends each cut arm, [`NO_EDGE`] where none is known.
+    pub edge: [u32; 4],
+    /// Column.
+    pub i: u32,
+    /// Row.
+    pub j: u32,
+}
+
+/// A range of rows handled as one piece of parallel work.
+#[derive(Debug, Clone, Copy, PartialEq, Default)]
+pub struct Block {
+    /// One past the last storage index of each colour.
+    pub node_end: [u32; 2],
+    /// One past the last segment of each colour.
+    pub segment_end: [u32; 2],
+    /// One past the last wall node of each colour.
+    pub wall_end: [u32; 2],
+}
+
+/// The fluid nodes of one grid.
+#[derive(Debug, Clone)]
+pub struct Mask {
+    /// Lattice lines per line of this grid: 1 on the finest.
+    pub stride: u32,
+    /// Runs in storage order.
+    pub runs: Vec<Run>,
+    /// Index of the first run of each row, and the total at the end.
+    pub row_start: Vec<u32>,
+    /// Number of nodes of each colour.
+    pub count: [usize; 2],
+    /// Segments of each colour in storage order.
+    pub segments: [Vec<Segment>; 2],
+    /// Wall nodes of each colour in storage order.
+    pub wall: [Vec<WallNode>; 2],
+    /// Pieces of parallel work in storage order.
+    pub blocks: Vec<Block>,
+    /// Nodes turned into wall because an island would otherwise be invisible on this grid.
+    pub pinned: Vec<(u32, u32)>,
+}
+
+/// An arm cut by the wall, before grouping by node.
+struct Cut {
+    run: u32,
+    i: u32,
+    direction: u8,
+    arm: f64,
+    edge: u32,
+}
+
+impl Mask {
+    /// The grid of a given stride.
+    ///
+    /// - `stride`: lattice lines per grid line, a power of two
+    ///
+    /// An island that no line of this grid crosses keeps one node as wall ([`Mask::pinned`]), so that no
+    /// island is lost altogether.
+    pub fn new(
+        lattice: &Lattice,
+        rows: &LineCrossings,
+        columns: &LineCrossings,
+        stride: u32,
+    ) -> Self {
+        let mut removed = nodes_on_wall(columns, stride);
+        let pinned = pins(lattice, rows, columns, stride);
+        removed.extend(pinned.iter().map(|&(i, j)| (j, i, NO_EDGE)));
+        removed.sort_unstable();
+        removed.dedup_by_key(|r| (r.0, r.1));
+        let mut cuts = Vec::new();
+        let (mut runs, row_start) = collect_runs(rows, stride, &removed, &mut cuts);
+        let count = number(&mut runs);
+        let mut mask = Self {
+            stride,
+            runs,
+            row_start,
+            count,
+            segments: [Vec::new(), Vec::new()],
+            wall: [Vec::new(), Vec::new()],
+            blocks: Vec::new(),
+            pinned,
+        };
+        mask.cut_columns(columns, &mut cuts);
+        mask.cut_uncovered(&mut cuts);
+        cuts.sort_unstable_by(|a, b| {
+            (a.run, a.i, a.direction)
+                .cmp(&(b.run, b.i, b.direction))
+                .then(a.arm.total_cmp(&b.arm))
+                .then(a.edge.cmp(&b.edge))
+        });
+        mask.classify(&cuts);
+        mask
+    }
+
+    /// Number of fluid nodes.
+    pub fn nodes(&self) -> usize {
+        self.count[0] + self.count[1]
+    }
+
+    /// Number of rows of this grid.
+    pub fn rows(&self) -> usize {
+        self.row_start.len() - 1
+    }
+
+    /// Runs of one row.
+    pub fn row(&self, j: u32) -> &[Run] {
+        match self.row_start.get(j as usize..j as usize + 2) {
+            Some(&[start, end]) => &self.runs[start as usize..end as usize],
+            _ => &[],
+        }
+    }
+
+    /// The run that holds node `(i, j)`.
+    pub fn run_at(&self, i: u32, j: u32) -> Option<&Run> {
+        let row = self.row(j);
+        let after = row.partition_point(|run| run.first <= i);
+        let run = row.get(after.checked_sub(1)?)?;
+        (i < run.end()).then_some(run)
+    }
+
+    /// Colour and storage index of node `(i, j)`.
+    pub fn node_at(&self, i: u32, j: u32) -> Option<(Colour, u32)> {
+        self.run_at(i, j).map(|run| run.node(i))
+    }
+
+    /// Row-by-row index of node `(i, j)`.
+    pub fn natural_at(&self, i: u32, j: u32) -> Option<u32> {
+        self.run_at(i, j).map(|run| run.natural + i - run.first)
+    }
+
+    /// The wall node with a given storage index, `None` for a node with four whole arms.
+    pub fn wall_node(&self, colour: Colour, node: u32) -> Option<&WallNode> {
+        let wall = &self.wall[colour as usize];
+        let index = wall.binary_search_by_key(&node, |w| w.node).ok()?;
+        wall.get(index)
+    }
+
+    /// Cuts from the crossings of the lattice columns.
+    fn cut_columns(&self, columns: &LineCrossings, cuts: &mut Vec<Cut>) {
+        let scale = 1.0 / f64::from(self.stride);
+        for line in (0..columns.lines()).step_by(self.stride as usize) {
+            let i = line as u32 / self.stride;
+            for crossing in columns.line(line) {
+                let at = crossing.at * scale;
+                let below = at.floor();
+                let mut push = |row: f64, direction: usize, arm: f64| {
+                    if row < 0.0 {
+                        return;
+                    }
+                    let j = row as u32;
+                    let index = self.run_index(i, j);
+                    if let Some(run) = index {
+                        cuts.push(Cut {
+                            run,
+                            i,
+                            direction: direction as u8,
+                            arm,
+                            edge: crossing.edge,
+                        });
+                    }
+                };
+                push(below, ARM_UP, at - below);
+                push(below + 1.0, ARM_DOWN, below + 1.0 - at);
+                // A crossing on a node takes that node out of the fluid; the arms of both its
+                // neighbours end there.
+                let nearest = at.round();
+                if (at - nearest).abs() < ON_WALL * scale {
+                    push(nearest - 1.0, ARM_UP, 1.0);
+                    push(nearest + 1.0, ARM_DOWN, 1.0);
+                }
+            }
+        }
+        // A crossing on a node's own row belongs to a node taken out of the fluid, or to rounding: such
+        // an arm would have no length.
+        cuts.retain(|cut| cut.arm > 0.0);
+    }
+
+    fn run_index(&self, i: u32, j: u32) -> Option<u32> {
+        let start = *self.row_start.get(j as usize)?;
+        let row = self.row(j);
+        let after = row.partition_point(|run| run.first <= i);
+        let position = after.checked_sub(1)?;
+        (i < row[position].end()).then_some(start + position as u32)
+    }
+
+    /// Cuts of length one towards neighbours that are not fluid although no crossing was seen on the
+    /// way: nodes on the wall, and rounding.
+    fn cut_uncovered(&self, cuts: &mut Vec<Cut>) {
+        for (index, run) in self.runs.iter().enumerate() {
+            for (direction, row) in [
+                (ARM_DOWN, run.row.checked_sub(1)),
+                (ARM_UP, Some(run.row + 1)),
+            ] {
+                let mut i = run.first;
+                let neighbours = row.map_or(&[][..], |j| self.row(j));
+                let skip = neighbours.partition_point(|n| n.end() <= run.first);
+                let mut push = |until: u32, i: &mut u32| {
+                    while *i < until {
+                        cuts.push(Cut {
+                            run: index as u32,
+                            i: *i,
+                            direction: direction as u8,
+                            arm: 1.0,
+                            edge: NO_EDGE,
+                        });
+                        *i += 1;
+                    }
+                };
+                for neighbour in &neighbours[skip..] {
+                    if neighbour.first >= run.end() {
+                        break;
+                    }
+                    push(neighbour.first, &mut i);
+                    i = i.max(neighbour.end());
+                }
+                push(run.end(), &mut i);
+            }
+        }
+    }
+
+    /// Sorts nodes into segments and wall nodes, and rows into blocks.
+    fn classify(&mut self, cuts: &[Cut]) {
+        let mut next_cut = 0;
+        let mut block = Block::default();
+        let mut last_row = 0;
+        for index in 0..self.runs.len() {
+            let run = self.runs[index];
+            if run.row != last_row {
+                last_row = run.row;
+                self.close_block(&mut block, run, false);
+            }
+            let mut i = run.first;
+            while next_cut < cuts.len() && cuts[next_cut].run as usize == index {
+                let at = cuts[next_cut].i;
+                let end = next_cut
+                    + cuts[next_cut..]
+                        .iter()
+                        .take_while(|c| c.run as usize == index && c.i == at)
+                        .count();
+                self.add_segments(run, i, at);
+                self.add_wall_node(run, at, &cuts[next_cut..end]);
+                i = at + 1;
+                next_cut = end;
+            }
+            self.add_segments(run, i, run.end());
+        }
+        if let Some(&last) = self.runs.last() {
+            self.close_block(&mut block, last, true);
+        }
+    }
+
+    fn close_block(&mut self, open: &mut Block, next: Run, last: bool) {
+        let node_end = if last {
+            [self.count[0] as u32, self.count[1] as u32]
+        } else {
+            next.base
+        };
+        if last || node_end[0] - open.node_end[0] >= BLOCK_NODES {
+            *open = Block {
+                node_end,
+                segment_end: [self.segments[0].len() as u32, self.segments[1].len() as u32],
+                wall_end: [self.wall[0].len() as u32, self.wall[1].len() as u32],
+            };
+            self.blocks.push(*open);
+        }
+    }
+
+    /// Segments for the nodes `from..to` of a run, all with whole arms.
+    fn add_segments(&mut self, run: Run, from: u32, to: u32) {
+        let mut i = from;
+        while i < to {
+            let (Some(below), Some(above)) = (
+                run.row.checked_sub(1).and_then(|j| self.run_at(i, j)).copied(),
+                self.run_at(i, run.row + 1).copied(),
+            ) else {
+                // Every node without a neighbour below or above has a cut there.
+                return;
+            };
+            let end = to.min(below.end()).min(above.end());
+            for start in [i, i + 1] {
+                if start >= end {
+                    continue;
+                }
+                let (colour, node) = run.node(start);
+                self.segments[colour as usize].push(Segment {
+                    start: node,
+                    len: (end - start).div_ceil(2),
+                    left: run.node(start - 1).1,
+                    down: below.node(start).1,
+                    up: above.node(start).1,
+                    i: start,
+                    j: run.row,
+                });
+            }
+            i = end;
+        }
+    }
+
+    fn add_wall_node(&mut self, run: Run, i: u32, cuts: &[Cut]) {
+        let (colour, node) = run.node(i);
+        let mut arm = [1.0; 4];
+        let mut edge = [NO_EDGE; 4];
+        let mut is_cut = [false; 4];
+        for cut in cuts {
+            let direction = cut.direction as usize;
+            if !is_cut[direction] {
+                is_cut[direction] = true;
+                arm[direction] = cut.arm.min(1.0);
+                edge[direction] = cut.edge;
+            }
+        }
+        let vertical = |direction: usize, row: Option<u32>| {
+            if is_cut[direction] {
+                return NO_NODE;
+            }
+            row.and_then(|j| self.node_at(i, j)).map_or(NO_NODE, |(_, n)| n)
+        };
+        let neighbour = [
+            if is_cut[ARM_LEFT] { NO_NODE } else { run.node(i - 1).1 },
+            if is_cut[ARM_RIGHT] { NO_NODE } else { run.node(i + 1).1 },
+            vertical(ARM_DOWN, run.row.checked_sub(1)),
+            vertical(ARM_UP, Some(run.row + 1)),
+        ];
+        self.wall[colour as usize].push(WallNode {
+            node,
+            neighbour,
+            arm,
+            edge,
+            i,
+            j: run.row,
+        });
+    }
+}
+
+/// Nodes that a column crossing puts on the wall, as (row, column, edge).
+fn nodes_on_wall(columns: &LineCrossings, stride: u32) -> Vec<(u32, u32, u32)> {
+    let mut nodes = Vec::new();
+    let step = f64::from(stride);
+    for line in (0..columns.lines()).step_by(stride as usize) {
+        for crossing in columns.line(line) {
+            let nearest = (crossing.at / step).round();
+            if (crossing.at - nearest * step).abs() < ON_WALL {
+                nodes.push((nearest as u32, line as u32 / stride, crossing.edge));
+            }
+        }
+    }
+    nodes
+}
+
+/// For each island that no line of this grid crosses, the node nearest to it.
+fn pins(
+    lattice: &Lattice,
+    rows: &LineCrossings,
+    columns: &LineCrossings,
+    stride: u32,
+) -> Vec<(u32, u32)> {
+    if !lattice.is_island.iter().any(|&island| island) {
+        return Vec::new();
+    }
+    let mut seen = vec![false; lattice.is_island.len()];
+    for crossings in [rows, columns] {
+        for line in (0..crossings.lines()).step_by(stride as usize) {
+            for crossing in crossings.line(line) {
+                seen[lattice.edges[crossing.edge as usize].loop_index as usize] = true;
+            }
+        }
+    }
+    let step = f64::from(stride);
+    (0..seen.len())
+        .filter(|&index| lattice.is_island[index] && !seen[index])
+        .map(|index| {
+            let at = lattice.edges[lattice.loop_starts[index]].start;
+            ((at[0] / step).round() as u32, (at[1] / step).round() as u32)
+        })
+        .collect()
+}
+
+/// Runs of every row with the cuts at their ends.
+fn collect_runs(
+    rows: &LineCrossings,
+    stride: u32,
+    removed: &[(u32, u32, u32)],
+    cuts: &mut Vec<Cut>,
+) -> (Vec<Run>, Vec<u32>) {
+    let scale = 1.0 / f64::from(stride);
+    let margin = ON_WALL * scale;
+    let mut runs = Vec::new();
+    let mut row_start = vec![0];
+    let mut next_removed = 0;
+    for (j, line) in (0..rows.lines()).step_by(stride as usize).enumerate() {
+        let from = next_removed + removed[next_removed..].partition_point(|r| (r.0 as usize) < j);
+        next_removed = from + removed[from..].partition_point(|r| r.0 as usize == j);
+        let gone = &removed[from..next_removed];
+        for [left, right] in rows.line(line).as_chunks().0 {
+            let first = (left.at * scale + margin).ceil().max(0.0);
+            let last = (right.at * scale - margin).floor();
+            if last < first {
+                continue;
+            }
+            let (first, end) = (first as u32, last as u32 + 1);
+            let arms = [f64::from(first) - left.at * scale, right.at * scale - last];
+            let skip = gone.partition_point(|r| r.1 < first);
+            let inside = gone[skip..].iter().take_while(|r| r.1 < end);
+            let mut start = (first, arms[0], left.edge);
+            for &(_, i, edge) in inside {
+                push_run(&mut runs, cuts, j as u32, start, (i, 1.0, edge));
+                start = (i + 1, 1.0, edge);
+            }
+            push_run(&mut runs, cuts, j as u32, start, (end, arms[1], right.edge));
+        }
+        row_start.push(runs.len() as u32);
+    }
+    (runs, row_start)
+}
+
+/// Adds the run from `start.0` to before `end.0`; each end carries its arm length and edge.
+fn push_run(
+    runs: &mut Vec<Run>,
+    cuts: &mut Vec<Cut>,
+    row: u32,
+    start: (u32, f64, u32),
+    end: (u32, f64, u32),
+) {
+    if start.0 >= end.0 {
+        return;
+    }
+    for (i, direction, arm, edge) in [
+        (start.0, ARM_LEFT, start.1, start.2),
+        (end.0 - 1, ARM_RIGHT, end.1, end.2),
+    ] {
+        cuts.push(Cut {
+            run: runs.len() as u32,
+            i,
+            direction: direction as u8,
+            arm,
+            edge,
+        });
+    }
+    runs.push(Run {
+        first: start.0,
+        len: end.0 - start.0,
+        row,
+        base: [0; 2],
+        natural: 0,
+    });
+}
+
+/// Gives every node its storage index; returns the number of nodes of each colour.
+fn number(runs: &mut [Run]) -> [usize; 2] {
+    let mut next = [0_u32; 2];
+    for run in runs.iter_mut() {
+        run.base = next;
+        run.natural = next[0] + next[1];
+        let first = Colour::of(run.first, run.row) as usize;
+        next[first] += run.len.div_ceil(2);
+        next[1 - first] += run.len / 2;
+    }
+    [next[0] as usize, next[1] as usize]
+}

@@ -1,0 +1,109 @@
+//! The grids of the multigrid hierarchy, finest first.
+//!
+//! The geometry is looked at afresh on every grid through the same crossings. Coarsening goes on until a
+//! direct solution is cheap, whatever has become of thin slots by then: a slot too narrow for a coarse node
+//! is at most two cells wide one grid finer, where relaxation alone reduces its error quickly, and an
+//! island that no coarse line meets is pinned to one wall node. What still converges slowly is left to the
+//! Krylov acceleration.
+
+use crate::grid::{Lattice, LineCrossings, Mask};
+
+use super::assembled::poisson_matrix;
+use super::coarsest::BandedLu;
+use super::field::Field;
+use super::stencil::Stencil;
+use super::transfer::Transfer;
+
+/// Largest cost `n * half_band^2` of the direct solution on the coarsest grid.
+const DIRECT_COST: f64 = 2e6;
+/// Nodes above which a grid is never tried for the direct solution.
+const DIRECT_NODES: usize = 60_000;
+/// Grids that extrapolation and its error estimate want, where the section is large enough for them.
+const LEAST_GRIDS: usize = 4;
+/// Most grids in a hierarchy.
+const MOST_GRIDS: u32 = 24;
+
+/// One grid with its operator and working fields.
+#[derive(Debug)]
+pub struct Grid {
+    /// Fluid nodes and arms.
+    pub mask: Mask,
+    /// `phi`, or the correction during a cycle, in units of the lattice spacing squared.
+    pub phi: Field,
+    pub(crate) rhs: Field,
+    pub(crate) residual: Vec<f64>,
+    pub(crate) natural: Vec<f64>,
+    pub(crate) stencil: Stencil,
+}
+
+/// All grids, finest first, with the transfers between neighbours.
+#[derive(Debug)]
+pub struct Hierarchy {
+    /// The grids, finest first.
+    pub grids: Vec<Grid>,
+    pub(crate) transfers: Vec<Transfer>,
+    pub(crate) direct: BandedLu,
+}
+
+impl Grid {
+    fn new(mask: Mask) -> Self {
+        Self {
+            phi: Field::constant(&mask, 0.0),
+            rhs: Field::constant(&mask, 0.0),
+            residual: vec![0.0; mask.count[0]],
+            natural: vec![0.0; mask.nodes()],
+            stencil: Stencil::new(&mask),
+            mask,
+        }
+    }
+}
+
+impl Hierarchy {
+    /// Builds the hierarchy for a lattice; `None` when the lattice holds no fluid node at all.
+    pub fn new(lattice: &Lattice, rows: &LineCrossings, columns: &LineCrossings) -> Option<Self> {
+        let finest = Mask::new(lattice, rows, columns, 1);
+        if finest.nodes() == 0 {
+            return None;
+        }
+        let mut masks = vec![finest];
+        let direct = loop {
+            let last = masks.last()?;
+            if masks.len() >= LEAST_GRIDS
+                && let Some(direct) = direct_if_cheap(last, DIRECT_COST)
+            {
+                break direct;
+            }
+            let coarse = Mask::new(lattice, rows, columns, last.stride * 2);
+            if coarse.nodes() == 0 || masks.len() as u32 == MOST_GRIDS {
+                break direct_if_cheap(last, f64::INFINITY)?;
+            }
+            masks.push(coarse);
+        };
+        let transfers = masks
+            .windows(2)
+            .map(|pair| Transfer::new(&pair[0], &pair[1]))
+            .collect();
+        Some(Self {
+            grids: masks.into_iter().map(Grid::new).collect(),
+            transfers,
+            direct,
+        })
+    }
+
+    /// The fluid nodes and the solution of the finest grid; the rest is dropped.
+    pub fn into_finest(self) -> (Mask, Field) {
+        let mut grids = self.grids;
+        let finest = grids.swap_remove(0);
+        (finest.mask, finest.phi)
+    }
+}
+
+fn direct_if_cheap(mask: &Mask, limit: f64) -> Option<BandedLu> {
+    if mask.nodes() > DIRECT_NODES && limit.is_finite() {
+        return None;
+    }
+    let matrix = poisson_matrix(mask);
+    let (order, half_band) = BandedLu::plan(&matrix);
+    let cost = mask.nodes() as f64 * (half_band as f64).powi(2);
+    (cost <= limit).then(|| BandedLu::new(&matrix, order, half_band))
+}

@@ -1,0 +1,288 @@
+//! Between a grid and the next coarser one.
+//!
+//! Coarse node `(i, j)` is fine node `(2i, 2j)`, always of even colour. Odd fine nodes lie between two
+//! coarse ones along a line and get the value linear along that line, which is zero where the wall cuts it:
+//! with arms `a` and `b` towards two ends of values `p` and `q`, `(b p + a q) / (a + b)`. Even fine nodes
+//! need no value, since the sweep that follows computes them from the odd ones. Restriction is the
+//! transpose of that interpolation extended to the even nodes by the stencil; a sweep has just made the
+//! residual of the odd nodes zero, so only even ones count. Away from walls that is full weighting.
+
+use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, NO_NODE, WallNode};
+
+use super::stencil::{opposite, weights};
+
+/// Coarse nodes `coarse + k` whose nine fine nodes all have whole arms.
+#[derive(Debug, Clone, Copy)]
+struct RestrictSegment {
+    coarse: u32,
+    len: u32,
+    centre: u32,
+    down_left: u32,
+    up_left: u32,
+}
+
+/// Odd fine nodes `fine + k` half way between coarse nodes `low + k` and `high + k`.
+#[derive(Debug, Clone, Copy)]
+struct ProlongSegment {
+    fine: u32,
+    len: u32,
+    low: u32,
+    high: u32,
+}
+
+/// A single weight.
+#[derive(Debug, Clone, Copy)]
+struct Entry {
+    coarse: u32,
+    fine: u32,
+    weight: f64,
+}
+
+/// The transfer between two grids; coarse values are row by row.
+#[derive(Debug, Clone, Default)]
+pub(crate) struct Transfer {
+    restrict_segments: Vec<RestrictSegment>,
+    restrict_entries: Vec<Entry>,
+    prolong_segments: Vec<ProlongSegment>,
+    prolong_entries: Vec<Entry>,
+}
+
+impl Transfer {
+    pub(crate) fn new(fine: &Mask, coarse: &Mask) -> Self {
+        let mut transfer = Self::default();
+        transfer.plan_restriction(fine, coarse);
+        transfer.plan_rows(fine, coarse);
+        transfer.plan_columns(fine, coarse);
+        transfer
+    }
+
+    /// Coarse right side from the residual of the even fine nodes.
+    pub(crate) fn restrict(&self, even: &[f64], coarse: &mut [f64]) {
+        coarse.fill(0.0);
+        for s in &self.restrict_segments {
+            let n = s.len as usize;
+            let centre = &even[s.centre as usize..][..n];
+            let below = &even[s.down_left as usize..][..=n];
+            let above = &even[s.up_left as usize..][..=n];
+            let target = &mut coarse[s.coarse as usize..][..n];
+            for k in 0..n {
+                let corners = (below[k] + below[k + 1]) + (above[k] + above[k + 1]);
+                target[k] = centre[k] + 0.25 * corners;
+            }
+        }
+        for e in &self.restrict_entries {
+            coarse[e.coarse as usize] += e.weight * even[e.fine as usize];
+        }
+    }
+
+    /// Adds the interpolated coarse values to the odd fine nodes.
+    pub(crate) fn prolong(&self, coarse: &[f64], odd: &mut [f64]) {
+        for s in &self.prolong_segments {
+            let n = s.len as usize;
+            let low = &coarse[s.low as usize..][..n];
+            let high = &coarse[s.high as usize..][..n];
+            let target = &mut odd[s.fine as usize..][..n];
+            for k in 0..n {
+                target[k] += 0.5 * (low[k] + high[k]);
+            }
+        }
+        for e in &self.prolong_entries {
+            odd[e.fine as usize] += e.weight * coarse[e.coarse as usize];
+        }
+    }
+
+    fn plan_restriction(&mut self, fine: &Mask, coarse: &Mask) {
+        let mut near_wall = vec![false; coarse.nodes()];
+        for w in fine.wall.iter().flatten() {
+            for j in around(w.j) {
+                for i in around(w.i) {
+                    if let Some(node) = coarse.natural_at(i, j) {
+                        near_wall[node as usize] = true;
+                    }
+                }
+            }
+        }
+        for run in &coarse.runs {
+            let flags = &near_wall[run.natural as usize..(run.natural + run.len) as usize];
+            let mut offset = 0;
+            for stretch in flags.chunk_by(|a, b| a == b) {
+                let i = run.first + offset;
+                let len = stretch.len() as u32;
+                offset += len;
+                let segment = (stretch.first() == Some(&false))
+                    .then(|| restrict_segment(fine, run.natural + i - run.first, i, run.row, len))
+                    .flatten();
+                if let Some(segment) = segment {
+                    self.restrict_segments.push(segment);
+                } else {
+                    for k in 0..len {
+                        self.restrict_near_wall(fine, run.natural + i + k - run.first, [i + k, run.row]);
+                    }
+                }
+            }
+        }
+    }
+
+    /// Weights of the even fine nodes around one coarse node near a wall.
+    fn restrict_near_wall(&mut self, fine: &Mask, coarse: u32, at: [u32; 2]) {
+        let (i, j) = (2 * at[0], 2 * at[1]);
+        if let Some((_, node)) = fine.node_at(i, j) {
+            self.restrict_entries.push(Entry {
+                coarse,
+                fine: node,
+                weight: 1.0,
+            });
+        }
+        for (to_column, x) in [(ARM_RIGHT, i.checked_sub(1)), (ARM_LEFT, Some(i + 1))] {
+            for (to_row, y) in [(ARM_UP, j.checked_sub(1)), (ARM_DOWN, Some(j + 1))] {
+                let (Some(x), Some(y)) = (x, y) else { continue };
+                let Some((colour, node)) = fine.node_at(x, y) else {
+                    continue;
+                };
+                let (weight, diagonal) = node_weights(fine, colour, node);
+                let across = line_weight(fine, [i, y], to_row);
+                let along = line_weight(fine, [x, j], to_column);
+                let total = (weight[to_column] * across + weight[to_row] * along) / diagonal;
+                if total > 0.0 {
+                    self.restrict_entries.push(Entry {
+                        coarse,
+                        fine: node,
+                        weight: total,
+                    });
+                }
+            }
+        }
+    }
+
+    /// Odd fine nodes in the rows of coarse nodes.
+    fn plan_rows(&mut self, fine: &Mask, coarse: &Mask) {
+        for run in fine.runs.iter().filter(|run| run.row.is_multiple_of(2)) {
+            let first = run.first | 1;
+            if first >= run.end() {
+                continue;
+            }
+            let j = run.row / 2;
+            let inner = if run.first.is_multiple_of(2) { first } else { first + 2 };
+            let last = (run.end() - 1).saturating_sub(1) | 1;
+            let inner_end = if last + 1 < run.end() { last + 2 } else { last };
+            let len = inner_end.saturating_sub(inner) / 2;
+            let whole = (len > 0).then(|| line_of(coarse, inner / 2, j, len + 1)).flatten();
+            if let (Some(low), Some((_, node))) = (whole, fine.node_at(inner, run.row)) {
+                self.prolong_segments.push(ProlongSegment {
+                    fine: node,
+                    len,
+                    low,
+                    high: low + 1,
+                });
+            }
+            for i in (first..run.end()).step_by(2) {
+                if whole.is_some() && (inner..inner + 2 * len).contains(&i) {
+                    continue;
+                }
+                self.prolong_single(fine, coarse, [i, run.row], ARM_LEFT);
+            }
+        }
+    }
+
+    /// Odd fine nodes between two rows of coarse nodes.
+    fn plan_columns(&mut self, fine: &Mask, coarse: &Mask) {
+        let odd = Colour::Odd as usize;
+        for s in fine.segments[odd].iter().filter(|s| !s.j.is_multiple_of(2)) {
+            let (i, j) = (s.i / 2, (s.j - 1) / 2);
+            let low = line_of(coarse, i, j, s.len);
+            let high = line_of(coarse, i, j + 1, s.len);
+            if let (Some(low), Some(high)) = (low, high) {
+                self.prolong_segments.push(ProlongSegment {
+                    fine: s.start,
+                    len: s.len,
+                    low,
+                    high,
+                });
+            } else {
+                for k in 0..s.len {
+                    self.prolong_single(fine, coarse, [s.i + 2 * k, s.j], ARM_DOWN);
+                }
+            }
+        }
+        for w in fine.wall[odd].iter().filter(|w| !w.j.is_multiple_of(2)) {
+            self.prolong_single(fine, coarse, [w.i, w.j], ARM_DOWN);
+        }
+    }
+
+    /// One odd fine node from its coarse neighbours along `arm` and the opposite arm.
+    fn prolong_single(&mut self, fine: &Mask, coarse: &Mask, at: [u32; 2], arm: usize) {
+        let Some((_, node)) = fine.node_at(at[0], at[1]) else {
+            return;
+        };
+        for direction in [arm, opposite(arm)] {
+            let weight = line_weight(fine, at, direction);
+            let end = match direction {
+                ARM_LEFT => [at[0].wrapping_sub(1), at[1]],
+                ARM_RIGHT => [at[0] + 1, at[1]],
+                ARM_DOWN => [at[0], at[1].wrapping_sub(1)],
+                _ => [at[0], at[1] + 1],
+            };
+            if weight > 0.0
+                && let Some(coarse_node) = coarse.natural_at(end[0] / 2, end[1] / 2)
+            {
+                self.prolong_entries.push(Entry {
+                    coarse: coarse_node,
+                    fine: node,
+                    weight,
+                });
+            }
+        }
+    }
+}
+
+/// Coarse indices whose three fine indices include `fine`.
+fn around(fine: u32) -> std::ops::RangeInclusive<u32> {
+    fine / 2..=fine.div_ceil(2)
+}
+
+/// The segment of `len` coarse nodes from `(i, j)` if all fine rows involved are contiguous.
+fn restrict_segment(fine: &Mask, coarse: u32, i: u32, j: u32, len: u32) -> Option<RestrictSegment> {
+    let rows = [2 * j, (2 * j).checked_sub(1)?, 2 * j + 1];
+    let left = (2 * i).checked_sub(1)?;
+    let mut node = [0; 3];
+    for ((index, row), from) in node.iter_mut().zip(rows).zip([2 * i, left, left]) {
+        let run = fine.run_at(from, row)?;
+        if 2 * (i + len - 1) + u32::from(row != 2 * j) >= run.end() {
+            return None;
+        }
+        *index = run.node(from).1;
+    }
+    Some(RestrictSegment {
+        coarse,
+        len,
+        centre: node[0],
+        down_left: node[1],
+        up_left: node[2],
+    })
+}
+
+/// Row-by-row index of `len` neighbouring nodes from `(i, j)`, `None` if they are not all in one run.
+fn line_of(mask: &Mask, i: u32, j: u32, len: u32) -> Option<u32> {
+    let run = mask.run_at(i, j)?;
+    (i + len <= run.end()).then_some(run.natural + i - run.first)
+}
+
+fn node_weights(mask: &Mask, colour: Colour, node: u32) -> ([f64; 4], f64) {
+    mask.wall_node(colour, node).map_or(([1.0; 4], 4.0), weights)
+}
+
+/// Weight of the neighbour along `direction` in the value linear along that line.
+fn line_weight(mask: &Mask, at: [u32; 2], direction: usize) -> f64 {
+    let Some((colour, node)) = mask.node_at(at[0], at[1]) else {
+        return 0.0;
+    };
+    let share = |w: &WallNode| {
+        if w.neighbour[direction] == NO_NODE {
+            0.0
+        } else {
+            let away = w.arm[opposite(direction)];
+            away / (w.arm[direction] + away)
+        }
+    };
+    mask.wall_node(colour, node).map_or(0.5, share)
+}

@@ -1,7 +1,7 @@
 use etchwise::{geometry::*, flow::*};
 fn run(name:&str,o:&Outline,n:f64,exact:f64,off:[f64;2]){
     let t=std::time::Instant::now();
-    let s=solve_outline(o,&SolveOptions{cells_across:if n>0.0{Some(n)}else{None},grid_offset:off,..Default::default()}).unwrap();
+    let s=solve_outline(o,&SolveOptions{cells_across:if n>0.0{Some(n)}else{None},grid_offset:if name.starts_with('L'){None}else{Some(off)},..Default::default()}).unwrap();
     let f=&s.flow; let dt=t.elapsed().as_secs_f64();
     let ids:Vec<String>=f.identities.iter().map(|i|format!("{:.1e}/{:.0e}",i.relative_difference,i.tolerance)).collect();
     println!("{name} n={:.0} nodes={} plain {:.1e} best {:.1e} est {:.1e} | fRe {:.6} peak {:.6}~{:.0e} m {:.6}~{:.0e} ke {:.6}~{:.0e} sh {:.5} @{:.3?} ids {:?} cyc {} {:.3} t {:.1}ms",f.grid.cells_across,f.grid.fluid_nodes,f.conductance_finest_grid/exact-1.0,f.conductance.value/exact-1.0,f.conductance.relative(),f.fanning_dh,f.peak.to_mean.value,f.peak.to_mean.error,f.momentum_factor.value,f.momentum_factor.error,f.kinetic_energy_factor.value,f.kinetic_energy_factor.error,f.wall_shear.max_per_gradient/f.wall_shear.mean_per_gradient,f.wall_shear.max_at,ids,f.solver.cycles,f.solver.convergence_factor,dt*1e3);

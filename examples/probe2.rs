@@ -7,7 +7,7 @@ fn main(){
         let d=2.0*largest_inscribed_circle(&o.lumens[0]).radius; let h=d/n; let (lo,_)=o.bounds().unwrap();
         let c=p[3]; let f=|x:f64|{ let t=x/h; let up=(t/8.0).ceil()*8.0; up-t };
         let off=[f(c[0]-lo[0]),f(c[1]-lo[1])];
-        let s=solve_outline(&o,&SolveOptions{cells_across:Some(n),grid_offset:off,..Default::default()}).unwrap().flow;
+        let s=solve_outline(&o,&SolveOptions{cells_across:Some(n),grid_offset:None,..Default::default()}).unwrap().flow;
         println!("a={a} n={n} plain {:.7} best {:.7} est {:.1e}",s.conductance_finest_grid,s.conductance.value,s.conductance.relative());
     }}
 }

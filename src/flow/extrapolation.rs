@@ -36,16 +36,32 @@ pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>) -> Estimate {
             let best = remove(*fine, *coarse, exponent.unwrap_or(2.0));
             with_error(best, best - fine)
         }
-        ([fine, middle, coarse, ..], None) => {
-            let best = remove(*fine, *middle, 2.0);
-            with_error(best, SHARE * (best - remove(*middle, *coarse, 2.0)))
-        }
-        ([fine, middle, coarse, ..], Some(p)) => {
-            let (first, second) = (remove(*fine, *middle, p), remove(*middle, *coarse, p));
-            let best = remove(first, second, 2.0);
-            with_error(best, best - first)
+        ([fine, middle, coarse, ..], _) => {
+            let (best, error) = match exponent {
+                None => {
+                    let best = remove(*fine, *middle, 2.0);
+                    (best, SHARE * (best - remove(*middle, *coarse, 2.0)).abs())
+                }
+                Some(p) => {
+                    let (first, second) = (remove(*fine, *middle, p), remove(*middle, *coarse, p));
+                    let best = remove(first, second, 2.0);
+                    (best, (best - first).abs())
+                }
+            };
+            if in_order(*fine - middle, *middle - coarse, exponent.unwrap_or(2.0)) {
+                with_error(best, error)
+            } else {
+                // The grids are not yet, or no longer, where the error follows its law.
+                with_error(best, error.max((best - fine).abs()))
+            }
         }
     }
+}
+
+/// Whether two successive changes fall about as `h^p` to `h^2` would have it, or are rounding.
+fn in_order(last: f64, before: f64, p: f64) -> bool {
+    let ratio = before / last;
+    before == 0.0 || (0.6 * p.exp2()..=8.0).contains(&ratio)
 }
 
 /// Removes the term `h^p` from two values whose spacings differ by two.

@@ -26,6 +26,9 @@ impl Corner {
 
 /// Corners whose turning within `window` is at least `least_turning` radians, in order along the loop.
 ///
+/// A stretch of strong turning much longer than the window is a curve, not a corner, and a loop of only a
+/// few windows is neither: both are left out.
+///
 /// - `wall`: fluid on the left
 /// - `window`: arc length over which turning is summed, m
 pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
@@ -33,7 +36,7 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
     let length = wall.length();
     let n = vertices.len();
     let mut found: Vec<Corner> = Vec::new();
-    if n < 3 {
+    if n < 3 || length < 4.0 * window {
         return found;
     }
     // Two pointers over the loop unrolled three times keep the window sum.
@@ -43,7 +46,8 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
         low -= 1;
         sum += vertices[low % n].1;
     }
-    let mut last_candidate = f64::NEG_INFINITY;
+    // Where the stretch of the last corner began, and its last vertex so far.
+    let mut stretch = (0.0, f64::NEG_INFINITY);
     for k in n..2 * n {
         while high < 3 * n && place(high) <= place(k) + 0.5 * window {
             sum += vertices[high % n].1;
@@ -62,18 +66,30 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
             turning: sum,
         };
         // Neighbouring candidates are one corner; a vertex that turns most stands for it.
-        let joins = corner.arc_length - last_candidate < 0.5 * window;
-        last_candidate = corner.arc_length;
+        let joins = corner.arc_length - stretch.1 < 0.5 * window;
         match found.last_mut() {
             Some(last) if joins && last.turning.signum() == sum.signum() => {
                 if sum.abs() > last.turning.abs() + 1e-9 {
                     *last = corner;
                 }
             }
-            _ => found.push(corner),
+            _ => {
+                drop_if_curve(&mut found, stretch, window);
+                stretch.0 = corner.arc_length;
+                found.push(corner);
+            }
         }
+        stretch.1 = corner.arc_length;
     }
+    drop_if_curve(&mut found, stretch, window);
     found
+}
+
+/// Takes the last corner back if its stretch is too long for one.
+fn drop_if_curve(found: &mut Vec<Corner>, stretch: (f64, f64), window: f64) {
+    if stretch.1 - stretch.0 > 1.5 * window {
+        found.pop();
+    }
 }
 
 /// Arc length and turning angle of every vertex.
@@ -131,6 +147,18 @@ mod tests {
             )
         };
         assert!(corners(&circle(1.0), 0.02, 0.2).is_empty());
-        assert!(!corners(&circle(1.0), 2.0, 0.2).is_empty());
+        assert!(corners(&circle(1.0), 0.5, 0.2).is_empty());
+        let rounded = Loop::new(
+            std::iter::once([10.0, -10.0])
+                .chain((0..=90).map(|k| {
+                    let t = f64::from(k).to_radians();
+                    [9.9 + 0.1 * t.cos(), 9.9 + 0.1 * t.sin()]
+                }))
+                .chain([[-10.0, 10.0], [-10.0, -10.0]])
+                .collect(),
+        );
+        let found = corners(&rounded, 1.0, 0.2);
+        assert_eq!(found.len(), 4);
+        assert!((found[1].turning.to_degrees() - 90.0).abs() < 1.0);
     }
 }

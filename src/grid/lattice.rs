@@ -40,8 +40,8 @@ impl Lattice {
     ///
     /// - `outline`: oriented, valid, metres
     /// - `spacing`: node distance, m, positive
-    /// - `offset`: where the lower left corner of the bounding box falls between lattice lines, each
-    ///   component in [0, 1); `[0, 0]` puts the lattice lines on the left and lower bound
+    /// - `offset`: how far the lower left corner of the bounding box lies behind the first lattice lines,
+    ///   lattice units, not negative; `[0, 0]` puts those lines on the left and lower bound
     ///
     /// # Examples
     /// ```

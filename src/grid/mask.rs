@@ -112,6 +112,8 @@ pub struct WallNode {
     pub node: u32,
     /// Other-colour index of the neighbour along each arm, [`NO_NODE`] where the wall cuts it.
     pub neighbour: [u32; 4],
+    /// Own-colour index two steps along each arm, [`NO_NODE`] where the wall comes before.
+    pub beyond: [u32; 4],
     /// Length of each arm in units of this grid's spacing; 1 where it is whole.
     pub arm: [f64; 4],
     /// Outline edge that ends each cut arm, [`NO_EDGE`] where none is known.
@@ -361,6 +363,36 @@ impl Mask {
         if let Some(&last) = self.runs.last() {
             self.close_block(&mut block, last, true);
         }
+        for colour in [Colour::Even, Colour::Odd] {
+            let mut wall = std::mem::take(&mut self.wall[colour as usize]);
+            for node in &mut wall {
+                node.beyond = self.two_steps(node, colour);
+            }
+            self.wall[colour as usize] = wall;
+        }
+    }
+
+    /// Own-colour index two steps along each arm of a wall node of the given colour.
+    fn two_steps(&self, node: &WallNode, colour: Colour) -> [u32; 4] {
+        let (i, j) = (node.i, node.j);
+        let ends = [
+            (i.wrapping_sub(2), j),
+            (i + 2, j),
+            (i, j.wrapping_sub(2)),
+            (i, j + 2),
+        ];
+        std::array::from_fn(|arm| {
+            let next = node.neighbour[arm];
+            if next == NO_NODE {
+                return NO_NODE;
+            }
+            match self.wall_node(colour.other(), next) {
+                Some(wall) => wall.neighbour[arm],
+                None => self
+                    .node_at(ends[arm].0, ends[arm].1)
+                    .map_or(NO_NODE, |(_, index)| index),
+            }
+        })
     }
 
     fn close_block(&mut self, open: &mut Block, next: Run, last: bool) {
@@ -438,6 +470,7 @@ impl Mask {
         self.wall[colour as usize].push(WallNode {
             node,
             neighbour,
+            beyond: [NO_NODE; 4],
             arm,
             edge,
             i,

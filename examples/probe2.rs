@@ -1,13 +1,8 @@
 use etchwise::{geometry::*, flow::*};
-fn rot(p:Vec<[f64;2]>,a:f64)->Vec<[f64;2]>{p.into_iter().map(|q|[q[0]*a.cos()-q[1]*a.sin(),q[0]*a.sin()+q[1]*a.cos()]).collect()}
 fn main(){
-    let l=vec![[0.0,0.0],[2.0,0.0],[2.0,1.0],[1.0,1.0],[1.0,2.0],[0.0,2.0]];
-    for a in [0.0,0.1,0.3,0.7854,1.2] { for n in [64.0,128.0,256.0,512.0] {
-        let p=rot(l.clone(),a); let o=Outline::single(p.clone());
-        let d=2.0*largest_inscribed_circle(&o.lumens[0]).radius; let h=d/n; let (lo,_)=o.bounds().unwrap();
-        let c=p[3]; let f=|x:f64|{ let t=x/h; let up=(t/8.0).ceil()*8.0; up-t };
-        let off=[f(c[0]-lo[0]),f(c[1]-lo[1])];
-        let s=solve_outline(&o,&SolveOptions{cells_across:Some(n),grid_offset:None,..Default::default()}).unwrap().flow;
-        println!("a={a} n={n} plain {:.7} best {:.7} est {:.1e}",s.conductance_finest_grid,s.conductance.value,s.conductance.relative());
-    }}
+    let n: f64 = std::env::args().nth(1).unwrap().parse().unwrap();
+    let o=Outline::single(vec![[0.0,0.0],[1.0,0.2],[0.8,1.2],[-0.2,1.0]]);
+    let t=std::time::Instant::now();
+    let s=solve_outline(&o,&SolveOptions{cells_across:Some(n),..Default::default()}).unwrap().flow;
+    println!("nodes {} total {:.3}s solver {:.3}s cycles {} residual {:.1e} per node {:.1} ns est {:.1e}",s.grid.fluid_nodes,t.elapsed().as_secs_f64(),s.solver.seconds,s.solver.cycles,s.solver.residual,s.solver.seconds*1e9/s.grid.fluid_nodes as f64,s.conductance.relative());
 }

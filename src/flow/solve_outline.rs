@@ -98,12 +98,18 @@ impl FlowError {
 pub struct SolvedSection {
     /// The answers.
     pub flow: SectionFlow,
+    outline: Outline,
     lattice: Lattice,
     mask: Mask,
     phi: Field,
 }
 
 impl SolvedSection {
+    /// The outline that was solved, oriented.
+    pub fn outline(&self) -> &Outline {
+        &self.outline
+    }
+
     /// The field on a plain lattice of at most about `most_nodes` nodes, thinned if need be.
     pub fn dense_field(&self, most_nodes: usize) -> DenseField {
         DenseField::new(&self.lattice, &self.mask, &self.phi, most_nodes)
@@ -245,6 +251,7 @@ fn solve_at(
     let flow = assemble(outline, &solution, grid, seconds);
     Ok(SolvedSection {
         flow,
+        outline: outline.clone(),
         lattice,
         mask,
         phi,

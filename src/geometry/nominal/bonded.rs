@@ -27,12 +27,11 @@ struct Half {
 pub(super) fn bonded_halves(p: &Parameters<'_>) -> Result<Shape, NominalError> {
     let offset = p.signed_length("offset")?;
     let gap = p.length_or_zero("gap")?;
-    let lower = half(p, "lower", |q| q)?;
+    let (lower, upper) = (half(p, "lower")?, half(p, "upper")?);
     let middle = f64::midpoint(lower.left, lower.right);
-    let lower = half(p, "lower", |q| [q[0] - middle, q[1]])?;
-    let upper = half(p, "upper", |q| q)?;
+    let lower = lower.moved(|q| [q[0] - middle, q[1]]);
     let shift = offset - f64::midpoint(upper.left, upper.right);
-    let upper = half(p, "upper", |q| [q[0] + shift, gap - q[1]])?;
+    let upper = upper.moved(|q| [q[0] + shift, gap - q[1]]);
     let narrower = (lower.right - lower.left).min(upper.right - upper.left);
     let overlap = lower.right.min(upper.right) - lower.left.max(upper.left);
     if gap <= 0.0 && overlap.abs() <= TOUCHING * narrower {
@@ -54,12 +53,25 @@ pub(super) fn bonded_halves(p: &Parameters<'_>) -> Result<Shape, NominalError> {
     })
 }
 
-/// The named half with its points moved into place.
-fn half(
-    p: &Parameters<'_>,
-    name: &'static str,
-    place: impl Fn(Point) -> Point,
-) -> Result<Half, NominalError> {
+impl Half {
+    /// The half with its points moved.
+    fn moved(self, place: impl Fn(Point) -> Point) -> Self {
+        let all = |points: Vec<Point>| points.into_iter().map(&place).collect::<Vec<_>>();
+        Self {
+            left: place([self.left, 0.0])[0],
+            right: place([self.right, 0.0])[0],
+            wall: all(self.wall),
+            islands: self
+                .islands
+                .into_iter()
+                .map(|island| Loop::new(all(island.points)))
+                .collect(),
+        }
+    }
+}
+
+/// The named half in its own coordinates.
+fn half(p: &Parameters<'_>, name: &'static str) -> Result<Half, NominalError> {
     let shape = p.nested(name)?;
     let Some((left, right)) = shape.lid() else {
         return Err(NominalError::Nested {
@@ -67,19 +79,13 @@ fn half(
             source: Box::new(no_flat_lid(shape.kind, "bonded_halves")),
         });
     };
-    let wall = shape.wall().iter().map(|&q| place(q)).collect();
-    let islands = shape
-        .outline
-        .lumens
-        .iter()
-        .flat_map(|lumen| &lumen.islands)
-        .map(|island| Loop::new(island.points.iter().map(|&q| place(q)).collect()))
-        .collect();
+    let lumen = shape.outline.lumens.into_iter().next();
+    let (wall, islands) = lumen.map_or_else(Default::default, |l| (l.outer.points, l.islands));
     Ok(Half {
         wall,
         islands,
-        left: place(left)[0],
-        right: place(right)[0],
+        left: left[0],
+        right: right[0],
     })
 }
 

@@ -300,7 +300,9 @@ impl NominalError {
             Self::Contradiction { remedy, .. } | Self::OutOfRange { remedy, .. } => {
                 (*remedy).to_owned()
             }
-            Self::NoFlatLid { with_lid, .. } => format!("kinds with a flat lid: {with_lid}"),
+            Self::NoFlatLid { with_lid, .. } => {
+                format!("kinds with a flat lid: {with_lid}; with lid_sag or lid_bulge it is flat no more")
+            }
             Self::NotAPost { .. } => {
                 "use a circle, rectangle, ellipse, regular_polygon or rhombus as post".to_owned()
             }

@@ -1,6 +1,6 @@
 //! Nominal sections: from process parameters, as a person writes them, to an outline.
 //!
-//! A [`NominalSpec`] is a kind with named values; [`NominalSpec::outline`] makes its outline, [`kinds`]
+//! A [`NominalSpec`] is a kind with named values; [`NominalSpec::outline`] makes its outline, [`kinds()`]
 //! and [`modifiers`] are the one table of what can be written. Method: closed geometry, curves as
 //! segments within [`super::curves::CHORD_TOLERANCE`].
 //!

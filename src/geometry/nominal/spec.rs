@@ -25,7 +25,7 @@ pub(super) const DEEPEST_NESTING: usize = 8;
 /// ```
 #[derive(Debug, Clone, PartialEq)]
 pub struct NominalSpec {
-    /// Name of the kind, as in [`super::kinds`].
+    /// Name of the kind, as in [`super::kinds()`].
     pub kind: String,
     /// Values by parameter name.
     pub values: BTreeMap<String, SpecValue>,

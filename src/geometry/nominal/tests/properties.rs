@@ -60,19 +60,7 @@ fn valid_line(kind: &str, r: [f64; 5], scale: f64) -> String {
             part(2.0 * wide, 0.01 + 0.98 * r[1])
         ),
         "regular_polygon" => format!("{kind} sides={} side={w}", 3 + (60.0 * r[1]) as u32),
-        "drie_trench" => {
-            let depth = wide * 10.0_f64.powf(2.0 * r[1] - 1.0);
-            let pitch = depth / (2.0 + 40.0 * r[3]);
-            format!(
-                "{kind} top_width={w} depth={}um taper={} bow={} scallop_pitch={}um scallop_depth={}um foot_radius={}",
-                scale * depth,
-                deg(88.0, 91.0, r[2]),
-                part(0.05 * depth.min(wide), r[4]),
-                scale * pitch,
-                scale * pitch * 0.3 * (0.01 + r[4]),
-                part(0.2 * depth.min(wide), r[0])
-            )
-        }
+        "drie_trench" => trench_line(r, scale),
         "gaussian_groove" => format!(
             "{kind} depth={h} width={w} truncation={}",
             0.001 + 0.4 * r[2]
@@ -99,6 +87,26 @@ fn valid_line(kind: &str, r: [f64; 5], scale: f64) -> String {
         ),
         _ => panic!("no random line for {kind}"),
     }
+}
+
+/// A valid deep-reactive-ion trench.
+fn trench_line(r: [f64; 5], scale: f64) -> String {
+    let wide = 1000.0_f64.powf(r[0]);
+    let w = format!("{}um", scale * wide);
+    let part = |most: f64, r: f64| format!("{}um", scale * most * r);
+    let deg = |low: f64, high: f64, r: f64| format!("{}deg", low + (high - low) * r);
+    let kind = "drie_trench";
+    let depth = wide * 10.0_f64.powf(2.0 * r[1] - 1.0);
+    let pitch = depth / (2.0 + 40.0 * r[3]);
+    format!(
+        "{kind} top_width={w} depth={}um taper={} bow={} scallop_pitch={}um scallop_depth={}um foot_radius={}",
+        scale * depth,
+        deg(88.0, 91.0, r[2]),
+        part(0.05 * depth.min(wide), r[4]),
+        scale * pitch,
+        scale * pitch * 0.3 * (0.01 + r[4]),
+        part(0.2 * depth.min(wide), r[0])
+    )
 }
 
 /// Whether the section may be given an arched lid.

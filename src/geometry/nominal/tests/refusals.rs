@@ -229,6 +229,12 @@ fn sizes_that_contradict_one_another_are_refused_with_the_limit() {
             &["`a`", "below 5 um"],
             &["shorter"],
         ),
+    ]);
+}
+
+#[test]
+fn circles_that_touch_and_trenches_that_close_are_refused_with_the_limit() {
+    assert_refused(&[
         (
             "annulus outer_diameter=50um inner_diameter=50um",
             &["`inner_diameter`", "below 50 um"],

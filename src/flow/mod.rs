@@ -11,8 +11,8 @@ mod wall_shear;
 
 pub use field::DenseField;
 pub use section_flow::{
-    GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
-    WallShear,
+    GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
+    WallSample, WallShear,
 };
 pub use solve_outline::{
     DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline,

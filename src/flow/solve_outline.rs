@@ -27,6 +27,9 @@ const LAST_NODES: f64 = 2e7;
 /// Residual as a share of `1 / cells_across^2`: far enough below the discretisation error that
 /// extrapolation over the grids is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.002;
+/// Fluid angle, radians, from which the term of a corner is removed by extrapolation: its exponent there
+/// is 3.6.
+const WIDE_CORNER: f64 = 100.0 * std::f64::consts::PI / 180.0;
 /// Cells that an island must span to be seen by the three finest grids.
 const ISLAND_CELLS: f64 = 10.0;
 /// Lattice lines between the places where a re-entrant corner may fall: a node of the four finest grids.
@@ -377,7 +380,8 @@ fn geometry(outline: &Outline) -> SectionGeometry {
     }
 }
 
-/// Exponent `2 pi / omega` of the sharpest re-entrant corner, `None` without one.
+/// Exponent `2 pi / omega` of the widest corner, `None` where every corner is so narrow that its term
+/// vanishes among the rest.
 fn leading_exponent(corners: &[Vec<Corner>]) -> Option<f64> {
     let widest = corners
         .iter()
@@ -386,7 +390,7 @@ fn leading_exponent(corners: &[Vec<Corner>]) -> Option<f64> {
         .fold(0.0, f64::max);
     // A crack cannot open further than the full turn.
     let widest = widest.min(std::f64::consts::TAU);
-    (widest > std::f64::consts::PI).then(|| std::f64::consts::TAU / widest)
+    (widest > WIDE_CORNER).then(|| std::f64::consts::TAU / widest)
 }
 
 fn solver_report(answers: &[GridAnswer], spacing: f64, seconds: f64) -> SolverReport {

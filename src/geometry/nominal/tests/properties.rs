@@ -175,3 +175,26 @@ proptest! {
         prop_assert!((made.area() * 1e12 / expected - 1.0).abs() < 1e-9);
     }
 }
+
+#[test]
+fn a_kind_takes_an_arched_lid_just_when_the_list_of_flat_lids_has_it() {
+    for info in kinds() {
+        let line = format!(
+            "{} lid_bulge=1nm",
+            valid_line(info.name, [0.7, 0.6, 0.5, 0.4, 0.3], 1.0)
+        );
+        let refused = line
+            .parse::<super::super::NominalSpec>()
+            .unwrap()
+            .outline()
+            .err();
+        let listed = has_flat_lid(info.name);
+        assert_eq!(refused.is_none(), listed, "{line}: {refused:?}");
+        if let Some(error) = refused {
+            assert!(
+                matches!(error, super::super::NominalError::NoFlatLid { .. }),
+                "{error}"
+            );
+        }
+    }
+}

@@ -50,7 +50,7 @@ pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>) -> Estimate {
                     );
                     let best = remove(first, second, next);
                     // The constant of a corner term depends a little on where the lines pass the corner.
-                    (best, (best - first).abs() + 0.5 * SHARE * (first - second).abs())
+                    (best, (best - first).abs() + SHARE * (first - second).abs())
                 }
             };
             if in_order(*fine - middle, *middle - coarse, exponent.map_or(2.0, |p| p.min(2.0))) {

@@ -30,7 +30,8 @@ fn rounded(value: f64, digits: usize) -> (f64, i32) {
 
 /// A rounded value without a power of ten.
 fn plain(value: f64, exponent: i32, digits: usize) -> String {
-    let after_point = (digits as i32 - 1 - exponent).max(0) as usize;
+    let digits = i32::try_from(digits).unwrap_or(17);
+    let after_point = usize::try_from(digits - 1 - exponent).unwrap_or(0);
     format!("{value:.after_point$}")
 }
 
@@ -67,10 +68,10 @@ pub fn format_significant(value: f64, digits: usize) -> String {
 /// assert_eq!(format_si(2.5e15, "Pa s/m^4", 3), "2.50\u{d7}10^15 Pa s/m^4");
 /// ```
 pub fn format_si(value: f64, unit: &str, digits: usize) -> String {
-    if TAKES_PREFIX.contains(&unit) {
-        if let Some(text) = with_prefix(value, unit, digits, &PREFIXES) {
-            return text;
-        }
+    if TAKES_PREFIX.contains(&unit)
+        && let Some(text) = with_prefix(value, unit, digits, &PREFIXES)
+    {
+        return text;
     }
     let space = if unit.is_empty() { "" } else { " " };
     format!("{}{space}{unit}", format_significant(value, digits))

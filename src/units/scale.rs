@@ -1,5 +1,7 @@
 //! How a number in some unit becomes SI: an exact power of ten and an exact ratio.
 
+use std::fmt::Write as _;
+
 /// The SI value of one unit, kept as `numerator / denominator * 10^power`.
 ///
 /// Decimal prefixes stay a power of ten, so that they can be applied to written digits without rounding.
@@ -67,18 +69,24 @@ impl UnitScale {
     /// A plain power of ten is moved into the exponent before the digits are read, so the result is the
     /// double nearest to the written decimal. `buffer` is scratch space that callers reuse.
     pub(crate) fn read(self, number: &str, buffer: &mut String) -> Option<f64> {
-        if self.power == 0 || number.bytes().any(|b| !is_plain_digit(b)) {
-            return number.parse().ok().map(|value: f64| self.apply(value));
-        }
-        buffer.clear();
-        buffer.push_str(number);
-        buffer.push_str(match self.power {
-            -9 => "e-9",
-            -6 => "e-6",
-            -3 => "e-3",
-            _ => return number.parse().ok().map(|value: f64| self.apply(value)),
-        });
-        let scaled: f64 = buffer.parse().ok()?;
+        let scaled: f64 = if self.power == 0 {
+            number.parse().ok()?
+        } else {
+            let (digits, exponent) = match number.split_once(['e', 'E']) {
+                Some((digits, written)) => (digits, written.parse::<i32>().ok()?),
+                None => (number, 0),
+            };
+            if digits.bytes().any(|b| !is_plain_digit(b)) {
+                // Words that `parse` takes for numbers, such as `inf` and `nan`.
+                return number.parse().ok();
+            }
+            buffer.clear();
+            buffer.push_str(digits);
+            buffer.push('e');
+            // Writing to a String cannot fail.
+            let _ = write!(buffer, "{}", exponent.saturating_add(self.power));
+            buffer.parse().ok()?
+        };
         Some(scaled * self.numerator / self.denominator)
     }
 }

@@ -143,6 +143,24 @@ fn the_unit_asked_for_counts_only_where_the_file_has_none() {
     assert!((drawn.outline.area() / section.outline.area() - 1.0).abs() < 1e-12);
 }
 
+/// One column with decimal commas looks like two columns: with a unit given there is nothing else to stop it.
+#[test]
+fn pairs_that_may_be_decimals_are_refused_even_with_a_unit() {
+    let error = with_unit("12,50\n13,25\n14,75\n", "um").unwrap_err();
+    assert!(matches!(
+        *error.problem,
+        ReadProblem::AmbiguousDecimal { .. }
+    ));
+    assert_eq!(error.exit_kind(), ReadErrorKind::AmbiguousUnit);
+    for clear in [
+        "0,0\n100,0\n100,50\n",
+        "12,50\n13,25\n-14,75\n",
+        "12,50\n13,2.5\n9,75\n",
+    ] {
+        assert!(with_unit(clear, "um").is_ok(), "{clear}");
+    }
+}
+
 #[test]
 fn the_size_stop_can_be_lifted_and_the_kind_can_be_given() {
     let large = b"x_m,y_m\n0,0\n100,0\n100,50\n".to_vec();

@@ -197,12 +197,11 @@ fn in_attribute(text: &str, node: Node<'_, '_>, bad: &BadAttribute) -> Fault {
     let start = range.map_or(node.range().start, |range| {
         (range.start + bad.offset).min(range.end)
     });
-    let message = format!(
-        "`{}` of `{}` cannot be read",
-        bad.name,
-        node.tag_name().name()
-    );
-    Fault::at(text, start, Some(bad.name), ReadProblem::Svg { message })
+    let problem = ReadProblem::SvgAttribute {
+        name: bad.name,
+        element: node.tag_name().name().to_owned(),
+    };
+    Fault::at(text, start, None, problem)
 }
 
 /// The viewBox: x, y, width, height.

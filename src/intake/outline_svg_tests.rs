@@ -173,7 +173,7 @@ fn what_changes_the_meaning_is_refused() {
     ] {
         let found = problem("", body, Some(1e-6));
         assert!(
-            matches!(found, ReadProblem::Svg { .. }),
+            matches!(found, ReadProblem::SvgAttribute { .. }),
             "{body}: {found:?}"
         );
     }

@@ -82,7 +82,7 @@ fn header(
         .map(Some)
         .map_err(|(index, problem)| {
             let field = fields.get(index).copied().unwrap_or(row.content);
-            Fault::at(text, offset_of(text, field), Some("header"), problem)
+            Fault::at(text, offset_of(text, field), None, problem)
         })
 }
 
@@ -176,7 +176,7 @@ impl<'a> Table<'a> {
             } else {
                 offset_of(self.text, name)
             };
-            return Err(Fault::at(self.text, offset, Some("loop"), problem));
+            return Err(Fault::at(self.text, offset, None, problem));
         }
         Ok(())
     }

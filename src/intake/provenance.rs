@@ -44,7 +44,7 @@ impl std::fmt::Display for SectionKind {
 /// Where a section came from.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Provenance {
-    /// Path as given, `-` for standard input.
+    /// Path as given, or `standard input`.
     pub path: String,
     /// SHA-256 of the bytes, 64 lower-case hexadecimal digits.
     pub sha256: String,

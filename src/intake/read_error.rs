@@ -118,13 +118,13 @@ pub enum ReadProblem {
         expected: usize,
     },
     /// The header does not name the coordinates.
-    #[error("the header names no `{missing}` column")]
+    #[error("no `{missing}` column is named in the header")]
     Header {
         /// Name of the column that is missing.
         missing: &'static str,
     },
     /// The header has a column that is not known, or has it twice.
-    #[error("the header column `{name}` is not known or is there twice")]
+    #[error("the column `{name}` is not known, or is there twice")]
     HeaderColumn {
         /// Name of the column.
         name: String,
@@ -200,7 +200,7 @@ pub enum ReadProblem {
         table: &'static str,
     },
     /// A value of the wrong type.
-    #[error("`{key}` must be {expected}, not a {found}")]
+    #[error("`{key}` must be {expected}; this is of type {found}")]
     WrongType {
         /// The key.
         key: String,
@@ -223,6 +223,14 @@ pub enum ReadProblem {
     Svg {
         /// What the reader says.
         message: String,
+    },
+    /// An attribute of the drawing that cannot be read.
+    #[error("`{name}` of `{element}` cannot be read from here on")]
+    SvgAttribute {
+        /// Name of the attribute.
+        name: &'static str,
+        /// Name of the element.
+        element: String,
     },
     /// Something in the drawing that is not read.
     #[error("the drawing uses {what}, which is not read")]
@@ -414,6 +422,9 @@ impl ReadProblem {
             }
             Self::Toml { .. } => "correct the line; coordinates are written [[x, y], [x, y]]",
             Self::TwoOutlines => "keep one of the two",
+            Self::SvgAttribute { .. } => {
+                "write it as SVG has it: plain numbers, sizes above zero, lengths without % or em"
+            }
             Self::Svg { .. } => "open and save it again in a drawing program",
             Self::SvgUnsupported { .. } => {
                 "draw the walls as plain closed paths, rectangles, circles, ellipses or polygons"

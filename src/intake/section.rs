@@ -122,7 +122,11 @@ pub(crate) struct Content {
 /// [`ReadError`] when the file cannot be read or is above a limit, when its content is wrong, or when its
 /// unit or scale is missing or in doubt.
 pub fn read_section(path: &Path, options: &ReadOptions) -> Result<Section, ReadError> {
-    let name = path.display().to_string();
+    let name = if path == Path::new("-") {
+        "standard input".to_owned()
+    } else {
+        path.display().to_string()
+    };
     let bytes = read_bytes(path).map_err(|problem| ReadError::new(&name, problem))?;
     section_from_bytes(bytes, &name, options)
 }
@@ -221,7 +225,10 @@ fn kind_of(text: &str) -> Result<SectionKind, Fault> {
     if is_toml_line(line) {
         return Ok(SectionKind::SectionFile);
     }
-    let header = line.starts_with(['x', 'X', 'y', 'Y', 'z', 'Z', '"']);
+    let lower = line.trim_start_matches('"').to_lowercase();
+    let header = ["x", "y", "z", "loop", "lumen"]
+        .iter()
+        .any(|word| lower.starts_with(word));
     if numeric(first) || header || rows.take(20).any(numeric) {
         return Ok(SectionKind::OutlineText);
     }

@@ -109,7 +109,6 @@ fn near_miss(unit: &str, known: &str) -> String {
         .find(|name| name.to_lowercase() == wanted && *name != unit);
     match found {
         Some(name) => format!("case matters in units: did you mean `{name}`?"),
-        None => "use one of the known units; products and quotients are written `Pa s`, `uL/min`"
-            .to_owned(),
+        None => "use one of the known units".to_owned(),
     }
 }

@@ -83,8 +83,12 @@ impl UnitScale {
             buffer.clear();
             buffer.push_str(digits);
             buffer.push('e');
-            // Writing to a String cannot fail.
-            let _ = write!(buffer, "{}", exponent.saturating_add(self.power));
+            match exponent.saturating_add(self.power) {
+                -3 => buffer.push_str("-3"),
+                -6 => buffer.push_str("-6"),
+                // Writing to a String cannot fail.
+                other => drop(write!(buffer, "{other}")),
+            }
             buffer.parse().ok()?
         };
         Some(scaled * self.numerator / self.denominator)

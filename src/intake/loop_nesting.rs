@@ -1,0 +1,292 @@
+//! Which loops are lumens and which are islands.
+//!
+//! By depth: a loop inside an even number of others bounds fluid, inside an odd number it is an island of
+//! the smallest loop around it. Where a `lumen` label is given, the largest loop of a label is the outer
+//! wall and the others are its islands. Loops that cross or touch are sorted by their first vertex;
+//! finding such faults is the job of the outline's own check, not of this module.
+//!
+//! Edges are sorted into horizontal strips, and a ray to the left of each loop's first vertex meets only
+//! the edges of its strip, so that many loops in one section stay near linear.
+
+use std::collections::HashMap;
+
+use robust::{Coord, orient2d};
+
+use crate::geometry::{Loop, Lumen, Outline, Point};
+
+/// Most strips used; memory stays small against the vertices.
+const MOST_STRIPS: usize = 4096;
+
+/// A loop as read, with its lumen label where the file gives one.
+#[derive(Debug, Clone, PartialEq)]
+pub(crate) struct RawLoop {
+    /// Vertices, metres.
+    pub(crate) points: Vec<Point>,
+    /// Label of its lumen.
+    pub(crate) lumen: Option<String>,
+}
+
+/// Sorts loops into lumens and islands and gives the outline its orientation.
+pub(crate) fn assemble(raw: Vec<RawLoop>) -> Outline {
+    let (labelled, plain): (Vec<RawLoop>, Vec<RawLoop>) =
+        raw.into_iter().partition(|one| one.lumen.is_some());
+    let mut lumens = by_label(labelled);
+    lumens.extend(by_depth(
+        plain.into_iter().map(|one| Loop::new(one.points)).collect(),
+    ));
+    Outline { lumens }.oriented()
+}
+
+/// Loops of one label form a lumen; the one with the largest area is its outer wall.
+fn by_label(labelled: Vec<RawLoop>) -> Vec<Lumen> {
+    let mut order: HashMap<String, usize> = HashMap::new();
+    let mut groups: Vec<Vec<Loop>> = Vec::new();
+    for one in labelled {
+        let label = one.lumen.unwrap_or_default();
+        let slot = *order.entry(label).or_insert(groups.len());
+        let wall = Loop::new(one.points);
+        match groups.get_mut(slot) {
+            Some(group) => group.push(wall),
+            None => groups.push(vec![wall]),
+        }
+    }
+    groups
+        .into_iter()
+        .map(|mut walls| {
+            let sizes = walls.iter().map(|wall| wall.signed_area().abs());
+            let largest = sizes
+                .enumerate()
+                .fold((0, f64::NEG_INFINITY), |best, (i, size)| {
+                    if size > best.1 { (i, size) } else { best }
+                });
+            let outer = walls.remove(largest.0);
+            Lumen {
+                outer,
+                islands: walls,
+            }
+        })
+        .collect()
+}
+
+/// Loops at even depth become lumens, loops at odd depth islands of the smallest loop around them.
+fn by_depth(walls: Vec<Loop>) -> Vec<Lumen> {
+    let nests = nesting(&walls);
+    let mut slot_of = vec![None; walls.len()];
+    let mut lumens: Vec<Lumen> = Vec::new();
+    let mut islands: Vec<(usize, Loop)> = Vec::new();
+    for (index, wall) in walls.into_iter().enumerate() {
+        let nest = nests.get(index).copied().unwrap_or_default();
+        let around = nest.parent.filter(|parent| {
+            nest.depth % 2 == 1 && nests.get(*parent).is_some_and(|p| p.depth % 2 == 0)
+        });
+        if let Some(parent) = around {
+            islands.push((parent, wall));
+        } else {
+            if let Some(slot) = slot_of.get_mut(index) {
+                *slot = Some(lumens.len());
+            }
+            lumens.push(Lumen {
+                outer: wall,
+                islands: Vec::new(),
+            });
+        }
+    }
+    for (parent, wall) in islands {
+        let slot = slot_of.get(parent).copied().flatten();
+        match slot.and_then(|slot| lumens.get_mut(slot)) {
+            Some(lumen) => lumen.islands.push(wall),
+            None => lumens.push(Lumen {
+                outer: wall,
+                islands: Vec::new(),
+            }),
+        }
+    }
+    lumens
+}
+
+/// How deep a loop lies and the smallest loop around it.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+struct Nest {
+    depth: usize,
+    parent: Option<usize>,
+}
+
+/// Depth and parent of every loop.
+fn nesting(walls: &[Loop]) -> Vec<Nest> {
+    if walls.len() < 2 {
+        return vec![Nest::default(); walls.len()];
+    }
+    let areas: Vec<f64> = walls.iter().map(|wall| wall.signed_area().abs()).collect();
+    let strips = Strips::new(walls);
+    let mut crossed: Vec<usize> = Vec::new();
+    walls
+        .iter()
+        .enumerate()
+        .map(|(index, wall)| {
+            let Some(&point) = wall.points.first() else {
+                return Nest::default();
+            };
+            strips.crossings_left_of(walls, point, &mut crossed);
+            crossed.retain(|&other| other != index);
+            crossed.sort_unstable();
+            let mut nest = Nest::default();
+            for same in crossed.chunk_by(|a, b| a == b) {
+                let Some(&other) = same.first().filter(|_| same.len() % 2 == 1) else {
+                    continue;
+                };
+                nest.depth += 1;
+                let area = |i: usize| areas.get(i).copied().unwrap_or(f64::INFINITY);
+                if nest.parent.is_none_or(|parent| area(other) < area(parent)) {
+                    nest.parent = Some(other);
+                }
+            }
+            nest
+        })
+        .collect()
+}
+
+/// Edges by horizontal strip.
+struct Strips {
+    low: f64,
+    height: f64,
+    edges: Vec<Vec<(u32, u32)>>,
+}
+
+impl Strips {
+    fn new(walls: &[Loop]) -> Self {
+        let ys = || walls.iter().flat_map(|w| w.points.iter().map(|p| p[1]));
+        let low = ys().fold(f64::INFINITY, f64::min);
+        let high = ys().fold(f64::NEG_INFINITY, f64::max);
+        let count = ys().count().clamp(1, MOST_STRIPS);
+        let mut strips = Self {
+            low,
+            height: (high - low) / count as f64,
+            edges: vec![Vec::new(); count],
+        };
+        for (index, wall) in walls.iter().enumerate() {
+            for (vertex, (a, b)) in wall.edges().enumerate() {
+                let (first, last) = (strips.strip(a[1].min(b[1])), strips.strip(a[1].max(b[1])));
+                if a[1] != b[1]
+                    && let Some(range) = strips.edges.get_mut(first..=last)
+                {
+                    for strip in range {
+                        strip.push((index as u32, vertex as u32));
+                    }
+                }
+            }
+        }
+        strips
+    }
+
+    fn strip(&self, y: f64) -> usize {
+        let position = (y - self.low) / self.height;
+        if position.is_finite() {
+            (position.max(0.0) as usize).min(self.edges.len() - 1)
+        } else {
+            0
+        }
+    }
+
+    /// Loops crossed by a ray from the point to the left, once for each crossing.
+    fn crossings_left_of(&self, walls: &[Loop], point: Point, crossed: &mut Vec<usize>) {
+        crossed.clear();
+        let strip = self.edges.get(self.strip(point[1]));
+        for &(index, vertex) in strip.into_iter().flatten() {
+            let wall = walls.get(index as usize).map(|w| w.points.as_slice());
+            let points = wall.unwrap_or_default();
+            let vertex = vertex as usize;
+            let next = if vertex + 1 == points.len() {
+                0
+            } else {
+                vertex + 1
+            };
+            let (Some(&a), Some(&b)) = (points.get(vertex), points.get(next)) else {
+                continue;
+            };
+            if (a[1] > point[1]) != (b[1] > point[1]) && lies_right_of(point, a, b) {
+                crossed.push(index as usize);
+            }
+        }
+    }
+}
+
+/// Whether a point lies to the right of an edge that spans its height.
+fn lies_right_of(point: Point, a: Point, b: Point) -> bool {
+    let coord = |p: Point| Coord { x: p[0], y: p[1] };
+    let (low, high) = if a[1] < b[1] { (a, b) } else { (b, a) };
+    orient2d(coord(low), coord(high), coord(point)) < 0.0
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn square(x: f64, y: f64, half: f64) -> RawLoop {
+        let points = vec![
+            [x - half, y - half],
+            [x + half, y - half],
+            [x + half, y + half],
+            [x - half, y + half],
+        ];
+        RawLoop {
+            points,
+            lumen: None,
+        }
+    }
+
+    #[test]
+    fn depth_decides_between_lumen_and_island() {
+        let outline = assemble(vec![
+            square(0.0, 0.0, 1.0),
+            square(0.0, 0.0, 3.0),
+            square(0.0, 0.0, 9.0),
+            square(5.0, 5.0, 1.0),
+            square(30.0, 0.0, 2.0),
+        ]);
+        assert_eq!(outline.lumens.len(), 3);
+        let islands: Vec<usize> = outline.lumens.iter().map(|l| l.islands.len()).collect();
+        assert_eq!(islands, [0, 2, 0]);
+        assert!((outline.area() - (324.0 - 36.0 - 4.0 + 4.0 + 16.0)).abs() < 1e-9);
+    }
+
+    #[test]
+    fn a_label_overrides_depth() {
+        let label = |mut one: RawLoop, name: &str| {
+            one.lumen = Some(name.to_owned());
+            one
+        };
+        let outline = assemble(vec![
+            label(square(0.0, 0.0, 1.0), "a"),
+            label(square(0.0, 0.0, 3.0), "a"),
+            label(square(0.0, 0.0, 0.5), "b"),
+        ]);
+        assert_eq!(outline.lumens.len(), 2);
+        assert!((outline.lumens[0].outer.signed_area() - 36.0).abs() < 1e-12);
+        assert_eq!(outline.lumens[0].islands.len(), 1);
+    }
+
+    #[test]
+    fn many_posts_are_sorted_in_near_linear_time() {
+        let mut raw = vec![square(150.0, 150.0, 1000.0)];
+        for i in 0..300 {
+            for j in 0..300 {
+                raw.push(square(f64::from(i), f64::from(j), 0.3));
+            }
+        }
+        let outline = assemble(raw);
+        assert_eq!(outline.lumens.len(), 1);
+        assert_eq!(outline.lumens[0].islands.len(), 90_000);
+    }
+
+    #[test]
+    fn degenerate_loops_do_not_break_it() {
+        for points in [vec![], vec![[0.0, 0.0]], vec![[0.0, 0.0], [1.0, 0.0]]] {
+            let one = RawLoop {
+                points,
+                lumen: None,
+            };
+            let outline = assemble(vec![one, square(0.0, 0.0, 1.0)]);
+            assert_eq!(outline.loops().count(), 2);
+        }
+    }
+}

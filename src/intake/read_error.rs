@@ -1,0 +1,498 @@
+//! What can be wrong with a file: where it is, what it is, what to do.
+
+use crate::geometry::nominal::NominalError;
+use crate::units::{UnitError, format_length};
+
+/// A place in a text file, with the line it is on.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Place {
+    /// Line, from 1.
+    pub line: usize,
+    /// Column in characters, from 1.
+    pub column: usize,
+    /// The field: a column name, a key, an attribute.
+    pub field: Option<String>,
+    /// The line, or the part of a long line around the place.
+    pub excerpt: String,
+    /// Where the place is in the excerpt, characters from 0.
+    pub caret: usize,
+}
+
+/// The two families of read errors; the exit status is the same, the remedy is not.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[non_exhaustive]
+pub enum ReadErrorKind {
+    /// The file cannot be read or does not say what it must.
+    Unreadable,
+    /// The file is readable, but its unit or scale is missing or ambiguous.
+    AmbiguousUnit,
+}
+
+/// Why a file was not read.
+///
+/// The message is `path:line:column: field: problem`; [`ReadError::hint`] says what to do and
+/// [`ReadError::explain`] shows both with the line.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[error("{}{problem}", self.prefix())]
+pub struct ReadError {
+    /// Path as given.
+    pub path: String,
+    /// Where in the file, when it is in one place.
+    pub place: Option<Box<Place>>,
+    /// What is wrong.
+    pub problem: Box<ReadProblem>,
+}
+
+/// What is wrong with a file.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[non_exhaustive]
+pub enum ReadProblem {
+    /// There is no such file.
+    #[error("no such file")]
+    NotFound,
+    /// The path is a folder.
+    #[error("this is a folder, not a file")]
+    IsFolder,
+    /// The system refused to read the file.
+    #[error("cannot be read: {reason}")]
+    Io {
+        /// What the system said.
+        reason: String,
+    },
+    /// The file is above the size limit.
+    #[error("the file has {bytes} bytes, the limit is {limit} bytes ({} MiB)", limit >> 20)]
+    FileTooLarge {
+        /// Size.
+        bytes: u64,
+        /// Limit.
+        limit: u64,
+    },
+    /// The section has more vertices than the limit.
+    #[error("the outline has more than {limit} vertices")]
+    TooManyVertices {
+        /// Limit.
+        limit: usize,
+    },
+    /// The file holds nothing.
+    #[error("the file is empty")]
+    Empty,
+    /// The file is not text.
+    #[error("the file holds binary data, not text")]
+    Binary,
+    /// The text is broken in the encoding it declares.
+    #[error("the file begins like {encoding} text but is not valid {encoding}")]
+    BrokenEncoding {
+        /// Encoding by the byte order mark.
+        encoding: &'static str,
+    },
+    /// The content is none of the known kinds.
+    #[error("the content is not a section file, an outline in columns, or an SVG drawing")]
+    UnknownContent,
+    /// Text where a number is needed.
+    #[error("`{text}` is not a number")]
+    NotANumber {
+        /// The text.
+        text: String,
+    },
+    /// A number that is infinite or not a number.
+    #[error("`{text}` is not a finite number")]
+    NotFinite {
+        /// The text.
+        text: String,
+    },
+    /// Nothing where a number is needed.
+    #[error("there is no number here")]
+    EmptyField,
+    /// A vertex without exactly two coordinates.
+    #[error("a vertex needs two coordinates, {found} found")]
+    NotAPair {
+        /// Coordinates found.
+        found: usize,
+    },
+    /// A row has another number of columns than needed.
+    #[error("{found} column(s) found, {expected} needed")]
+    ColumnCount {
+        /// Columns found.
+        found: usize,
+        /// Columns needed.
+        expected: usize,
+    },
+    /// The header does not name the coordinates.
+    #[error("no `{missing}` column is named in the header")]
+    Header {
+        /// Name of the column that is missing.
+        missing: &'static str,
+    },
+    /// The header has a column that is not known, or has it twice.
+    #[error("the column `{name}` is not known, or is there twice")]
+    HeaderColumn {
+        /// Name of the column.
+        name: String,
+    },
+    /// A comma may be a decimal mark or a separator.
+    #[error("the comma in `{text}` may be a decimal mark or a separator")]
+    AmbiguousDecimal {
+        /// The text.
+        text: String,
+    },
+    /// Decimal points and decimal commas in one file.
+    #[error("`{text}` has another decimal mark than the numbers before it")]
+    MixedDecimal {
+        /// The text.
+        text: String,
+    },
+    /// No unit for coordinates.
+    #[error("the coordinates have no unit")]
+    MissingUnit,
+    /// The unit of the file and the unit asked for differ.
+    #[error("the file gives the unit `{file}`, the option gives `{option}`")]
+    UnitConflict {
+        /// Unit in the file.
+        file: String,
+        /// Unit asked for.
+        option: String,
+    },
+    /// A quantity or a unit that cannot be read.
+    #[error("{source}")]
+    Unit {
+        /// What is wrong with it.
+        source: UnitError,
+    },
+    /// The unit asked for cannot be read.
+    #[error("the unit asked for: {source}")]
+    UnitOption {
+        /// What is wrong with it.
+        source: UnitError,
+    },
+    /// A loop label comes back after another one.
+    #[error("loop `{label}` goes on here, but another loop came between")]
+    LoopReopened {
+        /// Label of the loop.
+        label: String,
+    },
+    /// There is no vertex.
+    #[error("there is no outline in the file")]
+    NoOutline,
+    /// The text is not TOML.
+    #[error("not valid TOML: {message}")]
+    Toml {
+        /// What the TOML reader says.
+        message: String,
+    },
+    /// A key that is not known.
+    #[error("`{key}` is not a key of {table}")]
+    UnknownKey {
+        /// The key.
+        key: String,
+        /// Where it is.
+        table: &'static str,
+        /// Known key with the nearest spelling.
+        nearest: Option<String>,
+        /// All known keys.
+        known: String,
+    },
+    /// A key that must be there.
+    #[error("{table} has no `{key}`")]
+    MissingKey {
+        /// The key.
+        key: &'static str,
+        /// Where it should be.
+        table: &'static str,
+    },
+    /// A value of the wrong type.
+    #[error("`{key}` must be {expected}; this is of type {found}")]
+    WrongType {
+        /// The key.
+        key: String,
+        /// What it must be.
+        expected: &'static str,
+        /// What it is.
+        found: &'static str,
+    },
+    /// Both a drawn outline and a nominal section.
+    #[error("the section has both `[[lumen]]` and `[nominal]`")]
+    TwoOutlines,
+    /// The nominal section has no outline.
+    #[error("{source}")]
+    Nominal {
+        /// What is wrong with it.
+        source: NominalError,
+    },
+    /// The drawing is not SVG.
+    #[error("not a valid SVG drawing: {message}")]
+    Svg {
+        /// What the reader says.
+        message: String,
+    },
+    /// An attribute of the drawing that cannot be read.
+    #[error("`{name}` of `{element}` cannot be read from here on")]
+    SvgAttribute {
+        /// Name of the attribute.
+        name: &'static str,
+        /// Name of the element.
+        element: String,
+    },
+    /// Something in the drawing that is not read.
+    #[error("the drawing uses {what}, which is not read")]
+    SvgUnsupported {
+        /// What it uses.
+        what: String,
+    },
+    /// The drawing states no scale.
+    #[error("the drawing states no scale")]
+    SvgNoScale,
+    /// Width and height of the drawing give two scales.
+    #[error(
+        "the drawing's width gives {} per unit, its height {}",
+        format_length(*horizontal),
+        format_length(*vertical)
+    )]
+    SvgTwoScales {
+        /// Metres per unit from the width.
+        horizontal: f64,
+        /// Metres per unit from the height.
+        vertical: f64,
+    },
+    /// The section is so small or large that its unit is in doubt.
+    #[error(
+        "the section is {} wide and {} high; sizes from 10 nm to 50 mm are expected",
+        format_length(*width),
+        format_length(*height)
+    )]
+    ImplausibleSize {
+        /// Width, m.
+        width: f64,
+        /// Height, m.
+        height: f64,
+        /// Unit that was used, where there is one.
+        unit: Option<String>,
+        /// Unit that would give a plausible size.
+        likely: Option<&'static str>,
+    },
+}
+
+impl ReadError {
+    /// An error about a whole file.
+    pub(crate) fn new(path: &str, problem: ReadProblem) -> Self {
+        Self {
+            path: path.to_owned(),
+            place: None,
+            problem: Box::new(problem),
+        }
+    }
+
+    /// Place before the message.
+    fn prefix(&self) -> String {
+        match &self.place {
+            None => format!("{}: ", self.path),
+            Some(place) => {
+                let field = place.field.as_ref();
+                let field = field.map(|name| format!("{name}: ")).unwrap_or_default();
+                format!("{}:{}:{}: {field}", self.path, place.line, place.column)
+            }
+        }
+    }
+
+    /// Whether the file is unreadable or its unit in doubt; both end with exit status 3.
+    pub fn exit_kind(&self) -> ReadErrorKind {
+        match &*self.problem {
+            ReadProblem::AmbiguousDecimal { .. }
+            | ReadProblem::MixedDecimal { .. }
+            | ReadProblem::MissingUnit
+            | ReadProblem::UnitConflict { .. }
+            | ReadProblem::Unit {
+                source:
+                    UnitError::NoUnit { .. }
+                    | UnitError::UnknownUnit { .. }
+                    | UnitError::DestroyedCharacter { .. },
+            }
+            | ReadProblem::SvgNoScale
+            | ReadProblem::SvgTwoScales { .. }
+            | ReadProblem::ImplausibleSize { .. } => ReadErrorKind::AmbiguousUnit,
+            _ => ReadErrorKind::Unreadable,
+        }
+    }
+
+    /// What the user can do, in one sentence.
+    pub fn hint(&self) -> String {
+        self.problem.hint()
+    }
+
+    /// The error for a terminal: message, place, the line with a caret, and the hint.
+    pub fn explain(&self) -> String {
+        let mut text = match &self.place {
+            None => format!("error: {self}\n"),
+            Some(place) => {
+                let field = place.field.as_ref();
+                let field = field.map(|name| format!("{name}: ")).unwrap_or_default();
+                let gutter = " ".repeat(place.line.to_string().len());
+                format!(
+                    "error: {field}{}\n{gutter}--> {}:{}:{}\n{} | {}\n{gutter} | {}^\n",
+                    self.problem,
+                    self.path,
+                    place.line,
+                    place.column,
+                    place.line,
+                    place.excerpt,
+                    " ".repeat(place.caret)
+                )
+            }
+        };
+        text.push_str("help: ");
+        text.push_str(&self.hint());
+        text.push('\n');
+        text
+    }
+}
+
+impl ReadProblem {
+    /// What the user can do, in one sentence.
+    fn hint(&self) -> String {
+        match self {
+            Self::Unit { source } | Self::UnitOption { source } => source.hint(),
+            Self::Nominal { source } => source.hint(),
+            Self::UnknownKey { nearest, known, .. } => match nearest {
+                Some(word) => format!("did you mean `{word}`?"),
+                None => format!("known keys: {known}"),
+            },
+            Self::MissingKey { key, table } => format!("add `{key}` to {table}"),
+            Self::WrongType { expected, .. } => format!("write {expected}"),
+            Self::Header { .. } | Self::HeaderColumn { .. } => {
+                "name the columns with their unit, `x_um,y_um` or `x [mm];y [mm]`; `loop` and \
+                 `lumen` may follow"
+                    .to_owned()
+            }
+            Self::UnitConflict { file, .. } => {
+                format!("leave the option out, or make it `{file}`; or correct the file")
+            }
+            Self::ImplausibleSize { unit, likely, .. } => implausible_hint(unit.as_deref(), *likely),
+            Self::ColumnCount { found, .. } if *found > 2 => {
+                "each row needs one x and one y; a third column needs a header that names it `loop` \
+                 or `lumen`; decimal commas are read only between semicolons"
+                    .to_owned()
+            }
+            other => other.fixed_hint().to_owned(),
+        }
+    }
+
+    /// Hints without numbers.
+    fn fixed_hint(&self) -> &'static str {
+        match self {
+            Self::NotFound => "check the spelling and the folder",
+            Self::IsFolder => "name a file in it",
+            Self::Io { .. } => "check the permissions and the disk",
+            Self::FileTooLarge { .. } => {
+                "thin the outline or cut the file down to the section; section files and drawings \
+                 above 64 MiB can be given as an outline in columns"
+            }
+            Self::TooManyVertices { .. } => {
+                "thin the outline; vertices closer than a thousandth of the section change nothing"
+            }
+            Self::Empty | Self::NoOutline => {
+                "give at least three vertices, one `x y` pair a line, or a section file with \
+                 `[[lumen]]` or `[nominal]`"
+            }
+            Self::Binary => "save the outline as UTF-8 text",
+            Self::BrokenEncoding { .. } => "save it again as UTF-8; the file may be cut off",
+            Self::UnknownContent => {
+                "see the README for the three forms; `--as section`, `--as outline` or `--as svg` \
+                 gives a more exact message"
+            }
+            Self::NotAPair { .. } => "write each vertex as [x, y]",
+            Self::NotANumber { .. } | Self::EmptyField => {
+                "write a plain number with a decimal point; comments start with #"
+            }
+            Self::NotFinite { .. } => "leave the vertex out or give its finite coordinate",
+            Self::ColumnCount { .. } => {
+                "each row needs an x and a y, separated by a comma, semicolon, tab or spaces"
+            }
+            Self::AmbiguousDecimal { .. } => {
+                "write decimal points; or separate columns by semicolons if commas are decimal \
+                 marks; or add a header such as `x_um,y_um`"
+            }
+            Self::MixedDecimal { .. } => {
+                "use one decimal mark throughout and no thousands separators"
+            }
+            Self::MissingUnit => {
+                "name it in the header (`x_um,y_um`), in the section file (`unit = \"um\"`) or by \
+                 `--unit um`"
+            }
+            Self::LoopReopened { .. } => {
+                "keep the rows of a loop together, or give it its own label"
+            }
+            Self::Toml { .. } => "correct the line; coordinates are written [[x, y], [x, y]]",
+            Self::TwoOutlines => "keep one of the two",
+            Self::SvgAttribute { .. } => {
+                "write it as SVG has it: plain numbers, sizes above zero, lengths without % or em"
+            }
+            Self::Svg { .. } => "open and save it again in a drawing program",
+            Self::SvgUnsupported { .. } => {
+                "draw the walls as plain closed paths, rectangles, circles, ellipses or polygons"
+            }
+            Self::SvgNoScale => {
+                "give the length of one drawing unit by `--scale \"1 um\"`, or set width and height \
+                 in mm, cm or in together with a viewBox"
+            }
+            Self::SvgTwoScales { .. } => {
+                "make width, height and viewBox agree, or give `--scale \"1 um\"`"
+            }
+            _ => "correct the file",
+        }
+    }
+}
+
+fn implausible_hint(unit: Option<&str>, likely: Option<&str>) -> String {
+    let allow = "or allow it with --allow-any-size";
+    match (unit, likely) {
+        (Some(unit), Some(likely)) => {
+            format!(
+                "the unit `{unit}` may be wrong; with `{likely}` the size is plausible; correct it, {allow}"
+            )
+        }
+        (None, Some(likely)) => {
+            format!(
+                "the scale may be wrong; numbers in `{likely}` give a plausible size; correct it, {allow}"
+            )
+        }
+        _ => format!("check the unit and the coordinates, {allow}"),
+    }
+}
+
+/// A problem with its place, before the path is known.
+#[derive(Debug, Clone, PartialEq)]
+pub(crate) struct Fault {
+    /// Where in the text.
+    pub(crate) place: Option<Box<Place>>,
+    /// What is wrong.
+    pub(crate) problem: Box<ReadProblem>,
+}
+
+impl Fault {
+    /// A problem at a byte offset of a text.
+    pub(crate) fn at(text: &str, offset: usize, field: Option<&str>, problem: ReadProblem) -> Self {
+        let mut place = super::source_text::place_at(text, offset);
+        place.field = field.map(str::to_owned);
+        Self {
+            place: Some(Box::new(place)),
+            problem: Box::new(problem),
+        }
+    }
+
+    /// The error with its path.
+    pub(crate) fn in_file(self, path: &str) -> ReadError {
+        ReadError {
+            path: path.to_owned(),
+            place: self.place,
+            problem: self.problem,
+        }
+    }
+}
+
+impl From<ReadProblem> for Fault {
+    fn from(problem: ReadProblem) -> Self {
+        Self {
+            place: None,
+            problem: Box::new(problem),
+        }
+    }
+}

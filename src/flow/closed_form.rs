@@ -347,17 +347,18 @@ fn s_cosh_minus_sinh(s: f64) -> f64 {
 
 /// An eccentric annulus: an inner wall of radius `b`, its centre `c` off that of the outer wall, radius `a`.
 ///
-/// `K = (pi/8) [a^4 - b^4 - 4 c^2 M^2 / (beta - alpha)
-/// - 8 c^2 M^2 sum n exp(-n (beta + alpha)) / sinh(n (beta - alpha))]` with
-/// `sinh(alpha) = M/a`, `sinh(beta) = M/b`,
-/// `4 c^2 M^2 = (a-c-b) (a-c+b) (a+c-b) (a+c+b)`.
+/// ```text
+/// K = (pi/8) [a^4 - b^4 - 4 c^2 M^2 / (beta - alpha)
+///             - 8 c^2 M^2 sum n exp(-n (beta + alpha)) / sinh(n (beta - alpha))]
+/// sinh(alpha) = M/a, sinh(beta) = M/b, 4 c^2 M^2 = (a-c-b) (a-c+b) (a+c-b) (a+c+b)
+/// ```
 ///
 /// - `outer`, `inner`: radii, m; `offset`: distance of the centres, m, not negative, less than their
 ///   difference
 ///
 /// # Source
-/// Piercy, Hooper and Winney (1933), Phil. Mag. 15; Snyder and Goldstein (1965), AIChE J. 11; in the form of
-/// White, Viscous Fluid Flow (all from memory).
+/// Piercy, Hooper and Winney (1933), Phil. Mag. 15; Snyder and Goldstein (1965), A.I.Ch.E. J. 11; in the form
+/// of White, Viscous Fluid Flow (all from memory).
 /// # Accuracy
 /// Rounding, magnified by about `((a + b) / (a - b))^3` for a narrow gap.
 /// # Errors

@@ -16,7 +16,7 @@ pub enum EntranceModel {
     Durst2005,
     /// `L/D = 0.60 / (1 + 0.035 Re) + 0.056 Re`; Chen (1973), J. Fluids Eng. 95, 153 (from memory).
     Chen1973,
-    /// `L/D = 0.59 + 0.056 Re`; Atkinson, Brocklebank, Card and Smith (1969), AIChE J. 15, 548 (from memory).
+    /// `L/D = 0.59 + 0.056 Re`; Atkinson, Brocklebank, Card and Smith (1969), A.I.Ch.E. J. 15, 548 (from memory).
     Atkinson1969,
 }
 

@@ -1,6 +1,6 @@
 //! The fluid of an operating point: viscosity and density with the place they come from.
 //!
-//! Three ways in: water by temperature (IAPWS SR6-08, at 0.1 MPa), dry air by temperature and pressure
+//! Three ways in: water by temperature (IAPWS SR6-08, at 1e5 Pa), dry air by temperature and pressure
 //! (Sutherland's law and the ideal gas law), or viscosity and density as given. Nothing is extrapolated:
 //! outside its range a formula is an error. SI throughout: K, Pa, Pa s, kg/m^3.
 
@@ -74,9 +74,9 @@ const WATER_SOURCE: &str =
     "IAPWS SR6-08(2011), liquid water at 0.1 MPa (viscosity and density formulas)";
 /// Temperatures between which IAPWS SR6-08 holds, K, both ends excluded.
 const WATER_RANGE: [f64; 2] = [253.15, 383.15];
-/// Melting temperature of ice at 0.1 MPa, K, to the digits used here.
+/// Melting temperature of ice at 1e5 Pa, K, to the digits used here.
 pub(crate) const WATER_FREEZES: f64 = 273.15;
-/// Boiling temperature of water at 0.1 MPa, K (99.6 C; from memory, IAPWS-95).
+/// Boiling temperature of water at 1e5 Pa, K (99.6 C; from memory, IAPWS-95).
 pub(crate) const WATER_BOILS: f64 = 372.76;
 
 /// Source text of dry air; also how a [`Fluid`] is known to be air.
@@ -111,7 +111,7 @@ pub(crate) struct GasState {
 }
 
 impl Fluid {
-    /// Liquid water at 0.1 MPa by its temperature.
+    /// Liquid water at 1e5 Pa by its temperature.
     ///
     /// Viscosity `mu = 280.68 t^-1.9 + 511.45 t^-7.7 + 61.131 t^-19.6 + 0.45903 t^-40` in uPa s with
     /// `t = T / 300 K`; density from the companion formula for the specific volume.
@@ -120,7 +120,7 @@ impl Fluid {
     ///   metastable, which [`super::validity_warnings`] says
     ///
     /// # Source
-    /// IAPWS (2011), Revised Supplementary Release on Properties of Liquid Water at 0.1 MPa, SR6-08(2011);
+    /// IAPWS (2011), Revised Supplementary Release on Properties of Liquid Water at 1e5 Pa, SR6-08(2011);
     /// coefficients read in a public implementation, checked against the release's own table of values.
     ///
     /// # Errors
@@ -293,7 +293,7 @@ impl Fluid {
     }
 }
 
-/// Viscosity of liquid water at 0.1 MPa, Pa s; IAPWS SR6-08(2011).
+/// Viscosity of liquid water at 1e5 Pa, Pa s; IAPWS SR6-08(2011).
 fn water_viscosity(temperature: f64) -> f64 {
     let t = temperature / 300.0;
     let terms = [
@@ -308,7 +308,7 @@ fn water_viscosity(temperature: f64) -> f64 {
         .sum::<f64>()
 }
 
-/// Density of liquid water at 0.1 MPa, kg/m^3; IAPWS SR6-08(2011).
+/// Density of liquid water at 1e5 Pa, kg/m^3; IAPWS SR6-08(2011).
 ///
 /// Specific volume `v = (R Tr / p0) [a5 + sum a_i alpha^n_i + sum b_i beta^m_i]` with
 /// `alpha = Tr / (593 K - T)`, `beta = Tr / (T - 232 K)`, `Tr = 10 K`, `R = 461.51805 J/(kg K)`.

@@ -49,6 +49,8 @@ struct Formula {
 
 /// A conductance with a remark, or the reason why there is none.
 type Outcome = Result<(f64, String), String>;
+/// How a formula is evaluated.
+type Evaluate = fn(&Measures) -> Outcome;
 
 /// Measures of a section with one lumen and no island.
 struct Measures {
@@ -126,7 +128,7 @@ pub fn shortcuts(outline: &Outline, conductance: f64) -> Vec<ShortcutRow> {
 }
 
 /// All formulas in the order of the rows.
-fn formulas() -> Vec<(Formula, fn(&Measures) -> Outcome)> {
+fn formulas() -> Vec<(Formula, Evaluate)> {
     let linear = |name| Formula {
         name,
         source: LINEAR_SOURCE,
@@ -138,7 +140,7 @@ fn formulas() -> Vec<(Formula, fn(&Measures) -> Outcome)> {
         range,
     };
     vec![
-        (PLATES, plates),
+        (PLATES, |m| Ok(plates(m))),
         (linear("rectangle 1 - 0.63 h/w on the top width"), |m| {
             linear_rectangle(m, m.side_width(m.top, "top"))
         }),
@@ -156,11 +158,11 @@ fn formulas() -> Vec<(Formula, fn(&Measures) -> Outcome)> {
         ),
         (PIPE, |m| {
             let dh = m.hydraulic_diameter();
-            Ok((PI * dh.powi(4) / 128.0, format!("Dh = {:.4e} m", dh)))
+            Ok((PI * dh.powi(4) / 128.0, format!("Dh = {dh:.4e} m")))
         }),
         (PIPE_FRICTION, |m| {
             let dh = m.hydraulic_diameter();
-            Ok((m.area * dh * dh / 32.0, format!("Dh = {:.4e} m", dh)))
+            Ok((m.area * dh * dh / 32.0, format!("Dh = {dh:.4e} m")))
         }),
         (POLAR, |m| {
             let k = m.area.powi(4) / (16.0 * PI * PI * m.polar_moment);
@@ -172,14 +174,22 @@ fn formulas() -> Vec<(Formula, fn(&Measures) -> Outcome)> {
                 "compactness, ellipse form, alpha = (8/3) C - 8 pi/3",
                 "ellipses: R within 0.14 % for axes up to 2:1, 4 % at 10:1 (computed)",
             ),
-            |m| compactness(m, 8.0 / 3.0, -8.0 * PI / 3.0, 4.0 * PI, "an ellipse"),
+            |m| {
+                Ok(compactness(
+                    m,
+                    8.0 / 3.0,
+                    -8.0 * PI / 3.0,
+                    4.0 * PI,
+                    "an ellipse",
+                ))
+            },
         ),
         (
             compact(
                 "compactness, rectangle form, alpha = (22/7) C - 65/3",
                 "rectangles: R within 0.6 % for C up to 29, 3.1 % at 20:1 (computed)",
             ),
-            |m| compactness(m, 22.0 / 7.0, -65.0 / 3.0, 16.0, "a rectangle"),
+            |m| Ok(compactness(m, 22.0 / 7.0, -65.0 / 3.0, 16.0, "a rectangle")),
         ),
         (
             compact(
@@ -187,14 +197,15 @@ fn formulas() -> Vec<(Formula, fn(&Measures) -> Outcome)> {
                 "triangles: R within 0.9 % for isosceles ones with apex 10 to 170 degrees (computed)",
             ),
             |m| {
-                let least = 12.0 * 3.0_f64.sqrt();
-                compactness(
+                let root = 3.0_f64.sqrt();
+                let intercept = 40.0 * root / 17.0;
+                Ok(compactness(
                     m,
                     25.0 / 17.0,
-                    40.0 * 3.0_f64.sqrt() / 17.0,
-                    least,
+                    intercept,
+                    12.0 * root,
                     "a triangle",
-                )
+                ))
             },
         ),
     ]
@@ -323,7 +334,7 @@ fn orientation(width: f64, height: f64) -> (f64, f64, &'static str) {
 }
 
 /// Parallel plates on the equal-area width.
-fn plates(m: &Measures) -> Outcome {
+fn plates(m: &Measures) -> (f64, String) {
     let width = m.equal_area_width();
     let (h, w, upright) = orientation(width, m.height);
     let range = if h / w > PLATES_UP_TO {
@@ -332,10 +343,10 @@ fn plates(m: &Measures) -> Outcome {
         String::new()
     };
     let measures = format!("equal-area width {width:.4e} m, height {:.4e} m", m.height);
-    Ok((
+    (
         w * h.powi(3) / 12.0,
         join(&join(&measures, upright), &range),
-    ))
+    )
 }
 
 /// The 0.63 form on a width.
@@ -375,7 +386,7 @@ fn root_area(m: &Measures) -> Outcome {
 }
 
 /// `alpha = A^2 / K = slope C + intercept` with the compactness `C = P^2 / A`.
-fn compactness(m: &Measures, slope: f64, intercept: f64, least: f64, shape: &str) -> Outcome {
+fn compactness(m: &Measures, slope: f64, intercept: f64, least: f64, shape: &str) -> (f64, String) {
     let c = m.perimeter * m.perimeter / m.area;
     let measures = format!("C = {c:.3}; fitted to {shape}, counts only for a section like it");
     // A polygon drawn from the most compact shape of its kind lies on the limit up to rounding.
@@ -384,10 +395,10 @@ fn compactness(m: &Measures, slope: f64, intercept: f64, least: f64, shape: &str
     } else {
         String::new()
     };
-    Ok((
+    (
         m.area * m.area / (slope * c + intercept),
         join(&measures, &range),
-    ))
+    )
 }
 
 #[cfg(test)]

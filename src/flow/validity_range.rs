@@ -31,7 +31,7 @@ const TRANSITION: f64 = 0.1;
 /// Relative gain of conductance per slip length over hydraulic diameter: 8 for every section that has an
 /// inscribed circle touching all sides, 12 for parallel plates (exact).
 const SLIP_GAIN: f64 = 12.0;
-/// Pressure drop beyond which water properties at 0.1 MPa are off by about half a per cent, Pa (from memory).
+/// Pressure drop beyond which water properties at 1e5 Pa are off by about half a per cent, Pa (from memory).
 const WATER_PRESSURE: f64 = 1e7;
 /// Heat capacity of liquid water per mass, J/(kg K), near room temperature (textbook).
 const WATER_HEAT_CAPACITY: f64 = 4180.0;
@@ -281,7 +281,7 @@ fn water_temperature(fluid: &Fluid) -> Option<Warning> {
     })
 }
 
-/// Water far from 0.1 MPa, or heated by its own friction.
+/// Water far from 1e5 Pa, or heated by its own friction.
 fn water_pressure(fluid: &Fluid, point: &OperatingPoint) -> Vec<Warning> {
     let Some(density) = fluid.density.filter(|_| fluid.is_water()) else {
         return Vec::new();

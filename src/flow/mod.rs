@@ -1,19 +1,29 @@
 //! From the solved field to hydraulics: conductance, friction factors, shear, operating point.
 
+mod chords;
+pub mod closed_form;
+mod entrance;
 mod extrapolation;
 mod field;
+mod fluid;
 mod grid_integrals;
 mod identities;
+mod operating_point;
 mod peak;
 mod section_flow;
+mod shortcuts;
 mod solve_outline;
+mod validity_range;
 mod wall_shear;
 
+pub use entrance::{EntranceModel, entrance_length, excess_pressure_factor};
 pub use field::DenseField;
+pub use fluid::{Fluid, FluidError};
+pub use operating_point::{Drive, OperatingPoint, OperatingPointError};
 pub use section_flow::{
     GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
     WallSample, WallShear,
 };
-pub use solve_outline::{
-    DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline,
-};
+pub use shortcuts::{ShortcutRow, shortcuts};
+pub use solve_outline::{DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline};
+pub use validity_range::{outside_validity, validity_warnings};

@@ -10,7 +10,7 @@ pub use field::DenseField;
 pub use fluid::Fluid;
 pub use operating_point::OperatingPoint;
 pub use section_flow::{
-    GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
-    WallShear,
+    GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
+    WallSample, WallShear,
 };
 pub use shortcuts::ShortcutRow;

@@ -65,7 +65,11 @@ fn number(value: impl Into<Option<f64>>) -> String {
 fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
     let source = document.source;
     let fluid = document.fluid;
-    let codes: Vec<&str> = document.all_warnings().iter().map(|w| w.code.as_str()).collect();
+    let codes: Vec<&str> = document
+        .all_warnings()
+        .iter()
+        .map(|w| w.code.as_str())
+        .collect();
     let resistance_per_length = document.resistance_per_length();
     let resistance = document.resistance();
     let mut all = vec![
@@ -85,7 +89,10 @@ fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
             number(resistance_per_length.map(|r| r.value)),
         ),
         ("length_m", number(document.length)),
-        ("resistance_pa_s_per_m3", number(resistance.map(|r| r.value))),
+        (
+            "resistance_pa_s_per_m3",
+            number(resistance.map(|r| r.value)),
+        ),
         (
             "resistance_estimated_error_pa_s_per_m3",
             number(resistance.map(|r| r.error)),
@@ -108,7 +115,10 @@ fn section_fields(flow: &SectionFlow) -> Vec<Field> {
         ("islands_1", g.islands.to_string()),
         ("vertices_1", g.vertices.to_string()),
         ("conductance_m4", number(flow.conductance.value)),
-        ("conductance_estimated_error_m4", number(flow.conductance.error)),
+        (
+            "conductance_estimated_error_m4",
+            number(flow.conductance.error),
+        ),
         ("fanning_f_re_dh_1", number(flow.fanning_dh)),
         ("darcy_f_re_dh_1", number(flow.darcy_dh)),
         ("fanning_f_re_sqrt_area_1", number(flow.fanning_sqrt_area)),
@@ -116,9 +126,18 @@ fn section_fields(flow: &SectionFlow) -> Vec<Field> {
         ("peak_x_m", number(flow.peak.at[0])),
         ("peak_y_m", number(flow.peak.at[1])),
         ("momentum_factor_1", number(flow.momentum_factor.value)),
-        ("kinetic_energy_factor_1", number(flow.kinetic_energy_factor.value)),
-        ("wall_shear_mean_per_gradient_m", number(flow.wall_shear.mean_per_gradient)),
-        ("wall_shear_max_per_gradient_m", number(flow.wall_shear.max_per_gradient)),
+        (
+            "kinetic_energy_factor_1",
+            number(flow.kinetic_energy_factor.value),
+        ),
+        (
+            "wall_shear_mean_per_gradient_m",
+            number(flow.wall_shear.mean_per_gradient),
+        ),
+        (
+            "wall_shear_max_per_gradient_m",
+            number(flow.wall_shear.max_per_gradient),
+        ),
         ("wall_shear_max_x_m", number(flow.wall_shear.max_at[0])),
         ("wall_shear_max_y_m", number(flow.wall_shear.max_at[1])),
         ("grid_spacing_m", number(flow.grid.spacing)),
@@ -134,13 +153,28 @@ fn point_fields(point: Option<&OperatingPoint>) -> Vec<Field> {
     vec![
         ("flow_rate_m3_per_s", number(point.map(|p| p.flow_rate))),
         ("pressure_drop_pa", number(point.map(|p| p.pressure_drop))),
-        ("pressure_gradient_pa_per_m", number(point.map(|p| p.pressure_gradient))),
-        ("mean_velocity_m_per_s", number(point.map(|p| p.mean_velocity))),
-        ("peak_velocity_m_per_s", number(point.map(|p| p.peak_velocity))),
+        (
+            "pressure_gradient_pa_per_m",
+            number(point.map(|p| p.pressure_gradient)),
+        ),
+        (
+            "mean_velocity_m_per_s",
+            number(point.map(|p| p.mean_velocity)),
+        ),
+        (
+            "peak_velocity_m_per_s",
+            number(point.map(|p| p.peak_velocity)),
+        ),
         ("reynolds_dh_1", number(point.and_then(|p| p.reynolds_dh))),
-        ("wall_shear_mean_pa", number(point.map(|p| p.wall_shear_mean))),
+        (
+            "wall_shear_mean_pa",
+            number(point.map(|p| p.wall_shear_mean)),
+        ),
         ("wall_shear_max_pa", number(point.map(|p| p.wall_shear_max))),
         ("residence_time_s", number(point.map(|p| p.residence_time))),
-        ("entrance_length_m", number(point.and_then(|p| p.entrance_length))),
+        (
+            "entrance_length_m",
+            number(point.and_then(|p| p.entrance_length)),
+        ),
     ]
 }

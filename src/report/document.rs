@@ -131,7 +131,13 @@ impl<'a> SolveDocument<'a> {
 
     /// All warnings: of the section, of the request, and the caution where a pressure is shown.
     pub fn all_warnings(&self) -> Vec<Warning> {
-        let mut all: Vec<Warning> = self.flow.warnings.iter().chain(self.warnings).cloned().collect();
+        let mut all: Vec<Warning> = self
+            .flow
+            .warnings
+            .iter()
+            .chain(self.warnings)
+            .cloned()
+            .collect();
         let cautioned = all.iter().any(|w| w.code == Code::Caution);
         if self.operating_point.is_some() && !cautioned {
             all.push(Warning {

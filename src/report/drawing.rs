@@ -130,7 +130,13 @@ pub struct Drawing {
 
 impl Drawing {
     /// Adds text starting at a base line position.
-    pub(crate) fn text(&mut self, at: Point, anchor: Anchor, size: TextSize, text: impl Into<String>) {
+    pub(crate) fn text(
+        &mut self,
+        at: Point,
+        anchor: Anchor,
+        size: TextSize,
+        text: impl Into<String>,
+    ) {
         self.items.push(Item::Text {
             at,
             anchor,

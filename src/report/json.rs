@@ -159,7 +159,11 @@ impl<'a> Root<'a> {
         let no_fluid = "no fluid was given";
         let no_length = "no channel length was given";
         let resistance = document.resistance();
-        let reason = if document.fluid.is_none() { no_fluid } else { no_length };
+        let reason = if document.fluid.is_none() {
+            no_fluid
+        } else {
+            no_length
+        };
         Self {
             schema: SCHEMA,
             tool_version: env!("CARGO_PKG_VERSION"),
@@ -188,7 +192,11 @@ impl<'a> Root<'a> {
             grid: Grid::new(flow),
             solver: Solver::new(&flow.solver),
             bracket_relative_width: Quantity::optional(None, "1", NO_BRACKET),
-            identities: flow.identities.iter().map(|i| (i.name, IdentityView::new(i))).collect(),
+            identities: flow
+                .identities
+                .iter()
+                .map(|i| (i.name, IdentityView::new(i)))
+                .collect(),
             fluid: FluidView::new(document),
             resistance_per_length: maybe(document.resistance_per_length(), "Pa s/m^4", no_fluid),
             length: Quantity::optional(document.length, "m", no_length),
@@ -197,7 +205,11 @@ impl<'a> Root<'a> {
             shortcuts: document
                 .shortcuts
                 .map(|rows| rows.iter().map(ShortcutView::new).collect()),
-            warnings: document.all_warnings().into_iter().map(WarningView::new).collect(),
+            warnings: document
+                .all_warnings()
+                .into_iter()
+                .map(WarningView::new)
+                .collect(),
             absent_because: absent_parts(document),
         }
     }
@@ -215,7 +227,10 @@ fn maybe(estimate: Option<Estimate>, unit: &'static str, reason: &'static str) -
 fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static str> {
     let mut reasons = BTreeMap::new();
     if document.source.is_none() {
-        reasons.insert("source", "the section was built in code, not read from a file");
+        reasons.insert(
+            "source",
+            "the section was built in code, not read from a file",
+        );
     }
     if document.fluid.is_none() {
         reasons.insert("fluid", "no fluid was given");

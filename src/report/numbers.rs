@@ -6,12 +6,7 @@
 pub(crate) type Unit = (&'static str, f64);
 
 /// Lengths, largest first.
-pub(crate) const LENGTHS: &[Unit] = &[
-    ("m", 1.0),
-    ("mm", 1e-3),
-    ("\u{b5}m", 1e-6),
-    ("nm", 1e-9),
-];
+pub(crate) const LENGTHS: &[Unit] = &[("m", 1.0), ("mm", 1e-3), ("\u{b5}m", 1e-6), ("nm", 1e-9)];
 /// Areas, largest first.
 pub(crate) const AREAS: &[Unit] = &[
     ("m\u{b2}", 1.0),
@@ -50,7 +45,7 @@ pub(crate) const DYN_PER_CM2: f64 = 0.1;
 /// Pa s/m^3 in one mbar min/uL: 100 Pa over (1e-9/60) m^3/s.
 pub(crate) const MBAR_MIN_PER_UL: f64 = 6e12;
 
-/// `value` with `digits` significant digits, in plain decimals between 1e-4 and 1e6, else with exponent.
+/// `value` with `digits` significant digits, in plain decimals between 1e-3 and 1e6, else with exponent.
 ///
 /// A value that is not finite reads `not available`, so no output shows it as a number.
 pub(crate) fn significant(value: f64, digits: usize) -> String {
@@ -63,8 +58,11 @@ pub(crate) fn significant(value: f64, digits: usize) -> String {
         .split_once('e')
         .and_then(|(_, e)| e.parse().ok())
         .unwrap_or(0);
-    if value == 0.0 || (-4..6).contains(&exponent) {
-        let decimals = usize::try_from(digits as i32 - 1 - exponent).unwrap_or(0);
+    if value == 0.0 || (-3..6).contains(&exponent) {
+        let decimals = i32::try_from(digits)
+            .ok()
+            .and_then(|d| usize::try_from(d - 1 - exponent).ok())
+            .unwrap_or(0);
         format!("{value:.decimals$}")
     } else {
         scientific
@@ -87,15 +85,42 @@ pub(crate) fn with_unit(value: f64, units: &[Unit], digits: usize) -> String {
     format!("{} {name}", significant(value / size, digits))
 }
 
-/// A relative quantity in per cent with two digits, for example `0.0012 %`.
+/// A place in the section as `x 5.000 mm, y 5.000 um`; each unit fits the coordinate or the extent.
+pub(crate) fn place(at: [f64; 2], extent: [f64; 2], digits: usize) -> String {
+    let coordinate = |v: f64, extent: f64| {
+        let (name, size) = fitting_unit(v.abs().max(extent), LENGTHS);
+        let rounding = 1e-9 * extent;
+        let v = if v.abs() < rounding { 0.0 } else { v };
+        format!("{} {name}", significant(v / size, digits))
+    };
+    format!(
+        "x {}, y {}",
+        coordinate(at[0], extent[0]),
+        coordinate(at[1], extent[1])
+    )
+}
+
+/// A relative quantity in per cent with two digits, for example `0.0012 %`, plain down to a part in 1e10.
 pub(crate) fn per_cent(relative: f64) -> String {
-    format!("{} %", significant(100.0 * relative, 2))
+    let value = 100.0 * relative;
+    let power = value.abs().log10().floor();
+    if (-8.0..-3.0).contains(&power) {
+        format!("{value:.decimals$} %", decimals = (1.0 - power) as usize)
+    } else {
+        format!("{} %", significant(value, 2))
+    }
 }
 
 /// One line of text from a user: control characters become blanks, so that no name moves the cursor.
 pub(crate) fn one_line(text: &str) -> String {
     text.chars()
-        .map(|c| if c.is_control() || is_direction_mark(c) { ' ' } else { c })
+        .map(|c| {
+            if c.is_control() || is_direction_mark(c) {
+                ' '
+            } else {
+                c
+            }
+        })
         .collect()
 }
 
@@ -132,7 +157,8 @@ mod tests {
         assert_eq!(significant(0.0, 3), "0.00");
         assert_eq!(significant(14.22708, 6), "14.2271");
         assert_eq!(significant(9.9996, 4), "10.00");
-        assert_eq!(significant(-0.000_123_456, 3), "-0.000123");
+        assert_eq!(significant(-0.001_234_56, 3), "-0.00123");
+        assert_eq!(significant(0.000_3, 2), "3.0e-4");
         assert_eq!(significant(1.234_56e-19, 4), "1.235e-19");
         assert_eq!(significant(123_456.0, 3), "123456");
         assert_eq!(significant(f64::NAN, 3), "not available");
@@ -144,8 +170,22 @@ mod tests {
         assert_eq!(with_unit(100e-6, LENGTHS, 4), "100.0 \u{b5}m");
         assert_eq!(with_unit(1e-6, LENGTHS, 2), "1.0 \u{b5}m");
         assert_eq!(with_unit(5e-9 / 60.0, FLOW_RATES, 2), "5.0 \u{b5}L/min");
-        assert_eq!(with_unit(2e-13, LENGTHS, 2), "0.00020 nm");
+        assert_eq!(with_unit(2e-13, LENGTHS, 2), "2.0e-4 nm");
+        assert_eq!(
+            place([5e-3, 1e-30], [1e-2, 1e-5], 4),
+            "x 5.000 mm, y 0.000 \u{b5}m"
+        );
         assert_eq!(with_unit(-2e4, PRESSURES, 2), "-20 kPa");
+    }
+
+    #[test]
+    fn per_cent_stays_readable_for_small_errors() {
+        assert_eq!(per_cent(2.1e-6), "0.00021 %");
+        assert_eq!(per_cent(-3e-5), "-0.0030 %");
+        assert_eq!(per_cent(0.123), "12 %");
+        assert_eq!(per_cent(0.0), "0.0 %");
+        assert_eq!(per_cent(4e-14), "4.0e-12 %");
+        assert_eq!(per_cent(f64::NAN), "not available %");
     }
 
     #[test]

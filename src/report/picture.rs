@@ -4,6 +4,7 @@
 //! as exactly as it is known. Colour never stands alone: contour lines repeat it, and the colour bar is
 //! marked at the same values.
 
+use std::fmt::Write as _;
 use std::path::{Path, PathBuf};
 
 use super::colour_map::viridis;
@@ -11,7 +12,7 @@ use super::contour::{Lattice, contour};
 use super::document::SolveDocument;
 use super::drawing::{Anchor, Drawing, INK, Item, PAPER, Raster, SOLID, TextSize};
 use super::numbers::{self, significant, with_unit};
-use super::picture_layout::{Exaggeration, Layout};
+use super::picture_layout::{Exaggeration, Layout, straightened, thinned};
 use super::png::{PngError, to_png};
 use super::svg::to_svg;
 use super::table::wrapped;
@@ -26,7 +27,7 @@ const LEAST_WIDTH: f64 = 760.0;
 /// Height of the colour bar, px.
 const BAR_HEIGHT: f64 = 22.0;
 /// Most contour lines.
-const MOST_LEVELS: usize = 10;
+const MOST_LEVELS: usize = 12;
 /// Length of a vertical scale bar at most, px.
 const VERTICAL_BAR: f64 = 60.0;
 /// Below this share of the peak the map is dark and contour lines are white.
@@ -54,11 +55,15 @@ impl PictureFormat {
     /// assert!(PictureFormat::of_path("flow.gif".as_ref()).is_err());
     /// ```
     pub fn of_path(path: &Path) -> Result<Self, PictureError> {
-        let extension = path.extension().map(|e| e.to_string_lossy().to_ascii_lowercase());
+        let extension = path
+            .extension()
+            .map(|e| e.to_string_lossy().to_ascii_lowercase());
         match extension.as_deref() {
             Some("png") => Ok(Self::Png),
             Some("svg") => Ok(Self::Svg),
-            _ => Err(PictureError::Extension { path: path.to_owned() }),
+            _ => Err(PictureError::Extension {
+                path: path.to_owned(),
+            }),
         }
     }
 }
@@ -77,7 +82,9 @@ pub enum PictureError {
     #[error("the outline has no width or no height, so there is nothing to draw")]
     NoExtent,
     /// The field is not a lattice of at least two by two finite nodes.
-    #[error("the field ({nodes_x} x {nodes_y} nodes, {found} values) is not a lattice that can be drawn")]
+    #[error(
+        "the field ({nodes_x} x {nodes_y} nodes, {found} values) is not a lattice that can be drawn"
+    )]
     Field {
         /// Nodes along x.
         nodes_x: usize,
@@ -118,9 +125,15 @@ pub fn draw_velocity(
     field: &DenseField,
 ) -> Result<Drawing, PictureError> {
     let (nodes_x, nodes_y, found) = (field.nodes_x, field.nodes_y, field.phi.len());
-    let finite = field.phi.iter().all(|p| p.is_finite()) && field.spacing > 0.0 && document.flow.peak.phi > 0.0;
+    let finite = field.phi.iter().all(|p| p.is_finite())
+        && field.spacing > 0.0
+        && document.flow.peak.phi > 0.0;
     if nodes_x < 2 || nodes_y < 2 || found != nodes_x * nodes_y || !finite {
-        return Err(PictureError::Field { nodes_x, nodes_y, found });
+        return Err(PictureError::Field {
+            nodes_x,
+            nodes_y,
+            found,
+        });
     }
     let (layout, exaggeration) = Layout::of(outline).ok_or(PictureError::NoExtent)?;
     let mut page = Page::new(document, layout, exaggeration);
@@ -150,7 +163,11 @@ impl Shown {
             let (name, size) = numbers::fitting_unit(peak * scale, numbers::VELOCITIES);
             (scale / size, name.to_owned(), "axial velocity")
         } else {
-            (1.0 / document.mean_phi(), String::new(), "axial velocity / mean velocity")
+            (
+                1.0 / document.mean_phi(),
+                String::new(),
+                "axial velocity / mean velocity",
+            )
         };
         let top = peak * factor;
         let (levels, step) = ticks::levels(top, MOST_LEVELS);
@@ -204,9 +221,13 @@ impl<'a> Page<'a> {
     /// A paragraph at the left border, broken to the width of the page.
     fn paragraph(&mut self, text: &str, size: TextSize, left: f64) {
         let room = ((MARGIN + self.inner - left) / size.advance()).floor() as usize;
-        for line in wrapped(text, room.max(1)).iter().flat_map(|l| pieces(l, room.max(1))) {
+        for line in wrapped(text, room.max(1))
+            .iter()
+            .flat_map(|l| pieces(l, room.max(1)))
+        {
             self.y += size.line_height();
-            self.drawing.text([left, self.y - 5.0], Anchor::Start, size, line);
+            self.drawing
+                .text([left, self.y - 5.0], Anchor::Start, size, line);
         }
     }
 
@@ -252,8 +273,15 @@ impl<'a> Page<'a> {
             columns: field.nodes_x,
             rows: field.nodes_y,
         };
-        let outer = outline.lumens.iter().map(|l| layout.page_loop(&l.outer)).collect();
-        self.drawing.items.push(Item::Area { loops: outer, fill: SOLID });
+        let outer = outline
+            .lumens
+            .iter()
+            .map(|l| layout.page_loop(&l.outer))
+            .collect();
+        self.drawing.items.push(Item::Area {
+            loops: outer,
+            fill: SOLID,
+        });
         self.drawing.items.push(Item::Image {
             raster: self.map(&lattice, field),
             at: layout.at,
@@ -262,7 +290,11 @@ impl<'a> Page<'a> {
         for &level in &self.shown.levels {
             let lines = contour(&lattice, level / self.shown.factor)
                 .into_iter()
-                .map(|line| layout.thinned(line.into_iter().map(|p| layout.page(on_lattice(field, p)))))
+                .map(|line| {
+                    straightened(&thinned(
+                        line.into_iter().map(|p| layout.page(on_lattice(field, p))),
+                    ))
+                })
                 .collect();
             let dark = level < DARK_SHARE * self.shown.top;
             self.drawing.items.push(Item::Lines {
@@ -281,7 +313,10 @@ impl<'a> Page<'a> {
             opacity: 1.0,
         });
         peak_mark(&mut self.drawing, layout.page(self.document.flow.peak.at));
-        shear_mark(&mut self.drawing, layout.page(self.document.flow.wall_shear.max_at));
+        shear_mark(
+            &mut self.drawing,
+            layout.page(self.document.flow.wall_shear.max_at),
+        );
         self.y += layout.size[1].ceil() + 28.0;
     }
 
@@ -307,7 +342,8 @@ impl<'a> Page<'a> {
     fn scale_bars(&mut self) {
         let [sx, sy] = self.layout.scale;
         let bars = matches!(self.exaggeration, Exaggeration::None);
-        let Some(across) = round_below(0.25 * self.inner.min(self.layout.size[0].max(240.0)) / sx) else {
+        let Some(across) = round_below(0.25 * self.inner.min(self.layout.size[0].max(240.0)) / sx)
+        else {
             return;
         };
         let up = round_below(VERTICAL_BAR / sy).filter(|_| !bars);
@@ -322,7 +358,8 @@ impl<'a> Page<'a> {
         self.drawing.lines(caps, INK, 2.5);
         let mut text = [end + 12.0, base + 5.0];
         let label = bar_label(across);
-        self.drawing.text(text, Anchor::Start, TextSize::Medium, &label);
+        self.drawing
+            .text(text, Anchor::Start, TextSize::Medium, &label);
         if let Some(up) = up {
             text[0] += TextSize::Medium.width(&label) + 48.0;
             let x = text[0];
@@ -332,15 +369,24 @@ impl<'a> Page<'a> {
                 vec![[x - 5.0, base - up * sy], [x + 5.0, base - up * sy]],
             ];
             self.drawing.lines(caps, INK, 2.5);
-            self.drawing.text([x + 12.0, base + 5.0], Anchor::Start, TextSize::Medium, bar_label(up));
+            self.drawing.text(
+                [x + 12.0, base + 5.0],
+                Anchor::Start,
+                TextSize::Medium,
+                bar_label(up),
+            );
         }
         self.y = base + 14.0;
         let note = match self.exaggeration {
             Exaggeration::None => return,
-            Exaggeration::Height(f) => format!("Not to equal scale: height drawn {f} times larger than width."),
-            Exaggeration::Width(f) => format!("Not to equal scale: width drawn {f} times larger than height."),
+            Exaggeration::Height(f) => {
+                format!("Not to equal scale: heights are stretched {f} times.")
+            }
+            Exaggeration::Width(f) => {
+                format!("Not to equal scale: widths are stretched {f} times.")
+            }
         };
-        self.drawing.description.push_str(&format!(" {note}"));
+        let _ = write!(self.drawing.description, " {note}");
         self.paragraph(&note, TextSize::Medium, MARGIN);
         self.y += 4.0;
     }
@@ -348,10 +394,17 @@ impl<'a> Page<'a> {
     fn colour_bar(&mut self) {
         let shown = &self.shown;
         let heading = if shown.unit.is_empty() {
-            format!("{}; contour lines every {}", shown.quantity, ticks::label(shown.step, shown.step))
+            format!(
+                "{}; contour lines every {}",
+                shown.quantity,
+                ticks::label(shown.step, shown.step)
+            )
         } else {
             let step = shown.with_unit(&ticks::label(shown.step, shown.step));
-            format!("{} in {}; contour lines every {step}", shown.quantity, shown.unit)
+            format!(
+                "{} in {}; contour lines every {step}",
+                shown.quantity, shown.unit
+            )
         };
         self.y += 14.0;
         self.paragraph(&heading, TextSize::Medium, MARGIN);
@@ -373,7 +426,13 @@ impl<'a> Page<'a> {
         let bottom = top + BAR_HEIGHT;
         self.bar_ticks(top, bottom);
         let right = MARGIN + self.inner;
-        let frame = vec![vec![[MARGIN, top], [right, top], [right, bottom], [MARGIN, bottom], [MARGIN, top]]];
+        let frame = vec![vec![
+            [MARGIN, top],
+            [right, top],
+            [right, bottom],
+            [MARGIN, bottom],
+            [MARGIN, top],
+        ]];
         self.drawing.lines(frame, INK, 1.2);
         self.y = bottom + 8.0 + TextSize::Small.line_height();
     }
@@ -401,8 +460,10 @@ impl<'a> Page<'a> {
         labels.push((right, Anchor::End, peak));
         for (x, dark) in marks {
             let colour = if dark { PAPER } else { INK };
-            self.drawing.lines(vec![vec![[x, top], [x, bottom]]], colour, 1.2);
-            self.drawing.lines(vec![vec![[x, bottom], [x, bottom + 5.0]]], INK, 1.2);
+            self.drawing
+                .lines(vec![vec![[x, top], [x, bottom]]], colour, 1.2);
+            self.drawing
+                .lines(vec![vec![[x, bottom], [x, bottom + 5.0]]], INK, 1.2);
         }
         for (x, anchor, text) in labels {
             self.drawing.text([x, base], anchor, size, text);
@@ -412,14 +473,15 @@ impl<'a> Page<'a> {
     /// What the markers mean, with their numbers.
     fn legend(&mut self) {
         let flow = self.document.flow;
-        let place = |p: Point| {
-            let reach = p[0].abs().max(p[1].abs()).max(flow.geometry.width);
-            let (unit, size) = numbers::fitting_unit(reach, numbers::LENGTHS);
-            format!("at x {}, y {} {unit}", significant(p[0] / size, 4), significant(p[1] / size, 4))
-        };
+        let extent = [flow.geometry.width, flow.geometry.height];
+        let place = |p: Point| numbers::place(p, extent, 4);
         let peak = self.shown.with_unit(&significant(self.shown.top, 4));
-        let times = if self.shown.unit.is_empty() { " times the mean" } else { "" };
-        let peak = format!("fastest point: {peak}{times}, {}", place(flow.peak.at));
+        let times = if self.shown.unit.is_empty() {
+            " times the mean"
+        } else {
+            ""
+        };
+        let peak = format!("fastest point: {peak}{times}, at {}", place(flow.peak.at));
         let shear = match self.document.operating_point {
             Some(point) => format!(
                 "{} Pa ({} dyn/cm\u{b2})",
@@ -428,7 +490,10 @@ impl<'a> Page<'a> {
             ),
             None => format!(
                 "{} times the mean",
-                significant(flow.wall_shear.max_per_gradient / flow.wall_shear.mean_per_gradient, 4)
+                significant(
+                    flow.wall_shear.max_per_gradient / flow.wall_shear.mean_per_gradient,
+                    4
+                )
             ),
         };
         let bound = if flow.wall_shear.singular_corners.is_empty() {
@@ -436,8 +501,11 @@ impl<'a> Page<'a> {
         } else {
             " (sharp re-entrant corner: grows as the grid is refined)"
         };
-        let shear = format!("largest wall shear: {shear}{bound}, {}", place(flow.wall_shear.max_at));
-        self.drawing.description.push_str(&format!(" {peak}; {shear}."));
+        let shear = format!(
+            "largest wall shear: {shear}{bound}, at {}",
+            place(flow.wall_shear.max_at)
+        );
+        let _ = write!(self.drawing.description, " {peak}; {shear}.");
         self.y += 10.0;
         peak_mark(&mut self.drawing, [MARGIN + 9.0, self.y + 10.0]);
         self.paragraph(&peak, TextSize::Medium, MARGIN + 28.0);
@@ -455,7 +523,10 @@ impl<'a> Page<'a> {
 /// A line cut into pieces of at most `room` characters, for words longer than a line.
 fn pieces(line: &str, room: usize) -> Vec<String> {
     let characters: Vec<char> = line.chars().collect();
-    characters.chunks(room).map(|c| c.iter().collect()).collect()
+    characters
+        .chunks(room)
+        .map(|c| c.iter().collect())
+        .collect()
 }
 
 /// Lattice units to metres.
@@ -475,7 +546,12 @@ fn bar_label(length: f64) -> String {
 
 /// An upright cross with a halo, so that it shows on any colour.
 fn peak_mark(drawing: &mut Drawing, [x, y]: Point) {
-    let arms = || vec![vec![[x - 8.0, y], [x + 8.0, y]], vec![[x, y - 8.0], [x, y + 8.0]]];
+    let arms = || {
+        vec![
+            vec![[x - 8.0, y], [x + 8.0, y]],
+            vec![[x, y - 8.0], [x, y + 8.0]],
+        ]
+    };
     drawing.lines(arms(), PAPER, 5.0);
     drawing.lines(arms(), INK, 2.0);
 }

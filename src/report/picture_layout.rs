@@ -11,6 +11,10 @@ const LARGEST_EQUAL_ASPECT: f64 = 12.0;
 const EXAGGERATED_ASPECT: f64 = 6.0;
 /// Vertices nearer than this to the last drawn one are left out, px.
 const NEAREST_VERTEX: f64 = 0.1;
+/// A contour point nearer than this to the chord of its neighbours is left out, px.
+const FLATNESS: f64 = 0.05;
+/// No contour chord is longer, so that few points need to be compared with it, px.
+const LONGEST_CHORD: f64 = 40.0;
 
 /// The map from the section plane (m, y upwards) to the page (px, y downwards).
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -64,7 +68,8 @@ impl Layout {
             Exaggeration::Height(f) => [1.0, f],
             Exaggeration::Width(f) => [f, 1.0],
         };
-        let fit = (LARGEST[0] / (extent[0] * stretch[0])).min(LARGEST[1] / (extent[1] * stretch[1]));
+        let fit =
+            (LARGEST[0] / (extent[0] * stretch[0])).min(LARGEST[1] / (extent[1] * stretch[1]));
         let scale = [fit * stretch[0], fit * stretch[1]];
         let layout = Self {
             low,
@@ -93,23 +98,55 @@ impl Layout {
 
     /// A loop on the page, without vertices too near to tell apart.
     pub(super) fn page_loop(&self, wall: &Loop) -> Vec<Point> {
-        self.thinned(wall.points.iter().map(|&p| self.page(p)))
+        thinned(wall.points.iter().map(|&p| self.page(p)))
     }
+}
 
-    /// Page points without those too near to the last one kept.
-    pub(super) fn thinned(&self, points: impl Iterator<Item = Point>) -> Vec<Point> {
-        let mut kept: Vec<Point> = Vec::new();
-        let mut last = None;
-        for p in points {
-            let near = |q: &Point| (p[0] - q[0]).hypot(p[1] - q[1]) < NEAREST_VERTEX;
-            last = kept.last().is_some_and(near).then_some(p);
-            if last.is_none() {
-                kept.push(p);
-            }
+/// Page points without those too near to the last one kept; the last point always stays.
+pub(super) fn thinned(points: impl Iterator<Item = Point>) -> Vec<Point> {
+    let mut kept: Vec<Point> = Vec::new();
+    let mut last = None;
+    for p in points {
+        let near = |q: &Point| distance(p, *q) < NEAREST_VERTEX;
+        last = kept.last().is_some_and(near).then_some(p);
+        if last.is_none() {
+            kept.push(p);
         }
-        kept.extend(last);
-        kept
     }
+    kept.extend(last);
+    kept
+}
+
+/// Page points without those that lie on the chord of their neighbours, to a fraction of a pixel.
+pub(super) fn straightened(points: &[Point]) -> Vec<Point> {
+    let (Some(&first), Some(&last)) = (points.first(), points.last()) else {
+        return Vec::new();
+    };
+    let mut kept = vec![first];
+    let (mut anchor, mut skipped) = (first, Vec::new());
+    for pair in points.windows(2).skip(1) {
+        let &[here, next] = pair else { continue };
+        skipped.push(here);
+        let chord = distance(anchor, next);
+        let off = |p: &Point| {
+            let cross = (p[0] - anchor[0]) * (next[1] - anchor[1])
+                - (p[1] - anchor[1]) * (next[0] - anchor[0]);
+            cross.abs() > FLATNESS * chord
+        };
+        if chord > LONGEST_CHORD || skipped.iter().any(off) {
+            kept.push(here);
+            anchor = here;
+            skipped.clear();
+        }
+    }
+    if points.len() > 1 {
+        kept.push(last);
+    }
+    kept
+}
+
+fn distance(a: Point, b: Point) -> f64 {
+    (a[0] - b[0]).hypot(a[1] - b[1])
 }
 
 #[cfg(test)]
@@ -117,7 +154,12 @@ mod tests {
     use super::*;
 
     fn rectangle(w: f64, h: f64) -> Outline {
-        Outline::single(vec![[1.0, 2.0], [1.0 + w, 2.0], [1.0 + w, 2.0 + h], [1.0, 2.0 + h]])
+        Outline::single(vec![
+            [1.0, 2.0],
+            [1.0 + w, 2.0],
+            [1.0 + w, 2.0 + h],
+            [1.0, 2.0 + h],
+        ])
     }
 
     #[test]
@@ -130,6 +172,28 @@ mod tests {
         assert!(page[1].abs() < 1e-6, "the top is at the top: {page:?}");
         let back = layout.section(page);
         assert!((back[0] - 1.0 - 1e-4).abs() < 1e-12 && (back[1] - 2.0 - 1e-4).abs() < 1e-12);
+    }
+
+    #[test]
+    fn straight_runs_lose_their_points_and_curves_keep_their_shape() {
+        let line: Vec<Point> = (0..=1000).map(|i| [f64::from(i) * 0.1, 5.0]).collect();
+        let short = straightened(&line);
+        assert!(short.len() <= 5, "{}", short.len());
+        assert_eq!((short.first(), short.last()), (line.first(), line.last()));
+        let circle: Vec<Point> = (0..=3600)
+            .map(|i| (f64::from(i) * 0.1).to_radians())
+            .map(|t| [100.0 * t.cos(), 100.0 * t.sin()])
+            .collect();
+        let short = straightened(&circle);
+        assert!(short.len() < 1000);
+        for pair in short.windows(2) {
+            let middle = [
+                0.5 * (pair[0][0] + pair[1][0]),
+                0.5 * (pair[0][1] + pair[1][1]),
+            ];
+            assert!((middle[0].hypot(middle[1]) - 100.0).abs() < 0.06);
+        }
+        assert_eq!(straightened(&[[1.0, 2.0]]), vec![[1.0, 2.0]]);
     }
 
     #[test]

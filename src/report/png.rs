@@ -4,7 +4,8 @@ use image::codecs::png::{CompressionType, FilterType, PngEncoder};
 use image::{ExtendedColorType, ImageEncoder};
 use noto_sans_mono_bitmap::{FontWeight, RasterHeight, get_raster};
 use tiny_skia::{
-    FillRule, IntSize, LineCap, LineJoin, Mask, Paint, Path, PathBuilder, Pixmap, PixmapPaint, Rect, Stroke, Transform,
+    FillRule, IntSize, LineCap, LineJoin, Mask, Paint, Path, PathBuilder, Pixmap, PixmapPaint,
+    Rect, Stroke, Transform,
 };
 
 use super::drawing::{Anchor, Colour, Drawing, Item, PAPER, Raster, TextSize};
@@ -49,7 +50,12 @@ pub fn to_png(drawing: &Drawing) -> Result<Vec<u8>, PngError> {
     let raster = Raster {
         columns: width as usize,
         rows: height as usize,
-        rgb: canvas.data().chunks_exact(4).flat_map(|p| p.iter().take(3)).copied().collect(),
+        rgb: canvas
+            .data()
+            .chunks_exact(4)
+            .flat_map(|p| p.iter().take(3))
+            .copied()
+            .collect(),
     };
     let texts = [
         ("Title", drawing.title.as_str()),
@@ -66,12 +72,8 @@ pub(crate) fn encode_rgb(raster: &Raster) -> Result<Vec<u8>, PngError> {
         return Err(PngError::Size { width, height });
     }
     let mut bytes = Vec::new();
-    PngEncoder::new_with_quality(&mut bytes, CompressionType::Default, FilterType::Adaptive).write_image(
-        &raster.rgb,
-        width,
-        height,
-        ExtendedColorType::Rgb8,
-    )?;
+    PngEncoder::new_with_quality(&mut bytes, CompressionType::Default, FilterType::Adaptive)
+        .write_image(&raster.rgb, width, height, ExtendedColorType::Rgb8)?;
     Ok(bytes)
 }
 
@@ -91,12 +93,24 @@ fn draw(canvas: &mut Pixmap, item: &Item) -> Result<(), PngError> {
                     line_join: LineJoin::Round,
                     ..Stroke::default()
                 };
-                canvas.stroke_path(&path, &paint(*colour, *opacity), &stroke, Transform::identity(), None);
+                canvas.stroke_path(
+                    &path,
+                    &paint(*colour, *opacity),
+                    &stroke,
+                    Transform::identity(),
+                    None,
+                );
             }
         }
         Item::Area { loops, fill } => {
             if let Some(path) = path(loops, true) {
-                canvas.fill_path(&path, &paint(*fill, 1.0), FillRule::EvenOdd, Transform::identity(), None);
+                canvas.fill_path(
+                    &path,
+                    &paint(*fill, 1.0),
+                    FillRule::EvenOdd,
+                    Transform::identity(),
+                    None,
+                );
             }
         }
         Item::Image { raster, at, clip } => draw_image(canvas, raster, *at, clip)?,
@@ -106,7 +120,12 @@ fn draw(canvas: &mut Pixmap, item: &Item) -> Result<(), PngError> {
             size,
             colour,
             text,
-        } => draw_text(canvas, &one_line(text), start_of(*at, *anchor, *size, text), (*size, *colour)),
+        } => draw_text(
+            canvas,
+            &one_line(text),
+            start_of(*at, *anchor, *size, text),
+            (*size, *colour),
+        ),
     }
     Ok(())
 }
@@ -143,7 +162,12 @@ fn path(lines: &[Vec<Point>], closed: bool) -> Option<Path> {
     builder.finish()
 }
 
-fn draw_image(canvas: &mut Pixmap, raster: &Raster, at: [i32; 2], clip: &[Vec<Point>]) -> Result<(), PngError> {
+fn draw_image(
+    canvas: &mut Pixmap,
+    raster: &Raster,
+    at: [i32; 2],
+    clip: &[Vec<Point>],
+) -> Result<(), PngError> {
     let (width, height) = (raster.columns as u32, raster.rows as u32);
     let rgba = raster
         .rgb
@@ -159,7 +183,14 @@ fn draw_image(canvas: &mut Pixmap, raster: &Raster, at: [i32; 2], clip: &[Vec<Po
         Some(mask)
     });
     let [x, y] = at;
-    canvas.draw_pixmap(x, y, image.as_ref(), &PixmapPaint::default(), Transform::identity(), mask.as_ref());
+    canvas.draw_pixmap(
+        x,
+        y,
+        image.as_ref(),
+        &PixmapPaint::default(),
+        Transform::identity(),
+        mask.as_ref(),
+    );
     Ok(())
 }
 
@@ -171,10 +202,18 @@ fn start_of(at: Point, anchor: Anchor, size: TextSize, text: &str) -> [i32; 2] {
         Anchor::End => size.width(text),
     };
     let above = (ASCENT_SHARE * size.line_height()).round();
-    [(at[0] - shift).round() as i32, (at[1] - above).round() as i32]
+    [
+        (at[0] - shift).round() as i32,
+        (at[1] - above).round() as i32,
+    ]
 }
 
-fn draw_text(canvas: &mut Pixmap, text: &str, [x, y]: [i32; 2], (size, colour): (TextSize, Colour)) {
+fn draw_text(
+    canvas: &mut Pixmap,
+    text: &str,
+    [x, y]: [i32; 2],
+    (size, colour): (TextSize, Colour),
+) {
     let height = match size {
         TextSize::Small => RasterHeight::Size16,
         TextSize::Medium => RasterHeight::Size20,
@@ -182,7 +221,8 @@ fn draw_text(canvas: &mut Pixmap, text: &str, [x, y]: [i32; 2], (size, colour): 
     };
     let mut left = x;
     for c in text.chars() {
-        let glyph = get_raster(c, FontWeight::Regular, height).or_else(|| get_raster('?', FontWeight::Regular, height));
+        let glyph = get_raster(drawable(c), FontWeight::Regular, height)
+            .or_else(|| get_raster('?', FontWeight::Regular, height));
         let Some(glyph) = glyph else { continue };
         for (row, line) in (0_i32..).zip(glyph.rows()) {
             for (column, &cover) in (0_i32..).zip(line) {
@@ -192,6 +232,17 @@ fn draw_text(canvas: &mut Pixmap, text: &str, [x, y]: [i32; 2], (size, colour): 
             }
         }
         left += size.advance() as i32;
+    }
+}
+
+/// The nearest character of the built-in font for dashes, quotes and the Greek mu.
+fn drawable(c: char) -> char {
+    match c {
+        '\u{2010}'..='\u{2015}' | '\u{2212}' => '-',
+        '\u{2018}' | '\u{2019}' => '\'',
+        '\u{201c}' | '\u{201d}' => '"',
+        '\u{3bc}' => '\u{b5}',
+        other => other,
     }
 }
 
@@ -283,6 +334,10 @@ mod tests {
             .map(|(x, y, _)| (x, y))
             .collect();
         assert!(dark.len() > 10);
-        assert!(dark.iter().all(|&(x, y)| (44..58).contains(&x) && (22..39).contains(&y)), "{dark:?}");
+        assert!(
+            dark.iter()
+                .all(|&(x, y)| (44..58).contains(&x) && (22..39).contains(&y)),
+            "{dark:?}"
+        );
     }
 }

@@ -184,7 +184,11 @@ fn base64(bytes: &[u8]) -> String {
         let byte = |i: usize| u32::from(chunk.get(i).copied().unwrap_or(0));
         let word = byte(0) << 16 | byte(1) << 8 | byte(2);
         for i in 0..4_usize {
-            out.push(if i <= chunk.len() { digit(word >> (18 - 6 * i)) } else { '=' });
+            out.push(if i <= chunk.len() {
+                digit(word >> (18 - 6 * i))
+            } else {
+                '='
+            });
         }
     }
     out
@@ -212,7 +216,10 @@ mod tests {
 
     #[test]
     fn markup_in_a_name_stays_text() {
-        assert_eq!(escaped("<b a=\"1\">&\u{1}"), "&lt;b a=&quot;1&quot;&gt;&amp; ");
+        assert_eq!(
+            escaped("<b a=\"1\">&\u{1}"),
+            "&lt;b a=&quot;1&quot;&gt;&amp; "
+        );
         assert_eq!(coordinate(12.0), "12");
         assert_eq!(coordinate(-0.125), "-0.12");
     }

@@ -57,8 +57,8 @@ impl Table {
             for ((cell, &width), align) in row.iter().zip(&widths).zip(&self.columns) {
                 let fill = " ".repeat(width - cell.chars().count());
                 match align {
-                    Align::Left => line.extend([cell, &fill[..]]),
-                    Align::Right => line.extend([&fill[..], cell]),
+                    Align::Left => line.extend([cell.as_str(), fill.as_str()]),
+                    Align::Right => line.extend([fill.as_str(), cell.as_str()]),
                 }
                 line.push_str("  ");
             }
@@ -69,13 +69,14 @@ impl Table {
     }
 }
 
-/// The words of `text` in lines of at most `width` characters, broken at blanks only.
+/// The words of `text` in lines of at most `width` characters, broken at blanks only,
+/// never before a per cent sign.
 pub(crate) fn wrapped(text: &str, width: usize) -> Vec<String> {
     let mut lines = Vec::new();
     let mut line = String::new();
     for word in text.split_whitespace() {
         let longer = line.chars().count() + 1 + word.chars().count();
-        if !line.is_empty() && longer > width {
+        if !line.is_empty() && longer > width && word != "%" {
             lines.push(std::mem::take(&mut line));
         }
         if !line.is_empty() {

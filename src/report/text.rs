@@ -9,6 +9,7 @@ use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
 use super::text_operation;
 use crate::flow::{SectionFlow, SectionGeometry};
+use crate::geometry::Point;
 
 /// How to print the text.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -108,7 +109,10 @@ fn counted(count: usize, one: &str, many: &str) -> String {
 fn conductance(flow: &SectionFlow) -> String {
     let k = flow.conductance;
     let mut table = value_table();
-    table.row(["K, best value".to_owned(), format!("{} m^4", significant(k.value, 7))]);
+    table.row([
+        "K, best value".to_owned(),
+        format!("{} m^4", significant(k.value, 7)),
+    ]);
     table.row([
         "estimated error of K".to_owned(),
         format!("{} m^4", significant(k.error, 2)),
@@ -135,14 +139,20 @@ fn friction(flow: &SectionFlow) -> String {
     let rows = [
         ("Fanning f Re on Dh, Dh\u{b2} A / (2 K)", flow.fanning_dh),
         ("Darcy f Re on Dh, four times that", flow.darcy_dh),
-        ("Fanning f Re on sqrt(A), 2 A^(5/2) / (P K)", flow.fanning_sqrt_area),
+        (
+            "Fanning f Re on sqrt(A), 2 A^(5/2) / (P K)",
+            flow.fanning_sqrt_area,
+        ),
     ];
     for (label, value) in rows {
         table.row([label.to_owned(), significant(value, 6)]);
     }
     format!(
         "{}{}",
-        part("Friction factor times Reynolds number (Poiseuille number)", &table),
+        part(
+            "Friction factor times Reynolds number (Poiseuille number)",
+            &table
+        ),
         paragraph(
             "  ",
             "All three hold the perimeter, so on a digitised outline they are as good as its sampling; K is not affected."
@@ -152,7 +162,6 @@ fn friction(flow: &SectionFlow) -> String {
 
 fn velocity(flow: &SectionFlow) -> String {
     let peak = flow.peak;
-    let at = peak.at.map(|v| significant(v * 1e6, 5));
     let mut table = value_table();
     let factor = |label: &str, e: crate::measured::Estimate| {
         [
@@ -164,8 +173,7 @@ fn velocity(flow: &SectionFlow) -> String {
     table.row(factor("peak over mean velocity", peak.to_mean));
     table.row(factor("momentum factor", flow.momentum_factor));
     table.row(factor("kinetic-energy factor", flow.kinetic_energy_factor));
-    let [x, y] = at;
-    table.row(["peak at x, y".to_owned(), format!("{x}, {y} \u{b5}m")]);
+    table.row(["peak at".to_owned(), place(flow, peak.at)]);
     part("Velocity profile", &table)
 }
 
@@ -182,16 +190,21 @@ fn shear_per_gradient(flow: &SectionFlow) -> String {
         table.row([
             label.to_owned(),
             format!("{} Pa", significant(pascal, 5)),
-            format!("{} dyn/cm\u{b2}", significant(pascal / numbers::DYN_PER_CM2, 5)),
+            format!(
+                "{} dyn/cm\u{b2}",
+                significant(pascal / numbers::DYN_PER_CM2, 5)
+            ),
         ]);
     }
     table.row(shear_place(flow));
-    part("Wall shear at a pressure gradient of 1 kPa/m (proportional to it)", &table)
+    part(
+        "Wall shear at a pressure gradient of 1 kPa/m (proportional to it)",
+        &table,
+    )
 }
 
 /// Where the largest shear is, and whether it depends on the grid.
 pub(super) fn shear_place(flow: &SectionFlow) -> [String; 3] {
-    let [x, y] = flow.wall_shear.max_at.map(|v| significant(v * 1e6, 5));
     let corners = flow.wall_shear.singular_corners.len();
     let note = if corners == 0 {
         String::new()
@@ -201,14 +214,29 @@ pub(super) fn shear_place(flow: &SectionFlow) -> [String; 3] {
             counted(corners, "re-entrant corner", "re-entrant corners")
         )
     };
-    ["largest at x, y".to_owned(), format!("{x}, {y} \u{b5}m"), note]
+    [
+        "largest at".to_owned(),
+        place(flow, flow.wall_shear.max_at),
+        note,
+    ]
+}
+
+/// A place in the section.
+fn place(flow: &SectionFlow, at: Point) -> String {
+    numbers::place(at, [flow.geometry.width, flow.geometry.height], 5)
 }
 
 fn identities(flow: &SectionFlow, verbose: bool) -> String {
     if flow.identities.is_empty() {
         return "Identities of the exact solution\n  none was checked\n".to_owned();
     }
-    let mut table = Table::new(&[Align::Left, Align::Left, Align::Right, Align::Right, Align::Left]);
+    let mut table = Table::new(&[
+        Align::Left,
+        Align::Left,
+        Align::Right,
+        Align::Right,
+        Align::Left,
+    ]);
     table.row(["", "identity", "off by", "allowed", ""]);
     for identity in &flow.identities {
         let sign = if identity.holds { "holds" } else { "FAILS" };
@@ -221,7 +249,10 @@ fn identities(flow: &SectionFlow, verbose: bool) -> String {
         ]);
     }
     if verbose || flow.identities.iter().any(|i| !i.holds) {
-        return part("Identities of the exact solution, checked on the computed one", &table);
+        return part(
+            "Identities of the exact solution, checked on the computed one",
+            &table,
+        );
     }
     let worst = flow
         .identities
@@ -242,19 +273,33 @@ fn evidence(flow: &SectionFlow, verbose: bool) -> String {
     table.row([
         "grid".to_owned(),
         format!(
-            "{} spacing, {} cells across the largest inscribed circle ({}), {} fluid nodes",
+            "{} spacing, {} fluid nodes",
             length(grid.spacing),
-            significant(grid.cells_across, 4),
-            length(grid.inscribed_diameter),
-            grid.fluid_nodes,
+            grid.fluid_nodes
         ),
     ]);
-    let verdict = if solver.converged { "reached what was asked" } else { "NOT as small as asked" };
-    let extra = if solver.accelerated { ", with Krylov acceleration" } else { "" };
+    table.row([
+        "across".to_owned(),
+        format!(
+            "{} cells across the largest circle that fits into the smallest lumen ({})",
+            significant(grid.cells_across, 4),
+            length(grid.inscribed_diameter),
+        ),
+    ]);
+    let verdict = if solver.converged {
+        "reached what was asked"
+    } else {
+        "NOT as small as asked"
+    };
+    let extra = if solver.accelerated {
+        ", with Krylov acceleration"
+    } else {
+        ""
+    };
     table.row([
         "solver".to_owned(),
         format!(
-            "{}{extra}, residual {} (root mean square of 1 + lap(phi)), {verdict}",
+            "{}{extra}, residual {} (rms of 1 + lap(phi)), {verdict}",
             counted(solver.cycles, "cycle", "cycles"),
             significant(solver.residual, 2),
         ),
@@ -268,7 +313,14 @@ fn evidence(flow: &SectionFlow, verbose: bool) -> String {
 
 fn hierarchy(flow: &SectionFlow) -> String {
     let mut table = Table::new(&[Align::Right; 6]);
-    table.row(["spacing", "fluid nodes", "wall nodes", "cycles", "K / m^4", "from best K"]);
+    table.row([
+        "spacing",
+        "fluid nodes",
+        "wall nodes",
+        "cycles",
+        "K / m^4",
+        "from best K",
+    ]);
     for level in &flow.solver.levels {
         table.row([
             with_unit(level.spacing, numbers::LENGTHS, 4),
@@ -294,7 +346,11 @@ fn warnings(document: &SolveDocument<'_>) -> Option<String> {
     }
     let mut out = "Warnings and cautions\n".to_owned();
     for warning in &all {
-        let text = format!("{}: {}", warning.code.as_str(), numbers::one_line(&warning.message));
+        let text = format!(
+            "{}: {}",
+            warning.code.as_str(),
+            numbers::one_line(&warning.message)
+        );
         out.push_str(&paragraph("  ! ", &text));
         out.push_str(&paragraph("    ", &numbers::one_line(&warning.advice)));
     }

@@ -10,7 +10,9 @@ use crate::measured::Estimate;
 /// The parts that apply to this document, in order.
 pub(super) fn parts(document: &SolveDocument<'_>) -> Vec<String> {
     let fluid = document.fluid.map(|f| resistance(document, f));
-    let point = document.operating_point.map(|p| operating_point(document, p));
+    let point = document
+        .operating_point
+        .map(|p| operating_point(document, p));
     let shortcuts = document.shortcuts.map(|rows| shortcuts(document, rows));
     fluid.into_iter().chain(point).chain(shortcuts).collect()
 }
@@ -23,10 +25,19 @@ fn resistance(document: &SolveDocument<'_>, fluid: &Fluid) -> String {
         format!("{} mPa s", significant(fluid.viscosity * 1e3, 5)),
     ]);
     if let Some(density) = fluid.density {
-        table.row(["density".to_owned(), format!("{} kg/m\u{b3}", significant(density, 6))]);
+        table.row([
+            "density".to_owned(),
+            format!("{} kg/m\u{b3}", significant(density, 6)),
+        ]);
     }
     if let Some(r) = document.resistance_per_length() {
-        table.row(resistance_row("resistance per length R' = mu / K", r, "Pa s/m^4", "mbar min/\u{b5}L per mm", 1e-3));
+        table.row(resistance_row(
+            "resistance per length R' = mu / K",
+            r,
+            "Pa s/m^4",
+            "mbar min/\u{b5}L per mm",
+            1e-3,
+        ));
     }
     if let (Some(r), Some(length)) = (document.resistance(), document.length) {
         table.row([
@@ -34,7 +45,13 @@ fn resistance(document: &SolveDocument<'_>, fluid: &Fluid) -> String {
             format!("{} m", significant(length, 6)),
             with_unit(length, numbers::LENGTHS, 5),
         ]);
-        table.row(resistance_row("resistance R = mu L / K", r, "Pa s/m\u{b3}", "mbar min/\u{b5}L", 1.0));
+        table.row(resistance_row(
+            "resistance R = mu L / K",
+            r,
+            "Pa s/m\u{b3}",
+            "mbar min/\u{b5}L",
+            1.0,
+        ));
     }
     let name = numbers::one_line(&fluid.name);
     let heading = match fluid.temperature {
@@ -75,12 +92,31 @@ fn operating_point(document: &SolveDocument<'_>, point: &OperatingPoint) -> Stri
         format!("{} kPa/m", significant(point.pressure_gradient / 1e3, 5)),
     ]);
     let scaled: [(&str, f64, &str, &[numbers::Unit]); 3] = [
-        ("flow rate", point.flow_rate, "m\u{b3}/s", numbers::FLOW_RATES),
-        ("mean velocity", point.mean_velocity, "m/s", numbers::VELOCITIES),
-        ("peak velocity", point.peak_velocity, "m/s", numbers::VELOCITIES),
+        (
+            "flow rate",
+            point.flow_rate,
+            "m\u{b3}/s",
+            numbers::FLOW_RATES,
+        ),
+        (
+            "mean velocity",
+            point.mean_velocity,
+            "m/s",
+            numbers::VELOCITIES,
+        ),
+        (
+            "peak velocity",
+            point.peak_velocity,
+            "m/s",
+            numbers::VELOCITIES,
+        ),
     ];
     for (label, value, unit, units) in scaled {
-        table.row([label.to_owned(), si(value, unit), with_unit(value, units, 5)]);
+        table.row([
+            label.to_owned(),
+            si(value, unit),
+            with_unit(value, units, 5),
+        ]);
     }
     shear_rows(&mut table, document, point);
     table.row([
@@ -100,7 +136,10 @@ fn shear_rows(table: &mut Table, document: &SolveDocument<'_>, point: &Operating
         table.row([
             label.to_owned(),
             format!("{} Pa", significant(value, 5)),
-            format!("{} dyn/cm\u{b2}", significant(value / numbers::DYN_PER_CM2, 5)),
+            format!(
+                "{} dyn/cm\u{b2}",
+                significant(value / numbers::DYN_PER_CM2, 5)
+            ),
         ]);
     }
     table.row(shear_place(document.flow));
@@ -111,7 +150,9 @@ fn inertia_rows(table: &mut Table, point: &OperatingPoint) {
     let unknown = || "not available: the density is not known".to_owned();
     table.row([
         "Reynolds number on Dh".to_owned(),
-        point.reynolds_dh.map_or_else(unknown, |v| significant(v, 4)),
+        point
+            .reynolds_dh
+            .map_or_else(unknown, |v| significant(v, 4)),
     ]);
     match point.entrance_length {
         Some(length) => table.row([
@@ -129,7 +170,11 @@ fn shortcuts(document: &SolveDocument<'_>, rows: &[ShortcutRow]) -> String {
         "Shortcut formulas: error of their resistance against the solved one (K = {} m^4)",
         significant(best, 5)
     );
-    let width = rows.iter().map(|r| r.name.chars().count()).max().unwrap_or(0);
+    let width = rows
+        .iter()
+        .map(|r| r.name.chars().count())
+        .max()
+        .unwrap_or(0);
     let mut out = format!("{heading}\n");
     for row in rows {
         let verdict = row.resistance_error.map_or_else(
@@ -142,7 +187,11 @@ fn shortcuts(document: &SolveDocument<'_>, rows: &[ShortcutRow]) -> String {
         let fill = " ".repeat(width - row.name.chars().count());
         out.push_str(format!("  {}{fill}  {verdict:>14}{conductance}", row.name).trim_end());
         out.push('\n');
-        for (label, text) in [("", row.remark.as_str()), ("range: ", row.range), ("source: ", row.source)] {
+        for (label, text) in [
+            ("", row.remark.as_str()),
+            ("range: ", row.range),
+            ("source: ", row.source),
+        ] {
             if !text.is_empty() {
                 out.push_str(&paragraph("      ", &format!("{label}{text}")));
             }
@@ -154,5 +203,9 @@ fn shortcuts(document: &SolveDocument<'_>, rows: &[ShortcutRow]) -> String {
 /// Three digits with the sign always shown.
 fn signed(value: f64) -> String {
     let text = significant(value, 3);
-    if value > 0.0 { format!("+{text}") } else { text }
+    if value > 0.0 {
+        format!("+{text}")
+    } else {
+        text
+    }
 }

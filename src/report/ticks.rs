@@ -24,24 +24,35 @@ pub(crate) fn round_above(limit: f64) -> Option<f64> {
         .find(|v| *v >= limit * (1.0 - 1e-12))
 }
 
-/// Multiples of a round step strictly between 0 and `top`, at most `most` of them, with the step.
+/// A level nearer than this share to the top would only trace noise around the peak.
+const NEAREST_TO_TOP: f64 = 0.97;
+
+/// Multiples of a round step above 0 and clearly below `top`, at most `most` of them, with the step.
 pub(crate) fn levels(top: f64, most: usize) -> (Vec<f64>, f64) {
     let Some(step) = round_above(top / (most + 1) as f64) else {
         return (Vec::new(), 0.0);
     };
-    let count = (top / step * (1.0 - 1e-9)).floor() as usize;
+    let count = (NEAREST_TO_TOP * top / step).floor() as usize;
     ((1..=count).map(|i| i as f64 * step).collect(), step)
 }
 
 /// A value of a tick with as many decimals as its step needs.
 pub(crate) fn label(value: f64, step: f64) -> String {
-    let decimals = if step > 0.0 { (-step.log10().floor()).clamp(0.0, 12.0) as usize } else { 0 };
+    let decimals = if step > 0.0 {
+        (-step.log10().floor()).clamp(0.0, 12.0) as usize
+    } else {
+        0
+    };
     format!("{value:.decimals$}")
 }
 
 /// `digit` times ten to `power`, exact in decimals where a double can be.
 fn decimal(digit: f64, power: i32) -> f64 {
-    if power < 0 { digit / 10_f64.powi(-power) } else { digit * 10_f64.powi(power) }
+    if power < 0 {
+        digit / 10_f64.powi(-power)
+    } else {
+        digit * 10_f64.powi(power)
+    }
 }
 
 #[cfg(test)]

@@ -9,8 +9,8 @@
 use std::fmt::Write as _;
 
 use vtkio::model::{
-    Attribute, Attributes, ByteOrder, DataArray, DataSet, Extent, IOBuffer, ImageDataPiece, PolyDataPiece, Version,
-    VertexNumbers, Vtk,
+    Attribute, Attributes, ByteOrder, DataArray, DataSet, Extent, IOBuffer, ImageDataPiece,
+    PolyDataPiece, Version, VertexNumbers, Vtk,
 };
 
 use super::document::SolveDocument;
@@ -35,7 +35,9 @@ pub enum VtkError {
         expected: usize,
     },
     /// The lattice is too small or too large for the format.
-    #[error("a lattice of {nodes_x} x {nodes_y} nodes cannot be exported; from 2 to 2147483647 along each axis are possible")]
+    #[error(
+        "a lattice of {nodes_x} x {nodes_y} nodes cannot be exported; from 2 to 2147483647 along each axis are possible"
+    )]
     Lattice {
         /// Nodes along x.
         nodes_x: usize,
@@ -43,7 +45,9 @@ pub enum VtkError {
         nodes_y: usize,
     },
     /// A value is not finite.
-    #[error("array `{array}` holds a value that is not finite at index {index}; the section was not solved there")]
+    #[error(
+        "array `{array}` holds a value that is not finite at index {index}; the section was not solved there"
+    )]
     NotFinite {
         /// Which array.
         array: &'static str,
@@ -79,7 +83,10 @@ pub fn field_vti(document: &SolveDocument<'_>, field: &DenseField) -> Result<Str
     let extent = Extent::Ranges([0..=last(field.nodes_x)?, 0..=last(field.nodes_y)?, 0..=0]);
     let scale = document.velocity_scale();
     let times = |factor: f64| IOBuffer::F64(field.phi.iter().map(|p| p * factor).collect());
-    let ghosts = field.fluid_fraction.iter().map(|&f| if f > 0.0 { 0 } else { HIDDEN_CELL });
+    let ghosts = field
+        .fluid_fraction
+        .iter()
+        .map(|&f| if f > 0.0 { 0 } else { HIDDEN_CELL });
     let data = Attributes {
         point: vec![
             scalars("velocity", times(scale.factor)),
@@ -87,7 +94,10 @@ pub fn field_vti(document: &SolveDocument<'_>, field: &DenseField) -> Result<Str
             array("phi", 1, IOBuffer::F64(field.phi.clone())),
         ],
         cell: vec![
-            scalars("fluid_fraction", IOBuffer::F64(field.fluid_fraction.clone())),
+            scalars(
+                "fluid_fraction",
+                IOBuffer::F64(field.fluid_fraction.clone()),
+            ),
             array("vtkGhostType", 1, IOBuffer::U8(ghosts.collect())),
         ],
     };
@@ -124,10 +134,18 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
     let scale = document.shear_scale();
     let real = |value: fn(&WallSample) -> f64| IOBuffer::F64(samples.iter().map(value).collect());
     let plane = |value: fn(&WallSample) -> [f64; 2]| {
-        IOBuffer::F64(samples.iter().flat_map(|s| [value(s)[0], value(s)[1], 0.0]).collect())
+        IOBuffer::F64(
+            samples
+                .iter()
+                .flat_map(|s| [value(s)[0], value(s)[1], 0.0])
+                .collect(),
+        )
     };
-    let shear = samples.iter().map(|s| s.shear_per_gradient * scale.factor).collect();
-    let loops = samples.iter().map(|s| s.loop_index as i64).collect();
+    let shear = samples
+        .iter()
+        .map(|s| s.shear_per_gradient * scale.factor)
+        .collect();
+    let loops = samples.iter().map(|s| s.loop_index as u64).collect();
     let piece = PolyDataPiece {
         points: plane(|s| s.at),
         lines: Some(closed_lines(samples)),
@@ -136,13 +154,18 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
                 scalars("wall_shear", IOBuffer::F64(shear)),
                 Attribute::DataArray(DataArray::vectors("normal").with_data(plane(|s| s.normal))),
                 array("arc_length", 1, real(|s| s.arc_length)),
-                array("loop", 1, IOBuffer::I64(loops)),
+                array("loop", 1, IOBuffer::U64(loops)),
             ],
             cell: Vec::new(),
         },
         ..PolyDataPiece::default()
     };
-    let units = [("wall_shear", scale.unit), ("normal", "1"), ("arc_length", "m"), ("loop", "1")];
+    let units = [
+        ("wall_shear", scale.unit),
+        ("normal", "1"),
+        ("arc_length", "m"),
+        ("loop", "1"),
+    ];
     Ok(with_units(&xml(DataSet::inline(piece))?, &units))
 }
 
@@ -153,11 +176,18 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
 ///
 /// # Errors
 /// [`VtkError`] when the field is inconsistent or not finite.
-pub fn field_legacy_vtk(document: &SolveDocument<'_>, field: &DenseField) -> Result<String, VtkError> {
+pub fn field_legacy_vtk(
+    document: &SolveDocument<'_>,
+    field: &DenseField,
+) -> Result<String, VtkError> {
     check_field(field)?;
     let scale = document.velocity_scale();
     let unit = scale.unit;
-    let name: String = one_line(document.section_name).chars().filter(char::is_ascii).take(100).collect();
+    let name: String = one_line(document.section_name)
+        .chars()
+        .filter(char::is_ascii)
+        .take(100)
+        .collect();
     let [x, y] = field.origin;
     let (h, nodes, cells) = (field.spacing, field.phi.len(), field.fluid_fraction.len());
     let mut out = format!(
@@ -166,10 +196,18 @@ pub fn field_legacy_vtk(document: &SolveDocument<'_>, field: &DenseField) -> Res
         field.nodes_x, field.nodes_y
     );
     let _ = write!(out, "POINT_DATA {nodes}\nFIELD point_fields 2\n");
-    ascii_array(&mut out, "velocity", field.phi.iter().map(|p| p * scale.factor));
+    ascii_array(
+        &mut out,
+        "velocity",
+        field.phi.iter().map(|p| p * scale.factor),
+    );
     ascii_array(&mut out, "phi", field.phi.iter().copied());
     let _ = write!(out, "CELL_DATA {cells}\nFIELD cell_fields 1\n");
-    ascii_array(&mut out, "fluid_fraction", field.fluid_fraction.iter().copied());
+    ascii_array(
+        &mut out,
+        "fluid_fraction",
+        field.fluid_fraction.iter().copied(),
+    );
     Ok(out)
 }
 
@@ -188,10 +226,18 @@ fn check_field(field: &DenseField) -> Result<(), VtkError> {
     }
     for (array, found, expected) in [
         ("phi", field.phi.len(), nodes_x * nodes_y),
-        ("fluid_fraction", field.fluid_fraction.len(), (nodes_x - 1) * (nodes_y - 1)),
+        (
+            "fluid_fraction",
+            field.fluid_fraction.len(),
+            (nodes_x - 1) * (nodes_y - 1),
+        ),
     ] {
         if found != expected {
-            return Err(VtkError::Length { array, found, expected });
+            return Err(VtkError::Length {
+                array,
+                found,
+                expected,
+            });
         }
     }
     let [x, y] = field.origin;
@@ -200,7 +246,10 @@ fn check_field(field: &DenseField) -> Result<(), VtkError> {
     check_finite("fluid_fraction", field.fluid_fraction.iter().copied())
 }
 
-fn check_finite(array: &'static str, values: impl IntoIterator<Item = f64>) -> Result<(), VtkError> {
+fn check_finite(
+    array: &'static str,
+    values: impl IntoIterator<Item = f64>,
+) -> Result<(), VtkError> {
     match values.into_iter().position(|v| !v.is_finite()) {
         Some(index) => Err(VtkError::NotFinite { array, index }),
         None => Ok(()),
@@ -227,7 +276,10 @@ fn closed_lines(samples: &[WallSample]) -> VertexNumbers {
         offsets.push(connectivity.len() as u64);
         start = end;
     }
-    VertexNumbers::XML { connectivity, offsets }
+    VertexNumbers::XML {
+        connectivity,
+        offsets,
+    }
 }
 
 /// The data set as XML, little-endian inline binary.
@@ -240,8 +292,9 @@ fn xml(data: DataSet) -> Result<String, VtkError> {
         file_path: None,
         data,
     };
-    let mut bytes = Vec::new();
-    vtk.write_xml(&mut bytes).map_err(|e| refused(format!("{e:?}")))?;
+    let mut bytes = b"<?xml version=\"1.0\"?>\n".to_vec();
+    vtk.write_xml(&mut bytes)
+        .map_err(|e| refused(format!("{e:?}")))?;
     String::from_utf8(bytes).map_err(|e| refused(e.to_string()))
 }
 
@@ -250,7 +303,9 @@ fn with_units(xml: &str, units: &[(&str, &str)]) -> String {
     let closing = "</DataArray>";
     let mut out = String::with_capacity(xml.len() + 120 * units.len());
     for piece in xml.split_inclusive(closing) {
-        let unit = units.iter().find(|(name, _)| piece.contains(&format!("Name=\"{name}\"")));
+        let unit = units
+            .iter()
+            .find(|(name, _)| piece.contains(&format!("Name=\"{name}\"")));
         match (piece.strip_suffix(closing), unit) {
             (Some(body), Some((_, unit))) => {
                 out.push_str(body);

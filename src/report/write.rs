@@ -2,7 +2,10 @@
 //!
 //! The only module that touches files for writing. A target is checked before the long work
 //! ([`check_target`]), and an input file is never overwritten.
-#![expect(clippy::disallowed_methods, reason = "this is the one module that writes files")]
+#![expect(
+    clippy::disallowed_methods,
+    reason = "this is the one module that writes files"
+)]
 
 use std::ffi::OsString;
 use std::fs::{self, OpenOptions};
@@ -133,7 +136,9 @@ pub fn write_files(files: &[OutputFile<'_>], inputs: &[&Path]) -> Result<(), Wri
         write_to_device(file).map_err(|source| refused(file.path, source))?;
     }
     for (temporary, (real, file)) in ready.into_iter().zip(&plain) {
-        temporary.rename_to(real).map_err(|source| refused(file.path, source))?;
+        temporary
+            .rename_to(real)
+            .map_err(|source| refused(file.path, source))?;
     }
     Ok(())
 }
@@ -168,7 +173,8 @@ fn resolve(path: &Path, inputs: &[&Path]) -> Result<Target, WriteError> {
         return Ok(Target::Device);
     }
     let real = fs::canonicalize(path).map_err(|e| refused(path, e))?;
-    let is_input = |input: &&Path| fs::canonicalize(input).is_ok_and(|i| i == real) || same_file(input, &real);
+    let is_input =
+        |input: &&Path| fs::canonicalize(input).is_ok_and(|i| i == real) || same_file(input, &real);
     if inputs.iter().any(is_input) {
         return Err(WriteError::IsInput { path: owned() });
     }
@@ -181,10 +187,18 @@ fn resolve(path: &Path, inputs: &[&Path]) -> Result<Target, WriteError> {
 /// A target that does not exist yet: its folder must.
 fn new_target(path: &Path) -> Result<Target, WriteError> {
     let Some(name) = path.file_name() else {
-        return Err(WriteError::IsFolder { path: path.to_owned() });
+        return Err(WriteError::IsFolder {
+            path: path.to_owned(),
+        });
     };
-    if path.as_os_str().to_string_lossy().ends_with(std::path::is_separator) {
-        return Err(WriteError::IsFolder { path: path.to_owned() });
+    if path
+        .as_os_str()
+        .to_string_lossy()
+        .ends_with(std::path::is_separator)
+    {
+        return Err(WriteError::IsFolder {
+            path: path.to_owned(),
+        });
     }
     let folder = match path.parent() {
         Some(parent) if !parent.as_os_str().is_empty() => parent,
@@ -192,8 +206,12 @@ fn new_target(path: &Path) -> Result<Target, WriteError> {
     };
     match fs::canonicalize(folder) {
         Ok(real) if real.is_dir() => Ok(Target::Plain(real.join(name))),
-        Ok(_) => Err(WriteError::NoFolder { path: path.to_owned() }),
-        Err(e) if e.kind() == io::ErrorKind::NotFound => Err(WriteError::NoFolder { path: path.to_owned() }),
+        Ok(_) => Err(WriteError::NoFolder {
+            path: path.to_owned(),
+        }),
+        Err(e) if e.kind() == io::ErrorKind::NotFound => Err(WriteError::NoFolder {
+            path: path.to_owned(),
+        }),
         Err(e) => Err(refused(path, e)),
     }
 }

@@ -34,7 +34,7 @@ pub(crate) fn assemble(raw: Vec<RawLoop>) -> Outline {
     lumens.extend(by_depth(
         plain.into_iter().map(|one| Loop::new(one.points)).collect(),
     ));
-    Outline { lumens }.oriented()
+    Outline { lumens }
 }
 
 /// Loops of one label form a lumen; the one with the largest area is its outer wall.

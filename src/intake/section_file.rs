@@ -63,7 +63,7 @@ pub(crate) fn read(text: &str, option: Option<&UnitOption>) -> Result<Content, F
         (Some(value), None) => {
             let mut coordinates = Coordinates::new(text, scale);
             let lumens = coordinates.lumens(value)?;
-            (Outline { lumens }.oriented(), None)
+            (Outline { lumens }, None)
         }
         (None, Some(value)) => {
             let table = value

@@ -5,7 +5,7 @@
 
 use std::fmt::Write as _;
 
-use super::section::Section;
+use super::section::Extras;
 use crate::geometry::nominal::{NominalSpec, SpecValue};
 use crate::geometry::{Loop, Outline};
 
@@ -14,7 +14,8 @@ const METRES_TO_MICROMETRES: i32 = 6;
 
 /// A section as the text of a section file.
 ///
-/// Name, outline or nominal dimensions and the kept tables are written; provenance and warnings are not.
+/// - `nominal`: when given, its dimensions are written instead of the vertices of `outline`
+/// - `extras`: tables kept from the file the section was read from
 ///
 /// # Examples
 /// ```
@@ -22,30 +23,34 @@ const METRES_TO_MICROMETRES: i32 = 6;
 /// let table = b"x_mm,y_mm\n0,0\n0.1,0\n0.1,0.07\n".to_vec();
 /// let options = ReadOptions::default();
 /// let section = section_from_bytes(table, "table.csv", &options).unwrap();
-/// let text = to_toml(&section);
+/// let text = to_toml(None, &section.outline, None, &section.extras);
 /// assert!(text.contains("[100, 70]"));
 /// let again = section_from_bytes(text.into_bytes(), "again.toml", &options).unwrap();
 /// assert_eq!(again.outline, section.outline);
 /// ```
-pub fn to_toml(section: &Section) -> String {
+pub fn to_toml(
+    name: Option<&str>,
+    outline: &Outline,
+    nominal: Option<&NominalSpec>,
+    extras: &Extras,
+) -> String {
     let mut text = String::new();
-    if let Some(name) = &section.name {
+    if let Some(name) = name {
         line(
             &mut text,
-            &format!("name = {}", toml::Value::String(name.clone())),
+            &format!("name = {}", toml::Value::String(name.to_owned())),
         );
     }
-    match &section.nominal {
+    match nominal {
         Some(spec) => {
             let mut top = toml::Table::new();
             top.insert("nominal".to_owned(), toml::Value::Table(spec_table(spec)));
             text.push('\n');
             text.push_str(&top.to_string());
         }
-        None => write_outline(&mut text, &section.outline),
+        None => write_outline(&mut text, outline),
     }
     let mut kept = toml::Table::new();
-    let extras = &section.extras;
     for (key, table) in [
         ("source", &extras.source),
         ("uncertainty", &extras.uncertainty),

@@ -1,1 +1,32 @@
-//! report.
+//! Answers out: text, JSON, CSV, field files and pictures, and the only code that writes files.
+//!
+//! Every format is a view of one [`SolveDocument`].
+
+mod colour_map;
+mod contour;
+mod csv;
+mod document;
+mod drawing;
+mod json;
+mod numbers;
+mod picture;
+mod picture_layout;
+mod png;
+mod svg;
+mod table;
+mod text;
+mod text_operation;
+mod ticks;
+mod vtk;
+mod write;
+
+pub use csv::{CsvError, to_csv};
+pub use document::{Scale, SolveDocument, SourceRecord};
+pub use drawing::{Anchor, Colour, Drawing, Item, Raster, TextSize};
+pub use json::{SCHEMA, to_json};
+pub use picture::{PictureError, PictureFormat, draw_velocity, picture_bytes};
+pub use png::{PngError, to_png};
+pub use svg::to_svg;
+pub use text::{TextOptions, to_text};
+pub use vtk::{VtkError, field_legacy_vtk, field_vti, wall_vtp};
+pub use write::{OutputFile, WriteError, check_target, vtk_paths, write_file, write_files};

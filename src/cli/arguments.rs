@@ -1,0 +1,266 @@
+//! What can be typed: commands, options and their help. One table, no meaning yet.
+
+use clap::{Arg, ArgAction, Command, value_parser};
+
+use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
+
+/// Printed below the help of the program.
+const STATUS: &str = "\
+Exit status:
+  0  done, and accepted where a limit was set
+  1  done, outside the limit (check: problems found)
+  2  wrong usage
+  3  input unreadable, unit or scale ambiguous, or output not writable
+  4  outside the model's validity (not laminar, section not resolved)
+  5  not solved to the asked accuracy
+
+A resistance is not a pressure rating; the results are for fully developed
+laminar flow in a rigid section.";
+
+/// The whole command line.
+pub fn command() -> Command {
+    Command::new("etchwise")
+        .version(env!("CARGO_PKG_VERSION"))
+        .about("Hydraulics of as-made microchannel cross-sections, with their certainty")
+        .after_help(STATUS)
+        .subcommand_required(true)
+        .arg_required_else_help(true)
+        .max_term_width(79)
+        .subcommand(solve())
+        .subcommand(check())
+        .subcommand(draw())
+}
+
+fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
+    Arg::new(name).long(name).value_name(value).help(help)
+}
+
+fn flag(name: &'static str, help: &'static str) -> Arg {
+    Arg::new(name)
+        .long(name)
+        .action(ArgAction::SetTrue)
+        .help(help)
+}
+
+/// Options that every command has.
+fn common(command: Command) -> Command {
+    command
+        .arg(flag("json", "Print one JSON object, SI units").help_heading("Output"))
+        .arg(flag("quiet", "Say nothing on standard error but errors").short('q'))
+        .arg(
+            option("threads", "N", "Threads to use [default: all cores]")
+                .value_parser(value_parser!(u16).range(1..)),
+        )
+}
+
+/// The input file and how to read it.
+fn input(command: Command) -> Command {
+    let heading = "Input";
+    command
+        .arg(
+            Arg::new("file")
+                .value_name("FILE")
+                .required(true)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Section file, outline or drawing; - for standard input"),
+        )
+        .arg(
+            option("as", "KIND", "Read FILE as: section, outline, svg")
+                .help_heading(heading)
+                .long_help(
+                    "Read FILE as section (TOML), outline (columns of text) or svg (drawing). \
+                     Without it the content decides, never the file name. Example: --as outline",
+                ),
+        )
+        .arg(
+            option("unit", "UNIT", "Unit of bare coordinates: m, mm, um, nm")
+                .help_heading(heading)
+                .long_help(
+                    "Unit of coordinates in a file that does not name one: m, cm, mm, um, nm, inch, \
+                     mil. Never guessed. Example: --unit um",
+                ),
+        )
+        .arg(
+            option("scale", "LENGTH", "Length of one unit of a drawing (SVG)")
+                .help_heading(heading)
+                .long_help("Length of one unit of an SVG drawing. Example: --scale \"1 um\""),
+        )
+        .arg(
+            flag("any-size", "Accept sections outside 10 nm to 50 mm").help_heading(heading),
+        )
+}
+
+fn solve() -> Command {
+    let command = Command::new("solve")
+        .about("Solve a section: conductance, resistance, friction factor, shear")
+        .after_help(
+            "Example: etchwise solve wafer.toml --fluid water --temperature 25C \\\n  \
+             --length 20mm --flow-rate 5uL/min --picture wafer.png",
+        );
+    let command = fluid_options(input(command));
+    let heading = "Output";
+    common(command)
+        .arg(
+            option("cells-across", "N", "Cells across the smallest lumen")
+                .value_parser(value_parser!(f64))
+                .long_help(
+                    "Cells across the largest circle that fits into the smallest lumen: the short \
+                     side of a rectangle, the gap of an annulus. At least 4. Default: refined until \
+                     the estimated error of the conductance is within 0.01 %. Example: \
+                     --cells-across 128",
+                ),
+        )
+        .arg(flag(
+            "shortcuts",
+            "Also say what the usual formulas would have said",
+        ))
+        .arg(flag("csv", "Print a CSV table, unit in every head").conflicts_with("json").help_heading(heading))
+        .arg(
+            Arg::new("output")
+                .short('o')
+                .long("output")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the result to FILE instead")
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("vtk")
+                .long("vtk")
+                .value_name("PREFIX")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write PREFIX.vti (field) and PREFIX.vtp (wall)")
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("picture")
+                .long("picture")
+                .value_name("FILE")
+                .action(ArgAction::Append)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write a picture of the velocity, .png or .svg")
+                .help_heading(heading),
+        )
+        .arg(flag("verbose", "Show the grids and the solver's course").short('v').help_heading(heading))
+        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
+        .arg(flag("deny-warnings", "End with status 1 on any warning").long_help(
+            "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
+        ))
+}
+
+fn fluid_options(command: Command) -> Command {
+    let fluid = "Fluid and operating point";
+    let entry = |name, value, help, long| option(name, value, help).long_help(long).help_heading(fluid);
+    command
+        .arg(
+            option("fluid", "NAME", "water or air (needs --temperature)")
+                .value_parser(["water", "air"])
+                .help_heading(fluid),
+        )
+        .arg(entry(
+            "temperature",
+            "T",
+            "Temperature, such as 25C or 298.15K",
+            "Temperature of the fluid, with its unit. Water: -20 to 110 C at 0.1 MPa. \
+             Example: --temperature 25C",
+        ))
+        .arg(entry(
+            "gas-pressure",
+            "P",
+            "Absolute pressure of air [default: 101325 Pa]",
+            "Absolute pressure of the gas in the channel. Default: 101325 Pa. Example: \
+             --gas-pressure 1.2bar",
+        ))
+        .arg(entry(
+            "viscosity",
+            "MU",
+            "Viscosity of another fluid, such as 1.2mPa.s",
+            "Dynamic viscosity of a Newtonian fluid, with its unit. Example: --viscosity 1.2mPa.s",
+        ))
+        .arg(entry(
+            "density",
+            "RHO",
+            "Density of another fluid, such as 1050kg/m^3",
+            "Density, with its unit; needed for the Reynolds number. Example: --density 1050kg/m^3",
+        ))
+        .arg(entry(
+            "length",
+            "L",
+            "Length of the channel, such as 20mm",
+            "Length of the channel, with its unit. Example: --length 20mm",
+        ))
+        .arg(
+            entry(
+                "pressure-drop",
+                "DP",
+                "Pressure drop over the length, such as 30kPa",
+                "Pressure drop over the length, with its unit. Example: --pressure-drop 30kPa",
+            )
+            .conflicts_with("flow-rate"),
+        )
+        .arg(entry(
+            "flow-rate",
+            "Q",
+            "Flow rate, such as 5uL/min",
+            "Volume flow rate, with its unit. Example: --flow-rate 5uL/min",
+        ))
+}
+
+fn check() -> Command {
+    let command = Command::new("check")
+        .about("List every problem of an outline, with place and remedy")
+        .after_help("Example: etchwise check traced.csv --unit um");
+    common(input(command))
+}
+
+fn draw() -> Command {
+    let mut draw = Command::new("draw")
+        .about("Draw a nominal section from process parameters")
+        .subcommand_required(true)
+        .arg_required_else_help(true)
+        .after_help(
+            "Example: etchwise draw koh_groove --opening 100um --depth 40um -o groove.toml",
+        );
+    for kind in kinds() {
+        let parameters = kind.parameters.iter().chain(modifiers());
+        draw = draw.subcommand(
+            common(Command::new(kind.name).about(kind.summary))
+                .args(parameters.map(parameter))
+                .arg(option("name", "TEXT", "Name of the section"))
+                .arg(flag(
+                    "points",
+                    "Write the outline as points, not as parameters",
+                ))
+                .arg(
+                    Arg::new("output")
+                        .short('o')
+                        .long("output")
+                        .value_name("FILE")
+                        .value_parser(value_parser!(std::path::PathBuf))
+                        .help("Write to FILE (.csv: outline in um)"),
+                ),
+        );
+    }
+    draw
+}
+
+fn parameter(info: &'static ParameterInfo) -> Arg {
+    let default = info
+        .default
+        .map_or(String::new(), |d| format!(" [default: {d}]"));
+    let arg = Arg::new(info.name)
+        .long(info.name.replace('_', "-"))
+        .value_name(match info.quantity {
+            Quantity::Length => "LENGTH",
+            Quantity::Angle => "ANGLE",
+            Quantity::Spec | Quantity::SpecList => "SECTION",
+            _ => "NUMBER",
+        })
+        .help(format!("{}{default}", info.meaning))
+        .long_help(format!("{}{default}. Example: --{} \"{}\"", info.meaning, info.name.replace('_', "-"), info.example));
+    if info.quantity == Quantity::SpecList {
+        arg.action(ArgAction::Append)
+    } else {
+        arg
+    }
+}

@@ -1,0 +1,123 @@
+//! `etchwise check`: every problem of an outline.
+
+use std::fmt::Write as _;
+use std::path::PathBuf;
+
+use clap::ArgMatches;
+use serde::Serialize;
+
+use crate::geometry::{Problem, Severity};
+use crate::intake::read_section;
+
+use super::exit_status::ExitStatus;
+use super::failure::Failure;
+use super::input::read_options;
+use super::output;
+
+/// Machine form of a check.
+#[derive(Serialize)]
+struct CheckRecord<'a> {
+    schema: &'static str,
+    tool_version: &'static str,
+    source: SourceRecord<'a>,
+    vertices: usize,
+    accepted: bool,
+    problems: Vec<ProblemRecord>,
+    /// What the list does not hold.
+    notes: Vec<String>,
+}
+
+#[derive(Serialize)]
+struct SourceRecord<'a> {
+    path: &'a str,
+    sha256: &'a str,
+    kind: &'a str,
+}
+
+#[derive(Serialize)]
+struct ProblemRecord {
+    kind: &'static str,
+    severity: &'static str,
+    /// Which wall, in words.
+    wall: String,
+    /// Loops and vertices counted from 0, in the order of the file.
+    #[serde(rename = "loop")]
+    loop_index: usize,
+    vertex: usize,
+    /// `[x, y]` in metres; null where a coordinate is not finite.
+    at: Option<[f64; 2]>,
+    message: String,
+    remedy: &'static str,
+}
+
+pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
+    super::set_threads(matches)?;
+    let file = matches.get_one::<PathBuf>("file").cloned().unwrap_or_default();
+    let options = read_options(matches)?;
+    let section = read_section(&file, &options)?;
+    let problems = section.outline.problems();
+    let accepted = !problems.has_errors();
+    let vertices = section.outline.loops().map(|l| l.points.len()).sum();
+    if matches.get_flag("json") {
+        let record = CheckRecord {
+            schema: "etchwise-check/1",
+            tool_version: env!("CARGO_PKG_VERSION"),
+            source: SourceRecord {
+                path: &section.provenance.path,
+                sha256: &section.provenance.sha256,
+                kind: section.provenance.kind.word(),
+            },
+            vertices,
+            accepted,
+            problems: problems.list.iter().map(record).collect(),
+            notes: problems.notes(),
+        };
+        let text = serde_json::to_string_pretty(&record).map_err(|error| {
+            Failure::new(
+                ExitStatus::Unreadable,
+                format!("the list cannot be printed: {error}"),
+                "leave out --json",
+            )
+        })?;
+        output::print(&format!("{text}\n"))?;
+    } else {
+        let mut text = String::new();
+        for problem in &problems.list {
+            let word = match problem.severity() {
+                Severity::Error => "problem",
+                Severity::Harmless => "harmless",
+            };
+            let _ = writeln!(text, "{word}: {problem}\n  help: {}", problem.remedy());
+        }
+        for note in problems.notes() {
+            let _ = writeln!(text, "{note}");
+        }
+        let _ = match problems.list.len() {
+            0 if accepted => writeln!(text, "{}: no problems in {vertices} vertices", file.display()),
+            n => writeln!(text, "{}: {n} problem(s) in {vertices} vertices", file.display()),
+        };
+        output::print(&text)?;
+    }
+    Ok(if accepted {
+        ExitStatus::Done
+    } else {
+        ExitStatus::OutsideLimit
+    })
+}
+
+fn record(problem: &Problem) -> ProblemRecord {
+    let place = problem.place;
+    ProblemRecord {
+        kind: problem.code(),
+        severity: match problem.severity() {
+            Severity::Error => "error",
+            Severity::Harmless => "harmless",
+        },
+        wall: place.role.to_string(),
+        loop_index: place.loop_index,
+        vertex: place.vertex,
+        at: place.at.iter().all(|x| x.is_finite()).then_some(place.at),
+        message: problem.to_string(),
+        remedy: problem.remedy(),
+    }
+}

@@ -1,0 +1,101 @@
+//! An error on its way to the terminal: `error: ...`, the place in the file, `help: ...`.
+
+use std::fmt::Write as _;
+
+use crate::flow::{FlowError, FluidError, OperatingPointError};
+use crate::geometry::NominalError;
+use crate::grid::ResolutionError;
+use crate::intake::ReadError;
+use crate::report::{PictureError, VtkError, WriteError};
+use crate::units::UnitError;
+
+use super::exit_status::ExitStatus;
+use super::output;
+
+/// What to print and with which status to end.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub(super) struct Failure {
+    pub(super) status: ExitStatus,
+    /// Message, place and help as lines.
+    pub(super) text: String,
+}
+
+impl Failure {
+    pub(super) fn new(status: ExitStatus, message: impl std::fmt::Display, help: &str) -> Self {
+        let mut text = format!("error: {message}");
+        if !help.is_empty() {
+            let _ = write!(text, "\nhelp: {help}");
+        }
+        Self { status, text }
+    }
+
+    pub(super) fn usage(message: impl std::fmt::Display, help: &str) -> Self {
+        Self::new(ExitStatus::Usage, message, help)
+    }
+
+    /// A value of an option that cannot be read.
+    pub(super) fn option(option: &str, error: &UnitError) -> Self {
+        Self::usage(format!("--{option}: {error}"), &error.hint())
+    }
+
+    pub(super) fn print(&self) {
+        output::talk(&self.text);
+    }
+}
+
+impl From<ReadError> for Failure {
+    fn from(error: ReadError) -> Self {
+        Self {
+            status: ExitStatus::Unreadable,
+            text: error.explain(),
+        }
+    }
+}
+
+impl From<FlowError> for Failure {
+    fn from(error: FlowError) -> Self {
+        let status = match &error {
+            FlowError::Resolution(ResolutionError::TooCoarse { .. }) => ExitStatus::Usage,
+            FlowError::Resolution(ResolutionError::TooThin { .. }) => ExitStatus::OutsideValidity,
+            FlowError::NoArea { .. } => ExitStatus::Unreadable,
+            _ => ExitStatus::NotSolved,
+        };
+        Self::new(status, &error, &error.hint())
+    }
+}
+
+impl From<NominalError> for Failure {
+    fn from(error: NominalError) -> Self {
+        Self::usage(&error, &error.hint())
+    }
+}
+
+impl From<FluidError> for Failure {
+    fn from(error: FluidError) -> Self {
+        Self::usage(&error, &error.hint())
+    }
+}
+
+impl From<OperatingPointError> for Failure {
+    fn from(error: OperatingPointError) -> Self {
+        Self::usage(&error, &error.hint())
+    }
+}
+
+impl From<WriteError> for Failure {
+    fn from(error: WriteError) -> Self {
+        Self::new(ExitStatus::Unreadable, &error, "")
+    }
+}
+
+impl From<PictureError> for Failure {
+    fn from(error: PictureError) -> Self {
+        Self::usage(&error, "")
+    }
+}
+
+impl From<VtkError> for Failure {
+    fn from(error: VtkError) -> Self {
+        Self::new(ExitStatus::Unreadable, &error, "write the field without --vtk and report this")
+    }
+}

@@ -1,0 +1,96 @@
+//! From the FILE argument to a checked section.
+
+use std::fmt::Write as _;
+use std::path::Path;
+
+use clap::ArgMatches;
+
+use crate::geometry::Outline;
+use crate::intake::{ReadOptions, Section, SectionKind, read_section};
+use crate::units;
+use crate::warning::{Code, Warning};
+
+use super::exit_status::ExitStatus;
+use super::failure::Failure;
+
+/// Problems shown with an outline that cannot be solved.
+const PROBLEMS_SHOWN: usize = 5;
+
+/// A section ready to solve.
+pub(super) struct CheckedSection {
+    pub(super) section: Section,
+    pub(super) outline: Outline,
+    pub(super) warnings: Vec<Warning>,
+}
+
+/// The options that say how a file is to be read.
+pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure> {
+    let mut options = ReadOptions::default();
+    if let Some(kind) = matches.get_one::<String>("as") {
+        options.as_kind = Some(SectionKind::from_word(kind).ok_or_else(|| {
+            Failure::usage(
+                format!("--as: `{kind}` is not a kind of input"),
+                "use section, outline or svg",
+            )
+        })?);
+    }
+    if let Some(unit) = matches.get_one::<String>("unit") {
+        // Either a unit or the length of one unit.
+        if units::length_unit(unit).is_none() {
+            units::parse_length(unit).map_err(|error| Failure::option("unit", &error))?;
+        }
+        options.unit = Some(unit.clone());
+    }
+    if let Some(text) = matches.get_one::<String>("scale") {
+        let scale = units::parse_length(text).map_err(|e| Failure::option("scale", &e))?;
+        if scale <= 0.0 {
+            return Err(Failure::usage(
+                format!("--scale: {text} is not positive"),
+                "give the length of one drawing unit, for example `1 um`",
+            ));
+        }
+        options.svg_scale = Some(scale);
+    }
+    options.allow_any_size = matches.get_flag("any-size");
+    Ok(options)
+}
+
+/// Reads a file and refuses an outline with problems.
+pub(super) fn checked_section(
+    path: &Path,
+    options: &ReadOptions,
+) -> Result<CheckedSection, Failure> {
+    let section = read_section(path, options)?;
+    let problems = section.outline.problems();
+    if problems.has_errors() {
+        let errors: Vec<_> = problems.errors().collect();
+        let mut text = format!("{}: the outline cannot be used", path.display());
+        for problem in errors.iter().take(PROBLEMS_SHOWN) {
+            let _ = write!(text, "\n  {problem}");
+        }
+        if errors.len() > PROBLEMS_SHOWN {
+            let _ = write!(text, "\n  and {} more", errors.len() - PROBLEMS_SHOWN);
+        }
+        let remedy = errors.first().map_or("", |problem| problem.remedy());
+        let help = format!(
+            "{remedy}; `etchwise check {}` lists all problems",
+            path.display()
+        );
+        return Err(Failure::new(ExitStatus::Unreadable, text, &help));
+    }
+    let (outline, dropped) = section.outline.clone().without_duplicate_vertices();
+    let mut warnings = section.warnings.clone();
+    if dropped > 0 {
+        warnings.push(Warning {
+            code: Code::DuplicateVerticesRemoved,
+            message: format!("{dropped} vertices that repeat the one before were dropped"),
+            advice: "nothing to do: the outline is the same without them".to_owned(),
+            numbers: vec![("vertices", dropped as f64)],
+        });
+    }
+    Ok(CheckedSection {
+        section,
+        outline,
+        warnings,
+    })
+}

@@ -1,0 +1,332 @@
+//! `etchwise solve`: the main job.
+
+use std::path::{Path, PathBuf};
+
+use clap::ArgMatches;
+
+use crate::flow::{
+    Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, outside_validity,
+    shortcuts, solve_outline, validity_warnings,
+};
+use crate::intake::ReadOptions;
+use crate::report::{
+    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_target,
+    vtk_paths, write_files,
+};
+use crate::units::{self, UnitError};
+use crate::warning::Code;
+
+use super::exit_status::ExitStatus;
+use super::failure::Failure;
+use super::input::{CheckedSection, checked_section, read_options};
+use super::output;
+
+/// Nodes of an exported field, about: above that the field is thinned and a warning says so.
+const FIELD_NODES: usize = 16_000_000;
+/// Nodes of the field behind a picture.
+const PICTURE_NODES: usize = 1_500_000;
+/// Standard atmosphere, Pa (ISO 2533:1975; from memory).
+const ATMOSPHERE: f64 = 101_325.0;
+
+/// What was asked for, units applied, no file opened yet.
+struct Request {
+    file: PathBuf,
+    read: ReadOptions,
+    solve: SolveOptions,
+    fluid: Option<Fluid>,
+    length: Option<f64>,
+    drive: Option<Drive>,
+    shortcuts: bool,
+    format: Format,
+    output: Option<PathBuf>,
+    vtk: Option<PathBuf>,
+    pictures: Vec<(PathBuf, PictureFormat)>,
+    quiet: bool,
+    deny_warnings: bool,
+}
+
+enum Format {
+    Text(TextOptions),
+    Json,
+    Csv,
+}
+
+pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
+    super::set_threads(matches)?;
+    let request = Request::new(matches)?;
+    request.check_targets()?;
+    let checked = checked_section(&request.file, &request.read)?;
+    let solved = solve_outline(&checked.outline, &request.solve)?;
+    request.answer(&checked, &solved)
+}
+
+fn path(matches: &ArgMatches, name: &str) -> Option<PathBuf> {
+    matches.get_one::<PathBuf>(name).cloned()
+}
+
+/// Reads an option with a unit.
+fn quantity(
+    matches: &ArgMatches,
+    name: &str,
+    parse: fn(&str) -> Result<f64, UnitError>,
+) -> Result<Option<f64>, Failure> {
+    matches
+        .get_one::<String>(name)
+        .map(|text| parse(text).map_err(|error| Failure::option(name, &error)))
+        .transpose()
+}
+
+impl Request {
+    fn new(matches: &ArgMatches) -> Result<Self, Failure> {
+        let length = quantity(matches, "length", units::parse_length)?;
+        let drop = quantity(matches, "pressure-drop", units::parse_pressure)?;
+        let flow_rate = quantity(matches, "flow-rate", units::parse_flow_rate)?;
+        let drive = drop
+            .map(Drive::PressureDrop)
+            .or(flow_rate.map(Drive::FlowRate));
+        let fluid = fluid(matches)?;
+        positive("length", length, "for example `20 mm`")?;
+        positive("pressure-drop", drop, "for example `30 kPa`")?;
+        positive("flow-rate", flow_rate, "for example `5 uL/min`")?;
+        if drive.is_some() && length.is_none() {
+            return Err(Failure::usage(
+                "an operating point needs the length of the channel",
+                "add --length, for example --length 20mm",
+            ));
+        }
+        if (drive.is_some() || length.is_some()) && fluid.is_none() {
+            return Err(Failure::usage(
+                "a resistance needs a fluid",
+                "add --fluid water --temperature 25C, or --viscosity (and --density)",
+            ));
+        }
+        let pictures = matches
+            .get_many::<PathBuf>("picture")
+            .into_iter()
+            .flatten()
+            .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))
+            .collect::<Result<_, Failure>>()?;
+        let format = if matches.get_flag("json") {
+            Format::Json
+        } else if matches.get_flag("csv") {
+            Format::Csv
+        } else {
+            Format::Text(TextOptions {
+                ascii: matches.get_flag("ascii"),
+                verbose: matches.get_flag("verbose"),
+            })
+        };
+        Ok(Self {
+            file: path(matches, "file").unwrap_or_default(),
+            read: read_options(matches)?,
+            solve: SolveOptions {
+                cells_across: matches.get_one::<f64>("cells-across").copied(),
+                ..SolveOptions::default()
+            },
+            fluid,
+            length,
+            drive,
+            shortcuts: matches.get_flag("shortcuts"),
+            format,
+            output: path(matches, "output"),
+            vtk: path(matches, "vtk"),
+            pictures,
+            quiet: matches.get_flag("quiet"),
+            deny_warnings: matches.get_flag("deny-warnings"),
+        })
+    }
+
+    /// Outputs that cannot be written are found before the solve.
+    fn check_targets(&self) -> Result<(), Failure> {
+        let vtk = self.vtk.iter().flat_map(|prefix| vtk_paths(prefix));
+        let pictures = self.pictures.iter().map(|(path, _)| path.clone());
+        let targets: Vec<PathBuf> = self.output.clone().into_iter().chain(vtk).chain(pictures).collect();
+        for (index, target) in targets.iter().enumerate() {
+            if targets[..index].contains(target) {
+                return Err(Failure::usage(
+                    format!("two outputs would go to {}", target.display()),
+                    "give each output its own name",
+                ));
+            }
+            check_target(target, &[&self.file])?;
+        }
+        Ok(())
+    }
+
+    fn answer(
+        &self,
+        checked: &CheckedSection,
+        solved: &SolvedSection,
+    ) -> Result<ExitStatus, Failure> {
+        let flow = &solved.flow;
+        let fluid = self.fluid.as_ref();
+        let point = match (fluid, self.length, self.drive) {
+            (Some(fluid), Some(length), Some(drive)) => {
+                Some(OperatingPoint::new(flow, fluid, length, drive)?)
+            }
+            _ => None,
+        };
+        let rows: Option<Vec<ShortcutRow>> = self
+            .shortcuts
+            .then(|| shortcuts(&checked.outline, flow.conductance.value));
+        let mut warnings = checked.warnings.clone();
+        if let Some(fluid) = fluid {
+            warnings.extend(validity_warnings(flow, fluid, point.as_ref()));
+        }
+        let provenance = &checked.section.provenance;
+        let name = self.name(checked);
+        let document = SolveDocument {
+            source: Some(SourceRecord {
+                path: &provenance.path,
+                sha256: &provenance.sha256,
+                kind: provenance.kind.word(),
+            }),
+            section_name: &name,
+            flow,
+            fluid,
+            length: self.length,
+            operating_point: point.as_ref(),
+            shortcuts: rows.as_deref(),
+            warnings: &warnings,
+        };
+        self.deliver(&document, solved)?;
+        let denied = self.deny_warnings
+            && document
+                .all_warnings()
+                .iter()
+                .any(|warning| warning.code != Code::Caution);
+        let invalid = fluid
+            .zip(point.as_ref())
+            .is_some_and(|(fluid, point)| outside_validity(flow, fluid, point));
+        Ok(if !flow.solver.converged {
+            ExitStatus::NotSolved
+        } else if invalid {
+            ExitStatus::OutsideValidity
+        } else if denied {
+            ExitStatus::OutsideLimit
+        } else {
+            ExitStatus::Done
+        })
+    }
+
+    /// The section's own name, or that of its file.
+    fn name(&self, checked: &CheckedSection) -> String {
+        checked.section.name.clone().unwrap_or_else(|| {
+            self.file
+                .file_stem()
+                .map_or_else(|| "section".to_owned(), |s| s.to_string_lossy().into_owned())
+        })
+    }
+
+    fn deliver(&self, document: &SolveDocument, solved: &SolvedSection) -> Result<(), Failure> {
+        let mut files: Vec<(PathBuf, Vec<u8>)> = Vec::new();
+        if let Some(prefix) = &self.vtk {
+            let field = solved.dense_field(FIELD_NODES);
+            if field.stride > 1 {
+                output::talk(&format!(
+                    "warning: the field is thinned to every {}th grid line to keep the file in bounds",
+                    field.stride
+                ));
+            }
+            let [vti, vtp] = vtk_paths(prefix);
+            files.push((vti, report::field_vti(document, &field)?.into_bytes()));
+            files.push((vtp, report::wall_vtp(document)?.into_bytes()));
+        }
+        if !self.pictures.is_empty() {
+            let field = solved.dense_field(PICTURE_NODES);
+            let outline = solved.outline();
+            for (path, format) in &self.pictures {
+                let bytes = report::picture_bytes(document, outline, &field, *format)?;
+                files.push((path.clone(), bytes));
+            }
+        }
+        let text = self.main_output(document)?;
+        if let Some(path) = &self.output {
+            files.push((path.clone(), text.into_bytes()));
+            self.write(&files)
+        } else {
+            self.write(&files)?;
+            output::print(&text)
+        }
+    }
+
+    fn write(&self, files: &[(PathBuf, Vec<u8>)]) -> Result<(), Failure> {
+        let list: Vec<OutputFile> = files
+            .iter()
+            .map(|(path, bytes)| OutputFile { path, bytes })
+            .collect();
+        write_files(&list, &[Path::new(&self.file)])?;
+        if !self.quiet {
+            for (path, _) in files {
+                output::talk(&format!("wrote {}", path.display()));
+            }
+        }
+        Ok(())
+    }
+
+    fn main_output(&self, document: &SolveDocument) -> Result<String, Failure> {
+        let failed = |error: &dyn std::fmt::Display| {
+            Failure::new(ExitStatus::Unreadable, format!("the result cannot be printed: {error}"), "")
+        };
+        match &self.format {
+            Format::Text(options) => Ok(report::to_text(document, *options)),
+            Format::Json => report::to_json(document).map_err(|e| failed(&e)),
+            Format::Csv => report::to_csv(&[*document]).map_err(|e| failed(&e)),
+        }
+    }
+}
+
+fn positive(name: &str, value: Option<f64>, example: &str) -> Result<(), Failure> {
+    match value {
+        Some(v) if !(v.is_finite() && v > 0.0) => Err(Failure::usage(
+            format!("--{name}: {v} (SI) is not a positive number"),
+            &format!("give a positive value, {example}"),
+        )),
+        _ => Ok(()),
+    }
+}
+
+/// The fluid, if one is named or described.
+fn fluid(matches: &ArgMatches) -> Result<Option<Fluid>, Failure> {
+    let temperature = quantity(matches, "temperature", units::parse_temperature)?;
+    let pressure = quantity(matches, "gas-pressure", units::parse_pressure)?;
+    let viscosity = quantity(matches, "viscosity", units::parse_viscosity)?;
+    let density = quantity(matches, "density", units::parse_density)?;
+    positive("gas-pressure", pressure, "for example `1 bar`")?;
+    positive("viscosity", viscosity, "for example `1.2 mPa s`")?;
+    positive("density", density, "for example `1050 kg/m^3`")?;
+    let name = matches.get_one::<String>("fluid").map(String::as_str);
+    if name.is_some() && (viscosity.is_some() || density.is_some()) {
+        return Err(Failure::usage(
+            "both --fluid and --viscosity or --density are given",
+            "name a fluid, or give its viscosity and density, not both",
+        ));
+    }
+    if pressure.is_some() && name != Some("air") {
+        return Err(Failure::usage(
+            "--gas-pressure is for --fluid air",
+            "leave it out; the pressure of a liquid does not matter here",
+        ));
+    }
+    let needed = || {
+        temperature.ok_or_else(|| {
+            Failure::usage(
+                "the viscosity depends on the temperature, and none is given",
+                "add --temperature, for example --temperature 25C",
+            )
+        })
+    };
+    match (name, viscosity) {
+        (Some("air"), _) => {
+            let pressure = pressure.unwrap_or(ATMOSPHERE);
+            Ok(Some(Fluid::dry_air(needed()?, pressure)?))
+        }
+        (Some(_), _) => Ok(Some(Fluid::water(needed()?)?)),
+        (None, Some(viscosity)) => Ok(Some(Fluid::custom(viscosity, density)?)),
+        (None, None) if density.is_some() || temperature.is_some() => Err(Failure::usage(
+            "a density or a temperature alone does not make a fluid",
+            "add --fluid water, --fluid air or --viscosity",
+        )),
+        (None, None) => Ok(None),
+    }
+}

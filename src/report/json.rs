@@ -1,0 +1,503 @@
+//! The JSON view: one object, SI units, no number without its unit, no NaN.
+//!
+//! Absence is `null` with a reason: inside a quantity as `absent_because`, for whole parts in the
+//! object `absent_because` at the top. The order of keys is fixed and there is no time stamp; only
+//! `solver.seconds` differs between two runs on the same input.
+
+use std::collections::BTreeMap;
+
+use serde::Serialize;
+
+use super::document::SolveDocument;
+use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
+use crate::geometry::Point;
+use crate::measured::Estimate;
+use crate::warning::Warning;
+
+/// Name and version of this contract.
+pub const SCHEMA: &str = "etchwise/1";
+
+/// Why `low` and `high` are null.
+const NO_BRACKET: &str = "no proven bracket was computed; estimated_error is an estimate from the grid \
+sequence, not a bound and not a standard uncertainty";
+
+/// The document as pretty-printed JSON with a closing line feed.
+///
+/// # Errors
+/// The error of the serialiser; it has no cause in the data, since keys are text and numbers finite.
+pub fn to_json(document: &SolveDocument<'_>) -> Result<String, serde_json::Error> {
+    let mut text = serde_json::to_string_pretty(&Root::new(document))?;
+    text.push('\n');
+    Ok(text)
+}
+
+/// A number or null.
+#[derive(Serialize)]
+#[serde(untagged)]
+enum Number {
+    Real(f64),
+    Count(usize),
+    Absent,
+}
+
+/// One number with its unit.
+#[derive(Serialize)]
+struct Quantity {
+    value: Number,
+    unit: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    estimated_error: Option<Number>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    absent_because: Option<&'static str>,
+}
+
+/// A number with its unit and its proven bracket.
+#[derive(Serialize)]
+struct Bracketed {
+    #[serde(flatten)]
+    quantity: Quantity,
+    low: Number,
+    high: Number,
+    bracket_absent_because: &'static str,
+}
+
+impl Number {
+    fn real(value: f64) -> Self {
+        if value.is_finite() {
+            Self::Real(value)
+        } else {
+            Self::Absent
+        }
+    }
+}
+
+impl Quantity {
+    fn real(value: f64, unit: &'static str) -> Self {
+        Self {
+            value: Number::real(value),
+            unit,
+            estimated_error: None,
+            absent_because: (!value.is_finite()).then_some("the computed value is not finite"),
+        }
+    }
+
+    fn optional(value: Option<f64>, unit: &'static str, reason: &'static str) -> Self {
+        value.map_or(
+            Self {
+                value: Number::Absent,
+                unit,
+                estimated_error: None,
+                absent_because: Some(reason),
+            },
+            |v| Self::real(v, unit),
+        )
+    }
+
+    fn count(value: usize) -> Self {
+        Self {
+            value: Number::Count(value),
+            unit: "1",
+            estimated_error: None,
+            absent_because: None,
+        }
+    }
+
+    fn estimate(estimate: Estimate, unit: &'static str) -> Self {
+        Self {
+            estimated_error: Some(Number::real(estimate.error)),
+            ..Self::real(estimate.value, unit)
+        }
+    }
+
+    fn bracketed(estimate: Estimate, unit: &'static str) -> Bracketed {
+        Bracketed {
+            quantity: Self::estimate(estimate, unit),
+            low: Number::Absent,
+            high: Number::Absent,
+            bracket_absent_because: NO_BRACKET,
+        }
+    }
+}
+
+/// A point as two numbers in metres.
+fn place(at: Point) -> [Number; 2] {
+    at.map(Number::real)
+}
+
+#[derive(Serialize)]
+struct Root<'a> {
+    schema: &'static str,
+    tool_version: &'static str,
+    name: &'a str,
+    source: Option<Source<'a>>,
+    section: Section,
+    conductance: Bracketed,
+    conductance_finest_grid: Quantity,
+    poiseuille: Poiseuille,
+    peak_to_mean_velocity: Quantity,
+    peak: Peak,
+    momentum_factor: Quantity,
+    kinetic_energy_factor: Quantity,
+    wall_shear: Shear,
+    grid: Grid,
+    solver: Solver,
+    bracket_relative_width: Quantity,
+    identities: BTreeMap<&'static str, IdentityView>,
+    fluid: Option<FluidView<'a>>,
+    resistance_per_length: Quantity,
+    length: Quantity,
+    resistance: Quantity,
+    operating_point: Option<PointView>,
+    shortcuts: Option<Vec<ShortcutView<'a>>>,
+    warnings: Vec<WarningView>,
+    absent_because: BTreeMap<&'static str, &'static str>,
+}
+
+impl<'a> Root<'a> {
+    fn new(document: &SolveDocument<'a>) -> Self {
+        let flow = document.flow;
+        let no_fluid = "no fluid was given";
+        let no_length = "no channel length was given";
+        let resistance = document.resistance();
+        let reason = if document.fluid.is_none() {
+            no_fluid
+        } else {
+            no_length
+        };
+        Self {
+            schema: SCHEMA,
+            tool_version: env!("CARGO_PKG_VERSION"),
+            name: document.section_name,
+            source: document.source.map(|s| Source {
+                path: s.path,
+                sha256: s.sha256,
+                kind: s.kind,
+            }),
+            section: Section::new(flow),
+            conductance: Quantity::bracketed(flow.conductance, "m^4"),
+            conductance_finest_grid: Quantity::real(flow.conductance_finest_grid, "m^4"),
+            poiseuille: Poiseuille {
+                fanning_dh: Quantity::real(flow.fanning_dh, "1"),
+                darcy_dh: Quantity::real(flow.darcy_dh, "1"),
+                fanning_sqrt_area: Quantity::real(flow.fanning_sqrt_area, "1"),
+            },
+            peak_to_mean_velocity: Quantity::estimate(flow.peak.to_mean, "1"),
+            peak: Peak {
+                phi: Quantity::real(flow.peak.phi, "m^2"),
+                at: place(flow.peak.at),
+            },
+            momentum_factor: Quantity::estimate(flow.momentum_factor, "1"),
+            kinetic_energy_factor: Quantity::estimate(flow.kinetic_energy_factor, "1"),
+            wall_shear: Shear::new(flow),
+            grid: Grid::new(flow),
+            solver: Solver::new(&flow.solver),
+            bracket_relative_width: Quantity::optional(None, "1", NO_BRACKET),
+            identities: flow
+                .identities
+                .iter()
+                .map(|i| (i.name, IdentityView::new(i)))
+                .collect(),
+            fluid: FluidView::new(document),
+            resistance_per_length: maybe(document.resistance_per_length(), "Pa s/m^4", no_fluid),
+            length: Quantity::optional(document.length, "m", no_length),
+            resistance: maybe(resistance, "Pa s/m^3", reason),
+            operating_point: PointView::new(document),
+            shortcuts: document
+                .shortcuts
+                .map(|rows| rows.iter().map(ShortcutView::new).collect()),
+            warnings: document
+                .all_warnings()
+                .into_iter()
+                .map(WarningView::new)
+                .collect(),
+            absent_because: absent_parts(document),
+        }
+    }
+}
+
+/// An estimate that may be missing.
+fn maybe(estimate: Option<Estimate>, unit: &'static str, reason: &'static str) -> Quantity {
+    estimate.map_or_else(
+        || Quantity::optional(None, unit, reason),
+        |e| Quantity::estimate(e, unit),
+    )
+}
+
+/// Why whole parts are null.
+fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static str> {
+    let mut reasons = BTreeMap::new();
+    if document.source.is_none() {
+        reasons.insert(
+            "source",
+            "the section was built in code, not read from a file",
+        );
+    }
+    if document.fluid.is_none() {
+        reasons.insert("fluid", "no fluid was given");
+    }
+    if document.operating_point.is_none() {
+        reasons.insert("operating_point", "no pressure drop or flow rate was given");
+    }
+    if document.shortcuts.is_none() {
+        reasons.insert("shortcuts", "the shortcut formulas were not asked for");
+    }
+    reasons
+}
+
+#[derive(Serialize)]
+struct Source<'a> {
+    path: &'a str,
+    sha256: &'a str,
+    kind: &'a str,
+}
+
+#[derive(Serialize)]
+struct Section {
+    area: Quantity,
+    wetted_perimeter: Quantity,
+    hydraulic_diameter: Quantity,
+    width: Quantity,
+    height: Quantity,
+    lumens: Quantity,
+    islands: Quantity,
+    vertices: Quantity,
+}
+
+impl Section {
+    fn new(flow: &SectionFlow) -> Self {
+        let g = &flow.geometry;
+        Self {
+            area: Quantity::real(g.area, "m^2"),
+            wetted_perimeter: Quantity::real(g.wetted_perimeter, "m"),
+            hydraulic_diameter: Quantity::real(g.hydraulic_diameter, "m"),
+            width: Quantity::real(g.width, "m"),
+            height: Quantity::real(g.height, "m"),
+            lumens: Quantity::count(g.lumens),
+            islands: Quantity::count(g.islands),
+            vertices: Quantity::count(g.vertices),
+        }
+    }
+}
+
+#[derive(Serialize)]
+struct Poiseuille {
+    fanning_dh: Quantity,
+    darcy_dh: Quantity,
+    fanning_sqrt_area: Quantity,
+}
+
+#[derive(Serialize)]
+struct Peak {
+    phi: Quantity,
+    at: [Number; 2],
+}
+
+#[derive(Serialize)]
+struct Shear {
+    mean_per_gradient: Quantity,
+    max_per_gradient: Quantity,
+    max_at: [Number; 2],
+    singular_corners: Vec<[Number; 2]>,
+}
+
+impl Shear {
+    fn new(flow: &SectionFlow) -> Self {
+        let s = &flow.wall_shear;
+        Self {
+            mean_per_gradient: Quantity::real(s.mean_per_gradient, "m"),
+            max_per_gradient: Quantity::real(s.max_per_gradient, "m"),
+            max_at: place(s.max_at),
+            singular_corners: s.singular_corners.iter().map(|&p| place(p)).collect(),
+        }
+    }
+}
+
+#[derive(Serialize)]
+struct Grid {
+    spacing: Quantity,
+    fluid_nodes: Quantity,
+    cells_across: Quantity,
+    inscribed_diameter: Quantity,
+}
+
+impl Grid {
+    fn new(flow: &SectionFlow) -> Self {
+        let g = &flow.grid;
+        Self {
+            spacing: Quantity::real(g.spacing, "m"),
+            fluid_nodes: Quantity::count(g.fluid_nodes),
+            cells_across: Quantity::real(g.cells_across, "1"),
+            inscribed_diameter: Quantity::real(g.inscribed_diameter, "m"),
+        }
+    }
+}
+
+#[derive(Serialize)]
+struct Solver {
+    cycles: Quantity,
+    residual: Quantity,
+    converged: bool,
+    seconds: Quantity,
+    convergence_factor: Quantity,
+    accelerated: bool,
+    levels: Vec<Level>,
+}
+
+#[derive(Serialize)]
+struct Level {
+    spacing: Quantity,
+    fluid_nodes: Quantity,
+    wall_nodes: Quantity,
+    cycles: Quantity,
+    conductance: Quantity,
+}
+
+impl Solver {
+    fn new(report: &SolverReport) -> Self {
+        Self {
+            cycles: Quantity::count(report.cycles),
+            residual: Quantity::real(report.residual, "1"),
+            converged: report.converged,
+            seconds: Quantity::real(report.seconds, "s"),
+            convergence_factor: Quantity::real(report.convergence_factor, "1"),
+            accelerated: report.accelerated,
+            levels: report
+                .levels
+                .iter()
+                .map(|l| Level {
+                    spacing: Quantity::real(l.spacing, "m"),
+                    fluid_nodes: Quantity::count(l.fluid_nodes),
+                    wall_nodes: Quantity::count(l.wall_nodes),
+                    cycles: Quantity::count(l.cycles),
+                    conductance: Quantity::real(l.conductance, "m^4"),
+                })
+                .collect(),
+        }
+    }
+}
+
+#[derive(Serialize)]
+struct IdentityView {
+    formula: &'static str,
+    computed: Number,
+    expected: Number,
+    relative_difference: Quantity,
+    tolerance: Number,
+    holds: bool,
+}
+
+impl IdentityView {
+    fn new(identity: &Identity) -> Self {
+        Self {
+            formula: identity.formula,
+            computed: Number::real(identity.computed),
+            expected: Number::real(identity.expected),
+            relative_difference: Quantity::real(identity.relative_difference, "1"),
+            tolerance: Number::real(identity.tolerance),
+            holds: identity.holds,
+        }
+    }
+}
+
+#[derive(Serialize)]
+struct FluidView<'a> {
+    name: &'a str,
+    temperature: Quantity,
+    viscosity: Quantity,
+    density: Quantity,
+    source: &'a str,
+}
+
+impl<'a> FluidView<'a> {
+    fn new(document: &SolveDocument<'a>) -> Option<Self> {
+        document.fluid.map(|f| Self {
+            name: &f.name,
+            temperature: Quantity::optional(f.temperature, "K", "no temperature was given"),
+            viscosity: Quantity::real(f.viscosity, "Pa s"),
+            density: Quantity::optional(f.density, "kg/m^3", "no density was given"),
+            source: &f.source,
+        })
+    }
+}
+
+#[derive(Serialize)]
+struct PointView {
+    length: Quantity,
+    flow_rate: Quantity,
+    pressure_drop: Quantity,
+    pressure_gradient: Quantity,
+    mean_velocity: Quantity,
+    peak_velocity: Quantity,
+    reynolds_dh: Quantity,
+    wall_shear_max: Quantity,
+    wall_shear_mean: Quantity,
+    residence_time: Quantity,
+    entrance_length: Quantity,
+}
+
+impl PointView {
+    fn new(document: &SolveDocument<'_>) -> Option<Self> {
+        let no_density = "the density of the fluid is not known";
+        document.operating_point.map(|p| Self {
+            length: Quantity::real(p.length, "m"),
+            flow_rate: Quantity::real(p.flow_rate, "m^3/s"),
+            pressure_drop: Quantity::real(p.pressure_drop, "Pa"),
+            pressure_gradient: Quantity::real(p.pressure_gradient, "Pa/m"),
+            mean_velocity: Quantity::real(p.mean_velocity, "m/s"),
+            peak_velocity: Quantity::real(p.peak_velocity, "m/s"),
+            reynolds_dh: Quantity::optional(p.reynolds_dh, "1", no_density),
+            wall_shear_max: Quantity::real(p.wall_shear_max, "Pa"),
+            wall_shear_mean: Quantity::real(p.wall_shear_mean, "Pa"),
+            residence_time: Quantity::real(p.residence_time, "s"),
+            entrance_length: Quantity::optional(p.entrance_length, "m", no_density),
+        })
+    }
+}
+
+#[derive(Serialize)]
+struct ShortcutView<'a> {
+    name: &'static str,
+    source: &'static str,
+    range: &'static str,
+    conductance: Quantity,
+    resistance_error: Quantity,
+    remark: &'a str,
+}
+
+impl<'a> ShortcutView<'a> {
+    fn new(row: &'a ShortcutRow) -> Self {
+        let reason = "the formula does not apply to this section; see remark";
+        Self {
+            name: row.name,
+            source: row.source,
+            range: row.range,
+            conductance: Quantity::optional(row.conductance, "m^4", reason),
+            resistance_error: Quantity::optional(row.resistance_error, "1", reason),
+            remark: &row.remark,
+        }
+    }
+}
+
+#[derive(Serialize)]
+struct WarningView {
+    code: &'static str,
+    message: String,
+    advice: String,
+    #[serde(flatten)]
+    numbers: BTreeMap<&'static str, Number>,
+}
+
+impl WarningView {
+    fn new(warning: Warning) -> Self {
+        Self {
+            code: warning.code.as_str(),
+            message: warning.message,
+            advice: warning.advice,
+            numbers: warning
+                .numbers
+                .into_iter()
+                .map(|(key, value)| (key, Number::real(value)))
+                .collect(),
+        }
+    }
+}

@@ -1,0 +1,573 @@
+//! The velocity picture: map, contour lines at round values, wall, scale bar, colour bar with unit.
+//!
+//! The map is viridis over bilinear velocity, clipped to the outline itself, so that the wall is drawn
+//! as exactly as it is known. Colour never stands alone: contour lines repeat it, and the colour bar is
+//! marked at the same values.
+
+use std::fmt::Write as _;
+use std::path::{Path, PathBuf};
+
+use super::colour_map::viridis;
+use super::contour::{Lattice, contour};
+use super::document::SolveDocument;
+use super::drawing::{Anchor, Drawing, INK, Item, PAPER, Raster, SOLID, TextSize};
+use super::numbers::{self, significant, with_unit};
+use super::picture_layout::{Exaggeration, Layout, straightened, thinned};
+use super::png::{PngError, to_png};
+use super::svg::to_svg;
+use super::table::wrapped;
+use super::ticks::{self, round_below};
+use crate::flow::DenseField;
+use crate::geometry::{Outline, Point};
+
+/// White border of the page, px.
+const MARGIN: f64 = 40.0;
+/// Least width between the borders, px.
+const LEAST_WIDTH: f64 = 760.0;
+/// Height of the colour bar, px.
+const BAR_HEIGHT: f64 = 22.0;
+/// Most contour lines.
+const MOST_LEVELS: usize = 12;
+/// Length of a vertical scale bar at most, px.
+const VERTICAL_BAR: f64 = 60.0;
+/// Below this share of the peak the map is dark and contour lines are white.
+const DARK_SHARE: f64 = 0.6;
+
+/// Kind of picture file.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum PictureFormat {
+    /// Pixels.
+    Png,
+    /// Vectors, with the map as an embedded image.
+    Svg,
+}
+
+impl PictureFormat {
+    /// The format that the extension of a path names.
+    ///
+    /// # Errors
+    /// [`PictureError::Extension`] for anything but `.png` and `.svg`.
+    ///
+    /// # Examples
+    /// ```
+    /// use etchwise::report::PictureFormat;
+    /// assert_eq!(PictureFormat::of_path("flow.SVG".as_ref()).unwrap(), PictureFormat::Svg);
+    /// assert!(PictureFormat::of_path("flow.gif".as_ref()).is_err());
+    /// ```
+    pub fn of_path(path: &Path) -> Result<Self, PictureError> {
+        let extension = path
+            .extension()
+            .map(|e| e.to_string_lossy().to_ascii_lowercase());
+        match extension.as_deref() {
+            Some("png") => Ok(Self::Png),
+            Some("svg") => Ok(Self::Svg),
+            _ => Err(PictureError::Extension {
+                path: path.to_owned(),
+            }),
+        }
+    }
+}
+
+/// Why a picture could not be made.
+#[derive(Debug, thiserror::Error)]
+#[non_exhaustive]
+pub enum PictureError {
+    /// The extension names no picture format.
+    #[error("`{}` does not end in .png or .svg, so the kind of picture is not known", path.display())]
+    Extension {
+        /// The path.
+        path: PathBuf,
+    },
+    /// The outline has no extent.
+    #[error("the outline has no width or no height, so there is nothing to draw")]
+    NoExtent,
+    /// The field is not a lattice of at least two by two finite nodes.
+    #[error(
+        "the field ({nodes_x} x {nodes_y} nodes, {found} values) is not a lattice that can be drawn"
+    )]
+    Field {
+        /// Nodes along x.
+        nodes_x: usize,
+        /// Nodes along y.
+        nodes_y: usize,
+        /// Values found.
+        found: usize,
+    },
+    /// The pixels could not be made.
+    #[error(transparent)]
+    Png(#[from] PngError),
+}
+
+/// The velocity picture as the bytes of a file.
+///
+/// # Errors
+/// [`PictureError`] when there is nothing to draw or the encoder refuses.
+pub fn picture_bytes(
+    document: &SolveDocument<'_>,
+    outline: &Outline,
+    field: &DenseField,
+    format: PictureFormat,
+) -> Result<Vec<u8>, PictureError> {
+    let drawing = draw_velocity(document, outline, field)?;
+    Ok(match format {
+        PictureFormat::Png => to_png(&drawing)?,
+        PictureFormat::Svg => to_svg(&drawing)?.into_bytes(),
+    })
+}
+
+/// The velocity picture as a drawing.
+///
+/// # Errors
+/// [`PictureError`] when there is nothing to draw.
+pub fn draw_velocity(
+    document: &SolveDocument<'_>,
+    outline: &Outline,
+    field: &DenseField,
+) -> Result<Drawing, PictureError> {
+    let (nodes_x, nodes_y, found) = (field.nodes_x, field.nodes_y, field.phi.len());
+    let finite = field.phi.iter().all(|p| p.is_finite())
+        && field.spacing > 0.0
+        && document.flow.peak.phi > 0.0;
+    if nodes_x < 2 || nodes_y < 2 || found != nodes_x * nodes_y || !finite {
+        return Err(PictureError::Field {
+            nodes_x,
+            nodes_y,
+            found,
+        });
+    }
+    let (layout, exaggeration) = Layout::of(outline).ok_or(PictureError::NoExtent)?;
+    let mut page = Page::new(document, layout, exaggeration);
+    page.heading();
+    page.section(outline, field);
+    page.scale_bars();
+    page.colour_bar();
+    page.legend();
+    Ok(page.finish())
+}
+
+/// Velocity as it is shown: a factor on `phi`, its unit and its range.
+struct Shown {
+    factor: f64,
+    unit: String,
+    quantity: &'static str,
+    top: f64,
+    levels: Vec<f64>,
+    step: f64,
+}
+
+impl Shown {
+    fn new(document: &SolveDocument<'_>) -> Self {
+        let peak = document.flow.peak.phi;
+        let (factor, unit, quantity) = if document.operating_point.is_some() {
+            let scale = document.velocity_scale().factor;
+            let (name, size) = numbers::fitting_unit(peak * scale, numbers::VELOCITIES);
+            (scale / size, name.to_owned(), "axial velocity")
+        } else {
+            (
+                1.0 / document.mean_phi(),
+                String::new(),
+                "axial velocity / mean velocity",
+            )
+        };
+        let top = peak * factor;
+        let (levels, step) = ticks::levels(top, MOST_LEVELS);
+        Self {
+            factor,
+            unit,
+            quantity,
+            top,
+            levels,
+            step,
+        }
+    }
+
+    /// A value with its unit, if it has one.
+    fn with_unit(&self, value: &str) -> String {
+        format!("{value} {}", self.unit).trim_end().to_owned()
+    }
+}
+
+/// A page being filled from the top; `y` is how far it is filled.
+struct Page<'a> {
+    document: &'a SolveDocument<'a>,
+    layout: Layout,
+    exaggeration: Exaggeration,
+    shown: Shown,
+    inner: f64,
+    y: f64,
+    drawing: Drawing,
+}
+
+impl<'a> Page<'a> {
+    fn new(document: &'a SolveDocument<'a>, layout: Layout, exaggeration: Exaggeration) -> Self {
+        let inner = layout.size[0].max(LEAST_WIDTH).ceil();
+        Self {
+            document,
+            layout,
+            exaggeration,
+            shown: Shown::new(document),
+            inner,
+            y: MARGIN,
+            drawing: Drawing {
+                width: (inner + 2.0 * MARGIN) as u32,
+                height: 0,
+                title: String::new(),
+                description: String::new(),
+                items: Vec::new(),
+            },
+        }
+    }
+
+    /// A paragraph at the left border, broken to the width of the page.
+    fn paragraph(&mut self, text: &str, size: TextSize, left: f64) {
+        let room = ((MARGIN + self.inner - left) / size.advance()).floor() as usize;
+        for line in wrapped(text, room.max(1))
+            .iter()
+            .flat_map(|l| pieces(l, room.max(1)))
+        {
+            self.y += size.line_height();
+            self.drawing
+                .text([left, self.y - 5.0], Anchor::Start, size, line);
+        }
+    }
+
+    fn heading(&mut self) {
+        let flow = self.document.flow;
+        let length = |v: f64| with_unit(v, numbers::LENGTHS, 4);
+        let name = numbers::one_line(self.document.section_name);
+        let size = format!(
+            "width {}, height {}, area {}, K = {} m^4 (estimated error {})",
+            length(flow.geometry.width),
+            length(flow.geometry.height),
+            with_unit(flow.geometry.area, numbers::AREAS, 4),
+            significant(flow.conductance.value, 5),
+            numbers::per_cent(flow.conductance.relative()),
+        );
+        let drive = match (self.document.operating_point, self.document.fluid) {
+            (Some(point), Some(fluid)) => format!(
+                "{}, {} over {}: flow rate {}",
+                numbers::one_line(&fluid.name),
+                with_unit(point.pressure_drop, numbers::PRESSURES, 4),
+                length(point.length),
+                with_unit(point.flow_rate, numbers::FLOW_RATES, 4),
+            ),
+            _ => "fully developed laminar flow, any fluid and pressure gradient".to_owned(),
+        };
+        self.drawing.title = format!("{} in section {name}", self.shown.quantity);
+        self.drawing.description = format!("{name}: {size}. {drive}.");
+        self.paragraph(&name, TextSize::Large, MARGIN);
+        self.y += 6.0;
+        self.paragraph(&size, TextSize::Medium, MARGIN);
+        self.paragraph(&drive, TextSize::Medium, MARGIN);
+        self.y += 24.0;
+    }
+
+    /// Map, contour lines, wall and markers.
+    fn section(&mut self, outline: &Outline, field: &DenseField) {
+        let left = MARGIN + 0.5 * (self.inner - self.layout.size[0]);
+        self.layout.at = [left.round() as i32, self.y.round() as i32];
+        let layout = self.layout;
+        let walls: Vec<Vec<Point>> = outline.loops().map(|l| layout.page_loop(l)).collect();
+        let lattice = Lattice {
+            values: &field.phi,
+            columns: field.nodes_x,
+            rows: field.nodes_y,
+        };
+        let outer = outline
+            .lumens
+            .iter()
+            .map(|l| layout.page_loop(&l.outer))
+            .collect();
+        self.drawing.items.push(Item::Area {
+            loops: outer,
+            fill: SOLID,
+        });
+        self.drawing.items.push(Item::Image {
+            raster: self.map(&lattice, field),
+            at: layout.at,
+            clip: walls.clone(),
+        });
+        for &level in &self.shown.levels {
+            let lines = contour(&lattice, level / self.shown.factor)
+                .into_iter()
+                .map(|line| {
+                    straightened(&thinned(
+                        line.into_iter().map(|p| layout.page(on_lattice(field, p))),
+                    ))
+                })
+                .collect();
+            let dark = level < DARK_SHARE * self.shown.top;
+            self.drawing.items.push(Item::Lines {
+                lines,
+                closed: false,
+                colour: if dark { PAPER } else { INK },
+                width: 1.2,
+                opacity: if dark { 0.8 } else { 0.65 },
+            });
+        }
+        self.drawing.items.push(Item::Lines {
+            lines: walls,
+            closed: true,
+            colour: INK,
+            width: 2.5,
+            opacity: 1.0,
+        });
+        peak_mark(&mut self.drawing, layout.page(self.document.flow.peak.at));
+        shear_mark(
+            &mut self.drawing,
+            layout.page(self.document.flow.wall_shear.max_at),
+        );
+        self.y += layout.size[1].ceil() + 28.0;
+    }
+
+    /// The colour of every pixel of the section's bounding box.
+    fn map(&self, lattice: &Lattice<'_>, field: &DenseField) -> Raster {
+        let [columns, rows] = self.layout.size.map(|s| s.ceil().max(1.0) as usize);
+        let peak = self.document.flow.peak.phi;
+        let [left, top] = self.layout.at.map(f64::from);
+        let mut rgb = Vec::with_capacity(3 * columns * rows);
+        for row in 0..rows {
+            for column in 0..columns {
+                let centre = [left + column as f64 + 0.5, top + row as f64 + 0.5];
+                let p = self.layout.section(centre);
+                let x = (p[0] - field.origin[0]) / field.spacing;
+                let y = (p[1] - field.origin[1]) / field.spacing;
+                rgb.extend(viridis(lattice.bilinear(x, y) / peak));
+            }
+        }
+        Raster { columns, rows, rgb }
+    }
+
+    /// One scale bar, or one along each axis with the exaggeration printed.
+    fn scale_bars(&mut self) {
+        let [sx, sy] = self.layout.scale;
+        let bars = matches!(self.exaggeration, Exaggeration::None);
+        let Some(across) = round_below(0.25 * self.inner.min(self.layout.size[0].max(240.0)) / sx)
+        else {
+            return;
+        };
+        let up = round_below(VERTICAL_BAR / sy).filter(|_| !bars);
+        let height = up.map_or(8.0, |u| (u * sy).max(8.0));
+        let base = self.y + height;
+        let end = MARGIN + across * sx;
+        let caps = vec![
+            vec![[MARGIN, base], [end, base]],
+            vec![[MARGIN, base - 5.0], [MARGIN, base + 5.0]],
+            vec![[end, base - 5.0], [end, base + 5.0]],
+        ];
+        self.drawing.lines(caps, INK, 2.5);
+        let mut text = [end + 12.0, base + 5.0];
+        let label = bar_label(across);
+        self.drawing
+            .text(text, Anchor::Start, TextSize::Medium, &label);
+        if let Some(up) = up {
+            text[0] += TextSize::Medium.width(&label) + 48.0;
+            let x = text[0];
+            let caps = vec![
+                vec![[x, base], [x, base - up * sy]],
+                vec![[x - 5.0, base], [x + 5.0, base]],
+                vec![[x - 5.0, base - up * sy], [x + 5.0, base - up * sy]],
+            ];
+            self.drawing.lines(caps, INK, 2.5);
+            self.drawing.text(
+                [x + 12.0, base + 5.0],
+                Anchor::Start,
+                TextSize::Medium,
+                bar_label(up),
+            );
+        }
+        self.y = base + 14.0;
+        let note = match self.exaggeration {
+            Exaggeration::None => return,
+            Exaggeration::Height(f) => {
+                format!("Not to equal scale: heights are stretched {f} times.")
+            }
+            Exaggeration::Width(f) => {
+                format!("Not to equal scale: widths are stretched {f} times.")
+            }
+        };
+        let _ = write!(self.drawing.description, " {note}");
+        self.paragraph(&note, TextSize::Medium, MARGIN);
+        self.y += 4.0;
+    }
+
+    fn colour_bar(&mut self) {
+        let shown = &self.shown;
+        let heading = if shown.unit.is_empty() {
+            format!(
+                "{}; contour lines every {}",
+                shown.quantity,
+                ticks::label(shown.step, shown.step)
+            )
+        } else {
+            let step = shown.with_unit(&ticks::label(shown.step, shown.step));
+            format!(
+                "{} in {}; contour lines every {step}",
+                shown.quantity, shown.unit
+            )
+        };
+        self.y += 14.0;
+        self.paragraph(&heading, TextSize::Medium, MARGIN);
+        self.y += 6.0;
+        let (columns, rows) = (self.inner as usize, BAR_HEIGHT as usize);
+        let row: Vec<u8> = (0..columns)
+            .flat_map(|c| viridis((c as f64 + 0.5) / columns as f64))
+            .collect();
+        self.drawing.items.push(Item::Image {
+            raster: Raster {
+                columns,
+                rows,
+                rgb: row.repeat(rows),
+            },
+            at: [MARGIN as i32, self.y.round() as i32],
+            clip: Vec::new(),
+        });
+        let top = self.y.round();
+        let bottom = top + BAR_HEIGHT;
+        self.bar_ticks(top, bottom);
+        let right = MARGIN + self.inner;
+        let frame = vec![vec![
+            [MARGIN, top],
+            [right, top],
+            [right, bottom],
+            [MARGIN, bottom],
+            [MARGIN, top],
+        ]];
+        self.drawing.lines(frame, INK, 1.2);
+        self.y = bottom + 8.0 + TextSize::Small.line_height();
+    }
+
+    /// Marks and labels at the contour values, and the peak value where it does not collide.
+    fn bar_ticks(&mut self, top: f64, bottom: f64) {
+        let shown = &self.shown;
+        let place = |v: f64| MARGIN + self.inner * v / shown.top;
+        let base = bottom + 6.0 + 12.0;
+        let size = TextSize::Small;
+        let mut labels = vec![(MARGIN, Anchor::Start, "0".to_owned())];
+        let peak = significant(shown.top, 4);
+        let right = MARGIN + self.inner;
+        let free_to = right - size.width(&peak) - 10.0;
+        let mut marks = Vec::new();
+        for &level in &shown.levels {
+            let x = place(level);
+            let dark = level < DARK_SHARE * shown.top;
+            marks.push((x, dark));
+            let text = ticks::label(level, shown.step);
+            if x + 0.5 * size.width(&text) < free_to {
+                labels.push((x, Anchor::Middle, text));
+            }
+        }
+        labels.push((right, Anchor::End, peak));
+        for (x, dark) in marks {
+            let colour = if dark { PAPER } else { INK };
+            self.drawing
+                .lines(vec![vec![[x, top], [x, bottom]]], colour, 1.2);
+            self.drawing
+                .lines(vec![vec![[x, bottom], [x, bottom + 5.0]]], INK, 1.2);
+        }
+        for (x, anchor, text) in labels {
+            self.drawing.text([x, base], anchor, size, text);
+        }
+    }
+
+    /// What the markers mean, with their numbers.
+    fn legend(&mut self) {
+        let flow = self.document.flow;
+        let extent = [flow.geometry.width, flow.geometry.height];
+        let place = |p: Point| numbers::place(p, extent, 4);
+        let peak = self.shown.with_unit(&significant(self.shown.top, 4));
+        let times = if self.shown.unit.is_empty() {
+            " times the mean"
+        } else {
+            ""
+        };
+        let peak = format!("fastest point: {peak}{times}, at {}", place(flow.peak.at));
+        let shear = match self.document.operating_point {
+            Some(point) => format!(
+                "{} Pa ({} dyn/cm\u{b2})",
+                significant(point.wall_shear_max, 4),
+                significant(point.wall_shear_max / numbers::DYN_PER_CM2, 4)
+            ),
+            None => format!(
+                "{} times the mean",
+                significant(
+                    flow.wall_shear.max_per_gradient / flow.wall_shear.mean_per_gradient,
+                    4
+                )
+            ),
+        };
+        let bound = if flow.wall_shear.singular_corners.is_empty() {
+            ""
+        } else {
+            " (sharp re-entrant corner: grows as the grid is refined)"
+        };
+        let shear = format!(
+            "largest wall shear: {shear}{bound}, at {}",
+            place(flow.wall_shear.max_at)
+        );
+        let _ = write!(self.drawing.description, " {peak}; {shear}.");
+        self.y += 10.0;
+        peak_mark(&mut self.drawing, [MARGIN + 9.0, self.y + 10.0]);
+        self.paragraph(&peak, TextSize::Medium, MARGIN + 28.0);
+        self.y += 4.0;
+        shear_mark(&mut self.drawing, [MARGIN + 9.0, self.y + 10.0]);
+        self.paragraph(&shear, TextSize::Medium, MARGIN + 28.0);
+    }
+
+    fn finish(mut self) -> Drawing {
+        self.drawing.height = (self.y + MARGIN).ceil() as u32;
+        self.drawing
+    }
+}
+
+/// A line cut into pieces of at most `room` characters, for words longer than a line.
+fn pieces(line: &str, room: usize) -> Vec<String> {
+    let characters: Vec<char> = line.chars().collect();
+    characters
+        .chunks(room)
+        .map(|c| c.iter().collect())
+        .collect()
+}
+
+/// Lattice units to metres.
+fn on_lattice(field: &DenseField, p: Point) -> Point {
+    [
+        field.origin[0] + p[0] * field.spacing,
+        field.origin[1] + p[1] * field.spacing,
+    ]
+}
+
+/// Length of a scale bar in the unit that fits it.
+fn bar_label(length: f64) -> String {
+    let (unit, size) = numbers::fitting_unit(length, numbers::LENGTHS);
+    let value = length / size;
+    format!("{} {unit}", ticks::label(value, value))
+}
+
+/// An upright cross with a halo, so that it shows on any colour.
+fn peak_mark(drawing: &mut Drawing, [x, y]: Point) {
+    let arms = || {
+        vec![
+            vec![[x - 8.0, y], [x + 8.0, y]],
+            vec![[x, y - 8.0], [x, y + 8.0]],
+        ]
+    };
+    drawing.lines(arms(), PAPER, 5.0);
+    drawing.lines(arms(), INK, 2.0);
+}
+
+/// A white diamond with a dark border.
+fn shear_mark(drawing: &mut Drawing, [x, y]: Point) {
+    let diamond = vec![[x - 7.0, y], [x, y - 7.0], [x + 7.0, y], [x, y + 7.0]];
+    drawing.items.push(Item::Area {
+        loops: vec![diamond.clone()],
+        fill: PAPER,
+    });
+    drawing.items.push(Item::Lines {
+        lines: vec![diamond],
+        closed: true,
+        colour: INK,
+        width: 2.0,
+        opacity: 1.0,
+    });
+}

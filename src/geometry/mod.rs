@@ -5,6 +5,12 @@ pub mod curves;
 mod inscribed_circle;
 pub mod nominal;
 mod outline;
+mod outline_check;
+mod segment_tree;
+mod sweep;
+mod transform;
+mod validity;
+mod wall_edges;
 
 pub use corners::{Corner, corners};
 pub use inscribed_circle::{Circle, largest_inscribed_circle};
@@ -12,3 +18,5 @@ pub use nominal::{
     KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
 };
 pub use outline::{Loop, Lumen, Outline, Point};
+pub use segment_tree::{Bounds, NearestWall, SegmentTree};
+pub use validity::{LISTED_PROBLEMS, Place, Problem, ProblemKind, Problems, Role, Severity};

@@ -203,8 +203,11 @@ def main():
         kind = kinds.get(path.rsplit(".", 1)[-1])
         if kind is None:
             check(False, path, "neither .vti nor .vtp nor .vtk")
-        else:
+            continue
+        try:
             kind(path, result)
+        except Exception as error:  # A broken file may fail anywhere in a reader; the next file is still checked.
+            check(False, path, f"cannot be read: {type(error).__name__}: {error}")
     for problem in problems:
         print(f"wrong: {problem}", file=sys.stderr)
     return 1 if problems else 0

@@ -10,6 +10,7 @@ mod drawing;
 mod json;
 mod numbers;
 mod picture;
+mod picture_furniture;
 mod picture_layout;
 mod png;
 mod svg;

@@ -4,7 +4,6 @@
 //! as exactly as it is known. Colour never stands alone: contour lines repeat it, and the colour bar is
 //! marked at the same values.
 
-use std::fmt::Write as _;
 use std::path::{Path, PathBuf};
 
 use super::colour_map::viridis;
@@ -12,26 +11,23 @@ use super::contour::{Lattice, contour};
 use super::document::SolveDocument;
 use super::drawing::{Anchor, Drawing, INK, Item, PAPER, Raster, SOLID, TextSize};
 use super::numbers::{self, significant, with_unit};
+use super::picture_furniture::{peak_mark, shear_mark};
 use super::picture_layout::{Exaggeration, Layout, straightened, thinned};
 use super::png::{PngError, to_png};
 use super::svg::to_svg;
 use super::table::wrapped;
-use super::ticks::{self, round_below};
+use super::ticks;
 use crate::flow::DenseField;
 use crate::geometry::{Outline, Point};
 
 /// White border of the page, px.
-const MARGIN: f64 = 40.0;
+pub(super) const MARGIN: f64 = 40.0;
 /// Least width between the borders, px.
 const LEAST_WIDTH: f64 = 760.0;
-/// Height of the colour bar, px.
-const BAR_HEIGHT: f64 = 22.0;
 /// Most contour lines.
 const MOST_LEVELS: usize = 12;
-/// Length of a vertical scale bar at most, px.
-const VERTICAL_BAR: f64 = 60.0;
 /// Below this share of the peak the map is dark and contour lines are white.
-const DARK_SHARE: f64 = 0.6;
+pub(super) const DARK_SHARE: f64 = 0.6;
 
 /// Kind of picture file.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -146,13 +142,13 @@ pub fn draw_velocity(
 }
 
 /// Velocity as it is shown: a factor on `phi`, its unit and its range.
-struct Shown {
-    factor: f64,
-    unit: String,
-    quantity: &'static str,
-    top: f64,
-    levels: Vec<f64>,
-    step: f64,
+pub(super) struct Shown {
+    pub(super) factor: f64,
+    pub(super) unit: String,
+    pub(super) quantity: &'static str,
+    pub(super) top: f64,
+    pub(super) levels: Vec<f64>,
+    pub(super) step: f64,
 }
 
 impl Shown {
@@ -182,20 +178,20 @@ impl Shown {
     }
 
     /// A value with its unit, if it has one.
-    fn with_unit(&self, value: &str) -> String {
+    pub(super) fn with_unit(&self, value: &str) -> String {
         format!("{value} {}", self.unit).trim_end().to_owned()
     }
 }
 
 /// A page being filled from the top; `y` is how far it is filled.
-struct Page<'a> {
-    document: &'a SolveDocument<'a>,
-    layout: Layout,
-    exaggeration: Exaggeration,
-    shown: Shown,
-    inner: f64,
-    y: f64,
-    drawing: Drawing,
+pub(super) struct Page<'a> {
+    pub(super) document: &'a SolveDocument<'a>,
+    pub(super) layout: Layout,
+    pub(super) exaggeration: Exaggeration,
+    pub(super) shown: Shown,
+    pub(super) inner: f64,
+    pub(super) y: f64,
+    pub(super) drawing: Drawing,
 }
 
 impl<'a> Page<'a> {
@@ -219,7 +215,7 @@ impl<'a> Page<'a> {
     }
 
     /// A paragraph at the left border, broken to the width of the page.
-    fn paragraph(&mut self, text: &str, size: TextSize, left: f64) {
+    pub(super) fn paragraph(&mut self, text: &str, size: TextSize, left: f64) {
         let room = ((MARGIN + self.inner - left) / size.advance()).floor() as usize;
         for line in wrapped(text, room.max(1))
             .iter()
@@ -338,182 +334,6 @@ impl<'a> Page<'a> {
         Raster { columns, rows, rgb }
     }
 
-    /// One scale bar, or one along each axis with the exaggeration printed.
-    fn scale_bars(&mut self) {
-        let [sx, sy] = self.layout.scale;
-        let bars = matches!(self.exaggeration, Exaggeration::None);
-        let Some(across) = round_below(0.25 * self.inner.min(self.layout.size[0].max(240.0)) / sx)
-        else {
-            return;
-        };
-        let up = round_below(VERTICAL_BAR / sy).filter(|_| !bars);
-        let height = up.map_or(8.0, |u| (u * sy).max(8.0));
-        let base = self.y + height;
-        let end = MARGIN + across * sx;
-        let caps = vec![
-            vec![[MARGIN, base], [end, base]],
-            vec![[MARGIN, base - 5.0], [MARGIN, base + 5.0]],
-            vec![[end, base - 5.0], [end, base + 5.0]],
-        ];
-        self.drawing.lines(caps, INK, 2.5);
-        let mut text = [end + 12.0, base + 5.0];
-        let label = bar_label(across);
-        self.drawing
-            .text(text, Anchor::Start, TextSize::Medium, &label);
-        if let Some(up) = up {
-            text[0] += TextSize::Medium.width(&label) + 48.0;
-            let x = text[0];
-            let caps = vec![
-                vec![[x, base], [x, base - up * sy]],
-                vec![[x - 5.0, base], [x + 5.0, base]],
-                vec![[x - 5.0, base - up * sy], [x + 5.0, base - up * sy]],
-            ];
-            self.drawing.lines(caps, INK, 2.5);
-            self.drawing.text(
-                [x + 12.0, base + 5.0],
-                Anchor::Start,
-                TextSize::Medium,
-                bar_label(up),
-            );
-        }
-        self.y = base + 14.0;
-        let note = match self.exaggeration {
-            Exaggeration::None => return,
-            Exaggeration::Height(f) => {
-                format!("Not to equal scale: heights are stretched {f} times.")
-            }
-            Exaggeration::Width(f) => {
-                format!("Not to equal scale: widths are stretched {f} times.")
-            }
-        };
-        let _ = write!(self.drawing.description, " {note}");
-        self.paragraph(&note, TextSize::Medium, MARGIN);
-        self.y += 4.0;
-    }
-
-    fn colour_bar(&mut self) {
-        let shown = &self.shown;
-        let heading = if shown.unit.is_empty() {
-            format!(
-                "{}; contour lines every {}",
-                shown.quantity,
-                ticks::label(shown.step, shown.step)
-            )
-        } else {
-            let step = shown.with_unit(&ticks::label(shown.step, shown.step));
-            format!(
-                "{} in {}; contour lines every {step}",
-                shown.quantity, shown.unit
-            )
-        };
-        self.y += 14.0;
-        self.paragraph(&heading, TextSize::Medium, MARGIN);
-        self.y += 6.0;
-        let (columns, rows) = (self.inner as usize, BAR_HEIGHT as usize);
-        let row: Vec<u8> = (0..columns)
-            .flat_map(|c| viridis((c as f64 + 0.5) / columns as f64))
-            .collect();
-        self.drawing.items.push(Item::Image {
-            raster: Raster {
-                columns,
-                rows,
-                rgb: row.repeat(rows),
-            },
-            at: [MARGIN as i32, self.y.round() as i32],
-            clip: Vec::new(),
-        });
-        let top = self.y.round();
-        let bottom = top + BAR_HEIGHT;
-        self.bar_ticks(top, bottom);
-        let right = MARGIN + self.inner;
-        let frame = vec![vec![
-            [MARGIN, top],
-            [right, top],
-            [right, bottom],
-            [MARGIN, bottom],
-            [MARGIN, top],
-        ]];
-        self.drawing.lines(frame, INK, 1.2);
-        self.y = bottom + 8.0 + TextSize::Small.line_height();
-    }
-
-    /// Marks and labels at the contour values, and the peak value where it does not collide.
-    fn bar_ticks(&mut self, top: f64, bottom: f64) {
-        let shown = &self.shown;
-        let place = |v: f64| MARGIN + self.inner * v / shown.top;
-        let base = bottom + 6.0 + 12.0;
-        let size = TextSize::Small;
-        let mut labels = vec![(MARGIN, Anchor::Start, "0".to_owned())];
-        let peak = significant(shown.top, 4);
-        let right = MARGIN + self.inner;
-        let free_to = right - size.width(&peak) - 10.0;
-        let mut marks = Vec::new();
-        for &level in &shown.levels {
-            let x = place(level);
-            let dark = level < DARK_SHARE * shown.top;
-            marks.push((x, dark));
-            let text = ticks::label(level, shown.step);
-            if x + 0.5 * size.width(&text) < free_to {
-                labels.push((x, Anchor::Middle, text));
-            }
-        }
-        labels.push((right, Anchor::End, peak));
-        for (x, dark) in marks {
-            let colour = if dark { PAPER } else { INK };
-            self.drawing
-                .lines(vec![vec![[x, top], [x, bottom]]], colour, 1.2);
-            self.drawing
-                .lines(vec![vec![[x, bottom], [x, bottom + 5.0]]], INK, 1.2);
-        }
-        for (x, anchor, text) in labels {
-            self.drawing.text([x, base], anchor, size, text);
-        }
-    }
-
-    /// What the markers mean, with their numbers.
-    fn legend(&mut self) {
-        let flow = self.document.flow;
-        let extent = [flow.geometry.width, flow.geometry.height];
-        let place = |p: Point| numbers::place(p, extent, 4);
-        let peak = self.shown.with_unit(&significant(self.shown.top, 4));
-        let times = if self.shown.unit.is_empty() {
-            " times the mean"
-        } else {
-            ""
-        };
-        let peak = format!("fastest point: {peak}{times}, at {}", place(flow.peak.at));
-        let shear = match self.document.operating_point {
-            Some(point) => format!(
-                "{} Pa ({} dyn/cm\u{b2})",
-                significant(point.wall_shear_max, 4),
-                significant(point.wall_shear_max / numbers::DYN_PER_CM2, 4)
-            ),
-            None => format!(
-                "{} times the mean",
-                significant(
-                    flow.wall_shear.max_per_gradient / flow.wall_shear.mean_per_gradient,
-                    4
-                )
-            ),
-        };
-        let bound = if flow.wall_shear.singular_corners.is_empty() {
-            ""
-        } else {
-            " (sharp re-entrant corner: grows as the grid is refined)"
-        };
-        let shear = format!(
-            "largest wall shear: {shear}{bound}, at {}",
-            place(flow.wall_shear.max_at)
-        );
-        let _ = write!(self.drawing.description, " {peak}; {shear}.");
-        self.y += 10.0;
-        peak_mark(&mut self.drawing, [MARGIN + 9.0, self.y + 10.0]);
-        self.paragraph(&peak, TextSize::Medium, MARGIN + 28.0);
-        self.y += 4.0;
-        shear_mark(&mut self.drawing, [MARGIN + 9.0, self.y + 10.0]);
-        self.paragraph(&shear, TextSize::Medium, MARGIN + 28.0);
-    }
-
     fn finish(mut self) -> Drawing {
         self.drawing.height = (self.y + MARGIN).ceil() as u32;
         self.drawing
@@ -535,39 +355,4 @@ fn on_lattice(field: &DenseField, p: Point) -> Point {
         field.origin[0] + p[0] * field.spacing,
         field.origin[1] + p[1] * field.spacing,
     ]
-}
-
-/// Length of a scale bar in the unit that fits it.
-fn bar_label(length: f64) -> String {
-    let (unit, size) = numbers::fitting_unit(length, numbers::LENGTHS);
-    let value = length / size;
-    format!("{} {unit}", ticks::label(value, value))
-}
-
-/// An upright cross with a halo, so that it shows on any colour.
-fn peak_mark(drawing: &mut Drawing, [x, y]: Point) {
-    let arms = || {
-        vec![
-            vec![[x - 8.0, y], [x + 8.0, y]],
-            vec![[x, y - 8.0], [x, y + 8.0]],
-        ]
-    };
-    drawing.lines(arms(), PAPER, 5.0);
-    drawing.lines(arms(), INK, 2.0);
-}
-
-/// A white diamond with a dark border.
-fn shear_mark(drawing: &mut Drawing, [x, y]: Point) {
-    let diamond = vec![[x - 7.0, y], [x, y - 7.0], [x + 7.0, y], [x, y + 7.0]];
-    drawing.items.push(Item::Area {
-        loops: vec![diamond.clone()],
-        fill: PAPER,
-    });
-    drawing.items.push(Item::Lines {
-        lines: vec![diamond],
-        closed: true,
-        colour: INK,
-        width: 2.0,
-        opacity: 1.0,
-    });
 }

@@ -29,6 +29,7 @@ impl Estimate {
     }
 
     /// The same estimate multiplied by a positive factor.
+    #[must_use]
     pub fn scaled(&self, factor: f64) -> Self {
         Self {
             value: self.value * factor,

@@ -3,25 +3,75 @@
 //! Reference values: closed forms, and values computed independently with a rational least-squares Laplace
 //! solver (boundary residual 1e-10 of the length squared and below), not printed anywhere; see each row.
 
+#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
+
 use etchwise::flow::{SectionFlow, SolveOptions, solve_outline};
 use etchwise::geometry::{NominalSpec, Outline};
 
 /// Section, Fanning `f Re` on the hydraulic diameter, and where the value is from.
 const SMOOTH: [(&str, f64, &str); 14] = [
-    ("rectangle width=100um height=100um", 14.227_076_884_78, "Fourier series"),
-    ("rectangle width=200um height=100um", 15.548_056_15, "Fourier series"),
-    ("rectangle width=1000um height=100um", 21.168_876_83, "Fourier series"),
+    (
+        "rectangle width=100um height=100um",
+        14.227_076_884_78,
+        "Fourier series",
+    ),
+    (
+        "rectangle width=200um height=100um",
+        15.548_056_15,
+        "Fourier series",
+    ),
+    (
+        "rectangle width=1000um height=100um",
+        21.168_876_83,
+        "Fourier series",
+    ),
     ("circle diameter=100um", 16.0, "Poiseuille 1840"),
     ("ellipse width=100um height=50um", 16.823_30, "closed form"),
-    ("triangle base=100um left_angle=60deg right_angle=60deg", 13.333_333_333, "closed form"),
-    ("regular_polygon sides=6 side=100um", 15.054_635_70, "least squares"),
-    ("circular_sector radius=100um angle=60deg", 14.171_136, "least squares"),
-    ("koh_groove opening=100um depth=20um", 17.499_159_01, "least squares"),
-    ("isotropic_etch mask_opening=100um depth=50um", 18.179_869_67, "least squares"),
-    ("rounded_rectangle width=200um height=100um radius=20um", 16.724_847_8, "least squares"),
-    ("stadium width=200um height=100um", 17.027_224_7, "least squares"),
-    ("rhombus side=100um acute_angle=40deg", 13.194_327, "least squares"),
-    ("annulus outer_diameter=200um inner_diameter=100um offset=25um", 17.670_902, "bipolar series"),
+    (
+        "triangle base=100um left_angle=60deg right_angle=60deg",
+        13.333_333_333,
+        "closed form",
+    ),
+    (
+        "regular_polygon sides=6 side=100um",
+        15.054_635_70,
+        "least squares",
+    ),
+    (
+        "circular_sector radius=100um angle=60deg",
+        14.171_136,
+        "least squares",
+    ),
+    (
+        "koh_groove opening=100um depth=20um",
+        17.499_159_01,
+        "least squares",
+    ),
+    (
+        "isotropic_etch mask_opening=100um depth=50um",
+        18.179_869_67,
+        "least squares",
+    ),
+    (
+        "rounded_rectangle width=200um height=100um radius=20um",
+        16.724_847_8,
+        "least squares",
+    ),
+    (
+        "stadium width=200um height=100um",
+        17.027_224_7,
+        "least squares",
+    ),
+    (
+        "rhombus side=100um acute_angle=40deg",
+        13.194_327,
+        "least squares",
+    ),
+    (
+        "annulus outer_diameter=200um inner_diameter=100um offset=25um",
+        17.670_902,
+        "bipolar series",
+    ),
 ];
 
 /// With a re-entrant corner.
@@ -69,7 +119,13 @@ fn check(spec: &str, flow: &SectionFlow, reference: f64, tolerance: f64, how: &s
 fn smooth_and_convex_sections_are_within_1e_5_wherever_the_grid_falls() {
     for (spec, reference, _) in SMOOTH {
         let section = outline(spec);
-        check(spec, &solve(&section, 128.0, None), reference, 1e-5, "own offset");
+        check(
+            spec,
+            &solve(&section, 128.0, None),
+            reference,
+            1e-5,
+            "own offset",
+        );
         for offset in offsets() {
             let flow = solve(&section, 128.0, Some(offset));
             check(spec, &flow, reference, 1e-5, &format!("offset {offset:?}"));
@@ -81,7 +137,7 @@ fn smooth_and_convex_sections_are_within_1e_5_wherever_the_grid_falls() {
 fn turning_the_section_changes_nothing_beyond_1e_5() {
     for (spec, reference, _) in SMOOTH {
         for angle in [0.02, 0.5, 0.7853] {
-            let turned = turned(&outline(spec), angle);
+            let turned = outline(spec).rotated(angle, [0.0, 0.0]);
             let flow = solve(&turned, 128.0, None);
             check(spec, &flow, reference, 1e-5, &format!("turned by {angle}"));
         }
@@ -92,7 +148,7 @@ fn turning_the_section_changes_nothing_beyond_1e_5() {
 fn re_entrant_corners_are_within_3e_4_at_any_angle() {
     for (spec, reference) in RE_ENTRANT {
         for angle in [0.0, 0.02, 0.3, 0.7853, 1.9] {
-            let turned = turned(&outline(spec), angle);
+            let turned = outline(spec).rotated(angle, [0.0, 0.0]);
             let flow = solve(&turned, 128.0, None);
             check(spec, &flow, reference, 3e-4, &format!("turned by {angle}"));
         }
@@ -113,4 +169,3 @@ fn the_plain_conductance_converges_with_order_1_9_or_more() {
         }
     }
 }
-fn turned(o: &Outline, a: f64) -> Outline { let f=|l:&etchwise::geometry::Loop| etchwise::geometry::Loop::new(l.points.iter().map(|p|[p[0]*a.cos()-p[1]*a.sin(),p[0]*a.sin()+p[1]*a.cos()]).collect()); Outline{lumens:o.lumens.iter().map(|l| etchwise::geometry::Lumen{outer:f(&l.outer),islands:l.islands.iter().map(f).collect()}).collect()}.oriented() }

@@ -1,5 +1,7 @@
 //! What must hold for every section, checked on random ones.
 
+#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
+
 use etchwise::flow::{SectionFlow, SolveOptions, solve_outline};
 use etchwise::geometry::{Loop, Lumen, Outline};
 use etchwise::grid::{Lattice, LineCrossings, Mask};
@@ -49,7 +51,10 @@ fn radii() -> impl Strategy<Value = Vec<f64>> {
 fn agree(a: &SectionFlow, b: &SectionFlow, factor: f64) {
     let allowed = factor * (a.conductance.relative() + b.conductance.relative()) + 1e-9;
     let difference = (a.conductance.value / b.conductance.value - 1.0).abs();
-    assert!(difference <= allowed, "K differs by {difference:e}, allowed {allowed:e}");
+    assert!(
+        difference <= allowed,
+        "K differs by {difference:e}, allowed {allowed:e}"
+    );
 }
 
 proptest! {
@@ -143,11 +148,17 @@ fn the_result_is_the_same_to_the_last_bit_for_any_number_of_threads() {
         ..SolveOptions::default()
     };
     let with = |threads: usize| {
-        let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().unwrap();
+        let pool = rayon::ThreadPoolBuilder::new()
+            .num_threads(threads)
+            .build()
+            .unwrap();
         pool.install(|| solve_outline(&outline, &options).unwrap().flow)
     };
     let (one, two, four) = (with(1), with(2), with(4));
-    assert!(one.grid.fluid_nodes > 120_000, "large enough to be shared out");
+    assert!(
+        one.grid.fluid_nodes > 120_000,
+        "large enough to be shared out"
+    );
     for other in [two, four] {
         assert_eq!(one.conductance, other.conductance);
         assert_eq!(one.wall_shear, other.wall_shear);
@@ -166,7 +177,11 @@ fn a_cycle_reduces_the_residual_to_a_quarter_at_most() {
         };
         let flow = solve_outline(&outline, &options).unwrap().flow;
         assert!(flow.solver.converged && !flow.solver.accelerated);
-        assert!(flow.solver.convergence_factor < 0.25, "{}", flow.solver.convergence_factor);
+        assert!(
+            flow.solver.convergence_factor < 0.25,
+            "{}",
+            flow.solver.convergence_factor
+        );
         assert!(flow.solver.cycles <= 12, "{} cycles", flow.solver.cycles);
     }
 }

@@ -150,7 +150,11 @@ fn solve() -> Command {
 
 fn fluid_options(command: Command) -> Command {
     let fluid = "Fluid and operating point";
-    let entry = |name, value, help, long| option(name, value, help).long_help(long).help_heading(fluid);
+    let entry = |name, value, help, long| {
+        option(name, value, help)
+            .long_help(long)
+            .help_heading(fluid)
+    };
     command
         .arg(
             option("fluid", "NAME", "water or air (needs --temperature)")
@@ -257,7 +261,12 @@ fn parameter(info: &'static ParameterInfo) -> Arg {
             _ => "NUMBER",
         })
         .help(format!("{}{default}", info.meaning))
-        .long_help(format!("{}{default}. Example: --{} \"{}\"", info.meaning, info.name.replace('_', "-"), info.example));
+        .long_help(format!(
+            "{}{default}. Example: --{} \"{}\"",
+            info.meaning,
+            info.name.replace('_', "-"),
+            info.example
+        ));
     if info.quantity == Quantity::SpecList {
         arg.action(ArgAction::Append)
     } else {

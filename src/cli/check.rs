@@ -52,7 +52,10 @@ struct ProblemRecord {
 
 pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     super::set_threads(matches)?;
-    let file = matches.get_one::<PathBuf>("file").cloned().unwrap_or_default();
+    let file = matches
+        .get_one::<PathBuf>("file")
+        .cloned()
+        .unwrap_or_default();
     let options = read_options(matches)?;
     let section = read_section(&file, &options)?;
     let problems = section.outline.problems();
@@ -93,8 +96,16 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
             let _ = writeln!(text, "{note}");
         }
         let _ = match problems.list.len() {
-            0 if accepted => writeln!(text, "{}: no problems in {vertices} vertices", file.display()),
-            n => writeln!(text, "{}: {n} problem(s) in {vertices} vertices", file.display()),
+            0 if accepted => writeln!(
+                text,
+                "{}: no problems in {vertices} vertices",
+                file.display()
+            ),
+            n => writeln!(
+                text,
+                "{}: {n} problem(s) in {vertices} vertices",
+                file.display()
+            ),
         };
         output::print(&text)?;
     }

@@ -38,7 +38,12 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
         csv(&outline)
     } else {
         let nominal = (!matches.get_flag("points")).then_some(spec);
-        to_toml(name.as_deref(), &outline, nominal.as_ref(), &Extras::default())
+        to_toml(
+            name.as_deref(),
+            &outline,
+            nominal.as_ref(),
+            &Extras::default(),
+        )
     };
     match target {
         Some(path) => {

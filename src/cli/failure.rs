@@ -96,6 +96,10 @@ impl From<PictureError> for Failure {
 
 impl From<VtkError> for Failure {
     fn from(error: VtkError) -> Self {
-        Self::new(ExitStatus::Unreadable, &error, "write the field without --vtk and report this")
+        Self::new(
+            ExitStatus::Unreadable,
+            &error,
+            "write the field without --vtk and report this",
+        )
     }
 }

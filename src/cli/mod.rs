@@ -60,5 +60,7 @@ fn set_threads(matches: &clap::ArgMatches) -> Result<(), Failure> {
     rayon::ThreadPoolBuilder::new()
         .num_threads(usize::from(threads))
         .build_global()
-        .map_err(|error| Failure::usage(format!("--threads {threads}: {error}"), "use fewer threads"))
+        .map_err(|error| {
+            Failure::usage(format!("--threads {threads}: {error}"), "use fewer threads")
+        })
 }

@@ -140,7 +140,13 @@ impl Request {
     fn check_targets(&self) -> Result<(), Failure> {
         let vtk = self.vtk.iter().flat_map(|prefix| vtk_paths(prefix));
         let pictures = self.pictures.iter().map(|(path, _)| path.clone());
-        let targets: Vec<PathBuf> = self.output.clone().into_iter().chain(vtk).chain(pictures).collect();
+        let targets: Vec<PathBuf> = self
+            .output
+            .clone()
+            .into_iter()
+            .chain(vtk)
+            .chain(pictures)
+            .collect();
         for (index, target) in targets.iter().enumerate() {
             if targets[..index].contains(target) {
                 return Err(Failure::usage(
@@ -212,9 +218,10 @@ impl Request {
     /// The section's own name, or that of its file.
     fn name(&self, checked: &CheckedSection) -> String {
         checked.section.name.clone().unwrap_or_else(|| {
-            self.file
-                .file_stem()
-                .map_or_else(|| "section".to_owned(), |s| s.to_string_lossy().into_owned())
+            self.file.file_stem().map_or_else(
+                || "section".to_owned(),
+                |s| s.to_string_lossy().into_owned(),
+            )
         })
     }
 
@@ -266,7 +273,11 @@ impl Request {
 
     fn main_output(&self, document: &SolveDocument) -> Result<String, Failure> {
         let failed = |error: &dyn std::fmt::Display| {
-            Failure::new(ExitStatus::Unreadable, format!("the result cannot be printed: {error}"), "")
+            Failure::new(
+                ExitStatus::Unreadable,
+                format!("the result cannot be printed: {error}"),
+                "",
+            )
         };
         match &self.format {
             Format::Text(options) => Ok(report::to_text(document, *options)),

@@ -50,9 +50,7 @@ pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>) -> Estimate {
                 None => (first, SHARE * change),
                 // At an obtuse corner the constant of the next term depends on where the lines pass it:
                 // removing it gains nothing on average (measured on rhombus and hexagon).
-                Some(p) if p > 2.0 => {
-                    (first, SHARE * change + OBTUSE_SHARE * (first - fine).abs())
-                }
+                Some(p) if p > 2.0 => (first, SHARE * change + OBTUSE_SHARE * (first - fine).abs()),
                 Some(_) => {
                     let best = remove(first, second, 2.0);
                     (best, (best - first).abs())

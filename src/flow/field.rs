@@ -48,7 +48,11 @@ impl DenseField {
         let fluid_fraction = coverage(edges, nodes_x - 1, nodes_y - 1);
         let unit = lattice.spacing * lattice.spacing;
         let mut values = vec![0.0; nodes_x * nodes_y];
-        for run in mask.runs.iter().filter(|run| (run.row as usize).is_multiple_of(stride)) {
+        for run in mask
+            .runs
+            .iter()
+            .filter(|run| (run.row as usize).is_multiple_of(stride))
+        {
             let row = (run.row as usize / stride + 1) * nodes_x;
             let first = run.first.next_multiple_of(stride as u32);
             for i in (first..run.end()).step_by(stride) {

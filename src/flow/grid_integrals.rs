@@ -111,12 +111,15 @@ fn truncation(w: &WallNode, value: f64, curvature: [f64; 2], own: &[f64], other:
     let mut sum = 0.0;
     for low in [0, 2] {
         // The long way: from the wall through this node to the two behind it.
-        let inward = if w.neighbour[low] == NO_NODE { low + 1 } else { low };
+        let inward = if w.neighbour[low] == NO_NODE {
+            low + 1
+        } else {
+            low
+        };
         let outward = inward ^ 1;
-        let (Some(next), Some(beyond)) = (
-            at(other, w.neighbour[inward]),
-            at(own, w.beyond[inward]),
-        ) else {
+        let (Some(next), Some(beyond)) =
+            (at(other, w.neighbour[inward]), at(own, w.beyond[inward]))
+        else {
             continue;
         };
         if w.neighbour[outward] != NO_NODE {

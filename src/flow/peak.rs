@@ -34,7 +34,10 @@ pub(crate) fn peak(mask: &Mask, phi: &Field) -> GridPeak {
     let size = f64::from(mask.stride);
     GridPeak {
         value,
-        at: [size * (f64::from(i) + step[0]), size * (f64::from(j) + step[1])],
+        at: [
+            size * (f64::from(i) + step[0]),
+            size * (f64::from(j) + step[1]),
+        ],
     }
 }
 

@@ -290,13 +290,14 @@ struct Solution<'a> {
     answers: Vec<GridAnswer>,
 }
 
-fn assemble(
-    outline: &Outline,
-    solution: &Solution,
-    grid: GridReport,
-    seconds: f64,
-) -> SectionFlow {
-    let Solution { lattice, mask, phi, corners, answers } = solution;
+fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f64) -> SectionFlow {
+    let Solution {
+        lattice,
+        mask,
+        phi,
+        corners,
+        answers,
+    } = solution;
     let geometry = geometry(outline);
     let exponent = leading_exponent(corners);
     let h = grid.spacing;
@@ -444,9 +445,10 @@ fn warnings(flow: &SectionFlow, small_islands: usize, lost_islands: usize) -> Ve
                 100.0 * identity.relative_difference,
                 100.0 * identity.tolerance
             ),
-            advice: "the wall shear and its mean are less sure than the conductance; try a finer grid \
+            advice:
+                "the wall shear and its mean are less sure than the conductance; try a finer grid \
                      with --cells-across and compare"
-                .to_owned(),
+                    .to_owned(),
             numbers: vec![
                 ("relative_difference", identity.relative_difference),
                 ("tolerance", identity.tolerance),
@@ -460,7 +462,8 @@ fn warnings(flow: &SectionFlow, small_islands: usize, lost_islands: usize) -> Ve
                 "the solver stopped after {} cycles at a residual of {:.1e}",
                 flow.solver.cycles, flow.solver.residual
             ),
-            advice: "the estimated error does not cover this; try another --cells-across".to_owned(),
+            advice: "the estimated error does not cover this; try another --cells-across"
+                .to_owned(),
             numbers: vec![("residual", flow.solver.residual)],
         });
     }

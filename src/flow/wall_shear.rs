@@ -80,11 +80,7 @@ pub(crate) fn wall_shear(
     }
 }
 
-fn walls<'a>(
-    outline: &'a Outline,
-    lattice: &Lattice,
-    corners: Vec<Vec<Corner>>,
-) -> Vec<Wall<'a>> {
+fn walls<'a>(outline: &'a Outline, lattice: &Lattice, corners: Vec<Vec<Corner>>) -> Vec<Wall<'a>> {
     outline
         .loops()
         .zip(corners)
@@ -175,7 +171,10 @@ impl Wall<'_> {
         } else {
             let edge = self.edge_at(arc_length);
             let n = self.outline.points.len();
-            (self.outline.points[edge], self.outline.points[(edge + 1) % n])
+            (
+                self.outline.points[edge],
+                self.outline.points[(edge + 1) % n],
+            )
         };
         let (x, y) = (b[0] - a[0], b[1] - a[1]);
         let length = x.hypot(y);
@@ -192,9 +191,16 @@ impl Wall<'_> {
         let s = arc_length.rem_euclid(total);
         let edge = self.edge_at(s);
         let n = self.outline.points.len();
-        let (a, b) = (self.outline.points[edge], self.outline.points[(edge + 1) % n]);
+        let (a, b) = (
+            self.outline.points[edge],
+            self.outline.points[(edge + 1) % n],
+        );
         let length = self.arc[edge + 1] - self.arc[edge];
-        let t = if length > 0.0 { (s - self.arc[edge]) / length } else { 0.0 };
+        let t = if length > 0.0 {
+            (s - self.arc[edge]) / length
+        } else {
+            0.0
+        };
         [a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])]
     }
 }

@@ -10,7 +10,11 @@ use super::lattice::WallEdge;
 ///
 /// - `edges`: closed loops in units of the cell size, fluid on the left
 /// - `columns`, `rows`: cells `(c, r)` cover `c..c+1` by `r..r+1`; all edges must lie inside
-pub(crate) fn coverage(edges: impl Iterator<Item = WallEdge>, columns: usize, rows: usize) -> Vec<f64> {
+pub(crate) fn coverage(
+    edges: impl Iterator<Item = WallEdge>,
+    columns: usize,
+    rows: usize,
+) -> Vec<f64> {
     // One spare column takes what lies right of the last cell.
     let width = columns + 1;
     let mut share = vec![0.0; width * rows];

@@ -73,9 +73,8 @@ impl LineCrossings {
             }
         }
         for line in 0..lines {
-            items[starts[line]..starts[line + 1]].sort_unstable_by(|a, b| {
-                a.at.total_cmp(&b.at).then(a.edge.cmp(&b.edge))
-            });
+            items[starts[line]..starts[line + 1]]
+                .sort_unstable_by(|a, b| a.at.total_cmp(&b.at).then(a.edge.cmp(&b.edge)));
         }
         Self { starts, items }
     }

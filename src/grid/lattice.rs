@@ -52,17 +52,17 @@ impl Lattice {
     /// ```
     pub fn new(outline: &Outline, spacing: f64, offset: [f64; 2]) -> Self {
         let (low, high) = outline.bounds().unwrap_or(([0.0; 2], [0.0; 2]));
-        let origin = [
-            low[0] - offset[0] * spacing,
-            low[1] - offset[1] * spacing,
-        ];
+        let origin = [low[0] - offset[0] * spacing, low[1] - offset[1] * spacing];
         let scale = 1.0 / spacing;
         let place = |p: Point| [(p[0] - origin[0]) * scale, (p[1] - origin[1]) * scale];
         let mut edges = Vec::new();
         let mut loop_starts = vec![0];
         let mut is_island = Vec::new();
         for lumen in &outline.lumens {
-            for (position, wall) in std::iter::once(&lumen.outer).chain(&lumen.islands).enumerate() {
+            for (position, wall) in std::iter::once(&lumen.outer)
+                .chain(&lumen.islands)
+                .enumerate()
+            {
                 let loop_index = is_island.len() as u32;
                 edges.extend(wall.edges().map(|(a, b)| WallEdge {
                     start: place(a),

@@ -416,7 +416,10 @@ impl Mask {
         let mut i = from;
         while i < to {
             let (Some(below), Some(above)) = (
-                run.row.checked_sub(1).and_then(|j| self.run_at(i, j)).copied(),
+                run.row
+                    .checked_sub(1)
+                    .and_then(|j| self.run_at(i, j))
+                    .copied(),
                 self.run_at(i, run.row + 1).copied(),
             ) else {
                 // Every node without a neighbour below or above has a cut there.
@@ -459,11 +462,20 @@ impl Mask {
             if is_cut[direction] {
                 return NO_NODE;
             }
-            row.and_then(|j| self.node_at(i, j)).map_or(NO_NODE, |(_, n)| n)
+            row.and_then(|j| self.node_at(i, j))
+                .map_or(NO_NODE, |(_, n)| n)
         };
         let neighbour = [
-            if is_cut[ARM_LEFT] { NO_NODE } else { run.node(i - 1).1 },
-            if is_cut[ARM_RIGHT] { NO_NODE } else { run.node(i + 1).1 },
+            if is_cut[ARM_LEFT] {
+                NO_NODE
+            } else {
+                run.node(i - 1).1
+            },
+            if is_cut[ARM_RIGHT] {
+                NO_NODE
+            } else {
+                run.node(i + 1).1
+            },
             vertical(ARM_DOWN, run.row.checked_sub(1)),
             vertical(ARM_UP, Some(run.row + 1)),
         ];

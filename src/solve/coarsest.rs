@@ -3,7 +3,7 @@
 //! The matrix of the five-point scheme with unequal arms is an irreducibly diagonally dominant M-matrix
 //! on every connected part, so elimination without pivoting is stable (a classical result for M-matrices;
 //! common practice, no page looked up). Order: breadth first from a node of least degree, reversed
-//! (Cuthill and McKee 1969, Reducing the bandwidth of sparse symmetric matrices, Proc. 24th ACM National
+//! (E. Cuthill, J. `McKee` 1969, Reducing the bandwidth of sparse symmetric matrices, Proc. 24th ACM National
 //! Conference, 157, doi:10.1145/800195.805928).
 
 use sprs::CsMat;

@@ -31,7 +31,8 @@ pub(crate) fn accelerate(
     let scale = f64::from(grid.mask.stride).powi(2);
     let goal = grid.mask.nodes() as f64 * (control.residual * scale).powi(2);
     // Direction, its image, and the squared norm of the image.
-    let mut kept: std::collections::VecDeque<(Field, Field, f64)> = std::collections::VecDeque::new();
+    let mut kept: std::collections::VecDeque<(Field, Field, f64)> =
+        std::collections::VecDeque::new();
     let mut cycles = 0;
     while cycles < most_cycles && residual.dot(&residual) > goal {
         hierarchy.grids[level].rhs = residual.clone();

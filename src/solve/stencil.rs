@@ -159,7 +159,12 @@ struct Part<'a> {
 }
 
 /// Runs `work` on every block of a grid, on several threads when the grid is large.
-fn for_blocks(mask: &Mask, colour: Colour, values: &mut [f64], work: impl Fn(&mut Part) + Sync + Send) {
+fn for_blocks(
+    mask: &Mask,
+    colour: Colour,
+    values: &mut [f64],
+    work: impl Fn(&mut Part) + Sync + Send,
+) {
     let c = colour as usize;
     let mut parts = Vec::with_capacity(mask.blocks.len());
     let (mut rest, mut before) = (values, Block::default());

@@ -116,7 +116,11 @@ impl Transfer {
                     self.restrict_segments.push(segment);
                 } else {
                     for k in 0..len {
-                        self.restrict_near_wall(fine, run.natural + i + k - run.first, [i + k, run.row]);
+                        self.restrict_near_wall(
+                            fine,
+                            run.natural + i + k - run.first,
+                            [i + k, run.row],
+                        );
                     }
                 }
             }
@@ -162,11 +166,17 @@ impl Transfer {
                 continue;
             }
             let j = run.row / 2;
-            let inner = if run.first.is_multiple_of(2) { first } else { first + 2 };
+            let inner = if run.first.is_multiple_of(2) {
+                first
+            } else {
+                first + 2
+            };
             let last = (run.end() - 1).saturating_sub(1) | 1;
             let inner_end = if last + 1 < run.end() { last + 2 } else { last };
             let len = inner_end.saturating_sub(inner) / 2;
-            let whole = (len > 0).then(|| line_of(coarse, inner / 2, j, len + 1)).flatten();
+            let whole = (len > 0)
+                .then(|| line_of(coarse, inner / 2, j, len + 1))
+                .flatten();
             if let (Some(low), Some((_, node))) = (whole, fine.node_at(inner, run.row)) {
                 self.prolong_segments.push(ProlongSegment {
                     fine: node,
@@ -268,7 +278,8 @@ fn line_of(mask: &Mask, i: u32, j: u32, len: u32) -> Option<u32> {
 }
 
 fn node_weights(mask: &Mask, colour: Colour, node: u32) -> ([f64; 4], f64) {
-    mask.wall_node(colour, node).map_or(([1.0; 4], 4.0), weights)
+    mask.wall_node(colour, node)
+        .map_or(([1.0; 4], 4.0), weights)
 }
 
 /// Weight of the neighbour along `direction` in the value linear along that line.

@@ -1,6 +1,13 @@
 //! Every reader against files: good ones are read to the right section, bad ones give the message beside
 //! them, and nothing that can be in a file makes the program panic.
 
+#![expect(
+    clippy::disallowed_methods,
+    clippy::unwrap_used,
+    clippy::panic,
+    reason = "tests read and write files of their own and may fail loudly"
+)]
+
 use std::fmt::Write as _;
 use std::fs;
 use std::path::{Path, PathBuf};
@@ -57,15 +64,19 @@ fn good_files_are_read_to_the_right_section() {
         let name = name_of(&path);
         let section = read_section(&path, &ReadOptions::default())
             .unwrap_or_else(|error| panic!("{}", error.explain()));
-        let (lumens, islands) = match name.as_str() {
+        let (lumens, islands): (u32, u32) = match name.as_str() {
             "blank-line-island.csv" | "spreadsheet-blank-rows.csv" | "physical-size.svg" => (1, 1),
             "loop-column.csv" | "lumen-column.csv" | "section.toml" => (2, 1),
             _ => (1, 0),
         };
         let area = f64::from(lumens) * 5000e-12 - f64::from(islands) * 200e-12;
-        let found: usize = section.outline.lumens.iter().map(|l| l.islands.len()).sum();
-        assert_eq!(section.outline.lumens.len() as i32, lumens, "{name}");
-        assert_eq!(found as i32, islands, "{name}");
+        let found = &section.outline.lumens;
+        let posts: usize = found.iter().map(|lumen| lumen.islands.len()).sum();
+        assert_eq!(
+            (found.len(), posts),
+            (lumens as usize, islands as usize),
+            "{name}"
+        );
         assert!(
             (section.outline.area() / area - 1.0).abs() < 1e-12,
             "{name}"
@@ -93,9 +104,8 @@ fn bad_files_give_the_message_beside_them() {
     for path in paths {
         let name = name_of(&path);
         let bytes = fs::read(&path).unwrap();
-        let error = match section_from_bytes(bytes, &name, &ReadOptions::default()) {
-            Err(error) => error,
-            Ok(_) => panic!("{name} was read"),
+        let Err(error) = section_from_bytes(bytes, &name, &ReadOptions::default()) else {
+            panic!("{name} was read");
         };
         let family = match error.exit_kind() {
             ReadErrorKind::AmbiguousUnit => "ambiguous unit",
@@ -178,6 +188,26 @@ fn the_size_stop_can_be_lifted_and_the_kind_can_be_given() {
     options.as_kind = Some(SectionKind::SectionFile);
     let error = section_from_bytes(large, "t", &options).unwrap_err();
     assert!(matches!(*error.problem, ReadProblem::Toml { .. }));
+}
+
+#[test]
+fn a_scale_must_be_positive_and_finite() {
+    let svg = b"<svg xmlns='http://www.w3.org/2000/svg'><circle r='5'/></svg>".to_vec();
+    for scale in [0.0, -1e-6, f64::NAN, f64::INFINITY] {
+        let options = ReadOptions {
+            svg_scale: Some(scale),
+            allow_any_size: true,
+            ..ReadOptions::default()
+        };
+        let error = section_from_bytes(svg.clone(), "t", &options).unwrap_err();
+        assert!(matches!(
+            *error.problem,
+            ReadProblem::ScaleNotPositive { .. }
+        ));
+    }
+    for unit in ["0 um", "-1 um", "nan um", "0.1"] {
+        assert!(with_unit("0 0\n1 0\n1 1\n", unit).is_err(), "{unit}");
+    }
 }
 
 #[test]
@@ -346,7 +376,7 @@ proptest! {
     }
 
     #[test]
-    fn arbitrary_drawings_never_panic(data in "M[-0-9.eE, MmLlHhVvCcSsQqTtAaZz]{0,60}", transform in "(matrix|scale|rotate|skewX)\\([-0-9.e, ]{0,16}\\)") {
+    fn arbitrary_drawings_never_panic(data in "M[-0-9.eE, MmLlHhVvCcSsQqTtAaZz]{0,60}", transform in "(matrix|scale|rotate|skewX)\\([-0-9.e, ]{0,16}\\)|scale\\([1-9]e30[0-7]\\)") {
         let text = format!(
             "<svg xmlns='http://www.w3.org/2000/svg'><path transform='{transform}' d='{data}'/></svg>"
         );

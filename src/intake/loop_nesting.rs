@@ -5,8 +5,8 @@
 //! wall and the others are its islands. Loops that cross or touch are sorted by their first vertex;
 //! finding such faults is the job of the outline's own check, not of this module.
 //!
-//! Edges are sorted into horizontal strips, and a ray to the left of each loop's first vertex meets only
-//! the edges of its strip, so that many loops in one section stay near linear.
+//! Edges are sorted into strips, once level and once upright, and a ray along the emptier strip from each
+//! loop's first vertex meets only the edges of that strip, so that many loops stay near linear.
 
 use std::collections::HashMap;
 
@@ -14,8 +14,10 @@ use robust::{Coord, orient2d};
 
 use crate::geometry::{Loop, Lumen, Outline, Point};
 
-/// Most strips used; memory stays small against the vertices.
+/// Most strips used.
 const MOST_STRIPS: usize = 4096;
+/// Strips an edge lies in at most, on average; bounds the memory.
+const ENTRIES_PER_EDGE: usize = 8;
 
 /// A loop as read, with its lumen label where the file gives one.
 #[derive(Debug, Clone, PartialEq)]
@@ -117,7 +119,7 @@ fn nesting(walls: &[Loop]) -> Vec<Nest> {
         return vec![Nest::default(); walls.len()];
     }
     let areas: Vec<f64> = walls.iter().map(|wall| wall.signed_area().abs()).collect();
-    let strips = Strips::new(walls);
+    let strips = [false, true].map(|is_turned| Strips::new(walls, is_turned));
     let mut crossed: Vec<usize> = Vec::new();
     walls
         .iter()
@@ -126,7 +128,13 @@ fn nesting(walls: &[Loop]) -> Vec<Nest> {
             let Some(&point) = wall.points.first() else {
                 return Nest::default();
             };
-            strips.crossings_left_of(walls, point, &mut crossed);
+            let [level, upright] = &strips;
+            let fewer = if level.edges_beside(point).len() <= upright.edges_beside(point).len() {
+                level
+            } else {
+                upright
+            };
+            fewer.crossings(walls, point, &mut crossed);
             crossed.retain(|&other| other != index);
             crossed.sort_unstable();
             let mut nest = Nest::default();
@@ -145,53 +153,90 @@ fn nesting(walls: &[Loop]) -> Vec<Nest> {
         .collect()
 }
 
-/// Edges by horizontal strip.
+/// Edges by strips across one axis, with as many loops beginning in each strip.
 struct Strips {
-    low: f64,
-    height: f64,
+    /// Whether `x` and `y` change places.
+    is_turned: bool,
+    /// Heights between strips, rising.
+    borders: Vec<f64>,
+    /// Loop and vertex of every edge that reaches into a strip.
     edges: Vec<Vec<(u32, u32)>>,
 }
 
+/// A point with `x` and `y` in their places or changed.
+fn turned(point: Point, is_turned: bool) -> Point {
+    let [x, y] = point;
+    if is_turned { [y, x] } else { [x, y] }
+}
+
+/// First and last strip of an edge.
+fn reach(borders: &[f64], a: Point, b: Point) -> (usize, usize) {
+    let strip = |y: f64| borders.partition_point(|border| *border <= y);
+    (strip(a[1].min(b[1])), strip(a[1].max(b[1])))
+}
+
+/// Borders that give each strip the same number of loops, fewer where edges would lie in too many strips.
+fn strip_borders(walls: &[Loop], is_turned: bool) -> Vec<f64> {
+    let starts = walls.iter().filter_map(|wall| wall.points.first());
+    let mut heights: Vec<f64> = starts.map(|&p| turned(p, is_turned)[1]).collect();
+    heights.sort_by(f64::total_cmp);
+    heights.dedup();
+    let edges: usize = walls.iter().map(|wall| wall.points.len()).sum();
+    let mut count = heights.len().clamp(1, MOST_STRIPS);
+    loop {
+        let step = heights.len().div_ceil(count).max(1);
+        let borders: Vec<f64> = heights.iter().copied().skip(step).step_by(step).collect();
+        let entries: usize = walls
+            .iter()
+            .flat_map(Loop::edges)
+            .map(|(a, b)| {
+                let (first, last) = reach(&borders, turned(a, is_turned), turned(b, is_turned));
+                last - first + 1
+            })
+            .sum();
+        if count == 1 || entries <= ENTRIES_PER_EDGE * edges {
+            return borders;
+        }
+        count /= 2;
+    }
+}
+
 impl Strips {
-    fn new(walls: &[Loop]) -> Self {
-        let ys = || walls.iter().flat_map(|w| w.points.iter().map(|p| p[1]));
-        let low = ys().fold(f64::INFINITY, f64::min);
-        let high = ys().fold(f64::NEG_INFINITY, f64::max);
-        let count = ys().count().clamp(1, MOST_STRIPS);
-        let mut strips = Self {
-            low,
-            height: (high - low) / count as f64,
-            edges: vec![Vec::new(); count],
-        };
+    fn new(walls: &[Loop], is_turned: bool) -> Self {
+        let borders = strip_borders(walls, is_turned);
+        let mut edges = vec![Vec::new(); borders.len() + 1];
         for (index, wall) in walls.iter().enumerate() {
             for (vertex, (a, b)) in wall.edges().enumerate() {
-                let (first, last) = (strips.strip(a[1].min(b[1])), strips.strip(a[1].max(b[1])));
-                if a[1] != b[1]
-                    && let Some(range) = strips.edges.get_mut(first..=last)
-                {
+                let (a, b) = (turned(a, is_turned), turned(b, is_turned));
+                let (first, last) = reach(&borders, a, b);
+                let is_level = a[1].to_bits() == b[1].to_bits();
+                if !is_level && let Some(range) = edges.get_mut(first..=last) {
                     for strip in range {
                         strip.push((index as u32, vertex as u32));
                     }
                 }
             }
         }
-        strips
-    }
-
-    fn strip(&self, y: f64) -> usize {
-        let position = (y - self.low) / self.height;
-        if position.is_finite() {
-            (position.max(0.0) as usize).min(self.edges.len() - 1)
-        } else {
-            0
+        Self {
+            is_turned,
+            borders,
+            edges,
         }
     }
 
-    /// Loops crossed by a ray from the point to the left, once for each crossing.
-    fn crossings_left_of(&self, walls: &[Loop], point: Point, crossed: &mut Vec<usize>) {
+    /// Edges in the strip of a point.
+    fn edges_beside(&self, point: Point) -> &[(u32, u32)] {
+        let point = turned(point, self.is_turned);
+        let (strip, _) = reach(&self.borders, point, point);
+        self.edges.get(strip).map_or(&[], Vec::as_slice)
+    }
+
+    /// Loops crossed by a ray from the point along its strip, once for each crossing.
+    fn crossings(&self, walls: &[Loop], point: Point, crossed: &mut Vec<usize>) {
         crossed.clear();
-        let strip = self.edges.get(self.strip(point[1]));
-        for &(index, vertex) in strip.into_iter().flatten() {
+        let edges = self.edges_beside(point);
+        let point = turned(point, self.is_turned);
+        for &(index, vertex) in edges {
             let wall = walls.get(index as usize).map(|w| w.points.as_slice());
             let points = wall.unwrap_or_default();
             let vertex = vertex as usize;
@@ -203,6 +248,7 @@ impl Strips {
             let (Some(&a), Some(&b)) = (points.get(vertex), points.get(next)) else {
                 continue;
             };
+            let (a, b) = (turned(a, self.is_turned), turned(b, self.is_turned));
             if (a[1] > point[1]) != (b[1] > point[1]) && lies_right_of(point, a, b) {
                 crossed.push(index as usize);
             }
@@ -212,6 +258,9 @@ impl Strips {
 
 /// Whether a point lies to the right of an edge that spans its height.
 fn lies_right_of(point: Point, a: Point, b: Point) -> bool {
+    if point[0] < a[0].min(b[0]) || point[0] > a[0].max(b[0]) {
+        return point[0] > a[0];
+    }
     let coord = |p: Point| Coord { x: p[0], y: p[1] };
     let (low, high) = if a[1] < b[1] { (a, b) } else { (b, a) };
     orient2d(coord(low), coord(high), coord(point)) < 0.0
@@ -276,6 +325,35 @@ mod tests {
         let outline = assemble(raw);
         assert_eq!(outline.lumens.len(), 1);
         assert_eq!(outline.lumens[0].islands.len(), 90_000);
+    }
+
+    #[test]
+    fn long_rows_and_columns_of_posts_are_no_slower() {
+        for turn in [false, true] {
+            let mut raw = vec![square(0.0, 0.0, 2e6)];
+            for i in 0..100_000 {
+                let [x, y] = turned([f64::from(i), 0.0], turn);
+                raw.push(square(x, y, 0.3));
+            }
+            let outline = assemble(raw);
+            assert_eq!(outline.lumens.len(), 1);
+            assert_eq!(outline.lumens[0].islands.len(), 100_000);
+        }
+    }
+
+    #[test]
+    fn a_comb_of_tall_teeth_stays_small() {
+        let mut points = vec![[200_000.0, -1.0], [0.0, -1.0]];
+        for i in 0..100_000 {
+            let x = f64::from(i);
+            points.extend([[x, 0.0], [x + 0.5, 1000.0]]);
+        }
+        let comb = RawLoop {
+            points,
+            lumen: None,
+        };
+        let outline = assemble(vec![comb, square(1e6, 0.0, 10.0)]);
+        assert_eq!(outline.lumens.len(), 2);
     }
 
     #[test]

@@ -128,9 +128,16 @@ fn loops(paths: &[SubPath], scale: f64) -> Result<Vec<RawLoop>, Fault> {
         let vertices = path.vertices(chord_error)?;
         total += vertices.len();
         check_vertices(total)?;
-        let points = vertices.iter().map(|p| [p[0] * scale, -p[1] * scale]);
+        let points: Vec<Point> = vertices
+            .iter()
+            .map(|p| [p[0] * scale, -p[1] * scale])
+            .collect();
+        if let Some([x, y]) = points.iter().find(|p| !p.iter().all(|c| c.is_finite())) {
+            let text = format!("{x}, {y}");
+            return Err(ReadProblem::NotFinite { text }.into());
+        }
         loops.push(RawLoop {
-            points: points.collect(),
+            points,
             lumen: None,
         });
     }

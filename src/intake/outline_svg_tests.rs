@@ -1,5 +1,7 @@
 //! Drawings that are read and drawings that are refused.
 
+use std::fmt::Write as _;
+
 use super::{ReadProblem, read};
 
 fn drawing(root: &str, body: &str) -> String {
@@ -68,17 +70,16 @@ fn arcs_are_more_exact_than_their_cubics() {
     };
     let mut data = String::new();
     for segment in path.data().segments() {
-        match segment {
-            usvg::tiny_skia_path::PathSegment::MoveTo(p) => data += &format!("M{} {}", p.x, p.y),
-            usvg::tiny_skia_path::PathSegment::LineTo(p) => data += &format!("L{} {}", p.x, p.y),
-            usvg::tiny_skia_path::PathSegment::CubicTo(a, b, p) => {
-                data += &format!("C{} {} {} {} {} {}", a.x, a.y, b.x, b.y, p.x, p.y);
+        use usvg::tiny_skia_path::PathSegment as Segment;
+        let _ = match segment {
+            Segment::MoveTo(p) => write!(data, "M{} {}", p.x, p.y),
+            Segment::LineTo(p) => write!(data, "L{} {}", p.x, p.y),
+            Segment::CubicTo(a, b, p) => {
+                write!(data, "C{} {} {} {} {} {}", a.x, a.y, b.x, b.y, p.x, p.y)
             }
-            usvg::tiny_skia_path::PathSegment::QuadTo(a, p) => {
-                data += &format!("Q{} {} {} {}", a.x, a.y, p.x, p.y);
-            }
-            usvg::tiny_skia_path::PathSegment::Close => data += "Z",
-        }
+            Segment::QuadTo(a, p) => write!(data, "Q{} {} {} {}", a.x, a.y, p.x, p.y),
+            Segment::Close => write!(data, "Z"),
+        };
     }
     let exact = std::f64::consts::PI * 2500.0;
     let theirs = (area(&format!("<path d='{data}'/>")) / exact - 1.0).abs();

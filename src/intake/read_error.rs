@@ -164,6 +164,12 @@ pub enum ReadProblem {
         /// What is wrong with it.
         source: UnitError,
     },
+    /// The scale asked for is zero, negative, or not finite.
+    #[error("the scale asked for is {metres} m; it must be above zero and finite")]
+    ScaleNotPositive {
+        /// The scale, m.
+        metres: f64,
+    },
     /// A loop label comes back after another one.
     #[error("loop `{label}` goes on here, but another loop came between")]
     LoopReopened {
@@ -421,6 +427,7 @@ impl ReadProblem {
                 "keep the rows of a loop together, or give it its own label"
             }
             Self::Toml { .. } => "correct the line; coordinates are written [[x, y], [x, y]]",
+            Self::ScaleNotPositive { .. } => "give the length of one unit, such as \"1 um\"",
             Self::TwoOutlines => "keep one of the two",
             Self::SvgAttribute { .. } => {
                 "write it as SVG has it: plain numbers, sizes above zero, lengths without % or em"

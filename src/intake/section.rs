@@ -77,6 +77,7 @@ impl UnitOption {
             {
                 let metres =
                     parse_length(word).map_err(|source| ReadProblem::UnitOption { source })?;
+                check_scale(metres)?;
                 UnitScale::from_factor(metres)
             }
             None => super::columns::known_length(word.trim())
@@ -98,6 +99,14 @@ impl UnitOption {
             option: self.word.clone(),
         })
     }
+}
+
+/// Refuses a length of one unit that is zero, negative or not finite.
+fn check_scale(metres: f64) -> Result<(), ReadProblem> {
+    if metres.is_finite() && metres > 0.0 {
+        return Ok(());
+    }
+    Err(ReadProblem::ScaleNotPositive { metres })
 }
 
 /// What a reader of one kind hands over.
@@ -170,6 +179,7 @@ fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Sec
         SectionKind::SectionFile => section_file::read(&source.text, option.as_ref())?,
         SectionKind::OutlineSvg => {
             let scale = options.svg_scale.or(option.map(|o| o.scale.factor()));
+            scale.map_or(Ok(()), check_scale)?;
             outline_svg::read(&source.text, scale)?
         }
         SectionKind::OutlineText => {

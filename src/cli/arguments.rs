@@ -86,7 +86,7 @@ fn input(command: Command) -> Command {
                 .long_help("Length of one unit of an SVG drawing. Example: --scale \"1 um\""),
         )
         .arg(
-            flag("any-size", "Accept sections outside 10 nm to 50 mm").help_heading(heading),
+            flag("allow-any-size", "Accept sections outside 10 nm to 50 mm").help_heading(heading),
         )
 }
 

@@ -51,7 +51,7 @@ pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure>
         }
         options.svg_scale = Some(scale);
     }
-    options.allow_any_size = matches.get_flag("any-size");
+    options.allow_any_size = matches.get_flag("allow-any-size");
     Ok(options)
 }
 

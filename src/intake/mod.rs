@@ -23,7 +23,6 @@ mod section;
 mod section_file;
 mod section_write;
 mod source_text;
-mod spelling;
 mod staircase;
 mod svg_path;
 mod svg_shapes;

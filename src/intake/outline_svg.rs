@@ -109,8 +109,10 @@ pub(crate) fn read(text: &str, scale: Option<f64>) -> Result<Content, Fault> {
         "scale {} per user unit; y turned upwards; curves within {RELATIVE_CHORD_ERROR} of the size",
         format_length(scale)
     ));
+    let sorted = assemble(loops(&walk.paths, scale)?);
     Ok(Content {
-        outline: Some(assemble(loops(&walk.paths, scale)?)),
+        outline: Some(sorted.outline),
+        loop_numbers: sorted.loop_numbers,
         factor: Some(scale),
         notes,
         ..Content::default()

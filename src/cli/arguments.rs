@@ -133,6 +133,15 @@ fn solve() -> Command {
                 .help_heading(heading),
         )
         .arg(
+            flag("legacy-vtk", "With --vtk: also PREFIX.vtk in the old format")
+                .requires("vtk")
+                .long_help(
+                    "Also write the field as PREFIX.vtk in the old text format, for readers without \
+                     .vti. Example: --vtk wafer --legacy-vtk",
+                )
+                .help_heading(heading),
+        )
+        .arg(
             Arg::new("picture")
                 .long("picture")
                 .value_name("FILE")

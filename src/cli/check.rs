@@ -32,6 +32,7 @@ struct SourceRecord<'a> {
     path: &'a str,
     sha256: &'a str,
     kind: &'a str,
+    notes: &'a [String],
 }
 
 #[derive(Serialize)]
@@ -70,6 +71,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
                 path: &section.provenance.path,
                 sha256: &section.provenance.sha256,
                 kind: section.provenance.kind.word(),
+                notes: &section.provenance.notes,
             },
             vertices,
             accepted,

@@ -11,7 +11,7 @@ use crate::flow::{
 use crate::intake::ReadOptions;
 use crate::report::{
     self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_target,
-    vtk_paths, write_files,
+    legacy_vtk_path, vtk_paths, write_files,
 };
 use crate::units::{self, UnitError};
 use crate::warning::Code;
@@ -40,6 +40,7 @@ struct Request {
     format: Format,
     output: Option<PathBuf>,
     vtk: Option<PathBuf>,
+    legacy_vtk: bool,
     pictures: Vec<(PathBuf, PictureFormat)>,
     quiet: bool,
     deny_warnings: bool,
@@ -130,21 +131,30 @@ impl Request {
             format,
             output: path(matches, "output"),
             vtk: path(matches, "vtk"),
+            legacy_vtk: matches.get_flag("legacy-vtk"),
             pictures,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
     }
 
+    /// Where the field in the old format goes, when it is asked for.
+    fn legacy_vtk_path(&self) -> Option<PathBuf> {
+        let prefix = self.vtk.as_ref().filter(|_| self.legacy_vtk)?;
+        Some(legacy_vtk_path(prefix))
+    }
+
     /// Outputs that cannot be written are found before the solve.
     fn check_targets(&self) -> Result<(), Failure> {
         let vtk = self.vtk.iter().flat_map(|prefix| vtk_paths(prefix));
+        let legacy = self.legacy_vtk_path();
         let pictures = self.pictures.iter().map(|(path, _)| path.clone());
         let targets: Vec<PathBuf> = self
             .output
             .clone()
             .into_iter()
             .chain(vtk)
+            .chain(legacy)
             .chain(pictures)
             .collect();
         for (index, target) in targets.iter().enumerate() {
@@ -186,6 +196,7 @@ impl Request {
                 path: &provenance.path,
                 sha256: &provenance.sha256,
                 kind: provenance.kind.word(),
+                notes: &provenance.notes,
             }),
             section_name: &name,
             flow,
@@ -238,6 +249,10 @@ impl Request {
             let [vti, vtp] = vtk_paths(prefix);
             files.push((vti, report::field_vti(document, &field)?.into_bytes()));
             files.push((vtp, report::wall_vtp(document)?.into_bytes()));
+            if let Some(path) = self.legacy_vtk_path() {
+                let text = report::field_legacy_vtk(document, &field)?;
+                files.push((path, text.into_bytes()));
+            }
         }
         if !self.pictures.is_empty() {
             let field = solved.dense_field(PICTURE_NODES);

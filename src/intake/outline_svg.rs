@@ -106,7 +106,7 @@ pub(crate) fn read(text: &str, scale: Option<f64>) -> Result<Content, Fault> {
             .map(|(what, count)| format!("{count} {what} left out")),
     );
     notes.push(format!(
-        "scale {} per user unit; y turned upwards; curves within {RELATIVE_CHORD_ERROR} of the size",
+        "scale {} per user unit; y turned upwards; curves within {RELATIVE_CHORD_ERROR:e} of the size",
         format_length(scale)
     ));
     let sorted = assemble(loops(&walk.paths, scale)?);

@@ -66,6 +66,12 @@ fn title(document: &SolveDocument<'_>) -> String {
         table.row([source.kind, path.as_str()]);
         table.row(["sha256", source.sha256]);
         out.push_str(&table.print(INDENT));
+        for note in source.notes {
+            out.push_str(&paragraph(
+                "  ",
+                &format!("note: {}", numbers::one_line(note)),
+            ));
+        }
     }
     out
 }

@@ -75,11 +75,18 @@ pub struct OutputFile<'a> {
 /// assert_eq!(wall, std::path::Path::new("out/run1.2.vtp"));
 /// ```
 pub fn vtk_paths(prefix: &Path) -> [PathBuf; 2] {
-    [".vti", ".vtp"].map(|extension| {
-        let mut name = OsString::from(prefix);
-        name.push(extension);
-        PathBuf::from(name)
-    })
+    [".vti", ".vtp"].map(|extension| with_extension(prefix, extension))
+}
+
+/// The `.vtk` path of a prefix, for the field in the old format.
+pub fn legacy_vtk_path(prefix: &Path) -> PathBuf {
+    with_extension(prefix, ".vtk")
+}
+
+fn with_extension(prefix: &Path, extension: &str) -> PathBuf {
+    let mut name = OsString::from(prefix);
+    name.push(extension);
+    PathBuf::from(name)
 }
 
 /// Checks that `path` can be written and is none of `inputs`, without changing it.

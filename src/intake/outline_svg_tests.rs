@@ -1,7 +1,5 @@
 //! Drawings that are read and drawings that are refused.
 
-use std::fmt::Write as _;
-
 use super::{RELATIVE_CHORD_ERROR, ReadProblem, read};
 
 fn drawing(root: &str, body: &str) -> String {

@@ -84,7 +84,8 @@ fn header(
     }
     Columns::from_header(&fields, option)
         .map(Some)
-        .map_err(|(index, problem)| {
+        .map_err(|found| {
+            let (index, problem) = *found;
             let field = fields.get(index).copied().unwrap_or(row.content);
             Fault::at(text, offset_of(text, field), None, problem)
         })

@@ -56,7 +56,8 @@ pub(crate) fn align(outline: &Outline, corners: &[Vec<Corner>], spacing: f64) ->
         .collect();
     let spacing = candidates(&rest, spacing)
         .into_iter()
-        .map(|h| (total_misfit(&rest, h), h))
+        // Rounded, so that equal ones are equal whatever the scale of the section.
+        .map(|h| ((1e6 * total_misfit(&rest, h)).round(), h))
         .min_by(|a, b| a.0.total_cmp(&b.0).then(b.1.total_cmp(&a.1)))
         .map_or(spacing, |(_, h)| h);
     let offset = [0, 1].map(|axis| {

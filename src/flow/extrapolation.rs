@@ -17,7 +17,7 @@ const SHARE: f64 = 0.4;
 /// Share of the removed term that is added to the error where there are obtuse corners.
 const OBTUSE_SHARE: f64 = 0.03;
 /// Share of the removed term by which it varies where a re-entrant corner misses the nodes altogether.
-const MISFIT_SHARE: f64 = 0.5;
+const MISFIT_SHARE: f64 = 1.0;
 /// Rounding and iteration error of a solved grid, relative.
 const FLOOR: f64 = 2e-8;
 

@@ -5,6 +5,6 @@ mod section_flow;
 
 pub use field::DenseField;
 pub use section_flow::{
-    GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
-    WallShear,
+    GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
+    WallSample, WallShear,
 };

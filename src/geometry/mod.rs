@@ -1,5 +1,13 @@
 //! Plane geometry of sections: outlines, their problems, nominal shapes. No files, no grid.
 
 mod outline;
+mod outline_check;
+mod segment_tree;
+mod sweep;
+mod transform;
+mod validity;
+mod wall_edges;
 
 pub use outline::{Loop, Lumen, Outline, Point};
+pub use segment_tree::{Bounds, NearestWall, SegmentTree};
+pub use validity::{LISTED_PROBLEMS, Place, Problem, ProblemKind, Problems, Role, Severity};

@@ -146,7 +146,7 @@ pub fn solve_outline(
     let diameter = outline
         .lumens
         .iter()
-        .map(|lumen| 2.0 * largest_inscribed_circle(lumen).radius)
+        .map(|lumen| largest_inscribed_circle(lumen).map_or(0.0, |circle| 2.0 * circle.radius))
         .fold(f64::INFINITY, f64::min);
     let attempt = |cells: f64| solve_at(&outline, diameter, cells, options);
     let Some(cells) = options.cells_across else {

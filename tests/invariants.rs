@@ -67,8 +67,9 @@ proptest! {
         let outline = Outline::single(star(&radii));
         let (a, b) = (solve(&outline), solve(&moved(&outline, |p| [scale * p[0], scale * p[1]])));
         let ratio = b.conductance.value / (a.conductance.value * scale.powi(4));
-        // Only rounding of the scaled vertices is in the way.
-        prop_assert!((ratio - 1.0).abs() < 1e-5, "ratio {ratio}");
+        // Rounding of the scaled vertices may move the grid a little.
+        let allowed = a.conductance.relative() + b.conductance.relative() + 1e-9;
+        prop_assert!((ratio - 1.0).abs() <= allowed, "ratio {ratio}, allowed {allowed:e}");
     }
 
     #[test]

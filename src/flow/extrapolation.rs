@@ -16,6 +16,8 @@ use crate::measured::Estimate;
 const SHARE: f64 = 0.4;
 /// Share of the removed term that is added to the error where there are obtuse corners.
 const OBTUSE_SHARE: f64 = 0.03;
+/// Share of the removed term by which it varies where a re-entrant corner misses the nodes altogether.
+const MISFIT_SHARE: f64 = 1.0;
 /// Rounding and iteration error of a solved grid, relative.
 const FLOOR: f64 = 2e-8;
 
@@ -23,7 +25,9 @@ const FLOOR: f64 = 2e-8;
 ///
 /// - `values`: finest grid first, each grid twice the spacing of the one before
 /// - `exponent`: `2 pi / omega` of the widest corner, where that is below about 4
-pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>) -> Estimate {
+/// - `misfit`: how far re-entrant corners miss the nodes of the grids, 0 to 1; the constant of their term
+///   then varies from grid to grid by about that share of itself
+pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>, misfit: f64) -> Estimate {
     let with_error = |value: f64, error: f64| Estimate {
         value,
         error: error.abs() + FLOOR * value.abs(),
@@ -53,7 +57,10 @@ pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>) -> Estimate {
                 Some(p) if p > 2.0 => (first, SHARE * change + OBTUSE_SHARE * (first - fine).abs()),
                 Some(_) => {
                     let best = remove(first, second, 2.0);
-                    (best, (best - first).abs())
+                    (
+                        best,
+                        (best - first).abs() + MISFIT_SHARE * misfit * (first - fine).abs(),
+                    )
                 }
             };
             if in_order(*fine - middle, *middle - coarse, leading) {
@@ -86,9 +93,9 @@ mod tests {
         let p = 4.0 / 3.0;
         let at = |h: f64| 5.0 + 0.7 * h.powf(p) - 0.3 * h * h;
         let values = [at(0.1), at(0.2), at(0.4)];
-        assert!((extrapolate(&values, Some(p)).value - 5.0).abs() < 1e-12);
+        assert!((extrapolate(&values, Some(p), 0.0).value - 5.0).abs() < 1e-12);
         let smooth = |h: f64| 5.0 - 0.3 * h * h;
-        let best = extrapolate(&[smooth(0.1), smooth(0.2), smooth(0.4)], None);
+        let best = extrapolate(&[smooth(0.1), smooth(0.2), smooth(0.4)], None, 0.0);
         assert!((best.value - 5.0).abs() < 1e-12);
     }
 }

@@ -2,6 +2,7 @@
 
 mod chords;
 pub mod closed_form;
+mod corner_alignment;
 mod entrance;
 mod extrapolation;
 mod field;

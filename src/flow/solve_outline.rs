@@ -8,6 +8,7 @@ use crate::measured::Estimate;
 use crate::solve::{Field, Hierarchy, SolveControl, Solved};
 use crate::warning::{Code, Warning};
 
+use super::corner_alignment::{Alignment, align};
 use super::extrapolation::extrapolate;
 use super::field::DenseField;
 use super::grid_integrals::GridIntegrals;
@@ -32,8 +33,6 @@ const RESIDUAL_SHARE: f64 = 0.002;
 const WIDE_CORNER: f64 = 100.0 * std::f64::consts::PI / 180.0;
 /// Cells that an island must span to be seen by the three finest grids.
 const ISLAND_CELLS: f64 = 10.0;
-/// Lattice lines between the places where a re-entrant corner may fall: a node of the four finest grids.
-const CORNER_LINES: f64 = 8.0;
 /// Relative error of `K` that the default grid aims at.
 pub const DEFAULT_ACCURACY: f64 = 1e-4;
 
@@ -147,7 +146,7 @@ pub fn solve_outline(
     let diameter = outline
         .lumens
         .iter()
-        .map(|lumen| 2.0 * largest_inscribed_circle(lumen).radius)
+        .map(|lumen| largest_inscribed_circle(lumen).map_or(0.0, |circle| 2.0 * circle.radius))
         .fold(f64::INFINITY, f64::min);
     let attempt = |cells: f64| solve_at(&outline, diameter, cells, options);
     let Some(cells) = options.cells_across else {
@@ -210,12 +209,18 @@ fn solve_at(
     options: &SolveOptions,
 ) -> Result<SolvedSection, FlowError> {
     let start = Instant::now();
-    let spacing = spacing(outline, diameter, cells_across, options.memory_limit)?;
-    let corners = corners_of(outline, spacing);
-    let offset = options
-        .grid_offset
-        .unwrap_or_else(|| offset_for(outline, &corners, spacing));
-    let lattice = Lattice::new(outline, spacing, offset);
+    let asked = spacing(outline, diameter, cells_across, options.memory_limit)?;
+    let corners = corners_of(outline, asked);
+    let fitted = match options.grid_offset {
+        None => align(outline, &corners, asked),
+        Some(offset) => Alignment {
+            spacing: asked,
+            offset,
+            misfit: 1.0,
+        },
+    };
+    let spacing = fitted.spacing;
+    let lattice = Lattice::new(outline, spacing, fitted.offset);
     let rows = LineCrossings::rows(&lattice);
     let columns = LineCrossings::columns(&lattice);
     let mut hierarchy =
@@ -241,7 +246,7 @@ fn solve_at(
     let grid = GridReport {
         spacing,
         fluid_nodes: mask.nodes(),
-        cells_across,
+        cells_across: diameter / spacing,
         inscribed_diameter: diameter,
     };
     let solution = Solution {
@@ -249,6 +254,7 @@ fn solve_at(
         mask: &mask,
         phi: &phi,
         corners,
+        misfit: fitted.misfit,
         answers,
     };
     let flow = assemble(outline, &solution, grid, seconds);
@@ -261,31 +267,14 @@ fn solve_at(
     })
 }
 
-/// Offset that puts the sharpest re-entrant corner on a node of the grids used for extrapolation.
-///
-/// The leading error of such a corner depends on where the lattice lines pass it; on a node it is the same
-/// on every grid and extrapolation removes it (measured: `tests/convergence.rs`).
-fn offset_for(outline: &Outline, corners: &[Vec<Corner>], spacing: f64) -> [f64; 2] {
-    let sharpest = corners
-        .iter()
-        .flatten()
-        .filter(|corner| corner.turning < 0.0)
-        .min_by(|a, b| a.turning.total_cmp(&b.turning));
-    let (Some(corner), Some((low, _))) = (sharpest, outline.bounds()) else {
-        return [0.0; 2];
-    };
-    [0, 1].map(|axis| {
-        let at = (corner.at[axis] - low[axis]) / spacing;
-        (at / CORNER_LINES).ceil() * CORNER_LINES - at
-    })
-}
-
 /// Everything the answers are read from.
 struct Solution<'a> {
     lattice: &'a Lattice,
     mask: &'a Mask,
     phi: &'a Field,
     corners: Vec<Vec<Corner>>,
+    /// How far re-entrant corners miss the nodes, 0 to 1.
+    misfit: f64,
     /// Finest first.
     answers: Vec<GridAnswer>,
 }
@@ -296,6 +285,7 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
         mask,
         phi,
         corners,
+        misfit,
         answers,
     } = solution;
     let geometry = geometry(outline);
@@ -306,7 +296,7 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
     let useful = answers.iter().take_while(|a| a.nodes >= 9).count().max(1);
     let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
         let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
-        let mut estimate = extrapolate(&values, exponent);
+        let mut estimate = extrapolate(&values, exponent, *misfit);
         if let (Some(fine), true) = (values.first(), small > 0) {
             // The coarser grids hardly see such islands, so the sequence says less than it seems to.
             estimate.error = estimate.error.max((estimate.value - fine).abs());

@@ -13,7 +13,7 @@ mod validity;
 mod wall_edges;
 
 pub use corners::{Corner, corners};
-pub use inscribed_circle::{Circle, largest_inscribed_circle};
+pub use inscribed_circle::{CELL_LIMIT, Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use nominal::{
     KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
 };

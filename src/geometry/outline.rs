@@ -75,7 +75,7 @@ impl Loop {
     }
 
     /// The loop with its direction of travel reversed, same first vertex.
-    fn reversed(mut self) -> Self {
+    pub(super) fn reversed(mut self) -> Self {
         if let Some(rest) = self.points.get_mut(1..) {
             rest.reverse();
         }

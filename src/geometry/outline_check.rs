@@ -13,7 +13,7 @@ use super::sweep::{SweepOutcome, sweep};
 use super::validity::{
     LISTED_PROBLEMS, Place, Problem, ProblemKind, Problems, Role, Severity, coincide, is_finite,
 };
-use super::wall_edges::{Contact, WallEdges, order, orientation, unit_scale};
+use super::wall_edges::{Contact, WallEdges, orientation, rounding, unit_scale};
 use std::cmp::Ordering;
 use std::collections::HashSet;
 use std::ops::ControlFlow;
@@ -431,16 +431,23 @@ impl Check<'_> {
     }
 }
 
-/// Whether all points lie on one line, decided exactly.
+/// Whether all points lie on one line, within [`rounding`].
 fn lie_on_one_line(points: &[Point], scale: f64) -> bool {
-    let mut scaled = points.iter().map(|p| [p[0] * scale, p[1] * scale]);
-    let Some(first) = scaled.next() else {
+    let scaled: Vec<Point> = points.iter().map(|p| p.map(|c| c * scale)).collect();
+    let Some(&origin) = scaled.first() else {
         return true;
     };
-    let Some(second) = scaled.find(|&p| order(p, first).is_ne()) else {
-        return true;
-    };
-    scaled.all(|p| orientation(first, second, p).is_eq())
+    let distance = |p: &Point| (p[0] - origin[0]).hypot(p[1] - origin[1]);
+    let farthest = scaled
+        .iter()
+        .copied()
+        .max_by(|a, b| distance(a).total_cmp(&distance(b)));
+    let end = farthest.unwrap_or(origin);
+    let (x, y) = (end[0] - origin[0], end[1] - origin[1]);
+    let limit = rounding(&scaled) * x.hypot(y);
+    scaled
+        .iter()
+        .all(|p| (x * (p[1] - origin[1]) - y * (p[0] - origin[0])).abs() <= limit)
 }
 
 fn ordered(a: usize, b: usize) -> (usize, usize) {

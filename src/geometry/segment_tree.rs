@@ -138,6 +138,11 @@ impl SegmentTree {
         self.segments.len()
     }
 
+    /// The box of all edges; `None` without edges.
+    pub fn bounds(&self) -> Option<Bounds> {
+        self.boxes.last().copied()
+    }
+
     /// Whether there are no edges.
     pub fn is_empty(&self) -> bool {
         self.segments.is_empty()

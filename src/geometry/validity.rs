@@ -65,9 +65,9 @@ pub enum ProblemKind {
     },
     /// A vertex repeats the one before it.
     DuplicateVertex,
-    /// All vertices of the loop lie on one line.
+    /// All vertices of the loop lie on one line, within rounding.
     ZeroArea,
-    /// The wall doubles back over itself at this vertex.
+    /// The wall doubles back over itself at this vertex, within rounding.
     Spike,
     /// Two edges of one loop cross.
     SelfCrossing,
@@ -124,8 +124,9 @@ pub struct Problems {
 impl Outline {
     /// Every problem of the outline, in any orientation of its loops.
     ///
-    /// A lumen inside an island of another lumen is no problem (a channel inside a core). Decisions are
-    /// exact, without tolerance. Costs O(n log n) for a sound outline and about as much again for every
+    /// A lumen inside an island of another lumen is no problem (a channel inside a core). Crossing,
+    /// touching and containment are decided exactly, without tolerance; spikes and zero area within 8
+    /// rounding steps of the coordinates. Costs O(n log n) for a sound outline and about as much again for every
     /// [`LISTED_PROBLEMS`] problems; hostile outlines are cut short and say so.
     ///
     /// # Examples

@@ -103,10 +103,16 @@ impl WallEdges {
         e == f || self.next(e) == f || self.next(f) == e
     }
 
-    /// Whether the edge before the start of edge `i` doubles back over it.
+    /// Whether the wall doubles back over itself at the start of edge `i`, within [`rounding`].
     pub(crate) fn is_spike(&self, i: usize) -> bool {
         let (u, [v, w]) = (self.start[self.previous(i)], self.ends(i));
-        orientation(u, v, w) == Ordering::Equal && order(u, v) == order(w, v)
+        let (a, b) = ([u[0] - v[0], u[1] - v[1]], [w[0] - v[0], w[1] - v[1]]);
+        if a[0] * b[0] + a[1] * b[1] <= 0.0 {
+            return false;
+        }
+        let longer = a[0].hypot(a[1]).max(b[0].hypot(b[1]));
+        let off_line = (a[0] * b[1] - a[1] * b[0]).abs() / longer;
+        off_line <= rounding(&[u, v, w]) || orientation(u, v, w) == Ordering::Equal
     }
 
     /// Whether two edges that are not neighbours have any point in common.
@@ -169,6 +175,13 @@ pub(crate) fn orientation(a: Point, b: Point, c: Point) -> Ordering {
     robust::orient2d(coordinate(a), coordinate(b), coordinate(c))
         .partial_cmp(&0.0)
         .unwrap_or(Ordering::Equal)
+}
+
+/// How far rounded coordinates may leave points off the line they were meant to lie on: 8 rounding
+/// steps of the largest coordinate.
+pub(crate) fn rounding(points: &[Point]) -> f64 {
+    let largest = points.iter().flatten().fold(0.0_f64, |m, c| m.max(c.abs()));
+    8.0 * f64::EPSILON * largest
 }
 
 /// The power of two that brings the largest of the magnitudes into `[1, 4)`; 1 for zero.

@@ -308,7 +308,21 @@ fn try_all(bytes: &[u8]) {
                 unit,
                 svg_scale,
                 allow_any_size: true,
+                keep_non_finite: false,
             };
+            let keep = ReadOptions {
+                keep_non_finite: true,
+                ..options.clone()
+            };
+            if let Ok(section) = section_from_bytes(bytes.to_vec(), "bytes", &keep) {
+                let loops = section.outline.loops().count();
+                let mut numbers = section.loop_numbers.clone();
+                numbers.sort_unstable();
+                assert!(numbers.into_iter().eq(0..loops));
+                let points = || section.outline.loops().flat_map(|w| &w.points);
+                let is_finite = points().flatten().all(|c| c.is_finite());
+                assert!(is_finite || section.outline.problems().has_errors());
+            }
             match section_from_bytes(bytes.to_vec(), "bytes", &options) {
                 Ok(section) => {
                     let points = || section.outline.loops().flat_map(|w| &w.points);

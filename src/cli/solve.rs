@@ -39,11 +39,17 @@ struct Request {
     shortcuts: bool,
     format: Format,
     output: Option<PathBuf>,
-    vtk: Option<PathBuf>,
-    legacy_vtk: bool,
+    vtk: Option<VtkRequest>,
     pictures: Vec<(PathBuf, PictureFormat)>,
     quiet: bool,
     deny_warnings: bool,
+}
+
+/// Field and wall files.
+struct VtkRequest {
+    prefix: PathBuf,
+    /// Also the old format.
+    is_legacy: bool,
 }
 
 enum Format {
@@ -75,6 +81,20 @@ fn quantity(
         .get_one::<String>(name)
         .map(|text| parse(text).map_err(|error| Failure::option(name, &error)))
         .transpose()
+}
+
+impl VtkRequest {
+    /// Where the field in the old format goes, when it is asked for.
+    fn legacy_path(&self) -> Option<PathBuf> {
+        self.is_legacy.then(|| legacy_vtk_path(&self.prefix))
+    }
+
+    /// All files.
+    fn paths(&self) -> impl Iterator<Item = PathBuf> {
+        vtk_paths(&self.prefix)
+            .into_iter()
+            .chain(self.legacy_path())
+    }
 }
 
 impl Request {
@@ -130,31 +150,25 @@ impl Request {
             shortcuts: matches.get_flag("shortcuts"),
             format,
             output: path(matches, "output"),
-            vtk: path(matches, "vtk"),
-            legacy_vtk: matches.get_flag("legacy-vtk"),
+            vtk: path(matches, "vtk").map(|prefix| VtkRequest {
+                prefix,
+                is_legacy: matches.get_flag("legacy-vtk"),
+            }),
             pictures,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
     }
 
-    /// Where the field in the old format goes, when it is asked for.
-    fn legacy_vtk_path(&self) -> Option<PathBuf> {
-        let prefix = self.vtk.as_ref().filter(|_| self.legacy_vtk)?;
-        Some(legacy_vtk_path(prefix))
-    }
-
     /// Outputs that cannot be written are found before the solve.
     fn check_targets(&self) -> Result<(), Failure> {
-        let vtk = self.vtk.iter().flat_map(|prefix| vtk_paths(prefix));
-        let legacy = self.legacy_vtk_path();
+        let vtk = self.vtk.iter().flat_map(VtkRequest::paths);
         let pictures = self.pictures.iter().map(|(path, _)| path.clone());
         let targets: Vec<PathBuf> = self
             .output
             .clone()
             .into_iter()
             .chain(vtk)
-            .chain(legacy)
             .chain(pictures)
             .collect();
         for (index, target) in targets.iter().enumerate() {
@@ -238,7 +252,7 @@ impl Request {
 
     fn deliver(&self, document: &SolveDocument, solved: &SolvedSection) -> Result<(), Failure> {
         let mut files: Vec<(PathBuf, Vec<u8>)> = Vec::new();
-        if let Some(prefix) = &self.vtk {
+        if let Some(request) = &self.vtk {
             let field = solved.dense_field(FIELD_NODES);
             if field.stride > 1 {
                 output::talk(&format!(
@@ -246,10 +260,10 @@ impl Request {
                     field.stride
                 ));
             }
-            let [vti, vtp] = vtk_paths(prefix);
+            let [vti, vtp] = vtk_paths(&request.prefix);
             files.push((vti, report::field_vti(document, &field)?.into_bytes()));
             files.push((vtp, report::wall_vtp(document)?.into_bytes()));
-            if let Some(path) = self.legacy_vtk_path() {
+            if let Some(path) = request.legacy_path() {
                 let text = report::field_legacy_vtk(document, &field)?;
                 files.push((path, text.into_bytes()));
             }

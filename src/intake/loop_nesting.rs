@@ -102,7 +102,7 @@ fn by_depth(numbered: Vec<Numbered>) -> Vec<Group> {
     let mut slot_of = vec![None; walls.len()];
     let mut lumens: Vec<Group> = Vec::new();
     let mut islands: Vec<(usize, Numbered)> = Vec::new();
-    for (index, wall) in numbers.into_iter().zip(walls).into_iter().enumerate() {
+    for (index, wall) in numbers.into_iter().zip(walls).enumerate() {
         let nest = nests.get(index).copied().unwrap_or_default();
         let around = nest.parent.filter(|parent| {
             nest.depth % 2 == 1 && nests.get(*parent).is_some_and(|p| p.depth % 2 == 0)

@@ -1,6 +1,7 @@
 //! Plane geometry of sections: outlines, their problems, nominal shapes. No files, no grid.
 
 mod inscribed_circle;
+mod linear_pieces;
 mod outline;
 mod outline_check;
 mod segment_tree;
@@ -9,7 +10,7 @@ mod transform;
 mod validity;
 mod wall_edges;
 
-pub use inscribed_circle::{CELL_LIMIT, Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
+pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use outline::{Loop, Lumen, Outline, Point};
 pub use segment_tree::{Bounds, NearestWall, SegmentTree};
 pub use validity::{LISTED_PROBLEMS, Place, Problem, ProblemKind, Problems, Role, Severity};

@@ -11,6 +11,8 @@
     reason = "a test stops at the first broken data file"
 )]
 
+#[path = "published/sections.rs"]
+mod sections;
 #[path = "published/closed_forms.rs"]
 mod closed_forms;
 #[path = "published/data.rs"]

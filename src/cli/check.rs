@@ -7,11 +7,11 @@ use clap::ArgMatches;
 use serde::Serialize;
 
 use crate::geometry::{Problem, Severity};
-use crate::intake::{Section, read_section};
+use crate::intake::Section;
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
-use super::input::read_options;
+use super::input::{read, read_options};
 use super::output;
 
 /// Machine form of a check.
@@ -59,7 +59,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
         .unwrap_or_default();
     let mut options = read_options(matches)?;
     options.keep_non_finite = true;
-    let section = read_section(&file, &options)?;
+    let section = read(&file, &options)?;
     let problems = section.outline.problems();
     let accepted = !problems.has_errors();
     let vertices = section.outline.loops().map(|l| l.points.len()).sum();

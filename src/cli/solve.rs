@@ -10,7 +10,7 @@ use crate::flow::{
 };
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_target,
+    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_targets,
     legacy_vtk_path, vtk_paths, write_files,
 };
 use crate::units::{self, UnitError};
@@ -83,6 +83,24 @@ fn quantity(
         .transpose()
 }
 
+/// Field and wall files, if they are asked for.
+fn vtk(matches: &ArgMatches) -> Result<Option<VtkRequest>, Failure> {
+    let Some(prefix) = path(matches, "vtk") else {
+        return Ok(None);
+    };
+    let ends_in_folder = prefix.to_string_lossy().ends_with(std::path::is_separator);
+    if ends_in_folder || prefix.file_name().is_none() || prefix == Path::new("-") {
+        return Err(Failure::usage(
+            format!("--vtk: `{}` does not end in a name", prefix.display()),
+            "give the begin of the file names, for example --vtk out/wafer",
+        ));
+    }
+    Ok(Some(VtkRequest {
+        prefix,
+        is_legacy: matches.get_flag("legacy-vtk"),
+    }))
+}
+
 impl VtkRequest {
     /// Where the field in the old format goes, when it is asked for.
     fn legacy_path(&self) -> Option<PathBuf> {
@@ -106,9 +124,9 @@ impl Request {
             .map(Drive::PressureDrop)
             .or(flow_rate.map(Drive::FlowRate));
         let fluid = fluid(matches)?;
-        positive("length", length, "for example `20 mm`")?;
-        positive("pressure-drop", drop, "for example `30 kPa`")?;
-        positive("flow-rate", flow_rate, "for example `5 uL/min`")?;
+        positive(matches, "length", length, "20mm")?;
+        positive(matches, "pressure-drop", drop, "30kPa")?;
+        positive(matches, "flow-rate", flow_rate, "5uL/min")?;
         if drive.is_some() && length.is_none() {
             return Err(Failure::usage(
                 "an operating point needs the length of the channel",
@@ -149,11 +167,8 @@ impl Request {
             drive,
             shortcuts: matches.get_flag("shortcuts"),
             format,
-            output: path(matches, "output"),
-            vtk: path(matches, "vtk").map(|prefix| VtkRequest {
-                prefix,
-                is_legacy: matches.get_flag("legacy-vtk"),
-            }),
+            output: output::target(matches),
+            vtk: vtk(matches)?,
             pictures,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
@@ -171,16 +186,8 @@ impl Request {
             .chain(vtk)
             .chain(pictures)
             .collect();
-        for (index, target) in targets.iter().enumerate() {
-            if targets[..index].contains(target) {
-                return Err(Failure::usage(
-                    format!("two outputs would go to {}", target.display()),
-                    "give each output its own name",
-                ));
-            }
-            check_target(target, &[&self.file])?;
-        }
-        Ok(())
+        let targets: Vec<&Path> = targets.iter().map(PathBuf::as_path).collect();
+        Ok(check_targets(&targets, &[&self.file])?)
     }
 
     fn answer(
@@ -316,12 +323,21 @@ impl Request {
     }
 }
 
-fn positive(name: &str, value: Option<f64>, example: &str) -> Result<(), Failure> {
+/// Refuses a value that is not above zero, as typed.
+fn positive(
+    matches: &ArgMatches,
+    name: &str,
+    value: Option<f64>,
+    example: &str,
+) -> Result<(), Failure> {
     match value {
-        Some(v) if !(v.is_finite() && v > 0.0) => Err(Failure::usage(
-            format!("--{name}: {v} (SI) is not a positive number"),
-            &format!("give a positive value, {example}"),
-        )),
+        Some(v) if !(v.is_finite() && v > 0.0) => {
+            let typed = matches.get_one::<String>(name).map_or("", String::as_str);
+            Err(Failure::usage(
+                format!("--{name}: `{typed}` is not above zero"),
+                &format!("give a positive value, for example --{name} {example}"),
+            ))
+        }
         _ => Ok(()),
     }
 }
@@ -332,9 +348,9 @@ fn fluid(matches: &ArgMatches) -> Result<Option<Fluid>, Failure> {
     let pressure = quantity(matches, "gas-pressure", units::parse_pressure)?;
     let viscosity = quantity(matches, "viscosity", units::parse_viscosity)?;
     let density = quantity(matches, "density", units::parse_density)?;
-    positive("gas-pressure", pressure, "for example `1 bar`")?;
-    positive("viscosity", viscosity, "for example `1.2 mPa s`")?;
-    positive("density", density, "for example `1050 kg/m^3`")?;
+    positive(matches, "gas-pressure", pressure, "1bar")?;
+    positive(matches, "viscosity", viscosity, "1.2mPa.s")?;
+    positive(matches, "density", density, "1050kg/m^3")?;
     let name = matches.get_one::<String>("fluid").map(String::as_str);
     if name.is_some() && (viscosity.is_some() || density.is_some()) {
         return Err(Failure::usage(

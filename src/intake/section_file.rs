@@ -83,6 +83,13 @@ pub(crate) fn read(
         (None, None) => return Err(ReadProblem::NoOutline.into()),
     };
     let bare = nominal.is_none();
+    let notes = match option {
+        Some(option) if nominal.is_some() => vec![format!(
+            "the unit `{}` was not needed: every dimension names its own",
+            option.word
+        )],
+        _ => Vec::new(),
+    };
     Ok(Content {
         name,
         outline: Some(outline),
@@ -91,7 +98,7 @@ pub(crate) fn read(
         extras,
         unit: unit.filter(|_| bare),
         factor: scale.filter(|_| bare).map(UnitScale::factor),
-        notes: Vec::new(),
+        notes,
     })
 }
 

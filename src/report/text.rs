@@ -59,7 +59,7 @@ pub(super) fn part(heading: &str, table: &Table) -> String {
 }
 
 fn title(document: &SolveDocument<'_>) -> String {
-    let mut out = format!("Section {}\n", numbers::one_line(document.section_name));
+    let mut out = format!("Section {}\n", numbers::title(document.section_name));
     if let Some(source) = document.source {
         let path = numbers::one_line(source.path);
         let mut table = Table::new(&[Align::Left, Align::Left]);

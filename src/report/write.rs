@@ -104,6 +104,25 @@ pub fn check_target(path: &Path, inputs: &[&Path]) -> Result<(), WriteError> {
     Ok(())
 }
 
+/// Checks targets of one run as [`check_target`] does, and that no two are the same file.
+///
+/// # Errors
+/// [`WriteError`] with the path and the reason.
+pub fn check_targets(paths: &[&Path], inputs: &[&Path]) -> Result<(), WriteError> {
+    let mut seen = Vec::new();
+    for path in paths {
+        if let Target::Plain(real) = resolve(path, inputs)? {
+            if seen.contains(&real) {
+                return Err(WriteError::NamedTwice {
+                    path: (*path).to_owned(),
+                });
+            }
+            seen.push(real);
+        }
+    }
+    paths.iter().try_for_each(|path| check_target(path, inputs))
+}
+
 /// Writes one file; see [`write_files`].
 ///
 /// # Errors
@@ -191,8 +210,12 @@ fn resolve(path: &Path, inputs: &[&Path]) -> Result<Target, WriteError> {
     Ok(Target::Plain(real))
 }
 
-/// A target that does not exist yet: its folder must.
+/// A target that does not exist yet: its folder must. A link to a file that does not exist is followed.
 fn new_target(path: &Path) -> Result<Target, WriteError> {
+    if let Ok(linked) = fs::read_link(path) {
+        let folder = path.parent().unwrap_or(Path::new(""));
+        return new_target(&folder.join(linked));
+    }
     let Some(name) = path.file_name() else {
         return Err(WriteError::IsFolder {
             path: path.to_owned(),

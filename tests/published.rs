@@ -5,6 +5,14 @@
 //! says of its own error. A source recalled from memory counts only where an independent value confirms it
 //! to the last digit; what is not confirmed sits in a quarantine file, and that is checked too.
 
+#![expect(
+    clippy::unwrap_used,
+    clippy::panic,
+    reason = "a test stops at the first broken data file"
+)]
+
+#[path = "published/sections.rs"]
+mod sections;
 #[path = "published/closed_forms.rs"]
 mod closed_forms;
 #[path = "published/data.rs"]
@@ -96,6 +104,22 @@ fn recalled_values_count_only_where_an_independent_value_confirms_them() {
                 check.label(),
                 check.value
             );
+        }
+    }
+}
+
+#[test]
+fn every_exception_made_for_a_row_is_explained_in_the_row() {
+    for file in all_files() {
+        for check in &file.checks {
+            let finer = check.cells_across.is_some_and(|cells| cells > 128.0);
+            assert_eq!(check.cells_across.is_some(), finer, "{}", check.label());
+            if check.below_grid || finer {
+                assert!(check.note.is_some(), "{}: no note", check.label());
+            }
+            let turns_inwards = check.kind == "circular_sector"
+                && check.parameter("angle") > std::f64::consts::PI * (1.0 + 1e-12);
+            assert_eq!(check.re_entrant, turns_inwards, "{}", check.label());
         }
     }
 }

@@ -3,6 +3,7 @@
 mod corners;
 pub mod curves;
 mod inscribed_circle;
+mod linear_pieces;
 pub mod nominal;
 mod outline;
 mod outline_check;
@@ -13,7 +14,7 @@ mod validity;
 mod wall_edges;
 
 pub use corners::{Corner, corners};
-pub use inscribed_circle::{CELL_LIMIT, Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
+pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use nominal::{
     KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
 };

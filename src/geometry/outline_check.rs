@@ -16,10 +16,10 @@ use super::validity::{
 use super::wall_edges::{Contact, WallEdges, orientation, rounding, unit_scale};
 use std::cmp::Ordering;
 use std::collections::HashSet;
-use std::ops::ControlFlow;
+use std::ops::{ControlFlow, Range};
 
 /// Most tree candidates visited for contacts and again for containment, so that hostile outlines end.
-const WORK_LIMIT: usize = 100_000_000;
+const WORK_LIMIT: usize = 50_000_000;
 /// Most vertices of a loop tried for one that lies on no other wall.
 const VERTICES_TRIED: usize = 64;
 
@@ -66,9 +66,8 @@ pub(super) fn check(outline: &Outline) -> Problems {
     if swept.set_aside.is_empty() {
         check.place_by_sweep(&swept);
     } else {
-        let tree = SegmentTree::new(&check.edges.segments());
-        check.contacts(&tree, &swept, &spikes);
-        check.place_by_rays(&tree);
+        check.contacts(&swept, &spikes);
+        check.place_by_rays();
     }
     let key = |p: &Problem| (p.place.loop_index, p.place.vertex, p.kind);
     check.found.list.sort_by_key(key);
@@ -180,7 +179,8 @@ impl Check<'_> {
     }
 
     /// Step 2: the contacts of the edges set aside with all edges.
-    fn contacts(&mut self, tree: &SegmentTree, swept: &SweepOutcome, spikes: &[usize]) {
+    fn contacts(&mut self, swept: &SweepOutcome, spikes: &[usize]) {
+        let tree = SegmentTree::from_segments(self.edges.segments());
         let mut rank = vec![usize::MAX; self.edges.len()];
         for (position, &edge) in swept.set_aside.iter().enumerate() {
             rank[edge] = position;
@@ -315,18 +315,18 @@ impl Check<'_> {
     }
 
     /// Step 3 with contacts: even-odd counting from a vertex of each loop that lies on no other wall.
-    fn place_by_rays(&mut self, tree: &SegmentTree) {
+    fn place_by_rays(&mut self) {
         if self.found.contacts_cut_off {
             self.found.containment_cut_off = true;
             return;
         }
-        let mut visited = 0;
+        let mut rays = Rays::new(&self.edges);
         for index in 0..self.loops.len() {
             let range = self.edges.ranges[index].clone();
             let step = (range.len() / VERTICES_TRIED).max(1);
             let mut placed = range.is_empty();
             for edge in range.step_by(step) {
-                if let Some(around) = self.loops_around(tree, edge, &mut visited) {
+                if let Some(around) = self.loops_around(&mut rays, edge) {
                     let vertex = self.edges.vertex[edge] as usize;
                     self.judge(index, vertex, &around);
                     placed = true;
@@ -334,56 +334,31 @@ impl Check<'_> {
                 }
             }
             self.found.containment_cut_off |= !placed;
-            if visited > WORK_LIMIT || self.misplaced_listed >= LISTED_PROBLEMS {
+            if rays.visited > WORK_LIMIT || self.misplaced_listed >= LISTED_PROBLEMS {
                 self.found.containment_cut_off = true;
                 break;
             }
         }
-        self.found.work += visited;
+        self.found.work += rays.visited;
     }
 
     /// The loops around the start of an edge, leaving out its own loop and those entangled with it;
     /// `None` when it lies on one of them or the work limit is reached.
-    fn loops_around(
-        &self,
-        tree: &SegmentTree,
-        edge: usize,
-        visited: &mut usize,
-    ) -> Option<Vec<usize>> {
+    fn loops_around(&self, rays: &mut Rays, edge: usize) -> Option<Vec<usize>> {
         let (p, own) = (self.edges.start[edge], self.edges.loop_of[edge] as usize);
-        let ray = Bounds {
-            low: p,
-            high: [f64::INFINITY, p[1]],
-        };
-        let mut crossed = Vec::new();
-        let flow = tree.visit_box(&ray, &mut |other| {
-            *visited += 1;
-            if *visited > WORK_LIMIT {
-                return ControlFlow::Break(());
-            }
-            let wall = self.edges.loop_of[other] as usize;
+        let mut around = Vec::new();
+        for wall in rays.candidates(p) {
             if wall == own || self.are_entangled(wall, own) {
-                return ControlFlow::Continue(());
+                continue;
             }
-            let [a, b] = self.edges.ends(other);
-            let side = orientation(a, b, p);
-            if side == Ordering::Equal && (a[0].min(b[0]) <= p[0]) {
-                return ControlFlow::Break(());
+            if rays.visited > WORK_LIMIT {
+                return None;
             }
-            let upwards = b[1] > p[1];
-            if (a[1] > p[1]) != upwards && (side == Ordering::Greater) == upwards {
-                crossed.push(wall);
+            if rays.is_inside(&self.edges, wall, p)? {
+                around.push(wall);
             }
-            ControlFlow::Continue(())
-        });
-        if flow.is_break() {
-            return None;
         }
-        crossed.sort_unstable();
-        let odd = crossed
-            .chunk_by(|a, b| a == b)
-            .filter(|run| run.len() % 2 == 1);
-        Some(odd.filter_map(|run| run.first().copied()).collect())
+        Some(around)
     }
 
     fn are_entangled(&self, a: usize, b: usize) -> bool {
@@ -428,6 +403,72 @@ impl Check<'_> {
                 other: Some(self.place(wall, 0)),
             });
         }
+    }
+}
+
+/// Even-odd counting along horizontal rays, one tree a loop, made when it is first asked.
+struct Rays {
+    /// The box of each loop, as the segment from its lower left to its upper right corner.
+    boxes: SegmentTree,
+    trees: Vec<Option<SegmentTree>>,
+    visited: usize,
+}
+
+impl Rays {
+    fn new(edges: &WallEdges) -> Self {
+        let diagonal = |range: &Range<usize>| {
+            let points = &edges.start[range.clone()];
+            let first = points.first().copied().unwrap_or([f64::NAN; 2]);
+            let bounds = points
+                .iter()
+                .fold(Bounds::of(first, first), |b, &p| b.union(Bounds::of(p, p)));
+            [bounds.low, bounds.high]
+        };
+        Self {
+            boxes: SegmentTree::from_segments(edges.ranges.iter().map(diagonal).collect()),
+            trees: vec![None; edges.ranges.len()],
+            visited: 0,
+        }
+    }
+
+    /// Loops whose box holds the point.
+    fn candidates(&mut self, p: Point) -> Vec<usize> {
+        let mut found = Vec::new();
+        let flow = self.boxes.visit_box(&Bounds::of(p, p), &mut |wall| {
+            found.push(wall);
+            ControlFlow::Continue(())
+        });
+        debug_assert!(flow.is_continue());
+        self.visited += found.len();
+        found
+    }
+
+    /// Whether the point lies inside the loop; `None` when it lies on its wall.
+    fn is_inside(&mut self, edges: &WallEdges, wall: usize, p: Point) -> Option<bool> {
+        let range = edges.ranges[wall].clone();
+        let tree = self.trees[wall].get_or_insert_with(|| {
+            SegmentTree::from_segments(range.clone().map(|i| edges.ends(i)).collect())
+        });
+        let ray = Bounds {
+            low: p,
+            high: [f64::INFINITY, p[1]],
+        };
+        let (mut is_odd, mut visited) = (false, 0);
+        let flow = tree.visit_box(&ray, &mut |edge| {
+            visited += 1;
+            let [a, b] = edges.ends(range.start + edge);
+            let side = orientation(a, b, p);
+            if side == Ordering::Equal && a[0].min(b[0]) <= p[0] {
+                return ControlFlow::Break(());
+            }
+            let upwards = b[1] > p[1];
+            if (a[1] > p[1]) != upwards {
+                is_odd ^= (side == Ordering::Greater) == upwards;
+            }
+            ControlFlow::Continue(())
+        });
+        self.visited += visited;
+        flow.is_continue().then_some(is_odd)
     }
 }
 

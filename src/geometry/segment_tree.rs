@@ -1,10 +1,12 @@
 //! A packed tree of bounding boxes over wall edges: the nearest wall, and the edges in a box.
 //!
-//! The edges are put in the order of their centres along a Hilbert curve and grouped by eight, level by
-//! level; the boxes of all levels lie in one flat list without pointers. Building costs O(n log n).
+//! A leaf holds up to eight edges that follow each other along a wall. The leaves are put in the order of
+//! their centres along a Hilbert curve and grouped by eight, level by level; the boxes of all levels lie
+//! in one flat list without pointers. Building costs O(n log n).
 //! Source of the packing: Kamel and Faloutsos (1993), On packing R-trees, CIKM 93 (cited from memory).
 
 use super::outline::{Outline, Point};
+use std::cmp::Ordering;
 use std::ops::ControlFlow;
 
 /// Children of a node and edges of a leaf.
@@ -38,7 +40,8 @@ pub struct NearestWall {
 #[derive(Debug, Clone)]
 pub struct SegmentTree {
     segments: Vec<[Point; 2]>,
-    original: Vec<u32>,
+    /// First edge and number of edges of each leaf.
+    leaves: Vec<(u32, u8)>,
     boxes: Vec<Bounds>,
     /// Start of each level in `boxes`, leaves first, and the end of the list.
     levels: Vec<usize>,
@@ -59,7 +62,7 @@ impl Bounds {
         }
     }
 
-    fn union(self, other: Self) -> Self {
+    pub(crate) fn union(self, other: Self) -> Self {
         Self {
             low: [self.low[0].min(other.low[0]), self.low[1].min(other.low[1])],
             high: [
@@ -89,36 +92,42 @@ struct Best {
     squared: f64,
     /// The search stops at a wall point at most this far.
     enough: f64,
-    slot: usize,
+    edge: usize,
     at: Point,
     along: f64,
+    /// Boxes and edges looked at.
+    work: usize,
 }
 
 impl SegmentTree {
     /// A tree over the given edges, metres.
     pub fn new(segments: &[[Point; 2]]) -> Self {
-        let whole = segments
-            .iter()
-            .fold(Bounds::EMPTY, |b, s| b.union(Bounds::of(s[0], s[1])));
-        let side = (whole.high[0] - whole.low[0]).max(whole.high[1] - whole.low[1]);
-        let to_cell = f64::from((1_u32 << HILBERT_BITS) - 1) / side.max(f64::MIN_POSITIVE);
-        let mut keys: Vec<u64> = segments
-            .iter()
-            .enumerate()
-            .map(|(index, s)| {
-                let cell = |axis: usize| {
-                    ((0.5 * (s[0][axis] + s[1][axis]) - whole.low[axis]) * to_cell) as u32
-                };
-                u64::from(hilbert_index(cell(0), cell(1))) << 32 | index as u64
-            })
-            .collect();
-        keys.sort_unstable();
-        let original: Vec<u32> = keys.iter().map(|&key| key as u32).collect();
-        let sorted: Vec<[Point; 2]> = original.iter().map(|&i| segments[i as usize]).collect();
-        let (boxes, levels) = pack(&sorted);
+        Self::from_segments(segments.to_vec())
+    }
+
+    /// The same without a copy.
+    pub(crate) fn from_segments(segments: Vec<[Point; 2]>) -> Self {
+        let (mut leaves, mut leaf_boxes) = (Vec::new(), Vec::new());
+        for (index, &[a, b]) in segments.iter().enumerate() {
+            let bounds = Bounds::of(a, b);
+            let follows =
+                index > 0 && segments[index - 1][1].partial_cmp(&a) == Some(Ordering::Equal);
+            match (leaves.last_mut(), leaf_boxes.last_mut()) {
+                (Some((_, count)), Some(whole)) if follows && usize::from(*count) < FAN => {
+                    *count += 1;
+                    *whole = bounds.union(*whole);
+                }
+                _ => {
+                    leaves.push((index as u32, 1_u8));
+                    leaf_boxes.push(bounds);
+                }
+            }
+        }
+        let sequence = hilbert_order(&leaf_boxes);
+        let (boxes, levels) = pack(sequence.iter().map(|&i| leaf_boxes[i]).collect());
         Self {
-            segments: sorted,
-            original,
+            segments,
+            leaves: sequence.iter().map(|&i| leaves[i]).collect(),
             boxes,
             levels,
         }
@@ -130,7 +139,7 @@ impl SegmentTree {
             .loops()
             .flat_map(|wall| wall.edges().map(|(a, b)| [a, b]))
             .collect();
-        Self::new(&segments)
+        Self::from_segments(segments)
     }
 
     /// Number of edges.
@@ -159,26 +168,33 @@ impl SegmentTree {
     /// assert_eq!(nearest.distance, 1.0);
     /// ```
     pub fn nearest(&self, p: Point) -> Option<NearestWall> {
-        self.nearest_or_within(p, -1.0)
+        self.nearest_or_within(p, -1.0, &mut 0)
     }
 
-    /// The nearest wall point, or the first one met that is at most `enough` away.
-    pub fn nearest_or_within(&self, p: Point, enough: f64) -> Option<NearestWall> {
+    /// The nearest wall point, or the first one met that is at most `enough` away; adds the number of
+    /// boxes and edges looked at to `work`.
+    pub(crate) fn nearest_or_within(
+        &self,
+        p: Point,
+        enough: f64,
+        work: &mut usize,
+    ) -> Option<NearestWall> {
         let mut best = Best {
             squared: f64::INFINITY,
             enough: if enough > 0.0 { enough * enough } else { -1.0 },
-            slot: usize::MAX,
+            edge: usize::MAX,
             at: p,
             along: 0.0,
+            work: 0,
         };
         if !self.is_empty() {
             self.descend(self.levels.len() - 2, 0, p, &mut best);
         }
-        let &edge = self.original.get(best.slot)?;
-        Some(NearestWall {
+        *work += best.work;
+        (best.edge != usize::MAX).then(|| NearestWall {
             distance: (p[0] - best.at[0]).hypot(p[1] - best.at[1]),
             at: best.at,
-            edge: edge as usize,
+            edge: best.edge,
             along: best.along,
         })
     }
@@ -213,7 +229,7 @@ impl SegmentTree {
             } else {
                 let [a, b] = self.segments[child];
                 if Bounds::of(a, b).meets(bounds) {
-                    visit(self.original[child] as usize)?;
+                    visit(child)?;
                 }
             }
         }
@@ -222,27 +238,23 @@ impl SegmentTree {
 
     /// Children of a node: nodes of the level below, or edges below a leaf.
     fn children(&self, level: usize, node: usize) -> std::ops::Range<usize> {
-        let below = if level == 0 {
-            self.segments.len()
-        } else {
-            self.levels[level] - self.levels[level - 1]
-        };
+        if level == 0 {
+            let (first, count) = self.leaves[node];
+            return first as usize..first as usize + usize::from(count);
+        }
+        let below = self.levels[level] - self.levels[level - 1];
         node * FAN..(node * FAN + FAN).min(below)
     }
 
     fn descend(&self, level: usize, node: usize, p: Point, best: &mut Best) {
+        best.work += FAN;
         if level == 0 {
-            for slot in self.children(0, node) {
-                let (at, along) = closest_on(self.segments[slot], p);
+            for edge in self.children(0, node) {
+                let (at, along) = closest_on(self.segments[edge], p);
                 let squared = (at[0] - p[0]).powi(2) + (at[1] - p[1]).powi(2);
                 if squared < best.squared {
-                    *best = Best {
-                        squared,
-                        enough: best.enough,
-                        slot,
-                        at,
-                        along,
-                    };
+                    (best.squared, best.edge) = (squared, edge);
+                    (best.at, best.along) = (at, along);
                 }
             }
             return;
@@ -270,15 +282,22 @@ impl SegmentTree {
     }
 }
 
+/// The order of boxes along the Hilbert curve through their centres.
+fn hilbert_order(boxes: &[Bounds]) -> Vec<usize> {
+    let whole = boxes.iter().fold(Bounds::EMPTY, |b, &c| b.union(c));
+    let side = (whole.high[0] - whole.low[0]).max(whole.high[1] - whole.low[1]);
+    let to_cell = f64::from((1_u32 << HILBERT_BITS) - 1) / side.max(f64::MIN_POSITIVE);
+    let key = |(index, b): (usize, &Bounds)| {
+        let cell = |k: usize| ((0.5 * (b.low[k] + b.high[k]) - whole.low[k]) * to_cell) as u32;
+        (hilbert_index(cell(0), cell(1)), index)
+    };
+    let mut keys: Vec<(u32, usize)> = boxes.iter().enumerate().map(key).collect();
+    keys.sort_unstable();
+    keys.into_iter().map(|(_, index)| index).collect()
+}
+
 /// Boxes of all levels, leaves first, and where each level starts.
-fn pack(segments: &[[Point; 2]]) -> (Vec<Bounds>, Vec<usize>) {
-    let mut boxes: Vec<Bounds> = segments
-        .chunks(FAN)
-        .map(|leaf| {
-            leaf.iter()
-                .fold(Bounds::EMPTY, |b, s| b.union(Bounds::of(s[0], s[1])))
-        })
-        .collect();
+fn pack(mut boxes: Vec<Bounds>) -> (Vec<Bounds>, Vec<usize>) {
     let mut levels = vec![0, boxes.len()];
     while let [.., from, to] = levels[..]
         && to - from > 1

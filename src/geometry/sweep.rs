@@ -10,6 +10,7 @@
 
 use super::outline::Point;
 use super::wall_edges::{WallEdges, order, orientation};
+use rayon::slice::ParallelSliceMut;
 use std::cmp::Ordering;
 use std::collections::BTreeSet;
 use std::ops::Bound::{Excluded, Unbounded};
@@ -45,7 +46,7 @@ struct Sweep<'a> {
 /// Sweeps over all edges; the edges in `aside` take no part.
 pub(crate) fn sweep(edges: &WallEdges, aside: &[usize]) -> SweepOutcome {
     let mut vertices: Vec<(Point, u32)> = edges.start.iter().copied().zip(0..).collect();
-    vertices.sort_unstable_by(|a, b| order(a.0, b.0).then(a.1.cmp(&b.1)));
+    vertices.par_sort_unstable_by(|a, b| order(a.0, b.0).then(a.1.cmp(&b.1)));
     let mut state = Sweep {
         edges,
         line: BTreeSet::new(),

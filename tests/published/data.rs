@@ -67,6 +67,11 @@ pub(crate) struct Check {
     /// Whether a corner of the section turns inwards.
     #[serde(default)]
     pub(crate) re_entrant: bool,
+    /// Whether the section has a part far below any grid: the solver has to warn, its value is not compared.
+    #[serde(default)]
+    pub(crate) below_grid: bool,
+    /// Cells across that this section needs for the allowance, when more than the usual 128.
+    pub(crate) cells_across: Option<f64>,
     /// Spread, for a measured value.
     pub(crate) measured: Option<Measured>,
     pub(crate) note: Option<String>,

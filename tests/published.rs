@@ -11,14 +11,14 @@
     reason = "a test stops at the first broken data file"
 )]
 
-#[path = "published/sections.rs"]
-mod sections;
 #[path = "published/closed_forms.rs"]
 mod closed_forms;
 #[path = "published/data.rs"]
 mod data;
 #[path = "published/fluids.rs"]
 mod fluids;
+#[path = "published/sections.rs"]
+mod sections;
 
 use data::{Seen, all_files};
 

@@ -49,7 +49,7 @@ const LONGER_FILES: [(&str, usize); 1] = [("grid/mask.rs", 620)];
 
 /// Words of code that reads files, and of code that writes them.
 const READING: [&str; 6] = [
-    "fs::read",
+    "fs::read(",
     "File::open",
     "read_to_end",
     "read_to_string",

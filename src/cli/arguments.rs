@@ -48,8 +48,16 @@ fn common(command: Command) -> Command {
         .arg(flag("json", "Print one JSON object, SI units").help_heading("Output"))
         .arg(flag("quiet", "Say nothing on standard error but errors").short('q'))
         .arg(
-            option("threads", "N", "Threads to use [default: all cores]")
-                .value_parser(value_parser!(u16).range(1..)),
+            option(
+                "threads",
+                "N",
+                "Threads to use, 1 to 256 [default: all cores]",
+            )
+            .value_parser(value_parser!(u16).range(1..=256))
+            .long_help(
+                "Threads to use, 1 to 256. The results are the same with any number. Default: all \
+                     cores. Example: --threads 2",
+            ),
         )
 }
 
@@ -83,10 +91,19 @@ fn input(command: Command) -> Command {
         .arg(
             option("scale", "LENGTH", "Length of one unit of a drawing (SVG)")
                 .help_heading(heading)
-                .long_help("Length of one unit of an SVG drawing. Example: --scale \"1 um\""),
+                .conflicts_with("unit")
+                .long_help(
+                    "Length of one user unit of an SVG drawing. Default: from the width, height and \
+                     viewBox of the drawing where they give it. Example: --scale \"1 um\"",
+                ),
         )
         .arg(
-            flag("allow-any-size", "Accept sections outside 10 nm to 50 mm").help_heading(heading),
+            flag("allow-any-size", "Accept sections outside 10 nm to 50 mm")
+                .long_help(
+                    "Accept sections whose larger side is outside 10 nm to 50 mm, which are otherwise \
+                     taken for a wrong unit. Example: --allow-any-size",
+                )
+                .help_heading(heading),
         )
 }
 
@@ -122,6 +139,10 @@ fn solve() -> Command {
                 .value_name("FILE")
                 .value_parser(value_parser!(std::path::PathBuf))
                 .help("Write the result to FILE instead")
+                .long_help(
+                    "Write the result to FILE; - is standard output, the default. FILE appears \
+                     only when it is complete. Example: -o wafer.json",
+                )
                 .help_heading(heading),
         )
         .arg(
@@ -130,6 +151,19 @@ fn solve() -> Command {
                 .value_name("PREFIX")
                 .value_parser(value_parser!(std::path::PathBuf))
                 .help("Write PREFIX.vti (field) and PREFIX.vtp (wall)")
+                .long_help(
+                    "Write the velocity field as PREFIX.vti and the wall with its shear as PREFIX.vtp, \
+                     for viewers; coordinates in m. Example: --vtk out/wafer",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            flag("legacy-vtk", "With --vtk: also PREFIX.vtk in the old format")
+                .requires("vtk")
+                .long_help(
+                    "Also write the field as PREFIX.vtk in the old text format, for readers without \
+                     .vti. Example: --vtk wafer --legacy-vtk",
+                )
                 .help_heading(heading),
         )
         .arg(
@@ -139,6 +173,11 @@ fn solve() -> Command {
                 .action(ArgAction::Append)
                 .value_parser(value_parser!(std::path::PathBuf))
                 .help("Write a picture of the velocity, .png or .svg")
+                .long_help(
+                    "Write a picture of the velocity with contour lines, wall, scale bar and colour \
+                     bar; the ending says .png or .svg. May be given more than once. Example: \
+                     --picture wafer.png",
+                )
                 .help_heading(heading),
         )
         .arg(flag("verbose", "Show the grids and the solver's course").short('v').help_heading(heading))
@@ -159,6 +198,10 @@ fn fluid_options(command: Command) -> Command {
         .arg(
             option("fluid", "NAME", "water or air (needs --temperature)")
                 .value_parser(["water", "air"])
+                .long_help(
+                    "Fluid by name: water (IAPWS SR6-08) or air (dry, Sutherland's formula); both need \
+                     --temperature. Example: --fluid water",
+                )
                 .help_heading(fluid),
         )
         .arg(entry(
@@ -179,26 +222,26 @@ fn fluid_options(command: Command) -> Command {
             "viscosity",
             "MU",
             "Viscosity of another fluid, such as 1.2mPa.s",
-            "Dynamic viscosity of a Newtonian fluid, with its unit. Example: --viscosity 1.2mPa.s",
+            "Dynamic viscosity of a Newtonian fluid, above 0, with its unit. Example: --viscosity 1.2mPa.s",
         ))
         .arg(entry(
             "density",
             "RHO",
             "Density of another fluid, such as 1050kg/m^3",
-            "Density, with its unit; needed for the Reynolds number. Example: --density 1050kg/m^3",
+            "Density, above 0, with its unit; needed for the Reynolds number. Example: --density 1050kg/m^3",
         ))
         .arg(entry(
             "length",
             "L",
             "Length of the channel, such as 20mm",
-            "Length of the channel, with its unit. Example: --length 20mm",
+            "Length of the channel, above 0, with its unit. Example: --length 20mm",
         ))
         .arg(
             entry(
                 "pressure-drop",
                 "DP",
                 "Pressure drop over the length, such as 30kPa",
-                "Pressure drop over the length, with its unit. Example: --pressure-drop 30kPa",
+                "Pressure drop over the length, above 0, with its unit. Not together with --flow-rate. Example: --pressure-drop 30kPa",
             )
             .conflicts_with("flow-rate"),
         )
@@ -206,7 +249,7 @@ fn fluid_options(command: Command) -> Command {
             "flow-rate",
             "Q",
             "Flow rate, such as 5uL/min",
-            "Volume flow rate, with its unit. Example: --flow-rate 5uL/min",
+            "Volume flow rate, above 0, with its unit. Not together with --pressure-drop. Example: --flow-rate 5uL/min",
         ))
 }
 
@@ -230,7 +273,10 @@ fn draw() -> Command {
         draw = draw.subcommand(
             common(Command::new(kind.name).about(kind.summary))
                 .args(parameters.map(parameter))
-                .arg(option("name", "TEXT", "Name of the section"))
+                .arg(
+                    option("name", "TEXT", "Name of the section")
+                        .long_help("Name of the section, for outputs. Example: --name \"inlet\""),
+                )
                 .arg(flag(
                     "points",
                     "Write the outline as points, not as parameters",
@@ -241,7 +287,11 @@ fn draw() -> Command {
                         .long("output")
                         .value_name("FILE")
                         .value_parser(value_parser!(std::path::PathBuf))
-                        .help("Write to FILE (.csv: outline in um)"),
+                        .help("Write to FILE (.csv: outline in um)")
+                        .long_help(
+                            "Write to FILE: a section file, or with the ending .csv the outline in \
+                             columns in um. - is standard output, the default. Example: -o groove.toml",
+                        ),
                 ),
         );
     }

@@ -7,11 +7,11 @@ use clap::ArgMatches;
 use serde::Serialize;
 
 use crate::geometry::{Problem, Severity};
-use crate::intake::read_section;
+use crate::intake::Section;
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
-use super::input::read_options;
+use super::input::{read, read_options};
 use super::output;
 
 /// Machine form of a check.
@@ -32,6 +32,7 @@ struct SourceRecord<'a> {
     path: &'a str,
     sha256: &'a str,
     kind: &'a str,
+    notes: &'a [String],
 }
 
 #[derive(Serialize)]
@@ -42,7 +43,7 @@ struct ProblemRecord {
     wall: String,
     /// Loops and vertices counted from 0, in the order of the file.
     #[serde(rename = "loop")]
-    loop_index: usize,
+    loop_number: usize,
     vertex: usize,
     /// `[x, y]` in metres; null where a coordinate is not finite.
     at: Option<[f64; 2]>,
@@ -56,8 +57,9 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
         .get_one::<PathBuf>("file")
         .cloned()
         .unwrap_or_default();
-    let options = read_options(matches)?;
-    let section = read_section(&file, &options)?;
+    let mut options = read_options(matches)?;
+    options.keep_non_finite = true;
+    let section = read(&file, &options)?;
     let problems = section.outline.problems();
     let accepted = !problems.has_errors();
     let vertices = section.outline.loops().map(|l| l.points.len()).sum();
@@ -69,10 +71,15 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
                 path: &section.provenance.path,
                 sha256: &section.provenance.sha256,
                 kind: section.provenance.kind.word(),
+                notes: &section.provenance.notes,
             },
             vertices,
             accepted,
-            problems: problems.list.iter().map(record).collect(),
+            problems: problems
+                .list
+                .iter()
+                .map(|problem| record(problem, &section))
+                .collect(),
             notes: problems.notes(),
         };
         let text = serde_json::to_string_pretty(&record).map_err(|error| {
@@ -90,7 +97,12 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
                 Severity::Error => "problem",
                 Severity::Harmless => "harmless",
             };
-            let _ = writeln!(text, "{word}: {problem}\n  help: {}", problem.remedy());
+            let _ = writeln!(
+                text,
+                "{word}: {problem}{}\n  help: {}",
+                file_loop(problem, &section),
+                problem.remedy()
+            );
         }
         for note in problems.notes() {
             let _ = writeln!(text, "{note}");
@@ -116,7 +128,21 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     })
 }
 
-fn record(problem: &Problem) -> ProblemRecord {
+/// Number in the file, from 0, of the loop of a problem.
+fn loop_number(problem: &Problem, section: &Section) -> usize {
+    let index = problem.place.loop_index;
+    section.loop_numbers.get(index).copied().unwrap_or(index)
+}
+
+/// Which loop of the file a problem is in, where there are several.
+fn file_loop(problem: &Problem, section: &Section) -> String {
+    if section.loop_numbers.len() < 2 {
+        return String::new();
+    }
+    format!(" (loop {} of the file)", loop_number(problem, section) + 1)
+}
+
+fn record(problem: &Problem, section: &Section) -> ProblemRecord {
     let place = problem.place;
     ProblemRecord {
         kind: problem.code(),
@@ -125,7 +151,7 @@ fn record(problem: &Problem) -> ProblemRecord {
             Severity::Harmless => "harmless",
         },
         wall: place.role.to_string(),
-        loop_index: place.loop_index,
+        loop_number: loop_number(problem, section),
         vertex: place.vertex,
         at: place.at.iter().all(|x| x.is_finite()).then_some(place.at),
         message: problem.to_string(),

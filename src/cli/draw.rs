@@ -2,11 +2,12 @@
 
 use std::collections::BTreeMap;
 use std::fmt::Write as _;
-use std::path::PathBuf;
 
 use clap::ArgMatches;
 
-use crate::geometry::{NominalSpec, Outline, ParameterInfo, Quantity, SpecValue, kinds, modifiers};
+use crate::geometry::{
+    NominalError, NominalSpec, Outline, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
+};
 use crate::intake::{Extras, to_toml};
 use crate::report::{check_target, write_file};
 
@@ -22,12 +23,13 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
         ));
     };
     super::set_threads(matches)?;
-    let target = matches.get_one::<PathBuf>("output");
+    let target = output::target(matches);
+    let target = target.as_deref();
     if let Some(path) = target {
         check_target(path, &[])?;
     }
-    let spec = spec(kind, matches)?;
-    let outline = spec.outline()?;
+    let spec = spec(kind, matches).map_err(failure)?;
+    let outline = spec.outline().map_err(failure)?;
     let name = matches.get_one::<String>("name").cloned();
     let is_table = target
         .and_then(|path| path.extension())
@@ -63,7 +65,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
 }
 
 /// The typed options as a nominal section.
-fn spec(kind: &str, matches: &ArgMatches) -> Result<NominalSpec, Failure> {
+fn spec(kind: &str, matches: &ArgMatches) -> Result<NominalSpec, NominalError> {
     let parameters = kinds()
         .iter()
         .find(|info| info.name == kind)
@@ -85,21 +87,56 @@ fn spec(kind: &str, matches: &ArgMatches) -> Result<NominalSpec, Failure> {
     })
 }
 
-fn value(info: &ParameterInfo, typed: &[&String]) -> Result<Option<SpecValue>, Failure> {
+fn value(info: &ParameterInfo, typed: &[&String]) -> Result<Option<SpecValue>, NominalError> {
     let Some(first) = typed.first() else {
         return Ok(None);
     };
-    let nested = |text: &str| Ok::<_, Failure>(SpecValue::Spec(text.parse::<NominalSpec>()?));
     Ok(Some(match info.quantity {
         Quantity::Spec => nested(first)?,
-        Quantity::SpecList => SpecValue::List(
-            typed
-                .iter()
-                .map(|text| nested(text))
-                .collect::<Result<_, _>>()?,
-        ),
+        Quantity::SpecList => {
+            let mut members = Vec::new();
+            for text in typed {
+                match nested(text)? {
+                    SpecValue::List(list) => members.extend(list),
+                    one => members.push(one),
+                }
+            }
+            SpecValue::List(members)
+        }
         _ => SpecValue::Text((*first).clone()),
     }))
+}
+
+/// A section with or without its brackets, or a list of sections.
+fn nested(text: &str) -> Result<SpecValue, NominalError> {
+    if text.trim_start().starts_with(['(', '[']) {
+        text.parse()
+    } else {
+        text.parse().map(SpecValue::Spec)
+    }
+}
+
+/// An error of the section, its advice written as an option.
+fn failure(error: NominalError) -> Failure {
+    match &error {
+        NominalError::Missing {
+            parameter, example, ..
+        }
+        | NominalError::BareNumber {
+            parameter, example, ..
+        }
+        | NominalError::Unit {
+            parameter, example, ..
+        }
+        | NominalError::NotReadable {
+            parameter, example, ..
+        } => {
+            let option = parameter.replace('_', "-");
+            let help = format!("write for example --{option} \"{example}\"");
+            Failure::usage(&error, &help)
+        }
+        _ => error.into(),
+    }
 }
 
 /// Outline in columns of text, micrometres, one loop after the other.

@@ -84,7 +84,11 @@ impl From<OperatingPointError> for Failure {
 
 impl From<WriteError> for Failure {
     fn from(error: WriteError) -> Self {
-        Self::new(ExitStatus::Unreadable, &error, "")
+        let status = match error {
+            WriteError::NamedTwice { .. } => ExitStatus::Usage,
+            _ => ExitStatus::Unreadable,
+        };
+        Self::new(status, &error, "")
     }
 }
 

@@ -55,12 +55,28 @@ pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure>
     Ok(options)
 }
 
+/// Reads a file; a scale for drawings must be of use.
+pub(super) fn read(path: &Path, options: &ReadOptions) -> Result<Section, Failure> {
+    let section = read_section(path, options)?;
+    let kind = section.provenance.kind;
+    if options.svg_scale.is_some() && kind != SectionKind::OutlineSvg {
+        return Err(Failure::usage(
+            format!(
+                "--scale is for drawings, and {} was read as `{kind}`",
+                section.provenance.path
+            ),
+            "leave it out; --unit names the unit of coordinates without one",
+        ));
+    }
+    Ok(section)
+}
+
 /// Reads a file and refuses an outline with problems.
 pub(super) fn checked_section(
     path: &Path,
     options: &ReadOptions,
 ) -> Result<CheckedSection, Failure> {
-    let section = read_section(path, options)?;
+    let section = read(path, options)?;
     let problems = section.outline.problems();
     if problems.has_errors() {
         let errors: Vec<_> = problems.errors().collect();

@@ -1,6 +1,9 @@
 //! The two streams: results on standard output, talk on standard error.
 
 use std::io::{ErrorKind, Write};
+use std::path::{Path, PathBuf};
+
+use clap::ArgMatches;
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
@@ -19,8 +22,31 @@ pub(super) fn print(text: &str) -> Result<(), Failure> {
     }
 }
 
+/// The file named by `-o`; `None` for standard output, which `-` also means.
+pub(super) fn target(matches: &ArgMatches) -> Option<PathBuf> {
+    matches
+        .get_one::<PathBuf>("output")
+        .filter(|path| path.as_path() != Path::new("-"))
+        .cloned()
+}
+
+/// Longest line said, characters: what a file holds may be quoted in it.
+const LONGEST_LINE: usize = 1000;
+
 /// Says something to the person; nobody listening is no error.
+///
+/// Control characters in what is quoted become blanks, and very long lines are cut.
 pub(super) fn talk(text: &str) {
     let mut err = std::io::stderr().lock();
-    let _ = writeln!(err, "{text}");
+    for line in text.trim_end().lines() {
+        let mut plain: String = line
+            .chars()
+            .take(LONGEST_LINE)
+            .map(|c| if c.is_control() { ' ' } else { c })
+            .collect();
+        if line.chars().nth(LONGEST_LINE).is_some() {
+            plain.push_str(" ... (cut)");
+        }
+        let _ = writeln!(err, "{plain}");
+    }
 }

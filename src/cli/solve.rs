@@ -10,8 +10,8 @@ use crate::flow::{
 };
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_target,
-    vtk_paths, write_files,
+    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_targets,
+    legacy_vtk_path, vtk_paths, write_files,
 };
 use crate::units::{self, UnitError};
 use crate::warning::Code;
@@ -39,10 +39,17 @@ struct Request {
     shortcuts: bool,
     format: Format,
     output: Option<PathBuf>,
-    vtk: Option<PathBuf>,
+    vtk: Option<VtkRequest>,
     pictures: Vec<(PathBuf, PictureFormat)>,
     quiet: bool,
     deny_warnings: bool,
+}
+
+/// Field and wall files.
+struct VtkRequest {
+    prefix: PathBuf,
+    /// Also the old format.
+    is_legacy: bool,
 }
 
 enum Format {
@@ -76,6 +83,38 @@ fn quantity(
         .transpose()
 }
 
+/// Field and wall files, if they are asked for.
+fn vtk(matches: &ArgMatches) -> Result<Option<VtkRequest>, Failure> {
+    let Some(prefix) = path(matches, "vtk") else {
+        return Ok(None);
+    };
+    let ends_in_folder = prefix.to_string_lossy().ends_with(std::path::is_separator);
+    if ends_in_folder || prefix.file_name().is_none() || prefix == Path::new("-") {
+        return Err(Failure::usage(
+            format!("--vtk: `{}` does not end in a name", prefix.display()),
+            "give the begin of the file names, for example --vtk out/wafer",
+        ));
+    }
+    Ok(Some(VtkRequest {
+        prefix,
+        is_legacy: matches.get_flag("legacy-vtk"),
+    }))
+}
+
+impl VtkRequest {
+    /// Where the field in the old format goes, when it is asked for.
+    fn legacy_path(&self) -> Option<PathBuf> {
+        self.is_legacy.then(|| legacy_vtk_path(&self.prefix))
+    }
+
+    /// All files.
+    fn paths(&self) -> impl Iterator<Item = PathBuf> {
+        vtk_paths(&self.prefix)
+            .into_iter()
+            .chain(self.legacy_path())
+    }
+}
+
 impl Request {
     fn new(matches: &ArgMatches) -> Result<Self, Failure> {
         let length = quantity(matches, "length", units::parse_length)?;
@@ -85,9 +124,9 @@ impl Request {
             .map(Drive::PressureDrop)
             .or(flow_rate.map(Drive::FlowRate));
         let fluid = fluid(matches)?;
-        positive("length", length, "for example `20 mm`")?;
-        positive("pressure-drop", drop, "for example `30 kPa`")?;
-        positive("flow-rate", flow_rate, "for example `5 uL/min`")?;
+        positive(matches, "length", length, "20mm")?;
+        positive(matches, "pressure-drop", drop, "30kPa")?;
+        positive(matches, "flow-rate", flow_rate, "5uL/min")?;
         if drive.is_some() && length.is_none() {
             return Err(Failure::usage(
                 "an operating point needs the length of the channel",
@@ -128,8 +167,8 @@ impl Request {
             drive,
             shortcuts: matches.get_flag("shortcuts"),
             format,
-            output: path(matches, "output"),
-            vtk: path(matches, "vtk"),
+            output: output::target(matches),
+            vtk: vtk(matches)?,
             pictures,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
@@ -138,7 +177,7 @@ impl Request {
 
     /// Outputs that cannot be written are found before the solve.
     fn check_targets(&self) -> Result<(), Failure> {
-        let vtk = self.vtk.iter().flat_map(|prefix| vtk_paths(prefix));
+        let vtk = self.vtk.iter().flat_map(VtkRequest::paths);
         let pictures = self.pictures.iter().map(|(path, _)| path.clone());
         let targets: Vec<PathBuf> = self
             .output
@@ -147,16 +186,8 @@ impl Request {
             .chain(vtk)
             .chain(pictures)
             .collect();
-        for (index, target) in targets.iter().enumerate() {
-            if targets[..index].contains(target) {
-                return Err(Failure::usage(
-                    format!("two outputs would go to {}", target.display()),
-                    "give each output its own name",
-                ));
-            }
-            check_target(target, &[&self.file])?;
-        }
-        Ok(())
+        let targets: Vec<&Path> = targets.iter().map(PathBuf::as_path).collect();
+        Ok(check_targets(&targets, &[&self.file])?)
     }
 
     fn answer(
@@ -186,6 +217,7 @@ impl Request {
                 path: &provenance.path,
                 sha256: &provenance.sha256,
                 kind: provenance.kind.word(),
+                notes: &provenance.notes,
             }),
             section_name: &name,
             flow,
@@ -227,7 +259,7 @@ impl Request {
 
     fn deliver(&self, document: &SolveDocument, solved: &SolvedSection) -> Result<(), Failure> {
         let mut files: Vec<(PathBuf, Vec<u8>)> = Vec::new();
-        if let Some(prefix) = &self.vtk {
+        if let Some(request) = &self.vtk {
             let field = solved.dense_field(FIELD_NODES);
             if field.stride > 1 {
                 output::talk(&format!(
@@ -235,9 +267,13 @@ impl Request {
                     field.stride
                 ));
             }
-            let [vti, vtp] = vtk_paths(prefix);
+            let [vti, vtp] = vtk_paths(&request.prefix);
             files.push((vti, report::field_vti(document, &field)?.into_bytes()));
             files.push((vtp, report::wall_vtp(document)?.into_bytes()));
+            if let Some(path) = request.legacy_path() {
+                let text = report::field_legacy_vtk(document, &field)?;
+                files.push((path, text.into_bytes()));
+            }
         }
         if !self.pictures.is_empty() {
             let field = solved.dense_field(PICTURE_NODES);
@@ -287,12 +323,21 @@ impl Request {
     }
 }
 
-fn positive(name: &str, value: Option<f64>, example: &str) -> Result<(), Failure> {
+/// Refuses a value that is not above zero, as typed.
+fn positive(
+    matches: &ArgMatches,
+    name: &str,
+    value: Option<f64>,
+    example: &str,
+) -> Result<(), Failure> {
     match value {
-        Some(v) if !(v.is_finite() && v > 0.0) => Err(Failure::usage(
-            format!("--{name}: {v} (SI) is not a positive number"),
-            &format!("give a positive value, {example}"),
-        )),
+        Some(v) if !(v.is_finite() && v > 0.0) => {
+            let typed = matches.get_one::<String>(name).map_or("", String::as_str);
+            Err(Failure::usage(
+                format!("--{name}: `{typed}` is not above zero"),
+                &format!("give a positive value, for example --{name} {example}"),
+            ))
+        }
         _ => Ok(()),
     }
 }
@@ -303,9 +348,9 @@ fn fluid(matches: &ArgMatches) -> Result<Option<Fluid>, Failure> {
     let pressure = quantity(matches, "gas-pressure", units::parse_pressure)?;
     let viscosity = quantity(matches, "viscosity", units::parse_viscosity)?;
     let density = quantity(matches, "density", units::parse_density)?;
-    positive("gas-pressure", pressure, "for example `1 bar`")?;
-    positive("viscosity", viscosity, "for example `1.2 mPa s`")?;
-    positive("density", density, "for example `1050 kg/m^3`")?;
+    positive(matches, "gas-pressure", pressure, "1bar")?;
+    positive(matches, "viscosity", viscosity, "1.2mPa.s")?;
+    positive(matches, "density", density, "1050kg/m^3")?;
     let name = matches.get_one::<String>("fluid").map(String::as_str);
     if name.is_some() && (viscosity.is_some() || density.is_some()) {
         return Err(Failure::usage(

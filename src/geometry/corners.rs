@@ -130,7 +130,7 @@ mod tests {
         let re_entrant: Vec<_> = found.iter().filter(|c| c.turning < 0.0).collect();
         assert_eq!(found.len(), 6);
         assert_eq!(re_entrant.len(), 1);
-        assert_eq!(re_entrant[0].at, [1.0, 1.0]);
+        assert_eq!(re_entrant[0].at.map(f64::to_bits), [1.0_f64.to_bits(); 2]);
         assert!((re_entrant[0].fluid_angle().to_degrees() - 270.0).abs() < 1e-9);
     }
 

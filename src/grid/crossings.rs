@@ -99,6 +99,6 @@ mod tests {
         let rows = LineCrossings::rows(&lattice);
         let at: Vec<f64> = rows.line(1).iter().map(|c| c.at).collect();
         assert_eq!(at, [1.0, 3.0]);
-        assert!((0..rows.lines()).all(|line| rows.line(line).len() % 2 == 0));
+        assert!((0..rows.lines()).all(|line| rows.line(line).len().is_multiple_of(2)));
     }
 }

@@ -63,16 +63,17 @@ impl Columns {
     pub(crate) fn from_header(
         fields: &[&str],
         option: Option<&UnitOption>,
-    ) -> Result<Self, (usize, ReadProblem)> {
+    ) -> Result<Self, Box<(usize, ReadProblem)>> {
         let (mut x, mut y, mut loop_label, mut lumen_label) = (None, None, None, None);
         let mut unit = String::new();
         for (index, field) in fields.iter().enumerate() {
             let unknown = || {
                 let name = (*field).to_owned();
-                (index, ReadProblem::HeaderColumn { name })
+                Box::new((index, ReadProblem::HeaderColumn { name }))
             };
-            let mut axis = |text: &str| {
-                let scale = axis_scale(text, option).map_err(|problem| (index, problem))?;
+            let mut axis = |text: &str| -> Result<Axis, Box<(usize, ReadProblem)>> {
+                let scale =
+                    axis_scale(text, option).map_err(|problem| Box::new((index, problem)))?;
                 unit = match option {
                     Some(option) if text.is_empty() => option.word.clone(),
                     _ => text.to_owned(),
@@ -89,7 +90,7 @@ impl Columns {
                 return Err(unknown());
             }
         }
-        let missing = |missing| (0, ReadProblem::Header { missing });
+        let missing = |missing| Box::new((0, ReadProblem::Header { missing }));
         Ok(Self {
             x: x.ok_or_else(|| missing("x"))?,
             y: y.ok_or_else(|| missing("y"))?,
@@ -203,7 +204,7 @@ mod tests {
 
     #[test]
     fn what_a_header_must_not_be() {
-        let problem = |fields: &[&str]| Columns::from_header(fields, None).unwrap_err();
+        let problem = |fields: &[&str]| *Columns::from_header(fields, None).unwrap_err();
         assert!(matches!(
             problem(&["x", "y_um"]),
             (0, ReadProblem::MissingUnit)

@@ -138,6 +138,7 @@ pub(crate) fn offset_of(text: &str, field: &str) -> usize {
 #[derive(Debug)]
 pub(crate) struct NumberReader {
     delimiter: Delimiter,
+    keep_non_finite: bool,
     point_seen: bool,
     /// Offset and text of the first decimal comma.
     comma_seen: Option<(usize, String)>,
@@ -148,9 +149,10 @@ pub(crate) struct NumberReader {
 }
 
 impl NumberReader {
-    pub(crate) fn new(delimiter: Delimiter) -> Self {
+    pub(crate) fn new(delimiter: Delimiter, keep_non_finite: bool) -> Self {
         Self {
             delimiter,
+            keep_non_finite,
             point_seen: false,
             comma_seen: None,
             comma_proven: false,
@@ -184,7 +186,7 @@ impl NumberReader {
             scale.read(field, &mut self.buffer)
         };
         match value {
-            Some(value) if value.is_finite() => Ok(value),
+            Some(value) if value.is_finite() || self.keep_non_finite => Ok(value),
             Some(_) => Err(ReadProblem::NotFinite {
                 text: field.to_owned(),
             }),
@@ -262,7 +264,7 @@ mod tests {
     #[test]
     fn decimal_commas_need_proof() {
         let read = |text: &str| {
-            let mut reader = NumberReader::new(Delimiter::Semicolon);
+            let mut reader = NumberReader::new(Delimiter::Semicolon, false);
             let metre = crate::units::length_scale("m").unwrap();
             let values: Result<Vec<f64>, _> = text
                 .split(';')

@@ -28,25 +28,53 @@ pub(crate) struct RawLoop {
     pub(crate) lumen: Option<String>,
 }
 
-/// Sorts loops into lumens and islands and gives the outline its orientation.
-pub(crate) fn assemble(raw: Vec<RawLoop>) -> Outline {
-    let (labelled, plain): (Vec<RawLoop>, Vec<RawLoop>) =
-        raw.into_iter().partition(|one| one.lumen.is_some());
-    let mut lumens = by_label(labelled);
-    lumens.extend(by_depth(
-        plain.into_iter().map(|one| Loop::new(one.points)).collect(),
-    ));
-    Outline { lumens }
+/// Loops sorted into lumens and islands, each with its direction and first vertex as in the file.
+#[derive(Debug)]
+pub(crate) struct Sorted {
+    pub(crate) outline: Outline,
+    /// Number in the file, from 0, of each loop of the outline, in the order of [`Outline::loops`].
+    pub(crate) loop_numbers: Vec<usize>,
+}
+
+/// A loop with its number in the file.
+type Numbered = (usize, Loop);
+/// Outer wall and islands of one lumen.
+type Group = (Numbered, Vec<Numbered>);
+
+/// Sorts loops into lumens and islands.
+pub(crate) fn assemble(raw: Vec<RawLoop>) -> Sorted {
+    let (mut labelled, mut plain) = (Vec::new(), Vec::new());
+    for (number, one) in raw.into_iter().enumerate() {
+        let wall = (number, Loop::new(one.points));
+        match one.lumen {
+            Some(label) => labelled.push((label, wall)),
+            None => plain.push(wall),
+        }
+    }
+    let mut groups = by_label(labelled);
+    groups.extend(by_depth(plain));
+    let mut loop_numbers = Vec::new();
+    let lumens = groups
+        .into_iter()
+        .map(|((number, outer), islands)| {
+            loop_numbers.push(number);
+            let (numbers, islands): (Vec<usize>, Vec<Loop>) = islands.into_iter().unzip();
+            loop_numbers.extend(numbers);
+            Lumen { outer, islands }
+        })
+        .collect();
+    Sorted {
+        outline: Outline { lumens },
+        loop_numbers,
+    }
 }
 
 /// Loops of one label form a lumen; the one with the largest area is its outer wall.
-fn by_label(labelled: Vec<RawLoop>) -> Vec<Lumen> {
+fn by_label(labelled: Vec<(String, Numbered)>) -> Vec<Group> {
     let mut order: HashMap<String, usize> = HashMap::new();
-    let mut groups: Vec<Vec<Loop>> = Vec::new();
-    for one in labelled {
-        let label = one.lumen.unwrap_or_default();
+    let mut groups: Vec<Vec<Numbered>> = Vec::new();
+    for (label, wall) in labelled {
         let slot = *order.entry(label).or_insert(groups.len());
-        let wall = Loop::new(one.points);
         match groups.get_mut(slot) {
             Some(group) => group.push(wall),
             None => groups.push(vec![wall]),
@@ -55,28 +83,26 @@ fn by_label(labelled: Vec<RawLoop>) -> Vec<Lumen> {
     groups
         .into_iter()
         .map(|mut walls| {
-            let sizes = walls.iter().map(|wall| wall.signed_area().abs());
+            let sizes = walls.iter().map(|(_, wall)| wall.signed_area().abs());
             let largest = sizes
                 .enumerate()
                 .fold((0, f64::NEG_INFINITY), |best, (i, size)| {
                     if size > best.1 { (i, size) } else { best }
                 });
             let outer = walls.remove(largest.0);
-            Lumen {
-                outer,
-                islands: walls,
-            }
+            (outer, walls)
         })
         .collect()
 }
 
 /// Loops at even depth become lumens, loops at odd depth islands of the smallest loop around them.
-fn by_depth(walls: Vec<Loop>) -> Vec<Lumen> {
+fn by_depth(numbered: Vec<Numbered>) -> Vec<Group> {
+    let (numbers, walls): (Vec<usize>, Vec<Loop>) = numbered.into_iter().unzip();
     let nests = nesting(&walls);
     let mut slot_of = vec![None; walls.len()];
-    let mut lumens: Vec<Lumen> = Vec::new();
-    let mut islands: Vec<(usize, Loop)> = Vec::new();
-    for (index, wall) in walls.into_iter().enumerate() {
+    let mut lumens: Vec<Group> = Vec::new();
+    let mut islands: Vec<(usize, Numbered)> = Vec::new();
+    for (index, wall) in numbers.into_iter().zip(walls).enumerate() {
         let nest = nests.get(index).copied().unwrap_or_default();
         let around = nest.parent.filter(|parent| {
             nest.depth % 2 == 1 && nests.get(*parent).is_some_and(|p| p.depth % 2 == 0)
@@ -87,20 +113,14 @@ fn by_depth(walls: Vec<Loop>) -> Vec<Lumen> {
             if let Some(slot) = slot_of.get_mut(index) {
                 *slot = Some(lumens.len());
             }
-            lumens.push(Lumen {
-                outer: wall,
-                islands: Vec::new(),
-            });
+            lumens.push((wall, Vec::new()));
         }
     }
     for (parent, wall) in islands {
         let slot = slot_of.get(parent).copied().flatten();
         match slot.and_then(|slot| lumens.get_mut(slot)) {
-            Some(lumen) => lumen.islands.push(wall),
-            None => lumens.push(Lumen {
-                outer: wall,
-                islands: Vec::new(),
-            }),
+            Some((_, islands)) => islands.push(wall),
+            None => lumens.push((wall, Vec::new())),
         }
     }
     lumens
@@ -285,7 +305,10 @@ mod tests {
 
     #[test]
     fn depth_decides_between_lumen_and_island() {
-        let outline = assemble(vec![
+        let Sorted {
+            outline,
+            loop_numbers,
+        } = assemble(vec![
             square(0.0, 0.0, 1.0),
             square(0.0, 0.0, 3.0),
             square(0.0, 0.0, 9.0),
@@ -295,6 +318,7 @@ mod tests {
         assert_eq!(outline.lumens.len(), 3);
         let islands: Vec<usize> = outline.lumens.iter().map(|l| l.islands.len()).collect();
         assert_eq!(islands, [0, 2, 0]);
+        assert_eq!(loop_numbers, [0, 2, 1, 3, 4]);
         assert!((outline.area() - (324.0 - 36.0 - 4.0 + 4.0 + 16.0)).abs() < 1e-9);
     }
 
@@ -304,7 +328,10 @@ mod tests {
             one.lumen = Some(name.to_owned());
             one
         };
-        let outline = assemble(vec![
+        let Sorted {
+            outline,
+            loop_numbers,
+        } = assemble(vec![
             label(square(0.0, 0.0, 1.0), "a"),
             label(square(0.0, 0.0, 3.0), "a"),
             label(square(0.0, 0.0, 0.5), "b"),
@@ -312,6 +339,7 @@ mod tests {
         assert_eq!(outline.lumens.len(), 2);
         assert!((outline.lumens[0].outer.signed_area() - 36.0).abs() < 1e-12);
         assert_eq!(outline.lumens[0].islands.len(), 1);
+        assert_eq!(loop_numbers, [1, 0, 2]);
     }
 
     #[test]
@@ -322,7 +350,7 @@ mod tests {
                 raw.push(square(f64::from(i), f64::from(j), 0.3));
             }
         }
-        let outline = assemble(raw);
+        let outline = assemble(raw).outline;
         assert_eq!(outline.lumens.len(), 1);
         assert_eq!(outline.lumens[0].islands.len(), 90_000);
     }
@@ -335,7 +363,7 @@ mod tests {
                 let [x, y] = turned([f64::from(i), 0.0], turn);
                 raw.push(square(x, y, 0.3));
             }
-            let outline = assemble(raw);
+            let outline = assemble(raw).outline;
             assert_eq!(outline.lumens.len(), 1);
             assert_eq!(outline.lumens[0].islands.len(), 100_000);
         }
@@ -352,7 +380,7 @@ mod tests {
             points,
             lumen: None,
         };
-        let outline = assemble(vec![comb, square(1e6, 0.0, 10.0)]);
+        let outline = assemble(vec![comb, square(1e6, 0.0, 10.0)]).outline;
         assert_eq!(outline.lumens.len(), 2);
     }
 
@@ -363,7 +391,7 @@ mod tests {
                 points,
                 lumen: None,
             };
-            let outline = assemble(vec![one, square(0.0, 0.0, 1.0)]);
+            let outline = assemble(vec![one, square(0.0, 0.0, 1.0)]).outline;
             assert_eq!(outline.loops().count(), 2);
         }
     }

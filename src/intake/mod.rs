@@ -2,7 +2,7 @@
 //!
 //! A section comes as a section file (TOML), as an outline in columns of text, or as an SVG drawing with
 //! a stated scale; which one it is shows in the content, never in the file name. Coordinates leave here
-//! in metres, `y` upwards, outer loops anticlockwise. No unit is guessed: without one reading stops.
+//! in metres, `y` upwards. No unit is guessed: without one reading stops.
 
 #![expect(
     clippy::disallowed_methods,
@@ -23,7 +23,6 @@ mod section;
 mod section_file;
 mod section_write;
 mod source_text;
-mod spelling;
 mod staircase;
 mod svg_path;
 mod svg_shapes;

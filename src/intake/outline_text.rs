@@ -25,8 +25,12 @@ pub(crate) struct RawOutline {
     pub(crate) unit: String,
 }
 
-/// Reads an outline in columns.
-pub(crate) fn read(text: &str, option: Option<&UnitOption>) -> Result<RawOutline, Fault> {
+/// Reads an outline in columns; `keep_non_finite` passes infinite coordinates and NaN on.
+pub(crate) fn read(
+    text: &str,
+    option: Option<&UnitOption>,
+    keep_non_finite: bool,
+) -> Result<RawOutline, Fault> {
     let delimiter = choose_delimiter(text)?;
     let mut rows = Rows::new(text).peekable();
     while rows.next_if(|row| row.content.is_empty()).is_some() {}
@@ -41,7 +45,7 @@ pub(crate) fn read(text: &str, option: Option<&UnitOption>) -> Result<RawOutline
         None => Columns::without_header(option)
             .map_err(|problem| Fault::at(text, first.offset, None, problem))?,
     };
-    let mut table = Table::new(text, delimiter, columns);
+    let mut table = Table::new(text, delimiter, columns, keep_non_finite);
     let mut doubt = PairDoubt::new(!has_header && delimiter == Delimiter::Comma);
     for row in rows {
         doubt.look(row);
@@ -80,7 +84,8 @@ fn header(
     }
     Columns::from_header(&fields, option)
         .map(Some)
-        .map_err(|(index, problem)| {
+        .map_err(|found| {
+            let (index, problem) = *found;
             let field = fields.get(index).copied().unwrap_or(row.content);
             Fault::at(text, offset_of(text, field), None, problem)
         })
@@ -102,12 +107,12 @@ struct Table<'a> {
 }
 
 impl<'a> Table<'a> {
-    fn new(text: &'a str, delimiter: Delimiter, columns: Columns) -> Self {
+    fn new(text: &'a str, delimiter: Delimiter, columns: Columns, keep_non_finite: bool) -> Self {
         Self {
             text,
             delimiter,
             columns,
-            numbers: NumberReader::new(delimiter),
+            numbers: NumberReader::new(delimiter, keep_non_finite),
             fields: Vec::new(),
             loops: Vec::new(),
             points: Vec::new(),

@@ -22,9 +22,20 @@ pub(crate) fn check_size(
     unit: Option<&str>,
     factor: Option<f64>,
 ) -> Result<(), ReadProblem> {
-    let Some((low, high)) = outline.bounds() else {
+    // Vertices that are not finite are for the check of the outline.
+    let mut finite = outline
+        .loops()
+        .flat_map(|wall| &wall.points)
+        .filter(|p| p.iter().all(|c| c.is_finite()));
+    let Some(&first) = finite.next() else {
         return Ok(());
     };
+    let (low, high) = finite.fold((first, first), |(low, high), p| {
+        (
+            [low[0].min(p[0]), low[1].min(p[1])],
+            [high[0].max(p[0]), high[1].max(p[1])],
+        )
+    });
     let (width, height) = (high[0] - low[0], high[1] - low[1]);
     let size = width.max(height);
     if size == 0.0 || (SMALLEST_SIZE_METRES..=LARGEST_SIZE_METRES).contains(&size) {

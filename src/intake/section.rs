@@ -25,6 +25,9 @@ pub struct ReadOptions {
     pub svg_scale: Option<f64>,
     /// Take sections outside 10 nm to 50 mm.
     pub allow_any_size: bool,
+    /// Keep coordinates that are infinite or not a number, so that [`Outline::problems`] lists them all;
+    /// otherwise reading stops at the first.
+    pub keep_non_finite: bool,
 }
 
 /// Tables of a section file that other work reads, kept as they are.
@@ -43,8 +46,10 @@ pub struct Extras {
 pub struct Section {
     /// Its name, where the file gives one.
     pub name: Option<String>,
-    /// Its outline in metres, `y` upwards, outer loops anticlockwise.
+    /// Its outline in metres, `y` upwards; loops that were drawn keep their direction and first vertex.
     pub outline: Outline,
+    /// Number in the file, from 0, of each loop of the outline, in the order of [`Outline::loops`].
+    pub loop_numbers: Vec<usize>,
     /// The nominal section it was made from, where it is one.
     pub nominal: Option<NominalSpec>,
     /// Where it came from.
@@ -114,6 +119,8 @@ fn check_scale(metres: f64) -> Result<(), ReadProblem> {
 pub(crate) struct Content {
     pub(crate) name: Option<String>,
     pub(crate) outline: Option<Outline>,
+    /// See [`Section::loop_numbers`]; empty where the outline is in the order of the file.
+    pub(crate) loop_numbers: Vec<usize>,
     pub(crate) nominal: Option<NominalSpec>,
     pub(crate) extras: Extras,
     /// Unit of the coordinates, for messages.
@@ -176,16 +183,20 @@ fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Sec
         check_file_size(size, MAX_MARKUP_BYTES)?;
     }
     let content = match kind {
-        SectionKind::SectionFile => section_file::read(&source.text, option.as_ref())?,
+        SectionKind::SectionFile => {
+            section_file::read(&source.text, option.as_ref(), options.keep_non_finite)?
+        }
         SectionKind::OutlineSvg => {
             let scale = options.svg_scale.or(option.map(|o| o.scale.factor()));
             scale.map_or(Ok(()), check_scale)?;
             outline_svg::read(&source.text, scale)?
         }
         SectionKind::OutlineText => {
-            let raw = outline_text::read(&source.text, option.as_ref())?;
+            let raw = outline_text::read(&source.text, option.as_ref(), options.keep_non_finite)?;
+            let sorted = assemble(raw.loops);
             Content {
-                outline: Some(assemble(raw.loops)),
+                outline: Some(sorted.outline),
+                loop_numbers: sorted.loop_numbers,
                 factor: option
                     .map(|o| o.scale.factor())
                     .or_else(|| crate::units::length_unit(&raw.unit)),
@@ -198,12 +209,18 @@ fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Sec
     if !options.allow_any_size {
         check_size(&outline, content.unit.as_deref(), content.factor)?;
     }
+    let loop_numbers = if content.loop_numbers.is_empty() {
+        (0..outline.loops().count()).collect()
+    } else {
+        content.loop_numbers
+    };
     let warnings = super::staircase::warning(&outline, content.nominal.is_some())
         .into_iter()
         .collect();
     Ok(Section {
         name: content.name,
         outline,
+        loop_numbers,
         nominal: content.nominal,
         provenance: Provenance {
             path: path.to_owned(),

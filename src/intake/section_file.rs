@@ -30,7 +30,7 @@ use super::toml_values::{
 };
 use crate::geometry::nominal::{NominalSpec, SpecValue};
 use crate::geometry::{Loop, Lumen, Outline, Point};
-use crate::units::{UnitScale, parse_length};
+use crate::units::{UnitError, UnitScale, parse_length};
 
 /// Keys at the top of a section file.
 const TOP_KEYS: [&str; 7] = [
@@ -45,8 +45,12 @@ const TOP_KEYS: [&str; 7] = [
 /// Keys of a lumen.
 const LUMEN_KEYS: [&str; 2] = ["outer", "islands"];
 
-/// Reads a section file.
-pub(crate) fn read(text: &str, option: Option<&UnitOption>) -> Result<Content, Fault> {
+/// Reads a section file; `keep_non_finite` passes infinite coordinates and NaN on.
+pub(crate) fn read(
+    text: &str,
+    option: Option<&UnitOption>,
+    keep_non_finite: bool,
+) -> Result<Content, Fault> {
     let document = parse(text)?;
     let table = document.get_ref();
     check_keys(text, table, "a section file", &TOP_KEYS)?;
@@ -61,7 +65,7 @@ pub(crate) fn read(text: &str, option: Option<&UnitOption>) -> Result<Content, F
             return Err(fault(text, value, "nominal", ReadProblem::TwoOutlines));
         }
         (Some(value), None) => {
-            let mut coordinates = Coordinates::new(text, scale);
+            let mut coordinates = Coordinates::new(text, scale, keep_non_finite);
             let lumens = coordinates.lumens(value)?;
             (Outline { lumens }, None)
         }
@@ -79,14 +83,22 @@ pub(crate) fn read(text: &str, option: Option<&UnitOption>) -> Result<Content, F
         (None, None) => return Err(ReadProblem::NoOutline.into()),
     };
     let bare = nominal.is_none();
+    let notes = match option {
+        Some(option) if nominal.is_some() => vec![format!(
+            "the unit `{}` was not needed: every dimension names its own",
+            option.word
+        )],
+        _ => Vec::new(),
+    };
     Ok(Content {
         name,
         outline: Some(outline),
+        loop_numbers: Vec::new(),
         nominal,
         extras,
         unit: unit.filter(|_| bare),
         factor: scale.filter(|_| bare).map(UnitScale::factor),
-        notes: Vec::new(),
+        notes,
     })
 }
 
@@ -134,6 +146,7 @@ fn extras(text: &str, table: &DeTable<'_>) -> Result<Extras, Fault> {
 struct Coordinates<'a> {
     text: &'a str,
     scale: Option<UnitScale>,
+    keep_non_finite: bool,
     buffer: String,
     vertices: usize,
 }
@@ -157,10 +170,11 @@ impl Which {
 }
 
 impl<'a> Coordinates<'a> {
-    fn new(text: &'a str, scale: Option<UnitScale>) -> Self {
+    fn new(text: &'a str, scale: Option<UnitScale>, keep_non_finite: bool) -> Self {
         Self {
             text,
             scale,
+            keep_non_finite,
             buffer: String::new(),
             vertices: 0,
         }
@@ -256,7 +270,10 @@ impl<'a> Coordinates<'a> {
     fn coordinate(&mut self, value: &Value<'_>, which: Which, index: usize) -> Result<f64, Fault> {
         let at = |problem| fault(self.text, value, &which.vertex(index), problem);
         if let Some(written) = value.get_ref().as_str() {
-            return parse_length(written).map_err(|source| at(ReadProblem::Unit { source }));
+            return match parse_length(written) {
+                Err(UnitError::NotFinite { .. }) if self.keep_non_finite => Ok(f64::NAN),
+                read => read.map_err(|source| at(ReadProblem::Unit { source })),
+            };
         }
         let is_number = matches!(value.get_ref(), DeValue::Float(_) | DeValue::Integer(_));
         let scale = match self.scale {
@@ -270,7 +287,7 @@ impl<'a> Coordinates<'a> {
             DeValue::Float(float) => {
                 if let Some(metres) = scale
                     .read(float.as_str(), &mut self.buffer)
-                    .filter(|metres| metres.is_finite())
+                    .filter(|metres| metres.is_finite() || self.keep_non_finite)
                 {
                     return Ok(metres);
                 }

@@ -2,7 +2,7 @@
 
 use std::f64::consts::{FRAC_PI_2, PI, TAU};
 
-use usvg::roxmltree::Node;
+use roxmltree::Node;
 
 use super::svg_path::{Arc, Piece, Scanner, SubPath, parse};
 use crate::geometry::Point;

@@ -4,8 +4,8 @@ use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
 use super::read_error::{Fault, ReadProblem};
-use super::spelling::nearest;
 use crate::units::UnitScale;
+use crate::units::spelling::nearest;
 
 /// A value with its place.
 pub(crate) type Value<'i> = Spanned<DeValue<'i>>;

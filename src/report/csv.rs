@@ -4,6 +4,7 @@
 //! empty field. Numbers are the shortest text that reads back to the same double, with a decimal point.
 
 use super::document::SolveDocument;
+use super::numbers::one_line;
 use crate::flow::{OperatingPoint, SectionFlow};
 
 /// Why the CSV text could not be built.
@@ -73,8 +74,11 @@ fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
     let resistance_per_length = document.resistance_per_length();
     let resistance = document.resistance();
     let mut all = vec![
-        ("section", document.section_name.to_owned()),
-        ("source_path", source.map_or("", |s| s.path).to_owned()),
+        ("section", one_line(document.section_name)),
+        (
+            "source_path",
+            source.map_or(String::new(), |s| one_line(s.path)),
+        ),
         ("source_sha256", source.map_or("", |s| s.sha256).to_owned()),
         ("source_kind", source.map_or("", |s| s.kind).to_owned()),
     ];

@@ -16,6 +16,8 @@ pub struct SourceRecord<'a> {
     pub sha256: &'a str,
     /// Kind of file, for example `section file`.
     pub kind: &'a str,
+    /// What a reader should know about how it was read: scale, parts left out.
+    pub notes: &'a [String],
 }
 
 /// Everything an output of `solve` may show.

@@ -172,6 +172,7 @@ impl<'a> Root<'a> {
                 path: s.path,
                 sha256: s.sha256,
                 kind: s.kind,
+                notes: s.notes,
             }),
             section: Section::new(flow),
             conductance: Quantity::bracketed(flow.conductance, "m^4"),
@@ -249,6 +250,7 @@ struct Source<'a> {
     path: &'a str,
     sha256: &'a str,
     kind: &'a str,
+    notes: &'a [String],
 }
 
 #[derive(Serialize)]

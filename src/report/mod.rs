@@ -30,4 +30,7 @@ pub use png::{PngError, to_png};
 pub use svg::to_svg;
 pub use text::{TextOptions, to_text};
 pub use vtk::{VtkError, field_legacy_vtk, field_vti, wall_vtp};
-pub use write::{OutputFile, WriteError, check_target, vtk_paths, write_file, write_files};
+pub use write::{
+    OutputFile, WriteError, check_target, check_targets, legacy_vtk_path, vtk_paths, write_file,
+    write_files,
+};

@@ -124,6 +124,19 @@ pub(crate) fn one_line(text: &str) -> String {
         .collect()
 }
 
+/// Longest title shown, characters.
+const LONGEST_TITLE: usize = 240;
+
+/// A name as a title: one line, cut where it is very long.
+pub(crate) fn title(text: &str) -> String {
+    let mut title = one_line(text);
+    if let Some((cut, _)) = title.char_indices().nth(LONGEST_TITLE) {
+        title.truncate(cut);
+        title.push_str(" ...");
+    }
+    title
+}
+
 /// Invisible characters that reorder the text around them.
 fn is_direction_mark(c: char) -> bool {
     matches!(c, '\u{200e}' | '\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2066}'..='\u{2069}' | '\u{2028}' | '\u{2029}')
@@ -193,5 +206,8 @@ mod tests {
         let text = to_ascii("4 \u{b5}m\u{b2} \u{b1} 1, caf\u{e9}");
         assert_eq!(text, "4 um^2 +/- 1, caf\\u{e9}");
         assert_eq!(one_line("a\u{1b}[2Jb\nc\u{202e}d"), "a [2Jb c d");
+        assert_eq!(title("caf\u{e9}\n"), "caf\u{e9} ");
+        let long = title(&"\u{b5}".repeat(1_000_000));
+        assert_eq!(long.chars().count(), LONGEST_TITLE + 4);
     }
 }

@@ -230,7 +230,7 @@ impl<'a> Page<'a> {
     fn heading(&mut self) {
         let flow = self.document.flow;
         let length = |v: f64| with_unit(v, numbers::LENGTHS, 4);
-        let name = numbers::one_line(self.document.section_name);
+        let name = numbers::title(self.document.section_name);
         let size = format!(
             "width {}, height {}, area {}, K = {} m^4 (estimated error {})",
             length(flow.geometry.width),

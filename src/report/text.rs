@@ -59,13 +59,19 @@ pub(super) fn part(heading: &str, table: &Table) -> String {
 }
 
 fn title(document: &SolveDocument<'_>) -> String {
-    let mut out = format!("Section {}\n", numbers::one_line(document.section_name));
+    let mut out = format!("Section {}\n", numbers::title(document.section_name));
     if let Some(source) = document.source {
         let path = numbers::one_line(source.path);
         let mut table = Table::new(&[Align::Left, Align::Left]);
         table.row([source.kind, path.as_str()]);
         table.row(["sha256", source.sha256]);
         out.push_str(&table.print(INDENT));
+        for note in source.notes {
+            out.push_str(&paragraph(
+                "  ",
+                &format!("note: {}", numbers::one_line(note)),
+            ));
+        }
     }
     out
 }

@@ -75,11 +75,18 @@ pub struct OutputFile<'a> {
 /// assert_eq!(wall, std::path::Path::new("out/run1.2.vtp"));
 /// ```
 pub fn vtk_paths(prefix: &Path) -> [PathBuf; 2] {
-    [".vti", ".vtp"].map(|extension| {
-        let mut name = OsString::from(prefix);
-        name.push(extension);
-        PathBuf::from(name)
-    })
+    [".vti", ".vtp"].map(|extension| with_extension(prefix, extension))
+}
+
+/// The `.vtk` path of a prefix, for the field in the old format.
+pub fn legacy_vtk_path(prefix: &Path) -> PathBuf {
+    with_extension(prefix, ".vtk")
+}
+
+fn with_extension(prefix: &Path, extension: &str) -> PathBuf {
+    let mut name = OsString::from(prefix);
+    name.push(extension);
+    PathBuf::from(name)
 }
 
 /// Checks that `path` can be written and is none of `inputs`, without changing it.
@@ -95,6 +102,25 @@ pub fn check_target(path: &Path, inputs: &[&Path]) -> Result<(), WriteError> {
         drop(temporary);
     }
     Ok(())
+}
+
+/// Checks targets of one run as [`check_target`] does, and that no two are the same file.
+///
+/// # Errors
+/// [`WriteError`] with the path and the reason.
+pub fn check_targets(paths: &[&Path], inputs: &[&Path]) -> Result<(), WriteError> {
+    let mut seen = Vec::new();
+    for path in paths {
+        if let Target::Plain(real) = resolve(path, inputs)? {
+            if seen.contains(&real) {
+                return Err(WriteError::NamedTwice {
+                    path: (*path).to_owned(),
+                });
+            }
+            seen.push(real);
+        }
+    }
+    paths.iter().try_for_each(|path| check_target(path, inputs))
 }
 
 /// Writes one file; see [`write_files`].
@@ -184,8 +210,12 @@ fn resolve(path: &Path, inputs: &[&Path]) -> Result<Target, WriteError> {
     Ok(Target::Plain(real))
 }
 
-/// A target that does not exist yet: its folder must.
+/// A target that does not exist yet: its folder must. A link to a file that does not exist is followed.
 fn new_target(path: &Path) -> Result<Target, WriteError> {
+    if let Ok(linked) = fs::read_link(path) {
+        let folder = path.parent().unwrap_or(Path::new(""));
+        return new_target(&folder.join(linked));
+    }
     let Some(name) = path.file_name() else {
         return Err(WriteError::IsFolder {
             path: path.to_owned(),

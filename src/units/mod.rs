@@ -11,6 +11,7 @@ mod format;
 mod grammar;
 mod quantity;
 mod scale;
+pub(crate) mod spelling;
 
 pub use error::UnitError;
 pub use format::{

@@ -41,6 +41,7 @@ impl Sample {
                 path: "sections/sample.toml",
                 sha256: "0f343b0931126a20f133d67c2b018a3b1fc2a9d1a1ab6ba4f44f4f9b8d5f0a11",
                 kind: "section file",
+                notes: &[],
             }),
             fluid: Some(&self.fluid),
             length: Some(self.point.length),

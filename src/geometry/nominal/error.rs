@@ -135,9 +135,9 @@ pub enum NominalError {
         /// A value as it could be written.
         example: &'static str,
     },
-    /// A length could not be read.
+    /// A length or an angle could not be read.
     #[error("`{parameter}` of `{kind}`: {source}")]
-    Length {
+    Unit {
         /// The kind.
         kind: &'static str,
         /// The parameter.
@@ -285,7 +285,7 @@ impl NominalError {
             | Self::BareNumber {
                 parameter, example, ..
             } => format!("write for example {parameter} = {}", quoted(example)),
-            Self::Length {
+            Self::Unit {
                 parameter,
                 example,
                 source,

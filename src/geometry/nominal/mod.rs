@@ -23,7 +23,6 @@ mod rounded;
 mod shape;
 mod spec;
 mod spec_text;
-mod spelling;
 mod straight;
 #[cfg(test)]
 mod tests;

@@ -1,15 +1,14 @@
 //! The values of one section, checked and in SI: lengths in metres, angles in radians.
 
 use std::collections::BTreeMap;
-use std::f64::consts::PI;
 
 use super::error::Amount;
 use super::kinds::{KindInfo, ParameterInfo, Quantity, kinds, modifiers};
 use super::shape::Shape;
-use super::spelling::nearest;
 use super::{NominalError, NominalSpec, SpecValue};
 use crate::geometry::curves::{CHORD_TOLERANCE, CurveError};
-use crate::units::parse_length;
+use crate::units::spelling::nearest;
+use crate::units::{UnitError, parse_angle, parse_length};
 
 /// Smallest and largest length accepted, m: an atom and a kilometre.
 const LENGTH_LIMITS: [f64; 2] = [1e-12, 1e3];
@@ -117,13 +116,7 @@ impl<'a> Parameters<'a> {
     /// A length of either sign, m.
     pub(super) fn signed_length(&self, name: &'static str) -> Result<f64, NominalError> {
         let text = self.text(name)?;
-        let example = self.parameter(name).map_or("30 um", |p| p.example);
-        let value = parse_length(text).map_err(|source| NominalError::Length {
-            kind: self.kind(),
-            parameter: name,
-            example,
-            source,
-        })?;
+        let value = parse_length(text).map_err(|source| self.not_measured(name, source))?;
         if !value.is_finite() || value.abs() > LENGTH_LIMITS[1] {
             let remedy = "check the number and its unit";
             return Err(self.refuse(name, value, "at most", LENGTH_LIMITS[1], ("", remedy)));
@@ -139,8 +132,7 @@ impl<'a> Parameters<'a> {
         below: f64,
     ) -> Result<f64, NominalError> {
         let text = self.text(name)?;
-        let value =
-            parse_angle(text).ok_or_else(|| self.not_readable(name, format!("`{text}`")))?;
+        let value = parse_angle(text).map_err(|source| self.not_measured(name, source))?;
         let advice = ("", "check the angle and its unit (deg or rad)");
         if value.is_nan() || value <= above {
             return Err(self.refuse(name, value, "above", above, advice));
@@ -315,6 +307,16 @@ impl<'a> Parameters<'a> {
             .ok_or_else(|| self.not_readable(name, format!("`{text}`")))
     }
 
+    /// The error for a length or an angle that cannot be read.
+    fn not_measured(&self, name: &'static str, source: UnitError) -> NominalError {
+        NominalError::Unit {
+            kind: self.kind(),
+            parameter: name,
+            example: self.parameter(name).map_or("30 um", |p| p.example),
+            source,
+        }
+    }
+
     /// Default of a parameter.
     fn default(&self, name: &'static str) -> Option<&'static str> {
         self.parameter(name).and_then(|p| p.default)
@@ -349,33 +351,4 @@ pub(super) fn describe(value: &SpecValue) -> String {
 /// The parameters of a kind, then the modifiers.
 fn all_parameters(info: &'static KindInfo) -> impl Iterator<Item = &'static ParameterInfo> {
     info.parameters.iter().chain(modifiers())
-}
-
-/// An angle such as `54.74 deg` or `0.955 rad` in radians.
-pub(super) fn parse_angle(text: &str) -> Option<f64> {
-    let text = text.trim();
-    let (number, factor) = if let Some(number) = text.strip_suffix("deg") {
-        (number, PI / 180.0)
-    } else if let Some(number) = text.strip_suffix('\u{b0}') {
-        (number, PI / 180.0)
-    } else {
-        (text.strip_suffix("rad")?, 1.0)
-    };
-    let value: f64 = number.trim().parse().ok()?;
-    value.is_finite().then_some(value * factor)
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn angles_need_a_unit() {
-        assert!((parse_angle("90 deg").unwrap() - PI / 2.0).abs() < 1e-15);
-        assert!((parse_angle("90\u{b0}").unwrap() - PI / 2.0).abs() < 1e-15);
-        assert!((parse_angle(" 0.5rad").unwrap() - 0.5).abs() < 1e-15);
-        for bad in ["90", "deg", "inf deg", "NaN rad", "90 degrees", "90 um"] {
-            assert_eq!(parse_angle(bad), None, "{bad}");
-        }
-    }
 }

@@ -1,4 +1,4 @@
-//! Reads a section from one line: `koh_groove opening=100um depth=40um`.
+//! Reads a section from one line: `koh_groove opening=100um depth=40um`; or one value of it.
 //!
 //! Grammar: `section = kind (name "=" value)*`, `value = word | "(" section ")" | "[" ("(" section ")")* "]"`.
 //! A word ends at a blank or a bracket. Commas between the members of a list are allowed.
@@ -23,6 +23,25 @@ impl FromStr for NominalSpec {
         match reader.peek() {
             None => Ok(spec),
             Some(_) => Err(reader.problem("a bracket closes that was not opened")),
+        }
+    }
+}
+
+impl FromStr for SpecValue {
+    type Err = NominalError;
+
+    /// Reads a word, a section in round brackets or a list of sections in square brackets.
+    fn from_str(text: &str) -> Result<Self, NominalError> {
+        let mut reader = Reader {
+            text,
+            characters: text.chars().collect(),
+            next: 0,
+        };
+        let value = reader.value(0)?;
+        reader.skip_blanks();
+        match reader.peek() {
+            None => Ok(value),
+            Some(_) => Err(reader.problem("the value ends here, and more follows")),
         }
     }
 }
@@ -161,6 +180,19 @@ mod tests {
             panic!("posts is a list")
         };
         assert_eq!(posts.len(), 2);
+    }
+
+    #[test]
+    fn one_value_is_a_word_a_section_or_a_list() {
+        let value = |text: &str| text.parse::<SpecValue>();
+        assert_eq!(value(" 3um "), Ok(SpecValue::Text("3um".to_owned())));
+        let circle = SpecValue::Spec("circle diameter=3um".parse().unwrap());
+        assert_eq!(value("(circle diameter=3um)"), Ok(circle));
+        let list = value("[(circle diameter=3um), (circle diameter=4um)]").unwrap();
+        assert!(matches!(list, SpecValue::List(members) if members.len() == 2));
+        for wrong in ["", "(circle", "[(circle) ", "3um 4um", "(circle))"] {
+            assert!(value(wrong).is_err(), "{wrong}");
+        }
     }
 
     #[test]

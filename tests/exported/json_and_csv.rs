@@ -246,7 +246,8 @@ fn csv_has_unit_ended_names_and_reads_back_exactly_whatever_the_name() {
         );
     }
     let cell = |row: usize, name: &str| &rows[row][names.iter().position(|n| n == name).unwrap()];
-    assert_eq!(cell(0, "section"), sample.name);
+    // A line break in a name would break tables read line by line.
+    assert_eq!(*cell(0, "section"), sample.name.replace('\n', " "));
     let k: f64 = cell(0, "conductance_m4").parse().unwrap();
     assert_eq!(k.to_bits(), sample.flow.conductance.value.to_bits());
     let r: f64 = cell(0, "resistance_pa_s_per_m3").parse().unwrap();

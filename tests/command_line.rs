@@ -91,7 +91,7 @@ impl Folder {
             .args(arguments)
             .current_dir(self.0.path())
             .write_stdin(input)
-            .timeout(std::time::Duration::from_secs(60))
+            .timeout(std::time::Duration::from_mins(1))
             .output()
             .unwrap();
         let run = Run {

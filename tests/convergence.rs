@@ -9,7 +9,7 @@ use etchwise::flow::{SectionFlow, SolveOptions, solve_outline};
 use etchwise::geometry::{NominalSpec, Outline};
 
 /// Section, Fanning `f Re` on the hydraulic diameter, and where the value is from.
-const SMOOTH: [(&str, f64, &str); 14] = [
+const SMOOTH: [(&str, f64, &str); 15] = [
     (
         "rectangle width=100um height=100um",
         14.227_076_884_78,
@@ -66,6 +66,11 @@ const SMOOTH: [(&str, f64, &str); 14] = [
         "rhombus side=100um acute_angle=40deg",
         13.194_327,
         "least squares",
+    ),
+    (
+        "annulus outer_diameter=200um inner_diameter=20um",
+        22.342_961,
+        "closed form",
     ),
     (
         "annulus outer_diameter=200um inner_diameter=100um offset=25um",

@@ -14,6 +14,7 @@ mod peak;
 mod section_flow;
 mod shortcuts;
 mod solve_outline;
+mod tangents;
 mod validity_range;
 mod wall_shear;
 

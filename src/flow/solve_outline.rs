@@ -18,6 +18,7 @@ use super::peak::{GridPeak, peak};
 use super::section_flow::{
     GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
 };
+use super::tangents::tangents;
 use super::wall_shear::{corners_of, wall_shear};
 
 /// Cells across the smallest lumen that the accuracy search starts from.
@@ -309,14 +310,23 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
         }
         estimate
     };
-    let mut conductance = over_grids(&|a| a.integrals.conductance).scaled(h.powi(4));
+    let shear = wall_shear(outline, lattice, mask, phi, corners.clone());
+    let curved = tangents(outline, &shear.samples, h);
+    let mut conductance = over_grids(&|a| {
+        let spacing = h * f64::from(a.stride);
+        let excess: f64 = curved
+            .iter()
+            .map(|tangent| tangent.excess(lattice.origin, spacing))
+            .sum();
+        a.integrals.conductance - excess / h.powi(4)
+    })
+    .scaled(h.powi(4));
     if let Ok(proven) = bracket {
         conductance = within(conductance, *proven);
     }
     let square = over_grids(&|a| a.integrals.square).scaled(h.powi(6));
     let cube = over_grids(&|a| a.integrals.cube).scaled(h.powi(8));
     let top = over_grids(&|a| a.peak.value).scaled(h * h);
-    let shear = wall_shear(outline, lattice, mask, phi, corners.clone());
     let finest = answers.first().map(|a| a.integrals).unwrap_or_default();
     let (area, diameter) = (geometry.area, geometry.hydraulic_diameter);
     let fanning_dh = diameter * diameter * area / (2.0 * conductance.value);

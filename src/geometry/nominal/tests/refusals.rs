@@ -412,3 +412,18 @@ fn sections_nested_without_end_are_refused() {
     }
     assert!(matches!(error, NominalError::TooDeep { .. }));
 }
+
+#[test]
+fn more_posts_than_can_be_handled_are_refused_soon() {
+    let posts: Vec<String> = (0..1000)
+        .map(|i| format!("(circle diameter=3um x={}um y=-20um)", i * 4))
+        .collect();
+    let line = format!(
+        "rectangle width=9mm height=40um posts=[{}]",
+        posts.join(" ")
+    );
+    let error = refusal(&line);
+    assert!(error.to_string().contains("number 807"), "{error}");
+    assert!(error.to_string().contains("4000000 vertices"), "{error}");
+    assert!(error.hint().contains("fewer posts"));
+}

@@ -4,11 +4,8 @@
 //! with `crate::` or climbs to the crate root with `super::` is set against the table. The scanner is tested on
 //! its own, so that a scanner that finds nothing cannot pass.
 
-#![expect(
-    clippy::unwrap_used,
-    clippy::disallowed_methods,
-    reason = "a test reads the sources and stops at the first surprise"
-)]
+#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
+#![expect(clippy::disallowed_methods, reason = "sources are read as text")]
 
 use std::collections::{BTreeMap, BTreeSet};
 use std::path::{Path, PathBuf};

@@ -1,6 +1,6 @@
 //! The command line: the only layer that prints, reads the environment, or decides the exit status.
 //!
-//! Arguments are read in two stages: [`arguments`] knows what can be typed, the request of each command
+//! Arguments are read in two stages: `arguments` knows what can be typed, the request of each command
 //! what it means, with units applied and before any file is opened. Machine output goes to standard
 //! output, talk to standard error.
 

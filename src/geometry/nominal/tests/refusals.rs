@@ -157,6 +157,11 @@ fn sizes_that_are_not_positive_or_not_sensible_are_refused() {
             &["plain number"],
         ),
         (
+            "gaussian_groove depth=3um width=9um truncation=1e-300",
+            &["`truncation`", "at least 1.00000e-9"],
+            &["larger fraction"],
+        ),
+        (
             "gaussian_groove depth=3um width=9um truncation=0.6",
             &["below 0.5"],
             &["plain number"],

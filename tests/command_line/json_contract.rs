@@ -85,8 +85,16 @@ fn assert_whole(record: &Value) {
     let reasons = record["absent_because"].as_object().unwrap();
     assert_sound(record.as_object().unwrap(), reasons, "");
     assert!(!record.to_string().contains("NaN"));
-    assert!(record["conductance"]["low"].is_null() && record["conductance"]["high"].is_null());
-    assert!(record["conductance"]["bracket_absent_because"].is_string());
+    let conductance = &record["conductance"];
+    match (conductance["low"].as_f64(), conductance["high"].as_f64()) {
+        (Some(low), Some(high)) => {
+            let best = conductance["value"].as_f64().unwrap();
+            assert!(0.0 < low && low <= best && best <= high, "{conductance}");
+            let width = value(record, "/bracket_relative_width");
+            assert!(width > 0.0 && width < 0.05, "{width}");
+        }
+        _ => assert!(conductance["bracket_absent_because"].is_string()),
+    }
 }
 
 #[test]
@@ -141,6 +149,8 @@ fn the_numbers_belong_together() {
     let dh = of("/section/hydraulic_diameter");
     let perimeter = of("/section/wetted_perimeter");
     assert_close(k, RECTANGLE_CONDUCTANCE, 1e-5);
+    let proven = ["low", "high"].map(|end| record["conductance"][end].as_f64().unwrap());
+    assert!(proven[0] <= RECTANGLE_CONDUCTANCE && RECTANGLE_CONDUCTANCE <= proven[1]);
     assert_close(dh, 4.0 * area / perimeter, 1e-12);
     assert_close(
         of("/poiseuille/fanning_dh"),

@@ -234,6 +234,12 @@ pub enum NominalError {
         /// What is wrong there.
         source: Box<NominalError>,
     },
+    /// The posts before this one have more vertices together than are handled.
+    #[error("the posts before it have more than {limit} vertices together")]
+    TooManyVertices {
+        /// The limit.
+        limit: usize,
+    },
     /// Sections are nested too deeply.
     #[error("sections are nested more than {limit} deep")]
     TooDeep {
@@ -313,6 +319,10 @@ impl NominalError {
                     .to_owned()
             }
             Self::Nested { source, .. } => source.hint(),
+            Self::TooManyVertices { .. } => {
+                "use fewer posts, posts with straight sides, or an outline whose curves are coarser"
+                    .to_owned()
+            }
             Self::TooDeep { .. } => "write the inner sections out as an outline".to_owned(),
             Self::Curve { .. } => {
                 "the largest and the smallest length are too far apart: check their units".to_owned()

@@ -9,6 +9,8 @@ use crate::geometry::curves::{arc, parametric};
 
 /// Largest fraction at which a Gaussian may be closed; above, the profile is a parabola in all but name.
 const LARGEST_TRUNCATION: f64 = 0.5;
+/// Smallest fraction of the depth at which a Gaussian groove may end: below it the tail has no height.
+const SMALLEST_TRUNCATION: f64 = 1e-9;
 
 /// Flat floor as wide as the mask opening, quarter circles of radius `depth` about the mask edges.
 pub(super) fn isotropic_etch(p: &Parameters<'_>) -> Result<Shape, NominalError> {
@@ -29,6 +31,16 @@ pub(super) fn isotropic_etch(p: &Parameters<'_>) -> Result<Shape, NominalError> 
 pub(super) fn gaussian_groove(p: &Parameters<'_>) -> Result<Shape, NominalError> {
     let (depth, width) = (p.length("depth")?, p.length("width")?);
     let fraction = p.ratio("truncation", LARGEST_TRUNCATION)?;
+    if fraction < SMALLEST_TRUNCATION {
+        let advice = ("", "tails this thin carry no flow: use a larger fraction");
+        return Err(p.refuse(
+            "truncation",
+            fraction,
+            "at least",
+            SMALLEST_TRUNCATION,
+            advice,
+        ));
+    }
     let full_depth = depth / (1.0 - fraction);
     let edge = width * (-fraction.ln() / 8.0).sqrt();
     let profile = |x: f64| {

@@ -439,7 +439,7 @@ static KINDS: &[KindInfo] = &[
             ),
             ParameterInfo {
                 name: "truncation",
-                meaning: "the lid closes the profile where it has fallen to this fraction of its depth, below 0.5",
+                meaning: "the lid closes the profile where it has fallen to this fraction of its depth, 1e-9 to below 0.5",
                 quantity: Quantity::Ratio,
                 default: Some("0.01"),
                 example: "0.02",

@@ -15,6 +15,12 @@ use crate::geometry::{Loop, Outline, Point};
 /// Names of the parameters that place a post.
 const PLACEMENT: [&str; 3] = ["x", "y", "rotation"];
 
+/// Most vertices of all posts of a section, before the last one.
+const MOST_VERTICES: usize = 4_000_000;
+
+/// Lower left and upper right corner of a box.
+type Extent = (Point, Point);
+
 /// Places the posts of a section as islands.
 pub(super) fn place(p: &Parameters<'_>, mut shape: Shape) -> Result<Shape, NominalError> {
     let members = match p.value("posts") {
@@ -23,16 +29,31 @@ pub(super) fn place(p: &Parameters<'_>, mut shape: Shape) -> Result<Shape, Nomin
         Some(other) => return Err(p.not_readable("posts", describe(other))),
     };
     let walls = shape.outline.clone();
+    let mut vertices = 0;
+    let mut boxes: Vec<Vec<Option<Extent>>> = walls
+        .lumens
+        .iter()
+        .map(|lumen| lumen.islands.iter().map(|i| bounds(&i.points)).collect())
+        .collect();
     for (i, member) in members.iter().enumerate() {
         let nested = |source| NominalError::Nested {
             place: format!("`posts`, number {}", i + 1),
             source: Box::new(source),
         };
+        if vertices > MOST_VERTICES {
+            return Err(nested(NominalError::TooManyVertices {
+                limit: MOST_VERTICES,
+            }));
+        }
         let SpecValue::Spec(spec) = member else {
             return Err(nested(p.not_readable("posts", describe(member))));
         };
         let post = Post::read(p, spec).map_err(nested)?;
-        let lumen = post.lumen(&walls, &shape.outline).map_err(nested)?;
+        let lumen = post.lumen(&walls, &shape.outline, &boxes).map_err(nested)?;
+        vertices += post.points.len();
+        if let Some(boxes) = boxes.get_mut(lumen) {
+            boxes.push(bounds(&post.points));
+        }
         if let Some(lumen) = shape.outline.lumens.get_mut(lumen) {
             lumen.islands.push(Loop::new(post.points));
         }
@@ -84,8 +105,17 @@ impl Post {
         Ok(Self { centre, points })
     }
 
-    /// Number of the lumen that the post stands in, clear of everything; `walls` is the section without posts.
-    fn lumen(&self, walls: &Outline, all: &Outline) -> Result<usize, NominalError> {
+    /// Number of the lumen that the post stands in, clear of everything.
+    ///
+    /// - `walls`: the section without posts
+    /// - `all`: the section with the posts placed so far
+    /// - `boxes`: bounds of the islands of `all`, by lumen
+    fn lumen(
+        &self,
+        walls: &Outline,
+        all: &Outline,
+        boxes: &[Vec<Option<Extent>>],
+    ) -> Result<usize, NominalError> {
         let first = self.points.first().copied().unwrap_or(self.centre);
         for wall in walls.loops() {
             if let Some(near) = meeting(&self.points, &wall.points) {
@@ -99,7 +129,14 @@ impl Post {
             .ok_or_else(|| self.outside(walls))?;
         let fixed = walls.lumens.get(lumen).map_or(0, |l| l.islands.len());
         let islands = all.lumens.get(lumen).map_or(&[][..], |l| &l.islands);
-        for (i, island) in islands.iter().enumerate() {
+        let boxes = boxes.get(lumen).map_or(&[][..], Vec::as_slice);
+        let own = bounds(&self.points);
+        let is_near = |other: &Option<Extent>| match (own, *other) {
+            (Some(own), Some(other)) => overlap(own, other),
+            _ => false,
+        };
+        let near = islands.iter().zip(boxes).enumerate();
+        for (i, (island, _)) in near.filter(|(_, (_, other))| is_near(other)) {
             let inside = |outer: &[Point], inner: &[Point]| {
                 inner.first().copied().filter(|&q| contains(outer, q))
             };
@@ -188,7 +225,7 @@ pub(super) fn contains(wall: &[Point], p: Point) -> bool {
 }
 
 /// Lower left and upper right corner of an edge's bounds.
-fn edge_bounds(a: Point, b: Point) -> (Point, Point) {
+fn edge_bounds(a: Point, b: Point) -> Extent {
     (
         [a[0].min(b[0]), a[1].min(b[1])],
         [a[0].max(b[0]), a[1].max(b[1])],
@@ -196,7 +233,7 @@ fn edge_bounds(a: Point, b: Point) -> (Point, Point) {
 }
 
 /// Lower left and upper right corner of the bounds of a loop.
-fn bounds(points: &[Point]) -> Option<(Point, Point)> {
+fn bounds(points: &[Point]) -> Option<Extent> {
     points
         .iter()
         .map(|&p| (p, p))
@@ -209,6 +246,6 @@ fn bounds(points: &[Point]) -> Option<(Point, Point)> {
 }
 
 /// Whether two boxes have a point in common.
-fn overlap(a: (Point, Point), b: (Point, Point)) -> bool {
+fn overlap(a: Extent, b: Extent) -> bool {
     a.0[0] <= b.1[0] && b.0[0] <= a.1[0] && a.0[1] <= b.1[1] && b.0[1] <= a.1[1]
 }

@@ -157,6 +157,11 @@ fn sizes_that_are_not_positive_or_not_sensible_are_refused() {
             &["plain number"],
         ),
         (
+            "gaussian_groove depth=3um width=9um truncation=1e-300",
+            &["`truncation`", "at least 1.00000e-9"],
+            &["larger fraction"],
+        ),
+        (
             "gaussian_groove depth=3um width=9um truncation=0.6",
             &["below 0.5"],
             &["plain number"],
@@ -411,4 +416,19 @@ fn sections_nested_without_end_are_refused() {
         error = *source;
     }
     assert!(matches!(error, NominalError::TooDeep { .. }));
+}
+
+#[test]
+fn more_posts_than_can_be_handled_are_refused_soon() {
+    let posts: Vec<String> = (0..1000)
+        .map(|i| format!("(circle diameter=3um x={}um y=-20um)", i * 4))
+        .collect();
+    let line = format!(
+        "rectangle width=9mm height=40um posts=[{}]",
+        posts.join(" ")
+    );
+    let error = refusal(&line);
+    assert!(error.to_string().contains("number 807"), "{error}");
+    assert!(error.to_string().contains("4000000 vertices"), "{error}");
+    assert!(error.hint().contains("fewer posts"));
 }

@@ -11,6 +11,7 @@
 
 use super::crossings::LineCrossings;
 use super::lattice::Lattice;
+use super::runs::{Cut, collect_runs, nodes_on_wall, number, pins};
 
 /// Distance in lattice units below which a node counts as lying on the wall.
 pub(super) const ON_WALL: f64 = 1e-6;
@@ -48,7 +49,7 @@ impl Colour {
         }
     }
 
-    fn of(i: u32, j: u32) -> Self {
+    pub(super) fn of(i: u32, j: u32) -> Self {
         if (i + j).is_multiple_of(2) {
             Self::Even
         } else {
@@ -154,15 +155,6 @@ pub struct Mask {
     pub blocks: Vec<Block>,
     /// Nodes turned into wall because an island would otherwise be invisible on this grid.
     pub pinned: Vec<(u32, u32)>,
-}
-
-/// An arm cut by the wall, before grouping by node.
-struct Cut {
-    run: u32,
-    i: u32,
-    direction: u8,
-    arm: f64,
-    edge: u32,
 }
 
 impl Mask {
@@ -489,130 +481,4 @@ impl Mask {
             j: run.row,
         });
     }
-}
-
-/// Nodes that a column crossing puts on the wall, as (row, column, edge).
-fn nodes_on_wall(columns: &LineCrossings, stride: u32) -> Vec<(u32, u32, u32)> {
-    let mut nodes = Vec::new();
-    let step = f64::from(stride);
-    for line in (0..columns.lines()).step_by(stride as usize) {
-        for crossing in columns.line(line) {
-            let nearest = (crossing.at / step).round();
-            if (crossing.at - nearest * step).abs() < ON_WALL {
-                nodes.push((nearest as u32, line as u32 / stride, crossing.edge));
-            }
-        }
-    }
-    nodes
-}
-
-/// For each island that no line of this grid crosses, the node nearest to it.
-fn pins(
-    lattice: &Lattice,
-    rows: &LineCrossings,
-    columns: &LineCrossings,
-    stride: u32,
-) -> Vec<(u32, u32)> {
-    if !lattice.is_island.iter().any(|&island| island) {
-        return Vec::new();
-    }
-    let mut seen = vec![false; lattice.is_island.len()];
-    for crossings in [rows, columns] {
-        for line in (0..crossings.lines()).step_by(stride as usize) {
-            for crossing in crossings.line(line) {
-                seen[lattice.edges[crossing.edge as usize].loop_index as usize] = true;
-            }
-        }
-    }
-    let step = f64::from(stride);
-    (0..seen.len())
-        .filter(|&index| lattice.is_island[index] && !seen[index])
-        .map(|index| {
-            let at = lattice.edges[lattice.loop_starts[index]].start;
-            ((at[0] / step).round() as u32, (at[1] / step).round() as u32)
-        })
-        .collect()
-}
-
-/// Runs of every row with the cuts at their ends.
-fn collect_runs(
-    rows: &LineCrossings,
-    stride: u32,
-    removed: &[(u32, u32, u32)],
-    cuts: &mut Vec<Cut>,
-) -> (Vec<Run>, Vec<u32>) {
-    let scale = 1.0 / f64::from(stride);
-    let margin = ON_WALL * scale;
-    let mut runs = Vec::new();
-    let mut row_start = vec![0];
-    let mut next_removed = 0;
-    for (j, line) in (0..rows.lines()).step_by(stride as usize).enumerate() {
-        let from = next_removed + removed[next_removed..].partition_point(|r| (r.0 as usize) < j);
-        next_removed = from + removed[from..].partition_point(|r| r.0 as usize == j);
-        let gone = &removed[from..next_removed];
-        for [left, right] in rows.line(line).as_chunks().0 {
-            let first = (left.at * scale + margin).ceil().max(0.0);
-            let last = (right.at * scale - margin).floor();
-            if last < first {
-                continue;
-            }
-            let (first, end) = (first as u32, last as u32 + 1);
-            let arms = [f64::from(first) - left.at * scale, right.at * scale - last];
-            let skip = gone.partition_point(|r| r.1 < first);
-            let inside = gone[skip..].iter().take_while(|r| r.1 < end);
-            let mut start = (first, arms[0], left.edge);
-            for &(_, i, edge) in inside {
-                push_run(&mut runs, cuts, j as u32, start, (i, 1.0, edge));
-                start = (i + 1, 1.0, edge);
-            }
-            push_run(&mut runs, cuts, j as u32, start, (end, arms[1], right.edge));
-        }
-        row_start.push(runs.len() as u32);
-    }
-    (runs, row_start)
-}
-
-/// Adds the run from `start.0` to before `end.0`; each end carries its arm length and edge.
-fn push_run(
-    runs: &mut Vec<Run>,
-    cuts: &mut Vec<Cut>,
-    row: u32,
-    start: (u32, f64, u32),
-    end: (u32, f64, u32),
-) {
-    if start.0 >= end.0 {
-        return;
-    }
-    for (i, direction, arm, edge) in [
-        (start.0, ARM_LEFT, start.1, start.2),
-        (end.0 - 1, ARM_RIGHT, end.1, end.2),
-    ] {
-        cuts.push(Cut {
-            run: runs.len() as u32,
-            i,
-            direction: direction as u8,
-            arm,
-            edge,
-        });
-    }
-    runs.push(Run {
-        first: start.0,
-        len: end.0 - start.0,
-        row,
-        base: [0; 2],
-        natural: 0,
-    });
-}
-
-/// Gives every node its storage index; returns the number of nodes of each colour.
-fn number(runs: &mut [Run]) -> [usize; 2] {
-    let mut next = [0_u32; 2];
-    for run in runs.iter_mut() {
-        run.base = next;
-        run.natural = next[0] + next[1];
-        let first = Colour::of(run.first, run.row) as usize;
-        next[first] += run.len.div_ceil(2);
-        next[1 - first] += run.len / 2;
-    }
-    [next[0] as usize, next[1] as usize]
 }

@@ -6,6 +6,7 @@ mod cut_cell;
 mod lattice;
 mod mask;
 mod resolution;
+mod runs;
 
 pub(crate) use coverage::coverage;
 pub use crossings::{Crossing, LineCrossings};

@@ -35,8 +35,8 @@ use serde_json::Value;
 /// A rectangle of 100 um by 40 um.
 const RECTANGLE: &str = "x_um,y_um\n0,0\n100,0\n100,40\n0,40\n";
 /// Conductance of a rectangle of 100 um by 40 um, m^4. Computed reference: the Fourier series of the velocity
-/// (Boussinesq 1868), summed to rounding.
-const RECTANGLE_CONDUCTANCE: f64 = 3.989_838_7e-19;
+/// (Boussinesq 1868), `w h^3/12 (1 - 192 h/(pi^5 w) sum of tanh(n pi w/(2 h))/n^5, odd n)`, to n = 3999.
+const RECTANGLE_CONDUCTANCE: f64 = 3.989_841_195e-19;
 
 /// What a run left behind.
 struct Run {

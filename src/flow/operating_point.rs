@@ -235,6 +235,7 @@ pub(crate) mod tests {
                 vertices: 0,
             },
             conductance: exact(form.conductance),
+            bracket: Err(crate::proof::ProofError::Cutting { relative: 1.0 }),
             conductance_finest_grid: form.conductance,
             fanning_dh: 16.0,
             darcy_dh: 64.0,

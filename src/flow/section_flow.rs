@@ -2,6 +2,7 @@
 
 use crate::geometry::Point;
 use crate::measured::Estimate;
+use crate::proof::{Bracket, ProofError};
 use crate::warning::Warning;
 
 /// Everything the solve of one section says, per unit pressure gradient and viscosity.
@@ -11,6 +12,8 @@ pub struct SectionFlow {
     pub geometry: SectionGeometry,
     /// Conductance `K`, m^4, best value from the grid sequence.
     pub conductance: Estimate,
+    /// Proven bounds of `K` for the outline as given, m^4, or why there are none.
+    pub bracket: Result<Bracket, ProofError>,
     /// `K` on the finest grid alone, m^4, before extrapolation.
     pub conductance_finest_grid: f64,
     /// Poiseuille number: Fanning `f Re` on the hydraulic diameter, `Dh^2 A / (2 K)`.

@@ -5,6 +5,7 @@ use std::time::Instant;
 use crate::geometry::{Corner, Outline, largest_inscribed_circle};
 use crate::grid::{Lattice, LineCrossings, Mask, ResolutionError, spacing};
 use crate::measured::Estimate;
+use crate::proof::{Bracket, ProofError, bracket};
 use crate::solve::{Field, Hierarchy, SolveControl, Solved};
 use crate::warning::{Code, Warning};
 
@@ -242,6 +243,7 @@ fn solve_at(
     });
     answers.reverse();
     let (mask, phi) = hierarchy.into_finest();
+    let bracket = bracket(&lattice, &mask, &phi).map(|b| b.scaled(spacing.powi(4)));
     let seconds = start.elapsed().as_secs_f64();
     let grid = GridReport {
         spacing,
@@ -255,6 +257,7 @@ fn solve_at(
         phi: &phi,
         corners,
         misfit: fitted.misfit,
+        bracket,
         answers,
     };
     let flow = assemble(outline, &solution, grid, seconds);
@@ -275,6 +278,8 @@ struct Solution<'a> {
     corners: Vec<Vec<Corner>>,
     /// How far re-entrant corners miss the nodes, 0 to 1.
     misfit: f64,
+    /// m^4.
+    bracket: Result<Bracket, ProofError>,
     /// Finest first.
     answers: Vec<GridAnswer>,
 }
@@ -286,6 +291,7 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
         phi,
         corners,
         misfit,
+        bracket,
         answers,
     } = solution;
     let geometry = geometry(outline);
@@ -303,7 +309,10 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
         }
         estimate
     };
-    let conductance = over_grids(&|a| a.integrals.conductance).scaled(h.powi(4));
+    let mut conductance = over_grids(&|a| a.integrals.conductance).scaled(h.powi(4));
+    if let Ok(proven) = bracket {
+        conductance = within(conductance, *proven);
+    }
     let square = over_grids(&|a| a.integrals.square).scaled(h.powi(6));
     let cube = over_grids(&|a| a.integrals.cube).scaled(h.powi(8));
     let top = over_grids(&|a| a.peak.value).scaled(h * h);
@@ -321,6 +330,7 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
     );
     let mut flow = SectionFlow {
         conductance,
+        bracket: *bracket,
         conductance_finest_grid: finest.conductance * h.powi(4),
         fanning_dh,
         darcy_dh: 4.0 * fanning_dh,
@@ -343,6 +353,16 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
     };
     flow.warnings = warnings(&flow, small, mask.pinned.len());
     flow
+}
+
+/// The best value is never outside the proven bounds, nor its error larger than they allow.
+fn within(best: Estimate, proven: Bracket) -> Estimate {
+    let value = best.value.clamp(proven.low, proven.high);
+    let farthest = (value - proven.low).max(proven.high - value);
+    Estimate {
+        value,
+        error: best.error.min(farthest),
+    }
 }
 
 /// `moment * factor / K^power` with its error.

@@ -13,7 +13,7 @@ use super::crossings::LineCrossings;
 use super::lattice::Lattice;
 
 /// Distance in lattice units below which a node counts as lying on the wall.
-pub(super) const ON_WALL: f64 = 1e-8;
+pub(super) const ON_WALL: f64 = 1e-6;
 /// Marks an arm that ends at a node taken out of the fluid, where no outline edge is known.
 pub const NO_EDGE: u32 = u32::MAX;
 /// Marks an arm that ends at the wall, so that it has no neighbour.

@@ -2,12 +2,14 @@
 
 mod coverage;
 mod crossings;
+mod cut_cell;
 mod lattice;
 mod mask;
 mod resolution;
 
 pub(crate) use coverage::coverage;
 pub use crossings::{Crossing, LineCrossings};
+pub(crate) use cut_cell::{EAST, NORTH, Region, SOUTH, WEST, cut_cells, shared_parts, signed_area};
 pub use lattice::{Lattice, WallEdge};
 pub use mask::{
     ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Block, Colour, Mask, NO_EDGE, NO_NODE, Run, Segment,

@@ -120,6 +120,14 @@ fn section_fields(flow: &SectionFlow) -> Vec<Field> {
         ("vertices_1", g.vertices.to_string()),
         ("conductance_m4", number(flow.conductance.value)),
         (
+            "conductance_low_m4",
+            number(flow.bracket.as_ref().ok().map(|b| b.low)),
+        ),
+        (
+            "conductance_high_m4",
+            number(flow.bracket.as_ref().ok().map(|b| b.high)),
+        ),
+        (
             "conductance_estimated_error_m4",
             number(flow.conductance.error),
         ),

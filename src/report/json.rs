@@ -17,10 +17,6 @@ use crate::warning::Warning;
 /// Name and version of this contract.
 pub const SCHEMA: &str = "etchwise/1";
 
-/// Why `low` and `high` are null.
-const NO_BRACKET: &str = "no proven bracket was computed; estimated_error is an estimate from the grid \
-sequence, not a bound and not a standard uncertainty";
-
 /// The document as pretty-printed JSON with a closing line feed.
 ///
 /// # Errors
@@ -46,9 +42,13 @@ struct Quantity {
     value: Number,
     unit: &'static str,
     #[serde(skip_serializing_if = "Option::is_none")]
+    low: Option<Number>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    high: Option<Number>,
+    #[serde(skip_serializing_if = "Option::is_none")]
     estimated_error: Option<Number>,
     #[serde(skip_serializing_if = "Option::is_none")]
-    absent_because: Option<&'static str>,
+    absent_because: Option<String>,
 }
 
 /// A number with its unit and its proven bracket.
@@ -56,9 +56,8 @@ struct Quantity {
 struct Bracketed {
     #[serde(flatten)]
     quantity: Quantity,
-    low: Number,
-    high: Number,
-    bracket_absent_because: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    bracket_absent_because: Option<String>,
 }
 
 impl Number {
@@ -76,18 +75,23 @@ impl Quantity {
         Self {
             value: Number::real(value),
             unit,
+            low: None,
+            high: None,
             estimated_error: None,
-            absent_because: (!value.is_finite()).then_some("the computed value is not finite"),
+            absent_because: (!value.is_finite())
+                .then(|| "the computed value is not finite".to_owned()),
         }
     }
 
-    fn optional(value: Option<f64>, unit: &'static str, reason: &'static str) -> Self {
+    fn optional(value: Option<f64>, unit: &'static str, reason: &str) -> Self {
         value.map_or(
             Self {
                 value: Number::Absent,
                 unit,
+                low: None,
+                high: None,
                 estimated_error: None,
-                absent_because: Some(reason),
+                absent_because: Some(reason.to_owned()),
             },
             |v| Self::real(v, unit),
         )
@@ -97,6 +101,8 @@ impl Quantity {
         Self {
             value: Number::Count(value),
             unit: "1",
+            low: None,
+            high: None,
             estimated_error: None,
             absent_because: None,
         }
@@ -109,12 +115,34 @@ impl Quantity {
         }
     }
 
-    fn bracketed(estimate: Estimate, unit: &'static str) -> Bracketed {
-        Bracketed {
-            quantity: Self::estimate(estimate, unit),
-            low: Number::Absent,
-            high: Number::Absent,
-            bracket_absent_because: NO_BRACKET,
+    /// The same with the proven bounds that follow from those of the conductance.
+    fn between(self, bounds: Option<(f64, f64)>) -> Self {
+        match bounds {
+            Some((low, high)) if !matches!(self.value, Number::Absent) => Self {
+                low: Some(Number::real(low)),
+                high: Some(Number::real(high)),
+                ..self
+            },
+            _ => self,
+        }
+    }
+
+    /// The conductance with its proven bounds, null with the reason where there are none.
+    fn bracketed(flow: &SectionFlow) -> Bracketed {
+        let quantity = Self::estimate(flow.conductance, "m^4");
+        match &flow.bracket {
+            Ok(proven) => Bracketed {
+                quantity: quantity.between(Some((proven.low, proven.high))),
+                bracket_absent_because: None,
+            },
+            Err(error) => Bracketed {
+                quantity: Self {
+                    low: Some(Number::Absent),
+                    high: Some(Number::Absent),
+                    ..quantity
+                },
+                bracket_absent_because: Some(error.to_string()),
+            },
         }
     }
 }
@@ -164,6 +192,12 @@ impl<'a> Root<'a> {
         } else {
             no_length
         };
+        // Bounds of what goes with 1/K.
+        let inverse = |value: f64| {
+            let proven = flow.bracket.as_ref().ok()?;
+            let k = flow.conductance.value;
+            Some((value * k / proven.high, value * k / proven.low))
+        };
         Self {
             schema: SCHEMA,
             tool_version: env!("CARGO_PKG_VERSION"),
@@ -175,12 +209,13 @@ impl<'a> Root<'a> {
                 notes: s.notes,
             }),
             section: Section::new(flow),
-            conductance: Quantity::bracketed(flow.conductance, "m^4"),
+            conductance: Quantity::bracketed(flow),
             conductance_finest_grid: Quantity::real(flow.conductance_finest_grid, "m^4"),
             poiseuille: Poiseuille {
-                fanning_dh: Quantity::real(flow.fanning_dh, "1"),
-                darcy_dh: Quantity::real(flow.darcy_dh, "1"),
-                fanning_sqrt_area: Quantity::real(flow.fanning_sqrt_area, "1"),
+                fanning_dh: Quantity::real(flow.fanning_dh, "1").between(inverse(flow.fanning_dh)),
+                darcy_dh: Quantity::real(flow.darcy_dh, "1").between(inverse(flow.darcy_dh)),
+                fanning_sqrt_area: Quantity::real(flow.fanning_sqrt_area, "1")
+                    .between(inverse(flow.fanning_sqrt_area)),
             },
             peak_to_mean_velocity: Quantity::estimate(flow.peak.to_mean, "1"),
             peak: Peak {
@@ -192,16 +227,25 @@ impl<'a> Root<'a> {
             wall_shear: Shear::new(flow),
             grid: Grid::new(flow),
             solver: Solver::new(&flow.solver),
-            bracket_relative_width: Quantity::optional(None, "1", NO_BRACKET),
+            bracket_relative_width: match &flow.bracket {
+                Ok(proven) => Quantity::real(proven.relative_width(), "1"),
+                Err(error) => Quantity::optional(None, "1", &error.to_string()),
+            },
             identities: flow
                 .identities
                 .iter()
                 .map(|i| (i.name, IdentityView::new(i)))
                 .collect(),
             fluid: FluidView::new(document),
-            resistance_per_length: maybe(document.resistance_per_length(), "Pa s/m^4", no_fluid),
+            resistance_per_length: maybe(document.resistance_per_length(), "Pa s/m^4", no_fluid)
+                .between(
+                    document
+                        .resistance_per_length()
+                        .and_then(|r| inverse(r.value)),
+                ),
             length: Quantity::optional(document.length, "m", no_length),
-            resistance: maybe(resistance, "Pa s/m^3", reason),
+            resistance: maybe(resistance, "Pa s/m^3", reason)
+                .between(resistance.and_then(|r| inverse(r.value))),
             operating_point: PointView::new(document),
             shortcuts: document
                 .shortcuts

@@ -153,7 +153,7 @@ pub(crate) fn to_ascii(text: &str) -> String {
             '\u{b1}' => out.push_str("+/-"),
             '\u{b7}' => out.push('*'),
             '\u{d7}' => out.push('x'),
-            '\u{b0}' => out.push_str(" deg"),
+            '\u{b0}' => out.push_str("deg"),
             c if c.is_ascii() => out.push(c),
             c => out.extend(c.escape_unicode()),
         }

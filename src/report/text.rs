@@ -124,14 +124,33 @@ fn conductance(flow: &SectionFlow) -> String {
         format!("{} m^4", significant(k.error, 2)),
         format!("{} of K", per_cent(k.relative())),
     ]);
+    let proof = match &flow.bracket {
+        Ok(proven) => {
+            table.row([
+                "K, proven".to_owned(),
+                format!(
+                    "{} to {} m^4",
+                    significant(proven.low, 6),
+                    significant(proven.high, 6)
+                ),
+                format!("{} wide", per_cent(proven.relative_width())),
+            ]);
+            "The proven range holds for the outline as given, whatever the grid; resistance and friction \
+             factors share its relative width."
+                .to_owned()
+        }
+        Err(error) => {
+            format!("No proven range: {error}; a finer grid (--cells-across) may give one.")
+        }
+    };
     table.row([
         "K on the finest grid alone".to_owned(),
         format!("{} m^4", significant(flow.conductance_finest_grid, 7)),
     ]);
     let levels = counted(flow.solver.levels.len(), "grid", "grids");
     let note = format!(
-        "The error is an estimate from a sequence of {levels}, not a proven bound and not a standard \
-         uncertainty. It holds for the outline as given: K goes with length^4, so 1 % of scale is 4 % of K."
+        "{proof} The error of the best value is an estimate from a sequence of {levels}, not a bound and not \
+         a standard uncertainty. K goes with length^4, so 1 % of scale is 4 % of K."
     );
     format!(
         "{}{}",

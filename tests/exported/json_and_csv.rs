@@ -151,7 +151,14 @@ fn json_keeps_the_contract_with_units_and_every_digit() {
 
 #[test]
 fn json_says_why_something_is_absent() {
-    let sample = sample();
+    let mut sample = sample();
+    let full = json(&sample.bare());
+    let proven = sample.flow.bracket.unwrap();
+    assert_eq!(full["conductance"]["low"].as_f64(), Some(proven.low));
+    assert_eq!(full["conductance"]["high"].as_f64(), Some(proven.high));
+    let width = full["bracket_relative_width"]["value"].as_f64().unwrap();
+    close(width, proven.relative_width(), 1e-12);
+    sample.flow.bracket = Err(etchwise::proof::ProofError::Unbalanced { divergence: 1.0 });
     let bare = json(&sample.bare());
     for part in ["source", "fluid", "operating_point", "shortcuts"] {
         assert_eq!(bare[part], Value::Null);

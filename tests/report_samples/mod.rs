@@ -14,6 +14,7 @@ use etchwise::flow::{
 };
 use etchwise::geometry::{Loop, Lumen, Outline, Point};
 use etchwise::measured::Estimate;
+use etchwise::proof::Bracket;
 use etchwise::report::{SolveDocument, SourceRecord};
 use etchwise::warning::{Code, Warning};
 
@@ -272,6 +273,10 @@ fn section_flow(
             value: k,
             error: 2.1e-6 * k,
         },
+        bracket: Ok(Bracket {
+            low: k * (1.0 - 2e-4),
+            high: k * (1.0 + 1e-4),
+        }),
         conductance_finest_grid: k * (1.0 - 3e-5),
         fanning_dh: fanning,
         darcy_dh: 4.0 * fanning,

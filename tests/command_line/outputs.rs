@@ -1,0 +1,185 @@
+//! Where results go: streams, files, nothing half written, nothing overwritten that was read.
+
+use std::fs;
+use std::io::Read;
+use std::process::Stdio;
+
+use crate::{Folder, RECTANGLE};
+
+#[test]
+fn results_go_to_standard_output_and_talk_to_standard_error() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    let run = folder.line("solve a.csv --json --picture a.png --vtk a");
+    assert!(serde_json::from_str::<serde_json::Value>(&run.out).is_ok());
+    assert_eq!(run.err, "wrote a.vti\nwrote a.vtp\nwrote a.png\n");
+    let quiet = folder.line("solve a.csv --json --picture a.png --vtk a -q");
+    assert_eq!(quiet.err, "");
+    let file = folder.line("solve a.csv --json -o a.json");
+    assert_eq!(
+        (file.out.as_str(), file.err.as_str()),
+        ("", "wrote a.json\n")
+    );
+    assert!(serde_json::from_str::<serde_json::Value>(&folder.read("a.json")).is_ok());
+    // Errors are said even when quiet.
+    folder
+        .line("solve b.csv -q")
+        .assert_error(3, &["no such file"]);
+}
+
+#[test]
+fn a_dash_is_standard_input_and_standard_output() {
+    let folder = Folder::new();
+    let run = folder.run_with(&["solve", "-", "--json"], RECTANGLE);
+    assert_eq!(run.status, 0, "{}", run.err);
+    let record: serde_json::Value = serde_json::from_str(&run.out).unwrap();
+    assert_eq!(record["source"]["path"], "standard input");
+    let run = folder.run_with(&["solve", "-", "-o", "-"], RECTANGLE);
+    assert!(run.out.starts_with("Section"), "{}", run.out);
+    let run = folder.run_with(&["check", "-"], RECTANGLE);
+    assert!(run.out.contains("no problems in 4 vertices"), "{}", run.out);
+    let run = folder.line("draw circle --diameter 9um -o -");
+    assert!(run.out.contains("kind = \"circle\""));
+    assert!(folder.names().is_empty());
+}
+
+#[test]
+fn a_reader_that_goes_away_ends_the_run_quietly() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    for arguments in [
+        &["solve", "a.csv", "--shortcuts"][..],
+        &["draw", "circle", "--diameter", "1mm", "--points"],
+        &["--help"],
+        &["solve", "--help"],
+    ] {
+        let mut child = std::process::Command::new(assert_cmd::cargo::cargo_bin!("etchwise"))
+            .args(arguments)
+            .current_dir(folder.0.path())
+            .stdout(Stdio::piped())
+            .stderr(Stdio::piped())
+            .spawn()
+            .unwrap();
+        drop(child.stdout.take());
+        let mut said = String::new();
+        child
+            .stderr
+            .take()
+            .unwrap()
+            .read_to_string(&mut said)
+            .unwrap();
+        let status = child.wait().unwrap();
+        assert_eq!(
+            (said.as_str(), status.code()),
+            ("", Some(0)),
+            "{arguments:?}"
+        );
+    }
+}
+
+#[test]
+fn targets_that_cannot_be_written_are_found_before_the_solve() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    fs::create_dir(folder.path("d")).unwrap();
+    for (options, parts) in [
+        ("-o d", &["`d` is a folder"][..]),
+        (
+            "-o no/such.txt",
+            &["folder of `no/such.txt` does not exist", "create it"],
+        ),
+        (
+            "-o a.csv",
+            &["`a.csv` is an input file and is not overwritten"],
+        ),
+        ("-o ./d/../a.csv", &["is an input file"]),
+        ("-o a.csv/x", &["cannot be written"]),
+        ("--vtk no/field", &["does not exist"]),
+        ("--picture d/no/x.png", &["does not exist"]),
+    ] {
+        let run = folder.line(&format!("solve a.csv --picture ok.png {options}"));
+        run.assert_error(3, parts);
+        assert_eq!(folder.names(), ["a.csv", "d"], "{options}");
+        assert_eq!(folder.read("a.csv"), RECTANGLE);
+    }
+    for options in [
+        "--picture x.png --picture x.png",
+        "--picture x.png --picture ./x.png",
+        "-o x.png --picture x.png",
+        "--vtk x -o x.vtp",
+        "--vtk x --legacy-vtk -o x.vtk",
+    ] {
+        let run = folder.line(&format!("solve a.csv {options}"));
+        run.assert_error(2, &["two outputs", "own name"]);
+        assert_eq!(folder.names(), ["a.csv", "d"], "{options}");
+    }
+}
+
+#[cfg(unix)]
+#[test]
+fn links_are_followed_and_inputs_known_by_any_name() {
+    use std::os::unix::fs::symlink;
+    let folder = Folder::with("a.csv", RECTANGLE);
+    symlink("a.csv", folder.path("link.csv")).unwrap();
+    fs::hard_link(folder.path("a.csv"), folder.path("hard.csv")).unwrap();
+    symlink("new.txt", folder.path("to_new")).unwrap();
+    symlink("ring2", folder.path("ring1")).unwrap();
+    symlink("ring1", folder.path("ring2")).unwrap();
+    for target in ["link.csv", "hard.csv"] {
+        folder
+            .run(&["solve", "a.csv", "-o", target])
+            .assert_error(3, &["is an input file"]);
+    }
+    folder
+        .line("solve a.csv -o ring1")
+        .assert_error(3, &["ring1"]);
+    assert_eq!(folder.line("solve link.csv -o to_new").status, 0);
+    assert!(folder.read("new.txt").starts_with("Section link"));
+    let is_link = fs::symlink_metadata(folder.path("to_new"))
+        .unwrap()
+        .is_symlink();
+    assert!(is_link, "the link stays");
+}
+
+#[cfg(target_os = "linux")]
+#[test]
+fn a_full_device_is_told_and_leaves_nothing() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    folder
+        .line("solve a.csv --picture ok.png -o /dev/full")
+        .assert_error(3, &["`/dev/full` cannot be written", "No space left"]);
+    assert_eq!(folder.names(), ["a.csv"]);
+}
+
+#[test]
+fn an_old_result_is_replaced_whole_or_not_at_all() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    folder.write("old.txt", "old");
+    assert_eq!(folder.line("solve missing.csv -o old.txt").status, 3);
+    assert_eq!(folder.read("old.txt"), "old");
+    assert_eq!(folder.line("solve a.csv -o old.txt").status, 0);
+    assert!(folder.read("old.txt").starts_with("Section a\n"));
+    assert_eq!(folder.names(), ["a.csv", "old.txt"]);
+}
+
+#[test]
+fn names_with_control_characters_or_of_great_length_do_no_harm() {
+    let text = |name: &str| {
+        format!(
+            "name = \"{name}\"\nunit = \"um\"\n[[lumen]]\nouter = [[0, 0], [90, 0], [90, 50]]\n"
+        )
+    };
+    let folder = Folder::with("a.toml", text("a\\u001b[31mb\\u202ec\\nd"));
+    let run = folder.line("solve a.toml --picture a.svg");
+    assert!(run.out.starts_with("Section a [31mb c d\n"), "{}", run.out);
+    let table = folder.line("solve a.toml --csv");
+    assert!(
+        table
+            .out
+            .lines()
+            .nth(1)
+            .unwrap()
+            .starts_with("a [31mb c d,")
+    );
+    folder.write("a.toml", text(&"n".repeat(1_000_000)));
+    let run = folder.line("solve a.toml --picture a.svg --picture a.png --vtk a --legacy-vtk");
+    assert_eq!(run.status, 0, "{}", run.err);
+    assert!(run.out.len() < 10_000);
+}

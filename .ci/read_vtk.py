@@ -150,7 +150,8 @@ def check_wall(path, result):
         ids = np.array([ids.GetId(k) for k in range(ids.GetNumberOfIds())])
         check(ids[0] == ids[-1], path, f"polyline {i} is not closed")
         check(len(set(v["loop"][ids])) == 1, path, f"polyline {i} runs over two loops")
-        check((np.diff(v["arc_length"][ids[:-1]]) > 0).all(), path, f"arc length does not grow along polyline {i}")
+        # A row and a column of the grid may meet the wall in one point.
+        check((np.diff(v["arc_length"][ids[:-1]]) >= 0).all(), path, f"arc length falls along polyline {i}")
         step = np.linalg.norm(np.diff(positions[ids], axis=0), axis=1)
         shear = v["wall_shear"][ids]
         total += (0.5 * (shear[1:] + shear[:-1]) * step).sum()

@@ -35,6 +35,8 @@ const RESIDUAL_SHARE: f64 = 0.002;
 const WIDE_CORNER: f64 = 100.0 * std::f64::consts::PI / 180.0;
 /// Cells that an island must span to be seen by the three finest grids.
 const ISLAND_CELLS: f64 = 10.0;
+/// Estimated relative error of `K` from which a grid that was asked for is called rough.
+const ROUGH: f64 = 1e-3;
 /// Relative error of `K` that the default grid aims at.
 pub const DEFAULT_ACCURACY: f64 = 1e-4;
 
@@ -154,7 +156,26 @@ pub fn solve_outline(
     let Some(cells) = options.cells_across else {
         return refine(&outline, diameter, options, attempt);
     };
-    attempt(cells)
+    let mut solved = attempt(cells)?;
+    warn_if_rough(&mut solved.flow, options.accuracy.max(ROUGH));
+    Ok(solved)
+}
+
+/// Adds a warning where the estimated error of `K` is above a limit.
+fn warn_if_rough(flow: &mut SectionFlow, limit: f64) {
+    let reached = flow.conductance.relative();
+    if reached > limit {
+        flow.warnings.push(Warning {
+            code: Code::AccuracyNotReached,
+            message: format!(
+                "the estimated numerical error of the conductance is {:.2} %, above {:.2} %",
+                100.0 * reached,
+                100.0 * limit
+            ),
+            advice: "ask for a finer grid with --cells-across".to_owned(),
+            numbers: vec![("reached", reached), ("asked", limit)],
+        });
+    }
 }
 
 /// Doubles the cells across until the estimated error of `K` is within the accuracy.
@@ -178,19 +199,7 @@ fn refine(
         cells = next;
         solved = attempt(cells)?;
     }
-    let reached = solved.flow.conductance.relative();
-    if reached > options.accuracy {
-        solved.flow.warnings.push(Warning {
-            code: Code::AccuracyNotReached,
-            message: format!(
-                "the estimated numerical error of the conductance is {:.2} %, above the {:.2} % aimed at",
-                100.0 * reached,
-                100.0 * options.accuracy
-            ),
-            advice: "ask for a finer grid with --cells-across".to_owned(),
-            numbers: vec![("reached", reached), ("asked", options.accuracy)],
-        });
-    }
+    warn_if_rough(&mut solved.flow, options.accuracy);
     Ok(solved)
 }
 

@@ -21,6 +21,7 @@ use super::segment_tree::{Bounds, NearestWall, SegmentTree};
 use super::wall_edges::{WallEdges, orientation};
 use std::cmp::Ordering;
 use std::collections::BinaryHeap;
+use std::ops::ControlFlow;
 
 /// Relative gap between radius and upper bound at which the search ends.
 pub const RADIUS_TOLERANCE: f64 = 1e-6;
@@ -294,9 +295,33 @@ impl Search {
         let is_in_box = (0..2).all(|k| (p[k] - root.centre[k]).abs() <= root.half);
         let is_inside = is_in_box && self.is_inside(p, near);
         if is_inside && self.best.is_none_or(|(_, r)| near.distance > r) {
+            // Where two walls run into a point, the nearest of them is a matter of rounding, so that a
+            // circle counts only if a ray says the same.
+            if !self.is_inside_by_ray(p) {
+                return false;
+            }
             self.best = Some((p, near.distance));
         }
         is_inside
+    }
+
+    /// Whether a ray to the right meets the wall an odd number of times; exact.
+    fn is_inside_by_ray(&self, p: Point) -> bool {
+        let ray = Bounds {
+            low: p,
+            high: [self.root.centre[0] + 2.0 * self.root.half, p[1]],
+        };
+        let mut inside = false;
+        let _ = self.tree.visit_box(&ray, &mut |edge| {
+            let [a, b] = self.edges.ends(edge);
+            if (a[1] > p[1]) != (b[1] > p[1]) {
+                let upwards = b[1] > a[1];
+                let left = orientation(a, b, p) == Ordering::Greater;
+                inside ^= left == upwards;
+            }
+            ControlFlow::Continue(())
+        });
+        inside
     }
 
     /// Whether a point lies in the fluid, from the wall nearest to it.

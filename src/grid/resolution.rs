@@ -6,7 +6,7 @@ use crate::geometry::Outline;
 /// `cargo bench --bench solve`, rounded up.
 pub const BYTES_PER_NODE: f64 = 64.0;
 /// Memory of one crossing of the outline with a lattice line, with its arm, bytes.
-const BYTES_PER_CROSSING: f64 = 160.0;
+const BYTES_PER_CROSSING: f64 = 400.0;
 /// Fewest cells across the largest circle of the smallest lumen that can be asked for.
 pub const LEAST_CELLS_ACROSS: f64 = 4.0;
 

@@ -82,10 +82,11 @@ impl Bracket {
 /// # Errors
 /// [`ProofError`] when the outline could not be cut, or the flux not be balanced, exactly enough.
 pub fn bracket(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<Bracket, ProofError> {
-    let (low, high) = (
-        lower_bound::lower_bound(lattice, mask, phi)?,
-        upper_bound::upper_bound(lattice, mask, phi)?,
+    let (low, high) = rayon::join(
+        || lower_bound::lower_bound(lattice, mask, phi),
+        || upper_bound::upper_bound(lattice, mask, phi),
     );
+    let (low, high) = (low?, high?);
     if low <= high {
         Ok(Bracket { low, high })
     } else {

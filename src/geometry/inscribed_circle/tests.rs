@@ -1,6 +1,7 @@
 //! Shapes whose largest circle is known, and random ones against sampling.
 
 use super::*;
+use crate::geometry::NominalSpec;
 use crate::geometry::outline::{Loop, Outline};
 use proptest::prelude::*;
 use std::f64::consts::{PI, TAU};
@@ -120,18 +121,11 @@ fn a_wall_of_many_vertices_costs_no_more_cells() {
 
 #[test]
 fn walls_that_run_into_a_point_do_not_put_the_circle_outside() {
-    // A shallow groove with tails a millionth of its width deep.
-    let depth = |x: f64| -1e-6 * ((-x * x / 2e-8).exp() - 1e-7).max(0.0);
-    let edge = (2e-8 * (1e7_f64).ln()).sqrt();
-    let bottom = (1..2000).map(|i| {
-        let x = edge * (f64::from(i) / 1000.0 - 1.0);
-        [x, depth(x)]
-    });
-    let points = std::iter::once([-edge, 0.0])
-        .chain(bottom)
-        .chain([[edge, 0.0]])
-        .collect();
-    let circle = largest_inscribed_circle(&lumen(Outline::single(points))).unwrap();
+    // Tails of a ten-millionth of the depth, where lid and bottom are nearest to a rounding.
+    let groove: NominalSpec = "gaussian_groove depth=1um width=1mm truncation=1e-7"
+        .parse()
+        .unwrap();
+    let circle = largest_inscribed_circle(&lumen(groove.outline().unwrap())).unwrap();
     assert!((4.9e-7..5.1e-7).contains(&circle.radius), "{circle:?}");
 }
 

@@ -253,8 +253,8 @@ fn solve_at(
     });
     answers.reverse();
     let (mask, phi) = hierarchy.into_finest();
-    let bracket = bracket(&lattice, &mask, &phi).map(|b| b.scaled(spacing.powi(4)));
     let seconds = start.elapsed().as_secs_f64();
+    let bracket = bracket(&lattice, &mask, &phi).map(|b| b.scaled(spacing.powi(4)));
     let grid = GridReport {
         spacing,
         fluid_nodes: mask.nodes(),

@@ -74,6 +74,15 @@ pub(super) fn check(outline: &Outline) -> Problems {
     check.found
 }
 
+/// The vertices that have a place.
+fn finite(points: &[Point]) -> std::borrow::Cow<'_, [Point]> {
+    if points.iter().all(|&p| is_finite(p)) {
+        points.into()
+    } else {
+        points.iter().copied().filter(|&p| is_finite(p)).collect()
+    }
+}
+
 impl Check<'_> {
     fn place(&self, loop_index: usize, vertex: usize) -> Place {
         let (wall, role) = self.loops[loop_index];
@@ -137,11 +146,10 @@ impl Check<'_> {
     /// Whether the loop alone encloses something; notes what is wrong with it.
     fn is_loop(&mut self, index: usize, wall: &Loop) -> bool {
         let points = &wall.points;
-        let (mut all_finite, mut count) = (true, 0);
+        let mut count = 0;
         for (vertex, &p) in points.iter().enumerate() {
             let before = vertex.checked_sub(1).unwrap_or(points.len() - 1);
             if !is_finite(p) {
-                all_finite = false;
                 self.note_at(ProblemKind::NonFiniteVertex, self.place(index, vertex));
             } else if before != vertex && coincide(p, points[before]) {
                 self.note(Problem {
@@ -153,12 +161,11 @@ impl Check<'_> {
                 count += 1;
             }
         }
-        let kind = if !all_finite {
-            return false;
-        } else if count < 3 {
+        // What else is wrong is looked for as if the vertices without a place were not there.
+        let kind = if count < 3 {
             let count = count.max(points.len().min(1));
             ProblemKind::TooFewVertices { count }
-        } else if lie_on_one_line(points, self.scale) {
+        } else if lie_on_one_line(&finite(points), self.scale) {
             ProblemKind::ZeroArea
         } else {
             return true;

@@ -42,11 +42,16 @@ pub(crate) enum Contact {
 }
 
 impl WallEdges {
-    /// Appends a loop without its zero-length edges, every coordinate times `factor`.
+    /// Appends a loop without its zero-length edges and past its vertices that are not finite, every
+    /// coordinate times `factor`.
     pub(crate) fn push_loop(&mut self, wall: &Loop, factor: f64) {
         let first = self.start.len();
         let loop_index = self.ranges.len() as u32;
-        for (index, (a, b)) in wall.edges().enumerate() {
+        let vertices = || {
+            let points = wall.points.iter().enumerate();
+            points.filter(|(_, p)| p.iter().all(|c| c.is_finite()))
+        };
+        for ((index, &a), (_, &b)) in vertices().zip(vertices().cycle().skip(1)) {
             if order(a, b) != Ordering::Equal {
                 // Adding zero turns a negative zero into the positive one.
                 self.start.push([a[0] * factor + 0.0, a[1] * factor + 0.0]);

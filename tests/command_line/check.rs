@@ -93,7 +93,10 @@ fn machine_output_counts_loops_as_the_file_does() {
     let run = folder.line("check a.csv --json");
     assert_eq!(run.status, 1);
     let record: serde_json::Value = serde_json::from_str(&run.out).unwrap();
-    assert!(record["problems"][0]["at"].is_null());
+    let problems = record["problems"].as_array().unwrap();
+    let lost = problems.iter().find(|p| p["kind"] == "non_finite_vertex");
+    assert!(lost.unwrap()["at"].is_null());
+    assert!(problems.iter().any(|p| p["kind"] == "too_few_vertices"));
 }
 
 #[test]

@@ -149,6 +149,27 @@ fn turning_the_section_changes_nothing_beyond_1e_5() {
     }
 }
 
+/// Nearly flat corners: Fanning `f Re` of regular polygons (least squares).
+const POLYGONS: [(&str, f64); 6] = [
+    ("regular_polygon sides=7 side=10um", 15.265_430_5),
+    ("regular_polygon sides=8 side=10um", 15.412_692_99),
+    ("regular_polygon sides=9 side=10um", 15.519_663_63),
+    ("regular_polygon sides=10 side=10um", 15.599_830_25),
+    ("regular_polygon sides=12 side=10um", 15.709_875_95),
+    ("regular_polygon sides=20 side=10um", 15.885_797_62),
+];
+
+#[test]
+fn nearly_flat_corners_are_within_1e_5_at_any_angle() {
+    for (spec, reference) in POLYGONS {
+        for angle in [0.0, 0.05, 0.3, 0.7, 1.1, 0.15, 0.45] {
+            let turned = outline(spec).rotated(angle, [0.0, 0.0]);
+            let flow = solve(&turned, 128.0, None);
+            check(spec, &flow, reference, 1e-5, &format!("turned by {angle}"));
+        }
+    }
+}
+
 #[test]
 fn re_entrant_corners_are_within_3e_4_at_any_angle() {
     for (spec, reference) in RE_ENTRANT {

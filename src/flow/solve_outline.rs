@@ -2,7 +2,7 @@
 
 use std::time::Instant;
 
-use crate::geometry::{Corner, Outline, largest_inscribed_circle};
+use crate::geometry::{Corner, Outline, Point, largest_inscribed_circle};
 use crate::grid::{Lattice, LineCrossings, Mask, ResolutionError, spacing};
 use crate::measured::Estimate;
 use crate::proof::{Bracket, ProofError, bracket};
@@ -18,7 +18,7 @@ use super::peak::{GridPeak, peak};
 use super::section_flow::{
     GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
 };
-use super::tangents::tangents;
+use super::tangents::{Tangent, tangents};
 use super::wall_shear::{corners_of, wall_shear};
 
 /// Cells across the smallest lumen that the accuracy search starts from.
@@ -30,6 +30,15 @@ const LAST_NODES: f64 = 2e7;
 /// Residual as a share of `1 / cells_across^2`: far enough below the discretisation error that
 /// extrapolation over the grids is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.002;
+/// Where the lattice lies where corners are nearly flat, in lines: in step with the lower left corner on
+/// the finest grid only, so that the places below are spread evenly over all three.
+const FIRST_PLACE: [f64; 2] = [2.0, 2.0];
+/// Other places over which K is averaged there.
+const OTHER_PLACES: [[f64; 2]; 3] = [[0.4721, 1.0195], [2.9443, 0.0390], [1.4164, 3.0586]];
+/// Exponent below which the widest corner counts as nearly flat: from 135 degrees.
+const FLAT_EXPONENT: f64 = 8.0 / 3.0;
+/// Fluid nodes up to which it is averaged: beyond, such corners no longer matter.
+const AVERAGED_NODES: usize = 200_000;
 /// Fluid angle, radians, from which the term of a corner is removed by extrapolation: its exponent there
 /// is 3.6.
 const WIDE_CORNER: f64 = 100.0 * std::f64::consts::PI / 180.0;
@@ -222,7 +231,14 @@ fn solve_at(
     let start = Instant::now();
     let asked = spacing(outline, diameter, cells_across, options.memory_limit)?;
     let corners = corners_of(outline, asked);
+    let is_flat = options.grid_offset.is_none()
+        && leading_exponent(&corners).is_some_and(|p| (2.0..FLAT_EXPONENT).contains(&p));
     let fitted = match options.grid_offset {
+        None if is_flat => Alignment {
+            spacing: asked,
+            offset: FIRST_PLACE,
+            misfit: 0.0,
+        },
         None => align(outline, &corners, asked),
         Some(offset) => Alignment {
             spacing: asked,
@@ -231,28 +247,16 @@ fn solve_at(
         },
     };
     let spacing = fitted.spacing;
-    let lattice = Lattice::new(outline, spacing, fitted.offset);
-    let rows = LineCrossings::rows(&lattice);
-    let columns = LineCrossings::columns(&lattice);
-    let mut hierarchy =
-        Hierarchy::new(&lattice, &rows, &columns).ok_or(FlowError::NoFluidNode { spacing })?;
-    let control = SolveControl {
-        residual: RESIDUAL_SHARE / (cells_across * cells_across),
-        most_cycles: 100,
-    };
-    let mut answers = Vec::new();
-    hierarchy.solve(control, |grid, solved| {
-        answers.push(GridAnswer {
-            stride: grid.mask.stride,
-            nodes: grid.mask.nodes(),
-            wall_nodes: grid.mask.wall.iter().map(Vec::len).sum(),
-            solved,
-            integrals: GridIntegrals::new(&grid.mask, &grid.phi),
-            peak: peak(&grid.mask, &grid.phi),
-        });
-    });
-    answers.reverse();
+    let (lattice, hierarchy, answers) =
+        grid_sequence(outline, spacing, fitted.offset, cells_across)
+            .ok_or(FlowError::NoFluidNode { spacing })?;
     let (mask, phi) = hierarchy.into_finest();
+    let others: Vec<(Point, Vec<GridAnswer>)> = OTHER_PLACES
+        .iter()
+        .filter(|_| is_flat && mask.nodes() <= AVERAGED_NODES)
+        .filter_map(|&place| grid_sequence(outline, spacing, place, cells_across))
+        .map(|(other, _, answers)| (other.origin, answers))
+        .collect();
     let seconds = start.elapsed().as_secs_f64();
     let bracket = bracket(&lattice, &mask, &phi).map(|b| b.scaled(spacing.powi(4)));
     let grid = GridReport {
@@ -269,6 +273,7 @@ fn solve_at(
         misfit: fitted.misfit,
         bracket,
         answers,
+        others,
     };
     let flow = assemble(outline, &solution, grid, seconds);
     Ok(SolvedSection {
@@ -278,6 +283,36 @@ fn solve_at(
         mask,
         phi,
     })
+}
+
+/// Solves every grid of the sequence on a lattice in a given place; answers finest first.
+fn grid_sequence(
+    outline: &Outline,
+    spacing: f64,
+    offset: [f64; 2],
+    cells_across: f64,
+) -> Option<(Lattice, Hierarchy, Vec<GridAnswer>)> {
+    let lattice = Lattice::new(outline, spacing, offset);
+    let rows = LineCrossings::rows(&lattice);
+    let columns = LineCrossings::columns(&lattice);
+    let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns)?;
+    let control = SolveControl {
+        residual: RESIDUAL_SHARE / (cells_across * cells_across),
+        most_cycles: 100,
+    };
+    let mut answers = Vec::new();
+    hierarchy.solve(control, |grid, solved| {
+        answers.push(GridAnswer {
+            stride: grid.mask.stride,
+            nodes: grid.mask.nodes(),
+            wall_nodes: grid.mask.wall.iter().map(Vec::len).sum(),
+            solved,
+            integrals: GridIntegrals::new(&grid.mask, &grid.phi),
+            peak: peak(&grid.mask, &grid.phi),
+        });
+    });
+    answers.reverse();
+    Some((lattice, hierarchy, answers))
 }
 
 /// Everything the answers are read from.
@@ -292,6 +327,8 @@ struct Solution<'a> {
     bracket: Result<Bracket, ProofError>,
     /// Finest first.
     answers: Vec<GridAnswer>,
+    /// Answers on the lattice in other places, with its origin.
+    others: Vec<(Point, Vec<GridAnswer>)>,
 }
 
 fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f64) -> SectionFlow {
@@ -303,6 +340,7 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
         misfit,
         bracket,
         answers,
+        others,
     } = solution;
     let geometry = geometry(outline);
     let exponent = leading_exponent(corners);
@@ -310,26 +348,22 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
     let small = small_islands(outline, h);
     // Grids with hardly any nodes say nothing about the limit.
     let useful = answers.iter().take_while(|a| a.nodes >= 9).count().max(1);
-    let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
-        let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
-        let mut estimate = extrapolate(&values, exponent, *misfit);
+    let to_limit = |values: &[f64], averaged: bool| {
+        let mut estimate = extrapolate(values, exponent, *misfit, averaged);
         if let (Some(fine), true) = (values.first(), small > 0) {
             // The coarser grids hardly see such islands, so the sequence says less than it seems to.
             estimate.error = estimate.error.max((estimate.value - fine).abs());
         }
         estimate
     };
+    let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
+        let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
+        to_limit(&values, false)
+    };
     let shear = wall_shear(outline, lattice, mask, phi, corners.clone());
     let curved = tangents(outline, &shear.samples, h);
-    let mut conductance = over_grids(&|a| {
-        let spacing = h * f64::from(a.stride);
-        let excess: f64 = curved
-            .iter()
-            .map(|tangent| tangent.excess(lattice.origin, spacing))
-            .sum();
-        a.integrals.conductance - excess / h.powi(4)
-    })
-    .scaled(h.powi(4));
+    let values = mean_conductances(solution, &curved, h, useful.min(3));
+    let mut conductance = to_limit(&values, !others.is_empty());
     if let Ok(proven) = bracket {
         conductance = within(conductance, *proven);
     }
@@ -372,6 +406,32 @@ fn assemble(outline: &Outline, solution: &Solution, grid: GridReport, seconds: f
     };
     flow.warnings = warnings(&flow, small, mask.pinned.len());
     flow
+}
+
+/// `K` of the finest grids, m^4, without the excess at tangent walls, averaged over the places of the
+/// lattice.
+fn mean_conductances(
+    solution: &Solution,
+    curved: &[Tangent],
+    spacing: f64,
+    grids: usize,
+) -> Vec<f64> {
+    let corrected = |origin: Point, a: &GridAnswer| {
+        let own = spacing * f64::from(a.stride);
+        let excess: f64 = curved.iter().map(|t| t.excess(origin, own)).sum();
+        a.integrals.conductance * spacing.powi(4) - excess
+    };
+    (0..grids)
+        .map(|level| {
+            let own = corrected(solution.lattice.origin, &solution.answers[level]);
+            let rest = solution
+                .others
+                .iter()
+                .filter_map(|(origin, list)| Some(corrected(*origin, list.get(level)?)));
+            let (sum, count) = rest.fold((own, 1.0), |(sum, n), k| (sum + k, n + 1.0));
+            sum / count
+        })
+        .collect()
 }
 
 /// The best value is never outside the proven bounds, nor its error larger than they allow.

@@ -18,7 +18,7 @@
 //! anticlockwise and islands clockwise once an [`geometry::Outline`] is built; friction factors always
 //! say Fanning or Darcy, and hydraulic diameter or `sqrt(A)`.
 //!
-//! Data flows one way: intake, geometry, grid, solve, proof, flow, report, cli.
+//! Data flows one way: intake, geometry, grid, solve, proof, flow, study, report, cli.
 
 pub mod cli;
 pub mod flow;
@@ -29,5 +29,6 @@ pub mod measured;
 pub mod proof;
 pub mod report;
 pub mod solve;
+pub mod study;
 pub mod units;
 pub mod warning;

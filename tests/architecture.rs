@@ -11,7 +11,7 @@ use std::collections::{BTreeMap, BTreeSet};
 use std::path::{Path, PathBuf};
 
 /// Folders and files directly under `src`, each with the others it may use.
-const ALLOWED: [(&str, &[&str]); 11] = [
+const ALLOWED: [(&str, &[&str]); 12] = [
     ("units", &[]),
     ("measured", &[]),
     ("warning", &["units", "measured"]),
@@ -27,15 +27,20 @@ const ALLOWED: [(&str, &[&str]); 11] = [
         ],
     ),
     (
+        "study",
+        &["flow", "proof", "geometry", "units", "measured", "warning"],
+    ),
+    (
         "report",
         &[
-            "flow", "solve", "grid", "geometry", "units", "measured", "warning",
+            "study", "flow", "solve", "grid", "geometry", "units", "measured", "warning",
         ],
     ),
     (
         "cli",
         &[
-            "report", "flow", "solve", "grid", "intake", "geometry", "units", "measured", "warning",
+            "report", "study", "flow", "solve", "grid", "intake", "geometry", "units", "measured",
+            "warning",
         ],
     ),
 ];

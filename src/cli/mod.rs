@@ -11,6 +11,7 @@ mod exit_status;
 mod failure;
 mod input;
 mod output;
+mod quantities;
 mod solve;
 
 use std::ffi::OsString;

@@ -13,21 +13,19 @@ use crate::report::{
     self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_targets,
     legacy_vtk_path, vtk_paths, write_files,
 };
-use crate::units::{self, UnitError};
+use crate::units;
 use crate::warning::Code;
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::input::{CheckedSection, checked_section, read_options};
 use super::output;
+use super::quantities::{fluid, positive, quantity};
 
 /// Nodes of an exported field, about: above that the field is thinned and a warning says so.
 const FIELD_NODES: usize = 16_000_000;
 /// Nodes of the field behind a picture.
 const PICTURE_NODES: usize = 1_500_000;
-/// Standard atmosphere, Pa (ISO 2533:1975; from memory).
-const ATMOSPHERE: f64 = 101_325.0;
-
 /// What was asked for, units applied, no file opened yet.
 struct Request {
     file: PathBuf,
@@ -69,18 +67,6 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
 
 fn path(matches: &ArgMatches, name: &str) -> Option<PathBuf> {
     matches.get_one::<PathBuf>(name).cloned()
-}
-
-/// Reads an option with a unit.
-fn quantity(
-    matches: &ArgMatches,
-    name: &str,
-    parse: fn(&str) -> Result<f64, UnitError>,
-) -> Result<Option<f64>, Failure> {
-    matches
-        .get_one::<String>(name)
-        .map(|text| parse(text).map_err(|error| Failure::option(name, &error)))
-        .transpose()
 }
 
 /// Field and wall files, if they are asked for.
@@ -320,69 +306,5 @@ impl Request {
             Format::Json => report::to_json(document).map_err(|e| failed(&e)),
             Format::Csv => report::to_csv(&[*document]).map_err(|e| failed(&e)),
         }
-    }
-}
-
-/// Refuses a value that is not above zero, as typed.
-fn positive(
-    matches: &ArgMatches,
-    name: &str,
-    value: Option<f64>,
-    example: &str,
-) -> Result<(), Failure> {
-    match value {
-        Some(v) if !(v.is_finite() && v > 0.0) => {
-            let typed = matches.get_one::<String>(name).map_or("", String::as_str);
-            Err(Failure::usage(
-                format!("--{name}: `{typed}` is not above zero"),
-                &format!("give a positive value, for example --{name} {example}"),
-            ))
-        }
-        _ => Ok(()),
-    }
-}
-
-/// The fluid, if one is named or described.
-fn fluid(matches: &ArgMatches) -> Result<Option<Fluid>, Failure> {
-    let temperature = quantity(matches, "temperature", units::parse_temperature)?;
-    let pressure = quantity(matches, "gas-pressure", units::parse_pressure)?;
-    let viscosity = quantity(matches, "viscosity", units::parse_viscosity)?;
-    let density = quantity(matches, "density", units::parse_density)?;
-    positive(matches, "gas-pressure", pressure, "1bar")?;
-    positive(matches, "viscosity", viscosity, "1.2mPa.s")?;
-    positive(matches, "density", density, "1050kg/m^3")?;
-    let name = matches.get_one::<String>("fluid").map(String::as_str);
-    if name.is_some() && (viscosity.is_some() || density.is_some()) {
-        return Err(Failure::usage(
-            "both --fluid and --viscosity or --density are given",
-            "name a fluid, or give its viscosity and density, not both",
-        ));
-    }
-    if pressure.is_some() && name != Some("air") {
-        return Err(Failure::usage(
-            "--gas-pressure is for --fluid air",
-            "leave it out; the pressure of a liquid does not matter here",
-        ));
-    }
-    let needed = || {
-        temperature.ok_or_else(|| {
-            Failure::usage(
-                "the viscosity depends on the temperature, and none is given",
-                "add --temperature, for example --temperature 25C",
-            )
-        })
-    };
-    match (name, viscosity) {
-        (Some("air"), _) => {
-            let pressure = pressure.unwrap_or(ATMOSPHERE);
-            Ok(Some(Fluid::dry_air(needed()?, pressure)?))
-        }
-        (Some(_), _) => Ok(Some(Fluid::water(needed()?)?)),
-        (None, Some(viscosity)) => Ok(Some(Fluid::custom(viscosity, density)?)),
-        (None, None) if density.is_some() || temperature.is_some() => Err(Failure::usage(
-            "a density or a temperature alone does not make a fluid",
-            "add --fluid water, --fluid air or --viscosity",
-        )),
-        (None, None) => Ok(None),
     }
 }

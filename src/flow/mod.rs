@@ -1,5 +1,6 @@
 //! From the solved field to hydraulics: conductance, friction factors, shear, operating point.
 
+mod assemble;
 mod chords;
 pub mod closed_form;
 mod corner_alignment;
@@ -14,6 +15,7 @@ mod peak;
 mod section_flow;
 mod shortcuts;
 mod solve_outline;
+mod solve_warnings;
 mod tangents;
 mod validity_range;
 mod wall_shear;

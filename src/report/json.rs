@@ -9,9 +9,8 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::document::SolveDocument;
+use super::json_values::{Bracketed, Number, Quantity, maybe, place};
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
-use crate::geometry::Point;
-use crate::measured::Estimate;
 use crate::warning::Warning;
 
 /// Name and version of this contract.
@@ -25,131 +24,6 @@ pub fn to_json(document: &SolveDocument<'_>) -> Result<String, serde_json::Error
     let mut text = serde_json::to_string_pretty(&Root::new(document))?;
     text.push('\n');
     Ok(text)
-}
-
-/// A number or null.
-#[derive(Serialize)]
-#[serde(untagged)]
-enum Number {
-    Real(f64),
-    Count(usize),
-    Absent,
-}
-
-/// One number with its unit.
-#[derive(Serialize)]
-struct Quantity {
-    value: Number,
-    unit: &'static str,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    low: Option<Number>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    high: Option<Number>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    estimated_error: Option<Number>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    absent_because: Option<String>,
-}
-
-/// A number with its unit and its proven bracket.
-#[derive(Serialize)]
-struct Bracketed {
-    #[serde(flatten)]
-    quantity: Quantity,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    bracket_absent_because: Option<String>,
-}
-
-impl Number {
-    fn real(value: f64) -> Self {
-        if value.is_finite() {
-            Self::Real(value)
-        } else {
-            Self::Absent
-        }
-    }
-}
-
-impl Quantity {
-    fn real(value: f64, unit: &'static str) -> Self {
-        Self {
-            value: Number::real(value),
-            unit,
-            low: None,
-            high: None,
-            estimated_error: None,
-            absent_because: (!value.is_finite())
-                .then(|| "the computed value is not finite".to_owned()),
-        }
-    }
-
-    fn optional(value: Option<f64>, unit: &'static str, reason: &str) -> Self {
-        value.map_or(
-            Self {
-                value: Number::Absent,
-                unit,
-                low: None,
-                high: None,
-                estimated_error: None,
-                absent_because: Some(reason.to_owned()),
-            },
-            |v| Self::real(v, unit),
-        )
-    }
-
-    fn count(value: usize) -> Self {
-        Self {
-            value: Number::Count(value),
-            unit: "1",
-            low: None,
-            high: None,
-            estimated_error: None,
-            absent_because: None,
-        }
-    }
-
-    fn estimate(estimate: Estimate, unit: &'static str) -> Self {
-        Self {
-            estimated_error: Some(Number::real(estimate.error)),
-            ..Self::real(estimate.value, unit)
-        }
-    }
-
-    /// The same with the proven bounds that follow from those of the conductance.
-    fn between(self, bounds: Option<(f64, f64)>) -> Self {
-        match bounds {
-            Some((low, high)) if !matches!(self.value, Number::Absent) => Self {
-                low: Some(Number::real(low)),
-                high: Some(Number::real(high)),
-                ..self
-            },
-            _ => self,
-        }
-    }
-
-    /// The conductance with its proven bounds, null with the reason where there are none.
-    fn bracketed(flow: &SectionFlow) -> Bracketed {
-        let quantity = Self::estimate(flow.conductance, "m^4");
-        match &flow.bracket {
-            Ok(proven) => Bracketed {
-                quantity: quantity.between(Some((proven.low, proven.high))),
-                bracket_absent_because: None,
-            },
-            Err(error) => Bracketed {
-                quantity: Self {
-                    low: Some(Number::Absent),
-                    high: Some(Number::Absent),
-                    ..quantity
-                },
-                bracket_absent_because: Some(error.to_string()),
-            },
-        }
-    }
-}
-
-/// A point as two numbers in metres.
-fn place(at: Point) -> [Number; 2] {
-    at.map(Number::real)
 }
 
 #[derive(Serialize)]
@@ -258,14 +132,6 @@ impl<'a> Root<'a> {
             absent_because: absent_parts(document),
         }
     }
-}
-
-/// An estimate that may be missing.
-fn maybe(estimate: Option<Estimate>, unit: &'static str, reason: &'static str) -> Quantity {
-    estimate.map_or_else(
-        || Quantity::optional(None, unit, reason),
-        |e| Quantity::estimate(e, unit),
-    )
 }
 
 /// Why whole parts are null.

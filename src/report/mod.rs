@@ -8,6 +8,7 @@ mod csv;
 mod document;
 mod drawing;
 mod json;
+mod json_values;
 mod numbers;
 mod picture;
 mod picture_furniture;

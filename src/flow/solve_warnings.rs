@@ -1,0 +1,77 @@
+//! Warnings about a solved section.
+
+use crate::warning::{Code, Warning};
+
+use super::section_flow::SectionFlow;
+
+/// Cells that an island must span to be seen by the three finest grids.
+pub(super) const ISLAND_CELLS: f64 = 10.0;
+pub(super) fn warnings(
+    flow: &SectionFlow,
+    small_islands: usize,
+    lost_islands: usize,
+) -> Vec<Warning> {
+    let mut warnings = Vec::new();
+    for identity in flow.identities.iter().filter(|i| !i.holds) {
+        warnings.push(Warning {
+            code: Code::IdentityFailed,
+            message: format!(
+                "{}: off by {:.2} %, allowed {:.2} % on this grid",
+                identity.formula,
+                100.0 * identity.relative_difference,
+                100.0 * identity.tolerance
+            ),
+            advice:
+                "the wall shear and its mean are less sure than the conductance; try a finer grid \
+                     with --cells-across and compare"
+                    .to_owned(),
+            numbers: vec![
+                ("relative_difference", identity.relative_difference),
+                ("tolerance", identity.tolerance),
+            ],
+        });
+    }
+    if !flow.solver.converged {
+        warnings.push(Warning {
+            code: Code::SolverSlow,
+            message: format!(
+                "the solver stopped after {} cycles at a residual of {:.1e}",
+                flow.solver.cycles, flow.solver.residual
+            ),
+            advice: "the estimated error does not cover this; try another --cells-across"
+                .to_owned(),
+            numbers: vec![("residual", flow.solver.residual)],
+        });
+    }
+    if let Some(&[x, y]) = flow.wall_shear.singular_corners.first() {
+        let count = flow.wall_shear.singular_corners.len();
+        warnings.push(Warning {
+            code: Code::ShearSingular,
+            message: format!(
+                "{count} re-entrant corner(s), the first at ({:.3}, {:.3}) \u{b5}m: the wall shear of the \
+                 sharp outline has no bound there, so the largest value depends on the grid",
+                x * 1e6,
+                y * 1e6
+            ),
+            advice: "use the mean wall shear, or give the corner the radius it really has".to_owned(),
+            numbers: vec![("corners", count as f64), ("x_m", x), ("y_m", y)],
+        });
+    }
+    if small_islands > 0 {
+        warnings.push(Warning {
+            code: Code::ThinPart,
+            message: format!(
+                "{small_islands} island(s) span fewer than {ISLAND_CELLS} cells of {:.3e} m; {lost_islands} of \
+                 them fall between the grid lines and stand as single wall nodes",
+                flow.grid.spacing
+            ),
+            advice: "use a larger --cells-across so that every island spans more cells".to_owned(),
+            numbers: vec![
+                ("islands", small_islands as f64),
+                ("islands_between_lines", lost_islands as f64),
+                ("spacing_m", flow.grid.spacing),
+            ],
+        });
+    }
+    warnings
+}

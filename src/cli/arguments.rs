@@ -116,7 +116,7 @@ fn solve() -> Command {
         );
     let command = fluid_options(input(command));
     let heading = "Output";
-    common(command)
+    wall_options(common(command), heading)
         .arg(
             option("cells-across", "N", "Cells across the smallest lumen")
                 .value_parser(value_parser!(f64))
@@ -180,6 +180,16 @@ fn solve() -> Command {
                 )
                 .help_heading(heading),
         )
+        .arg(flag("verbose", "Show the grids and the solver's course").short('v').help_heading(heading))
+        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
+        .arg(flag("deny-warnings", "End with status 1 on any warning").long_help(
+            "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
+        ))
+}
+
+/// Files that hold the wall shear.
+fn wall_options(command: Command, heading: &'static str) -> Command {
+    command
         .arg(
             Arg::new("wall-csv")
                 .long("wall-csv")
@@ -205,11 +215,6 @@ fn solve() -> Command {
                 )
                 .help_heading(heading),
         )
-        .arg(flag("verbose", "Show the grids and the solver's course").short('v').help_heading(heading))
-        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
-        .arg(flag("deny-warnings", "End with status 1 on any warning").long_help(
-            "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
-        ))
 }
 
 fn fluid_options(command: Command) -> Command {

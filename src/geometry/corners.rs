@@ -86,6 +86,8 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
         to_sharp_vertex(corner, wall, &vertices, window);
     }
     found.sort_by(|a, b| a.arc_length.total_cmp(&b.arc_length));
+    // Two windows may have found one vertex.
+    found.dedup_by(|a, b| a.arc_length.total_cmp(&b.arc_length).is_eq());
     found
 }
 

@@ -31,6 +31,8 @@ const BESIDE: f64 = 1.0;
 const SHORT_CHORD: f64 = 2.0;
 /// Largest change of the direction to the wall over the reach, radians.
 const MOST_BENT: f64 = 0.35;
+/// Farthest that a side may lie off its smooth description, spacings.
+const ROUGH: f64 = 0.15;
 /// Least sine of the fluid angle with which bent sides can be allowed for.
 const LEAST_SINE: f64 = 0.2;
 /// Change of the direction over the reach up to which a side is straight, radians.
@@ -72,6 +74,9 @@ pub(crate) fn corner_laws(
     let bent = reach * wedge.bends[0].abs().max(wedge.bends[1].abs());
     let is_flat = wedge.angle.sin().abs() < LEAST_SINE;
     if wedge.angle <= PI || bent > MOST_BENT || (is_flat && bent > STRAIGHT) {
+        return None;
+    }
+    if !wedge.describes(path, corner, reach) {
         return None;
     }
     let (values, radius) = wedge.nodes(lattice, mask, phi, reach);
@@ -132,6 +137,22 @@ impl Wedge {
             bends: [first.1, last.1],
             spacing,
         }
+    }
+
+    /// Whether both sides stay near their smooth description.
+    fn describes(&self, path: &WallPath, corner: &Corner, reach: f64) -> bool {
+        let steps = (2.0 * reach).floor() as usize;
+        (1..=steps).all(|k| {
+            let r = 0.5 * k as f64;
+            let sides = [(1.0, 0.0, self.bends[0]), (-1.0, self.angle, self.bends[1])];
+            sides.iter().all(|(way, angle, bend)| {
+                let p = path.position(corner.arc_length + way * r * self.spacing);
+                let found = (p[1] - self.at[1]).atan2(p[0] - self.at[0]);
+                let off = found - (self.first + angle + bend * r);
+                let off = (off + PI).rem_euclid(TAU) - PI;
+                off.abs() * r < ROUGH
+            })
+        })
     }
 
     /// What bent sides add to a power: for `sin(a theta)` the sine and the cosine of `(a + 1) theta` with

@@ -3,10 +3,10 @@
 //! The samples scatter by about the square of the spacing where the wall crosses the lattice at changing
 //! distances from the nodes. Beside the corners the law of the corner holds ([`CornerLaw`]); what the laws
 //! leave of the samples is smoothed by quadratics over two and a half spacings to either side, and a cubic
-//! runs through the smoothed values. On a stretch too short for that, a polynomial times the leading
-//! powers of both corners is fitted to all its samples.
+//! runs through the smoothed values. On a stretch too short for that the samples are interpolated after
+//! division by the leading powers of both corners.
 
-use nalgebra::{DMatrix, DVector, Matrix3, Vector3};
+use nalgebra::{Matrix3, Vector3};
 
 use super::corner_law::CornerLaw;
 
@@ -24,12 +24,12 @@ const SHORT: f64 = 14.0;
 const SMOOTHING: f64 = 2.5;
 /// Least number of samples in the smoothing.
 const LEAST_SAMPLES: usize = 5;
-/// Length, in spacings, below which a short stretch has one coefficient.
+/// Samples nearer to each other than this are one, spacings.
+const SAME_PLACE: f64 = 0.2;
+/// Length, in spacings, below which a short stretch has one factor.
 const STEADY: f64 = 5.0;
-/// Least mean of the basis that decides that coefficient; it is one in the middle.
+/// Least mean of the powers that decides that factor; they are one in the middle.
 const LEAST_BASIS: f64 = 0.5;
-/// Largest number of coefficients on a short stretch.
-const SHORT_TERMS: usize = 3;
 
 /// Shear along a stretch, as a function of the distance from its start.
 #[derive(Debug, Clone, PartialEq)]
@@ -53,8 +53,11 @@ enum Shape {
         rest: Vec<f64>,
         slope: Vec<f64>,
     },
-    /// Powers of the shares of both ends and a polynomial in the share.
-    Short { powers: [f64; 2], terms: Vec<f64> },
+    /// Leading powers of both ends times a factor, given at shares of the length.
+    Short {
+        powers: [f64; 2],
+        places: Vec<(f64, f64)>,
+    },
 }
 
 impl Stretch {
@@ -178,15 +181,10 @@ impl Stretch {
                     .map_or(0.0, |l| l[0].value(s) + l[1].value(to_end));
                 corners + cubic(rest, slope, s / self.length)
             }
-            Shape::Short { powers, terms } => short_row(
-                [s / self.length, to_end / self.length],
-                *powers,
-                terms.len(),
-            )
-            .iter()
-            .zip(terms)
-            .map(|(basis, c)| basis * c)
-            .sum(),
+            Shape::Short { powers, places } => {
+                let shares = [s / self.length, to_end / self.length];
+                ends(shares, *powers) * between_places(places, shares[0])
+            }
         };
         // The velocity is positive, and so is its slope at the wall.
         value.max(0.0)
@@ -289,18 +287,25 @@ fn smoothed(samples: &[(f64, f64)], at: f64, spacing: f64) -> f64 {
     }
 }
 
-/// Basis of a short stretch at given distances from both ends, as shares of its length.
-fn short_row(share: [f64; 2], powers: [f64; 2], terms: usize) -> [f64; SHORT_TERMS] {
-    let ends = (2.0 * share[0]).powf(powers[0]) * (2.0 * share[1]).powf(powers[1]);
-    let x = share[0] - share[1];
-    let mut row = [ends, ends * x, ends * x * x];
-    for value in row.iter_mut().skip(terms) {
-        *value = 0.0;
-    }
-    row
+/// Both leading powers at given distances from the ends, as shares of the length; one in the middle.
+fn ends(share: [f64; 2], powers: [f64; 2]) -> f64 {
+    (2.0 * share[0]).powf(powers[0]) * (2.0 * share[1]).powf(powers[1])
 }
 
-/// Fit to all samples of a short stretch.
+/// Value at a place among sorted ones: linear between them, constant beyond.
+fn between_places(places: &[(f64, f64)], at: f64) -> f64 {
+    let next = places.partition_point(|place| place.0 <= at);
+    match (
+        next.checked_sub(1).and_then(|k| places.get(k)),
+        places.get(next),
+    ) {
+        (Some(a), Some(b)) => a.1 + (at - a.0) / (b.0 - a.0) * (b.1 - a.1),
+        (Some(only), None) | (None, Some(only)) => only.1,
+        (None, None) => 0.0,
+    }
+}
+
+/// The samples of a short stretch over both leading powers.
 fn short(
     length: f64,
     leading: [f64; 2],
@@ -314,36 +319,32 @@ fn short(
         let far = |s: &&(f64, f64)| s.0.min(length - s.0) >= least;
         samples.iter().filter(far).copied().collect()
     };
-    let is_singular = leading.iter().any(|e| *e < 0.0);
-    let mut used = away(if is_singular { 0.5 } else { 1.0 } * spacing);
+    let mut used = away(spacing);
     if used.len() < 2 {
         used = away(0.25 * length.min(spacing));
     }
     if used.is_empty() {
         used = vec![(0.5 * length, fallback)];
     }
+    let basis = |s: f64| ends([s / length, 1.0 - s / length], powers);
     if length < STEADY * spacing {
-        // A polynomial through a few samples would swing between them, and one sample beside a corner
-        // must not decide the middle.
-        let basis = |s: f64| short_row([s / length, 1.0 - s / length], powers, 1)[0];
+        // One sample beside a corner must not decide the middle.
         let (sum, of_basis) = used
             .iter()
             .fold((0.0, 0.0), |sum, &(s, v)| (sum.0 + v, sum.1 + basis(s)));
         let least = LEAST_BASIS * used.len() as f64;
-        return Shape::Short {
-            powers,
-            terms: vec![sum / of_basis.max(least)],
-        };
+        let places = vec![(0.5, sum / of_basis.max(least))];
+        return Shape::Short { powers, places };
     }
-    let terms = (used.len() / 2).clamp(1, SHORT_TERMS);
-    let matrix = DMatrix::from_fn(used.len(), terms, |row, column| {
-        let share = used[row].0 / length;
-        short_row([share, 1.0 - share], powers, terms)[column]
-    });
-    let wanted = DVector::from_fn(used.len(), |row, _| used[row].1);
-    let terms = matrix
-        .svd(true, true)
-        .solve(&wanted, 1e-9)
-        .map_or_else(|_| vec![fallback], |found| found.iter().copied().collect());
-    Shape::Short { powers, terms }
+    let places = used
+        .chunk_by(|a, b| b.0 - a.0 < SAME_PLACE * spacing)
+        .map(|group| {
+            let count = group.len() as f64;
+            let (s, v) = group.iter().fold((0.0, 0.0), |sum, place| {
+                (sum.0 + place.0 / count, sum.1 + place.1 / count)
+            });
+            (s / length, v / basis(s))
+        })
+        .collect();
+    Shape::Short { powers, places }
 }

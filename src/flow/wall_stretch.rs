@@ -12,8 +12,12 @@ use super::corner_law::CornerLaw;
 
 /// Distance from a convex corner, in spacings, below which its law stands alone.
 const UNRESOLVED: f64 = 3.0;
-/// The same for a re-entrant corner.
+/// The same for a re-entrant corner whose law comes from the nodes around it.
 const UNRESOLVED_SINGULAR: f64 = 4.0;
+/// The same for a re-entrant corner without such a law.
+const NEAREST_SINGULAR: f64 = 1.0;
+/// Distance, in spacings, up to which samples decide the leading power of such a corner.
+const SINGULAR_REACH: f64 = 4.0;
 /// Distance from a convex corner, in spacings, up to which samples decide its law.
 const LAW_REACH: f64 = 12.0;
 /// The same as a share of the stretch.
@@ -108,11 +112,11 @@ impl Stretch {
         (spacing, fallback): (f64, f64),
     ) -> Self {
         let leading = angles.map(|angle| CornerLaw::fit(angle, spacing, &[]).leading);
-        let unresolved = leading.map(|e| {
-            let spacings = if e < 0.0 {
-                UNRESOLVED_SINGULAR
-            } else {
-                UNRESOLVED
+        let unresolved = [0, 1].map(|end| {
+            let spacings = match (leading[end] < 0.0, &given[end]) {
+                (false, _) => UNRESOLVED,
+                (true, Some(_)) => UNRESOLVED_SINGULAR,
+                (true, None) => NEAREST_SINGULAR,
             };
             spacings * spacing
         });
@@ -131,9 +135,8 @@ impl Stretch {
             };
         }
         let law = |end: usize| {
-            // The error of the grid falls with the distance from a re-entrant corner only slowly.
             let reach = if leading[end] < 0.0 {
-                LAW_SHARE * length
+                SINGULAR_REACH * spacing
             } else {
                 (LAW_REACH * spacing).min(LAW_SHARE * length)
             };
@@ -142,7 +145,11 @@ impl Stretch {
                 .map(|&(s, v)| (if end == 0 { s } else { length - s }, v))
                 .filter(|&(r, _)| r <= reach)
                 .collect();
-            CornerLaw::fit(angles[end], spacing, &from_end)
+            if leading[end] < 0.0 {
+                CornerLaw::power(angles[end], spacing, &from_end)
+            } else {
+                CornerLaw::fit(angles[end], spacing, &from_end)
+            }
         };
         let [first, second] = given;
         let faded = |law: CornerLaw| law.with_reach(LAW_SHARE * length);

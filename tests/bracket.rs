@@ -13,12 +13,12 @@ use proptest::prelude::*;
 fn known() -> Vec<(&'static str, f64)> {
     let um = 1e-6;
     let square = closed_form::rectangle(100.0 * um, 100.0 * um).unwrap();
-    let flat = closed_form::rectangle(1000.0 * um, 100.0 * um).unwrap();
+    let flat = closed_form::rectangle(400.0 * um, 100.0 * um).unwrap();
     let triangle = closed_form::equilateral_triangle(100.0 * um).unwrap();
     let ring = closed_form::eccentric_annulus(100.0 * um, 50.0 * um, 25.0 * um).unwrap();
     vec![
         ("rectangle width=100um height=100um", square.conductance),
-        ("rectangle width=1000um height=100um", flat.conductance),
+        ("rectangle width=400um height=100um", flat.conductance),
         (
             "triangle base=100um left_angle=60deg right_angle=60deg",
             triangle.conductance,
@@ -47,6 +47,12 @@ fn proven(flow: &SectionFlow) -> Bracket {
     flow.bracket.unwrap()
 }
 
+/// How many times the usual number of places is tried; all fifty on every grid need 17.
+fn more_places() -> u32 {
+    let asked = std::env::var("BRACKET_PLACES").ok();
+    asked.and_then(|n| n.parse().ok()).unwrap_or(1)
+}
+
 /// Curved walls are chords within 1e-7 of the size, which moves K by less than this.
 const CHORDS: f64 = 1e-6;
 
@@ -54,8 +60,15 @@ const CHORDS: f64 = 1e-6;
 fn the_bracket_holds_on_every_grid_at_any_offset_and_angle() {
     for (spec, exact) in known() {
         let section = outline(spec);
-        for cells in [8.0, 16.0, 32.0, 64.0, 128.0] {
-            for k in 0..12 {
+        for (cells, places) in [
+            (8.0, 50),
+            (16.0, 50),
+            (32.0, 50),
+            (64.0, 50),
+            (128.0, 12),
+            (256.0, 3),
+        ] {
+            for k in 0..places * more_places() {
                 let k = f64::from(k);
                 let offset = [(0.137 + 0.618 * k).fract(), (0.411 + 0.755 * k).fract()];
                 let turned = section.clone().rotated(0.37 * k, [0.0, 0.0]);
@@ -72,16 +85,16 @@ fn the_bracket_holds_on_every_grid_at_any_offset_and_angle() {
 }
 
 #[test]
-fn the_gap_at_128_cells_is_small_and_falls_with_the_square_of_the_spacing() {
+fn the_gap_at_128_cells_is_small_and_falls_faster_than_the_square_of_the_spacing() {
     for (spec, limit) in [
-        ("rectangle width=100um height=100um", 4e-4),
-        ("koh_groove opening=100um depth=20um", 4e-4),
-        ("circle diameter=100um", 4e-4),
+        ("rectangle width=100um height=100um", 4e-5),
+        ("koh_groove opening=100um depth=20um", 4e-5),
+        ("circle diameter=100um", 4e-5),
         (
             "triangle base=100um left_angle=60deg right_angle=60deg",
-            5e-4,
+            5e-5,
         ),
-        ("circular_sector radius=100um angle=270deg", 5e-3),
+        ("circular_sector radius=100um angle=270deg", 1e-3),
     ] {
         let section = outline(spec);
         let re_entrant = spec.starts_with("circular_sector");
@@ -99,7 +112,7 @@ fn the_gap_at_128_cells_is_small_and_falls_with_the_square_of_the_spacing() {
         let fine = width(128.0);
         assert!(fine < limit, "{spec}: {fine:.2e}");
         let order = (width(32.0) / fine).log2() / 2.0;
-        let least = if re_entrant { 4.0 / 3.0 - 0.1 } else { 1.8 };
+        let least = if re_entrant { 4.0 / 3.0 - 0.1 } else { 2.3 };
         assert!(order > least, "{spec}: order {order:.2}");
     }
 }

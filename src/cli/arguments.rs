@@ -2,6 +2,7 @@
 
 use clap::{Arg, ArgAction, Command, value_parser};
 
+use super::accuracy_options::accuracy_options;
 use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
 
 /// Printed below the help of the program.
@@ -31,11 +32,11 @@ pub fn command() -> Command {
         .subcommand(draw())
 }
 
-fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
+pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
     Arg::new(name).long(name).value_name(value).help(help)
 }
 
-fn flag(name: &'static str, help: &'static str) -> Arg {
+pub(super) fn flag(name: &'static str, help: &'static str) -> Arg {
     Arg::new(name)
         .long(name)
         .action(ArgAction::SetTrue)
@@ -114,19 +115,9 @@ fn solve() -> Command {
             "Example: etchwise solve wafer.toml --fluid water --temperature 25C \\\n  \
              --length 20mm --flow-rate 5uL/min --picture wafer.png",
         );
-    let command = fluid_options(input(command));
+    let command = accuracy_options(fluid_options(input(command)));
     let heading = "Output";
     common(command)
-        .arg(
-            option("cells-across", "N", "Cells across the smallest lumen")
-                .value_parser(value_parser!(f64))
-                .long_help(
-                    "Cells across the largest circle that fits into the smallest lumen: the short \
-                     side of a rectangle, the gap of an annulus. At least 4. Default: refined until \
-                     the estimated error of the conductance is within 0.01 %. Example: \
-                     --cells-across 128",
-                ),
-        )
         .arg(flag(
             "shortcuts",
             "Also say what the usual formulas would have said",

@@ -4,6 +4,7 @@
 //! what it means, with units applied and before any file is opened. Machine output goes to standard
 //! output, talk to standard error.
 
+mod accuracy_options;
 mod arguments;
 mod check;
 mod draw;

@@ -16,6 +16,7 @@ use crate::report::{
 use crate::units;
 use crate::warning::Code;
 
+use super::accuracy_options::solve_options;
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::input::{CheckedSection, checked_section, read_options};
@@ -144,10 +145,7 @@ impl Request {
         Ok(Self {
             file: path(matches, "file").unwrap_or_default(),
             read: read_options(matches)?,
-            solve: SolveOptions {
-                cells_across: matches.get_one::<f64>("cells-across").copied(),
-                ..SolveOptions::default()
-            },
+            solve: solve_options(matches)?,
             fluid,
             length,
             drive,
@@ -222,7 +220,7 @@ impl Request {
         let invalid = fluid
             .zip(point.as_ref())
             .is_some_and(|(fluid, point)| outside_validity(flow, fluid, point));
-        Ok(if !flow.solver.converged {
+        Ok(if !(flow.solver.converged && flow.accuracy.is_met) {
             ExitStatus::NotSolved
         } else if invalid {
             ExitStatus::OutsideValidity

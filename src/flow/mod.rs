@@ -1,5 +1,6 @@
 //! From the solved field to hydraulics: conductance, friction factors, shear, operating point.
 
+mod accuracy;
 mod assemble;
 mod chords;
 pub mod closed_form;
@@ -19,7 +20,9 @@ mod solve_warnings;
 mod tangents;
 mod validity_range;
 mod wall_shear;
+mod width_source;
 
+pub use accuracy::{Accuracy, Cost, DEFAULT_TOLERANCE, Goal, LEAST_TOLERANCE, Stop};
 pub use entrance::{EntranceModel, entrance_length, excess_pressure_factor};
 pub use field::DenseField;
 pub use fluid::{Fluid, FluidError};
@@ -29,5 +32,6 @@ pub use section_flow::{
     WallSample, WallShear,
 };
 pub use shortcuts::{ShortcutRow, shortcuts};
-pub use solve_outline::{DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline};
+pub use solve_outline::{DEFAULT_MEMORY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use validity_range::{outside_validity, validity_warnings};
+pub use width_source::{WidthCause, WidthSource};

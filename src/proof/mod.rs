@@ -15,7 +15,12 @@
 //! piece: a bound that is not checked is none. Rounding is far below the gap; the bounds are widened by
 //! `ROUNDING` all the same.
 
+mod cell_energy;
+mod cut_polygon;
 mod lower_bound;
+mod nodal_flux;
+mod square_energy;
+mod triangulation;
 mod upper_bound;
 
 use crate::grid::{Lattice, Mask};
@@ -40,6 +45,9 @@ pub enum ProofError {
         /// Largest divergence left, relative to what it must be.
         divergence: f64,
     },
+    /// Two squares beside each other disagree on the velocity along their common side.
+    #[error("the velocity of the lower bound is not continuous across a grid line")]
+    Discontinuous,
     /// The lower bound came out above the upper one, so one of them is wrong.
     #[error("the bounds contradict each other ({low:.6e} and {high:.6e})")]
     Contradiction {

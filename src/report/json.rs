@@ -9,6 +9,7 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::document::SolveDocument;
+use super::json_accuracy::AccuracyView;
 use super::json_values::{Bracketed, Number, Quantity, maybe, place};
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
 use crate::warning::Warning;
@@ -44,6 +45,7 @@ struct Root<'a> {
     grid: Grid,
     solver: Solver,
     bracket_relative_width: Quantity,
+    accuracy: AccuracyView,
     identities: BTreeMap<&'static str, IdentityView>,
     fluid: Option<FluidView<'a>>,
     resistance_per_length: Quantity,
@@ -101,6 +103,7 @@ impl<'a> Root<'a> {
             wall_shear: Shear::new(flow),
             grid: Grid::new(flow),
             solver: Solver::new(&flow.solver),
+            accuracy: AccuracyView::new(flow),
             bracket_relative_width: match &flow.bracket {
                 Ok(proven) => Quantity::real(proven.relative_width(), "1"),
                 Err(error) => Quantity::optional(None, "1", &error.to_string()),
@@ -350,18 +353,31 @@ struct PointView {
 impl PointView {
     fn new(document: &SolveDocument<'_>) -> Option<Self> {
         let no_density = "the density of the fluid is not known";
-        document.operating_point.map(|p| Self {
-            length: Quantity::real(p.length, "m"),
-            flow_rate: Quantity::real(p.flow_rate, "m^3/s"),
-            pressure_drop: Quantity::real(p.pressure_drop, "Pa"),
-            pressure_gradient: Quantity::real(p.pressure_gradient, "Pa/m"),
-            mean_velocity: Quantity::real(p.mean_velocity, "m/s"),
-            peak_velocity: Quantity::real(p.peak_velocity, "m/s"),
-            reynolds_dh: Quantity::optional(p.reynolds_dh, "1", no_density),
-            wall_shear_max: Quantity::real(p.wall_shear_max, "Pa"),
-            wall_shear_mean: Quantity::real(p.wall_shear_mean, "Pa"),
-            residence_time: Quantity::real(p.residence_time, "s"),
-            entrance_length: Quantity::optional(p.entrance_length, "m", no_density),
+        let flow = document.flow;
+        document.operating_point.map(|p| {
+            let with_flow =
+                |value: f64, unit| Quantity::real(value, unit).between(p.flow_bounds(flow, value));
+            let with_pressure = |value: f64, unit| {
+                Quantity::real(value, unit).between(p.pressure_bounds(flow, value))
+            };
+            // The time goes with one over the flow rate.
+            let times = p
+                .flow_bounds(flow, 1.0)
+                .map(|(low, high)| (p.residence_time / high, p.residence_time / low));
+            let reynolds = p.reynolds_dh.and_then(|value| p.flow_bounds(flow, value));
+            Self {
+                length: Quantity::real(p.length, "m"),
+                flow_rate: with_flow(p.flow_rate, "m^3/s"),
+                pressure_drop: with_pressure(p.pressure_drop, "Pa"),
+                pressure_gradient: with_pressure(p.pressure_gradient, "Pa/m"),
+                mean_velocity: with_flow(p.mean_velocity, "m/s"),
+                peak_velocity: Quantity::real(p.peak_velocity, "m/s"),
+                reynolds_dh: Quantity::optional(p.reynolds_dh, "1", no_density).between(reynolds),
+                wall_shear_max: Quantity::real(p.wall_shear_max, "Pa"),
+                wall_shear_mean: with_pressure(p.wall_shear_mean, "Pa"),
+                residence_time: Quantity::real(p.residence_time, "s").between(times),
+                entrance_length: Quantity::optional(p.entrance_length, "m", no_density),
+            }
         })
     }
 }

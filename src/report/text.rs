@@ -7,6 +7,7 @@
 use super::document::SolveDocument;
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
+use super::text_accuracy::accuracy;
 use super::text_operation;
 use crate::flow::{SectionFlow, SectionGeometry};
 use crate::geometry::Point;
@@ -30,6 +31,7 @@ pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
         title(document),
         geometry(&flow.geometry),
         conductance(flow),
+        accuracy(flow),
         friction(flow),
         velocity(flow),
     ];
@@ -247,7 +249,7 @@ pub(super) fn shear_place(flow: &SectionFlow) -> [String; 3] {
 }
 
 /// A place in the section.
-fn place(flow: &SectionFlow, at: Point) -> String {
+pub(super) fn place(flow: &SectionFlow, at: Point) -> String {
     numbers::place(at, [flow.geometry.width, flow.geometry.height], 5)
 }
 

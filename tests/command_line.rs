@@ -6,6 +6,8 @@
     reason = "tests read and write files of their own and may fail loudly"
 )]
 
+#[path = "command_line/accuracy.rs"]
+mod accuracy;
 #[path = "command_line/answers.rs"]
 mod answers;
 #[path = "command_line/bad_input.rs"]

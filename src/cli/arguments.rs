@@ -117,7 +117,7 @@ fn solve() -> Command {
         );
     let command = accuracy_options(fluid_options(input(command)));
     let heading = "Output";
-    common(command)
+    wall_options(common(command), heading)
         .arg(flag(
             "shortcuts",
             "Also say what the usual formulas would have said",
@@ -176,6 +176,36 @@ fn solve() -> Command {
         .arg(flag("deny-warnings", "End with status 1 on any warning").long_help(
             "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
         ))
+}
+
+/// Files that hold the wall shear.
+fn wall_options(command: Command, heading: &'static str) -> Command {
+    command
+        .arg(
+            Arg::new("wall-csv")
+                .long("wall-csv")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the wall shear along the wall as a table")
+                .long_help(
+                    "Write the wall shear along the wall to FILE as CSV: loop, wall, arc length, place, \
+                     normal, shear. Example: --wall-csv wall.csv",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("wall-picture")
+                .long("wall-picture")
+                .value_name("FILE")
+                .action(ArgAction::Append)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write a picture of the wall shear, .png or .svg")
+                .long_help(
+                    "Write a picture of the wall shear along the developed wall; the ending says .png \
+                     or .svg. May be given more than once. Example: --wall-picture shear.png",
+                )
+                .help_heading(heading),
+        )
 }
 
 fn fluid_options(command: Command) -> Command {

@@ -5,8 +5,8 @@ use std::path::{Path, PathBuf};
 use clap::ArgMatches;
 
 use crate::flow::{
-    Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, outside_validity,
-    shortcuts, solve_outline, validity_warnings,
+    Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, WallReport,
+    outside_validity, shortcuts, solve_outline, validity_warnings,
 };
 use crate::intake::ReadOptions;
 use crate::report::{
@@ -40,6 +40,8 @@ struct Request {
     output: Option<PathBuf>,
     vtk: Option<VtkRequest>,
     pictures: Vec<(PathBuf, PictureFormat)>,
+    wall_csv: Option<PathBuf>,
+    wall_pictures: Vec<(PathBuf, PictureFormat)>,
     quiet: bool,
     deny_warnings: bool,
 }
@@ -68,6 +70,16 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
 
 fn path(matches: &ArgMatches, name: &str) -> Option<PathBuf> {
     matches.get_one::<PathBuf>(name).cloned()
+}
+
+/// Pictures that one option asks for.
+fn pictures(matches: &ArgMatches, name: &str) -> Result<Vec<(PathBuf, PictureFormat)>, Failure> {
+    matches
+        .get_many::<PathBuf>(name)
+        .into_iter()
+        .flatten()
+        .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))
+        .collect()
 }
 
 /// Field and wall files, if they are asked for.
@@ -126,12 +138,6 @@ impl Request {
                 "add --fluid water --temperature 25C, or --viscosity (and --density)",
             ));
         }
-        let pictures = matches
-            .get_many::<PathBuf>("picture")
-            .into_iter()
-            .flatten()
-            .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))
-            .collect::<Result<_, Failure>>()?;
         let format = if matches.get_flag("json") {
             Format::Json
         } else if matches.get_flag("csv") {
@@ -153,7 +159,9 @@ impl Request {
             format,
             output: output::target(matches),
             vtk: vtk(matches)?,
-            pictures,
+            pictures: pictures(matches, "picture")?,
+            wall_csv: path(matches, "wall-csv"),
+            wall_pictures: pictures(matches, "wall-picture")?,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
@@ -162,7 +170,10 @@ impl Request {
     /// Outputs that cannot be written are found before the solve.
     fn check_targets(&self) -> Result<(), Failure> {
         let vtk = self.vtk.iter().flat_map(VtkRequest::paths);
-        let pictures = self.pictures.iter().map(|(path, _)| path.clone());
+        let pictures = self.pictures.iter().chain(&self.wall_pictures);
+        let pictures = pictures
+            .map(|(path, _)| path.clone())
+            .chain(self.wall_csv.clone());
         let targets: Vec<PathBuf> = self
             .output
             .clone()
@@ -190,6 +201,11 @@ impl Request {
         let rows: Option<Vec<ShortcutRow>> = self
             .shortcuts
             .then(|| shortcuts(&checked.outline, flow.conductance.value));
+        let walls = WallReport::new(
+            solved.outline(),
+            &flow.wall_shear.curve,
+            &checked.section.walls,
+        );
         let mut warnings = checked.warnings.clone();
         if let Some(fluid) = fluid {
             warnings.extend(validity_warnings(flow, fluid, point.as_ref()));
@@ -208,6 +224,7 @@ impl Request {
             fluid,
             length: self.length,
             operating_point: point.as_ref(),
+            walls: Some(&walls),
             shortcuts: rows.as_deref(),
             warnings: &warnings,
         };
@@ -267,6 +284,7 @@ impl Request {
                 files.push((path.clone(), bytes));
             }
         }
+        self.add_wall_files(document, &mut files)?;
         let text = self.main_output(document)?;
         if let Some(path) = &self.output {
             files.push((path.clone(), text.into_bytes()));
@@ -275,6 +293,25 @@ impl Request {
             self.write(&files)?;
             output::print(&text)
         }
+    }
+
+    /// The wall shear as a table and as pictures.
+    fn add_wall_files(
+        &self,
+        document: &SolveDocument,
+        files: &mut Vec<(PathBuf, Vec<u8>)>,
+    ) -> Result<(), Failure> {
+        if let Some(path) = &self.wall_csv {
+            let text = report::wall_csv(document).map_err(|e| failed(&e))?;
+            files.push((path.clone(), text.into_bytes()));
+        }
+        for (path, format) in &self.wall_pictures {
+            if let Some(walls) = document.walls {
+                let bytes = report::wall_picture_bytes(document, walls, *format)?;
+                files.push((path.clone(), bytes));
+            }
+        }
+        Ok(())
     }
 
     fn write(&self, files: &[(PathBuf, Vec<u8>)]) -> Result<(), Failure> {
@@ -292,17 +329,19 @@ impl Request {
     }
 
     fn main_output(&self, document: &SolveDocument) -> Result<String, Failure> {
-        let failed = |error: &dyn std::fmt::Display| {
-            Failure::new(
-                ExitStatus::Unreadable,
-                format!("the result cannot be printed: {error}"),
-                "",
-            )
-        };
         match &self.format {
             Format::Text(options) => Ok(report::to_text(document, *options)),
             Format::Json => report::to_json(document).map_err(|e| failed(&e)),
             Format::Csv => report::to_csv(&[*document]).map_err(|e| failed(&e)),
         }
     }
+}
+
+/// A result that cannot be put into its format.
+fn failed(error: &dyn std::fmt::Display) -> Failure {
+    Failure::new(
+        ExitStatus::Unreadable,
+        format!("the result cannot be printed: {error}"),
+        "",
+    )
 }

@@ -5,6 +5,8 @@ mod assemble;
 mod chords;
 pub mod closed_form;
 mod corner_alignment;
+mod corner_field;
+mod corner_law;
 mod entrance;
 mod extrapolation;
 mod field;
@@ -19,7 +21,12 @@ mod solve_outline;
 mod solve_warnings;
 mod tangents;
 mod validity_range;
+mod wall_curve;
+mod wall_path;
+mod wall_quadrature;
 mod wall_shear;
+mod wall_statistics;
+mod wall_stretch;
 mod width_source;
 
 pub use accuracy::{Accuracy, Cost, DEFAULT_TOLERANCE, Goal, LEAST_TOLERANCE, Stop};
@@ -34,4 +41,8 @@ pub use section_flow::{
 pub use shortcuts::{ShortcutRow, shortcuts};
 pub use solve_outline::{DEFAULT_MEMORY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use validity_range::{outside_validity, validity_warnings};
+pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};
+pub use wall_statistics::{
+    PERCENTILES, SingularCorner, WHOLE_WALL, WallPart, WallReport, WallStatistics,
+};
 pub use width_source::{WidthCause, WidthSource};

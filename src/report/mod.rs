@@ -10,6 +10,7 @@ mod drawing;
 mod json;
 mod json_accuracy;
 mod json_values;
+mod json_wall;
 mod numbers;
 mod picture;
 mod picture_furniture;
@@ -20,8 +21,11 @@ mod table;
 mod text;
 mod text_accuracy;
 mod text_operation;
+mod text_wall;
 mod ticks;
 mod vtk;
+mod wall_csv;
+mod wall_picture;
 mod write;
 
 pub use csv::{CsvError, to_csv};
@@ -33,6 +37,8 @@ pub use png::{PngError, to_png};
 pub use svg::to_svg;
 pub use text::{TextOptions, to_text};
 pub use vtk::{VtkError, field_legacy_vtk, field_vti, wall_vtp};
+pub use wall_csv::wall_csv;
+pub use wall_picture::{draw_wall, wall_picture_bytes};
 pub use write::{
     OutputFile, WriteError, check_target, check_targets, legacy_vtk_path, vtk_paths, write_file,
     write_files,

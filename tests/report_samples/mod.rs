@@ -10,9 +10,9 @@ use std::f64::consts::PI;
 
 use etchwise::flow::{
     DenseField, Fluid, GridReport, Identity, LevelReport, OperatingPoint, Peak, SectionFlow,
-    SectionGeometry, ShortcutRow, SolverReport, WallSample, WallShear,
+    SectionGeometry, ShortcutRow, SolverReport, WallCurve, WallReport, WallSample, WallShear,
 };
-use etchwise::geometry::{Loop, Lumen, Outline, Point};
+use etchwise::geometry::{Corner, Loop, Lumen, Outline, Point, corners};
 use etchwise::measured::Estimate;
 use etchwise::proof::Bracket;
 use etchwise::report::{SolveDocument, SourceRecord};
@@ -27,6 +27,7 @@ pub(crate) struct Sample {
     pub(crate) fluid: Fluid,
     pub(crate) point: OperatingPoint,
     pub(crate) shortcuts: Vec<ShortcutRow>,
+    pub(crate) walls: WallReport,
 }
 
 impl Sample {
@@ -48,6 +49,7 @@ impl Sample {
             length: Some(self.point.length),
             operating_point: Some(&self.point),
             shortcuts: Some(&self.shortcuts),
+            walls: Some(&self.walls),
             ..self.bare()
         }
     }
@@ -236,7 +238,9 @@ pub(crate) fn sample(
     shear: &dyn Fn(Point) -> f64,
 ) -> Sample {
     let flow = section_flow(&outline, &field, exact, shear);
+    let walls = WallReport::new(&outline, &flow.wall_shear.curve, &[]);
     Sample {
+        walls,
         name: name.to_owned(),
         outline,
         field,
@@ -344,8 +348,17 @@ fn wall_shear(outline: &Outline, step: f64, mean: f64, shear: &dyn Fn(Point) -> 
         max_per_gradient: largest.shear_per_gradient,
         max_at: largest.at,
         singular_corners: Vec::new(),
+        curve: wall_curve(outline, &samples, step),
         samples,
     }
+}
+
+fn wall_curve(outline: &Outline, samples: &[WallSample], step: f64) -> WallCurve {
+    let corners: Vec<Vec<Corner>> = outline
+        .loops()
+        .map(|wall| corners(wall, step, 10_f64.to_radians()))
+        .collect();
+    WallCurve::new(outline, &corners, samples, step)
 }
 
 /// 1 kPa over 20 mm.

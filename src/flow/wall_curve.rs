@@ -135,14 +135,25 @@ impl WallCurve {
 impl WallCurve {
     /// The point with the largest shear; nearer to a singular corner than
     /// [`WallCurve::singular_length`], the corner's own entry stands for the curve.
-    pub fn largest(&self) -> Option<&CurvePoint> {
+    pub fn largest(&self) -> Option<CurvePoint> {
         let compare = |a: &&CurvePoint, b: &&CurvePoint| {
             a.shear_per_gradient.total_cmp(&b.shear_per_gradient)
         };
-        self.loops
-            .iter()
-            .filter_map(|curve| curve.bounded(self.singular_length).max_by(compare))
-            .max_by(compare)
+        let per_loop = self.loops.iter().filter_map(|along| {
+            let point = along.bounded(self.singular_length).max_by(compare)?;
+            Some(match point.kind {
+                PointKind::Regular => along.summit(point),
+                _ => *point,
+            })
+        });
+        // Of equal ones the first.
+        per_loop.reduce(|best, point| {
+            if point.shear_per_gradient > best.shear_per_gradient {
+                point
+            } else {
+                best
+            }
+        })
     }
 }
 
@@ -216,6 +227,29 @@ impl LoopCurve {
             None => (self.stretches.last(), s + total),
         };
         stretch.map_or(0.0, |stretch| stretch.value(s - stretch.start))
+    }
+
+    /// The top of the parabola through the curve around a point, if the curve is higher there.
+    fn summit(&self, point: &CurvePoint) -> CurvePoint {
+        let [before, here, after] =
+            [-1.0, 0.0, 1.0].map(|k| self.shear_at(point.arc_length + k * self.spacing));
+        let bend = before - 2.0 * here + after;
+        let shift = 0.5 * (before - after) / bend;
+        if !(bend < 0.0 && shift.abs() <= 1.0) {
+            return *point;
+        }
+        let arc_length = (point.arc_length + shift * self.spacing).rem_euclid(self.length());
+        let value = self.shear_at(arc_length);
+        if value <= here {
+            return *point;
+        }
+        CurvePoint {
+            arc_length,
+            at: self.path.position(arc_length),
+            normal: self.path.edge_normal(self.path.edge_at(arc_length)),
+            shear_per_gradient: value,
+            ..*point
+        }
     }
 
     /// Position at an arc length, m.

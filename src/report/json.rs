@@ -149,9 +149,12 @@ fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static
     }
     if document.fluid.is_none() {
         reasons.insert("fluid", "no fluid was given");
+        reasons.insert("per_flow_rate", "no fluid was given");
     }
     if document.operating_point.is_none() {
-        reasons.insert("operating_point", "no pressure drop or flow rate was given");
+        for part in ["operating_point", "at_operating_point"] {
+            reasons.insert(part, "no pressure drop or flow rate was given");
+        }
     }
     if document.shortcuts.is_none() {
         reasons.insert("shortcuts", "the shortcut formulas were not asked for");

@@ -27,6 +27,33 @@ fn results_go_to_standard_output_and_talk_to_standard_error() {
 }
 
 #[test]
+fn the_wall_shear_goes_to_a_table_and_a_picture() {
+    let folder = Folder::with(
+        "a.toml",
+        "unit = \"um\"\n[[lumen]]\nouter = [[0, 0], [100, 0], [100, 50], [50, 50], [50, 80], [0, 80]]\n\
+         [[wall]]\nname = \"electrode\"\nfrom = [20, 0]\nto = [80, 0]\n",
+    );
+    let run =
+        folder.line("solve a.toml --wall-csv a.csv --wall-picture a.svg --wall-picture a.png");
+    assert_eq!(run.err, "wrote a.csv\nwrote a.svg\nwrote a.png\n");
+    assert!(run.out.contains("electrode") && run.out.contains("Re-entrant corner at"));
+    let table = folder.read("a.csv");
+    assert!(
+        table
+            .lines()
+            .any(|row| row.starts_with("1,electrode,") && row.ends_with("regular"))
+    );
+    assert_eq!(table.matches("singular_corner").count(), 2);
+    assert!(folder.read("a.svg").contains("electrode"));
+    folder
+        .line("solve a.toml --wall-picture a.gif")
+        .assert_error(2, &["does not end in .png or .svg"]);
+    folder
+        .line("solve a.toml --wall-csv a.toml")
+        .assert_error(3, &["`a.toml` is an input file and is not overwritten"]);
+}
+
+#[test]
 fn a_dash_is_standard_input_and_standard_output() {
     let folder = Folder::new();
     let run = folder.run_with(&["solve", "-", "--json"], RECTANGLE);

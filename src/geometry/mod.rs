@@ -2,6 +2,7 @@
 
 mod corners;
 pub mod curves;
+mod film;
 mod inscribed_circle;
 mod linear_pieces;
 pub mod nominal;
@@ -14,6 +15,7 @@ mod validity;
 mod wall_edges;
 
 pub use corners::{Corner, corners};
+pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use nominal::{
     KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,

@@ -33,6 +33,14 @@ pub(super) fn left_of(direction: Point) -> Point {
     [-direction[1], direction[0]]
 }
 
+/// The square box around a circle.
+pub(super) fn around(centre: Point, radius: f64) -> Bounds {
+    Bounds {
+        low: centre.map(|c| c - radius),
+        high: centre.map(|c| c + radius),
+    }
+}
+
 /// A straight or round piece, travelled with the open section on its left.
 #[derive(Debug, Clone, Copy)]
 pub(super) enum Curve {
@@ -115,20 +123,6 @@ impl Curve {
                         [start[1], -start[0]],
                         radius * sin,
                     )
-                }
-            }
-        }
-    }
-
-    pub(super) fn bounds(&self) -> Bounds {
-        match *self {
-            Self::Line { from, to, .. } => Bounds::of(from, to),
-            Self::Arc { .. } => {
-                let half = 0.5 * self.length();
-                let middle = self.at(half);
-                Bounds {
-                    low: [middle[0] - half, middle[1] - half],
-                    high: [middle[0] + half, middle[1] + half],
                 }
             }
         }
@@ -315,6 +309,33 @@ impl Cover {
         }
     }
 
+    /// A quick test: `true` only if no point of the stretch lies in the region.
+    pub(super) fn misses(&self, curve: &Curve, [from, to]: [f64; 2]) -> bool {
+        let Self::Around {
+            ends: [c, d],
+            direction,
+            reach,
+        } = *self
+        else {
+            return false;
+        };
+        let Curve::Line { .. } = curve else {
+            let middle = curve.at(f64::midpoint(from, to));
+            return distance_to_segment(middle, c, d) >= reach + 0.5 * (to - from);
+        };
+        let (a, b) = (curve.at(from), curve.at(to));
+        let (first, last) = (cross(direction, minus(a, c)), cross(direction, minus(b, c)));
+        if first.min(last) >= reach || first.max(last) <= -reach {
+            return true;
+        }
+        // Two segments that do not cross are nearest to each other at an end of one of them.
+        first * last > 0.0
+            && distance_to_segment(a, c, d) >= reach
+            && distance_to_segment(b, c, d) >= reach
+            && distance_to_segment(c, a, b) >= reach
+            && distance_to_segment(d, a, b) >= reach
+    }
+
     /// Whether a point lies deeper than `slack` inside every side of the region.
     pub(super) fn buries(&self, p: Point, slack: f64) -> bool {
         match *self {
@@ -346,10 +367,6 @@ impl Cover {
 
     /// A box around the region.
     pub(super) fn bounds(&self) -> Bounds {
-        let around = |p: Point, r: f64| Bounds {
-            low: [p[0] - r, p[1] - r],
-            high: [p[0] + r, p[1] + r],
-        };
         match *self {
             Self::Around { ends, reach, .. } => around(ends[0], reach).union(around(ends[1], reach)),
             Self::Layer {

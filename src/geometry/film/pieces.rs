@@ -54,7 +54,7 @@ struct Builder<'a> {
 
 /// The pieces and regions of a film on all walls.
 pub(super) fn on_all(walls: &Walls, reach: f64) -> Surface {
-    let mut builder = Builder::new(walls, reach);
+    let mut builder = Builder::new(walls, reach, true);
     for edge in 0..walls.len() {
         builder.surface.covers.push(Cover::Around {
             ends: walls.edges.ends(edge),
@@ -73,7 +73,7 @@ pub(super) fn on_all(walls: &Walls, reach: f64) -> Surface {
 
 /// The pieces and regions of a film on the coated walls.
 pub(super) fn on_some(walls: &Walls, reach: f64) -> Surface {
-    let mut builder = Builder::new(walls, reach);
+    let mut builder = Builder::new(walls, reach, false);
     for edge in 0..walls.len() {
         if walls.coated[edge] {
             builder.layer(edge);
@@ -97,7 +97,7 @@ pub(super) fn on_some(walls: &Walls, reach: f64) -> Surface {
 }
 
 impl<'a> Builder<'a> {
-    fn new(walls: &'a Walls, reach: f64) -> Self {
+    fn new(walls: &'a Walls, reach: f64, is_everywhere: bool) -> Self {
         let turns: Vec<(f64, Ordering)> = (0..walls.len()).map(|i| walls.turn(i)).collect();
         let coated = |i: usize| walls.coated[i] && walls.coated[walls.edges.previous(i)];
         let wish: Vec<f64> = (0..walls.len())
@@ -109,7 +109,20 @@ impl<'a> Builder<'a> {
                 }
             })
             .collect();
-        let fits = |i: usize| wish[i] + wish[walls.edges.next(i)] <= walls.length[i] + ROUNDING;
+        // What a mitre cuts off must lie under the other layer, which ends square on some walls.
+        let overlap = |i: usize| {
+            let turn = turns[i].0.min(std::f64::consts::FRAC_PI_2);
+            if is_everywhere || wish[i] <= 0.0 {
+                0.0
+            } else {
+                reach * turn.sin() + ROUNDING
+            }
+        };
+        let fits = |i: usize| {
+            let next = walls.edges.next(i);
+            wish[i] + wish[next] <= walls.length[i] + ROUNDING
+                && overlap(i).max(overlap(next)) <= walls.length[i]
+        };
         let mitre = (0..walls.len())
             .map(|i| {
                 if fits(i) && fits(walls.edges.previous(i)) {

@@ -6,9 +6,12 @@ use rayon::iter::{IntoParallelRefIterator, ParallelIterator};
 
 use super::super::outline::Point;
 use super::super::segment_tree::{Bounds, SegmentTree};
-use super::curve::{Cover, Curve, Open, dot, left_of, minus};
+use super::curve::{Cover, Curve, Open, around, dot, left_of, minus};
 use super::pieces::{Piece, Surface};
 use super::walls::{ROUNDING, Walls};
+
+/// Most walls tried one by one before all that are near.
+const MIDDLES: usize = 64;
 
 /// A stretch of a piece that is part of the new wall.
 #[derive(Debug, Clone, Copy)]
@@ -73,10 +76,12 @@ impl<'a> Trimmer<'a> {
     fn parts_of(&self, piece: &Piece) -> Vec<Part> {
         let curve = piece.curve;
         let mut open = Open::whole(&curve, ROUNDING);
-        if self.is_buried(&curve) {
-            return Vec::new();
+        if self.boxes.is_none() {
+            self.cover_from_middles(piece, &mut open);
         }
-        self.cover(piece, &mut open);
+        for stretch in open.stretches.clone() {
+            self.cover(piece, stretch, &mut open);
+        }
         if self.boxes.is_some() && !piece.is_wall && !open.is_closed() {
             self.cut_off_solid(&curve, &mut open);
         }
@@ -84,29 +89,43 @@ impl<'a> Trimmer<'a> {
         parts.map(|&stretch| Part { curve, stretch }).collect()
     }
 
-    /// Whether one wall is so near to the middle that the whole piece is under its film; a quick test.
-    fn is_buried(&self, curve: &Curve) -> bool {
-        let half = 0.5 * curve.length();
-        let enough = self.reach - half - ROUNDING;
-        if self.boxes.is_some() || enough <= 0.0 {
-            return false;
+    /// Takes away what is under the film of the wall nearest to the middle of each open stretch, until the
+    /// middles are clear: for most pieces that is all.
+    fn cover_from_middles(&self, piece: &Piece, open: &mut Open) {
+        let mut clear = 0;
+        for _ in 0..MIDDLES {
+            let Some(&[from, to]) = open.stretches.get(clear) else {
+                return;
+            };
+            let middle = piece.curve.at(f64::midpoint(from, to));
+            let half = 0.5 * (to - from);
+            // A wall so near that it covers the whole stretch ends the search for the nearest.
+            let enough = self.reach - half - ROUNDING;
+            let nearest = self
+                .walls
+                .tree
+                .nearest_or_within(middle, enough, &mut 0)
+                .filter(|wall| wall.distance < self.reach - ROUNDING);
+            match nearest {
+                Some(wall) if !piece.own.contains(&wall.edge) => {
+                    open.cover(&piece.curve, &self.surface.covers[wall.edge]);
+                }
+                _ => clear += 1,
+            }
         }
-        let nearest = self
-            .walls
-            .tree
-            .nearest_or_within(curve.at(half), enough, &mut 0);
-        nearest.is_some_and(|wall| wall.distance < enough)
     }
 
-    fn cover(&self, piece: &Piece, open: &mut Open) {
+    /// Takes away what any region covers of one stretch.
+    fn cover(&self, piece: &Piece, stretch: [f64; 2], open: &mut Open) {
         let (tree, reach) = match &self.boxes {
             Some(boxes) => (boxes, 0.0),
             None => (&self.walls.tree, self.reach),
         };
-        let near = Near::new(&piece.curve, reach);
+        let near = Near::new(&piece.curve, stretch, reach);
         let flow = tree.visit_where(&|bounds| near.meets(bounds), &mut |index| {
-            if !piece.own.contains(&index) {
-                open.cover(&piece.curve, &self.surface.covers[index]);
+            let cover = &self.surface.covers[index];
+            if !piece.own.contains(&index) && !cover.misses(&piece.curve, stretch) {
+                open.cover(&piece.curve, cover);
             }
             if open.is_closed() {
                 ControlFlow::Break(())
@@ -114,12 +133,12 @@ impl<'a> Trimmer<'a> {
                 ControlFlow::Continue(())
             }
         });
-        debug_assert!(flow.is_break() == open.is_closed());
+        debug_assert!(flow.is_continue() || open.is_closed());
     }
 
     /// Takes away what lies in the solid, by the crossings with all walls.
     fn cut_off_solid(&self, curve: &Curve, open: &mut Open) {
-        let near = Near::new(curve, ROUNDING);
+        let near = Near::new(curve, [0.0, curve.length()], ROUNDING);
         let mut places = Vec::new();
         let flow = self
             .walls
@@ -162,20 +181,27 @@ struct Near {
 }
 
 impl Near {
-    fn new(curve: &Curve, reach: f64) -> Self {
+    fn new(curve: &Curve, [from, to]: [f64; 2], reach: f64) -> Self {
         let reach = reach + ROUNDING;
-        let half = 0.5 * curve.length();
-        let Bounds { low, high } = curve.bounds();
-        let (normal, thick) = match curve {
-            Curve::Line { direction, .. } => (left_of(*direction), 0.0),
-            Curve::Arc { start, .. } => (*start, half),
+        let half = 0.5 * (to - from);
+        let middle = curve.at(f64::midpoint(from, to));
+        let (normal, thick, bounds) = match *curve {
+            Curve::Line { direction, .. } => {
+                let bounds = Bounds::of(curve.at(from), curve.at(to));
+                (left_of(direction), 0.0, bounds)
+            }
+            Curve::Arc { centre, radius, .. } => {
+                let out = minus(middle, centre).map(|c| c / radius);
+                // A round stretch is at most its sagitta away from its tangent.
+                (out, 0.5 * half * half / radius, around(middle, half))
+            }
         };
         Self {
             bounds: Bounds {
-                low: [low[0] - reach, low[1] - reach],
-                high: [high[0] + reach, high[1] + reach],
+                low: bounds.low.map(|c| c - reach),
+                high: bounds.high.map(|c| c + reach),
             },
-            middle: curve.at(half),
+            middle,
             normal,
             across: thick + reach,
             around: half + reach,

@@ -1,5 +1,6 @@
 //! Plane geometry of sections: outlines, their problems, nominal shapes. No files, no grid.
 
+mod containment;
 mod corners;
 pub mod curves;
 mod film;
@@ -14,6 +15,7 @@ mod transform;
 mod validity;
 mod wall_edges;
 
+pub use containment::{Escape, EscapeKind};
 pub use corners::{Corner, corners};
 pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};

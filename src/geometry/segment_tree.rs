@@ -6,6 +6,7 @@
 //! Source of the packing: Kamel and Faloutsos (1993), On packing R-trees, CIKM 93 (cited from memory).
 
 use super::outline::{Outline, Point};
+use super::wall_edges::orientation;
 use std::cmp::Ordering;
 use std::ops::ControlFlow;
 
@@ -219,6 +220,30 @@ impl SegmentTree {
             return ControlFlow::Continue(());
         }
         self.visit_node(self.levels.len() - 2, 0, wanted, visit)
+    }
+
+    /// Whether a point lies inside the closed loops that the edges make up, by even-odd counting along a ray
+    /// to the right, and how many edges were looked at; `None` on the wall. Exact.
+    pub(crate) fn is_inside(&self, p: Point) -> (Option<bool>, usize) {
+        let ray = Bounds {
+            low: p,
+            high: [f64::INFINITY, p[1]],
+        };
+        let (mut is_odd, mut visited) = (false, 0);
+        let flow = self.visit_box(&ray, &mut |edge| {
+            visited += 1;
+            let [a, b] = self.segments[edge];
+            let side = orientation(a, b, p);
+            if side == Ordering::Equal && a[0].min(b[0]) <= p[0] {
+                return ControlFlow::Break(());
+            }
+            let upwards = b[1] > p[1];
+            if (a[1] > p[1]) != upwards {
+                is_odd ^= (side == Ordering::Greater) == upwards;
+            }
+            ControlFlow::Continue(())
+        });
+        (flow.is_continue().then_some(is_odd), visited)
     }
 
     fn visit_node<W, F>(

@@ -368,6 +368,20 @@ fn rough(sides: usize, roughness: f64, seed: u64) -> Outline {
 }
 
 #[test]
+fn vertices_on_straight_walls_within_rounding_do_no_harm() {
+    // The slope of the floor is the same to either side of its second vertex, but for rounding.
+    let groove = [[-50.0, 0.0], [-50.0, -39.8], [-20.0, -40.1], [0.0, -40.3], [20.0, -40.2], [50.0, -39.9], [50.0, 0.0]];
+    for factor in [1.0, 1e-6, 3.7e-5] {
+        let section = Outline::single(groove.map(|p| p.map(|c| c * factor)).into());
+        for share in [1e-6, 0.01, 0.999_983_96e-1] {
+            for on in FilmOn::ALL {
+                film_on(&section, share * factor * 10.0, on);
+            }
+        }
+    }
+}
+
+#[test]
 fn many_vertices_take_seconds_at_most() {
     for (sides, roughness, thickness) in [
         (100_000, 0.0, 0.1),

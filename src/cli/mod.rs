@@ -12,6 +12,7 @@ mod failure;
 mod input;
 mod output;
 mod quantities;
+mod sections;
 mod solve;
 
 use std::ffi::OsString;

@@ -54,6 +54,20 @@ pub enum FilmOn {
     Lid,
 }
 
+impl FilmOn {
+    /// All choices.
+    pub const ALL: [Self; 3] = [Self::All, Self::Floor, Self::Lid];
+
+    /// The word for it, in options and outputs.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::All => "all",
+            Self::Floor => "floor",
+            Self::Lid => "lid",
+        }
+    }
+}
+
 /// A film of uniform thickness.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Film {

@@ -101,14 +101,17 @@ impl Walls {
             let [a, b] = self.edges.ends(nearest.edge);
             return orientation(a, b, p) == Ordering::Greater;
         };
-        match self.turn(vertex).1 {
-            // The solid reaches over less than a half plane: nearest to a vertex only from the fluid.
-            Ordering::Less => true,
-            Ordering::Greater => false,
-            Ordering::Equal => {
-                let [a, b] = self.edges.ends(vertex);
-                orientation(a, b, p) == Ordering::Greater
-            }
+        // Left of both edges, or of one where the solid is a wedge; also right for points that rounding
+        // puts nearest to the vertex of a nearly straight wall.
+        let before = self.edges.previous(vertex);
+        let is_left = |edge: usize| {
+            let [a, b] = self.edges.ends(edge);
+            orientation(a, b, p) == Ordering::Greater
+        };
+        if self.turn(vertex).1 == Ordering::Greater {
+            is_left(before) && is_left(vertex)
+        } else {
+            is_left(before) || is_left(vertex)
         }
     }
 }

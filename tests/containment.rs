@@ -111,14 +111,20 @@ fn each_of_several_lumens_is_looked_at() {
     let first = simple(rectangle(0.0, 0.0, 3.0, 4.0));
     assert_eq!(kind(&first, &two), None);
     let escape = two.proven_inside(&first).unwrap_err();
-    assert_eq!((escape.kind, escape.inner.lumen()), (EscapeKind::Outside, 1));
+    assert_eq!(
+        (escape.kind, escape.inner.lumen()),
+        (EscapeKind::Outside, 1)
+    );
     // A lumen in an island of the other section.
     let ring = lumens(vec![(
         rectangle(0.0, 0.0, 10.0, 10.0),
         vec![rectangle(2.0, 2.0, 6.0, 6.0)],
     )]);
     let cored = lumens(vec![
-        (rectangle(0.0, 0.0, 10.0, 10.0), vec![rectangle(2.0, 2.0, 6.0, 6.0)]),
+        (
+            rectangle(0.0, 0.0, 10.0, 10.0),
+            vec![rectangle(2.0, 2.0, 6.0, 6.0)],
+        ),
         (rectangle(3.0, 3.0, 4.0, 4.0), vec![]),
     ]);
     assert_eq!(kind(&ring, &cored), None);
@@ -133,7 +139,10 @@ fn places_are_told_in_metres_and_messages_name_the_walls() {
     assert_eq!(escape.kind, EscapeKind::Crossing);
     assert!((escape.at[0] - 10e-6).abs() < 1e-18);
     let text = escape.to_string();
-    assert!(text.starts_with("its outer loop of lumen 1 crosses the outer loop of lumen 1 at (10, "), "{text}");
+    assert!(
+        text.starts_with("its outer loop of lumen 1 crosses the outer loop of lumen 1 at (10, "),
+        "{text}"
+    );
 }
 
 /// Loops on a coarse grid touch and share stretches all the time.

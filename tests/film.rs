@@ -104,19 +104,34 @@ fn a_rectangle_stays_a_rectangle() {
 
 #[test]
 fn a_circle_stays_a_circle_with_as_many_vertices() {
-    for (sides, thickness) in [(12, 0.3), (5000, 0.3), (5000, 0.9), (5000, 0.999), (100_000, 0.5)] {
+    for (sides, thickness) in [
+        (12, 0.3),
+        (5000, 0.3),
+        (5000, 0.9),
+        (5000, 0.999),
+        (100_000, 0.5),
+    ] {
         let section = Outline::single(circle([0.2, -0.4], 1.0, sides));
         let filmed = film(&section, thickness);
         // The distance of the sides from the centre is cos(pi / n).
         let shrunk = 1.0 - thickness / (PI / sides as f64).cos();
-        assert!(off(filmed.outline.area(), section.area() * shrunk * shrunk) < 1e-8 / (1.0 - thickness));
+        assert!(
+            off(filmed.outline.area(), section.area() * shrunk * shrunk) < 1e-8 / (1.0 - thickness)
+        );
         assert_eq!(filmed.report.vertices, sides);
     }
 }
 
 #[test]
 fn a_re_entrant_corner_becomes_an_arc() {
-    let corner = vec![[0.0, 0.0], [3.0, 0.0], [3.0, 1.0], [1.0, 1.0], [1.0, 3.0], [0.0, 3.0]];
+    let corner = vec![
+        [0.0, 0.0],
+        [3.0, 0.0],
+        [3.0, 1.0],
+        [1.0, 1.0],
+        [1.0, 3.0],
+        [0.0, 3.0],
+    ];
     let section = Outline::single(corner);
     for t in [0.01, 0.1, 0.3] {
         let filmed = film(&section, t);
@@ -130,13 +145,20 @@ fn a_re_entrant_corner_becomes_an_arc() {
 
 #[test]
 fn an_annulus_loses_at_both_walls_and_closes() {
-    let ring = with_islands(circle([0.0; 2], 2.0, 2000), vec![circle([0.0; 2], 1.0, 2000)]);
+    let ring = with_islands(
+        circle([0.0; 2], 2.0, 2000),
+        vec![circle([0.0; 2], 1.0, 2000)],
+    );
     let filmed = film(&ring, 0.25);
     assert!(off(filmed.outline.area(), PI * (1.75 * 1.75 - 1.25 * 1.25)) < 1e-5);
     assert_eq!(filmed.report.islands, [1, 1]);
     let filmed = film(&ring, 0.499);
     assert!(off(filmed.outline.area(), PI * (1.501 * 1.501 - 1.499 * 1.499)) < 1e-2);
-    let closed = Film { thickness: 0.5, on: FilmOn::All }.applied_to(&ring);
+    let closed = Film {
+        thickness: 0.5,
+        on: FilmOn::All,
+    }
+    .applied_to(&ring);
     assert!(matches!(closed, Err(FilmError::Closed { radius, .. }) if off(radius, 0.5) < 1e-5));
 }
 
@@ -175,7 +197,10 @@ fn a_dumbbell_splits_where_its_neck_closes() {
 #[test]
 fn islands_grow_together_and_onto_the_wall() {
     let post = |x: f64, y: f64| rectangle(x, y, 1.0, 1.0);
-    let two = with_islands(rectangle(0.0, 0.0, 20.0, 10.0), vec![post(8.0, 4.0), post(10.0, 4.0)]);
+    let two = with_islands(
+        rectangle(0.0, 0.0, 20.0, 10.0),
+        vec![post(8.0, 4.0), post(10.0, 4.0)],
+    );
     assert_eq!(film(&two, 0.49).report.islands, [2, 2]);
     let merged = film(&two, 0.51);
     assert_eq!(merged.report.islands, [2, 1]);
@@ -217,7 +242,11 @@ fn a_comb_keeps_its_teeth_until_they_close() {
     assert_eq!(filmed.report.lumens, [1, 1]);
     let closed = film(&comb, 0.499);
     assert_eq!(closed.report.lumens, [1, 1]);
-    let gone = Film { thickness: 0.6, on: FilmOn::All }.applied_to(&comb);
+    let gone = Film {
+        thickness: 0.6,
+        on: FilmOn::All,
+    }
+    .applied_to(&comb);
     assert!(gone.is_err() || gone.unwrap().report.area[1] < 10.0);
 }
 
@@ -225,7 +254,12 @@ fn a_comb_keeps_its_teeth_until_they_close() {
 fn a_fillet_of_the_radius_of_the_film_becomes_a_corner() {
     let t = 0.25;
     let mut points = Vec::new();
-    for (x, y, start) in [(1.75, 0.25, 3), (1.75, 0.75, 0), (0.25, 0.75, 1), (0.25, 0.25, 2)] {
+    for (x, y, start) in [
+        (1.75, 0.25, 3),
+        (1.75, 0.75, 0),
+        (0.25, 0.75, 1),
+        (0.25, 0.25, 2),
+    ] {
         points.extend((0..=400).map(|i| {
             let (sin, cos) = (FRAC_PI_2 * (f64::from(start) + f64::from(i) / 400.0)).sin_cos();
             [x + t * cos, y + t * sin]
@@ -254,7 +288,12 @@ fn a_film_on_the_floor_takes_off_the_depth_only() {
 fn a_film_on_the_floor_meets_leaning_walls_at_its_own_level() {
     // A groove with walls of 54.74 degrees, wider at the lid, and one that narrows.
     for lean in [0.7_f64, -0.7] {
-        let trapezoid = vec![[0.0, 0.0], [10.0, 0.0], [10.0 + 2.0 * lean, 2.0], [-2.0 * lean, 2.0]];
+        let trapezoid = vec![
+            [0.0, 0.0],
+            [10.0, 0.0],
+            [10.0 + 2.0 * lean, 2.0],
+            [-2.0 * lean, 2.0],
+        ];
         let filmed = film_on(&Outline::single(trapezoid), 0.5, FilmOn::Floor);
         let at = |y: f64| 10.0 + 2.0 * lean * y;
         assert!(off(filmed.outline.area(), 0.5 * (at(0.5) + at(2.0)) * 1.5) < 1e-12);
@@ -270,18 +309,35 @@ fn a_film_on_the_floor_ends_square_on_a_round_wall_and_at_a_step() {
     // A quarter of a ring is gone.
     let ring = PI / 4.0 * (1.0 - (1.0 - t) * (1.0 - t));
     assert!((round.area() - filmed.outline.area() - ring).abs() < 2e-3 * ring + 1e-3);
-    let step = vec![[0.0, 0.0], [5.0, 0.0], [5.0, 1.0], [9.0, 1.0], [9.0, 4.0], [0.0, 4.0]];
+    let step = vec![
+        [0.0, 0.0],
+        [5.0, 0.0],
+        [5.0, 1.0],
+        [9.0, 1.0],
+        [9.0, 4.0],
+        [0.0, 4.0],
+    ];
     let filmed = film_on(&Outline::single(step), 0.25, FilmOn::Floor);
     assert!(off(filmed.outline.area(), 5.0 * 4.0 + 4.0 * 3.0 - 9.0 * 0.25) < 1e-12);
     // A thick film buries the step; its upper end stays square.
-    let step = vec![[0.0, 0.0], [5.0, 0.0], [5.0, 1.0], [9.0, 1.0], [9.0, 4.0], [0.0, 4.0]];
+    let step = vec![
+        [0.0, 0.0],
+        [5.0, 0.0],
+        [5.0, 1.0],
+        [9.0, 1.0],
+        [9.0, 4.0],
+        [0.0, 4.0],
+    ];
     let filmed = film_on(&Outline::single(step), 1.5, FilmOn::Floor);
     assert!(off(filmed.outline.area(), 5.0 * 2.5 + 4.0 * 1.5) < 1e-12);
 }
 
 #[test]
 fn a_thin_plate_has_no_film_below_from_the_floor_above() {
-    let plate = with_islands(rectangle(0.0, 0.0, 10.0, 10.0), vec![rectangle(3.0, 5.0, 4.0, 0.1)]);
+    let plate = with_islands(
+        rectangle(0.0, 0.0, 10.0, 10.0),
+        vec![rectangle(3.0, 5.0, 4.0, 0.1)],
+    );
     let filmed = film_on(&plate, 0.5, FilmOn::Floor);
     let gone = 10.0 * 0.5 + 4.0 * 0.5;
     assert!(off(filmed.outline.area(), 100.0 - 0.4 - gone) < 1e-12);
@@ -291,9 +347,15 @@ fn a_thin_plate_has_no_film_below_from_the_floor_above() {
 #[test]
 fn a_lumen_may_close_while_others_stay() {
     let outline = Outline {
-        lumens: [rectangle(0.0, 0.0, 10.0, 1.0), rectangle(0.0, 5.0, 10.0, 4.0)]
-            .map(|points| Lumen { outer: Loop::new(points), islands: vec![] })
-            .into(),
+        lumens: [
+            rectangle(0.0, 0.0, 10.0, 1.0),
+            rectangle(0.0, 5.0, 10.0, 4.0),
+        ]
+        .map(|points| Lumen {
+            outer: Loop::new(points),
+            islands: vec![],
+        })
+        .into(),
     };
     let filmed = film(&outline, 0.6);
     assert_eq!(filmed.report.lumens, [2, 1]);
@@ -331,21 +393,40 @@ fn a_tiny_pocket_is_left_out_and_bounded() {
 
 #[test]
 fn the_thinnest_film_and_one_that_nearly_closes() {
-    let corner = vec![[0.0, 0.0], [3.0, 0.0], [3.0, 1.0], [1.0, 1.0], [1.0, 3.0], [0.0, 3.0]];
+    let corner = vec![
+        [0.0, 0.0],
+        [3.0, 0.0],
+        [3.0, 1.0],
+        [1.0, 1.0],
+        [1.0, 3.0],
+        [0.0, 3.0],
+    ];
     let section = Outline::single(corner);
     let thin = film(&section, 1e-11);
     assert!((thin.outline.area() - (5.0 - 12e-11)).abs() < 1e-13);
-    let below = Film { thickness: 1e-13, on: FilmOn::All }.applied_to(&section);
+    let below = Film {
+        thickness: 1e-13,
+        on: FilmOn::All,
+    }
+    .applied_to(&section);
     assert!(matches!(below, Err(FilmError::TooThin { .. })));
     let square = Outline::single(rectangle(0.0, 0.0, 1.0, 1.0));
     let last = film(&square, 0.499_999);
     assert!(off(last.outline.area(), 4e-12) < 1e-5);
     for thickness in [0.0, -1.0, f64::NAN, f64::INFINITY] {
-        let refused = Film { thickness, on: FilmOn::All }.applied_to(&square);
+        let refused = Film {
+            thickness,
+            on: FilmOn::All,
+        }
+        .applied_to(&square);
         assert!(matches!(refused, Err(FilmError::NotPositive { .. })));
     }
     for thickness in [0.5, 0.6, 1e9, f64::MAX] {
-        let closed = Film { thickness, on: FilmOn::All }.applied_to(&square);
+        let closed = Film {
+            thickness,
+            on: FilmOn::All,
+        }
+        .applied_to(&square);
         assert!(matches!(closed, Err(FilmError::Closed { radius, .. }) if off(radius, 0.5) < 1e-6));
     }
 }
@@ -370,7 +451,15 @@ fn rough(sides: usize, roughness: f64, seed: u64) -> Outline {
 #[test]
 fn vertices_on_straight_walls_within_rounding_do_no_harm() {
     // The slope of the floor is the same to either side of its second vertex, but for rounding.
-    let groove = [[-50.0, 0.0], [-50.0, -39.8], [-20.0, -40.1], [0.0, -40.3], [20.0, -40.2], [50.0, -39.9], [50.0, 0.0]];
+    let groove = [
+        [-50.0, 0.0],
+        [-50.0, -39.8],
+        [-20.0, -40.1],
+        [0.0, -40.3],
+        [20.0, -40.2],
+        [50.0, -39.9],
+        [50.0, 0.0],
+    ];
     for factor in [1.0, 1e-6, 3.7e-5] {
         let section = Outline::single(groove.map(|p| p.map(|c| c * factor)).into());
         for share in [1e-6, 0.01, 0.999_983_96e-1] {
@@ -394,7 +483,10 @@ fn many_vertices_take_seconds_at_most() {
         let start = std::time::Instant::now();
         let filmed = film(&section, thickness);
         let time = start.elapsed().as_secs_f64();
-        println!("{sides} {roughness} {thickness}: {time:.2} s, {:?}", filmed.report);
+        println!(
+            "{sides} {roughness} {thickness}: {time:.2} s, {:?}",
+            filmed.report
+        );
         assert!(time < 60.0, "{sides} vertices took {time} s");
     }
 }

@@ -11,8 +11,8 @@ use crate::flow::{
 use crate::geometry::Film;
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, OutputFile, PictureFormat, ReachRecord, SolveDocument, SourceRecord, TextOptions, check_targets,
-    legacy_vtk_path, vtk_paths, write_files,
+    self, OutputFile, PictureFormat, ReachRecord, SolveDocument, SourceRecord, TextOptions,
+    check_targets, legacy_vtk_path, vtk_paths, write_files,
 };
 use crate::study::Reach;
 use crate::units;

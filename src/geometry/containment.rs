@@ -49,7 +49,10 @@ impl fmt::Display for Escape {
         match self.kind {
             EscapeKind::Crossing => write!(f, "its {inner} crosses the {outer} at {at}"),
             EscapeKind::WallInFluid => {
-                write!(f, "the {outer} runs through the fluid of its {inner} at {at}")
+                write!(
+                    f,
+                    "the {outer} runs through the fluid of its {inner} at {at}"
+                )
             }
             EscapeKind::Outside => write!(f, "its {inner} lies outside at {at}"),
         }
@@ -186,7 +189,9 @@ impl Proof {
         } else if lies_inside(c, a, b) {
             into([a, b], c, &|p| self.is_in_corner(e, p))
         } else if lies_inside(a, c, d) {
-            into([b, before], a, &|p| orientation(c, d, p) == Ordering::Greater)
+            into([b, before], a, &|p| {
+                orientation(c, d, p) == Ordering::Greater
+            })
         } else {
             None
         }

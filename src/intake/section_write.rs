@@ -42,7 +42,11 @@ pub fn to_toml(
             &format!("name = {}", toml::Value::String(name.to_owned())),
         );
     }
-    let drawn_reach = extras.reach.iter().flat_map(sides).any(|(_, side)| side.nominal.is_none());
+    let drawn_reach = extras
+        .reach
+        .iter()
+        .flat_map(sides)
+        .any(|(_, side)| side.nominal.is_none());
     if nominal.is_none() || drawn_reach {
         line(&mut text, "unit = \"um\"");
     }
@@ -77,7 +81,9 @@ pub fn to_toml(
 /// The sections of a reach that are given, with their keys.
 fn sides(reach: &Reach) -> impl Iterator<Item = (&'static str, &ReachSection)> {
     let sides = [("inner", &reach.inner), ("outer", &reach.outer)];
-    sides.into_iter().filter_map(|(key, side)| Some((key, side.as_ref()?)))
+    sides
+        .into_iter()
+        .filter_map(|(key, side)| Some((key, side.as_ref()?)))
 }
 
 fn write_reach(text: &mut String, reach: &Reach) {

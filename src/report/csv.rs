@@ -114,10 +114,7 @@ fn film_fields(document: &SolveDocument<'_>) -> Vec<Field> {
     let film = document.film;
     vec![
         ("film_thickness_m", number(film.map(|f| f.film.thickness))),
-        (
-            "film_on",
-            film.map_or("", |f| f.film.on.word()).to_owned(),
-        ),
+        ("film_on", film.map_or("", |f| f.film.on.word()).to_owned()),
         ("area_before_film_m2", number(film.map(|f| f.area[0]))),
     ]
 }
@@ -131,14 +128,8 @@ fn reach_fields(document: &SolveDocument<'_>) -> Vec<Field> {
     vec![
         ("conductance_reach_low_m4", number(low)),
         ("conductance_reach_high_m4", number(high)),
-        (
-            "resistance_reach_low_pa_s_per_m3",
-            number(resistance(high)),
-        ),
-        (
-            "resistance_reach_high_pa_s_per_m3",
-            number(resistance(low)),
-        ),
+        ("resistance_reach_low_pa_s_per_m3", number(resistance(high))),
+        ("resistance_reach_high_pa_s_per_m3", number(resistance(low))),
     ]
 }
 

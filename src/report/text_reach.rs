@@ -99,7 +99,11 @@ pub(super) fn reach(document: &SolveDocument<'_>, record: &ReachRecord<'_>) -> S
         ]);
         let k = document.flow.conductance.value;
         let rows = [
-            ("R' within reach", document.resistance_per_length(), "Pa s/m^4"),
+            (
+                "R' within reach",
+                document.resistance_per_length(),
+                "Pa s/m^4",
+            ),
             ("R within reach", document.resistance(), "Pa s/m\u{b3}"),
         ];
         for (label, estimate, unit) in rows {
@@ -109,9 +113,9 @@ pub(super) fn reach(document: &SolveDocument<'_>, record: &ReachRecord<'_>) -> S
             }
         }
     }
-    let reason = record
-        .reason
-        .map_or_else(String::new, |text| format!(" Reason given: {}.", one_line(text).trim_end_matches('.')));
+    let reason = record.reason.map_or_else(String::new, |text| {
+        format!(" Reason given: {}.", one_line(text).trim_end_matches('.'))
+    });
     let note = format!(
         "Inner inside section inside outer is proven, so the true K lies within reach wherever the true wall lies \
          between the two. This is what the instrument could not see, not the numerical range above and not a \
@@ -119,7 +123,10 @@ pub(super) fn reach(document: &SolveDocument<'_>, record: &ReachRecord<'_>) -> S
     );
     format!(
         "{}{}",
-        part("Reach: the smallest and the largest section it could be", &table),
+        part(
+            "Reach: the smallest and the largest section it could be",
+            &table
+        ),
         paragraph("  ", &note)
     )
 }

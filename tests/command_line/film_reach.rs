@@ -19,7 +19,8 @@ outer = [[0, -1], [100, -1], [100, 40], [0, 40]]
 "#;
 
 /// A dumbbell with a neck 4 um wide, micrometres.
-const DUMBBELL: &str = "x_um,y_um\n0,0\n40,0\n40,18\n60,18\n60,0\n100,0\n100,40\n60,40\n60,22\n40,22\n40,40\n0,40\n";
+const DUMBBELL: &str =
+    "x_um,y_um\n0,0\n40,0\n40,18\n60,18\n60,0\n100,0\n100,40\n60,40\n60,22\n40,22\n40,40\n0,40\n";
 
 fn rectangle(width: f64, height: f64) -> String {
     format!("x_um,y_um\n0,0\n{width},0\n{width},{height}\n0,{height}\n")
@@ -103,7 +104,11 @@ fn a_film_that_closes_the_section_or_is_absurd_is_refused() {
     folder.write("d.csv", "x_um,y_um\n0,0\n10,30\n0,60\n-10,30\n");
     let run = folder.line("solve d.csv --film 1um --film-on floor");
     assert_eq!(run.status, 4);
-    assert!(run.err.contains("no wall of the section faces up"), "{}", run.err);
+    assert!(
+        run.err.contains("no wall of the section faces up"),
+        "{}",
+        run.err
+    );
 }
 
 #[test]
@@ -181,7 +186,9 @@ fn sections_in_the_wrong_order_end_with_the_place() {
     let run = folder.line("solve o.toml");
     assert_eq!(run.status, 3);
     assert!(
-        run.err.contains("the section is not inside the outer section: its outer loop of lumen 1 crosses"),
+        run.err.contains(
+            "the section is not inside the outer section: its outer loop of lumen 1 crosses"
+        ),
         "{}",
         run.err
     );
@@ -192,7 +199,11 @@ fn sections_in_the_wrong_order_end_with_the_place() {
     );
     let run = folder.line("solve x.toml");
     assert_eq!(run.status, 3);
-    assert!(run.err.contains("reach.inner: the outline cannot be used"), "{}", run.err);
+    assert!(
+        run.err.contains("reach.inner: the outline cannot be used"),
+        "{}",
+        run.err
+    );
 }
 
 #[test]

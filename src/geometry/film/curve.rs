@@ -368,7 +368,9 @@ impl Cover {
     /// A box around the region.
     pub(super) fn bounds(&self) -> Bounds {
         match *self {
-            Self::Around { ends, reach, .. } => around(ends[0], reach).union(around(ends[1], reach)),
+            Self::Around { ends, reach, .. } => {
+                around(ends[0], reach).union(around(ends[1], reach))
+            }
             Self::Layer {
                 origin,
                 direction,

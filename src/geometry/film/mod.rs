@@ -170,7 +170,9 @@ impl FilmError {
         match self {
             Self::NotPositive { .. } => "give a thickness above zero, for example 0.5um",
             Self::TooThin { .. } => "leave the film out, or give the thickness with its unit",
-            Self::NoWall { .. } => "check that y points up in the outline, or put the film on all walls",
+            Self::NoWall { .. } => {
+                "check that y points up in the outline, or put the film on all walls"
+            }
             Self::Closed { .. } => "give a thinner film; no fluid is left with this one",
             Self::Curve(_) => "give a thinner film",
             Self::Failed { .. } => {
@@ -237,12 +239,7 @@ impl Film {
         })
     }
 
-    fn attempt(
-        &self,
-        outline: &Outline,
-        walls: &Walls,
-        blends: bool,
-    ) -> Result<Filmed, Trouble> {
+    fn attempt(&self, outline: &Outline, walls: &Walls, blends: bool) -> Result<Filmed, Trouble> {
         let is_everywhere = self.on == FilmOn::All;
         let reach = self.thickness * walls.scale;
         let surface = if is_everywhere {
@@ -312,19 +309,16 @@ impl Film {
     }
 
     /// Leaves out what is negligible and counts.
-    fn reported(
-        &self,
-        before: &Outline,
-        walls: &Walls,
-        nested: Nested,
-    ) -> Result<Filmed, Trouble> {
+    fn reported(&self, before: &Outline, walls: &Walls, nested: Nested) -> Result<Filmed, Trouble> {
         let (nested, left_out) = nested.without_negligible();
         let count = before.lumens.len();
         let mut remaining = vec![0_usize; count];
         for &lumen in nested.from.iter().chain(&left_out.from) {
             remaining[lumen] += 1;
         }
-        let unscaled = |points: &[Point]| Loop::new(points.iter().map(|p| p.map(|c| c / walls.scale)).collect());
+        let unscaled = |points: &[Point]| {
+            Loop::new(points.iter().map(|p| p.map(|c| c / walls.scale)).collect())
+        };
         let lumens = nested.lumens.iter().map(|(outer, islands)| Lumen {
             outer: unscaled(outer),
             islands: islands.iter().map(|island| unscaled(island)).collect(),
@@ -336,7 +330,11 @@ impl Film {
             return Err(Trouble::Check("its walls touch or cross"));
         }
         let islands = |o: &Outline| o.lumens.iter().map(|l| l.islands.len()).sum();
-        let left_areas: Vec<f64> = left_out.areas().iter().map(|a| a / walls.scale.powi(2)).collect();
+        let left_areas: Vec<f64> = left_out
+            .areas()
+            .iter()
+            .map(|a| a / walls.scale.powi(2))
+            .collect();
         let report = FilmReport {
             film: *self,
             thickness_used: self.thickness,
@@ -407,7 +405,10 @@ fn polygons(
     }
     let rough = all(FIRST_LOOK * side, false)?;
     let size: f64 = rough.iter().map(|points| area(points)).sum();
-    let around: f64 = rough.into_iter().map(|points| Loop::new(points).length()).sum();
+    let around: f64 = rough
+        .into_iter()
+        .map(|points| Loop::new(points).length())
+        .sum();
     // Twice the area over the perimeter: the gap of a ring, half the side of a square.
     let width = 2.0 * size.abs() / around;
     let smallest = side.min(width).max(1e-3 * side);

@@ -1,5 +1,4 @@
 //! Whether one section lies inside another: shared walls, touches, crossings by one rounding step.
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
 
 use etchwise::geometry::{EscapeKind, Loop, Lumen, Outline, Point};
 use proptest::prelude::*;

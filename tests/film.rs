@@ -491,7 +491,18 @@ fn many_vertices_take_seconds_at_most() {
     }
 }
 
+/// A share of the usual number of cases, for those that take longest.
+fn fewer_cases() -> ProptestConfig {
+    let usual = ProptestConfig::default();
+    ProptestConfig {
+        cases: usual.cases.div_ceil(8),
+        ..usual
+    }
+}
+
 proptest! {
+    #![proptest_config(fewer_cases())]
+
     #[test]
     fn rough_sections_keep_their_distance(
         sides in 5_usize..200,
@@ -587,6 +598,9 @@ proptest! {
         }
     }
 
+}
+
+proptest! {
     #[test]
     fn a_film_on_the_floor_of_a_rough_groove_is_no_thicker_than_that_on_all(
         heights in proptest::collection::vec(0.0..1.0_f64, 3..60),

@@ -158,9 +158,9 @@ impl Proof {
                 return Err(escape);
             }
         }
-        for wall in self.inner_loops..self.edges.ranges.len() {
+        for (wall, touched) in touches.into_iter().enumerate().skip(self.inner_loops) {
             let first = self.edges.ranges[wall].start;
-            if touches[wall] || self.edges.ranges[wall].is_empty() {
+            if touched || self.edges.ranges[wall].is_empty() {
                 continue;
             }
             let p = self.edges.start[first];

@@ -48,7 +48,7 @@ pub(super) fn film(report: &FilmReport) -> String {
     };
     let heading = format!(
         "Film of {} on {walls}; everything below is of the section that remains",
-        with_unit(report.film.thickness, numbers::LENGTHS, 6)
+        with_unit(report.film.thickness, numbers::LENGTHS, 4)
     );
     let mut out = part(&heading, &table);
     let nudge = report.thickness_used / report.film.thickness - 1.0;

@@ -188,7 +188,7 @@ impl ReachBound {
             is_given,
             area: flow.geometry.area,
             conductance: flow.conductance,
-            bracket: flow.bracket.clone(),
+            bracket: flow.bracket,
             is_converged: flow.solver.converged,
         }
     }

@@ -56,7 +56,7 @@ fn the_text_tells_what_the_film_did() {
     let run = folder.line("solve d.csv --film 3um --ascii --cells-across 32");
     assert_eq!(run.status, 0, "{}", run.err);
     for words in [
-        "Film of 3.00000 um on all walls; everything below is of the section that remains",
+        "Film of 3.000 um on all walls; everything below is of the section that remains",
         "1 before, 2 after",
         "1 split",
         "% less",

@@ -173,8 +173,8 @@ impl Curve {
                 let between = minus(c, centre);
                 let apart = between[0].hypot(between[1]);
                 if apart > 0.0 {
-                    let cosine =
-                        (apart / radius + (radius - r) / apart * ((radius + r) / radius)) / 2.0;
+                    let share = (radius - r) / apart * ((radius + r) / radius);
+                    let cosine = f64::midpoint(apart / radius, share);
                     let towards = [between[0] / apart, between[1] / apart];
                     push_angles(start, towards, cosine, radius, found);
                 }

@@ -114,7 +114,10 @@ pub(super) fn reach(document: &SolveDocument<'_>, record: &ReachRecord<'_>) -> S
         }
     }
     let reason = record.reason.map_or_else(String::new, |text| {
-        format!(" Reason given: {}.", one_line(text).trim_end_matches('.'))
+        format!(
+            " Reason given: {}.",
+            one_line(text).trim().trim_end_matches('.')
+        )
     });
     let note = format!(
         "Inner inside section inside outer is proven, so the true K lies within reach wherever the true wall lies \

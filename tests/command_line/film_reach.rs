@@ -88,6 +88,12 @@ fn a_film_that_closes_the_section_or_is_absurd_is_refused() {
     );
     for (line, status, words) in [
         ("solve r.csv --film 1000m", 4, "closes the section"),
+        ("solve r.csv --film 1e300m", 4, "closes the section"),
+        (
+            "solve r.csv --film 1e300m --film-on lid",
+            4,
+            "closes the section",
+        ),
         ("solve r.csv --film 0um", 2, "not above zero"),
         ("solve r.csv --film=-1um", 2, "not above zero"),
         ("solve r.csv --film 0.5", 2, "unit"),

@@ -106,7 +106,7 @@ pub(super) fn polygon(
 ) -> Result<Vec<Point>, CurveError> {
     let mut points: Vec<Point> = Vec::with_capacity(chain.len());
     let mut blended_last = false;
-    let mut blended_first = false;
+    let mut begins_plain = false;
     for (place, &index) in chain.iter().enumerate() {
         let part = &parts[index];
         let inner = match part.curve {
@@ -125,14 +125,14 @@ pub(super) fn polygon(
                 if !blended_last {
                     points.push(part.start());
                 }
-                blended_first |= place == 0;
+                begins_plain |= place == 0;
                 points.extend(other.unwrap_or_default());
                 blended_last = false;
             }
         }
     }
     // The first vertex was written as the start of its part, though the last part ends in a blend.
-    if blended_last && blended_first && points.len() > 3 {
+    if blended_last && begins_plain && points.len() > 3 {
         points.remove(0);
     }
     points.dedup_by(|later, earlier| distance(*later, *earlier) <= tolerance);

@@ -24,6 +24,7 @@ use super::inscribed_circle::largest_inscribed_circle;
 use super::outline::{Loop, Lumen, Outline, Point};
 use super::sweep::sweep;
 use super::wall_edges::WallEdges;
+use curve::distance;
 use joined::{Chain, area, chains, polygon};
 use pieces::{Surface, on_all, on_some};
 use trim::{Part, Trimmer};
@@ -220,6 +221,12 @@ impl Film {
         if thickness < limit {
             return Err(FilmError::TooThin { thickness, limit });
         }
+        // Thicker than the section is wide: nothing to work out, and nothing that could overflow.
+        let across = walls.tree.bounds().map_or(0.0, |b| distance(b.low, b.high));
+        if thickness > across / walls.scale {
+            let radius = largest_radius(&outline);
+            return Err(FilmError::Closed { thickness, radius });
+        }
         let mut failed = "no attempt";
         for (attempt, nudge) in NUDGES.into_iter().enumerate() {
             let mut used = *self;
@@ -271,8 +278,7 @@ impl Film {
 
     /// The section closed, or something went wrong.
     fn nothing_left(&self, outline: &Outline) -> Trouble {
-        let circles = outline.lumens.iter().filter_map(largest_inscribed_circle);
-        let radius = circles.map(|c| c.radius).fold(0.0, f64::max);
+        let radius = largest_radius(outline);
         if self.on == FilmOn::All && radius > self.thickness * (1.0 + 1e-6) {
             return Trouble::Check("nothing is left, though a larger circle fits");
         }
@@ -351,6 +357,12 @@ impl Film {
         };
         Ok(Filmed { outline, report })
     }
+}
+
+/// Radius of the largest circle that fits into any lumen, m.
+fn largest_radius(outline: &Outline) -> f64 {
+    let circles = outline.lumens.iter().filter_map(largest_inscribed_circle);
+    circles.map(|c| c.radius).fold(0.0, f64::max)
 }
 
 /// In micrometres, six digits.

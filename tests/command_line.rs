@@ -18,6 +18,8 @@ mod bad_options;
 mod check;
 #[path = "command_line/draw.rs"]
 mod draw;
+#[path = "command_line/film_reach.rs"]
+mod film_reach;
 #[path = "command_line/help.rs"]
 mod help;
 #[path = "command_line/json_contract.rs"]

@@ -115,7 +115,7 @@ fn solve() -> Command {
             "Example: etchwise solve wafer.toml --fluid water --temperature 25C \\\n  \
              --length 20mm --flow-rate 5uL/min --picture wafer.png",
         );
-    let command = accuracy_options(fluid_options(input(command)));
+    let command = accuracy_options(fluid_options(film_options(input(command))));
     let heading = "Output";
     wall_options(common(command), heading)
         .arg(flag(
@@ -205,6 +205,33 @@ fn wall_options(command: Command, heading: &'static str) -> Command {
                      or .svg. May be given more than once. Example: --wall-picture shear.png",
                 )
                 .help_heading(heading),
+        )
+}
+
+fn film_options(command: Command) -> Command {
+    let film = "Film on the walls";
+    command
+        .arg(
+            option("film", "THICKNESS", "Solve what a film of this thickness leaves")
+                .long_help(
+                    "Solve what a conformal film of this thickness leaves of the section: the fluid at \
+                     least this far from the wall. Corners of the fluid stay sharp, re-entrant ones \
+                     become round; necks may close and islands grow together, which is reported. \
+                     Example: --film 0.5um",
+                )
+                .help_heading(film),
+        )
+        .arg(
+            option("film-on", "WALLS", "Walls with the film: all, floor, lid [default: all]")
+                .value_parser(["all", "floor", "lid"])
+                .requires("film")
+                .long_help(
+                    "Walls that carry the film: all; floor, those whose normal out of the fluid points \
+                     down within 45 degrees; lid, up. The film ends square, or at its own level where a \
+                     wall without film leans at up to 135 degrees to the coated one. Default: all. Example: \
+                     --film 0.5um --film-on floor",
+                )
+                .help_heading(film),
         )
 }
 

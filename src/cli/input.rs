@@ -71,29 +71,33 @@ pub(super) fn read(path: &Path, options: &ReadOptions) -> Result<Section, Failur
     Ok(section)
 }
 
+/// Refuses an outline with problems; `name` says whose it is, `advice` follows the remedy.
+pub(super) fn refuse_problems(outline: &Outline, name: &str, advice: &str) -> Result<(), Failure> {
+    let problems = outline.problems();
+    if !problems.has_errors() {
+        return Ok(());
+    }
+    let errors: Vec<_> = problems.errors().collect();
+    let mut text = format!("{name}: the outline cannot be used");
+    for problem in errors.iter().take(PROBLEMS_SHOWN) {
+        let _ = write!(text, "\n  {problem}");
+    }
+    if errors.len() > PROBLEMS_SHOWN {
+        let _ = write!(text, "\n  and {} more", errors.len() - PROBLEMS_SHOWN);
+    }
+    let remedy = errors.first().map_or("", |problem| problem.remedy());
+    let help = format!("{remedy}{advice}");
+    Err(Failure::new(ExitStatus::Unreadable, text, &help))
+}
+
 /// Reads a file and refuses an outline with problems.
 pub(super) fn checked_section(
     path: &Path,
     options: &ReadOptions,
 ) -> Result<CheckedSection, Failure> {
     let section = read(path, options)?;
-    let problems = section.outline.problems();
-    if problems.has_errors() {
-        let errors: Vec<_> = problems.errors().collect();
-        let mut text = format!("{}: the outline cannot be used", path.display());
-        for problem in errors.iter().take(PROBLEMS_SHOWN) {
-            let _ = write!(text, "\n  {problem}");
-        }
-        if errors.len() > PROBLEMS_SHOWN {
-            let _ = write!(text, "\n  and {} more", errors.len() - PROBLEMS_SHOWN);
-        }
-        let remedy = errors.first().map_or("", |problem| problem.remedy());
-        let help = format!(
-            "{remedy}; `etchwise check {}` lists all problems",
-            path.display()
-        );
-        return Err(Failure::new(ExitStatus::Unreadable, text, &help));
-    }
+    let advice = format!("; `etchwise check {}` lists all problems", path.display());
+    refuse_problems(&section.outline, &path.display().to_string(), &advice)?;
     let (outline, dropped) = section.outline.clone().without_duplicate_vertices();
     let mut warnings = section.warnings.clone();
     if dropped > 0 {

@@ -13,6 +13,7 @@ mod failure;
 mod input;
 mod output;
 mod quantities;
+mod sections;
 mod solve;
 
 use std::ffi::OsString;

@@ -6,13 +6,15 @@ use clap::ArgMatches;
 
 use crate::flow::{
     Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, WallReport,
-    outside_validity, shortcuts, solve_outline, validity_warnings,
+    outside_validity, shortcuts, validity_warnings,
 };
+use crate::geometry::Film;
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_targets,
-    legacy_vtk_path, vtk_paths, write_files,
+    self, OutputFile, PictureFormat, ReachRecord, SolveDocument, SourceRecord, TextOptions,
+    check_targets, legacy_vtk_path, vtk_paths, write_files,
 };
+use crate::study::Reach;
 use crate::units;
 use crate::warning::Code;
 
@@ -22,6 +24,7 @@ use super::failure::Failure;
 use super::input::{CheckedSection, checked_section, read_options};
 use super::output;
 use super::quantities::{fluid, positive, quantity};
+use super::sections::{Sections, film};
 
 /// Nodes of an exported field, about: above that the field is thinned and a warning says so.
 const FIELD_NODES: usize = 16_000_000;
@@ -31,6 +34,7 @@ const PICTURE_NODES: usize = 1_500_000;
 struct Request {
     file: PathBuf,
     read: ReadOptions,
+    film: Option<Film>,
     solve: SolveOptions,
     fluid: Option<Fluid>,
     length: Option<f64>,
@@ -64,8 +68,10 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let request = Request::new(matches)?;
     request.check_targets()?;
     let checked = checked_section(&request.file, &request.read)?;
-    let solved = solve_outline(&checked.outline, &request.solve)?;
-    request.answer(&checked, &solved)
+    let sections = Sections::new(&checked, request.film.as_ref())?;
+    let solved = sections.solve(&request.solve)?;
+    let reach = sections.reach(&solved.flow, &request.solve)?;
+    request.answer(&checked, &sections, &solved, reach.as_ref())
 }
 
 fn path(matches: &ArgMatches, name: &str) -> Option<PathBuf> {
@@ -152,6 +158,7 @@ impl Request {
             file: path(matches, "file").unwrap_or_default(),
             read: read_options(matches)?,
             solve: solve_options(matches)?,
+            film: film(matches)?,
             fluid,
             length,
             drive,
@@ -188,7 +195,9 @@ impl Request {
     fn answer(
         &self,
         checked: &CheckedSection,
+        sections: &Sections,
         solved: &SolvedSection,
+        reach: Option<&Reach>,
     ) -> Result<ExitStatus, Failure> {
         let flow = &solved.flow;
         let fluid = self.fluid.as_ref();
@@ -200,27 +209,39 @@ impl Request {
         };
         let rows: Option<Vec<ShortcutRow>> = self
             .shortcuts
-            .then(|| shortcuts(&checked.outline, flow.conductance.value));
-        let walls = WallReport::new(
-            solved.outline(),
-            &flow.wall_shear.curve,
-            &checked.section.walls,
-        );
+            .then(|| shortcuts(&sections.outline, flow.conductance.value));
+        // Named stretches are places on the wall without the film.
+        let named = match &sections.film {
+            Some(_) => &[][..],
+            None => &checked.section.walls[..],
+        };
+        let walls = WallReport::new(solved.outline(), &flow.wall_shear.curve, named);
         let mut warnings = checked.warnings.clone();
         if let Some(fluid) = fluid {
             warnings.extend(validity_warnings(flow, fluid, point.as_ref()));
         }
         let provenance = &checked.section.provenance;
+        let mut notes = provenance.notes.clone();
+        if sections.film.is_some() && !checked.section.walls.is_empty() {
+            notes.push(
+                "the named walls belong to the section without the film; walls go by direction"
+                    .to_owned(),
+            );
+        }
         let name = self.name(checked);
+        let given = checked.section.extras.reach.as_ref();
+        let reason = given.and_then(|reach| reach.reason.as_deref());
         let document = SolveDocument {
             source: Some(SourceRecord {
                 path: &provenance.path,
                 sha256: &provenance.sha256,
                 kind: provenance.kind.word(),
-                notes: &provenance.notes,
+                notes: &notes,
             }),
             section_name: &name,
+            film: sections.film.as_ref(),
             flow,
+            reach: reach.map(|reach| ReachRecord { reach, reason }),
             fluid,
             length: self.length,
             operating_point: point.as_ref(),
@@ -237,7 +258,9 @@ impl Request {
         let invalid = fluid
             .zip(point.as_ref())
             .is_some_and(|(fluid, point)| outside_validity(flow, fluid, point));
-        Ok(if !(flow.solver.converged && flow.accuracy.is_met) {
+        let is_solved =
+            flow.solver.converged && flow.accuracy.is_met && reach.is_none_or(Reach::is_converged);
+        Ok(if !is_solved {
             ExitStatus::NotSolved
         } else if invalid {
             ExitStatus::OutsideValidity

@@ -6,6 +6,7 @@
 use super::document::SolveDocument;
 use super::numbers::one_line;
 use crate::flow::{OperatingPoint, SectionFlow};
+use crate::study::Reach;
 
 /// Why the CSV text could not be built.
 #[derive(Debug, thiserror::Error)]
@@ -82,7 +83,9 @@ fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
         ("source_sha256", source.map_or("", |s| s.sha256).to_owned()),
         ("source_kind", source.map_or("", |s| s.kind).to_owned()),
     ];
+    all.extend(film_fields(document));
     all.extend(section_fields(document.flow));
+    all.extend(reach_fields(document));
     all.extend([
         ("fluid", fluid.map_or(String::new(), |f| f.name.clone())),
         ("temperature_k", number(fluid.and_then(|f| f.temperature))),
@@ -105,6 +108,29 @@ fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
     all.extend(point_fields(document.operating_point));
     all.push(("warnings", codes.join(" ")));
     all
+}
+
+fn film_fields(document: &SolveDocument<'_>) -> Vec<Field> {
+    let film = document.film;
+    vec![
+        ("film_thickness_m", number(film.map(|f| f.film.thickness))),
+        ("film_on", film.map_or("", |f| f.film.on.word()).to_owned()),
+        ("area_before_film_m2", number(film.map(|f| f.area[0]))),
+    ]
+}
+
+fn reach_fields(document: &SolveDocument<'_>) -> Vec<Field> {
+    let reach = document.reach.map(|record| record.reach);
+    let (low, high) = (reach.and_then(Reach::low), reach.and_then(Reach::high));
+    // Bounds of R go with 1/K.
+    let k = document.flow.conductance.value;
+    let resistance = |bound: Option<f64>| Some(document.resistance()?.value * k / bound?);
+    vec![
+        ("conductance_reach_low_m4", number(low)),
+        ("conductance_reach_high_m4", number(high)),
+        ("resistance_reach_low_pa_s_per_m3", number(resistance(high))),
+        ("resistance_reach_high_pa_s_per_m3", number(resistance(low))),
+    ]
 }
 
 fn section_fields(flow: &SectionFlow) -> Vec<Field> {

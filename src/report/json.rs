@@ -10,6 +10,8 @@ use serde::Serialize;
 
 use super::document::SolveDocument;
 use super::json_accuracy::AccuracyView;
+use super::json_film::FilmView;
+use super::json_reach::ReachView;
 use super::json_values::{Bracketed, Number, Quantity, maybe, place};
 use super::json_wall::Shear;
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
@@ -35,6 +37,7 @@ struct Root<'a> {
     name: &'a str,
     source: Option<Source<'a>>,
     section: Section,
+    film: Option<FilmView>,
     conductance: Bracketed,
     conductance_finest_grid: Quantity,
     poiseuille: Poiseuille,
@@ -47,6 +50,7 @@ struct Root<'a> {
     solver: Solver,
     bracket_relative_width: Quantity,
     accuracy: AccuracyView,
+    reach: Option<ReachView<'a>>,
     identities: BTreeMap<&'static str, IdentityView>,
     fluid: Option<FluidView<'a>>,
     resistance_per_length: Quantity,
@@ -86,6 +90,7 @@ impl<'a> Root<'a> {
                 notes: s.notes,
             }),
             section: Section::new(flow),
+            film: document.film.map(FilmView::new),
             conductance: Quantity::bracketed(flow),
             conductance_finest_grid: Quantity::real(flow.conductance_finest_grid, "m^4"),
             poiseuille: Poiseuille {
@@ -109,6 +114,7 @@ impl<'a> Root<'a> {
                 Ok(proven) => Quantity::real(proven.relative_width(), "1"),
                 Err(error) => Quantity::optional(None, "1", &error.to_string()),
             },
+            reach: document.reach.map(|r| ReachView::new(document, &r)),
             identities: flow
                 .identities
                 .iter()
@@ -145,6 +151,15 @@ fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static
         reasons.insert(
             "source",
             "the section was built in code, not read from a file",
+        );
+    }
+    if document.film.is_none() {
+        reasons.insert("film", "no film was asked for");
+    }
+    if document.reach.is_none() {
+        reasons.insert(
+            "reach",
+            "the section file gives no inner or outer section in [reach]",
         );
     }
     if document.fluid.is_none() {

@@ -8,7 +8,7 @@ use super::document::SolveDocument;
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
 use super::text_accuracy::accuracy;
-use super::{text_operation, text_wall};
+use super::{text_operation, text_reach, text_wall};
 use crate::flow::{SectionFlow, SectionGeometry};
 use crate::geometry::Point;
 
@@ -27,14 +27,11 @@ const INDENT: usize = 2;
 /// The document as text, ended by a line feed.
 pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
     let flow = document.flow;
-    let mut parts = vec![
-        title(document),
-        geometry(&flow.geometry),
-        conductance(flow),
-        accuracy(flow),
-        friction(flow),
-        velocity(flow),
-    ];
+    let mut parts = vec![title(document)];
+    parts.extend(document.film.map(text_reach::film));
+    parts.extend([geometry(&flow.geometry), conductance(flow), accuracy(flow)]);
+    parts.extend(document.reach.map(|r| text_reach::reach(document, &r)));
+    parts.extend([friction(flow), velocity(flow)]);
     if document.operating_point.is_none() {
         parts.push(shear_per_gradient(flow));
     }
@@ -111,7 +108,7 @@ fn geometry(g: &SectionGeometry) -> String {
 }
 
 /// A count with its noun.
-fn counted(count: usize, one: &str, many: &str) -> String {
+pub(super) fn counted(count: usize, one: &str, many: &str) -> String {
     format!("{count} {}", if count == 1 { one } else { many })
 }
 

@@ -12,6 +12,7 @@ mod failure;
 mod input;
 mod output;
 mod quantities;
+mod sensitivity;
 mod solve;
 
 use std::ffi::OsString;
@@ -39,6 +40,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("solve", matches)) => solve::run(matches),
         Some(("check", matches)) => check::run(matches),
         Some(("draw", matches)) => draw::run(matches),
+        Some(("sensitivity", matches)) => sensitivity::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

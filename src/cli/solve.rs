@@ -10,16 +10,15 @@ use crate::flow::{
 };
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_targets,
-    legacy_vtk_path, vtk_paths, write_files,
+    self, PictureFormat, SolveDocument, check_targets, legacy_vtk_path, vtk_paths,
 };
 use crate::units;
 use crate::warning::Code;
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
-use super::input::{CheckedSection, checked_section, read_options};
-use super::output;
+use super::input::{self, CheckedSection, checked_section, read_options};
+use super::output::{self, Format, Inputs};
 use super::quantities::{fluid, positive, quantity};
 
 /// Nodes of an exported field, about: above that the field is thinned and a warning says so.
@@ -50,12 +49,6 @@ struct VtkRequest {
     is_legacy: bool,
 }
 
-enum Format {
-    Text(TextOptions),
-    Json,
-    Csv,
-}
-
 pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     super::set_threads(matches)?;
     let request = Request::new(matches)?;
@@ -65,23 +58,9 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     request.answer(&checked, &solved)
 }
 
-fn path(matches: &ArgMatches, name: &str) -> Option<PathBuf> {
-    matches.get_one::<PathBuf>(name).cloned()
-}
-
 /// Field and wall files, if they are asked for.
 fn vtk(matches: &ArgMatches) -> Result<Option<VtkRequest>, Failure> {
-    let Some(prefix) = path(matches, "vtk") else {
-        return Ok(None);
-    };
-    let ends_in_folder = prefix.to_string_lossy().ends_with(std::path::is_separator);
-    if ends_in_folder || prefix.file_name().is_none() || prefix == Path::new("-") {
-        return Err(Failure::usage(
-            format!("--vtk: `{}` does not end in a name", prefix.display()),
-            "give the begin of the file names, for example --vtk out/wafer",
-        ));
-    }
-    Ok(Some(VtkRequest {
+    Ok(output::vtk_prefix(matches)?.map(|prefix| VtkRequest {
         prefix,
         is_legacy: matches.get_flag("legacy-vtk"),
     }))
@@ -125,24 +104,8 @@ impl Request {
                 "add --fluid water --temperature 25C, or --viscosity (and --density)",
             ));
         }
-        let pictures = matches
-            .get_many::<PathBuf>("picture")
-            .into_iter()
-            .flatten()
-            .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))
-            .collect::<Result<_, Failure>>()?;
-        let format = if matches.get_flag("json") {
-            Format::Json
-        } else if matches.get_flag("csv") {
-            Format::Csv
-        } else {
-            Format::Text(TextOptions {
-                ascii: matches.get_flag("ascii"),
-                verbose: matches.get_flag("verbose"),
-            })
-        };
         Ok(Self {
-            file: path(matches, "file").unwrap_or_default(),
+            file: input::file(matches),
             read: read_options(matches)?,
             solve: SolveOptions {
                 cells_across: matches.get_one::<f64>("cells-across").copied(),
@@ -152,10 +115,10 @@ impl Request {
             length,
             drive,
             shortcuts: matches.get_flag("shortcuts"),
-            format,
+            format: Format::of(matches),
             output: output::target(matches),
             vtk: vtk(matches)?,
-            pictures,
+            pictures: output::pictures(matches)?,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
@@ -196,15 +159,9 @@ impl Request {
         if let Some(fluid) = fluid {
             warnings.extend(validity_warnings(flow, fluid, point.as_ref()));
         }
-        let provenance = &checked.section.provenance;
-        let name = self.name(checked);
+        let name = input::section_name(&checked.section, &self.file);
         let document = SolveDocument {
-            source: Some(SourceRecord {
-                path: &provenance.path,
-                sha256: &provenance.sha256,
-                kind: provenance.kind.word(),
-                notes: &provenance.notes,
-            }),
+            source: Some(input::source_record(&checked.section.provenance)),
             section_name: &name,
             flow,
             fluid,
@@ -230,16 +187,6 @@ impl Request {
             ExitStatus::OutsideLimit
         } else {
             ExitStatus::Done
-        })
-    }
-
-    /// The section's own name, or that of its file.
-    fn name(&self, checked: &CheckedSection) -> String {
-        checked.section.name.clone().unwrap_or_else(|| {
-            self.file.file_stem().map_or_else(
-                || "section".to_owned(),
-                |s| s.to_string_lossy().into_owned(),
-            )
         })
     }
 
@@ -270,41 +217,18 @@ impl Request {
             }
         }
         let text = self.main_output(document)?;
-        if let Some(path) = &self.output {
-            files.push((path.clone(), text.into_bytes()));
-            self.write(&files)
-        } else {
-            self.write(&files)?;
-            output::print(&text)
-        }
-    }
-
-    fn write(&self, files: &[(PathBuf, Vec<u8>)]) -> Result<(), Failure> {
-        let list: Vec<OutputFile> = files
-            .iter()
-            .map(|(path, bytes)| OutputFile { path, bytes })
-            .collect();
-        write_files(&list, &[Path::new(&self.file)])?;
-        if !self.quiet {
-            for (path, _) in files {
-                output::talk(&format!("wrote {}", path.display()));
-            }
-        }
-        Ok(())
+        let inputs = Inputs {
+            file: &self.file,
+            quiet: self.quiet,
+        };
+        output::deliver(files, text, self.output.as_deref(), &inputs)
     }
 
     fn main_output(&self, document: &SolveDocument) -> Result<String, Failure> {
-        let failed = |error: &dyn std::fmt::Display| {
-            Failure::new(
-                ExitStatus::Unreadable,
-                format!("the result cannot be printed: {error}"),
-                "",
-            )
-        };
         match &self.format {
             Format::Text(options) => Ok(report::to_text(document, *options)),
-            Format::Json => report::to_json(document).map_err(|e| failed(&e)),
-            Format::Csv => report::to_csv(&[*document]).map_err(|e| failed(&e)),
+            Format::Json => report::to_json(document).map_err(Failure::not_printed),
+            Format::Csv => report::to_csv(&[*document]).map_err(Failure::not_printed),
         }
     }
 }

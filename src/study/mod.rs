@@ -1,1 +1,13 @@
 //! Questions over one or many sections that each take several solves or their derivatives.
+
+mod moved_outline;
+mod resolve_check;
+mod sensitivity;
+mod wall_motion;
+mod wall_motion_cases;
+
+pub use moved_outline::moved_outline;
+pub use resolve_check::{Check, NoCheck, SECOND_ORDER_SHARE};
+pub use sensitivity::{Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study};
+pub use wall_motion::{EdgeMotion, LinearField, Measure, WallMotion};
+pub use wall_motion_cases::{NoMotion, wall_motions};

@@ -166,7 +166,8 @@ fn cells_across() -> Arg {
         .long_help(
             "Cells across the largest circle that fits into the smallest lumen: the short side of a \
              rectangle, the gap of an annulus. At least 4. Default: refined until the estimated error \
-             of the conductance is within 0.01 %. Example: --cells-across 128",
+             of the conductance is within 0.01 % (sensitivity: at least 128). Example: --cells-across \
+             128",
         )
 }
 

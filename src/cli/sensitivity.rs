@@ -4,11 +4,11 @@ use std::path::{Path, PathBuf};
 
 use clap::ArgMatches;
 
-use crate::flow::{SolveOptions, SolvedSection, solve_outline};
+use crate::flow::{SolveOptions, SolvedSection};
 use crate::report::{
     self, PictureFormat, SensitivityDocument, SolveDocument, check_targets, vtk_paths,
 };
-use crate::study::{SensitivityOptions, sensitivity_study};
+use crate::study::{SensitivityOptions, sensitivity_study, solve_for_sensitivity};
 use crate::warning::Code;
 
 use super::exit_status::ExitStatus;
@@ -35,7 +35,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let request = Request::new(matches)?;
     request.check_targets()?;
     let checked = checked_section(&request.file, &read)?;
-    let solved = solve_outline(&checked.outline, &request.solve)?;
+    let solved = solve_for_sensitivity(&checked.outline, &request.solve)?;
     request.answer(&checked, &solved)
 }
 

@@ -5,7 +5,7 @@
 use super::csv::{CsvError, number, table};
 use super::numbers::one_line;
 use super::sensitivity_document::SensitivityDocument;
-use crate::study::Sensitivity;
+use crate::study::{Reach, Sensitivity};
 
 /// Names of the columns.
 const HEADS: [&str; 16] = [
@@ -67,11 +67,18 @@ fn fields(case: &Sensitivity) -> Vec<String> {
         number(check.map(|c| c.first_order)),
         number(case.check_difference()),
         number(check.map(|c| c.second_order)),
-        number(check.map(|c| c.first_order_up_to)),
-        number(check.map(|c| c.first_order_up_to_for_resistance())),
+        number(check.and_then(|c| up_to(c.reach_for_conductance()))),
+        number(check.and_then(|c| up_to(c.reach_for_resistance()))),
         case.check
             .as_ref()
             .err()
             .map_or(String::new(), ToString::to_string),
     ]
+}
+
+fn up_to(reach: Reach) -> Option<f64> {
+    match reach {
+        Reach::UpTo(change) => Some(change),
+        Reach::AtLeast(_) => None,
+    }
 }

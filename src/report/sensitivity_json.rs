@@ -7,7 +7,8 @@ use serde::Serialize;
 use super::json::{Grid, Source, WarningView};
 use super::json_values::{Bracketed, Number, Quantity, place};
 use super::sensitivity_document::SensitivityDocument;
-use crate::study::{Check, Measure, SECOND_ORDER_SHARE, Sensitivity};
+use crate::measured::Estimate;
+use crate::study::{Check, Measure, Reach, SECOND_ORDER_SHARE, Sensitivity};
 
 /// Name and version of this contract.
 pub const SENSITIVITY_SCHEMA: &str = "etchwise-sensitivity/1";
@@ -220,29 +221,48 @@ struct CheckView {
     second_order_share: Quantity,
     first_order_up_to_for_conductance: Quantity,
     first_order_up_to_for_resistance: Quantity,
+    largest_change: Quantity,
 }
 
 impl CheckView {
     fn new(case: &Sensitivity, check: &Check, units: &Units) -> Self {
-        let limit = |value: f64| {
-            Quantity::optional(
-                Some(value).filter(|v| v.is_finite()),
-                units.change,
-                "the second-order term vanishes",
-            )
+        let limit = |reach: Reach| match reach {
+            Reach::UpTo(change) => Quantity::real(change, units.change),
+            Reach::AtLeast(change) => Quantity {
+                low: Some(Number::real(change)),
+                ..Quantity::optional(
+                    None,
+                    units.change,
+                    "at least `low`; there the section has changed too much, or the second-order term is lost \
+                     in the numerical error of the new solves",
+                )
+            },
         };
         Self {
             step: Quantity::real(check.step, units.change),
-            dln_conductance: Quantity::real(check.first_order, units.inverse),
+            dln_conductance: Quantity::estimate(
+                Estimate {
+                    value: check.first_order,
+                    error: check.first_order_error,
+                },
+                units.inverse,
+            ),
             relative_difference: Quantity::optional(
                 case.check_difference().filter(|v| v.is_finite()),
                 "1",
                 "no wall moves along its normal",
             ),
-            second_order: Quantity::real(check.second_order, units.inverse_square),
+            second_order: Quantity::estimate(
+                Estimate {
+                    value: check.second_order,
+                    error: check.second_order_error,
+                },
+                units.inverse_square,
+            ),
             second_order_share: Quantity::real(SECOND_ORDER_SHARE, "1"),
-            first_order_up_to_for_conductance: limit(check.first_order_up_to),
-            first_order_up_to_for_resistance: limit(check.first_order_up_to_for_resistance()),
+            first_order_up_to_for_conductance: limit(check.reach_for_conductance()),
+            first_order_up_to_for_resistance: limit(check.reach_for_resistance()),
+            largest_change: Quantity::real(check.largest_change, units.change),
         }
     }
 }

@@ -16,6 +16,7 @@ use super::sensitivity_document::SensitivityDocument;
 use super::sensitivity_labels::{Label, labels};
 use super::svg::to_svg;
 use super::ticks;
+use crate::flow::{CurvePoint, PointKind};
 use crate::geometry::{Outline, Point};
 
 /// Width of the coloured line, px.
@@ -63,12 +64,25 @@ struct Local {
 impl Local {
     fn new(document: &SensitivityDocument<'_>) -> Option<Self> {
         let curve = &document.flow.wall_shear.curve;
-        let largest = curve.largest()?;
+        let singular = &document.flow.wall_shear.singular_corners;
+        // Beside a singular corner the curve has no bound; the brightest colour stands for all that is above.
+        let is_bounded = |p: &&CurvePoint| {
+            p.kind != PointKind::SingularCorner
+                && singular.iter().all(|corner| {
+                    (p.at[0] - corner[0]).hypot(p.at[1] - corner[1]) > curve.singular_length
+                })
+        };
+        let largest = curve
+            .loops
+            .iter()
+            .flat_map(|l| &l.points)
+            .filter(is_bounded)
+            .max_by(|a, b| a.shear_per_gradient.total_cmp(&b.shear_per_gradient))?;
         let si = largest.shear_per_gradient.powi(2) / document.flow.conductance.value;
         let (unit, wall) = if si * 1e-10 >= 0.01 {
-            ("% per \u{b5}m out on 1 \u{b5}m of wall", 1e-6)
+            ("% per \u{b5}m\u{b2}", 1e-6)
         } else {
-            ("% per \u{b5}m out on 1 mm of wall", 1e-3)
+            ("% per \u{b5}m mm", 1e-3)
         };
         let factor = 100.0 * 1e-6 * wall / document.flow.conductance.value;
         let top = si * 100.0 * 1e-6 * wall;
@@ -110,7 +124,7 @@ fn heading(page: &mut Page<'_>, document: &SensitivityDocument<'_>) {
         significant(flow.conductance.value, 5),
         numbers::per_cent(flow.conductance.relative()),
     );
-    let what = "wall coloured by what its motion out of the fluid does to the conductance K";
+    let what = "wall coloured by the change of K when it recedes from the fluid: per \u{b5}m of motion, per length";
     page.drawing.title = format!("sensitivity of the conductance of section {name}");
     page.drawing.description = format!("{name}: {size}; {what}.");
     page.paragraph(&name, TextSize::Large, MARGIN);
@@ -185,10 +199,10 @@ fn legend(page: &mut Page<'_>, local: &Local, document: &SensitivityDocument<'_>
     let bound = if flow.wall_shear.singular_corners.is_empty() {
         ""
     } else {
-        " (mean beside a sharp re-entrant corner, where it has no bound)"
+        " away from sharp re-entrant corners, beside which it has no bound"
     };
     let largest = format!(
-        "largest: {} {}{bound}, at {}; mean over the wall: {}",
+        "largest{bound}: {} {}, at {}; mean over the wall: {}",
         significant(local.top, 4),
         local.unit,
         numbers::place(local.top_at, extent, 4),

@@ -4,7 +4,7 @@ use super::numbers::{self, per_cent, significant, with_unit};
 use super::sensitivity_document::{SensitivityDocument, Step};
 use super::table::{Align, Table, paragraph};
 use super::text::{TextOptions, part, title, warnings};
-use crate::study::{Check, SECOND_ORDER_SHARE, Sensitivity};
+use crate::study::{Check, Reach, SECOND_ORDER_SHARE, Sensitivity};
 
 /// The document as text, ended by a line feed.
 pub fn sensitivity_text(document: &SensitivityDocument<'_>, options: TextOptions) -> String {
@@ -77,7 +77,8 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
     if is_checked {
         explained.push_str(&format!(
             " K, new solves: half the difference of two solves with the walls moved either way. First order is \
-             enough up to the change at which the second-order term is {} of the first-order one.",
+             enough up to the change at which the second-order term is {} of the first-order one; `>`: at \
+             least to there, more cannot be said.",
             per_cent(SECOND_ORDER_SHARE)
         ));
     } else {
@@ -114,11 +115,12 @@ fn change_row(case: &Sensitivity, step: Step, is_first: bool) -> Vec<String> {
             } else {
                 String::new()
             });
-            cells.push(with_step(check.first_order_up_to / step.size, step));
-            cells.push(with_step(
-                check.first_order_up_to_for_resistance() / step.size,
-                step,
-            ));
+            let shown = |change: f64| with_step(change / step.size, step);
+            let reaches = [check.reach_for_conductance(), check.reach_for_resistance()];
+            cells.extend(reaches.map(|reach| match reach {
+                Reach::UpTo(change) => shown(change),
+                Reach::AtLeast(change) => format!("> {}", shown(change)),
+            }));
         }
         Err(_) => cells.push(String::new()),
     }

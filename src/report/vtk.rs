@@ -117,7 +117,8 @@ pub fn field_vti(document: &SolveDocument<'_>, field: &DenseField) -> Result<Str
 
 /// The wall as `.vtp` text: one closed polyline through the samples of each loop.
 ///
-/// Point data: `wall_shear` (Pa with an operating point, else Pa per Pa/m), `normal` (unit vector out of
+/// Point data: `wall_shear` (Pa with an operating point, else Pa per Pa/m), `sensitivity` (relative change
+/// of `K` per length of outward motion and length of wall that moves, 1/m^2), `normal` (unit vector out of
 /// the fluid), `arc_length` (m, along its loop), `loop` (index).
 ///
 /// # Errors
@@ -145,6 +146,11 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
         .iter()
         .map(|s| s.shear_per_gradient * scale.factor)
         .collect();
+    let k = document.flow.conductance.value;
+    let sensitivity = samples
+        .iter()
+        .map(|s| s.shear_per_gradient.powi(2) / k)
+        .collect();
     let loops = samples.iter().map(|s| s.loop_index as u64).collect();
     let piece = PolyDataPiece {
         points: plane(|s| s.at),
@@ -152,6 +158,7 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
         data: Attributes {
             point: vec![
                 scalars("wall_shear", IOBuffer::F64(shear)),
+                array("sensitivity", 1, IOBuffer::F64(sensitivity)),
                 Attribute::DataArray(DataArray::vectors("normal").with_data(plane(|s| s.normal))),
                 array("arc_length", 1, real(|s| s.arc_length)),
                 array("loop", 1, IOBuffer::U64(loops)),
@@ -162,6 +169,7 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
     };
     let units = [
         ("wall_shear", scale.unit),
+        ("sensitivity", "1/m^2"),
         ("normal", "1"),
         ("arc_length", "m"),
         ("loop", "1"),

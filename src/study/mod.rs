@@ -6,8 +6,10 @@ mod sensitivity;
 mod wall_motion;
 mod wall_motion_cases;
 
-pub use moved_outline::moved_outline;
-pub use resolve_check::{Check, NoCheck, SECOND_ORDER_SHARE};
-pub use sensitivity::{Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study};
+pub use moved_outline::{MovedOutline, moved_outline};
+pub use resolve_check::{Check, NoCheck, Reach, SECOND_ORDER_SHARE};
+pub use sensitivity::{
+    Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study, solve_for_sensitivity,
+};
 pub use wall_motion::{EdgeMotion, LinearField, Measure, WallMotion};
 pub use wall_motion_cases::{NoMotion, wall_motions};

@@ -13,6 +13,15 @@ use super::wall_motion::{EdgeMotion, WallMotion, outward_normals};
 /// a step. Walls of unlike speed meet in a vertex where they turn by more than about 29 degrees.
 const LARGEST_SLIDE: f64 = 2.0;
 
+/// An outline whose walls have moved.
+#[derive(Debug, Clone, PartialEq)]
+pub struct MovedOutline {
+    /// The outline.
+    pub outline: Outline,
+    /// Height of the highest step in a wall that was smooth before, m; zero where no stretch needed one.
+    pub highest_step: f64,
+}
+
 /// The outline after `change` units of the motion.
 ///
 /// - `outline`: oriented, as the motion was made for
@@ -23,11 +32,12 @@ pub fn moved_outline(
     outline: &Outline,
     motion: &WallMotion,
     change: f64,
-) -> Result<Outline, NoCheck> {
-    let mut index = 0;
+) -> Result<MovedOutline, NoCheck> {
+    let (mut index, mut highest_step) = (0, 0.0_f64);
     let mut next = |wall: &Loop| {
-        let moved = moved_loop(wall, motion, index, change);
+        let (moved, step) = moved_loop(wall, motion, index, change);
         index += 1;
+        highest_step = highest_step.max(step);
         moved
     };
     let moved = Outline {
@@ -48,13 +58,18 @@ pub fn moved_outline(
     if turned || moved.problems().has_errors() {
         return Err(NoCheck::Outline);
     }
-    Ok(moved)
+    Ok(MovedOutline {
+        outline: moved,
+        highest_step,
+    })
 }
 
-fn moved_loop(wall: &Loop, motion: &WallMotion, index: usize, change: f64) -> Loop {
+/// The loop and the height of its highest step, m.
+fn moved_loop(wall: &Loop, motion: &WallMotion, index: usize, change: f64) -> (Loop, f64) {
     let normals = outward_normals(wall);
     let n = wall.points.len();
     let mut points = Vec::with_capacity(n);
+    let mut highest = 0.0_f64;
     for (k, &p) in wall.points.iter().enumerate() {
         let before = (k + n - 1) % n;
         let shifted = |v: Point| [p[0] + change * v[0], p[1] + change * v[1]];
@@ -68,10 +83,14 @@ fn moved_loop(wall: &Loop, motion: &WallMotion, index: usize, change: f64) -> Lo
                 points.push(shifted(sides[0].1));
             }
             (_, Some(v)) => points.push(shifted(v)),
-            (_, None) => points.extend(sides.map(|(_, v)| shifted(v))),
+            (_, None) => {
+                let [(_, a), (_, b)] = sides;
+                highest = highest.max(change.abs() * (b[0] - a[0]).hypot(b[1] - a[1]));
+                points.extend([a, b].map(shifted));
+            }
         }
     }
-    Loop::new(points)
+    (Loop::new(points), highest)
 }
 
 /// Velocity that keeps a vertex on the lines of both its edges; `None` where it would slide too far.

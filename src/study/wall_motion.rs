@@ -139,6 +139,17 @@ impl WallMotion {
         v[0] * normal[0] + v[1] * normal[1]
     }
 
+    /// Whether the whole section keeps its shape: all edges follow one even stretching.
+    pub(super) fn is_similarity(&self) -> bool {
+        let [LinearField { gradient, .. }] = self.fields[..] else {
+            return false;
+        };
+        let [[xx, xy], [yx, yy]] = gradient;
+        let is_even = (xx - yy).abs() + (xy + yx).abs() <= 0.0;
+        let all = self.edges.iter().flatten();
+        is_even && all.clone().all(|e| *e == EdgeMotion::Follows(0))
+    }
+
     /// Whether any edge moves.
     pub(super) fn moves(&self) -> bool {
         self.edges.iter().flatten().any(|e| *e != EdgeMotion::Rests)

@@ -80,7 +80,7 @@ pub(super) fn assemble(
         let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
         to_limit(&values, false)
     };
-    let shear = wall_shear(outline, lattice, mask, phi, corners.clone());
+    let shear = wall_shear(outline, lattice, mask, phi, corners);
     let curved = tangents(outline, &shear.samples, h);
     let values = mean_conductances(solution, &curved, h, useful.min(3));
     let mut conductance = to_limit(&values, !others.is_empty());
@@ -96,7 +96,7 @@ pub(super) fn assemble(
     let identities = identities(
         outline,
         corners,
-        &shear.samples,
+        &shear.curve,
         conductance.value,
         (finest, h.powi(4)),
         grid.cells_across,

@@ -6,7 +6,8 @@
 use crate::geometry::{Corner, Outline};
 
 use super::grid_integrals::GridIntegrals;
-use super::section_flow::{Identity, WallSample};
+use super::section_flow::Identity;
+use super::wall_curve::WallCurve;
 
 /// Tolerance per unit of `1 / cells_across` for the wall identities of a section without re-entrant
 /// corners; chosen, not derived: at 64 to 128 cells smooth sections stay well below it.
@@ -16,11 +17,11 @@ const SINGULAR_TOLERANCE: f64 = 1.5;
 /// Tolerance per unit of `1 / cells_across` for the two quadratures of `K`.
 const ENERGY_TOLERANCE: f64 = 0.6;
 
-/// The three identities; `samples` sorted along the wall, shear in m, `conductance` in m^4.
+/// The three identities; `conductance` in m^4.
 pub(crate) fn identities(
     outline: &Outline,
     corners: &[Vec<Corner>],
-    samples: &[WallSample],
+    curve: &WallCurve,
     conductance: f64,
     finest: (GridIntegrals, f64),
     cells_across: f64,
@@ -32,19 +33,10 @@ pub(crate) fn identities(
         WALL_TOLERANCE / cells_across
     };
     let centre = outline.centroid();
-    let (mut mean, mut rellich) = (0.0, 0.0);
-    for (loop_index, wall) in outline.loops().enumerate() {
-        let first = samples.partition_point(|s| s.loop_index < loop_index);
-        let end = samples.partition_point(|s| s.loop_index <= loop_index);
-        let (m, r) = along_loop(
-            &samples[first..end],
-            corners.get(loop_index).map_or(&[][..], Vec::as_slice),
-            wall.length(),
-            centre,
-        );
-        mean += m;
-        rellich += r;
-    }
+    let mean = curve.integrate(1, |_| 1.0);
+    let rellich = curve.integrate(2, |place| {
+        (place.at[0] - centre[0]) * place.normal[0] + (place.at[1] - centre[1]) * place.normal[1]
+    });
     let (integrals, scale) = finest;
     let area = outline.area();
     vec![
@@ -85,39 +77,4 @@ fn identity(
         tolerance,
         holds: relative_difference.abs() <= tolerance,
     }
-}
-
-/// Integrals of `abs(dphi/dn)` and of `(r.n) (dphi/dn)^2` along one closed loop: trapezoidal rule between
-/// samples; the shear is zero at a convex corner, and beside any corner the nearest sample holds.
-fn along_loop(
-    samples: &[WallSample],
-    corners: &[Corner],
-    length: f64,
-    centre: [f64; 2],
-) -> (f64, f64) {
-    // Arc length, shear, (r.n) shear^2; a corner is entered twice, once for either side.
-    let mut points: Vec<(f64, f64, f64)> = samples
-        .iter()
-        .map(|s| {
-            let arm = (s.at[0] - centre[0]) * s.normal[0] + (s.at[1] - centre[1]) * s.normal[1];
-            let shear = s.shear_per_gradient;
-            (s.arc_length, shear, arm * shear * shear)
-        })
-        .collect();
-    if points.is_empty() {
-        return (0.0, 0.0);
-    }
-    for corner in corners.iter().filter(|c| c.turning > 0.3) {
-        points.push((corner.arc_length, 0.0, 0.0));
-    }
-    points.sort_by(|a, b| a.0.total_cmp(&b.0));
-    let first = points[0];
-    points.push((first.0 + length, first.1, first.2));
-    points.windows(2).fold((0.0, 0.0), |(mean, rellich), pair| {
-        let step = pair[1].0 - pair[0].0;
-        (
-            mean + 0.5 * step * (pair[0].1 + pair[1].1),
-            rellich + 0.5 * step * (pair[0].2 + pair[1].2),
-        )
-    })
 }

@@ -4,6 +4,7 @@ mod assemble;
 mod chords;
 pub mod closed_form;
 mod corner_alignment;
+mod corner_law;
 mod entrance;
 mod extrapolation;
 mod field;
@@ -18,7 +19,11 @@ mod solve_outline;
 mod solve_warnings;
 mod tangents;
 mod validity_range;
+mod wall_curve;
+mod wall_path;
+mod wall_quadrature;
 mod wall_shear;
+mod wall_stretch;
 
 pub use entrance::{EntranceModel, entrance_length, excess_pressure_factor};
 pub use field::DenseField;
@@ -31,3 +36,4 @@ pub use section_flow::{
 pub use shortcuts::{ShortcutRow, shortcuts};
 pub use solve_outline::{DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use validity_range::{outside_validity, validity_warnings};
+pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};

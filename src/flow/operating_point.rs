@@ -216,7 +216,7 @@ impl OperatingPoint {
 pub(crate) mod tests {
     use super::*;
     use crate::flow::closed_form;
-    use crate::flow::{GridReport, Peak, SectionGeometry, SolverReport, WallShear};
+    use crate::flow::{GridReport, Peak, SectionGeometry, SolverReport, WallCurve, WallShear};
     use crate::measured::Estimate;
 
     /// The exact result of a circular section, as a solver would hand it over.
@@ -253,6 +253,10 @@ pub(crate) mod tests {
                 max_at: [radius, 0.0],
                 singular_corners: Vec::new(),
                 samples: Vec::new(),
+                curve: WallCurve {
+                    loops: Vec::new(),
+                    singular_length: 0.0,
+                },
             },
             grid: GridReport {
                 spacing: radius / 64.0,

@@ -5,6 +5,8 @@ use crate::measured::Estimate;
 use crate::proof::{Bracket, ProofError};
 use crate::warning::Warning;
 
+use super::wall_curve::WallCurve;
+
 /// Everything the solve of one section says, per unit pressure gradient and viscosity.
 #[derive(Debug, Clone)]
 pub struct SectionFlow {
@@ -77,7 +79,8 @@ pub struct Peak {
 pub struct WallShear {
     /// Mean over the wall, exactly `A / P`, m.
     pub mean_per_gradient: f64,
-    /// Largest sampled value, m; grid dependent when `singular_corners` is not empty.
+    /// Largest value of the curve, m; beside a singular corner the mean over the curve's
+    /// `singular_length` stands for the shear.
     pub max_per_gradient: f64,
     /// Where the largest value is, m.
     pub max_at: Point,
@@ -85,6 +88,8 @@ pub struct WallShear {
     pub singular_corners: Vec<Point>,
     /// Samples along the wall, ordered by loop and arc length.
     pub samples: Vec<WallSample>,
+    /// The shear as a curve along every loop, made from the samples.
+    pub curve: WallCurve,
 }
 
 /// One wall sample.

@@ -49,9 +49,11 @@ pub(super) fn warnings(
             code: Code::ShearSingular,
             message: format!(
                 "{count} re-entrant corner(s), the first at ({:.3}, {:.3}) \u{b5}m: the wall shear of the \
-                 sharp outline has no bound there, so the largest value depends on the grid",
+                 sharp outline has no bound there; the largest value given takes its mean over {:.3} \u{b5}m \
+                 beside each of them",
                 x * 1e6,
-                y * 1e6
+                y * 1e6,
+                flow.wall_shear.curve.singular_length * 1e6
             ),
             advice: "use the mean wall shear, or give the corner the radius it really has".to_owned(),
             numbers: vec![("corners", count as f64), ("x_m", x), ("y_m", y)],

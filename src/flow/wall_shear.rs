@@ -1,27 +1,34 @@
 //! Wall shear per pressure gradient, `abs(dphi/dn)`, where the lattice lines meet the wall.
 //!
 //! On the wall `phi = 0`, so its gradient is normal to the wall and the derivative along a lattice line is
-//! `dphi/dn` times the component of the normal on that line. The derivative is that of the quadratic
-//! through the wall and the two nodes (or the node and the opposite wall) behind it: second order. Only
+//! `dphi/dn` times the component of the normal on that line. The derivative is that of the cubic through the
+//! wall and three places behind it. Only
 //! lines that meet the wall at more than about 37 degrees are used; the lines of the other axis cover the
 //! rest. The normal is that of the chord over one spacing of wall, not reaching past a corner.
 
-use crate::geometry::{Corner, Loop, Outline, Point, corners};
+use crate::geometry::{Corner, Outline, Point, corners};
 use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_UP, Colour, Lattice, Mask, NO_EDGE, NO_NODE, WallNode};
 use crate::solve::Field;
 
 use super::section_flow::{WallSample, WallShear};
+use super::wall_curve::WallCurve;
+use super::wall_path::WallPath;
 
 /// Turning from which a vertex or a small arc counts as a corner.
 pub(crate) const CORNER_TURNING: f64 = 10.0 * std::f64::consts::PI / 180.0;
 /// Least component of the normal on the lattice line for a sample to be used.
 const LEAST_COMPONENT: f64 = 0.6;
+/// Places on a line that are looked at.
+const PLACES: usize = 4;
+/// Arm, in spacings, below which a node is too close to the wall for the slope.
+const TOO_CLOSE: f64 = 0.02;
+/// Distance from a re-entrant corner, in spacings, below which there is no sample.
+const AT_CORNER: f64 = 0.5;
 
-/// Arc lengths and corners of one loop.
-struct Wall<'a> {
-    outline: &'a Loop,
+/// A loop with its corners.
+struct Wall {
+    path: WallPath,
     first_edge: usize,
-    arc: Vec<f64>,
     corners: Vec<Corner>,
 }
 
@@ -33,7 +40,7 @@ pub(crate) fn corners_of(outline: &Outline, spacing: f64) -> Vec<Vec<Corner>> {
         .collect()
 }
 
-/// Samples, mean and maximum of the wall shear per gradient.
+/// Samples, curve, mean and maximum of the wall shear per gradient.
 ///
 /// - `outline`: the outline the lattice was laid over, m
 /// - `phi`: solution in lattice units on the finest grid
@@ -42,17 +49,15 @@ pub(crate) fn wall_shear(
     lattice: &Lattice,
     mask: &Mask,
     phi: &Field,
-    corners: Vec<Vec<Corner>>,
+    corners: &[Vec<Corner>],
 ) -> WallShear {
-    let walls = walls(outline, lattice, corners);
+    let walls = walls(outline, lattice, corners.to_vec());
     let mut samples = Vec::new();
     for colour in [Colour::Even, Colour::Odd] {
-        let other = &phi.colour[colour.other() as usize];
         for w in &mask.wall[colour as usize] {
-            let value = phi.colour[colour as usize][w.node as usize];
             for arm in 0..4 {
                 if w.neighbour[arm] == NO_NODE && w.edge[arm] != NO_EDGE {
-                    let slope = slope_at_wall(w, arm, value, other) * lattice.spacing;
+                    let slope = slope_at_wall((mask, phi), colour, w, arm) * lattice.spacing;
                     samples.extend(sample(&walls, lattice, w, arm, slope));
                 }
             }
@@ -63,55 +68,94 @@ pub(crate) fn wall_shear(
             .cmp(&b.loop_index)
             .then(a.arc_length.total_cmp(&b.arc_length))
     });
-    let largest = samples
-        .iter()
-        .max_by(|a, b| a.shear_per_gradient.total_cmp(&b.shear_per_gradient));
+    let curve = WallCurve::new(outline, &corners, &samples, lattice.spacing);
+    let largest = curve.largest();
     WallShear {
         mean_per_gradient: outline.area() / outline.wetted_perimeter(),
-        max_per_gradient: largest.map_or(0.0, |s| s.shear_per_gradient),
-        max_at: largest.map_or([0.0; 2], |s| s.at),
-        singular_corners: walls
+        max_per_gradient: largest.map_or(0.0, |point| point.shear_per_gradient),
+        max_at: largest.map_or([0.0; 2], |point| point.at),
+        singular_corners: corners
             .iter()
-            .flat_map(|wall| wall.corners.iter())
+            .flatten()
             .filter(|corner| corner.turning < 0.0)
             .map(|corner| corner.at)
             .collect(),
         samples,
+        curve,
     }
 }
 
-fn walls<'a>(outline: &'a Outline, lattice: &Lattice, corners: Vec<Vec<Corner>>) -> Vec<Wall<'a>> {
+fn walls(outline: &Outline, lattice: &Lattice, corners: Vec<Vec<Corner>>) -> Vec<Wall> {
     outline
         .loops()
         .zip(corners)
         .enumerate()
-        .map(|(index, (wall, corners))| {
-            let mut arc = vec![0.0];
-            let mut total = 0.0;
-            for (a, b) in wall.edges() {
-                total += (b[0] - a[0]).hypot(b[1] - a[1]);
-                arc.push(total);
-            }
-            Wall {
-                outline: wall,
-                first_edge: lattice.loop_starts[index],
-                arc,
-                corners,
-            }
+        .map(|(index, (wall, corners))| Wall {
+            path: WallPath::new(wall),
+            first_edge: lattice.loop_starts[index],
+            corners,
         })
         .collect()
 }
 
-/// Derivative of `phi` along an arm at its wall end, pointing into the fluid; lattice units.
-fn slope_at_wall(w: &WallNode, arm: usize, value: f64, other: &[f64]) -> f64 {
+/// Derivative of `phi` along a cut arm at its wall end, pointing into the fluid; lattice units.
+///
+/// The derivative there of the polynomial through the wall and the next three places on the line: nodes, or
+/// the opposite wall. A node very close to the wall is passed over: what it holds depends on details of the
+/// wall far below the spacing.
+fn slope_at_wall(grid: (&Mask, &Field), colour: Colour, w: &WallNode, arm: usize) -> f64 {
+    let mut places = [(0.0, 0.0); PLACES];
+    let count = places_along(grid, colour, w, arm, &mut places);
+    let first = usize::from(w.arm[arm] < TOO_CLOSE && count > 2);
+    let used = &places[first..count.min(first + PLACES - 1)];
+    used.iter()
+        .enumerate()
+        .map(|(k, (x, value))| {
+            let others = used.iter().enumerate().filter(|(m, _)| *m != k);
+            others.fold(value / x, |product, (_, (y, _))| product * y / (y - x))
+        })
+        .sum()
+}
+
+/// Distances from the wall and values of the next nodes along a line, as far as the opposite wall, which
+/// ends them with a zero.
+fn places_along(
+    (mask, phi): (&Mask, &Field),
+    colour: Colour,
+    w: &WallNode,
+    arm: usize,
+    places: &mut [(f64, f64); PLACES],
+) -> usize {
     let opposite = arm ^ 1;
-    let near = w.arm[arm];
-    let far = near + w.arm[opposite];
-    let beyond = other
-        .get(w.neighbour[opposite] as usize)
-        .copied()
-        .unwrap_or(0.0);
-    value * far / (near * (far - near)) - beyond * near / (far * (far - near))
+    let mut distance = w.arm[arm];
+    let (mut colour, mut node) = (colour, w.node);
+    let (mut i, mut j) = (w.i, w.j);
+    for k in 0..PLACES {
+        let values = &phi.colour[colour as usize];
+        places[k] = (distance, values.get(node as usize).copied().unwrap_or(0.0));
+        let wall = mask.wall_node(colour, node);
+        let length = wall.map_or(1.0, |wall| wall.arm[opposite]);
+        match opposite {
+            ARM_LEFT => i = i.wrapping_sub(1),
+            ARM_DOWN => j = j.wrapping_sub(1),
+            ARM_UP => j += 1,
+            _ => i += 1,
+        }
+        distance += length;
+        let next = match wall {
+            Some(wall) => Some(wall.neighbour[opposite]).filter(|&n| n != NO_NODE),
+            None => mask.node_at(i, j).map(|(_, index)| index),
+        };
+        let Some(next) = next else {
+            if let Some(end) = places.get_mut(k + 1) {
+                *end = (distance, 0.0);
+                return k + 2;
+            }
+            return k + 1;
+        };
+        (colour, node) = (colour.other(), next);
+    }
+    PLACES
 }
 
 fn sample(
@@ -133,8 +177,7 @@ fn sample(
         _ => at[0] += w.arm[arm],
     }
     let at = lattice.position(at);
-    let start = *wall.outline.points.get(edge - wall.first_edge)?;
-    let arc_length = wall.arc[edge - wall.first_edge] + (at[0] - start[0]).hypot(at[1] - start[1]);
+    let arc_length = wall.path.on_edge(edge - wall.first_edge, at)?;
     let normal = wall.normal(arc_length, lattice.spacing)?;
     let component = if arm < ARM_DOWN { normal[0] } else { normal[1] };
     (component.abs() >= LEAST_COMPONENT).then(|| WallSample {
@@ -146,61 +189,39 @@ fn sample(
     })
 }
 
-impl Wall<'_> {
-    /// Unit normal out of the fluid, from the chord over one spacing that stays between corners.
+impl Wall {
+    /// Unit normal out of the fluid, from the chord over one spacing that stays between corners; `None` so
+    /// close to a re-entrant corner that the grid does not see the wall's direction.
     fn normal(&self, arc_length: f64, spacing: f64) -> Option<Point> {
-        let total = *self.arc.last()?;
+        let total = self.path.length();
         let (mut low, mut high) = (arc_length - 0.5 * spacing, arc_length + 0.5 * spacing);
         let next = self
             .corners
             .partition_point(|corner| corner.arc_length <= arc_length);
         if let (Some(first), Some(last)) = (self.corners.first(), self.corners.last()) {
-            let before = match next.checked_sub(1) {
-                Some(index) => self.corners[index].arc_length,
-                None => last.arc_length - total,
+            let (before, place_before) = match next.checked_sub(1) {
+                Some(index) => (&self.corners[index], self.corners[index].arc_length),
+                None => (last, last.arc_length - total),
             };
-            let after = self
-                .corners
-                .get(next)
-                .map_or(first.arc_length + total, |corner| corner.arc_length);
-            low = low.max(before);
-            high = high.min(after);
+            let (after, place_after) = match self.corners.get(next) {
+                Some(corner) => (corner, corner.arc_length),
+                None => (first, first.arc_length + total),
+            };
+            let at_singular = |corner: &Corner, distance: f64| {
+                corner.turning < 0.0 && distance < AT_CORNER * spacing
+            };
+            if at_singular(before, arc_length - place_before)
+                || at_singular(after, place_after - arc_length)
+            {
+                return None;
+            }
+            low = low.max(place_before);
+            high = high.min(place_after);
         }
-        let (a, b) = if high - low > 1e-3 * spacing {
-            (self.position(low), self.position(high))
+        if high - low > 1e-3 * spacing {
+            Some(self.path.chord_normal(low, high))
         } else {
-            let edge = self.edge_at(arc_length);
-            let n = self.outline.points.len();
-            (
-                self.outline.points[edge],
-                self.outline.points[(edge + 1) % n],
-            )
-        };
-        let (x, y) = (b[0] - a[0], b[1] - a[1]);
-        let length = x.hypot(y);
-        (length > 0.0).then(|| [y / length, -x / length])
-    }
-
-    fn edge_at(&self, arc_length: f64) -> usize {
-        let after = self.arc.partition_point(|&a| a <= arc_length);
-        after.saturating_sub(1).min(self.outline.points.len() - 1)
-    }
-
-    fn position(&self, arc_length: f64) -> Point {
-        let total = self.arc[self.arc.len() - 1];
-        let s = arc_length.rem_euclid(total);
-        let edge = self.edge_at(s);
-        let n = self.outline.points.len();
-        let (a, b) = (
-            self.outline.points[edge],
-            self.outline.points[(edge + 1) % n],
-        );
-        let length = self.arc[edge + 1] - self.arc[edge];
-        let t = if length > 0.0 {
-            (s - self.arc[edge]) / length
-        } else {
-            0.0
-        };
-        [a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])]
+            Some(self.path.edge_normal(self.path.edge_at(arc_length)))
+        }
     }
 }

@@ -10,9 +10,9 @@ use std::f64::consts::PI;
 
 use etchwise::flow::{
     DenseField, Fluid, GridReport, Identity, LevelReport, OperatingPoint, Peak, SectionFlow,
-    SectionGeometry, ShortcutRow, SolverReport, WallSample, WallShear,
+    SectionGeometry, ShortcutRow, SolverReport, WallCurve, WallSample, WallShear,
 };
-use etchwise::geometry::{Loop, Lumen, Outline, Point};
+use etchwise::geometry::{Corner, Loop, Lumen, Outline, Point, corners};
 use etchwise::measured::Estimate;
 use etchwise::proof::Bracket;
 use etchwise::report::{SolveDocument, SourceRecord};
@@ -343,8 +343,17 @@ fn wall_shear(outline: &Outline, step: f64, mean: f64, shear: &dyn Fn(Point) -> 
         max_per_gradient: largest.shear_per_gradient,
         max_at: largest.at,
         singular_corners: Vec::new(),
+        curve: wall_curve(outline, &samples, step),
         samples,
     }
+}
+
+fn wall_curve(outline: &Outline, samples: &[WallSample], step: f64) -> WallCurve {
+    let corners: Vec<Vec<Corner>> = outline
+        .loops()
+        .map(|wall| corners(wall, step, 10_f64.to_radians()))
+        .collect();
+    WallCurve::new(outline, &corners, samples, step)
 }
 
 /// 1 kPa over 20 mm.

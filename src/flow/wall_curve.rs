@@ -1,0 +1,301 @@
+//! Wall shear per pressure gradient as a curve along every loop of the wall.
+//!
+//! Every loop is cut at its corners into stretches (module `wall_stretch`). The curve is smooth on a
+//! stretch, zero at a convex corner, and without bound at a re-entrant one, where it follows the law of
+//! the corner (module `corner_law`) rather than the grid.
+
+use crate::geometry::{Corner, Outline, Point};
+
+use super::section_flow::WallSample;
+use super::wall_path::WallPath;
+use super::wall_stretch::Stretch;
+
+/// Length beside a singular corner over which the mean stands for the shear, in hydraulic diameters.
+pub const SINGULAR_LENGTH: f64 = 0.05;
+
+/// The curve of all loops.
+#[derive(Debug, Clone, PartialEq)]
+pub struct WallCurve {
+    /// One per loop, in the order of [`Outline::loops`].
+    pub loops: Vec<LoopCurve>,
+    /// Length beside a singular corner over which the mean stands for the shear, m.
+    pub singular_length: f64,
+}
+
+/// The curve of one loop.
+#[derive(Debug, Clone, PartialEq)]
+pub struct LoopCurve {
+    /// Points in order of arc length, from the first vertex. A corner is entered twice, once with the
+    /// normal of either side.
+    pub points: Vec<CurvePoint>,
+    pub(crate) path: WallPath,
+    pub(crate) stretches: Vec<Stretch>,
+    /// Spacing of the lattice, m.
+    pub(crate) spacing: f64,
+}
+
+/// One point of the curve.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct CurvePoint {
+    /// Arc length from the first vertex of the loop, m.
+    pub arc_length: f64,
+    /// Position, m.
+    pub at: Point,
+    /// Unit normal of the outline, out of the fluid.
+    pub normal: Point,
+    /// `abs(dphi/dn)`, m; at a singular corner its mean over [`WallCurve::singular_length`] on that side,
+    /// or over half the stretch where that is shorter.
+    pub shear_per_gradient: f64,
+    /// What kind of point.
+    pub kind: PointKind,
+}
+
+/// Kind of a point of the curve.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum PointKind {
+    /// On a smooth stretch.
+    Regular,
+    /// A corner with a fluid angle below 180 degrees: no shear.
+    ConvexCorner,
+    /// A corner with a fluid angle above 180 degrees: shear without bound.
+    SingularCorner,
+}
+
+/// A place on the wall, as the weight of an integral sees it.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct WallPlace {
+    /// Index of the loop, in the order of [`Outline::loops`].
+    pub loop_index: usize,
+    /// Arc length from the first vertex of the loop, m.
+    pub arc_length: f64,
+    /// Position on the outline, m.
+    pub at: Point,
+    /// Unit normal of the outline's own edge, out of the fluid.
+    pub normal: Point,
+}
+
+impl WallCurve {
+    /// The curve from samples.
+    ///
+    /// - `corners`: of every loop; `samples`: sorted by loop and arc length; `spacing`: of the lattice, m
+    pub fn new(
+        outline: &Outline,
+        corners: &[Vec<Corner>],
+        samples: &[WallSample],
+        spacing: f64,
+    ) -> Self {
+        let singular_length = SINGULAR_LENGTH * 4.0 * outline.area() / outline.wetted_perimeter();
+        let mut loops: Vec<LoopCurve> = outline
+            .loops()
+            .enumerate()
+            .map(|(index, wall)| {
+                let first = samples.partition_point(|s| s.loop_index < index);
+                let end = samples.partition_point(|s| s.loop_index <= index);
+                let own: Vec<(f64, f64)> = samples[first..end]
+                    .iter()
+                    .map(|s| (s.arc_length, s.shear_per_gradient))
+                    .collect();
+                let path = WallPath::new(wall);
+                let corners = corners.get(index).map_or(&[][..], Vec::as_slice);
+                let stretches = stretches(&path, corners, &own, spacing);
+                LoopCurve {
+                    points: Vec::new(),
+                    path,
+                    stretches,
+                    spacing,
+                }
+            })
+            .collect();
+        for (index, curve) in loops.iter_mut().enumerate() {
+            curve.points = curve.collect_points(index, singular_length);
+        }
+        Self {
+            loops,
+            singular_length,
+        }
+    }
+}
+
+impl WallCurve {
+    /// The point with the largest shear; nearer to a singular corner than
+    /// [`WallCurve::singular_length`], the corner's own entry stands for the curve.
+    pub fn largest(&self) -> Option<&CurvePoint> {
+        let compare = |a: &&CurvePoint, b: &&CurvePoint| {
+            a.shear_per_gradient.total_cmp(&b.shear_per_gradient)
+        };
+        self.loops
+            .iter()
+            .filter_map(|curve| curve.bounded(self.singular_length).max_by(compare))
+            .max_by(compare)
+    }
+}
+
+/// The stretches of a loop in order of their starts; the first may start after the last ends past the
+/// first vertex.
+fn stretches(
+    path: &WallPath,
+    corners: &[Corner],
+    samples: &[(f64, f64)],
+    spacing: f64,
+) -> Vec<Stretch> {
+    let total = path.length();
+    if corners.is_empty() {
+        return vec![Stretch::closed(total, samples, spacing)];
+    }
+    let nearest = |s: f64| {
+        let apart = |a: f64| {
+            let d = (a - s).rem_euclid(total);
+            d.min(total - d)
+        };
+        samples
+            .iter()
+            .min_by(|a, b| apart(a.0).total_cmp(&apart(b.0)))
+            .map_or(0.0, |sample| sample.1)
+    };
+    (0..corners.len())
+        .map(|k| {
+            let (from, to) = (&corners[k], &corners[(k + 1) % corners.len()]);
+            let start = from.arc_length;
+            let mut length = to.arc_length - start;
+            if length <= 0.0 {
+                length += total;
+            }
+            let mut own: Vec<(f64, f64)> = [0.0, total]
+                .iter()
+                .flat_map(|turn| samples.iter().map(move |&(s, v)| (s + turn - start, v)))
+                .filter(|&(s, _)| s > 0.0 && s < length)
+                .collect();
+            own.sort_by(|a, b| a.0.total_cmp(&b.0));
+            let fallback = if own.is_empty() {
+                nearest(start + 0.5 * length)
+            } else {
+                0.0
+            };
+            let angles = [from.fluid_angle(), to.fluid_angle()];
+            Stretch::between(start, length, angles, &own, spacing, fallback)
+        })
+        .collect()
+}
+
+impl LoopCurve {
+    /// Length of the loop, m.
+    pub fn length(&self) -> f64 {
+        self.path.length()
+    }
+
+    /// Shear per gradient at an arc length, m; without bound at a singular corner.
+    pub fn shear_at(&self, arc_length: f64) -> f64 {
+        let total = self.length();
+        let s = arc_length.rem_euclid(total);
+        let after = self.stretches.partition_point(|stretch| stretch.start <= s);
+        // Before the first corner the last stretch runs on.
+        let (stretch, s) = match after.checked_sub(1) {
+            Some(index) => (self.stretches.get(index), s),
+            None => (self.stretches.last(), s + total),
+        };
+        stretch.map_or(0.0, |stretch| stretch.value(s - stretch.start))
+    }
+
+    /// Points without the regular ones nearer than a length to a singular corner.
+    pub(crate) fn bounded(&self, length: f64) -> impl Iterator<Item = &CurvePoint> {
+        let total = self.length();
+        let singular: Vec<f64> = self
+            .points
+            .iter()
+            .filter(|point| point.kind == PointKind::SingularCorner)
+            .map(|point| point.arc_length)
+            .collect();
+        self.points.iter().filter(move |point| {
+            let far = |corner: &f64| {
+                let apart = (corner - point.arc_length).rem_euclid(total);
+                apart.min(total - apart) >= length
+            };
+            let after = singular.partition_point(|&s| s < point.arc_length);
+            let near = [
+                after.checked_sub(1),
+                Some(after),
+                Some(0),
+                singular.len().checked_sub(1),
+            ];
+            point.kind != PointKind::Regular
+                || near
+                    .iter()
+                    .flatten()
+                    .filter_map(|&k| singular.get(k))
+                    .all(far)
+        })
+    }
+
+    /// Points of the curve: the pieces' ends, closer together beside corners.
+    fn collect_points(&self, loop_index: usize, singular_length: f64) -> Vec<CurvePoint> {
+        let total = self.length();
+        let mut points = Vec::new();
+        for stretch in &self.stretches {
+            let count = stretch.pieces(self.spacing);
+            let step = stretch.length / count as f64;
+            let mut distances: Vec<f64> = (1..count).map(|k| step * k as f64).collect();
+            if stretch.leading.is_some() {
+                for part in [0.5, 0.25, 0.125] {
+                    distances.extend([part * step, stretch.length - part * step]);
+                }
+                distances.sort_by(f64::total_cmp);
+                points.extend(
+                    [false, true].map(|at_end| {
+                        self.corner_point(loop_index, stretch, at_end, singular_length)
+                    }),
+                );
+            } else {
+                distances.insert(0, 0.0);
+            }
+            points.extend(distances.into_iter().map(|distance| {
+                let arc_length = (stretch.start + distance).rem_euclid(total);
+                CurvePoint {
+                    arc_length,
+                    at: self.path.position(arc_length),
+                    normal: self.path.edge_normal(self.path.edge_at(arc_length)),
+                    shear_per_gradient: stretch.value(distance),
+                    kind: PointKind::Regular,
+                }
+            }));
+        }
+        points.sort_by(|a, b| a.arc_length.total_cmp(&b.arc_length));
+        points
+    }
+
+    /// An end of a stretch.
+    fn corner_point(
+        &self,
+        loop_index: usize,
+        stretch: &Stretch,
+        at_end: bool,
+        singular_length: f64,
+    ) -> CurvePoint {
+        let total = self.length();
+        let leading = stretch.leading.map_or(0.0, |l| l[usize::from(at_end)]);
+        let place = stretch.start + if at_end { stretch.length } else { 0.0 };
+        let inside = stretch.start + stretch.length * if at_end { 1.0 - 1e-9 } else { 1e-9 };
+        let inside = inside.rem_euclid(total);
+        let singular = leading < 0.0;
+        let length = singular_length.min(0.5 * stretch.length);
+        CurvePoint {
+            arc_length: if place >= total { place - total } else { place },
+            at: self.path.position(place),
+            normal: self.path.edge_normal(self.path.edge_at(inside)),
+            shear_per_gradient: if singular {
+                let (from, to) = if at_end {
+                    (place - length, place)
+                } else {
+                    (place, place + length)
+                };
+                self.integrate_between(loop_index, from, to, 1, &|_| 1.0) / length
+            } else {
+                0.0
+            },
+            kind: if singular {
+                PointKind::SingularCorner
+            } else {
+                PointKind::ConvexCorner
+            },
+        }
+    }
+}

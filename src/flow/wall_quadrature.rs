@@ -1,0 +1,269 @@
+//! Integrals of the wall shear and of its square along the wall.
+//!
+//! Every stretch between corners is cut at the pieces of the curve and at the vertices of the outline;
+//! on each part the rule of Gauss with four points is used. Beside a corner, where shear to the power `n`
+//! behaves like `r^a` with `a = n (pi/omega - 1) > -1`, it is used in `t = r^(1/m)` with
+//! `m = 4/(a + 1)`: the integrand is then smooth.
+
+use super::wall_curve::{LoopCurve, WallCurve, WallPlace};
+use super::wall_stretch::Stretch;
+
+/// Places and weights of Gauss's rule on -1 to 1.
+const GAUSS: [(f64, f64); 4] = [
+    (-0.861_136_311_594_052_6, 0.347_854_845_137_453_85),
+    (-0.339_981_043_584_856_26, 0.652_145_154_862_546_1),
+    (0.339_981_043_584_856_26, 0.652_145_154_862_546_1),
+    (0.861_136_311_594_052_6, 0.347_854_845_137_453_85),
+];
+
+impl WallCurve {
+    /// Integral of `weight * abs(dphi/dn)^power ds` over the whole wall.
+    ///
+    /// - `power`: 1 or 2
+    /// - `weight`: smooth along each edge of the outline
+    pub fn integrate(&self, power: i32, weight: impl Fn(&WallPlace) -> f64) -> f64 {
+        self.loops
+            .iter()
+            .enumerate()
+            .map(|(index, curve)| {
+                curve.integrate_between(index, 0.0, curve.length(), power, &weight)
+            })
+            .sum()
+    }
+
+    /// The same along one loop from one arc length forward to another, m; past the first vertex where
+    /// `to` is larger than the length of the loop. Zero for a loop that is not there.
+    pub fn integrate_stretch(
+        &self,
+        loop_index: usize,
+        from: f64,
+        to: f64,
+        power: i32,
+        weight: impl Fn(&WallPlace) -> f64,
+    ) -> f64 {
+        self.loops.get(loop_index).map_or(0.0, |curve| {
+            curve.integrate_between(loop_index, from, to, power, &weight)
+        })
+    }
+}
+
+impl LoopCurve {
+    pub(crate) fn integrate_between(
+        &self,
+        loop_index: usize,
+        from: f64,
+        to: f64,
+        power: i32,
+        weight: &dyn Fn(&WallPlace) -> f64,
+    ) -> f64 {
+        let total = self.length();
+        let mut sum = 0.0;
+        for stretch in &self.stretches {
+            for turn in [-1.0, 0.0, 1.0] {
+                let start = stretch.start + turn * total;
+                let low = (from - start).max(0.0);
+                let high = (to - start).min(stretch.length);
+                if high > low {
+                    sum += self.along(loop_index, stretch, (low, high), power, weight);
+                }
+            }
+        }
+        sum
+    }
+
+    /// Integral over a part of a stretch, given by distances from its start.
+    fn along(
+        &self,
+        loop_index: usize,
+        stretch: &Stretch,
+        (low, high): (f64, f64),
+        power: i32,
+        weight: &dyn Fn(&WallPlace) -> f64,
+    ) -> f64 {
+        let breaks = self.breaks(stretch, low, high);
+        let vertices = self.path.vertices();
+        let total = self.length();
+        breaks
+            .windows(2)
+            .map(|part| {
+                let (a, b) = (part[0], part[1]);
+                let middle = (stretch.start + 0.5 * (a + b)).rem_euclid(total);
+                let edge = self.path.edge_at(middle);
+                let normal = self.path.edge_normal(edge);
+                let (from, to) = self.path.edge(edge);
+                let edge_length = vertices[edge + 1] - vertices[edge];
+                let offset = middle - 0.5 * (a + b) - vertices[edge];
+                let loop_start = vertices[edge];
+                gauss(stretch, (a, b), power, |distance, to_end| {
+                    let share = (distance + offset) / edge_length;
+                    let at = [0, 1].map(|axis| from[axis] + share * (to[axis] - from[axis]));
+                    weight(&WallPlace {
+                        loop_index,
+                        arc_length: loop_start + distance + offset,
+                        at,
+                        normal,
+                    }) * stretch.value_between(distance, to_end).powi(power)
+                })
+            })
+            .sum()
+    }
+
+    /// Ends of the parts between two distances from the start of a stretch.
+    fn breaks(&self, stretch: &Stretch, low: f64, high: f64) -> Vec<f64> {
+        let total = self.length();
+        let count = stretch.pieces(self.spacing);
+        let step = stretch.length / count as f64;
+        let mut breaks = vec![low, high];
+        breaks.extend((0..=count).map(|k| step * k as f64));
+        breaks.extend([stretch.zone[0], stretch.length - stretch.zone[1]]);
+        let vertices = self.path.vertices();
+        for turn in [0.0, total] {
+            let from = vertices.partition_point(|&v| v + turn <= stretch.start + low);
+            let to = vertices.partition_point(|&v| v + turn < stretch.start + high);
+            if from < to {
+                breaks.extend(vertices[from..to].iter().map(|v| v + turn - stretch.start));
+            }
+        }
+        breaks.retain(|&b| (low..=high).contains(&b));
+        breaks.sort_by(f64::total_cmp);
+        breaks.dedup_by(|a, b| *a - *b <= 1e-14 * total);
+        breaks
+    }
+}
+
+/// Gauss's rule over a part of a stretch, in the variable that suits the corner next to it.
+fn gauss(
+    stretch: &Stretch,
+    (a, b): (f64, f64),
+    power: i32,
+    integrand: impl Fn(f64, f64) -> f64,
+) -> f64 {
+    let middle = 0.5 * (a + b);
+    let near_end = middle > 0.5 * stretch.length;
+    let corner = stretch
+        .leading
+        .map(|leading| leading[usize::from(near_end)])
+        .filter(|_| middle <= stretch.zone[0] || stretch.length - middle <= stretch.zone[1]);
+    let Some(leading) = corner else {
+        let half = 0.5 * (b - a);
+        return GAUSS
+            .iter()
+            .map(|(x, w)| {
+                let distance = middle + half * x;
+                w * half * integrand(distance, stretch.length - distance)
+            })
+            .sum();
+    };
+    let m = (4.0 / (f64::from(power) * leading + 1.0)).max(1.0);
+    let (near, far) = if near_end {
+        (stretch.length - b, stretch.length - a)
+    } else {
+        (a, b)
+    };
+    let (low, high) = (near.max(0.0).powf(1.0 / m), far.powf(1.0 / m));
+    let (centre, half) = (0.5 * (low + high), 0.5 * (high - low));
+    GAUSS
+        .iter()
+        .map(|(x, w)| {
+            let t = centre + half * x;
+            let r = t.powf(m);
+            let (distance, to_end) = if near_end {
+                (stretch.length - r, r)
+            } else {
+                (r, stretch.length - r)
+            };
+            w * half * m * t.powf(m - 1.0) * integrand(distance, to_end)
+        })
+        .sum()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::section_flow::WallSample;
+    use super::*;
+    use crate::geometry::{Outline, Point, corners};
+
+    /// Curve of an outline whose shear is known, from samples on its edges.
+    fn curve(outline: &Outline, spacing: f64, shear: impl Fn(Point) -> f64) -> WallCurve {
+        let mut samples = Vec::new();
+        for (loop_index, wall) in outline.loops().enumerate() {
+            let mut arc = 0.0;
+            for (a, b) in wall.edges() {
+                let length = (b[0] - a[0]).hypot(b[1] - a[1]);
+                let count = (length / spacing).floor() as usize;
+                for k in 0..count {
+                    let t = (k as f64 + 0.5) / count as f64;
+                    let at = [a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])];
+                    samples.push(WallSample {
+                        loop_index,
+                        arc_length: arc + t * length,
+                        at,
+                        normal: [0.0; 2],
+                        shear_per_gradient: shear(at),
+                    });
+                }
+                arc += length;
+            }
+        }
+        let corners: Vec<_> = outline
+            .loops()
+            .map(|wall| corners(wall, spacing, 0.2))
+            .collect();
+        WallCurve::new(outline, &corners, &samples, spacing)
+    }
+
+    #[test]
+    fn the_shear_of_an_equilateral_triangle_integrates_exactly() {
+        // Closed form: parabolic along each side of length 2, 3/4 of the height in the middle times 2/3.
+        let root = 3.0_f64.sqrt();
+        let triangle = Outline::single(vec![[-1.0, 0.0], [1.0, 0.0], [0.0, root]]);
+        let shear = |p: Point| {
+            let from_middle = [[0.0, 0.0], [0.5, 0.5 * root], [-0.5, 0.5 * root]]
+                .iter()
+                .map(|m| (p[0] - m[0]).hypot(p[1] - m[1]))
+                .fold(f64::INFINITY, f64::min);
+            0.25 * root * (1.0 - from_middle * from_middle)
+        };
+        let curve = curve(&triangle, 0.02, shear);
+        let mean = curve.integrate(1, |_| 1.0);
+        assert!((mean / root - 1.0).abs() < 1e-7, "{mean}");
+        // Rellich's identity with K = side^4 sqrt(3) / 320, about a corner.
+        let rellich = curve.integrate(2, |p| p.at[0] * p.normal[0] + p.at[1] * p.normal[1]);
+        assert!(
+            (rellich / (4.0 * 16.0 * root / 320.0) - 1.0).abs() < 1e-7,
+            "{rellich}"
+        );
+        let halves = curve.integrate_stretch(0, 1.0, 5.0, 1, |_| 1.0)
+            + curve.integrate_stretch(0, 5.0, 7.0, 1, |_| 1.0);
+        assert!((halves / root - 1.0).abs() < 1e-7);
+    }
+
+    #[test]
+    fn the_power_of_a_re_entrant_corner_integrates_exactly() {
+        // A wedge of 270 degrees with both sides of length one, closed far away.
+        let wedge = Outline::single(vec![
+            [1.0, 0.0],
+            [1.0, 1.0],
+            [-1.0, 1.0],
+            [-1.0, -1.0],
+            [0.0, -1.0],
+            [0.0, 0.0],
+        ]);
+        // The particular part belongs to every solution with this corner.
+        let particular = 2.0 / (3.0 * std::f64::consts::PI);
+        let shear = |p: Point| {
+            let r = p[0].hypot(p[1]);
+            r.powf(-1.0 / 3.0) - particular * r * r.ln()
+        };
+        let curve = curve(&wedge, 0.01, shear);
+        let (r, log) = (0.4_f64, 0.4_f64.ln());
+        let one = 1.5 * r.powf(2.0 / 3.0) - particular * r * r * (0.5 * log - 0.25);
+        let both = curve.integrate_stretch(0, 7.0 - r, 7.0 + r, 1, |_| 1.0);
+        assert!((both / (2.0 * one) - 1.0).abs() < 3e-5, "{both}");
+        let cross = r.powf(5.0 / 3.0) * (0.6 * log - 0.36);
+        let last = particular.powi(2) * r.powi(3) / 3.0 * (log * log - 2.0 * log / 3.0 + 2.0 / 9.0);
+        let square = 3.0 * r.powf(1.0 / 3.0) - 2.0 * particular * cross + last;
+        let both = curve.integrate_stretch(0, 7.0 - r, 7.0 + r, 2, |_| 1.0);
+        assert!((both / (2.0 * square) - 1.0).abs() < 1e-4, "{both}");
+    }
+}

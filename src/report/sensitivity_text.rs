@@ -59,6 +59,7 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
         "R",
         "K, new solves",
         "off by",
+        "+/-",
         "enough for K to",
         "for R to",
     ];
@@ -76,9 +77,10 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
     let mut explained = "Both change in proportion to a small change, and dlnR = -dlnK.".to_owned();
     if is_checked {
         explained.push_str(&format!(
-            " K, new solves: half the difference of two solves with the walls moved either way. First order is \
+            " K, new solves: half the difference of two solves with the walls moved either way, and by how much \
+             the prediction is off, with the estimated numerical error of the new solves (+/-). First order is \
              enough up to the change at which the second-order term is {} of the first-order one; `>`: at \
-             least to there, more cannot be said.",
+             least up to there, more cannot be said.",
             per_cent(SECOND_ORDER_SHARE)
         ));
     } else {
@@ -110,11 +112,10 @@ fn change_row(case: &Sensitivity, step: Step, is_first: bool) -> Vec<String> {
     match &case.check {
         Ok(check) => {
             cells.push(change(check.first_order * step.size));
-            cells.push(if is_first {
-                case.check_difference().map_or(String::new(), per_cent)
-            } else {
-                String::new()
-            });
+            let share =
+                |value: Option<f64>| value.filter(|_| is_first).map_or(String::new(), per_cent);
+            cells.push(share(case.check_difference()));
+            cells.push(share(Some(check.first_order_error / case.gross)));
             let shown = |change: f64| with_step(change / step.size, step);
             let reaches = [check.reach_for_conductance(), check.reach_for_resistance()];
             cells.extend(reaches.map(|reach| match reach {

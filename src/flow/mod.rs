@@ -23,6 +23,7 @@ mod wall_curve;
 mod wall_path;
 mod wall_quadrature;
 mod wall_shear;
+mod wall_statistics;
 mod wall_stretch;
 
 pub use entrance::{EntranceModel, entrance_length, excess_pressure_factor};
@@ -37,3 +38,6 @@ pub use shortcuts::{ShortcutRow, shortcuts};
 pub use solve_outline::{DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use validity_range::{outside_validity, validity_warnings};
 pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};
+pub use wall_statistics::{
+    PERCENTILES, SingularCorner, WHOLE_WALL, WallPart, WallReport, WallStatistics,
+};

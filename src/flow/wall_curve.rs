@@ -199,12 +199,7 @@ impl LoopCurve {
     /// Points without the regular ones nearer than a length to a singular corner.
     pub(crate) fn bounded(&self, length: f64) -> impl Iterator<Item = &CurvePoint> {
         let total = self.length();
-        let singular: Vec<f64> = self
-            .points
-            .iter()
-            .filter(|point| point.kind == PointKind::SingularCorner)
-            .map(|point| point.arc_length)
-            .collect();
+        let singular = self.singular_places();
         self.points.iter().filter(move |point| {
             let far = |corner: &f64| {
                 let apart = (corner - point.arc_length).rem_euclid(total);
@@ -229,8 +224,9 @@ impl LoopCurve {
     /// Points of the curve: the pieces' ends, closer together beside corners.
     fn collect_points(&self, loop_index: usize, singular_length: f64) -> Vec<CurvePoint> {
         let total = self.length();
-        let mut points = Vec::new();
-        for stretch in &self.stretches {
+        // With zero for the end of a stretch and one for the start of the next.
+        let mut points: Vec<(u8, CurvePoint)> = Vec::new();
+        for (index, stretch) in self.stretches.iter().enumerate() {
             let count = stretch.pieces(self.spacing);
             let step = stretch.length / count as f64;
             let mut distances: Vec<f64> = (1..count).map(|k| step * k as f64).collect();
@@ -239,54 +235,63 @@ impl LoopCurve {
                     distances.extend([part * step, stretch.length - part * step]);
                 }
                 distances.sort_by(f64::total_cmp);
-                points.extend(
-                    [false, true].map(|at_end| {
-                        self.corner_point(loop_index, stretch, at_end, singular_length)
-                    }),
-                );
+                points.extend([false, true].map(|at_end| {
+                    let point = self.corner_point(loop_index, index, at_end, singular_length);
+                    (u8::from(!at_end), point)
+                }));
             } else {
                 distances.insert(0, 0.0);
             }
             points.extend(distances.into_iter().map(|distance| {
                 let arc_length = (stretch.start + distance).rem_euclid(total);
-                CurvePoint {
+                let point = CurvePoint {
                     arc_length,
                     at: self.path.position(arc_length),
                     normal: self.path.edge_normal(self.path.edge_at(arc_length)),
                     shear_per_gradient: stretch.value(distance),
                     kind: PointKind::Regular,
-                }
+                };
+                (1, point)
             }));
         }
-        points.sort_by(|a, b| a.arc_length.total_cmp(&b.arc_length));
-        points
+        points.sort_by(|a, b| {
+            let along = a.1.arc_length.total_cmp(&b.1.arc_length);
+            along.then(a.0.cmp(&b.0))
+        });
+        points.into_iter().map(|(_, point)| point).collect()
     }
 
     /// An end of a stretch.
     fn corner_point(
         &self,
         loop_index: usize,
-        stretch: &Stretch,
+        index: usize,
         at_end: bool,
         singular_length: f64,
     ) -> CurvePoint {
         let total = self.length();
+        let stretch = &self.stretches[index];
         let leading = stretch.leading.map_or(0.0, |l| l[usize::from(at_end)]);
-        let place = stretch.start + if at_end { stretch.length } else { 0.0 };
-        let inside = stretch.start + stretch.length * if at_end { 1.0 - 1e-9 } else { 1e-9 };
-        let inside = inside.rem_euclid(total);
-        let singular = leading < 0.0;
         let length = singular_length.min(0.5 * stretch.length);
+        let (arc_length, beside) = if at_end {
+            let next = self.stretches[(index + 1) % self.stretches.len()].start;
+            // The end of the loop is not its beginning: it closes the last stretch.
+            let arc_length = if next > 0.0 { next } else { total };
+            (arc_length, -length)
+        } else {
+            (stretch.start, length)
+        };
+        let inside = (arc_length + 1e-6 * beside).rem_euclid(total);
+        let singular = leading < 0.0;
+        let (from, to) = (
+            arc_length.min(arc_length + beside),
+            arc_length.max(arc_length + beside),
+        );
         CurvePoint {
-            arc_length: if place >= total { place - total } else { place },
-            at: self.path.position(place),
+            arc_length,
+            at: self.path.position(arc_length),
             normal: self.path.edge_normal(self.path.edge_at(inside)),
             shear_per_gradient: if singular {
-                let (from, to) = if at_end {
-                    (place - length, place)
-                } else {
-                    (place, place + length)
-                };
                 self.integrate_between(loop_index, from, to, 1, &|_| 1.0) / length
             } else {
                 0.0
@@ -297,5 +302,14 @@ impl LoopCurve {
                 PointKind::ConvexCorner
             },
         }
+    }
+
+    /// Arc lengths of the singular corners, sorted; each is there once for either side.
+    pub(crate) fn singular_places(&self) -> Vec<f64> {
+        self.points
+            .iter()
+            .filter(|point| point.kind == PointKind::SingularCorner)
+            .map(|point| point.arc_length)
+            .collect()
     }
 }

@@ -68,7 +68,7 @@ pub(crate) fn wall_shear(
             .cmp(&b.loop_index)
             .then(a.arc_length.total_cmp(&b.arc_length))
     });
-    let curve = WallCurve::new(outline, &corners, &samples, lattice.spacing);
+    let curve = WallCurve::new(outline, corners, &samples, lattice.spacing);
     let largest = curve.largest();
     WallShear {
         mean_per_gradient: outline.area() / outline.wetted_perimeter(),

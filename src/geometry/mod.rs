@@ -4,6 +4,7 @@ mod corners;
 pub mod curves;
 mod inscribed_circle;
 mod linear_pieces;
+mod named_wall;
 pub mod nominal;
 mod outline;
 mod outline_check;
@@ -15,6 +16,9 @@ mod wall_edges;
 
 pub use corners::{Corner, corners};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
+pub use named_wall::{
+    DIRECTION_NAMES, FARTHEST, NamedWall, NamedWallError, WallStretch, wall_stretches,
+};
 pub use nominal::{
     KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
 };

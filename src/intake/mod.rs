@@ -28,6 +28,7 @@ mod svg_path;
 mod svg_shapes;
 mod svg_transform;
 mod toml_values;
+mod wall_tables;
 
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
 pub use provenance::{Provenance, SectionKind};

@@ -1,5 +1,6 @@
 //! What can be wrong with a file: where it is, what it is, what to do.
 
+use crate::geometry::NamedWallError;
 use crate::geometry::nominal::NominalError;
 use crate::units::{UnitError, format_length};
 
@@ -224,6 +225,12 @@ pub enum ReadProblem {
         /// What is wrong with it.
         source: NominalError,
     },
+    /// A named wall cannot be used.
+    #[error("{source}")]
+    Wall {
+        /// What is wrong with it.
+        source: NamedWallError,
+    },
     /// The drawing is not SVG.
     #[error("not a valid SVG drawing: {message}")]
     Svg {
@@ -357,6 +364,7 @@ impl ReadProblem {
         match self {
             Self::Unit { source } | Self::UnitOption { source } => source.hint(),
             Self::Nominal { source } => source.hint(),
+            Self::Wall { source } => source.hint(),
             Self::UnknownKey { nearest, known, .. } => match nearest {
                 Some(word) => format!("did you mean `{word}`?"),
                 None => format!("known keys: {known}"),

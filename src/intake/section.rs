@@ -9,8 +9,8 @@ use super::provenance::{Provenance, SectionKind, sha256_hex};
 use super::read_error::{Fault, ReadError, ReadProblem};
 use super::source_text::{SourceText, read_bytes};
 use super::{delimited_text, outline_svg, outline_text, section_file};
-use crate::geometry::Outline;
 use crate::geometry::nominal::NominalSpec;
+use crate::geometry::{Outline, WallStretch};
 use crate::units::{UnitScale, length_scale, parse_length};
 use crate::warning::Warning;
 
@@ -52,6 +52,8 @@ pub struct Section {
     pub loop_numbers: Vec<usize>,
     /// The nominal section it was made from, where it is one.
     pub nominal: Option<NominalSpec>,
+    /// Stretches of wall with names, arc lengths along the oriented outline.
+    pub walls: Vec<WallStretch>,
     /// Where it came from.
     pub provenance: Provenance,
     /// Tables kept for other work.
@@ -122,6 +124,7 @@ pub(crate) struct Content {
     /// See [`Section::loop_numbers`]; empty where the outline is in the order of the file.
     pub(crate) loop_numbers: Vec<usize>,
     pub(crate) nominal: Option<NominalSpec>,
+    pub(crate) walls: Vec<WallStretch>,
     pub(crate) extras: Extras,
     /// Unit of the coordinates, for messages.
     pub(crate) unit: Option<String>,
@@ -222,6 +225,7 @@ fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Sec
         outline,
         loop_numbers,
         nominal: content.nominal,
+        walls: content.walls,
         provenance: Provenance {
             path: path.to_owned(),
             sha256,

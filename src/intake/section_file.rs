@@ -14,7 +14,8 @@
 //! width = "100 um"
 //! height = "50 um"
 //! ```
-//! A coordinate may also be a length such as `"1 mil"`. `[source]`, `[uncertainty]` and `[reach]` are kept
+//! A coordinate may also be a length such as `"1 mil"`. `[[wall]]` tables name stretches of wall
+//! (module `wall_tables`). `[source]`, `[uncertainty]` and `[reach]` are kept
 //! for other work; any other key is an error.
 
 use std::collections::BTreeMap;
@@ -28,16 +29,18 @@ use super::section::{Content, Extras, UnitOption};
 use super::toml_values::{
     Value, check_keys, fault, number, parse, plain_table, string, wrong_type,
 };
+use super::wall_tables;
 use crate::geometry::nominal::{NominalSpec, SpecValue};
 use crate::geometry::{Loop, Lumen, Outline, Point};
 use crate::units::{UnitError, UnitScale, parse_length};
 
 /// Keys at the top of a section file.
-const TOP_KEYS: [&str; 7] = [
+const TOP_KEYS: [&str; 8] = [
     "name",
     "unit",
     "lumen",
     "nominal",
+    "wall",
     "source",
     "uncertainty",
     "reach",
@@ -82,6 +85,12 @@ pub(crate) fn read(
         }
         (None, None) => return Err(ReadProblem::NoOutline.into()),
     };
+    let walls = if keep_non_finite {
+        // Places on an outline with such coordinates mean nothing.
+        Vec::new()
+    } else {
+        wall_tables::read(text, table, scale, &outline)?
+    };
     let bare = nominal.is_none();
     let notes = match option {
         Some(option) if nominal.is_some() => vec![format!(
@@ -95,6 +104,7 @@ pub(crate) fn read(
         outline: Some(outline),
         loop_numbers: Vec::new(),
         nominal,
+        walls,
         extras,
         unit: unit.filter(|_| bare),
         factor: scale.filter(|_| bare).map(UnitScale::factor),

@@ -9,7 +9,7 @@ use std::path::Path;
 
 use etchwise::flow::closed_form::{concentric_annulus, rectangle};
 use etchwise::flow::{SolveOptions, solve_outline};
-use etchwise::geometry::{NominalSpec, Outline};
+use etchwise::geometry::{NamedWall, NominalSpec, Outline, wall_stretches};
 use etchwise::intake::{ReadOptions, read_section};
 use etchwise::study::{
     Reach, Sensitivity, SensitivityOptions, SensitivityStudy, moved_outline, sensitivity_study,
@@ -68,7 +68,7 @@ fn l_shape() -> Outline {
 
 fn study(outline: &Outline, check: bool) -> SensitivityStudy {
     let solved = solve_for_sensitivity(outline, &SolveOptions::default()).unwrap();
-    sensitivity_study(&solved, SensitivityOptions { check })
+    sensitivity_study(&solved, &[], SensitivityOptions { check })
 }
 
 fn relative(study: &SensitivityStudy, name: &str) -> f64 {
@@ -253,7 +253,7 @@ fn the_area_swept_by_every_motion_is_the_integral_of_its_outward_speed() {
     let mut seen = 0;
     for outline in outlines {
         let size = outline.area().sqrt();
-        for motion in wall_motions(&outline).into_iter().flatten() {
+        for motion in wall_motions(&outline, &[], 0.0).cases.into_iter().flatten() {
             let mut swept = 0.0;
             for (index, wall) in outline.loops().enumerate() {
                 for (edge, (a, b)) in wall.edges().enumerate() {
@@ -291,8 +291,9 @@ fn the_area_swept_by_every_motion_is_the_integral_of_its_outward_speed() {
 #[test]
 fn a_change_that_the_outline_does_not_allow_is_refused() {
     let outline = drawn("rectangle width=100um height=40um");
-    let motions = wall_motions(&outline);
+    let motions = wall_motions(&outline, &[], 0.0);
     let film = motions
+        .cases
         .iter()
         .flatten()
         .find(|motion| motion.name == "film")
@@ -313,7 +314,7 @@ fn a_section_without_a_floor_says_so() {
         &SolveOptions::default(),
     )
     .unwrap();
-    let triangle = sensitivity_study(&solved, SensitivityOptions { check: false });
+    let triangle = sensitivity_study(&solved, &[], SensitivityOptions { check: false });
     for study in [study, triangle] {
         assert!(study.case("floor").is_none());
         let [none] = &study.absent[..] else {
@@ -322,4 +323,38 @@ fn a_section_without_a_floor_says_so() {
         assert_eq!(none.name, "floor");
         assert!(none.reason.contains("45 degrees"));
     }
+}
+
+#[test]
+fn a_wall_with_a_name_has_a_case_of_its_own() {
+    let u = 1e-6;
+    let outline = Outline::single(vec![
+        [0.0, 0.0],
+        [100.0 * u, 0.0],
+        [100.0 * u, 40.0 * u],
+        [0.0, 40.0 * u],
+    ]);
+    let wall = |name: &str, ends| NamedWall {
+        name: name.to_owned(),
+        loop_number: 1,
+        ends: Some(ends),
+    };
+    // The floor in two parts, the second from the first corner of the outline backwards round it.
+    let named = [
+        wall("heated", [[30.0 * u, 0.0], [100.0 * u, 0.0]]),
+        wall("bank", [[0.0, 40.0 * u], [30.0 * u, 0.0]]),
+    ];
+    let walls = wall_stretches(&outline, &named).unwrap();
+    let solved = solve_for_sensitivity(&outline, &SolveOptions::default()).unwrap();
+    let study = sensitivity_study(&solved, &walls, SensitivityOptions { check: true });
+    let heated = study.case("wall heated").unwrap();
+    let bank = study.case("wall bank").unwrap();
+    for case in [heated, bank] {
+        let off = case.check_difference().unwrap();
+        assert!(off.abs() < THOUSANDTH, "{}: {off:.1e}", case.name);
+    }
+    let both = heated.relative + bank.relative;
+    let sides = relative(&study, "floor") + relative(&study, "left");
+    assert_close(both, sides, 1e-6);
+    assert!(heated.relative > bank.relative);
 }

@@ -80,7 +80,7 @@ impl Request {
         checked: &CheckedSection,
         solved: &SolvedSection,
     ) -> Result<ExitStatus, Failure> {
-        let study = sensitivity_study(solved, self.study);
+        let study = sensitivity_study(solved, &checked.section.walls, self.study);
         let name = input::section_name(&checked.section, &self.file);
         let document = SensitivityDocument {
             source: Some(input::source_record(&checked.section.provenance)),

@@ -52,7 +52,7 @@ impl Step {
         match case.measure {
             Measure::Length => vec![micrometre(1.0)],
             Measure::Angle => vec![Self {
-                unit: "\u{b0}",
+                unit: "deg",
                 size: 1_f64.to_radians(),
             }],
             Measure::Relative => {

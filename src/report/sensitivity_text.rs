@@ -47,8 +47,7 @@ fn change(relative: f64) -> String {
 }
 
 fn with_step(value: f64, step: Step) -> String {
-    let blank = if step.unit == "\u{b0}" { "" } else { " " };
-    format!("{}{blank}{}", significant(value, 2), step.unit)
+    format!("{} {}", significant(value, 2), step.unit)
 }
 
 fn changes(document: &SensitivityDocument<'_>) -> String {
@@ -101,11 +100,7 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
 fn change_row(case: &Sensitivity, step: Step, is_first: bool) -> Vec<String> {
     let mut cells = vec![
         case.name.clone(),
-        if step.unit == "\u{b0}" {
-            "+1\u{b0}".to_owned()
-        } else {
-            format!("+1 {}", step.unit)
-        },
+        format!("+1 {}", step.unit),
         change(case.relative * step.size),
         change(-case.relative * step.size),
     ];
@@ -130,7 +125,7 @@ fn change_row(case: &Sensitivity, step: Step, is_first: bool) -> Vec<String> {
 
 fn definitions(document: &SensitivityDocument<'_>) -> String {
     let mut out =
-        "What moves; walls face where their normal out of the fluid points, within 45 degrees\n"
+        "What moves (walls face where their normal out of the fluid points, within 45 degrees)\n"
             .to_owned();
     for case in &document.study.cases {
         out.push_str(&paragraph(

@@ -1,5 +1,6 @@
 //! Questions over one or many sections that each take several solves or their derivatives.
 
+mod facing;
 mod moved_outline;
 mod resolve_check;
 mod sensitivity;
@@ -12,4 +13,4 @@ pub use sensitivity::{
     Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study, solve_for_sensitivity,
 };
 pub use wall_motion::{EdgeMotion, LinearField, Measure, WallMotion};
-pub use wall_motion_cases::{NoMotion, wall_motions};
+pub use wall_motion_cases::{NoMotion, WallMotions, wall_motions};

@@ -10,12 +10,13 @@
 use rayon::prelude::*;
 
 use crate::flow::{FlowError, SolveOptions, SolvedSection, WallCurve, WallPlace, solve_outline};
-use crate::geometry::Outline;
+use crate::geometry::{Outline, WallStretch};
 use crate::warning::{Code, Warning};
 
+use super::facing::vertex_arcs;
 use super::resolve_check::{Base, Check, NoCheck};
 use super::wall_motion::{Measure, WallMotion};
-use super::wall_motion_cases::{NoMotion, wall_motions};
+use super::wall_motion_cases::{NoMotion, WallMotions, wall_motions};
 
 /// Cells across that integrals over the wall need for a thousandth; `K` itself needs fewer.
 const LEAST_CELLS: f64 = 128.0;
@@ -128,6 +129,8 @@ pub fn solve_for_sensitivity(
 
 /// Every case for a solved section.
 ///
+/// - `walls`: stretches of its wall with names of their own
+///
 /// # Examples
 /// ```
 /// use etchwise::{flow::SolveOptions, geometry::Outline};
@@ -135,23 +138,28 @@ pub fn solve_for_sensitivity(
 /// let a = 100e-6;
 /// let square = Outline::single(vec![[0.0, 0.0], [a, 0.0], [a, a], [0.0, a]]);
 /// let solved = solve_for_sensitivity(&square, &SolveOptions::default())?;
-/// let study = sensitivity_study(&solved, SensitivityOptions { check: false });
+/// let study = sensitivity_study(&solved, &[], SensitivityOptions { check: false });
 /// let depth = study.case("depth").map_or(0.0, |case| case.relative);
 /// assert!((depth - 2.0).abs() < 2e-3);
 /// # Ok::<(), etchwise::flow::FlowError>(())
 /// ```
-pub fn sensitivity_study(solved: &SolvedSection, options: SensitivityOptions) -> SensitivityStudy {
-    let outline = solved.outline();
+pub fn sensitivity_study(
+    solved: &SolvedSection,
+    walls: &[WallStretch],
+    options: SensitivityOptions,
+) -> SensitivityStudy {
+    let WallMotions { outline, cases } =
+        wall_motions(solved.outline(), walls, solved.flow.grid.spacing);
     let k = solved.flow.conductance.value;
-    let integrals = WallIntegrals::new(outline, &solved.flow.wall_shear.curve);
+    let integrals = WallIntegrals::new(&outline, &solved.flow.wall_shear.curve);
     let (mut motions, mut absent) = (Vec::new(), Vec::new());
-    for case in wall_motions(outline) {
+    for case in cases {
         match case {
             Ok(motion) => motions.push(motion),
             Err(none) => absent.push(none),
         }
     }
-    let base = options.check.then(|| base(solved)).transpose();
+    let base = options.check.then(|| base(solved, &outline)).transpose();
     let cases: Vec<Sensitivity> = motions
         .par_iter()
         .map(|motion| {
@@ -191,7 +199,7 @@ pub fn sensitivity_study(solved: &SolvedSection, options: SensitivityOptions) ->
 }
 
 /// The unmoved section on the grid of the checks.
-fn base(solved: &SolvedSection) -> Result<Base<'_>, NoCheck> {
+fn base<'a>(solved: &SolvedSection, outline: &'a Outline) -> Result<Base<'a>, NoCheck> {
     let grid = &solved.flow.grid;
     let coarser = (MOST_CHECK_NODES / grid.fluid_nodes as f64).sqrt().min(1.0);
     let cells_across = (grid.cells_across * coarser).min(MOST_CHECK_CELLS);
@@ -199,9 +207,9 @@ fn base(solved: &SolvedSection) -> Result<Base<'_>, NoCheck> {
         cells_across: Some(cells_across),
         ..SolveOptions::default()
     };
-    let k = solve_outline(solved.outline(), &options)?.flow.conductance;
+    let k = solve_outline(outline, &options)?.flow.conductance;
     Ok(Base {
-        outline: solved.outline(),
+        outline,
         cells_across,
         conductance: k.value,
         relative_error: k.relative(),
@@ -212,25 +220,15 @@ fn base(solved: &SolvedSection) -> Result<Base<'_>, NoCheck> {
 /// Integrals of `(dphi/dn)^2` over the wall, edge by edge.
 struct WallIntegrals<'a> {
     curve: &'a WallCurve,
-    /// Arc length at which each edge of each loop starts, m.
+    /// Arc length at which each edge of each loop starts, and the length of the loop, m.
     edge_starts: Vec<Vec<f64>>,
 }
 
 impl<'a> WallIntegrals<'a> {
     fn new(outline: &Outline, curve: &'a WallCurve) -> Self {
-        let starts = outline.loops().map(|wall| {
-            let mut arc = 0.0;
-            wall.edges()
-                .map(|(a, b)| {
-                    let start = arc;
-                    arc += (b[0] - a[0]).hypot(b[1] - a[1]);
-                    start
-                })
-                .collect()
-        });
         Self {
             curve,
-            edge_starts: starts.collect(),
+            edge_starts: outline.loops().map(vertex_arcs).collect(),
         }
     }
 
@@ -247,10 +245,21 @@ impl<'a> WallIntegrals<'a> {
     fn of(&self, motion: &WallMotion) -> (f64, f64) {
         let signed = |place: &WallPlace| self.speed(motion, place);
         let size = |place: &WallPlace| self.speed(motion, place).abs();
-        (
-            self.curve.integrate(2, signed),
-            self.curve.integrate(2, size),
-        )
+        let curve = self.curve;
+        match &motion.stretch {
+            // Its ends need not be vertices of the curve's own outline.
+            Some(WallStretch {
+                loop_index,
+                from,
+                to,
+                ..
+            }) => {
+                let along =
+                    curve.integrate_stretch(*loop_index, *from, *to, 2, |_| motion.normal_speed);
+                (along, along.abs())
+            }
+            None => (curve.integrate(2, signed), curve.integrate(2, size)),
+        }
     }
 
     /// Integrals of `(dphi/dn)^2 n` against that of `(dphi/dn)^2`.

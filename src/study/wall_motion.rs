@@ -7,7 +7,7 @@
 //!
 //! SI: metres and radians, `x` to the right, `y` upwards.
 
-use crate::geometry::{Loop, Outline, Point};
+use crate::geometry::{Loop, Outline, Point, WallStretch};
 
 /// A velocity linear in the place: `V(p) = at_pivot + gradient (p - pivot)`.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -66,6 +66,8 @@ pub struct WallMotion {
     pub reference_length: Option<f64>,
     /// Speed of the edges that move along their normals, m per unit of change; out of the fluid is positive.
     pub(super) normal_speed: f64,
+    /// The stretch that moves alone, where it has a name of its own.
+    pub(super) stretch: Option<WallStretch>,
     pub(super) fields: Vec<LinearField>,
     /// One entry for each edge of each loop.
     pub(super) edges: Vec<Vec<EdgeMotion>>,

@@ -2,11 +2,13 @@
 //!
 //! The lid is the top of the section: its line is the horizontal through the highest vertex. Walls are told
 //! apart by the direction of their normal out of the fluid, within 45 degrees of up (lid), down (floor),
-//! left or right; walls of islands count by their own direction. All lumens move together.
+//! left or right; walls of islands count by their own direction. Walls with names of their own move in
+//! cases of their own as well. All lumens move together.
 
-use crate::geometry::{Loop, Outline, Point};
+use crate::geometry::{Loop, Outline, Point, WallStretch};
 
-use super::wall_motion::{EdgeMotion, LinearField, Measure, WallMotion, outward_normals};
+use super::facing::{Facing, facings, on_stretch, with_stretch_ends};
+use super::wall_motion::{EdgeMotion, LinearField, Measure, WallMotion};
 
 /// Interruptions of a side wall by edges of another direction, up to this share of the height of its loop,
 /// belong to the side wall: scallops, roughness.
@@ -23,40 +25,29 @@ pub struct NoMotion {
     pub reason: String,
 }
 
-/// Direction of a wall, from its normal out of the fluid.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-enum Facing {
-    Lid,
-    Floor,
-    Left,
-    Right,
+/// The cases of a section with the outline that they move.
+#[derive(Debug, Clone, PartialEq)]
+pub struct WallMotions {
+    /// The outline, with a vertex at every end of a named stretch.
+    pub outline: Outline,
+    /// The cases in the order of the output.
+    pub cases: Vec<Result<WallMotion, NoMotion>>,
 }
 
-impl Facing {
-    /// Walls at exactly 45 degrees count as sides.
-    fn of([x, y]: Point) -> Self {
-        // Rounding of the normal must not decide about walls drawn at 45 degrees.
-        let steep = y.abs() > x.abs() * (1.0 + 1e-9);
-        match (steep, y > 0.0, x > 0.0) {
-            (true, true, _) => Self::Lid,
-            (true, false, _) => Self::Floor,
-            (false, _, true) => Self::Right,
-            (false, _, false) => Self::Left,
-        }
-    }
-}
-
-/// Every case for a section, in the order of the output.
+/// Every case for a section.
 ///
 /// - `outline`: oriented, without duplicate vertices
-pub fn wall_motions(outline: &Outline) -> Vec<Result<WallMotion, NoMotion>> {
+/// - `walls`: stretches of it with names
+/// - `chord`: length over which the direction of edges shorter than it is taken, m; the node distance of the
+///   grid, or zero for that of every edge
+pub fn wall_motions(outline: &Outline, walls: &[WallStretch], chord: f64) -> WallMotions {
+    let outline = with_stretch_ends(outline, walls);
     let (low, high) = outline.bounds().unwrap_or_default();
     let middle = [0.5 * (low[0] + high[0]), high[1]];
-    let facings: Vec<Vec<Facing>> = outline
-        .loops()
-        .map(|wall| outward_normals(wall).into_iter().map(Facing::of).collect())
-        .collect();
-    let section = Section { outline, facings };
+    let section = Section {
+        outline: &outline,
+        facings: outline.loops().map(|wall| facings(wall, chord)).collect(),
+    };
     let [width, depth] = [high[0] - low[0], high[1] - low[1]];
     let mut all = section.stretches(middle, [width, depth]);
     all.extend(section.normal_motions());
@@ -68,7 +59,11 @@ pub fn wall_motions(outline: &Outline) -> Vec<Result<WallMotion, NoMotion>> {
         |facing| (facing == Facing::Lid).then_some(EdgeMotion::Follows(0)),
         vec![LinearField::uniform([0.0, 1.0])],
     ));
-    all.into_iter().map(checked).collect()
+    all.extend(walls.iter().map(|stretch| section.named(stretch)));
+    WallMotions {
+        cases: all.into_iter().map(checked).collect(),
+        outline,
+    }
 }
 
 /// A motion, or why there is none.
@@ -106,6 +101,7 @@ impl Section<'_> {
             measure,
             reference_length: None,
             normal_speed: 1.0,
+            stretch: None,
             fields,
             edges: self
                 .facings
@@ -206,6 +202,27 @@ impl Section<'_> {
                 Some(Facing::Right),
             ),
         ]
+    }
+
+    /// A stretch with a name of its own.
+    fn named(&self, stretch: &WallStretch) -> WallMotion {
+        let mut motion = self.case(
+            &format!("wall {}", stretch.name),
+            "the wall of that name recedes along its normals",
+            Measure::Length,
+            |_| None,
+            Vec::new(),
+        );
+        let wall = self.outline.loops().nth(stretch.loop_index);
+        if let (Some(edges), Some(wall)) = (motion.edges.get_mut(stretch.loop_index), wall) {
+            for (edge, inside) in edges.iter_mut().zip(on_stretch(wall, stretch)) {
+                if inside {
+                    *edge = EdgeMotion::AlongNormal;
+                }
+            }
+        }
+        motion.stretch = Some(stretch.clone());
+        motion
     }
 
     /// Side walls of outer loops turned about their upper ends, lower ends apart.

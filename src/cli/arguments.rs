@@ -158,6 +158,31 @@ fn solve() -> Command {
                 )
                 .help_heading(heading),
         )
+        .arg(
+            Arg::new("wall-csv")
+                .long("wall-csv")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the wall shear along the wall as a table")
+                .long_help(
+                    "Write the wall shear along the wall to FILE as CSV: loop, wall, arc length, place, \
+                     normal, shear. Example: --wall-csv wall.csv",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("wall-picture")
+                .long("wall-picture")
+                .value_name("FILE")
+                .action(ArgAction::Append)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write a picture of the wall shear, .png or .svg")
+                .long_help(
+                    "Write a picture of the wall shear along the developed wall; the ending says .png \
+                     or .svg. May be given more than once. Example: --wall-picture shear.png",
+                )
+                .help_heading(heading),
+        )
 }
 
 fn cells_across() -> Arg {

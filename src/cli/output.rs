@@ -54,10 +54,13 @@ impl Format {
     }
 }
 
-/// The pictures asked for, each with its kind.
-pub(super) fn pictures(matches: &ArgMatches) -> Result<Vec<(PathBuf, PictureFormat)>, Failure> {
+/// The pictures that an option asks for, each with its kind.
+pub(super) fn pictures(
+    matches: &ArgMatches,
+    name: &str,
+) -> Result<Vec<(PathBuf, PictureFormat)>, Failure> {
     matches
-        .get_many::<PathBuf>("picture")
+        .get_many::<PathBuf>(name)
         .into_iter()
         .flatten()
         .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))

@@ -4,7 +4,7 @@ use std::path::{Path, PathBuf};
 
 use clap::ArgMatches;
 
-use crate::flow::{SolveOptions, SolvedSection};
+use crate::flow::{SolveOptions, SolvedSection, WallReport};
 use crate::report::{
     self, PictureFormat, SensitivityDocument, SolveDocument, check_targets, vtk_paths,
 };
@@ -56,7 +56,7 @@ impl Request {
                 let [_, wall] = vtk_paths(&prefix);
                 wall
             }),
-            pictures: output::pictures(matches)?,
+            pictures: output::pictures(matches, "picture")?,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
@@ -91,7 +91,12 @@ impl Request {
         };
         let mut files = Vec::new();
         if let Some(path) = &self.wall {
-            let solve = SolveDocument::new(&name, &solved.flow);
+            let curve = &solved.flow.wall_shear.curve;
+            let walls = WallReport::new(solved.outline(), curve, &checked.section.walls);
+            let solve = SolveDocument {
+                walls: Some(&walls),
+                ..SolveDocument::new(&name, &solved.flow)
+            };
             files.push((path.clone(), report::wall_vtp(&solve)?.into_bytes()));
         }
         for (path, format) in &self.pictures {

@@ -5,8 +5,8 @@ use std::path::{Path, PathBuf};
 use clap::ArgMatches;
 
 use crate::flow::{
-    Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, outside_validity,
-    shortcuts, solve_outline, validity_warnings,
+    Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, WallReport,
+    outside_validity, shortcuts, solve_outline, validity_warnings,
 };
 use crate::intake::ReadOptions;
 use crate::report::{
@@ -38,6 +38,8 @@ struct Request {
     output: Option<PathBuf>,
     vtk: Option<VtkRequest>,
     pictures: Vec<(PathBuf, PictureFormat)>,
+    wall_csv: Option<PathBuf>,
+    wall_pictures: Vec<(PathBuf, PictureFormat)>,
     quiet: bool,
     deny_warnings: bool,
 }
@@ -118,7 +120,9 @@ impl Request {
             format: Format::of(matches),
             output: output::target(matches),
             vtk: vtk(matches)?,
-            pictures: output::pictures(matches)?,
+            pictures: output::pictures(matches, "picture")?,
+            wall_csv: matches.get_one::<PathBuf>("wall-csv").cloned(),
+            wall_pictures: output::pictures(matches, "wall-picture")?,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
@@ -127,7 +131,10 @@ impl Request {
     /// Outputs that cannot be written are found before the solve.
     fn check_targets(&self) -> Result<(), Failure> {
         let vtk = self.vtk.iter().flat_map(VtkRequest::paths);
-        let pictures = self.pictures.iter().map(|(path, _)| path.clone());
+        let pictures = self.pictures.iter().chain(&self.wall_pictures);
+        let pictures = pictures
+            .map(|(path, _)| path.clone())
+            .chain(self.wall_csv.clone());
         let targets: Vec<PathBuf> = self
             .output
             .clone()
@@ -155,6 +162,11 @@ impl Request {
         let rows: Option<Vec<ShortcutRow>> = self
             .shortcuts
             .then(|| shortcuts(&checked.outline, flow.conductance.value));
+        let walls = WallReport::new(
+            solved.outline(),
+            &flow.wall_shear.curve,
+            &checked.section.walls,
+        );
         let mut warnings = checked.warnings.clone();
         if let Some(fluid) = fluid {
             warnings.extend(validity_warnings(flow, fluid, point.as_ref()));
@@ -167,6 +179,7 @@ impl Request {
             fluid,
             length: self.length,
             operating_point: point.as_ref(),
+            walls: Some(&walls),
             shortcuts: rows.as_deref(),
             warnings: &warnings,
         };
@@ -216,12 +229,32 @@ impl Request {
                 files.push((path.clone(), bytes));
             }
         }
+        self.add_wall_files(document, &mut files)?;
         let text = self.main_output(document)?;
         let inputs = Inputs {
             file: &self.file,
             quiet: self.quiet,
         };
         output::deliver(files, text, self.output.as_deref(), &inputs)
+    }
+
+    /// The wall shear as a table and as pictures.
+    fn add_wall_files(
+        &self,
+        document: &SolveDocument,
+        files: &mut Vec<(PathBuf, Vec<u8>)>,
+    ) -> Result<(), Failure> {
+        if let Some(path) = &self.wall_csv {
+            let text = report::wall_csv(document).map_err(Failure::not_printed)?;
+            files.push((path.clone(), text.into_bytes()));
+        }
+        for (path, format) in &self.wall_pictures {
+            if let Some(walls) = document.walls {
+                let bytes = report::wall_picture_bytes(document, walls, *format)?;
+                files.push((path.clone(), bytes));
+            }
+        }
+        Ok(())
     }
 
     fn main_output(&self, document: &SolveDocument) -> Result<String, Failure> {

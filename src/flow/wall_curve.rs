@@ -8,6 +8,7 @@ use crate::geometry::{Corner, Outline, Point};
 
 use super::section_flow::WallSample;
 use super::wall_path::WallPath;
+use super::wall_statistics::WallReport;
 use super::wall_stretch::Stretch;
 
 /// Length beside a singular corner over which the mean stands for the shear, in hydraulic diameters.
@@ -194,6 +195,35 @@ impl LoopCurve {
             None => (self.stretches.last(), s + total),
         };
         stretch.map_or(0.0, |stretch| stretch.value(s - stretch.start))
+    }
+
+    /// Position at an arc length, m.
+    pub fn position(&self, arc_length: f64) -> Point {
+        self.path.position(arc_length)
+    }
+
+    /// Index into the walls of a report for every point. The first of the two entries of a corner belongs
+    /// to the wall before it.
+    ///
+    /// - `loop_index`: of this loop
+    pub fn walls_of_points(&self, report: &WallReport, loop_index: usize) -> Vec<usize> {
+        let points = &self.points;
+        points
+            .iter()
+            .enumerate()
+            .map(|(k, point)| {
+                let ends_stretch = point.kind != PointKind::Regular
+                    && points
+                        .get(k + 1)
+                        .is_none_or(|next| next.arc_length <= point.arc_length);
+                let place = if ends_stretch {
+                    point.arc_length - 1e-9 * self.length()
+                } else {
+                    point.arc_length
+                };
+                report.wall_at(loop_index, place).unwrap_or(0)
+            })
+            .collect()
     }
 
     /// Points without the regular ones nearer than a length to a singular corner.

@@ -3,7 +3,7 @@
 //! It borrows what the solve and the operating point say and adds only unit conversions, so that text,
 //! JSON, CSV, field files and pictures cannot disagree. SI throughout.
 
-use crate::flow::{Fluid, OperatingPoint, SectionFlow, ShortcutRow};
+use crate::flow::{Fluid, OperatingPoint, SectionFlow, ShortcutRow, WallReport};
 use crate::measured::Estimate;
 use crate::warning::{Code, Warning};
 
@@ -35,6 +35,8 @@ pub struct SolveDocument<'a> {
     pub length: Option<f64>,
     /// The operating point, when a pressure drop or a flow rate was given.
     pub operating_point: Option<&'a OperatingPoint>,
+    /// The wall shear wall by wall, where it was worked out.
+    pub walls: Option<&'a WallReport>,
     /// The shortcut formulas, when they were asked for.
     pub shortcuts: Option<&'a [ShortcutRow]>,
     /// Warnings that are not already in `flow.warnings`.
@@ -68,6 +70,7 @@ impl<'a> SolveDocument<'a> {
             fluid: None,
             length: None,
             operating_point: None,
+            walls: None,
             shortcuts: None,
             warnings: &[],
         }
@@ -124,6 +127,12 @@ impl<'a> SolveDocument<'a> {
                 unit: "Pa",
             },
         )
+    }
+
+    /// What the shear per gradient (m) is multiplied by to become shear per flow rate, `mu / K`,
+    /// Pa s/m^4; `None` without a fluid.
+    pub fn shear_per_flow_rate(&self) -> Option<f64> {
+        self.resistance_per_length().map(|r| r.value)
     }
 
     /// Mean of `phi` over the section, `K / A`, m^2.

@@ -10,6 +10,7 @@ use serde::Serialize;
 
 use super::document::{SolveDocument, SourceRecord};
 use super::json_values::{Bracketed, Number, Quantity, maybe, place};
+use super::json_wall::Shear;
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
 use crate::warning::Warning;
 
@@ -93,7 +94,7 @@ impl<'a> Root<'a> {
             },
             momentum_factor: Quantity::estimate(flow.momentum_factor, "1"),
             kinetic_energy_factor: Quantity::estimate(flow.kinetic_energy_factor, "1"),
-            wall_shear: Shear::new(flow),
+            wall_shear: Shear::new(document),
             grid: Grid::new(flow),
             solver: Solver::new(&flow.solver),
             bracket_relative_width: match &flow.bracket {
@@ -208,26 +209,6 @@ struct Poiseuille {
 struct Peak {
     phi: Quantity,
     at: [Number; 2],
-}
-
-#[derive(Serialize)]
-struct Shear {
-    mean_per_gradient: Quantity,
-    max_per_gradient: Quantity,
-    max_at: [Number; 2],
-    singular_corners: Vec<[Number; 2]>,
-}
-
-impl Shear {
-    fn new(flow: &SectionFlow) -> Self {
-        let s = &flow.wall_shear;
-        Self {
-            mean_per_gradient: Quantity::real(s.mean_per_gradient, "m"),
-            max_per_gradient: Quantity::real(s.max_per_gradient, "m"),
-            max_at: place(s.max_at),
-            singular_corners: s.singular_corners.iter().map(|&p| place(p)).collect(),
-        }
-    }
 }
 
 #[derive(Serialize)]

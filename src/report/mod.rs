@@ -9,6 +9,7 @@ mod document;
 mod drawing;
 mod json;
 mod json_values;
+mod json_wall;
 mod numbers;
 mod picture;
 mod picture_furniture;
@@ -24,8 +25,11 @@ mod svg;
 mod table;
 mod text;
 mod text_operation;
+mod text_wall;
 mod ticks;
 mod vtk;
+mod wall_csv;
+mod wall_picture;
 mod write;
 
 pub use csv::{CsvError, to_csv};
@@ -42,6 +46,8 @@ pub use sensitivity_text::sensitivity_text;
 pub use svg::to_svg;
 pub use text::{TextOptions, to_text};
 pub use vtk::{VtkError, field_legacy_vtk, field_vti, wall_vtp};
+pub use wall_csv::wall_csv;
+pub use wall_picture::{draw_wall, wall_picture_bytes};
 pub use write::{
     OutputFile, WriteError, check_target, check_targets, legacy_vtk_path, vtk_paths, write_file,
     write_files,

@@ -7,7 +7,7 @@
 use super::document::{SolveDocument, SourceRecord};
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
-use super::text_operation;
+use super::{text_operation, text_wall};
 use crate::flow::{SectionFlow, SectionGeometry};
 use crate::geometry::Point;
 use crate::warning::Warning;
@@ -38,6 +38,7 @@ pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
         parts.push(shear_per_gradient(flow));
     }
     parts.extend(text_operation::parts(document));
+    parts.extend(text_wall::walls(document));
     parts.push(identities(flow, options.verbose));
     parts.push(evidence(flow, options.verbose));
     parts.extend(warnings(&document.all_warnings()));
@@ -230,15 +231,16 @@ fn shear_per_gradient(flow: &SectionFlow) -> String {
     )
 }
 
-/// Where the largest shear is, and whether it depends on the grid.
+/// Where the largest shear is, and whether the shear has a bound.
 pub(super) fn shear_place(flow: &SectionFlow) -> [String; 3] {
     let corners = flow.wall_shear.singular_corners.len();
     let note = if corners == 0 {
         String::new()
     } else {
         format!(
-            "depends on the grid: unbounded at {}",
-            counted(corners, "re-entrant corner", "re-entrant corners")
+            "no bound at {}: mean over {} beside it",
+            counted(corners, "re-entrant corner", "re-entrant corners"),
+            with_unit(flow.wall_shear.curve.singular_length, numbers::LENGTHS, 3)
         )
     };
     [

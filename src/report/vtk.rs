@@ -15,7 +15,7 @@ use vtkio::model::{
 
 use super::document::SolveDocument;
 use super::numbers::one_line;
-use crate::flow::{DenseField, WallSample};
+use crate::flow::{CurvePoint, DenseField, LoopCurve, PointKind};
 
 /// Hidden cell in `vtkGhostType`.
 const HIDDEN_CELL: u8 = 32;
@@ -115,54 +115,65 @@ pub fn field_vti(document: &SolveDocument<'_>, field: &DenseField) -> Result<Str
     with_attribute(&text, "Spacing", &format!("{h:?} {h:?} {h:?}"))
 }
 
-/// The wall as `.vtp` text: one closed polyline through the samples of each loop.
+/// The wall as `.vtp` text: one closed polyline through the points of the curve of each loop.
 ///
 /// Point data: `wall_shear` (Pa with an operating point, else Pa per Pa/m), `sensitivity` (relative change
 /// of `K` per length of outward motion and length of wall that moves, 1/m^2), `normal` (unit vector out of
-/// the fluid), `arc_length` (m, along its loop), `loop` (index).
+/// the fluid), `arc_length` (m, along its loop), `loop` (index), `wall` (index into the walls in the order of
+/// the text and of JSON, where they were worked out), `corner` (0 none, 1 convex, 2 singular). A corner is
+/// there twice, once for either side; at a singular one the shear is the mean over a stated length.
 ///
 /// # Errors
-/// [`VtkError`] without wall samples or with one that is not finite.
+/// [`VtkError`] without points or with one that is not finite.
 pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
-    let samples = &document.flow.wall_shear.samples;
-    if samples.is_empty() {
+    let loops = &document.flow.wall_shear.curve.loops;
+    let points: Vec<&CurvePoint> = loops.iter().flat_map(|l| &l.points).collect();
+    if points.is_empty() {
         return Err(VtkError::NoWall);
     }
-    check_finite("wall_shear", samples.iter().map(|s| s.shear_per_gradient))?;
-    check_finite("wall position", samples.iter().map(|s| s.at[0] + s.at[1]))?;
-    check_finite("normal", samples.iter().map(|s| s.normal[0] + s.normal[1]))?;
-    check_finite("arc_length", samples.iter().map(|s| s.arc_length))?;
+    check_finite("wall_shear", points.iter().map(|p| p.shear_per_gradient))?;
+    check_finite("wall position", points.iter().map(|p| p.at[0] + p.at[1]))?;
+    check_finite("normal", points.iter().map(|p| p.normal[0] + p.normal[1]))?;
+    check_finite("arc_length", points.iter().map(|p| p.arc_length))?;
     let scale = document.shear_scale();
-    let real = |value: fn(&WallSample) -> f64| IOBuffer::F64(samples.iter().map(value).collect());
-    let plane = |value: fn(&WallSample) -> [f64; 2]| {
-        IOBuffer::F64(
-            samples
-                .iter()
-                .flat_map(|s| [value(s)[0], value(s)[1], 0.0])
-                .collect(),
-        )
+    let real = |value: &dyn Fn(&CurvePoint) -> f64| {
+        IOBuffer::F64(points.iter().map(|p| value(p)).collect())
     };
-    let shear = samples
-        .iter()
-        .map(|s| s.shear_per_gradient * scale.factor)
-        .collect();
+    let plane = |value: fn(&CurvePoint) -> [f64; 2]| {
+        let triple = |p: &&CurvePoint| [value(p)[0], value(p)[1], 0.0];
+        IOBuffer::F64(points.iter().flat_map(triple).collect())
+    };
     let k = document.flow.conductance.value;
-    let sensitivity = samples
-        .iter()
-        .map(|s| s.shear_per_gradient.powi(2) / k)
-        .collect();
-    let loops = samples.iter().map(|s| s.loop_index as u64).collect();
+    let mut data = vec![
+        scalars("wall_shear", real(&|p| p.shear_per_gradient * scale.factor)),
+        array(
+            "sensitivity",
+            1,
+            real(&|p| p.shear_per_gradient.powi(2) / k),
+        ),
+        Attribute::DataArray(DataArray::vectors("normal").with_data(plane(|p| p.normal))),
+        array("arc_length", 1, real(&|p| p.arc_length)),
+        array("loop", 1, IOBuffer::U64(loop_indices(loops).collect())),
+        array(
+            "corner",
+            1,
+            IOBuffer::U64(points.iter().map(|p| corner_number(p)).collect()),
+        ),
+    ];
+    if let Some(report) = document.walls {
+        let walls = loops.iter().enumerate().flat_map(|(index, along)| {
+            along
+                .walls_of_points(report, index)
+                .into_iter()
+                .map(|w| w as u64)
+        });
+        data.push(array("wall", 1, IOBuffer::U64(walls.collect())));
+    }
     let piece = PolyDataPiece {
-        points: plane(|s| s.at),
-        lines: Some(closed_lines(samples)),
+        points: plane(|p| p.at),
+        lines: Some(closed_lines(loops)),
         data: Attributes {
-            point: vec![
-                scalars("wall_shear", IOBuffer::F64(shear)),
-                array("sensitivity", 1, IOBuffer::F64(sensitivity)),
-                Attribute::DataArray(DataArray::vectors("normal").with_data(plane(|s| s.normal))),
-                array("arc_length", 1, real(|s| s.arc_length)),
-                array("loop", 1, IOBuffer::U64(loops)),
-            ],
+            point: data,
             cell: Vec::new(),
         },
         ..PolyDataPiece::default()
@@ -173,8 +184,24 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
         ("normal", "1"),
         ("arc_length", "m"),
         ("loop", "1"),
+        ("corner", "1"),
+        ("wall", "1"),
     ];
     Ok(with_units(&xml(DataSet::inline(piece))?, &units))
+}
+
+/// The index of its loop for every point.
+fn loop_indices(loops: &[LoopCurve]) -> impl Iterator<Item = u64> + '_ {
+    let numbered = loops.iter().enumerate();
+    numbered.flat_map(|(index, l)| std::iter::repeat_n(index as u64, l.points.len()))
+}
+
+fn corner_number(point: &CurvePoint) -> u64 {
+    match point.kind {
+        PointKind::Regular => 0,
+        PointKind::ConvexCorner => 1,
+        PointKind::SingularCorner => 2,
+    }
 }
 
 /// The velocity field as legacy `.vtk` text, for readers without `.vti`.
@@ -273,12 +300,12 @@ fn array(name: &str, components: u32, data: IOBuffer) -> Attribute {
     Attribute::DataArray(DataArray::new(name, components).with_data(data))
 }
 
-/// One closed polyline for each run of samples with the same loop index.
-fn closed_lines(samples: &[WallSample]) -> VertexNumbers {
+/// One closed polyline for each loop with points.
+fn closed_lines(loops: &[LoopCurve]) -> VertexNumbers {
     let (mut connectivity, mut offsets) = (Vec::new(), Vec::new());
     let mut start = 0_u64;
-    for run in samples.chunk_by(|a, b| a.loop_index == b.loop_index) {
-        let end = start + run.len() as u64;
+    for along in loops.iter().filter(|l| !l.points.is_empty()) {
+        let end = start + along.points.len() as u64;
         connectivity.extend(start..end);
         connectivity.push(start);
         offsets.push(connectivity.len() as u64);

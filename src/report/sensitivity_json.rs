@@ -71,13 +71,13 @@ impl<'a> Root<'a> {
                 })
                 .collect(),
             identities: Identities {
-                depth_and_width: Exact {
+                depth_and_width: Identity {
                     formula: "dlnK/dln(depth) + dlnK/dln(width) = 4",
                     computed: Quantity::real(study.stretch_sum, "1"),
                     exact: 4.0,
                 },
-                shift_x: Exact::shift(study.shift[0]),
-                shift_y: Exact::shift(study.shift[1]),
+                shift_x: Identity::shift(study.shift[0]),
+                shift_y: Identity::shift(study.shift[1]),
             },
             singular_corners: corners.iter().map(|&p| place(p)).collect(),
             grid: Grid::new(flow),
@@ -104,19 +104,19 @@ struct Absent<'a> {
 
 #[derive(Serialize)]
 struct Identities {
-    depth_and_width: Exact,
-    shift_x: Exact,
-    shift_y: Exact,
+    depth_and_width: Identity,
+    shift_x: Identity,
+    shift_y: Identity,
 }
 
 #[derive(Serialize)]
-struct Exact {
+struct Identity {
     formula: &'static str,
     computed: Quantity,
     exact: f64,
 }
 
-impl Exact {
+impl Identity {
     fn shift(computed: f64) -> Self {
         Self {
             formula: "dK of moving the whole section over dK of an over-etch as large = 0",

@@ -4,6 +4,8 @@
 //! and length of wall that moves. Colour never stands alone: numbers are put to a few places of the wall, the
 //! colour bar is marked, and the largest value is named below.
 
+use std::fmt::Write as _;
+
 use super::colour_map::viridis;
 use super::document::SolveDocument;
 use super::drawing::{Anchor, INK, Item, SOLID, TextSize};
@@ -162,9 +164,9 @@ fn wall(page: &mut Page<'_>, outline: &Outline, local: &Local, document: &Sensit
                 0.5 * (local.value(a.shear_per_gradient) + local.value(b.shear_per_gradient));
             let share = (mean / local.top).clamp(0.0, 1.0);
             let index = (share * (COLOURS - 1) as f64).round() as usize;
-            let piece = vec![layout.page(a.at), layout.page(b.at)];
-            if let Some(lines) = runs.get_mut(index).filter(|_| a.at != b.at) {
-                lines.push(piece);
+            // Both sides of a corner stand in one place; a piece without length is but a dot.
+            if let Some(lines) = runs.get_mut(index) {
+                lines.push(vec![layout.page(a.at), layout.page(b.at)]);
             }
         }
     }
@@ -221,7 +223,5 @@ fn legend(page: &mut Page<'_>, local: &Local, document: &SensitivityDocument<'_>
         .collect();
     let totals = format!("change of K for 1 \u{b5}m: {}", totals.join(", "));
     page.paragraph(&totals, TextSize::Medium, MARGIN);
-    page.drawing
-        .description
-        .push_str(&format!(" {largest}; {totals}."));
+    let _ = write!(page.drawing.description, " {largest}; {totals}.");
 }

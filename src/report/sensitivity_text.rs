@@ -1,5 +1,7 @@
 //! The text view of the sensitivity study: one table of changes, what each moves, and the evidence.
 
+use std::fmt::Write as _;
+
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::sensitivity_document::{SensitivityDocument, Step};
 use super::table::{Align, Table, paragraph};
@@ -75,13 +77,14 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
     }
     let mut explained = "Both change in proportion to a small change, and dlnR = -dlnK.".to_owned();
     if is_checked {
-        explained.push_str(&format!(
+        let _ = write!(
+            explained,
             " K, new solves: half the difference of two solves with the walls moved either way, and by how much \
              the prediction is off, with the estimated numerical error of the new solves (+/-). First order is \
              enough up to the change at which the second-order term is {} of the first-order one; `>`: at \
              least up to there, more cannot be said.",
             per_cent(SECOND_ORDER_SHARE)
-        ));
+        );
     } else {
         explained.push_str(
             " Nothing was solved again (--no-check), so where the second order matters is not known.",

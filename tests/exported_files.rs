@@ -15,6 +15,8 @@ mod json_and_csv;
 mod pictures;
 #[path = "exported/text.rs"]
 mod text;
+#[path = "exported/wall.rs"]
+mod wall;
 #[path = "exported/writing.rs"]
 mod writing;
 

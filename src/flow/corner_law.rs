@@ -91,6 +91,29 @@ impl CornerLaw {
         law
     }
 
+    /// The law with known powers.
+    ///
+    /// - `powers`: exponents and coefficients of the powers of `r / unit`, m; those that are as smooth as
+    ///   the wall elsewhere are left out
+    /// - `of_grid`: coefficient of the grid's own error, m
+    pub(crate) fn of_terms(angle: f64, unit: f64, powers: &[(f64, f64)], of_grid: f64) -> Self {
+        let law = Self::fit(angle, unit, &[]);
+        Self {
+            terms: powers
+                .iter()
+                .copied()
+                .filter(|(exponent, _)| *exponent <= LARGEST_SINGULAR)
+                .collect(),
+            of_grid,
+            ..law
+        }
+    }
+
+    /// The law with the distance over which the grid's own error fades, m.
+    pub(crate) fn with_reach(self, reach: f64) -> Self {
+        Self { reach, ..self }
+    }
+
     /// Exponent of the error that the grid makes around the corner: that of the whole solution at a
     /// re-entrant corner, that of the five-point scheme at a convex one that is not acute.
     fn grid_exponent(&self) -> Option<f64> {

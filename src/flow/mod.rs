@@ -4,6 +4,7 @@ mod assemble;
 mod chords;
 pub mod closed_form;
 mod corner_alignment;
+mod corner_field;
 mod corner_law;
 mod entrance;
 mod extrapolation;

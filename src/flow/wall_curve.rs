@@ -6,6 +6,7 @@
 
 use crate::geometry::{Corner, Outline, Point};
 
+use super::corner_law::CornerLaw;
 use super::section_flow::WallSample;
 use super::wall_path::WallPath;
 use super::wall_statistics::WallReport;
@@ -85,6 +86,19 @@ impl WallCurve {
         samples: &[WallSample],
         spacing: f64,
     ) -> Self {
+        Self::with_laws(outline, corners, samples, spacing, |_, _| None)
+    }
+
+    /// The curve with the laws of some corners known.
+    ///
+    /// - `laws`: of the sides after and before a corner, from the indices of loop and corner
+    pub(crate) fn with_laws(
+        outline: &Outline,
+        corners: &[Vec<Corner>],
+        samples: &[WallSample],
+        spacing: f64,
+        laws: impl Fn(usize, usize) -> Option<[CornerLaw; 2]>,
+    ) -> Self {
         let singular_length = SINGULAR_LENGTH * 4.0 * outline.area() / outline.wetted_perimeter();
         let mut loops: Vec<LoopCurve> = outline
             .loops()
@@ -98,7 +112,8 @@ impl WallCurve {
                     .collect();
                 let path = WallPath::new(wall);
                 let corners = corners.get(index).map_or(&[][..], Vec::as_slice);
-                let stretches = stretches(&path, corners, &own, spacing);
+                let own_laws: Vec<_> = (0..corners.len()).map(|k| laws(index, k)).collect();
+                let stretches = stretches(&path, corners, &own_laws, &own, spacing);
                 LoopCurve {
                     points: Vec::new(),
                     path,
@@ -136,6 +151,7 @@ impl WallCurve {
 fn stretches(
     path: &WallPath,
     corners: &[Corner],
+    laws: &[Option<[CornerLaw; 2]>],
     samples: &[(f64, f64)],
     spacing: f64,
 ) -> Vec<Stretch> {
@@ -173,7 +189,12 @@ fn stretches(
                 0.0
             };
             let angles = [from.fluid_angle(), to.fluid_angle()];
-            Stretch::between(start, length, angles, &own, spacing, fallback)
+            let side = |corner: usize, side: usize| {
+                let both = laws.get(corner % corners.len()).and_then(Option::as_ref);
+                both.and_then(|pair| pair.get(side)).cloned()
+            };
+            let given = [side(k, 0), side(k + 1, 1)];
+            Stretch::between(start, length, angles, &own, given, (spacing, fallback))
         })
         .collect()
 }
@@ -332,6 +353,18 @@ impl LoopCurve {
                 PointKind::ConvexCorner
             },
         }
+    }
+
+    /// Whether there is a convex corner at an arc length.
+    pub(crate) fn is_convex_corner(&self, arc_length: f64) -> bool {
+        let near = 1e-9 * self.length();
+        let first = self
+            .points
+            .partition_point(|p| p.arc_length < arc_length - near);
+        self.points[first..]
+            .iter()
+            .take_while(|p| p.arc_length <= arc_length + near)
+            .any(|p| p.kind == PointKind::ConvexCorner)
     }
 
     /// Arc lengths of the singular corners, sorted; each is there once for either side.

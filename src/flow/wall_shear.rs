@@ -10,6 +10,8 @@ use crate::geometry::{Corner, Outline, Point, corners};
 use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_UP, Colour, Lattice, Mask, NO_EDGE, NO_NODE, WallNode};
 use crate::solve::Field;
 
+use super::corner_field::corner_laws;
+use super::corner_law::CornerLaw;
 use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::WallCurve;
 use super::wall_path::WallPath;
@@ -68,7 +70,9 @@ pub(crate) fn wall_shear(
             .cmp(&b.loop_index)
             .then(a.arc_length.total_cmp(&b.arc_length))
     });
-    let curve = WallCurve::new(outline, corners, &samples, lattice.spacing);
+    let curve = WallCurve::with_laws(outline, corners, &samples, lattice.spacing, |l, c| {
+        walls.get(l)?.singular_laws((lattice, mask, phi), c)
+    });
     let largest = curve.largest();
     WallShear {
         mean_per_gradient: outline.area() / outline.wetted_perimeter(),
@@ -190,6 +194,23 @@ fn sample(
 }
 
 impl Wall {
+    /// Laws of a re-entrant corner from the nodes around it.
+    fn singular_laws(
+        &self,
+        solution: (&Lattice, &Mask, &Field),
+        index: usize,
+    ) -> Option<[CornerLaw; 2]> {
+        let corner = self.corners.get(index).filter(|c| c.turning < 0.0)?;
+        let (total, count) = (self.path.length(), self.corners.len());
+        let gap = |from: usize, to: usize| {
+            let gap = self.corners[to].arc_length - self.corners[from].arc_length;
+            if gap > 0.0 { gap } else { gap + total }
+        };
+        let (before, after) = ((index + count - 1) % count, (index + 1) % count);
+        let room = gap(before, index).min(gap(index, after));
+        corner_laws(solution, &self.path, corner, room)
+    }
+
     /// Unit normal out of the fluid, from the chord over one spacing that stays between corners; `None` so
     /// close to a re-entrant corner that the grid does not see the wall's direction.
     fn normal(&self, arc_length: f64, spacing: f64) -> Option<Point> {

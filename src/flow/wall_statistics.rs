@@ -302,7 +302,11 @@ fn collect(
     let nudge = 1e-9 * (part.to - part.from);
     for &place in &places {
         let inside = place.clamp(part.from + nudge, part.to - nudge);
-        let value = along.shear_at(inside);
+        let value = if along.is_convex_corner(place) {
+            0.0
+        } else {
+            along.shear_at(inside)
+        };
         if value < found.min {
             found.min = value;
         }

@@ -89,14 +89,16 @@ impl Stretch {
 
     /// A stretch between two corners with the given fluid angles.
     ///
-    /// - `samples`: distance from the start and shear, sorted, m; `fallback`: shear where there is none, m
+    /// - `samples`: distance from the start and shear, sorted, m
+    /// - `given`: laws of the corners that are known already
+    /// - `spacing`: of the lattice, m; `fallback`: shear where there is no sample, m
     pub(crate) fn between(
         start: f64,
         length: f64,
         angles: [f64; 2],
         samples: &[(f64, f64)],
-        spacing: f64,
-        fallback: f64,
+        given: [Option<CornerLaw>; 2],
+        (spacing, fallback): (f64, f64),
     ) -> Self {
         let leading = angles.map(|angle| CornerLaw::fit(angle, spacing, &[]).leading);
         let unresolved = leading.map(|e| {
@@ -135,7 +137,12 @@ impl Stretch {
                 .collect();
             CornerLaw::fit(angles[end], spacing, &from_end)
         };
-        let laws = Box::new([law(0), law(1)]);
+        let [first, second] = given;
+        let faded = |law: CornerLaw| law.with_reach(LAW_SHARE * length);
+        let laws = Box::new([
+            first.map_or_else(|| law(0), faded),
+            second.map_or_else(|| law(1), faded),
+        ]);
         let left_over: Vec<(f64, f64)> = inner
             .iter()
             .map(|&(s, v)| {

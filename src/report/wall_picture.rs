@@ -37,8 +37,13 @@ const HEADROOM: f64 = 0.12;
 const CURVE: Colour = [0, 90, 156];
 /// Lines of ticks.
 const GRID: Colour = [214, 214, 214];
-/// Two tones of the band of walls.
-const BANDS: [Colour; 2] = [[232, 238, 244], [206, 218, 230]];
+/// Tones of the band of walls; names and lines say the same.
+const BANDS: [Colour; 4] = [
+    [236, 241, 246],
+    [206, 218, 230],
+    [221, 229, 237],
+    [191, 206, 221],
+];
 /// Marks of singular corners.
 const SINGULAR: Colour = [176, 48, 0];
 
@@ -229,9 +234,9 @@ impl<'a> Plot<'a> {
         self.drawing
             .text([MARGIN, head], Anchor::Start, TextSize::Small, label);
         if is_pressure {
-            let at = [right + AXIS_ROOM, head];
+            let at = [right + 10.0, head];
             self.drawing
-                .text(at, Anchor::End, TextSize::Small, "dyn/cm\u{b2}");
+                .text(at, Anchor::Start, TextSize::Small, "dyn/cm\u{b2}");
         }
         self.length_ticks();
     }
@@ -290,7 +295,7 @@ impl<'a> Plot<'a> {
         for part in &self.report.parts {
             let from = self.page(part.loop_index, part.from, 0.0)[0];
             let to = self.page(part.loop_index, part.to, 0.0)[0];
-            let fill = BANDS[part.wall % 2];
+            let fill = BANDS[part.wall % BANDS.len()];
             let area = vec![[from, top], [to, top], [to, bottom], [from, bottom]];
             self.drawing.items.push(Item::Area {
                 loops: vec![area],

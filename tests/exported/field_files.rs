@@ -1,12 +1,13 @@
 //! Field and wall files, read back by the library that wrote them and as raw text.
 
+use etchwise::flow::CurvePoint;
 use etchwise::report::{
     PictureError, PictureFormat, SolveDocument, VtkError, field_legacy_vtk, field_vti,
     picture_bytes, wall_vtp,
 };
 use vtkio::model::{Attribute, DataSet, ImageDataPiece, Piece, PolyDataPiece, VertexNumbers, Vtk};
 
-use crate::report_samples::annulus;
+use crate::report_samples::{Sample, annulus};
 use crate::{close, sample};
 
 fn image(text: &str) -> ImageDataPiece {
@@ -157,15 +158,21 @@ fn the_unit_of_velocity_and_shear_follows_what_is_known() {
     );
 }
 
+/// All points of the curve.
+fn points(sample: &Sample) -> Vec<&CurvePoint> {
+    let loops = &sample.flow.wall_shear.curve.loops;
+    loops.iter().flat_map(|l| &l.points).collect()
+}
+
 #[test]
 fn the_wall_file_holds_one_closed_line_a_loop_with_shear_and_normals() {
     let sample = annulus([1e-3, 0.0], 80e-6, 30e-6, 20);
     let text = wall_vtp(&sample.full()).unwrap();
     let piece = poly(&text);
-    let samples = &sample.flow.wall_shear.samples;
+    let samples: Vec<&CurvePoint> = points(&sample);
     let shear = values(&piece.data.point, "wall_shear");
     assert_eq!(shear.len(), samples.len());
-    for (value, sample_at) in shear.iter().zip(samples) {
+    for (value, sample_at) in shear.iter().zip(&samples) {
         close(
             *value,
             sample_at.shear_per_gradient * sample.point.pressure_gradient,
@@ -195,6 +202,14 @@ fn the_wall_file_holds_one_closed_line_a_loop_with_shear_and_normals() {
     assert_eq!(unit(&text, "wall_shear"), "Pa");
     assert_eq!(unit(&text, "arc_length"), "m");
     assert_eq!(values(&piece.data.point, "loop").last(), Some(&1.0));
+    assert_eq!(unit(&text, "wall"), "1");
+    let walls = values(&piece.data.point, "wall");
+    assert!((0..4).all(|wall| walls.contains(&f64::from(wall))));
+    assert!(
+        values(&piece.data.point, "corner")
+            .iter()
+            .all(|&c| c == 0.0)
+    );
 }
 
 #[test]
@@ -231,7 +246,7 @@ fn a_field_that_does_not_fit_its_lattice_or_is_not_finite_is_refused_by_name_and
             .contains("2344 values where 2345 are needed"),
         "{error}"
     );
-    sample.flow.wall_shear.samples.clear();
+    sample.flow.wall_shear.curve.loops.clear();
     assert!(matches!(wall_vtp(&sample.bare()), Err(VtkError::NoWall)));
 }
 

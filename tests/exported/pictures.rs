@@ -78,7 +78,7 @@ fn the_svg_is_well_formed_accessible_and_holds_text_as_text() {
 }
 
 /// Left, top, right and bottom of each text.
-fn boxes(drawing: &Drawing) -> Vec<([f64; 4], &str)> {
+pub(crate) fn boxes(drawing: &Drawing) -> Vec<([f64; 4], &str)> {
     let place = |item| match item {
         &Item::Text {
             at,

@@ -67,6 +67,6 @@ fn text_without_a_fluid_has_shear_per_gradient_and_no_caution() {
     assert!(
         text.contains("FAILS")
             && text.contains("! shear_singular")
-            && text.contains("unbounded at 1 re-entrant")
+            && text.contains("no bound at 1 re-entrant")
     );
 }

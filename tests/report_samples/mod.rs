@@ -10,7 +10,7 @@ use std::f64::consts::PI;
 
 use etchwise::flow::{
     DenseField, Fluid, GridReport, Identity, LevelReport, OperatingPoint, Peak, SectionFlow,
-    SectionGeometry, ShortcutRow, SolverReport, WallCurve, WallSample, WallShear,
+    SectionGeometry, ShortcutRow, SolverReport, WallCurve, WallReport, WallSample, WallShear,
 };
 use etchwise::geometry::{Corner, Loop, Lumen, Outline, Point, corners};
 use etchwise::measured::Estimate;
@@ -27,6 +27,7 @@ pub(crate) struct Sample {
     pub(crate) fluid: Fluid,
     pub(crate) point: OperatingPoint,
     pub(crate) shortcuts: Vec<ShortcutRow>,
+    pub(crate) walls: WallReport,
 }
 
 impl Sample {
@@ -48,6 +49,7 @@ impl Sample {
             length: Some(self.point.length),
             operating_point: Some(&self.point),
             shortcuts: Some(&self.shortcuts),
+            walls: Some(&self.walls),
             ..self.bare()
         }
     }
@@ -236,7 +238,9 @@ pub(crate) fn sample(
     shear: &dyn Fn(Point) -> f64,
 ) -> Sample {
     let flow = section_flow(&outline, &field, exact, shear);
+    let walls = WallReport::new(&outline, &flow.wall_shear.curve, &[]);
     Sample {
+        walls,
         name: name.to_owned(),
         outline,
         field,

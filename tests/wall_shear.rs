@@ -1,0 +1,262 @@
+//! The wall shear as a curve: exact values, identities of the exact solution, corners, named walls.
+
+#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
+
+use etchwise::flow::closed_form::rectangle_mid_wall_shear;
+use etchwise::flow::{CurvePoint, PointKind, SectionFlow, SolveOptions, WallReport, solve_outline};
+use etchwise::geometry::{Loop, Lumen, NamedWall, NominalSpec, Outline, wall_stretches};
+
+fn drawn(spec: &str) -> Outline {
+    spec.parse::<NominalSpec>().unwrap().outline().unwrap()
+}
+
+fn solve(outline: &Outline, cells: f64) -> SectionFlow {
+    let options = SolveOptions {
+        cells_across: Some(cells),
+        ..SolveOptions::default()
+    };
+    solve_outline(outline, &options).unwrap().flow
+}
+
+/// An L of three squares; its re-entrant corner lies at (1, 1) sides.
+fn l_shape(side: f64) -> Outline {
+    Outline::single(
+        [
+            [0.0, 0.0],
+            [2.0, 0.0],
+            [2.0, 1.0],
+            [1.0, 1.0],
+            [1.0, 2.0],
+            [0.0, 2.0],
+        ]
+        .map(|p| p.map(|c| c * side))
+        .to_vec(),
+    )
+}
+
+fn turned(outline: &Outline, degrees: f64) -> Outline {
+    let (s, c) = degrees.to_radians().sin_cos();
+    let turn = |l: &Loop| {
+        let point = |p: &[f64; 2]| [c * p[0] - s * p[1] + 1.7e-5, s * p[0] + c * p[1] - 3.1e-5];
+        Loop::new(l.points.iter().map(point).collect())
+    };
+    let lumens = outline.lumens.iter().map(|lumen| Lumen {
+        outer: turn(&lumen.outer),
+        islands: lumen.islands.iter().map(turn).collect(),
+    });
+    Outline {
+        lumens: lumens.collect(),
+    }
+}
+
+fn points(flow: &SectionFlow) -> impl Iterator<Item = &CurvePoint> {
+    flow.wall_shear.curve.loops.iter().flat_map(|l| &l.points)
+}
+
+fn off(flow: &SectionFlow, name: &str) -> f64 {
+    let identity = flow.identities.iter().find(|i| i.name == name).unwrap();
+    identity.relative_difference.abs()
+}
+
+#[test]
+fn shear_at_the_mid_sides_of_rectangles_is_within_2e_4_of_the_series() {
+    for aspect in [1.0, 1.5, 2.5, 5.0, 10.0] {
+        let (width, height) = (aspect * 1e-4, 1e-4);
+        let outline = Outline::single(vec![
+            [0.0, 0.0],
+            [width, 0.0],
+            [width, height],
+            [0.0, height],
+        ]);
+        let exact = rectangle_mid_wall_shear(width, height).unwrap();
+        for (name, outline) in [
+            ("flat", outline.clone()),
+            ("turned", turned(&outline, 17.0)),
+        ] {
+            let curve = &solve(&outline, 128.0).wall_shear.curve.loops[0];
+            for (arc, expected) in [
+                (0.5 * width, exact.long_side),
+                (width + 0.5 * height, exact.short_side),
+                (1.5 * width + height, exact.long_side),
+                (2.0 * width + 1.5 * height, exact.short_side),
+            ] {
+                let difference = curve.shear_at(arc) / expected - 1.0;
+                assert!(
+                    difference.abs() < 2e-4,
+                    "{aspect} {name} at {arc}: {difference:e}"
+                );
+            }
+        }
+    }
+}
+
+#[test]
+fn mean_and_rellich_hold_on_many_sections() {
+    let mut sections: Vec<(String, Outline)> = [
+        "rectangle width=100um height=100um",
+        "rectangle width=400um height=100um",
+        "circle diameter=100um",
+        "ellipse width=100um height=50um",
+        "triangle base=100um left_angle=60deg right_angle=60deg",
+        "triangle base=100um left_angle=20deg right_angle=40deg",
+        "koh_groove opening=100um depth=40um",
+        "isotropic_etch mask_opening=100um depth=50um",
+        "annulus outer_diameter=100um inner_diameter=50um",
+        "circular_sector radius=100um angle=60deg",
+        "rounded_rectangle width=200um height=100um radius=20um",
+        "regular_polygon sides=6 side=100um",
+        "rhombus side=100um acute_angle=40deg",
+        "half_ellipse width=100um depth=40um",
+    ]
+    .map(|spec| (spec.to_owned(), drawn(spec)))
+    .into();
+    let again: Vec<_> = sections
+        .iter()
+        .map(|(name, outline)| (format!("{name}, turned"), turned(outline, 17.0)))
+        .collect();
+    sections.extend(again);
+    for (name, outline) in &sections {
+        let flow = solve(outline, 128.0);
+        let (mean, rellich) = (off(&flow, "mean_wall_shear"), off(&flow, "rellich"));
+        assert!(mean < 1e-4, "{name}: mean off by {mean:e}");
+        assert!(rellich < 1e-3, "{name}: Rellich off by {rellich:e}");
+    }
+}
+
+#[test]
+fn the_shear_of_a_circle_is_half_its_radius_everywhere() {
+    let flow = solve(&turned(&drawn("circle diameter=100um"), 5.0), 128.0);
+    for point in points(&flow) {
+        let difference = point.shear_per_gradient / 25e-6 - 1.0;
+        assert!(difference.abs() < 2e-4, "{point:?}: {difference:e}");
+    }
+}
+
+#[test]
+fn the_curve_is_smooth_along_straight_walls_and_zero_at_convex_corners() {
+    for degrees in [0.0, 17.0, 45.0] {
+        let flow = solve(
+            &turned(&drawn("rectangle width=200um height=100um"), degrees),
+            64.0,
+        );
+        let h = flow.grid.spacing;
+        let curve = &flow.wall_shear.curve.loops[0];
+        let corners: Vec<_> = points(&flow)
+            .filter(|p| p.kind != PointKind::Regular)
+            .collect();
+        assert_eq!(corners.len(), 8);
+        assert!(corners.iter().all(|p| p.kind == PointKind::ConvexCorner));
+        assert!(corners.iter().all(|p| p.shear_per_gradient == 0.0));
+        // The second derivative along the middle of a long side is about -1.2 of mean over height squared.
+        let mean = flow.wall_shear.mean_per_gradient;
+        let start = corners
+            .iter()
+            .map(|p| p.arc_length)
+            .find(|s| *s > 0.0)
+            .unwrap();
+        let first_is_long = (start - 200e-6).abs() < 1e-9;
+        let middle = if first_is_long { 100e-6 } else { 200e-6 };
+        for k in -20..=20 {
+            let s = middle + 0.5 * h * f64::from(k);
+            let second = curve.shear_at(s + h) - 2.0 * curve.shear_at(s) + curve.shear_at(s - h);
+            let scaled = second / mean * (100e-6 / h).powi(2);
+            assert!(
+                (-3.0..0.5).contains(&scaled),
+                "{degrees} deg at {k}: {scaled}"
+            );
+        }
+    }
+}
+
+#[test]
+fn beside_a_re_entrant_corner_the_shear_follows_its_power() {
+    for outline in [l_shape(1e-4), turned(&l_shape(1e-4), 17.0)] {
+        let flow = solve(&outline, 128.0);
+        let curve = &flow.wall_shear.curve.loops[0];
+        let singular: Vec<_> = points(&flow)
+            .filter(|p| p.kind == PointKind::SingularCorner)
+            .collect();
+        assert_eq!(singular.len(), 2);
+        let [before, after] = [singular[0], singular[1]];
+        assert!((before.shear_per_gradient / after.shear_per_gradient - 1.0).abs() < 2e-3);
+        assert!(
+            (before.normal[0] * after.normal[0] + before.normal[1] * after.normal[1]).abs() < 1e-9
+        );
+        for r in [1e-7, 1e-8] {
+            for side in [-1.0, 1.0] {
+                let at = |r: f64| curve.shear_at(before.arc_length + side * r);
+                let exponent = (at(r) / at(2.0 * r)).log2();
+                assert!(
+                    (exponent - 1.0 / 3.0).abs() < 0.02,
+                    "{r} {side}: {exponent}"
+                );
+            }
+        }
+    }
+}
+
+#[test]
+fn named_walls_and_directions_make_up_the_whole_wall() {
+    let outline = drawn("rectangle width=200um height=100um");
+    let (low, high) = outline.bounds().unwrap();
+    let solved = solve_outline(&outline, &SolveOptions::default()).unwrap();
+    let curve = &solved.flow.wall_shear.curve;
+    let named = NamedWall {
+        name: "heated".to_owned(),
+        loop_number: 1,
+        ends: Some([[low[0] + 50e-6, low[1]], [high[0], low[1] + 30e-6]]),
+    };
+    let stretches = wall_stretches(solved.outline(), &[named]).unwrap();
+    let report = WallReport::new(solved.outline(), curve, &stretches);
+    let names: Vec<&str> = report.walls.iter().map(|w| w.name.as_str()).collect();
+    assert_eq!(names, ["heated", "lid", "floor", "left", "right"]);
+    let lengths = [180e-6, 200e-6, 50e-6, 100e-6, 70e-6];
+    for (wall, length) in report.walls.iter().zip(lengths) {
+        assert!((wall.length / length - 1.0).abs() < 1e-9, "{}", wall.name);
+        let [p5, p25, p50, p75, p95] = wall.percentiles;
+        let order = [wall.min, p5, p25, p50, p75, p95, wall.max];
+        assert!(order.windows(2).all(|pair| pair[0] <= pair[1]), "{wall:?}");
+        // Every one of these walls but none of its inner places touches a convex corner.
+        assert!(wall.min.abs() < 1e-18, "{wall:?}");
+    }
+    let sum: f64 = report.walls.iter().map(|w| w.mean * w.length).sum();
+    assert!((sum / (report.whole.mean * report.whole.length) - 1.0).abs() < 1e-9);
+    let exact = rectangle_mid_wall_shear(200e-6, 100e-6).unwrap();
+    let lid = &report.walls[1];
+    assert!((lid.max / exact.long_side - 1.0).abs() < 5e-4);
+    assert!((lid.max_at[0] - 0.5 * (low[0] + high[0])).abs() < 1e-6);
+    // Half of a wall of this kind has no more shear than the median.
+    let below: f64 = (0..10_000)
+        .map(|k| {
+            report.parts.iter().find(|p| p.wall == 1).unwrap().from + (f64::from(k) + 0.5) * 2e-8
+        })
+        .filter(|&s| curve.loops[0].shear_at(s) <= lid.percentiles[2])
+        .count() as f64;
+    assert!((below / 1e4 - 0.5).abs() < 2e-3, "{below}");
+}
+
+#[test]
+fn singular_corners_are_reported_with_their_means_on_both_walls() {
+    let solved = solve_outline(&l_shape(1e-4), &SolveOptions::default()).unwrap();
+    let curve = &solved.flow.wall_shear.curve;
+    let report = WallReport::new(solved.outline(), curve, &[]);
+    let [corner] = report.singular_corners.as_slice() else {
+        panic!("{:?}", report.singular_corners);
+    };
+    let names = corner.walls.map(|w| report.walls[w].name.as_str());
+    assert_eq!(names, ["lid", "right"]);
+    let length = 0.05 * solved.flow.geometry.hydraulic_diameter;
+    assert!((curve.singular_length / length - 1.0).abs() < 1e-12);
+    let mean = curve
+        .integrate_stretch(0, corner.arc_length, corner.arc_length + length, 1, |_| 1.0)
+        / length;
+    assert!((mean / corner.means[1] - 1.0).abs() < 1e-9);
+    // Five significant digits do not depend on the grid's closeness to the corner, two do hold at 64 cells.
+    let coarse = solve(&l_shape(1e-4), 64.0);
+    let fine = solve(&l_shape(1e-4), 256.0);
+    let ratio = coarse.wall_shear.max_per_gradient / fine.wall_shear.max_per_gradient;
+    assert!((ratio - 1.0).abs() < 5e-3, "{ratio}");
+    let touched: Vec<usize> = report.walls.iter().map(|w| w.singular_sides).collect();
+    assert_eq!(touched.iter().sum::<usize>(), 2);
+    assert_eq!(report.whole.singular_sides, 2);
+}

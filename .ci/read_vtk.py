@@ -31,6 +31,8 @@ UNITS = {
     "normal": ("1",),
     "arc_length": ("m",),
     "loop": ("1",),
+    "corner": ("1",),
+    "wall": ("1",),
 }
 problems = []
 
@@ -130,7 +132,7 @@ def check_wall(path, result):
     """A .vtp file."""
     wall = read_with(vtk.vtkXMLPolyDataReader(), path)
     found = arrays(wall.GetPointData())
-    for name in ("wall_shear", "normal", "arc_length", "loop"):
+    for name in ("wall_shear", "normal", "arc_length", "loop", "corner", "wall"):
         if name not in found:
             check(False, path, f"array {name} is missing")
             return

@@ -115,11 +115,31 @@ fn mean_and_rellich_hold_on_many_sections() {
         .map(|(name, outline)| (format!("{name}, turned"), turned(outline, 17.0)))
         .collect();
     sections.extend(again);
+    for degrees in [0.0, 17.0, 45.0] {
+        sections.push((format!("L at {degrees}"), turned(&l_shape(1e-4), degrees)));
+    }
+    let square =
+        |low: f64, high: f64| Loop::new(vec![[low, low], [high, low], [high, high], [low, high]]);
+    let post = Outline {
+        lumens: vec![Lumen {
+            outer: square(0.0, 3e-4),
+            islands: vec![square(1.1e-4, 1.7e-4)],
+        }],
+    };
+    sections.push(("square post".to_owned(), post.oriented()));
     for (name, outline) in &sections {
         let flow = solve(outline, 128.0);
         let (mean, rellich) = (off(&flow, "mean_wall_shear"), off(&flow, "rellich"));
-        assert!(mean < 1e-4, "{name}: mean off by {mean:e}");
-        assert!(rellich < 1e-3, "{name}: Rellich off by {rellich:e}");
+        // The error that a re-entrant corner spreads over the grid falls with its power 4/3 only.
+        let singular = !flow.wall_shear.singular_corners.is_empty();
+        let allowed = match (singular, outline.lumens[0].islands.is_empty()) {
+            (false, _) => 1e-4,
+            (true, true) => 4e-4,
+            (true, false) => 2e-3,
+        };
+        assert!(mean < allowed, "{name}: mean off by {mean:e}");
+        let allowed = allowed.max(1e-3);
+        assert!(rellich < allowed, "{name}: Rellich off by {rellich:e}");
     }
 }
 
@@ -251,7 +271,7 @@ fn singular_corners_are_reported_with_their_means_on_both_walls() {
         .integrate_stretch(0, corner.arc_length, corner.arc_length + length, 1, |_| 1.0)
         / length;
     assert!((mean / corner.means[1] - 1.0).abs() < 1e-9);
-    // Five significant digits do not depend on the grid's closeness to the corner, two do hold at 64 cells.
+    // The largest value does not grow as the grid comes closer to the corner.
     let coarse = solve(&l_shape(1e-4), 64.0);
     let fine = solve(&l_shape(1e-4), 256.0);
     let ratio = coarse.wall_shear.max_per_gradient / fine.wall_shear.max_per_gradient;

@@ -41,7 +41,7 @@ pub(crate) fn read(
     let oriented = outline.clone().oriented();
     wall_stretches(&oriented, &walls).map_err(|(index, source)| {
         let place = items.iter().nth(index).unwrap_or(value);
-        fault(text, place, "wall", ReadProblem::Wall { source })
+        Fault::at(text, place.span().start, None, ReadProblem::Wall { source })
     })
 }
 

@@ -29,7 +29,7 @@ pub(super) fn walls(document: &SolveDocument<'_>) -> Option<String> {
         "wall", "length", "mean", "least", "5 %", "median", "95 %", "largest",
     ];
     if point.is_some() {
-        head.extend(["mean", "largest"]);
+        head.extend(["dyn/cm\u{b2}: mean", "largest"]);
     }
     table.row(head);
     for wall in report.walls.iter().chain([&report.whole]) {

@@ -117,7 +117,7 @@ fn solve() -> Command {
         );
     let command = fluid_options(input(command));
     let heading = "Output";
-    result(command)
+    wall_options(result(command), heading)
         .arg(cells_across())
         .arg(flag(
             "shortcuts",
@@ -158,6 +158,11 @@ fn solve() -> Command {
                 )
                 .help_heading(heading),
         )
+}
+
+/// Files that hold the wall shear.
+fn wall_options(command: Command, heading: &'static str) -> Command {
+    command
         .arg(
             Arg::new("wall-csv")
                 .long("wall-csv")

@@ -143,47 +143,12 @@ impl Stretch {
             first.map_or_else(|| law(0), faded),
             second.map_or_else(|| law(1), faded),
         ]);
-        let left_over: Vec<(f64, f64)> = inner
-            .iter()
-            .map(|&(s, v)| {
-                let ends = [s, length - s];
-                let known =
-                    |end: usize| laws[end].value(ends[end]) + laws[end].grid_error(ends[end]);
-                (s, v - known(0) - known(1))
-            })
-            .collect();
-        let count = pieces(length, spacing);
-        let step = length / count as f64;
-        let rest: Vec<f64> = (0..=count)
-            .map(|k| {
-                let s = step * k as f64;
-                // Within the unresolved part the law of that corner stands alone.
-                if s < unresolved[0] {
-                    -laws[1].value(length - s)
-                } else if length - s < unresolved[1] {
-                    -laws[0].value(s)
-                } else {
-                    smoothed(&left_over, s, spacing)
-                }
-            })
-            .collect();
-        let slope = (0..=count)
-            .map(|k| match k {
-                0 => 2.0 * rest[1] - 1.5 * rest[0] - 0.5 * rest[2],
-                k if k == count => 1.5 * rest[k] - 2.0 * rest[k - 1] + 0.5 * rest[k - 2],
-                k => (rest[k + 1] - rest[k - 1]) / 2.0,
-            })
-            .collect();
         Self {
             start,
             length,
             zone: unresolved,
             leading: Some(leading),
-            shape: Shape::Smooth {
-                laws: Some(laws),
-                rest,
-                slope,
-            },
+            shape: smooth(length, unresolved, laws, &inner, spacing),
         }
     }
 
@@ -221,6 +186,51 @@ impl Stretch {
         };
         // The velocity is positive, and so is its slope at the wall.
         value.max(0.0)
+    }
+}
+
+/// The curve between two corners whose laws are known, from the samples outside the unresolved parts.
+fn smooth(
+    length: f64,
+    unresolved: [f64; 2],
+    laws: Box<[CornerLaw; 2]>,
+    samples: &[(f64, f64)],
+    spacing: f64,
+) -> Shape {
+    let left_over: Vec<(f64, f64)> = samples
+        .iter()
+        .map(|&(s, v)| {
+            let ends = [s, length - s];
+            let known = |end: usize| laws[end].value(ends[end]) + laws[end].grid_error(ends[end]);
+            (s, v - known(0) - known(1))
+        })
+        .collect();
+    let count = pieces(length, spacing);
+    let step = length / count as f64;
+    let rest: Vec<f64> = (0..=count)
+        .map(|k| {
+            let s = step * k as f64;
+            // Within the unresolved part the law of that corner stands alone.
+            if s < unresolved[0] {
+                -laws[1].value(length - s)
+            } else if length - s < unresolved[1] {
+                -laws[0].value(s)
+            } else {
+                smoothed(&left_over, s, spacing)
+            }
+        })
+        .collect();
+    let slope = (0..=count)
+        .map(|k| match k {
+            0 => 2.0 * rest[1] - 1.5 * rest[0] - 0.5 * rest[2],
+            k if k == count => 1.5 * rest[k] - 2.0 * rest[k - 1] + 0.5 * rest[k - 2],
+            k => (rest[k + 1] - rest[k - 1]) / 2.0,
+        })
+        .collect();
+    Shape::Smooth {
+        laws: Some(laws),
+        rest,
+        slope,
     }
 }
 

@@ -40,7 +40,7 @@ pub(crate) fn read(
         .collect::<Result<_, _>>()?;
     let oriented = outline.clone().oriented();
     wall_stretches(&oriented, &walls).map_err(|(index, source)| {
-        let place = items.iter().nth(index).unwrap_or(value);
+        let place = items.get(index).unwrap_or(value);
         Fault::at(text, place.span().start, None, ReadProblem::Wall { source })
     })
 }

@@ -370,7 +370,7 @@ impl<'a> Plot<'a> {
             };
             match inside {
                 [true, true] => {
-                    open.extend([self.page(index, a.0, a.1), self.page(index, b.0, b.1)])
+                    open.extend([self.page(index, a.0, a.1), self.page(index, b.0, b.1)]);
                 }
                 [true, false] => open.extend([self.page(index, a.0, a.1), on_top()]),
                 [false, true] => {

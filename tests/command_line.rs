@@ -26,6 +26,8 @@ mod help;
 mod json_contract;
 #[path = "command_line/outputs.rs"]
 mod outputs;
+#[path = "command_line/sensitivity.rs"]
+mod sensitivity;
 #[path = "command_line/shipped.rs"]
 mod shipped;
 #[path = "command_line/statuses.rs"]

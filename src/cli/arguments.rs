@@ -30,6 +30,7 @@ pub fn command() -> Command {
         .subcommand(solve())
         .subcommand(check())
         .subcommand(draw())
+        .subcommand(sensitivity())
 }
 
 pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
@@ -117,25 +118,11 @@ fn solve() -> Command {
         );
     let command = accuracy_options(fluid_options(film_options(input(command))));
     let heading = "Output";
-    wall_options(common(command), heading)
+    wall_options(result(command), heading)
         .arg(flag(
             "shortcuts",
             "Also say what the usual formulas would have said",
         ))
-        .arg(flag("csv", "Print a CSV table, unit in every head").conflicts_with("json").help_heading(heading))
-        .arg(
-            Arg::new("output")
-                .short('o')
-                .long("output")
-                .value_name("FILE")
-                .value_parser(value_parser!(std::path::PathBuf))
-                .help("Write the result to FILE instead")
-                .long_help(
-                    "Write the result to FILE; - is standard output, the default. FILE appears \
-                     only when it is complete. Example: -o wafer.json",
-                )
-                .help_heading(heading),
-        )
         .arg(
             Arg::new("vtk")
                 .long("vtk")
@@ -171,11 +158,6 @@ fn solve() -> Command {
                 )
                 .help_heading(heading),
         )
-        .arg(flag("verbose", "Show the grids and the solver's course").short('v').help_heading(heading))
-        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
-        .arg(flag("deny-warnings", "End with status 1 on any warning").long_help(
-            "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
-        ))
 }
 
 /// Files that hold the wall shear.
@@ -232,6 +214,97 @@ fn film_options(command: Command) -> Command {
                      --film 0.5um --film-on floor",
                 )
                 .help_heading(film),
+        )
+}
+
+fn cells_across() -> Arg {
+    option("cells-across", "N", "Cells across the smallest lumen")
+        .value_parser(value_parser!(f64))
+        .long_help(
+            "Cells across the largest circle that fits into the smallest lumen: the short side of a \
+             rectangle, the gap of an annulus. At least 4. Default: at least 128, and as many as the \
+             identities of the wall shear need. Example: --cells-across 128",
+        )
+}
+
+/// How and where the main result is printed.
+fn result(command: Command) -> Command {
+    let heading = "Output";
+    common(command)
+        .arg(
+            flag("csv", "Print a CSV table, unit in every head")
+                .conflicts_with("json")
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("output")
+                .short('o')
+                .long("output")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the result to FILE instead")
+                .long_help(
+                    "Write the result to FILE; - is standard output, the default. FILE appears \
+                     only when it is complete. Example: -o wafer.json",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            flag("verbose", "Show the grids and the solver's course")
+                .short('v')
+                .help_heading(heading),
+        )
+        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
+        .arg(
+            flag("deny-warnings", "End with status 1 on any warning").long_help(
+                "End with status 1 on any warning that is not a mere caution. Example: \
+                 --deny-warnings",
+            ),
+        )
+}
+
+fn sensitivity() -> Command {
+    let command = Command::new("sensitivity")
+        .about("What small changes of the wall do to conductance and resistance")
+        .after_help(
+            "Example: etchwise sensitivity wafer.toml --picture sensitivity.png\n\n\
+             Cases: scale, depth, width, over-etch, film, single walls, wall angle, lid gap; what\n\
+             exactly moves is printed with the result.",
+        );
+    let heading = "Output";
+    result(input(command))
+        .arg(cells_across())
+        .arg(
+            flag("no-check", "Do not check the cases by new solves").long_help(
+                "Do not check the cases by solving the section again with its walls moved either way. \
+                 Faster, but where the second order matters is then not known. Example: --no-check",
+            ),
+        )
+        .arg(
+            Arg::new("vtk")
+                .long("vtk")
+                .value_name("PREFIX")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write PREFIX.vtp (wall)")
+                .long_help(
+                    "Write the wall with its local sensitivity, shear and outward normal as \
+                     PREFIX.vtp, for viewers; coordinates in m. Example: --vtk out/wafer",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("picture")
+                .long("picture")
+                .value_name("FILE")
+                .action(ArgAction::Append)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write a picture of the wall, .png or .svg")
+                .long_help(
+                    "Write a picture of the wall coloured by its local sensitivity, with numbers; the \
+                     ending says .png or .svg. May be given more than once. Example: --picture \
+                     wafer.png",
+                )
+                .help_heading(heading),
         )
 }
 

@@ -48,6 +48,15 @@ impl Failure {
         Self { text, ..self }
     }
 
+    /// A result that has no text form.
+    pub(super) fn not_printed(error: impl std::fmt::Display) -> Self {
+        Self::new(
+            ExitStatus::Unreadable,
+            format!("the result cannot be printed: {error}"),
+            "",
+        )
+    }
+
     pub(super) fn print(&self) {
         output::talk(&self.text);
     }

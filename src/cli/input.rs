@@ -1,12 +1,13 @@
 //! From the FILE argument to a checked section.
 
 use std::fmt::Write as _;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 
 use clap::ArgMatches;
 
 use crate::geometry::Outline;
-use crate::intake::{ReadOptions, Section, SectionKind, read_section};
+use crate::intake::{Provenance, ReadOptions, Section, SectionKind, read_section};
+use crate::report::SourceRecord;
 use crate::units;
 use crate::warning::{Code, Warning};
 
@@ -21,6 +22,34 @@ pub(super) struct CheckedSection {
     pub(super) section: Section,
     pub(super) outline: Outline,
     pub(super) warnings: Vec<Warning>,
+}
+
+/// The FILE argument.
+pub(super) fn file(matches: &ArgMatches) -> PathBuf {
+    matches
+        .get_one::<PathBuf>("file")
+        .cloned()
+        .unwrap_or_default()
+}
+
+/// The section's own name, or that of its file.
+pub(super) fn section_name(section: &Section, file: &Path) -> String {
+    section.name.clone().unwrap_or_else(|| {
+        file.file_stem().map_or_else(
+            || "section".to_owned(),
+            |s| s.to_string_lossy().into_owned(),
+        )
+    })
+}
+
+/// Where a section came from, for the outputs.
+pub(super) fn source_record(provenance: &Provenance) -> SourceRecord<'_> {
+    SourceRecord {
+        path: &provenance.path,
+        sha256: &provenance.sha256,
+        kind: provenance.kind.word(),
+        notes: &provenance.notes,
+    }
 }
 
 /// The options that say how a file is to be read.

@@ -14,6 +14,7 @@ mod input;
 mod output;
 mod quantities;
 mod sections;
+mod sensitivity;
 mod solve;
 
 use std::ffi::OsString;
@@ -41,6 +42,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("solve", matches)) => solve::run(matches),
         Some(("check", matches)) => check::run(matches),
         Some(("draw", matches)) => draw::run(matches),
+        Some(("sensitivity", matches)) => sensitivity::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

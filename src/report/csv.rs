@@ -33,19 +33,35 @@ pub enum CsvError {
 /// # Errors
 /// [`CsvError`] when the writer refuses, which no section name or number causes.
 pub fn to_csv(documents: &[SolveDocument<'_>]) -> Result<String, CsvError> {
+    let mut names = Vec::new();
+    let mut rows = Vec::new();
+    for document in documents {
+        let (heads, values): (Vec<&str>, Vec<String>) = fields(document).into_iter().unzip();
+        names = heads;
+        rows.push(values);
+    }
+    let section = documents.first().map_or("", |d| d.section_name);
+    table(&names, rows, section)
+}
+
+/// A header row and data rows as text; `section` is named in errors.
+pub(super) fn table(
+    heads: &[&str],
+    rows: impl IntoIterator<Item = Vec<String>>,
+    section: &str,
+) -> Result<String, CsvError> {
     let mut writer = csv::WriterBuilder::new()
         .terminator(csv::Terminator::CRLF)
         .from_writer(Vec::new());
-    for (i, document) in documents.iter().enumerate() {
-        let (names, values): (Vec<&str>, Vec<String>) = fields(document).into_iter().unzip();
-        let refused = |source| CsvError::Record {
-            section: document.section_name.to_owned(),
-            source,
-        };
-        if i == 0 {
-            writer.write_record(&names).map_err(refused)?;
-        }
-        writer.write_record(&values).map_err(refused)?;
+    let refused = |source| CsvError::Record {
+        section: section.to_owned(),
+        source,
+    };
+    if !heads.is_empty() {
+        writer.write_record(heads).map_err(refused)?;
+    }
+    for row in rows {
+        writer.write_record(&row).map_err(refused)?;
     }
     let unfinished = |reason: String| CsvError::Unfinished { reason };
     let bytes = writer.into_inner().map_err(|e| unfinished(e.to_string()))?;
@@ -56,7 +72,7 @@ pub fn to_csv(documents: &[SolveDocument<'_>]) -> Result<String, CsvError> {
 type Field = (&'static str, String);
 
 /// A number as text; empty when absent or not finite.
-fn number(value: impl Into<Option<f64>>) -> String {
+pub(super) fn number(value: impl Into<Option<f64>>) -> String {
     value
         .into()
         .filter(|v| v.is_finite())

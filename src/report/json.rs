@@ -8,7 +8,7 @@ use std::collections::BTreeMap;
 
 use serde::Serialize;
 
-use super::document::SolveDocument;
+use super::document::{SolveDocument, SourceRecord};
 use super::json_accuracy::AccuracyView;
 use super::json_film::FilmView;
 use super::json_reach::ReachView;
@@ -83,12 +83,7 @@ impl<'a> Root<'a> {
             schema: SCHEMA,
             tool_version: env!("CARGO_PKG_VERSION"),
             name: document.section_name,
-            source: document.source.map(|s| Source {
-                path: s.path,
-                sha256: s.sha256,
-                kind: s.kind,
-                notes: s.notes,
-            }),
+            source: document.source.map(Source::new),
             section: Section::new(flow),
             film: document.film.map(FilmView::new),
             conductance: Quantity::bracketed(flow),
@@ -178,11 +173,22 @@ fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static
 }
 
 #[derive(Serialize)]
-struct Source<'a> {
+pub(super) struct Source<'a> {
     path: &'a str,
     sha256: &'a str,
     kind: &'a str,
     notes: &'a [String],
+}
+
+impl<'a> Source<'a> {
+    pub(super) fn new(source: SourceRecord<'a>) -> Self {
+        Self {
+            path: source.path,
+            sha256: source.sha256,
+            kind: source.kind,
+            notes: source.notes,
+        }
+    }
 }
 
 #[derive(Serialize)]
@@ -227,7 +233,7 @@ struct Peak {
 }
 
 #[derive(Serialize)]
-struct Grid {
+pub(super) struct Grid {
     spacing: Quantity,
     fluid_nodes: Quantity,
     cells_across: Quantity,
@@ -235,7 +241,7 @@ struct Grid {
 }
 
 impl Grid {
-    fn new(flow: &SectionFlow) -> Self {
+    pub(super) fn new(flow: &SectionFlow) -> Self {
         let g = &flow.grid;
         Self {
             spacing: Quantity::real(g.spacing, "m"),
@@ -406,7 +412,7 @@ impl<'a> ShortcutView<'a> {
 }
 
 #[derive(Serialize)]
-struct WarningView {
+pub(super) struct WarningView {
     code: &'static str,
     message: String,
     advice: String,
@@ -415,7 +421,7 @@ struct WarningView {
 }
 
 impl WarningView {
-    fn new(warning: Warning) -> Self {
+    pub(super) fn new(warning: Warning) -> Self {
         Self {
             code: warning.code.as_str(),
             message: warning.message,

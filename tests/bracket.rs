@@ -168,6 +168,31 @@ proptest! {
 }
 
 #[test]
+fn corners_that_miss_their_node_by_rounding_have_a_bracket_on_every_grid() {
+    let um = 1e-6;
+    let angle = |x: f64, y: f64| {
+        let places = [
+            [0.0, 0.0],
+            [80.0, 0.0],
+            [80.0, 40.0],
+            [40.0, 40.0],
+            [40.0, 80.0],
+            [0.0, 80.0],
+        ];
+        Outline::single(places.map(|[a, b]| [(a + x) * um, (b + y) * um]).to_vec())
+    };
+    let (mut lowest, mut highest) = (0.0_f64, f64::INFINITY);
+    for k in 0..40 {
+        let section = angle(0.31 * f64::from(k), -1.7 * f64::from(k));
+        for turned in [section.clone(), section.mirrored_left_right(0.0)] {
+            let Bracket { low, high } = proven(&solve(&turned, f64::from(24 + k), None));
+            (lowest, highest) = (lowest.max(low), highest.min(high));
+        }
+    }
+    assert!(lowest <= highest, "{lowest:e} {highest:e}");
+}
+
+#[test]
 fn thin_walls_posts_and_several_lumens_have_brackets_that_hold() {
     // Two squares parted by a wall of a hundredth of a cell: twice the one.
     let half = |x: f64| vec![[x, 0.0], [x + 1.0, 0.0], [x + 1.0, 1.0], [x, 1.0]];

@@ -25,6 +25,10 @@ const FIRST_CELLS_ACROSS: f64 = 64.0;
 const AIM: f64 = 0.93;
 /// Least and most by which the next grid is finer.
 const FINER: [f64; 2] = [1.1, 4.0];
+/// How much finer the next grid is where there is no proven range, and how often that is tried.
+const WITHOUT_FINER: f64 = 1.5;
+/// See [`WITHOUT_FINER`].
+const MOST_WITHOUT: usize = 4;
 /// Most grids tried.
 const MOST_GRIDS: usize = 12;
 /// Fluid nodes a second, taken for the first grid, before any was timed.
@@ -136,13 +140,15 @@ pub(super) fn refine(
     let mut best = attempt(cells)?;
     let mut seconds = start.elapsed().as_secs_f64();
     let mut stop = Some(Stop::Stalled);
+    let mut without = 0;
     for _ in 1..MOST_GRIDS {
-        if goal.is_met(&best.flow) {
+        if goal.is_met(&best.flow) || without > MOST_WITHOUT {
             break;
         }
+        without += usize::from(goal.reached(&best.flow).is_none());
         let finer = match goal.reached(&best.flow) {
             Some(reached) => finer(goal, &best.flow, AIM * goal.asked() / reached),
-            None => 2.0,
+            None => WITHOUT_FINER,
         };
         let next = cells * finer.clamp(FINER[0], FINER[1]);
         if spacing(outline, diameter, next, options.memory_limit).is_err() {

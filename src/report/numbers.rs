@@ -89,7 +89,7 @@ pub(crate) fn with_unit(value: f64, units: &[Unit], digits: usize) -> String {
 pub(crate) fn place(at: [f64; 2], extent: [f64; 2], digits: usize) -> String {
     let coordinate = |v: f64, extent: f64| {
         let (name, size) = fitting_unit(v.abs().max(extent), LENGTHS);
-        let rounding = 1e-9 * extent;
+        let rounding = 1e-7 * extent;
         let v = if v.abs() < rounding { 0.0 } else { v };
         format!("{} {name}", significant(v / size, digits))
     };

@@ -193,6 +193,53 @@ fn corners_that_miss_their_node_by_rounding_have_a_bracket_on_every_grid() {
 }
 
 #[test]
+fn a_vertex_a_hair_from_a_grid_line_or_node_at_most_doubles_the_gap() {
+    let convex = vec![
+        [0.0, 0.0],
+        [1.0, 0.13],
+        [1.31, 0.7],
+        [0.62, 1.2],
+        [-0.2, 0.8],
+    ];
+    let re_entrant = vec![
+        [0.0, 0.0],
+        [1.9, 0.2],
+        [1.8, 0.9],
+        [0.9, 0.8],
+        [0.8, 1.9],
+        [-0.1, 1.7],
+    ];
+    for points in [convex, re_entrant] {
+        let section = Outline::single(points.clone());
+        let cells = 48.0;
+        let generic = (0..12)
+            .map(|k| {
+                let k = f64::from(k);
+                let offset = [(0.137 + 0.618 * k).fract(), (0.411 + 0.755 * k).fract()];
+                proven(&solve(&section, cells, Some(offset))).relative_width()
+            })
+            .fold(0.0, f64::max);
+        let spacing = solve(&section, cells, Some([0.0; 2])).grid.spacing;
+        let (low, _) = section.bounds().unwrap();
+        for vertex in points {
+            for hair in [1e-9, -1e-9, 1e-7, -1e-7, 2e-6, -2e-6, 1e-4, -1e-4] {
+                let on_line = [0, 1].map(|axis: usize| {
+                    let at = (vertex[axis] - low[axis]) / spacing;
+                    at.ceil() - at + hair + 1.0
+                });
+                for offset in [on_line, [on_line[0], 1.37], [1.41, on_line[1]]] {
+                    let width = proven(&solve(&section, cells, Some(offset))).relative_width();
+                    assert!(
+                        width <= 2.0 * generic,
+                        "{vertex:?}, {hair:e}: {width:.2e} against {generic:.2e}"
+                    );
+                }
+            }
+        }
+    }
+}
+
+#[test]
 fn thin_walls_posts_and_several_lumens_have_brackets_that_hold() {
     // Two squares parted by a wall of a hundredth of a cell: twice the one.
     let half = |x: f64| vec![[x, 0.0], [x + 1.0, 0.0], [x + 1.0, 1.0], [x, 1.0]];

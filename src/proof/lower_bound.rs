@@ -56,11 +56,20 @@ pub(super) fn lower_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result
 
 /// A node beside the wall, whose value may be improved.
 struct BandNode {
-    at: (i64, i64),
     /// Row-by-row number.
     node: usize,
     /// Its triangles, and which corner of each it is.
     triangles: Vec<(usize, usize)>,
+    /// Its squares that the wall does not cut.
+    squares: Vec<WholeSquare>,
+}
+
+/// A square that the wall does not cut, by the numbers of its nodes.
+struct WholeSquare {
+    nodes: [Option<usize>; 4],
+    bubbles: [f64; 4],
+    /// Which corner the node at hand is.
+    corner: usize,
 }
 
 struct Velocity<'a> {
@@ -172,10 +181,23 @@ impl<'a> Velocity<'a> {
                 let node = chunk.first()?.0;
                 let place = places.binary_search_by_key(&node, |p| p.0).ok()?;
                 Some(BandNode {
-                    at: places[place].1,
                     node,
                     triangles: chunk.iter().map(|&(_, t, k)| (t, k)).collect(),
+                    squares: self.squares_around(places[place].1),
                 })
+            })
+            .collect()
+    }
+
+    fn squares_around(&self, (i, j): (i64, i64)) -> Vec<WholeSquare> {
+        [(i, j), (i - 1, j), (i - 1, j - 1), (i, j - 1)]
+            .into_iter()
+            .enumerate()
+            .filter(|&(_, (column, row))| !self.is_cut(column, row))
+            .map(|(corner, (column, row))| WholeSquare {
+                nodes: corner_nodes(self.mask, column, row),
+                bubbles: self.bubbles(column, row),
+                corner,
             })
             .collect()
     }
@@ -194,15 +216,13 @@ impl<'a> Velocity<'a> {
             pull += triangle.weight() - triangle.half_slope(self.values_of(triangle), corner);
             stiffness += triangle.stiffness(corner);
         }
-        let (i, j) = node.at;
-        for (corner, square) in [(i, j), (i - 1, j), (i - 1, j - 1), (i, j - 1)]
-            .into_iter()
-            .enumerate()
-        {
-            if !self.is_cut(square.0, square.1) {
-                pull += 0.25 - self.square(square.0, square.1).half_slope(corner);
-                stiffness += STIFFNESS;
-            }
+        for square in &node.squares {
+            let now = Square {
+                corners: square.nodes.map(|n| n.map_or(0.0, |n| self.values[n])),
+                bubbles: square.bubbles,
+            };
+            pull += 0.25 - now.half_slope(square.corner);
+            stiffness += STIFFNESS;
         }
         if stiffness > 0.0 && (pull / stiffness).is_finite() {
             self.values[node.node] += pull / stiffness;
@@ -300,10 +320,18 @@ impl<'a> Velocity<'a> {
         (volume, energy)
     }
 
-    /// A square that the wall does not cut. A side has a bubble where both its squares are whole and four nodes
-    /// in line are fluid.
+    /// A square that the wall does not cut.
     fn square(&self, i: i64, j: i64) -> Square {
-        let value = |at| natural_at(self.mask, at).map_or(0.0, |n| self.values[n]);
+        let nodes = corner_nodes(self.mask, i, j);
+        Square {
+            corners: nodes.map(|node| node.map_or(0.0, |n| self.values[n])),
+            bubbles: self.bubbles(i, j),
+        }
+    }
+
+    /// Bubbles of a whole square. A side has one where both its squares are whole and four nodes in line are
+    /// fluid.
+    fn bubbles(&self, i: i64, j: i64) -> [f64; 4] {
         let bubble_of = |at: (i64, i64), step: (i64, i64), beyond: (i64, i64)| {
             if self.is_cut(beyond.0, beyond.1) {
                 return 0.0;
@@ -317,20 +345,12 @@ impl<'a> Velocity<'a> {
                 _ => 0.0,
             }
         };
-        Square {
-            corners: [
-                value((i, j)),
-                value((i + 1, j)),
-                value((i + 1, j + 1)),
-                value((i, j + 1)),
-            ],
-            bubbles: [
-                bubble_of((i, j), (1, 0), (i, j - 1)),
-                bubble_of((i + 1, j), (0, 1), (i + 1, j)),
-                bubble_of((i, j + 1), (1, 0), (i, j + 1)),
-                bubble_of((i, j), (0, 1), (i - 1, j)),
-            ],
-        }
+        [
+            bubble_of((i, j), (1, 0), (i, j - 1)),
+            bubble_of((i + 1, j), (0, 1), (i + 1, j)),
+            bubble_of((i, j + 1), (1, 0), (i, j + 1)),
+            bubble_of((i, j), (0, 1), (i - 1, j)),
+        ]
     }
 
     /// Squares of a row with at least one fluid node, as disjoint ranges of columns.
@@ -351,6 +371,11 @@ impl<'a> Velocity<'a> {
         }
         merged
     }
+}
+
+/// Row-by-row numbers of the corners of a square, anticlockwise from the lower left.
+fn corner_nodes(mask: &Mask, i: i64, j: i64) -> [Option<usize>; 4] {
+    [(i, j), (i + 1, j), (i + 1, j + 1), (i, j + 1)].map(|at| natural_at(mask, at))
 }
 
 /// Row-by-row number of the fluid node `(i, j)`.

@@ -27,18 +27,30 @@ const LEAST_RADIUS: f64 = 6.0;
 const SHARE: f64 = 0.7;
 /// Nodes nearer to a side than this do not show whether another wall is near, spacings.
 const BESIDE: f64 = 1.0;
+/// Distance of the nearer of two places that give the direction of a side, spacings.
+const SHORT_CHORD: f64 = 2.0;
+/// Largest change of the direction to the wall over the reach, radians.
+const MOST_BENT: f64 = 0.35;
+/// Least sine of the fluid angle with which bent sides can be allowed for.
+const LEAST_SINE: f64 = 0.2;
+/// Change of the direction over the reach up to which a side is straight, radians.
+const STRAIGHT: f64 = 0.02;
 /// Powers of the expansion that are fitted, and one term for the grid.
 const POWERS: usize = 6;
 const TERMS: usize = POWERS + 1;
 /// Difference from three right angles, radians, below which the logarithm stands in the particular part.
 const RESONANCE: f64 = 1e-4;
 
-/// A wedge with its corner at the origin of polar coordinates; the fluid from `theta` = 0 to `angle`.
+/// A wedge with its corner at the origin of polar coordinates; the fluid from `theta` = 0 to `angle`. Its
+/// sides may be bent a little.
 struct Wedge {
     at: Point,
     /// Direction of the side that leaves the corner, radians.
     first: f64,
+    /// Fluid angle at the corner, radians.
     angle: f64,
+    /// Change of the direction to the wall along both sides, radians per spacing.
+    bends: [f64; 2],
     spacing: f64,
 }
 
@@ -56,7 +68,12 @@ pub(crate) fn corner_laws(
     if reach < LEAST_RADIUS {
         return None;
     }
-    let wedge = Wedge::new(path, corner, 0.5 * reach * spacing, spacing);
+    let wedge = Wedge::new(path, corner, reach, spacing);
+    let bent = reach * wedge.bends[0].abs().max(wedge.bends[1].abs());
+    let is_flat = wedge.angle.sin().abs() < LEAST_SINE;
+    if wedge.angle <= PI || bent > MOST_BENT || (is_flat && bent > STRAIGHT) {
+        return None;
+    }
     let (values, radius) = wedge.nodes(lattice, mask, phi, reach);
     if radius < LEAST_RADIUS {
         return None;
@@ -65,7 +82,7 @@ pub(crate) fn corner_laws(
     let mut wanted = SVector::<f64, TERMS>::zeros();
     let mut count = 0;
     for (r, theta, value) in values.into_iter().filter(|v| v.0 <= radius) {
-        let row = wedge.row(r / radius, theta);
+        let row = wedge.row(r, radius, theta);
         matrix += row * row.transpose();
         wanted += row * (value - wedge.particular(r, theta));
         count += 1;
@@ -79,30 +96,60 @@ pub(crate) fn corner_laws(
     let coefficient = |k: f64, a: f64| a * radius.powf(-k * step) * k * step * spacing;
     let side = |sign: f64| {
         let powers: Vec<(f64, f64)> = (1..=POWERS)
-            .map(|k| {
+            .flat_map(|k| {
                 let flip = if k % 2 == 0 { sign } else { 1.0 };
                 let k = k as f64;
-                (k * step - 1.0, flip * coefficient(k, found[k as usize]))
+                let exponent = k * step;
+                let plain = flip * coefficient(k, found[k as usize]);
+                let bent = plain * (exponent + 1.0) * wedge.bend_of_shear(sign);
+                [(exponent - 1.0, plain), (exponent, bent)]
             })
             .collect();
-        let of_grid = found[0] * radius.powf(step) * step * spacing;
+        let of_grid = -found[0] * radius.powf(step) * step * spacing;
         CornerLaw::of_terms(wedge.angle, spacing, &powers, of_grid)
     };
     Some([side(1.0), side(-1.0)])
 }
 
 impl Wedge {
-    fn new(path: &WallPath, corner: &Corner, chord: f64, spacing: f64) -> Self {
-        let towards = |arc: f64| {
-            let p = path.position(corner.arc_length + arc);
-            (p[1] - corner.at[1]).atan2(p[0] - corner.at[0])
+    fn new(path: &WallPath, corner: &Corner, reach: f64, spacing: f64) -> Self {
+        // Direction at the corner and its change with the distance, from two chords.
+        let side = |way: f64| {
+            let chord = |r: f64| {
+                let p = path.position(corner.arc_length + way * r * spacing);
+                (p[1] - corner.at[1]).atan2(p[0] - corner.at[0])
+            };
+            let near = chord(SHORT_CHORD);
+            let turn = (chord(reach) - near + PI).rem_euclid(TAU) - PI;
+            let slope = turn / (reach - SHORT_CHORD);
+            (near - SHORT_CHORD * slope, slope)
         };
-        let first = towards(chord);
+        let (first, last) = (side(1.0), side(-1.0));
         Self {
             at: corner.at,
-            first,
-            angle: (towards(-chord) - first).rem_euclid(TAU),
+            first: first.0,
+            angle: (last.0 - first.0).rem_euclid(TAU),
+            bends: [first.1, last.1],
             spacing,
+        }
+    }
+
+    /// What bent sides add to a power: for `sin(a theta)` the sine and the cosine of `(a + 1) theta` with
+    /// these factors times `a r`, so that the sum vanishes on both sides to first order.
+    fn bending(&self) -> [f64; 2] {
+        let (sine, cosine) = self.angle.sin_cos();
+        let [first, last] = self.bends;
+        [(first * cosine - last) / sine, -first]
+    }
+
+    /// Shear that bent sides add to a power `r^(a - 1)`, as a factor of `(a + 1) r`, on the first side for
+    /// a positive sign, on the other for a negative one.
+    fn bend_of_shear(&self, sign: f64) -> f64 {
+        let [sine, cosine] = self.bending();
+        if sign > 0.0 {
+            sine
+        } else {
+            sine * self.angle.cos() - cosine * self.angle.sin()
         }
     }
 
@@ -126,8 +173,13 @@ impl Wedge {
             for i in range(0) {
                 let (x, y) = (f64::from(i) - centre[0], f64::from(j) - centre[1]);
                 let r = x.hypot(y);
-                let theta = (y.atan2(x) - self.first).rem_euclid(TAU);
-                if r > reach || theta > self.angle {
+                if r > reach {
+                    continue;
+                }
+                let [low, high] = [r * self.bends[0], self.angle + r * self.bends[1]];
+                // Between the two bent sides, of which the first may lie below zero.
+                let theta = (y.atan2(x) - self.first - low).rem_euclid(TAU) + low;
+                if theta > high {
                     continue;
                 }
                 if let Some((colour, node)) = mask.node_at(i, j) {
@@ -135,7 +187,7 @@ impl Wedge {
                     if let Some(&value) = value.filter(|_| r >= NEAREST) {
                         values.push((r, theta, value));
                     }
-                } else if r * theta.min(self.angle - theta).min(1.0) > BESIDE {
+                } else if r * (theta - low).min(high - theta).min(1.0) > BESIDE {
                     radius = radius.min(SHARE * r);
                 }
             }
@@ -143,16 +195,15 @@ impl Wedge {
         (values, radius)
     }
 
-    /// The term of the grid and the powers, at a distance as a share of the radius.
-    fn row(&self, share: f64, theta: f64) -> SVector<f64, TERMS> {
+    /// The term of the grid and the powers, at a distance in spacings, as shares of their size at a radius.
+    fn row(&self, r: f64, radius: f64, theta: f64) -> SVector<f64, TERMS> {
         let step = PI / self.angle;
+        let [sine, cosine] = self.bending();
         SVector::from_fn(|k, _| {
-            if k == 0 {
-                share.powf(-step) * (step * theta).sin()
-            } else {
-                let k = k as f64;
-                share.powf(k * step) * (k * step * theta).sin()
-            }
+            let exponent = if k == 0 { -step } else { k as f64 * step };
+            let next = (exponent + 1.0) * theta;
+            let bent = exponent * r * (sine * next.sin() + cosine * next.cos());
+            (r / radius).powf(exponent) * ((exponent * theta).sin() + bent)
         })
     }
 
@@ -181,6 +232,7 @@ mod tests {
             let wedge = Wedge {
                 at: [0.0; 2],
                 first: 0.0,
+                bends: [0.0; 2],
                 angle: degrees.to_radians(),
                 spacing: 1.0,
             };

@@ -11,8 +11,8 @@ use super::wall_curve::WallCurve;
 
 /// Tolerance per unit of `cells_across^(-3/2)` for the wall identities of a section without re-entrant
 /// corners; chosen above what was measured on twenty sections, flat and turned, at 16 to 256 cells, where the
-/// worst is a polygon of 20 sides (7.7e-4 at 128 cells, 1.4e-3 allowed).
-const WALL_TOLERANCE: f64 = 2.0;
+/// worst is a polygon of 20 sides (7.7e-4 at 128 cells, 2.1e-3 allowed).
+const WALL_TOLERANCE: f64 = 3.0;
 /// The same per unit of `1 / cells_across` with re-entrant corners, whose sides may be much shorter than the
 /// section is wide (a post a tenth as wide: 5e-3 at 128 cells, 2.3e-2 allowed).
 const SINGULAR_TOLERANCE: f64 = 3.0;

@@ -24,6 +24,10 @@ const SHORT: f64 = 14.0;
 const SMOOTHING: f64 = 2.5;
 /// Least number of samples in the smoothing.
 const LEAST_SAMPLES: usize = 5;
+/// Length, in spacings, below which a short stretch has one coefficient.
+const STEADY: f64 = 5.0;
+/// Least mean of the basis that decides that coefficient; it is one in the middle.
+const LEAST_BASIS: f64 = 0.5;
 /// Largest number of coefficients on a short stretch.
 const SHORT_TERMS: usize = 3;
 
@@ -310,12 +314,26 @@ fn short(
         let far = |s: &&(f64, f64)| s.0.min(length - s.0) >= least;
         samples.iter().filter(far).copied().collect()
     };
-    let mut used = away(spacing);
+    let is_singular = leading.iter().any(|e| *e < 0.0);
+    let mut used = away(if is_singular { 0.5 } else { 1.0 } * spacing);
     if used.len() < 2 {
         used = away(0.25 * length.min(spacing));
     }
     if used.is_empty() {
         used = vec![(0.5 * length, fallback)];
+    }
+    if length < STEADY * spacing {
+        // A polynomial through a few samples would swing between them, and one sample beside a corner
+        // must not decide the middle.
+        let basis = |s: f64| short_row([s / length, 1.0 - s / length], powers, 1)[0];
+        let (sum, of_basis) = used
+            .iter()
+            .fold((0.0, 0.0), |sum, &(s, v)| (sum.0 + v, sum.1 + basis(s)));
+        let least = LEAST_BASIS * used.len() as f64;
+        return Shape::Short {
+            powers,
+            terms: vec![sum / of_basis.max(least)],
+        };
     }
     let terms = (used.len() / 2).clamp(1, SHORT_TERMS);
     let matrix = DMatrix::from_fn(used.len(), terms, |row, column| {

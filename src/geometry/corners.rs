@@ -82,7 +82,39 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
         stretch.1 = corner.arc_length;
     }
     drop_if_curve(&mut found, stretch, window);
+    for corner in &mut found {
+        to_sharp_vertex(corner, wall, &vertices, window);
+    }
+    found.sort_by(|a, b| a.arc_length.total_cmp(&b.arc_length));
+    // Two windows may have found one vertex.
+    found.dedup_by(|a, b| a.arc_length.total_cmp(&b.arc_length).is_eq());
     found
+}
+
+/// Moves a corner to the vertex that makes up more than half of its turning, if one in its window does:
+/// every window that holds such a vertex between even arcs turns alike.
+fn to_sharp_vertex(corner: &mut Corner, wall: &Loop, vertices: &[(f64, f64)], window: f64) {
+    let n = vertices.len();
+    let length = wall.length();
+    let start = vertices.partition_point(|v| v.0 < corner.arc_length);
+    let apart = |k: usize| {
+        let d = (vertices[k % n].0 - corner.arc_length).rem_euclid(length);
+        d.min(length - d)
+    };
+    let ahead = (start..start + n).take_while(|&k| apart(k) <= 0.5 * window);
+    let behind = (1..n)
+        .map(|k| start + n - k)
+        .take_while(|&k| apart(k) <= 0.5 * window);
+    let sharpest = ahead.chain(behind).map(|k| k % n).max_by(|&a, &b| {
+        let turning = |k: usize| vertices[k].1 * corner.turning.signum();
+        turning(a).total_cmp(&turning(b))
+    });
+    if let Some(k) = sharpest
+        && vertices[k].1 * corner.turning.signum() > 0.5 * corner.turning.abs()
+    {
+        corner.arc_length = vertices[k].0;
+        corner.at = wall.points[k];
+    }
 }
 
 /// Takes the last corner back if its stretch is too long for one.
@@ -132,6 +164,30 @@ mod tests {
         assert_eq!(re_entrant.len(), 1);
         assert_eq!(re_entrant[0].at.map(f64::to_bits), [1.0_f64.to_bits(); 2]);
         assert!((re_entrant[0].fluid_angle().to_degrees() - 270.0).abs() < 1e-9);
+    }
+
+    #[test]
+    fn a_crest_between_two_arcs_is_found_at_its_vertex() {
+        let half = 28_f64.to_radians();
+        let arc = |centre: f64| {
+            (0..100).map(move |k| {
+                let t = half * (f64::from(k) / 50.0 - 1.0);
+                [centre + t.sin(), half.cos() - t.cos()]
+            })
+        };
+        let mut points: Vec<Point> = arc(0.0).chain(arc(2.0 * half.sin())).collect();
+        points.extend([[3.0 * half.sin(), 0.0], [0.5, 3.0]]);
+        let crest = points[100];
+        for window in [0.02, 0.05, 0.15] {
+            let found = corners(&Loop::new(points.clone()), window, 0.2);
+            let sharp: Vec<_> = found.iter().filter(|c| c.turning < 0.0).collect();
+            assert_eq!(sharp.len(), 1, "{window}");
+            assert_eq!(
+                sharp[0].at.map(f64::to_bits),
+                crest.map(f64::to_bits),
+                "{window}"
+            );
+        }
     }
 
     #[test]

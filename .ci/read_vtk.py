@@ -33,6 +33,7 @@ UNITS = {
     "loop": ("1",),
     "corner": ("1",),
     "wall": ("1",),
+    "sensitivity": ("1/m^2",),
 }
 problems = []
 

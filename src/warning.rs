@@ -45,6 +45,10 @@ pub enum Code {
     ThinPart,
     /// An exported field was thinned to keep its size in bounds.
     FieldThinned,
+    /// A re-entrant corner makes the local sensitivity unbounded there.
+    SensitivitySingular,
+    /// First-order predictions and new solves differ.
+    SensitivityMismatch,
 }
 
 impl Code {
@@ -64,6 +68,8 @@ impl Code {
             Self::PerimeterSampling => "perimeter_sampling",
             Self::ThinPart => "thin_part",
             Self::FieldThinned => "field_thinned",
+            Self::SensitivitySingular => "sensitivity_singular",
+            Self::SensitivityMismatch => "sensitivity_mismatch",
         }
     }
 }

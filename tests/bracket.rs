@@ -13,12 +13,12 @@ use proptest::prelude::*;
 fn known() -> Vec<(&'static str, f64)> {
     let um = 1e-6;
     let square = closed_form::rectangle(100.0 * um, 100.0 * um).unwrap();
-    let flat = closed_form::rectangle(1000.0 * um, 100.0 * um).unwrap();
+    let flat = closed_form::rectangle(400.0 * um, 100.0 * um).unwrap();
     let triangle = closed_form::equilateral_triangle(100.0 * um).unwrap();
     let ring = closed_form::eccentric_annulus(100.0 * um, 50.0 * um, 25.0 * um).unwrap();
     vec![
         ("rectangle width=100um height=100um", square.conductance),
-        ("rectangle width=1000um height=100um", flat.conductance),
+        ("rectangle width=400um height=100um", flat.conductance),
         (
             "triangle base=100um left_angle=60deg right_angle=60deg",
             triangle.conductance,
@@ -47,6 +47,12 @@ fn proven(flow: &SectionFlow) -> Bracket {
     flow.bracket.unwrap()
 }
 
+/// How many times the usual number of places is tried; all fifty on every grid need 17.
+fn more_places() -> u32 {
+    let asked = std::env::var("BRACKET_PLACES").ok();
+    asked.and_then(|n| n.parse().ok()).unwrap_or(1)
+}
+
 /// Curved walls are chords within 1e-7 of the size, which moves K by less than this.
 const CHORDS: f64 = 1e-6;
 
@@ -54,8 +60,15 @@ const CHORDS: f64 = 1e-6;
 fn the_bracket_holds_on_every_grid_at_any_offset_and_angle() {
     for (spec, exact) in known() {
         let section = outline(spec);
-        for cells in [8.0, 16.0, 32.0, 64.0, 128.0] {
-            for k in 0..12 {
+        for (cells, places) in [
+            (8.0, 50),
+            (16.0, 50),
+            (32.0, 50),
+            (64.0, 50),
+            (128.0, 12),
+            (256.0, 3),
+        ] {
+            for k in 0..places * more_places() {
                 let k = f64::from(k);
                 let offset = [(0.137 + 0.618 * k).fract(), (0.411 + 0.755 * k).fract()];
                 let turned = section.clone().rotated(0.37 * k, [0.0, 0.0]);
@@ -72,16 +85,16 @@ fn the_bracket_holds_on_every_grid_at_any_offset_and_angle() {
 }
 
 #[test]
-fn the_gap_at_128_cells_is_small_and_falls_with_the_square_of_the_spacing() {
+fn the_gap_at_128_cells_is_small_and_falls_faster_than_the_square_of_the_spacing() {
     for (spec, limit) in [
-        ("rectangle width=100um height=100um", 4e-4),
-        ("koh_groove opening=100um depth=20um", 4e-4),
-        ("circle diameter=100um", 4e-4),
+        ("rectangle width=100um height=100um", 4e-5),
+        ("koh_groove opening=100um depth=20um", 4e-5),
+        ("circle diameter=100um", 4e-5),
         (
             "triangle base=100um left_angle=60deg right_angle=60deg",
-            5e-4,
+            5e-5,
         ),
-        ("circular_sector radius=100um angle=270deg", 5e-3),
+        ("circular_sector radius=100um angle=270deg", 1e-3),
     ] {
         let section = outline(spec);
         let re_entrant = spec.starts_with("circular_sector");
@@ -99,7 +112,7 @@ fn the_gap_at_128_cells_is_small_and_falls_with_the_square_of_the_spacing() {
         let fine = width(128.0);
         assert!(fine < limit, "{spec}: {fine:.2e}");
         let order = (width(32.0) / fine).log2() / 2.0;
-        let least = if re_entrant { 4.0 / 3.0 - 0.1 } else { 1.8 };
+        let least = if re_entrant { 4.0 / 3.0 - 0.1 } else { 2.3 };
         assert!(order > least, "{spec}: order {order:.2}");
     }
 }
@@ -151,6 +164,78 @@ proptest! {
         }
         let found = bracket(&lattice, &mask, &phi).unwrap().scaled(lattice.spacing.powi(4));
         prop_assert!(found.low <= exact && exact <= found.high, "{found:?} {exact}");
+    }
+}
+
+#[test]
+fn corners_that_miss_their_node_by_rounding_have_a_bracket_on_every_grid() {
+    let um = 1e-6;
+    let angle = |x: f64, y: f64| {
+        let places = [
+            [0.0, 0.0],
+            [80.0, 0.0],
+            [80.0, 40.0],
+            [40.0, 40.0],
+            [40.0, 80.0],
+            [0.0, 80.0],
+        ];
+        Outline::single(places.map(|[a, b]| [(a + x) * um, (b + y) * um]).to_vec())
+    };
+    let (mut lowest, mut highest) = (0.0_f64, f64::INFINITY);
+    for k in 0..40 {
+        let section = angle(0.31 * f64::from(k), -1.7 * f64::from(k));
+        for turned in [section.clone(), section.mirrored_left_right(0.0)] {
+            let Bracket { low, high } = proven(&solve(&turned, f64::from(24 + k), None));
+            (lowest, highest) = (lowest.max(low), highest.min(high));
+        }
+    }
+    assert!(lowest <= highest, "{lowest:e} {highest:e}");
+}
+
+#[test]
+fn a_vertex_a_hair_from_a_grid_line_or_node_at_most_doubles_the_gap() {
+    let convex = vec![
+        [0.0, 0.0],
+        [1.0, 0.13],
+        [1.31, 0.7],
+        [0.62, 1.2],
+        [-0.2, 0.8],
+    ];
+    let re_entrant = vec![
+        [0.0, 0.0],
+        [1.9, 0.2],
+        [1.8, 0.9],
+        [0.9, 0.8],
+        [0.8, 1.9],
+        [-0.1, 1.7],
+    ];
+    for points in [convex, re_entrant] {
+        let section = Outline::single(points.clone());
+        let cells = 48.0;
+        let generic = (0..12)
+            .map(|k| {
+                let k = f64::from(k);
+                let offset = [(0.137 + 0.618 * k).fract(), (0.411 + 0.755 * k).fract()];
+                proven(&solve(&section, cells, Some(offset))).relative_width()
+            })
+            .fold(0.0, f64::max);
+        let spacing = solve(&section, cells, Some([0.0; 2])).grid.spacing;
+        let (low, _) = section.bounds().unwrap();
+        for vertex in points {
+            for hair in [1e-9, -1e-9, 1e-7, -1e-7, 2e-6, -2e-6, 1e-4, -1e-4] {
+                let on_line = [0, 1].map(|axis: usize| {
+                    let at = (vertex[axis] - low[axis]) / spacing;
+                    at.ceil() - at + hair + 1.0
+                });
+                for offset in [on_line, [on_line[0], 1.37], [1.41, on_line[1]]] {
+                    let width = proven(&solve(&section, cells, Some(offset))).relative_width();
+                    assert!(
+                        width <= 2.0 * generic,
+                        "{vertex:?}, {hair:e}: {width:.2e} against {generic:.2e}"
+                    );
+                }
+            }
+        }
     }
 }
 

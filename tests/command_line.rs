@@ -6,6 +6,8 @@
     reason = "tests read and write files of their own and may fail loudly"
 )]
 
+#[path = "command_line/accuracy.rs"]
+mod accuracy;
 #[path = "command_line/answers.rs"]
 mod answers;
 #[path = "command_line/bad_input.rs"]
@@ -16,12 +18,16 @@ mod bad_options;
 mod check;
 #[path = "command_line/draw.rs"]
 mod draw;
+#[path = "command_line/film_reach.rs"]
+mod film_reach;
 #[path = "command_line/help.rs"]
 mod help;
 #[path = "command_line/json_contract.rs"]
 mod json_contract;
 #[path = "command_line/outputs.rs"]
 mod outputs;
+#[path = "command_line/sensitivity.rs"]
+mod sensitivity;
 #[path = "command_line/shipped.rs"]
 mod shipped;
 #[path = "command_line/statuses.rs"]

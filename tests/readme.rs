@@ -288,6 +288,40 @@ fn every_json_key_named_is_in_the_output() {
 }
 
 #[test]
+fn every_sensitivity_case_and_key_named_is_in_the_output() {
+    let text = readme();
+    let arguments = ["sensitivity", "shapes/drawn/koh_groove.toml", "--json"];
+    let output = etchwise(&arguments);
+    let json: serde_json::Value = serde_json::from_slice(&output.stdout).unwrap();
+    let cases = json["sensitivities"].as_array().unwrap();
+    let section = between(
+        &text,
+        "\n## Sensitivity\n",
+        "<!-- sensitivity keys: begin -->",
+    );
+    for case in cases {
+        let name = case["name"].as_str().unwrap();
+        assert!(quoted(section).contains(&name), "{name}");
+    }
+    let table = between(
+        &text,
+        "<!-- sensitivity keys: begin -->",
+        "<!-- sensitivity keys: end -->",
+    );
+    let mut seen = 0;
+    for line in table.lines().filter(|line| line.starts_with("| `")) {
+        let keys = line.split(" |").next().unwrap();
+        for key in quoted(keys) {
+            let pointer = format!("/{}", key.replace('.', "/"));
+            let is_there = json.pointer(&pointer).is_some() || cases[0].pointer(&pointer).is_some();
+            assert!(is_there, "no key {key}");
+            seen += 1;
+        }
+    }
+    assert!(seen > 18, "only {seen} keys found");
+}
+
+#[test]
 fn the_measured_friction_is_quoted_with_what_the_solver_says() {
     let path = Path::new("shapes/drawn/water_duct.toml");
     let section = read_section(&root().join(path), &ReadOptions::default()).unwrap();

@@ -2,6 +2,7 @@
 
 use clap::{Arg, ArgAction, Command, value_parser};
 
+use super::accuracy_options::accuracy_options;
 use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
 
 /// Printed below the help of the program.
@@ -29,13 +30,14 @@ pub fn command() -> Command {
         .subcommand(solve())
         .subcommand(check())
         .subcommand(draw())
+        .subcommand(sensitivity())
 }
 
-fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
+pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
     Arg::new(name).long(name).value_name(value).help(help)
 }
 
-fn flag(name: &'static str, help: &'static str) -> Arg {
+pub(super) fn flag(name: &'static str, help: &'static str) -> Arg {
     Arg::new(name)
         .long(name)
         .action(ArgAction::SetTrue)
@@ -114,37 +116,13 @@ fn solve() -> Command {
             "Example: etchwise solve wafer.toml --fluid water --temperature 25C \\\n  \
              --length 20mm --flow-rate 5uL/min --picture wafer.png",
         );
-    let command = fluid_options(input(command));
+    let command = accuracy_options(fluid_options(film_options(input(command))));
     let heading = "Output";
-    wall_options(common(command), heading)
-        .arg(
-            option("cells-across", "N", "Cells across the smallest lumen")
-                .value_parser(value_parser!(f64))
-                .long_help(
-                    "Cells across the largest circle that fits into the smallest lumen: the short \
-                     side of a rectangle, the gap of an annulus. At least 4. Default: refined until \
-                     the estimated error of the conductance is within 0.01 %. Example: \
-                     --cells-across 128",
-                ),
-        )
+    wall_options(result(command), heading)
         .arg(flag(
             "shortcuts",
             "Also say what the usual formulas would have said",
         ))
-        .arg(flag("csv", "Print a CSV table, unit in every head").conflicts_with("json").help_heading(heading))
-        .arg(
-            Arg::new("output")
-                .short('o')
-                .long("output")
-                .value_name("FILE")
-                .value_parser(value_parser!(std::path::PathBuf))
-                .help("Write the result to FILE instead")
-                .long_help(
-                    "Write the result to FILE; - is standard output, the default. FILE appears \
-                     only when it is complete. Example: -o wafer.json",
-                )
-                .help_heading(heading),
-        )
         .arg(
             Arg::new("vtk")
                 .long("vtk")
@@ -180,11 +158,6 @@ fn solve() -> Command {
                 )
                 .help_heading(heading),
         )
-        .arg(flag("verbose", "Show the grids and the solver's course").short('v').help_heading(heading))
-        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
-        .arg(flag("deny-warnings", "End with status 1 on any warning").long_help(
-            "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
-        ))
 }
 
 /// Files that hold the wall shear.
@@ -212,6 +185,124 @@ fn wall_options(command: Command, heading: &'static str) -> Command {
                 .long_help(
                     "Write a picture of the wall shear along the developed wall; the ending says .png \
                      or .svg. May be given more than once. Example: --wall-picture shear.png",
+                )
+                .help_heading(heading),
+        )
+}
+
+fn film_options(command: Command) -> Command {
+    let film = "Film on the walls";
+    command
+        .arg(
+            option("film", "THICKNESS", "Solve what a film of this thickness leaves")
+                .long_help(
+                    "Solve what a conformal film of this thickness leaves of the section: the fluid at \
+                     least this far from the wall. Corners of the fluid stay sharp, re-entrant ones \
+                     become round; necks may close and islands grow together, which is reported. \
+                     Example: --film 0.5um",
+                )
+                .help_heading(film),
+        )
+        .arg(
+            option("film-on", "WALLS", "Walls with the film: all, floor, lid [default: all]")
+                .value_parser(["all", "floor", "lid"])
+                .requires("film")
+                .long_help(
+                    "Walls that carry the film: all; floor, those whose normal out of the fluid points \
+                     down within 45 degrees; lid, up. The film ends square, or at its own level where a \
+                     wall without film leans at up to 135 degrees to the coated one. Default: all. Example: \
+                     --film 0.5um --film-on floor",
+                )
+                .help_heading(film),
+        )
+}
+
+fn cells_across() -> Arg {
+    option("cells-across", "N", "Cells across the smallest lumen")
+        .value_parser(value_parser!(f64))
+        .long_help(
+            "Cells across the largest circle that fits into the smallest lumen: the short side of a \
+             rectangle, the gap of an annulus. At least 4. Default: at least 128, and as many as the \
+             identities of the wall shear need. Example: --cells-across 128",
+        )
+}
+
+/// How and where the main result is printed.
+fn result(command: Command) -> Command {
+    let heading = "Output";
+    common(command)
+        .arg(
+            flag("csv", "Print a CSV table, unit in every head")
+                .conflicts_with("json")
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("output")
+                .short('o')
+                .long("output")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the result to FILE instead")
+                .long_help(
+                    "Write the result to FILE; - is standard output, the default. FILE appears \
+                     only when it is complete. Example: -o wafer.json",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            flag("verbose", "Show the grids and the solver's course")
+                .short('v')
+                .help_heading(heading),
+        )
+        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
+        .arg(
+            flag("deny-warnings", "End with status 1 on any warning").long_help(
+                "End with status 1 on any warning that is not a mere caution. Example: \
+                 --deny-warnings",
+            ),
+        )
+}
+
+fn sensitivity() -> Command {
+    let command = Command::new("sensitivity")
+        .about("What small changes of the wall do to conductance and resistance")
+        .after_help(
+            "Example: etchwise sensitivity wafer.toml --picture sensitivity.png\n\n\
+             Cases: scale, depth, width, over-etch, film, single walls, wall angle, lid gap; what\n\
+             exactly moves is printed with the result.",
+        );
+    let heading = "Output";
+    result(input(command))
+        .arg(cells_across())
+        .arg(
+            flag("no-check", "Do not check the cases by new solves").long_help(
+                "Do not check the cases by solving the section again with its walls moved either way. \
+                 Faster, but where the second order matters is then not known. Example: --no-check",
+            ),
+        )
+        .arg(
+            Arg::new("vtk")
+                .long("vtk")
+                .value_name("PREFIX")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write PREFIX.vtp (wall)")
+                .long_help(
+                    "Write the wall with its local sensitivity, shear and outward normal as \
+                     PREFIX.vtp, for viewers; coordinates in m. Example: --vtk out/wafer",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("picture")
+                .long("picture")
+                .value_name("FILE")
+                .action(ArgAction::Append)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write a picture of the wall, .png or .svg")
+                .long_help(
+                    "Write a picture of the wall coloured by its local sensitivity, with numbers; the \
+                     ending says .png or .svg. May be given more than once. Example: --picture \
+                     wafer.png",
                 )
                 .help_heading(heading),
         )

@@ -3,10 +3,11 @@
 use std::fmt::Write as _;
 
 use crate::flow::{FlowError, FluidError, OperatingPointError};
-use crate::geometry::NominalError;
+use crate::geometry::{FilmError, NominalError};
 use crate::grid::ResolutionError;
 use crate::intake::ReadError;
 use crate::report::{PictureError, VtkError, WriteError};
+use crate::study::ReachError;
 use crate::units::UnitError;
 
 use super::exit_status::ExitStatus;
@@ -38,6 +39,24 @@ impl Failure {
         Self::usage(format!("--{option}: {error}"), &error.hint())
     }
 
+    /// The same with what it is about before the message.
+    pub(super) fn of(self, what: &str) -> Self {
+        let text = match self.text.strip_prefix("error: ") {
+            Some(rest) => format!("error: {what}: {rest}"),
+            None => self.text,
+        };
+        Self { text, ..self }
+    }
+
+    /// A result that has no text form.
+    pub(super) fn not_printed(error: impl std::fmt::Display) -> Self {
+        Self::new(
+            ExitStatus::Unreadable,
+            format!("the result cannot be printed: {error}"),
+            "",
+        )
+    }
+
     pub(super) fn print(&self) {
         output::talk(&self.text);
     }
@@ -61,6 +80,29 @@ impl From<FlowError> for Failure {
             _ => ExitStatus::NotSolved,
         };
         Self::new(status, &error, &error.hint())
+    }
+}
+
+impl From<FilmError> for Failure {
+    fn from(error: FilmError) -> Self {
+        let status = match error {
+            FilmError::NotPositive { .. } | FilmError::TooThin { .. } => ExitStatus::Usage,
+            FilmError::Failed { .. } => ExitStatus::NotSolved,
+            _ => ExitStatus::OutsideValidity,
+        };
+        Self::new(status, &error, error.hint())
+    }
+}
+
+impl From<ReachError> for Failure {
+    fn from(error: ReachError) -> Self {
+        match &error {
+            ReachError::Flow { error: inner, .. } => {
+                let status = Self::from(inner.clone()).status;
+                Self::new(status, &error, &error.hint())
+            }
+            _ => Self::new(ExitStatus::Unreadable, &error, &error.hint()),
+        }
     }
 }
 

@@ -1,12 +1,13 @@
 //! From the FILE argument to a checked section.
 
 use std::fmt::Write as _;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 
 use clap::ArgMatches;
 
 use crate::geometry::Outline;
-use crate::intake::{ReadOptions, Section, SectionKind, read_section};
+use crate::intake::{Provenance, ReadOptions, Section, SectionKind, read_section};
+use crate::report::SourceRecord;
 use crate::units;
 use crate::warning::{Code, Warning};
 
@@ -21,6 +22,34 @@ pub(super) struct CheckedSection {
     pub(super) section: Section,
     pub(super) outline: Outline,
     pub(super) warnings: Vec<Warning>,
+}
+
+/// The FILE argument.
+pub(super) fn file(matches: &ArgMatches) -> PathBuf {
+    matches
+        .get_one::<PathBuf>("file")
+        .cloned()
+        .unwrap_or_default()
+}
+
+/// The section's own name, or that of its file.
+pub(super) fn section_name(section: &Section, file: &Path) -> String {
+    section.name.clone().unwrap_or_else(|| {
+        file.file_stem().map_or_else(
+            || "section".to_owned(),
+            |s| s.to_string_lossy().into_owned(),
+        )
+    })
+}
+
+/// Where a section came from, for the outputs.
+pub(super) fn source_record(provenance: &Provenance) -> SourceRecord<'_> {
+    SourceRecord {
+        path: &provenance.path,
+        sha256: &provenance.sha256,
+        kind: provenance.kind.word(),
+        notes: &provenance.notes,
+    }
 }
 
 /// The options that say how a file is to be read.
@@ -71,29 +100,33 @@ pub(super) fn read(path: &Path, options: &ReadOptions) -> Result<Section, Failur
     Ok(section)
 }
 
+/// Refuses an outline with problems; `name` says whose it is, `advice` follows the remedy.
+pub(super) fn refuse_problems(outline: &Outline, name: &str, advice: &str) -> Result<(), Failure> {
+    let problems = outline.problems();
+    if !problems.has_errors() {
+        return Ok(());
+    }
+    let errors: Vec<_> = problems.errors().collect();
+    let mut text = format!("{name}: the outline cannot be used");
+    for problem in errors.iter().take(PROBLEMS_SHOWN) {
+        let _ = write!(text, "\n  {problem}");
+    }
+    if errors.len() > PROBLEMS_SHOWN {
+        let _ = write!(text, "\n  and {} more", errors.len() - PROBLEMS_SHOWN);
+    }
+    let remedy = errors.first().map_or("", |problem| problem.remedy());
+    let help = format!("{remedy}{advice}");
+    Err(Failure::new(ExitStatus::Unreadable, text, &help))
+}
+
 /// Reads a file and refuses an outline with problems.
 pub(super) fn checked_section(
     path: &Path,
     options: &ReadOptions,
 ) -> Result<CheckedSection, Failure> {
     let section = read(path, options)?;
-    let problems = section.outline.problems();
-    if problems.has_errors() {
-        let errors: Vec<_> = problems.errors().collect();
-        let mut text = format!("{}: the outline cannot be used", path.display());
-        for problem in errors.iter().take(PROBLEMS_SHOWN) {
-            let _ = write!(text, "\n  {problem}");
-        }
-        if errors.len() > PROBLEMS_SHOWN {
-            let _ = write!(text, "\n  and {} more", errors.len() - PROBLEMS_SHOWN);
-        }
-        let remedy = errors.first().map_or("", |problem| problem.remedy());
-        let help = format!(
-            "{remedy}; `etchwise check {}` lists all problems",
-            path.display()
-        );
-        return Err(Failure::new(ExitStatus::Unreadable, text, &help));
-    }
+    let advice = format!("; `etchwise check {}` lists all problems", path.display());
+    refuse_problems(&section.outline, &path.display().to_string(), &advice)?;
     let (outline, dropped) = section.outline.clone().without_duplicate_vertices();
     let mut warnings = section.warnings.clone();
     if dropped > 0 {

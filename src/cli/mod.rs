@@ -4,6 +4,7 @@
 //! what it means, with units applied and before any file is opened. Machine output goes to standard
 //! output, talk to standard error.
 
+mod accuracy_options;
 mod arguments;
 mod check;
 mod draw;
@@ -12,6 +13,8 @@ mod failure;
 mod input;
 mod output;
 mod quantities;
+mod sections;
+mod sensitivity;
 mod solve;
 
 use std::ffi::OsString;
@@ -39,6 +42,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("solve", matches)) => solve::run(matches),
         Some(("check", matches)) => check::run(matches),
         Some(("draw", matches)) => draw::run(matches),
+        Some(("sensitivity", matches)) => sensitivity::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

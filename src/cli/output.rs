@@ -5,6 +5,8 @@ use std::path::{Path, PathBuf};
 
 use clap::ArgMatches;
 
+use crate::report::{OutputFile, PictureFormat, TextOptions, write_files};
+
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 
@@ -28,6 +30,89 @@ pub(super) fn target(matches: &ArgMatches) -> Option<PathBuf> {
         .get_one::<PathBuf>("output")
         .filter(|path| path.as_path() != Path::new("-"))
         .cloned()
+}
+
+/// Form of the main result.
+pub(super) enum Format {
+    Text(TextOptions),
+    Json,
+    Csv,
+}
+
+impl Format {
+    pub(super) fn of(matches: &ArgMatches) -> Self {
+        if matches.get_flag("json") {
+            Self::Json
+        } else if matches.get_flag("csv") {
+            Self::Csv
+        } else {
+            Self::Text(TextOptions {
+                ascii: matches.get_flag("ascii"),
+                verbose: matches.get_flag("verbose"),
+            })
+        }
+    }
+}
+
+/// The pictures that an option asks for, each with its kind.
+pub(super) fn pictures(
+    matches: &ArgMatches,
+    name: &str,
+) -> Result<Vec<(PathBuf, PictureFormat)>, Failure> {
+    matches
+        .get_many::<PathBuf>(name)
+        .into_iter()
+        .flatten()
+        .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))
+        .collect()
+}
+
+/// The begin of the names of files for viewers, if they are asked for.
+pub(super) fn vtk_prefix(matches: &ArgMatches) -> Result<Option<PathBuf>, Failure> {
+    let Some(prefix) = matches.get_one::<PathBuf>("vtk").cloned() else {
+        return Ok(None);
+    };
+    let ends_in_folder = prefix.to_string_lossy().ends_with(std::path::is_separator);
+    if ends_in_folder || prefix.file_name().is_none() || prefix == Path::new("-") {
+        return Err(Failure::usage(
+            format!("--vtk: `{}` does not end in a name", prefix.display()),
+            "give the begin of the file names, for example --vtk out/wafer",
+        ));
+    }
+    Ok(Some(prefix))
+}
+
+/// What must not be overwritten, and whether files are told of.
+pub(super) struct Inputs<'a> {
+    pub(super) file: &'a Path,
+    pub(super) quiet: bool,
+}
+
+/// Writes the files, and the main result to its file or to standard output.
+pub(super) fn deliver(
+    mut files: Vec<(PathBuf, Vec<u8>)>,
+    text: String,
+    target: Option<&Path>,
+    inputs: &Inputs<'_>,
+) -> Result<(), Failure> {
+    let printed = match target {
+        Some(path) => {
+            files.push((path.to_owned(), text.into_bytes()));
+            None
+        }
+        None => Some(text),
+    };
+    let list: Vec<OutputFile<'_>> = files
+        .iter()
+        .map(|(path, bytes)| OutputFile { path, bytes })
+        .collect();
+    write_files(&list, &[inputs.file])?;
+    if !inputs.quiet {
+        for (path, _) in &files {
+            talk(&format!("wrote {}", path.display()));
+        }
+    }
+    printed.map_or(Ok(()), |text| print(&text))
 }
 
 /// Longest line said, characters: what a file holds may be quoted in it.

@@ -6,21 +6,25 @@ use clap::ArgMatches;
 
 use crate::flow::{
     Drive, Fluid, OperatingPoint, ShortcutRow, SolveOptions, SolvedSection, WallReport,
-    outside_validity, shortcuts, solve_outline, validity_warnings,
+    outside_validity, shortcuts, validity_warnings,
 };
+use crate::geometry::Film;
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, OutputFile, PictureFormat, SolveDocument, SourceRecord, TextOptions, check_targets,
-    legacy_vtk_path, vtk_paths, write_files,
+    self, PictureFormat, ReachRecord, SolveDocument, SourceRecord, check_targets, legacy_vtk_path,
+    vtk_paths,
 };
+use crate::study::Reach;
 use crate::units;
 use crate::warning::Code;
 
+use super::accuracy_options::solve_options;
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
-use super::input::{CheckedSection, checked_section, read_options};
-use super::output;
+use super::input::{self, CheckedSection, checked_section, read_options};
+use super::output::{self, Format, Inputs};
 use super::quantities::{fluid, positive, quantity};
+use super::sections::{Sections, film};
 
 /// Nodes of an exported field, about: above that the field is thinned and a warning says so.
 const FIELD_NODES: usize = 16_000_000;
@@ -30,6 +34,7 @@ const PICTURE_NODES: usize = 1_500_000;
 struct Request {
     file: PathBuf,
     read: ReadOptions,
+    film: Option<Film>,
     solve: SolveOptions,
     fluid: Option<Fluid>,
     length: Option<f64>,
@@ -52,48 +57,20 @@ struct VtkRequest {
     is_legacy: bool,
 }
 
-enum Format {
-    Text(TextOptions),
-    Json,
-    Csv,
-}
-
 pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     super::set_threads(matches)?;
     let request = Request::new(matches)?;
     request.check_targets()?;
     let checked = checked_section(&request.file, &request.read)?;
-    let solved = solve_outline(&checked.outline, &request.solve)?;
-    request.answer(&checked, &solved)
-}
-
-fn path(matches: &ArgMatches, name: &str) -> Option<PathBuf> {
-    matches.get_one::<PathBuf>(name).cloned()
-}
-
-/// Pictures that one option asks for.
-fn pictures(matches: &ArgMatches, name: &str) -> Result<Vec<(PathBuf, PictureFormat)>, Failure> {
-    matches
-        .get_many::<PathBuf>(name)
-        .into_iter()
-        .flatten()
-        .map(|path| Ok((path.clone(), PictureFormat::of_path(path)?)))
-        .collect()
+    let sections = Sections::new(&checked, request.film.as_ref())?;
+    let solved = sections.solve(&request.solve)?;
+    let reach = sections.reach(&solved.flow, &request.solve)?;
+    request.answer(&checked, &sections, &solved, reach.as_ref())
 }
 
 /// Field and wall files, if they are asked for.
 fn vtk(matches: &ArgMatches) -> Result<Option<VtkRequest>, Failure> {
-    let Some(prefix) = path(matches, "vtk") else {
-        return Ok(None);
-    };
-    let ends_in_folder = prefix.to_string_lossy().ends_with(std::path::is_separator);
-    if ends_in_folder || prefix.file_name().is_none() || prefix == Path::new("-") {
-        return Err(Failure::usage(
-            format!("--vtk: `{}` does not end in a name", prefix.display()),
-            "give the begin of the file names, for example --vtk out/wafer",
-        ));
-    }
-    Ok(Some(VtkRequest {
+    Ok(output::vtk_prefix(matches)?.map(|prefix| VtkRequest {
         prefix,
         is_legacy: matches.get_flag("legacy-vtk"),
     }))
@@ -137,33 +114,21 @@ impl Request {
                 "add --fluid water --temperature 25C, or --viscosity (and --density)",
             ));
         }
-        let format = if matches.get_flag("json") {
-            Format::Json
-        } else if matches.get_flag("csv") {
-            Format::Csv
-        } else {
-            Format::Text(TextOptions {
-                ascii: matches.get_flag("ascii"),
-                verbose: matches.get_flag("verbose"),
-            })
-        };
         Ok(Self {
-            file: path(matches, "file").unwrap_or_default(),
+            file: input::file(matches),
             read: read_options(matches)?,
-            solve: SolveOptions {
-                cells_across: matches.get_one::<f64>("cells-across").copied(),
-                ..SolveOptions::default()
-            },
+            solve: solve_options(matches)?,
+            film: film(matches)?,
             fluid,
             length,
             drive,
             shortcuts: matches.get_flag("shortcuts"),
-            format,
+            format: Format::of(matches),
             output: output::target(matches),
             vtk: vtk(matches)?,
-            pictures: pictures(matches, "picture")?,
-            wall_csv: path(matches, "wall-csv"),
-            wall_pictures: pictures(matches, "wall-picture")?,
+            pictures: output::pictures(matches, "picture")?,
+            wall_csv: matches.get_one::<PathBuf>("wall-csv").cloned(),
+            wall_pictures: output::pictures(matches, "wall-picture")?,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
@@ -190,7 +155,9 @@ impl Request {
     fn answer(
         &self,
         checked: &CheckedSection,
+        sections: &Sections,
         solved: &SolvedSection,
+        reach: Option<&Reach>,
     ) -> Result<ExitStatus, Failure> {
         let flow = &solved.flow;
         let fluid = self.fluid.as_ref();
@@ -202,27 +169,37 @@ impl Request {
         };
         let rows: Option<Vec<ShortcutRow>> = self
             .shortcuts
-            .then(|| shortcuts(&checked.outline, flow.conductance.value));
-        let walls = WallReport::new(
-            solved.outline(),
-            &flow.wall_shear.curve,
-            &checked.section.walls,
-        );
+            .then(|| shortcuts(&sections.outline, flow.conductance.value));
+        // Named stretches are places on the wall without the film.
+        let named = match &sections.film {
+            Some(_) => &[][..],
+            None => &checked.section.walls[..],
+        };
+        let walls = WallReport::new(solved.outline(), &flow.wall_shear.curve, named);
         let mut warnings = checked.warnings.clone();
         if let Some(fluid) = fluid {
             warnings.extend(validity_warnings(flow, fluid, point.as_ref()));
         }
         let provenance = &checked.section.provenance;
-        let name = self.name(checked);
+        let mut notes = provenance.notes.clone();
+        if sections.film.is_some() && !checked.section.walls.is_empty() {
+            notes.push(
+                "the named walls belong to the section without the film; walls go by direction"
+                    .to_owned(),
+            );
+        }
+        let name = input::section_name(&checked.section, &self.file);
+        let given = checked.section.extras.reach.as_ref();
+        let reason = given.and_then(|reach| reach.reason.as_deref());
         let document = SolveDocument {
             source: Some(SourceRecord {
-                path: &provenance.path,
-                sha256: &provenance.sha256,
-                kind: provenance.kind.word(),
-                notes: &provenance.notes,
+                notes: &notes,
+                ..input::source_record(provenance)
             }),
             section_name: &name,
+            film: sections.film.as_ref(),
             flow,
+            reach: reach.map(|reach| ReachRecord { reach, reason }),
             fluid,
             length: self.length,
             operating_point: point.as_ref(),
@@ -239,7 +216,9 @@ impl Request {
         let invalid = fluid
             .zip(point.as_ref())
             .is_some_and(|(fluid, point)| outside_validity(flow, fluid, point));
-        Ok(if !flow.solver.converged {
+        let is_solved =
+            flow.solver.converged && flow.accuracy.is_met && reach.is_none_or(Reach::is_converged);
+        Ok(if !is_solved {
             ExitStatus::NotSolved
         } else if invalid {
             ExitStatus::OutsideValidity
@@ -247,16 +226,6 @@ impl Request {
             ExitStatus::OutsideLimit
         } else {
             ExitStatus::Done
-        })
-    }
-
-    /// The section's own name, or that of its file.
-    fn name(&self, checked: &CheckedSection) -> String {
-        checked.section.name.clone().unwrap_or_else(|| {
-            self.file.file_stem().map_or_else(
-                || "section".to_owned(),
-                |s| s.to_string_lossy().into_owned(),
-            )
         })
     }
 
@@ -288,13 +257,11 @@ impl Request {
         }
         self.add_wall_files(document, &mut files)?;
         let text = self.main_output(document)?;
-        if let Some(path) = &self.output {
-            files.push((path.clone(), text.into_bytes()));
-            self.write(&files)
-        } else {
-            self.write(&files)?;
-            output::print(&text)
-        }
+        let inputs = Inputs {
+            file: &self.file,
+            quiet: self.quiet,
+        };
+        output::deliver(files, text, self.output.as_deref(), &inputs)
     }
 
     /// The wall shear as a table and as pictures.
@@ -304,7 +271,7 @@ impl Request {
         files: &mut Vec<(PathBuf, Vec<u8>)>,
     ) -> Result<(), Failure> {
         if let Some(path) = &self.wall_csv {
-            let text = report::wall_csv(document).map_err(|e| failed(&e))?;
+            let text = report::wall_csv(document).map_err(Failure::not_printed)?;
             files.push((path.clone(), text.into_bytes()));
         }
         for (path, format) in &self.wall_pictures {
@@ -316,34 +283,11 @@ impl Request {
         Ok(())
     }
 
-    fn write(&self, files: &[(PathBuf, Vec<u8>)]) -> Result<(), Failure> {
-        let list: Vec<OutputFile> = files
-            .iter()
-            .map(|(path, bytes)| OutputFile { path, bytes })
-            .collect();
-        write_files(&list, &[Path::new(&self.file)])?;
-        if !self.quiet {
-            for (path, _) in files {
-                output::talk(&format!("wrote {}", path.display()));
-            }
-        }
-        Ok(())
-    }
-
     fn main_output(&self, document: &SolveDocument) -> Result<String, Failure> {
         match &self.format {
             Format::Text(options) => Ok(report::to_text(document, *options)),
-            Format::Json => report::to_json(document).map_err(|e| failed(&e)),
-            Format::Csv => report::to_csv(&[*document]).map_err(|e| failed(&e)),
+            Format::Json => report::to_json(document).map_err(Failure::not_printed),
+            Format::Csv => report::to_csv(&[*document]).map_err(Failure::not_printed),
         }
     }
-}
-
-/// A result that cannot be put into its format.
-fn failed(error: &dyn std::fmt::Display) -> Failure {
-    Failure::new(
-        ExitStatus::Unreadable,
-        format!("the result cannot be printed: {error}"),
-        "",
-    )
 }

@@ -6,6 +6,7 @@ use crate::measured::Estimate;
 use crate::proof::{Bracket, ProofError};
 use crate::solve::{Field, Solved};
 
+use super::accuracy::Accuracy;
 use super::extrapolation::extrapolate;
 use super::grid_integrals::GridIntegrals;
 use super::identities::identities;
@@ -16,6 +17,7 @@ use super::section_flow::{
 use super::solve_warnings::{ISLAND_CELLS, warnings};
 use super::tangents::{Tangent, tangents};
 use super::wall_shear::wall_shear;
+use super::width_source::width_source;
 
 /// Fluid angle, radians, from which the term of a corner is removed by extrapolation: its exponent there
 /// is 3.6.
@@ -122,6 +124,10 @@ pub(super) fn assemble(
         grid,
         geometry,
         identities,
+        accuracy: Accuracy {
+            source: width_source(lattice, mask, phi, corners),
+            ..Accuracy::default()
+        },
         warnings: Vec::new(),
     };
     flow.warnings = warnings(&flow, small, mask.pinned.len());
@@ -154,8 +160,16 @@ fn mean_conductances(
         .collect()
 }
 
-/// The best value is never outside the proven bounds, nor its error larger than they allow.
+/// The best value is never outside the proven bounds, nor its error larger than they allow; an extrapolated
+/// value less sure than the middle between them gives way to that.
 fn within(best: Estimate, proven: Bracket) -> Estimate {
+    let half = 0.5 * (proven.high - proven.low);
+    if best.error > half {
+        return Estimate {
+            value: proven.low + half,
+            error: half,
+        };
+    }
     let value = best.value.clamp(proven.low, proven.high);
     let farthest = (value - proven.low).max(proven.high - value);
     Estimate {

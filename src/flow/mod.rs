@@ -1,5 +1,6 @@
 //! From the solved field to hydraulics: conductance, friction factors, shear, operating point.
 
+mod accuracy;
 mod assemble;
 mod chords;
 pub mod closed_form;
@@ -26,7 +27,9 @@ mod wall_quadrature;
 mod wall_shear;
 mod wall_statistics;
 mod wall_stretch;
+mod width_source;
 
+pub use accuracy::{Accuracy, Cost, DEFAULT_TOLERANCE, Goal, LEAST_TOLERANCE, Stop};
 pub use entrance::{EntranceModel, entrance_length, excess_pressure_factor};
 pub use field::DenseField;
 pub use fluid::{Fluid, FluidError};
@@ -36,9 +39,10 @@ pub use section_flow::{
     WallSample, WallShear,
 };
 pub use shortcuts::{ShortcutRow, shortcuts};
-pub use solve_outline::{DEFAULT_ACCURACY, FlowError, SolveOptions, SolvedSection, solve_outline};
+pub use solve_outline::{DEFAULT_MEMORY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use validity_range::{outside_validity, validity_warnings};
 pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};
 pub use wall_statistics::{
     PERCENTILES, SingularCorner, WHOLE_WALL, WallPart, WallReport, WallStatistics,
 };
+pub use width_source::{WidthCause, WidthSource};

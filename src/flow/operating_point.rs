@@ -11,6 +11,8 @@ use super::section_flow::SectionFlow;
 /// Flow through a channel of given length.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct OperatingPoint {
+    /// What was given.
+    pub drive: Drive,
     /// Channel length, m.
     pub length: f64,
     /// Flow rate, m^3/s.
@@ -147,7 +149,8 @@ impl OperatingPoint {
                 (rate * resistance, rate)
             }
         };
-        Self::assemble(flow, fluid, length, pressure_drop, flow_rate).checked()
+        let driven = (drive, pressure_drop, flow_rate);
+        Self::assemble(flow, fluid, length, driven).checked()
     }
 
     /// All quantities from pressure drop and flow rate.
@@ -155,8 +158,7 @@ impl OperatingPoint {
         flow: &SectionFlow,
         fluid: &Fluid,
         length: f64,
-        pressure_drop: f64,
-        flow_rate: f64,
+        (drive, pressure_drop, flow_rate): (Drive, f64, f64),
     ) -> Self {
         let section = &flow.geometry;
         let pressure_gradient = pressure_drop / length;
@@ -165,6 +167,7 @@ impl OperatingPoint {
             .density
             .map(|density| density * mean_velocity * section.hydraulic_diameter / fluid.viscosity);
         Self {
+            drive,
             length,
             flow_rate,
             pressure_drop,
@@ -182,6 +185,35 @@ impl OperatingPoint {
                     reynolds,
                 )
             }),
+        }
+    }
+
+    /// Proven lower and upper value of a quantity that goes with the flow rate.
+    ///
+    /// With the pressure drop given it goes with `K`, and so do its bounds; with the flow rate given it is
+    /// given too. `None` without a proven range.
+    pub fn flow_bounds(&self, flow: &SectionFlow, value: f64) -> Option<(f64, f64)> {
+        let k = flow.conductance.value;
+        match (self.drive, flow.bracket) {
+            (Drive::PressureDrop(_), Ok(proven)) => {
+                Some((value * proven.low / k, value * proven.high / k))
+            }
+            _ => None,
+        }
+    }
+
+    /// Proven lower and upper value of a quantity that goes with the pressure drop, such as the mean wall
+    /// shear.
+    ///
+    /// With the flow rate given it goes with `1/K`; with the pressure drop given it is given too. `None`
+    /// without a proven range.
+    pub fn pressure_bounds(&self, flow: &SectionFlow, value: f64) -> Option<(f64, f64)> {
+        let k = flow.conductance.value;
+        match (self.drive, flow.bracket) {
+            (Drive::FlowRate(_), Ok(proven)) => {
+                Some((value * k / proven.high, value * k / proven.low))
+            }
+            _ => None,
         }
     }
 
@@ -274,6 +306,7 @@ pub(crate) mod tests {
                 levels: Vec::new(),
             },
             identities: Vec::new(),
+            accuracy: crate::flow::Accuracy::default(),
             warnings: Vec::new(),
         }
     }

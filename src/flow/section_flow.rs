@@ -5,6 +5,7 @@ use crate::measured::Estimate;
 use crate::proof::{Bracket, ProofError};
 use crate::warning::Warning;
 
+use super::accuracy::Accuracy;
 use super::wall_curve::WallCurve;
 
 /// Everything the solve of one section says, per unit pressure gradient and viscosity.
@@ -38,6 +39,8 @@ pub struct SectionFlow {
     pub solver: SolverReport,
     /// The free identities, computed against exact.
     pub identities: Vec<Identity>,
+    /// How its accuracy came about.
+    pub accuracy: Accuracy,
     /// Warnings about this result.
     pub warnings: Vec<Warning>,
 }

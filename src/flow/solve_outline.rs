@@ -8,6 +8,7 @@ use crate::proof::bracket;
 use crate::solve::{Field, Hierarchy, SolveControl};
 use crate::warning::{Code, Warning};
 
+use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, refine};
 use super::assemble::{GridAnswer, Solution, assemble, leading_exponent};
 use super::corner_alignment::{Alignment, align};
 use super::field::DenseField;
@@ -16,12 +17,6 @@ use super::peak::peak;
 use super::section_flow::{GridReport, SectionFlow};
 use super::wall_shear::corners_of;
 
-/// Cells across the smallest lumen that the accuracy search starts from.
-const FIRST_CELLS_ACROSS: f64 = 64.0;
-/// Cells across beyond which the accuracy search does not go by itself.
-const LAST_CELLS_ACROSS: f64 = 1024.0;
-/// Fluid nodes beyond which the accuracy search does not go by itself.
-const LAST_NODES: f64 = 2e7;
 /// Residual as a share of `1 / cells_across^2`: far enough below the discretisation error that
 /// extrapolation over the grids is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.002;
@@ -37,32 +32,35 @@ const FLAT_EXPONENT: f64 = 8.0 / 3.0;
 const AVERAGED_NODES: usize = 200_000;
 /// Estimated relative error of `K` from which a grid that was asked for is called rough.
 const ROUGH: f64 = 1e-3;
-/// Relative error of `K` that the default grid aims at.
-pub const DEFAULT_ACCURACY: f64 = 1e-4;
+/// Memory that one solve may use by default, bytes.
+pub const DEFAULT_MEMORY: f64 = 8e9;
 
 /// What to solve for.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct SolveOptions {
     /// Cells across the largest circle that fits into the smallest lumen; `None` refines until the
-    /// estimated error of `K` is within `accuracy`.
+    /// goal is met.
     pub cells_across: Option<f64>,
-    /// Relative error of `K` aimed at when `cells_across` is `None`.
-    pub accuracy: f64,
+    /// What is aimed at when `cells_across` is `None`.
+    pub goal: Goal,
     /// Where the lower left corner of the bounding box falls behind the first lattice lines, in units of
     /// the spacing, not negative; `None` puts the sharpest re-entrant corner on a node of every grid, or
     /// the lower left corner on the first lattice lines where there is no such corner.
     pub grid_offset: Option<[f64; 2]>,
     /// Memory that one solve may use, bytes.
     pub memory_limit: f64,
+    /// Time beyond which no finer grid is begun, s; `None` for no limit.
+    pub time_limit: Option<f64>,
 }
 
 impl Default for SolveOptions {
     fn default() -> Self {
         Self {
             cells_across: None,
-            accuracy: DEFAULT_ACCURACY,
+            goal: Goal::Proven(DEFAULT_TOLERANCE),
             grid_offset: None,
-            memory_limit: 8e9,
+            memory_limit: DEFAULT_MEMORY,
+            time_limit: None,
         }
     }
 }
@@ -157,7 +155,8 @@ pub fn solve_outline(
         return refine(&outline, diameter, options, attempt);
     };
     let mut solved = attempt(cells)?;
-    warn_if_rough(&mut solved.flow, options.accuracy.max(ROUGH));
+    solved.flow.accuracy.further = further(&outline, &solved.flow);
+    warn_if_rough(&mut solved.flow, ROUGH);
     Ok(solved)
 }
 
@@ -176,31 +175,6 @@ fn warn_if_rough(flow: &mut SectionFlow, limit: f64) {
             numbers: vec![("reached", reached), ("asked", limit)],
         });
     }
-}
-
-/// Doubles the cells across until the estimated error of `K` is within the accuracy.
-fn refine(
-    outline: &Outline,
-    diameter: f64,
-    options: &SolveOptions,
-    attempt: impl Fn(f64) -> Result<SolvedSection, FlowError>,
-) -> Result<SolvedSection, FlowError> {
-    let mut cells = FIRST_CELLS_ACROSS;
-    let mut solved = attempt(cells)?;
-    while solved.flow.conductance.relative() > options.accuracy {
-        let next = 2.0 * cells;
-        let nodes = outline.area() * (next / diameter).powi(2);
-        if next > LAST_CELLS_ACROSS
-            || nodes > LAST_NODES
-            || spacing(outline, diameter, next, options.memory_limit).is_err()
-        {
-            break;
-        }
-        cells = next;
-        solved = attempt(cells)?;
-    }
-    warn_if_rough(&mut solved.flow, options.accuracy);
-    Ok(solved)
 }
 
 fn solve_at(

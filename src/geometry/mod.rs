@@ -1,7 +1,9 @@
 //! Plane geometry of sections: outlines, their problems, nominal shapes. No files, no grid.
 
+mod containment;
 mod corners;
 pub mod curves;
+mod film;
 mod inscribed_circle;
 mod linear_pieces;
 mod named_wall;
@@ -14,7 +16,9 @@ mod transform;
 mod validity;
 mod wall_edges;
 
+pub use containment::{Escape, EscapeKind};
 pub use corners::{Corner, corners};
+pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use named_wall::{
     DIRECTION_NAMES, FARTHEST, NamedWall, NamedWallError, WallStretch, wall_stretches,

@@ -13,8 +13,7 @@ use super::sweep::{SweepOutcome, sweep};
 use super::validity::{
     LISTED_PROBLEMS, Place, Problem, ProblemKind, Problems, Role, Severity, coincide, is_finite,
 };
-use super::wall_edges::{Contact, WallEdges, orientation, rounding, unit_scale};
-use std::cmp::Ordering;
+use super::wall_edges::{Contact, WallEdges, rounding, unit_scale};
 use std::collections::HashSet;
 use std::ops::{ControlFlow, Range};
 
@@ -454,28 +453,11 @@ impl Rays {
     fn is_inside(&mut self, edges: &WallEdges, wall: usize, p: Point) -> Option<bool> {
         let range = edges.ranges[wall].clone();
         let tree = self.trees[wall].get_or_insert_with(|| {
-            SegmentTree::from_segments(range.clone().map(|i| edges.ends(i)).collect())
+            SegmentTree::from_segments(range.map(|i| edges.ends(i)).collect())
         });
-        let ray = Bounds {
-            low: p,
-            high: [f64::INFINITY, p[1]],
-        };
-        let (mut is_odd, mut visited) = (false, 0);
-        let flow = tree.visit_box(&ray, &mut |edge| {
-            visited += 1;
-            let [a, b] = edges.ends(range.start + edge);
-            let side = orientation(a, b, p);
-            if side == Ordering::Equal && a[0].min(b[0]) <= p[0] {
-                return ControlFlow::Break(());
-            }
-            let upwards = b[1] > p[1];
-            if (a[1] > p[1]) != upwards {
-                is_odd ^= (side == Ordering::Greater) == upwards;
-            }
-            ControlFlow::Continue(())
-        });
+        let (inside, visited) = tree.is_inside(p);
         self.visited += visited;
-        flow.is_continue().then_some(is_odd)
+        inside
     }
 }
 

@@ -6,6 +6,7 @@
 //! Source of the packing: Kamel and Faloutsos (1993), On packing R-trees, CIKM 93 (cited from memory).
 
 use super::outline::{Outline, Point};
+use super::wall_edges::orientation;
 use std::cmp::Ordering;
 use std::ops::ControlFlow;
 
@@ -73,14 +74,15 @@ impl Bounds {
     }
 
     /// Whether the two closed boxes have a point in common.
-    fn meets(&self, other: &Self) -> bool {
+    pub(crate) fn meets(&self, other: &Self) -> bool {
         self.low[0] <= other.high[0]
             && other.low[0] <= self.high[0]
             && self.low[1] <= other.high[1]
             && other.low[1] <= self.high[1]
     }
 
-    fn distance_squared(&self, p: Point) -> f64 {
+    /// Square of the distance of a point from the box, 0 inside.
+    pub(crate) fn distance_squared(&self, p: Point) -> f64 {
         let dx = (self.low[0] - p[0]).max(p[0] - self.high[0]).max(0.0);
         let dy = (self.low[1] - p[1]).max(p[1] - self.high[1]).max(0.0);
         dx * dx + dy * dy
@@ -204,31 +206,66 @@ impl SegmentTree {
     where
         F: FnMut(usize) -> ControlFlow<()>,
     {
+        self.visit_where(&|other| other.meets(bounds), visit)
+    }
+
+    /// Calls `visit` with every edge whose box is `wanted`, until it breaks; a box that is not wanted
+    /// holds none that is.
+    pub(crate) fn visit_where<W, F>(&self, wanted: &W, visit: &mut F) -> ControlFlow<()>
+    where
+        W: Fn(&Bounds) -> bool,
+        F: FnMut(usize) -> ControlFlow<()>,
+    {
         if self.is_empty() {
             return ControlFlow::Continue(());
         }
-        self.visit_node(self.levels.len() - 2, 0, bounds, visit)
+        self.visit_node(self.levels.len() - 2, 0, wanted, visit)
     }
 
-    fn visit_node<F>(
+    /// Whether a point lies inside the closed loops that the edges make up, by even-odd counting along a ray
+    /// to the right, and how many edges were looked at; `None` on the wall. Exact.
+    pub(crate) fn is_inside(&self, p: Point) -> (Option<bool>, usize) {
+        let ray = Bounds {
+            low: p,
+            high: [f64::INFINITY, p[1]],
+        };
+        let (mut is_odd, mut visited) = (false, 0);
+        let flow = self.visit_box(&ray, &mut |edge| {
+            visited += 1;
+            let [a, b] = self.segments[edge];
+            let side = orientation(a, b, p);
+            if side == Ordering::Equal && a[0].min(b[0]) <= p[0] {
+                return ControlFlow::Break(());
+            }
+            let upwards = b[1] > p[1];
+            if (a[1] > p[1]) != upwards {
+                is_odd ^= (side == Ordering::Greater) == upwards;
+            }
+            ControlFlow::Continue(())
+        });
+        (flow.is_continue().then_some(is_odd), visited)
+    }
+
+    fn visit_node<W, F>(
         &self,
         level: usize,
         node: usize,
-        bounds: &Bounds,
+        wanted: &W,
         visit: &mut F,
     ) -> ControlFlow<()>
     where
+        W: Fn(&Bounds) -> bool,
         F: FnMut(usize) -> ControlFlow<()>,
     {
-        if !self.boxes[self.levels[level] + node].meets(bounds) {
+        if !wanted(&self.boxes[self.levels[level] + node]) {
             return ControlFlow::Continue(());
         }
         for child in self.children(level, node) {
             if level > 0 {
-                self.visit_node(level - 1, child, bounds, visit)?;
+                self.visit_node(level - 1, child, wanted, visit)?;
             } else {
                 let [a, b] = self.segments[child];
-                if Bounds::of(a, b).meets(bounds) {
+                if wanted(&Bounds::of(a, b)) {
                     visit(child)?;
                 }
             }

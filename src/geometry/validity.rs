@@ -410,7 +410,7 @@ impl fmt::Display for Problems {
 }
 
 /// A point in micrometres with up to twelve significant digits.
-struct Coordinates(Point);
+pub(super) struct Coordinates(pub(super) Point);
 
 impl fmt::Display for Coordinates {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {

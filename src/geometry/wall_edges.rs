@@ -216,7 +216,8 @@ fn separates(first: Ordering, second: Ordering) -> bool {
     first != second || first == Ordering::Equal
 }
 
-fn is_between(p: Point, a: Point, b: Point) -> bool {
+/// Whether a point of the line through `a` and `b` lies between them.
+pub(crate) fn is_between(p: Point, a: Point, b: Point) -> bool {
     order(earlier(a, b), p) == Ordering::Less && order(p, later(a, b)) == Ordering::Less
 }
 

@@ -43,8 +43,9 @@ pub(crate) struct Region {
     pub(crate) wall: Vec<Point>,
     /// Parts of the cell's sides it lies on: side, lower end of the part along it and its length.
     pub(crate) sides: Vec<(usize, f64, f64)>,
-    /// Whether it holds the corners of the cell, anticlockwise from the lower left.
-    pub(crate) corners: [bool; 4],
+    /// Where in the outer boundary polygon the corners of the cell stand that it holds; corners
+    /// anticlockwise from the lower left.
+    pub(crate) corners: [Option<u32>; 4],
 }
 
 /// Why the outline could not be cut.
@@ -210,7 +211,7 @@ fn join(cell: CellIndex, chains: &mut [Chain], regions: &mut Vec<Region>) -> Res
             boundary: vec![Vec::new()],
             wall: Vec::new(),
             sides: Vec::new(),
-            corners: [false; 4],
+            corners: [None; 4],
         };
         let mut current = first;
         loop {
@@ -250,7 +251,7 @@ fn walk_sides(region: &mut Region, from: f64, until: f64) {
         at = end;
         if at < until {
             let corner = (side as usize + 1) % 4;
-            region.corners[corner] = true;
+            region.corners[corner] = Some(region.boundary[0].len() as u32);
             region.boundary[0].push(CORNERS[corner]);
         }
     }
@@ -286,7 +287,7 @@ fn place_lone_loops(
         boundary: vec![vec![[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]]],
         wall: Vec::new(),
         sides: (0..4).map(|side| (side, 0.0, 1.0)).collect(),
-        corners: [true; 4],
+        corners: [Some(0), Some(1), Some(2), Some(3)],
     };
     for points in loops {
         if signed_area(&points) > 0.0 {

@@ -11,7 +11,7 @@
 
 use super::crossings::LineCrossings;
 use super::lattice::Lattice;
-use super::runs::{Cut, collect_runs, nodes_on_wall, number, pins};
+use super::runs::{Cut, collect_runs, nodes_at_vertices, nodes_on_wall, number, pins};
 
 /// Distance in lattice units below which a node counts as lying on the wall.
 pub(super) const ON_WALL: f64 = 1e-6;
@@ -171,6 +171,7 @@ impl Mask {
         stride: u32,
     ) -> Self {
         let mut removed = nodes_on_wall(columns, stride);
+        removed.extend(nodes_at_vertices(lattice, stride));
         let pinned = pins(lattice, rows, columns, stride);
         removed.extend(pinned.iter().map(|&(i, j)| (j, i, NO_EDGE)));
         removed.sort_unstable();

@@ -16,4 +16,4 @@ pub use mask::{
     ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Block, Colour, Mask, NO_EDGE, NO_NODE, Run, Segment,
     WallNode,
 };
-pub use resolution::{BYTES_PER_NODE, LEAST_CELLS_ACROSS, ResolutionError, spacing};
+pub use resolution::{BYTES_PER_NODE, LEAST_CELLS_ACROSS, ResolutionError, memory_needed, spacing};

@@ -83,6 +83,15 @@ impl ResolutionError {
     }
 }
 
+/// Memory that a solve with its proof needs at the peak, bytes, foreseen from area and perimeter.
+///
+/// - `spacing`: m
+pub fn memory_needed(outline: &Outline, spacing: f64) -> f64 {
+    let nodes = outline.area() / (spacing * spacing);
+    let crossings = 2.0 * outline.wetted_perimeter() / spacing;
+    nodes * BYTES_PER_NODE + crossings * BYTES_PER_CROSSING
+}
+
 /// Checks that a grid of the given spacing is affordable; returns its spacing, m.
 ///
 /// - `inscribed_diameter`: of the largest circle in the smallest lumen, m
@@ -112,8 +121,7 @@ pub fn spacing(
     }
     let spacing = inscribed_diameter / cells_across;
     let nodes = outline.area() / (spacing * spacing);
-    let crossings = 2.0 * outline.wetted_perimeter() / spacing;
-    let bytes = nodes * BYTES_PER_NODE + crossings * BYTES_PER_CROSSING;
+    let bytes = memory_needed(outline, spacing);
     if bytes > memory_limit || nodes > f64::from(u32::MAX / 2) {
         return Err(ResolutionError::TooLarge {
             cells_across,

@@ -28,6 +28,22 @@ pub(super) fn nodes_on_wall(columns: &LineCrossings, stride: u32) -> Vec<(u32, u
     nodes
 }
 
+/// Nodes on a vertex of the outline, as (row, column, edge): a corner that juts into the fluid may miss the lines
+/// through its node by rounding, on both sides, and yet lie on it.
+pub(super) fn nodes_at_vertices(lattice: &Lattice, stride: u32) -> Vec<(u32, u32, u32)> {
+    let step = f64::from(stride);
+    let near = |v: f64| {
+        let nearest = (v / step).round();
+        ((v - nearest * step).abs() < ON_WALL && nearest >= 0.0).then_some(nearest as u32)
+    };
+    let vertices = lattice.edges.iter().enumerate();
+    vertices
+        .filter_map(|(index, edge)| {
+            Some((near(edge.start[1])?, near(edge.start[0])?, index as u32))
+        })
+        .collect()
+}
+
 /// For each island that no line of this grid crosses, the node nearest to it.
 pub(super) fn pins(
     lattice: &Lattice,

@@ -219,6 +219,9 @@ pub enum ReadProblem {
     /// Both a drawn outline and a nominal section.
     #[error("the section has both `[[lumen]]` and `[nominal]`")]
     TwoOutlines,
+    /// A reach without sections.
+    #[error("[reach] gives neither `inner` nor `outer`")]
+    EmptyReach,
     /// The nominal section has no outline.
     #[error("{source}")]
     Nominal {
@@ -437,6 +440,9 @@ impl ReadProblem {
             Self::Toml { .. } => "correct the line; coordinates are written [[x, y], [x, y]]",
             Self::ScaleNotPositive { .. } => "give the length of one unit, such as \"1 um\"",
             Self::TwoOutlines => "keep one of the two",
+            Self::EmptyReach => {
+                "add [[reach.inner]] or [[reach.outer]] with `outer = [[x, y], ...]`, or take [reach] out"
+            }
             Self::SvgAttribute { .. } => {
                 "write it as SVG has it: plain numbers, sizes above zero, lengths without % or em"
             }

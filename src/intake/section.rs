@@ -7,6 +7,7 @@ use super::loop_nesting::assemble;
 use super::plausibility::check_size;
 use super::provenance::{Provenance, SectionKind, sha256_hex};
 use super::read_error::{Fault, ReadError, ReadProblem};
+use super::section_reach::Reach;
 use super::source_text::{SourceText, read_bytes};
 use super::{delimited_text, outline_svg, outline_text, section_file};
 use crate::geometry::nominal::NominalSpec;
@@ -30,15 +31,15 @@ pub struct ReadOptions {
     pub keep_non_finite: bool,
 }
 
-/// Tables of a section file that other work reads, kept as they are.
+/// Further tables of a section file.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct Extras {
-    /// `[source]`: where the section came from.
+    /// `[source]`: where the section came from, as it is.
     pub source: Option<toml::Table>,
-    /// `[uncertainty]`: what is known about its accuracy.
+    /// `[uncertainty]`: what is known about its accuracy, as it is.
     pub uncertainty: Option<toml::Table>,
-    /// `[reach]`: inner and outer variants.
-    pub reach: Option<toml::Table>,
+    /// `[reach]`: the smallest and the largest section it could be.
+    pub reach: Option<Reach>,
 }
 
 /// A section as read.
@@ -56,7 +57,7 @@ pub struct Section {
     pub walls: Vec<WallStretch>,
     /// Where it came from.
     pub provenance: Provenance,
-    /// Tables kept for other work.
+    /// Further tables.
     pub extras: Extras,
     /// What a reader of results must know.
     pub warnings: Vec<Warning>,

@@ -15,8 +15,8 @@
 //! height = "50 um"
 //! ```
 //! A coordinate may also be a length such as `"1 mil"`. `[[wall]]` tables name stretches of wall
-//! (module `wall_tables`). `[source]`, `[uncertainty]` and `[reach]` are kept
-//! for other work; any other key is an error.
+//! (module `wall_tables`). `[source]` and `[uncertainty]` are kept for other work; `[reach]` (see
+//! `section_reach`) gives the smallest and largest section it could be; any other key is an error.
 
 use std::collections::BTreeMap;
 
@@ -26,6 +26,7 @@ use super::columns::known_length;
 use super::limits::check_vertices;
 use super::read_error::{Fault, ReadProblem};
 use super::section::{Content, Extras, UnitOption};
+use super::section_reach;
 use super::toml_values::{
     Value, check_keys, fault, number, parse, plain_table, string, wrong_type,
 };
@@ -62,26 +63,18 @@ pub(crate) fn read(
         None => None,
     };
     let (unit, scale) = unit(text, table, option)?;
-    let extras = extras(text, table)?;
+    let mut coordinates = Coordinates::new(text, scale, keep_non_finite);
     let (outline, nominal) = match (table.get("lumen"), table.get("nominal")) {
         (Some(_), Some(value)) => {
             return Err(fault(text, value, "nominal", ReadProblem::TwoOutlines));
         }
         (Some(value), None) => {
-            let mut coordinates = Coordinates::new(text, scale, keep_non_finite);
-            let lumens = coordinates.lumens(value)?;
+            let lumens = coordinates.lumens(value, LumenList::SECTION)?;
             (Outline { lumens }, None)
         }
         (None, Some(value)) => {
-            let table = value
-                .get_ref()
-                .as_table()
-                .ok_or_else(|| wrong_type(text, value, "nominal", "a table: [nominal]"))?;
-            let spec = spec(text, value, table)?;
-            let outline = spec
-                .outline()
-                .map_err(|source| fault(text, value, "nominal", ReadProblem::Nominal { source }))?;
-            (outline.oriented(), Some(spec))
+            let (outline, spec) = nominal_outline(text, value)?;
+            (outline, Some(spec))
         }
         (None, None) => return Err(ReadProblem::NoOutline.into()),
     };
@@ -91,6 +84,7 @@ pub(crate) fn read(
     } else {
         wall_tables::read(text, table, scale, &outline)?
     };
+    let extras = extras(text, table, &mut coordinates)?;
     let bare = nominal.is_none();
     let notes = match option {
         Some(option) if nominal.is_some() => vec![format!(
@@ -135,8 +129,28 @@ fn unit(
     Ok((Some(name.to_owned()), Some(scale)))
 }
 
-/// The tables kept for other work.
-fn extras(text: &str, table: &DeTable<'_>) -> Result<Extras, Fault> {
+/// A nominal section: its outline and its dimensions.
+pub(super) fn nominal_outline(
+    text: &str,
+    value: &Value<'_>,
+) -> Result<(Outline, NominalSpec), Fault> {
+    let table = value
+        .get_ref()
+        .as_table()
+        .ok_or_else(|| wrong_type(text, value, "nominal", "a table: [nominal]"))?;
+    let spec = spec(text, value, table)?;
+    let outline = spec
+        .outline()
+        .map_err(|source| fault(text, value, "nominal", ReadProblem::Nominal { source }))?;
+    Ok((outline.oriented(), spec))
+}
+
+/// `[reach]`, and the tables kept for other work.
+fn extras(
+    text: &str,
+    table: &DeTable<'_>,
+    coordinates: &mut Coordinates<'_>,
+) -> Result<Extras, Fault> {
     let kept = |key: &str| match table.get(key) {
         None => Ok(None),
         Some(value) => {
@@ -148,12 +162,47 @@ fn extras(text: &str, table: &DeTable<'_>) -> Result<Extras, Fault> {
     Ok(Extras {
         source: kept("source")?,
         uncertainty: kept("uncertainty")?,
-        reach: kept("reach")?,
+        reach: table
+            .get("reach")
+            .map(|value| section_reach::read(text, value, coordinates))
+            .transpose()?,
     })
 }
 
+/// Which list of lumens is being read, for messages.
+#[derive(Clone, Copy)]
+pub(super) struct LumenList {
+    key: &'static str,
+    /// Head of one of its tables.
+    pub(super) head: &'static str,
+    expected: &'static str,
+    /// Before the number of the lumen.
+    prefix: &'static str,
+}
+
+impl LumenList {
+    const SECTION: Self = Self {
+        key: "lumen",
+        head: "[[lumen]]",
+        expected: "a list of tables: [[lumen]]",
+        prefix: "",
+    };
+    pub(super) const INNER: Self = Self {
+        key: "inner",
+        head: "[[reach.inner]]",
+        expected: "a list of tables, [[reach.inner]], or a nominal section, [reach.inner.nominal]",
+        prefix: "reach.inner, ",
+    };
+    pub(super) const OUTER: Self = Self {
+        key: "outer",
+        head: "[[reach.outer]]",
+        expected: "a list of tables, [[reach.outer]], or a nominal section, [reach.outer.nominal]",
+        prefix: "reach.outer, ",
+    };
+}
+
 /// Reads drawn lumens.
-struct Coordinates<'a> {
+pub(super) struct Coordinates<'a> {
     text: &'a str,
     scale: Option<UnitScale>,
     keep_non_finite: bool,
@@ -164,6 +213,7 @@ struct Coordinates<'a> {
 /// Which loop is being read, for messages.
 #[derive(Clone, Copy)]
 struct Which {
+    list: LumenList,
     lumen: usize,
     /// Number of the island, `None` for the outer loop.
     island: Option<usize>,
@@ -171,10 +221,10 @@ struct Which {
 
 impl Which {
     fn vertex(self, vertex: usize) -> String {
-        let lumen = self.lumen;
+        let (prefix, lumen) = (self.list.prefix, self.lumen);
         match self.island {
-            None => format!("lumen {lumen}, outer, vertex {vertex}"),
-            Some(island) => format!("lumen {lumen}, island {island}, vertex {vertex}"),
+            None => format!("{prefix}lumen {lumen}, outer, vertex {vertex}"),
+            Some(island) => format!("{prefix}lumen {lumen}, island {island}, vertex {vertex}"),
         }
     }
 }
@@ -200,17 +250,21 @@ impl<'a> Coordinates<'a> {
         array.ok_or_else(|| wrong_type(self.text, value, key, expected))
     }
 
-    fn lumens(&mut self, value: &Value<'_>) -> Result<Vec<Lumen>, Fault> {
-        let expected = "a list of tables: [[lumen]]";
-        let items = self.array(value, "lumen", expected)?;
+    pub(super) fn lumens(
+        &mut self,
+        value: &Value<'_>,
+        list: LumenList,
+    ) -> Result<Vec<Lumen>, Fault> {
+        let LumenList { key, expected, .. } = list;
+        let items = self.array(value, key, expected)?;
         if items.is_empty() {
-            return Err(fault(self.text, value, "lumen", ReadProblem::NoOutline));
+            return Err(fault(self.text, value, key, ReadProblem::NoOutline));
         }
         let mut lumens = Vec::with_capacity(items.len());
         for (index, item) in items.iter().enumerate() {
             let table = item.get_ref().as_table();
-            let table = table.ok_or_else(|| wrong_type(self.text, item, "lumen", expected))?;
-            lumens.push(self.lumen(item, table, index + 1)?);
+            let table = table.ok_or_else(|| wrong_type(self.text, item, key, expected))?;
+            lumens.push(self.lumen(item, table, (list, index + 1))?);
         }
         Ok(lumens)
     }
@@ -219,17 +273,21 @@ impl<'a> Coordinates<'a> {
         &mut self,
         value: &Value<'_>,
         table: &DeTable<'_>,
-        lumen: usize,
+        (list, lumen): (LumenList, usize),
     ) -> Result<Lumen, Fault> {
-        check_keys(self.text, table, "[[lumen]]", &LUMEN_KEYS)?;
+        check_keys(self.text, table, list.head, &LUMEN_KEYS)?;
         let outer = table.get("outer").ok_or_else(|| {
             let problem = ReadProblem::MissingKey {
                 key: "outer",
-                table: "[[lumen]]",
+                table: list.head,
             };
-            fault(self.text, value, "lumen", problem)
+            fault(self.text, value, list.key, problem)
         })?;
-        let which = |island| Which { lumen, island };
+        let which = |island| Which {
+            list,
+            lumen,
+            island,
+        };
         let outer = self.wall(outer, "outer", which(None))?;
         let mut islands = Vec::new();
         if let Some(value) = table.get("islands") {

@@ -6,6 +6,7 @@
 use std::fmt::Write as _;
 
 use super::section::Extras;
+use super::section_reach::{Reach, ReachSection};
 use crate::geometry::nominal::{NominalSpec, SpecValue};
 use crate::geometry::{Loop, Outline};
 
@@ -15,7 +16,7 @@ const METRES_TO_MICROMETRES: i32 = 6;
 /// A section as the text of a section file.
 ///
 /// - `nominal`: when given, its dimensions are written instead of the vertices of `outline`
-/// - `extras`: tables kept from the file the section was read from
+/// - `extras`: further tables of the file the section was read from
 ///
 /// # Examples
 /// ```
@@ -41,6 +42,14 @@ pub fn to_toml(
             &format!("name = {}", toml::Value::String(name.to_owned())),
         );
     }
+    let drawn_reach = extras
+        .reach
+        .iter()
+        .flat_map(sides)
+        .any(|(_, side)| side.nominal.is_none());
+    if nominal.is_none() || drawn_reach {
+        line(&mut text, "unit = \"um\"");
+    }
     match nominal {
         Some(spec) => {
             let mut top = toml::Table::new();
@@ -48,13 +57,12 @@ pub fn to_toml(
             text.push('\n');
             text.push_str(&top.to_string());
         }
-        None => write_outline(&mut text, outline),
+        None => write_lumens(&mut text, outline, "lumen"),
     }
     let mut kept = toml::Table::new();
     for (key, table) in [
         ("source", &extras.source),
         ("uncertainty", &extras.uncertainty),
-        ("reach", &extras.reach),
     ] {
         if let Some(table) = table {
             kept.insert(key.to_owned(), toml::Value::Table(table.clone()));
@@ -64,7 +72,42 @@ pub fn to_toml(
         text.push('\n');
         text.push_str(&kept.to_string());
     }
+    if let Some(reach) = &extras.reach {
+        write_reach(&mut text, reach);
+    }
     text
+}
+
+/// The sections of a reach that are given, with their keys.
+fn sides(reach: &Reach) -> impl Iterator<Item = (&'static str, &ReachSection)> {
+    let sides = [("inner", &reach.inner), ("outer", &reach.outer)];
+    sides
+        .into_iter()
+        .filter_map(|(key, side)| Some((key, side.as_ref()?)))
+}
+
+fn write_reach(text: &mut String, reach: &Reach) {
+    line(text, "\n[reach]");
+    if let Some(reason) = &reach.reason {
+        line(
+            text,
+            &format!("reason = {}", toml::Value::String(reason.clone())),
+        );
+    }
+    for (key, side) in sides(reach) {
+        match &side.nominal {
+            None => write_lumens(text, &side.outline, &format!("reach.{key}")),
+            Some(spec) => {
+                let mut top = spec_table(spec);
+                for name in ["nominal", key, "reach"] {
+                    let inside = toml::Value::Table(std::mem::take(&mut top));
+                    top.insert(name.to_owned(), inside);
+                }
+                text.push('\n');
+                text.push_str(&top.to_string());
+            }
+        }
+    }
 }
 
 fn line(text: &mut String, content: &str) {
@@ -72,10 +115,9 @@ fn line(text: &mut String, content: &str) {
     text.push('\n');
 }
 
-fn write_outline(text: &mut String, outline: &Outline) {
-    line(text, "unit = \"um\"");
+fn write_lumens(text: &mut String, outline: &Outline, table: &str) {
     for lumen in &outline.lumens {
-        line(text, "\n[[lumen]]");
+        line(text, &format!("\n[[{table}]]"));
         text.push_str("outer = ");
         write_loop(text, &lumen.outer, "");
         text.push('\n');

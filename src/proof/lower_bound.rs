@@ -1,53 +1,52 @@
 //! The lower bound: an admissible velocity from the nodal values.
 //!
-//! Lattice squares are split into two triangles, on which `w` is linear between the values of its corners;
-//! `v` is the positive part of `w` inside the section and zero outside. `v` is continuous and vanishes on
-//! the wall if `w <= 0` at every point of the wall in every triangle, and since `w` is linear there it is
-//! enough to look at the vertices of the outline and its crossings with the sides of the triangles.
-//! Corners in the fluid have the nodal value; corners beyond the wall start at zero and are lowered until
-//! that holds. A square cut in two by a thin wall counts as two, and a corner beyond the wall has a value of
-//! its own for each fluid region that sees it: regions that share a part of a side share its two corners.
+//! In lattice squares that the wall does not cut, `v` is bilinear with a bubble on each side
+//! ([`super::square_energy`]): exact for a quadratic `phi`, so that the interior costs next to nothing. Squares
+//! cut by the wall are divided into triangles between nodes in the fluid and points of the wall
+//! ([`super::triangulation`]), with `v = 0` on the wall and linear in each; a square cut in two by a thin wall
+//! has two such polygons. Along the side of a cut square `v` is linear between the nodes and the crossings
+//! with the wall, seen from both its squares alike, so `v` is continuous.
+//!
+//! A wall point close to a side where `v` would be large gets a foot there, at which `v = 0` for both squares;
+//! a polygon that cannot be divided (an island inside one square) has its nodes set to zero. The values of the
+//! nodes beside the wall are then made the best possible for their triangles, one by one. None of this
+//! touches the validity: that needs continuity and the zero on the wall only.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 
-use crate::geometry::Point;
-use crate::grid::{EAST, Lattice, Mask, NORTH, Region, cut_cells, shared_parts, signed_area};
+use crate::grid::{Lattice, Mask, Region, cut_cells, signed_area};
 use crate::solve::Field;
 
-use super::upper_bound::{check_area, root};
+use super::cut_polygon::{Feet, Polygon, agree, feet, polygons};
+use super::square_energy::{STIFFNESS, Square};
+use super::triangulation::{Triangle, Vertex, triangulate};
+use super::upper_bound::check_area;
 use super::{ProofError, ROUNDING};
 
-/// Shift of the triangles against the nodes, so that walls on lattice lines are nothing special. Smaller
+/// Shift of the squares against the nodes, so that walls on lattice lines are nothing special. Smaller
 /// than the distance below which a node counts as wall.
-const SHIFT: Point = [1.37e-7, 2.11e-7];
-/// Corners of a cell, anticlockwise from the lower left.
-const CORNERS: [Point; 4] = [[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]];
-/// Corners of the two triangles of a cell: below and above the diagonal.
-const TRIANGLES: [[usize; 3]; 2] = [[0, 1, 2], [0, 2, 3]];
-/// Least share of the corners beyond the wall in a wall point for them to be lowered because of it.
-const LEAST_SHARE: f64 = 1e-3;
+const SHIFT: [f64; 2] = [1.37e-7, 2.11e-7];
+/// Rounds of dividing and improving.
+const ROUNDS: usize = 2;
+/// Times each value is improved in a round.
+const SWEEPS: usize = 3;
 
 /// A lower bound for the conductance; arguments and unit as in [`super::upper_bound`].
 pub(super) fn lower_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<f64, ProofError> {
-    let cutting = |_| ProofError::Cutting { relative: 1.0 };
-    let regions = cut_cells(lattice, SHIFT).map_err(cutting)?;
-    let pairs = shared_parts(&regions).map_err(cutting)?;
-    let mut velocity = Velocity::new(mask, phi, &regions, &pairs);
-    velocity.lower();
-    let (mut volume, mut energy, whole) = velocity.whole_squares();
+    let regions = cut_cells(lattice, SHIFT).map_err(|_| ProofError::Cutting { relative: 1.0 })?;
     let areas: f64 = regions
         .iter()
         .flat_map(|region| &region.boundary)
         .map(|polygon| signed_area(polygon))
         .sum();
-    check_area(lattice, areas + whole as f64)?;
-    for (index, region) in regions.iter().enumerate() {
-        for triangle in 0..2 {
-            let (v, e) = velocity.cut_triangle(index, region, triangle);
-            volume += v;
-            energy += e;
-        }
+    let mut velocity = Velocity::new(mask, phi, &regions);
+    if !agree(&velocity.polygons) {
+        return Err(ProofError::Discontinuous);
     }
+    velocity.improve();
+    let (volume, energy, whole) = velocity.whole_squares();
+    check_area(lattice, areas + (whole + velocity.foot_squares) as f64)?;
+    let (volume, energy) = velocity.with_cut_squares(volume, energy);
     if energy > 0.0 {
         Ok(volume * volume / energy * (1.0 - ROUNDING))
     } else {
@@ -55,131 +54,102 @@ pub(super) fn lower_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result
     }
 }
 
-/// A corner value of one or more regions.
-#[derive(Debug, Clone, Copy)]
-struct CornerValue {
-    value: f64,
-    /// The node, where the corner lies in the fluid.
-    node: Option<(i64, i64)>,
+/// A node beside the wall, whose value may be improved.
+struct BandNode {
+    /// Row-by-row number.
+    node: usize,
+    /// Its triangles, and which corner of each it is.
+    triangles: Vec<(usize, usize)>,
+    /// Its squares that the wall does not cut.
+    squares: Vec<WholeSquare>,
+}
+
+/// A square that the wall does not cut, by the numbers of its nodes.
+struct WholeSquare {
+    nodes: [Option<usize>; 4],
+    bubbles: [f64; 4],
+    /// Which corner the node at hand is.
+    corner: usize,
 }
 
 struct Velocity<'a> {
     mask: &'a Mask,
-    phi: &'a Field,
-    regions: &'a [Region],
-    corners: Vec<CornerValue>,
-    region_corners: Vec<[usize; 4]>,
-    /// Columns of cut cells of each row, rising.
+    /// Nodal values row by row, from which the bubbles are taken.
+    phi: Vec<f64>,
+    /// Nodal values row by row, as improved.
+    values: Vec<f64>,
+    polygons: Vec<Polygon>,
+    /// Whole squares that are divided because of a foot.
+    foot_squares: usize,
+    /// Columns of the divided squares of each row, rising.
     cut: BTreeMap<i64, Vec<i64>>,
-    /// Nodes in the fluid whose value had to be lowered, with the new value.
-    lowered: BTreeMap<(i64, i64), f64>,
-    /// Their columns by row.
-    lowered_columns: BTreeMap<i64, Vec<i64>>,
-    /// Corner values that belong to a node in the fluid.
-    slots_of: BTreeMap<(i64, i64), Vec<usize>>,
+    /// Nodes held at zero.
+    held: BTreeSet<usize>,
+    triangles: Vec<Triangle>,
 }
 
 impl<'a> Velocity<'a> {
-    fn new(
-        mask: &'a Mask,
-        phi: &'a Field,
-        regions: &'a [Region],
-        pairs: &[[(usize, usize); 2]],
-    ) -> Self {
-        let mut group: Vec<usize> = (0..4 * regions.len()).collect();
-        for [a, b] in pairs {
-            // The first of a pair has the side to its east or north.
-            let (first, second) = if a.1 == EAST || a.1 == NORTH {
-                (a, b)
-            } else {
-                (b, a)
-            };
-            let joined = if first.1 == EAST {
-                [(1, 0), (2, 3)]
-            } else {
-                [(3, 0), (2, 1)]
-            };
-            for (x, y) in joined {
-                let x = root(&mut group, 4 * first.0 + x);
-                let y = root(&mut group, 4 * second.0 + y);
-                group[x.max(y)] = x.min(y);
+    fn new(mask: &'a Mask, phi: &Field, regions: &[Region]) -> Self {
+        let phi = phi.natural(mask);
+        let node_at = |at: (i64, i64)| natural_at(mask, at);
+        let value_at = |at: (i64, i64)| node_at(at).and_then(|n| phi.get(n).copied());
+        let feet: Feet = feet(regions, value_at);
+        let polygons = polygons(regions, &feet, node_at);
+        let mut cut: BTreeMap<i64, Vec<i64>> = BTreeMap::new();
+        for polygon in &polygons {
+            let row = cut.entry(polygon.cell.1).or_default();
+            if row.last() != Some(&polygon.cell.0) {
+                row.push(polygon.cell.0);
             }
         }
-        let mut velocity = Self {
+        Self {
             mask,
+            values: phi.clone(),
             phi,
-            regions,
-            corners: Vec::new(),
-            region_corners: Vec::new(),
-            cut: BTreeMap::new(),
-            lowered: BTreeMap::new(),
-            lowered_columns: BTreeMap::new(),
-            slots_of: BTreeMap::new(),
-        };
-        let mut place = BTreeMap::new();
-        for (index, region) in regions.iter().enumerate() {
-            let row = velocity.cut.entry(region.cell.1).or_default();
-            if row.last() != Some(&region.cell.0) {
-                row.push(region.cell.0);
-            }
-            let mut slots = [0; 4];
-            for (corner, slot) in slots.iter_mut().enumerate() {
-                let name = root(&mut group, 4 * index + corner);
-                *slot = *place.entry(name).or_insert_with(|| {
-                    velocity.corners.push(CornerValue {
-                        value: 0.0,
-                        node: None,
-                    });
-                    velocity.corners.len() - 1
-                });
-                if region.corners[corner] {
-                    let node = (
-                        region.cell.0 + i64::from(corner == 1 || corner == 2),
-                        region.cell.1 + i64::from(corner >= 2),
-                    );
-                    velocity.corners[*slot] = CornerValue {
-                        value: velocity.node_value(node),
-                        node: Some(node),
-                    };
-                    let known = velocity.slots_of.entry(node).or_default();
-                    if !known.contains(slot) {
-                        known.push(*slot);
-                    }
+            foot_squares: polygons.len() - regions.len(),
+            polygons,
+            cut,
+            held: BTreeSet::new(),
+            triangles: Vec::new(),
+        }
+    }
+
+    /// Divides the cut squares and improves the values of their nodes, a few times in turn.
+    fn improve(&mut self) {
+        for _ in 0..ROUNDS {
+            self.divide();
+            let band = self.band_nodes();
+            for _ in 0..SWEEPS {
+                for node in &band {
+                    self.improve_node(node);
                 }
             }
-            velocity.region_corners.push(slots);
-        }
-        velocity
-    }
-
-    /// Value of a lattice node in the fluid, zero where it counts as wall.
-    fn node_value(&self, (i, j): (i64, i64)) -> f64 {
-        match (u32::try_from(i), u32::try_from(j)) {
-            (Ok(i), Ok(j)) => self.phi.at(self.mask, i, j).unwrap_or(0.0),
-            _ => 0.0,
         }
     }
 
-    /// Lowers corner values until `w <= 0` on the wall. Lowering never undoes what was reached before.
-    ///
-    /// Crossings with the sides of triangles come first: each concerns two corners only, so none is lowered
-    /// for the sake of another. What the vertices between them still need is little.
-    fn lower(&mut self) {
-        self.lower_where(|share| share.iter().any(|l| l.abs() < 1e-9));
-        self.lower_where(|_| true);
-    }
-
-    fn lower_where(&mut self, chosen: impl Fn([f64; 3]) -> bool) {
-        for index in 0..self.regions.len() {
-            let region = &self.regions[index];
-            for triangle in 0..2 {
-                for polygon in &region.boundary {
-                    for p in below_diagonal(polygon, triangle) {
-                        let is_corner = CORNERS.iter().zip(region.corners).any(|(c, held)| {
-                            held && c[0].total_cmp(&p[0]).is_eq() && c[1].total_cmp(&p[1]).is_eq()
-                        });
-                        if !is_corner && chosen(shares(triangle, p)) {
-                            self.lower_at(index, triangle, p);
+    /// Divides every polygon; the nodes of those that cannot be divided are set to zero and held there, after
+    /// which they need no division.
+    fn divide(&mut self) {
+        self.triangles.clear();
+        for index in 0..self.polygons.len() {
+            let polygon = &self.polygons[index];
+            let vertices = polygon.vertices.iter().map(|&(at, node)| Vertex {
+                at,
+                node: node.filter(|n| !self.held.contains(n)),
+                value: node.map_or(0.0, |n| self.values[n]),
+            });
+            let divided = if polygon.has_hole {
+                None
+            } else {
+                triangulate(vertices.collect())
+            };
+            match divided {
+                Some(triangles) => self.triangles.extend(triangles),
+                None => {
+                    for &(_, node) in &self.polygons[index].vertices {
+                        if let Some(n) = node {
+                            self.values[n] = 0.0;
+                            self.held.insert(n);
                         }
                     }
                 }
@@ -187,51 +157,88 @@ impl<'a> Velocity<'a> {
         }
     }
 
-    fn lower_at(&mut self, index: usize, triangle: usize, p: Point) {
-        let slots = TRIANGLES[triangle].map(|corner| self.region_corners[index][corner]);
-        let share = shares(triangle, p);
-        let value: f64 = slots
+    fn band_nodes(&self) -> Vec<BandNode> {
+        let mut corners: Vec<(usize, usize, usize)> = self
+            .triangles
             .iter()
-            .zip(share)
-            .map(|(&slot, l)| l * self.corners[slot].value)
-            .sum();
-        if value <= 0.0 {
-            return;
+            .enumerate()
+            .flat_map(|(t, triangle)| {
+                (0..3).filter_map(move |k| triangle.nodes[k].map(|node| (node, t, k)))
+            })
+            .filter(|(node, ..)| !self.held.contains(node))
+            .collect();
+        corners.sort_unstable();
+        let mut places: Vec<(usize, (i64, i64))> = self
+            .polygons
+            .iter()
+            .flat_map(|polygon| polygon.nodes_at(|at| natural_at(self.mask, at)))
+            .collect();
+        places.sort_unstable();
+        places.dedup();
+        corners
+            .chunk_by(|a, b| a.0 == b.0)
+            .filter_map(|chunk| {
+                let node = chunk.first()?.0;
+                let place = places.binary_search_by_key(&node, |p| p.0).ok()?;
+                Some(BandNode {
+                    node,
+                    triangles: chunk.iter().map(|&(_, t, k)| (t, k)).collect(),
+                    squares: self.squares_around(places[place].1),
+                })
+            })
+            .collect()
+    }
+
+    fn squares_around(&self, (i, j): (i64, i64)) -> Vec<WholeSquare> {
+        [(i, j), (i - 1, j), (i - 1, j - 1), (i, j - 1)]
+            .into_iter()
+            .enumerate()
+            .filter(|&(_, (column, row))| !self.is_cut(column, row))
+            .map(|(corner, (column, row))| WholeSquare {
+                nodes: corner_nodes(self.mask, column, row),
+                bubbles: self.bubbles(column, row),
+                corner,
+            })
+            .collect()
+    }
+
+    fn values_of(&self, triangle: &Triangle) -> [f64; 3] {
+        triangle
+            .nodes
+            .map(|node| node.map_or(0.0, |n| self.values[n]))
+    }
+
+    /// Sets one value so that twice the volume less the energy is largest.
+    fn improve_node(&mut self, node: &BandNode) {
+        let (mut pull, mut stiffness) = (0.0, 0.0);
+        for &(t, corner) in &node.triangles {
+            let triangle = &self.triangles[t];
+            pull += triangle.weight() - triangle.half_slope(self.values_of(triangle), corner);
+            stiffness += triangle.stiffness(corner);
         }
-        let beyond: f64 = slots
-            .iter()
-            .zip(share)
-            .filter(|&(&slot, _)| self.corners[slot].node.is_none())
-            .map(|(_, l)| l * l)
-            .sum();
-        // The smallest change that does it, if possible of corners beyond the wall; a little more than
-        // needed, for rounding.
-        let only_beyond = beyond >= LEAST_SHARE * LEAST_SHARE;
-        let all: f64 = share.iter().map(|l| l * l).sum();
-        let scale = value / if only_beyond { beyond } else { all } * (1.0 + 1e-12);
-        for (slot, l) in slots.into_iter().zip(share) {
-            let change = scale * l;
-            match self.corners[slot].node {
-                None => self.corners[slot].value -= change,
-                Some(_) if only_beyond => {}
-                Some(node) => self.lower_node(node, self.corners[slot].value - change),
-            }
+        for square in &node.squares {
+            let now = Square {
+                corners: square.nodes.map(|n| n.map_or(0.0, |n| self.values[n])),
+                bubbles: square.bubbles,
+            };
+            pull += 0.25 - now.half_slope(square.corner);
+            stiffness += STIFFNESS;
+        }
+        if stiffness > 0.0 && (pull / stiffness).is_finite() {
+            self.values[node.node] += pull / stiffness;
         }
     }
 
-    /// Sets a node in the fluid to a lower value wherever it is a corner.
-    fn lower_node(&mut self, node: (i64, i64), value: f64) {
-        if self.lowered.insert(node, value).is_none() {
-            self.lowered_columns.entry(node.1).or_default().push(node.0);
-        }
-        for &slot in self.slots_of.get(&node).into_iter().flatten() {
-            self.corners[slot].value = value;
-        }
+    /// Adds the divided squares to integrals of `v` and `abs(grad v)^2`.
+    fn with_cut_squares(&self, volume: f64, energy: f64) -> (f64, f64) {
+        self.triangles.iter().fold((volume, energy), |(v, e), t| {
+            let values = self.values_of(t);
+            (v + t.volume(values), e + t.energy(values))
+        })
     }
 
     /// Integrals of `v` and `abs(grad v)^2` over the squares that the wall does not cut, and their number.
     fn whole_squares(&self) -> (f64, f64, usize) {
-        let natural = self.phi.natural(self.mask);
         let (mut volume, mut energy, mut count) = (0.0, 0.0, 0);
         for row in -1..i64::try_from(self.mask.rows()).unwrap_or(i64::MAX) {
             let special = self.special_squares(row);
@@ -241,14 +248,14 @@ impl<'a> Velocity<'a> {
                 let begin = special.partition_point(|&c| c < from);
                 let inside = special[begin..].iter().copied().take_while(|&c| c < to);
                 for stop in inside.chain([to]) {
-                    let (dv, de) = self.plain_squares(&natural, i..stop, row);
+                    let (dv, de) = self.plain_squares(i..stop, row);
                     v += dv;
                     e += de;
                     count += (stop - i) as usize;
                     if stop < to && !self.is_cut(stop, row) {
-                        let (dv, de) = self.single_square(stop, row);
-                        v += dv;
-                        e += de;
+                        let square = self.square(stop, row);
+                        v += square.volume();
+                        e += square.energy();
                         count += 1;
                     }
                     i = stop + 1;
@@ -260,73 +267,90 @@ impl<'a> Velocity<'a> {
         (volume, energy, count)
     }
 
-    fn is_cut(&self, i: i64, row: i64) -> bool {
-        self.cut
-            .get(&row)
-            .is_some_and(|columns| columns.binary_search(&i).is_ok())
+    fn cut_columns(&self, row: i64) -> &[i64] {
+        self.cut.get(&row).map_or(&[][..], Vec::as_slice)
     }
 
-    /// Columns of a row of squares that are cut or have a lowered corner, rising.
+    fn is_cut(&self, i: i64, row: i64) -> bool {
+        self.cut_columns(row).binary_search(&i).is_ok()
+    }
+
+    /// Columns of a row of squares that are divided or have a divided one among the eight around, rising.
     fn special_squares(&self, row: i64) -> Vec<i64> {
-        let mut columns: Vec<i64> = self.cut.get(&row).cloned().unwrap_or_default();
-        for j in [row, row + 1] {
-            let lowered = self.lowered_columns.get(&j);
-            columns.extend(lowered.into_iter().flatten().flat_map(|&i| [i - 1, i]));
-        }
+        let mut columns: Vec<i64> = (row - 1..=row + 1)
+            .flat_map(|r| self.cut_columns(r))
+            .flat_map(|&c| [c - 1, c, c + 1])
+            .collect();
         columns.sort_unstable();
         columns.dedup();
         columns
     }
 
-    /// Squares in the fluid without lowered corners.
-    fn plain_squares(
-        &self,
-        natural: &[f64],
-        squares: std::ops::Range<i64>,
-        row: i64,
-    ) -> (f64, f64) {
+    /// Squares with whole squares all around.
+    fn plain_squares(&self, squares: std::ops::Range<i64>, row: i64) -> (f64, f64) {
         let n = (squares.end - squares.start).max(0) as usize;
         if n == 0 {
             return (0.0, 0.0);
         }
+        // Nodes from one before the first square to two after it, in one stretch of memory.
         let line = |j: i64| {
-            let j = u32::try_from(j).ok()?;
-            let from = u32::try_from(squares.start).ok()?;
-            let start = self.mask.natural_at(from, j)? as usize;
-            let last = self.mask.natural_at(from + n as u32, j)? as usize;
-            (last == start + n)
-                .then(|| natural.get(start..=last))
-                .flatten()
+            let start = natural_at(self.mask, (squares.start - 1, j))?;
+            let last = natural_at(self.mask, (squares.end + 1, j))?;
+            let line = self.phi.get(start..=last)?;
+            (line.len() == n + 3).then_some(line)
         };
-        let (Some(below), Some(above)) = (line(row), line(row + 1)) else {
+        let (Some(r0), Some(r1), Some(r2), Some(r3)) =
+            (line(row - 1), line(row), line(row + 1), line(row + 2))
+        else {
             return squares
-                .map(|i| self.single_square(i, row))
-                .fold((0.0, 0.0), |(v, e), (dv, de)| (v + dv, e + de));
+                .map(|i| self.square(i, row))
+                .fold((0.0, 0.0), |(v, e), s| (v + s.volume(), e + s.energy()));
         };
-        let (mut volume, mut steps) = (0.0, 0.0);
+        let (mut volume, mut energy) = (0.0, 0.0);
         for k in 0..n {
-            let (a, b, c, d) = (below[k], below[k + 1], above[k + 1], above[k]);
-            volume += 2.0 * (a + c) + (b + d);
-            let (s, e, n, w) = (b - a, c - b, c - d, d - a);
-            steps += (s * s + e * e) + (n * n + w * w);
+            let across = |line: &[f64]| bubble([line[k], line[k + 1], line[k + 2], line[k + 3]]);
+            let up = |k: usize| bubble([r0[k], r1[k], r2[k], r3[k]]);
+            let square = Square {
+                corners: [r1[k + 1], r1[k + 2], r2[k + 2], r2[k + 1]],
+                bubbles: [across(r1), up(k + 2), across(r2), up(k + 1)],
+            };
+            volume += square.volume();
+            energy += square.energy();
         }
-        (volume / 6.0, 0.5 * steps)
+        (volume, energy)
     }
 
-    fn single_square(&self, i: i64, row: i64) -> (f64, f64) {
-        whole_square([
-            self.value_at(i, row),
-            self.value_at(i + 1, row),
-            self.value_at(i + 1, row + 1),
-            self.value_at(i, row + 1),
-        ])
+    /// A square that the wall does not cut.
+    fn square(&self, i: i64, j: i64) -> Square {
+        let nodes = corner_nodes(self.mask, i, j);
+        Square {
+            corners: nodes.map(|node| node.map_or(0.0, |n| self.values[n])),
+            bubbles: self.bubbles(i, j),
+        }
     }
 
-    fn value_at(&self, i: i64, j: i64) -> f64 {
-        match self.lowered.get(&(i, j)) {
-            Some(&value) => value,
-            None => self.node_value((i, j)),
-        }
+    /// Bubbles of a whole square. A side has one where both its squares are whole and four nodes in line are
+    /// fluid.
+    fn bubbles(&self, i: i64, j: i64) -> [f64; 4] {
+        let bubble_of = |at: (i64, i64), step: (i64, i64), beyond: (i64, i64)| {
+            if self.is_cut(beyond.0, beyond.1) {
+                return 0.0;
+            }
+            let four = [-1, 0, 1, 2].map(|k| {
+                let n = natural_at(self.mask, (at.0 + k * step.0, at.1 + k * step.1))?;
+                self.phi.get(n).copied()
+            });
+            match four {
+                [Some(a), Some(b), Some(c), Some(d)] => bubble([a, b, c, d]),
+                _ => 0.0,
+            }
+        };
+        [
+            bubble_of((i, j), (1, 0), (i, j - 1)),
+            bubble_of((i + 1, j), (0, 1), (i + 1, j)),
+            bubble_of((i, j + 1), (1, 0), (i, j + 1)),
+            bubble_of((i, j), (0, 1), (i - 1, j)),
+        ]
     }
 
     /// Squares of a row with at least one fluid node, as disjoint ranges of columns.
@@ -347,96 +371,20 @@ impl<'a> Velocity<'a> {
         }
         merged
     }
-
-    /// Integrals of `v` and `abs(grad v)^2` over one triangle of a region.
-    fn cut_triangle(&self, index: usize, region: &Region, triangle: usize) -> (f64, f64) {
-        let values = self.region_corners[index].map(|slot| self.corners[slot].value);
-        positive_part(values, region.boundary.iter().map(Vec::as_slice), triangle)
-    }
 }
 
-/// Integrals of `v` and `abs(grad v)^2` over a square in the fluid with the given corner values.
-fn whole_square(corners: [f64; 4]) -> (f64, f64) {
-    let [a, b, c, d] = corners;
-    if corners.iter().all(|&w| w >= 0.0) {
-        let volume = (a + b + c) / 6.0 + (a + c + d) / 6.0;
-        let steps = (b - a).powi(2) + (c - b).powi(2) + (c - d).powi(2) + (d - a).powi(2);
-        return (volume, 0.5 * steps);
-    }
-    let square = || std::iter::once(&CORNERS[..]);
-    let (v0, e0) = positive_part(corners, square(), 0);
-    let (v1, e1) = positive_part(corners, square(), 1);
-    (v0 + v1, e0 + e1)
+/// Row-by-row numbers of the corners of a square, anticlockwise from the lower left.
+fn corner_nodes(mask: &Mask, i: i64, j: i64) -> [Option<usize>; 4] {
+    [(i, j), (i + 1, j), (i + 1, j + 1), (i, j + 1)].map(|at| natural_at(mask, at))
 }
 
-/// Integrals of the positive part of `w` and of its squared gradient over one triangle of polygons.
-fn positive_part<'a>(
-    corners: [f64; 4],
-    polygons: impl Iterator<Item = &'a [Point]>,
-    triangle: usize,
-) -> (f64, f64) {
-    let [a, b, c, d] = corners;
-    // w = a + gx x + gy y.
-    let (gx, gy) = if triangle == 0 {
-        (b - a, c - b)
-    } else {
-        (c - d, d - a)
-    };
-    let w = |p: Point| a + gx * p[0] + gy * p[1];
-    let (mut area, mut first) = (0.0, [0.0; 2]);
-    for polygon in polygons {
-        let part = keep(&below_diagonal(polygon, triangle), w);
-        let next = part.iter().cycle().skip(1);
-        for (p, q) in part.iter().zip(next) {
-            let cross = p[0] * q[1] - p[1] * q[0];
-            area += 0.5 * cross;
-            first[0] += cross * (p[0] + q[0]) / 6.0;
-            first[1] += cross * (p[1] + q[1]) / 6.0;
-        }
-    }
-    if area <= 0.0 {
-        return (0.0, 0.0);
-    }
-    (
-        a * area + gx * first[0] + gy * first[1],
-        (gx * gx + gy * gy) * area,
-    )
+/// Row-by-row number of the fluid node `(i, j)`.
+fn natural_at(mask: &Mask, (i, j): (i64, i64)) -> Option<usize> {
+    let (i, j) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
+    mask.natural_at(i, j).map(|n| n as usize)
 }
 
-/// Shares of the three corners of a triangle in a point of it.
-fn shares(triangle: usize, p: Point) -> [f64; 3] {
-    if triangle == 0 {
-        [1.0 - p[0], p[0] - p[1], p[1]]
-    } else {
-        [1.0 - p[1], p[0], p[1] - p[0]]
-    }
-}
-
-/// The part of a polygon in one triangle of its cell.
-fn below_diagonal(polygon: &[Point], triangle: usize) -> Vec<Point> {
-    keep(polygon, |p| {
-        if triangle == 0 {
-            p[0] - p[1]
-        } else {
-            p[1] - p[0]
-        }
-    })
-}
-
-/// The part of a polygon where a linear function is not negative (Sutherland and Hodgman 1974, Commun. ACM
-/// 17, 32). Parts that fall apart stay joined along the cut, which integrals do not notice.
-fn keep(polygon: &[Point], f: impl Fn(Point) -> f64) -> Vec<Point> {
-    let mut kept = Vec::with_capacity(polygon.len() + 2);
-    let next = polygon.iter().cycle().skip(1);
-    for (&p, &q) in polygon.iter().zip(next) {
-        let (fp, fq) = (f(p), f(q));
-        if fp >= 0.0 {
-            kept.push(p);
-        }
-        if (fp >= 0.0) != (fq >= 0.0) {
-            let t = fp / (fp - fq);
-            kept.push([p[0] + t * (q[0] - p[0]), p[1] + t * (q[1] - p[1])]);
-        }
-    }
-    kept
+/// What the cubic through four equally spaced values has in the middle beyond the mean of the inner two.
+fn bubble([a, b, c, d]: [f64; 4]) -> f64 {
+    (b + c - a - d) / 16.0
 }

@@ -17,12 +17,11 @@ use std::collections::BTreeMap;
 use sprs::TriMat;
 
 use crate::geometry::Point;
-use crate::grid::{
-    Colour, EAST, Lattice, Mask, NO_NODE, NORTH, Region, Run, SOUTH, WEST, WallNode, cut_cells,
-    shared_parts, signed_area,
-};
+use crate::grid::{EAST, Lattice, Mask, NORTH, Region, Run, SOUTH, WEST, cut_cells, shared_parts};
 use crate::solve::{Field, solve_sparse};
 
+use super::cell_energy::{Moments, energy, region_moments, whole_energy};
+use super::nodal_flux::NodalFlux;
 use super::{ProofError, ROUNDING};
 
 /// Shift of the cells against the middle between nodes, so that walls on lattice lines are nothing special.
@@ -32,15 +31,7 @@ const BALANCED: f64 = 1e-10;
 /// Largest relative difference between the area of the pieces and that of the section.
 const SAME_AREA: f64 = 1e-10;
 /// Cost of changing a free side against a shared one.
-const FREE_WEIGHT: f64 = 0.05;
-
-/// Integrals over one region in cell coordinates.
-#[derive(Debug, Clone, Copy)]
-struct Moments {
-    area: f64,
-    first: Point,
-    second: Point,
-}
+const FREE_WEIGHT: f64 = 1e-3;
 
 /// An upper bound for the conductance, in units of the lattice spacing to the fourth power.
 ///
@@ -89,42 +80,6 @@ pub(super) fn check_area(lattice: &Lattice, pieces: f64) -> Result<(), ProofErro
     }
 }
 
-fn region_moments(region: &Region) -> Moments {
-    let mut m = Moments {
-        area: 0.0,
-        first: [0.0; 2],
-        second: [0.0; 2],
-    };
-    for polygon in &region.boundary {
-        m.area += signed_area(polygon);
-        let next = polygon.iter().cycle().skip(1);
-        for (a, b) in polygon.iter().zip(next) {
-            let cross = a[0] * b[1] - a[1] * b[0];
-            for axis in 0..2 {
-                m.first[axis] += cross * (a[axis] + b[axis]) / 6.0;
-                m.second[axis] +=
-                    cross * (a[axis] * a[axis] + a[axis] * b[axis] + b[axis] * b[axis]) / 12.0;
-            }
-        }
-    }
-    m
-}
-
-/// Integral of `abs(s)^2` over a region with the given side values.
-fn energy(sides: [f64; 4], m: &Moments) -> f64 {
-    let part = |low: f64, high: f64, axis: usize| {
-        let slope = high - low;
-        low * low * m.area + 2.0 * low * slope * m.first[axis] + slope * slope * m.second[axis]
-    };
-    part(sides[WEST], sides[EAST], 0) + part(sides[SOUTH], sides[NORTH], 1)
-}
-
-/// The same over a whole cell.
-fn whole_energy(sides: [f64; 4]) -> f64 {
-    let part = |low: f64, high: f64| (low * low + low * high + high * high) / 3.0;
-    part(sides[WEST], sides[EAST]) + part(sides[SOUTH], sides[NORTH])
-}
-
 /// Sign with which a side enters the divergence.
 fn sign(side: usize) -> f64 {
     if side == EAST || side == NORTH {
@@ -148,9 +103,12 @@ enum Source {
     Band(usize),
 }
 
+/// One cell's divergence: side values with their signs, and what the fixed sides give.
+type Equation = (Vec<(usize, f64)>, f64);
+
 struct Flux<'a> {
     mask: &'a Mask,
-    phi: &'a Field,
+    nodal: NodalFlux<'a>,
     regions: &'a [Region],
     /// Nodal values row by row.
     natural: Vec<f64>,
@@ -161,8 +119,8 @@ struct Flux<'a> {
     /// Side values of the band; sides of regions point here.
     sides: Vec<Side>,
     region_sides: Vec<[usize; 4]>,
-    /// Whole cells in the band: column, row and where their sides come from.
-    band: Vec<[Source; 4]>,
+    /// Whole cells in the band: where their sides come from, and how these vary along themselves.
+    band: Vec<([Source; 4], [f64; 4])>,
 }
 
 impl<'a> Flux<'a> {
@@ -180,7 +138,7 @@ impl<'a> Flux<'a> {
         }
         Self {
             mask,
-            phi,
+            nodal: NodalFlux { mask, phi },
             regions,
             natural: phi.natural(mask),
             cells,
@@ -200,8 +158,7 @@ impl<'a> Flux<'a> {
     }
 
     fn value(&self, i: i64, j: i64) -> Option<f64> {
-        let (i, j) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-        self.phi.at(self.mask, i, j)
+        self.nodal.value(i, j)
     }
 
     /// Number of whole cells: fluid nodes whose cell the outline does not pass through.
@@ -212,97 +169,6 @@ impl<'a> Flux<'a> {
             .filter(|&&(j, i)| self.value(i, j).is_some())
             .count();
         self.mask.nodes() - cut
-    }
-
-    /// Derivative of `phi` at a side of the cell of fluid node `(i, j)`, along the axis of the side.
-    fn slope_at_side(&self, i: i64, j: i64, side: usize) -> Option<f64> {
-        let centre = self.value(i, j)?;
-        let (low, high) =
-            self.differences(i, j, centre, usize::from(side == SOUTH || side == NORTH))?;
-        Some(if side == EAST || side == NORTH {
-            high
-        } else {
-            low
-        })
-    }
-
-    /// Derivatives of the unequal-arm quadratic half a cell below and above a node along one axis.
-    fn differences(&self, i: i64, j: i64, centre: f64, axis: usize) -> Option<(f64, f64)> {
-        let (ui, uj) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-        let (colour, node) = self.mask.node_at(ui, uj)?;
-        let (arms, ends) = if let Some(wall) = self.mask.wall_node(colour, node) {
-            self.wall_ends(wall, colour, axis)
-        } else {
-            let step = if axis == 0 { (1, 0) } else { (0, 1) };
-            let low = self.value(i - step.0, j - step.1)?;
-            let high = self.value(i + step.0, j + step.1)?;
-            ([1.0, 1.0], [low, high])
-        };
-        let (below, above) = ((centre - ends[0]) / arms[0], (ends[1] - centre) / arms[1]);
-        let second = 2.0 * (above - below) / (arms[0] + arms[1]);
-        let first = (below * arms[1] + above * arms[0]) / (arms[0] + arms[1]);
-        Some((first - 0.5 * second, first + 0.5 * second))
-    }
-
-    fn wall_ends(&self, wall: &WallNode, colour: Colour, axis: usize) -> ([f64; 2], [f64; 2]) {
-        let other = &self.phi.colour[colour.other() as usize];
-        let end = |arm: usize| {
-            if wall.neighbour[arm] == NO_NODE {
-                0.0
-            } else {
-                other
-                    .get(wall.neighbour[arm] as usize)
-                    .copied()
-                    .unwrap_or(0.0)
-            }
-        };
-        let low = 2 * axis;
-        ([wall.arm[low], wall.arm[low + 1]], [end(low), end(low + 1)])
-    }
-
-    /// First guess for a side of a cell, from whatever nodes are near.
-    fn guess(&self, i: i64, j: i64, side: usize) -> f64 {
-        let (along, across) = if side == EAST || side == WEST {
-            ((1, 0), (0, 1))
-        } else {
-            ((0, 1), (1, 0))
-        };
-        let forward = if side == EAST || side == NORTH { 0 } else { -1 };
-        let (a, b) = (i + forward * along.0, j + forward * along.1);
-        let step = |k: i64| {
-            let low = self.value(a + k * across.0, b + k * across.1)?;
-            let high = self.value(a + k * across.0 + along.0, b + k * across.1 + along.1)?;
-            Some(high - low)
-        };
-        if let Some(here) = step(0) {
-            return here;
-        }
-        let from_nodes: Vec<f64> = [
-            self.slope_at_side(a, b, if along.0 == 1 { EAST } else { NORTH }),
-            self.slope_at_side(
-                a + along.0,
-                b + along.1,
-                if along.0 == 1 { WEST } else { SOUTH },
-            ),
-        ]
-        .into_iter()
-        .flatten()
-        .collect();
-        if !from_nodes.is_empty() {
-            return from_nodes.iter().sum::<f64>() / from_nodes.len() as f64;
-        }
-        let beside: Vec<f64> = [1, -1]
-            .into_iter()
-            .filter_map(|k| match (step(k), step(2 * k)) {
-                (Some(near), Some(far)) => Some(2.0 * near - far),
-                (near, _) => near,
-            })
-            .collect();
-        if beside.is_empty() {
-            0.0
-        } else {
-            beside.iter().sum::<f64>() / beside.len() as f64
-        }
     }
 
     /// Gives every side of every region its value and weight; shared sides get one value.
@@ -330,8 +196,11 @@ impl<'a> Flux<'a> {
                         .filter(|part| part.0 == side)
                         .map(|part| part.2)
                         .sum();
+                    let extrapolated = (length <= 0.0).then(|| self.nodal.beyond(i, j, side));
                     self.sides.push(Side {
-                        value: self.guess(i, j, side),
+                        value: extrapolated
+                            .flatten()
+                            .unwrap_or_else(|| self.nodal.guess(i, j, side)),
                         weight: FREE_WEIGHT + length,
                     });
                 }
@@ -369,7 +238,7 @@ impl<'a> Flux<'a> {
         total
     }
 
-    /// Columns of a run whose cell is cut or has a cut cell beside it, rising.
+    /// Columns of a run whose cell is cut or has a cut cell among the eight around it, rising.
     fn beside_cut(&self, run: &Run) -> Vec<i64> {
         let j = i64::from(run.row);
         let (first, end) = (i64::from(run.first), i64::from(run.end()));
@@ -381,10 +250,9 @@ impl<'a> Flux<'a> {
                 .copied()
                 .take_while(move |&c| c < end + reach)
         };
-        let mut columns: Vec<i64> = near(j, 1)
+        let mut columns: Vec<i64> = (j - 1..=j + 1)
+            .flat_map(|row| near(row, 1))
             .flat_map(|c| [c - 1, c, c + 1])
-            .chain(near(j - 1, 0))
-            .chain(near(j + 1, 0))
             .filter(|c| (first..end).contains(c))
             .collect();
         columns.sort_unstable();
@@ -412,18 +280,47 @@ impl<'a> Flux<'a> {
         else {
             return cells.map(|i| self.single_cell(i, j, west)).sum();
         };
-        let centre = &self.natural[here - 1..here + n];
-        let (below, above) = (&self.natural[below..][..n], &self.natural[above..][..n]);
+        // All eight cells around are whole, so every node around is fluid.
+        let line = |start: usize| self.natural.get(start - 1..=start + n).unwrap_or(&[]);
+        let (centre, below, above) = (line(here), line(below), line(above));
+        if [centre, below, above].iter().any(|l| l.len() != n + 2) {
+            return cells.map(|i| self.single_cell(i, j, west)).sum();
+        }
         let mut w = west.unwrap_or(centre[1] - centre[0]);
         let mut sum = 0.0;
         for k in 0..n {
-            let (s, n) = (centre[k + 1] - below[k], above[k] - centre[k + 1]);
-            let e = w - 1.0 - (n - s);
-            sum += (s * s + s * n + n * n) + (w * w + w * e + e * e);
-            w = e;
+            let (south, north) = (centre[k + 1] - below[k + 1], above[k + 1] - centre[k + 1]);
+            let east = w - 1.0 - (north - south);
+            let across = |k: usize| [above[k] - centre[k], centre[k] - below[k]];
+            let up = |k: usize| 0.5 * ((above[k + 1] - above[k]) - (below[k + 1] - below[k]));
+            let ([nw, sw], [ne, se]) = (across(k), across(k + 2));
+            let along = [0.5 * (se - sw), up(k + 1), 0.5 * (ne - nw), up(k)];
+            sum += whole_energy([south, east, north, w], along);
+            w = east;
         }
         *west = Some(w);
-        sum / 3.0
+        sum
+    }
+
+    /// Variation of the flux along each side of a whole cell; none where a cut cell shares the side or a node
+    /// around it is not fluid. The two cells at a side get the same value.
+    fn variations(&self, i: i64, j: i64) -> [f64; 4] {
+        [(0, -1), (1, 0), (0, 1), (-1, 0)].map(|(di, dj)| {
+            if self.is_cut(i + di, j + dj) {
+                return 0.0;
+            }
+            // The side between a lower or left node and the next one; the direction along it.
+            let (a, b) = (i + di.min(0), j + dj.min(0));
+            let (step, turn) = ((di.abs(), dj.abs()), (dj.abs(), di.abs()));
+            let flux = |k: i64| {
+                let (x, y) = (a + k * turn.0, b + k * turn.1);
+                Some(self.value(x + step.0, y + step.1)? - self.value(x, y)?)
+            };
+            match (flux(1), flux(-1)) {
+                (Some(above), Some(below)) => 0.5 * (above - below),
+                _ => 0.0,
+            }
+        })
     }
 
     /// One cell that may have cut cells beside it; cut ones are nothing here.
@@ -441,6 +338,7 @@ impl<'a> Flux<'a> {
                     .map(|v| Source::Fixed(sign(own) * (v - centre)))
             }
         };
+        let along = self.variations(i, j);
         let sources = [
             side(0, -1, SOUTH),
             side(1, 0, EAST),
@@ -457,13 +355,13 @@ impl<'a> Flux<'a> {
         {
             let east = w - 1.0 - (north - south);
             *west = Some(east);
-            return whole_energy([south, east, north, w]);
+            return whole_energy([south, east, north, w], along);
         }
         *west = match sources[EAST] {
             Source::Fixed(east) => Some(east),
             Source::Band(_) => None,
         };
-        self.band.push(sources);
+        self.band.push((sources, along));
         0.0
     }
 
@@ -477,17 +375,17 @@ impl<'a> Flux<'a> {
     fn band_energy(&self) -> f64 {
         self.band
             .iter()
-            .map(|cell| whole_energy(cell.map(|source| self.read(source))))
+            .map(|(cell, along)| whole_energy(cell.map(|source| self.read(source)), *along))
             .sum()
     }
 
     /// Cells of the band as lists of (side value, sign), with what the fixed sides already give.
-    fn equations(&self) -> Vec<(Vec<(usize, f64)>, f64)> {
+    fn equations(&self) -> Vec<Equation> {
         let of_regions = self.region_sides.iter().map(|slots| {
             let terms = (0..4).map(|side| (slots[side], sign(side))).collect();
             (terms, 0.0)
         });
-        let of_cells = self.band.iter().map(|cell| {
+        let of_cells = self.band.iter().map(|(cell, _)| {
             let mut terms = Vec::new();
             let mut fixed = 0.0;
             for (side, &source) in cell.iter().enumerate() {
@@ -530,6 +428,11 @@ impl<'a> Flux<'a> {
                 side.value += change / side.weight;
             }
         }
+        self.check_balance(&equations)
+    }
+
+    /// Refuses side values whose divergence is not -1 in every cell of the band.
+    fn check_balance(&self, equations: &[Equation]) -> Result<(), ProofError> {
         let largest = self
             .sides
             .iter()
@@ -559,4 +462,48 @@ pub(super) fn root(group: &mut [usize], mut index: usize) -> usize {
         index = group[index];
     }
     index
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::geometry::Outline;
+    use crate::grid::LineCrossings;
+    use crate::solve::{Hierarchy, SolveControl};
+
+    #[test]
+    fn a_flux_that_does_not_balance_is_refused() {
+        let side = 10.0;
+        let square = vec![[0.0, 0.0], [side, 0.0], [side, side], [0.0, side]];
+        let outline = Outline::single(square).rotated(0.4, [0.0, 0.0]).oriented();
+        let lattice = Lattice::new(&outline, 1.0, [0.3, 0.6]);
+        let (rows, columns) = (
+            LineCrossings::rows(&lattice),
+            LineCrossings::columns(&lattice),
+        );
+        let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns).unwrap();
+        let control = SolveControl {
+            residual: 1e-8,
+            most_cycles: 50,
+        };
+        hierarchy.solve(control, |_, _| {});
+        let (mask, phi) = hierarchy.into_finest();
+        let regions = cut_cells(&lattice, [SHIFT[0] - 0.5, SHIFT[1] - 0.5]).unwrap();
+        let mut flux = Flux::new(&mask, &phi, &regions);
+        flux.set_up_sides(&shared_parts(&regions).unwrap());
+        flux.whole_energy();
+        assert!(flux.balance().is_ok());
+        let equations = flux.equations();
+        for slot in 0..flux.sides.len() {
+            let kept = flux.sides[slot].value;
+            flux.sides[slot].value += 1e-6 * (1.0 + kept.abs());
+            let verdict = flux.check_balance(&equations);
+            assert!(
+                matches!(verdict, Err(ProofError::Unbalanced { .. })),
+                "side {slot}: {verdict:?}"
+            );
+            flux.sides[slot].value = kept;
+        }
+        assert!(flux.check_balance(&equations).is_ok());
+    }
 }

@@ -6,6 +6,7 @@
 use super::document::SolveDocument;
 use super::numbers::one_line;
 use crate::flow::{OperatingPoint, SectionFlow};
+use crate::study::Reach;
 
 /// Why the CSV text could not be built.
 #[derive(Debug, thiserror::Error)]
@@ -32,19 +33,35 @@ pub enum CsvError {
 /// # Errors
 /// [`CsvError`] when the writer refuses, which no section name or number causes.
 pub fn to_csv(documents: &[SolveDocument<'_>]) -> Result<String, CsvError> {
+    let mut names = Vec::new();
+    let mut rows = Vec::new();
+    for document in documents {
+        let (heads, values): (Vec<&str>, Vec<String>) = fields(document).into_iter().unzip();
+        names = heads;
+        rows.push(values);
+    }
+    let section = documents.first().map_or("", |d| d.section_name);
+    table(&names, rows, section)
+}
+
+/// A header row and data rows as text; `section` is named in errors.
+pub(super) fn table(
+    heads: &[&str],
+    rows: impl IntoIterator<Item = Vec<String>>,
+    section: &str,
+) -> Result<String, CsvError> {
     let mut writer = csv::WriterBuilder::new()
         .terminator(csv::Terminator::CRLF)
         .from_writer(Vec::new());
-    for (i, document) in documents.iter().enumerate() {
-        let (names, values): (Vec<&str>, Vec<String>) = fields(document).into_iter().unzip();
-        let refused = |source| CsvError::Record {
-            section: document.section_name.to_owned(),
-            source,
-        };
-        if i == 0 {
-            writer.write_record(&names).map_err(refused)?;
-        }
-        writer.write_record(&values).map_err(refused)?;
+    let refused = |source| CsvError::Record {
+        section: section.to_owned(),
+        source,
+    };
+    if !heads.is_empty() {
+        writer.write_record(heads).map_err(refused)?;
+    }
+    for row in rows {
+        writer.write_record(&row).map_err(refused)?;
     }
     let unfinished = |reason: String| CsvError::Unfinished { reason };
     let bytes = writer.into_inner().map_err(|e| unfinished(e.to_string()))?;
@@ -55,7 +72,7 @@ pub fn to_csv(documents: &[SolveDocument<'_>]) -> Result<String, CsvError> {
 type Field = (&'static str, String);
 
 /// A number as text; empty when absent or not finite.
-fn number(value: impl Into<Option<f64>>) -> String {
+pub(super) fn number(value: impl Into<Option<f64>>) -> String {
     value
         .into()
         .filter(|v| v.is_finite())
@@ -82,7 +99,9 @@ fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
         ("source_sha256", source.map_or("", |s| s.sha256).to_owned()),
         ("source_kind", source.map_or("", |s| s.kind).to_owned()),
     ];
+    all.extend(film_fields(document));
     all.extend(section_fields(document.flow));
+    all.extend(reach_fields(document));
     all.extend([
         ("fluid", fluid.map_or(String::new(), |f| f.name.clone())),
         ("temperature_k", number(fluid.and_then(|f| f.temperature))),
@@ -105,6 +124,29 @@ fn fields(document: &SolveDocument<'_>) -> Vec<Field> {
     all.extend(point_fields(document.operating_point));
     all.push(("warnings", codes.join(" ")));
     all
+}
+
+fn film_fields(document: &SolveDocument<'_>) -> Vec<Field> {
+    let film = document.film;
+    vec![
+        ("film_thickness_m", number(film.map(|f| f.film.thickness))),
+        ("film_on", film.map_or("", |f| f.film.on.word()).to_owned()),
+        ("area_before_film_m2", number(film.map(|f| f.area[0]))),
+    ]
+}
+
+fn reach_fields(document: &SolveDocument<'_>) -> Vec<Field> {
+    let reach = document.reach.map(|record| record.reach);
+    let (low, high) = (reach.and_then(Reach::low), reach.and_then(Reach::high));
+    // Bounds of R go with 1/K.
+    let k = document.flow.conductance.value;
+    let resistance = |bound: Option<f64>| Some(document.resistance()?.value * k / bound?);
+    vec![
+        ("conductance_reach_low_m4", number(low)),
+        ("conductance_reach_high_m4", number(high)),
+        ("resistance_reach_low_pa_s_per_m3", number(resistance(high))),
+        ("resistance_reach_high_pa_s_per_m3", number(resistance(low))),
+    ]
 }
 
 fn section_fields(flow: &SectionFlow) -> Vec<Field> {

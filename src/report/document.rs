@@ -4,7 +4,9 @@
 //! JSON, CSV, field files and pictures cannot disagree. SI throughout.
 
 use crate::flow::{Fluid, OperatingPoint, SectionFlow, ShortcutRow, WallReport};
+use crate::geometry::FilmReport;
 use crate::measured::Estimate;
+use crate::study::Reach;
 use crate::warning::{Code, Warning};
 
 /// Where the section came from.
@@ -20,6 +22,15 @@ pub struct SourceRecord<'a> {
     pub notes: &'a [String],
 }
 
+/// The reach bracket and why the wall is not known better.
+#[derive(Debug, Clone, Copy)]
+pub struct ReachRecord<'a> {
+    /// The bracket.
+    pub reach: &'a Reach,
+    /// The reason that the section file gives.
+    pub reason: Option<&'a str>,
+}
+
 /// Everything an output of `solve` may show.
 #[derive(Debug, Clone, Copy)]
 pub struct SolveDocument<'a> {
@@ -27,8 +38,12 @@ pub struct SolveDocument<'a> {
     pub source: Option<SourceRecord<'a>>,
     /// Name of the section.
     pub section_name: &'a str,
+    /// The film that was put on the section as read; the solved section is what it left.
+    pub film: Option<&'a FilmReport>,
     /// The solved section.
     pub flow: &'a SectionFlow,
+    /// The reach bracket, when the section file gives an inner or outer section.
+    pub reach: Option<ReachRecord<'a>>,
     /// The fluid, when one was given.
     pub fluid: Option<&'a Fluid>,
     /// Channel length, m, when one was given.
@@ -66,7 +81,9 @@ impl<'a> SolveDocument<'a> {
         Self {
             source: None,
             section_name,
+            film: None,
             flow,
+            reach: None,
             fluid: None,
             length: None,
             operating_point: None,

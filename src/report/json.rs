@@ -8,7 +8,10 @@ use std::collections::BTreeMap;
 
 use serde::Serialize;
 
-use super::document::SolveDocument;
+use super::document::{SolveDocument, SourceRecord};
+use super::json_accuracy::AccuracyView;
+use super::json_film::FilmView;
+use super::json_reach::ReachView;
 use super::json_values::{Bracketed, Number, Quantity, maybe, place};
 use super::json_wall::Shear;
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
@@ -34,6 +37,7 @@ struct Root<'a> {
     name: &'a str,
     source: Option<Source<'a>>,
     section: Section,
+    film: Option<FilmView>,
     conductance: Bracketed,
     conductance_finest_grid: Quantity,
     poiseuille: Poiseuille,
@@ -45,6 +49,8 @@ struct Root<'a> {
     grid: Grid,
     solver: Solver,
     bracket_relative_width: Quantity,
+    accuracy: AccuracyView,
+    reach: Option<ReachView<'a>>,
     identities: BTreeMap<&'static str, IdentityView>,
     fluid: Option<FluidView<'a>>,
     resistance_per_length: Quantity,
@@ -77,13 +83,9 @@ impl<'a> Root<'a> {
             schema: SCHEMA,
             tool_version: env!("CARGO_PKG_VERSION"),
             name: document.section_name,
-            source: document.source.map(|s| Source {
-                path: s.path,
-                sha256: s.sha256,
-                kind: s.kind,
-                notes: s.notes,
-            }),
+            source: document.source.map(Source::new),
             section: Section::new(flow),
+            film: document.film.map(FilmView::new),
             conductance: Quantity::bracketed(flow),
             conductance_finest_grid: Quantity::real(flow.conductance_finest_grid, "m^4"),
             poiseuille: Poiseuille {
@@ -102,10 +104,12 @@ impl<'a> Root<'a> {
             wall_shear: Shear::new(document),
             grid: Grid::new(flow),
             solver: Solver::new(&flow.solver),
+            accuracy: AccuracyView::new(flow),
             bracket_relative_width: match &flow.bracket {
                 Ok(proven) => Quantity::real(proven.relative_width(), "1"),
                 Err(error) => Quantity::optional(None, "1", &error.to_string()),
             },
+            reach: document.reach.map(|r| ReachView::new(document, &r)),
             identities: flow
                 .identities
                 .iter()
@@ -144,6 +148,15 @@ fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static
             "the section was built in code, not read from a file",
         );
     }
+    if document.film.is_none() {
+        reasons.insert("film", "no film was asked for");
+    }
+    if document.reach.is_none() {
+        reasons.insert(
+            "reach",
+            "the section file gives no inner or outer section in [reach]",
+        );
+    }
     if document.fluid.is_none() {
         reasons.insert("fluid", "no fluid was given");
         reasons.insert("per_flow_rate", "no fluid was given");
@@ -160,11 +173,22 @@ fn absent_parts(document: &SolveDocument<'_>) -> BTreeMap<&'static str, &'static
 }
 
 #[derive(Serialize)]
-struct Source<'a> {
+pub(super) struct Source<'a> {
     path: &'a str,
     sha256: &'a str,
     kind: &'a str,
     notes: &'a [String],
+}
+
+impl<'a> Source<'a> {
+    pub(super) fn new(source: SourceRecord<'a>) -> Self {
+        Self {
+            path: source.path,
+            sha256: source.sha256,
+            kind: source.kind,
+            notes: source.notes,
+        }
+    }
 }
 
 #[derive(Serialize)]
@@ -209,7 +233,7 @@ struct Peak {
 }
 
 #[derive(Serialize)]
-struct Grid {
+pub(super) struct Grid {
     spacing: Quantity,
     fluid_nodes: Quantity,
     cells_across: Quantity,
@@ -217,7 +241,7 @@ struct Grid {
 }
 
 impl Grid {
-    fn new(flow: &SectionFlow) -> Self {
+    pub(super) fn new(flow: &SectionFlow) -> Self {
         let g = &flow.grid;
         Self {
             spacing: Quantity::real(g.spacing, "m"),
@@ -334,18 +358,31 @@ struct PointView {
 impl PointView {
     fn new(document: &SolveDocument<'_>) -> Option<Self> {
         let no_density = "the density of the fluid is not known";
-        document.operating_point.map(|p| Self {
-            length: Quantity::real(p.length, "m"),
-            flow_rate: Quantity::real(p.flow_rate, "m^3/s"),
-            pressure_drop: Quantity::real(p.pressure_drop, "Pa"),
-            pressure_gradient: Quantity::real(p.pressure_gradient, "Pa/m"),
-            mean_velocity: Quantity::real(p.mean_velocity, "m/s"),
-            peak_velocity: Quantity::real(p.peak_velocity, "m/s"),
-            reynolds_dh: Quantity::optional(p.reynolds_dh, "1", no_density),
-            wall_shear_max: Quantity::real(p.wall_shear_max, "Pa"),
-            wall_shear_mean: Quantity::real(p.wall_shear_mean, "Pa"),
-            residence_time: Quantity::real(p.residence_time, "s"),
-            entrance_length: Quantity::optional(p.entrance_length, "m", no_density),
+        let flow = document.flow;
+        document.operating_point.map(|p| {
+            let with_flow =
+                |value: f64, unit| Quantity::real(value, unit).between(p.flow_bounds(flow, value));
+            let with_pressure = |value: f64, unit| {
+                Quantity::real(value, unit).between(p.pressure_bounds(flow, value))
+            };
+            // The time goes with one over the flow rate.
+            let times = p
+                .flow_bounds(flow, 1.0)
+                .map(|(low, high)| (p.residence_time / high, p.residence_time / low));
+            let reynolds = p.reynolds_dh.and_then(|value| p.flow_bounds(flow, value));
+            Self {
+                length: Quantity::real(p.length, "m"),
+                flow_rate: with_flow(p.flow_rate, "m^3/s"),
+                pressure_drop: with_pressure(p.pressure_drop, "Pa"),
+                pressure_gradient: with_pressure(p.pressure_gradient, "Pa/m"),
+                mean_velocity: with_flow(p.mean_velocity, "m/s"),
+                peak_velocity: Quantity::real(p.peak_velocity, "m/s"),
+                reynolds_dh: Quantity::optional(p.reynolds_dh, "1", no_density).between(reynolds),
+                wall_shear_max: Quantity::real(p.wall_shear_max, "Pa"),
+                wall_shear_mean: with_pressure(p.wall_shear_mean, "Pa"),
+                residence_time: Quantity::real(p.residence_time, "s").between(times),
+                entrance_length: Quantity::optional(p.entrance_length, "m", no_density),
+            }
         })
     }
 }
@@ -375,7 +412,7 @@ impl<'a> ShortcutView<'a> {
 }
 
 #[derive(Serialize)]
-struct WarningView {
+pub(super) struct WarningView {
     code: &'static str,
     message: String,
     advice: String,
@@ -384,7 +421,7 @@ struct WarningView {
 }
 
 impl WarningView {
-    fn new(warning: Warning) -> Self {
+    pub(super) fn new(warning: Warning) -> Self {
         Self {
             code: warning.code.as_str(),
             message: warning.message,

@@ -108,20 +108,33 @@ impl Quantity {
 
     /// The conductance with its proven bounds, null with the reason where there are none.
     pub(super) fn bracketed(flow: &SectionFlow) -> Bracketed {
-        let quantity = Self::estimate(flow.conductance, "m^4");
         match &flow.bracket {
-            Ok(proven) => Bracketed {
-                quantity: quantity.between(Some((proven.low, proven.high))),
-                bracket_absent_because: None,
-            },
-            Err(error) => Bracketed {
-                quantity: Self {
-                    low: Some(Number::Absent),
-                    high: Some(Number::Absent),
-                    ..quantity
-                },
-                bracket_absent_because: Some(error.to_string()),
-            },
+            Ok(proven) => Bracketed::new(flow.conductance, Some((proven.low, proven.high)), None),
+            Err(error) => Bracketed::new(flow.conductance, None, Some(error.to_string())),
+        }
+    }
+}
+
+impl Bracketed {
+    /// A conductance with its bounds, or null and the reason.
+    pub(super) fn new(
+        conductance: Estimate,
+        bounds: Option<(f64, f64)>,
+        bracket_absent_because: Option<String>,
+    ) -> Self {
+        let quantity = Quantity::estimate(conductance, "m^4");
+        let quantity = if bounds.is_some() {
+            quantity.between(bounds)
+        } else {
+            Quantity {
+                low: Some(Number::Absent),
+                high: Some(Number::Absent),
+                ..quantity
+            }
+        };
+        Self {
+            quantity,
+            bracket_absent_because,
         }
     }
 }

@@ -25,7 +25,7 @@ pub(super) const MARGIN: f64 = 40.0;
 /// Least width between the borders, px.
 const LEAST_WIDTH: f64 = 760.0;
 /// Most contour lines.
-const MOST_LEVELS: usize = 12;
+pub(super) const MOST_LEVELS: usize = 12;
 /// Below this share of the peak the map is dark and contour lines are white.
 pub(super) const DARK_SHARE: f64 = 0.6;
 
@@ -89,6 +89,9 @@ pub enum PictureError {
         /// Values found.
         found: usize,
     },
+    /// The result holds no wall.
+    #[error("the result holds no wall shear, so there is no wall to colour")]
+    NoWall,
     /// The pixels could not be made.
     #[error(transparent)]
     Png(#[from] PngError),
@@ -132,7 +135,7 @@ pub fn draw_velocity(
         });
     }
     let (layout, exaggeration) = Layout::of(outline).ok_or(PictureError::NoExtent)?;
-    let mut page = Page::new(document, layout, exaggeration);
+    let mut page = Page::new(document, layout, exaggeration, Shown::new(document));
     page.heading();
     page.section(outline, field);
     page.scale_bars();
@@ -149,6 +152,8 @@ pub(super) struct Shown {
     pub(super) top: f64,
     pub(super) levels: Vec<f64>,
     pub(super) step: f64,
+    /// What the levels are on the page.
+    pub(super) marks: &'static str,
 }
 
 impl Shown {
@@ -174,6 +179,7 @@ impl Shown {
             top,
             levels,
             step,
+            marks: "contour lines",
         }
     }
 
@@ -195,13 +201,18 @@ pub(super) struct Page<'a> {
 }
 
 impl<'a> Page<'a> {
-    fn new(document: &'a SolveDocument<'a>, layout: Layout, exaggeration: Exaggeration) -> Self {
+    pub(super) fn new(
+        document: &'a SolveDocument<'a>,
+        layout: Layout,
+        exaggeration: Exaggeration,
+        shown: Shown,
+    ) -> Self {
         let inner = layout.size[0].max(LEAST_WIDTH).ceil();
         Self {
             document,
             layout,
             exaggeration,
-            shown: Shown::new(document),
+            shown,
             inner,
             y: MARGIN,
             drawing: Drawing {
@@ -334,7 +345,7 @@ impl<'a> Page<'a> {
         Raster { columns, rows, rgb }
     }
 
-    fn finish(mut self) -> Drawing {
+    pub(super) fn finish(mut self) -> Drawing {
         self.drawing.height = (self.y + MARGIN).ceil() as u32;
         self.drawing
     }

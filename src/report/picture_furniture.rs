@@ -73,15 +73,16 @@ impl Page<'_> {
         let shown = &self.shown;
         let heading = if shown.unit.is_empty() {
             format!(
-                "{}; contour lines every {}",
+                "{}; {} every {}",
                 shown.quantity,
+                shown.marks,
                 ticks::label(shown.step, shown.step)
             )
         } else {
             let step = shown.with_unit(&ticks::label(shown.step, shown.step));
             format!(
-                "{} in {}; contour lines every {step}",
-                shown.quantity, shown.unit
+                "{} in {}; {} every {step}",
+                shown.quantity, shown.unit, shown.marks
             )
         };
         self.y += 14.0;

@@ -4,12 +4,14 @@
 //! Friction factors always say Fanning or Darcy, and hydraulic diameter or `sqrt(A)`. Wall-clock time is
 //! printed in verbose text only, so that the default text of one input is always the same.
 
-use super::document::SolveDocument;
+use super::document::{SolveDocument, SourceRecord};
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
-use super::{text_operation, text_wall};
+use super::text_accuracy::accuracy;
+use super::{text_operation, text_reach, text_wall};
 use crate::flow::{SectionFlow, SectionGeometry};
 use crate::geometry::Point;
+use crate::warning::Warning;
 
 /// How to print the text.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -26,13 +28,11 @@ const INDENT: usize = 2;
 /// The document as text, ended by a line feed.
 pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
     let flow = document.flow;
-    let mut parts = vec![
-        title(document),
-        geometry(&flow.geometry),
-        conductance(flow),
-        friction(flow),
-        velocity(flow),
-    ];
+    let mut parts = vec![title(document.section_name, document.source)];
+    parts.extend(document.film.map(text_reach::film));
+    parts.extend([geometry(&flow.geometry), conductance(flow), accuracy(flow)]);
+    parts.extend(document.reach.map(|r| text_reach::reach(document, &r)));
+    parts.extend([friction(flow), velocity(flow)]);
     if document.operating_point.is_none() {
         parts.push(shear_per_gradient(flow));
     }
@@ -40,7 +40,7 @@ pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
     parts.extend(text_wall::walls(document));
     parts.push(identities(flow, options.verbose));
     parts.push(evidence(flow, options.verbose));
-    parts.extend(warnings(document));
+    parts.extend(warnings(&document.all_warnings()));
     let text = parts.join("\n");
     if options.ascii {
         numbers::to_ascii(&text)
@@ -59,9 +59,10 @@ pub(super) fn part(heading: &str, table: &Table) -> String {
     format!("{heading}\n{}", table.print(INDENT))
 }
 
-fn title(document: &SolveDocument<'_>) -> String {
-    let mut out = format!("Section {}\n", numbers::title(document.section_name));
-    if let Some(source) = document.source {
+/// Name of the section and the file it came from.
+pub(super) fn title(section_name: &str, source: Option<SourceRecord<'_>>) -> String {
+    let mut out = format!("Section {}\n", numbers::title(section_name));
+    if let Some(source) = source {
         let path = numbers::one_line(source.path);
         let mut table = Table::new(&[Align::Left, Align::Left]);
         table.row([source.kind, path.as_str()]);
@@ -109,7 +110,7 @@ fn geometry(g: &SectionGeometry) -> String {
 }
 
 /// A count with its noun.
-fn counted(count: usize, one: &str, many: &str) -> String {
+pub(super) fn counted(count: usize, one: &str, many: &str) -> String {
     format!("{count} {}", if count == 1 { one } else { many })
 }
 
@@ -249,7 +250,7 @@ pub(super) fn shear_place(flow: &SectionFlow) -> [String; 3] {
 }
 
 /// A place in the section.
-fn place(flow: &SectionFlow, at: Point) -> String {
+pub(super) fn place(flow: &SectionFlow, at: Point) -> String {
     numbers::place(at, [flow.geometry.width, flow.geometry.height], 5)
 }
 
@@ -366,13 +367,13 @@ fn hierarchy(flow: &SectionFlow) -> String {
     )
 }
 
-fn warnings(document: &SolveDocument<'_>) -> Option<String> {
-    let all = document.all_warnings();
+/// The warnings, if there are any.
+pub(super) fn warnings(all: &[Warning]) -> Option<String> {
     if all.is_empty() {
         return None;
     }
     let mut out = "Warnings and cautions\n".to_owned();
-    for warning in &all {
+    for warning in all {
         let text = format!(
             "{}: {}",
             warning.code.as_str(),

@@ -1,10 +1,10 @@
 //! The parts of the text that need a fluid, a length, an operating point or the shortcut formulas.
 
 use super::document::SolveDocument;
-use super::numbers::{self, significant, with_unit};
+use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Table, paragraph};
 use super::text::{part, shear_place, value_table};
-use crate::flow::{Fluid, OperatingPoint, ShortcutRow};
+use crate::flow::{Drive, Fluid, OperatingPoint, ShortcutRow};
 use crate::measured::Estimate;
 
 /// The parts that apply to this document, in order.
@@ -118,6 +118,9 @@ fn operating_point(document: &SolveDocument<'_>, point: &OperatingPoint) -> Stri
             with_unit(value, units, 5),
         ]);
     }
+    if let Some(row) = proven_rows(document, point) {
+        table.row(row);
+    }
     shear_rows(&mut table, document, point);
     table.row([
         "residence time A L / Q".to_owned(),
@@ -126,6 +129,29 @@ fn operating_point(document: &SolveDocument<'_>, point: &OperatingPoint) -> Stri
     ]);
     inertia_rows(&mut table, point);
     part("Operating point", &table)
+}
+
+/// The proven range of what was not given: the flow rate or the pressure drop.
+fn proven_rows(document: &SolveDocument<'_>, point: &OperatingPoint) -> Option<[String; 3]> {
+    let flow = document.flow;
+    let (label, unit, bounds) = match point.drive {
+        Drive::PressureDrop(_) => (
+            "flow rate, proven",
+            "m\u{b3}/s",
+            point.flow_bounds(flow, point.flow_rate),
+        ),
+        Drive::FlowRate(_) => (
+            "pressure drop, proven",
+            "Pa",
+            point.pressure_bounds(flow, point.pressure_drop),
+        ),
+    };
+    let (low, high) = bounds?;
+    Some([
+        label.to_owned(),
+        format!("{} to {} {unit}", significant(low, 6), significant(high, 6)),
+        format!("{} wide", per_cent(2.0 * (high - low) / (high + low))),
+    ])
 }
 
 fn shear_rows(table: &mut Table, document: &SolveDocument<'_>, point: &OperatingPoint) {

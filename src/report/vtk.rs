@@ -117,7 +117,8 @@ pub fn field_vti(document: &SolveDocument<'_>, field: &DenseField) -> Result<Str
 
 /// The wall as `.vtp` text: one closed polyline through the points of the curve of each loop.
 ///
-/// Point data: `wall_shear` (Pa with an operating point, else Pa per Pa/m), `normal` (unit vector out of
+/// Point data: `wall_shear` (Pa with an operating point, else Pa per Pa/m), `sensitivity` (relative change
+/// of `K` per length of outward motion and length of wall that moves, 1/m^2), `normal` (unit vector out of
 /// the fluid), `arc_length` (m, along its loop), `loop` (index), `wall` (index into the walls in the order of
 /// the text and of JSON, where they were worked out), `corner` (0 none, 1 convex, 2 singular). A corner is
 /// there twice, once for either side; at a singular one the shear is the mean over a stated length.
@@ -142,8 +143,14 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
         let triple = |p: &&CurvePoint| [value(p)[0], value(p)[1], 0.0];
         IOBuffer::F64(points.iter().flat_map(triple).collect())
     };
+    let k = document.flow.conductance.value;
     let mut data = vec![
         scalars("wall_shear", real(&|p| p.shear_per_gradient * scale.factor)),
+        array(
+            "sensitivity",
+            1,
+            real(&|p| p.shear_per_gradient.powi(2) / k),
+        ),
         Attribute::DataArray(DataArray::vectors("normal").with_data(plane(|p| p.normal))),
         array("arc_length", 1, real(&|p| p.arc_length)),
         array("loop", 1, IOBuffer::U64(loop_indices(loops).collect())),
@@ -173,6 +180,7 @@ pub fn wall_vtp(document: &SolveDocument<'_>) -> Result<String, VtkError> {
     };
     let units = [
         ("wall_shear", scale.unit),
+        ("sensitivity", "1/m^2"),
         ("normal", "1"),
         ("arc_length", "m"),
         ("loop", "1"),

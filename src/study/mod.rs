@@ -1,1 +1,18 @@
 //! Questions over one or many sections that each take several solves or their derivatives.
+
+mod facing;
+mod moved_outline;
+mod reach;
+mod resolve_check;
+mod sensitivity;
+mod wall_motion;
+mod wall_motion_cases;
+
+pub use moved_outline::{MovedOutline, moved_outline};
+pub use reach::{Reach, ReachBound, ReachError, ReachSide, ReachSides};
+pub use resolve_check::{Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE};
+pub use sensitivity::{
+    Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study, solve_for_sensitivity,
+};
+pub use wall_motion::{EdgeMotion, LinearField, Measure, WallMotion};
+pub use wall_motion_cases::{NoMotion, WallMotions, wall_motions};

@@ -97,6 +97,7 @@ fn example(quantity: &str) -> &'static str {
         "pressure gradient" => "2 kPa/mm",
         "velocity" => "1 mm/s",
         "time" => "3 s",
+        "memory" => "2 GB",
         _ => "30 um",
     }
 }

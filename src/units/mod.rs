@@ -6,6 +6,7 @@
 //! nearest to 3e-5 m.
 
 mod atoms;
+mod bytes;
 mod error;
 mod format;
 mod grammar;
@@ -13,6 +14,7 @@ mod quantity;
 mod scale;
 pub(crate) mod spelling;
 
+pub use bytes::parse_bytes;
 pub use error::UnitError;
 pub use format::{
     format_flow_rate, format_length, format_percent, format_pressure, format_si,

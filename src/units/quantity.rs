@@ -109,7 +109,7 @@ pub fn parse_quantity(text: &str, quantity: Quantity) -> Result<f64, UnitError> 
 }
 
 /// Passes a finite value on.
-fn finite(value: Option<f64>, text: &str) -> Result<f64, UnitError> {
+pub(super) fn finite(value: Option<f64>, text: &str) -> Result<f64, UnitError> {
     value
         .filter(|v| v.is_finite())
         .ok_or_else(|| UnitError::NotFinite {

@@ -21,7 +21,12 @@ fn assert_plausible(record: &Value, name: &str) {
     let circle = area * area / (8.0 * std::f64::consts::PI);
     let error = record["conductance"]["estimated_error"].as_f64().unwrap();
     assert!(k > 0.0 && k <= circle + error, "{name}: K = {k:e}");
-    assert!(error / k < 1e-4, "{name}: relative error {}", error / k);
+    assert!(error / k < 1e-3, "{name}: relative error {}", error / k);
+    let width = of("/bracket_relative_width");
+    assert!(
+        width <= 1e-3 && record["accuracy"]["met"] == true,
+        "{name}: {width}"
+    );
     let friction = of("/poiseuille/fanning_dh");
     assert!((5.0..30.0).contains(&friction), "{name}: f Re = {friction}");
     let peak = of("/peak_to_mean_velocity");

@@ -225,6 +225,7 @@ fn csv_has_unit_ended_names_and_reads_back_exactly_whatever_the_name() {
         "source_path",
         "source_sha256",
         "source_kind",
+        "film_on",
         "fluid",
         "solver_converged",
         "warnings",

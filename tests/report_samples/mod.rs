@@ -317,6 +317,7 @@ fn section_flow(
                 -2e-5,
             ),
         ],
+        accuracy: etchwise::flow::Accuracy::default(),
         warnings: Vec::new(),
         geometry,
     }
@@ -366,6 +367,7 @@ fn operating_point(flow: &SectionFlow) -> OperatingPoint {
     let gradient = 1000.0 / 0.02;
     let mean = gradient / water.viscosity * flow.conductance.value / g.area;
     OperatingPoint {
+        drive: etchwise::flow::Drive::PressureDrop(1000.0),
         length: 0.02,
         flow_rate: mean * g.area,
         pressure_drop: 1000.0,

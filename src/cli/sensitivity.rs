@@ -1,0 +1,128 @@
+//! `etchwise sensitivity`: what small changes of the wall do.
+
+use std::path::{Path, PathBuf};
+
+use clap::ArgMatches;
+
+use crate::flow::{SolveOptions, SolvedSection, WallReport};
+use crate::report::{
+    self, PictureFormat, SensitivityDocument, SolveDocument, check_targets, vtk_paths,
+};
+use crate::study::{SensitivityOptions, sensitivity_study, solve_for_sensitivity};
+use crate::warning::Code;
+
+use super::exit_status::ExitStatus;
+use super::failure::Failure;
+use super::input::{self, CheckedSection, checked_section, read_options};
+use super::output::{self, Format, Inputs};
+
+/// What was asked for, no file opened yet.
+struct Request {
+    file: PathBuf,
+    solve: SolveOptions,
+    study: SensitivityOptions,
+    format: Format,
+    output: Option<PathBuf>,
+    wall: Option<PathBuf>,
+    pictures: Vec<(PathBuf, PictureFormat)>,
+    quiet: bool,
+    deny_warnings: bool,
+}
+
+pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
+    super::set_threads(matches)?;
+    let read = read_options(matches)?;
+    let request = Request::new(matches)?;
+    request.check_targets()?;
+    let checked = checked_section(&request.file, &read)?;
+    let solved = solve_for_sensitivity(&checked.outline, &request.solve)?;
+    request.answer(&checked, &solved)
+}
+
+impl Request {
+    fn new(matches: &ArgMatches) -> Result<Self, Failure> {
+        Ok(Self {
+            file: input::file(matches),
+            solve: SolveOptions {
+                cells_across: matches.get_one::<f64>("cells-across").copied(),
+                ..SolveOptions::default()
+            },
+            study: SensitivityOptions {
+                check: !matches.get_flag("no-check"),
+            },
+            format: Format::of(matches),
+            output: output::target(matches),
+            wall: output::vtk_prefix(matches)?.map(|prefix| {
+                let [_, wall] = vtk_paths(&prefix);
+                wall
+            }),
+            pictures: output::pictures(matches, "picture")?,
+            quiet: matches.get_flag("quiet"),
+            deny_warnings: matches.get_flag("deny-warnings"),
+        })
+    }
+
+    /// Outputs that cannot be written are found before the solve.
+    fn check_targets(&self) -> Result<(), Failure> {
+        let pictures = self.pictures.iter().map(|(path, _)| path.as_path());
+        let targets: Vec<&Path> = self
+            .output
+            .as_deref()
+            .into_iter()
+            .chain(self.wall.as_deref())
+            .chain(pictures)
+            .collect();
+        Ok(check_targets(&targets, &[&self.file])?)
+    }
+
+    fn answer(
+        &self,
+        checked: &CheckedSection,
+        solved: &SolvedSection,
+    ) -> Result<ExitStatus, Failure> {
+        let study = sensitivity_study(solved, &checked.section.walls, self.study);
+        let name = input::section_name(&checked.section, &self.file);
+        let document = SensitivityDocument {
+            source: Some(input::source_record(&checked.section.provenance)),
+            section_name: &name,
+            flow: &solved.flow,
+            study: &study,
+            warnings: &checked.warnings,
+        };
+        let mut files = Vec::new();
+        if let Some(path) = &self.wall {
+            let curve = &solved.flow.wall_shear.curve;
+            let walls = WallReport::new(solved.outline(), curve, &checked.section.walls);
+            let solve = SolveDocument {
+                walls: Some(&walls),
+                ..SolveDocument::new(&name, &solved.flow)
+            };
+            files.push((path.clone(), report::wall_vtp(&solve)?.into_bytes()));
+        }
+        for (path, format) in &self.pictures {
+            let bytes = report::sensitivity_picture(&document, solved.outline(), *format)?;
+            files.push((path.clone(), bytes));
+        }
+        let text = match &self.format {
+            Format::Text(options) => report::sensitivity_text(&document, *options),
+            Format::Json => report::sensitivity_json(&document).map_err(Failure::not_printed)?,
+            Format::Csv => report::sensitivity_csv(&document).map_err(Failure::not_printed)?,
+        };
+        let inputs = Inputs {
+            file: &self.file,
+            quiet: self.quiet,
+        };
+        output::deliver(files, text, self.output.as_deref(), &inputs)?;
+        let is_warned = document
+            .all_warnings()
+            .iter()
+            .any(|warning| warning.code != Code::Caution);
+        Ok(if !solved.flow.solver.converged {
+            ExitStatus::NotSolved
+        } else if self.deny_warnings && is_warned {
+            ExitStatus::OutsideLimit
+        } else {
+            ExitStatus::Done
+        })
+    }
+}

@@ -1,0 +1,309 @@
+//! Triangles of a cut cell for the lower bound.
+//!
+//! The region of a cut cell is a polygon whose vertices are lattice nodes in the fluid and points of the wall,
+//! where the velocity is zero. Any division into triangles between its vertices gives an admissible velocity,
+//! linear on each; the one with the least energy against its volume is found by dynamic programming. A
+//! division whose triangles all turn anticlockwise covers a simple polygon exactly once (the map from the
+//! abstract triangles keeps orientation and is one to one on the boundary), so checking the signs of the areas
+//! is all the proof it needs.
+
+use crate::geometry::Point;
+
+/// Vertices up to which every division is considered.
+const ALL_DIVISIONS: usize = 14;
+/// Area below which a triangle counts as flat, square cells: far above the rounding of coordinates.
+const FLAT: f64 = 1e-13;
+
+/// A vertex of a polygon.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Vertex {
+    /// Position, cells.
+    pub(super) at: Point,
+    /// The lattice node, by its row-by-row number; `None` on the wall, where the velocity is zero.
+    pub(super) node: Option<usize>,
+    /// Value there.
+    pub(super) value: f64,
+}
+
+/// A triangle on which the velocity is linear; its energy is that of the three values.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Triangle {
+    /// Nodes of its corners.
+    pub(super) nodes: [Option<usize>; 3],
+    /// Gradients of the three corner functions.
+    gradients: [Point; 3],
+    area: f64,
+}
+
+impl Triangle {
+    fn new(corners: [Vertex; 3]) -> Self {
+        let twice = 2.0 * area(corners.map(|c| c.at));
+        let gradient = |k: usize| {
+            let (from, to) = (corners[(k + 1) % 3].at, corners[(k + 2) % 3].at);
+            [(from[1] - to[1]) / twice, (to[0] - from[0]) / twice]
+        };
+        Self {
+            nodes: corners.map(|c| c.node),
+            gradients: [gradient(0), gradient(1), gradient(2)],
+            area: 0.5 * twice,
+        }
+    }
+
+    /// Integral of the velocity.
+    pub(super) fn volume(&self, values: [f64; 3]) -> f64 {
+        self.area * (values[0] + values[1] + values[2]) / 3.0
+    }
+
+    /// Integral of the squared gradient.
+    pub(super) fn energy(&self, values: [f64; 3]) -> f64 {
+        let [x, y] = self.gradient(values);
+        self.area * (x * x + y * y)
+    }
+
+    /// Half the derivative of the energy with respect to one value.
+    pub(super) fn half_slope(&self, values: [f64; 3], corner: usize) -> f64 {
+        let ([x, y], [gx, gy]) = (self.gradient(values), self.gradients[corner]);
+        self.area * (x * gx + y * gy)
+    }
+
+    /// Half the second derivative of the energy with respect to one value.
+    pub(super) fn stiffness(&self, corner: usize) -> f64 {
+        let [x, y] = self.gradients[corner];
+        self.area * (x * x + y * y)
+    }
+
+    /// Derivative of the volume with respect to one value.
+    pub(super) fn weight(&self) -> f64 {
+        self.area / 3.0
+    }
+
+    fn gradient(&self, values: [f64; 3]) -> Point {
+        [0, 1].map(|axis: usize| (0..3).map(|k| values[k] * self.gradients[k][axis]).sum())
+    }
+}
+
+fn area([a, b, c]: [Point; 3]) -> f64 {
+    0.5 * ((b[0] - a[0]) * (c[1] - a[1]) - (b[1] - a[1]) * (c[0] - a[0]))
+}
+
+/// Triangles that cover the part of a polygon where the velocity is not zero.
+///
+/// - `polygon`: simple, anticlockwise
+///
+/// `None` where no division into anticlockwise triangles was found.
+pub(super) fn triangulate(mut polygon: Vec<Vertex>) -> Option<Vec<Triangle>> {
+    let Some(first) = polygon.iter().position(|v| v.node.is_some()) else {
+        return Some(Vec::new());
+    };
+    polygon.rotate_left(first);
+    let triples = if polygon.len() <= ALL_DIVISIONS {
+        best_division(&polygon)
+    } else {
+        ladder(&polygon)
+    };
+    let triples = if let Some(triples) = triples {
+        triples
+    } else {
+        polygon = without_pockets(&polygon);
+        if polygon.len() <= ALL_DIVISIONS {
+            best_division(&polygon)?
+        } else {
+            ladder(&polygon)?
+        }
+    };
+    Some(
+        triples
+            .into_iter()
+            .map(|corners| corners.map(|k| polygon[k]))
+            .filter(|corners| corners.iter().any(|c| c.node.is_some()))
+            .map(Triangle::new)
+            .collect(),
+    )
+}
+
+/// The polygon without the pockets of its wall: where three successive wall points turn left, the middle one
+/// is cut off with a triangle on which the velocity is zero.
+///
+/// - `polygon`: begins with a node
+fn without_pockets(polygon: &[Vertex]) -> Vec<Vertex> {
+    let mut kept: Vec<Vertex> = Vec::with_capacity(polygon.len());
+    for &vertex in polygon {
+        while let [.., before, last] = kept[..] {
+            let on_wall = [before, last, vertex].iter().all(|v| v.node.is_none());
+            if !(on_wall && area([before.at, last.at, vertex.at]) >= 0.0) {
+                break;
+            }
+            kept.pop();
+        }
+        kept.push(vertex);
+    }
+    kept
+}
+
+/// Energy against volume of a triangle; `None` where it is flat or turned over.
+fn cost(corners: [Vertex; 3]) -> Option<f64> {
+    let size = area(corners.map(|c| c.at));
+    if corners.iter().all(|c| c.node.is_none()) {
+        return (size > -FLAT).then_some(0.0);
+    }
+    if size <= FLAT {
+        return None;
+    }
+    let triangle = Triangle::new(corners);
+    let values = corners.map(|c| c.value);
+    Some(triangle.energy(values) - 2.0 * triangle.volume(values))
+}
+
+/// The division of least cost of a small polygon.
+fn best_division(polygon: &[Vertex]) -> Option<Vec<[usize; 3]>> {
+    let n = polygon.len();
+    if n < 3 {
+        return None;
+    }
+    // Cost of the part between vertices i and j, and where its triangle on that chord has its third corner.
+    let mut best = vec![(f64::INFINITY, 0); n * n];
+    for i in 0..n - 1 {
+        best[i * n + i + 1].0 = 0.0;
+    }
+    for gap in 2..n {
+        for i in 0..n - gap {
+            let j = i + gap;
+            for k in i + 1..j {
+                let parts = best[i * n + k].0 + best[k * n + j].0;
+                if let Some(own) = cost([polygon[i], polygon[k], polygon[j]])
+                    && parts + own < best[i * n + j].0
+                {
+                    best[i * n + j] = (parts + own, k);
+                }
+            }
+        }
+    }
+    if !best[n - 1].0.is_finite() {
+        return None;
+    }
+    let mut triples = Vec::with_capacity(n - 2);
+    let mut open = vec![(0, n - 1)];
+    while let Some((i, j)) = open.pop() {
+        if j - i < 2 {
+            continue;
+        }
+        let k = best[i * n + j].1;
+        triples.push([i, k, j]);
+        open.extend([(i, k), (k, j)]);
+    }
+    Some(triples)
+}
+
+/// The best division of a polygon of one stretch of nodes and one of wall into triangles that each touch
+/// both: for walls with many vertices.
+///
+/// - `polygon`: begins with a node
+fn ladder(polygon: &[Vertex]) -> Option<Vec<[usize; 3]>> {
+    let nodes = polygon.iter().take_while(|v| v.node.is_some()).count();
+    let wall = polygon.len() - nodes;
+    if polygon[nodes..].iter().any(|v| v.node.is_some()) || wall < 2 {
+        return None;
+    }
+    // Rung (i, j) joins wall vertex i, counted backwards from the end, to node j.
+    let wall_at = |i: usize| polygon.len() - 1 - i;
+    let mut best = vec![(f64::INFINITY, false); wall * nodes];
+    best[0].0 = 0.0;
+    for i in 0..wall {
+        for j in 0..nodes {
+            let step = |from: f64, corners: [usize; 3]| {
+                cost(corners.map(|k| polygon[k])).map_or(f64::INFINITY, |own| from + own)
+            };
+            let along_wall = match i.checked_sub(1) {
+                Some(i0) => step(best[i0 * nodes + j].0, [wall_at(i), wall_at(i0), j]),
+                None => f64::INFINITY,
+            };
+            let along_nodes = match j.checked_sub(1) {
+                Some(j0) => step(best[i * nodes + j0].0, [wall_at(i), j0, j]),
+                None => f64::INFINITY,
+            };
+            if (i, j) != (0, 0) {
+                best[i * nodes + j] = (along_wall.min(along_nodes), along_wall <= along_nodes);
+            }
+        }
+    }
+    let (mut i, mut j) = (wall - 1, nodes - 1);
+    if !best[i * nodes + j].0.is_finite() {
+        return None;
+    }
+    let mut triples = Vec::with_capacity(polygon.len() - 2);
+    while (i, j) != (0, 0) {
+        if best[i * nodes + j].1 {
+            triples.push([wall_at(i), wall_at(i - 1), j]);
+            i -= 1;
+        } else {
+            triples.push([wall_at(i), j - 1, j]);
+            j -= 1;
+        }
+    }
+    Some(triples)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn wall(at: Point) -> Vertex {
+        Vertex {
+            at,
+            node: None,
+            value: 0.0,
+        }
+    }
+
+    fn node(at: Point, number: usize, value: f64) -> Vertex {
+        Vertex {
+            at,
+            node: Some(number),
+            value,
+        }
+    }
+
+    #[test]
+    fn a_half_square_under_a_slanted_wall_holds_the_linear_velocity_exactly() {
+        // v = 0.6 - y + 0.1 x vanishes on the wall from (0, 0.6) to (1, 0.7).
+        let polygon = vec![
+            node([0.0, 0.0], 0, 0.6),
+            node([1.0, 0.0], 1, 0.7),
+            wall([1.0, 0.7]),
+            wall([0.5, 0.65]),
+            wall([0.0, 0.6]),
+        ];
+        let values = [0.6, 0.7];
+        let triangles = triangulate(polygon).unwrap();
+        let of = |t: &Triangle| t.nodes.map(|n| n.map_or(0.0, |n: usize| values[n]));
+        let energy: f64 = triangles.iter().map(|t| t.energy(of(t))).sum();
+        let covered: f64 = triangles.iter().map(|t| t.area).sum();
+        assert!((covered - 0.65).abs() < 1e-14);
+        assert!((energy - 1.01 * 0.65).abs() < 1e-14);
+    }
+
+    #[test]
+    fn many_wall_points_towards_the_fluid_and_away_from_it() {
+        for bend in [0.2, -0.2] {
+            let arc = (0..=60).map(|k| {
+                let x = 1.0 - f64::from(k) / 60.0;
+                wall([x, 0.6 + 4.0 * bend * x * (1.0 - x)])
+            });
+            let polygon: Vec<Vertex> = [node([0.0, 0.0], 0, 0.6), node([1.0, 0.0], 1, 0.6)]
+                .into_iter()
+                .chain(arc)
+                .collect();
+            let triangles = triangulate(polygon).unwrap();
+            let covered: f64 = triangles.iter().map(|t| t.area).sum();
+            let exact = 0.6 + bend * 2.0 / 3.0 * (1.0 - 1.0 / 3600.0);
+            assert!((covered - exact).abs() < 1e-12, "{bend}: {covered} {exact}");
+            assert!(triangles.iter().all(|t| t.area > 0.0));
+        }
+    }
+
+    #[test]
+    fn a_polygon_that_turns_the_wrong_way_has_no_division() {
+        let turned = vec![node([0.0, 0.0], 0, 1.0), wall([0.0, 1.0]), wall([1.0, 0.0])];
+        assert!(triangulate(turned).is_none());
+    }
+}

@@ -128,7 +128,7 @@ pub struct GridReport {
 pub struct SolverReport {
     /// Multigrid cycles on the finest grid.
     pub cycles: usize,
-    /// Root mean square of `1 + lap(phi)` over the fluid nodes of the finest grid, relative to 1.
+    /// Root mean square of `1 + lap(phi)` over the fluid nodes of the finest grid, weighted with `phi`.
     pub residual: f64,
     /// Whether the requested residual was reached.
     pub converged: bool,

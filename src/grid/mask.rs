@@ -27,8 +27,6 @@ pub const ARM_RIGHT: usize = 1;
 pub const ARM_DOWN: usize = 2;
 /// Index of the arm towards rising `j`.
 pub const ARM_UP: usize = 3;
-/// Even nodes in a block, about; a block is the unit of parallel work.
-const BLOCK_NODES: u32 = 8192;
 
 /// Colour of a node: parity of `i + j`.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -125,15 +123,17 @@ pub struct WallNode {
     pub j: u32,
 }
 
-/// A range of rows handled as one piece of parallel work.
-#[derive(Debug, Clone, Copy, PartialEq, Default)]
-pub struct Block {
-    /// One past the last storage index of each colour.
-    pub node_end: [u32; 2],
-    /// One past the last segment of each colour.
-    pub segment_end: [u32; 2],
-    /// One past the last wall node of each colour.
-    pub wall_end: [u32; 2],
+/// Where one row begins in the storage of each colour.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct RowStart {
+    /// Storage index of its first node.
+    pub node: [u32; 2],
+    /// Index of its first segment.
+    pub segment: [u32; 2],
+    /// Index of its first wall node.
+    pub wall: [u32; 2],
+    /// Row-by-row index of its first node.
+    pub natural: u32,
 }
 
 /// The fluid nodes of one grid.
@@ -151,8 +151,8 @@ pub struct Mask {
     pub segments: [Vec<Segment>; 2],
     /// Wall nodes of each colour in storage order.
     pub wall: [Vec<WallNode>; 2],
-    /// Pieces of parallel work in storage order.
-    pub blocks: Vec<Block>,
+    /// Where each row begins, and the totals at the end.
+    pub starts: Vec<RowStart>,
     /// Nodes turned into wall because an island would otherwise be invisible on this grid.
     pub pinned: Vec<(u32, u32)>,
 }
@@ -186,7 +186,7 @@ impl Mask {
             count,
             segments: [Vec::new(), Vec::new()],
             wall: [Vec::new(), Vec::new()],
-            blocks: Vec::new(),
+            starts: Vec::new(),
             pinned,
         };
         mask.cut_columns(columns, &mut cuts);
@@ -204,6 +204,26 @@ impl Mask {
     /// Number of fluid nodes.
     pub fn nodes(&self) -> usize {
         self.count[0] + self.count[1]
+    }
+
+    /// Sorts the values of one row, given node by node, into the two colours.
+    pub(crate) fn split_row(&self, row: usize, values: &[f64], targets: [&mut [f64]; 2]) {
+        let start = self.starts[row];
+        for run in &self.runs[self.row_start[row] as usize..self.row_start[row + 1] as usize] {
+            let from = (run.natural - start.natural) as usize;
+            let source = &values[from..from + run.len as usize];
+            for (step, column) in [run.first, run.first + 1].into_iter().enumerate() {
+                if column >= run.end() {
+                    continue;
+                }
+                let (colour, node) = run.node(column);
+                let c = colour as usize;
+                let target = &mut targets[c][(node - start.node[c]) as usize..];
+                for (value, &s) in target.iter_mut().zip(source[step..].iter().step_by(2)) {
+                    *value = s;
+                }
+            }
+        }
     }
 
     /// Number of rows of this grid.
@@ -327,35 +347,18 @@ impl Mask {
         }
     }
 
-    /// Sorts nodes into segments and wall nodes, and rows into blocks.
+    /// Sorts nodes into segments and wall nodes, row by row.
     fn classify(&mut self, cuts: &[Cut]) {
         let mut next_cut = 0;
-        let mut block = Block::default();
-        let mut last_row = 0;
-        for index in 0..self.runs.len() {
-            let run = self.runs[index];
-            if run.row != last_row {
-                last_row = run.row;
-                self.close_block(&mut block, run, false);
+        let rows = self.rows();
+        for row in 0..rows {
+            let [first, end] = [self.row_start[row], self.row_start[row + 1]];
+            self.open_row(first as usize);
+            for index in first as usize..end as usize {
+                next_cut = self.classify_run(index, cuts, next_cut);
             }
-            let mut i = run.first;
-            while next_cut < cuts.len() && cuts[next_cut].run as usize == index {
-                let at = cuts[next_cut].i;
-                let end = next_cut
-                    + cuts[next_cut..]
-                        .iter()
-                        .take_while(|c| c.run as usize == index && c.i == at)
-                        .count();
-                self.add_segments(run, i, at);
-                self.add_wall_node(run, at, &cuts[next_cut..end]);
-                i = at + 1;
-                next_cut = end;
-            }
-            self.add_segments(run, i, run.end());
         }
-        if let Some(&last) = self.runs.last() {
-            self.close_block(&mut block, last, true);
-        }
+        self.open_row(self.runs.len());
         for colour in [Colour::Even, Colour::Odd] {
             let mut wall = std::mem::take(&mut self.wall[colour as usize]);
             for node in &mut wall {
@@ -388,20 +391,36 @@ impl Mask {
         })
     }
 
-    fn close_block(&mut self, open: &mut Block, next: Run, last: bool) {
-        let node_end = if last {
-            [self.count[0] as u32, self.count[1] as u32]
-        } else {
-            next.base
-        };
-        if last || node_end[0] - open.node_end[0] >= BLOCK_NODES {
-            *open = Block {
-                node_end,
-                segment_end: [self.segments[0].len() as u32, self.segments[1].len() as u32],
-                wall_end: [self.wall[0].len() as u32, self.wall[1].len() as u32],
-            };
-            self.blocks.push(*open);
+    /// Notes where the row begins whose first run has a given index.
+    fn open_row(&mut self, run: usize) {
+        let total = [self.count[0] as u32, self.count[1] as u32];
+        let node = self.runs.get(run).map_or(total, |run| run.base);
+        self.starts.push(RowStart {
+            node,
+            segment: [self.segments[0].len() as u32, self.segments[1].len() as u32],
+            wall: [self.wall[0].len() as u32, self.wall[1].len() as u32],
+            natural: node[0] + node[1],
+        });
+    }
+
+    /// Sorts the nodes of one run; takes its cuts and returns the index of the next one.
+    fn classify_run(&mut self, index: usize, cuts: &[Cut], from: usize) -> usize {
+        let run = self.runs[index];
+        let (mut i, mut next_cut) = (run.first, from);
+        while next_cut < cuts.len() && cuts[next_cut].run as usize == index {
+            let at = cuts[next_cut].i;
+            let end = next_cut
+                + cuts[next_cut..]
+                    .iter()
+                    .take_while(|c| c.run as usize == index && c.i == at)
+                    .count();
+            self.add_segments(run, i, at);
+            self.add_wall_node(run, at, &cuts[next_cut..end]);
+            i = at + 1;
+            next_cut = end;
         }
+        self.add_segments(run, i, run.end());
+        next_cut
     }
 
     /// Segments for the nodes `from..to` of a run, all with whole arms.

@@ -13,7 +13,7 @@ pub use crossings::{Crossing, LineCrossings};
 pub(crate) use cut_cell::{EAST, NORTH, Region, SOUTH, WEST, cut_cells, shared_parts, signed_area};
 pub use lattice::{Lattice, WallEdge};
 pub use mask::{
-    ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Block, Colour, Mask, NO_EDGE, NO_NODE, Run, Segment,
+    ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, NO_EDGE, NO_NODE, RowStart, Run, Segment,
     WallNode,
 };
 pub use resolution::{BYTES_PER_NODE, LEAST_CELLS_ACROSS, ResolutionError, memory_needed, spacing};

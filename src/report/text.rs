@@ -327,7 +327,7 @@ fn evidence(flow: &SectionFlow, verbose: bool) -> String {
     table.row([
         "solver".to_owned(),
         format!(
-            "{}{extra}, residual {} (rms of 1 + lap(phi)), {verdict}",
+            "{}{extra}, residual {} (rms of 1 + lap(phi), weighted with phi), {verdict}",
             counted(solver.cycles, "cycle", "cycles"),
             significant(solver.residual, 2),
         ),

@@ -1,6 +1,8 @@
 //! One number for every fluid node of a grid, stored by colour.
 
-use crate::grid::Mask;
+use crate::grid::{Colour, Mask};
+
+use super::row_set::Row;
 
 /// Values on the fluid nodes of one grid; indices as in [`Mask`].
 #[derive(Debug, Clone, PartialEq)]
@@ -21,6 +23,21 @@ impl Field {
     pub fn at(&self, mask: &Mask, i: u32, j: u32) -> Option<f64> {
         let (colour, node) = mask.node_at(i, j)?;
         self.colour[colour as usize].get(node as usize).copied()
+    }
+
+    /// One row of one colour; rows beyond the lattice are empty.
+    pub(super) fn row(&self, mask: &Mask, colour: Colour, row: usize) -> Row<'_> {
+        let c = colour as usize;
+        let Some([at, next]) = row.checked_add(2).and_then(|end| mask.starts.get(row..end)) else {
+            return Row::EMPTY;
+        };
+        let range = at.node[c] as usize..next.node[c] as usize;
+        Row::new(&self.colour[c][range], at.node[c])
+    }
+
+    /// The rows of one colour below, at and above a row.
+    pub(super) fn around(&self, mask: &Mask, colour: Colour, row: usize) -> [Row<'_>; 3] {
+        [row.wrapping_sub(1), row, row + 1].map(|row| self.row(mask, colour, row))
     }
 
     /// Sets every value.

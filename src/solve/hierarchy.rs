@@ -11,7 +11,7 @@ use crate::grid::{Lattice, LineCrossings, Mask};
 use super::assembled::poisson_matrix;
 use super::coarsest::BandedLu;
 use super::field::Field;
-use super::stencil::Stencil;
+use super::stencil::{Source, Stencil};
 use super::transfer::Transfer;
 
 /// Largest cost `n * half_band^2` of the direct solution on the coarsest grid.
@@ -30,10 +30,30 @@ pub struct Grid {
     pub mask: Mask,
     /// `phi`, or the correction during a cycle, in units of the lattice spacing squared.
     pub phi: Field,
+    pub(crate) source: GridSource,
+    /// Right side while the grid serves a finer one; empty on the finest.
     pub(crate) rhs: Field,
-    pub(crate) residual: Vec<f64>,
+    /// Row-by-row values on their way to a finer grid; empty on the finest.
     pub(crate) natural: Vec<f64>,
     pub(crate) stencil: Stencil,
+}
+
+/// Which right side a grid is solved for.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(crate) enum GridSource {
+    /// That of `-lap(phi) = 1`, scaled by the grid's spacing squared.
+    Uniform(f64),
+    /// Its field `rhs`.
+    Own,
+}
+
+impl GridSource {
+    pub(crate) fn of(self, rhs: &Field) -> Source<'_> {
+        match self {
+            Self::Uniform(value) => Source::Uniform(value),
+            Self::Own => Source::Nodal(rhs),
+        }
+    }
 }
 
 /// All grids, finest first, with the transfers between neighbours.
@@ -46,12 +66,20 @@ pub struct Hierarchy {
 }
 
 impl Grid {
-    fn new(mask: Mask) -> Self {
+    /// - `serves`: whether there is a finer grid
+    fn new(mask: Mask, serves: bool) -> Self {
+        let empty = Field {
+            colour: [Vec::new(), Vec::new()],
+        };
         Self {
             phi: Field::constant(&mask, 0.0),
-            rhs: Field::constant(&mask, 0.0),
-            residual: vec![0.0; mask.count[0]],
-            natural: vec![0.0; mask.nodes()],
+            source: GridSource::Uniform(f64::from(mask.stride).powi(2)),
+            rhs: if serves {
+                Field::constant(&mask, 0.0)
+            } else {
+                empty
+            },
+            natural: vec![0.0; if serves { mask.nodes() } else { 0 }],
             stencil: Stencil::new(&mask),
             mask,
         }
@@ -84,7 +112,11 @@ impl Hierarchy {
             .map(|pair| Transfer::new(&pair[0], &pair[1]))
             .collect();
         Some(Self {
-            grids: masks.into_iter().map(Grid::new).collect(),
+            grids: masks
+                .into_iter()
+                .enumerate()
+                .map(|(level, mask)| Grid::new(mask, level > 0))
+                .collect(),
             transfers,
             direct,
         })

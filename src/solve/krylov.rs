@@ -11,7 +11,8 @@ use crate::grid::Colour;
 
 use super::cycle::SolveControl;
 use super::field::Field;
-use super::hierarchy::{Grid, Hierarchy};
+use super::hierarchy::{Grid, GridSource, Hierarchy};
+use super::stencil::Source;
 
 /// Earlier directions kept.
 const KEPT: usize = 8;
@@ -23,11 +24,10 @@ pub(crate) fn accelerate(
     control: SolveControl,
     most_cycles: usize,
 ) -> usize {
-    let rhs = hierarchy.grids[level].rhs.clone();
-    let mut solution = hierarchy.grids[level].phi.clone();
-    let mut residual = rhs.clone();
-    residual.add_scaled(-1.0, &apply(&hierarchy.grids[level], &solution));
     let grid = &hierarchy.grids[level];
+    let (source, rhs) = (grid.source, grid.rhs.clone());
+    let mut solution = grid.phi.clone();
+    let mut residual = left_over(grid, &solution, source.of(&rhs));
     let scale = f64::from(grid.mask.stride).powi(2);
     let goal = grid.mask.nodes() as f64 * (control.residual * scale).powi(2);
     // Direction, its image, and the squared norm of the image.
@@ -36,8 +36,8 @@ pub(crate) fn accelerate(
     let mut cycles = 0;
     while cycles < most_cycles && residual.dot(&residual) > goal {
         hierarchy.grids[level].rhs = residual.clone();
-        hierarchy.grids[level].phi.fill(0.0);
-        hierarchy.cycle(level);
+        hierarchy.grids[level].source = GridSource::Own;
+        hierarchy.cycle_from_zero(level);
         cycles += 1;
         let mut direction = hierarchy.grids[level].phi.clone();
         let mut image = apply(&hierarchy.grids[level], &direction);
@@ -60,22 +60,26 @@ pub(crate) fn accelerate(
     }
     let grid = &mut hierarchy.grids[level];
     grid.rhs = rhs;
+    grid.source = source;
     grid.phi = solution;
     cycles
 }
 
 /// `A x` on one grid.
 fn apply(grid: &Grid, x: &Field) -> Field {
+    let mut image = left_over(grid, x, Source::Uniform(0.0));
+    for value in image.colour.iter_mut().flatten() {
+        *value = -*value;
+    }
+    image
+}
+
+/// `b - A x` on one grid.
+fn left_over(grid: &Grid, x: &Field, source: Source) -> Field {
     let mut image = Field::constant(&grid.mask, 0.0);
-    let values = [&x.colour[0][..], &x.colour[1][..]];
     for colour in [Colour::Even, Colour::Odd] {
-        let c = colour as usize;
-        let zero = vec![0.0; grid.mask.count[c]];
-        grid.stencil
-            .residual(&grid.mask, colour, values, &zero, &mut image.colour[c]);
-        for value in &mut image.colour[c] {
-            *value = -*value;
-        }
+        let out = &mut image.colour[colour as usize];
+        grid.stencil.residual(&grid.mask, colour, x, source, out);
     }
     image
 }

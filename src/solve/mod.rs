@@ -13,8 +13,11 @@ mod assembled;
 mod coarsest;
 mod cycle;
 mod field;
+mod first_guess;
 mod hierarchy;
 mod krylov;
+mod passes;
+mod row_set;
 mod stencil;
 mod transfer;
 
@@ -23,3 +26,4 @@ pub(crate) use coarsest::solve_sparse;
 pub use cycle::{SolveControl, Solved};
 pub use field::Field;
 pub use hierarchy::{Grid, Hierarchy};
+pub(crate) use stencil::weights;

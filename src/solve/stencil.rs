@@ -5,14 +5,31 @@
 //! along arm `l` with opposite arm `r` is `2 / (l (l + r))` and the diagonal `2 / (l r) + 2 / (d u)`.
 //!
 //! A sweep writes one colour and reads only the other, so nodes are independent of each other and the
-//! result does not depend on how the work is shared out.
+//! result does not depend on how the work is shared out. Every function does one row, so that passes can do
+//! several things to a row while it is in cache.
 
-use rayon::prelude::*;
+use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, WallNode};
 
-use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Block, Colour, Mask, WallNode};
+use super::field::Field;
+use super::row_set::Row;
 
-/// Fluid nodes below which a sweep stays on one thread.
-const PARALLEL_NODES: usize = 120_000;
+/// Right side of the equation on one grid.
+#[derive(Debug, Clone, Copy)]
+pub(crate) enum Source<'a> {
+    /// The same everywhere.
+    Uniform(f64),
+    /// One value for every node.
+    Nodal(&'a Field),
+}
+
+impl Source<'_> {
+    fn at(self, colour: usize, node: u32) -> f64 {
+        match self {
+            Self::Uniform(value) => value,
+            Self::Nodal(field) => field.colour[colour][node as usize],
+        }
+    }
+}
 
 /// Stencil of one wall node.
 #[derive(Debug, Clone, Copy)]
@@ -77,112 +94,113 @@ impl Stencil {
         }
     }
 
-    /// Solves the equation of every node of one colour for the given values of the other.
-    pub(crate) fn relax(
+    /// Solves the equation of every node of one colour in one row for the given values of the other.
+    ///
+    /// - `own`: the row to write
+    /// - `other`: rows of the other colour below, at and above it
+    pub(crate) fn relax_row(
         &self,
         mask: &Mask,
-        colour: Colour,
+        (colour, row): (Colour, usize),
         own: &mut [f64],
-        other: &[f64],
-        rhs: &[f64],
+        other: [Row; 3],
+        source: Source,
     ) {
         let c = colour as usize;
-        for_blocks(mask, colour, own, |part| {
-            for s in &mask.segments[c][part.segments.clone()] {
-                let n = s.len as usize;
-                let (left, down, up) = (s.left as usize, s.down as usize, s.up as usize);
-                let target = &mut part.values[s.start as usize - part.offset..][..n];
-                let row = &other[left..=left + n];
-                let (west, east) = (&row[..n], &row[1..]);
-                let (down, up) = (&other[down..][..n], &other[up..][..n]);
-                let b = &rhs[s.start as usize..][..n];
-                for k in 0..n {
-                    target[k] = 0.25 * (((west[k] + east[k]) + (down[k] + up[k])) + b[k]);
+        let [at, next] = [&mask.starts[row], &mask.starts[row + 1]];
+        let first = at.node[c];
+        for s in &mask.segments[c][at.segment[c] as usize..next.segment[c] as usize] {
+            let n = s.len as usize;
+            let target = &mut own[(s.start - first) as usize..][..n];
+            let beside = other[1].from(s.left, n + 1);
+            let (west, east) = (&beside[..n], &beside[1..][..n]);
+            let (down, up) = (other[0].from(s.down, n), other[2].from(s.up, n));
+            match source {
+                Source::Uniform(b) => {
+                    for k in 0..n {
+                        target[k] = 0.25 * (((west[k] + east[k]) + (down[k] + up[k])) + b);
+                    }
+                }
+                Source::Nodal(field) => {
+                    let b = &field.colour[c][s.start as usize..][..n];
+                    for k in 0..n {
+                        target[k] = 0.25 * (((west[k] + east[k]) + (down[k] + up[k])) + b[k]);
+                    }
                 }
             }
-            for w in &self.wall[c][part.wall.clone()] {
-                let sum = rhs[w.node as usize] + gather(w, other);
-                part.values[w.node as usize - part.offset] = sum / w.diagonal;
-            }
-        });
+        }
+        for w in &self.wall[c][at.wall[c] as usize..next.wall[c] as usize] {
+            let sum = source.at(c, w.node) + gather(w, other);
+            own[(w.node - first) as usize] = sum / w.diagonal;
+        }
     }
 
-    /// `b - A phi` at the nodes of one colour.
+    /// `b - A phi` at the nodes of one colour in one row.
+    ///
+    /// - `own`: the row of `phi`
+    /// - `other`: rows of the other colour below, at and above it
+    pub(crate) fn residual_row(
+        &self,
+        mask: &Mask,
+        (colour, row): (Colour, usize),
+        (own, other): (Row, [Row; 3]),
+        source: Source,
+        out: &mut [f64],
+    ) {
+        let c = colour as usize;
+        let [at, next] = [&mask.starts[row], &mask.starts[row + 1]];
+        let first = at.node[c];
+        for s in &mask.segments[c][at.segment[c] as usize..next.segment[c] as usize] {
+            let n = s.len as usize;
+            let target = &mut out[(s.start - first) as usize..][..n];
+            let beside = other[1].from(s.left, n + 1);
+            let (west, east) = (&beside[..n], &beside[1..][..n]);
+            let (down, up) = (other[0].from(s.down, n), other[2].from(s.up, n));
+            let centre = own.from(s.start, n);
+            match source {
+                Source::Uniform(b) => {
+                    for k in 0..n {
+                        let around = (west[k] + east[k]) + (down[k] + up[k]);
+                        target[k] = (around + b) - 4.0 * centre[k];
+                    }
+                }
+                Source::Nodal(field) => {
+                    let b = &field.colour[c][s.start as usize..][..n];
+                    for k in 0..n {
+                        let around = (west[k] + east[k]) + (down[k] + up[k]);
+                        target[k] = (around + b[k]) - 4.0 * centre[k];
+                    }
+                }
+            }
+        }
+        for w in &self.wall[c][at.wall[c] as usize..next.wall[c] as usize] {
+            out[(w.node - first) as usize] =
+                source.at(c, w.node) + gather(w, other) - w.diagonal * own.at(w.node);
+        }
+    }
+
+    /// `b - A phi` at all nodes of one colour.
     pub(crate) fn residual(
         &self,
         mask: &Mask,
         colour: Colour,
-        field: [&[f64]; 2],
-        rhs: &[f64],
+        phi: &Field,
+        source: Source,
         out: &mut [f64],
     ) {
         let c = colour as usize;
-        let (own, other) = (field[c], field[1 - c]);
-        for_blocks(mask, colour, out, |part| {
-            for s in &mask.segments[c][part.segments.clone()] {
-                let n = s.len as usize;
-                let (left, down, up) = (s.left as usize, s.down as usize, s.up as usize);
-                let target = &mut part.values[s.start as usize - part.offset..][..n];
-                let row = &other[left..=left + n];
-                let (west, east) = (&row[..n], &row[1..]);
-                let (down, up) = (&other[down..][..n], &other[up..][..n]);
-                let b = &rhs[s.start as usize..][..n];
-                let centre = &own[s.start as usize..][..n];
-                for k in 0..n {
-                    let around = (west[k] + east[k]) + (down[k] + up[k]);
-                    target[k] = (around + b[k]) - 4.0 * centre[k];
-                }
-            }
-            for w in &self.wall[c][part.wall.clone()] {
-                let node = w.node as usize;
-                part.values[node - part.offset] =
-                    rhs[node] + gather(w, other) - w.diagonal * own[node];
-            }
-        });
+        for row in 0..mask.rows() {
+            let range = mask.starts[row].node[c] as usize..mask.starts[row + 1].node[c] as usize;
+            let own = phi.row(mask, colour, row);
+            let other = phi.around(mask, colour.other(), row);
+            self.residual_row(mask, (colour, row), (own, other), source, &mut out[range]);
+        }
     }
 }
 
-fn gather(w: &WallStencil, other: &[f64]) -> f64 {
-    w.neighbour
-        .iter()
-        .zip(&w.weight)
-        .map(|(&n, weight)| other.get(n as usize).map_or(0.0, |v| weight * v))
-        .sum()
-}
-
-/// The part of a sweep that one block does.
-struct Part<'a> {
-    values: &'a mut [f64],
-    offset: usize,
-    segments: std::ops::Range<usize>,
-    wall: std::ops::Range<usize>,
-}
-
-/// Runs `work` on every block of a grid, on several threads when the grid is large.
-fn for_blocks(
-    mask: &Mask,
-    colour: Colour,
-    values: &mut [f64],
-    work: impl Fn(&mut Part) + Sync + Send,
-) {
-    let c = colour as usize;
-    let mut parts = Vec::with_capacity(mask.blocks.len());
-    let (mut rest, mut before) = (values, Block::default());
-    for block in &mask.blocks {
-        let len = (block.node_end[c] - before.node_end[c]) as usize;
-        let (head, tail) = rest.split_at_mut(len);
-        parts.push(Part {
-            values: head,
-            offset: before.node_end[c] as usize,
-            segments: before.segment_end[c] as usize..block.segment_end[c] as usize,
-            wall: before.wall_end[c] as usize..block.wall_end[c] as usize,
-        });
-        rest = tail;
-        before = *block;
-    }
-    if mask.nodes() >= PARALLEL_NODES && rayon::current_num_threads() > 1 {
-        parts.par_iter_mut().for_each(work);
-    } else {
-        parts.iter_mut().for_each(work);
-    }
+fn gather(w: &WallStencil, other: [Row; 3]) -> f64 {
+    let rows = [other[1], other[1], other[0], other[2]];
+    let [left, right, down, up] =
+        std::array::from_fn(|arm| w.weight[arm] * rows[arm].at(w.neighbour[arm]));
+    ((left + right) + down) + up
 }

@@ -7,8 +7,9 @@
 //! transpose of that interpolation extended to the even nodes by the stencil; a sweep has just made the
 //! residual of the odd nodes zero, so only even ones count. Away from walls that is full weighting.
 
-use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, NO_NODE, WallNode};
+use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, NO_NODE, Run, WallNode};
 
+use super::row_set::Row;
 use super::stencil::{opposite, weights};
 
 /// Coarse nodes `coarse + k` whose nine fine nodes all have whole arms.
@@ -38,90 +39,141 @@ struct Entry {
     weight: f64,
 }
 
+/// What is done to each row: stretches, then single weights.
+#[derive(Debug, Clone)]
+struct ByRow<T> {
+    segments: Vec<T>,
+    entries: Vec<Entry>,
+    /// Where each row begins in both lists, and the totals at the end.
+    starts: Vec<[u32; 2]>,
+}
+
+impl<T> ByRow<T> {
+    fn new(rows: usize) -> Self {
+        let mut starts = Vec::with_capacity(rows + 1);
+        starts.push([0; 2]);
+        Self {
+            segments: Vec::new(),
+            entries: Vec::new(),
+            starts,
+        }
+    }
+
+    /// Ends a row.
+    fn close(&mut self) {
+        self.starts
+            .push([self.segments.len() as u32, self.entries.len() as u32]);
+    }
+
+    fn row(&self, row: usize) -> (&[T], &[Entry]) {
+        let [[s, e], [s_end, e_end]] = [self.starts[row], self.starts[row + 1]];
+        (
+            &self.segments[s as usize..s_end as usize],
+            &self.entries[e as usize..e_end as usize],
+        )
+    }
+}
+
 /// The transfer between two grids; coarse values are row by row.
-#[derive(Debug, Clone, Default)]
+#[derive(Debug, Clone)]
 pub(crate) struct Transfer {
-    restrict_segments: Vec<RestrictSegment>,
-    restrict_entries: Vec<Entry>,
-    prolong_segments: Vec<ProlongSegment>,
-    prolong_entries: Vec<Entry>,
+    restriction: ByRow<RestrictSegment>,
+    prolongation: ByRow<ProlongSegment>,
 }
 
 impl Transfer {
     pub(crate) fn new(fine: &Mask, coarse: &Mask) -> Self {
-        let mut transfer = Self::default();
+        let mut transfer = Self {
+            restriction: ByRow::new(coarse.rows()),
+            prolongation: ByRow::new(fine.rows()),
+        };
         transfer.plan_restriction(fine, coarse);
-        transfer.plan_rows(fine, coarse);
-        transfer.plan_columns(fine, coarse);
+        for row in 0..fine.rows() as u32 {
+            if row.is_multiple_of(2) {
+                transfer.plan_row(fine, coarse, row);
+            } else {
+                transfer.plan_between_rows(fine, coarse, row);
+            }
+            transfer.prolongation.close();
+        }
         transfer
     }
 
-    /// Coarse right side from the residual of the even fine nodes.
-    pub(crate) fn restrict(&self, even: &[f64], coarse: &mut [f64]) {
-        coarse.fill(0.0);
-        for s in &self.restrict_segments {
+    /// One row of the coarse right side from the residual of the even fine nodes.
+    ///
+    /// - `even`: the residual in the fine rows below, at and above the coarse row
+    /// - `first`: row-by-row index of the first coarse node of the row
+    pub(crate) fn restrict_row(&self, row: usize, even: [Row; 3], first: u32, out: &mut [f64]) {
+        out.fill(0.0);
+        let (segments, entries) = self.restriction.row(row);
+        for s in segments {
             let n = s.len as usize;
-            let centre = &even[s.centre as usize..][..n];
-            let below = &even[s.down_left as usize..][..=n];
-            let above = &even[s.up_left as usize..][..=n];
-            let target = &mut coarse[s.coarse as usize..][..n];
+            let centre = even[1].from(s.centre, n);
+            let below = even[0].from(s.down_left, n + 1);
+            let above = even[2].from(s.up_left, n + 1);
+            let (below_right, above_right) = (&below[1..][..n], &above[1..][..n]);
+            let (below, above) = (&below[..n], &above[..n]);
+            let target = &mut out[(s.coarse - first) as usize..][..n];
             for k in 0..n {
-                let corners = (below[k] + below[k + 1]) + (above[k] + above[k + 1]);
+                let corners = (below[k] + below_right[k]) + (above[k] + above_right[k]);
                 target[k] = centre[k] + 0.25 * corners;
             }
         }
-        for e in &self.restrict_entries {
-            coarse[e.coarse as usize] += e.weight * even[e.fine as usize];
+        for e in entries {
+            // The node is in one of the three rows; the others give zero.
+            let value = even.map(|row| row.at(e.fine)).iter().sum::<f64>();
+            out[(e.coarse - first) as usize] += e.weight * value;
         }
     }
 
-    /// Adds the interpolated coarse values to the odd fine nodes.
-    pub(crate) fn prolong(&self, coarse: &[f64], odd: &mut [f64]) {
-        for s in &self.prolong_segments {
+    /// Adds the interpolated coarse values to the odd fine nodes of one row.
+    ///
+    /// - `first`: storage index of the first odd node of the row
+    pub(crate) fn prolong_row(&self, row: usize, coarse: &[f64], first: u32, odd: &mut [f64]) {
+        let (segments, entries) = self.prolongation.row(row);
+        for s in segments {
             let n = s.len as usize;
             let low = &coarse[s.low as usize..][..n];
             let high = &coarse[s.high as usize..][..n];
-            let target = &mut odd[s.fine as usize..][..n];
+            let target = &mut odd[(s.fine - first) as usize..][..n];
             for k in 0..n {
                 target[k] += 0.5 * (low[k] + high[k]);
             }
         }
-        for e in &self.prolong_entries {
-            odd[e.fine as usize] += e.weight * coarse[e.coarse as usize];
+        for e in entries {
+            odd[(e.fine - first) as usize] += e.weight * coarse[e.coarse as usize];
         }
     }
 
     fn plan_restriction(&mut self, fine: &Mask, coarse: &Mask) {
-        let mut near_wall = vec![false; coarse.nodes()];
-        for w in fine.wall.iter().flatten() {
-            for j in around(w.j) {
-                for i in around(w.i) {
-                    if let Some(node) = coarse.natural_at(i, j) {
-                        near_wall[node as usize] = true;
-                    }
-                }
+        let near_wall = near_wall(fine, coarse);
+        for row in 0..coarse.rows() as u32 {
+            for run in coarse.row(row) {
+                self.plan_restricted_run(fine, run, &near_wall);
             }
+            self.restriction.close();
         }
-        for run in &coarse.runs {
-            let flags = &near_wall[run.natural as usize..(run.natural + run.len) as usize];
-            let mut offset = 0;
-            for stretch in flags.chunk_by(|a, b| a == b) {
-                let i = run.first + offset;
-                let len = stretch.len() as u32;
-                offset += len;
-                let segment = (stretch.first() == Some(&false))
-                    .then(|| restrict_segment(fine, run.natural + i - run.first, i, run.row, len))
-                    .flatten();
-                if let Some(segment) = segment {
-                    self.restrict_segments.push(segment);
-                } else {
-                    for k in 0..len {
-                        self.restrict_near_wall(
-                            fine,
-                            run.natural + i + k - run.first,
-                            [i + k, run.row],
-                        );
-                    }
+    }
+
+    fn plan_restricted_run(&mut self, fine: &Mask, run: &Run, near_wall: &[bool]) {
+        let flags = &near_wall[run.natural as usize..(run.natural + run.len) as usize];
+        let mut offset = 0;
+        for stretch in flags.chunk_by(|a, b| a == b) {
+            let i = run.first + offset;
+            let len = stretch.len() as u32;
+            offset += len;
+            let segment = (stretch.first() == Some(&false))
+                .then(|| restrict_segment(fine, run.natural + i - run.first, i, run.row, len))
+                .flatten();
+            if let Some(segment) = segment {
+                self.restriction.segments.push(segment);
+            } else {
+                for k in 0..len {
+                    self.restrict_near_wall(
+                        fine,
+                        run.natural + i + k - run.first,
+                        [i + k, run.row],
+                    );
                 }
             }
         }
@@ -131,7 +183,7 @@ impl Transfer {
     fn restrict_near_wall(&mut self, fine: &Mask, coarse: u32, at: [u32; 2]) {
         let (i, j) = (2 * at[0], 2 * at[1]);
         if let Some((_, node)) = fine.node_at(i, j) {
-            self.restrict_entries.push(Entry {
+            self.restriction.entries.push(Entry {
                 coarse,
                 fine: node,
                 weight: 1.0,
@@ -148,7 +200,7 @@ impl Transfer {
                 let along = line_weight(fine, [x, j], to_column);
                 let total = (weight[to_column] * across + weight[to_row] * along) / diagonal;
                 if total > 0.0 {
-                    self.restrict_entries.push(Entry {
+                    self.restriction.entries.push(Entry {
                         coarse,
                         fine: node,
                         weight: total,
@@ -158,14 +210,13 @@ impl Transfer {
         }
     }
 
-    /// Odd fine nodes in the rows of coarse nodes.
-    fn plan_rows(&mut self, fine: &Mask, coarse: &Mask) {
-        for run in fine.runs.iter().filter(|run| run.row.is_multiple_of(2)) {
+    /// Odd fine nodes in a row of coarse nodes.
+    fn plan_row(&mut self, fine: &Mask, coarse: &Mask, row: u32) {
+        for run in fine.row(row) {
             let first = run.first | 1;
             if first >= run.end() {
                 continue;
             }
-            let j = run.row / 2;
             let inner = if run.first.is_multiple_of(2) {
                 first
             } else {
@@ -175,34 +226,37 @@ impl Transfer {
             let inner_end = if last + 1 < run.end() { last + 2 } else { last };
             let len = inner_end.saturating_sub(inner) / 2;
             let whole = (len > 0)
-                .then(|| line_of(coarse, inner / 2, j, len + 1))
+                .then(|| line_of(coarse, inner / 2, row / 2, len + 1))
                 .flatten();
-            if let (Some(low), Some((_, node))) = (whole, fine.node_at(inner, run.row)) {
-                self.prolong_segments.push(ProlongSegment {
+            if let (Some(low), Some((_, node))) = (whole, fine.node_at(inner, row)) {
+                self.prolongation.segments.push(ProlongSegment {
                     fine: node,
                     len,
                     low,
                     high: low + 1,
                 });
             }
-            for i in (first..run.end()).step_by(2) {
-                if whole.is_some() && (inner..inner + 2 * len).contains(&i) {
-                    continue;
-                }
-                self.prolong_single(fine, coarse, [i, run.row], ARM_LEFT);
+            let done = if whole.is_some() {
+                inner..inner + 2 * len
+            } else {
+                first..first
+            };
+            for i in (first..done.start).chain(done.end..run.end()).step_by(2) {
+                self.prolong_single(fine, coarse, [i, row], ARM_LEFT);
             }
         }
     }
 
-    /// Odd fine nodes between two rows of coarse nodes.
-    fn plan_columns(&mut self, fine: &Mask, coarse: &Mask) {
+    /// Odd fine nodes in a row between two rows of coarse nodes.
+    fn plan_between_rows(&mut self, fine: &Mask, coarse: &Mask, row: u32) {
         let odd = Colour::Odd as usize;
-        for s in fine.segments[odd].iter().filter(|s| !s.j.is_multiple_of(2)) {
-            let (i, j) = (s.i / 2, (s.j - 1) / 2);
+        let [at, next] = [fine.starts[row as usize], fine.starts[row as usize + 1]];
+        for s in &fine.segments[odd][at.segment[odd] as usize..next.segment[odd] as usize] {
+            let (i, j) = (s.i / 2, (row - 1) / 2);
             let low = line_of(coarse, i, j, s.len);
             let high = line_of(coarse, i, j + 1, s.len);
             if let (Some(low), Some(high)) = (low, high) {
-                self.prolong_segments.push(ProlongSegment {
+                self.prolongation.segments.push(ProlongSegment {
                     fine: s.start,
                     len: s.len,
                     low,
@@ -210,12 +264,12 @@ impl Transfer {
                 });
             } else {
                 for k in 0..s.len {
-                    self.prolong_single(fine, coarse, [s.i + 2 * k, s.j], ARM_DOWN);
+                    self.prolong_single(fine, coarse, [s.i + 2 * k, row], ARM_DOWN);
                 }
             }
         }
-        for w in fine.wall[odd].iter().filter(|w| !w.j.is_multiple_of(2)) {
-            self.prolong_single(fine, coarse, [w.i, w.j], ARM_DOWN);
+        for w in &fine.wall[odd][at.wall[odd] as usize..next.wall[odd] as usize] {
+            self.prolong_single(fine, coarse, [w.i, row], ARM_DOWN);
         }
     }
 
@@ -235,7 +289,7 @@ impl Transfer {
             if weight > 0.0
                 && let Some(coarse_node) = coarse.natural_at(end[0] / 2, end[1] / 2)
             {
-                self.prolong_entries.push(Entry {
+                self.prolongation.entries.push(Entry {
                     coarse: coarse_node,
                     fine: node,
                     weight,
@@ -243,6 +297,21 @@ impl Transfer {
             }
         }
     }
+}
+
+/// Coarse nodes with a wall node among their nine fine ones, row by row.
+fn near_wall(fine: &Mask, coarse: &Mask) -> Vec<bool> {
+    let mut near_wall = vec![false; coarse.nodes()];
+    for w in fine.wall.iter().flatten() {
+        for j in around(w.j) {
+            for i in around(w.i) {
+                if let Some(node) = coarse.natural_at(i, j) {
+                    near_wall[node as usize] = true;
+                }
+            }
+        }
+    }
+    near_wall
 }
 
 /// Coarse indices whose three fine indices include `fine`.

@@ -119,6 +119,12 @@ fn solve() -> Command {
     let command = accuracy_options(fluid_options(film_options(input(command))));
     let heading = "Output";
     wall_options(result(command), heading)
+        .arg(
+            flag("trace", "Say on standard error what the solve cost").long_help(
+                "Say on standard error what the solve cost: time by stage, time and memory by grid. \
+                 Example: --trace",
+            ),
+        )
         .arg(flag(
             "shortcuts",
             "Also say what the usual formulas would have said",

@@ -64,6 +64,9 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let checked = checked_section(&request.file, &request.read)?;
     let sections = Sections::new(&checked, request.film.as_ref())?;
     let solved = sections.solve(&request.solve)?;
+    if matches.get_flag("trace") {
+        output::talk(&report::cost_text(solved.cost()));
+    }
     let reach = sections.reach(&solved.flow, &request.solve)?;
     request.answer(&checked, &sections, &solved, reach.as_ref())
 }

@@ -17,6 +17,7 @@ mod operating_point;
 mod peak;
 mod section_flow;
 mod shortcuts;
+mod solve_cost;
 mod solve_outline;
 mod solve_warnings;
 mod tangents;
@@ -39,6 +40,7 @@ pub use section_flow::{
     WallSample, WallShear,
 };
 pub use shortcuts::{ShortcutRow, shortcuts};
+pub use solve_cost::{LevelCost, SolveCost, StageCost};
 pub use solve_outline::{DEFAULT_MEMORY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use validity_range::{outside_validity, validity_warnings};
 pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};

@@ -15,6 +15,7 @@ use super::field::DenseField;
 use super::grid_integrals::GridIntegrals;
 use super::peak::peak;
 use super::section_flow::{GridReport, SectionFlow};
+use super::solve_cost::{LevelCost, SolveCost, StageClock};
 use super::wall_shear::corners_of;
 
 /// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
@@ -106,12 +107,18 @@ pub struct SolvedSection {
     lattice: Lattice,
     mask: Mask,
     phi: Field,
+    cost: SolveCost,
 }
 
 impl SolvedSection {
     /// The outline that was solved, oriented.
     pub fn outline(&self) -> &Outline {
         &self.outline
+    }
+
+    /// What the last grid cost.
+    pub fn cost(&self) -> &SolveCost {
+        &self.cost
     }
 
     /// The field on a plain lattice of at most about `most_nodes` nodes, thinned if need be.
@@ -184,6 +191,7 @@ fn solve_at(
     options: &SolveOptions,
 ) -> Result<SolvedSection, FlowError> {
     let start = Instant::now();
+    let mut clock = StageClock::start();
     let asked = spacing(outline, diameter, cells_across, options.memory_limit)?;
     let corners = corners_of(outline, asked);
     let is_flat = options.grid_offset.is_none()
@@ -202,18 +210,32 @@ fn solve_at(
         },
     };
     let spacing = fitted.spacing;
+    clock.end("corners and place of the grid");
     let (lattice, hierarchy, answers) =
-        grid_sequence(outline, spacing, fitted.offset, cells_across)
+        grid_sequence(outline, spacing, fitted.offset, cells_across, &mut clock)
             .ok_or(FlowError::NoFluidNode { spacing })?;
     let (mask, phi) = hierarchy.into_finest();
     let others: Vec<(Point, Vec<GridAnswer>)> = OTHER_PLACES
         .iter()
         .filter(|_| is_flat && mask.nodes() <= AVERAGED_NODES)
-        .filter_map(|&place| grid_sequence(outline, spacing, place, cells_across))
+        .filter_map(|&place| {
+            grid_sequence(
+                outline,
+                spacing,
+                place,
+                cells_across,
+                &mut StageClock::start(),
+            )
+        })
         .map(|(other, _, answers)| (other.origin, answers))
         .collect();
+    if is_flat {
+        clock.end("other places of the grid");
+    }
     let seconds = start.elapsed().as_secs_f64();
+    clock.lap();
     let bracket = bracket(&lattice, &mask, &phi).map(|b| b.scaled(spacing.powi(4)));
+    clock.end("proof");
     let grid = GridReport {
         spacing,
         fluid_nodes: mask.nodes(),
@@ -231,12 +253,14 @@ fn solve_at(
         others,
     };
     let flow = assemble(outline, &solution, grid, seconds);
+    clock.end("wall shear and answers");
     Ok(SolvedSection {
         flow,
         outline: outline.clone(),
         lattice,
         mask,
         phi,
+        cost: clock.cost(),
     })
 }
 
@@ -246,17 +270,28 @@ fn grid_sequence(
     spacing: f64,
     offset: [f64; 2],
     cells_across: f64,
+    clock: &mut StageClock,
 ) -> Option<(Lattice, Hierarchy, Vec<GridAnswer>)> {
     let lattice = Lattice::new(outline, spacing, offset);
     let rows = LineCrossings::rows(&lattice);
     let columns = LineCrossings::columns(&lattice);
+    clock.end("crossings");
     let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns)?;
+    clock.end("grids and transfers");
     let control = SolveControl {
         residual: RESIDUAL_SHARE / (cells_across * cells_across),
         most_cycles: 100,
     };
     let mut answers = Vec::new();
     hierarchy.solve(control, |grid, solved| {
+        let seconds = clock.lap();
+        clock.add("solve", seconds);
+        clock.level(LevelCost {
+            fluid_nodes: grid.mask.nodes(),
+            cycles: solved.cycles,
+            seconds,
+            bytes: grid.bytes(),
+        });
         answers.push(GridAnswer {
             stride: grid.mask.stride,
             nodes: grid.mask.nodes(),
@@ -265,6 +300,7 @@ fn grid_sequence(
             integrals: GridIntegrals::new(&grid.mask, &grid.phi),
             peak: peak(&grid.mask, &grid.phi),
         });
+        clock.end("integrals");
     });
     answers.reverse();
     Some((lattice, hierarchy, answers))

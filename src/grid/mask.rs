@@ -151,6 +151,8 @@ pub struct Mask {
     pub segments: [Vec<Segment>; 2],
     /// Wall nodes of each colour in storage order.
     pub wall: [Vec<WallNode>; 2],
+    /// Most even nodes in a row.
+    pub longest_row: u32,
     /// Where each row begins, and the totals at the end.
     pub starts: Vec<RowStart>,
     /// Nodes turned into wall because an island would otherwise be invisible on this grid.
@@ -186,6 +188,7 @@ impl Mask {
             count,
             segments: [Vec::new(), Vec::new()],
             wall: [Vec::new(), Vec::new()],
+            longest_row: 0,
             starts: Vec::new(),
             pinned,
         };
@@ -207,7 +210,7 @@ impl Mask {
     }
 
     /// Sorts the values of one row, given node by node, into the two colours.
-    pub(crate) fn split_row(&self, row: usize, values: &[f64], targets: [&mut [f64]; 2]) {
+    pub(crate) fn split_row(&self, row: usize, values: &[f64], targets: &mut [&mut [f64]; 2]) {
         let start = self.starts[row];
         for run in &self.runs[self.row_start[row] as usize..self.row_start[row + 1] as usize] {
             let from = (run.natural - start.natural) as usize;
@@ -224,6 +227,17 @@ impl Mask {
                 }
             }
         }
+    }
+
+    /// Memory, bytes.
+    pub fn bytes(&self) -> usize {
+        let lists = [0, 1].map(|colour| {
+            size_of_val(&self.segments[colour][..]) + size_of_val(&self.wall[colour][..])
+        });
+        lists.iter().sum::<usize>()
+            + size_of_val(&self.runs[..])
+            + size_of_val(&self.row_start[..])
+            + size_of_val(&self.starts[..])
     }
 
     /// Number of rows of this grid.
@@ -359,6 +373,8 @@ impl Mask {
             }
         }
         self.open_row(self.runs.len());
+        let even = |pair: &[RowStart]| pair[1].node[0] - pair[0].node[0];
+        self.longest_row = self.starts.windows(2).map(even).max().unwrap_or(0);
         for colour in [Colour::Even, Colour::Odd] {
             let mut wall = std::mem::take(&mut self.wall[colour as usize]);
             for node in &mut wall {

@@ -40,13 +40,6 @@ impl Field {
         [row.wrapping_sub(1), row, row + 1].map(|row| self.row(mask, colour, row))
     }
 
-    /// Sets every value.
-    pub(crate) fn fill(&mut self, value: f64) {
-        for part in &mut self.colour {
-            part.fill(value);
-        }
-    }
-
     /// Adds `factor` times another field of the same grid.
     pub(crate) fn add_scaled(&mut self, factor: f64, other: &Self) {
         for (part, add) in self.colour.iter_mut().zip(&other.colour) {

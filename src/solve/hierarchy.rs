@@ -15,9 +15,9 @@ use super::stencil::{Source, Stencil};
 use super::transfer::Transfer;
 
 /// Largest cost `n * half_band^2` of the direct solution on the coarsest grid.
-const DIRECT_COST: f64 = 2e6;
+const DIRECT_COST: f64 = 2e5;
 /// Nodes above which a grid is never tried for the direct solution.
-const DIRECT_NODES: usize = 60_000;
+const DIRECT_NODES: usize = 20_000;
 /// Grids that extrapolation and its error estimate want, where the section is large enough for them.
 const LEAST_GRIDS: usize = 4;
 /// Most grids in a hierarchy.
@@ -66,6 +66,16 @@ pub struct Hierarchy {
 }
 
 impl Grid {
+    /// Memory of nodes, arms and fields, bytes.
+    pub fn bytes(&self) -> usize {
+        let fields: usize = [&self.phi, &self.rhs]
+            .iter()
+            .flat_map(|field| &field.colour)
+            .map(|values| size_of_val(&values[..]))
+            .sum();
+        self.mask.bytes() + self.stencil.bytes() + fields + size_of_val(&self.natural[..])
+    }
+
     /// - `serves`: whether there is a finer grid
     fn new(mask: Mask, serves: bool) -> Self {
         let empty = Field {
@@ -96,14 +106,15 @@ impl Hierarchy {
         let mut masks = vec![finest];
         let direct = loop {
             let last = masks.last()?;
+            let longest = lattice.rows.max(lattice.columns) / last.stride as usize + 1;
             if masks.len() >= LEAST_GRIDS
-                && let Some(direct) = direct_if_cheap(last, DIRECT_COST)
+                && let Some(direct) = direct_if_cheap(last, longest, DIRECT_COST)
             {
                 break direct;
             }
             let coarse = Mask::new(lattice, rows, columns, last.stride * 2);
             if coarse.nodes() == 0 || masks.len() as u32 == MOST_GRIDS {
-                break direct_if_cheap(last, f64::INFINITY)?;
+                break direct_if_cheap(last, longest, f64::INFINITY)?;
             }
             masks.push(coarse);
         };
@@ -130,8 +141,12 @@ impl Hierarchy {
     }
 }
 
-fn direct_if_cheap(mask: &Mask, limit: f64) -> Option<BandedLu> {
-    if mask.nodes() > DIRECT_NODES && limit.is_finite() {
+/// - `longest`: rows or columns of the grid, whichever are more
+fn direct_if_cheap(mask: &Mask, longest: usize, limit: f64) -> Option<BandedLu> {
+    // The band is at least about as wide as the section is thick, whatever the order.
+    let thickness = mask.nodes() as f64 / longest as f64;
+    let hopeless = mask.nodes() as f64 * (0.5 * thickness).powi(2) > limit;
+    if limit.is_finite() && (hopeless || mask.nodes() > DIRECT_NODES) {
         return None;
     }
     let matrix = poisson_matrix(mask);

@@ -53,14 +53,14 @@ struct Operator<'a> {
 
 impl Operator<'_> {
     fn relax(self, colour: Colour, row: usize, own: &mut RowSet, other: &RowSet) {
-        let (target, around) = (own.row_mut(row), other.around(row));
+        let (target, around) = (own.owned_mut(), other.around(row));
         self.stencil
             .relax_row(self.mask, (colour, row), target, around, self.source);
     }
 
     /// Residual of the even nodes of a row.
     fn residual(self, row: usize, even: &RowSet, odd: &RowSet, out: &mut [f64]) -> Left {
-        let phi = even.row(row);
+        let phi = even.owned();
         let around = odd.around(row);
         self.stencil.residual_row(
             self.mask,
@@ -119,11 +119,12 @@ impl Left {
 
 /// First rows of all strips but the first: even, and so many nodes apart.
 fn seams(mask: &Mask) -> Vec<usize> {
+    // Asking for the number of threads starts them: small grids do without.
+    if mask.nodes() < PARALLEL_NODES || rayon::current_num_threads() == 1 {
+        return Vec::new();
+    }
     let strips = STRIPS_PER_THREAD * rayon::current_num_threads();
     let mut seams = Vec::new();
-    if mask.nodes() < PARALLEL_NODES || rayon::current_num_threads() == 1 {
-        return seams;
-    }
     let mut last = 0;
     for strip in 1..strips {
         let node = (mask.nodes() * strip / strips) as u32;
@@ -143,10 +144,7 @@ struct Ring {
 
 impl Ring {
     fn new(operator: Operator) -> Self {
-        let longest = (0..operator.mask.rows())
-            .map(|row| operator.even_nodes(row).len())
-            .max()
-            .unwrap_or(0);
+        let longest = operator.mask.longest_row as usize;
         Self {
             rows: std::array::from_fn(|_| vec![0.0; longest]),
         }
@@ -184,8 +182,8 @@ impl CoarseRows<'_> {
             .transfer
             .restrict_row(row, residual, at.natural, &mut self.natural);
         let [even, odd] = &mut self.rhs;
-        let targets = [even.row_mut(row), odd.row_mut(row)];
-        self.mask.split_row(row, &self.natural, targets);
+        let mut targets = [even.row_mut(row), odd.row_mut(row)];
+        self.mask.split_row(row, &self.natural, &mut targets);
     }
 }
 
@@ -288,9 +286,9 @@ pub(super) fn descend(
     }
     let mut ring = Ring::new(operator);
     for &seam in &seams {
-        for row in seam - 3..seam + 4 {
+        for (row, left) in left.iter_mut().enumerate().take(seam + 4).skip(seam - 3) {
             let out = ring.row_mut(operator, row);
-            left[row] = operator.residual(row, &even, &odd, out);
+            *left = operator.residual(row, &even, &odd, out);
             if !row.is_multiple_of(2) && row > seam - 3 {
                 let around = ring.around(operator, row / 2);
                 coarse_rows.restrict(operator, row / 2, around);

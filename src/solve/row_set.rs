@@ -9,7 +9,7 @@ use std::ops::Range;
 
 use crate::grid::{Colour, RowStart};
 
-/// One row to read: its values, and the storage index of the first.
+/// Values of one row or more to read, and the storage index of the first.
 #[derive(Debug, Clone, Copy)]
 pub(crate) struct Row<'a> {
     values: &'a [f64],
@@ -52,6 +52,8 @@ pub(crate) struct RowSet<'a> {
     colour: Colour,
     owned: Range<usize>,
     values: &'a mut [f64],
+    /// Storage index of the first of them.
+    first: usize,
     seams: Vec<(usize, Row<'a>)>,
 }
 
@@ -63,6 +65,7 @@ impl<'a> RowSet<'a> {
             colour,
             owned: 0..starts.len() - 1,
             values,
+            first: 0,
             seams: Vec::new(),
         }
     }
@@ -100,6 +103,7 @@ impl<'a> RowSet<'a> {
             strips.push(Self {
                 starts,
                 colour,
+                first: node(owned.start) as usize,
                 owned,
                 values: own,
                 seams: around,
@@ -111,6 +115,7 @@ impl<'a> RowSet<'a> {
             colour,
             owned: first..starts.len() - 1,
             values: left,
+            first: node(first) as usize,
             seams: before,
         });
         strips
@@ -127,21 +132,36 @@ impl<'a> RowSet<'a> {
         self.starts[row].node[self.colour as usize] as usize
     }
 
-    /// A row to read; rows beyond the lattice are empty.
+    /// All rows that the strip may write, to read.
     #[inline]
-    pub(crate) fn row(&self, row: usize) -> Row<'_> {
+    pub(crate) fn owned(&self) -> Row<'_> {
+        Row {
+            values: self.values,
+            first: self.first,
+        }
+    }
+
+    /// All rows that the strip may write, and the storage index of their first value.
+    #[inline]
+    pub(crate) fn owned_mut(&mut self) -> (&mut [f64], usize) {
+        (self.values, self.first)
+    }
+
+    /// Values that hold a row; none for rows beyond the lattice.
+    fn row(&self, row: usize) -> Row<'_> {
         if self.owns(row) {
-            let start = self.node(self.owned.start);
-            let (first, end) = (self.node(row), self.node(row + 1));
-            return Row::new(&self.values[first - start..end - start], first as u32);
+            return self.owned();
         }
         let seam = self.seams.iter().find(|(at, _)| *at == row);
         seam.map_or(Row::EMPTY, |(_, row)| *row)
     }
 
-    /// The rows below, at and above a row.
+    /// Values that hold the rows below, at and above a row.
     #[inline]
     pub(crate) fn around(&self, row: usize) -> [Row<'_>; 3] {
+        if self.seams.is_empty() || (self.owned.start < row && row + 1 < self.owned.end) {
+            return [self.owned(); 3];
+        }
         [
             self.row(row.wrapping_sub(1)),
             self.row(row),
@@ -149,11 +169,10 @@ impl<'a> RowSet<'a> {
         ]
     }
 
-    /// A row to write.
+    /// One row to write.
     #[inline]
     pub(crate) fn row_mut(&mut self, row: usize) -> &mut [f64] {
-        let start = self.node(self.owned.start);
-        let (first, end) = (self.node(row), self.node(row + 1));
-        &mut self.values[first - start..end - start]
+        let (from, to) = (self.node(row), self.node(row + 1));
+        &mut self.values[from - self.first..to - self.first]
     }
 }

@@ -74,6 +74,11 @@ pub(crate) fn opposite(arm: usize) -> usize {
 }
 
 impl Stencil {
+    /// Memory, bytes.
+    pub(crate) fn bytes(&self) -> usize {
+        self.wall.iter().map(|wall| size_of_val(&wall[..])).sum()
+    }
+
     pub(crate) fn new(mask: &Mask) -> Self {
         let of = |colour: usize| {
             mask.wall[colour]
@@ -96,22 +101,21 @@ impl Stencil {
 
     /// Solves the equation of every node of one colour in one row for the given values of the other.
     ///
-    /// - `own`: the row to write
+    /// - `own`: values that hold the row, and the storage index of their first
     /// - `other`: rows of the other colour below, at and above it
     pub(crate) fn relax_row(
         &self,
         mask: &Mask,
         (colour, row): (Colour, usize),
-        own: &mut [f64],
+        (own, first): (&mut [f64], usize),
         other: [Row; 3],
         source: Source,
     ) {
         let c = colour as usize;
         let [at, next] = [&mask.starts[row], &mask.starts[row + 1]];
-        let first = at.node[c];
         for s in &mask.segments[c][at.segment[c] as usize..next.segment[c] as usize] {
             let n = s.len as usize;
-            let target = &mut own[(s.start - first) as usize..][..n];
+            let target = &mut own[s.start as usize - first..][..n];
             let beside = other[1].from(s.left, n + 1);
             let (west, east) = (&beside[..n], &beside[1..][..n]);
             let (down, up) = (other[0].from(s.down, n), other[2].from(s.up, n));
@@ -131,7 +135,7 @@ impl Stencil {
         }
         for w in &self.wall[c][at.wall[c] as usize..next.wall[c] as usize] {
             let sum = source.at(c, w.node) + gather(w, other);
-            own[(w.node - first) as usize] = sum / w.diagonal;
+            own[w.node as usize - first] = sum / w.diagonal;
         }
     }
 

@@ -1,7 +1,7 @@
 //! Integrals of the squared flux of the upper bound over whole and cut cells.
 
 use crate::geometry::Point;
-use crate::grid::{EAST, NORTH, Region, SOUTH, WEST, signed_area};
+use crate::grid::{EAST, NORTH, SOUTH, WEST};
 
 /// Integrals over one region in cell coordinates.
 #[derive(Debug, Clone, Copy)]
@@ -11,22 +11,26 @@ pub(super) struct Moments {
     second: Point,
 }
 
-pub(super) fn region_moments(region: &Region) -> Moments {
+/// - `polygons`: outer boundary and holes of the region, fluid on the left
+pub(super) fn region_moments<'a>(polygons: impl Iterator<Item = &'a [Point]>) -> Moments {
     let mut m = Moments {
         area: 0.0,
         first: [0.0; 2],
         second: [0.0; 2],
     };
-    for polygon in &region.boundary {
-        m.area += signed_area(polygon);
-        let next = polygon.iter().cycle().skip(1);
-        for (a, b) in polygon.iter().zip(next) {
+    for polygon in polygons {
+        let Some(mut a) = polygon.last() else {
+            continue;
+        };
+        for b in polygon {
             let cross = a[0] * b[1] - a[1] * b[0];
+            m.area += 0.5 * cross;
             for axis in 0..2 {
                 m.first[axis] += cross * (a[axis] + b[axis]) / 6.0;
                 m.second[axis] +=
                     cross * (a[axis] * a[axis] + a[axis] * b[axis] + b[axis] * b[axis]) / 12.0;
             }
+            a = b;
         }
     }
     m

@@ -27,8 +27,12 @@
 
 mod cell_energy;
 mod cut_polygon;
+mod elimination;
+mod interior;
 mod lower_bound;
+mod near_wall;
 mod nodal_flux;
+mod row_values;
 mod square_energy;
 mod triangulation;
 mod upper_bound;

@@ -50,6 +50,17 @@ impl Square {
 
 /// Half the second derivative of the energy with respect to one corner value.
 pub(super) const STIFFNESS: f64 = 2.0 / 3.0;
+/// Half the second derivatives of the energy with respect to two corner values.
+pub(super) const COUPLINGS: [[f64; 4]; 4] = {
+    const BESIDE: f64 = -1.0 / 6.0;
+    const ACROSS: f64 = -1.0 / 3.0;
+    [
+        [STIFFNESS, BESIDE, ACROSS, BESIDE],
+        [BESIDE, STIFFNESS, BESIDE, ACROSS],
+        [ACROSS, BESIDE, STIFFNESS, BESIDE],
+        [BESIDE, ACROSS, BESIDE, STIFFNESS],
+    ]
+};
 
 #[cfg(test)]
 mod tests {
@@ -98,6 +109,18 @@ mod tests {
             let change = moved.energy() - SQUARE.energy();
             let foreseen = SQUARE.half_slope(corner) + 0.25 * STIFFNESS;
             assert!((change - foreseen).abs() < 1e-12, "{corner}");
+        }
+    }
+
+    #[test]
+    fn the_couplings_are_the_changes_of_the_slopes() {
+        for (corner, row) in COUPLINGS.iter().enumerate() {
+            for (other, coupling) in row.iter().enumerate() {
+                let mut moved = SQUARE;
+                moved.corners[other] += 0.5;
+                let change = moved.half_slope(corner) - SQUARE.half_slope(corner);
+                assert!((change - 0.5 * coupling).abs() < 1e-12, "{corner} {other}");
+            }
         }
     }
 }

@@ -1,5 +1,6 @@
 //! The polygons of the cut squares, with feet on sides that a wall point almost touches.
 
+use std::cmp::Ordering;
 use std::collections::BTreeMap;
 
 use crate::geometry::Point;
@@ -16,8 +17,49 @@ type Face = (usize, i64, i64);
 /// Places along faces where the velocity is held at zero, rising.
 pub(super) type Feet = BTreeMap<Face, Vec<f64>>;
 
-/// A stretch of a side between two vertices: side, lower and upper end, nodes at the ends.
-type Piece = (usize, f64, f64, [Option<usize>; 2]);
+/// A stretch of a side between two vertices.
+#[derive(Debug, Clone, Copy)]
+struct Piece {
+    side: usize,
+    /// Lower and upper end.
+    ends: [f64; 2],
+    /// Nodes at these.
+    nodes: [Option<usize>; 2],
+}
+
+impl Piece {
+    fn new(
+        side: usize,
+        (a, from): (Point, Option<usize>),
+        (b, to): (Point, Option<usize>),
+    ) -> Self {
+        let ends = [along_and_away(side, a).0, along_and_away(side, b).0];
+        if ends[0] <= ends[1] {
+            Self {
+                side,
+                ends,
+                nodes: [from, to],
+            }
+        } else {
+            Self {
+                side,
+                ends: [ends[1], ends[0]],
+                nodes: [to, from],
+            }
+        }
+    }
+
+    fn order(&self, other: &Self) -> Ordering {
+        let by_side = self.side.cmp(&other.side);
+        by_side
+            .then(self.ends[0].total_cmp(&other.ends[0]))
+            .then(self.ends[1].total_cmp(&other.ends[1]))
+    }
+
+    fn is_whole_side(&self) -> bool {
+        self.ends[0] <= 0.0 && self.ends[1] >= 1.0
+    }
+}
 
 /// One fluid region of a cut square as a polygon.
 #[derive(Debug, Clone)]
@@ -45,19 +87,14 @@ impl Polygon {
 
     /// Adds its edges that lie on sides of the square.
     fn add_side_pieces(&self, pieces: &mut Vec<Piece>) {
-        let Some(&(mut b, mut to_node)) = self.vertices.first() else {
+        let Some(mut before) = self.vertices.last().copied() else {
             return;
         };
-        for &(a, from_node) in self.vertices.iter().rev() {
-            if let Some(side) = common_side(a, b) {
-                let (from, to) = (along_and_away(side, a).0, along_and_away(side, b).0);
-                pieces.push(if from <= to {
-                    (side, from, to, [from_node, to_node])
-                } else {
-                    (side, to, from, [to_node, from_node])
-                });
+        for &vertex in &self.vertices {
+            if let Some(side) = common_side(before.0, vertex.0) {
+                pieces.push(Piece::new(side, before, vertex));
             }
-            (b, to_node) = (a, from_node);
+            before = vertex;
         }
     }
 }
@@ -74,8 +111,11 @@ pub(super) fn corner_at(at: Point) -> usize {
 
 /// The side on which both ends of an edge lie; points on a side were put there to the last bit.
 fn common_side(a: Point, b: Point) -> Option<usize> {
-    let is_on = |p: Point, side: usize| along_and_away(side, p).1.abs() <= 0.0;
-    (0..4).find(|&side| is_on(a, side) && is_on(b, side))
+    let is_both =
+        |axis: usize, line: f64| (a[axis] - line).abs() <= 0.0 && (b[axis] - line).abs() <= 0.0;
+    [(1, 0.0), (0, 1.0), (1, 1.0), (0, 0.0)]
+        .iter()
+        .position(|&(axis, line)| is_both(axis, line))
 }
 
 /// Column and row of a corner of a square.
@@ -260,30 +300,29 @@ pub(super) fn agree(polygons: &[Polygon]) -> bool {
     let rows = CellRows::new(polygons.iter().map(|polygon| polygon.cell));
     // Pieces of each square, by side and along it.
     let mut pieces: Vec<Piece> = Vec::with_capacity(4 * polygons.len());
-    let mut starts = vec![0];
+    let mut starts: Vec<[usize; 5]> = Vec::with_capacity(rows.cells().len());
     for cell in 0..rows.cells().len() {
         let from = pieces.len();
         for polygon in &polygons[rows.items(cell)] {
             polygon.add_side_pieces(&mut pieces);
         }
-        pieces[from..].sort_by(|a, b| {
-            let by_side = a.0.cmp(&b.0);
-            by_side.then(a.1.total_cmp(&b.1)).then(a.2.total_cmp(&b.2))
-        });
-        starts.push(pieces.len());
+        pieces[from..].sort_by(Piece::order);
+        let mut ends = [from; 5];
+        for piece in &pieces[from..] {
+            ends[piece.side + 1] += 1;
+        }
+        for side in 0..4 {
+            ends[side + 1] += ends[side] - from;
+        }
+        starts.push(ends);
     }
-    let on_side = |cell: usize, side: usize| {
-        let of_cell = &pieces[starts[cell]..starts[cell + 1]];
-        let from = of_cell.partition_point(|piece| piece.0 < side);
-        let to = of_cell.partition_point(|piece| piece.0 <= side);
-        &of_cell[from..to]
-    };
+    let on_side = |cell: usize, side: usize| &pieces[starts[cell][side]..starts[cell][side + 1]];
     let is_undivided = |cell: usize, side: usize| match on_side(cell, side) {
         [] => true,
-        [(_, low, high, _)] => *low <= 0.0 && *high >= 1.0,
+        [piece] => piece.is_whole_side(),
         _ => false,
     };
-    let alike = |a: &Piece, b: &Piece| (a.1, a.2, a.3) == (b.1, b.2, b.3);
+    let alike = |a: &Piece, b: &Piece| (a.ends, a.nodes) == (b.ends, b.nodes);
     let mut is_shared = vec![[false; 4]; rows.cells().len()];
     for (cell, neighbours) in rows.neighbours().into_iter().enumerate() {
         for (side, neighbour) in [EAST, NORTH].into_iter().zip(neighbours) {

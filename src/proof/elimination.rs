@@ -21,34 +21,26 @@ struct Step {
 
 impl Elimination {
     /// - `diagonal`: entries of the diagonal
-    /// - `rows`: entries off the diagonal of each row, both halves; several for the same column add up
-    pub(super) fn new(mut diagonal: Vec<f64>, mut rows: Vec<Vec<(u32, f64)>>) -> Self {
-        for row in &mut rows {
-            row.sort_by_key(|entry| entry.0);
-            row.dedup_by(|later, first| {
-                let is_same = later.0 == first.0;
-                if is_same {
-                    first.1 += later.1;
-                }
-                is_same
-            });
-        }
+    /// - `pairs`: each pair of unknowns that are coupled, with the entry; several for the same pair add up
+    pub(super) fn new(mut diagonal: Vec<f64>, pairs: &[(u32, u32, f64)]) -> Self {
+        let n = diagonal.len();
+        let mut rows = Rows::new(n, pairs);
         let mut waiting: Vec<Vec<u32>> = Vec::new();
         let mut least = 0;
-        for unknown in (0..rows.len()).rev() {
+        for unknown in (0..n).rev() {
             wait(
                 &mut waiting,
                 &mut least,
-                rows[unknown].len(),
+                rows.row(unknown).len(),
                 unknown as u32,
             );
         }
         let mut found = Self {
-            steps: Vec::with_capacity(rows.len()),
-            entries: Vec::with_capacity(2 * rows.len()),
+            steps: Vec::with_capacity(n),
+            entries: Vec::with_capacity(2 * n),
         };
-        let mut is_done = vec![false; rows.len()];
-        let mut merged = Vec::new();
+        let mut is_done = vec![false; n];
+        let mut row = Vec::new();
         while least < waiting.len() {
             let Some(unknown) = waiting[least].pop() else {
                 least += 1;
@@ -56,26 +48,24 @@ impl Elimination {
             };
             let index = unknown as usize;
             // One that has gained or lost neighbours since waits elsewhere as well.
-            if is_done[index] || rows[index].len() != least {
+            if is_done[index] || rows.row(index).len() != least {
                 continue;
             }
             is_done[index] = true;
-            let row = std::mem::take(&mut rows[index]);
+            row.clear();
+            row.extend_from_slice(rows.row(index));
             let pivot = diagonal[index];
             for &(other, entry) in &row {
                 let share = entry / pivot;
                 diagonal[other as usize] -= share * entry;
-                let target = &mut rows[other as usize];
-                merge(target, &row, share, [unknown, other], &mut merged);
-                std::mem::swap(target, &mut merged);
-                wait(&mut waiting, &mut least, target.len(), other);
+                let neighbours = rows.subtract(other as usize, &row, share, unknown);
+                wait(&mut waiting, &mut least, neighbours, other);
             }
-            found.entries.extend(row);
-            let end = found.entries.len();
+            found.entries.extend_from_slice(&row);
             found.steps.push(Step {
                 unknown,
                 pivot,
-                end,
+                end: found.entries.len(),
             });
         }
         found
@@ -114,31 +104,102 @@ fn wait(waiting: &mut Vec<Vec<u32>>, least: &mut usize, neighbours: usize, unkno
     *least = neighbours.min(*least);
 }
 
-/// `target - share * row` without the columns in `left_out`, both sorted by column.
-fn merge(
-    target: &[(u32, f64)],
-    row: &[(u32, f64)],
-    share: f64,
-    left_out: [u32; 2],
-    merged: &mut Vec<(u32, f64)>,
-) {
-    merged.clear();
-    let mut added = row.iter().copied().peekable();
-    for &(column, value) in target {
-        while let Some((other, entry)) = added.next_if(|a| a.0 < column) {
-            if !left_out.contains(&other) {
-                merged.push((other, -share * entry));
+/// Entries off the diagonal of every row, sorted by column, in one array.
+struct Rows {
+    /// First entry, number of entries, and room for more.
+    places: Vec<[u32; 3]>,
+    entries: Vec<(u32, f64)>,
+    /// The row at hand.
+    merged: Vec<(u32, f64)>,
+}
+
+impl Rows {
+    fn new(n: usize, pairs: &[(u32, u32, f64)]) -> Self {
+        let mut next = vec![0_u32; n + 1];
+        for &(a, b, _) in pairs {
+            next[a as usize + 1] += 1;
+            next[b as usize + 1] += 1;
+        }
+        for k in 0..n {
+            next[k + 1] += next[k];
+        }
+        let mut places: Vec<[u32; 3]> = next
+            .windows(2)
+            .map(|pair| [pair[0], pair[1] - pair[0], pair[1] - pair[0]])
+            .collect();
+        let mut entries = vec![(0, 0.0); 2 * pairs.len()];
+        for &(a, b, entry) in pairs {
+            for (row, column) in [(a, b), (b, a)] {
+                entries[next[row as usize] as usize] = (column, entry);
+                next[row as usize] += 1;
             }
         }
-        let same = added.next_if(|a| a.0 == column).map_or(0.0, |a| a.1);
-        if !left_out.contains(&column) {
-            merged.push((column, value - share * same));
+        for place in &mut places {
+            let row = &mut entries[place[0] as usize..][..place[1] as usize];
+            row.sort_by_key(|entry| entry.0);
+            let mut kept = 0;
+            for k in 1..row.len() {
+                if row[k].0 == row[kept].0 {
+                    row[kept].1 += row[k].1;
+                } else {
+                    kept += 1;
+                    row[kept] = row[k];
+                }
+            }
+            place[1] = place[1].min(kept as u32 + 1);
+        }
+        Self {
+            places,
+            entries,
+            merged: Vec::new(),
         }
     }
-    for (other, entry) in added {
-        if !left_out.contains(&other) {
-            merged.push((other, -share * entry));
+
+    fn row(&self, index: usize) -> &[(u32, f64)] {
+        let [from, len, _] = self.places[index];
+        &self.entries[from as usize..][..len as usize]
+    }
+
+    /// Takes `share` times another row, that of `gone`, from a row, and `gone` out of it; returns the number
+    /// of entries left.
+    fn subtract(&mut self, index: usize, other: &[(u32, f64)], share: f64, gone: u32) -> usize {
+        let [from, len, room] = self.places[index];
+        if other.len() == 1 {
+            // A branch with nothing behind it.
+            let own = &mut self.entries[from as usize..][..len as usize];
+            let at = own.partition_point(|entry| entry.0 < gone);
+            own[at..].rotate_left(1);
+            self.places[index][1] -= 1;
+            return len as usize - 1;
         }
+        let mut merged = std::mem::take(&mut self.merged);
+        merged.clear();
+        let own = self.entries[from as usize..][..len as usize]
+            .iter()
+            .copied();
+        let mut added = other
+            .iter()
+            .copied()
+            .filter(|a| a.0 as usize != index)
+            .peekable();
+        for (column, value) in own.filter(|entry| entry.0 != gone) {
+            while let Some((before, entry)) = added.next_if(|a| a.0 < column) {
+                merged.push((before, -share * entry));
+            }
+            let same = added.next_if(|a| a.0 == column).map_or(0.0, |a| a.1);
+            merged.push((column, value - share * same));
+        }
+        merged.extend(added.map(|(column, entry)| (column, -share * entry)));
+        let len = merged.len();
+        if len <= room as usize {
+            self.entries[from as usize..][..len].copy_from_slice(&merged);
+            self.places[index][1] = len as u32;
+        } else {
+            self.places[index] = [self.entries.len() as u32, len as u32, len as u32];
+            self.entries.extend_from_slice(&merged);
+        }
+        self.merged = merged;
+        len
     }
 }
 
@@ -159,14 +220,14 @@ mod tests {
         pairs.extend([(3, 47), (3, 47)]);
         let mut dense = nalgebra::DMatrix::<f64>::zeros(n, n);
         let mut diagonal = vec![0.5; n];
-        let mut rows = vec![Vec::new(); n];
+        let mut entries = Vec::new();
         for (k, (a, b)) in pairs.into_iter().enumerate() {
             let entry = -1.0 - 0.3 * (k as f64).sin();
             for (a, b) in [(a, b), (b, a)] {
                 dense[(a, b)] += entry;
                 diagonal[a] -= entry;
-                rows[a].push((b as u32, entry));
             }
+            entries.push((a as u32, b as u32, entry));
         }
         for (k, d) in diagonal.iter().enumerate() {
             dense[(k, k)] = *d;
@@ -174,7 +235,7 @@ mod tests {
         let right = nalgebra::DVector::from_fn(n, |k, _| (1.0 + k as f64).cos());
         let exact = dense.lu().solve(&right).unwrap();
         let mut x = right.as_slice().to_vec();
-        Elimination::new(diagonal, rows).solve(&mut x);
+        Elimination::new(diagonal, &entries).solve(&mut x);
         for (a, b) in x.iter().zip(exact.iter()) {
             assert!((a - b).abs() < 1e-12 * exact.amax(), "{a} {b}");
         }

@@ -19,34 +19,41 @@ pub(super) fn bubble([a, b, c, d]: [f64; 4]) -> f64 {
 /// - `rows`: values of four rows, the squares between the middle two; from one node before the first
 ///   square to two after the start of the last, of equal length
 pub(super) fn squares(rows: [&[f64]; 4]) -> [f64; 2] {
-    let n = rows[0].len().saturating_sub(3);
-    let (mut volume, mut energy) = ([0.0; LANES], [0.0; LANES]);
-    for k in (0..n).step_by(LANES) {
-        let group = some_squares(rows.map(|row| part(row, k)));
-        let width = LANES.min(n - k);
-        add(&mut volume, &group[0], width);
-        add(&mut energy, &group[1], width);
+    let [mut r0, mut r1, mut r2, mut r3] = rows;
+    let mut sum = [[0.0; LANES]; 2];
+    while let (Some(a), Some(b), Some(c), Some(d)) = (
+        r0.first_chunk(),
+        r1.first_chunk(),
+        r2.first_chunk(),
+        r3.first_chunk(),
+    ) {
+        add_squares(&mut sum, [a, b, c, d]);
+        (r0, r1) = (&r0[LANES..], &r1[LANES..]);
+        (r2, r3) = (&r2[LANES..], &r3[LANES..]);
     }
-    [volume.iter().sum(), energy.iter().sum()]
+    let mut rest = [[0.0; LANES]; 2];
+    add_squares(
+        &mut rest,
+        [&filled(r0), &filled(r1), &filled(r2), &filled(r3)],
+    );
+    let left = r0.len().saturating_sub(3);
+    [0, 1].map(|k| sum[k].iter().sum::<f64>() + rest[k].iter().take(left).sum::<f64>())
 }
 
-fn some_squares([r0, r1, r2, r3]: [[f64; LANES + 3]; 4]) -> [[f64; LANES]; 2] {
-    let up: [f64; LANES + 1] =
-        std::array::from_fn(|l| bubble([r0[l + 1], r1[l + 1], r2[l + 1], r3[l + 1]]));
-    let across = |r: &[f64; LANES + 3]| -> [f64; LANES] {
-        std::array::from_fn(|l| bubble([r[l], r[l + 1], r[l + 2], r[l + 3]]))
-    };
-    let (south, north) = (across(&r1), across(&r2));
-    let mut found = [[0.0; LANES]; 2];
+fn add_squares(sum: &mut [[f64; LANES]; 2], [r0, r1, r2, r3]: [&[f64; LANES + 3]; 4]) {
+    let mut up = [0.0; LANES + 1];
+    for (l, up) in up.iter_mut().enumerate() {
+        *up = bubble([r0[l + 1], r1[l + 1], r2[l + 1], r3[l + 1]]);
+    }
     for l in 0..LANES {
+        let across = |r: &[f64; LANES + 3]| bubble([r[l], r[l + 1], r[l + 2], r[l + 3]]);
         let square = Square {
             corners: [r1[l + 1], r1[l + 2], r2[l + 2], r2[l + 1]],
-            bubbles: [south[l], up[l + 1], north[l], up[l]],
+            bubbles: [across(r1), up[l + 1], across(r2), up[l]],
         };
-        found[0][l] = square.volume();
-        found[1][l] = square.energy();
+        sum[0][l] += square.volume();
+        sum[1][l] += square.energy();
     }
-    found
 }
 
 /// Integral of `abs(s)^2` over the cells around the nodes of a row, and the flux out of the last one to the
@@ -56,66 +63,64 @@ fn some_squares([r0, r1, r2, r3]: [[f64; LANES + 3]; 4]) -> [[f64; LANES]; 2] {
 ///   first cell's to one after the last one's, of equal length
 /// - `west`: flux through the west side of the first cell
 pub(super) fn cells(rows: [&[f64]; 3], west: f64) -> (f64, f64) {
-    let n = rows[0].len().saturating_sub(2);
-    let mut energy = [0.0; LANES];
+    let [mut below, mut centre, mut above] = rows;
+    let mut sum = [0.0; LANES];
     let mut flux = west;
-    for k in (0..n).step_by(LANES) {
-        let (group, sides) = some_cells(rows.map(|row| part(row, k)), flux);
-        let width = LANES.min(n - k);
-        add(&mut energy, &group, width);
-        flux = sides[width];
+    while let (Some(a), Some(b), Some(c)) = (
+        below.first_chunk(),
+        centre.first_chunk(),
+        above.first_chunk(),
+    ) {
+        flux = add_cells(&mut sum, [a, b, c], flux)[LANES];
+        (below, centre, above) = (&below[LANES..], &centre[LANES..], &above[LANES..]);
     }
-    (energy.iter().sum(), flux)
+    let mut rest = [0.0; LANES];
+    let group = [&filled(below), &filled(centre), &filled(above)];
+    let sides = add_cells(&mut rest, group, flux);
+    let left = below.len().saturating_sub(2);
+    let energy = sum.iter().sum::<f64>() + rest.iter().take(left).sum::<f64>();
+    (energy, sides[left])
 }
 
-fn some_cells(
-    [below, centre, above]: [[f64; LANES + 2]; 3],
+/// Adds the energy of some cells; returns the fluxes through their vertical sides.
+fn add_cells(
+    sum: &mut [f64; LANES],
+    [below, centre, above]: [&[f64; LANES + 2]; 3],
     west: f64,
-) -> ([f64; LANES], [f64; LANES + 1]) {
-    let south: [f64; LANES + 2] = std::array::from_fn(|l| centre[l] - below[l]);
-    let north: [f64; LANES + 2] = std::array::from_fn(|l| above[l] - centre[l]);
-    let step: [f64; LANES] = std::array::from_fn(|l| 1.0 + (north[l + 1] - south[l + 1]));
-    let up: [f64; LANES + 1] =
-        std::array::from_fn(|l| 0.5 * ((above[l + 1] - above[l]) - (below[l + 1] - below[l])));
+) -> [f64; LANES + 1] {
+    let mut steps = [0.0; LANES];
+    for l in 0..LANES {
+        let (south, north) = (centre[l + 1] - below[l + 1], above[l + 1] - centre[l + 1]);
+        steps[l] = 1.0 + (north - south);
+    }
     let mut sides = [west; LANES + 1];
     for l in 0..LANES {
-        sides[l + 1] = sides[l] - step[l];
+        sides[l + 1] = sides[l] - steps[l];
     }
-    let mut energy = [0.0; LANES];
+    let mut across = [0.0; LANES + 2];
+    for l in 0..LANES + 2 {
+        across[l] = above[l] - below[l];
+    }
     for l in 0..LANES {
+        let (south, north) = (centre[l + 1] - below[l + 1], above[l + 1] - centre[l + 1]);
         let along = [
-            0.5 * (south[l + 2] - south[l]),
-            up[l + 1],
-            0.5 * (north[l + 2] - north[l]),
-            up[l],
+            0.5 * ((centre[l + 2] - below[l + 2]) - (centre[l] - below[l])),
+            0.5 * (across[l + 2] - across[l + 1]),
+            0.5 * ((above[l + 2] - centre[l + 2]) - (above[l] - centre[l])),
+            0.5 * (across[l + 1] - across[l]),
         ];
-        energy[l] = whole_energy([south[l + 1], sides[l + 1], north[l + 1], sides[l]], along);
+        sum[l] += whole_energy([south, sides[l + 1], north, sides[l]], along);
     }
-    (energy, sides)
+    sides
 }
 
-/// `N` values of a row from place `k` on, zero beyond its end.
-fn part<const N: usize>(row: &[f64], k: usize) -> [f64; N] {
-    let rest = &row[k..];
-    if let Some(whole) = rest.first_chunk() {
-        return *whole;
+/// The last values of a row, filled up with zeros.
+fn filled<const N: usize>(rest: &[f64]) -> [f64; N] {
+    let mut values = [0.0; N];
+    for (value, &r) in values.iter_mut().zip(rest) {
+        *value = r;
     }
-    let mut filled = [0.0; N];
-    filled[..rest.len()].copy_from_slice(rest);
-    filled
-}
-
-/// Adds the first `width` values of a group.
-fn add(sum: &mut [f64; LANES], group: &[f64; LANES], width: usize) {
-    if width == LANES {
-        for (s, g) in sum.iter_mut().zip(group) {
-            *s += g;
-        }
-    } else {
-        for (s, g) in sum.iter_mut().zip(group).take(width) {
-            *s += g;
-        }
-    }
+    values
 }
 
 #[cfg(test)]

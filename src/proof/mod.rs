@@ -32,6 +32,7 @@ mod interior;
 mod lower_bound;
 mod near_wall;
 mod nodal_flux;
+mod numbering;
 mod row_values;
 mod square_energy;
 mod triangulation;

@@ -8,6 +8,7 @@ use crate::grid::Mask;
 use crate::solve::Field;
 
 use super::cut_polygon::{Polygon, corner_at};
+use super::numbering::Numbering;
 use super::square_energy::{COUPLINGS, Square};
 use super::triangulation::{Division, Triangle, Vertex};
 
@@ -64,6 +65,23 @@ struct Row {
     pull: f64,
 }
 
+impl Row {
+    /// Adds couplings of one corner of a square, that of this node, to all four.
+    fn add(&mut self, corner: usize, nodes: &[u32; 4], couplings: &[f64; 4]) {
+        for (other, coupling) in couplings.iter().enumerate() {
+            if nodes[other] != NONE {
+                let k = STEPS[corner][other];
+                self.around[k] = nodes[other];
+                self.energy[k] += coupling;
+            }
+        }
+    }
+}
+
+fn row_at<'r>(rows: &'r mut [Row], row_of: &[u32], node: u32) -> Option<&'r mut Row> {
+    rows.get_mut(*row_of.get(node as usize)? as usize)
+}
+
 pub(super) struct NearWall<'a> {
     polygons: &'a [Polygon],
     /// Corners of the squares of the polygons, [`NONE`] where there is no fluid node of the polygon.
@@ -72,10 +90,12 @@ pub(super) struct NearWall<'a> {
     squares: &'a [WholeSquare],
     square_nodes: Vec<[u32; 4]>,
     values: Vec<f64>,
-    /// Nodes that a polygon holds and whose value is free.
-    is_free: Vec<bool>,
     /// Nodes held at zero.
     is_held: Vec<bool>,
+    /// Nodes of polygons, with what the whole squares add to their couplings.
+    rows: Vec<Row>,
+    /// Place of each node in `rows`, [`NONE`] for those of whole squares only.
+    row_of: Vec<u32>,
 }
 
 impl<'a> NearWall<'a> {
@@ -90,23 +110,50 @@ impl<'a> NearWall<'a> {
             .iter()
             .chain(squares.iter().map(|square| &square.nodes));
         let numbering = Numbering::new(mask.nodes(), all.flatten().copied().flatten());
-        let renumbered =
-            |nodes: &[Option<usize>; 4]| nodes.map(|n| n.map_or(NONE, |n| numbering.of(n)));
+        let renumbered = |nodes: &[Option<usize>; 4]| {
+            nodes.map(|n| n.and_then(|n| numbering.of(n)).unwrap_or(NONE))
+        };
         let polygon_nodes: Vec<[u32; 4]> = corners.iter().map(renumbered).collect();
         let values = numbering.values(mask, phi);
-        let mut is_free = vec![false; values.len()];
-        for &node in polygon_nodes.iter().flatten().filter(|&&n| n != NONE) {
-            is_free[node as usize] = true;
-        }
-        Self {
+        let mut near_wall = Self {
             polygons,
             polygon_nodes,
             shares: Vec::new(),
             squares,
             square_nodes: squares.iter().map(|s| renumbered(&s.nodes)).collect(),
             is_held: vec![false; values.len()],
+            rows: Vec::new(),
+            row_of: vec![NONE; values.len()],
             values,
-            is_free,
+        };
+        near_wall.set_up_rows();
+        near_wall
+    }
+
+    fn set_up_rows(&mut self) {
+        for &node in self.polygon_nodes.iter().flatten().filter(|&&n| n != NONE) {
+            self.row_of[node as usize] = 0;
+        }
+        for (node, place) in self.row_of.iter_mut().enumerate().filter(|(_, p)| **p == 0) {
+            *place = self.rows.len() as u32;
+            self.rows.push(Row {
+                node: node as u32,
+                around: [node as u32; 9],
+                energy: [0.0; 9],
+                pull: 0.0,
+            });
+        }
+        for (square, nodes) in self.squares.iter().zip(&self.square_nodes) {
+            let bare = Square {
+                corners: [0.0; 4],
+                bubbles: square.bubbles,
+            };
+            for (corner, couplings) in COUPLINGS.iter().enumerate() {
+                if let Some(row) = row_at(&mut self.rows, &self.row_of, nodes[corner]) {
+                    row.pull += 0.25 - bare.half_slope(corner);
+                    row.add(corner, nodes, couplings);
+                }
+            }
         }
     }
 
@@ -114,7 +161,15 @@ impl<'a> NearWall<'a> {
     pub(super) fn improve(&mut self) {
         for _ in 0..ROUNDS {
             self.divide();
-            let rows = self.rows();
+            let mut rows = self.rows.clone();
+            for (share, nodes) in self.shares.iter().zip(&self.polygon_nodes) {
+                for (corner, couplings) in share.energy.iter().enumerate() {
+                    if let Some(row) = row_at(&mut rows, &self.row_of, nodes[corner]) {
+                        row.pull += share.volume[corner];
+                        row.add(corner, nodes, couplings);
+                    }
+                }
+            }
             for _ in 0..SWEEPS {
                 for row in &rows {
                     self.improve_node(row);
@@ -146,60 +201,10 @@ impl<'a> NearWall<'a> {
                 for &node in nodes.iter().filter(|&&n| n != NONE) {
                     self.values[node as usize] = 0.0;
                     self.is_held[node as usize] = true;
-                    self.is_free[node as usize] = false;
                 }
             }
             self.shares.push(share);
         }
-    }
-
-    /// The free nodes with their couplings, in order.
-    fn rows(&self) -> Vec<Row> {
-        let mut place = vec![NONE; self.values.len()];
-        let mut rows = Vec::new();
-        for (node, place) in place
-            .iter_mut()
-            .enumerate()
-            .filter(|(n, _)| self.is_free[*n])
-        {
-            *place = rows.len() as u32;
-            rows.push(Row {
-                node: node as u32,
-                around: [node as u32; 9],
-                energy: [0.0; 9],
-                pull: 0.0,
-            });
-        }
-        let mut add = |nodes: &[u32; 4], corner: usize, pull: f64, energy: [f64; 4]| {
-            let index = place.get(nodes[corner] as usize).copied().unwrap_or(NONE);
-            let Some(row) = rows.get_mut(index as usize) else {
-                return;
-            };
-            row.pull += pull;
-            for (other, entry) in energy.into_iter().enumerate() {
-                if nodes[other] != NONE {
-                    let k = step_between(corner, other);
-                    row.around[k] = nodes[other];
-                    row.energy[k] += entry;
-                }
-            }
-        };
-        for (share, nodes) in self.shares.iter().zip(&self.polygon_nodes) {
-            for corner in 0..4 {
-                add(nodes, corner, share.volume[corner], share.energy[corner]);
-            }
-        }
-        for (square, nodes) in self.squares.iter().zip(&self.square_nodes) {
-            let bare = Square {
-                corners: [0.0; 4],
-                bubbles: square.bubbles,
-            };
-            for corner in 0..4 {
-                let pull = 0.25 - bare.half_slope(corner);
-                add(nodes, corner, pull, COUPLINGS[corner]);
-            }
-        }
-        rows
     }
 
     /// Sets one value so that twice the volume less the energy is largest.
@@ -207,8 +212,9 @@ impl<'a> NearWall<'a> {
         let coupled = row.around.iter().zip(&row.energy);
         let slope: f64 = coupled.map(|(&n, e)| e * self.values[n as usize]).sum();
         let change = (row.pull - slope) / row.energy[4];
-        if row.energy[4] > 0.0 && change.is_finite() {
-            self.values[row.node as usize] += change;
+        let node = row.node as usize;
+        if row.energy[4] > 0.0 && change.is_finite() && !self.is_held[node] {
+            self.values[node] += change;
         }
     }
 
@@ -238,61 +244,5 @@ impl<'a> NearWall<'a> {
     }
 }
 
-/// Number in [`Row::around`] of one corner of a square seen from another.
-fn step_between(from: usize, to: usize) -> usize {
-    let column = |corner: usize| usize::from(corner == 1 || corner == 2);
-    let row = |corner: usize| usize::from(corner >= 2);
-    3 * (1 + row(to) - row(from)) + 1 + column(to) - column(from)
-}
-
-/// New numbers, in the same order, for some of the nodes that are numbered row by row.
-struct Numbering {
-    /// One bit for each node.
-    bits: Vec<u64>,
-    /// Number of bits set before each word.
-    before: Vec<u32>,
-}
-
-impl Numbering {
-    fn new(nodes: usize, chosen: impl Iterator<Item = usize>) -> Self {
-        let mut bits = vec![0_u64; nodes / 64 + 1];
-        for node in chosen {
-            bits[node / 64] |= 1 << (node % 64);
-        }
-        let mut count = 0;
-        let before = bits.iter().map(|word| {
-            count += word.count_ones();
-            count - word.count_ones()
-        });
-        Self {
-            before: before.collect(),
-            bits,
-        }
-    }
-
-    /// New number of a chosen node.
-    fn of(&self, node: usize) -> u32 {
-        let below = self.bits[node / 64] & ((1 << (node % 64)) - 1);
-        self.before[node / 64] + below.count_ones()
-    }
-
-    /// Values of the chosen nodes.
-    fn values(&self, mask: &Mask, phi: &Field) -> Vec<f64> {
-        let mut values = Vec::new();
-        let mut runs = mask.runs.iter().peekable();
-        for (index, &word) in self.bits.iter().enumerate() {
-            let mut rest = word;
-            while rest != 0 {
-                let node = 64 * index as u32 + rest.trailing_zeros();
-                rest &= rest - 1;
-                while runs.next_if(|run| run.natural + run.len <= node).is_some() {}
-                let value = runs.peek().and_then(|run| {
-                    let (colour, place) = run.node(run.first + (node - run.natural));
-                    phi.colour[colour as usize].get(place as usize).copied()
-                });
-                values.push(value.unwrap_or(0.0));
-            }
-        }
-        values
-    }
-}
+/// Number in [`Row::around`] of one corner of a square, second, seen from another, first.
+const STEPS: [[usize; 4]; 4] = [[4, 5, 8, 7], [3, 4, 7, 6], [0, 1, 4, 3], [1, 2, 5, 4]];

@@ -16,7 +16,7 @@ impl Square {
     pub(super) fn volume(&self) -> f64 {
         let [a, b, c, d] = self.corners;
         let [south, east, north, west] = self.bubbles;
-        ((a + c) + (b + d)) / 4.0 + ((south + north) + (east + west)) / 3.0
+        ((a + c) + (b + d)) * 0.25 + ((south + north) + (east + west)) * (1.0 / 3.0)
     }
 
     /// Integral of `abs(grad v)^2`.
@@ -24,7 +24,7 @@ impl Square {
         let [a, b, c, d] = self.corners;
         let [south, east, north, west] = self.bubbles;
         let part = |low: f64, high: f64, tilt: f64, p: f64, q: f64| {
-            (low * low + low * high + high * high) / 3.0
+            (low * low + low * high + high * high) * (1.0 / 3.0)
                 + 2.0 / 3.0 * tilt * (low + high)
                 + 8.0 / 15.0 * tilt * tilt
                 + 16.0 / 9.0 * (p * p + p * q + q * q)

@@ -14,6 +14,7 @@
 //!
 //! Cost: the interior is read once ([`super::interior`]), the rest is linear in the cut cells.
 
+use std::num::NonZeroU32;
 use std::ops::Range;
 
 use crate::geometry::Point;
@@ -45,20 +46,34 @@ const FREE_WEIGHT: f64 = 1e-3;
 pub(super) fn upper_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<f64, ProofError> {
     let shift = [SHIFT[0] - 0.5, SHIFT[1] - 0.5];
     let cutting = |_| ProofError::Cutting { relative: 1.0 };
+    let t = std::time::Instant::now();
+    let tick = |what: &str| {
+        if std::env::var_os("PT").is_some() {
+            eprintln!("up {what} {:.3}", 1e3 * t.elapsed().as_secs_f64());
+        }
+    };
     let cut = cut_cells(lattice, shift).map_err(cutting)?;
+    tick("cut");
     let regions = cut.regions.iter();
     let moments: Vec<Moments> = regions
         .map(|region| region_moments(cut.polygons(region)))
         .collect();
     let mut flux = Flux::new(mask, phi, &cut);
+    tick("moments");
     let whole = flux.whole_cells();
+    tick("wholecells");
     check_area(
         lattice,
         whole as f64 + moments.iter().map(|m| m.area).sum::<f64>(),
     )?;
-    flux.set_up_sides(&shared_parts(&cut).map_err(cutting)?);
+    let shared = shared_parts(&cut).map_err(cutting)?;
+    tick("shared");
+    flux.set_up_sides(&shared);
+    tick("setup");
     let interior = flux.whole_energy();
+    tick("interior");
     flux.balance()?;
+    tick("balance");
     let at_wall: f64 = moments
         .iter()
         .enumerate()
@@ -103,26 +118,44 @@ struct Side {
     weight: f64,
 }
 
+/// Place of a side value of the band.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+struct Slot(NonZeroU32);
+
+impl Slot {
+    const FIRST: Self = Self(NonZeroU32::MIN);
+
+    fn new(index: usize) -> Self {
+        Self(NonZeroU32::MIN.saturating_add(index as u32))
+    }
+
+    fn index(self) -> usize {
+        self.0.get() as usize - 1
+    }
+}
+
 /// Where a side value of a cell comes from.
 #[derive(Debug, Clone, Copy)]
 enum Source {
     Fixed(f64),
-    Band(usize),
+    Band(Slot),
 }
 
 /// A whole cell of the band: where its sides come from, and how these vary along themselves.
 type BandCell = ([Source; 4], [f64; 4]);
 
-/// One cell's divergence: side values with their signs, and what the fixed sides give.
+/// One cell's divergence: its sides with values in the band, and what the fixed sides give.
 #[derive(Debug, Clone, Copy)]
 struct Equation {
-    terms: [Option<(usize, f64)>; 4],
+    slots: [Option<Slot>; 4],
     fixed: f64,
 }
 
 impl Equation {
+    /// Side values with the signs they enter with.
     fn terms(&self) -> impl Iterator<Item = (usize, f64)> {
-        self.terms.into_iter().flatten()
+        let sides = self.slots.into_iter().enumerate();
+        sides.filter_map(|(side, slot)| Some((slot?.index(), sign(side))))
     }
 }
 
@@ -132,7 +165,7 @@ struct Flux<'a> {
     cut: &'a CutCells,
     /// Side values of the band; sides of regions point here.
     sides: Vec<Side>,
-    region_sides: Vec<[usize; 4]>,
+    region_sides: Vec<[Slot; 4]>,
     band: Vec<BandCell>,
 }
 
@@ -147,7 +180,7 @@ impl<'a> Flux<'a> {
     fn new(mask: &'a Mask, phi: &'a Field, cut: &'a CutCells) -> Self {
         Self {
             mask,
-            nodal: NodalFlux { mask, phi },
+            nodal: NodalFlux::new(mask, phi),
             cut,
             sides: Vec::new(),
             region_sides: Vec::new(),
@@ -176,7 +209,7 @@ impl<'a> Flux<'a> {
         let mut slot_of = vec![usize::MAX; group.len()];
         for (index, region) in regions.iter().enumerate() {
             let (i, j) = region.cell;
-            let mut slots = [0; 4];
+            let mut slots = [Slot::FIRST; 4];
             for (side, slot) in slots.iter_mut().enumerate() {
                 let name = root(&mut group, 4 * index + side);
                 if slot_of[name] == usize::MAX {
@@ -191,14 +224,14 @@ impl<'a> Flux<'a> {
                         weight: FREE_WEIGHT + length,
                     });
                 }
-                *slot = slot_of[name];
+                *slot = Slot::new(slot_of[name]);
             }
             self.region_sides.push(slots);
         }
     }
 
     fn sides_of(&self, region: usize) -> [f64; 4] {
-        self.region_sides[region].map(|slot| self.sides[slot].value)
+        self.region_sides[region].map(|slot| self.sides[slot.index()].value)
     }
 
     /// The one region of a cut cell on a side that it shares with a whole cell.
@@ -327,7 +360,7 @@ impl<'a> Flux<'a> {
     fn read(&self, source: Source) -> f64 {
         match source {
             Source::Fixed(value) => value,
-            Source::Band(slot) => self.sides[slot].value,
+            Source::Band(slot) => self.sides[slot.index()].value,
         }
     }
 
@@ -341,18 +374,18 @@ impl<'a> Flux<'a> {
     /// Cells of the band as lists of (side value, sign), with what the fixed sides already give.
     fn equations(&self) -> Vec<Equation> {
         let of_regions = self.region_sides.iter().map(|slots| Equation {
-            terms: std::array::from_fn(|side| Some((slots[side], sign(side)))),
+            slots: slots.map(Some),
             fixed: 0.0,
         });
         let of_cells = self.band.iter().map(|(cell, _)| {
             let mut equation = Equation {
-                terms: [None; 4],
+                slots: [None; 4],
                 fixed: 0.0,
             };
             for (side, &source) in cell.iter().enumerate() {
                 match source {
                     Source::Fixed(value) => equation.fixed += sign(side) * value,
-                    Source::Band(slot) => equation.terms[side] = Some((slot, sign(side))),
+                    Source::Band(slot) => equation.slots[side] = Some(slot),
                 }
             }
             equation
@@ -383,22 +416,25 @@ impl<'a> Flux<'a> {
 
     /// The system for the multipliers of the equations: two are joined by each side they have in common.
     fn least_squares(&self, equations: &[Equation]) -> Elimination {
-        let mut at_side: Vec<Vec<(u32, f64)>> = vec![Vec::new(); self.sides.len()];
+        // Equations at each side as a chain: the last one, and from each term to the one before.
+        let mut last = vec![u32::MAX; self.sides.len()];
+        let mut terms: Vec<(u32, u32, f64)> = Vec::with_capacity(4 * equations.len());
         let mut diagonal = vec![0.0; equations.len()];
-        let mut rows: Vec<Vec<(u32, f64)>> = vec![Vec::new(); equations.len()];
+        let mut pairs = Vec::with_capacity(2 * equations.len());
         for (cell, equation) in equations.iter().enumerate() {
             for (slot, coefficient) in equation.terms() {
                 let weight = self.sides[slot].weight;
                 diagonal[cell] += coefficient * coefficient / weight;
-                for &(other, factor) in &at_side[slot] {
-                    let entry = coefficient * factor / weight;
-                    rows[cell].push((other, entry));
-                    rows[other as usize].push((cell as u32, entry));
+                let mut before = last[slot];
+                while let Some(&(other, next, factor)) = terms.get(before as usize) {
+                    pairs.push((other, cell as u32, coefficient * factor / weight));
+                    before = next;
                 }
-                at_side[slot].push((cell as u32, coefficient));
+                terms.push((cell as u32, last[slot], coefficient));
+                last[slot] = terms.len() as u32 - 1;
             }
         }
-        Elimination::new(diagonal, rows)
+        Elimination::new(diagonal, &pairs)
     }
 
     fn divergence(&self, equation: &Equation) -> f64 {

@@ -171,8 +171,8 @@ pub(super) fn feet(cut: &CutCells, value_at: impl Fn((i64, i64)) -> Option<f64>)
                 .and_then(|_| value_at(corner_place(region.cell, corner)))
                 .unwrap_or(0.0)
         });
-        let steepest = steepest(region, boundary, values);
         let is_wall = |k: &usize| !region.corners.contains(&Some(*k as u32));
+        let mut limit: Option<f64> = None;
         for &(side, low, length) in cut.sides(region) {
             let [first, last] = ends(side);
             let at_end = |corner: usize, is_end: bool| if is_end { values[corner] } else { 0.0 };
@@ -180,21 +180,25 @@ pub(super) fn feet(cut: &CutCells, value_at: impl Fn((i64, i64)) -> Option<f64>)
                 at_end(first, low < 1e-12),
                 at_end(last, low + length > 1.0 - 1e-12),
             );
-            let excess = |k: usize| {
+            let slope = |k: usize| {
                 let (along, away) = along_and_away(side, boundary[k]);
                 if !(1e-12..NEAR).contains(&away) {
                     return None;
                 }
                 let t = (along - low) / length;
                 let is_beside = (1e-6..=1.0 - 1e-6).contains(&t);
-                let slope = (from + t * (to - from)) / away;
-                (is_beside && slope > STEEP * steepest).then_some((slope, along))
+                is_beside.then_some(((from + t * (to - from)) / away, along))
             };
             let worst = (0..boundary.len())
-                .filter(is_wall)
-                .filter_map(excess)
+                .filter_map(|k| Some((k, slope(k)?)))
+                .filter(|(k, _)| is_wall(k))
+                .map(|(_, found)| found)
                 .max_by(|a, b| a.0.total_cmp(&b.0));
-            if let Some((_, along)) = worst {
+            let Some((slope, along)) = worst else {
+                continue;
+            };
+            let limit = *limit.get_or_insert_with(|| STEEP * steepest(region, boundary, values));
+            if slope > limit {
                 found
                     .entry(face(region.cell, side))
                     .or_default()

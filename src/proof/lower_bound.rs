@@ -34,35 +34,22 @@ const SHIFT: [f64; 2] = [1.37e-7, 2.11e-7];
 
 /// A lower bound for the conductance; arguments and unit as in [`super::upper_bound`].
 pub(super) fn lower_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<f64, ProofError> {
-    let t = std::time::Instant::now();
-    let tick = |what: &str| {
-        if std::env::var_os("PT").is_some() {
-            eprintln!("low {what} {:.3}", 1e3 * t.elapsed().as_secs_f64());
-        }
-    };
     let cut = cut_cells(lattice, SHIFT).map_err(|_| ProofError::Cutting { relative: 1.0 })?;
-    tick("cut");
     let value_at =
         |(i, j): (i64, i64)| phi.at(mask, u32::try_from(i).ok()?, u32::try_from(j).ok()?);
     let number = |(i, j): (i64, i64)| natural_at(mask, i, j);
     let feet = feet(&cut, value_at);
-    tick("feet");
     let polygons = polygons(&cut, &feet, number);
-    tick("polygons");
     if !agree(&polygons) {
         return Err(ProofError::Discontinuous);
     }
-    tick("agree");
     // Whole squares that are divided because of a foot.
     let foot_squares = polygons.len() - cut.regions.len();
     let divided = CellRows::new(polygons.iter().map(|polygon| polygon.cell));
     let whole = WholeSquares::new(mask, phi, &divided);
-    tick("whole");
     check_area(lattice, cut.area() + (whole.count + foot_squares) as f64)?;
     let mut near_wall = NearWall::new(mask, phi, &polygons, &whole.near_wall);
-    tick("nearnew");
     near_wall.improve();
-    tick("improve");
     let [volume, energy] = near_wall.integrals();
     let (volume, energy) = (whole.volume + volume, whole.energy + energy);
     if energy > 0.0 {

@@ -133,15 +133,16 @@ impl Division {
         for gap in 2..n {
             for i in 0..n - gap {
                 let j = i + gap;
-                for k in i + 1..j {
+                let costs = Costs::new(&polygon[i], &polygon[j]);
+                let mut least = (f64::INFINITY, 0);
+                for (k, third) in polygon.iter().enumerate().take(j).skip(i + 1) {
                     let parts = best[i * n + k].0 + best[k * n + j].0;
-                    if parts.is_finite()
-                        && let Some(own) = cost([&polygon[i], &polygon[k], &polygon[j]])
-                        && parts + own < best[i * n + j].0
-                    {
-                        best[i * n + j] = (parts + own, k);
+                    let whole = parts + costs.of(third);
+                    if whole < least.0 {
+                        least = (whole, k);
                     }
                 }
+                best[i * n + j] = least;
             }
         }
         if !best[n - 1].0.is_finite() {
@@ -179,21 +180,14 @@ impl Division {
         best[0].0 = 0.0;
         for i in 0..wall {
             for j in 0..nodes {
-                let step = |from: f64, corners: [usize; 3]| {
-                    let own = from
-                        .is_finite()
-                        .then(|| cost(corners.map(|k| &polygon[k])))
-                        .flatten();
-                    own.map_or(f64::INFINITY, |own| from + own)
-                };
-                let along_wall = match i.checked_sub(1) {
-                    Some(i0) => step(best[i0 * nodes + j].0, [wall_at(i), wall_at(i0), j]),
-                    None => f64::INFINITY,
-                };
-                let along_nodes = match j.checked_sub(1) {
-                    Some(j0) => step(best[i * nodes + j0].0, [wall_at(i), j0, j]),
-                    None => f64::INFINITY,
-                };
+                let own =
+                    |[a, b, c]: [usize; 3]| Costs::new(&polygon[a], &polygon[c]).of(&polygon[b]);
+                let along_wall = i.checked_sub(1).map_or(f64::INFINITY, |i0| {
+                    best[i0 * nodes + j].0 + own([wall_at(i), wall_at(i0), j])
+                });
+                let along_nodes = j.checked_sub(1).map_or(f64::INFINITY, |j0| {
+                    best[i * nodes + j0].0 + own([wall_at(i), j0, j])
+                });
                 if (i, j) != (0, 0) {
                     let is_along_wall = usize::from(along_wall <= along_nodes);
                     best[i * nodes + j] = (along_wall.min(along_nodes), is_along_wall);
@@ -236,25 +230,47 @@ fn without_pockets(polygon: &[Vertex]) -> Vec<Vertex> {
     kept
 }
 
-/// Energy against volume of a triangle; `None` where it is flat or turned over.
-fn cost(corners: [&Vertex; 3]) -> Option<f64> {
-    let [a, b, c] = corners;
-    let size = area([a.at, b.at, c.at]);
-    if corners.iter().all(|c| c.node.is_none()) {
-        return (size > -FLAT).then_some(0.0);
+/// Energy against volume of the triangles on one edge of a polygon.
+struct Costs<'a> {
+    from: &'a Vertex,
+    /// The other end against the first one.
+    step: Point,
+    rise: f64,
+    has_node: bool,
+}
+
+impl<'a> Costs<'a> {
+    fn new(from: &'a Vertex, to: &Vertex) -> Self {
+        Self {
+            from,
+            step: [to.at[0] - from.at[0], to.at[1] - from.at[1]],
+            rise: to.value - from.value,
+            has_node: from.node.is_some() || to.node.is_some(),
+        }
     }
-    if size <= FLAT {
-        return None;
+
+    /// Cost of the triangle from the first end to a vertex to the other end; infinite where it is flat or turned
+    /// over.
+    fn of(&self, third: &Vertex) -> f64 {
+        let [dx, dy] = self.step;
+        let (x, y) = (third.at[0] - self.from.at[0], third.at[1] - self.from.at[1]);
+        let twice = x * dy - y * dx;
+        if !self.has_node && third.node.is_none() {
+            return if 0.5 * twice > -FLAT {
+                0.0
+            } else {
+                f64::INFINITY
+            };
+        }
+        if 0.5 * twice <= FLAT {
+            return f64::INFINITY;
+        }
+        let rise = third.value - self.from.value;
+        // The gradient times twice the area.
+        let gradient = [rise * dy - self.rise * y, self.rise * x - rise * dx];
+        let sum = 3.0 * self.from.value + self.rise + rise;
+        (gradient[0] * gradient[0] + gradient[1] * gradient[1]) / (2.0 * twice) - twice * sum / 3.0
     }
-    // The gradient times twice the area.
-    let x = a.value * (b.at[1] - c.at[1])
-        + b.value * (c.at[1] - a.at[1])
-        + c.value * (a.at[1] - b.at[1]);
-    let y = a.value * (c.at[0] - b.at[0])
-        + b.value * (a.at[0] - c.at[0])
-        + c.value * (b.at[0] - a.at[0]);
-    let volume = size * (a.value + b.value + c.value) / 3.0;
-    Some((x * x + y * y) / (4.0 * size) - 2.0 * volume)
 }
 
 #[cfg(test)]

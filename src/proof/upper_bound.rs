@@ -46,34 +46,21 @@ const FREE_WEIGHT: f64 = 1e-3;
 pub(super) fn upper_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<f64, ProofError> {
     let shift = [SHIFT[0] - 0.5, SHIFT[1] - 0.5];
     let cutting = |_| ProofError::Cutting { relative: 1.0 };
-    let t = std::time::Instant::now();
-    let tick = |what: &str| {
-        if std::env::var_os("PT").is_some() {
-            eprintln!("up {what} {:.3}", 1e3 * t.elapsed().as_secs_f64());
-        }
-    };
     let cut = cut_cells(lattice, shift).map_err(cutting)?;
-    tick("cut");
     let regions = cut.regions.iter();
     let moments: Vec<Moments> = regions
         .map(|region| region_moments(cut.polygons(region)))
         .collect();
     let mut flux = Flux::new(mask, phi, &cut);
-    tick("moments");
     let whole = flux.whole_cells();
-    tick("wholecells");
     check_area(
         lattice,
         whole as f64 + moments.iter().map(|m| m.area).sum::<f64>(),
     )?;
     let shared = shared_parts(&cut).map_err(cutting)?;
-    tick("shared");
     flux.set_up_sides(&shared);
-    tick("setup");
     let interior = flux.whole_energy();
-    tick("interior");
     flux.balance()?;
-    tick("balance");
     let at_wall: f64 = moments
         .iter()
         .enumerate()

@@ -50,10 +50,8 @@ impl Piece {
     }
 
     fn order(&self, other: &Self) -> Ordering {
-        let by_side = self.side.cmp(&other.side);
-        by_side
-            .then(self.ends[0].total_cmp(&other.ends[0]))
-            .then(self.ends[1].total_cmp(&other.ends[1]))
+        let by_low = self.ends[0].total_cmp(&other.ends[0]);
+        by_low.then(self.ends[1].total_cmp(&other.ends[1]))
     }
 
     fn is_whole_side(&self) -> bool {
@@ -305,18 +303,17 @@ pub(super) fn agree(polygons: &[Polygon]) -> bool {
     // Pieces of each square, by side and along it.
     let mut pieces: Vec<Piece> = Vec::with_capacity(4 * polygons.len());
     let mut starts: Vec<[usize; 5]> = Vec::with_capacity(rows.cells().len());
+    let mut of_cell = Vec::new();
     for cell in 0..rows.cells().len() {
-        let from = pieces.len();
+        of_cell.clear();
         for polygon in &polygons[rows.items(cell)] {
-            polygon.add_side_pieces(&mut pieces);
+            polygon.add_side_pieces(&mut of_cell);
         }
-        pieces[from..].sort_by(Piece::order);
-        let mut ends = [from; 5];
-        for piece in &pieces[from..] {
-            ends[piece.side + 1] += 1;
-        }
+        let mut ends = [pieces.len(); 5];
         for side in 0..4 {
-            ends[side + 1] += ends[side] - from;
+            pieces.extend(of_cell.iter().filter(|piece| piece.side == side));
+            ends[side + 1] = pieces.len();
+            pieces[ends[side]..].sort_by(Piece::order);
         }
         starts.push(ends);
     }

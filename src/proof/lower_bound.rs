@@ -22,7 +22,7 @@ use crate::solve::Field;
 
 use super::cut_polygon::{agree, feet, polygons};
 use super::interior::{bubble, squares};
-use super::near_wall::{NearWall, WholeSquare};
+use super::near_wall::{NONE, NearWall, WholeSquare};
 use super::row_values::{RowValues, by_blocks};
 use super::square_energy::Square;
 use super::upper_bound::check_area;
@@ -37,7 +37,7 @@ pub(super) fn lower_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result
     let cut = cut_cells(lattice, SHIFT).map_err(|_| ProofError::Cutting { relative: 1.0 })?;
     let value_at =
         |(i, j): (i64, i64)| phi.at(mask, u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-    let number = |(i, j): (i64, i64)| natural_at(mask, i, j);
+    let number = |(i, j): (i64, i64)| natural_at(mask, i, j).map(|n| n as usize);
     let feet = feet(&cut, value_at);
     let polygons = polygons(&cut, &feet, number);
     if !agree(&polygons) {
@@ -146,7 +146,7 @@ fn near_square(mask: &Mask, nodes: &RowValues, place: (i64, i64, Around)) -> Who
     let (i, j, around) = place;
     let corners = [(i, j), (i + 1, j), (i + 1, j + 1), (i, j + 1)];
     WholeSquare {
-        nodes: corners.map(|(i, j)| natural_at(mask, i, j)),
+        nodes: corners.map(|(i, j)| natural_at(mask, i, j).unwrap_or(NONE)),
         bubbles: square(nodes, i, j, |di, dj| around.has(di, dj)).bubbles,
     }
 }
@@ -202,7 +202,6 @@ fn take_first<'a, T>(list: &mut &'a [T]) -> Option<&'a T> {
 }
 
 /// Row-by-row number of the fluid node `(i, j)`.
-fn natural_at(mask: &Mask, i: i64, j: i64) -> Option<usize> {
-    let (i, j) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-    mask.natural_at(i, j).map(|n| n as usize)
+fn natural_at(mask: &Mask, i: i64, j: i64) -> Option<u32> {
+    mask.natural_at(u32::try_from(i).ok()?, u32::try_from(j).ok()?)
 }

@@ -17,13 +17,13 @@ const ROUNDS: usize = 2;
 /// Times each value is improved in a round.
 const SWEEPS: usize = 3;
 /// Marks a corner that is not a fluid node.
-const NONE: u32 = u32::MAX;
+pub(super) const NONE: u32 = u32::MAX;
 
 /// A square that the wall does not cut but that has a divided one around it.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct WholeSquare {
-    /// Row-by-row numbers of its corners, anticlockwise from the lower left.
-    pub(super) nodes: [Option<usize>; 4],
+    /// Row-by-row numbers of its corners, anticlockwise from the lower left; [`NONE`] where not fluid.
+    pub(super) nodes: [u32; 4],
     /// Its bubbles, fixed.
     pub(super) bubbles: [f64; 4],
 }
@@ -105,14 +105,14 @@ impl<'a> NearWall<'a> {
         polygons: &'a [Polygon],
         squares: &'a [WholeSquare],
     ) -> Self {
-        let corners: Vec<[Option<usize>; 4]> = polygons.iter().map(Polygon::nodes).collect();
+        let corners: Vec<[u32; 4]> = polygons.iter().map(node_numbers).collect();
         let all = corners
             .iter()
             .chain(squares.iter().map(|square| &square.nodes));
-        let numbering = Numbering::new(mask.nodes(), all.flatten().copied().flatten());
-        let renumbered = |nodes: &[Option<usize>; 4]| {
-            nodes.map(|n| n.and_then(|n| numbering.of(n)).unwrap_or(NONE))
-        };
+        let fluid = all.flatten().filter(|&&node| node != NONE);
+        let numbering = Numbering::new(mask.nodes(), fluid.map(|&node| node as usize));
+        let renumbered =
+            |nodes: &[u32; 4]| nodes.map(|node| numbering.of(node as usize).unwrap_or(NONE));
         let polygon_nodes: Vec<[u32; 4]> = corners.iter().map(renumbered).collect();
         let values = numbering.values(mask, phi);
         let mut near_wall = Self {
@@ -242,6 +242,11 @@ impl<'a> NearWall<'a> {
         }
         sum
     }
+}
+
+/// Row-by-row numbers of the nodes of a polygon, by corner of its square.
+fn node_numbers(polygon: &Polygon) -> [u32; 4] {
+    polygon.nodes().map(|node| node.map_or(NONE, |n| n as u32))
 }
 
 /// Number in [`Row::around`] of one corner of a square, second, seen from another, first.

@@ -160,7 +160,7 @@ fn cells_across(mask: &Mask, at: Point) -> u32 {
 
 /// Tiles that hold fluid, in order of row and column.
 struct Tiles {
-    tiles: Vec<Tile>,
+    sums: Vec<Tile>,
     spans: Vec<Span>,
     /// First span of each row of tiles, and their number at the end.
     row_start: Vec<usize>,
@@ -177,7 +177,7 @@ struct Span {
 impl Tiles {
     fn new(mask: &Mask) -> Self {
         let mut found = Self {
-            tiles: Vec::new(),
+            sums: Vec::new(),
             spans: Vec::new(),
             row_start: vec![0],
         };
@@ -190,7 +190,7 @@ impl Tiles {
                 stretches.extend(runs.map(|run| [run.first / TILE, run.end().div_ceil(TILE)]));
             }
             // The runs of each line are in order already.
-            stretches.sort();
+            stretches.sort_unstable();
             for &stretch in &stretches {
                 found.add_stretch(row, stretch);
             }
@@ -205,25 +205,19 @@ impl Tiles {
             .row_start
             .last()
             .is_some_and(|&first| first < self.spans.len());
-        match self
-            .spans
-            .last_mut()
-            .filter(|span| open && from <= span.columns[1])
-        {
-            Some(span) => {
-                let added = span.columns[1]..to.max(span.columns[1]);
-                span.columns[1] = added.end;
-                self.tiles.extend(added.map(|column| ((row, column), 0.0)));
-            }
-            None => {
-                self.spans.push(Span {
-                    columns: [from, to],
-                    place: self.tiles.len(),
-                });
-                self.tiles
-                    .extend((from..to).map(|column| ((row, column), 0.0)));
-            }
-        }
+        let spans = self.spans.last_mut();
+        let added = if let Some(span) = spans.filter(|span| open && from <= span.columns[1]) {
+            let added = span.columns[1]..to.max(span.columns[1]);
+            span.columns[1] = added.end;
+            added
+        } else {
+            self.spans.push(Span {
+                columns: [from, to],
+                place: self.sums.len(),
+            });
+            from..to
+        };
+        self.sums.extend(added.map(|column| ((row, column), 0.0)));
     }
 
     /// Adds values on nodes of one row, two columns apart from column `i` on.
@@ -239,7 +233,7 @@ impl Tiles {
             return;
         };
         let first = span.columns[0];
-        let Some(tiles) = self.tiles.get_mut(span.place..) else {
+        let Some(tiles) = self.sums.get_mut(span.place..) else {
             return;
         };
         for (k, value) in values.iter().enumerate() {
@@ -291,7 +285,7 @@ fn tiles(mask: &Mask, phi: &Field) -> Vec<Tile> {
             found.add(w.i, w.j, &[second[0] * second[0] + second[1] * second[1]]);
         }
     }
-    found.tiles
+    found.sums
 }
 
 /// Second derivatives along both axes at a wall node.

@@ -113,7 +113,7 @@ impl CellRows {
         loop {
             let mut around = 0;
             let mut next = i64::MAX;
-            for (k, cells) in rows.iter_mut().enumerate() {
+            for (first_bit, cells) in [0, 3, 6].into_iter().zip(&mut rows) {
                 while cells.first().is_some_and(|c| c.0 < column - 1) {
                     *cells = &cells[1..];
                 }
@@ -122,7 +122,7 @@ impl CellRows {
                     if step > 1 {
                         break;
                     }
-                    around |= 1 << (3 * k as i64 + step + 1);
+                    around |= 1 << (first_bit + step + 1);
                 }
                 next = next.min(cells.first().map_or(i64::MAX, |c| c.0));
             }

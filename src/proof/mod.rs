@@ -26,6 +26,7 @@
 //! once, by parts in 1e16 of the coordinates.
 
 mod cell_energy;
+mod cell_sides;
 mod cut_polygon;
 mod elimination;
 mod interior;

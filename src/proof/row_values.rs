@@ -13,6 +13,8 @@ use crate::solve::Field;
 /// Fluid nodes in a block, about. Sums are made block by block and then added in order, so that they do not
 /// depend on the number of threads.
 const BLOCK_NODES: usize = 16_384;
+/// Rows in a block at least: the rows around it are copied as well.
+const BLOCK_ROWS: i64 = 4;
 /// Fluid nodes from which blocks are shared out over threads.
 const PARALLEL_NODES: usize = 120_000;
 
@@ -26,11 +28,13 @@ pub(super) fn by_blocks<T: Send>(
 ) -> Vec<T> {
     let mut blocks: Vec<Range<i64>> = Vec::new();
     let (mut from, mut nodes) = (first, 0);
-    for row in 0..mask.rows() {
-        let runs = mask.row(row as u32);
-        nodes += runs.iter().map(|run| run.len as usize).sum::<usize>();
-        let end = row as i64 + 1;
-        if nodes >= BLOCK_NODES || row + 1 == mask.rows() {
+    let rows = u32::try_from(mask.rows()).unwrap_or(u32::MAX);
+    for row in 0..rows {
+        let runs = mask.row(row).iter();
+        nodes += runs.map(|run| run.len as usize).sum::<usize>();
+        let end = i64::from(row) + 1;
+        let is_full = nodes >= BLOCK_NODES && end - from >= BLOCK_ROWS;
+        if is_full || row + 1 == rows {
             blocks.push(from..end);
             (from, nodes) = (end, 0);
         }
@@ -80,7 +84,7 @@ impl<'a> RowValues<'a> {
     /// the wall lies between them.
     pub(super) fn line(&self, i: i64, j: i64, n: usize) -> Option<&[f64]> {
         let run = self.run_at(i, j)?;
-        if i + n as i64 > i64::from(run.end()) {
+        if usize::try_from(i64::from(run.end()) - i).ok()? < n {
             return None;
         }
         let number = run.natural as usize + (i - i64::from(run.first)) as usize;
@@ -95,10 +99,11 @@ impl<'a> RowValues<'a> {
 
     /// Values of neighbouring places of row `j` from column `i` on, `None` outside the fluid.
     pub(super) fn places<const N: usize>(&self, i: i64, j: i64) -> [Option<f64>; N] {
-        match self.line(i, j, N) {
-            Some(line) => std::array::from_fn(|k| line.get(k).copied()),
-            None => std::array::from_fn(|k| self.at(i + k as i64, j)),
+        if let Some(line) = self.line(i, j, N) {
+            return std::array::from_fn(|k| line.get(k).copied());
         }
+        let mut columns = i..;
+        std::array::from_fn(|_| columns.next().and_then(|column| self.at(column, j)))
     }
 }
 

@@ -8,6 +8,7 @@ use crate::grid::Mask;
 use crate::solve::Field;
 
 use super::cut_polygon::{Polygon, corner_at};
+use super::interior::sum_in_groups;
 use super::numbering::Numbering;
 use super::square_energy::{COUPLINGS, Square};
 use super::triangulation::{Division, Triangle, Vertex};
@@ -50,6 +51,17 @@ impl Share {
                 }
             }
         }
+    }
+
+    /// Integrals of `v` and `abs(grad v)^2` for given values.
+    fn at(&self, values: [f64; 4]) -> [f64; 2] {
+        let (mut volume, mut energy) = (0.0, 0.0);
+        for (a, value) in values.iter().enumerate() {
+            volume += self.volume[a] * value;
+            let couplings = self.energy[a].iter().zip(values);
+            energy += value * couplings.map(|(e, v)| e * v).sum::<f64>();
+        }
+        [volume, energy]
     }
 }
 
@@ -223,24 +235,17 @@ impl<'a> NearWall<'a> {
         let at = |nodes: &[u32; 4]| {
             nodes.map(|node| self.values.get(node as usize).copied().unwrap_or(0.0))
         };
-        let mut sum = [0.0; 2];
-        for (share, nodes) in self.shares.iter().zip(&self.polygon_nodes) {
-            let values = at(nodes);
-            for (a, value) in values.iter().enumerate() {
-                sum[0] += share.volume[a] * value;
-                let slope: f64 = share.energy[a].iter().zip(values).map(|(e, v)| e * v).sum();
-                sum[1] += value * slope;
-            }
-        }
-        for (square, nodes) in self.squares.iter().zip(&self.square_nodes) {
+        let shares = self.shares.iter().zip(&self.polygon_nodes);
+        let divided = sum_in_groups(shares.map(|(share, nodes)| share.at(at(nodes))));
+        let squares = self.squares.iter().zip(&self.square_nodes);
+        let whole = sum_in_groups(squares.map(|(square, nodes)| {
             let square = Square {
                 corners: at(nodes),
                 bubbles: square.bubbles,
             };
-            sum[0] += square.volume();
-            sum[1] += square.energy();
-        }
-        sum
+            [square.volume(), square.energy()]
+        }));
+        [divided[0] + whole[0], divided[1] + whole[1]]
     }
 }
 

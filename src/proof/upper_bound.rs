@@ -24,7 +24,7 @@ use crate::solve::Field;
 use super::cell_energy::{Moments, energy, region_moments, whole_energy};
 use super::cell_sides::{NodesAround, balanced_cell, plain_cell, side_towards, sign};
 use super::elimination::Elimination;
-use super::interior::cells;
+use super::interior::{cells, sum_in_groups};
 use super::nodal_flux::NodalFlux;
 use super::row_values::{RowValues, by_blocks};
 use super::{ProofError, ROUNDING};
@@ -60,11 +60,8 @@ pub(super) fn upper_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result
     flux.set_up_sides(&shared);
     let interior = flux.whole_energy();
     flux.balance()?;
-    let at_wall: f64 = moments
-        .iter()
-        .enumerate()
-        .map(|(index, m)| energy(flux.sides_of(index), m))
-        .sum();
+    let regions = moments.iter().enumerate();
+    let [at_wall] = sum_in_groups(regions.map(|(index, m)| [energy(flux.sides_of(index), m)]));
     Ok((interior + flux.band_energy() + at_wall) * (1.0 + ROUNDING))
 }
 
@@ -342,10 +339,10 @@ impl<'a> Flux<'a> {
     }
 
     fn band_energy(&self) -> f64 {
-        self.band
-            .iter()
-            .map(|(cell, along)| whole_energy(cell.map(|source| self.read(source)), *along))
-            .sum()
+        let cells = self.band.iter();
+        let energy = cells.map(|(cell, along)| whole_energy(cell.map(|s| self.read(s)), *along));
+        let [sum] = sum_in_groups(energy.map(|energy| [energy]));
+        sum
     }
 
     /// Cells of the band as lists of (side value, sign), with what the fixed sides already give.

@@ -162,6 +162,8 @@ fn the_result_is_the_same_to_the_last_bit_for_any_number_of_threads() {
     );
     for other in [two, four] {
         assert_eq!(one.conductance, other.conductance);
+        assert_eq!(one.bracket.unwrap(), other.bracket.unwrap());
+        assert_eq!(one.accuracy.source, other.accuracy.source);
         assert_eq!(one.wall_shear, other.wall_shear);
         assert_eq!(one.peak, other.peak);
     }

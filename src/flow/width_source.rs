@@ -158,19 +158,101 @@ fn cells_across(mask: &Mask, at: Point) -> u32 {
     (run.len).min((up + down) as u32) + 1
 }
 
+/// Tiles that hold fluid, in order of row and column.
+struct Tiles {
+    sums: Vec<Tile>,
+    spans: Vec<Span>,
+    /// First span of each row of tiles, and their number at the end.
+    row_start: Vec<usize>,
+}
+
+/// Neighbouring tiles of a row of tiles.
+struct Span {
+    /// First column of tiles, and the one after the last.
+    columns: [u32; 2],
+    /// Place of the first one among all tiles.
+    place: usize,
+}
+
+impl Tiles {
+    fn new(mask: &Mask) -> Self {
+        let mut found = Self {
+            sums: Vec::new(),
+            spans: Vec::new(),
+            row_start: vec![0],
+        };
+        let rows = u32::try_from(mask.rows()).unwrap_or(u32::MAX);
+        let mut stretches: Vec<[u32; 2]> = Vec::new();
+        for row in 0..rows.div_ceil(TILE) {
+            stretches.clear();
+            for j in row * TILE..rows.min((row + 1) * TILE) {
+                let runs = mask.row(j).iter();
+                stretches.extend(runs.map(|run| [run.first / TILE, run.end().div_ceil(TILE)]));
+            }
+            // The runs of each line are in order already.
+            stretches.sort_unstable();
+            for &stretch in &stretches {
+                found.add_stretch(row, stretch);
+            }
+            found.row_start.push(found.spans.len());
+        }
+        found
+    }
+
+    /// Adds tiles of a row that begin at or after the first one of the span before.
+    fn add_stretch(&mut self, row: u32, [from, to]: [u32; 2]) {
+        let open = self
+            .row_start
+            .last()
+            .is_some_and(|&first| first < self.spans.len());
+        let spans = self.spans.last_mut();
+        let added = if let Some(span) = spans.filter(|span| open && from <= span.columns[1]) {
+            let added = span.columns[1]..to.max(span.columns[1]);
+            span.columns[1] = added.end;
+            added
+        } else {
+            self.spans.push(Span {
+                columns: [from, to],
+                place: self.sums.len(),
+            });
+            from..to
+        };
+        self.sums.extend(added.map(|column| ((row, column), 0.0)));
+    }
+
+    /// Adds values on nodes of one row, two columns apart from column `i` on.
+    fn add(&mut self, i: u32, j: u32, values: &[f64]) {
+        let row = (j / TILE) as usize;
+        let spans = self
+            .row_start
+            .get(row..row + 2)
+            .and_then(|r| self.spans.get(r[0]..r[1]));
+        let spans = spans.unwrap_or(&[]);
+        let after = spans.partition_point(|span| span.columns[1] <= i / TILE);
+        let Some(span) = spans.get(after).filter(|span| span.columns[0] <= i / TILE) else {
+            return;
+        };
+        let first = span.columns[0];
+        let Some(tiles) = self.sums.get_mut(span.place..) else {
+            return;
+        };
+        for (k, value) in values.iter().enumerate() {
+            let column = (i + 2 * k as u32) / TILE - first;
+            if let Some(tile) = tiles.get_mut(column as usize) {
+                tile.1 += value;
+            }
+        }
+    }
+}
+
 /// Sums of the squares by tile, in order of row and column.
 fn tiles(mask: &Mask, phi: &Field) -> Vec<Tile> {
-    let mut found: Vec<Tile> = Vec::new();
+    let mut found = Tiles::new(mask);
+    // Second derivatives on the nodes of a segment, and the squares of their changes.
+    let (mut second, mut squares) = (Vec::new(), Vec::new());
     for colour in [Colour::Even, Colour::Odd] {
         let own = &phi.colour[colour as usize];
         let other = &phi.colour[colour.other() as usize];
-        let mut add = |i: u32, j: u32, value: f64| {
-            let tile = (j / TILE, i / TILE);
-            match found.last_mut() {
-                Some(last) if last.0 == tile => last.1 += value,
-                _ => found.push((tile, value)),
-            }
-        };
         for s in &mask.segments[colour as usize] {
             let n = s.len as usize;
             let at = |from: u32, more: usize| other.get(from as usize..from as usize + n + more);
@@ -182,32 +264,28 @@ fn tiles(mask: &Mask, phi: &Field) -> Vec<Tile> {
             ) else {
                 continue;
             };
-            let mut before: Option<[f64; 2]> = None;
-            for k in 0..n {
-                let xx = side[k] + side[k + 1] - 2.0 * centre[k];
-                let yy = down[k] + up[k] - 2.0 * centre[k];
-                // The nodes of one colour are two cells apart.
-                let [dx, dy] = before.map_or([0.0; 2], |[x, y]| [0.5 * (xx - x), 0.5 * (yy - y)]);
-                before = Some([xx, yy]);
-                add(s.i + 2 * k as u32, s.j, dx * dx + dy * dy);
-            }
+            second.clear();
+            let lines = centre.iter().zip(side.windows(2)).zip(down.iter().zip(up));
+            second.extend(lines.map(|((centre, side), (down, up))| {
+                [side[0] + side[1] - 2.0 * centre, down + up - 2.0 * centre]
+            }));
+            squares.clear();
+            squares.push(0.0);
+            // The nodes of one colour are two cells apart.
+            squares.extend(second.windows(2).map(|pair: &[[f64; 2]]| {
+                let [dx, dy] = [0, 1].map(|axis: usize| 0.5 * (pair[1][axis] - pair[0][axis]));
+                dx * dx + dy * dy
+            }));
+            found.add(s.i, s.j, &squares);
         }
         for w in &mask.wall[colour as usize] {
             let second = own
                 .get(w.node as usize)
                 .map_or([0.0; 2], |&value| at_wall(w, value, other));
-            add(w.i, w.j, second[0] * second[0] + second[1] * second[1]);
+            found.add(w.i, w.j, &[second[0] * second[0] + second[1] * second[1]]);
         }
     }
-    found.sort_unstable_by_key(|t| t.0);
-    found.dedup_by(|later, first| {
-        let same = later.0 == first.0;
-        if same {
-            first.1 += later.1;
-        }
-        same
-    });
-    found
+    found.sums
 }
 
 /// Second derivatives along both axes at a wall node.

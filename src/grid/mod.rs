@@ -1,5 +1,6 @@
 //! From an outline to a masked square grid: which nodes are fluid, and how far their arms reach.
 
+mod cell_rows;
 mod coverage;
 mod crossings;
 mod cut_cell;
@@ -8,9 +9,12 @@ mod mask;
 mod resolution;
 mod runs;
 
+pub(crate) use cell_rows::{Around, CellRows};
 pub(crate) use coverage::coverage;
 pub use crossings::{Crossing, LineCrossings};
-pub(crate) use cut_cell::{EAST, NORTH, Region, SOUTH, WEST, cut_cells, shared_parts, signed_area};
+pub(crate) use cut_cell::{
+    CORNERS, CutCells, EAST, NORTH, Region, SOUTH, WEST, cut_cells, shared_parts,
+};
 pub use lattice::{Lattice, WallEdge};
 pub use mask::{
     ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, NO_EDGE, NO_NODE, RowStart, Run, Segment,

@@ -1,7 +1,7 @@
 //! Integrals of the squared flux of the upper bound over whole and cut cells.
 
 use crate::geometry::Point;
-use crate::grid::{EAST, NORTH, Region, SOUTH, WEST, signed_area};
+use crate::grid::{EAST, NORTH, SOUTH, WEST};
 
 /// Integrals over one region in cell coordinates.
 #[derive(Debug, Clone, Copy)]
@@ -11,25 +11,33 @@ pub(super) struct Moments {
     second: Point,
 }
 
-pub(super) fn region_moments(region: &Region) -> Moments {
+/// - `polygons`: outer boundary and holes of the region, fluid on the left
+pub(super) fn region_moments<'a>(polygons: impl Iterator<Item = &'a [Point]>) -> Moments {
     let mut m = Moments {
         area: 0.0,
         first: [0.0; 2],
         second: [0.0; 2],
     };
-    for polygon in &region.boundary {
-        m.area += signed_area(polygon);
-        let next = polygon.iter().cycle().skip(1);
-        for (a, b) in polygon.iter().zip(next) {
+    for polygon in polygons {
+        let Some(mut a) = polygon.last() else {
+            continue;
+        };
+        for b in polygon {
             let cross = a[0] * b[1] - a[1] * b[0];
+            m.area += cross;
             for axis in 0..2 {
-                m.first[axis] += cross * (a[axis] + b[axis]) / 6.0;
+                m.first[axis] += cross * (a[axis] + b[axis]);
                 m.second[axis] +=
-                    cross * (a[axis] * a[axis] + a[axis] * b[axis] + b[axis] * b[axis]) / 12.0;
+                    cross * (a[axis] * a[axis] + a[axis] * b[axis] + b[axis] * b[axis]);
             }
+            a = b;
         }
     }
-    m
+    Moments {
+        area: m.area / 2.0,
+        first: m.first.map(|v| v / 6.0),
+        second: m.second.map(|v| v / 12.0),
+    }
 }
 
 /// Integral of `abs(s)^2` over a region with the given side values.
@@ -50,10 +58,9 @@ pub(super) fn whole_energy(sides: [f64; 4], along: [f64; 4]) -> f64 {
     let [south, east, north, west] = sides;
     let [s, e, n, w] = along;
     let part = |low: f64, high: f64, a: f64, b: f64, bulge: f64| {
-        (low * low + low * high + high * high) / 3.0
-            + (a * a + a * b + b * b) / 36.0
-            + bulge * (low + high) / 12.0
-            + bulge * bulge / 120.0
+        (low * low + low * high + high * high) * (1.0 / 3.0)
+            + (a * a + a * b + b * b) * (1.0 / 36.0)
+            + bulge * ((low + high) * (1.0 / 12.0) + bulge * (1.0 / 120.0))
     };
     part(west, east, w, e, n - s) + part(south, north, s, n, e - w)
 }

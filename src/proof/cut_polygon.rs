@@ -1,16 +1,15 @@
 //! The polygons of the cut squares, with feet on sides that a wall point almost touches.
 
+use std::cmp::Ordering;
 use std::collections::BTreeMap;
 
 use crate::geometry::Point;
-use crate::grid::{EAST, NORTH, Region, SOUTH, WEST};
+use crate::grid::{CORNERS, CellRows, CutCells, EAST, NORTH, Region, SOUTH, WEST};
 
 /// Distance of a wall point from a side, in cells, up to which it may get a foot.
 const NEAR: f64 = 0.2;
 /// How many times steeper than elsewhere in the square the velocity between them must be for a foot.
 const STEEP: f64 = 3.0;
-/// Corners of a cell, anticlockwise from the lower left.
-const CORNERS: [Point; 4] = [[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]];
 
 /// Axis along which the face lies across, and column and row of the cell to its right or above.
 type Face = (usize, i64, i64);
@@ -18,8 +17,47 @@ type Face = (usize, i64, i64);
 /// Places along faces where the velocity is held at zero, rising.
 pub(super) type Feet = BTreeMap<Face, Vec<f64>>;
 
-/// A stretch of a face between two vertices: face, lower and upper end, nodes at the ends.
-type Piece = (Face, f64, f64, [Option<usize>; 2]);
+/// A stretch of a side between two vertices.
+#[derive(Debug, Clone, Copy)]
+struct Piece {
+    side: usize,
+    /// Lower and upper end.
+    ends: [f64; 2],
+    /// Nodes at these.
+    nodes: [Option<usize>; 2],
+}
+
+impl Piece {
+    fn new(
+        side: usize,
+        (a, from): (Point, Option<usize>),
+        (b, to): (Point, Option<usize>),
+    ) -> Self {
+        let ends = [along_and_away(side, a).0, along_and_away(side, b).0];
+        if ends[0] <= ends[1] {
+            Self {
+                side,
+                ends,
+                nodes: [from, to],
+            }
+        } else {
+            Self {
+                side,
+                ends: [ends[1], ends[0]],
+                nodes: [to, from],
+            }
+        }
+    }
+
+    fn order(&self, other: &Self) -> Ordering {
+        let by_low = self.ends[0].total_cmp(&other.ends[0]);
+        by_low.then(self.ends[1].total_cmp(&other.ends[1]))
+    }
+
+    fn is_whole_side(&self) -> bool {
+        self.ends[0] <= 0.0 && self.ends[1] >= 1.0
+    }
+}
 
 /// One fluid region of a cut square as a polygon.
 #[derive(Debug, Clone)]
@@ -35,35 +73,47 @@ pub(super) struct Polygon {
 }
 
 impl Polygon {
-    /// Its edges that lie on sides of the square.
-    fn side_pieces(&self) -> Vec<Piece> {
-        let next = self.vertices.iter().cycle().skip(1);
-        let edges = self.vertices.iter().zip(next);
-        edges
-            .filter_map(|(&(a, from_node), &(b, to_node))| {
-                let is_on = |p: Point, side: usize| along_and_away(side, p).1.abs() <= 0.0;
-                let side = (0..4).find(|&side| is_on(a, side) && is_on(b, side))?;
-                let (from, to) = (along_and_away(side, a).0, along_and_away(side, b).0);
-                let face = face(self.cell, side);
-                Some(if from <= to {
-                    (face, from, to, [from_node, to_node])
-                } else {
-                    (face, to, from, [to_node, from_node])
-                })
-            })
-            .collect()
+    /// Row-by-row numbers of its nodes, by corner of the square.
+    pub(super) fn nodes(&self) -> [Option<usize>; 4] {
+        let mut nodes = [None; 4];
+        for &(at, node) in self.vertices.iter().filter(|vertex| vertex.1.is_some()) {
+            let corner = corner_at(at);
+            nodes[corner] = node.filter(|_| self.corners[corner]);
+        }
+        nodes
     }
 
-    /// Its nodes with their places.
-    pub(super) fn nodes_at(
-        &self,
-        number: impl Fn((i64, i64)) -> Option<usize>,
-    ) -> impl Iterator<Item = (usize, (i64, i64))> {
-        (0..4)
-            .filter(|&corner| self.corners[corner])
-            .map(|corner| corner_place(self.cell, corner))
-            .filter_map(move |at| Some((number(at)?, at)))
+    /// Adds its edges that lie on sides of the square.
+    fn add_side_pieces(&self, pieces: &mut Vec<Piece>) {
+        let Some(mut before) = self.vertices.last().copied() else {
+            return;
+        };
+        for &vertex in &self.vertices {
+            if let Some(side) = common_side(before.0, vertex.0) {
+                pieces.push(Piece::new(side, before, vertex));
+            }
+            before = vertex;
+        }
     }
+}
+
+/// Which corner of a square a node of it is at.
+pub(super) fn corner_at(at: Point) -> usize {
+    match (at[0] > 0.5, at[1] > 0.5) {
+        (false, false) => 0,
+        (true, false) => 1,
+        (true, true) => 2,
+        (false, true) => 3,
+    }
+}
+
+/// The side on which both ends of an edge lie; points on a side were put there to the last bit.
+fn common_side(a: Point, b: Point) -> Option<usize> {
+    let is_both =
+        |axis: usize, line: f64| (a[axis] - line).abs() <= 0.0 && (b[axis] - line).abs() <= 0.0;
+    [(1, 0.0), (0, 1.0), (1, 1.0), (0, 0.0)]
+        .iter()
+        .position(|&(axis, line)| is_both(axis, line))
 }
 
 /// Column and row of a corner of a square.
@@ -105,35 +155,48 @@ fn ends(side: usize) -> [usize; 2] {
 
 /// Feet on the sides of cut squares: where the velocity along a side would be far too large for a wall
 /// point beside it.
-pub(super) fn feet(regions: &[Region], value_at: impl Fn((i64, i64)) -> Option<f64>) -> Feet {
+pub(super) fn feet(cut: &CutCells, value_at: impl Fn((i64, i64)) -> Option<f64>) -> Feet {
     let mut found = Feet::new();
-    for region in regions.iter().filter(|region| region.boundary.len() == 1) {
-        let value = |corner: usize| {
+    for region in cut.regions.iter().filter(|region| region.holes.is_empty()) {
+        let boundary = cut.boundary(region);
+        let near =
+            |p: &Point| (0..4).any(|side| (1e-12..NEAR).contains(&along_and_away(side, *p).1));
+        if !boundary.iter().any(near) {
+            continue;
+        }
+        let values: [f64; 4] = std::array::from_fn(|corner| {
             region.corners[corner]
                 .and_then(|_| value_at(corner_place(region.cell, corner)))
                 .unwrap_or(0.0)
-        };
-        let steepest = steepest(region, value);
-        for &(side, low, length) in &region.sides {
+        });
+        let is_wall = |k: &usize| !region.corners.contains(&Some(*k as u32));
+        let mut limit: Option<f64> = None;
+        for &(side, low, length) in cut.sides(region) {
             let [first, last] = ends(side);
-            let at_end = |corner: usize, is_end: bool| if is_end { value(corner) } else { 0.0 };
+            let at_end = |corner: usize, is_end: bool| if is_end { values[corner] } else { 0.0 };
             let (from, to) = (
                 at_end(first, low < 1e-12),
                 at_end(last, low + length > 1.0 - 1e-12),
             );
-            let excess = |&p: &Point| {
-                let (along, away) = along_and_away(side, p);
+            let slope = |k: usize| {
+                let (along, away) = along_and_away(side, boundary[k]);
+                if !(1e-12..NEAR).contains(&away) {
+                    return None;
+                }
                 let t = (along - low) / length;
-                let is_beside = (1e-6..=1.0 - 1e-6).contains(&t) && (1e-12..NEAR).contains(&away);
-                let slope = (from + t * (to - from)) / away;
-                (is_beside && slope > STEEP * steepest).then_some((slope, along))
+                let is_beside = (1e-6..=1.0 - 1e-6).contains(&t);
+                is_beside.then_some(((from + t * (to - from)) / away, along))
             };
-            let worst = region
-                .wall
-                .iter()
-                .filter_map(excess)
+            let worst = (0..boundary.len())
+                .filter_map(|k| Some((k, slope(k)?)))
+                .filter(|(k, _)| is_wall(k))
+                .map(|(_, found)| found)
                 .max_by(|a, b| a.0.total_cmp(&b.0));
-            if let Some((_, along)) = worst {
+            let Some((slope, along)) = worst else {
+                continue;
+            };
+            let limit = *limit.get_or_insert_with(|| STEEP * steepest(region, boundary, values));
+            if slope > limit {
                 found
                     .entry(face(region.cell, side))
                     .or_default()
@@ -149,24 +212,28 @@ pub(super) fn feet(regions: &[Region], value_at: impl Fn((i64, i64)) -> Option<f
 }
 
 /// Largest ratio of a corner's value to its distance from the wall of its region.
-fn steepest(region: &Region, value: impl Fn(usize) -> f64) -> f64 {
-    let polygon = &region.boundary[0];
+fn steepest(region: &Region, boundary: &[Point], values: [f64; 4]) -> f64 {
     let is_corner = |k: usize| region.corners.contains(&Some(k as u32));
-    (0..4)
-        .filter(|&corner| region.corners[corner].is_some())
-        .map(|corner| {
-            let p = CORNERS[corner];
-            let distance = (0..polygon.len())
-                .map(|k| (k, (k + 1) % polygon.len()))
-                .filter(|&(k, next)| !is_corner(k) && !is_corner(next))
-                .map(|(k, next)| distance_to(p, polygon[k], polygon[next]))
-                .fold(f64::INFINITY, f64::min);
-            value(corner) / distance.max(1e-6)
-        })
+    let mut least = [f64::INFINITY; 4];
+    for k in 0..boundary.len() {
+        let next = (k + 1) % boundary.len();
+        if is_corner(k) || is_corner(next) {
+            continue;
+        }
+        for (corner, least) in least.iter_mut().enumerate() {
+            if region.corners[corner].is_some() {
+                let distance = square_distance_to(CORNERS[corner], boundary[k], boundary[next]);
+                *least = least.min(distance);
+            }
+        }
+    }
+    let corners = (0..4).filter(|&corner| region.corners[corner].is_some());
+    corners
+        .map(|corner| values[corner] / least[corner].sqrt().max(1e-6))
         .fold(0.0, f64::max)
 }
 
-fn distance_to(p: Point, a: Point, b: Point) -> f64 {
+fn square_distance_to(p: Point, a: Point, b: Point) -> f64 {
     let (x, y) = (b[0] - a[0], b[1] - a[1]);
     let square = x * x + y * y;
     let t = if square > 0.0 {
@@ -174,36 +241,32 @@ fn distance_to(p: Point, a: Point, b: Point) -> f64 {
     } else {
         0.0
     };
-    (a[0] + t * x - p[0]).hypot(a[1] + t * y - p[1])
+    let away = [a[0] + t * x - p[0], a[1] + t * y - p[1]];
+    away[0] * away[0] + away[1] * away[1]
 }
 
 /// All polygons: of the regions, in their order, and of whole squares with a foot on a side; sorted by row.
 pub(super) fn polygons(
-    regions: &[Region],
+    cut: &CutCells,
     feet: &Feet,
     number: impl Fn((i64, i64)) -> Option<usize>,
 ) -> Vec<Polygon> {
-    let mut all: Vec<Polygon> = regions
-        .iter()
-        .map(|region| {
-            let mut corner_of = BTreeMap::new();
-            for (corner, at) in region.corners.iter().enumerate() {
-                corner_of.extend(at.map(|k| (k as usize, corner)));
-            }
-            let node = |k: usize| {
-                let corner = *corner_of.get(&k)?;
-                number(corner_place(region.cell, corner))
-            };
-            Polygon {
-                cell: region.cell,
-                vertices: with_feet(region.cell, &region.boundary[0], feet, node),
-                corners: region.corners.map(|c| c.is_some()),
-                has_hole: region.boundary.len() > 1,
-            }
-        })
-        .collect();
-    let mut cut: Vec<(i64, i64)> = regions.iter().map(|r| r.cell).collect();
-    cut.dedup();
+    let of_region = |region: &Region| {
+        let node = |k: usize| {
+            let corner = region.corners.iter().position(|&at| at == Some(k as u32))?;
+            number(corner_place(region.cell, corner))
+        };
+        Polygon {
+            cell: region.cell,
+            vertices: with_feet(region.cell, cut.boundary(region), feet, node),
+            corners: region.corners.map(|c| c.is_some()),
+            has_hole: !region.holes.is_empty(),
+        }
+    };
+    let mut all: Vec<Polygon> = cut.regions.iter().map(of_region).collect();
+    if feet.is_empty() {
+        return all;
+    }
     let mut touched: Vec<(i64, i64)> = feet
         .keys()
         .flat_map(|&(axis, column, row)| {
@@ -214,10 +277,7 @@ pub(super) fn polygons(
             };
             [(column, row), before]
         })
-        .filter(|&(column, row)| {
-            cut.binary_search_by_key(&(row, column), |c| (c.1, c.0))
-                .is_err()
-        })
+        .filter(|&cell| cut.rows.find(cell).is_none())
         .collect();
     touched.sort_unstable();
     touched.dedup();
@@ -239,22 +299,48 @@ pub(super) fn polygons(
 /// Along a side the velocity is linear between the vertices of the polygons. A side with a polygon on one side
 /// only belongs to a whole square, or to the solid, and must be undivided.
 pub(super) fn agree(polygons: &[Polygon]) -> bool {
-    let mut pieces: Vec<Piece> = polygons.iter().flat_map(Polygon::side_pieces).collect();
-    pieces.sort_by(|a, b| {
-        let by_face = a.0.cmp(&b.0);
-        by_face.then(a.1.total_cmp(&b.1)).then(a.2.total_cmp(&b.2))
-    });
-    let cells: Vec<(i64, i64)> = polygons.iter().map(|p| (p.cell.1, p.cell.0)).collect();
-    let is_cut = |column: i64, row: i64| cells.binary_search(&(row, column)).is_ok();
-    pieces.chunk_by(|a, b| a.0 == b.0).all(|at_face| {
-        let (axis, column, row) = at_face[0].0;
-        let (dx, dy) = if axis == 0 { (1, 0) } else { (0, 1) };
-        if is_cut(column, row) && is_cut(column - dx, row - dy) {
-            at_face.len().is_multiple_of(2) && at_face.chunks(2).all(|pair| pair[0] == pair[1])
-        } else {
-            matches!(at_face, [(_, low, high, _)] if *low <= 0.0 && *high >= 1.0)
+    let rows = CellRows::new(polygons.iter().map(|polygon| polygon.cell));
+    // Pieces of each square, by side and along it.
+    let mut pieces: Vec<Piece> = Vec::with_capacity(4 * polygons.len());
+    let mut starts: Vec<[usize; 5]> = Vec::with_capacity(rows.cells().len());
+    let mut of_cell = Vec::new();
+    for cell in 0..rows.cells().len() {
+        of_cell.clear();
+        for polygon in &polygons[rows.items(cell)] {
+            polygon.add_side_pieces(&mut of_cell);
         }
-    })
+        let mut ends = [pieces.len(); 5];
+        for side in 0..4 {
+            pieces.extend(of_cell.iter().filter(|piece| piece.side == side));
+            ends[side + 1] = pieces.len();
+            pieces[ends[side]..].sort_by(Piece::order);
+        }
+        starts.push(ends);
+    }
+    let on_side = |cell: usize, side: usize| &pieces[starts[cell][side]..starts[cell][side + 1]];
+    let is_undivided = |cell: usize, side: usize| match on_side(cell, side) {
+        [] => true,
+        [piece] => piece.is_whole_side(),
+        _ => false,
+    };
+    let alike = |a: &Piece, b: &Piece| (a.ends, a.nodes) == (b.ends, b.nodes);
+    let mut is_shared = vec![[false; 4]; rows.cells().len()];
+    for (cell, neighbours) in rows.neighbours().into_iter().enumerate() {
+        for (side, neighbour) in [EAST, NORTH].into_iter().zip(neighbours) {
+            let Some(neighbour) = neighbour else {
+                continue;
+            };
+            let opposite = (side + 2) % 4;
+            let (here, beyond) = (on_side(cell, side), on_side(neighbour, opposite));
+            if here.len() != beyond.len() || here.iter().zip(beyond).any(|(a, b)| !alike(a, b)) {
+                return false;
+            }
+            is_shared[cell][side] = true;
+            is_shared[neighbour][opposite] = true;
+        }
+    }
+    (0..is_shared.len())
+        .all(|cell| (0..4).all(|side| is_shared[cell][side] || is_undivided(cell, side)))
 }
 
 /// The polygon with the feet on its sides as further vertices.
@@ -272,12 +358,7 @@ fn with_feet(
         if feet.is_empty() {
             continue;
         }
-        let Some(side) = (0..4).find(|&side| {
-            let (_, from) = along_and_away(side, a);
-            let (_, to) = along_and_away(side, b);
-            // Points on a side were put there to the last bit.
-            from.abs() <= 0.0 && to.abs() <= 0.0
-        }) else {
+        let Some(side) = common_side(a, b) else {
             continue;
         };
         let (from, to) = (along_and_away(side, a).0, along_and_away(side, b).0);

@@ -16,19 +16,26 @@
 //! parabola between the same values from both squares along every side), zero at every point of the wall, and
 //! zero outside. That the fields are good near the wall makes the range narrow; it is not needed for it to hold.
 //!
-//! Both are post-processing of the nodal values and cost one pass over the nodes. The outline is cut
-//! exactly; that the pieces make up the section is checked, and so are the divergence of `s` in every piece at
-//! the wall, the agreement of `v` along every side, and the order of the two values: a bound that is not
-//! checked is none. Rounding: the integrals are sums of up to 1e8 terms of one sign (relative error below
-//! 1e-11 in the worst order), and divergences off by 1e-10 of the largest side value change `K` by less than
-//! 1e-10 of itself per cell they occur in; the bounds are widened by `ROUNDING`, far below any gap that a
-//! grid can reach. The outline counts as given in double precision; crossings with grid lines are rounded
-//! once, by parts in 1e16 of the coordinates.
+//! Both are post-processing of the nodal values and cost one pass over the nodes, in blocks of rows that are
+//! shared out over threads on large grids and added up in order. The outline is cut exactly; that the pieces
+//! make up the section is checked, and so are the divergence of `s` in every piece at the wall, the agreement
+//! of `v` along every side, and the order of the two values: a bound that is not checked is none. Rounding:
+//! the integrals are sums of up to 1e8 terms of one sign, added in groups, rows and blocks (relative error below
+//! 1e-12 in the worst order), and divergences off by 1e-10 of the largest side value change `K` by less than
+//! 1e-10 of itself per cell they occur in; the bounds are widened by `ROUNDING`, far below any gap that a grid
+//! can reach. The outline counts as given in double precision; crossings with grid lines are rounded once, by
+//! parts in 1e16 of the coordinates.
 
 mod cell_energy;
+mod cell_sides;
 mod cut_polygon;
+mod elimination;
+mod interior;
 mod lower_bound;
+mod near_wall;
 mod nodal_flux;
+mod numbering;
+mod row_values;
 mod square_energy;
 mod triangulation;
 mod upper_bound;
@@ -36,7 +43,7 @@ mod upper_bound;
 use crate::grid::{Lattice, Mask};
 use crate::solve::Field;
 
-/// Relative amount by which bounds are widened for rounding: sums of up to 1e8 terms of one sign.
+/// Relative amount by which bounds are widened for rounding: sums of up to 1e8 terms of one sign, added in groups.
 const ROUNDING: f64 = 1e-11;
 
 /// Why there is no bound.

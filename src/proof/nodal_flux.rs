@@ -3,36 +3,54 @@
 use crate::grid::{Colour, EAST, Mask, NO_NODE, NORTH, SOUTH, WEST, WallNode};
 use crate::solve::Field;
 
+use super::numbering::Numbering;
+
 /// The nodal values and where they are.
 pub(super) struct NodalFlux<'a> {
-    pub(super) mask: &'a Mask,
+    mask: &'a Mask,
     pub(super) phi: &'a Field,
+    /// Places of the wall nodes of each colour in the lists of the mask.
+    wall: [Numbering; 2],
 }
 
-impl NodalFlux<'_> {
+/// A fluid node: column, row, colour and storage index.
+type Node = (i64, i64, Colour, u32);
+
+impl<'a> NodalFlux<'a> {
+    pub(super) fn new(mask: &'a Mask, phi: &'a Field) -> Self {
+        let wall = [0, 1].map(|colour| {
+            let nodes = mask.wall[colour].iter().map(|wall| wall.node as usize);
+            Numbering::new(mask.count[colour], nodes)
+        });
+        Self { mask, phi, wall }
+    }
+
+    fn wall_node(&self, colour: Colour, node: u32) -> Option<&WallNode> {
+        let place = self.wall[colour as usize].of(node as usize)?;
+        self.mask.wall[colour as usize].get(place as usize)
+    }
+
+    fn node(&self, i: i64, j: i64) -> Option<Node> {
+        let (column, row) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
+        let (colour, node) = self.mask.node_at(column, row)?;
+        Some((i, j, colour, node))
+    }
+
+    fn value_of(&self, (_, _, colour, node): Node) -> Option<f64> {
+        self.phi.colour[colour as usize].get(node as usize).copied()
+    }
+
     /// Value of node `(i, j)`, `None` outside the fluid.
     pub(super) fn value(&self, i: i64, j: i64) -> Option<f64> {
-        let (i, j) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-        self.phi.at(self.mask, i, j)
+        self.value_of(self.node(i, j)?)
     }
 
-    /// Derivative of `phi` at a side of the cell of fluid node `(i, j)`, along the axis of the side.
-    fn slope_at_side(&self, i: i64, j: i64, side: usize) -> Option<f64> {
-        let centre = self.value(i, j)?;
-        let (low, high) =
-            self.differences(i, j, centre, usize::from(side == SOUTH || side == NORTH))?;
-        Some(if side == EAST || side == NORTH {
-            high
-        } else {
-            low
-        })
-    }
-
-    /// Derivatives of the unequal-arm quadratic half a cell below and above a node along one axis.
-    fn differences(&self, i: i64, j: i64, centre: f64, axis: usize) -> Option<(f64, f64)> {
-        let (ui, uj) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-        let (colour, node) = self.mask.node_at(ui, uj)?;
-        let (arms, ends) = if let Some(wall) = self.mask.wall_node(colour, node) {
+    /// Derivative of `phi` half a cell beyond a node towards a side: that of the unequal-arm quadratic.
+    fn slope_at_side(&self, node: Node, side: usize) -> Option<f64> {
+        let (i, j, colour, index) = node;
+        let centre = self.value_of(node)?;
+        let axis = usize::from(side == SOUTH || side == NORTH);
+        let (arms, ends) = if let Some(wall) = self.wall_node(colour, index) {
             self.wall_ends(wall, colour, axis)
         } else {
             let step = if axis == 0 { (1, 0) } else { (0, 1) };
@@ -43,7 +61,11 @@ impl NodalFlux<'_> {
         let (below, above) = ((centre - ends[0]) / arms[0], (ends[1] - centre) / arms[1]);
         let second = 2.0 * (above - below) / (arms[0] + arms[1]);
         let first = (below * arms[1] + above * arms[0]) / (arms[0] + arms[1]);
-        Some((first - 0.5 * second, first + 0.5 * second))
+        Some(if side == EAST || side == NORTH {
+            first + 0.5 * second
+        } else {
+            first - 0.5 * second
+        })
     }
 
     fn wall_ends(&self, wall: &WallNode, colour: Colour, axis: usize) -> ([f64; 2], [f64; 2]) {
@@ -93,21 +115,17 @@ impl NodalFlux<'_> {
     /// Value of a side from the two nodes it lies between, or from either of them and its arms.
     fn near_nodes(&self, i: i64, j: i64, side: usize) -> Option<f64> {
         let [along, _, (a, b)] = Self::pair(i, j, side);
-        let (low, high) = (self.value(a, b), self.value(a + along.0, b + along.1));
+        let (low, high) = (self.node(a, b), self.node(a + along.0, b + along.1));
         if let (Some(low), Some(high)) = (low, high) {
-            return Some(high - low);
+            return Some(self.value_of(high)? - self.value_of(low)?);
         }
         let (forward, backward) = if along.0 == 1 {
             (EAST, WEST)
         } else {
             (NORTH, SOUTH)
         };
-        let ahead = self.slope_at_side(a, b, forward);
-        let behind = self.slope_at_side(a + along.0, b + along.1, backward);
-        match (ahead, behind) {
-            (Some(x), Some(y)) => Some(0.5 * (x + y)),
-            (one, other) => one.or(other),
-        }
+        let ahead = low.and_then(|node| self.slope_at_side(node, forward));
+        ahead.or_else(|| self.slope_at_side(high?, backward))
     }
 
     /// First guess for a side of a cell, from whatever nodes are near.
@@ -117,17 +135,13 @@ impl NodalFlux<'_> {
         }
         let [_, across, _] = Self::pair(i, j, side);
         let step = |k: i64| self.near_nodes(i + k * across.0, j + k * across.1, side);
-        let beside: Vec<f64> = [1, -1]
-            .into_iter()
-            .filter_map(|k| match (step(k), step(2 * k)) {
-                (Some(near), Some(far)) => Some(2.0 * near - far),
-                (near, _) => near,
-            })
-            .collect();
-        if beside.is_empty() {
-            0.0
-        } else {
-            beside.iter().sum::<f64>() / beside.len() as f64
+        let (mut sum, mut count) = (0.0, 0.0);
+        for k in [1, -1] {
+            if let Some(near) = step(k) {
+                sum += step(2 * k).map_or(near, |far| 2.0 * near - far);
+                count += 1.0;
+            }
         }
+        if count > 0.0 { sum / count } else { 0.0 }
     }
 }

@@ -16,7 +16,7 @@ impl Square {
     pub(super) fn volume(&self) -> f64 {
         let [a, b, c, d] = self.corners;
         let [south, east, north, west] = self.bubbles;
-        ((a + c) + (b + d)) / 4.0 + ((south + north) + (east + west)) / 3.0
+        ((a + c) + (b + d)) * 0.25 + ((south + north) + (east + west)) * (1.0 / 3.0)
     }
 
     /// Integral of `abs(grad v)^2`.
@@ -24,7 +24,7 @@ impl Square {
         let [a, b, c, d] = self.corners;
         let [south, east, north, west] = self.bubbles;
         let part = |low: f64, high: f64, tilt: f64, p: f64, q: f64| {
-            (low * low + low * high + high * high) / 3.0
+            (low * low + low * high + high * high) * (1.0 / 3.0)
                 + 2.0 / 3.0 * tilt * (low + high)
                 + 8.0 / 15.0 * tilt * tilt
                 + 16.0 / 9.0 * (p * p + p * q + q * q)
@@ -50,6 +50,17 @@ impl Square {
 
 /// Half the second derivative of the energy with respect to one corner value.
 pub(super) const STIFFNESS: f64 = 2.0 / 3.0;
+/// Half the second derivatives of the energy with respect to two corner values.
+pub(super) const COUPLINGS: [[f64; 4]; 4] = {
+    const BESIDE: f64 = -1.0 / 6.0;
+    const ACROSS: f64 = -1.0 / 3.0;
+    [
+        [STIFFNESS, BESIDE, ACROSS, BESIDE],
+        [BESIDE, STIFFNESS, BESIDE, ACROSS],
+        [ACROSS, BESIDE, STIFFNESS, BESIDE],
+        [BESIDE, ACROSS, BESIDE, STIFFNESS],
+    ]
+};
 
 #[cfg(test)]
 mod tests {
@@ -98,6 +109,18 @@ mod tests {
             let change = moved.energy() - SQUARE.energy();
             let foreseen = SQUARE.half_slope(corner) + 0.25 * STIFFNESS;
             assert!((change - foreseen).abs() < 1e-12, "{corner}");
+        }
+    }
+
+    #[test]
+    fn the_couplings_are_the_changes_of_the_slopes() {
+        for (corner, row) in COUPLINGS.iter().enumerate() {
+            for (other, coupling) in row.iter().enumerate() {
+                let mut moved = SQUARE;
+                moved.corners[other] += 0.5;
+                let change = moved.half_slope(corner) - SQUARE.half_slope(corner);
+                assert!((change - 0.5 * coupling).abs() < 1e-12, "{corner} {other}");
+            }
         }
     }
 }

@@ -49,36 +49,15 @@ impl Triangle {
         }
     }
 
-    /// Integral of the velocity.
-    pub(super) fn volume(&self, values: [f64; 3]) -> f64 {
-        self.area * (values[0] + values[1] + values[2]) / 3.0
-    }
-
-    /// Integral of the squared gradient.
-    pub(super) fn energy(&self, values: [f64; 3]) -> f64 {
-        let [x, y] = self.gradient(values);
-        self.area * (x * x + y * y)
-    }
-
-    /// Half the derivative of the energy with respect to one value.
-    pub(super) fn half_slope(&self, values: [f64; 3], corner: usize) -> f64 {
-        let ([x, y], [gx, gy]) = (self.gradient(values), self.gradients[corner]);
-        self.area * (x * gx + y * gy)
-    }
-
-    /// Half the second derivative of the energy with respect to one value.
-    pub(super) fn stiffness(&self, corner: usize) -> f64 {
-        let [x, y] = self.gradients[corner];
-        self.area * (x * x + y * y)
-    }
-
     /// Derivative of the volume with respect to one value.
     pub(super) fn weight(&self) -> f64 {
         self.area / 3.0
     }
 
-    fn gradient(&self, values: [f64; 3]) -> Point {
-        [0, 1].map(|axis: usize| (0..3).map(|k| values[k] * self.gradients[k][axis]).sum())
+    /// Integral of the product of the gradients of two corner functions.
+    pub(super) fn product(&self, k: usize, l: usize) -> f64 {
+        let ([x, y], [u, v]) = (self.gradients[k], self.gradients[l]);
+        self.area * (x * u + y * v)
     }
 }
 
@@ -86,39 +65,150 @@ fn area([a, b, c]: [Point; 3]) -> f64 {
     0.5 * ((b[0] - a[0]) * (c[1] - a[1]) - (b[1] - a[1]) * (c[0] - a[0]))
 }
 
-/// Triangles that cover the part of a polygon where the velocity is not zero.
-///
-/// - `polygon`: simple, anticlockwise
-///
-/// `None` where no division into anticlockwise triangles was found.
-pub(super) fn triangulate(mut polygon: Vec<Vertex>) -> Option<Vec<Triangle>> {
-    let Some(first) = polygon.iter().position(|v| v.node.is_some()) else {
-        return Some(Vec::new());
-    };
-    polygon.rotate_left(first);
-    let triples = if polygon.len() <= ALL_DIVISIONS {
-        best_division(&polygon)
-    } else {
-        ladder(&polygon)
-    };
-    let triples = if let Some(triples) = triples {
-        triples
-    } else {
-        polygon = without_pockets(&polygon);
-        if polygon.len() <= ALL_DIVISIONS {
-            best_division(&polygon)?
-        } else {
-            ladder(&polygon)?
+/// Divides polygons one after the other; keeps its memory between them.
+#[derive(Debug, Default)]
+pub(super) struct Division {
+    polygon: Vec<Vertex>,
+    /// Vertices of each triangle.
+    triples: Vec<[usize; 3]>,
+    /// Least cost of each part, and the choice that leads to it.
+    best: Vec<(f64, usize)>,
+    open: Vec<(usize, usize)>,
+}
+
+impl Division {
+    /// Hands on the triangles that cover the part of a polygon where the velocity is not zero.
+    ///
+    /// - `polygon`: simple, anticlockwise
+    ///
+    /// `false`, and no triangle, where no division into anticlockwise triangles was found.
+    pub(super) fn divide(
+        &mut self,
+        polygon: impl Iterator<Item = Vertex>,
+        mut hand_on: impl FnMut(&Triangle),
+    ) -> bool {
+        self.polygon.clear();
+        self.polygon.extend(polygon);
+        let Some(first) = self.polygon.iter().position(|v| v.node.is_some()) else {
+            return true;
+        };
+        self.polygon.rotate_left(first);
+        if !self.find() {
+            self.polygon = without_pockets(&self.polygon);
+            if !self.find() {
+                return false;
+            }
         }
-    };
-    Some(
-        triples
-            .into_iter()
-            .map(|corners| corners.map(|k| polygon[k]))
-            .filter(|corners| corners.iter().any(|c| c.node.is_some()))
-            .map(Triangle::new)
-            .collect(),
-    )
+        for triple in &self.triples {
+            let corners = triple.map(|k| self.polygon[k]);
+            if corners.iter().any(|c| c.node.is_some()) {
+                hand_on(&Triangle::new(corners));
+            }
+        }
+        true
+    }
+
+    fn find(&mut self) -> bool {
+        self.triples.clear();
+        if self.polygon.len() <= ALL_DIVISIONS {
+            self.best_division()
+        } else {
+            self.ladder()
+        }
+    }
+
+    /// The division of least cost of a small polygon.
+    fn best_division(&mut self) -> bool {
+        let (polygon, n) = (&self.polygon, self.polygon.len());
+        if n < 3 {
+            return false;
+        }
+        // Cost of the part between vertices i and j, and where its triangle on that chord has its third corner.
+        self.best.clear();
+        self.best.resize(n * n, (f64::INFINITY, 0));
+        let best = &mut self.best;
+        for i in 0..n - 1 {
+            best[i * n + i + 1].0 = 0.0;
+        }
+        for gap in 2..n {
+            for i in 0..n - gap {
+                let j = i + gap;
+                let costs = Costs::new(&polygon[i], &polygon[j]);
+                let mut least = (f64::INFINITY, 0);
+                for (k, third) in polygon.iter().enumerate().take(j).skip(i + 1) {
+                    let parts = best[i * n + k].0 + best[k * n + j].0;
+                    let whole = parts + costs.of(third);
+                    if whole < least.0 {
+                        least = (whole, k);
+                    }
+                }
+                best[i * n + j] = least;
+            }
+        }
+        if !best[n - 1].0.is_finite() {
+            return false;
+        }
+        self.open.clear();
+        self.open.push((0, n - 1));
+        while let Some((i, j)) = self.open.pop() {
+            if j - i < 2 {
+                continue;
+            }
+            let k = best[i * n + j].1;
+            self.triples.push([i, k, j]);
+            self.open.extend([(i, k), (k, j)]);
+        }
+        true
+    }
+
+    /// The best division of a polygon of one stretch of nodes and one of wall into triangles that each touch
+    /// both: for walls with many vertices.
+    ///
+    /// The polygon begins with a node.
+    fn ladder(&mut self) -> bool {
+        let polygon = &self.polygon;
+        let nodes = polygon.iter().take_while(|v| v.node.is_some()).count();
+        let wall = polygon.len() - nodes;
+        if polygon[nodes..].iter().any(|v| v.node.is_some()) || wall < 2 {
+            return false;
+        }
+        // Rung (i, j) joins wall vertex i, counted backwards from the end, to node j.
+        let wall_at = |i: usize| polygon.len() - 1 - i;
+        self.best.clear();
+        self.best.resize(wall * nodes, (f64::INFINITY, 0));
+        let best = &mut self.best;
+        best[0].0 = 0.0;
+        for i in 0..wall {
+            for j in 0..nodes {
+                let own =
+                    |[a, b, c]: [usize; 3]| Costs::new(&polygon[a], &polygon[c]).of(&polygon[b]);
+                let along_wall = i.checked_sub(1).map_or(f64::INFINITY, |i0| {
+                    best[i0 * nodes + j].0 + own([wall_at(i), wall_at(i0), j])
+                });
+                let along_nodes = j.checked_sub(1).map_or(f64::INFINITY, |j0| {
+                    best[i * nodes + j0].0 + own([wall_at(i), j0, j])
+                });
+                if (i, j) != (0, 0) {
+                    let is_along_wall = usize::from(along_wall <= along_nodes);
+                    best[i * nodes + j] = (along_wall.min(along_nodes), is_along_wall);
+                }
+            }
+        }
+        let (mut i, mut j) = (wall - 1, nodes - 1);
+        if !best[i * nodes + j].0.is_finite() {
+            return false;
+        }
+        while (i, j) != (0, 0) {
+            if best[i * nodes + j].1 == 1 {
+                self.triples.push([wall_at(i), wall_at(i - 1), j]);
+                i -= 1;
+            } else {
+                self.triples.push([wall_at(i), j - 1, j]);
+                j -= 1;
+            }
+        }
+        true
+    }
 }
 
 /// The polygon without the pockets of its wall: where three successive wall points turn left, the middle one
@@ -140,112 +230,68 @@ fn without_pockets(polygon: &[Vertex]) -> Vec<Vertex> {
     kept
 }
 
-/// Energy against volume of a triangle; `None` where it is flat or turned over.
-fn cost(corners: [Vertex; 3]) -> Option<f64> {
-    let size = area(corners.map(|c| c.at));
-    if corners.iter().all(|c| c.node.is_none()) {
-        return (size > -FLAT).then_some(0.0);
-    }
-    if size <= FLAT {
-        return None;
-    }
-    let triangle = Triangle::new(corners);
-    let values = corners.map(|c| c.value);
-    Some(triangle.energy(values) - 2.0 * triangle.volume(values))
+/// Energy against volume of the triangles on one edge of a polygon.
+struct Costs<'a> {
+    from: &'a Vertex,
+    /// The other end against the first one.
+    step: Point,
+    rise: f64,
+    has_node: bool,
 }
 
-/// The division of least cost of a small polygon.
-fn best_division(polygon: &[Vertex]) -> Option<Vec<[usize; 3]>> {
-    let n = polygon.len();
-    if n < 3 {
-        return None;
-    }
-    // Cost of the part between vertices i and j, and where its triangle on that chord has its third corner.
-    let mut best = vec![(f64::INFINITY, 0); n * n];
-    for i in 0..n - 1 {
-        best[i * n + i + 1].0 = 0.0;
-    }
-    for gap in 2..n {
-        for i in 0..n - gap {
-            let j = i + gap;
-            for k in i + 1..j {
-                let parts = best[i * n + k].0 + best[k * n + j].0;
-                if let Some(own) = cost([polygon[i], polygon[k], polygon[j]])
-                    && parts + own < best[i * n + j].0
-                {
-                    best[i * n + j] = (parts + own, k);
-                }
-            }
+impl<'a> Costs<'a> {
+    fn new(from: &'a Vertex, to: &Vertex) -> Self {
+        Self {
+            from,
+            step: [to.at[0] - from.at[0], to.at[1] - from.at[1]],
+            rise: to.value - from.value,
+            has_node: from.node.is_some() || to.node.is_some(),
         }
     }
-    if !best[n - 1].0.is_finite() {
-        return None;
-    }
-    let mut triples = Vec::with_capacity(n - 2);
-    let mut open = vec![(0, n - 1)];
-    while let Some((i, j)) = open.pop() {
-        if j - i < 2 {
-            continue;
-        }
-        let k = best[i * n + j].1;
-        triples.push([i, k, j]);
-        open.extend([(i, k), (k, j)]);
-    }
-    Some(triples)
-}
 
-/// The best division of a polygon of one stretch of nodes and one of wall into triangles that each touch
-/// both: for walls with many vertices.
-///
-/// - `polygon`: begins with a node
-fn ladder(polygon: &[Vertex]) -> Option<Vec<[usize; 3]>> {
-    let nodes = polygon.iter().take_while(|v| v.node.is_some()).count();
-    let wall = polygon.len() - nodes;
-    if polygon[nodes..].iter().any(|v| v.node.is_some()) || wall < 2 {
-        return None;
-    }
-    // Rung (i, j) joins wall vertex i, counted backwards from the end, to node j.
-    let wall_at = |i: usize| polygon.len() - 1 - i;
-    let mut best = vec![(f64::INFINITY, false); wall * nodes];
-    best[0].0 = 0.0;
-    for i in 0..wall {
-        for j in 0..nodes {
-            let step = |from: f64, corners: [usize; 3]| {
-                cost(corners.map(|k| polygon[k])).map_or(f64::INFINITY, |own| from + own)
+    /// Cost of the triangle from the first end to a vertex to the other end; infinite where it is flat or turned
+    /// over.
+    fn of(&self, third: &Vertex) -> f64 {
+        let [dx, dy] = self.step;
+        let (x, y) = (third.at[0] - self.from.at[0], third.at[1] - self.from.at[1]);
+        let twice = x * dy - y * dx;
+        if !self.has_node && third.node.is_none() {
+            return if 0.5 * twice > -FLAT {
+                0.0
+            } else {
+                f64::INFINITY
             };
-            let along_wall = match i.checked_sub(1) {
-                Some(i0) => step(best[i0 * nodes + j].0, [wall_at(i), wall_at(i0), j]),
-                None => f64::INFINITY,
-            };
-            let along_nodes = match j.checked_sub(1) {
-                Some(j0) => step(best[i * nodes + j0].0, [wall_at(i), j0, j]),
-                None => f64::INFINITY,
-            };
-            if (i, j) != (0, 0) {
-                best[i * nodes + j] = (along_wall.min(along_nodes), along_wall <= along_nodes);
-            }
         }
-    }
-    let (mut i, mut j) = (wall - 1, nodes - 1);
-    if !best[i * nodes + j].0.is_finite() {
-        return None;
-    }
-    let mut triples = Vec::with_capacity(polygon.len() - 2);
-    while (i, j) != (0, 0) {
-        if best[i * nodes + j].1 {
-            triples.push([wall_at(i), wall_at(i - 1), j]);
-            i -= 1;
-        } else {
-            triples.push([wall_at(i), j - 1, j]);
-            j -= 1;
+        if 0.5 * twice <= FLAT {
+            return f64::INFINITY;
         }
+        let rise = third.value - self.from.value;
+        // The gradient times twice the area.
+        let gradient = [rise * dy - self.rise * y, self.rise * x - rise * dx];
+        let sum = 3.0 * self.from.value + self.rise + rise;
+        (gradient[0] * gradient[0] + gradient[1] * gradient[1]) / (2.0 * twice) - twice * sum / 3.0
     }
-    Some(triples)
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    fn triangulate(polygon: Vec<Vertex>) -> Option<Vec<Triangle>> {
+        let mut triangles = Vec::new();
+        let is_divided = Division::default().divide(polygon.into_iter(), |t| triangles.push(*t));
+        is_divided.then_some(triangles)
+    }
+
+    impl Triangle {
+        /// Integral of the squared gradient.
+        fn energy(&self, values: [f64; 3]) -> f64 {
+            let products = (0..9).map(|k| (k / 3, k % 3));
+            products
+                .map(|(k, l)| values[k] * values[l] * self.product(k, l))
+                .sum()
+        }
+    }
 
     fn wall(at: Point) -> Vertex {
         Vertex {

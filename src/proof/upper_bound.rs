@@ -11,17 +11,22 @@
 //! so that whole cells balance exactly. What is left, in the cells at the wall, is put right by the
 //! smallest change of the sides there (least squares, solved directly): a graph problem in which cells
 //! are nodes, shared sides are edges, and free sides lead out.
+//!
+//! Cost: the interior is read once ([`super::interior`]), the rest is linear in the cut cells.
 
-use std::collections::BTreeMap;
-
-use sprs::TriMat;
+use std::num::NonZeroU32;
+use std::ops::Range;
 
 use crate::geometry::Point;
-use crate::grid::{EAST, Lattice, Mask, NORTH, Region, Run, SOUTH, WEST, cut_cells, shared_parts};
-use crate::solve::{Field, solve_sparse};
+use crate::grid::{Around, CutCells, EAST, Lattice, Mask, Run, WEST, cut_cells, shared_parts};
+use crate::solve::Field;
 
 use super::cell_energy::{Moments, energy, region_moments, whole_energy};
+use super::cell_sides::{NodesAround, balanced_cell, plain_cell, side_towards, sign};
+use super::elimination::Elimination;
+use super::interior::{cells, sum_in_groups};
 use super::nodal_flux::NodalFlux;
+use super::row_values::{RowValues, by_blocks};
 use super::{ProofError, ROUNDING};
 
 /// Shift of the cells against the middle between nodes, so that walls on lattice lines are nothing special.
@@ -40,24 +45,24 @@ const FREE_WEIGHT: f64 = 1e-3;
 pub(super) fn upper_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<f64, ProofError> {
     let shift = [SHIFT[0] - 0.5, SHIFT[1] - 0.5];
     let cutting = |_| ProofError::Cutting { relative: 1.0 };
-    let regions = cut_cells(lattice, shift).map_err(cutting)?;
-    let moments: Vec<Moments> = regions.iter().map(region_moments).collect();
-    let mut flux = Flux::new(mask, phi, &regions);
+    let cut = cut_cells(lattice, shift).map_err(cutting)?;
+    let regions = cut.regions.iter();
+    let moments: Vec<Moments> = regions
+        .map(|region| region_moments(cut.polygons(region)))
+        .collect();
+    let mut flux = Flux::new(mask, phi, &cut);
     let whole = flux.whole_cells();
     check_area(
         lattice,
         whole as f64 + moments.iter().map(|m| m.area).sum::<f64>(),
     )?;
-    let pairs = shared_parts(&regions).map_err(cutting)?;
-    flux.set_up_sides(&pairs);
+    let shared = shared_parts(&cut).map_err(cutting)?;
+    flux.set_up_sides(&shared);
     let interior = flux.whole_energy();
     flux.balance()?;
-    let cut: f64 = moments
-        .iter()
-        .enumerate()
-        .map(|(index, m)| energy(flux.sides_of(index), m))
-        .sum();
-    Ok((interior + flux.band_energy() + cut) * (1.0 + ROUNDING))
+    let regions = moments.iter().enumerate();
+    let [at_wall] = sum_in_groups(regions.map(|(index, m)| [energy(flux.sides_of(index), m)]));
+    Ok((interior + flux.band_energy() + at_wall) * (1.0 + ROUNDING))
 }
 
 /// Refuses pieces that do not make up the section.
@@ -80,15 +85,6 @@ pub(super) fn check_area(lattice: &Lattice, pieces: f64) -> Result<(), ProofErro
     }
 }
 
-/// Sign with which a side enters the divergence.
-fn sign(side: usize) -> f64 {
-    if side == EAST || side == NORTH {
-        1.0
-    } else {
-        -1.0
-    }
-}
-
 /// A side value in the band at the wall.
 #[derive(Debug, Clone, Copy)]
 struct Side {
@@ -96,52 +92,69 @@ struct Side {
     weight: f64,
 }
 
+/// Place of a side value of the band.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+struct Slot(NonZeroU32);
+
+impl Slot {
+    const FIRST: Self = Self(NonZeroU32::MIN);
+
+    fn new(index: usize) -> Self {
+        Self(NonZeroU32::MIN.saturating_add(index as u32))
+    }
+
+    fn index(self) -> usize {
+        self.0.get() as usize - 1
+    }
+}
+
 /// Where a side value of a cell comes from.
 #[derive(Debug, Clone, Copy)]
 enum Source {
     Fixed(f64),
-    Band(usize),
+    Band(Slot),
 }
 
-/// One cell's divergence: side values with their signs, and what the fixed sides give.
-type Equation = (Vec<(usize, f64)>, f64);
+/// A whole cell of the band: where its sides come from, and how these vary along themselves.
+type BandCell = ([Source; 4], [f64; 4]);
+
+/// One cell's divergence: its sides with values in the band, and what the fixed sides give.
+#[derive(Debug, Clone, Copy)]
+struct Equation {
+    slots: [Option<Slot>; 4],
+    fixed: f64,
+}
+
+impl Equation {
+    /// Side values with the signs they enter with.
+    fn terms(&self) -> impl Iterator<Item = (usize, f64)> {
+        let sides = self.slots.into_iter().enumerate();
+        sides.filter_map(|(side, slot)| Some((slot?.index(), sign(side))))
+    }
+}
 
 struct Flux<'a> {
     mask: &'a Mask,
     nodal: NodalFlux<'a>,
-    regions: &'a [Region],
-    /// Nodal values row by row.
-    natural: Vec<f64>,
-    /// Range of regions of each cut cell, by row and column.
-    cells: BTreeMap<(i64, i64), (usize, usize)>,
-    /// Columns of the cut cells of each row, rising.
-    cut: BTreeMap<i64, Vec<i64>>,
+    cut: &'a CutCells,
     /// Side values of the band; sides of regions point here.
     sides: Vec<Side>,
-    region_sides: Vec<[usize; 4]>,
-    /// Whole cells in the band: where their sides come from, and how these vary along themselves.
-    band: Vec<([Source; 4], [f64; 4])>,
+    region_sides: Vec<[Slot; 4]>,
+    band: Vec<BandCell>,
+}
+
+/// The whole cells of some rows: energy of those away from the wall, and those of the band.
+#[derive(Default)]
+struct WholeRows {
+    energy: f64,
+    band: Vec<BandCell>,
 }
 
 impl<'a> Flux<'a> {
-    fn new(mask: &'a Mask, phi: &'a Field, regions: &'a [Region]) -> Self {
-        let mut cells = BTreeMap::new();
-        for (index, region) in regions.iter().enumerate() {
-            let range = cells
-                .entry((region.cell.1, region.cell.0))
-                .or_insert((index, index));
-            range.1 = index + 1;
-        }
-        let mut cut: BTreeMap<i64, Vec<i64>> = BTreeMap::new();
-        for &(row, column) in cells.keys() {
-            cut.entry(row).or_default().push(column);
-        }
+    fn new(mask: &'a Mask, phi: &'a Field, cut: &'a CutCells) -> Self {
         Self {
             mask,
-            nodal: NodalFlux { mask, phi },
-            regions,
-            natural: phi.natural(mask),
-            cells,
+            nodal: NodalFlux::new(mask, phi),
             cut,
             sides: Vec::new(),
             region_sides: Vec::new(),
@@ -149,31 +162,17 @@ impl<'a> Flux<'a> {
         }
     }
 
-    fn cut_columns(&self, j: i64) -> &[i64] {
-        self.cut.get(&j).map_or(&[][..], Vec::as_slice)
-    }
-
-    fn is_cut(&self, i: i64, j: i64) -> bool {
-        self.cut_columns(j).binary_search(&i).is_ok()
-    }
-
-    fn value(&self, i: i64, j: i64) -> Option<f64> {
-        self.nodal.value(i, j)
-    }
-
     /// Number of whole cells: fluid nodes whose cell the outline does not pass through.
     fn whole_cells(&self) -> usize {
-        let cut = self
-            .cells
-            .keys()
-            .filter(|&&(j, i)| self.value(i, j).is_some())
-            .count();
-        self.mask.nodes() - cut
+        let cells = self.cut.rows.cells().iter();
+        let cut = cells.filter(|&&(i, j)| self.nodal.value(i, j).is_some());
+        self.mask.nodes() - cut.count()
     }
 
     /// Gives every side of every region its value and weight; shared sides get one value.
     fn set_up_sides(&mut self, pairs: &[[(usize, usize); 2]]) {
-        let mut group: Vec<usize> = (0..4 * self.regions.len()).collect();
+        let regions = &self.cut.regions;
+        let mut group: Vec<usize> = (0..4 * regions.len()).collect();
         for [a, b] in pairs {
             let (x, y) = (
                 root(&mut group, 4 * a.0 + a.1),
@@ -181,21 +180,16 @@ impl<'a> Flux<'a> {
             );
             group[x.max(y)] = x.min(y);
         }
-        let mut place = BTreeMap::new();
-        for index in 0..self.regions.len() {
-            let region = &self.regions[index];
+        let mut slot_of = vec![usize::MAX; group.len()];
+        for (index, region) in regions.iter().enumerate() {
             let (i, j) = region.cell;
-            let mut slots = [0; 4];
+            let mut slots = [Slot::FIRST; 4];
             for (side, slot) in slots.iter_mut().enumerate() {
                 let name = root(&mut group, 4 * index + side);
-                *slot = *place.entry(name).or_insert(self.sides.len());
-                if *slot == self.sides.len() {
-                    let length: f64 = region
-                        .sides
-                        .iter()
-                        .filter(|part| part.0 == side)
-                        .map(|part| part.2)
-                        .sum();
+                if slot_of[name] == usize::MAX {
+                    slot_of[name] = self.sides.len();
+                    let parts = self.cut.sides(region).iter();
+                    let length: f64 = parts.filter(|p| p.0 == side).map(|p| p.2).sum();
                     let extrapolated = (length <= 0.0).then(|| self.nodal.beyond(i, j, side));
                     self.sides.push(Side {
                         value: extrapolated
@@ -204,197 +198,171 @@ impl<'a> Flux<'a> {
                         weight: FREE_WEIGHT + length,
                     });
                 }
+                *slot = Slot::new(slot_of[name]);
             }
             self.region_sides.push(slots);
         }
     }
 
     fn sides_of(&self, region: usize) -> [f64; 4] {
-        self.region_sides[region].map(|slot| self.sides[slot].value)
+        self.region_sides[region].map(|slot| self.sides[slot.index()].value)
     }
 
     /// The one region of a cut cell on a side that it shares with a whole cell.
     fn region_at(&self, i: i64, j: i64, side: usize) -> Option<usize> {
-        let &(first, end) = self.cells.get(&(j, i))?;
-        (first..end).find(|&index| self.regions[index].sides.iter().any(|part| part.0 == side))
+        let cell = self.cut.rows.find((i, j))?;
+        let is_on_side = |&index: &usize| {
+            self.cut
+                .sides(&self.cut.regions[index])
+                .iter()
+                .any(|p| p.0 == side)
+        };
+        self.cut.rows.items(cell).find(is_on_side)
     }
 
     /// Energy of the whole cells away from the wall; those beside cut cells are collected in the band.
     fn whole_energy(&mut self) -> f64 {
         let mut total = 0.0;
-        for run in &self.mask.runs {
-            let (first, end) = (i64::from(run.first), i64::from(run.end()));
-            let mut west: Option<f64> = None;
-            let mut i = first;
-            let mut row = 0.0;
-            for special in self.beside_cut(run) {
-                row += self.stretch(run, i..special, &mut west);
-                row += self.single_cell(special, i64::from(run.row), &mut west);
-                i = special + 1;
-            }
-            row += self.stretch(run, i..end, &mut west);
-            total += row;
+        for rows in by_blocks(self.mask, 0, |rows| self.whole_rows(rows)) {
+            total += rows.energy;
+            self.band.extend(rows.band);
         }
         total
     }
 
-    /// Columns of a run whose cell is cut or has a cut cell among the eight around it, rising.
-    fn beside_cut(&self, run: &Run) -> Vec<i64> {
-        let j = i64::from(run.row);
-        let (first, end) = (i64::from(run.first), i64::from(run.end()));
-        let near = |row: i64, reach: i64| {
-            let columns = self.cut_columns(row);
-            let from = columns.partition_point(|&c| c < first - reach);
-            columns[from..]
-                .iter()
-                .copied()
-                .take_while(move |&c| c < end + reach)
-        };
-        let mut columns: Vec<i64> = (j - 1..=j + 1)
-            .flat_map(|row| near(row, 1))
-            .flat_map(|c| [c - 1, c, c + 1])
-            .filter(|c| (first..end).contains(c))
-            .collect();
-        columns.sort_unstable();
-        columns.dedup();
-        columns
+    fn whole_rows(&self, rows: Range<i64>) -> WholeRows {
+        let nodes = RowValues::new(self.mask, self.nodal.phi, rows.start - 1..rows.end + 1);
+        let mut found = WholeRows::default();
+        let mut near_wall = Vec::new();
+        for j in rows {
+            self.cut.rows.columns_around(j, &mut near_wall);
+            for run in self.mask.row(j as u32) {
+                self.whole_run(run, &nodes, &near_wall, &mut found);
+            }
+        }
+        found
     }
 
-    /// Row-by-row index of a node that is certainly fluid.
-    fn natural_at(&self, i: i64, j: i64) -> Option<usize> {
-        let (i, j) = (u32::try_from(i).ok()?, u32::try_from(j).ok()?);
-        self.mask.natural_at(i, j).map(|n| n as usize)
+    /// - `near_wall`: columns whose cell is cut or has a cut cell among the eight around it
+    fn whole_run(
+        &self,
+        run: &Run,
+        nodes: &RowValues,
+        near_wall: &[(i64, Around)],
+        found: &mut WholeRows,
+    ) {
+        let (first, end, j) = (
+            i64::from(run.first),
+            i64::from(run.end()),
+            i64::from(run.row),
+        );
+        let mut west: Option<f64> = None;
+        let mut i = first;
+        let mut energy = 0.0;
+        let from = near_wall.partition_point(|c| c.0 < first);
+        for &(column, around) in near_wall[from..].iter().take_while(|c| c.0 < end) {
+            energy += Self::stretch(nodes, i..column, j, &mut west);
+            let place = (column, j, around);
+            energy += self.single_cell(place, nodes, &mut west, &mut found.band);
+            i = column + 1;
+        }
+        found.energy += energy + Self::stretch(nodes, i..end, j, &mut west);
     }
 
     /// Cells with whole cells all around: the balance decides each east side.
-    fn stretch(&mut self, run: &Run, cells: std::ops::Range<i64>, west: &mut Option<f64>) -> f64 {
-        let (from, j) = (cells.start, i64::from(run.row));
-        let n = (cells.end - from).max(0) as usize;
-        let rows = [j, j - 1, j + 1].map(|row| {
-            let start = self.natural_at(from, row)?;
-            // The last one too must be in the same run.
-            (self.natural_at(cells.end - 1, row)? == start + n - 1).then_some(start)
-        });
-        let (true, [Some(here), Some(below), Some(above)], true) =
-            (n > 0, rows, from > i64::from(run.first))
-        else {
-            return cells.map(|i| self.single_cell(i, j, west)).sum();
+    fn stretch(nodes: &RowValues, columns: Range<i64>, j: i64, west: &mut Option<f64>) -> f64 {
+        let n = (columns.end - columns.start).max(0) as usize;
+        if n == 0 {
+            return 0.0;
+        }
+        let line = |row: i64| nodes.line(columns.start - 1, row, n + 2);
+        let (Some(below), Some(centre), Some(above)) = (line(j - 1), line(j), line(j + 1)) else {
+            // A node taken out of the fluid nearby.
+            return columns.map(|i| plain_cell(nodes, i, j, west)).sum();
         };
-        // All eight cells around are whole, so every node around is fluid.
-        let line = |start: usize| self.natural.get(start - 1..=start + n).unwrap_or(&[]);
-        let (centre, below, above) = (line(here), line(below), line(above));
-        if [centre, below, above].iter().any(|l| l.len() != n + 2) {
-            return cells.map(|i| self.single_cell(i, j, west)).sum();
-        }
-        let mut w = west.unwrap_or(centre[1] - centre[0]);
-        let mut sum = 0.0;
-        for k in 0..n {
-            let (south, north) = (centre[k + 1] - below[k + 1], above[k + 1] - centre[k + 1]);
-            let east = w - 1.0 - (north - south);
-            let across = |k: usize| [above[k] - centre[k], centre[k] - below[k]];
-            let up = |k: usize| 0.5 * ((above[k + 1] - above[k]) - (below[k + 1] - below[k]));
-            let ([nw, sw], [ne, se]) = (across(k), across(k + 2));
-            let along = [0.5 * (se - sw), up(k + 1), 0.5 * (ne - nw), up(k)];
-            sum += whole_energy([south, east, north, w], along);
-            w = east;
-        }
-        *west = Some(w);
-        sum
+        let first = west.unwrap_or(centre[1] - centre[0]);
+        let (energy, last) = cells([below, centre, above], first);
+        *west = Some(last);
+        energy
     }
 
-    /// Variation of the flux along each side of a whole cell; none where a cut cell shares the side or a node
-    /// around it is not fluid. The two cells at a side get the same value.
-    fn variations(&self, i: i64, j: i64) -> [f64; 4] {
-        [(0, -1), (1, 0), (0, 1), (-1, 0)].map(|(di, dj)| {
-            if self.is_cut(i + di, j + dj) {
-                return 0.0;
-            }
-            // The side between a lower or left node and the next one; the direction along it.
-            let (a, b) = (i + di.min(0), j + dj.min(0));
-            let (step, turn) = ((di.abs(), dj.abs()), (dj.abs(), di.abs()));
-            let flux = |k: i64| {
-                let (x, y) = (a + k * turn.0, b + k * turn.1);
-                Some(self.value(x + step.0, y + step.1)? - self.value(x, y)?)
-            };
-            match (flux(1), flux(-1)) {
-                (Some(above), Some(below)) => 0.5 * (above - below),
-                _ => 0.0,
-            }
-        })
-    }
-
-    /// One cell that may have cut cells beside it; cut ones are nothing here.
-    fn single_cell(&mut self, i: i64, j: i64, west: &mut Option<f64>) -> f64 {
-        let Some(centre) = self.value(i, j).filter(|_| !self.is_cut(i, j)) else {
+    /// One cell that has cut cells around it or is cut itself; cut ones are nothing here.
+    ///
+    /// - `place`: column, row, and which cells around are cut
+    fn single_cell(
+        &self,
+        (i, j, around): (i64, i64, Around),
+        nodes: &RowValues,
+        west: &mut Option<f64>,
+        band: &mut Vec<BandCell>,
+    ) -> f64 {
+        if around.has(0, 0) {
             *west = None;
             return 0.0;
-        };
-        let side = |di: i64, dj: i64, own: usize| {
-            if self.is_cut(i + di, j + dj) {
-                self.region_at(i + di, j + dj, (own + 2) % 4)
-                    .map(|region| Source::Band(self.region_sides[region][(own + 2) % 4]))
-            } else {
-                self.value(i + di, j + dj)
-                    .map(|v| Source::Fixed(sign(own) * (v - centre)))
+        }
+        let cell = NodesAround::new(nodes, i, j);
+        let along = cell.variations(|di, dj| around.has(di, dj));
+        let sources = [(0, -1), (1, 0), (0, 1), (-1, 0)].map(|(di, dj)| {
+            let own = side_towards(di, dj);
+            match *west {
+                Some(w) if own == WEST => Source::Fixed(w),
+                _ if around.has(di, dj) => {
+                    let beyond = (own + 2) % 4;
+                    let region = self.region_at(i + di, j + dj, beyond);
+                    region.map_or(Source::Fixed(0.0), |region| {
+                        Source::Band(self.region_sides[region][beyond])
+                    })
+                }
+                _ => Source::Fixed(cell.difference(own)),
             }
-        };
-        let along = self.variations(i, j);
-        let sources = [
-            side(0, -1, SOUTH),
-            side(1, 0, EAST),
-            side(0, 1, NORTH),
-            west.map_or_else(|| side(-1, 0, WEST), |w| Some(Source::Fixed(w))),
-        ]
-        .map(|source| source.unwrap_or(Source::Fixed(0.0)));
-        if let [
-            Source::Fixed(south),
-            Source::Fixed(_),
-            Source::Fixed(north),
-            Source::Fixed(w),
-        ] = sources
+        });
+        if sources
+            .iter()
+            .all(|source| matches!(source, Source::Fixed(_)))
         {
-            let east = w - 1.0 - (north - south);
-            *west = Some(east);
-            return whole_energy([south, east, north, w], along);
+            let fixed = sources.map(|source| self.read(source));
+            return balanced_cell(fixed, along, west);
         }
         *west = match sources[EAST] {
             Source::Fixed(east) => Some(east),
             Source::Band(_) => None,
         };
-        self.band.push((sources, along));
+        band.push((sources, along));
         0.0
     }
 
     fn read(&self, source: Source) -> f64 {
         match source {
             Source::Fixed(value) => value,
-            Source::Band(slot) => self.sides[slot].value,
+            Source::Band(slot) => self.sides[slot.index()].value,
         }
     }
 
     fn band_energy(&self) -> f64 {
-        self.band
-            .iter()
-            .map(|(cell, along)| whole_energy(cell.map(|source| self.read(source)), *along))
-            .sum()
+        let cells = self.band.iter();
+        let energy = cells.map(|(cell, along)| whole_energy(cell.map(|s| self.read(s)), *along));
+        let [sum] = sum_in_groups(energy.map(|energy| [energy]));
+        sum
     }
 
     /// Cells of the band as lists of (side value, sign), with what the fixed sides already give.
     fn equations(&self) -> Vec<Equation> {
-        let of_regions = self.region_sides.iter().map(|slots| {
-            let terms = (0..4).map(|side| (slots[side], sign(side))).collect();
-            (terms, 0.0)
+        let of_regions = self.region_sides.iter().map(|slots| Equation {
+            slots: slots.map(Some),
+            fixed: 0.0,
         });
         let of_cells = self.band.iter().map(|(cell, _)| {
-            let mut terms = Vec::new();
-            let mut fixed = 0.0;
+            let mut equation = Equation {
+                slots: [None; 4],
+                fixed: 0.0,
+            };
             for (side, &source) in cell.iter().enumerate() {
                 match source {
-                    Source::Fixed(value) => fixed += sign(side) * value,
-                    Source::Band(slot) => terms.push((slot, sign(side))),
+                    Source::Fixed(value) => equation.fixed += sign(side) * value,
+                    Source::Band(slot) => equation.slots[side] = Some(slot),
                 }
             }
-            (terms, fixed)
+            equation
         });
         of_regions.chain(of_cells).collect()
     }
@@ -402,33 +370,53 @@ impl<'a> Flux<'a> {
     /// Smallest change of the band's sides that makes every divergence -1; then checks it.
     fn balance(&mut self) -> Result<(), ProofError> {
         let equations = self.equations();
-        let n = equations.len();
+        let system = self.least_squares(&equations);
         // Twice: the second pass removes the rounding of the first.
         for _ in 0..2 {
-            let mut at_side: Vec<Vec<(usize, f64)>> = vec![Vec::new(); self.sides.len()];
-            let mut defect = vec![0.0; n];
-            for (cell, (terms, fixed)) in equations.iter().enumerate() {
-                let have: f64 = terms.iter().map(|&(s, c)| c * self.sides[s].value).sum();
-                defect[cell] = -1.0 - fixed - have;
-                for &(slot, coefficient) in terms {
-                    at_side[slot].push((cell, coefficient));
+            let mut defect: Vec<f64> = equations
+                .iter()
+                .map(|e| -1.0 - self.divergence(e))
+                .collect();
+            system.solve(&mut defect);
+            for (equation, multiplier) in equations.iter().zip(defect) {
+                for (slot, coefficient) in equation.terms() {
+                    let side = &mut self.sides[slot];
+                    side.value += coefficient * multiplier / side.weight;
                 }
-            }
-            let mut matrix = TriMat::new((n, n));
-            for (side, cells) in self.sides.iter().zip(&at_side) {
-                for &(a, ca) in cells {
-                    for &(b, cb) in cells {
-                        matrix.add_triplet(a, b, ca * cb / side.weight);
-                    }
-                }
-            }
-            solve_sparse(&matrix.to_csr(), &mut defect);
-            for (side, cells) in self.sides.iter_mut().zip(&at_side) {
-                let change: f64 = cells.iter().map(|&(cell, c)| c * defect[cell]).sum();
-                side.value += change / side.weight;
             }
         }
         self.check_balance(&equations)
+    }
+
+    /// The system for the multipliers of the equations: two are joined by each side they have in common.
+    fn least_squares(&self, equations: &[Equation]) -> Elimination {
+        // Equations at each side as a chain: the last one, and from each term to the one before.
+        let mut last = vec![u32::MAX; self.sides.len()];
+        let mut terms: Vec<(u32, u32, f64)> = Vec::with_capacity(4 * equations.len());
+        let mut diagonal = vec![0.0; equations.len()];
+        let mut pairs = Vec::with_capacity(2 * equations.len());
+        for (cell, equation) in equations.iter().enumerate() {
+            for (slot, coefficient) in equation.terms() {
+                let weight = self.sides[slot].weight;
+                diagonal[cell] += coefficient * coefficient / weight;
+                let mut before = last[slot];
+                while let Some(&(other, next, factor)) = terms.get(before as usize) {
+                    pairs.push((other, cell as u32, coefficient * factor / weight));
+                    before = next;
+                }
+                terms.push((cell as u32, last[slot], coefficient));
+                last[slot] = terms.len() as u32 - 1;
+            }
+        }
+        Elimination::new(diagonal, &pairs)
+    }
+
+    fn divergence(&self, equation: &Equation) -> f64 {
+        let terms = equation.terms();
+        equation.fixed
+            + terms
+                .map(|(slot, c)| c * self.sides[slot].value)
+                .sum::<f64>()
     }
 
     /// Refuses side values whose divergence is not -1 in every cell of the band.
@@ -439,10 +427,7 @@ impl<'a> Flux<'a> {
             .fold(1.0, |m: f64, s| m.max(s.value.abs()));
         let worst = equations
             .iter()
-            .map(|(terms, fixed)| {
-                let have: f64 = terms.iter().map(|&(s, c)| c * self.sides[s].value).sum();
-                (have + fixed + 1.0).abs()
-            })
+            .map(|equation| (self.divergence(equation) + 1.0).abs())
             .fold(
                 0.0,
                 |m: f64, d| if d.is_nan() { f64::INFINITY } else { m.max(d) },
@@ -456,7 +441,7 @@ impl<'a> Flux<'a> {
 }
 
 /// Representative of a side in the union of shared sides.
-pub(super) fn root(group: &mut [usize], mut index: usize) -> usize {
+fn root(group: &mut [usize], mut index: usize) -> usize {
     while group[index] != index {
         group[index] = group[group[index]];
         index = group[index];

@@ -90,12 +90,6 @@ impl BandedLu {
     }
 }
 
-/// Solves a sparse system that needs no pivoting, in place.
-pub(crate) fn solve_sparse(matrix: &CsMat<f64>, values: &mut [f64]) {
-    let (order, half_band) = BandedLu::plan(matrix);
-    BandedLu::new(matrix, order, half_band).solve(values);
-}
-
 /// Reversed breadth-first order over all connected parts.
 fn breadth_first_order(matrix: &CsMat<f64>) -> Vec<usize> {
     let n = matrix.rows();

@@ -22,7 +22,6 @@ mod stencil;
 mod transfer;
 
 pub use assembled::{natural_order, poisson_matrix};
-pub(crate) use coarsest::solve_sparse;
 pub use cycle::{SolveControl, Solved};
 pub use field::Field;
 pub use hierarchy::{Grid, Hierarchy};

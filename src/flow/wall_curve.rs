@@ -7,8 +7,11 @@
 use crate::geometry::{Corner, Outline, Point};
 
 use super::corner_law::CornerLaw;
+use super::wall_balance::BalanceFactor;
+use super::wall_flux::WallFlux;
 use super::section_flow::WallSample;
 use super::wall_path::WallPath;
+use super::wall_quadrature::GAUSS_2;
 use super::wall_statistics::WallReport;
 use super::wall_stretch::Stretch;
 
@@ -34,6 +37,8 @@ pub struct LoopCurve {
     pub(crate) stretches: Vec<Stretch>,
     /// Spacing of the lattice, m.
     pub(crate) spacing: f64,
+    /// What the curve of the stretches is multiplied by.
+    pub(crate) factor: BalanceFactor,
 }
 
 /// One point of the curve.
@@ -86,10 +91,10 @@ impl WallCurve {
         samples: &[WallSample],
         spacing: f64,
     ) -> Self {
-        Self::with_laws(outline, corners, samples, spacing, |_, _| None)
+        Self::with_laws(outline, corners, samples, spacing, |_, _| None).with_points()
     }
 
-    /// The curve with the laws of some corners known.
+    /// The curve with the laws of some corners known, still without its points.
     ///
     /// - `laws`: of the sides after and before a corner, from the indices of loop and corner
     pub(crate) fn with_laws(
@@ -100,7 +105,7 @@ impl WallCurve {
         laws: impl Fn(usize, usize) -> Option<[CornerLaw; 2]>,
     ) -> Self {
         let singular_length = SINGULAR_LENGTH * 4.0 * outline.area() / outline.wetted_perimeter();
-        let mut loops: Vec<LoopCurve> = outline
+        let loops: Vec<LoopCurve> = outline
             .loops()
             .enumerate()
             .map(|(index, wall)| {
@@ -119,12 +124,10 @@ impl WallCurve {
                     path,
                     stretches,
                     spacing,
+                    factor: BalanceFactor::one(),
                 }
             })
             .collect();
-        for (index, curve) in loops.iter_mut().enumerate() {
-            curve.points = curve.collect_points(index, singular_length);
-        }
         Self {
             loops,
             singular_length,
@@ -133,6 +136,22 @@ impl WallCurve {
 }
 
 impl WallCurve {
+    /// Gives every loop the factor that makes it carry the fluxes into the wall.
+    pub(super) fn balanced(mut self, fluxes: &[WallFlux]) -> Self {
+        for (index, along) in self.loops.iter_mut().enumerate() {
+            along.balance(fluxes.iter().filter(|flux| flux.loop_index == index));
+        }
+        self
+    }
+
+    /// Puts the points on the finished curve.
+    pub(super) fn with_points(mut self) -> Self {
+        for along in &mut self.loops {
+            along.points = along.collect_points(self.singular_length);
+        }
+        self
+    }
+
     /// The point with the largest shear; nearer to a singular corner than
     /// [`WallCurve::singular_length`], the corner's own entry stands for the curve.
     pub fn largest(&self) -> Option<CurvePoint> {
@@ -216,6 +235,33 @@ impl LoopCurve {
         self.path.length()
     }
 
+    fn balance<'a>(&mut self, fluxes: impl Iterator<Item = &'a WallFlux>) {
+        self.factor = BalanceFactor::with_marks(self.length(), self.spacing);
+        let mut curve = Vec::new();
+        self.visit((0.0, self.length()), 1, false, &mut |abscissa| {
+            curve.push((abscissa.arc_length, abscissa.weighted));
+        });
+        let mut wanted = Vec::new();
+        for flux in fluxes {
+            let (middle, half) = (0.5 * (flux.from + flux.to), 0.5 * (flux.to - flux.from));
+            // Within a cell the flux is spread as the curve says.
+            let places = GAUSS_2.map(|(x, _)| middle + half * x);
+            let shears = places.map(|s| self.shear_at(s));
+            let sum = shears[0] + shears[1];
+            for (place, shear) in places.into_iter().zip(shears) {
+                let share = if sum > 0.0 && sum.is_finite() {
+                    shear / sum
+                } else {
+                    0.5
+                };
+                wanted.push((place, share * flux.flux));
+            }
+        }
+        if !wanted.is_empty() {
+            self.factor.fit(&curve, &wanted);
+        }
+    }
+
     /// Shear per gradient at an arc length, m; without bound at a singular corner.
     pub fn shear_at(&self, arc_length: f64) -> f64 {
         let total = self.length();
@@ -226,7 +272,9 @@ impl LoopCurve {
             Some(index) => (self.stretches.get(index), s),
             None => (self.stretches.last(), s + total),
         };
-        stretch.map_or(0.0, |stretch| stretch.value(s - stretch.start))
+        stretch.map_or(0.0, |stretch| {
+            stretch.value(s - stretch.start) * self.factor.at(s)
+        })
     }
 
     /// The top of the parabola through the curve around a point, if the curve is higher there.
@@ -307,7 +355,7 @@ impl LoopCurve {
     }
 
     /// Points of the curve: the pieces' ends, closer together beside corners.
-    fn collect_points(&self, loop_index: usize, singular_length: f64) -> Vec<CurvePoint> {
+    fn collect_points(&self, singular_length: f64) -> Vec<CurvePoint> {
         let total = self.length();
         // With zero for the end of a stretch and one for the start of the next.
         let mut points: Vec<(u8, CurvePoint)> = Vec::new();
@@ -321,7 +369,7 @@ impl LoopCurve {
                 }
                 distances.sort_by(f64::total_cmp);
                 points.extend([false, true].map(|at_end| {
-                    let point = self.corner_point(loop_index, index, at_end, singular_length);
+                    let point = self.corner_point(index, at_end, singular_length);
                     (u8::from(!at_end), point)
                 }));
             } else {
@@ -333,7 +381,7 @@ impl LoopCurve {
                     arc_length,
                     at: self.path.position(arc_length),
                     normal: self.path.edge_normal(self.path.edge_at(arc_length)),
-                    shear_per_gradient: stretch.value(distance),
+                    shear_per_gradient: stretch.value(distance) * self.factor.at(arc_length),
                     kind: PointKind::Regular,
                 };
                 (1, point)
@@ -349,7 +397,6 @@ impl LoopCurve {
     /// An end of a stretch.
     fn corner_point(
         &self,
-        loop_index: usize,
         index: usize,
         at_end: bool,
         singular_length: f64,
@@ -377,7 +424,7 @@ impl LoopCurve {
             at: self.path.position(arc_length),
             normal: self.path.edge_normal(self.path.edge_at(inside)),
             shear_per_gradient: if singular {
-                self.integrate_between(loop_index, from, to, 1, &|_| 1.0) / length
+                self.integral(from, to) / length
             } else {
                 0.0
             },

@@ -40,6 +40,14 @@ impl WallPath {
         Some(self.arc.get(edge)? + (at[0] - start[0]).hypot(at[1] - start[1]))
     }
 
+    /// Place on an edge at an arc length, m.
+    pub(crate) fn on_edge_at(&self, edge: usize, arc_length: f64) -> Point {
+        let (a, b) = self.edge(edge);
+        let length = self.arc[edge + 1] - self.arc[edge];
+        let share = (arc_length - self.arc[edge]) / length;
+        [a[0] + share * (b[0] - a[0]), a[1] + share * (b[1] - a[1])]
+    }
+
     /// The edge at an arc length between zero and the length.
     pub(crate) fn edge_at(&self, arc_length: f64) -> usize {
         let after = self.arc.partition_point(|&a| a <= arc_length);

@@ -14,6 +14,7 @@ use super::corner_field::corner_laws;
 use super::corner_law::CornerLaw;
 use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::WallCurve;
+use super::wall_flux::wall_fluxes;
 use super::wall_path::WallPath;
 
 /// Turning from which a vertex or a small arc counts as a corner.
@@ -73,6 +74,18 @@ pub(crate) fn wall_shear(
     let curve = WallCurve::with_laws(outline, corners, &samples, lattice.spacing, |l, c| {
         walls.get(l)?.singular_laws((lattice, mask, phi), c)
     });
+    let paths: Vec<WallPath> = curve.loops.iter().map(|along| along.path.clone()).collect();
+    let at_wall = |loop_index: usize, arc_length: f64| -> Option<Point> {
+        let wall: &Wall = walls.get(loop_index)?;
+        let s = arc_length.rem_euclid(wall.path.length());
+        let normal = wall.normal(s, lattice.spacing)?;
+        let shear = curve.loops.get(loop_index)?.shear_at(s);
+        shear.is_finite().then(|| normal.map(|c| -shear * c))
+    };
+    let area = outline.area();
+    let fluxes = wall_fluxes((lattice, mask, phi), &paths, area, &at_wall);
+    let uncorrected = curve.integrate(1, |_| 1.0) / area - 1.0;
+    let curve = curve.balanced(&fluxes).with_points();
     let largest = curve.largest();
     WallShear {
         mean_per_gradient: outline.area() / outline.wetted_perimeter(),

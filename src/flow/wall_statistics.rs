@@ -271,7 +271,7 @@ fn statistics<'a>(
         let Some(along) = curve.loops.get(part.loop_index) else {
             continue;
         };
-        integral += along.integrate_between(part.loop_index, part.from, part.to, 1, &|_| 1.0);
+        integral += along.integral(part.from, part.to);
         found.length += part.to - part.from;
         collect(along, part, curve.singular_length, &mut found, &mut pieces);
     }

@@ -2,14 +2,14 @@
 
 use std::time::Instant;
 
-use crate::geometry::{Outline, Point, largest_inscribed_circle};
+use crate::geometry::{Corner, Outline, Point, largest_inscribed_circle};
 use crate::grid::{Lattice, LineCrossings, Mask, ResolutionError, spacing};
 use crate::proof::bracket;
 use crate::solve::{Field, Hierarchy, SolveControl};
 use crate::warning::{Code, Warning};
 
 use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, refine};
-use super::assemble::{GridAnswer, Solution, assemble, leading_exponent};
+use super::assemble::{GridAnswer, Solution, assemble, finish, leading_exponent};
 use super::corner_alignment::{Alignment, align};
 use super::field::DenseField;
 use super::grid_integrals::GridIntegrals;
@@ -106,9 +106,17 @@ pub struct SolvedSection {
     lattice: Lattice,
     mask: Mask,
     phi: Field,
+    corners: Vec<Vec<Corner>>,
 }
 
 impl SolvedSection {
+    /// With the curve of the wall shear and what depends on it.
+    fn finished(mut self) -> Self {
+        let solution = (&self.lattice, &self.mask, &self.phi);
+        finish(&mut self.flow, &self.outline, solution, &self.corners);
+        self
+    }
+
     /// The outline that was solved, oriented.
     pub fn outline(&self) -> &Outline {
         &self.outline
@@ -152,12 +160,12 @@ pub fn solve_outline(
         .fold(f64::INFINITY, f64::min);
     let attempt = |cells: f64| solve_at(&outline, diameter, cells, options);
     let Some(cells) = options.cells_across else {
-        return refine(&outline, diameter, options, attempt);
+        return refine(&outline, diameter, options, attempt).map(SolvedSection::finished);
     };
     let mut solved = attempt(cells)?;
     solved.flow.accuracy.further = further(&outline, &solved.flow);
     warn_if_rough(&mut solved.flow, ROUGH);
-    Ok(solved)
+    Ok(solved.finished())
 }
 
 /// Adds a warning where the estimated error of `K` is above a limit.
@@ -224,7 +232,7 @@ fn solve_at(
         lattice: &lattice,
         mask: &mask,
         phi: &phi,
-        corners,
+        corners: &corners,
         misfit: fitted.misfit,
         bracket,
         answers,
@@ -237,6 +245,7 @@ fn solve_at(
         lattice,
         mask,
         phi,
+        corners,
     })
 }
 

@@ -63,7 +63,7 @@ pub(super) struct Region<'a> {
 }
 
 /// The chains of all loops, by cell and position; loops that stay in one cell have none.
-pub(super) fn chains(lattice: &Lattice, paths: &[WallPath]) -> Vec<Chain> {
+pub(super) fn chains(lattice: &Lattice, paths: &[&WallPath]) -> Vec<Chain> {
     let mut found = Vec::new();
     for (loop_index, (pair, path)) in lattice.loop_starts.windows(2).zip(paths).enumerate() {
         let points: Vec<Point> = lattice.edges[pair[0]..pair[1]]

@@ -138,8 +138,14 @@ impl WallCurve {
 impl WallCurve {
     /// Gives every loop the factor that makes it carry the fluxes into the wall.
     pub(super) fn balanced(mut self, fluxes: &[WallFlux]) -> Self {
-        for (index, along) in self.loops.iter_mut().enumerate() {
-            along.balance(fluxes.iter().filter(|flux| flux.loop_index == index));
+        let mut by_loop: Vec<Vec<WallFlux>> = vec![Vec::new(); self.loops.len()];
+        for flux in fluxes {
+            if let Some(own) = by_loop.get_mut(flux.loop_index) {
+                own.push(*flux);
+            }
+        }
+        for (along, own) in self.loops.iter_mut().zip(by_loop) {
+            along.balance(&own);
         }
         self
     }
@@ -207,12 +213,15 @@ fn stretches(
             if length <= 0.0 {
                 length += total;
             }
-            let mut own: Vec<(f64, f64)> = [0.0, total]
+            let own: Vec<(f64, f64)> = [0.0, total]
                 .iter()
-                .flat_map(|turn| samples.iter().map(move |&(s, v)| (s + turn - start, v)))
-                .filter(|&(s, _)| s > 0.0 && s < length)
+                .flat_map(|turn| {
+                    let low = samples.partition_point(|s| s.0 + turn - start <= 0.0);
+                    let high = samples.partition_point(|s| s.0 + turn - start < length);
+                    let here = samples.get(low..high).unwrap_or(&[]);
+                    here.iter().map(move |&(s, v)| (s + turn - start, v))
+                })
                 .collect();
-            own.sort_by(|a, b| a.0.total_cmp(&b.0));
             let fallback = if own.is_empty() {
                 nearest(start + 0.5 * length)
             } else {
@@ -235,26 +244,31 @@ impl LoopCurve {
         self.path.length()
     }
 
-    fn balance<'a>(&mut self, fluxes: impl Iterator<Item = &'a WallFlux>) {
+    fn balance(&mut self, fluxes: &[WallFlux]) {
         self.factor = BalanceFactor::with_marks(self.length(), self.spacing);
         let mut curve = Vec::new();
         self.visit((0.0, self.length()), 1, false, &mut |abscissa| {
             curve.push((abscissa.arc_length, abscissa.weighted));
         });
         let mut wanted = Vec::new();
+        let mut places: Vec<(f64, f64)> = Vec::new();
         for flux in fluxes {
-            let (middle, half) = (0.5 * (flux.from + flux.to), 0.5 * (flux.to - flux.from));
-            // Within a cell the flux is spread as the curve says.
-            let places = GAUSS_2.map(|(x, _)| middle + half * x);
-            let shears = places.map(|s| self.shear_at(s));
-            let sum = shears[0] + shears[1];
-            for (place, shear) in places.into_iter().zip(shears) {
-                let share = if sum > 0.0 && sum.is_finite() {
-                    shear / sum
-                } else {
-                    0.5
-                };
-                wanted.push((place, share * flux.flux));
+            // Within a cell the flux is spread as the curve says; no part crosses a mark.
+            places.clear();
+            let mut low = flux.from;
+            for high in self.factor.marks(flux.from, flux.to).chain([flux.to]) {
+                let (middle, half) = (0.5 * (low + high), 0.5 * (high - low));
+                places.extend(GAUSS_2.map(|(x, _)| {
+                    let place = middle + half * x;
+                    (place, half * self.shear_at(place))
+                }));
+                low = high;
+            }
+            let sum: f64 = places.iter().map(|place| place.1).sum();
+            if sum > 0.0 && sum.is_finite() {
+                wanted.extend(places.iter().map(|&(s, shear)| (s, shear / sum * flux.flux)));
+            } else {
+                wanted.push((0.5 * (flux.from + flux.to), flux.flux));
             }
         }
         if !wanted.is_empty() {

@@ -54,7 +54,7 @@ struct Balance<'a> {
 /// - `at_wall`: gradient of `phi` at a loop and arc length, m; `None` where it is not known
 pub(super) fn wall_fluxes(
     (lattice, mask, phi): (&Lattice, &Mask, &Field),
-    paths: &[WallPath],
+    paths: &[&WallPath],
     area: f64,
     at_wall: &dyn Fn(usize, f64) -> Option<Point>,
 ) -> Vec<WallFlux> {
@@ -113,7 +113,7 @@ impl Balance<'_> {
     }
 
     /// What the whole cells at the wall do not balance, on the wall next to each.
-    fn whole_cells(&self, lattice: &Lattice, paths: &[WallPath], cut: &[Chain]) -> Vec<WallFlux> {
+    fn whole_cells(&self, lattice: &Lattice, paths: &[&WallPath], cut: &[Chain]) -> Vec<WallFlux> {
         let unit = lattice.spacing * lattice.spacing;
         let mut found = Vec::new();
         for w in self.mask.wall.iter().flatten() {

@@ -7,8 +7,13 @@
 
 /// Distance of the marks, in spacings.
 const MARKS: f64 = 4.0;
-/// Least number of marks round a loop; shorter loops have one factor.
-const LEAST_MARKS: usize = 4;
+/// Distance from a re-entrant corner up to which the factor is the same, in spacings: nearer to it the fluxes
+/// between cells are not resolved.
+const PLATEAU: f64 = 8.0;
+/// The same as a share of the way to the next re-entrant corner.
+const PLATEAU_SHARE: f64 = 0.35;
+/// Loops shorter than this, in spacings, have one factor.
+const SHORT_LOOP: f64 = 16.0;
 /// Weight of the change from mark to mark against the integrals, where hats hold hardly any flux.
 const STIFFNESS: f64 = 1e-6;
 /// Relative residual at which the marks are found, and steps after which the search ends.
@@ -18,30 +23,76 @@ const MOST_STEPS: usize = 400;
 /// A factor along a loop, as a function of arc length.
 #[derive(Debug, Clone, PartialEq)]
 pub(crate) struct BalanceFactor {
-    /// Difference from one at the marks, evenly round the loop.
+    /// Difference from one, by the index of a mark; indices follow each other round the loop.
     changes: Vec<f64>,
-    /// Marks per length, 1/m.
-    density: f64,
+    /// Arc lengths and indices of the marks from the last one before the loop to the first one past it, m. Two
+    /// in a row have the same index where the factor does not change.
+    marks: Vec<(f64, usize)>,
+    /// Length of the loop, m.
+    length: f64,
 }
 
 impl BalanceFactor {
-    /// No change.
-    pub(crate) fn one() -> Self {
-        Self {
-            changes: vec![0.0],
-            density: 0.0,
-        }
-    }
-
     /// No change, with the marks of a loop.
     ///
     /// - `length`: of the loop; `spacing`: of the lattice, m
-    pub(crate) fn with_marks(length: f64, spacing: f64) -> Self {
-        let count = (length / (MARKS * spacing)).floor() as usize;
-        let count = if count < LEAST_MARKS { 1 } else { count };
+    /// - `singular`: arc lengths of its re-entrant corners, sorted, m
+    pub(crate) fn with_marks(length: f64, spacing: f64, singular: &[f64]) -> Self {
+        if length < SHORT_LOOP * spacing {
+            return Self {
+                changes: vec![0.0],
+                marks: vec![(0.0, 0), (length, 0)],
+                length,
+            };
+        }
+        let gap = |k: usize| {
+            let next = singular[(k + 1) % singular.len()];
+            let gap = next - singular[k];
+            if gap > 0.0 { gap } else { gap + length }
+        };
+        // Once round from the first corner, or from the first vertex.
+        let mut around: Vec<(f64, usize)> = Vec::new();
+        let mut count = 0;
+        let mut fill = |around: &mut Vec<(f64, usize)>, from: f64, to: f64| {
+            let pieces = ((to - from) / (MARKS * spacing)).floor().max(1.0);
+            for k in 1..pieces as usize {
+                count += 1;
+                around.push((from + (to - from) * k as f64 / pieces, count));
+            }
+            count += 1;
+            count
+        };
+        if singular.is_empty() {
+            around.push((0.0, 0));
+            fill(&mut around, 0.0, length);
+        }
+        let mut own = 0;
+        for (k, &corner) in singular.iter().enumerate() {
+            let before = gap((k + singular.len() - 1) % singular.len());
+            let after = gap(k);
+            let half = |gap: f64| (PLATEAU * spacing).min(PLATEAU_SHARE * gap);
+            around.push((corner - half(before.min(after)), own));
+            around.push((corner + half(before.min(after)), own));
+            let next = (k + 1) % singular.len();
+            let far = half(after.min(gap(next)));
+            own = fill(
+                &mut around,
+                corner + half(before.min(after)),
+                corner + after - far,
+            );
+        }
+        let mut marks: Vec<(f64, usize)> = [-length, 0.0, length]
+            .iter()
+            .flat_map(|turn| around.iter().map(move |&(s, k)| (s + turn, k)))
+            .collect();
+        let first = marks.partition_point(|mark| mark.0 <= 0.0).saturating_sub(1);
+        let end = marks.partition_point(|mark| mark.0 < length) + 1;
+        marks.truncate(end);
+        marks.drain(..first);
         Self {
             changes: vec![0.0; count],
-            density: count as f64 / length,
+            marks,
+            length,
         }
     }
 
@@ -62,47 +113,50 @@ impl BalanceFactor {
         let mut total = 0.0;
         for &(s, flux) in curve {
             let (k, next, t) = self.place(s);
+            total += flux;
+            if k == next {
+                right[k] -= flux;
+                diagonal[k] += flux;
+                continue;
+            }
             let u = 1.0 - t;
             right[k] -= u * flux;
             right[next] -= t * flux;
             diagonal[k] += u * u * flux;
             diagonal[next] += t * t * flux;
             beside[k] += u * t * flux;
-            total += flux;
         }
         if total > 0.0 {
-            if count == 1 {
-                self.changes[0] = right[0] / total;
-            } else {
-                let stiffness = STIFFNESS * total / count as f64;
-                for k in 0..count {
-                    diagonal[k] += 2.0 * stiffness;
-                    beside[k] -= stiffness;
-                }
-                self.changes = solved(&diagonal, &beside, right);
+            let stiffness = STIFFNESS * total / count as f64;
+            for k in 0..count {
+                diagonal[k] += 2.0 * stiffness;
+                beside[k] -= stiffness;
             }
+            self.changes = solved(&diagonal, &beside, right);
         }
     }
 
-    /// Arc lengths of the marks between two arc lengths, m.
-    pub(crate) fn marks(&self, from: f64, to: f64) -> impl Iterator<Item = f64> + use<> {
-        let density = self.density;
-        let (first, end) = if self.changes.len() > 1 {
-            ((from * density).ceil() as i64, (to * density).floor() as i64)
-        } else {
-            (0, -1)
-        };
-        (first..=end).map(move |k| k as f64 / density)
+    /// Arc lengths of the marks between two arc lengths, which may lie a turn ahead, m.
+    pub(crate) fn marks(&self, from: f64, to: f64) -> impl Iterator<Item = f64> + '_ {
+        [0.0, self.length].into_iter().flat_map(move |turn| {
+            let first = self.marks.partition_point(|m| m.0 + turn < from.max(turn));
+            self.marks[first..]
+                .iter()
+                .map(move |m| m.0 + turn)
+                .take_while(move |&s| s <= to && s <= turn + self.length)
+        })
     }
 
     /// The marks before and after a place and the share of the way between them.
     fn place(&self, arc_length: f64) -> (usize, usize, f64) {
-        let count = self.changes.len();
-        let at = arc_length * self.density;
-        let floor = at.floor();
-        let k = (floor as i64).rem_euclid(count as i64) as usize;
-        let next = if k + 1 == count { 0 } else { k + 1 };
-        (k, next, at - floor)
+        let s = if (0.0..=self.length).contains(&arc_length) {
+            arc_length
+        } else {
+            arc_length.rem_euclid(self.length)
+        };
+        let next = self.marks.partition_point(|m| m.0 <= s).clamp(1, self.marks.len() - 1);
+        let ((from, k), (to, after)) = (self.marks[next - 1], self.marks[next]);
+        (k, after, (s - from) / (to - from))
     }
 
     /// The factor at an arc length, m.

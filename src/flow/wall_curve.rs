@@ -116,6 +116,7 @@ impl WallCurve {
                     .map(|s| (s.arc_length, s.shear_per_gradient))
                     .collect();
                 let path = WallPath::new(wall);
+                let length = path.length();
                 let corners = corners.get(index).map_or(&[][..], Vec::as_slice);
                 let own_laws: Vec<_> = (0..corners.len()).map(|k| laws(index, k)).collect();
                 let stretches = stretches(&path, corners, &own_laws, &own, spacing);
@@ -124,7 +125,7 @@ impl WallCurve {
                     path,
                     stretches,
                     spacing,
-                    factor: BalanceFactor::one(),
+                    factor: BalanceFactor::with_marks(length, f64::INFINITY, &[]),
                 }
             })
             .collect();
@@ -245,7 +246,12 @@ impl LoopCurve {
     }
 
     fn balance(&mut self, fluxes: &[WallFlux]) {
-        self.factor = BalanceFactor::with_marks(self.length(), self.spacing);
+        self.factor = {
+            let is_singular = |s: &&Stretch| s.leading.is_some_and(|leading| leading[0] < 0.0);
+            let corners = self.stretches.iter().filter(is_singular).map(|s| s.start);
+            let corners: Vec<f64> = corners.collect();
+            BalanceFactor::with_marks(self.length(), self.spacing, &corners)
+        };
         let mut curve = Vec::new();
         self.visit((0.0, self.length()), 1, false, &mut |abscissa| {
             curve.push((abscissa.arc_length, abscissa.weighted));

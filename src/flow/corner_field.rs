@@ -22,7 +22,7 @@ const NEAREST: f64 = 3.0;
 /// Nodes farther than this are left out, spacings.
 const FARTHEST: f64 = 12.0;
 /// Least radius of the fit, spacings.
-const LEAST_RADIUS: f64 = 6.0;
+const LEAST_RADIUS: f64 = 4.5;
 /// Share of the distance to the next corner or wall that the fit may use.
 const SHARE: f64 = 0.7;
 /// Nodes nearer to a side than this do not show whether another wall is near, spacings.

@@ -116,11 +116,7 @@ impl CornerLaw {
     pub(crate) fn of_terms(angle: f64, unit: f64, powers: &[[f64; 2]], of_grid: f64) -> Self {
         let law = Self::fit(angle, unit, &[]);
         let kept = |exponent: f64, c: f64| {
-            if exponent <= LARGEST_SINGULAR {
-                c
-            } else {
-                0.0
-            }
+            if exponent <= LARGEST_SINGULAR { c } else { 0.0 }
         };
         let powers = (1..).zip(powers).map(|(k, [plain, bent])| {
             let exponent = f64::from(k) * (law.leading + 1.0);

@@ -21,10 +21,11 @@ pub(super) fn warnings(
                 100.0 * identity.relative_difference,
                 100.0 * identity.tolerance
             ),
-            advice:
-                "the wall shear and its mean are less sure than the conductance; try a finer grid \
-                     with --cells-across and compare"
-                    .to_owned(),
+            advice: format!(
+                "the wall shear along the wall is less sure than its mean and the conductance; for the wall \
+                 shear type --cells-across {:.0} and compare",
+                2.0 * flow.grid.cells_across
+            ),
             numbers: vec![
                 ("relative_difference", identity.relative_difference),
                 ("tolerance", identity.tolerance),

@@ -3,7 +3,8 @@
 //! Along a loop the factor is one plus a sum of hats, linear between marks several spacings apart. Every hat
 //! times the factor times the curve has the integral that the fluxes give for the hat. So the flux into every
 //! stretch of wall a few spacings long is right even where the wall is rough below the grid, and that into
-//! the whole wall is exact, while the curve between the marks stays what it was.
+//! the whole wall is exact, while the curve between the marks stays what it was. Around a re-entrant corner,
+//! where differences of nodes are no fluxes, the factor is the same over several spacings.
 
 /// Distance of the marks, in spacings.
 const MARKS: f64 = 4.0;
@@ -85,7 +86,9 @@ impl BalanceFactor {
             .iter()
             .flat_map(|turn| around.iter().map(move |&(s, k)| (s + turn, k)))
             .collect();
-        let first = marks.partition_point(|mark| mark.0 <= 0.0).saturating_sub(1);
+        let first = marks
+            .partition_point(|mark| mark.0 <= 0.0)
+            .saturating_sub(1);
         let end = marks.partition_point(|mark| mark.0 < length) + 1;
         marks.truncate(end);
         marks.drain(..first);
@@ -154,7 +157,10 @@ impl BalanceFactor {
         } else {
             arc_length.rem_euclid(self.length)
         };
-        let next = self.marks.partition_point(|m| m.0 <= s).clamp(1, self.marks.len() - 1);
+        let next = self
+            .marks
+            .partition_point(|m| m.0 <= s)
+            .clamp(1, self.marks.len() - 1);
         let ((from, k), (to, after)) = (self.marks[next - 1], self.marks[next]);
         (k, after, (s - from) / (to - from))
     }

@@ -217,10 +217,7 @@ pub(super) fn regions(chains: &[Chain]) -> Option<Vec<Region<'_>>> {
 /// The point at a position around a cell.
 fn point_around(position: f64) -> Point {
     let side = position.floor();
-    let (a, b) = (
-        CORNERS[side as usize % 4],
-        CORNERS[(side as usize + 1) % 4],
-    );
+    let (a, b) = (CORNERS[side as usize % 4], CORNERS[(side as usize + 1) % 4]);
     let t = position - side;
     [a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])]
 }

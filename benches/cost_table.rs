@@ -141,7 +141,7 @@ fn stage_row(name: &str, outline: &Outline, cells: f64) -> Fallible<()> {
         of(&["solve"]),
         of(&["integrals"]),
         of(&["proof"]),
-        of(&["wall shear and answers"]),
+        of(&["wall shear", "answers"]),
         all / nodes as f64,
         memory.bytes_max as f64 / nodes as f64,
         memory.count_total,

@@ -16,7 +16,7 @@ use super::section_flow::{
 };
 use super::solve_warnings::{ISLAND_CELLS, warnings};
 use super::tangents::{Tangent, tangents};
-use super::wall_shear::wall_shear;
+use super::wall_shear::{wall_curve, wall_samples, without_curve};
 use super::width_source::width_source;
 
 /// Fluid angle, radians, from which the term of a corner is removed by extrapolation: its exponent there
@@ -37,7 +37,7 @@ pub(super) struct Solution<'a> {
     pub(super) lattice: &'a Lattice,
     pub(super) mask: &'a Mask,
     pub(super) phi: &'a Field,
-    pub(super) corners: Vec<Vec<Corner>>,
+    pub(super) corners: &'a [Vec<Corner>],
     /// How far re-entrant corners miss the nodes, 0 to 1.
     pub(super) misfit: f64,
     /// m^4.
@@ -48,6 +48,8 @@ pub(super) struct Solution<'a> {
     pub(super) others: Vec<(Point, Vec<GridAnswer>)>,
 }
 
+/// The answers but for the curve of the wall shear, the identities and the warnings, which are only worth
+/// their time on the grid that is kept; see [`finish`].
 pub(super) fn assemble(
     outline: &Outline,
     solution: &Solution,
@@ -82,8 +84,8 @@ pub(super) fn assemble(
         let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
         to_limit(&values, false)
     };
-    let shear = wall_shear(outline, lattice, mask, phi, corners);
-    let curved = tangents(outline, &shear.samples, h);
+    let samples = wall_samples(outline, (lattice, mask, phi), corners);
+    let curved = tangents(outline, &samples, h);
     let values = mean_conductances(solution, &curved, h, useful.min(3));
     let mut conductance = to_limit(&values, !others.is_empty());
     if let Ok(proven) = bracket {
@@ -95,15 +97,7 @@ pub(super) fn assemble(
     let finest = answers.first().map(|a| a.integrals).unwrap_or_default();
     let (area, diameter) = (geometry.area, geometry.hydraulic_diameter);
     let fanning_dh = diameter * diameter * area / (2.0 * conductance.value);
-    let identities = identities(
-        outline,
-        corners,
-        &shear.curve,
-        conductance.value,
-        (finest, h.powi(4)),
-        grid.cells_across,
-    );
-    let mut flow = SectionFlow {
+    SectionFlow {
         conductance,
         bracket: *bracket,
         conductance_finest_grid: finest.conductance * h.powi(4),
@@ -119,19 +113,46 @@ pub(super) fn assemble(
         },
         momentum_factor: ratio(square, conductance, 2, area),
         kinetic_energy_factor: ratio(cube, conductance, 3, area * area),
-        wall_shear: shear,
+        wall_shear: without_curve(outline, corners, samples),
         solver: solver_report(answers, h, seconds),
         grid,
         geometry,
-        identities,
+        identities: Vec::new(),
         accuracy: Accuracy {
             source: width_source(lattice, mask, phi, corners),
             ..Accuracy::default()
         },
         warnings: Vec::new(),
-    };
-    flow.warnings = warnings(&flow, small, mask.pinned.len());
-    flow
+    }
+}
+
+/// Adds the curve of the wall shear, the identities, and the warnings before those that are there.
+pub(super) fn finish(
+    flow: &mut SectionFlow,
+    outline: &Outline,
+    (lattice, mask, phi): (&Lattice, &Mask, &Field),
+    corners: &[Vec<Corner>],
+) {
+    let shear = &mut flow.wall_shear;
+    let solution = (lattice, mask, phi);
+    let (curve, plain) = wall_curve(outline, solution, corners, &shear.samples);
+    if let Some(largest) = curve.largest() {
+        shear.max_per_gradient = largest.shear_per_gradient;
+        shear.max_at = largest.at;
+    }
+    shear.curve = curve;
+    let h = flow.grid.spacing;
+    flow.identities = identities(
+        outline,
+        corners,
+        (&shear.curve, plain),
+        flow.conductance.value,
+        (GridIntegrals::new(mask, phi), h.powi(4)),
+        flow.grid.cells_across,
+    );
+    let mut all = warnings(flow, small_islands(outline, h), mask.pinned.len());
+    all.append(&mut flow.warnings);
+    flow.warnings = all;
 }
 
 /// `K` of the finest grids, m^4, without the excess at tangent walls, averaged over the places of the

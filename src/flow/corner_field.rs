@@ -22,7 +22,7 @@ const NEAREST: f64 = 3.0;
 /// Nodes farther than this are left out, spacings.
 const FARTHEST: f64 = 12.0;
 /// Least radius of the fit, spacings.
-const LEAST_RADIUS: f64 = 6.0;
+const LEAST_RADIUS: f64 = 4.5;
 /// Share of the distance to the next corner or wall that the fit may use.
 const SHARE: f64 = 0.7;
 /// Nodes nearer to a side than this do not show whether another wall is near, spacings.
@@ -100,14 +100,14 @@ pub(crate) fn corner_laws(
     let step = PI / wedge.angle;
     let coefficient = |k: f64, a: f64| a * radius.powf(-k * step) * k * step * spacing;
     let side = |sign: f64| {
-        let powers: Vec<(f64, f64)> = (1..=POWERS)
-            .flat_map(|k| {
+        let powers: Vec<[f64; 2]> = (1..=POWERS)
+            .map(|k| {
                 let flip = if k % 2 == 0 { sign } else { 1.0 };
                 let k = k as f64;
                 let exponent = k * step;
                 let plain = flip * coefficient(k, found[k as usize]);
                 let bent = plain * (exponent + 1.0) * wedge.bend_of_shear(sign);
-                [(exponent - 1.0, plain), (exponent, bent)]
+                [plain, bent]
             })
             .collect();
         let of_grid = -found[0] * radius.powf(step) * step * spacing;

@@ -33,10 +33,12 @@ pub(crate) struct CornerLaw {
     /// Exponent of the leading power, `pi/omega - 1`.
     pub(crate) leading: f64,
     angle: f64,
+    /// Its tangent.
+    tangent: f64,
     /// Unit of length of the fit, m.
     unit: f64,
-    /// Exponents and coefficients of the powers of `r / unit`, in m.
-    terms: Vec<(f64, f64)>,
+    /// Coefficients of the powers `k pi/omega - 1` and `k pi/omega` of `r / unit` for `k` = 1, 2, ..., in m.
+    powers: Vec<[f64; 2]>,
     /// Coefficient of the grid's own error, m.
     of_grid: f64,
     /// Largest distance in the fit, m.
@@ -55,32 +57,34 @@ impl CornerLaw {
         let mut law = Self {
             leading,
             angle,
+            tangent: angle.tan(),
             unit,
-            terms: Vec::new(),
+            powers: Vec::new(),
             of_grid: 0.0,
             reach: samples.iter().fold(0.0, |reach, s| f64::max(reach, s.0)),
         };
         // In the order in which they are given up where samples are few.
-        let mut exponents = vec![leading];
-        exponents.extend(law.grid_exponent());
-        exponents.extend((2..=6).map(|k| f64::from(k) * first - 1.0));
-        exponents.retain(|&e| e <= LARGEST_EXPONENT);
+        let mut exponents = vec![(1, leading)];
+        exponents.extend(law.grid_exponent().map(|e| (0, e)));
+        exponents.extend((2..=6).map(|k| (k, k as f64 * first - 1.0)));
+        exponents.retain(|e| e.1 <= LARGEST_EXPONENT);
         exponents.truncate(samples.len() / 2);
         if exponents.is_empty() {
             return law;
         }
         let matrix = DMatrix::from_fn(samples.len(), exponents.len(), |row, column| {
-            (samples[row].0 / unit).powf(exponents[column])
+            (samples[row].0 / unit).powf(exponents[column].1)
         });
         let wanted = DVector::from_fn(samples.len(), |row, _| {
             (samples[row].1 - law.particular(samples[row].0)) / unit
         });
         if let Ok(found) = matrix.svd(true, true).solve(&wanted, 1e-12) {
-            for (&exponent, &c) in exponents.iter().zip(found.iter()) {
-                if Some(exponent) == law.grid_exponent() {
+            for (&(k, _), &c) in exponents.iter().zip(found.iter()) {
+                if k == 0 {
                     law.of_grid = c * unit;
                 } else {
-                    law.terms.push((exponent, c * unit));
+                    law.powers.resize(k, [0.0; 2]);
+                    law.powers[k - 1][0] = c * unit;
                 }
             }
         }
@@ -99,24 +103,31 @@ impl CornerLaw {
             return law;
         }
         Self {
-            terms: vec![(law.leading, sum / of_basis)],
+            powers: vec![[sum / of_basis, 0.0]],
             ..law
         }
     }
 
     /// The law with known powers.
     ///
-    /// - `powers`: exponents and coefficients of the powers of `r / unit`, m; those that are as smooth as
-    ///   the wall elsewhere are left out
+    /// - `powers`: coefficients of the powers `k pi/omega - 1` and `k pi/omega` of `r / unit`, m; those that are
+    ///   as smooth as the wall elsewhere are left out
     /// - `of_grid`: coefficient of the grid's own error, m
-    pub(crate) fn of_terms(angle: f64, unit: f64, powers: &[(f64, f64)], of_grid: f64) -> Self {
+    pub(crate) fn of_terms(angle: f64, unit: f64, powers: &[[f64; 2]], of_grid: f64) -> Self {
         let law = Self::fit(angle, unit, &[]);
+        let kept = |exponent: f64, c: f64| {
+            if exponent <= LARGEST_SINGULAR { c } else { 0.0 }
+        };
+        let powers = (1..).zip(powers).map(|(k, [plain, bent])| {
+            let exponent = f64::from(k) * (law.leading + 1.0);
+            [kept(exponent - 1.0, *plain), kept(exponent, *bent)]
+        });
+        let mut powers: Vec<[f64; 2]> = powers.collect();
+        while powers.last().is_some_and(|c| c.iter().all(|&c| c == 0.0)) {
+            powers.pop();
+        }
         Self {
-            terms: powers
-                .iter()
-                .copied()
-                .filter(|(exponent, _)| *exponent <= LARGEST_SINGULAR)
-                .collect(),
+            powers,
             of_grid,
             ..law
         }
@@ -151,9 +162,24 @@ impl CornerLaw {
 
     /// Shear at a distance from the corner, m; without bound towards a re-entrant corner.
     pub(crate) fn value(&self, distance: f64) -> f64 {
+        let first = self.powers.first().map_or(0.0, |c| c[0]);
+        if distance <= 0.0 {
+            return if self.leading < 0.0 && first != 0.0 {
+                f64::INFINITY * first
+            } else {
+                0.0
+            };
+        }
         let x = distance / self.unit;
-        let powers: f64 = self.terms.iter().map(|(e, c)| c * x.powf(*e)).sum();
-        self.particular(distance) + powers
+        let logarithm = x.ln();
+        let leading = (self.leading * logarithm).exp();
+        let step = leading * x;
+        let sum = self
+            .powers
+            .iter()
+            .rev()
+            .fold(0.0, |sum, [plain, bent]| sum * step + (plain + bent * x));
+        self.particular_at(x, logarithm) + leading * sum
     }
 
     /// The part that no power of the expansion makes up, m.
@@ -162,18 +188,23 @@ impl CornerLaw {
             return 0.0;
         }
         let x = distance / self.unit;
+        self.particular_at(x, x.ln())
+    }
+
+    /// The same from the distance in units of the fit, and its logarithm.
+    fn particular_at(&self, x: f64, logarithm: f64) -> f64 {
         let odd = if self.angle < PI { 1.0 } else { 3.0 };
         let resonant = odd * FRAC_PI_2;
         if (self.angle - resonant).abs() < RESONANCE {
-            return -self.unit * x * x.ln() / resonant;
+            return -self.unit * x * logarithm / resonant;
         }
         let exponent = odd * PI / self.angle - 1.0;
-        let tangent = 0.5 * self.angle.tan() * self.unit;
+        let tangent = 0.5 * self.tangent * self.unit;
         if exponent > LARGEST_EXPONENT {
             return tangent * x;
         }
         // The power belongs to the expansion and keeps the sum of both moderate near the right angle.
-        -tangent * x * ((exponent - 1.0) * x.ln()).exp_m1()
+        -tangent * x * ((exponent - 1.0) * logarithm).exp_m1()
     }
 }
 

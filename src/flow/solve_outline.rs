@@ -2,20 +2,20 @@
 
 use std::time::Instant;
 
-use crate::geometry::{Outline, Point, largest_inscribed_circle};
+use crate::geometry::{Corner, Outline, Point, largest_inscribed_circle};
 use crate::grid::{Lattice, LineCrossings, Mask, ResolutionError, spacing};
 use crate::proof::bracket;
 use crate::solve::{Field, Hierarchy, SolveControl};
 use crate::warning::{Code, Warning};
 
 use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, refine};
-use super::assemble::{GridAnswer, Solution, assemble, leading_exponent};
+use super::assemble::{GridAnswer, Solution, assemble, finish, leading_exponent};
 use super::corner_alignment::{Alignment, align};
 use super::field::DenseField;
 use super::grid_integrals::GridIntegrals;
 use super::peak::peak;
 use super::section_flow::{GridReport, SectionFlow};
-use super::solve_cost::{LevelCost, SolveCost, StageClock};
+use super::solve_cost::{LevelCost, SolveCost, StageClock, StageCost};
 use super::wall_shear::corners_of;
 
 /// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
@@ -108,9 +108,22 @@ pub struct SolvedSection {
     mask: Mask,
     phi: Field,
     cost: SolveCost,
+    corners: Vec<Vec<Corner>>,
 }
 
 impl SolvedSection {
+    /// With the curve of the wall shear and what depends on it.
+    fn finished(mut self) -> Self {
+        let start = Instant::now();
+        let solution = (&self.lattice, &self.mask, &self.phi);
+        finish(&mut self.flow, &self.outline, solution, &self.corners);
+        self.cost.stages.push(StageCost {
+            name: "wall shear",
+            seconds: start.elapsed().as_secs_f64(),
+        });
+        self
+    }
+
     /// The outline that was solved, oriented.
     pub fn outline(&self) -> &Outline {
         &self.outline
@@ -159,12 +172,12 @@ pub fn solve_outline(
         .fold(f64::INFINITY, f64::min);
     let attempt = |cells: f64| solve_at(&outline, diameter, cells, options);
     let Some(cells) = options.cells_across else {
-        return refine(&outline, diameter, options, attempt);
+        return refine(&outline, diameter, options, attempt).map(SolvedSection::finished);
     };
     let mut solved = attempt(cells)?;
     solved.flow.accuracy.further = further(&outline, &solved.flow);
     warn_if_rough(&mut solved.flow, ROUGH);
-    Ok(solved)
+    Ok(solved.finished())
 }
 
 /// Adds a warning where the estimated error of `K` is above a limit.
@@ -246,14 +259,14 @@ fn solve_at(
         lattice: &lattice,
         mask: &mask,
         phi: &phi,
-        corners,
+        corners: &corners,
         misfit: fitted.misfit,
         bracket,
         answers,
         others,
     };
     let flow = assemble(outline, &solution, grid, seconds);
-    clock.end("wall shear and answers");
+    clock.end("answers");
     Ok(SolvedSection {
         flow,
         outline: outline.clone(),
@@ -261,6 +274,7 @@ fn solve_at(
         mask,
         phi,
         cost: clock.cost(),
+        corners,
     })
 }
 

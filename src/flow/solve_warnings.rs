@@ -6,6 +6,9 @@ use super::section_flow::SectionFlow;
 
 /// Cells that an island must span to be seen by the three finest grids.
 pub(super) const ISLAND_CELLS: f64 = 10.0;
+/// Relative difference of the mean of the balanced wall shear from `A / P` that is rounding and quadrature.
+const BALANCED: f64 = 1e-4;
+
 pub(super) fn warnings(
     flow: &SectionFlow,
     small_islands: usize,
@@ -21,16 +24,18 @@ pub(super) fn warnings(
                 100.0 * identity.relative_difference,
                 100.0 * identity.tolerance
             ),
-            advice:
-                "the wall shear and its mean are less sure than the conductance; try a finer grid \
-                     with --cells-across and compare"
-                    .to_owned(),
+            advice: format!(
+                "the wall shear along the wall is less sure than its mean and the conductance; for the wall \
+                 shear type --cells-across {:.0} and compare",
+                2.0 * flow.grid.cells_across
+            ),
             numbers: vec![
                 ("relative_difference", identity.relative_difference),
                 ("tolerance", identity.tolerance),
             ],
         });
     }
+    warnings.extend(unbalanced(flow));
     if !flow.solver.converged {
         warnings.push(Warning {
             code: Code::SolverSlow,
@@ -76,4 +81,27 @@ pub(super) fn warnings(
         });
     }
     warnings
+}
+
+/// Where the fluxes beside the wall could not be balanced, so that the curve is that of the slopes.
+fn unbalanced(flow: &SectionFlow) -> Option<Warning> {
+    let loops = &flow.wall_shear.curve.loops;
+    let received: f64 = loops
+        .iter()
+        .map(|along| along.integral(0.0, along.length()))
+        .sum();
+    let off = received / flow.geometry.area - 1.0;
+    (off.is_nan() || off.abs() > BALANCED).then(|| Warning {
+        code: Code::IdentityFailed,
+        message: format!(
+            "the fluxes into the wall could not be balanced cell by cell: the mean of the wall shear along the \
+             wall is off by {:.2} %",
+            100.0 * off
+        ),
+        advice: format!(
+            "the grid is too coarse for some part of the wall; type --cells-across {:.0}",
+            2.0 * flow.grid.cells_across
+        ),
+        numbers: vec![("relative_difference", off)],
+    })
 }

@@ -10,7 +10,7 @@
 //! error for extrapolation (K of a ring with inner radius a tenth of the outer, 128 cells: from 3e-5 to
 //! 1e-6 over ten places of the grid).
 
-use crate::geometry::{Outline, Point};
+use crate::geometry::{Outline, Point, distance};
 
 use super::section_flow::WallSample;
 
@@ -79,7 +79,7 @@ pub(crate) fn tangents(outline: &Outline, samples: &[WallSample], spacing: f64) 
                 let near = nearest(&samples[first..end], arc);
                 found.extend(tangent(points, k, axis, spacing, near));
             }
-            arc += (after[0] - here[0]).hypot(after[1] - here[1]);
+            arc += distance(here, after);
         }
     }
     found

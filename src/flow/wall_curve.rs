@@ -2,13 +2,17 @@
 //!
 //! Every loop is cut at its corners into stretches (module `wall_stretch`). The curve is smooth on a
 //! stretch, zero at a convex corner, and without bound at a re-entrant one, where it follows the law of
-//! the corner (module `corner_law`) rather than the grid.
+//! the corner (module `corner_law`) rather than the grid. A factor that changes slowly along the loop then makes
+//! it carry the fluxes into the wall that the cells next to it balance (modules `wall_flux`, `wall_balance`).
 
 use crate::geometry::{Corner, Outline, Point};
 
 use super::corner_law::CornerLaw;
 use super::section_flow::WallSample;
+use super::wall_balance::BalanceFactor;
+use super::wall_flux::WallFlux;
 use super::wall_path::WallPath;
+use super::wall_quadrature::GAUSS_2;
 use super::wall_statistics::WallReport;
 use super::wall_stretch::Stretch;
 
@@ -34,6 +38,8 @@ pub struct LoopCurve {
     pub(crate) stretches: Vec<Stretch>,
     /// Spacing of the lattice, m.
     pub(crate) spacing: f64,
+    /// What the curve of the stretches is multiplied by.
+    pub(crate) factor: BalanceFactor,
 }
 
 /// One point of the curve.
@@ -86,10 +92,10 @@ impl WallCurve {
         samples: &[WallSample],
         spacing: f64,
     ) -> Self {
-        Self::with_laws(outline, corners, samples, spacing, |_, _| None)
+        Self::with_laws(outline, corners, samples, spacing, |_, _| None).with_points()
     }
 
-    /// The curve with the laws of some corners known.
+    /// The curve with the laws of some corners known, still without its points.
     ///
     /// - `laws`: of the sides after and before a corner, from the indices of loop and corner
     pub(crate) fn with_laws(
@@ -100,7 +106,7 @@ impl WallCurve {
         laws: impl Fn(usize, usize) -> Option<[CornerLaw; 2]>,
     ) -> Self {
         let singular_length = SINGULAR_LENGTH * 4.0 * outline.area() / outline.wetted_perimeter();
-        let mut loops: Vec<LoopCurve> = outline
+        let loops: Vec<LoopCurve> = outline
             .loops()
             .enumerate()
             .map(|(index, wall)| {
@@ -111,6 +117,7 @@ impl WallCurve {
                     .map(|s| (s.arc_length, s.shear_per_gradient))
                     .collect();
                 let path = WallPath::new(wall);
+                let length = path.length();
                 let corners = corners.get(index).map_or(&[][..], Vec::as_slice);
                 let own_laws: Vec<_> = (0..corners.len()).map(|k| laws(index, k)).collect();
                 let stretches = stretches(&path, corners, &own_laws, &own, spacing);
@@ -119,12 +126,10 @@ impl WallCurve {
                     path,
                     stretches,
                     spacing,
+                    factor: BalanceFactor::with_marks(length, f64::INFINITY, &[]),
                 }
             })
             .collect();
-        for (index, curve) in loops.iter_mut().enumerate() {
-            curve.points = curve.collect_points(index, singular_length);
-        }
         Self {
             loops,
             singular_length,
@@ -133,6 +138,28 @@ impl WallCurve {
 }
 
 impl WallCurve {
+    /// Gives every loop the factor that makes it carry the fluxes into the wall.
+    pub(super) fn balanced(mut self, fluxes: &[WallFlux]) -> Self {
+        let mut by_loop: Vec<Vec<WallFlux>> = vec![Vec::new(); self.loops.len()];
+        for flux in fluxes {
+            if let Some(own) = by_loop.get_mut(flux.loop_index) {
+                own.push(*flux);
+            }
+        }
+        for (along, own) in self.loops.iter_mut().zip(by_loop) {
+            along.balance(&own);
+        }
+        self
+    }
+
+    /// Puts the points on the finished curve.
+    pub(super) fn with_points(mut self) -> Self {
+        for along in &mut self.loops {
+            along.points = along.collect_points(self.singular_length);
+        }
+        self
+    }
+
     /// The point with the largest shear; nearer to a singular corner than
     /// [`WallCurve::singular_length`], the corner's own entry stands for the curve.
     pub fn largest(&self) -> Option<CurvePoint> {
@@ -188,12 +215,15 @@ fn stretches(
             if length <= 0.0 {
                 length += total;
             }
-            let mut own: Vec<(f64, f64)> = [0.0, total]
+            let own: Vec<(f64, f64)> = [0.0, total]
                 .iter()
-                .flat_map(|turn| samples.iter().map(move |&(s, v)| (s + turn - start, v)))
-                .filter(|&(s, _)| s > 0.0 && s < length)
+                .flat_map(|turn| {
+                    let low = samples.partition_point(|s| s.0 + turn - start <= 0.0);
+                    let high = samples.partition_point(|s| s.0 + turn - start < length);
+                    let here = samples.get(low..high).unwrap_or(&[]);
+                    here.iter().map(move |&(s, v)| (s + turn - start, v))
+                })
                 .collect();
-            own.sort_by(|a, b| a.0.total_cmp(&b.0));
             let fallback = if own.is_empty() {
                 nearest(start + 0.5 * length)
             } else {
@@ -216,6 +246,47 @@ impl LoopCurve {
         self.path.length()
     }
 
+    fn balance(&mut self, fluxes: &[WallFlux]) {
+        self.factor = {
+            let is_singular = |s: &&Stretch| s.leading.is_some_and(|leading| leading[0] < 0.0);
+            let corners = self.stretches.iter().filter(is_singular).map(|s| s.start);
+            let corners: Vec<f64> = corners.collect();
+            BalanceFactor::with_marks(self.length(), self.spacing, &corners)
+        };
+        let mut curve = Vec::new();
+        self.visit((0.0, self.length()), 1, false, &mut |abscissa| {
+            curve.push((abscissa.arc_length, abscissa.weighted));
+        });
+        let mut wanted = Vec::new();
+        let mut places: Vec<(f64, f64)> = Vec::new();
+        for flux in fluxes {
+            // Within a cell the flux is spread as the curve says; no part crosses a mark.
+            places.clear();
+            let mut low = flux.from;
+            for high in self.factor.marks(flux.from, flux.to).chain([flux.to]) {
+                let (middle, half) = (0.5 * (low + high), 0.5 * (high - low));
+                places.extend(GAUSS_2.map(|(x, _)| {
+                    let place = middle + half * x;
+                    (place, half * self.shear_at(place))
+                }));
+                low = high;
+            }
+            let sum: f64 = places.iter().map(|place| place.1).sum();
+            if sum > 0.0 && sum.is_finite() {
+                wanted.extend(
+                    places
+                        .iter()
+                        .map(|&(s, shear)| (s, shear / sum * flux.flux)),
+                );
+            } else {
+                wanted.push((0.5 * (flux.from + flux.to), flux.flux));
+            }
+        }
+        if !wanted.is_empty() {
+            self.factor.fit(&curve, &wanted);
+        }
+    }
+
     /// Shear per gradient at an arc length, m; without bound at a singular corner.
     pub fn shear_at(&self, arc_length: f64) -> f64 {
         let total = self.length();
@@ -226,7 +297,9 @@ impl LoopCurve {
             Some(index) => (self.stretches.get(index), s),
             None => (self.stretches.last(), s + total),
         };
-        stretch.map_or(0.0, |stretch| stretch.value(s - stretch.start))
+        stretch.map_or(0.0, |stretch| {
+            stretch.value(s - stretch.start) * self.factor.at(s)
+        })
     }
 
     /// The top of the parabola through the curve around a point, if the curve is higher there.
@@ -307,7 +380,7 @@ impl LoopCurve {
     }
 
     /// Points of the curve: the pieces' ends, closer together beside corners.
-    fn collect_points(&self, loop_index: usize, singular_length: f64) -> Vec<CurvePoint> {
+    fn collect_points(&self, singular_length: f64) -> Vec<CurvePoint> {
         let total = self.length();
         // With zero for the end of a stretch and one for the start of the next.
         let mut points: Vec<(u8, CurvePoint)> = Vec::new();
@@ -321,7 +394,7 @@ impl LoopCurve {
                 }
                 distances.sort_by(f64::total_cmp);
                 points.extend([false, true].map(|at_end| {
-                    let point = self.corner_point(loop_index, index, at_end, singular_length);
+                    let point = self.corner_point(index, at_end, singular_length);
                     (u8::from(!at_end), point)
                 }));
             } else {
@@ -333,7 +406,7 @@ impl LoopCurve {
                     arc_length,
                     at: self.path.position(arc_length),
                     normal: self.path.edge_normal(self.path.edge_at(arc_length)),
-                    shear_per_gradient: stretch.value(distance),
+                    shear_per_gradient: stretch.value(distance) * self.factor.at(arc_length),
                     kind: PointKind::Regular,
                 };
                 (1, point)
@@ -347,13 +420,7 @@ impl LoopCurve {
     }
 
     /// An end of a stretch.
-    fn corner_point(
-        &self,
-        loop_index: usize,
-        index: usize,
-        at_end: bool,
-        singular_length: f64,
-    ) -> CurvePoint {
+    fn corner_point(&self, index: usize, at_end: bool, singular_length: f64) -> CurvePoint {
         let total = self.length();
         let stretch = &self.stretches[index];
         let leading = stretch.leading.map_or(0.0, |l| l[usize::from(at_end)]);
@@ -377,7 +444,7 @@ impl LoopCurve {
             at: self.path.position(arc_length),
             normal: self.path.edge_normal(self.path.edge_at(inside)),
             shear_per_gradient: if singular {
-                self.integrate_between(loop_index, from, to, 1, &|_| 1.0) / length
+                self.integral(from, to) / length
             } else {
                 0.0
             },

@@ -1,6 +1,6 @@
 //! A loop of the wall by its arc length.
 
-use crate::geometry::{Loop, Point};
+use crate::geometry::{Loop, Point, distance};
 
 /// A closed polygon with the arc length of every vertex.
 #[derive(Debug, Clone, PartialEq)]
@@ -15,7 +15,7 @@ impl WallPath {
         let mut arc = vec![0.0];
         let mut total = 0.0;
         for (a, b) in wall.edges() {
-            total += (b[0] - a[0]).hypot(b[1] - a[1]);
+            total += distance(a, b);
             arc.push(total);
         }
         Self {
@@ -37,7 +37,15 @@ impl WallPath {
     /// Arc length of a place on an edge, m; `None` for an edge that the loop has not.
     pub(crate) fn on_edge(&self, edge: usize, at: Point) -> Option<f64> {
         let start = self.points.get(edge)?;
-        Some(self.arc.get(edge)? + (at[0] - start[0]).hypot(at[1] - start[1]))
+        Some(self.arc.get(edge)? + distance(*start, at))
+    }
+
+    /// Place on an edge at an arc length, m.
+    pub(crate) fn on_edge_at(&self, edge: usize, arc_length: f64) -> Point {
+        let (a, b) = self.edge(edge);
+        let length = self.arc[edge + 1] - self.arc[edge];
+        let share = (arc_length - self.arc[edge]) / length;
+        [a[0] + share * (b[0] - a[0]), a[1] + share * (b[1] - a[1])]
     }
 
     /// The edge at an arc length between zero and the length.
@@ -88,6 +96,6 @@ impl WallPath {
 /// Unit vector to the right of the way from `a` to `b`.
 fn right_of(a: Point, b: Point) -> Option<Point> {
     let (x, y) = (b[0] - a[0], b[1] - a[1]);
-    let length = x.hypot(y);
+    let length = distance(a, b);
     (length > 0.0).then(|| [y / length, -x / length])
 }

@@ -1,20 +1,41 @@
 //! Integrals of the wall shear and of its square along the wall.
 //!
-//! Every stretch between corners is cut at the pieces of the curve and at the vertices of the outline;
-//! on each part the rule of Gauss with four points is used. Beside a corner, where shear to the power `n`
+//! Every stretch between corners is cut at the pieces of the curve and, where a weight depends on the edge, at
+//! the vertices of the outline; on each part the rule of Gauss with four points is used, with two or one on
+//! parts far shorter than the spacing. Beside a corner, where shear to the power `n`
 //! behaves like `r^a` with `a = n (pi/omega - 1) > -1`, it is used in `t = r^(1/m)` with
 //! `m = 4/(a + 1)`: the integrand is then smooth.
 
 use super::wall_curve::{LoopCurve, WallCurve, WallPlace};
 use super::wall_stretch::Stretch;
 
-/// Places and weights of Gauss's rule on -1 to 1.
-const GAUSS: [(f64, f64); 4] = [
+/// Places and weights of Gauss's rules on -1 to 1.
+const GAUSS_4: [(f64, f64); 4] = [
     (-0.861_136_311_594_052_6, 0.347_854_845_137_453_85),
     (-0.339_981_043_584_856_26, 0.652_145_154_862_546_1),
     (0.339_981_043_584_856_26, 0.652_145_154_862_546_1),
     (0.861_136_311_594_052_6, 0.347_854_845_137_453_85),
 ];
+pub(super) const GAUSS_2: [(f64, f64); 2] = [
+    (-0.577_350_269_189_625_8, 1.0),
+    (0.577_350_269_189_625_8, 1.0),
+];
+const GAUSS_1: [(f64, f64); 1] = [(0.0, 2.0)];
+/// Length of a part, in spacings or as a share of the distance to the corner, below which two points do.
+const TWO_POINTS: f64 = 0.25;
+/// The same for one point.
+const ONE_POINT: f64 = 0.05;
+
+/// Where an integrand is evaluated.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Abscissa {
+    /// Arc length from the first vertex of the loop, m.
+    pub(crate) arc_length: f64,
+    /// Edge of the outline.
+    pub(crate) edge: usize,
+    /// Shear to the power of the integral, times the weight of the rule; m^(power + 1).
+    pub(crate) weighted: f64,
+}
 
 impl WallCurve {
     /// Integral of `weight * abs(dphi/dn)^power ds` over the whole wall.
@@ -22,11 +43,10 @@ impl WallCurve {
     /// - `power`: 1 or 2
     /// - `weight`: smooth along each edge of the outline
     pub fn integrate(&self, power: i32, weight: impl Fn(&WallPlace) -> f64) -> f64 {
-        self.loops
-            .iter()
-            .enumerate()
-            .map(|(index, curve)| {
-                curve.integrate_between(index, 0.0, curve.length(), power, &weight)
+        (0..self.loops.len())
+            .map(|index| {
+                let length = self.loops[index].length();
+                self.integrate_stretch(index, 0.0, length, power, &weight)
             })
             .sum()
     }
@@ -41,23 +61,51 @@ impl WallCurve {
         power: i32,
         weight: impl Fn(&WallPlace) -> f64,
     ) -> f64 {
-        self.loops.get(loop_index).map_or(0.0, |curve| {
-            curve.integrate_between(loop_index, from, to, power, &weight)
-        })
+        let Some(curve) = self.loops.get(loop_index) else {
+            return 0.0;
+        };
+        let mut sum = 0.0;
+        let mut place = WallPlace {
+            loop_index,
+            arc_length: 0.0,
+            at: [0.0; 2],
+            normal: [0.0; 2],
+        };
+        let mut edge = usize::MAX;
+        curve.visit((from, to), power, true, &mut |abscissa| {
+            if edge != abscissa.edge {
+                edge = abscissa.edge;
+                place.normal = curve.path.edge_normal(edge);
+            }
+            place.arc_length = abscissa.arc_length;
+            place.at = curve.path.on_edge_at(edge, abscissa.arc_length);
+            sum += abscissa.weighted * weight(&place);
+        });
+        sum
     }
 }
 
 impl LoopCurve {
-    pub(crate) fn integrate_between(
-        &self,
-        loop_index: usize,
-        from: f64,
-        to: f64,
-        power: i32,
-        weight: &dyn Fn(&WallPlace) -> f64,
-    ) -> f64 {
-        let total = self.length();
+    /// Integral of the shear from one arc length forward to another, m^2.
+    pub(crate) fn integral(&self, from: f64, to: f64) -> f64 {
         let mut sum = 0.0;
+        self.visit((from, to), 1, false, &mut |abscissa| {
+            sum += abscissa.weighted;
+        });
+        sum
+    }
+
+    /// Every place where the integral from one arc length forward to another is evaluated, in order.
+    ///
+    /// - `by_edge`: whether the parts end at the vertices of the outline
+    pub(crate) fn visit(
+        &self,
+        (from, to): (f64, f64),
+        power: i32,
+        by_edge: bool,
+        visit: &mut impl FnMut(Abscissa),
+    ) {
+        let total = self.length();
         for turn in [-1.0, 0.0, 1.0] {
             let shift = turn * total;
             let first = self
@@ -71,52 +119,62 @@ impl LoopCurve {
                 let low = (from - start).max(0.0);
                 let high = (to - start).min(stretch.length);
                 if high > low {
-                    sum += self.along(loop_index, stretch, (low, high), power, weight);
+                    self.along(stretch, (low, high), power, by_edge, visit);
                 }
             }
         }
-        sum
     }
 
-    /// Integral over a part of a stretch, given by distances from its start.
+    /// A part of a stretch, given by distances from its start.
     fn along(
         &self,
-        loop_index: usize,
         stretch: &Stretch,
         (low, high): (f64, f64),
         power: i32,
-        weight: &dyn Fn(&WallPlace) -> f64,
-    ) -> f64 {
-        let breaks = self.breaks(stretch, low, high);
+        by_edge: bool,
+        visit: &mut impl FnMut(Abscissa),
+    ) {
         let vertices = self.path.vertices();
         let total = self.length();
-        breaks
-            .windows(2)
-            .map(|part| {
-                let (a, b) = (part[0], part[1]);
-                let middle = (stretch.start + 0.5 * (a + b)).rem_euclid(total);
-                let edge = self.path.edge_at(middle);
-                let normal = self.path.edge_normal(edge);
-                let (from, to) = self.path.edge(edge);
-                let edge_length = vertices[edge + 1] - vertices[edge];
-                let offset = middle - 0.5 * (a + b) - vertices[edge];
-                let loop_start = vertices[edge];
-                gauss(stretch, (a, b), power, |distance, to_end| {
-                    let share = (distance + offset) / edge_length;
-                    let at = [0, 1].map(|axis| from[axis] + share * (to[axis] - from[axis]));
-                    weight(&WallPlace {
-                        loop_index,
-                        arc_length: loop_start + distance + offset,
-                        at,
-                        normal,
-                    }) * stretch.value_between(distance, to_end).powi(power)
-                })
-            })
-            .sum()
+        let mut edge = usize::MAX;
+        for part in self.breaks(stretch, low, high, by_edge).windows(2) {
+            let (a, b) = (part[0], part[1]);
+            let middle = (stretch.start + 0.5 * (a + b)).rem_euclid(total);
+            let offset = middle - 0.5 * (a + b);
+            if by_edge {
+                let holds = |k: usize| {
+                    vertices.get(k).is_some_and(|&v| v <= middle)
+                        && vertices.get(k + 1).is_some_and(|&v| v > middle)
+                };
+                // Mostly the same edge or the next one.
+                if !holds(edge) {
+                    edge = edge.wrapping_add(1);
+                    if !holds(edge) {
+                        edge = self.path.edge_at(middle);
+                    }
+                }
+            }
+            gauss(
+                stretch,
+                (a, b),
+                power,
+                self.spacing,
+                |distance, to_end, w| {
+                    let arc_length = distance + offset;
+                    let value =
+                        stretch.value_between(distance, to_end) * self.factor.at(arc_length);
+                    visit(Abscissa {
+                        arc_length,
+                        edge,
+                        weighted: w * value.powi(power),
+                    });
+                },
+            );
+        }
     }
 
     /// Ends of the parts between two distances from the start of a stretch.
-    fn breaks(&self, stretch: &Stretch, low: f64, high: f64) -> Vec<f64> {
+    fn breaks(&self, stretch: &Stretch, low: f64, high: f64, by_edge: bool) -> Vec<f64> {
         let total = self.length();
         let count = stretch.pieces(self.spacing);
         let step = stretch.length / count as f64;
@@ -128,10 +186,15 @@ impl LoopCurve {
         for turn in [0.0, total] {
             let from = vertices.partition_point(|&v| v + turn <= stretch.start + low);
             let to = vertices.partition_point(|&v| v + turn < stretch.start + high);
-            if from < to {
+            if by_edge && from < to {
                 breaks.extend(vertices[from..to].iter().map(|v| v + turn - stretch.start));
             }
         }
+        breaks.extend(
+            self.factor
+                .marks(stretch.start + low, stretch.start + high)
+                .map(|s| s - stretch.start),
+        );
         breaks.retain(|&b| (low..=high).contains(&b));
         breaks.sort_by(f64::total_cmp);
         breaks.dedup_by(|a, b| *a - *b <= 1e-14 * total);
@@ -139,13 +202,15 @@ impl LoopCurve {
     }
 }
 
-/// Gauss's rule over a part of a stretch, in the variable that suits the corner next to it.
+/// Gauss's rule over a part of a stretch, in the variable that suits the corner next to it; `visit` takes the
+/// distances from both ends of the stretch and the weight.
 fn gauss(
     stretch: &Stretch,
     (a, b): (f64, f64),
     power: i32,
-    integrand: impl Fn(f64, f64) -> f64,
-) -> f64 {
+    spacing: f64,
+    mut visit: impl FnMut(f64, f64, f64),
+) {
     let middle = 0.5 * (a + b);
     let near_end = middle > 0.5 * stretch.length;
     let corner = stretch
@@ -154,13 +219,11 @@ fn gauss(
         .filter(|_| middle <= stretch.zone[0] || stretch.length - middle <= stretch.zone[1]);
     let Some(leading) = corner else {
         let half = 0.5 * (b - a);
-        return GAUSS
-            .iter()
-            .map(|(x, w)| {
-                let distance = middle + half * x;
-                w * half * integrand(distance, stretch.length - distance)
-            })
-            .sum();
+        for &(x, w) in rule((b - a) / spacing) {
+            let distance = middle + half * x;
+            visit(distance, stretch.length - distance, w * half);
+        }
+        return;
     };
     let m = (4.0 / (f64::from(power) * leading + 1.0)).max(1.0);
     let (near, far) = if near_end {
@@ -170,19 +233,27 @@ fn gauss(
     };
     let (low, high) = (near.max(0.0).powf(1.0 / m), far.powf(1.0 / m));
     let (centre, half) = (0.5 * (low + high), 0.5 * (high - low));
-    GAUSS
-        .iter()
-        .map(|(x, w)| {
-            let t = centre + half * x;
-            let r = t.powf(m);
-            let (distance, to_end) = if near_end {
-                (stretch.length - r, r)
-            } else {
-                (r, stretch.length - r)
-            };
-            w * half * m * t.powf(m - 1.0) * integrand(distance, to_end)
-        })
-        .sum()
+    for &(x, w) in rule((far - near) / far.min(spacing)) {
+        let t = centre + half * x;
+        let r = t.powf(m);
+        let (distance, to_end) = if near_end {
+            (stretch.length - r, r)
+        } else {
+            (r, stretch.length - r)
+        };
+        visit(distance, to_end, w * half * m * r / t);
+    }
+}
+
+/// The rule for a part of a given length against the length over which the curve changes.
+fn rule(length: f64) -> &'static [(f64, f64)] {
+    if length >= TWO_POINTS {
+        &GAUSS_4
+    } else if length >= ONE_POINT {
+        &GAUSS_2
+    } else {
+        &GAUSS_1
+    }
 }
 
 #[cfg(test)]

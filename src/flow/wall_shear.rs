@@ -14,6 +14,7 @@ use super::corner_field::corner_laws;
 use super::corner_law::CornerLaw;
 use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::WallCurve;
+use super::wall_flux::wall_fluxes;
 use super::wall_path::WallPath;
 
 /// Turning from which a vertex or a small arc counts as a corner.
@@ -28,10 +29,10 @@ const TOO_CLOSE: f64 = 0.02;
 const AT_CORNER: f64 = 0.5;
 
 /// A loop with its corners.
-struct Wall {
+struct Wall<'a> {
     path: WallPath,
     first_edge: usize,
-    corners: Vec<Corner>,
+    corners: &'a [Corner],
 }
 
 /// All loops with the corners that a grid of the given spacing sees.
@@ -42,18 +43,16 @@ pub(crate) fn corners_of(outline: &Outline, spacing: f64) -> Vec<Vec<Corner>> {
         .collect()
 }
 
-/// Samples, curve, mean and maximum of the wall shear per gradient.
+/// Samples of the wall shear per gradient, by loop and arc length.
 ///
 /// - `outline`: the outline the lattice was laid over, m
 /// - `phi`: solution in lattice units on the finest grid
-pub(crate) fn wall_shear(
+pub(crate) fn wall_samples(
     outline: &Outline,
-    lattice: &Lattice,
-    mask: &Mask,
-    phi: &Field,
+    (lattice, mask, phi): (&Lattice, &Mask, &Field),
     corners: &[Vec<Corner>],
-) -> WallShear {
-    let walls = walls(outline, lattice, corners.to_vec());
+) -> Vec<WallSample> {
+    let walls = walls(outline, lattice, corners);
     let mut samples = Vec::new();
     for colour in [Colour::Even, Colour::Odd] {
         for w in &mask.wall[colour as usize] {
@@ -70,14 +69,20 @@ pub(crate) fn wall_shear(
             .cmp(&b.loop_index)
             .then(a.arc_length.total_cmp(&b.arc_length))
     });
-    let curve = WallCurve::with_laws(outline, corners, &samples, lattice.spacing, |l, c| {
-        walls.get(l)?.singular_laws((lattice, mask, phi), c)
-    });
-    let largest = curve.largest();
+    samples
+}
+
+/// Mean and samples, still without the curve and what is read from it.
+pub(crate) fn without_curve(
+    outline: &Outline,
+    corners: &[Vec<Corner>],
+    samples: Vec<WallSample>,
+) -> WallShear {
+    let perimeter = outline.wetted_perimeter();
     WallShear {
-        mean_per_gradient: outline.area() / outline.wetted_perimeter(),
-        max_per_gradient: largest.map_or(0.0, |point| point.shear_per_gradient),
-        max_at: largest.map_or([0.0; 2], |point| point.at),
+        mean_per_gradient: outline.area() / perimeter,
+        max_per_gradient: 0.0,
+        max_at: [0.0; 2],
         singular_corners: corners
             .iter()
             .flatten()
@@ -85,11 +90,42 @@ pub(crate) fn wall_shear(
             .map(|corner| corner.at)
             .collect(),
         samples,
-        curve,
+        curve: WallCurve {
+            loops: Vec::new(),
+            singular_length: 0.0,
+        },
     }
 }
 
-fn walls(outline: &Outline, lattice: &Lattice, corners: Vec<Vec<Corner>>) -> Vec<Wall> {
+/// The curve through the samples, and the integral of it over the wall before it is balanced, m^2.
+pub(crate) fn wall_curve(
+    outline: &Outline,
+    (lattice, mask, phi): (&Lattice, &Mask, &Field),
+    corners: &[Vec<Corner>],
+    samples: &[WallSample],
+) -> (WallCurve, f64) {
+    let walls = walls(outline, lattice, corners);
+    let curve = WallCurve::with_laws(outline, corners, samples, lattice.spacing, |l, c| {
+        walls.get(l)?.singular_laws((lattice, mask, phi), c)
+    });
+    let at_wall = |loop_index: usize, arc_length: f64| -> Option<Point> {
+        let wall: &Wall = walls.get(loop_index)?;
+        let s = arc_length.rem_euclid(wall.path.length());
+        let normal = wall.normal(s, lattice.spacing)?;
+        let shear = curve.loops.get(loop_index)?.shear_at(s);
+        shear.is_finite().then(|| normal.map(|c| -shear * c))
+    };
+    let paths: Vec<&WallPath> = walls.iter().map(|wall| &wall.path).collect();
+    let fluxes = wall_fluxes((lattice, mask, phi), &paths, outline.area(), &at_wall);
+    let plain = (curve
+        .loops
+        .iter()
+        .map(|along| along.integral(0.0, along.length())))
+    .sum();
+    (curve.balanced(&fluxes).with_points(), plain)
+}
+
+fn walls<'a>(outline: &Outline, lattice: &Lattice, corners: &'a [Vec<Corner>]) -> Vec<Wall<'a>> {
     outline
         .loops()
         .zip(corners)
@@ -163,7 +199,7 @@ fn places_along(
 }
 
 fn sample(
-    walls: &[Wall],
+    walls: &[Wall<'_>],
     lattice: &Lattice,
     w: &WallNode,
     arm: usize,
@@ -193,7 +229,7 @@ fn sample(
     })
 }
 
-impl Wall {
+impl Wall<'_> {
     /// Laws of a re-entrant corner from the nodes around it.
     fn singular_laws(
         &self,

@@ -92,14 +92,15 @@ impl WallReport {
         for part in &mut parts {
             part.wall = kept.partition_point(|&k| k < part.wall);
         }
+        let measured = measured_parts(curve, &parts);
         let mut report = Self {
-            whole: statistics(WHOLE_WALL, curve, parts.iter()),
+            whole: statistics(WHOLE_WALL, measured.iter()),
             walls: kept
                 .iter()
                 .enumerate()
                 .map(|(wall, &k)| {
-                    let own = parts.iter().filter(move |part| part.wall == wall);
-                    statistics(&names[k], curve, own)
+                    let own = measured.iter().filter(move |part| part.wall == wall);
+                    statistics(&names[k], own)
                 })
                 .collect(),
             parts,
@@ -249,12 +250,34 @@ fn direction(along: &LoopCurve, arc_length: f64) -> usize {
     }
 }
 
-/// Statistics over some stretches.
-fn statistics<'a>(
-    name: &str,
-    curve: &WallCurve,
-    parts: impl Iterator<Item = &'a WallPart>,
-) -> WallStatistics {
+/// What one part says.
+struct Measured {
+    wall: usize,
+    length: f64,
+    /// Integral of the shear.
+    integral: f64,
+    min: f64,
+    max: f64,
+    max_at: Point,
+    /// Shear and length of its pieces.
+    pieces: Vec<(f64, f64)>,
+}
+
+/// Every part in turn.
+fn measured_parts(curve: &WallCurve, parts: &[WallPart]) -> Vec<Measured> {
+    let singular: Vec<Vec<f64>> = curve.loops.iter().map(LoopCurve::singular_places).collect();
+    parts
+        .iter()
+        .filter_map(|part| {
+            let along = curve.loops.get(part.loop_index)?;
+            let singular = singular.get(part.loop_index)?;
+            Some(measure(along, part, singular, curve.singular_length))
+        })
+        .collect()
+}
+
+/// Statistics over some parts.
+fn statistics<'a>(name: &str, parts: impl Iterator<Item = &'a Measured>) -> WallStatistics {
     let mut found = WallStatistics {
         name: name.to_owned(),
         length: 0.0,
@@ -268,12 +291,13 @@ fn statistics<'a>(
     let mut pieces: Vec<(f64, f64)> = Vec::new();
     let mut integral = 0.0;
     for part in parts {
-        let Some(along) = curve.loops.get(part.loop_index) else {
-            continue;
-        };
-        integral += along.integrate_between(part.loop_index, part.from, part.to, 1, &|_| 1.0);
-        found.length += part.to - part.from;
-        collect(along, part, curve.singular_length, &mut found, &mut pieces);
+        integral += part.integral;
+        found.length += part.length;
+        found.min = found.min.min(part.min);
+        if part.max > found.max {
+            (found.max, found.max_at) = (part.max, part.max_at);
+        }
+        pieces.extend_from_slice(&part.pieces);
     }
     found.mean = integral / found.length;
     pieces.sort_by(|a, b| a.0.total_cmp(&b.0));
@@ -281,15 +305,19 @@ fn statistics<'a>(
     found
 }
 
-/// Extremes of one stretch, and its pieces as shear and length.
-fn collect(
-    along: &LoopCurve,
-    part: &WallPart,
-    singular_length: f64,
-    found: &mut WallStatistics,
-    pieces: &mut Vec<(f64, f64)>,
-) {
-    let singular: Vec<f64> = along.singular_places();
+/// Integral, extremes and pieces of one part.
+///
+/// - `singular`: arc lengths of the singular corners of its loop, sorted, m
+fn measure(along: &LoopCurve, part: &WallPart, singular: &[f64], singular_length: f64) -> Measured {
+    let mut found = Measured {
+        wall: part.wall,
+        length: part.to - part.from,
+        integral: along.integral(part.from, part.to),
+        min: f64::INFINITY,
+        max: f64::NEG_INFINITY,
+        max_at: [0.0; 2],
+        pieces: Vec::new(),
+    };
     let total = along.length();
     let first = along.points.partition_point(|p| p.arc_length <= part.from);
     let end = along.points.partition_point(|p| p.arc_length < part.to);
@@ -307,13 +335,22 @@ fn collect(
         } else {
             along.shear_at(inside)
         };
-        if value < found.min {
-            found.min = value;
-        }
-        let near = singular.iter().any(|corner| {
-            let apart = (corner - place).rem_euclid(total);
-            apart.min(total - apart) < singular_length
-        });
+        found.min = found.min.min(value);
+        let after = singular.partition_point(|&s| s < place);
+        let next_to = [
+            after.checked_sub(1),
+            Some(after),
+            Some(0),
+            singular.len().checked_sub(1),
+        ];
+        let near = next_to
+            .iter()
+            .flatten()
+            .filter_map(|&k| singular.get(k))
+            .any(|corner| {
+                let apart = (corner - place).rem_euclid(total);
+                apart.min(total - apart) < singular_length
+            });
         if !near && value > found.max {
             found.max = value;
             found.max_at = along.path.position(place);
@@ -323,10 +360,11 @@ fn collect(
         let half = 0.5 * (pair[1] - pair[0]);
         if half > 0.0 {
             for place in [pair[0] + 0.5 * half, pair[0] + 1.5 * half] {
-                pieces.push((along.shear_at(place), half));
+                found.pieces.push((along.shear_at(place), half));
             }
         }
     }
+    found
 }
 
 /// The shear that a length of the wall does not exceed, linear between the middles of sorted pieces.

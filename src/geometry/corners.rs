@@ -3,7 +3,7 @@
 //! The turning of the wall is summed over a window of one spacing, so that an arc smaller than the grid
 //! counts as the corner it looks like, while a zigzag of the outline within the window cancels out.
 
-use super::outline::{Loop, Point};
+use super::outline::{Loop, Point, distance};
 
 /// A corner of the wall.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -83,7 +83,7 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
     }
     drop_if_curve(&mut found, stretch, window);
     for corner in &mut found {
-        to_sharp_vertex(corner, wall, &vertices, window);
+        to_sharp_vertex(corner, wall, &vertices, (window, length));
     }
     found.sort_by(|a, b| a.arc_length.total_cmp(&b.arc_length));
     // Two windows may have found one vertex.
@@ -93,9 +93,13 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
 
 /// Moves a corner to the vertex that makes up more than half of its turning, if one in its window does:
 /// every window that holds such a vertex between even arcs turns alike.
-fn to_sharp_vertex(corner: &mut Corner, wall: &Loop, vertices: &[(f64, f64)], window: f64) {
+fn to_sharp_vertex(
+    corner: &mut Corner,
+    wall: &Loop,
+    vertices: &[(f64, f64)],
+    (window, length): (f64, f64),
+) {
     let n = vertices.len();
-    let length = wall.length();
     let start = vertices.partition_point(|v| v.0 < corner.arc_length);
     let apart = |k: usize| {
         let d = (vertices[k % n].0 - corner.arc_length).rem_euclid(length);
@@ -138,7 +142,7 @@ fn turnings(wall: &Loop) -> Vec<(f64, f64)> {
             let (ux, uy) = (b[0] - a[0], b[1] - a[1]);
             let (vx, vy) = (c[0] - b[0], c[1] - b[1]);
             let entry = (arc, (ux * vy - uy * vx).atan2(ux * vx + uy * vy));
-            arc += vx.hypot(vy);
+            arc += distance(b, c);
             entry
         })
         .collect()

@@ -16,7 +16,7 @@
 //! longer than 10,000 gaps or a rough wall. Meant for a valid outline; for others the circle means nothing.
 
 use super::linear_pieces::{Piece, highest};
-use super::outline::{Lumen, Point};
+use super::outline::{Lumen, Point, distance};
 use super::segment_tree::{Bounds, NearestWall, SegmentTree};
 use super::wall_edges::{WallEdges, orientation};
 use std::cmp::Ordering;
@@ -156,7 +156,7 @@ impl Search {
         let count = self.edges.len();
         let length = |edge: &usize| {
             let [a, b] = self.edges.ends(*edge);
-            (b[0] - a[0]).hypot(b[1] - a[1])
+            distance(a, b)
         };
         let mut chosen: Vec<usize> = (0..count).collect();
         if count > FIRST_CIRCLES {

@@ -26,6 +26,7 @@ pub use named_wall::{
 pub use nominal::{
     KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
 };
+pub(crate) use outline::distance;
 pub use outline::{Loop, Lumen, Outline, Point};
 pub use segment_tree::{Bounds, NearestWall, SegmentTree};
 pub use validity::{LISTED_PROBLEMS, Place, Problem, ProblemKind, Problems, Role, Severity};

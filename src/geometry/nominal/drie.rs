@@ -7,10 +7,10 @@
 use std::f64::consts::{FRAC_PI_2, PI};
 
 use super::NominalError;
-use super::balanced_curve::{arc, parametric};
 use super::parameters::Parameters;
 use super::shape::{Shape, Wall};
 use crate::geometry::Point;
+use crate::geometry::curves::{arc, parametric};
 
 /// Most scallops on one wall.
 const MOST_SCALLOPS: f64 = 5000.0;

@@ -3,9 +3,9 @@
 use std::f64::consts::{FRAC_PI_2, PI};
 
 use super::NominalError;
-use super::balanced_curve::{arc, parametric};
 use super::parameters::Parameters;
 use super::shape::{Shape, Wall};
+use crate::geometry::curves::{arc, parametric};
 
 /// Largest fraction at which a Gaussian may be closed; above, the profile is a parabola in all but name.
 const LARGEST_TRUNCATION: f64 = 0.5;

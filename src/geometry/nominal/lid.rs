@@ -3,12 +3,11 @@
 use std::f64::consts::FRAC_PI_2;
 
 use super::NominalError;
-use super::balanced_curve::arc;
 use super::kinds::kinds;
 use super::parameters::Parameters;
 use super::shape::Shape;
 use crate::geometry::Point;
-use crate::geometry::curves::distance_to_segment;
+use crate::geometry::curves::{arc, distance_to_segment};
 
 /// Kinds whose top is a flat lid.
 pub(super) const WITH_FLAT_LID: &[&str] = &[

@@ -2,7 +2,7 @@
 //!
 //! A [`NominalSpec`] is a kind with named values; [`NominalSpec::outline`] makes its outline, [`kinds()`]
 //! and [`modifiers`] are the one table of what can be written. Method: closed geometry, curves as
-//! segments on the curve in the mean (`balanced_curve`).
+//! segments within [`super::curves::CHORD_TOLERANCE`].
 //!
 //! Axes and origins: `x` to the right, `y` upwards, the lid on top. A section with a flat lid (grooves,
 //! rectangle, trapezoid, triangles, segment, rounded rectangle) has its origin in the middle of the lid
@@ -10,7 +10,6 @@
 //! it at their centre, a sector at its apex, bonded halves in the middle of the lower half's opening.
 //! Lengths are text with a unit, angles text with `deg` or `rad`; inside everything is metres and radians.
 
-mod balanced_curve;
 mod bonded;
 mod drie;
 mod error;

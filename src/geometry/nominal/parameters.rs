@@ -2,12 +2,11 @@
 
 use std::collections::BTreeMap;
 
-use super::balanced_curve::SAGITTA;
 use super::error::Amount;
 use super::kinds::{KindInfo, ParameterInfo, Quantity, kinds, modifiers};
 use super::shape::Shape;
 use super::{NominalError, NominalSpec, SpecValue};
-use crate::geometry::curves::CurveError;
+use crate::geometry::curves::{CHORD_TOLERANCE, CurveError};
 use crate::units::spelling::nearest;
 use crate::units::{UnitError, parse_angle, parse_length};
 
@@ -81,7 +80,7 @@ impl<'a> Parameters<'a> {
 
     /// Chord error for curves where `smaller` is the measure that the conductance hangs on, m.
     pub(super) fn chord_error(&self, smaller: f64) -> f64 {
-        SAGITTA * self.fineness * smaller
+        CHORD_TOLERANCE * self.fineness * smaller
     }
 
     /// The value as written, `None` when it was left out.

@@ -3,9 +3,9 @@
 use std::f64::consts::{PI, TAU};
 
 use super::NominalError;
-use super::balanced_curve::{arc, elliptical_arc};
 use super::parameters::Parameters;
 use super::shape::{Shape, Wall};
+use crate::geometry::curves::{arc, elliptical_arc};
 use crate::geometry::{Loop, Outline, Point};
 
 /// The angle of the downward axis, rad.

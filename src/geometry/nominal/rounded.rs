@@ -3,10 +3,10 @@
 use std::f64::consts::{FRAC_PI_2, PI};
 
 use super::NominalError;
-use super::balanced_curve::arc;
 use super::parameters::Parameters;
 use super::shape::{Shape, Wall};
 use crate::geometry::Point;
+use crate::geometry::curves::arc;
 
 /// Corner radii are allowed to exceed their side by this fraction, the rounding of decimal text.
 const ROUNDING: f64 = 1e-12;

@@ -51,7 +51,7 @@ impl NominalSpec {
     /// [`NominalError`] names the parameter, its value, the limit and the remedy.
     ///
     /// # Accuracy
-    /// Curves within 1e-6 of the smaller dimension or a narrower measure, on the curve in the mean; areas within 1e-6 of the closed forms
+    /// Curves within [`crate::geometry::curves::CHORD_TOLERANCE`]; areas within 1e-6 of the closed forms
     /// (tests of this module).
     pub fn outline(&self) -> Result<Outline, NominalError> {
         let shape = self.shape(0)?;

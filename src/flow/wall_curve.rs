@@ -138,18 +138,20 @@ impl WallCurve {
 }
 
 impl WallCurve {
-    /// Gives every loop the factor that makes it carry the fluxes into the wall.
-    pub(super) fn balanced(mut self, fluxes: &[WallFlux]) -> Self {
+    /// Gives every loop the factor that makes it carry the fluxes into the wall; returns also the integral over the
+    /// wall before, m^2.
+    pub(super) fn balanced(mut self, fluxes: &[WallFlux]) -> (Self, f64) {
         let mut by_loop: Vec<Vec<WallFlux>> = vec![Vec::new(); self.loops.len()];
         for flux in fluxes {
             if let Some(own) = by_loop.get_mut(flux.loop_index) {
                 own.push(*flux);
             }
         }
+        let mut plain = 0.0;
         for (along, own) in self.loops.iter_mut().zip(by_loop) {
-            along.balance(&own);
+            plain += along.balance(&own);
         }
-        self
+        (self, plain)
     }
 
     /// Puts the points on the finished curve.
@@ -246,7 +248,7 @@ impl LoopCurve {
         self.path.length()
     }
 
-    fn balance(&mut self, fluxes: &[WallFlux]) {
+    fn balance(&mut self, fluxes: &[WallFlux]) -> f64 {
         self.factor = {
             let is_singular = |s: &&Stretch| s.leading.is_some_and(|leading| leading[0] < 0.0);
             let corners = self.stretches.iter().filter(is_singular).map(|s| s.start);
@@ -285,6 +287,7 @@ impl LoopCurve {
         if !wanted.is_empty() {
             self.factor.fit(&curve, &wanted);
         }
+        curve.iter().map(|part| part.1).sum()
     }
 
     /// Shear per gradient at an arc length, m; without bound at a singular corner.

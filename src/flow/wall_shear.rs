@@ -117,12 +117,8 @@ pub(crate) fn wall_curve(
     };
     let paths: Vec<&WallPath> = walls.iter().map(|wall| &wall.path).collect();
     let fluxes = wall_fluxes((lattice, mask, phi), &paths, outline.area(), &at_wall);
-    let plain = (curve
-        .loops
-        .iter()
-        .map(|along| along.integral(0.0, along.length())))
-    .sum();
-    (curve.balanced(&fluxes).with_points(), plain)
+    let (balanced, plain) = curve.balanced(&fluxes);
+    (balanced.with_points(), plain)
 }
 
 fn walls<'a>(outline: &Outline, lattice: &Lattice, corners: &'a [Vec<Corner>]) -> Vec<Wall<'a>> {

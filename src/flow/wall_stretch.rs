@@ -22,6 +22,10 @@ const SINGULAR_REACH: f64 = 4.0;
 const LAW_REACH: f64 = 12.0;
 /// The same as a share of the stretch.
 const LAW_SHARE: f64 = 0.45;
+/// Distance from a corner, in pieces, from which its law is replaced by cubics, within 1e-6 of it.
+const LAW_NEAR: f64 = 8.0;
+/// Half the step of the difference that gives the slope of a law, in pieces.
+const SLOPE_STEP: f64 = 1e-3;
 /// Length, in spacings, below which a stretch is short.
 const SHORT: f64 = 14.0;
 /// Half width of the smoothing, in spacings.
@@ -51,11 +55,14 @@ pub(crate) struct Stretch {
 
 #[derive(Debug, Clone, PartialEq)]
 enum Shape {
-    /// Corner laws of both ends, where there are corners, and a cubic through evenly spaced values.
+    /// A cubic through evenly spaced values, and the laws of the corners at the ends, where there are corners.
     Smooth {
         laws: Option<Box<[CornerLaw; 2]>>,
-        rest: Vec<f64>,
-        slope: Vec<f64>,
+        /// Values and slopes per piece at both ends of each piece, without the laws that are added there.
+        pieces: Vec<[f64; 4]>,
+        /// Number of pieces from either end to which the law of that end is added; in the others it is part of the
+        /// cubic.
+        near: [usize; 2],
     },
     /// Leading powers of both ends times a factor, given at shares of the length.
     Short {
@@ -79,7 +86,7 @@ impl Stretch {
             .map(|k| smoothed(&around, step * k as f64, spacing))
             .collect();
         rest.push(rest[0]);
-        let slope = (0..=count)
+        let slope: Vec<f64> = (0..=count)
             .map(|k| {
                 let (before, after) = ((k + count - 1) % count, (k + 1) % count);
                 (rest[after] - rest[before]) / 2.0
@@ -92,8 +99,8 @@ impl Stretch {
             leading: None,
             shape: Shape::Smooth {
                 laws: None,
-                rest,
-                slope,
+                pieces: joined(&rest, &slope),
+                near: [0; 2],
             },
         }
     }
@@ -169,7 +176,7 @@ impl Stretch {
     /// Number of even pieces that the curve is made of.
     pub(crate) fn pieces(&self, spacing: f64) -> usize {
         match &self.shape {
-            Shape::Smooth { rest, .. } => rest.len() - 1,
+            Shape::Smooth { pieces, .. } => pieces.len(),
             Shape::Short { .. } => pieces(self.length, 0.5 * spacing),
         }
     }
@@ -182,11 +189,20 @@ impl Stretch {
     /// The same from the distances to both ends, of which the smaller is exact.
     pub(crate) fn value_between(&self, s: f64, to_end: f64) -> f64 {
         let value = match &self.shape {
-            Shape::Smooth { laws, rest, slope } => {
-                let corners = laws
-                    .as_ref()
-                    .map_or(0.0, |l| l[0].value(s) + l[1].value(to_end));
-                corners + cubic(rest, slope, s / self.length)
+            Shape::Smooth { laws, pieces, near } => {
+                let count = pieces.len();
+                let at = s / self.length * count as f64;
+                let k = (at.floor().max(0.0) as usize).min(count - 1);
+                let mut value = cubic(&pieces[k], at - k as f64);
+                if let Some(laws) = laws {
+                    if k < near[0] {
+                        value += laws[0].value(s);
+                    }
+                    if k + near[1] >= count {
+                        value += laws[1].value(to_end);
+                    }
+                }
+                value
             }
             Shape::Short { powers, places } => {
                 let shares = [s / self.length, to_end / self.length];
@@ -229,32 +245,61 @@ fn smooth(
             }
         })
         .collect();
-    let slope = (0..=count)
+    let slope: Vec<f64> = (0..=count)
         .map(|k| match k {
             0 => 2.0 * rest[1] - 1.5 * rest[0] - 0.5 * rest[2],
             k if k == count => 1.5 * rest[k] - 2.0 * rest[k - 1] + 0.5 * rest[k - 2],
             k => (rest[k + 1] - rest[k - 1]) / 2.0,
         })
         .collect();
+    let near = (LAW_NEAR.ceil() as usize).min(count);
+    let mut pieces = joined(&rest, &slope);
+    for (k, piece) in pieces.iter_mut().enumerate() {
+        for (end, law) in laws.iter().enumerate() {
+            let is_near = if end == 0 { k < near } else { k + near >= count };
+            if !is_near {
+                add_law(piece, law, end, (k, count, step));
+            }
+        }
+    }
     Shape::Smooth {
         laws: Some(laws),
-        rest,
-        slope,
+        pieces,
+        near: [near; 2],
     }
+}
+
+/// Adds the law of a corner to a piece far from it: it is smooth there, and a cubic is cheaper.
+fn add_law(
+    piece: &mut [f64; 4],
+    law: &CornerLaw,
+    end: usize,
+    (k, count, step): (usize, usize, f64),
+) {
+    for (side, node) in [k, k + 1].into_iter().enumerate() {
+        let (away, sign) = if end == 0 {
+            (node, 1.0)
+        } else {
+            (count - node, -1.0)
+        };
+        let at = |offset: f64| law.value((away as f64 + offset) * step);
+        piece[side] += at(0.0);
+        piece[2 + side] += sign * (at(SLOPE_STEP) - at(-SLOPE_STEP)) / (2.0 * SLOPE_STEP);
+    }
+}
+
+/// Value and slope at both ends of each piece.
+fn joined(values: &[f64], slopes: &[f64]) -> Vec<[f64; 4]> {
+    let ends = values.windows(2).zip(slopes.windows(2));
+    ends.map(|(v, s)| [v[0], v[1], s[0], s[1]]).collect()
 }
 
 fn pieces(length: f64, spacing: f64) -> usize {
     ((length / spacing).ceil() as usize).max(4)
 }
 
-/// Value of the piecewise cubic at a share of the whole; slopes are per piece.
-fn cubic(values: &[f64], slopes: &[f64], share: f64) -> f64 {
-    let count = values.len() - 1;
-    let at = share * count as f64;
-    let k = (at.floor().max(0.0) as usize).min(count - 1);
-    let t = at - k as f64;
-    let (a, b) = (values[k], values[k + 1]);
-    let (u, v) = (slopes[k], slopes[k + 1]);
+/// Value of the cubic of a piece at a share of it.
+fn cubic(&[a, b, u, v]: &[f64; 4], t: f64) -> f64 {
     let rise = b - a;
     a + t * (u + t * (3.0 * rise - 2.0 * u - v + t * (u + v - 2.0 * rise)))
 }

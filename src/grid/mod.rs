@@ -9,6 +9,10 @@ mod mask;
 mod resolution;
 mod runs;
 
+/// Fluid nodes below which all work on a grid stays on one thread: starting threads takes some milliseconds, as
+/// long as the whole solve of such a grid.
+pub(crate) const PARALLEL_NODES: usize = 100_000;
+
 pub(crate) use cell_rows::{Around, CellRows};
 pub(crate) use coverage::coverage;
 pub use crossings::{Crossing, LineCrossings};

@@ -40,7 +40,7 @@ mod square_energy;
 mod triangulation;
 mod upper_bound;
 
-use crate::grid::{Lattice, Mask};
+use crate::grid::{Lattice, Mask, PARALLEL_NODES};
 use crate::solve::Field;
 
 /// Relative amount by which bounds are widened for rounding: sums of up to 1e8 terms of one sign, added in groups.
@@ -107,10 +107,13 @@ impl Bracket {
 /// # Errors
 /// [`ProofError`] when the outline could not be cut, or the flux not be balanced, exactly enough.
 pub fn bracket(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<Bracket, ProofError> {
-    let (low, high) = rayon::join(
-        || lower_bound::lower_bound(lattice, mask, phi),
-        || upper_bound::upper_bound(lattice, mask, phi),
-    );
+    let low = || lower_bound::lower_bound(lattice, mask, phi);
+    let high = || upper_bound::upper_bound(lattice, mask, phi);
+    let (low, high) = if mask.nodes() < PARALLEL_NODES {
+        (low(), high())
+    } else {
+        rayon::join(low, high)
+    };
     let (low, high) = (low?, high?);
     if low <= high {
         Ok(Bracket { low, high })

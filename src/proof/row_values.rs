@@ -7,7 +7,7 @@ use std::ops::Range;
 
 use rayon::prelude::*;
 
-use crate::grid::{Mask, Run};
+use crate::grid::{Mask, PARALLEL_NODES, Run};
 use crate::solve::Field;
 
 /// Fluid nodes in a block, about. Sums are made block by block and then added in order, so that they do not
@@ -15,8 +15,6 @@ use crate::solve::Field;
 const BLOCK_NODES: usize = 16_384;
 /// Rows in a block at least: the rows around it are copied as well.
 const BLOCK_ROWS: i64 = 4;
-/// Fluid nodes from which blocks are shared out over threads.
-const PARALLEL_NODES: usize = 120_000;
 
 /// Results of some work on each block of rows, in order of the rows.
 ///

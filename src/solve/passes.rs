@@ -9,7 +9,7 @@ use std::ops::Range;
 
 use rayon::prelude::*;
 
-use crate::grid::{Colour, Mask};
+use crate::grid::{Colour, Mask, PARALLEL_NODES};
 
 use super::first_guess::guess_row;
 use super::hierarchy::{Grid, GridSource};
@@ -17,8 +17,6 @@ use super::row_set::{Row, RowSet};
 use super::stencil::{Source, Stencil};
 use super::transfer::Transfer;
 
-/// Fluid nodes below which a pass stays on one thread.
-const PARALLEL_NODES: usize = 60_000;
 /// Strips per thread, so that a thread that is held up does not hold up the other.
 const STRIPS_PER_THREAD: usize = 2;
 /// Fewest rows of a strip.

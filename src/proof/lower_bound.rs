@@ -72,6 +72,9 @@ struct WholeSquares {
     near_wall: Vec<WholeSquare>,
 }
 
+/// Squares that are done one by one when one of them lacks a node.
+const FEW: usize = 4;
+
 impl WholeSquares {
     /// - `divided`: squares that are divided
     fn new(mask: &Mask, phi: &Field, divided: &CellRows) -> Self {
@@ -128,6 +131,14 @@ impl WholeSquares {
             let [volume, energy] = squares([r0, r1, r2, r3]);
             self.volume += volume;
             self.energy += energy;
+            return;
+        }
+        if n > FEW {
+            // The wall runs along a lattice line somewhere: by halves until the places are found.
+            let middle = columns.start + n as i64 / 2;
+            self.count -= n;
+            self.add_plain(nodes, columns.start..middle, row);
+            self.add_plain(nodes, middle..columns.end, row);
             return;
         }
         // A node taken out of the fluid nearby.

@@ -31,6 +31,8 @@ pub(crate) struct BalanceFactor {
     marks: Vec<(f64, usize)>,
     /// Length of the loop, m.
     length: f64,
+    /// First mark past the begin of each of as many equal parts of the loop as there are marks.
+    parts: Vec<u32>,
 }
 
 impl BalanceFactor {
@@ -40,11 +42,7 @@ impl BalanceFactor {
     /// - `singular`: arc lengths of its re-entrant corners, sorted, m
     pub(crate) fn with_marks(length: f64, spacing: f64, singular: &[f64]) -> Self {
         if length < SHORT_LOOP * spacing {
-            return Self {
-                changes: vec![0.0],
-                marks: vec![(0.0, 0), (length, 0)],
-                length,
-            };
+            return Self::new(vec![0.0], vec![(0.0, 0), (length, 0)], length);
         }
         let gap = |k: usize| {
             let next = singular[(k + 1) % singular.len()];
@@ -92,10 +90,19 @@ impl BalanceFactor {
         let end = marks.partition_point(|mark| mark.0 < length) + 1;
         marks.truncate(end);
         marks.drain(..first);
+        Self::new(vec![0.0; count], marks, length)
+    }
+
+    fn new(changes: Vec<f64>, marks: Vec<(f64, usize)>, length: f64) -> Self {
+        let part = length / marks.len() as f64;
+        let parts = (0..marks.len())
+            .map(|k| marks.partition_point(|m| m.0 <= k as f64 * part) as u32)
+            .collect();
         Self {
-            changes: vec![0.0; count],
+            changes,
             marks,
             length,
+            parts,
         }
     }
 
@@ -157,10 +164,13 @@ impl BalanceFactor {
         } else {
             arc_length.rem_euclid(self.length)
         };
-        let next = self
-            .marks
-            .partition_point(|m| m.0 <= s)
-            .clamp(1, self.marks.len() - 1);
+        let part = (s / self.length * self.parts.len() as f64) as usize;
+        // One part back, against rounding.
+        let mut next = self.parts[part.min(self.parts.len() - 1).saturating_sub(1)] as usize;
+        while self.marks.get(next).is_some_and(|m| m.0 <= s) {
+            next += 1;
+        }
+        let next = next.clamp(1, self.marks.len() - 1);
         let ((from, k), (to, after)) = (self.marks[next - 1], self.marks[next]);
         (k, after, (s - from) / (to - from))
     }

@@ -256,7 +256,11 @@ fn smooth(
     let mut pieces = joined(&rest, &slope);
     for (k, piece) in pieces.iter_mut().enumerate() {
         for (end, law) in laws.iter().enumerate() {
-            let is_near = if end == 0 { k < near } else { k + near >= count };
+            let is_near = if end == 0 {
+                k < near
+            } else {
+                k + near >= count
+            };
             if !is_near {
                 add_law(piece, law, end, (k, count, step));
             }

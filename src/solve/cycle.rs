@@ -7,10 +7,13 @@ use crate::grid::Colour;
 
 use super::hierarchy::{Grid, GridSource, Hierarchy};
 use super::krylov;
-use super::passes::{Lift, Start, ascend, descend};
+use super::passes::{Lift, Start, ascend, descend, residual_after_sweep};
 
 /// A cycle that reduces the residual by less than this calls for the Krylov acceleration.
 const SLOW: f64 = 0.35;
+
+/// Reduction that one cycle usually gives.
+const EXPECTED: f64 = 0.15;
 
 /// How far to iterate.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -82,6 +85,14 @@ impl Hierarchy {
             }
             self.correct(level);
             cycles += 1;
+            if residual * EXPECTED < control.residual {
+                // Probably the last cycle: only look, which costs a quarter of a pass.
+                let reached = residual_after_sweep(&self.grids[level]);
+                if reached <= control.residual {
+                    residual = reached;
+                    break;
+                }
+            }
             let now = self.descend(level, Start::Present);
             slow = if now > SLOW * residual { slow + 1 } else { 0 };
             residual = now;

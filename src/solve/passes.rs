@@ -115,6 +115,13 @@ impl Left {
     }
 }
 
+fn sum<'a>(rows: impl IntoIterator<Item = &'a Left>) -> Left {
+    rows.into_iter().fold(Left::default(), |sum, row| Left {
+        residual: sum.residual + row.residual,
+        phi: sum.phi + row.phi,
+    })
+}
+
 /// First rows of all strips but the first: even, and so many nodes apart.
 fn seams(mask: &Mask) -> Vec<usize> {
     // Asking for the number of threads starts them: small grids do without.
@@ -293,10 +300,7 @@ pub(super) fn descend(
             }
         }
     }
-    left.iter().fold(Left::default(), |sum, row| Left {
-        residual: sum.residual + row.residual,
-        phi: sum.phi + row.phi,
-    })
+    sum(&left)
 }
 
 /// All strips of the pass down.
@@ -353,6 +357,36 @@ fn in_parallel<T: Send>(strips: &mut [T], run: impl Fn(&mut T) + Sync + Send) {
     } else {
         strips.par_iter_mut().for_each(run);
     }
+}
+
+/// Residual of a grid right after a sweep over its odd nodes, as in [`super::Solved::residual`].
+pub(super) fn residual_after_sweep(grid: &Grid) -> f64 {
+    let source = grid.source.of(&grid.rhs);
+    let of_rows = |rows: Range<usize>| {
+        let mut residual = vec![0.0; grid.mask.longest_row as usize];
+        rows.map(|row| {
+            let starts = &grid.mask.starts;
+            let first = starts[row].node[0];
+            let out = &mut residual[..(starts[row + 1].node[0] - first) as usize];
+            let own = Row::new(&grid.phi.colour[0], 0);
+            let other = [Row::new(&grid.phi.colour[1], 0); 3];
+            let place = (Colour::Even, row);
+            grid.stencil
+                .residual_row(&grid.mask, place, (own, other), source, out);
+            Left::of(own.from(first, out.len()), out)
+        })
+        .collect::<Vec<Left>>()
+    };
+    let mut ends = seams(&grid.mask);
+    ends.push(grid.mask.rows());
+    let firsts = std::iter::once(0).chain(ends.iter().copied());
+    let mut strips: Vec<(Range<usize>, Vec<Left>)> = firsts
+        .zip(&ends)
+        .map(|(first, &end)| (first..end, Vec::new()))
+        .collect();
+    in_parallel(&mut strips, |strip| strip.1 = of_rows(strip.0.clone()));
+    let left = strips.iter().flat_map(|strip| &strip.1);
+    sum(left).root_mean_square() / f64::from(grid.mask.stride).powi(2)
 }
 
 /// One strip of the pass up.

@@ -89,7 +89,7 @@ pub(super) fn assemble(
     let values = mean_conductances(solution, &curved, h, useful.min(3));
     let mut conductance = to_limit(&values, !others.is_empty());
     if let Ok(proven) = bracket {
-        conductance = within(conductance, *proven);
+        conductance = within(conductance, *proven, exponent.is_some_and(|p| p < 2.0));
     }
     let square = over_grids(&|a| a.integrals.square).scaled(h.powi(6));
     let cube = over_grids(&|a| a.integrals.cube).scaled(h.powi(8));
@@ -183,8 +183,15 @@ fn mean_conductances(
 
 /// The best value is never outside the proven bounds, nor its error larger than they allow; an extrapolated
 /// value less sure than the middle between them gives way to that.
-fn within(best: Estimate, proven: Bracket) -> Estimate {
+///
+/// - `is_re_entrant`: there are re-entrant corners: nearly flat ones next to them can make the extrapolated values
+///   agree by accident, so that the middle is called as a second witness (`tests/invariants.rs` keeps such a
+///   star: eight vertices, 48 cells, best value 8.4e-5 off, estimated 1e-6)
+fn within(mut best: Estimate, proven: Bracket, is_re_entrant: bool) -> Estimate {
     let half = 0.5 * (proven.high - proven.low);
+    if is_re_entrant {
+        best.error = best.error.max((best.value - proven.low - half).abs());
+    }
     if best.error > half {
         return Estimate {
             value: proven.low + half,

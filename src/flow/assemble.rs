@@ -4,17 +4,17 @@ use crate::geometry::{Corner, Outline, Point};
 use crate::grid::{Lattice, Mask};
 use crate::measured::Estimate;
 use crate::proof::{Bracket, ProofError};
-use crate::solve::{Field, Solved};
+use crate::solve::Field;
 
 use super::accuracy::Accuracy;
 use super::extrapolation::extrapolate;
 use super::grid_integrals::GridIntegrals;
 use super::identities::identities;
-use super::peak::GridPeak;
 use super::section_flow::{
-    GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,
+    GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
 };
 use super::solve_warnings::{ISLAND_CELLS, warnings};
+use super::solved_grids::{GridAnswer, SolvedGrids};
 use super::tangents::{Tangent, tangents};
 use super::wall_shear::{wall_curve, wall_samples, without_curve};
 use super::width_source::width_source;
@@ -22,75 +22,35 @@ use super::width_source::width_source;
 /// Fluid angle, radians, from which the term of a corner is removed by extrapolation: its exponent there
 /// is 3.6.
 const WIDE_CORNER: f64 = 100.0 * std::f64::consts::PI / 180.0;
-/// What one grid of the sequence said.
-pub(super) struct GridAnswer {
-    pub(super) stride: u32,
-    pub(super) nodes: usize,
-    pub(super) wall_nodes: usize,
-    pub(super) solved: Solved,
-    pub(super) integrals: GridIntegrals,
-    pub(super) peak: GridPeak,
-}
-
-/// Everything the answers are read from.
-pub(super) struct Solution<'a> {
-    pub(super) lattice: &'a Lattice,
-    pub(super) mask: &'a Mask,
-    pub(super) phi: &'a Field,
-    pub(super) corners: &'a [Vec<Corner>],
-    /// How far re-entrant corners miss the nodes, 0 to 1.
-    pub(super) misfit: f64,
-    /// m^4.
-    pub(super) bracket: Result<Bracket, ProofError>,
-    /// Finest first.
-    pub(super) answers: Vec<GridAnswer>,
-    /// Answers on the lattice in other places, with its origin.
-    pub(super) others: Vec<(Point, Vec<GridAnswer>)>,
-}
 
 /// The answers but for the curve of the wall shear, the identities and the warnings, which are only worth
 /// their time on the grid that is kept; see [`finish`].
 pub(super) fn assemble(
     outline: &Outline,
-    solution: &Solution,
+    grids: &SolvedGrids,
+    bracket: Result<Bracket, ProofError>,
     grid: GridReport,
     seconds: f64,
 ) -> SectionFlow {
-    let Solution {
+    let SolvedGrids {
         lattice,
         mask,
         phi,
         corners,
-        misfit,
-        bracket,
         answers,
-        others,
-    } = solution;
+        ..
+    } = grids;
     let geometry = geometry(outline);
-    let exponent = leading_exponent(corners);
     let h = grid.spacing;
-    let small = small_islands(outline, h);
-    // Grids with hardly any nodes say nothing about the limit.
-    let useful = answers.iter().take_while(|a| a.nodes >= 9).count().max(1);
-    let to_limit = |values: &[f64], averaged: bool| {
-        let mut estimate = extrapolate(values, exponent, *misfit, averaged);
-        if let (Some(fine), true) = (values.first(), small > 0) {
-            // The coarser grids hardly see such islands, so the sequence says less than it seems to.
-            estimate.error = estimate.error.max((estimate.value - fine).abs());
-        }
-        estimate
-    };
-    let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
-        let values: Vec<f64> = answers[..useful].iter().take(3).map(of).collect();
-        to_limit(&values, false)
-    };
     let samples = wall_samples(outline, (lattice, mask, phi), corners);
-    let curved = tangents(outline, &samples, h);
-    let values = mean_conductances(solution, &curved, h, useful.min(3));
-    let mut conductance = to_limit(&values, !others.is_empty());
+    let mut conductance = extrapolated_conductance(outline, grids, &samples);
     if let Ok(proven) = bracket {
-        conductance = within(conductance, *proven, exponent.is_some_and(|p| p < 2.0));
+        conductance = within(conductance, proven, has_re_entrant_corner(corners));
     }
+    let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
+        let values: Vec<f64> = useful(answers).iter().map(of).collect();
+        to_limit(outline, grids, &values, false)
+    };
     let square = over_grids(&|a| a.integrals.square).scaled(h.powi(6));
     let cube = over_grids(&|a| a.integrals.cube).scaled(h.powi(8));
     let top = over_grids(&|a| a.peak.value).scaled(h * h);
@@ -99,7 +59,7 @@ pub(super) fn assemble(
     let fanning_dh = diameter * diameter * area / (2.0 * conductance.value);
     SectionFlow {
         conductance,
-        bracket: *bracket,
+        bracket,
         conductance_finest_grid: finest.conductance * h.powi(4),
         fanning_dh,
         darcy_dh: 4.0 * fanning_dh,
@@ -155,23 +115,51 @@ pub(super) fn finish(
     flow.warnings = all;
 }
 
-/// `K` of the finest grids, m^4, without the excess at tangent walls, averaged over the places of the
+/// Answers of the grids that extrapolation uses: grids with hardly any nodes say nothing about the limit.
+fn useful(answers: &[GridAnswer]) -> &[GridAnswer] {
+    let count = answers.iter().take_while(|a| a.nodes >= 9).count().max(1);
+    answers.get(..count.min(3)).unwrap_or(answers)
+}
+
+/// Best value from one number of every useful grid.
+fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64], averaged: bool) -> Estimate {
+    let exponent = leading_exponent(&grids.corners);
+    let mut estimate = extrapolate(values, exponent, grids.misfit, averaged);
+    if let (Some(fine), true) = (
+        values.first(),
+        small_islands(outline, grids.lattice.spacing) > 0,
+    ) {
+        // The coarser grids hardly see such islands, so the sequence says less than it seems to.
+        estimate.error = estimate.error.max((estimate.value - fine).abs());
+    }
+    estimate
+}
+
+/// Best value of `K`, m^4, by extrapolation alone.
+pub(super) fn extrapolated_conductance(
+    outline: &Outline,
+    grids: &SolvedGrids,
+    samples: &[WallSample],
+) -> Estimate {
+    let curved = tangents(outline, samples, grids.lattice.spacing);
+    let values = mean_conductances(grids, &curved);
+    to_limit(outline, grids, &values, !grids.others.is_empty())
+}
+
+/// `K` of the useful grids, m^4, without the excess at tangent walls, averaged over the places of the
 /// lattice.
-fn mean_conductances(
-    solution: &Solution,
-    curved: &[Tangent],
-    spacing: f64,
-    grids: usize,
-) -> Vec<f64> {
+fn mean_conductances(grids: &SolvedGrids, curved: &[Tangent]) -> Vec<f64> {
+    let spacing = grids.lattice.spacing;
     let corrected = |origin: Point, a: &GridAnswer| {
         let own = spacing * f64::from(a.stride);
         let excess: f64 = curved.iter().map(|t| t.excess(origin, own)).sum();
         a.integrals.conductance * spacing.powi(4) - excess
     };
-    (0..grids)
-        .map(|level| {
-            let own = corrected(solution.lattice.origin, &solution.answers[level]);
-            let rest = solution
+    let levels = useful(&grids.answers).iter().enumerate();
+    levels
+        .map(|(level, answer)| {
+            let own = corrected(grids.lattice.origin, answer);
+            let rest = grids
                 .others
                 .iter()
                 .filter_map(|(origin, list)| Some(corrected(*origin, list.get(level)?)));
@@ -187,7 +175,7 @@ fn mean_conductances(
 /// - `is_re_entrant`: there are re-entrant corners: nearly flat ones next to them can make the extrapolated values
 ///   agree by accident, so that the middle is called as a second witness (`tests/invariants.rs` keeps such a
 ///   star: eight vertices, 48 cells, best value 8.4e-5 off, estimated 1e-6)
-fn within(mut best: Estimate, proven: Bracket, is_re_entrant: bool) -> Estimate {
+pub(super) fn within(mut best: Estimate, proven: Bracket, is_re_entrant: bool) -> Estimate {
     let half = 0.5 * (proven.high - proven.low);
     if is_re_entrant {
         best.error = best.error.max((best.value - proven.low - half).abs());
@@ -243,6 +231,11 @@ pub(super) fn leading_exponent(corners: &[Vec<Corner>]) -> Option<f64> {
     // A crack cannot open further than the full turn.
     let widest = widest.min(std::f64::consts::TAU);
     (widest > WIDE_CORNER).then(|| std::f64::consts::TAU / widest)
+}
+
+/// Whether a corner decides the leading error of `K`.
+pub(super) fn has_re_entrant_corner(corners: &[Vec<Corner>]) -> bool {
+    leading_exponent(corners).is_some_and(|p| p < 2.0)
 }
 
 fn solver_report(answers: &[GridAnswer], spacing: f64, seconds: f64) -> SolverReport {

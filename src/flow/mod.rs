@@ -13,6 +13,7 @@ mod field;
 mod fluid;
 mod grid_integrals;
 mod identities;
+mod nearby;
 mod operating_point;
 mod peak;
 mod section_flow;
@@ -20,6 +21,7 @@ mod shortcuts;
 mod solve_cost;
 mod solve_outline;
 mod solve_warnings;
+mod solved_grids;
 mod tangents;
 mod validity_range;
 mod wall_balance;
@@ -37,6 +39,7 @@ pub use accuracy::{Accuracy, Cost, DEFAULT_TOLERANCE, Goal, LEAST_TOLERANCE, Sto
 pub use entrance::{EntranceModel, entrance_length, excess_pressure_factor};
 pub use field::DenseField;
 pub use fluid::{Fluid, FluidError};
+pub use nearby::NearbySections;
 pub use operating_point::{Drive, OperatingPoint, OperatingPointError};
 pub use section_flow::{
     GridReport, Identity, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport,

@@ -2,35 +2,19 @@
 
 use std::time::Instant;
 
-use crate::geometry::{Corner, Outline, Point, largest_inscribed_circle};
-use crate::grid::{Lattice, LineCrossings, Mask, ResolutionError, spacing};
+use crate::geometry::{Corner, Outline, largest_inscribed_circle};
+use crate::grid::{Lattice, Mask, ResolutionError, spacing};
 use crate::proof::bracket;
-use crate::solve::{Field, Hierarchy, SolveControl};
+use crate::solve::Field;
 use crate::warning::{Code, Warning};
 
 use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, refine};
-use super::assemble::{GridAnswer, Solution, assemble, finish, leading_exponent};
-use super::corner_alignment::{Alignment, align};
+use super::assemble::{assemble, finish};
 use super::field::DenseField;
-use super::grid_integrals::GridIntegrals;
-use super::peak::peak;
 use super::section_flow::{GridReport, SectionFlow};
-use super::solve_cost::{LevelCost, SolveCost, StageClock, StageCost};
-use super::wall_shear::corners_of;
+use super::solve_cost::{SolveCost, StageClock, StageCost};
+use super::solved_grids::solve_grids;
 
-/// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
-/// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
-const RESIDUAL_SHARE: f64 = 0.1;
-/// Where the lattice lies where corners are nearly flat, in lines: in step with the lower left corner on
-/// the finest grid only, so that the places below are spread evenly over all three. Chosen on the regular
-/// polygons of `tests/convergence.rs`, which therefore do not test the choice independently.
-const FIRST_PLACE: [f64; 2] = [2.0, 2.0];
-/// Other places over which K is averaged there.
-const OTHER_PLACES: [[f64; 2]; 3] = [[0.4721, 1.0195], [2.9443, 0.0390], [1.4164, 3.0586]];
-/// Exponent below which the widest corner counts as nearly flat: from 135 degrees.
-const FLAT_EXPONENT: f64 = 8.0 / 3.0;
-/// Fluid nodes up to which it is averaged: beyond, such corners no longer matter.
-const AVERAGED_NODES: usize = 200_000;
 /// Estimated relative error of `K` from which a grid that was asked for is called rough.
 const ROUGH: f64 = 1e-3;
 /// Memory that one solve may use by default, bytes.
@@ -206,116 +190,33 @@ fn solve_at(
     let start = Instant::now();
     let mut clock = StageClock::start();
     let asked = spacing(outline, diameter, cells_across, options.memory_limit)?;
-    let corners = corners_of(outline, asked);
-    let is_flat = options.grid_offset.is_none()
-        && leading_exponent(&corners).is_some_and(|p| (2.0..FLAT_EXPONENT).contains(&p));
-    let fitted = match options.grid_offset {
-        None if is_flat => Alignment {
-            spacing: asked,
-            offset: FIRST_PLACE,
-            misfit: 0.0,
-        },
-        None => align(outline, &corners, asked),
-        Some(offset) => Alignment {
-            spacing: asked,
-            offset,
-            misfit: 1.0,
-        },
-    };
-    let spacing = fitted.spacing;
-    clock.end("corners and place of the grid");
-    let (lattice, hierarchy, answers) =
-        grid_sequence(outline, spacing, fitted.offset, cells_across, &mut clock)
-            .ok_or(FlowError::NoFluidNode { spacing })?;
-    let (mask, phi) = hierarchy.into_finest();
-    let others: Vec<(Point, Vec<GridAnswer>)> = OTHER_PLACES
-        .iter()
-        .filter(|_| is_flat && mask.nodes() <= AVERAGED_NODES)
-        .filter_map(|&place| {
-            grid_sequence(
-                outline,
-                spacing,
-                place,
-                cells_across,
-                &mut StageClock::start(),
-            )
-        })
-        .map(|(other, _, answers)| (other.origin, answers))
-        .collect();
-    if is_flat {
-        clock.end("other places of the grid");
-    }
+    let grids = solve_grids(
+        outline,
+        asked,
+        cells_across,
+        options.grid_offset,
+        &mut clock,
+    )?;
     let seconds = start.elapsed().as_secs_f64();
     clock.lap();
-    let bracket = bracket(&lattice, &mask, &phi).map(|b| b.scaled(spacing.powi(4)));
+    let bracket = bracket(&grids.lattice, &grids.mask, &grids.phi)
+        .map(|b| b.scaled(grids.lattice.spacing.powi(4)));
     clock.end("proof");
     let grid = GridReport {
-        spacing,
-        fluid_nodes: mask.nodes(),
-        cells_across: diameter / spacing,
+        spacing: grids.lattice.spacing,
+        fluid_nodes: grids.mask.nodes(),
+        cells_across: diameter / grids.lattice.spacing,
         inscribed_diameter: diameter,
     };
-    let solution = Solution {
-        lattice: &lattice,
-        mask: &mask,
-        phi: &phi,
-        corners: &corners,
-        misfit: fitted.misfit,
-        bracket,
-        answers,
-        others,
-    };
-    let flow = assemble(outline, &solution, grid, seconds);
+    let flow = assemble(outline, &grids, bracket, grid, seconds);
     clock.end("answers");
     Ok(SolvedSection {
         flow,
         outline: outline.clone(),
-        lattice,
-        mask,
-        phi,
+        lattice: grids.lattice,
+        mask: grids.mask,
+        phi: grids.phi,
         cost: clock.cost(),
-        corners,
+        corners: grids.corners,
     })
-}
-
-/// Solves every grid of the sequence on a lattice in a given place; answers finest first.
-fn grid_sequence(
-    outline: &Outline,
-    spacing: f64,
-    offset: [f64; 2],
-    cells_across: f64,
-    clock: &mut StageClock,
-) -> Option<(Lattice, Hierarchy, Vec<GridAnswer>)> {
-    let lattice = Lattice::new(outline, spacing, offset);
-    let rows = LineCrossings::rows(&lattice);
-    let columns = LineCrossings::columns(&lattice);
-    clock.end("crossings");
-    let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns)?;
-    clock.end("grids and transfers");
-    let control = SolveControl {
-        residual: RESIDUAL_SHARE / (cells_across * cells_across),
-        most_cycles: 100,
-    };
-    let mut answers = Vec::new();
-    hierarchy.solve(control, |grid, solved| {
-        let seconds = clock.lap();
-        clock.add("solve", seconds);
-        clock.level(LevelCost {
-            fluid_nodes: grid.mask.nodes(),
-            cycles: solved.cycles,
-            seconds,
-            bytes: grid.bytes(),
-        });
-        answers.push(GridAnswer {
-            stride: grid.mask.stride,
-            nodes: grid.mask.nodes(),
-            wall_nodes: grid.mask.wall.iter().map(Vec::len).sum(),
-            solved,
-            integrals: GridIntegrals::new(&grid.mask, &grid.phi),
-            peak: peak(&grid.mask, &grid.phi),
-        });
-        clock.end("integrals");
-    });
-    answers.reverse();
-    Some((lattice, hierarchy, answers))
 }

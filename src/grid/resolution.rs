@@ -2,11 +2,14 @@
 
 use crate::geometry::Outline;
 
-/// Memory of one fluid node over all grids of the hierarchy, bytes: about 35 seen as the peak of the whole
-/// process at 1 and 4 million nodes before the bounds were added, rounded up.
-pub const BYTES_PER_NODE: f64 = 64.0;
-/// Memory of one crossing of the outline with a lattice line, with its arm, bytes.
-const BYTES_PER_CROSSING: f64 = 400.0;
+/// Memory of one fluid node over all grids of the hierarchy and in the proof, bytes: 17 seen as the peak of the whole
+/// process at 16 and 100 million nodes (`solve --trace`, `cargo bench --bench cost_table`), rounded up.
+pub const BYTES_PER_NODE: f64 = 24.0;
+/// Memory of one crossing of the outline with a lattice line, with its cells and what the proof holds of them, bytes:
+/// 500 seen on straight walls, 1400 on rough ones.
+const BYTES_PER_CROSSING: f64 = 1500.0;
+/// Memory of one vertex of the outline, bytes: 250 seen at 100 000 vertices.
+const BYTES_PER_VERTEX: f64 = 400.0;
 /// Fewest cells across the largest circle of the smallest lumen that can be asked for.
 pub const LEAST_CELLS_ACROSS: f64 = 4.0;
 
@@ -89,7 +92,8 @@ impl ResolutionError {
 pub fn memory_needed(outline: &Outline, spacing: f64) -> f64 {
     let nodes = outline.area() / (spacing * spacing);
     let crossings = 2.0 * outline.wetted_perimeter() / spacing;
-    nodes * BYTES_PER_NODE + crossings * BYTES_PER_CROSSING
+    let vertices: usize = outline.loops().map(|wall| wall.points.len()).sum();
+    nodes * BYTES_PER_NODE + crossings * BYTES_PER_CROSSING + vertices as f64 * BYTES_PER_VERTEX
 }
 
 /// Checks that a grid of the given spacing is affordable; returns its spacing, m.

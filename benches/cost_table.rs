@@ -10,7 +10,7 @@ use std::error::Error;
 use std::path::Path;
 use std::time::Instant;
 
-use etchwise::flow::{Goal, SolveOptions, SolvedSection, solve_outline};
+use etchwise::flow::{Goal, NearbySections, SolveOptions, SolvedSection, solve_outline};
 use etchwise::geometry::Outline;
 use etchwise::intake::{ReadOptions, read_section};
 
@@ -213,6 +213,39 @@ fn threads(outline: &Outline) -> Fallible<()> {
     Ok(())
 }
 
+/// Many neighbours of a KOH groove, estimated to 1e-4, on all threads.
+fn many() -> Fallible<()> {
+    const COUNT: u32 = 2000;
+    let groove = |depth: f64, shift: f64| {
+        Outline::single(vec![
+            [30e-6, -depth],
+            [70e-6 + shift, -depth],
+            [100e-6, 0.0],
+            [shift, 0.0],
+        ])
+    };
+    let nearby = NearbySections::new(&groove(40e-6, 0.0), 1e-4)?;
+    let lot: Vec<Outline> = (0..COUNT)
+        .map(|k| {
+            let t = f64::from(k);
+            groove(40e-6 * (1.0 + 0.02 * t.sin()), 1e-6 * (1.7 * t).cos())
+        })
+        .collect();
+    let mut seconds = Vec::new();
+    for _ in 0..RUNS {
+        let start = Instant::now();
+        std::hint::black_box(nearby.conductances(&lot));
+        seconds.push(start.elapsed().as_secs_f64());
+    }
+    println!(
+        "\n## {COUNT} neighbours of a KOH groove to 1e-4 (estimate), {} threads\n\n{:.2} s, {:.2} ms a section",
+        rayon::current_num_threads(),
+        median(seconds.clone()),
+        1e3 * median(seconds) / f64::from(COUNT),
+    );
+    Ok(())
+}
+
 fn main() -> Fallible<()> {
     let quick = std::env::args().any(|argument| argument == "quick");
     let sections = sections()?;
@@ -222,5 +255,6 @@ fn main() -> Fallible<()> {
     let one = rayon::ThreadPoolBuilder::new().num_threads(1).build()?;
     one.install(|| stages(&sections, quick).map_err(|e| e.to_string()))?;
     one.install(|| to_accuracy(&sections).map_err(|e| e.to_string()))?;
-    threads(&rectangle(1e-4))
+    threads(&rectangle(1e-4))?;
+    many()
 }

@@ -45,7 +45,7 @@ fn bench(criterion: &mut Criterion) {
                     let columns = LineCrossings::columns(&lattice);
                     let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns)?;
                     let control = SolveControl {
-                        residual: 0.002 / f64::from(cells).powi(2),
+                        residual: 0.1 / f64::from(cells).powi(2),
                         most_cycles: 100,
                     };
                     hierarchy.solve(control, |_, _| {});

@@ -135,7 +135,7 @@ impl WholeSquares {
         }
         if n > FEW {
             // The wall runs along a lattice line somewhere: by halves until the places are found.
-            let middle = columns.start + n as i64 / 2;
+            let middle = i64::midpoint(columns.start, columns.end);
             self.count -= n;
             self.add_plain(nodes, columns.start..middle, row);
             self.add_plain(nodes, middle..columns.end, row);

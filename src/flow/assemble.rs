@@ -1,6 +1,6 @@
 //! From the solved grids to the answers of a section.
 
-use crate::geometry::{Corner, Outline, Point};
+use crate::geometry::{Corner, Outline};
 use crate::grid::{Lattice, Mask};
 use crate::measured::Estimate;
 use crate::proof::{Bracket, ProofError};
@@ -10,12 +10,13 @@ use super::accuracy::Accuracy;
 use super::extrapolation::extrapolate;
 use super::grid_integrals::GridIntegrals;
 use super::identities::identities;
+use super::range_extrapolation::from_ranges;
 use super::section_flow::{
     GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
 };
 use super::solve_warnings::{ISLAND_CELLS, warnings};
 use super::solved_grids::{GridAnswer, SolvedGrids};
-use super::tangents::{Tangent, tangents};
+use super::tangents::tangents;
 use super::wall_shear::{wall_curve, wall_samples, without_curve};
 use super::width_source::width_source;
 
@@ -43,13 +44,10 @@ pub(super) fn assemble(
     let geometry = geometry(outline);
     let h = grid.spacing;
     let samples = wall_samples(outline, (lattice, mask, phi), corners);
-    let mut conductance = extrapolated_conductance(outline, grids, &samples);
-    if let Ok(proven) = bracket {
-        conductance = within(conductance, proven, has_re_entrant_corner(corners));
-    }
+    let conductance = best_conductance(outline, grids, &samples, bracket.ok());
     let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
         let values: Vec<f64> = useful(answers).iter().map(of).collect();
-        to_limit(outline, grids, &values, false)
+        to_limit(outline, grids, &values)
     };
     let square = over_grids(&|a| a.integrals.square).scaled(h.powi(6));
     let cube = over_grids(&|a| a.integrals.cube).scaled(h.powi(8));
@@ -122,9 +120,9 @@ fn useful(answers: &[GridAnswer]) -> &[GridAnswer] {
 }
 
 /// Best value from one number of every useful grid.
-fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64], averaged: bool) -> Estimate {
+fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64]) -> Estimate {
     let exponent = leading_exponent(&grids.corners);
-    let mut estimate = extrapolate(values, exponent, grids.misfit, averaged);
+    let mut estimate = extrapolate(values, exponent, grids.misfit);
     if let (Some(fine), true) = (
         values.first(),
         small_islands(outline, grids.lattice.spacing) > 0,
@@ -135,38 +133,36 @@ fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64], averaged: bo
     estimate
 }
 
-/// Best value of `K`, m^4, by extrapolation alone.
-pub(super) fn extrapolated_conductance(
+/// Best value of `K`, m^4, from the sequence of grids and the proven ranges.
+pub(super) fn best_conductance(
     outline: &Outline,
     grids: &SolvedGrids,
     samples: &[WallSample],
+    proven: Option<Bracket>,
 ) -> Estimate {
-    let curved = tangents(outline, samples, grids.lattice.spacing);
-    let values = mean_conductances(grids, &curved);
-    to_limit(outline, grids, &values, !grids.others.is_empty())
-}
-
-/// `K` of the useful grids, m^4, without the excess at tangent walls, averaged over the places of the
-/// lattice.
-fn mean_conductances(grids: &SolvedGrids, curved: &[Tangent]) -> Vec<f64> {
     let spacing = grids.lattice.spacing;
-    let corrected = |origin: Point, a: &GridAnswer| {
-        let own = spacing * f64::from(a.stride);
-        let excess: f64 = curved.iter().map(|t| t.excess(origin, own)).sum();
-        a.integrals.conductance * spacing.powi(4) - excess
-    };
-    let levels = useful(&grids.answers).iter().enumerate();
-    levels
-        .map(|(level, answer)| {
-            let own = corrected(grids.lattice.origin, answer);
-            let rest = grids
-                .others
+    let curved = tangents(outline, samples, spacing);
+    let values: Vec<f64> = useful(&grids.answers)
+        .iter()
+        .map(|answer| {
+            let own = spacing * f64::from(answer.stride);
+            // Without the excess at tangent walls.
+            let excess: f64 = curved
                 .iter()
-                .filter_map(|(origin, list)| Some(corrected(*origin, list.get(level)?)));
-            let (sum, count) = rest.fold((own, 1.0), |(sum, n), k| (sum + k, n + 1.0));
-            sum / count
+                .map(|t| t.excess(grids.lattice.origin, own))
+                .sum();
+            answer.integrals.conductance * spacing.powi(4) - excess
         })
-        .collect()
+        .collect();
+    let extrapolated = to_limit(outline, grids, &values);
+    let Some(proven) = proven else {
+        return extrapolated;
+    };
+    let is_re_entrant = leading_exponent(&grids.corners).is_some_and(|p| p < 2.0);
+    grids
+        .coarse_range
+        .and_then(|coarse| from_ranges(extrapolated, proven, coarse, is_re_entrant))
+        .unwrap_or_else(|| within(extrapolated, proven, is_re_entrant))
 }
 
 /// The best value is never outside the proven bounds, nor its error larger than they allow; an extrapolated
@@ -175,7 +171,7 @@ fn mean_conductances(grids: &SolvedGrids, curved: &[Tangent]) -> Vec<f64> {
 /// - `is_re_entrant`: there are re-entrant corners: nearly flat ones next to them can make the extrapolated values
 ///   agree by accident, so that the middle is called as a second witness (`tests/invariants.rs` keeps such a
 ///   star: eight vertices, 48 cells, best value 8.4e-5 off, estimated 1e-6)
-pub(super) fn within(mut best: Estimate, proven: Bracket, is_re_entrant: bool) -> Estimate {
+fn within(mut best: Estimate, proven: Bracket, is_re_entrant: bool) -> Estimate {
     let half = 0.5 * (proven.high - proven.low);
     if is_re_entrant {
         best.error = best.error.max((best.value - proven.low - half).abs());
@@ -231,11 +227,6 @@ pub(super) fn leading_exponent(corners: &[Vec<Corner>]) -> Option<f64> {
     // A crack cannot open further than the full turn.
     let widest = widest.min(std::f64::consts::TAU);
     (widest > WIDE_CORNER).then(|| std::f64::consts::TAU / widest)
-}
-
-/// Whether a corner decides the leading error of `K`.
-pub(super) fn has_re_entrant_corner(corners: &[Vec<Corner>]) -> bool {
-    leading_exponent(corners).is_some_and(|p| p < 2.0)
 }
 
 fn solver_report(answers: &[GridAnswer], spacing: f64, seconds: f64) -> SolverReport {

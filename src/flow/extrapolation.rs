@@ -27,13 +27,7 @@ const FLOOR: f64 = 2e-8;
 /// - `exponent`: `2 pi / omega` of the widest corner, where that is below about 4
 /// - `misfit`: how far re-entrant corners miss the nodes of the grids, 0 to 1; the constant of their term
 ///   then varies from grid to grid by about that share of itself
-/// - `averaged`: the values are means over several places of the lattice
-pub(crate) fn extrapolate(
-    values: &[f64],
-    exponent: Option<f64>,
-    misfit: f64,
-    averaged: bool,
-) -> Estimate {
+pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>, misfit: f64) -> Estimate {
     let with_error = |value: f64, error: f64| Estimate {
         value,
         error: error.abs() + FLOOR * value.abs(),
@@ -58,15 +52,7 @@ pub(crate) fn extrapolate(
             let change = (first - second).abs();
             let (best, error) = match exponent {
                 None => (first, SHARE * change),
-                // At an obtuse corner the constant of the next term depends on where the lines pass it:
-                // only after averaging is there a common one to remove (measured on rhombus and polygons).
-                Some(p) if p > 2.0 && averaged => {
-                    let best = remove(first, second, p);
-                    (
-                        best,
-                        (best - first).abs() + 2.0 * OBTUSE_SHARE * (first - fine).abs(),
-                    )
-                }
+                // At an obtuse corner the constant of the next term depends on where the lines pass it.
                 Some(p) if p > 2.0 => (first, SHARE * change + OBTUSE_SHARE * (first - fine).abs()),
                 Some(_) => {
                     let best = remove(first, second, 2.0);
@@ -106,9 +92,9 @@ mod tests {
         let p = 4.0 / 3.0;
         let at = |h: f64| 5.0 + 0.7 * h.powf(p) - 0.3 * h * h;
         let values = [at(0.1), at(0.2), at(0.4)];
-        assert!((extrapolate(&values, Some(p), 0.0, false).value - 5.0).abs() < 1e-12);
+        assert!((extrapolate(&values, Some(p), 0.0).value - 5.0).abs() < 1e-12);
         let smooth = |h: f64| 5.0 - 0.3 * h * h;
-        let best = extrapolate(&[smooth(0.1), smooth(0.2), smooth(0.4)], None, 0.0, false);
+        let best = extrapolate(&[smooth(0.1), smooth(0.2), smooth(0.4)], None, 0.0);
         assert!((best.value - 5.0).abs() < 1e-12);
     }
 }

@@ -16,6 +16,7 @@ mod identities;
 mod nearby;
 mod operating_point;
 mod peak;
+mod range_extrapolation;
 mod section_flow;
 mod shortcuts;
 mod solve_cost;

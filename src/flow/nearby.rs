@@ -3,7 +3,7 @@
 //! What an ordinary solve works out once per section is worked out once for all: how fine the grid must be. Proof,
 //! wall shear and the other answers are left out; what comes back is the extrapolated conductance with
 //! its estimated error, from the same grids and by the same rules as everywhere else (with the proven range only
-//! where re-entrant corners call for it). Sections are shared out over threads,
+//! where wide corners call for it). Sections are shared out over threads,
 //! each on one.
 //!
 //! The field of a neighbour is no help as a first guess: nested iteration starts from a field that is right to the
@@ -16,7 +16,7 @@ use crate::grid;
 use crate::measured::Estimate;
 use crate::proof::bracket;
 
-use super::assemble::{extrapolated_conductance, has_re_entrant_corner, within};
+use super::assemble::best_conductance;
 use super::solve_cost::StageClock;
 use super::solve_outline::{DEFAULT_MEMORY, FlowError};
 use super::solved_grids::solve_grids;
@@ -150,14 +150,10 @@ fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Estima
     )?;
     let solution = (&grids.lattice, &grids.mask, &grids.phi);
     let samples = wall_samples(outline, solution, &grids.corners);
-    let best = extrapolated_conductance(outline, &grids, &samples);
-    if !has_re_entrant_corner(&grids.corners) {
-        return Ok(best);
-    }
-    // There the extrapolation needs the proven range as a second witness.
-    let proven = bracket(&grids.lattice, &grids.mask, &grids.phi);
-    Ok(proven.map_or(best, |proven| {
-        let scale = grids.lattice.spacing.powi(4);
-        within(best, proven.scaled(scale), true)
-    }))
+    // Only wide corners call for the proven range.
+    let proven = grids
+        .coarse_range
+        .and_then(|_| bracket(&grids.lattice, &grids.mask, &grids.phi).ok());
+    let proven = proven.map(|range| range.scaled(grids.lattice.spacing.powi(4)));
+    Ok(best_conductance(outline, &grids, &samples, proven))
 }

@@ -1,7 +1,8 @@
 //! All grids of a section solved, in one place of the lattice or several: what every answer is read from.
 
-use crate::geometry::{Corner, Outline, Point};
+use crate::geometry::{Corner, Outline};
 use crate::grid::{Lattice, LineCrossings, Mask};
+use crate::proof::{Bracket, bracket};
 use crate::solve::{Field, Hierarchy, SolveControl, Solved};
 
 use super::assemble::leading_exponent;
@@ -15,16 +16,8 @@ use super::wall_shear::corners_of;
 /// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
 /// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.1;
-/// Where the lattice lies where corners are nearly flat, in lines: in step with the lower left corner on
-/// the finest grid only, so that the places below are spread evenly over all three. Chosen on the regular
-/// polygons of `tests/convergence.rs`, which therefore do not test the choice independently.
-const FIRST_PLACE: [f64; 2] = [2.0, 2.0];
-/// Other places over which K is averaged there.
-const OTHER_PLACES: [[f64; 2]; 3] = [[0.4721, 1.0195], [2.9443, 0.0390], [1.4164, 3.0586]];
 /// Exponent below which the widest corner counts as nearly flat: from 135 degrees.
 const FLAT_EXPONENT: f64 = 8.0 / 3.0;
-/// Fluid nodes up to which it is averaged: beyond, such corners no longer matter.
-const AVERAGED_NODES: usize = 200_000;
 
 /// What one grid of the sequence said.
 pub(super) struct GridAnswer {
@@ -46,8 +39,8 @@ pub(super) struct SolvedGrids {
     pub(super) misfit: f64,
     /// Finest first.
     pub(super) answers: Vec<GridAnswer>,
-    /// Answers on the lattice in other places, with its origin.
-    pub(super) others: Vec<(Point, Vec<GridAnswer>)>,
+    /// Proven range of twice the spacing, m^4, where corners make a second witness welcome.
+    pub(super) coarse_range: Option<Bracket>,
 }
 
 /// Solves the grids of a section.
@@ -63,14 +56,7 @@ pub(super) fn solve_grids(
     clock: &mut StageClock,
 ) -> Result<SolvedGrids, FlowError> {
     let corners = corners_of(outline, asked);
-    let is_flat = offset.is_none()
-        && leading_exponent(&corners).is_some_and(|p| (2.0..FLAT_EXPONENT).contains(&p));
     let fitted = match offset {
-        None if is_flat => Alignment {
-            spacing: asked,
-            offset: FIRST_PLACE,
-            misfit: 0.0,
-        },
         None => align(outline, &corners, asked),
         Some(offset) => Alignment {
             spacing: asked,
@@ -84,22 +70,12 @@ pub(super) fn solve_grids(
         grid_sequence(outline, spacing, fitted.offset, cells_across, clock)
             .ok_or(FlowError::NoFluidNode { spacing })?;
     let (mask, phi) = hierarchy.into_finest();
-    let others: Vec<(Point, Vec<GridAnswer>)> = OTHER_PLACES
-        .iter()
-        .filter(|_| is_flat && mask.nodes() <= AVERAGED_NODES)
-        .filter_map(|&place| {
-            grid_sequence(
-                outline,
-                spacing,
-                place,
-                cells_across,
-                &mut StageClock::start(),
-            )
-        })
-        .map(|(other, _, answers)| (other.origin, answers))
-        .collect();
-    if is_flat {
-        clock.end("other places of the grid");
+    let is_wide = leading_exponent(&corners).is_some_and(|p| p < FLAT_EXPONENT);
+    let coarse_range = is_wide
+        .then(|| coarse_range(outline, spacing, fitted.offset, cells_across))
+        .flatten();
+    if is_wide {
+        clock.end("range of a coarser grid");
     }
     Ok(SolvedGrids {
         lattice,
@@ -108,8 +84,24 @@ pub(super) fn solve_grids(
         corners,
         misfit: fitted.misfit,
         answers,
-        others,
+        coarse_range,
     })
+}
+
+/// The proven range, m^4, of a grid with every other line of the finest.
+fn coarse_range(
+    outline: &Outline,
+    spacing: f64,
+    offset: [f64; 2],
+    cells_across: f64,
+) -> Option<Bracket> {
+    let (double, half) = (2.0 * spacing, offset.map(|o| 0.5 * o));
+    let mut clock = StageClock::start();
+    let (lattice, hierarchy, _) =
+        grid_sequence(outline, double, half, 0.5 * cells_across, &mut clock)?;
+    let (mask, phi) = hierarchy.into_finest();
+    let range = bracket(&lattice, &mask, &phi).ok()?;
+    Some(range.scaled(double.powi(4)))
 }
 
 /// Solves every grid of the sequence on a lattice in a given place; answers finest first.

@@ -20,7 +20,7 @@ const LEAST_RATIO: f64 = 1.3;
 /// Shares of the range in which the value may lie; beyond, the ranges do not follow one law.
 const SHARES: [f64; 2] = [0.1, 0.9];
 /// Difference between the witnesses, in half widths, up to which they agree.
-const AGREEMENT: f64 = 0.1;
+const AGREEMENT: f64 = 0.05;
 /// Part of the half width that is added to that difference as the estimated error.
 const RESERVE: f64 = 0.1;
 /// Part of the half width that is the estimated error where they do not agree: with re-entrant corners, and

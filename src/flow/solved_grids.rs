@@ -16,8 +16,8 @@ use super::wall_shear::corners_of;
 /// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
 /// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.1;
-/// Exponent below which the widest corner counts as nearly flat: from 135 degrees.
-const FLAT_EXPONENT: f64 = 8.0 / 3.0;
+/// Exponent of the widest corner below which the proven ranges are asked as well: from 106 degrees.
+const WIDE_EXPONENT: f64 = 3.4;
 
 /// What one grid of the sequence said.
 pub(super) struct GridAnswer {
@@ -70,7 +70,7 @@ pub(super) fn solve_grids(
         grid_sequence(outline, spacing, fitted.offset, cells_across, clock)
             .ok_or(FlowError::NoFluidNode { spacing })?;
     let (mask, phi) = hierarchy.into_finest();
-    let is_wide = leading_exponent(&corners).is_some_and(|p| p < FLAT_EXPONENT);
+    let is_wide = leading_exponent(&corners).is_some_and(|p| p < WIDE_EXPONENT);
     let coarse_range = is_wide
         .then(|| coarse_range(outline, spacing, fitted.offset, cells_across))
         .flatten();

@@ -7,7 +7,7 @@
 //! each on one.
 //!
 //! The field of a neighbour is no help as a first guess: nested iteration starts from a field that is right to the
-//! fourth power of the spacing, which a neighbour a thousandth away is not (measured: see DEVELOPERS.md).
+//! fourth power of the spacing, which a neighbour a thousandth away is not (see DEVELOPERS.md).
 
 use rayon::prelude::*;
 

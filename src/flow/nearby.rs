@@ -32,6 +32,9 @@ const ORDER: f64 = 2.5;
 const FINER: [f64; 2] = [1.1, 2.0];
 /// Grids tried.
 const MOST_GRIDS: usize = 12;
+/// Exponent of the widest corner below which the proven ranges are asked, from 135 degrees: here only where the
+/// energy alone could mislead, because proofs cost more than solves.
+const FLAT_EXPONENT: f64 = 8.0 / 3.0;
 /// How much finer a neighbour is solved that does not meet the tolerance, and how often.
 const NEIGHBOUR_FINER: f64 = 1.4;
 /// See [`NEIGHBOUR_FINER`].
@@ -146,6 +149,7 @@ fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Estima
         spacing,
         cells_across,
         None,
+        FLAT_EXPONENT,
         &mut StageClock::start(),
     )?;
     let solution = (&grids.lattice, &grids.mask, &grids.phi);

@@ -13,7 +13,7 @@ use super::assemble::{assemble, finish};
 use super::field::DenseField;
 use super::section_flow::{GridReport, SectionFlow};
 use super::solve_cost::{SolveCost, StageClock, StageCost};
-use super::solved_grids::solve_grids;
+use super::solved_grids::{WIDE_EXPONENT, solve_grids};
 
 /// Estimated relative error of `K` from which a grid that was asked for is called rough.
 const ROUGH: f64 = 1e-3;
@@ -195,6 +195,7 @@ fn solve_at(
         asked,
         cells_across,
         options.grid_offset,
+        WIDE_EXPONENT,
         &mut clock,
     )?;
     let seconds = start.elapsed().as_secs_f64();

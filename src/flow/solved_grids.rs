@@ -17,7 +17,7 @@ use super::wall_shear::corners_of;
 /// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.1;
 /// Exponent of the widest corner below which the proven ranges are asked as well: from 106 degrees.
-const WIDE_EXPONENT: f64 = 3.4;
+pub(super) const WIDE_EXPONENT: f64 = 3.4;
 
 /// What one grid of the sequence said.
 pub(super) struct GridAnswer {
@@ -48,11 +48,13 @@ pub(super) struct SolvedGrids {
 /// - `asked`: spacing of the finest, m; up to an eighth smaller where corners are put on nodes
 /// - `cells_across`: about, decides how far the iteration goes
 /// - `offset`: place of the lattice where it is given
+/// - `wide`: exponent of the widest corner below which the range of a coarser grid is worked out
 pub(super) fn solve_grids(
     outline: &Outline,
     asked: f64,
     cells_across: f64,
     offset: Option<[f64; 2]>,
+    wide: f64,
     clock: &mut StageClock,
 ) -> Result<SolvedGrids, FlowError> {
     let corners = corners_of(outline, asked);
@@ -70,7 +72,7 @@ pub(super) fn solve_grids(
         grid_sequence(outline, spacing, fitted.offset, cells_across, clock)
             .ok_or(FlowError::NoFluidNode { spacing })?;
     let (mask, phi) = hierarchy.into_finest();
-    let is_wide = leading_exponent(&corners).is_some_and(|p| p < WIDE_EXPONENT);
+    let is_wide = leading_exponent(&corners).is_some_and(|p| p < wide);
     let coarse_range = is_wide
         .then(|| coarse_range(outline, spacing, fitted.offset, cells_across))
         .flatten();

@@ -85,11 +85,14 @@ pub(super) fn assemble(
 }
 
 /// Adds the curve of the wall shear, the identities, and the warnings before those that are there.
+///
+/// - `finest`: integrals of the finest grid, lattice units
 pub(super) fn finish(
     flow: &mut SectionFlow,
     outline: &Outline,
     (lattice, mask, phi): (&Lattice, &Mask, &Field),
     corners: &[Vec<Corner>],
+    finest: GridIntegrals,
 ) {
     let shear = &mut flow.wall_shear;
     let solution = (lattice, mask, phi);
@@ -105,7 +108,7 @@ pub(super) fn finish(
         corners,
         (&shear.curve, plain),
         flow.conductance.value,
-        (GridIntegrals::new(mask, phi), h.powi(4)),
+        (finest, h.powi(4)),
         flow.grid.cells_across,
     );
     let mut all = warnings(flow, small_islands(outline, h), mask.pinned.len());

@@ -11,6 +11,7 @@ use crate::warning::{Code, Warning};
 use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, refine};
 use super::assemble::{assemble, finish};
 use super::field::DenseField;
+use super::grid_integrals::GridIntegrals;
 use super::section_flow::{GridReport, SectionFlow};
 use super::solve_cost::{SolveCost, StageClock, StageCost};
 use super::solved_grids::{WIDE_EXPONENT, solve_grids};
@@ -93,6 +94,8 @@ pub struct SolvedSection {
     phi: Field,
     cost: SolveCost,
     corners: Vec<Vec<Corner>>,
+    /// Of the finest grid, lattice units.
+    integrals: GridIntegrals,
 }
 
 impl SolvedSection {
@@ -100,7 +103,14 @@ impl SolvedSection {
     fn finished(mut self) -> Self {
         let start = Instant::now();
         let solution = (&self.lattice, &self.mask, &self.phi);
-        finish(&mut self.flow, &self.outline, solution, &self.corners);
+        let finest = self.integrals;
+        finish(
+            &mut self.flow,
+            &self.outline,
+            solution,
+            &self.corners,
+            finest,
+        );
         self.cost.stages.push(StageCost {
             name: "wall shear",
             seconds: start.elapsed().as_secs_f64(),
@@ -219,5 +229,10 @@ fn solve_at(
         phi: grids.phi,
         cost: clock.cost(),
         corners: grids.corners,
+        integrals: grids
+            .answers
+            .first()
+            .map(|a| a.integrals)
+            .unwrap_or_default(),
     })
 }

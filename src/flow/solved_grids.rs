@@ -39,7 +39,7 @@ pub(super) struct SolvedGrids {
     pub(super) misfit: f64,
     /// Finest first.
     pub(super) answers: Vec<GridAnswer>,
-    /// Proven range of twice the spacing, m^4, where corners make a second witness welcome.
+    /// Proven range of the second grid, m^4, where corners make a second witness welcome.
     pub(super) coarse_range: Option<Bracket>,
 }
 
@@ -48,7 +48,7 @@ pub(super) struct SolvedGrids {
 /// - `asked`: spacing of the finest, m; up to an eighth smaller where corners are put on nodes
 /// - `cells_across`: about, decides how far the iteration goes
 /// - `offset`: place of the lattice where it is given
-/// - `wide`: exponent of the widest corner below which the range of a coarser grid is worked out
+/// - `wide`: exponent of the widest corner below which the range of the second grid is worked out
 pub(super) fn solve_grids(
     outline: &Outline,
     asked: f64,
@@ -68,17 +68,23 @@ pub(super) fn solve_grids(
     };
     let spacing = fitted.spacing;
     clock.end("corners and place of the grid");
-    let (lattice, hierarchy, answers) =
-        grid_sequence(outline, spacing, fitted.offset, cells_across, clock)
-            .ok_or(FlowError::NoFluidNode { spacing })?;
-    let (mask, phi) = hierarchy.into_finest();
     let is_wide = leading_exponent(&corners).is_some_and(|p| p < wide);
-    let coarse_range = is_wide
-        .then(|| coarse_range(outline, spacing, fitted.offset, cells_across))
-        .flatten();
+    let lattice = Lattice::new(outline, spacing, fitted.offset);
+    let Sequence {
+        hierarchy,
+        answers,
+        second,
+    } = solve_sequence(&lattice, cells_across, is_wide, clock)
+        .ok_or(FlowError::NoFluidNode { spacing })?;
+    let coarse_range = second.and_then(|phi| {
+        let coarse = Lattice::new(outline, 2.0 * spacing, fitted.offset.map(|o| 0.5 * o));
+        let range = bracket(&coarse, &hierarchy.grids.get(1)?.mask, &phi).ok()?;
+        Some(range.scaled(coarse.spacing.powi(4)))
+    });
     if is_wide {
-        clock.end("range of a coarser grid");
+        clock.end("range of the second grid");
     }
+    let (mask, phi) = hierarchy.into_finest();
     Ok(SolvedGrids {
         lattice,
         mask,
@@ -90,41 +96,32 @@ pub(super) fn solve_grids(
     })
 }
 
-/// The proven range, m^4, of a grid with every other line of the finest.
-fn coarse_range(
-    outline: &Outline,
-    spacing: f64,
-    offset: [f64; 2],
-    cells_across: f64,
-) -> Option<Bracket> {
-    let (double, half) = (2.0 * spacing, offset.map(|o| 0.5 * o));
-    let mut clock = StageClock::start();
-    let (lattice, hierarchy, _) =
-        grid_sequence(outline, double, half, 0.5 * cells_across, &mut clock)?;
-    let (mask, phi) = hierarchy.into_finest();
-    let range = bracket(&lattice, &mask, &phi).ok()?;
-    Some(range.scaled(double.powi(4)))
+/// The grids of a lattice, solved.
+struct Sequence {
+    hierarchy: Hierarchy,
+    /// Finest first.
+    answers: Vec<GridAnswer>,
+    /// Solution of the second grid in units of its own spacing, where it was wanted.
+    second: Option<Field>,
 }
 
-/// Solves every grid of the sequence on a lattice in a given place; answers finest first.
-fn grid_sequence(
-    outline: &Outline,
-    spacing: f64,
-    offset: [f64; 2],
+/// Solves every grid of the sequence.
+fn solve_sequence(
+    lattice: &Lattice,
     cells_across: f64,
+    wants_second: bool,
     clock: &mut StageClock,
-) -> Option<(Lattice, Hierarchy, Vec<GridAnswer>)> {
-    let lattice = Lattice::new(outline, spacing, offset);
-    let rows = LineCrossings::rows(&lattice);
-    let columns = LineCrossings::columns(&lattice);
+) -> Option<Sequence> {
+    let rows = LineCrossings::rows(lattice);
+    let columns = LineCrossings::columns(lattice);
     clock.end("crossings");
-    let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns)?;
+    let mut hierarchy = Hierarchy::new(lattice, &rows, &columns)?;
     clock.end("grids and transfers");
     let control = SolveControl {
         residual: RESIDUAL_SHARE / (cells_across * cells_across),
         most_cycles: 100,
     };
-    let mut answers = Vec::new();
+    let (mut answers, mut second) = (Vec::new(), None);
     hierarchy.solve(control, |grid, solved| {
         let seconds = clock.lap();
         clock.add("solve", seconds);
@@ -142,8 +139,16 @@ fn grid_sequence(
             integrals: GridIntegrals::new(&grid.mask, &grid.phi),
             peak: peak(&grid.mask, &grid.phi),
         });
+        if wants_second && grid.mask.stride == 2 {
+            // Later cycles overwrite it.
+            second = Some(grid.phi.scaled(0.25));
+        }
         clock.end("integrals");
     });
     answers.reverse();
-    Some((lattice, hierarchy, answers))
+    Some(Sequence {
+        hierarchy,
+        answers,
+        second,
+    })
 }

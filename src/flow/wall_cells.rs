@@ -5,17 +5,16 @@
 //! left. Unlike the cutting of the proof, a chain knows its loop and its arc lengths.
 
 use crate::geometry::Point;
-use crate::grid::{EAST, Lattice, NORTH, SOUTH, WEST};
+use crate::grid::{
+    CORNERS, CellIndex, Lattice, NORTH, exit_from_cell, next_cell, opposite_side, position_around,
+};
 
 use super::wall_path::WallPath;
 
 /// Shift of the cells against the middle between nodes, so that walls on lattice lines are nothing special.
 const SHIFT: Point = [1.37e-7 - 0.5, 2.11e-7 - 0.5];
-/// Corners of a cell, anticlockwise.
-const CORNERS: [Point; 4] = [[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]];
-
 /// Column and row of a cell, those of the node in its middle.
-pub(super) type Cell = (i64, i64);
+pub(super) type Cell = CellIndex;
 
 /// A stretch of one loop inside one cell.
 #[derive(Debug, Clone, Copy)]
@@ -80,47 +79,6 @@ pub(super) fn chains(lattice: &Lattice, paths: &[&WallPath]) -> Vec<Chain> {
     found
 }
 
-/// Share of an edge at which it leaves a cell, the side, and the point.
-fn exit(a: Point, b: Point, cell: Cell) -> Option<(f64, usize, Point)> {
-    let along = |axis: usize, index: i64, low: usize, high: usize| {
-        let step = b[axis] - a[axis];
-        let (line, side, leaves) = if step > 0.0 {
-            let line = (index + 1) as f64;
-            (line, high, b[axis] >= line)
-        } else {
-            let line = index as f64;
-            (line, low, b[axis] < line)
-        };
-        (step != 0.0 && leaves).then(|| (((line - a[axis]) / step).clamp(0.0, 1.0), side, line))
-    };
-    let (t, side, line) = match (along(0, cell.0, WEST, EAST), along(1, cell.1, SOUTH, NORTH)) {
-        (Some(x), Some(y)) => {
-            if y.0 < x.0 {
-                y
-            } else {
-                x
-            }
-        }
-        (one, other) => one.or(other)?,
-    };
-    let mut at = [a[0] + t * (b[0] - a[0]), a[1] + t * (b[1] - a[1])];
-    at[usize::from(side == SOUTH || side == NORTH)] = line;
-    Some((t, side, at))
-}
-
-/// Position around a cell of a point on one of its sides.
-fn around(cell: Cell, side: usize, at: Point) -> f64 {
-    let x = (at[0] - cell.0 as f64).clamp(0.0, 1.0);
-    let y = (at[1] - cell.1 as f64).clamp(0.0, 1.0);
-    side as f64
-        + match side {
-            SOUTH => x,
-            EAST => y,
-            NORTH => 1.0 - x,
-            _ => 1.0 - y,
-        }
-}
-
 /// Cuts one loop into chains.
 fn follow(points: &[Point], (loop_index, path): (usize, &WallPath), found: &mut Vec<Chain>) {
     let Some(&origin) = points.first() else {
@@ -144,22 +102,16 @@ fn follow(points: &[Point], (loop_index, path): (usize, &WallPath), found: &mut 
     for (k, &a) in points.iter().enumerate() {
         let b = points[(k + 1) % points.len()];
         let mut last = a;
-        while let Some((t, side, at)) = exit(a, b, open.cell) {
+        while let Some((t, side, at)) = exit_from_cell(a, b, open.cell) {
             open.area += cross(open.cell, last, at);
             open.to = arcs[k] + t * (arcs[k + 1] - arcs[k]);
-            open.end = around(open.cell, side, at);
+            open.end = position_around(open.cell, side, at);
             found.push(open);
-            let (i, j) = open.cell;
-            let cell = match side {
-                SOUTH => (i, j - 1),
-                EAST => (i + 1, j),
-                NORTH => (i, j + 1),
-                _ => (i - 1, j),
-            };
+            let cell = next_cell(open.cell, side);
             open = Chain {
                 cell,
                 from: open.to,
-                start: around(cell, (side + 2) % 4, at),
+                start: position_around(cell, opposite_side(side), at),
                 area: 0.0,
                 ..open
             };

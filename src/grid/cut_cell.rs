@@ -169,7 +169,7 @@ fn by_row(chains: &[Chain]) -> Vec<Chain> {
 }
 
 /// Where an edge leaves a cell: parameter along the edge, side, and the point.
-fn exit(a: Point, b: Point, cell: CellIndex) -> Option<(f64, usize, Point)> {
+pub(crate) fn exit_from_cell(a: Point, b: Point, cell: CellIndex) -> Option<(f64, usize, Point)> {
     let mut first: Option<(f64, usize, Point)> = None;
     for (axis, low, high, index) in [(0, WEST, EAST, cell.0), (1, SOUTH, NORTH, cell.1)] {
         let step = b[axis] - a[axis];
@@ -196,7 +196,8 @@ fn exit(a: Point, b: Point, cell: CellIndex) -> Option<(f64, usize, Point)> {
     first
 }
 
-fn step(cell: CellIndex, side: usize) -> CellIndex {
+/// The cell beyond a side.
+pub(crate) fn next_cell(cell: CellIndex, side: usize) -> CellIndex {
     match side {
         SOUTH => (cell.0, cell.1 - 1),
         EAST => (cell.0 + 1, cell.1),
@@ -206,12 +207,12 @@ fn step(cell: CellIndex, side: usize) -> CellIndex {
 }
 
 /// The side of the next cell through which it is entered.
-fn entered(side: usize) -> usize {
+pub(crate) fn opposite_side(side: usize) -> usize {
     (side + 2) % 4
 }
 
 /// Position around a cell of a point on one of its sides.
-fn around(cell: CellIndex, side: usize, at: Point) -> f64 {
+pub(crate) fn position_around(cell: CellIndex, side: usize, at: Point) -> f64 {
     let (x, y) = (
         (at[0] - cell.0 as f64).clamp(0.0, 1.0),
         (at[1] - cell.1 as f64).clamp(0.0, 1.0),
@@ -242,9 +243,9 @@ impl Pieces {
             let (a, b) = (corners[k], corners[(k + 1) % n]);
             self.points.push(a);
             let mut guard = 0_u64;
-            while let Some((_, side, at)) = exit(a, b, cell) {
+            while let Some((_, side, at)) = exit_from_cell(a, b, cell) {
                 self.points.push(at);
-                let end = around(cell, side, at);
+                let end = position_around(cell, side, at);
                 let points = from..self.points.len();
                 match start {
                     None => lead = Some((end, points)),
@@ -255,8 +256,8 @@ impl Pieces {
                         points,
                     }),
                 }
-                cell = step(cell, side);
-                start = Some(around(cell, entered(side), at));
+                cell = next_cell(cell, side);
+                start = Some(position_around(cell, opposite_side(side), at));
                 from = self.points.len();
                 self.points.push(at);
                 guard += 1;
@@ -454,7 +455,7 @@ pub(crate) fn shared_parts(cut: &CutCells) -> Result<Vec<[(usize, usize); 2]>, C
                 continue;
             };
             parts_on(side, cell, &mut here);
-            parts_on(entered(side), neighbour, &mut beyond);
+            parts_on(opposite_side(side), neighbour, &mut beyond);
             if here.is_empty() || beyond.is_empty() {
                 continue;
             }
@@ -462,7 +463,7 @@ pub(crate) fn shared_parts(cut: &CutCells) -> Result<Vec<[(usize, usize); 2]>, C
                 return Err(CutFailed);
             }
             let both = here.iter().zip(&beyond);
-            pairs.extend(both.map(|(a, b)| [(a.1, side), (b.1, entered(side))]));
+            pairs.extend(both.map(|(a, b)| [(a.1, side), (b.1, opposite_side(side))]));
         }
     }
     Ok(pairs)

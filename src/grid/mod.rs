@@ -17,7 +17,8 @@ pub(crate) use cell_rows::{Around, CellRows};
 pub(crate) use coverage::coverage;
 pub use crossings::{Crossing, LineCrossings};
 pub(crate) use cut_cell::{
-    CORNERS, CutCells, EAST, NORTH, Region, SOUTH, WEST, cut_cells, shared_parts,
+    CORNERS, CellIndex, CutCells, EAST, NORTH, Region, SOUTH, WEST, cut_cells, exit_from_cell,
+    next_cell, opposite_side, position_around, shared_parts,
 };
 pub use lattice::{Lattice, WallEdge};
 pub use mask::{

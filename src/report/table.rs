@@ -74,15 +74,18 @@ impl Table {
 pub(crate) fn wrapped(text: &str, width: usize) -> Vec<String> {
     let mut lines = Vec::new();
     let mut line = String::new();
-    for word in text.split_whitespace() {
-        let longer = line.chars().count() + 1 + word.chars().count();
-        if !line.is_empty() && longer > width && word != "%" {
+    let mut words = text.split_whitespace().peekable();
+    while let Some(word) = words.next() {
+        let sign = words.next_if_eq(&"%").map_or("", |_| " %");
+        let longer = line.chars().count() + 1 + word.chars().count() + sign.len();
+        if !line.is_empty() && longer > width {
             lines.push(std::mem::take(&mut line));
         }
         if !line.is_empty() {
             line.push(' ');
         }
         line.push_str(word);
+        line.push_str(sign);
     }
     if !line.is_empty() {
         lines.push(line);
@@ -129,5 +132,11 @@ mod tests {
         assert!(out.lines().all(|l| l.chars().count() <= TEXT_WIDTH));
         assert!(out.lines().skip(1).all(|l| l.starts_with("  word")));
         assert_eq!(out.matches("word").count(), 40);
+    }
+
+    #[test]
+    fn a_per_cent_sign_stays_with_its_number_within_the_width() {
+        assert_eq!(wrapped("off by 0.25 % here", 12), ["off by", "0.25 % here"]);
+        assert_eq!(wrapped("off by 0.25 % here", 13), ["off by 0.25 %", "here"]);
     }
 }

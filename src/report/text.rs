@@ -151,8 +151,8 @@ fn conductance(flow: &SectionFlow) -> String {
     ]);
     let levels = counted(flow.solver.levels.len(), "grid", "grids");
     let note = format!(
-        "{proof} The error of the best value is an estimate from a sequence of {levels}, not a bound and not \
-         a standard uncertainty. K goes with length^4, so 1 % of scale is 4 % of K."
+        "{proof} The error of the best value is an estimate from a sequence of {levels} and what is proven on \
+         them, not a bound and not a standard uncertainty. K goes with length^4, so 1 % of scale is 4 % of K."
     );
     format!(
         "{}{}",

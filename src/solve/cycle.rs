@@ -7,7 +7,7 @@ use crate::grid::Colour;
 
 use super::hierarchy::{Grid, GridSource, Hierarchy};
 use super::krylov;
-use super::passes::{Lift, Start, ascend, descend, residual_after_sweep};
+use super::passes::{Lift, Start, ascend, descend, residual_of};
 
 /// A cycle that reduces the residual by less than this calls for the Krylov acceleration.
 const SLOW: f64 = 0.35;
@@ -61,7 +61,8 @@ impl Hierarchy {
 
     fn solve_coarsest(&mut self, control: SolveControl) -> Solved {
         self.solve_directly();
-        let residual = self.grids.last().map_or(0.0, residual_of);
+        let residual = self.grids.last();
+        let residual = residual.map_or(0.0, |grid| residual_of(grid, &[Colour::Even, Colour::Odd]));
         Solved {
             cycles: 0,
             residual,
@@ -87,7 +88,7 @@ impl Hierarchy {
             cycles += 1;
             if residual * EXPECTED < control.residual {
                 // Probably the last cycle: only look, which costs a quarter of a pass.
-                let reached = residual_after_sweep(&self.grids[level]);
+                let reached = residual_of(&self.grids[level], &[Colour::Even]);
                 if reached <= control.residual {
                     residual = reached;
                     break;
@@ -155,20 +156,4 @@ impl Hierarchy {
             ascend(fine, coarse, &self.transfers[level], lift);
         }
     }
-}
-
-/// Residual of a solved grid, as in [`Solved::residual`].
-fn residual_of(grid: &Grid) -> f64 {
-    let (mut sum, mut weight) = (0.0, 0.0);
-    for colour in [Colour::Even, Colour::Odd] {
-        let mut residual = vec![0.0; grid.mask.count[colour as usize]];
-        let source = grid.source.of(&grid.rhs);
-        grid.stencil
-            .residual(&grid.mask, colour, &grid.phi, source, &mut residual);
-        for (phi, r) in grid.phi.colour[colour as usize].iter().zip(residual) {
-            sum += (phi * r).powi(2);
-            weight += phi * phi;
-        }
-    }
-    (sum / weight).sqrt() / f64::from(grid.mask.stride).powi(2)
 }

@@ -40,6 +40,15 @@ impl Field {
         [row.wrapping_sub(1), row, row + 1].map(|row| self.row(mask, colour, row))
     }
 
+    /// A copy with every value multiplied.
+    pub(crate) fn scaled(&self, factor: f64) -> Self {
+        let times = |values: &Vec<f64>| values.iter().map(|v| factor * v).collect();
+        let [even, odd] = &self.colour;
+        Self {
+            colour: [times(even), times(odd)],
+        }
+    }
+
     /// Adds `factor` times another field of the same grid.
     pub(crate) fn add_scaled(&mut self, factor: f64, other: &Self) {
         for (part, add) in self.colour.iter_mut().zip(&other.colour) {

@@ -56,6 +56,16 @@ impl Operator<'_> {
             .relax_row(self.mask, (colour, row), target, around, self.source);
     }
 
+    /// What a sweep does at a row of a strip: its even nodes, then the odd ones of the row before.
+    fn sweep(self, (strip, row): (Range<usize>, usize), even: &mut RowSet, odd: &mut RowSet) {
+        if strip.contains(&row) {
+            self.relax(Colour::Even, row, even, odd);
+        }
+        if row > strip.start && odd.owns(row - 1) {
+            self.relax(Colour::Odd, row - 1, odd, even);
+        }
+    }
+
     /// Residual of the even nodes of a row.
     fn residual(self, row: usize, even: &RowSet, odd: &RowSet, out: &mut [f64]) -> Left {
         let phi = even.owned();
@@ -219,14 +229,8 @@ impl DownStrip<'_> {
         self.clear(first);
         for row in first..end + 2 {
             self.clear(row + 1);
-            if row < end {
-                self.operator
-                    .relax(Colour::Even, row, &mut self.even, &self.odd);
-            }
-            if row > first && self.odd.owns(row - 1) {
-                self.operator
-                    .relax(Colour::Odd, row - 1, &mut self.odd, &self.even);
-            }
+            let strip = (first..end, row);
+            self.operator.sweep(strip, &mut self.even, &mut self.odd);
             let Some(ready) = row.checked_sub(2).filter(|r| residuals.contains(r)) else {
                 continue;
             };
@@ -359,23 +363,26 @@ fn in_parallel<T: Send>(strips: &mut [T], run: impl Fn(&mut T) + Sync + Send) {
     }
 }
 
-/// Residual of a grid right after a sweep over its odd nodes, as in [`super::Solved::residual`].
-pub(super) fn residual_after_sweep(grid: &Grid) -> f64 {
+/// Residual of a grid as in [`super::Solved::residual`].
+///
+/// - `colours`: those that have one: after a sweep over the odd nodes only the even ones
+pub(super) fn residual_of(grid: &Grid, colours: &[Colour]) -> f64 {
     let source = grid.source.of(&grid.rhs);
+    let fields = [0, 1].map(|c| Row::new(&grid.phi.colour[c], 0));
     let of_rows = |rows: Range<usize>| {
-        let mut residual = vec![0.0; grid.mask.longest_row as usize];
-        rows.map(|row| {
-            let starts = &grid.mask.starts;
-            let first = starts[row].node[0];
-            let out = &mut residual[..(starts[row + 1].node[0] - first) as usize];
-            let own = Row::new(&grid.phi.colour[0], 0);
-            let other = [Row::new(&grid.phi.colour[1], 0); 3];
-            let place = (Colour::Even, row);
-            grid.stencil
-                .residual_row(&grid.mask, place, (own, other), source, out);
-            Left::of(own.from(first, out.len()), out)
-        })
-        .collect::<Vec<Left>>()
+        let mut residual = Vec::new();
+        rows.flat_map(|row| colours.iter().map(move |&colour| (colour, row)))
+            .map(|(colour, row)| {
+                let (starts, c) = (&grid.mask.starts, colour as usize);
+                let first = starts[row].node[c];
+                residual.resize((starts[row + 1].node[c] - first) as usize, 0.0);
+                let out = &mut residual[..];
+                let phi = (fields[c], [fields[1 - c]; 3]);
+                grid.stencil
+                    .residual_row(&grid.mask, (colour, row), phi, source, out);
+                Left::of(fields[c].from(first, out.len()), out)
+            })
+            .collect::<Vec<Left>>()
     };
     let mut ends = seams(&grid.mask);
     ends.push(grid.mask.rows());
@@ -427,14 +434,8 @@ impl UpStrip<'_> {
         self.lift(first);
         for row in first..=end {
             self.lift(row + 1);
-            if row < end {
-                self.operator
-                    .relax(Colour::Even, row, &mut self.even, &self.odd);
-            }
-            if row > first && self.odd.owns(row - 1) {
-                self.operator
-                    .relax(Colour::Odd, row - 1, &mut self.odd, &self.even);
-            }
+            let strip = (first..end, row);
+            self.operator.sweep(strip, &mut self.even, &mut self.odd);
         }
     }
 

@@ -54,6 +54,39 @@ fn the_text_for_a_rectangle_is_as_kept() {
 }
 
 #[test]
+fn the_trace_goes_to_standard_error_and_adds_up() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    let plain = folder.line("solve a.csv --json --quiet");
+    let traced = folder.line("solve a.csv --json --quiet --trace");
+    assert_eq!((traced.status, plain.err.as_str()), (0, ""));
+    assert!(traced.out.starts_with('{') && !traced.out.contains("Cost of"));
+    for stage in [
+        "crossings",
+        "grids and transfers",
+        "solve",
+        "proof",
+        "wall shear",
+    ] {
+        let stage = format!("  {stage} ");
+        assert!(traced.err.contains(&stage), "{stage}: {}", traced.err);
+    }
+    // The table of the grids: the nodes of the finest one are those of the result, and memory is above the field's.
+    let json: serde_json::Value = serde_json::from_str(&traced.out).unwrap();
+    let nodes = value(&json, "/grid/fluid_nodes");
+    let (_, grids) = traced.err.split_once("fluid nodes").unwrap();
+    let finest: Vec<f64> = grids
+        .lines()
+        .nth(1)
+        .unwrap()
+        .split_whitespace()
+        .map(|word| word.parse().unwrap())
+        .collect();
+    assert!((finest[0] - nodes).abs() < 0.5, "{finest:?}");
+    assert!(finest[5] > 8.0 && finest[5] < 100.0, "{finest:?}");
+    assert!(grids.lines().count() > 3);
+}
+
+#[test]
 fn the_text_has_every_part_that_was_asked_for() {
     let folder = Folder::with("a.csv", RECTANGLE);
     let plain = folder.line("solve a.csv").out;

@@ -49,6 +49,28 @@ pub enum Code {
     SensitivitySingular,
     /// First-order predictions and new solves differ.
     SensitivityMismatch,
+    /// The file breaks its own format or standard, and was read all the same.
+    FileDefect,
+    /// Positions or lengths in the file contradict each other.
+    PositionsRebuilt,
+    /// Spikes or missing points were bridged.
+    SamplesBridged,
+    /// The lands do not lie on the reference line.
+    ReferenceResidual,
+    /// The lands beside a channel differ in height.
+    LandsDiffer,
+    /// Flank samples show the shape of the tip, not of the wall.
+    FlankIsTip,
+    /// Repeated traces differ.
+    RepeatScatter,
+    /// A choice was made that the file leaves open.
+    ChoiceMade,
+    /// The groove direction is not sure, so the section may be stretched.
+    ObliqueCut,
+    /// The scale of a picture rests on one statement of its file.
+    ScaleUnsure,
+    /// The edge in a picture is wider than a pixel.
+    GreyEdge,
 }
 
 impl Code {
@@ -70,6 +92,17 @@ impl Code {
             Self::FieldThinned => "field_thinned",
             Self::SensitivitySingular => "sensitivity_singular",
             Self::SensitivityMismatch => "sensitivity_mismatch",
+            Self::FileDefect => "file_defect",
+            Self::PositionsRebuilt => "positions_rebuilt",
+            Self::SamplesBridged => "samples_bridged",
+            Self::ReferenceResidual => "reference_residual",
+            Self::LandsDiffer => "lands_differ",
+            Self::FlankIsTip => "flank_is_tip",
+            Self::RepeatScatter => "repeat_scatter",
+            Self::ChoiceMade => "choice_made",
+            Self::ObliqueCut => "oblique_cut",
+            Self::ScaleUnsure => "scale_unsure",
+            Self::GreyEdge => "grey_edge",
         }
     }
 }

@@ -12,28 +12,40 @@
 mod columns;
 mod curve_flatten;
 mod delimited_text;
+mod height_map;
 mod limits;
 mod loop_nesting;
+mod micrograph;
 mod outline_svg;
 mod outline_text;
 mod plausibility;
 mod provenance;
 mod read_error;
+mod read_hints;
 mod section;
 mod section_file;
 mod section_reach;
 mod section_write;
 mod source_text;
 mod staircase;
+mod step;
 mod svg_path;
 mod svg_shapes;
 mod svg_transform;
 mod toml_values;
+mod trace;
 mod wall_tables;
 
+pub use height_map::{HeightMap, MapProblem};
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
+pub use micrograph::MicrographProblem;
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
 pub use section::{Extras, ReadOptions, Section, read_section, section_from_bytes};
 pub use section_reach::{Reach, ReachSection};
 pub use section_write::to_toml;
+pub use step::Step;
+pub use trace::{
+    Change, ChangeKind, CorrectedTrace, GrooveProblem, GrooveSection, LidAlternative, Profile,
+    RawTrace, TableProblem, TraceProblem, Zone,
+};

@@ -3,6 +3,7 @@
 use clap::{Arg, ArgAction, Command, value_parser};
 
 use super::accuracy_options::accuracy_options;
+use super::instrument_arguments::{Kind, Shown, instrument_options, show_settings};
 use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
 
 /// Printed below the help of the program.
@@ -28,6 +29,9 @@ pub fn command() -> Command {
         .arg_required_else_help(true)
         .max_term_width(79)
         .subcommand(solve())
+        .subcommand(reading(Kind::Trace))
+        .subcommand(reading(Kind::Map))
+        .subcommand(reading(Kind::Image))
         .subcommand(check())
         .subcommand(draw())
         .subcommand(sensitivity())
@@ -72,13 +76,17 @@ fn input(command: Command) -> Command {
                 .value_name("FILE")
                 .required(true)
                 .value_parser(value_parser!(std::path::PathBuf))
-                .help("Section file, outline or drawing; - for standard input"),
+                .help("File of a section or of an instrument; - for standard input")
+                .long_help(
+                    "Section file, outline in columns or SVG drawing; or the file of an instrument: trace of a \
+                     profilometer, height map, picture of a section. - for standard input.",
+                ),
         )
         .arg(
-            option("as", "KIND", "Read FILE as: section, outline, svg")
+            option("as", "KIND", "Read FILE as: section, outline, svg, trace, map, image")
                 .help_heading(heading)
                 .long_help(
-                    "Read FILE as section (TOML), outline (columns of text) or svg (drawing). \
+                    "Read FILE as section (TOML), outline (columns of text), svg (drawing), trace, map or image. \
                      Without it the content decides, never the file name. Example: --as outline",
                 ),
         )
@@ -91,12 +99,13 @@ fn input(command: Command) -> Command {
                 ),
         )
         .arg(
-            option("scale", "LENGTH", "Length of one unit of a drawing (SVG)")
+            option("scale", "LENGTH", "Length of one unit of a drawing or of a pixel")
                 .help_heading(heading)
                 .conflicts_with("unit")
                 .long_help(
-                    "Length of one user unit of an SVG drawing. Default: from the width, height and \
-                     viewBox of the drawing where they give it. Example: --scale \"1 um\"",
+                    "Length of one user unit of an SVG drawing, or width of one pixel of a picture. Default: from the \
+                     width, height and viewBox of the drawing, or from what the picture's file states. Example: \
+                     --scale \"1 um\"",
                 ),
         )
         .arg(
@@ -109,6 +118,70 @@ fn input(command: Command) -> Command {
         )
 }
 
+/// The input file with the options for instruments, which only the long help lists.
+fn any_input(command: Command) -> Command {
+    show_settings(instrument_options(input(command), Shown::InLongHelp))
+}
+
+/// `trace`, `map` and `image`: from the file of an instrument to section files.
+fn reading(kind: Kind) -> Command {
+    let command = Command::new(kind.word())
+        .about(kind.about())
+        .after_help(kind.example());
+    let heading = "Output";
+    let command = instrument_options(input(command), Shown::Only(kind));
+    common(show_settings(command))
+        .arg(
+            Arg::new("output")
+                .short('o')
+                .long("output")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the section file")
+                .long_help(
+                    "Write the section as a section file (TOML); several go to FILE-1, FILE-2 and so on, before \
+                     the ending. - is standard output; the talk then goes to standard error. Example: -o \
+                     wafer.toml",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("picture")
+                .long("picture")
+                .value_name("FILE")
+                .action(ArgAction::Append)
+                .value_parser(value_parser!(std::path::PathBuf))
+                .help("Write the check picture, .png or .svg")
+                .long_help(
+                    "Write the picture that shows what was done: data, zones, fit, corrections, lid, outline; the \
+                     ending says .png or .svg. May be given more than once. Example: --picture check.png",
+                )
+                .help_heading(heading),
+        )
+        .arg(
+            Arg::new("heights")
+                .long("heights")
+                .value_name("FILE")
+                .value_parser(value_parser!(std::path::PathBuf))
+                .hide(kind != Kind::Map)
+                .help("Write the heights of the map as a table")
+                .long_help(
+                    "Write the heights of the map as read, in metres, as CSV: one row for each y, rising. \
+                     Example: --heights heights.csv",
+                )
+                .help_heading(heading),
+        )
+        .arg(flag("no-solve", "Do not solve the sections").long_help(
+            "Do not solve the sections: no conductance, no effect of the lid. Example: --no-solve",
+        ))
+        .arg(flag("ascii", "Plain ASCII text").help_heading(heading))
+        .arg(
+            flag("deny-warnings", "End with status 1 on any warning").long_help(
+                "End with status 1 on any warning that is not a mere caution. Example: --deny-warnings",
+            ),
+        )
+}
+
 fn solve() -> Command {
     let command = Command::new("solve")
         .about("Solve a section: conductance, resistance, friction factor, shear")
@@ -116,7 +189,7 @@ fn solve() -> Command {
             "Example: etchwise solve wafer.toml --fluid water --temperature 25C \\\n  \
              --length 20mm --flow-rate 5uL/min --picture wafer.png",
         );
-    let command = accuracy_options(fluid_options(film_options(input(command))));
+    let command = accuracy_options(fluid_options(film_options(any_input(command))));
     let heading = "Output";
     wall_options(result(command), heading)
         .arg(
@@ -278,7 +351,7 @@ fn sensitivity() -> Command {
              exactly moves is printed with the result.",
         );
     let heading = "Output";
-    result(input(command))
+    result(any_input(command))
         .arg(cells_across())
         .arg(
             flag("no-check", "Do not check the cases by new solves").long_help(
@@ -384,7 +457,7 @@ fn check() -> Command {
     let command = Command::new("check")
         .about("List every problem of an outline, with place and remedy")
         .after_help("Example: etchwise check traced.csv --unit um");
-    common(input(command))
+    common(any_input(command))
 }
 
 fn draw() -> Command {

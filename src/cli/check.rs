@@ -12,6 +12,7 @@ use crate::intake::Section;
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::input::{read, read_options};
+use super::instrument_options::say_settings;
 use super::output;
 
 /// Machine form of a check.
@@ -60,6 +61,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let mut options = read_options(matches)?;
     options.keep_non_finite = true;
     let section = read(&file, &options)?;
+    say_settings(matches);
     let problems = section.outline.problems();
     let accepted = !problems.has_errors();
     let vertices = section.outline.loops().map(|l| l.points.len()).sum();

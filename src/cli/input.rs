@@ -13,6 +13,8 @@ use crate::warning::{Code, Warning};
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
+use super::instrument_arguments::is_for;
+use super::instrument_options::instrument;
 
 /// Problems shown with an outline that cannot be solved.
 const PROBLEMS_SHOWN: usize = 5;
@@ -59,7 +61,7 @@ pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure>
         options.as_kind = Some(SectionKind::from_word(kind).ok_or_else(|| {
             Failure::usage(
                 format!("--as: `{kind}` is not a kind of input"),
-                "use section, outline or svg",
+                "use section, outline, svg, trace, map or image",
             )
         })?);
     }
@@ -81,6 +83,7 @@ pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure>
         options.svg_scale = Some(scale);
     }
     options.allow_any_size = matches.get_flag("allow-any-size");
+    options.instrument = instrument(matches, &options)?;
     Ok(options)
 }
 
@@ -88,16 +91,38 @@ pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure>
 pub(super) fn read(path: &Path, options: &ReadOptions) -> Result<Section, Failure> {
     let section = read_section(path, options)?;
     let kind = section.provenance.kind;
-    if options.svg_scale.is_some() && kind != SectionKind::OutlineSvg {
+    let has_scale = matches!(kind, SectionKind::OutlineSvg | SectionKind::Micrograph);
+    if options.svg_scale.is_some() && !has_scale {
         return Err(Failure::usage(
             format!(
-                "--scale is for drawings, and {} was read as `{kind}`",
+                "--scale is for drawings and pictures, and {} was read as `{kind}`",
                 section.provenance.path
             ),
             "leave it out; --unit names the unit of coordinates without one",
         ));
     }
+    refuse_foreign_options(options, &section.provenance)?;
     Ok(section)
+}
+
+/// Refuses options that mean nothing for what was read.
+pub(super) fn refuse_foreign_options(
+    options: &ReadOptions,
+    provenance: &Provenance,
+) -> Result<(), Failure> {
+    let kind = provenance.kind.word();
+    let typed = options.instrument.settings.iter().map(|(name, _)| name);
+    let mut foreign = typed.filter(|name| !is_for(name.trim_start_matches('-'), kind));
+    match foreign.next() {
+        None => Ok(()),
+        Some(name) => Err(Failure::usage(
+            format!(
+                "{name} has no meaning here: {} was read as `{kind}`",
+                provenance.path
+            ),
+            "leave it out, or say by --as what the file is",
+        )),
+    }
 }
 
 /// Refuses an outline with problems; `name` says whose it is, `advice` follows the remedy.
@@ -126,7 +151,16 @@ pub(super) fn checked_section(
 ) -> Result<CheckedSection, Failure> {
     let section = read(path, options)?;
     let advice = format!("; `etchwise check {}` lists all problems", path.display());
-    refuse_problems(&section.outline, &path.display().to_string(), &advice)?;
+    checked(section, &path.display().to_string(), &advice)
+}
+
+/// Refuses an outline with problems; `name` says whose it is, `advice` follows the remedy.
+pub(super) fn checked(
+    section: Section,
+    name: &str,
+    advice: &str,
+) -> Result<CheckedSection, Failure> {
+    refuse_problems(&section.outline, name, advice)?;
     let (outline, dropped) = section.outline.clone().without_duplicate_vertices();
     let mut warnings = section.warnings.clone();
     if dropped > 0 {

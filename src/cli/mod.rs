@@ -7,12 +7,17 @@
 mod accuracy_options;
 mod arguments;
 mod check;
+mod check_panels;
 mod draw;
 mod exit_status;
 mod failure;
 mod input;
+mod instrument_arguments;
+mod instrument_options;
+mod measures;
 mod output;
 mod quantities;
+mod reading;
 mod sections;
 mod sensitivity;
 mod solve;
@@ -24,6 +29,7 @@ pub use arguments::command;
 pub use exit_status::ExitStatus;
 
 use failure::Failure;
+use instrument_arguments::Kind;
 
 /// Runs the program on its arguments, the program name first.
 pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
@@ -40,6 +46,9 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
     };
     let outcome = match matches.subcommand() {
         Some(("solve", matches)) => solve::run(matches),
+        Some(("trace", matches)) => reading::run(Kind::Trace, matches),
+        Some(("map", matches)) => reading::run(Kind::Map, matches),
+        Some(("image", matches)) => reading::run(Kind::Image, matches),
         Some(("check", matches)) => check::run(matches),
         Some(("draw", matches)) => draw::run(matches),
         Some(("sensitivity", matches)) => sensitivity::run(matches),

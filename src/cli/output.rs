@@ -84,7 +84,7 @@ pub(super) fn vtk_prefix(matches: &ArgMatches) -> Result<Option<PathBuf>, Failur
 
 /// What must not be overwritten, and whether files are told of.
 pub(super) struct Inputs<'a> {
-    pub(super) file: &'a Path,
+    pub(super) files: &'a [&'a Path],
     pub(super) quiet: bool,
 }
 
@@ -106,7 +106,7 @@ pub(super) fn deliver(
         .iter()
         .map(|(path, bytes)| OutputFile { path, bytes })
         .collect();
-    write_files(&list, &[inputs.file])?;
+    write_files(&list, inputs.files)?;
     if !inputs.quiet {
         for (path, _) in &files {
             talk(&format!("wrote {}", path.display()));

@@ -6,7 +6,9 @@ use clap::ArgMatches;
 use crate::flow::{SectionFlow, SolveOptions, SolvedSection, solve_outline};
 use crate::geometry::curves::CHORD_TOLERANCE;
 use crate::geometry::{Film, FilmOn, FilmReport, Filmed, Outline};
-use crate::study::{Reach, ReachSides};
+use crate::intake::Section;
+use crate::report::AlternativeRecord;
+use crate::study::{Reach, ReachSides, under_assumption};
 use crate::units;
 
 use super::failure::Failure;
@@ -149,4 +151,29 @@ impl Sides {
         }
         Ok(())
     }
+}
+
+/// What the section would conduct under the other assumptions that an instrument's file allows.
+pub(super) fn alternatives(
+    section: &Section,
+    flow: &SectionFlow,
+    options: &SolveOptions,
+) -> Vec<AlternativeRecord> {
+    let of = |(option, outline): &(String, Option<Outline>)| {
+        let Some(outline) = outline else {
+            return AlternativeRecord {
+                option: option.clone(),
+                conductance: Err("it leaves no section".to_owned()),
+                relative_change: None,
+            };
+        };
+        let (outline, _) = outline.clone().without_duplicate_vertices();
+        let found = under_assumption(&outline, flow.conductance, options);
+        AlternativeRecord {
+            option: option.clone(),
+            conductance: found.conductance.map_err(|error| error.to_string()),
+            relative_change: found.relative_change,
+        }
+    };
+    section.intake.alternatives.iter().map(of).collect()
 }

@@ -14,6 +14,7 @@ use crate::warning::Code;
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::input::{self, CheckedSection, checked_section, read_options};
+use super::instrument_options::say_settings;
 use super::output::{self, Format, Inputs};
 
 /// What was asked for, no file opened yet.
@@ -35,6 +36,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let request = Request::new(matches)?;
     request.check_targets()?;
     let checked = checked_section(&request.file, &read)?;
+    say_settings(matches);
     let solved = solve_for_sensitivity(&checked.outline, &request.solve)?;
     request.answer(&checked, &solved)
 }
@@ -109,7 +111,7 @@ impl Request {
             Format::Csv => report::sensitivity_csv(&document).map_err(Failure::not_printed)?,
         };
         let inputs = Inputs {
-            file: &self.file,
+            files: &[&self.file],
             quiet: self.quiet,
         };
         output::deliver(files, text, self.output.as_deref(), &inputs)?;

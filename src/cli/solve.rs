@@ -11,7 +11,7 @@ use crate::flow::{
 use crate::geometry::Film;
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, PictureFormat, ReachRecord, SolveDocument, SourceRecord, check_targets, legacy_vtk_path,
+    self, AlternativeRecord, PictureFormat, ReachRecord, SolveDocument, SourceRecord, check_targets, legacy_vtk_path,
     vtk_paths,
 };
 use crate::study::Reach;
@@ -24,7 +24,9 @@ use super::failure::Failure;
 use super::input::{self, CheckedSection, checked_section, read_options};
 use super::output::{self, Format, Inputs};
 use super::quantities::{fluid, positive, quantity};
-use super::sections::{Sections, film};
+use super::instrument_options::say_settings;
+use super::reading::step_record;
+use super::sections::{Sections, alternatives, film};
 
 /// Nodes of an exported field, about: above that the field is thinned and a warning says so.
 const FIELD_NODES: usize = 16_000_000;
@@ -68,7 +70,12 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
         output::talk(&report::cost_text(solved.cost()));
     }
     let reach = sections.reach(&solved.flow, &request.solve)?;
-    request.answer(&checked, &sections, &solved, reach.as_ref())
+    say_settings(matches);
+    let others = match &request.film {
+        Some(_) => Vec::new(),
+        None => alternatives(&checked.section, &solved.flow, &request.solve),
+    };
+    request.answer(&checked, &sections, &solved, reach.as_ref(), &others)
 }
 
 /// Field and wall files, if they are asked for.
@@ -161,6 +168,7 @@ impl Request {
         sections: &Sections,
         solved: &SolvedSection,
         reach: Option<&Reach>,
+        alternatives: &[AlternativeRecord],
     ) -> Result<ExitStatus, Failure> {
         let flow = &solved.flow;
         let fluid = self.fluid.as_ref();
@@ -194,6 +202,7 @@ impl Request {
         let name = input::section_name(&checked.section, &self.file);
         let given = checked.section.extras.reach.as_ref();
         let reason = given.and_then(|reach| reach.reason.as_deref());
+        let steps: Vec<_> = checked.section.intake.steps.iter().map(step_record).collect();
         let document = SolveDocument {
             source: Some(SourceRecord {
                 notes: &notes,
@@ -209,6 +218,8 @@ impl Request {
             walls: Some(&walls),
             shortcuts: rows.as_deref(),
             warnings: &warnings,
+            steps: &steps,
+            alternatives,
         };
         self.deliver(&document, solved)?;
         let denied = self.deny_warnings
@@ -261,7 +272,7 @@ impl Request {
         self.add_wall_files(document, &mut files)?;
         let text = self.main_output(document)?;
         let inputs = Inputs {
-            file: &self.file,
+            files: &[&self.file],
             quiet: self.quiet,
         };
         output::deliver(files, text, self.output.as_deref(), &inputs)

@@ -10,9 +10,12 @@
 )]
 
 mod columns;
+mod content_kind;
 mod curve_flatten;
 mod delimited_text;
 mod height_map;
+mod instrument;
+mod instrument_sections;
 mod limits;
 mod loop_nesting;
 mod micrograph;
@@ -26,6 +29,7 @@ mod section;
 mod section_file;
 mod section_reach;
 mod section_write;
+mod source_table;
 mod source_text;
 mod staircase;
 mod step;
@@ -37,6 +41,10 @@ mod trace;
 mod wall_tables;
 
 pub use height_map::{HeightMap, MapProblem};
+pub use instrument::{
+    InstrumentData, InstrumentOptions, InstrumentReading, Intake, MapReading, TraceReading,
+    instrument_from_bytes, read_instrument,
+};
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
 pub use micrograph::MicrographProblem;
 pub use provenance::{Provenance, SectionKind};

@@ -14,11 +14,24 @@ pub enum SectionKind {
     OutlineText,
     /// An SVG drawing.
     OutlineSvg,
+    /// A trace of a profilometer.
+    Trace,
+    /// A height map.
+    HeightMap,
+    /// A picture of a section.
+    Micrograph,
 }
 
 impl SectionKind {
     /// Every kind, in the order of the help text.
-    pub const ALL: [Self; 3] = [Self::SectionFile, Self::OutlineText, Self::OutlineSvg];
+    pub const ALL: [Self; 6] = [
+        Self::SectionFile,
+        Self::OutlineText,
+        Self::OutlineSvg,
+        Self::Trace,
+        Self::HeightMap,
+        Self::Micrograph,
+    ];
 
     /// The word for it on the command line and in outputs.
     pub fn word(self) -> &'static str {
@@ -26,6 +39,9 @@ impl SectionKind {
             Self::SectionFile => "section",
             Self::OutlineText => "outline",
             Self::OutlineSvg => "svg",
+            Self::Trace => "trace",
+            Self::HeightMap => "map",
+            Self::Micrograph => "image",
         }
     }
 
@@ -52,7 +68,8 @@ pub struct Provenance {
     pub kind: SectionKind,
     /// Size of the file, bytes.
     pub bytes: u64,
-    /// Encoding of the text: `UTF-8`, `UTF-16LE`, `UTF-16BE` or `Latin-1`.
+    /// Encoding of the text: `UTF-8`, `UTF-16LE`, `UTF-16BE` or `Latin-1`; `binary`
+    /// for files that are not plain text.
     pub encoding: &'static str,
     /// What a reader should know about how it was read.
     pub notes: Vec<String>,

@@ -237,6 +237,23 @@ pub enum ReadProblem {
         /// What is wrong with it.
         source: NamedWallError,
     },
+    /// A section where an instrument's file is needed.
+    #[error("this is a section already (read as `{kind}`), not the file of an instrument")]
+    NotOfInstrument {
+        /// What it is.
+        kind: &'static str,
+    },
+    /// Something else where a trace is needed.
+    #[error("this is not a trace")]
+    NotATrace,
+    /// Several sections where one is needed.
+    #[error("there are {} channels: {}", list.len(), several(list))]
+    SeveralSections {
+        /// Each with its number and place.
+        list: Vec<String>,
+        /// Whether they come from the cuts of a height map.
+        is_map: bool,
+    },
     /// The text of a trace or a height map cannot be used.
     #[error("{source}")]
     Table {
@@ -360,6 +377,7 @@ impl ReadError {
                     | UnitError::UnknownUnit { .. }
                     | UnitError::DestroyedCharacter { .. },
             }
+            | ReadProblem::SeveralSections { .. }
             | ReadProblem::SvgNoScale
             | ReadProblem::SvgTwoScales { .. }
             | ReadProblem::ImplausibleSize { .. } => true,
@@ -402,6 +420,16 @@ impl ReadError {
         text.push('\n');
         text
     }
+}
+
+/// The first sections of a list, in words.
+fn several(list: &[String]) -> String {
+    let shown = list.iter().take(6).map(String::as_str);
+    let mut text = shown.collect::<Vec<_>>().join("; ");
+    if list.len() > 6 {
+        text.push_str("; ...");
+    }
+    text
 }
 
 /// A problem with its place, before the path is known.

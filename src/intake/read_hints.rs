@@ -41,6 +41,16 @@ impl ReadProblem {
     /// Hints without numbers.
     fn fixed_hint(&self) -> &'static str {
         match self {
+            Self::NotOfInstrument { .. } => {
+                "solve it as it is with `etchwise solve`, or say what it is by --as trace, map or image"
+            }
+            Self::NotATrace => "give a trace in columns or a profile in an x3p or sdf file",
+            Self::SeveralSections { is_map: false, .. } => {
+                "choose one by its number, for example --groove 1; `etchwise trace` writes a section file for each"
+            }
+            Self::SeveralSections { is_map: true, .. } => {
+                "choose one by --groove 1 and a single --station; `etchwise map` writes a section file for each"
+            }
             Self::NotFound => "check the spelling and the folder",
             Self::IsFolder => "name a file in it",
             Self::Io { .. } => "check the permissions and the disk",

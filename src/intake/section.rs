@@ -2,6 +2,8 @@
 
 use std::path::Path;
 
+use super::content_kind::{Content, content_of};
+use super::instrument::{InstrumentOptions, Intake, read_instrument_content};
 use super::limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, check_file_size};
 use super::loop_nesting::assemble;
 use super::plausibility::check_size;
@@ -9,7 +11,7 @@ use super::provenance::{Provenance, SectionKind, sha256_hex};
 use super::read_error::{Fault, ReadError, ReadProblem};
 use super::section_reach::Reach;
 use super::source_text::{SourceText, read_bytes};
-use super::{delimited_text, outline_svg, outline_text, section_file};
+use super::{outline_svg, outline_text, section_file};
 use crate::geometry::nominal::NominalSpec;
 use crate::geometry::{Outline, WallStretch};
 use crate::units::{UnitScale, length_scale, parse_length};
@@ -29,6 +31,8 @@ pub struct ReadOptions {
     /// Keep coordinates that are infinite or not a number, so that [`Outline::problems`] lists them all;
     /// otherwise reading stops at the first.
     pub keep_non_finite: bool,
+    /// How the file of an instrument becomes sections.
+    pub instrument: InstrumentOptions,
 }
 
 /// Further tables of a section file.
@@ -61,6 +65,8 @@ pub struct Section {
     pub extras: Extras,
     /// What a reader of results must know.
     pub warnings: Vec<Warning>,
+    /// How it came out of an instrument's file; empty where it was given as an outline.
+    pub intake: Intake,
 }
 
 /// The unit asked for, resolved.
@@ -73,10 +79,12 @@ pub(crate) struct UnitOption {
 }
 
 impl UnitOption {
-    fn resolve(options: &ReadOptions) -> Result<Option<Self>, ReadProblem> {
-        let Some(word) = &options.unit else {
-            return Ok(None);
-        };
+    pub(super) fn resolve(options: &ReadOptions) -> Result<Option<Self>, ReadProblem> {
+        options.unit.as_deref().map(Self::from_word).transpose()
+    }
+
+    /// The unit by its word, or by the length of one unit.
+    pub(crate) fn from_word(word: &str) -> Result<Self, ReadProblem> {
         let scale = match length_scale(word.trim()) {
             Some(scale) => scale,
             None if word
@@ -91,10 +99,10 @@ impl UnitOption {
             None => super::columns::known_length(word.trim())
                 .map_err(|source| ReadProblem::UnitOption { source })?,
         };
-        Ok(Some(Self {
+        Ok(Self {
             word: word.trim().to_owned(),
             scale,
-        }))
+        })
     }
 
     /// Refuses a unit in the file that differs from the one asked for.
@@ -168,21 +176,24 @@ pub fn section_from_bytes(
     path: &str,
     options: &ReadOptions,
 ) -> Result<Section, ReadError> {
-    read_content(bytes, path, options).map_err(|fault| fault.in_file(path))
+    check_file_size(bytes.len() as u64, MAX_FILE_BYTES)
+        .map_err(|problem| ReadError::new(path, problem))?;
+    let content = content_of(&bytes, options.as_kind).map_err(|fault| fault.in_file(path))?;
+    match content {
+        Content::Section(kind, source) => read_content((kind, source), &bytes, path, options)
+            .map_err(|fault| fault.in_file(path)),
+        other => read_instrument_content(other, &bytes, path, options)?.only_section(),
+    }
 }
 
-fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Section, Fault> {
-    check_file_size(bytes.len() as u64, MAX_FILE_BYTES)?;
+fn read_content(
+    (kind, source): (SectionKind, SourceText),
+    bytes: &[u8],
+    path: &str,
+    options: &ReadOptions,
+) -> Result<Section, Fault> {
     let option = UnitOption::resolve(options)?;
-    let (size, sha256) = (bytes.len() as u64, sha256_hex(&bytes));
-    let source = SourceText::decode(bytes)?;
-    if source.text.trim().is_empty() {
-        return Err(ReadProblem::Empty.into());
-    }
-    let kind = match options.as_kind {
-        Some(kind) => kind,
-        None => kind_of(&source.text)?,
-    };
+    let (size, sha256) = (bytes.len() as u64, sha256_hex(bytes));
     if kind != SectionKind::OutlineText {
         check_file_size(size, MAX_MARKUP_BYTES)?;
     }
@@ -195,7 +206,7 @@ fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Sec
             scale.map_or(Ok(()), check_scale)?;
             outline_svg::read(&source.text, scale)?
         }
-        SectionKind::OutlineText => {
+        _ => {
             let raw = outline_text::read(&source.text, option.as_ref(), options.keep_non_finite)?;
             let sorted = assemble(raw.loops);
             Content {
@@ -237,74 +248,13 @@ fn read_content(bytes: Vec<u8>, path: &str, options: &ReadOptions) -> Result<Sec
         },
         extras: content.extras,
         warnings,
+        intake: Intake::default(),
     })
-}
-
-/// The kind of a text by its first line that is not a comment.
-///
-/// `<` begins a drawing; `[table]` or `key =` a section file; a row of numbers, or a header with a row of
-/// numbers anywhere below, is an outline in columns.
-fn kind_of(text: &str) -> Result<SectionKind, Fault> {
-    if text.trim_start().starts_with('<') {
-        return Ok(SectionKind::OutlineSvg);
-    }
-    let mut rows = delimited_text::Rows::new(text).filter(|row| !row.content.trim().is_empty());
-    let Some(first) = rows.next() else {
-        return Err(ReadProblem::NoOutline.into());
-    };
-    let line = first.content.trim();
-    let numeric = |row: delimited_text::Row<'_>| delimited_text::looks_numeric(row.content.trim());
-    if is_toml_line(line) {
-        return Ok(SectionKind::SectionFile);
-    }
-    let lower = line.trim_start_matches('"').to_lowercase();
-    let header = ["x", "y", "z", "loop", "lumen"]
-        .iter()
-        .any(|word| lower.starts_with(word));
-    if numeric(first) || header || rows.take(20).any(numeric) {
-        return Ok(SectionKind::OutlineText);
-    }
-    Err(Fault::at(
-        text,
-        first.offset,
-        None,
-        ReadProblem::UnknownContent,
-    ))
-}
-
-/// Whether a line is a table head or begins with a key and an equals sign.
-fn is_toml_line(line: &str) -> bool {
-    if let Some(rest) = line.strip_prefix('[') {
-        return rest.starts_with(|c: char| c == '[' || c.is_ascii_alphabetic());
-    }
-    let key = line.split('=').next().unwrap_or_default().trim_end();
-    let bare = |c: char| c.is_ascii_alphanumeric() || matches!(c, '_' | '-' | '.' | '"');
-    line.contains('=')
-        && key.starts_with(|c: char| c.is_ascii_alphabetic() || c == '"')
-        && key.chars().all(bare)
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn kinds_are_found_from_the_content() {
-        for (text, kind) in [
-            ("# c\n\nname = \"a\"\n", SectionKind::SectionFile),
-            ("[nominal]\n", SectionKind::SectionFile),
-            ("[[lumen]]\n", SectionKind::SectionFile),
-            ("# c\nx_um,y_um\n1,2\n", SectionKind::OutlineText),
-            ("\"x (um)\";\"y (um)\"\n1;2\n", SectionKind::OutlineText),
-            ("1 2\n3 4\n", SectionKind::OutlineText),
-            ("width;depth\n3;4\n", SectionKind::OutlineText),
-            ("\n<?xml version=\"1.0\"?><svg/>", SectionKind::OutlineSvg),
-        ] {
-            assert_eq!(kind_of(text), Ok(kind), "{text}");
-        }
-        assert!(kind_of("hello\nworld\n").is_err());
-        assert!(kind_of("# only a comment\n").is_err());
-    }
 
     #[test]
     fn a_unit_may_be_the_length_of_one_number() {

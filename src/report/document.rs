@@ -3,6 +3,7 @@
 //! It borrows what the solve and the operating point say and adds only unit conversions, so that text,
 //! JSON, CSV, field files and pictures cannot disagree. SI throughout.
 
+use super::reading_document::{AlternativeRecord, StepRecord};
 use crate::flow::{Fluid, OperatingPoint, SectionFlow, ShortcutRow, WallReport};
 use crate::geometry::FilmReport;
 use crate::measured::Estimate;
@@ -56,6 +57,10 @@ pub struct SolveDocument<'a> {
     pub shortcuts: Option<&'a [ShortcutRow]>,
     /// Warnings that are not already in `flow.warnings`.
     pub warnings: &'a [Warning],
+    /// How the section came out of an instrument's file; empty where it was given as an outline.
+    pub steps: &'a [StepRecord<'a>],
+    /// What other assumptions about an instrument's file would give.
+    pub alternatives: &'a [AlternativeRecord],
 }
 
 /// A factor that turns a quantity per unit of drive into a quantity with a unit.
@@ -90,6 +95,8 @@ impl<'a> SolveDocument<'a> {
             walls: None,
             shortcuts: None,
             warnings: &[],
+            steps: &[],
+            alternatives: &[],
         }
     }
 

@@ -14,6 +14,7 @@ use super::json_film::FilmView;
 use super::json_reach::ReachView;
 use super::json_values::{Bracketed, Number, Quantity, maybe, place};
 use super::json_wall::Shear;
+use super::reading_json::{AlternativeView, StepView};
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
 use crate::warning::Warning;
 
@@ -58,6 +59,8 @@ struct Root<'a> {
     resistance: Quantity,
     operating_point: Option<PointView>,
     shortcuts: Option<Vec<ShortcutView<'a>>>,
+    steps: Vec<StepView<'a>>,
+    alternatives: Vec<AlternativeView<'a>>,
     warnings: Vec<WarningView>,
     absent_because: BTreeMap<&'static str, &'static str>,
 }
@@ -129,6 +132,12 @@ impl<'a> Root<'a> {
             shortcuts: document
                 .shortcuts
                 .map(|rows| rows.iter().map(ShortcutView::new).collect()),
+            steps: document.steps.iter().map(StepView::new).collect(),
+            alternatives: document
+                .alternatives
+                .iter()
+                .map(AlternativeView::new)
+                .collect(),
             warnings: document
                 .all_warnings()
                 .into_iter()

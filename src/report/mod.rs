@@ -18,6 +18,9 @@ mod picture;
 mod picture_furniture;
 mod picture_layout;
 mod png;
+mod reading_document;
+mod reading_json;
+mod reading_text;
 mod sensitivity_csv;
 mod sensitivity_document;
 mod sensitivity_json;
@@ -44,6 +47,11 @@ pub use drawing::{Anchor, Colour, Drawing, Item, Raster, TextSize};
 pub use json::{SCHEMA, to_json};
 pub use picture::{PictureError, PictureFormat, draw_velocity, picture_bytes};
 pub use png::{PngError, to_png};
+pub use reading_document::{
+    AlternativeRecord, ConductanceRecord, MeasureRecord, ReadingDocument, SectionRecord, StepRecord,
+};
+pub use reading_json::reading_json;
+pub use reading_text::{reading_text, settings_text};
 pub use sensitivity_csv::sensitivity_csv;
 pub use sensitivity_document::SensitivityDocument;
 pub use sensitivity_json::{SENSITIVITY_SCHEMA, sensitivity_json};

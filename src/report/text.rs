@@ -8,7 +8,7 @@ use super::document::{SolveDocument, SourceRecord};
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
 use super::text_accuracy::accuracy;
-use super::{text_operation, text_reach, text_wall};
+use super::{reading_text, text_operation, text_reach, text_wall};
 use crate::flow::{SectionFlow, SectionGeometry};
 use crate::geometry::Point;
 use crate::warning::Warning;
@@ -29,9 +29,16 @@ const INDENT: usize = 2;
 pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
     let flow = document.flow;
     let mut parts = vec![title(document.section_name, document.source)];
+    parts.extend(reading_text::steps(
+        "From the file to the section",
+        document.steps,
+    ));
     parts.extend(document.film.map(text_reach::film));
     parts.extend([geometry(&flow.geometry), conductance(flow), accuracy(flow)]);
     parts.extend(document.reach.map(|r| text_reach::reach(document, &r)));
+    if !document.alternatives.is_empty() {
+        parts.push(reading_text::alternatives(document.alternatives));
+    }
     parts.extend([friction(flow), velocity(flow)]);
     if document.operating_point.is_none() {
         parts.push(shear_per_gradient(flow));

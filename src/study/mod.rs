@@ -1,5 +1,6 @@
 //! Questions over one or many sections that each take several solves or their derivatives.
 
+mod assumptions;
 mod facing;
 mod moved_outline;
 mod reach;
@@ -8,6 +9,7 @@ mod sensitivity;
 mod wall_motion;
 mod wall_motion_cases;
 
+pub use assumptions::{Assumption, under_assumption};
 pub use moved_outline::{MovedOutline, moved_outline};
 pub use reach::{Reach, ReachBound, ReachError, ReachSide, ReachSides};
 pub use resolve_check::{Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE};

@@ -1,0 +1,133 @@
+//! What a file holds, by its content alone.
+
+use super::delimited_text::{Row, Rows, looks_numeric};
+use super::height_map::{SurfaceFormat, surface_format};
+use super::micrograph::is_picture;
+use super::provenance::SectionKind;
+use super::read_error::{Fault, ReadProblem};
+use super::source_text::SourceText;
+use super::trace::{TableKind, table_kind};
+
+/// Content of a file, decoded where it is text.
+#[derive(Debug)]
+pub(crate) enum Content {
+    /// A section file, an outline in columns, or a drawing.
+    Section(SectionKind, SourceText),
+    /// A trace in columns.
+    Trace(SourceText),
+    /// A height map in columns.
+    Map(SourceText),
+    /// A surface or a profile in a format of its own.
+    Surface(SurfaceFormat),
+    /// A picture.
+    Picture,
+}
+
+/// Finds out what a file holds.
+///
+/// - `as_kind`: what the user says it is; for a trace or a height map the form is still found from the content
+pub(crate) fn content_of(bytes: &[u8], as_kind: Option<SectionKind>) -> Result<Content, Fault> {
+    match as_kind {
+        Some(SectionKind::Micrograph) => Ok(Content::Picture),
+        Some(SectionKind::Trace) => Ok(match surface_format(bytes) {
+            Some(format) => Content::Surface(format),
+            None => Content::Trace(decoded(bytes)?),
+        }),
+        Some(SectionKind::HeightMap) => Ok(match surface_format(bytes) {
+            Some(format) => Content::Surface(format),
+            None => Content::Map(decoded(bytes)?),
+        }),
+        Some(kind) => Ok(Content::Section(kind, decoded(bytes)?)),
+        None if is_picture(bytes) => Ok(Content::Picture),
+        None => match surface_format(bytes) {
+            Some(format) => Ok(Content::Surface(format)),
+            None => text_content(decoded(bytes)?),
+        },
+    }
+}
+
+/// The text of a file that holds something.
+fn decoded(bytes: &[u8]) -> Result<SourceText, Fault> {
+    let source = SourceText::decode(bytes.to_vec())?;
+    if source.text.trim().is_empty() {
+        return Err(ReadProblem::Empty.into());
+    }
+    Ok(source)
+}
+
+/// The kind of a text.
+///
+/// `<` begins a drawing; `[table]` or `key = value` a section file; tables of numbers are told apart by their
+/// columns, see [`table_kind`].
+fn text_content(source: SourceText) -> Result<Content, Fault> {
+    let text = &source.text;
+    if text.trim_start().starts_with('<') {
+        return Ok(Content::Section(SectionKind::OutlineSvg, source));
+    }
+    let mut rows = Rows::new(text).filter(|row| !row.content.trim().is_empty());
+    let first = rows.next();
+    if first.is_some_and(|row| is_toml_line(row.content.trim())) {
+        return Ok(Content::Section(SectionKind::SectionFile, source));
+    }
+    match table_kind(text) {
+        Some(TableKind::Trace) => return Ok(Content::Trace(source)),
+        Some(TableKind::Matrix | TableKind::Points) => return Ok(Content::Map(source)),
+        Some(TableKind::Outline) => {
+            return Ok(Content::Section(SectionKind::OutlineText, source));
+        }
+        None => {}
+    }
+    let Some(first) = first else {
+        return Err(ReadProblem::NoOutline.into());
+    };
+    let numeric = |row: Row<'_>| looks_numeric(row.content.trim());
+    let lower = first.content.trim().trim_start_matches('"').to_lowercase();
+    let header = ["x", "y", "z", "loop", "lumen"]
+        .iter()
+        .any(|word| lower.starts_with(word));
+    if numeric(first) || header || rows.take(20).any(numeric) {
+        return Ok(Content::Section(SectionKind::OutlineText, source));
+    }
+    Err(Fault::at(
+        text,
+        first.offset,
+        None,
+        ReadProblem::UnknownContent,
+    ))
+}
+
+/// Whether a line is a table head or begins with a key and an equals sign.
+fn is_toml_line(line: &str) -> bool {
+    if let Some(rest) = line.strip_prefix('[') {
+        return rest.starts_with(|c: char| c == '[' || c.is_ascii_alphabetic());
+    }
+    let key = line.split('=').next().unwrap_or_default().trim_end();
+    let bare = |c: char| c.is_ascii_alphanumeric() || matches!(c, '_' | '-' | '.' | '"');
+    line.contains('=')
+        && key.starts_with(|c: char| c.is_ascii_alphabetic() || c == '"')
+        && key.chars().all(bare)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn kinds_are_found_from_the_content() {
+        for (text, kind) in [
+            ("# c\n\nname = \"a\"\n", SectionKind::SectionFile),
+            ("[nominal]\n", SectionKind::SectionFile),
+            ("[[lumen]]\n", SectionKind::SectionFile),
+            ("# c\nx_um,y_um\n1,2\n", SectionKind::OutlineText),
+            ("\"x (um)\";\"y (um)\"\n1;2\n", SectionKind::OutlineText),
+            ("1 2\n3 4\n", SectionKind::OutlineText),
+            ("width;depth\n3;4\n", SectionKind::OutlineText),
+            ("\n<?xml version=\"1.0\"?><svg/>", SectionKind::OutlineSvg),
+        ] {
+            let found = content_of(text.as_bytes(), None);
+            assert!(matches!(found, Ok(Content::Section(found, _)) if found == kind), "{text}");
+        }
+        assert!(content_of(b"hello\nworld\n", None).is_err());
+        assert!(content_of(b"# only a comment\n", None).is_err());
+    }
+}

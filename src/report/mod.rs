@@ -2,9 +2,19 @@
 //!
 //! Every format is a view of one [`SolveDocument`].
 
+mod check_axes;
+mod check_curves;
+mod check_dimensions;
+mod check_image;
+mod check_lanes;
+mod check_legend;
+mod check_map;
+mod check_page;
+mod check_picture;
 mod colour_map;
 mod contour;
 mod csv;
+mod curve_thinning;
 mod document;
 mod drawing;
 mod json;
@@ -13,6 +23,8 @@ mod json_film;
 mod json_reach;
 mod json_values;
 mod json_wall;
+mod label_box;
+mod line_style;
 mod numbers;
 mod picture;
 mod picture_furniture;
@@ -41,6 +53,11 @@ mod wall_csv;
 mod wall_picture;
 mod write;
 
+pub use check_page::{check_picture_bytes, draw_check};
+pub use check_picture::{
+    Band, BandKind, CheckPicture, Curve, CurveKind, CurvePanel, Cut, Dimension, ImagePanel,
+    MapPanel, Mark, MarkKind, Panel, Region, RegionKind,
+};
 pub use csv::{CsvError, to_csv};
 pub use document::{ReachRecord, Scale, SolveDocument, SourceRecord};
 pub use drawing::{Anchor, Colour, Drawing, Item, Raster, TextSize};

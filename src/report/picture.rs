@@ -92,6 +92,12 @@ pub enum PictureError {
     /// The result holds no wall.
     #[error("the result holds no wall shear, so there is no wall to colour")]
     NoWall,
+    /// A check picture without anything to draw.
+    #[error("the check picture has nothing to draw: {reason}")]
+    EmptyCheck {
+        /// Why, panel by panel.
+        reason: String,
+    },
     /// The pixels could not be made.
     #[error(transparent)]
     Png(#[from] PngError),
@@ -228,10 +234,7 @@ impl<'a> Page<'a> {
     /// A paragraph at the left border, broken to the width of the page.
     pub(super) fn paragraph(&mut self, text: &str, size: TextSize, left: f64) {
         let room = ((MARGIN + self.inner - left) / size.advance()).floor() as usize;
-        for line in wrapped(text, room.max(1))
-            .iter()
-            .flat_map(|l| pieces(l, room.max(1)))
-        {
+        for line in broken(text, room) {
             self.y += size.line_height();
             self.drawing
                 .text([left, self.y - 5.0], Anchor::Start, size, line);
@@ -349,6 +352,15 @@ impl<'a> Page<'a> {
         self.drawing.height = (self.y + MARGIN).ceil() as u32;
         self.drawing
     }
+}
+
+/// A text in lines of at most `room` characters, broken at blanks and within words longer than a line.
+pub(super) fn broken(text: &str, room: usize) -> Vec<String> {
+    let room = room.max(1);
+    wrapped(text, room)
+        .iter()
+        .flat_map(|l| pieces(l, room))
+        .collect()
 }
 
 /// A line cut into pieces of at most `room` characters, for words longer than a line.

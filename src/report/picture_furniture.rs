@@ -195,7 +195,7 @@ impl Page<'_> {
 }
 
 /// Length of a scale bar in the unit that fits it.
-fn bar_label(length: f64) -> String {
+pub(super) fn bar_label(length: f64) -> String {
     let (unit, size) = numbers::fitting_unit(length, numbers::LENGTHS);
     let value = length / size;
     format!("{} {unit}", ticks::label(value, value))

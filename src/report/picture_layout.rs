@@ -42,7 +42,7 @@ pub(super) enum Exaggeration {
 
 impl Exaggeration {
     /// What a section of this size needs, m.
-    fn of([width, height]: [f64; 2]) -> Self {
+    pub(super) fn of([width, height]: [f64; 2]) -> Self {
         let factor = |aspect: f64| round_above(aspect / EXAGGERATED_ASPECT).unwrap_or(1.0);
         if width > LARGEST_EQUAL_ASPECT * height {
             Self::Height(factor(width / height))
@@ -50,6 +50,15 @@ impl Exaggeration {
             Self::Width(factor(height / width))
         } else {
             Self::None
+        }
+    }
+
+    /// The factors by which width and height are stretched.
+    pub(super) fn stretch(self) -> [f64; 2] {
+        match self {
+            Self::None => [1.0, 1.0],
+            Self::Height(f) => [1.0, f],
+            Self::Width(f) => [f, 1.0],
         }
     }
 }
@@ -63,11 +72,7 @@ impl Layout {
             return None;
         }
         let exaggeration = Exaggeration::of(extent);
-        let stretch = match exaggeration {
-            Exaggeration::None => [1.0, 1.0],
-            Exaggeration::Height(f) => [1.0, f],
-            Exaggeration::Width(f) => [f, 1.0],
-        };
+        let stretch = exaggeration.stretch();
         let fit =
             (LARGEST[0] / (extent[0] * stretch[0])).min(LARGEST[1] / (extent[1] * stretch[1]));
         let scale = [fit * stretch[0], fit * stretch[1]];
@@ -78,6 +83,16 @@ impl Layout {
             scale,
         };
         Some((layout, exaggeration))
+    }
+
+    /// A plot from a lower left corner (m), with its size (px) and its scale (px per metre); its place is set later.
+    pub(super) fn spanning(low: Point, size: [f64; 2], scale: [f64; 2]) -> Self {
+        Self {
+            low,
+            at: [0, 0],
+            size,
+            scale,
+        }
     }
 
     /// A point of the section on the page.

@@ -1,6 +1,7 @@
 //! Numbers beside the wall of a sensitivity picture, placed where they cover nothing.
 
 use super::drawing::TextSize;
+use super::label_box::LabelBox;
 use super::picture_layout::Layout;
 use crate::flow::{CurvePoint, LoopCurve, PointKind, WallCurve};
 use crate::geometry::Point;
@@ -23,26 +24,6 @@ pub(super) struct Label {
     pub(super) leader: [Point; 2],
 }
 
-/// An upright box, px.
-#[derive(Clone, Copy)]
-struct Bounds {
-    middle: Point,
-    half: Point,
-}
-
-impl Bounds {
-    fn holds(&self, p: Point) -> bool {
-        (0..2).all(|axis| (p[axis] - self.middle[axis]).abs() < self.half[axis] + FREE)
-    }
-
-    fn meets(&self, other: &Self) -> bool {
-        (0..2).all(|axis| {
-            let apart = (self.middle[axis] - other.middle[axis]).abs();
-            apart < self.half[axis] + other.half[axis] + FREE
-        })
-    }
-}
-
 /// Numbers at the largest value of each stretch between corners, the longest stretches first, or evenly spread
 /// over a loop without corners; each inside the fluid, else outside, else left out.
 ///
@@ -60,7 +41,7 @@ pub(super) fn labels(
         .flat_map(|l| &l.points)
         .map(|p| layout.page(p.at))
         .collect();
-    let mut placed: Vec<(Bounds, Label)> = Vec::new();
+    let mut placed: Vec<(LabelBox, Label)> = Vec::new();
     let mut candidates: Vec<(f64, &CurvePoint)> = curve.loops.iter().flat_map(places).collect();
     candidates.sort_by(|a, b| b.0.total_cmp(&a.0));
     for (_, point) in candidates {
@@ -79,12 +60,12 @@ pub(super) fn labels(
         let [nx, ny] = [nx / size, ny / size];
         let reach = AWAY + nx.abs() * half[0] + ny.abs() * half[1];
         let found = [-1.0, 1.0].into_iter().find_map(|side| {
-            let bounds = Bounds {
+            let bounds = LabelBox {
                 middle: [at[0] + side * nx * reach, at[1] + side * ny * reach],
                 half,
             };
-            let is_free = !wall.iter().any(|&p| bounds.holds(p))
-                && !placed.iter().any(|(other, _)| other.meets(&bounds))
+            let is_free = !wall.iter().any(|&p| bounds.holds(p, FREE))
+                && !placed.iter().any(|(other, _)| other.meets(&bounds, FREE))
                 && bounds.middle[0] - half[0] > 2.0
                 && bounds.middle[0] + half[0] < width - 2.0;
             is_free.then_some((side, bounds))

@@ -6,6 +6,7 @@
 
 use super::document::SolveDocument;
 use super::drawing::{Anchor, Colour, Drawing, INK, Item, PAPER, TextSize};
+use super::line_style::dashed;
 use super::numbers::{self, DYN_PER_CM2, significant, with_unit};
 use super::picture::{MARGIN, PictureError, PictureFormat};
 use super::picture_layout::{straightened, thinned};
@@ -320,7 +321,8 @@ impl<'a> Plot<'a> {
     fn mean(&mut self) {
         let (left, right) = (MARGIN + AXIS_ROOM, MARGIN + AXIS_ROOM + PLOT_WIDTH);
         let y = self.floor() - self.report.whole.mean / self.top * PLOT_HEIGHT;
-        self.drawing.lines(dashes(left, right, y), INK, 1.2);
+        self.drawing
+            .lines(dashed(&[[left, y], [right, y]], &[9.0, 6.0]), INK, 1.2);
     }
 
     fn curves(&mut self) {
@@ -474,16 +476,4 @@ impl<'a> Plot<'a> {
 /// What a shear per gradient in a unit of length becomes when multiplied by Pa/m.
 fn shear_of_length(unit: &str) -> String {
     format!("{}Pa", unit.strip_suffix('m').unwrap_or_default())
-}
-
-/// A broken level line.
-fn dashes(left: f64, right: f64, y: f64) -> Vec<Vec<Point>> {
-    let (dash, period) = (9.0, 15.0);
-    let count = ((right - left) / period).floor() as usize;
-    (0..=count)
-        .map(|k| {
-            let x = left + period * k as f64;
-            vec![[x, y], [(x + dash).min(right), y]]
-        })
-        .collect()
 }

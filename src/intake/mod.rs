@@ -36,7 +36,10 @@ mod toml_values;
 mod trace;
 mod wall_tables;
 
-pub use height_map::{HeightMap, MapProblem};
+pub use height_map::{
+    CutOptions, HeightMap, MAX_MAP_POINTS, MapCut, MapCuts, MapProblem, SurfaceContent,
+    SurfaceFormat, cut, heights_csv, read_surface, surface_format,
+};
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
 pub use micrograph::MicrographProblem;
 pub use provenance::{Provenance, SectionKind};

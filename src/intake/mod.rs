@@ -40,7 +40,10 @@ mod toml_values;
 mod trace;
 mod wall_tables;
 
-pub use height_map::{HeightMap, MapProblem};
+pub use height_map::{
+    CutOptions, HeightMap, MAX_MAP_POINTS, MapCut, MapCuts, MapProblem, SurfaceContent,
+    SurfaceFormat, cut, heights_csv, read_surface, surface_format,
+};
 pub use instrument::{
     InstrumentData, InstrumentOptions, InstrumentReading, Intake, MapReading, TraceReading,
     instrument_from_bytes, read_instrument,

@@ -1,0 +1,188 @@
+//! How well one profile, repeated along a direction, explains the heights of a map.
+//!
+//! Every point has a position `u` across the direction and `v` along it. The profile is a curve of straight
+//! pieces over evenly spaced knots in `u`, fitted to all points by least squares: the normal equations
+//! couple neighbouring knots only. It is the mean of all parallel cuts without a choice of cuts.
+
+use super::map_blocks::HeightPoint;
+use crate::geometry::Point;
+
+/// The fitted profile.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct FittedProfile {
+    /// Unit vectors along and across the direction, anticlockwise.
+    along: Point,
+    across: Point,
+    /// Place of the first knot and distance of knots.
+    first: f64,
+    knot: f64,
+    values: Vec<f64>,
+    /// Part of the variance of the heights left over, corrected for the number of knots.
+    pub(super) unexplained: f64,
+}
+
+/// Fits the profile across a direction (radians against x).
+pub(super) fn fit_profile(points: &[HeightPoint], direction: f64, knot: f64) -> FittedProfile {
+    let (sine, cosine) = direction.sin_cos();
+    let (along, across) = ([cosine, sine], [-sine, cosine]);
+    let place = |p: &HeightPoint| across[0] * p[0] + across[1] * p[1];
+    let (low, high) = points
+        .iter()
+        .map(place)
+        .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), u| {
+            (low.min(u), high.max(u))
+        });
+    let pieces = if points.is_empty() {
+        0
+    } else {
+        ((high - low) / knot) as usize + 1
+    };
+    let mut equations = Equations::new(pieces + 1);
+    let (mut sum, mut squares) = (0.0, 0.0);
+    for p in points {
+        let position = ((place(p) - low) / knot).max(0.0);
+        let piece = (position as usize).min(pieces.saturating_sub(1));
+        equations.add(piece, position - piece as f64, p[2]);
+        sum += p[2];
+        squares += p[2] * p[2];
+    }
+    let count = points.len() as f64;
+    let (values, explained, knots) = equations.solve();
+    let left = (squares - explained).max(0.0) / (count - knots as f64).max(1.0);
+    let all = (squares - sum * sum / count.max(1.0)).max(0.0) / (count - 1.0).max(1.0);
+    FittedProfile {
+        along,
+        across,
+        first: low,
+        knot,
+        values,
+        unexplained: if all > 0.0 { left / all } else { 1.0 },
+    }
+}
+
+impl FittedProfile {
+    /// Height and slope of the profile at a position; the slope is the mean of the pieces around.
+    fn at(&self, u: f64) -> (f64, f64) {
+        let position = ((u - self.first) / self.knot).max(0.0);
+        let piece = position as usize;
+        let value = |k: usize| {
+            let inside = k.min(self.values.len().saturating_sub(1));
+            self.values.get(inside).copied().unwrap_or(0.0)
+        };
+        let part = position - piece as f64;
+        let height = value(piece) * (1.0 - part) + value(piece + 1) * part;
+        let before = value(piece.saturating_sub(1));
+        let slope_here = value(piece + 1) - before;
+        let slope_next = value(piece + 2) - value(piece);
+        let slope = (slope_here * (1.0 - part) + slope_next * part) / (2.0 * self.knot);
+        (height, slope)
+    }
+
+    /// Shifts of the profile in stripes along the direction, in the order of `v`.
+    pub(super) fn shifts(&self, points: &[HeightPoint], stripes: usize) -> Vec<StripeShift> {
+        let along = |p: &HeightPoint| self.along[0] * p[0] + self.along[1] * p[1];
+        let (low, high) = points
+            .iter()
+            .map(along)
+            .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), v| {
+                (low.min(v), high.max(v))
+            });
+        let length = (high - low) / stripes.max(1) as f64;
+        let mut sums = vec![[0.0; 3]; stripes];
+        for p in points {
+            let v = along(p);
+            let stripe = ((v - low) / length).max(0.0) as usize;
+            let (height, slope) = self.at(self.across[0] * p[0] + self.across[1] * p[1]);
+            if let Some(sum) = sums.get_mut(stripe.min(stripes.saturating_sub(1))) {
+                let weight = slope * slope;
+                sum[0] += weight;
+                sum[1] += weight * v;
+                sum[2] -= slope * (p[2] - height);
+            }
+        }
+        let strongest = sums.iter().map(|sum| sum[0]).fold(0.0, f64::max);
+        sums.iter()
+            // Stripes with next to no flank say nothing of the place of the profile.
+            .filter(|sum| sum[0] > 0.01 * strongest)
+            .map(|sum| StripeShift {
+                along: sum[1] / sum[0],
+                shift: sum[2] / sum[0],
+                weight: sum[0],
+            })
+            .collect()
+    }
+}
+
+/// Where the profile lies in a stripe across the map.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct StripeShift {
+    /// Mean position of the stripe along the direction, m.
+    pub(super) along: f64,
+    /// How far the profile lies to the left of its mean place, m.
+    pub(super) shift: f64,
+    /// Sum of squared slopes.
+    pub(super) weight: f64,
+}
+
+/// Normal equations of knots that couple with their neighbours.
+struct Equations {
+    diagonal: Vec<f64>,
+    beside: Vec<f64>,
+    right: Vec<f64>,
+}
+
+impl Equations {
+    fn new(knots: usize) -> Self {
+        Self {
+            diagonal: vec![0.0; knots],
+            beside: vec![0.0; knots],
+            right: vec![0.0; knots],
+        }
+    }
+
+    /// Adds a height at a part of a piece.
+    fn add(&mut self, piece: usize, part: f64, height: f64) {
+        let rest = 1.0 - part;
+        if let (Some([d0, d1]), Some([r0, r1]), Some(beside)) = (
+            self.diagonal.get_mut(piece..).and_then(first_two),
+            self.right.get_mut(piece..).and_then(first_two),
+            self.beside.get_mut(piece),
+        ) {
+            *d0 += rest * rest;
+            *d1 += part * part;
+            *r0 += rest * height;
+            *r1 += part * height;
+            *beside += rest * part;
+        }
+    }
+
+    /// Values at the knots, the sum of squares they explain, and the number of knots with points.
+    fn solve(mut self) -> (Vec<f64>, f64, usize) {
+        let largest = self.diagonal.iter().copied().fold(0.0, f64::max);
+        // Keeps knots without points at zero and the others where they are.
+        let ridge = 1e-9 * largest + f64::MIN_POSITIVE;
+        let knots = self.diagonal.iter().filter(|d| **d > 1e-3).count();
+        let right = self.right.clone();
+        let count = self.diagonal.len();
+        let mut before = (0.0, 1.0, 0.0);
+        for k in 0..count {
+            let (beside, diagonal, value) = before;
+            let factor = beside / diagonal;
+            let here = self.diagonal[k] + ridge - factor * beside;
+            self.diagonal[k] = here;
+            self.right[k] -= factor * value;
+            before = (self.beside[k], here, self.right[k]);
+        }
+        let mut after = 0.0;
+        for k in (0..count).rev() {
+            after = (self.right[k] - self.beside[k] * after) / self.diagonal[k];
+            self.right[k] = after;
+        }
+        let explained = self.right.iter().zip(&right).map(|(v, r)| v * r).sum();
+        (self.right, explained, knots)
+    }
+}
+
+fn first_two(slice: &mut [f64]) -> Option<&mut [f64; 2]> {
+    slice.first_chunk_mut()
+}

@@ -74,9 +74,11 @@ pub(crate) struct UnitOption {
 
 impl UnitOption {
     fn resolve(options: &ReadOptions) -> Result<Option<Self>, ReadProblem> {
-        let Some(word) = &options.unit else {
-            return Ok(None);
-        };
+        options.unit.as_deref().map(Self::from_word).transpose()
+    }
+
+    /// The unit by its word, or by the length of one unit.
+    pub(crate) fn from_word(word: &str) -> Result<Self, ReadProblem> {
         let scale = match length_scale(word.trim()) {
             Some(scale) => scale,
             None if word
@@ -91,10 +93,10 @@ impl UnitOption {
             None => super::columns::known_length(word.trim())
                 .map_err(|source| ReadProblem::UnitOption { source })?,
         };
-        Ok(Some(Self {
+        Ok(Self {
             word: word.trim().to_owned(),
             scale,
-        }))
+        })
     }
 
     /// Refuses a unit in the file that differs from the one asked for.

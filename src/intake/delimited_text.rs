@@ -112,11 +112,21 @@ pub(crate) fn choose_delimiter(text: &str) -> Result<Delimiter, Fault> {
     Ok(Delimiter::Comma)
 }
 
-/// Splits a row into its fields; empty fields at the end are dropped.
+/// Splits a row into its fields; empty fields at the end are dropped, a mark between quotes does not split.
 pub(crate) fn split<'a>(content: &'a str, delimiter: Delimiter, fields: &mut Vec<&'a str>) {
     fields.clear();
     let by = |mark: char, fields: &mut Vec<&'a str>| {
-        fields.extend(content.split(mark).map(|f| f.trim().trim_matches('"')));
+        let bare = |field: &'a str| field.trim().trim_matches('"');
+        if content.contains('"') {
+            let mut quoted = false;
+            let ends = |c: char| {
+                quoted ^= c == '"';
+                c == mark && !quoted
+            };
+            fields.extend(content.split(ends).map(bare));
+        } else {
+            fields.extend(content.split(mark).map(bare));
+        }
     };
     match delimiter {
         Delimiter::Comma => by(',', fields),
@@ -251,6 +261,13 @@ mod tests {
             *fault.problem,
             ReadProblem::AmbiguousDecimal { .. }
         ));
+    }
+
+    #[test]
+    fn a_mark_between_quotes_does_not_split() {
+        let mut fields = Vec::new();
+        split("\"1,5\", 2,\"a,b\",", Delimiter::Comma, &mut fields);
+        assert_eq!(fields, ["1,5", "2", "a,b"]);
     }
 
     #[test]

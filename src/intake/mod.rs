@@ -57,6 +57,7 @@ pub use section_reach::{Reach, ReachSection};
 pub use section_write::to_toml;
 pub use step::Step;
 pub use trace::{
-    Change, ChangeKind, CorrectedTrace, GrooveProblem, GrooveSection, LidAlternative, Profile,
-    RawTrace, TableProblem, TraceProblem, Zone,
+    Change, ChangeKind, CorrectedTrace, Decimal, GrooveProblem, GrooveSection, LidAlternative,
+    Profile, RawTrace, TableAxis, TableKind, TableOptions, TableProblem, TraceProblem, Zone,
+    table_kind, trace_from_bytes,
 };

@@ -46,6 +46,7 @@ pub use section_reach::{Reach, ReachSection};
 pub use section_write::to_toml;
 pub use step::Step;
 pub use trace::{
-    Change, ChangeKind, CorrectedTrace, GrooveProblem, GrooveSection, LidAlternative, Profile,
-    RawTrace, TableProblem, TraceProblem, Zone,
+    Change, ChangeKind, CorrectedTrace, CorrectionOptions, GrooveProblem, GrooveSection, Levelling,
+    LidAlternative, LineFit, MAX_BOW, Profile, RawTrace, RepeatPlace, Repeatability, StepHeight,
+    TableProblem, TraceProblem, Zone, correct, step_height,
 };

@@ -57,7 +57,8 @@ pub use section_reach::{Reach, ReachSection};
 pub use section_write::to_toml;
 pub use step::Step;
 pub use trace::{
-    Change, ChangeKind, CorrectedTrace, Decimal, GrooveProblem, GrooveSection, LidAlternative,
-    Profile, RawTrace, TableAxis, TableKind, TableOptions, TableProblem, TraceProblem, Zone,
-    table_kind, trace_from_bytes,
+    Change, ChangeKind, CorrectedTrace, CorrectionOptions, Decimal, GrooveProblem, GrooveSection,
+    Levelling, LidAlternative, LineFit, MAX_BOW, Profile, RawTrace, RepeatPlace, Repeatability,
+    StepHeight, TableAxis, TableKind, TableOptions, TableProblem, TraceProblem, Zone, correct,
+    step_height, table_kind, trace_from_bytes,
 };

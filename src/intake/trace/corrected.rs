@@ -1,6 +1,8 @@
 //! A trace after its corrections, with all that was changed.
 
 use super::profile::{Profile, Zone};
+use super::repeats::Repeatability;
+use super::step_height::StepHeight;
 use crate::intake::step::Step;
 use crate::warning::Warning;
 
@@ -30,8 +32,8 @@ pub struct Change {
 /// A trace after its corrections.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct CorrectedTrace {
-    /// Positions and heights before levelling, m: joined from repeats, turned over and unshrunk where
-    /// asked, without bridges.
+    /// Positions and heights before levelling, m: joined from repeats, turned over and scaled for
+    /// shrinkage where asked, without bridges; same positions as `profile`.
     pub raw: Profile,
     /// Levelled, bridged and, where asked, filtered; the reference zones lie at zero. No NaN inside.
     pub profile: Profile,
@@ -39,10 +41,27 @@ pub struct CorrectedTrace {
     pub reference: Vec<f64>,
     /// Zones the reference line was fitted to.
     pub reference_zones: Vec<Zone>,
-    /// Lands: the level stretches beside and between channels, found or stated.
+    /// Lands: the level stretches beside and between channels, found or stated; empty where none was
+    /// found and none was needed for levelling.
     pub lands: Vec<Zone>,
     /// Root mean square distance of the reference zones from the reference line, m.
     pub reference_rms: f64,
+    /// Largest distance of one reference zone as a whole from the reference line, m.
+    pub reference_worst: f64,
+    /// Polynomial that was taken off, as heights at the ends and, evenly, between: degree + 1 values, m;
+    /// empty where it was not one polynomial.
+    pub polynomial: Vec<f64>,
+    /// Scatter of the lands about their own lines, m, robust: noise and roughness.
+    pub noise_sd: f64,
+    /// Depth of each channel between two neighbouring lands, as far as it has enough samples.
+    pub step_heights: Vec<StepHeight>,
+    /// How well repeats agree, where there are any.
+    pub repeatability: Option<Repeatability>,
+    /// Whether heights were turned over: a tip then touched what is now the inside of the wall.
+    pub inverted: bool,
+    /// Share by which lengths along the trace and heights were made smaller; the tip touched the
+    /// measured size.
+    pub shrinkage: [f64; 2],
     /// Samples that were bridged.
     pub changes: Vec<Change>,
     /// What was done.

@@ -1,0 +1,308 @@
+//! The lands of a trace: the level stretches beside and between its channels.
+//!
+//! Drift is slow and walls are fast. After the typical slope is taken off, the trace is cut into stretches
+//! above and below half height by its swings, which needs no assumption on the shape of a channel. In each
+//! upper stretch the most frequent height and a robust line through the samples near it give the land; it
+//! ends where samples leave that line. What the lands say about drift is taken off and the search repeated.
+
+use super::order_statistics::{half_sample_mode, median, noise_of_neighbours, quantile, thinned};
+use super::profile::{Profile, Zone};
+use super::robust_line::{Line, robust_line, typical_slope};
+use super::swings::{Stretch, stretches, swing_ranges, swing_thresholds};
+use super::trace_problem::{FEWEST_IN_ZONE, TraceProblem};
+
+/// Samples this near to the land, in depths, may belong to it while its line is sought.
+const NEAR_LAND: f64 = 0.15;
+
+/// Share of a land left out beside each wall, where edges are rounded or overshoot.
+const BESIDE_WALL: f64 = 0.1;
+
+/// A land is level if it is at least this wide in lengths that a wall takes from 25 to 75 % of the depth.
+/// Slow waves have crests of 0.4 to 0.5, V-grooves with lands of a sixth of their width 0.67.
+const LEVEL_WIDTH: f64 = 0.6;
+
+/// One land.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Land {
+    /// From where samples join its line to where they leave it, m.
+    pub(super) flat: Zone,
+    /// The same without the parts next to walls, m.
+    pub(super) zone: Zone,
+    /// Its line, m over the reference of the search.
+    line: Line,
+}
+
+/// What stands out of a trace.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Ground {
+    /// Lands from left to right.
+    pub(super) lands: Vec<Land>,
+    /// The channels between them, from land to land, m.
+    pub(super) grooves: Vec<Zone>,
+    /// Typical depth, m.
+    pub(super) depth: f64,
+    /// Typical robust scatter of a land about its own line, m.
+    pub(super) noise: f64,
+    /// Typical width at half height of lands between two channels, m.
+    pub(super) ridge_width: Option<f64>,
+    /// Typical width of channels at half height, m.
+    pub(super) groove_width: f64,
+    /// Width of the narrowest land or channel at half height, m.
+    pub(super) narrowest: f64,
+    /// Whether the trace both starts and ends below.
+    pub(super) ends_low: bool,
+}
+
+impl Ground {
+    /// The lands without the parts next to walls.
+    pub(super) fn zones(&self) -> Vec<Zone> {
+        self.lands.iter().map(|land| land.zone).collect()
+    }
+}
+
+/// Finds the lands of a trace without missing points and without spikes.
+pub(super) fn find_lands(good: &Profile) -> Result<Ground, TraceProblem> {
+    let noise = noise_of_neighbours(&good.z);
+    let slope = typical_slope(&good.x, &good.z);
+    let start = good.x.first().copied().unwrap_or(0.0);
+    let mut level: Vec<f64> = good
+        .x
+        .iter()
+        .zip(&good.z)
+        .map(|(x, z)| z - slope * (x - start))
+        .collect();
+    let mut ground = survey(&good.x, &level, noise)?;
+    for _ in 0..2 {
+        take_off(&good.x, &mut level, &ground.lands);
+        match survey(&good.x, &level, noise) {
+            Ok(better) => ground = better,
+            Err(_) => break,
+        }
+    }
+    Ok(ground)
+}
+
+/// Takes off what the lands show of drift: straight from the middle of each to the middle of the next.
+fn take_off(x: &[f64], z: &mut [f64], lands: &[Land]) {
+    let knots: Vec<(f64, f64)> = lands
+        .iter()
+        .map(|land| {
+            let middle = 0.5 * (land.zone.from + land.zone.to);
+            (middle, land.line.at(middle))
+        })
+        .collect();
+    for (height, reference) in z.iter_mut().zip(piecewise(&knots, x)) {
+        *height -= reference;
+    }
+}
+
+/// Heights of the broken line through knots, its outer pieces prolonged; zero for less than two knots.
+pub(super) fn piecewise(knots: &[(f64, f64)], x: &[f64]) -> Vec<f64> {
+    let mut piece = 0;
+    x.iter()
+        .map(|&x| {
+            while piece + 2 < knots.len() && knots[piece + 1].0 < x {
+                piece += 1;
+            }
+            match knots.get(piece..piece + 2) {
+                Some(&[(x0, z0), (x1, z1)]) => z0 + (z1 - z0) * (x - x0) / (x1 - x0),
+                _ => 0.0,
+            }
+        })
+        .collect()
+}
+
+/// Lands at the first threshold that gives any.
+fn survey(x: &[f64], z: &[f64], noise: f64) -> Result<Ground, TraceProblem> {
+    let mut heights = thinned(z, 20_000);
+    let relief = quantile(&mut heights, 0.99) - quantile(&mut heights, 0.01);
+    let mut first_problem = None;
+    for threshold in swing_thresholds(&swing_ranges(z), noise) {
+        match at_threshold(x, z, threshold) {
+            Ok(ground) => return Ok(ground),
+            Err(problem) => first_problem = first_problem.or(Some(problem)),
+        }
+    }
+    Err(first_problem.unwrap_or(TraceProblem::NoChannel { relief, noise }))
+}
+
+/// A wall: where it crosses half height, and how far it takes from 25 to 75 % of the depth.
+fn wall_run(x: &[f64], z: &[f64], crossing: usize, levels: (f64, f64)) -> f64 {
+    let (low, high) = levels;
+    let lower = low + 0.25 * (high - low);
+    let upper = low + 0.75 * (high - low);
+    let side = |forwards: bool, wanted: &dyn Fn(f64) -> bool| {
+        let hit = if forwards {
+            (crossing..z.len()).find(|&k| wanted(z[k]))
+        } else {
+            (0..crossing).rev().find(|&k| wanted(z[k]))
+        };
+        hit.map(|k| x[k])
+    };
+    let falls = crossing > 0 && z.get(crossing).is_some_and(|&z1| z[crossing - 1] > z1);
+    let ends = [side(!falls, &|z| z >= upper), side(falls, &|z| z <= lower)];
+    match ends {
+        [Some(a), Some(b)] => (a - b).abs(),
+        _ => f64::NAN,
+    }
+}
+
+/// Lands and channels of the stretches at one threshold.
+fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TraceProblem> {
+    let all = stretches(z, threshold);
+    let lows: Vec<Option<f64>> = all
+        .iter()
+        .map(|s| (!s.high).then(|| quantile(&mut thinned(&z[s.from..s.to], 500), 0.1)))
+        .collect();
+    let mut lands = Vec::new();
+    let mut depths = Vec::new();
+    let mut runs = Vec::new();
+    for (k, stretch) in all.iter().enumerate().filter(|(_, s)| s.high) {
+        let before = k
+            .checked_sub(1)
+            .and_then(|k| lows.get(k).copied().flatten());
+        let after = lows.get(k + 1).copied().flatten();
+        let low = match (before, after) {
+            (Some(a), Some(b)) => 0.5 * (a + b),
+            (Some(low), None) | (None, Some(low)) => low,
+            (None, None) => continue,
+        };
+        let Some(land) = land_of(x, z, *stretch, low) else {
+            continue;
+        };
+        for (crossing, low) in [(stretch.from, before), (stretch.to, after)] {
+            if let Some(low) = low {
+                runs.push(wall_run(x, z, crossing, (low, land.line.level)));
+                depths.push(land.line.level - low);
+            }
+        }
+        lands.push(land);
+    }
+    let depth = median(&mut depths);
+    if lands.len() < 2 {
+        let height = if depth.is_finite() { depth } else { threshold };
+        return Err(TraceProblem::NoGroove {
+            ridges: lands.len(),
+            height,
+        });
+    }
+    check_level(x, &lands, runs)?;
+    Ok(described(x, &all, lands, depth))
+}
+
+/// Whether lands are wide against the walls beside them.
+fn check_level(x: &[f64], lands: &[Land], mut runs: Vec<f64>) -> Result<(), TraceProblem> {
+    runs.retain(|run| run.is_finite());
+    let spacing = (x[x.len() - 1] - x[0]) / x.len() as f64;
+    let wall = if runs.is_empty() {
+        spacing
+    } else {
+        median(&mut runs).max(spacing)
+    };
+    let mut widths: Vec<f64> = lands.iter().map(|l| l.flat.to - l.flat.from).collect();
+    let level = median(&mut widths);
+    if level < LEVEL_WIDTH * wall {
+        return Err(TraceProblem::NoLand { level, wall });
+    }
+    Ok(())
+}
+
+/// The rest of what is said about lands.
+fn described(x: &[f64], all: &[Stretch], lands: Vec<Land>, depth: f64) -> Ground {
+    let last = all.len().saturating_sub(1);
+    let widths = |high: bool| -> Vec<f64> {
+        all.iter()
+            .enumerate()
+            .filter(|(k, s)| s.high == high && *k > 0 && *k < last)
+            .map(|(_, s)| x[s.to.min(x.len() - 1)] - x[s.from])
+            .collect()
+    };
+    let (mut ridges, mut gaps) = (widths(true), widths(false));
+    let narrowest = ridges
+        .iter()
+        .chain(&gaps)
+        .copied()
+        .fold(f64::INFINITY, f64::min);
+    let mut noise: Vec<f64> = lands.iter().map(|land| land.line.scatter).collect();
+    let grooves = lands
+        .windows(2)
+        .map(|pair| Zone {
+            from: pair[0].flat.to,
+            to: pair[1].flat.from,
+        })
+        .collect();
+    Ground {
+        grooves,
+        depth,
+        noise: median(&mut noise),
+        ridge_width: (!ridges.is_empty()).then(|| median(&mut ridges)),
+        groove_width: median(&mut gaps),
+        narrowest,
+        ends_low: all.first().is_some_and(|s| !s.high) && all.last().is_some_and(|s| !s.high),
+        lands,
+    }
+}
+
+/// The land of one upper stretch.
+fn land_of(x: &[f64], z: &[f64], stretch: Stretch, low: f64) -> Option<Land> {
+    let (xs, zs) = (&x[stretch.from..stretch.to], &z[stretch.from..stretch.to]);
+    if xs.len() < FEWEST_IN_ZONE {
+        return None;
+    }
+    let mut sorted = thinned(zs, 2000);
+    sorted.sort_by(f64::total_cmp);
+    let mode = half_sample_mode(&sorted);
+    let depth = mode - low;
+    if !(depth > 0.0) {
+        return None;
+    }
+    let mut line = Line {
+        middle: 0.5 * (xs[0] + xs[xs.len() - 1]),
+        level: mode,
+        slope: 0.0,
+        scatter: 0.0,
+    };
+    let stride = (xs.len() / 4000).max(1);
+    for _ in 0..3 {
+        let near = xs
+            .iter()
+            .zip(zs)
+            .step_by(stride)
+            .filter(|(x, z)| (*z - line.at(**x)).abs() <= NEAR_LAND * depth);
+        let (near_x, near_z): (Vec<f64>, Vec<f64>) = near.unzip();
+        match robust_line(&near_x, &near_z, 60) {
+            Some(better) if near_x.len() >= FEWEST_IN_ZONE => line = better,
+            _ => break,
+        }
+    }
+    let tolerance = (4.0 * line.scatter).clamp(0.01 * depth, 0.1 * depth);
+    let on_line: Vec<bool> = xs
+        .iter()
+        .zip(zs)
+        .map(|(x, z)| (z - line.at(*x)).abs() <= tolerance)
+        .collect();
+    let first = joins(on_line.iter().copied())?;
+    let last = xs.len() - 1 - joins(on_line.iter().rev().copied())?;
+    if last < first + FEWEST_IN_ZONE - 1 {
+        return None;
+    }
+    let flat = Zone {
+        from: xs[first],
+        to: xs[last],
+    };
+    let inset = BESIDE_WALL * (flat.to - flat.from);
+    let zone = Zone {
+        from: flat.from + if stretch.from > 0 { inset } else { 0.0 },
+        to: flat.to - if stretch.to < z.len() { inset } else { 0.0 },
+    };
+    Some(Land { flat, zone, line })
+}
+
+/// Where samples join the line: the first that lies on it with at least three of the next four.
+fn joins(on_line: impl Iterator<Item = bool>) -> Option<usize> {
+    let on_line: Vec<bool> = on_line.collect();
+    (0..on_line.len()).find(|&k| {
+        let next = &on_line[k..on_line.len().min(k + 5)];
+        on_line[k] && next.iter().filter(|on| !**on).count() <= next.len() / 5
+    })
+}

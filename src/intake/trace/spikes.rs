@@ -1,0 +1,251 @@
+//! Spikes and grains of dust: samples far from their neighbours that come back within a few samples.
+//!
+//! Each sample is set against the median of its window and the median absolute deviation there (Hampel
+//! 1974, *The influence curve and its role in robust estimation*, J. Am. Stat. Assoc. 69, 383; from memory).
+//! A wall, a rounded edge and a flank are monotone, so the median of a symmetric window is the sample itself;
+//! the bottom of a V-groove or a round one has its own slope as scatter. What is left are excursions of fewer
+//! samples than half a window whose two sides lie on one level.
+//!
+//! Overshoot beside a wall ("ears") is no spike, since one side of its window lies on the other level: it
+//! is left, and the lands are taken without the parts next to walls.
+
+use super::order_statistics::{MAD_TO_SD, median};
+use super::profile::Profile;
+
+/// Half width of the narrow window, samples: spikes of up to three samples.
+pub(super) const NARROW: usize = 3;
+
+/// Largest half width of a window, samples.
+pub(super) const WIDEST: usize = 50;
+
+/// Distance from the median, in robust standard deviations, from which a sample is a spike.
+const SPIKE_SCATTERS: f64 = 6.0;
+
+/// Samples over which the noise is taken together.
+const NOISE_BLOCK: usize = 1000;
+
+/// What counts as a spike.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct SpikeRule {
+    /// Half width of the window, samples.
+    pub(super) half_window: usize,
+    /// Smallest height, m.
+    pub(super) smallest: f64,
+    /// Whether that height was stated, so that only the scatter of the window itself counts besides.
+    pub(super) is_stated: bool,
+}
+
+/// Spikes of a profile without missing points, as ranges `first..last` of samples.
+pub(super) fn find_spikes(good: &Profile, rule: &SpikeRule) -> Vec<(usize, usize)> {
+    let z = &good.z;
+    let deviations = from_running_median(z, rule.half_window);
+    let noise = block_noise(&deviations);
+    let smallest = rule.smallest + 3.0 * quantum(z);
+    let mut found: Vec<(usize, usize)> = Vec::new();
+    let mut at = 0;
+    while at < z.len() {
+        let regional = noise[at / NOISE_BLOCK];
+        if !is_spike(z, &deviations, at, regional, smallest, rule) {
+            at += 1;
+            continue;
+        }
+        let sign = deviations[at].signum();
+        let mut last = at + 1;
+        while last < z.len() && sign * deviations[last] > SPIKE_SCATTERS * regional + smallest {
+            last += 1;
+        }
+        let peak = deviations[at..last]
+            .iter()
+            .fold(0.0_f64, |p, d| p.max(d.abs()));
+        let foot = (2.0 * regional).max(0.1 * peak);
+        let mut first = at;
+        while first > 0 && sign * deviations[first - 1] > foot {
+            first -= 1;
+        }
+        while last < z.len() && sign * deviations[last] > foot {
+            last += 1;
+        }
+        // A spike comes back within half a window, and within the trace.
+        if last - first <= rule.half_window + 2 && first > 0 && last < z.len() {
+            found.push((first, last));
+        }
+        at = last;
+    }
+    found
+}
+
+/// Whether one sample stands out of its window and the window's sides are on one level.
+fn is_spike(
+    z: &[f64],
+    deviations: &[f64],
+    at: usize,
+    regional: f64,
+    smallest: f64,
+    rule: &SpikeRule,
+) -> bool {
+    let size = deviations[at].abs();
+    let half = rule.half_window.min(at).min(z.len() - 1 - at);
+    let (weight, regional) = if rule.is_stated {
+        (0.5 * SPIKE_SCATTERS, 0.0)
+    } else {
+        (SPIKE_SCATTERS, regional)
+    };
+    if half < NARROW || !(size > smallest && size > weight * regional) {
+        return false;
+    }
+    let window = &z[at - half..=at + half];
+    let centre = z[at] - deviations[at];
+    let mut distances: Vec<f64> = window.iter().map(|z| (z - centre).abs()).collect();
+    if !(size > weight * MAD_TO_SD * median(&mut distances)) {
+        return false;
+    }
+    let side = (half / 3).max(1);
+    let left = median(&mut window[..side].to_vec());
+    let right = median(&mut window[window.len() - side..].to_vec());
+    (left - centre).abs() <= 0.5 * size && (right - centre).abs() <= 0.5 * size
+}
+
+/// Distance of each sample from the median of the window about it; windows shrink towards the ends.
+fn from_running_median(z: &[f64], half_window: usize) -> Vec<f64> {
+    let mut sorted: Vec<f64> = Vec::with_capacity(2 * half_window + 1);
+    let (mut first, mut last) = (0, 0);
+    (0..z.len())
+        .map(|at| {
+            let half = half_window.min(at).min(z.len() - 1 - at);
+            while last <= at + half {
+                let place = sorted.partition_point(|s| *s < z[last]);
+                sorted.insert(place, z[last]);
+                last += 1;
+            }
+            while first < at - half {
+                let place = sorted.partition_point(|s| *s < z[first]);
+                sorted.remove(place);
+                first += 1;
+            }
+            z[at] - sorted[half]
+        })
+        .collect()
+}
+
+/// Robust scatter of the distances, block by block, each block with its neighbours: the largest of three.
+fn block_noise(deviations: &[f64]) -> Vec<f64> {
+    let single: Vec<f64> = deviations
+        .chunks(NOISE_BLOCK)
+        .map(|block| MAD_TO_SD * median(&mut block.iter().map(|d| d.abs()).collect::<Vec<_>>()))
+        .collect();
+    (0..single.len())
+        .map(|k| {
+            let near = &single[k.saturating_sub(1)..single.len().min(k + 2)];
+            near.iter().copied().fold(0.0, f64::max)
+        })
+        .collect()
+}
+
+/// Smallest step between heights: the resolution of the instrument, or rounding.
+fn quantum(z: &[f64]) -> f64 {
+    let steps = z.windows(2).map(|w| (w[1] - w[0]).abs());
+    let smallest = steps.filter(|s| *s > 0.0).fold(f64::INFINITY, f64::min);
+    if smallest.is_finite() { smallest } else { 0.0 }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::test_traces::{Grooves, Noise, Shape};
+    use super::*;
+
+    const RULE: SpikeRule = SpikeRule {
+        half_window: NARROW,
+        smallest: 0.15e-6,
+        is_stated: false,
+    };
+
+    #[test]
+    fn no_sample_of_a_clean_groove_is_a_spike() {
+        let shapes = [Shape::Rectangle, Shape::Koh, Shape::Isotropic, Shape::Vee];
+        for shape in shapes {
+            for spacing in [0.1e-6, 0.5e-6, 2e-6, 7e-6, 12e-6] {
+                for half_window in [3, 5, 9] {
+                    let grooves = Grooves {
+                        spacing,
+                        count: 3,
+                        ..Grooves::one(shape)
+                    };
+                    // A window must not be wider than a groove.
+                    if (2 * half_window + 1) as f64 * spacing > grooves.width {
+                        continue;
+                    }
+                    let mut profile = grooves.profile();
+                    for (x, z) in profile.x.iter().zip(&mut profile.z) {
+                        *z += 0.08 * x;
+                    }
+                    let rule = SpikeRule {
+                        half_window,
+                        ..RULE
+                    };
+                    let found = find_spikes(&profile, &rule);
+                    assert!(
+                        found.is_empty(),
+                        "{shape:?} {spacing} {half_window}: {found:?}"
+                    );
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn spikes_up_to_three_samples_are_found_where_they_are() {
+        let mut noise = Noise::new(5);
+        let mut profile = Grooves::one(Shape::Rectangle).profile();
+        for z in &mut profile.z {
+            *z += 0.02e-6 * noise.normal();
+        }
+        for (at, width, height) in [
+            (100, 1, 3e-6),
+            (400, 3, 2e-6),
+            (430, 2, -2e-6),
+            (700, 3, 40e-6),
+        ] {
+            for z in &mut profile.z[at..at + width] {
+                *z += height;
+            }
+        }
+        let found = find_spikes(&profile, &RULE);
+        assert_eq!(found, [(100, 101), (400, 403), (430, 432), (700, 703)]);
+    }
+
+    #[test]
+    fn noise_alone_and_steps_of_resolution_are_no_spikes() {
+        let mut noise = Noise::new(7);
+        let x: Vec<f64> = (0..100_000).map(|k| 1e-7 * f64::from(k)).collect();
+        let z = x.iter().map(|_| 0.2e-6 * noise.normal());
+        let noisy = Profile {
+            z: z.collect(),
+            x: x.clone(),
+        };
+        assert!(find_spikes(&noisy, &RULE).is_empty());
+        let z = (0..x.len()).map(|k| if k % 97 == 0 { 0.1e-6 } else { 0.0 });
+        let coarse = Profile { z: z.collect(), x };
+        let rule = SpikeRule {
+            smallest: 1e-9,
+            ..RULE
+        };
+        assert!(find_spikes(&coarse, &rule).is_empty());
+        assert!(find_spikes(&Profile::default(), &RULE).is_empty());
+    }
+
+    #[test]
+    fn an_ear_beside_a_wall_is_left() {
+        let mut profile = Grooves::one(Shape::Rectangle).profile();
+        // The wall lies between samples 299 and 300.
+        for (k, z) in profile.z[290..300].iter_mut().enumerate() {
+            *z += 0.05e-6 * k as f64;
+        }
+        for half_window in [3, 10, 25] {
+            let rule = SpikeRule {
+                half_window,
+                ..RULE
+            };
+            assert!(find_spikes(&profile, &rule).is_empty());
+        }
+    }
+}

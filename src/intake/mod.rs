@@ -15,7 +15,7 @@ mod delimited_text;
 mod height_map;
 mod limits;
 mod loop_nesting;
-mod micrograph;
+pub mod micrograph;
 mod outline_svg;
 mod outline_text;
 mod plausibility;
@@ -38,7 +38,9 @@ mod wall_tables;
 
 pub use height_map::{HeightMap, MapProblem};
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
-pub use micrograph::MicrographProblem;
+pub use micrograph::{
+    MicrographOptions, MicrographProblem, MicrographSection, is_picture, read_micrograph,
+};
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
 pub use section::{Extras, ReadOptions, Section, read_section, section_from_bytes};

@@ -18,7 +18,7 @@ mod instrument;
 mod instrument_sections;
 mod limits;
 mod loop_nesting;
-mod micrograph;
+pub mod micrograph;
 mod outline_svg;
 mod outline_text;
 mod plausibility;
@@ -49,7 +49,9 @@ pub use instrument::{
     instrument_from_bytes, read_instrument,
 };
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
-pub use micrograph::MicrographProblem;
+pub use micrograph::{
+    MicrographOptions, MicrographProblem, MicrographSection, is_picture, read_micrograph,
+};
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
 pub use section::{Extras, ReadOptions, Section, read_section, section_from_bytes};

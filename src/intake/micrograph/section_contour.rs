@@ -1,0 +1,161 @@
+//! The contour of the chosen region, at the level half-way between the greys beside its wall.
+
+use super::contour::{length, signed_area};
+use super::grey::Grey;
+use super::grey_edge::{Edge, EdgeProblem, GREY_EDGE, Section, edge, loops_above, net_area};
+use super::micrograph_problem::MicrographProblem;
+use super::micrograph_section::PixelLoop;
+use super::options::{MicrographOptions, Threshold};
+use super::region_choice::Chosen;
+use super::regions::{Level, Regions};
+use super::wall_levels::{FIRST_DISTANCE, LAST_DISTANCE, Sides, measure, share_of_jumps};
+use crate::intake::limits::MAX_VERTICES;
+
+/// Passes in which level and width of the edge settle.
+const PASSES: usize = 3;
+
+/// A region with its contour and what is known of its edge.
+#[derive(Debug)]
+pub(super) struct Traced {
+    /// The contour's level.
+    pub(super) level: Level,
+    pub(super) sides: Sides,
+    /// Loops that stay.
+    pub(super) loops: Vec<PixelLoop>,
+    /// Number and area of the islands that were filled, pixels.
+    pub(super) filled: (usize, f64),
+    /// Area inside, pixels.
+    pub(super) area: f64,
+    pub(super) edge: Result<Edge, EdgeProblem>,
+    /// Share of edge pixels without a grey in between.
+    pub(super) jumps: f64,
+}
+
+impl Traced {
+    /// The edge if it is wide enough to matter.
+    pub(super) fn grey_edge(&self) -> Option<&Edge> {
+        self.edge
+            .as_ref()
+            .ok()
+            .filter(|edge| edge.standard_width > GREY_EDGE)
+    }
+}
+
+/// What one pass at a level gives.
+struct Pass {
+    mask: Vec<u8>,
+    loops: Vec<PixelLoop>,
+    filled: Vec<PixelLoop>,
+    perimeter: f64,
+}
+
+/// Traces the chosen region.
+///
+/// - `least_area`: smaller islands are filled, pixels
+pub(super) fn traced(
+    grey: &Grey,
+    chosen: &Chosen,
+    options: &MicrographOptions,
+    least_area: f64,
+) -> Result<Traced, MicrographProblem> {
+    let inner_pixel = chosen.regions.inner_pixel(chosen.label).unwrap_or((0, 0));
+    let mut level = chosen.level;
+    let mut pass = pass(grey, &chosen.regions, chosen.label, level, least_area)?;
+    let fallback = |level: Level| {
+        let [low, high] = chosen.classes.means;
+        let (fluid, wall) = if level.is_fluid(low as u16) {
+            (low, high)
+        } else {
+            (high, low)
+        };
+        Sides {
+            fluid,
+            wall,
+            noise: 0.0,
+        }
+    };
+    let mut sides = fallback(level);
+    let mut found = Err(EdgeProblem::LevelOutside);
+    let mut distance = FIRST_DISTANCE;
+    for _ in 0..PASSES {
+        if let Some(measured) = measure(grey, &pass.mask, level, distance) {
+            sides = measured;
+        }
+        if let Some([fluid, wall]) = chosen.stated {
+            (sides.fluid, sides.wall) = (fluid, wall);
+        }
+        if options.threshold == Threshold::Otsu {
+            let half = Level {
+                counts: sides.at(0.5),
+                ..level
+            };
+            if let Some(next) = pass_at(grey, half, inner_pixel, least_area)? {
+                (level, pass) = (half, next);
+            }
+        }
+        let section = Section {
+            grey,
+            mask: &pass.mask,
+            level,
+            inner_pixel,
+            perimeter: pass.perimeter,
+            least_area,
+        };
+        found = edge(&section, &sides, options.reach_levels);
+        let width = found.as_ref().map_or(0.0, |edge| edge.standard_width);
+        let wanted = (2.0 * width).ceil().clamp(0.0, f64::from(LAST_DISTANCE)) as u8;
+        if wanted <= distance {
+            break;
+        }
+        distance = wanted;
+    }
+    Ok(Traced {
+        level,
+        jumps: share_of_jumps(grey, &pass.mask, &sides),
+        sides,
+        filled: (
+            pass.filled.len(),
+            pass.filled.iter().map(|l| signed_area(l).abs()).sum(),
+        ),
+        area: net_area(&pass.loops),
+        loops: pass.loops,
+        edge: found,
+    })
+}
+
+/// The contour of a region at a level.
+fn pass(
+    grey: &Grey,
+    regions: &Regions,
+    label: u32,
+    level: Level,
+    least_area: f64,
+) -> Result<Pass, MicrographProblem> {
+    let mask = regions.mask(label);
+    let (loops, filled) = loops_above(grey, mask.clone(), level.counts, least_area);
+    let vertices: usize = loops.iter().map(Vec::len).sum();
+    if vertices > MAX_VERTICES {
+        return Err(MicrographProblem::TooNoisy);
+    }
+    Ok(Pass {
+        mask,
+        perimeter: loops.iter().map(|l| length(l)).sum(),
+        loops,
+        filled,
+    })
+}
+
+/// The contour at a new level of the region with a pixel; `None` where it is no closed region any more.
+fn pass_at(
+    grey: &Grey,
+    level: Level,
+    (x, y): (usize, usize),
+    least_area: f64,
+) -> Result<Option<Pass>, MicrographProblem> {
+    let regions = Regions::find(grey, level).map_err(|_| MicrographProblem::TooNoisy)?;
+    let label = regions.label_at(x, y);
+    let closed = label.filter(|l| regions.blob(*l).is_some_and(|blob| !blob.touches_border));
+    closed
+        .map(|label| pass(grey, &regions, label, level, least_area))
+        .transpose()
+}

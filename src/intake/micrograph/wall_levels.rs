@@ -1,0 +1,214 @@
+//! Grey levels of fluid and wall beside the section's edge, away from the edge's own greys.
+//!
+//! Pixels are sorted by their city-block distance from the edge; the medians of a band on either side are the two
+//! levels. Half-way between them lies the wall: an edge pixel that is half fluid and half wall has that
+//! grey, and a symmetric blur leaves the place of that grey on a straight edge unchanged.
+
+use super::grey::Grey;
+use super::levels::Histogram;
+use super::regions::Level;
+
+/// Distance of the bands from the edge without knowledge of its width, pixels.
+pub(super) const FIRST_DISTANCE: u8 = 3;
+/// Largest distance, pixels.
+pub(super) const LAST_DISTANCE: u8 = 80;
+/// Width of the bands, pixels.
+const BAND: u8 = 9;
+
+/// Levels beside the edge, in counts.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Sides {
+    pub(super) fluid: f64,
+    pub(super) wall: f64,
+    /// Scatter of neighbouring pixels on either side: standard deviation of their differences.
+    pub(super) noise: f64,
+}
+
+impl Sides {
+    /// The level at a share of the way from wall (0) to fluid (1).
+    pub(super) fn at(&self, share: f64) -> f64 {
+        self.wall + share * (self.fluid - self.wall)
+    }
+
+    /// Fluid minus wall.
+    pub(super) fn contrast(&self) -> f64 {
+        (self.fluid - self.wall).abs()
+    }
+}
+
+/// City-block distance of each pixel from the nearest one on the other side, at most 255.
+fn distances(mask: &[u8], width: usize) -> Vec<u8> {
+    let n = mask.len();
+    let mut distance = vec![u8::MAX; n];
+    let mut relax = |i: usize, j: usize| {
+        if let (Some(a), Some(b)) = (mask.get(i), mask.get(j)) {
+            let step = if a == b {
+                distance
+                    .get(j)
+                    .copied()
+                    .unwrap_or(u8::MAX)
+                    .saturating_add(1)
+            } else {
+                1
+            };
+            if let Some(own) = distance.get_mut(i) {
+                *own = (*own).min(step);
+            }
+        }
+    };
+    for i in 0..n {
+        if !i.is_multiple_of(width) {
+            relax(i, i - 1);
+        }
+        if i >= width {
+            relax(i, i - width);
+        }
+    }
+    for i in (0..n).rev() {
+        if !(i + 1).is_multiple_of(width) {
+            relax(i, i + 1);
+        }
+        if i + width < n {
+            relax(i, i + width);
+        }
+    }
+    distance
+}
+
+/// Measures the levels in bands at a distance from the edge; `None` if a side has no pixels.
+pub(super) fn measure(grey: &Grey, mask: &[u8], level: Level, distance: u8) -> Option<Sides> {
+    let width = grey.width.max(1);
+    let distances = distances(mask, width);
+    let deepest = distances
+        .iter()
+        .zip(mask)
+        .filter(|(_, m)| **m == 1)
+        .map(|(d, _)| *d)
+        .max()?;
+    let most = |wanted: u8, deepest: u8| wanted.min(deepest.div_ceil(2)).max(1);
+    let inner = most(distance, deepest);
+    let pixels = || grey.values.iter().zip(mask).zip(&distances);
+    let fluid = Histogram::of(
+        pixels()
+            .filter(|((_, m), d)| **m == 1 && **d >= inner)
+            .map(|((v, _), _)| *v),
+    );
+    // Where walls are thin the band moves towards the edge until it holds as many pixels as a ring of it.
+    let wall = (1..=distance).rev().find_map(|from| {
+        let band = from..=from.saturating_add(BAND);
+        let histogram = Histogram::of(
+            pixels()
+                .filter(|((v, m), d)| **m == 0 && band.contains(*d) && !level.is_fluid(**v))
+                .map(|((v, _), _)| *v),
+        );
+        (histogram.total() >= 64 || from == 1 && histogram.total() > 0).then_some(histogram)
+    })?;
+    let noise = noise(grey, mask, &distances, inner);
+    Some(Sides {
+        fluid: fluid.quantile(0.5)?,
+        wall: wall.quantile(0.5)?,
+        noise,
+    })
+}
+
+/// Scatter of the differences of neighbours along rows, away from the edge: 1.4826 times their median size, the
+/// standard deviation for a Gaussian; the larger of both sides.
+fn noise(grey: &Grey, mask: &[u8], distances: &[u8], from: u8) -> f64 {
+    let side = |inside: u8| {
+        let rows = mask
+            .chunks(grey.width.max(1))
+            .zip(distances.chunks(grey.width.max(1)));
+        let differences = rows.enumerate().flat_map(|(y, (mask, distances))| {
+            let row = grey.row(y).windows(2).zip(mask.windows(2)).zip(distances);
+            row.filter_map(move |((v, m), d)| match (v, m) {
+                ([a, b], [m, n])
+                    if *m == inside && *n == inside && *d > from && *d < LAST_DISTANCE =>
+                {
+                    Some(a.abs_diff(*b))
+                }
+                _ => None,
+            })
+        });
+        let histogram = Histogram::of(differences);
+        1.4826 * histogram.quantile(0.5).unwrap_or(0.0)
+    };
+    side(0).max(side(1))
+}
+
+/// Share of the edge's pixel pairs that jump from one level to the other without a grey in between.
+pub(super) fn share_of_jumps(grey: &Grey, mask: &[u8], sides: &Sides) -> f64 {
+    /// A grey is a level itself within this share of the contrast.
+    const LEVEL_SHARE: f64 = 0.1;
+    let width = grey.width.max(1);
+    let is_near =
+        |v: u16, level: f64| (f64::from(v) - level).abs() <= LEVEL_SHARE * sides.contrast();
+    let (mut pairs, mut jumps) = (0_u64, 0_u64);
+    let mut pair = |i: usize, j: usize| {
+        if let (Some(1), Some(0)) = (mask.get(i), mask.get(j)) {
+            let value = |k: usize| grey.values.get(k).copied().unwrap_or(0);
+            pairs += 1;
+            jumps += u64::from(is_near(value(i), sides.fluid) && is_near(value(j), sides.wall));
+        }
+    };
+    for i in 0..mask.len() {
+        if mask.get(i) == Some(&1) {
+            pair(i, i + 1);
+            pair(i, i.wrapping_sub(1));
+            pair(i, i + width);
+            pair(i, i.wrapping_sub(width));
+        }
+    }
+    jumps as f64 / pairs.max(1) as f64
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::options::Tone;
+    use super::*;
+
+    #[test]
+    fn distances_are_those_of_a_rook() {
+        let width = 7;
+        let mut mask = vec![0_u8; 49];
+        mask[24] = 1;
+        let found = distances(&mask, width);
+        for (i, &d) in found.iter().enumerate() {
+            let (x, y) = ((i % 7) as i32 - 3, (i / 7) as i32 - 3);
+            assert_eq!(i32::from(d), (x.abs() + y.abs()).max(1));
+        }
+    }
+
+    #[test]
+    fn levels_are_those_away_from_the_edge() {
+        let (width, height) = (60, 60);
+        let mut values = Vec::new();
+        let mut mask = Vec::new();
+        for i in 0..width * height {
+            let x = i % width;
+            // A dark stripe with blurred edges at columns 10 and 50.
+            let beyond = (x as f64 - 29.5).abs() - 20.0;
+            values.push((1000.0 + 9000.0 / (1.0 + (-beyond / 0.7).exp())) as u16);
+            mask.push(u8::from(beyond < 0.0));
+        }
+        let grey = Grey {
+            width,
+            height,
+            values,
+            offset: 0.0,
+            unit: 1.0,
+            full_scale: [0.0, 65535.0],
+            step: 1.0,
+        };
+        let level = Level {
+            tone: Tone::Dark,
+            counts: 5500.0,
+        };
+        let sides = measure(&grey, &mask, level, 6).unwrap();
+        assert!(
+            (sides.fluid - 1000.0).abs() < 5.0 && (sides.wall - 10_000.0).abs() < 15.0,
+            "{sides:?}"
+        );
+        assert!((sides.at(0.5) - 5500.0).abs() < 10.0);
+        assert!(share_of_jumps(&grey, &mask, &sides) < 0.1);
+    }
+}

@@ -49,3 +49,7 @@ pub use trace::{
     Change, ChangeKind, CorrectedTrace, GrooveProblem, GrooveSection, LidAlternative, Profile,
     RawTrace, TableProblem, TraceProblem, Zone,
 };
+pub use trace::{
+    IsotropicFit, KOH_ANGLE, KohFit, LANDS_DIFFER, LidChoice, SLIVER, SectionOptions, THINNING,
+    Tip, TipFlank, TrenchNumbers, WallNumbers, sections,
+};

@@ -4,16 +4,33 @@
 //! levels it ([`CorrectedTrace`]); then grooves are found, the tip is taken into account, a lid is put on,
 //! and each groove becomes a closed section ([`GrooveSection`]). Every step is recorded.
 
+mod closing;
 mod corrected;
+mod flanks;
 mod groove_problem;
 mod groove_section;
+mod grooves;
+mod half;
+mod lid;
 mod profile;
+mod section_notes;
+mod section_options;
+mod sections;
+mod shape_fits;
 mod table_problem;
+mod thinning;
+mod tip;
 mod trace_problem;
+mod trench_numbers;
+mod wall_curves;
 
 pub use corrected::{Change, ChangeKind, CorrectedTrace};
 pub use groove_problem::GrooveProblem;
-pub use groove_section::{GrooveSection, LidAlternative};
+pub use groove_section::{GrooveSection, LidAlternative, TipFlank};
 pub use profile::{Profile, RawTrace, Zone};
+pub use section_options::{LidChoice, SectionOptions, THINNING, Tip};
+pub use sections::{LANDS_DIFFER, SLIVER, sections};
+pub use shape_fits::{IsotropicFit, KOH_ANGLE, KohFit};
 pub use table_problem::TableProblem;
 pub use trace_problem::TraceProblem;
+pub use trench_numbers::{TrenchNumbers, WallNumbers};

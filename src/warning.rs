@@ -61,6 +61,8 @@ pub enum Code {
     LandsDiffer,
     /// Flank samples show the shape of the tip, not of the wall.
     FlankIsTip,
+    /// A groove has no section: it runs off the trace, or has too few samples.
+    GrooveLeftOut,
     /// Repeated traces differ.
     RepeatScatter,
     /// A choice was made that the file leaves open.
@@ -98,6 +100,7 @@ impl Code {
             Self::ReferenceResidual => "reference_residual",
             Self::LandsDiffer => "lands_differ",
             Self::FlankIsTip => "flank_is_tip",
+            Self::GrooveLeftOut => "groove_left_out",
             Self::RepeatScatter => "repeat_scatter",
             Self::ChoiceMade => "choice_made",
             Self::ObliqueCut => "oblique_cut",

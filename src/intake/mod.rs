@@ -64,3 +64,7 @@ pub use trace::{
     StepHeight, TableAxis, TableKind, TableOptions, TableProblem, TraceProblem, Zone, correct,
     step_height, table_kind, trace_from_bytes,
 };
+pub use trace::{
+    IsotropicFit, KOH_ANGLE, KohFit, LANDS_DIFFER, LidChoice, SLIVER, SectionOptions, THINNING,
+    Tip, TipFlank, TrenchNumbers, WallNumbers, sections,
+};

@@ -1,6 +1,7 @@
 //! A channel of a trace as a closed section.
 
 use super::profile::{Profile, Zone};
+use super::trench_numbers::TrenchNumbers;
 use crate::geometry::Outline;
 use crate::intake::section_reach::Reach;
 use crate::intake::step::Step;
@@ -15,6 +16,17 @@ pub struct LidAlternative {
     pub outline: Option<Outline>,
 }
 
+/// A flank that shows the tip, or may show it.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct TipFlank {
+    /// From its first to its last touched sample, m.
+    pub zone: Zone,
+    /// Its angle against the level, rad.
+    pub angle: f64,
+    /// Whether the floor between its ends was touched nowhere.
+    pub is_bottomless: bool,
+}
+
 /// A channel of a trace.
 #[derive(Debug, Clone, PartialEq)]
 pub struct GrooveSection {
@@ -22,14 +34,23 @@ pub struct GrooveSection {
     pub number: usize,
     /// From edge to edge on the trace.
     pub zone: Zone,
-    /// The closed section, m, `y` upwards.
+    /// The closed section, m, `y` upwards; positions are those of the trace.
     pub outline: Outline,
-    /// The smallest and the largest section it could be.
+    /// The smallest and the largest section it could be; each side lies in the next exactly. `None` where
+    /// every flank was touched, or where a floor was not touched, so that there is no largest one.
     pub reach: Option<Reach>,
     /// The lid: its lower face over the section, from left to right.
     pub lid: Profile,
-    /// The other lids that would do.
+    /// The other lids that would do, where they make a difference.
     pub lid_alternatives: Vec<LidAlternative>,
+    /// The surface over the groove and the lands its levels come from: as read, or with the tip taken back.
+    pub surface: Profile,
+    /// Whether each sample of `surface` was touched for sure, as far as tip and flanks are known.
+    pub is_touched: Vec<bool>,
+    /// Flanks that show the tip.
+    pub flanks: Vec<TipFlank>,
+    /// Widths, depths and angles of the section's walls.
+    pub numbers: TrenchNumbers,
     /// What was done.
     pub steps: Vec<Step>,
     /// What a reader of results must know.

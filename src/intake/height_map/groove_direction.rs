@@ -4,13 +4,12 @@
 //! Proc. 1st Int. Conf. Computer Vision (1987) 433-438, from memory): its weaker axis runs along the groove,
 //! and uncorrelated noise adds to both axes alike. A scan of all directions on a coarse map makes sure that
 //! the start is not a lesser optimum. The direction that leaves the least variance unexplained by one
-//! repeated profile is then found on finer and finer maps, and last the places of the profile in stripes
-//! along the groove are put on a straight line: its slope corrects the direction, the scatter around it
-//! gives the uncertainty, and its curvature tells a curved groove.
+//! repeated profile is then found on finer and finer maps, and last corrected by least squares on the slopes
+//! of the profile, which also gives the uncertainty. The two halves of the map tell a curved groove.
 
 use std::f64::consts::{FRAC_PI_2, PI};
 
-use super::groove_profile::{FittedProfile, StripeShift, fit_profile};
+use super::groove_profile::{FittedProfile, fit_profile};
 use super::map_blocks::{HeightPoint, MapBlocks};
 
 /// Blocks each way of the scan, of the first search, and of the last one.
@@ -21,9 +20,7 @@ const SCAN_STEP: f64 = PI / 180.0;
 /// Distance of knots against that of blocks. Two blocks a piece keep the fit from favouring directions
 /// along the rows of the map.
 const KNOT_BLOCKS: f64 = 2.0;
-/// Stripes along the groove.
-const STRIPES: usize = 16;
-/// Corrections by the stripes; they settle within three.
+/// Corrections by the slopes of the profile; they settle within three.
 const CORRECTIONS: usize = 4;
 
 /// The direction of a groove.
@@ -66,25 +63,45 @@ pub(super) fn find_direction(blocks: &MapBlocks) -> GrooveDirection {
     let angle = search.refine(start, 0.5 * SCAN_STEP, 0.01 * SCAN_STEP);
     let along = 1.0 - search.unexplained(angle);
     let across = 1.0 - search.unexplained(angle + FRAC_PI_2);
+    let (turn, turn_uncertainty) = turn(&search, angle);
     let search = Search::new(blocks);
-    let mut angle = search.refine(angle, 0.1 * SCAN_STEP, 0.005 * SCAN_STEP);
-    let mut line = StripeLine::default();
-    for _ in 0..CORRECTIONS {
-        let profile = search.profile(angle);
-        line = StripeLine::through(&profile.shifts(&search.points, STRIPES));
-        // A correction beyond the search's own range would mean that the stripes show no groove.
-        angle += line.slope.clamp(-SCAN_STEP, SCAN_STEP);
-    }
+    let angle = search.refine(angle, 0.1 * SCAN_STEP, 0.005 * SCAN_STEP);
+    let (angle, scatter) = search.corrected(angle);
     GrooveDirection {
         angle: normalised(angle),
-        uncertainty: line.slope_uncertainty,
+        // The two halves differ by some four times the uncertainty of the whole where only noise parts
+        // them: each has half the length and half the points.
+        uncertainty: scatter.max(0.125 * turn.abs()),
         tensor_angle: normalised(tensor_angle),
         coherence,
         along,
         across,
-        turn: line.turn,
-        turn_uncertainty: line.turn_uncertainty,
+        turn,
+        turn_uncertainty,
     }
+}
+
+/// Change of direction from end to end: twice that between the two halves of the map.
+fn turn(search: &Search, angle: f64) -> (f64, f64) {
+    let (sine, cosine) = angle.sin_cos();
+    let place = |p: &HeightPoint| cosine * p[0] + sine * p[1];
+    let mut points = search.points.clone();
+    let middle = points.len() / 2;
+    points.select_nth_unstable_by(middle, |a, b| place(a).total_cmp(&place(b)));
+    let later = points.split_off(middle);
+    let halves = [points, later].map(|points| {
+        let half = Search {
+            points,
+            knot: search.knot,
+        };
+        let angle = half.refine(angle, 5.0 * SCAN_STEP, 0.02 * SCAN_STEP);
+        half.corrected(angle)
+    });
+    let [(first, first_scatter), (second, second_scatter)] = halves;
+    (
+        2.0 * normalised(second - first),
+        2.0 * first_scatter.hypot(second_scatter),
+    )
 }
 
 /// An angle of a line between -pi/2 (not reached) and pi/2.
@@ -144,6 +161,20 @@ impl Search {
         self.profile(angle).unexplained
     }
 
+    /// A direction corrected by the slopes of the profile, and its standard uncertainty.
+    fn corrected(&self, start: f64) -> (f64, f64) {
+        let (mut angle, mut scatter) = (start, FRAC_PI_2);
+        for _ in 0..CORRECTIONS {
+            let Some((turn, uncertainty)) = self.profile(angle).turn(&self.points) else {
+                return (start, FRAC_PI_2);
+            };
+            // A correction beyond a step of the scan means that there is no groove.
+            angle += turn.clamp(-SCAN_STEP, SCAN_STEP);
+            scatter = uncertainty;
+        }
+        (angle, scatter)
+    }
+
     /// Golden section search around a start.
     fn refine(&self, start: f64, range: f64, tolerance: f64) -> f64 {
         let golden = 0.5 * (5.0_f64.sqrt() - 1.0);
@@ -162,57 +193,5 @@ impl Search {
             }
         }
         0.5 * (low + high)
-    }
-}
-
-/// The line, and the parabola, through the places of the profile in stripes.
-#[derive(Debug, Clone, Copy, Default)]
-struct StripeLine {
-    slope: f64,
-    slope_uncertainty: f64,
-    turn: f64,
-    turn_uncertainty: f64,
-}
-
-impl StripeLine {
-    /// Weighted least squares; the uncertainties are from the scatter around the parabola.
-    fn through(shifts: &[StripeShift]) -> Self {
-        let weight: f64 = shifts.iter().map(|s| s.weight).sum();
-        let mean = |of: &dyn Fn(&StripeShift) -> f64| {
-            shifts.iter().map(|s| s.weight * of(s)).sum::<f64>() / weight
-        };
-        let centre = mean(&|s| s.along);
-        let second = mean(&|s| (s.along - centre).powi(2));
-        let third = mean(&|s| (s.along - centre).powi(3));
-        // Polynomials of degree one and two that are orthogonal under the weights.
-        let linear = |s: &StripeShift| s.along - centre;
-        let square = |s: &StripeShift| {
-            let t = s.along - centre;
-            t * t - third / second * t - second
-        };
-        let square_norm = mean(&|s| square(s).powi(2));
-        if shifts.len() < 5 || second <= 0.0 || square_norm <= 0.0 || !weight.is_finite() {
-            // Too few stripes for a scatter: nothing is known of the direction from them.
-            return Self {
-                slope_uncertainty: FRAC_PI_2,
-                turn_uncertainty: FRAC_PI_2,
-                ..Self::default()
-            };
-        }
-        let offset = mean(&|s| s.shift);
-        let slope = mean(&|s| s.shift * linear(s)) / second;
-        let bend = mean(&|s| s.shift * square(s)) / square_norm;
-        let residual = |s: &StripeShift| s.shift - offset - slope * linear(s) - bend * square(s);
-        let scatter = mean(&|s| residual(s).powi(2));
-        let count = shifts.len() as f64;
-        let variance = scatter / (count - 3.0);
-        let ends = [shifts.first(), shifts.last()].map(|s| s.map_or(0.0, |s| s.along));
-        let length = ends[1] - ends[0];
-        Self {
-            slope: slope.atan(),
-            slope_uncertainty: (variance / second).sqrt(),
-            turn: (2.0 * bend * length).atan(),
-            turn_uncertainty: 2.0 * length * (variance / square_norm).sqrt(),
-        }
     }
 }

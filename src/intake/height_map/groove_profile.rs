@@ -7,6 +7,9 @@
 use super::map_blocks::HeightPoint;
 use crate::geometry::Point;
 
+/// Stripes along the direction and bands across it whose scatter gives the uncertainty.
+const PARTS: usize = 16;
+
 /// The fitted profile.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct FittedProfile {
@@ -23,6 +26,16 @@ pub(super) struct FittedProfile {
 
 /// Fits the profile across a direction (radians against x).
 pub(super) fn fit_profile(points: &[HeightPoint], direction: f64, knot: f64) -> FittedProfile {
+    fit_values(points, direction, knot, |p| p[2])
+}
+
+/// Fits the profile of any value of points.
+fn fit_values(
+    points: &[HeightPoint],
+    direction: f64,
+    knot: f64,
+    value: impl Fn(&HeightPoint) -> f64,
+) -> FittedProfile {
     let (sine, cosine) = direction.sin_cos();
     let (along, across) = ([cosine, sine], [-sine, cosine]);
     let place = |p: &HeightPoint| across[0] * p[0] + across[1] * p[1];
@@ -42,9 +55,10 @@ pub(super) fn fit_profile(points: &[HeightPoint], direction: f64, knot: f64) -> 
     for p in points {
         let position = ((place(p) - low) / knot).max(0.0);
         let piece = (position as usize).min(pieces.saturating_sub(1));
-        equations.add(piece, position - piece as f64, p[2]);
-        sum += p[2];
-        squares += p[2] * p[2];
+        let value = value(p);
+        equations.add(piece, position - piece as f64, value);
+        sum += value;
+        squares += value * value;
     }
     let count = points.len() as f64;
     let (values, explained, knots) = equations.solve();
@@ -78,50 +92,54 @@ impl FittedProfile {
         (height, slope)
     }
 
-    /// Shifts of the profile in stripes along the direction, in the order of `v`.
-    pub(super) fn shifts(&self, points: &[HeightPoint], stripes: usize) -> Vec<StripeShift> {
+    /// How far the direction must turn for the profile to fit best, rad, and the standard uncertainty.
+    ///
+    /// A small turn `d` moves the profile by `d (v - m)` at a point, where `m` is the mean `v` of all
+    /// points with its `u`: their mean place is what the fit has taken already. `d` follows by least
+    /// squares from the heights left over and the slopes of the profile. Its uncertainty is from the
+    /// scatter of the equations between stripes along the direction, and between bands across it,
+    /// whichever is larger, since heights left over are alike within a groove and from point to point.
+    /// `None` where the profile has no slope.
+    pub(super) fn turn(&self, points: &[HeightPoint]) -> Option<(f64, f64)> {
         let along = |p: &HeightPoint| self.along[0] * p[0] + self.along[1] * p[1];
+        let direction = self.along[1].atan2(self.along[0]);
+        let means = fit_values(points, direction, self.knot, along);
         let (low, high) = points
             .iter()
             .map(along)
             .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), v| {
                 (low.min(v), high.max(v))
             });
-        let length = (high - low) / stripes.max(1) as f64;
-        let mut sums = vec![[0.0; 3]; stripes];
+        let stripe = (high - low) / PARTS as f64;
+        let band = self.knot * self.values.len() as f64 / PARTS as f64;
+        let mut stripes = [[0.0; 2]; PARTS];
+        let mut bands = [[0.0; 2]; PARTS];
         for p in points {
-            let v = along(p);
-            let stripe = ((v - low) / length).max(0.0) as usize;
-            let (height, slope) = self.at(self.across[0] * p[0] + self.across[1] * p[1]);
-            if let Some(sum) = sums.get_mut(stripe.min(stripes.saturating_sub(1))) {
-                let weight = slope * slope;
-                sum[0] += weight;
-                sum[1] += weight * v;
-                sum[2] -= slope * (p[2] - height);
+            let (u, v) = (self.across[0] * p[0] + self.across[1] * p[1], along(p));
+            let (height, slope) = self.at(u);
+            let lever = slope * (v - means.at(u).0);
+            let parts = [-lever * (p[2] - height), lever * lever];
+            let places = [(v - low) / stripe, (u - self.first) / band];
+            for (sums, place) in [&mut stripes, &mut bands].into_iter().zip(places) {
+                if let Some(sum) = sums.get_mut((place.max(0.0) as usize).min(PARTS - 1)) {
+                    sum[0] += parts[0];
+                    sum[1] += parts[1];
+                }
             }
         }
-        let strongest = sums.iter().map(|sum| sum[0]).fold(0.0, f64::max);
-        sums.iter()
-            // Stripes with next to no flank say nothing of the place of the profile.
-            .filter(|sum| sum[0] > 0.01 * strongest)
-            .map(|sum| StripeShift {
-                along: sum[1] / sum[0],
-                shift: sum[2] / sum[0],
-                weight: sum[0],
-            })
-            .collect()
+        let right: f64 = stripes.iter().map(|sum| sum[0]).sum();
+        let weight: f64 = stripes.iter().map(|sum| sum[1]).sum();
+        let turn = right / weight;
+        if !turn.is_finite() {
+            return None;
+        }
+        let scatter = |sums: &[[f64; 2]]| -> f64 {
+            let left = sums.iter().map(|sum| sum[0] - turn * sum[1]);
+            let used = sums.iter().filter(|sum| sum[1] > 0.0).count() as f64;
+            left.map(|e| e * e).sum::<f64>().sqrt() / weight * (used / (used - 1.0).max(1.0)).sqrt()
+        };
+        Some((turn.atan(), scatter(&stripes).max(scatter(&bands))))
     }
-}
-
-/// Where the profile lies in a stripe across the map.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub(super) struct StripeShift {
-    /// Mean position of the stripe along the direction, m.
-    pub(super) along: f64,
-    /// How far the profile lies to the left of its mean place, m.
-    pub(super) shift: f64,
-    /// Sum of squared slopes.
-    pub(super) weight: f64,
 }
 
 /// Normal equations of knots that couple with their neighbours.

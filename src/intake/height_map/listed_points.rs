@@ -11,7 +11,7 @@ const LEAST_FILLED: f64 = 0.25;
 const LARGEST_OFFSET: f64 = 0.05;
 /// Distances between neighbouring coordinates must fall into two groups this far apart.
 const GROUPS_APART: f64 = 10.0;
-/// Coordinates closer than this part of their range are the same but for rounding in 32 bits.
+/// Coordinates closer than this part of their range are the same.
 const SAME_PART: f64 = 2e-7;
 
 /// The grid that points lie on.
@@ -29,10 +29,18 @@ pub(super) struct PointGrid {
 
 /// Puts points on their grid.
 ///
+/// - `rounding`: relative rounding of the stored coordinates along x and along y
+///
 /// Along each axis the sorted coordinates are split where the distance of neighbours jumps; the groups
 /// must lie at whole multiples of one spacing to within a twentieth of it. Time is n log n.
-pub(super) fn grid_of_points(x: &[f64], y: &[f64], z: &[f64]) -> Result<PointGrid, MapProblem> {
-    let along = [axis_grid(x, "x")?, axis_grid(y, "y")?];
+pub(super) fn grid_of_points(
+    [x, y, z]: [&[f64]; 3],
+    rounding: [f64; 2],
+) -> Result<PointGrid, MapProblem> {
+    let along = [
+        axis_grid(x, "x", rounding[0])?,
+        axis_grid(y, "y", rounding[1])?,
+    ];
     let size = along.map(|axis| axis.count);
     let sites = checked_points(size[0] as u64, size[1] as u64)?;
     let points = x.len().min(y.len()).min(z.len());
@@ -103,7 +111,11 @@ impl AxisGrid {
 }
 
 /// The even spacing behind the coordinates of one axis.
-fn axis_grid(coordinates: &[f64], axis: &'static str) -> Result<AxisGrid, MapProblem> {
+fn axis_grid(
+    coordinates: &[f64],
+    axis: &'static str,
+    rounding: f64,
+) -> Result<AxisGrid, MapProblem> {
     let mut sorted: Vec<f64> = coordinates
         .iter()
         .copied()
@@ -115,7 +127,7 @@ fn axis_grid(coordinates: &[f64], axis: &'static str) -> Result<AxisGrid, MapPro
             points: coordinates.len(),
         });
     };
-    let same = SAME_PART * (last - first) + f64::from(f32::EPSILON) * first.abs().max(last.abs());
+    let same = SAME_PART * (last - first) + rounding * first.abs().max(last.abs());
     if last - first <= same {
         return Ok(AxisGrid {
             first,

@@ -193,7 +193,7 @@ pub enum MapProblem {
     },
     /// The heights make the unit doubtful.
     #[error(
-        "taken as metres, the heights span {}, on a surface of {} by {}; up to 5 mm is expected",
+        "taken as metres, the heights span {}, on a surface of {} by {}; 10 pm to 5 mm is expected",
         format_length(*span),
         format_length(size[0]),
         format_length(size[1])

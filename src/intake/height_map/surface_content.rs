@@ -9,7 +9,7 @@ use super::surface_size::{SurfaceSize, check_metres};
 use super::x3p::read_x3p;
 use crate::intake::step::Step;
 use crate::intake::trace::RawTrace;
-use crate::units::{format_length, format_percent, format_significant};
+use crate::units::{format_length, format_percent};
 use crate::warning::Warning;
 
 /// What a surface file holds.
@@ -186,10 +186,9 @@ fn size_step(content: &SurfaceContent) -> Step {
         format!(" ({})", format_percent(share, 2))
     };
     let text = format!(
-        "{what}; heights from {} to {}, {} points missing{share}",
+        "{what}; heights from {} to {}, {missing} points missing{share}",
         format_length(range[0]),
         format_length(range[1]),
-        format_significant(missing as f64, 8)
     );
     Step::new("surface", text).with(&[
         ("size_x_m", measured.size[0]),

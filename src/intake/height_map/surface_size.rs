@@ -12,8 +12,8 @@ const LARGEST_PROFILE: f64 = 0.2;
 const SMALLEST: f64 = 10e-9;
 /// Distances of neighbouring points taken without asking, m.
 const SPACINGS: std::ops::RangeInclusive<f64> = 1e-9..=1e-3;
-/// Largest span of heights taken without asking, m.
-const LARGEST_SPAN: f64 = 5e-3;
+/// Spans of heights taken without asking, m; the noise of instruments alone is above the smallest.
+const SPANS: std::ops::RangeInclusive<f64> = 10e-12..=5e-3;
 /// Units tried for the likely one, the commonest first.
 const LIKELY_UNITS: [&str; 3] = ["mm", "um", "nm"];
 /// What makes a unit likely, m.
@@ -44,7 +44,7 @@ pub(super) fn check_metres(surface: &SurfaceSize) -> Result<(), MapProblem> {
         length_unit(name).is_some_and(|metres| {
             LIKELY_SIZES.contains(&(largest * metres))
                 && LIKELY_SPACINGS.contains(&(surface.spacing * metres))
-                && surface.span * metres <= LARGEST_SPAN
+                && SPANS.contains(&(surface.span * metres))
         })
     });
     if !(SMALLEST..=limit).contains(&largest) || !SPACINGS.contains(&surface.spacing) {
@@ -54,7 +54,8 @@ pub(super) fn check_metres(surface: &SurfaceSize) -> Result<(), MapProblem> {
             likely,
         });
     }
-    if surface.span > LARGEST_SPAN {
+    // All heights alike is an invented surface, not a wrong unit.
+    if surface.span != 0.0 && !SPANS.contains(&surface.span) {
         return Err(MapProblem::ImplausibleHeights {
             span: surface.span,
             size: surface.size,
@@ -90,6 +91,8 @@ mod tests {
         assert_eq!(likely(8e5, 2e3, 3e4), Some("nm"));
         // Positions in metres with heights of another unit: no one unit helps.
         assert_eq!(likely(1e-3, 1e-6, 26.0), None);
+        // Heights scaled down twice.
+        assert_eq!(likely(478e-6, 645e-9, 6e-13), None);
         let plausible = SurfaceSize {
             size: [1e-3, 1e-3],
             spacing: 2e-6,

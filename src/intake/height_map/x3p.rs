@@ -8,9 +8,10 @@ use super::container::Container;
 use super::file_defects::FileDefects;
 use super::listed_points::{MAX_LISTED_POINTS, grid_of_points};
 use super::map_problem::MapProblem;
+use super::stored_number::StoredNumber;
 use super::surface::{HeightMap, checked_points};
 use super::surface_content::SurfaceContent;
-use super::x3p_description::{Description, Dimension, Feature, read_description};
+use super::x3p_description::{Axis, Description, Dimension, Feature, read_description};
 use super::x3p_points::{Columns, check_md5, read_points};
 use crate::intake::source_text::SourceText;
 use crate::intake::step::Step;
@@ -80,7 +81,7 @@ fn check_main(
         .trim_start_matches('\u{feff}')
         .split_whitespace()
         .next();
-    check_md5("main.xml", first, digest, defects);
+    check_md5("description main.xml", first, digest, defects);
     Ok(())
 }
 
@@ -207,22 +208,25 @@ fn arrange(
             .collect()
     };
     let (x, y) = (filled(x, 0), filled(y, 1));
-    from_points(&x, &y, &z, description.metadata, steps)
+    from_points([&x, &y, &z], &description.axes, description.metadata, steps)
 }
 
 /// A map (or a profile) from points with their positions.
 fn from_points(
-    x: &[f64],
-    y: &[f64],
-    z: &[f64],
+    columns: [&[f64]; 3],
+    axes: &[Axis; 3],
     metadata: Vec<(String, String)>,
     mut steps: Vec<Step>,
 ) -> Result<SurfaceContent, MapProblem> {
-    let grid = grid_of_points(x, y, z)?;
+    let rounding = [axes[0], axes[1]].map(|axis| match axis.number {
+        StoredNumber::Float32 => f64::from(f32::EPSILON),
+        _ => f64::EPSILON,
+    });
+    let grid = grid_of_points(columns, rounding)?;
     let text = format!(
         "{} points given one by one lie on a grid of {} x {} places, at most {} of the spacing off \
          theirs",
-        z.len(),
+        columns[2].len(),
         grid.size[0],
         grid.size[1],
         format_significant(grid.largest_offset, 2)

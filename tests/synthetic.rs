@@ -72,14 +72,26 @@ fn the_conductance_of_invented_channels_comes_out_of_their_files() {
         worst = worst.max(off.abs());
         let reach = section.extras.reach.as_ref();
         let side = |outline: Option<&Outline>, other: f64| outline.map_or(other, conductance);
-        let low = side(reach.and_then(|r| r.inner.as_ref()).map(|s| &s.outline), found);
-        let high = side(reach.and_then(|r| r.outer.as_ref()).map(|s| &s.outline), found);
+        let low = side(
+            reach.and_then(|r| r.inner.as_ref()).map(|s| &s.outline),
+            found,
+        );
+        let high = side(
+            reach.and_then(|r| r.outer.as_ref()).map(|s| &s.outline),
+            found,
+        );
         let within = low * (1.0 - ALLOWED) <= truth && truth <= high * (1.0 + ALLOWED);
         // Every one of these traces shows its whole channel: no tip stands in the way.
         if off.abs() > ALLOWED || !within {
             let told = told(&channel, &trouble, dialect);
-            failures.push(format!("{number}: off by {off:.4}, within reach {within}: {told}"));
+            failures.push(format!(
+                "{number}: off by {off:.4}, within reach {within}: {told}"
+            ));
         }
     }
-    assert!(failures.is_empty(), "worst {worst:.4}\n{}", failures.join("\n"));
+    assert!(
+        failures.is_empty(),
+        "worst {worst:.4}\n{}",
+        failures.join("\n")
+    );
 }

@@ -38,11 +38,14 @@ pub(super) fn check_picture(
             panels.push(Panel::Image(image_panel(picture)));
             panels.push(Panel::Curves(picture_section_panel(picture)));
         }
-        _ => {}
     }
     let single = document.sections.len() == 1;
     let mut notes: Vec<String> = document.steps.iter().map(|s| s.text.to_owned()).collect();
-    let mut warnings: Vec<String> = document.warnings.iter().map(|w| w.message.clone()).collect();
+    let mut warnings: Vec<String> = document
+        .warnings
+        .iter()
+        .map(|w| w.message.clone())
+        .collect();
     for section in &document.sections {
         let of = |text: &str| match single {
             true => text.to_owned(),
@@ -102,7 +105,10 @@ fn raw_panel(trace: &TraceReading, cut: &str) -> CurvePanel {
         let index = corrected.raw.x.partition_point(|&at| at < x);
         corrected.raw.z.get(index).copied().unwrap_or(f64::NAN)
     };
-    let spikes = corrected.changes.iter().filter(|c| c.kind == ChangeKind::Spike);
+    let spikes = corrected
+        .changes
+        .iter()
+        .filter(|c| c.kind == ChangeKind::Spike);
     let marks = spikes
         .take(MARKS_SHOWN)
         .map(|change| {
@@ -175,11 +181,19 @@ fn groove_panel(groove: &GrooveSection, cut: &str, half_width: bool) -> CurvePan
     let mut regions = Vec::new();
     let reach = groove.reach.as_ref();
     if let Some(outer) = reach.and_then(|reach| reach.outer.as_ref()) {
-        regions.push(region(&outer.outline, RegionKind::OuterReach, "largest it could be"));
+        regions.push(region(
+            &outer.outline,
+            RegionKind::OuterReach,
+            "largest it could be",
+        ));
     }
     regions.push(region(&groove.outline, RegionKind::Section, "section"));
     if let Some(inner) = reach.and_then(|reach| reach.inner.as_ref()) {
-        regions.push(region(&inner.outline, RegionKind::InnerReach, "smallest it could be"));
+        regions.push(region(
+            &inner.outline,
+            RegionKind::InnerReach,
+            "smallest it could be",
+        ));
     }
     let numbers = &groove.numbers;
     regions.push(Region {
@@ -194,7 +208,11 @@ fn groove_panel(groove: &GrooveSection, cut: &str, half_width: bool) -> CurvePan
         let label = format!("with --lid {}", other.lid);
         Some(curve(closed.collect(), CurveKind::Alternative, &label))
     });
-    let mut curves = vec![curve(points(&groove.surface), CurveKind::Corrected, "levelled trace")];
+    let mut curves = vec![curve(
+        points(&groove.surface),
+        CurveKind::Corrected,
+        "levelled trace",
+    )];
     curves.extend(alternatives);
     CurvePanel {
         title: format!("Section of channel {}{cut}", groove.number),
@@ -213,8 +231,15 @@ fn groove_panel(groove: &GrooveSection, cut: &str, half_width: bool) -> CurvePan
 fn lid_body(face: &Profile, thickness: f64) -> Vec<Point> {
     let lower = points(face);
     let top = lower.iter().fold(f64::NEG_INFINITY, |top, p| top.max(p[1])) + thickness;
-    let ends = lower.first().zip(lower.last()).map(|(a, b)| [[b[0], top], [a[0], top]]);
-    lower.iter().copied().chain(ends.into_iter().flatten()).collect()
+    let ends = lower
+        .first()
+        .zip(lower.last())
+        .map(|(a, b)| [[b[0], top], [a[0], top]]);
+    lower
+        .iter()
+        .copied()
+        .chain(ends.into_iter().flatten())
+        .collect()
 }
 
 /// Top width and depth.
@@ -263,7 +288,7 @@ fn map_panel(reading: &MapReading) -> MapPanel {
             .map(|cut| Cut {
                 from: cut.from,
                 to: cut.to,
-                width: cut.width,
+                width: cut.average,
                 label: if several {
                     format_length(cut.station)
                 } else {
@@ -285,23 +310,34 @@ fn image_panel(picture: &MicrographSection) -> ImagePanel {
     let mut outlines = Vec::new();
     let reach = picture.reach.as_ref();
     if let Some(outer) = reach.and_then(|reach| reach.outer.as_ref()) {
-        outlines.push(region(&outer.outline, RegionKind::OuterReach, "largest it could be"));
+        outlines.push(region(
+            &outer.outline,
+            RegionKind::OuterReach,
+            "largest it could be",
+        ));
     }
     outlines.push(region(&picture.outline, RegionKind::Section, "section"));
     if let Some(inner) = reach.and_then(|reach| reach.inner.as_ref()) {
-        outlines.push(region(&inner.outline, RegionKind::InnerReach, "smallest it could be"));
+        outlines.push(region(
+            &inner.outline,
+            RegionKind::InnerReach,
+            "smallest it could be",
+        ));
     }
     let preview = &picture.preview;
     let scale = picture.metres_per_pixel;
     let part = picture.crop;
     // The outline's origin is the lower left corner of the part used; the picture begins beside and below it.
     let below = f64::from(picture.size[1].saturating_sub(part.y + part.height));
-    let size = [f64::from(part.width) * scale[0], f64::from(part.height) * scale[1]];
+    let size = [
+        f64::from(part.width) * scale[0],
+        f64::from(part.height) * scale[1],
+    ];
     ImagePanel {
         title: "The picture with the contour that was taken".to_owned(),
         size: [preview.width as usize, preview.height as usize],
         grey: preview.grey.clone(),
-        pixel_size: scale.map(|s| s * f64::from(preview.factor)),
+        pixel_size: scale[0] * f64::from(preview.factor),
         origin: [-f64::from(part.x) * scale[0], -below * scale[1]],
         outlines,
         crop: Some([[0.0, 0.0], size]),

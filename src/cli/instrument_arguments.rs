@@ -99,11 +99,11 @@ const TRACE: [Row; 21] = [
          Example: --level-on 0um..40um,160um..200um",
     ),
     (
-        "lands",
+        "land-zones",
         "ZONES",
         "These stretches of the trace are the lands",
         "Stretches of the trace that are lands, from..to, separated by commas, where those found are not \
-         right. Example: --lands 0um..40um,160um..200um",
+         right. Example: --land-zones 0um..40um,160um..200um",
     ),
     (
         "level-fit",

@@ -88,11 +88,7 @@ fn paths(matches: &ArgMatches, name: &str) -> Vec<PathBuf> {
 }
 
 /// A length that must be above zero.
-fn above_zero(
-    matches: &ArgMatches,
-    name: &str,
-    example: &str,
-) -> Result<Option<f64>, Failure> {
+fn above_zero(matches: &ArgMatches, name: &str, example: &str) -> Result<Option<f64>, Failure> {
     let value = quantity(matches, name, units::parse_length)?;
     positive(matches, name, value, example)?;
     Ok(value)
@@ -135,7 +131,7 @@ fn corrections(matches: &ArgMatches) -> Result<CorrectionOptions, Failure> {
         (None, Some("none")) => Levelling::None,
         (None, _) => Levelling::Lands,
     };
-    let lands = word(matches, "lands").map(|text| zones("lands", text));
+    let lands = word(matches, "land-zones").map(|text| zones("land-zones", text));
     Ok(CorrectionOptions {
         invert: matches.get_flag("invert"),
         shrinkage: [

@@ -6,7 +6,8 @@ use clap::ArgMatches;
 
 use crate::flow::SolveOptions;
 use crate::intake::{
-    InstrumentData, InstrumentReading, ReadOptions, SectionKind, Step, heights_csv, read_instrument, to_toml,
+    InstrumentData, InstrumentReading, ReadOptions, SectionKind, Step, heights_csv,
+    read_instrument, to_toml,
 };
 use crate::report::{
     self, AlternativeRecord, ConductanceRecord, MeasureRecord, PictureFormat, ReadingDocument,
@@ -131,7 +132,10 @@ impl Request {
         let sections = reading.sections();
         let several = sections.len() > 1;
         let path = &reading.provenance.path;
-        let mut grooves = reading.traces().iter().flat_map(|trace| trace.grooves.iter().map(move |groove| (trace, groove)));
+        let mut grooves = reading
+            .traces()
+            .iter()
+            .flat_map(|trace| trace.grooves.iter().map(move |groove| (trace, groove)));
         sections
             .into_iter()
             .enumerate()
@@ -146,7 +150,9 @@ impl Request {
                 let name = input::section_name(&section, &self.file);
                 let checked = checked(section, &of, "; the check picture shows it")?;
                 let mut solved = Solved {
-                    measures: groove.map(|(trace, groove)| measures(&trace.corrected, groove)).unwrap_or_default(),
+                    measures: groove
+                        .map(|(trace, groove)| measures(&trace.corrected, groove))
+                        .unwrap_or_default(),
                     checked,
                     number,
                     name,
@@ -174,7 +180,10 @@ impl Request {
         if !self.pictures.is_empty() {
             let picture = check_picture(reading, &document);
             for (path, format) in &self.pictures {
-                files.push((path.clone(), report::check_picture_bytes(&picture, *format)?));
+                files.push((
+                    path.clone(),
+                    report::check_picture_bytes(&picture, *format)?,
+                ));
             }
         }
         let options = TextOptions {

@@ -11,8 +11,8 @@ use crate::flow::{
 use crate::geometry::Film;
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, AlternativeRecord, PictureFormat, ReachRecord, SolveDocument, SourceRecord, check_targets, legacy_vtk_path,
-    vtk_paths,
+    self, AlternativeRecord, PictureFormat, ReachRecord, SolveDocument, SourceRecord,
+    check_targets, legacy_vtk_path, vtk_paths,
 };
 use crate::study::Reach;
 use crate::units;
@@ -22,9 +22,9 @@ use super::accuracy_options::solve_options;
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::input::{self, CheckedSection, checked_section, read_options};
+use super::instrument_options::say_settings;
 use super::output::{self, Format, Inputs};
 use super::quantities::{fluid, positive, quantity};
-use super::instrument_options::say_settings;
 use super::reading::step_record;
 use super::sections::{Sections, alternatives, film};
 
@@ -202,7 +202,13 @@ impl Request {
         let name = input::section_name(&checked.section, &self.file);
         let given = checked.section.extras.reach.as_ref();
         let reason = given.and_then(|reach| reach.reason.as_deref());
-        let steps: Vec<_> = checked.section.intake.steps.iter().map(step_record).collect();
+        let steps: Vec<_> = checked
+            .section
+            .intake
+            .steps
+            .iter()
+            .map(step_record)
+            .collect();
         let document = SolveDocument {
             source: Some(SourceRecord {
                 notes: &notes,

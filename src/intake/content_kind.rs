@@ -8,9 +8,9 @@ use super::read_error::{Fault, ReadProblem};
 use super::source_text::SourceText;
 use super::trace::{TableKind, table_kind};
 
-/// Content of a file, decoded where it is text.
+/// FileContent of a file, decoded where it is text.
 #[derive(Debug)]
-pub(crate) enum Content {
+pub(crate) enum FileContent {
     /// A section file, an outline in columns, or a drawing.
     Section(SectionKind, SourceText),
     /// A trace in columns.
@@ -26,21 +26,21 @@ pub(crate) enum Content {
 /// Finds out what a file holds.
 ///
 /// - `as_kind`: what the user says it is; for a trace or a height map the form is still found from the content
-pub(crate) fn content_of(bytes: &[u8], as_kind: Option<SectionKind>) -> Result<Content, Fault> {
+pub(crate) fn content_of(bytes: &[u8], as_kind: Option<SectionKind>) -> Result<FileContent, Fault> {
     match as_kind {
-        Some(SectionKind::Micrograph) => Ok(Content::Picture),
+        Some(SectionKind::Micrograph) => Ok(FileContent::Picture),
         Some(SectionKind::Trace) => Ok(match surface_format(bytes) {
-            Some(format) => Content::Surface(format),
-            None => Content::Trace(decoded(bytes)?),
+            Some(format) => FileContent::Surface(format),
+            None => FileContent::Trace(decoded(bytes)?),
         }),
         Some(SectionKind::HeightMap) => Ok(match surface_format(bytes) {
-            Some(format) => Content::Surface(format),
-            None => Content::Map(decoded(bytes)?),
+            Some(format) => FileContent::Surface(format),
+            None => FileContent::Map(decoded(bytes)?),
         }),
-        Some(kind) => Ok(Content::Section(kind, decoded(bytes)?)),
-        None if is_picture(bytes) => Ok(Content::Picture),
+        Some(kind) => Ok(FileContent::Section(kind, decoded(bytes)?)),
+        None if is_picture(bytes) => Ok(FileContent::Picture),
         None => match surface_format(bytes) {
-            Some(format) => Ok(Content::Surface(format)),
+            Some(format) => Ok(FileContent::Surface(format)),
             None => text_content(decoded(bytes)?),
         },
     }
@@ -59,21 +59,21 @@ fn decoded(bytes: &[u8]) -> Result<SourceText, Fault> {
 ///
 /// `<` begins a drawing; `[table]` or `key = value` a section file; tables of numbers are told apart by their
 /// columns, see [`table_kind`].
-fn text_content(source: SourceText) -> Result<Content, Fault> {
+fn text_content(source: SourceText) -> Result<FileContent, Fault> {
     let text = &source.text;
     if text.trim_start().starts_with('<') {
-        return Ok(Content::Section(SectionKind::OutlineSvg, source));
+        return Ok(FileContent::Section(SectionKind::OutlineSvg, source));
     }
     let mut rows = Rows::new(text).filter(|row| !row.content.trim().is_empty());
     let first = rows.next();
     if first.is_some_and(|row| is_toml_line(row.content.trim())) {
-        return Ok(Content::Section(SectionKind::SectionFile, source));
+        return Ok(FileContent::Section(SectionKind::SectionFile, source));
     }
     match table_kind(text) {
-        Some(TableKind::Trace) => return Ok(Content::Trace(source)),
-        Some(TableKind::Matrix | TableKind::Points) => return Ok(Content::Map(source)),
+        Some(TableKind::Trace) => return Ok(FileContent::Trace(source)),
+        Some(TableKind::Matrix | TableKind::Points) => return Ok(FileContent::Map(source)),
         Some(TableKind::Outline) => {
-            return Ok(Content::Section(SectionKind::OutlineText, source));
+            return Ok(FileContent::Section(SectionKind::OutlineText, source));
         }
         None => {}
     }
@@ -86,7 +86,7 @@ fn text_content(source: SourceText) -> Result<Content, Fault> {
         .iter()
         .any(|word| lower.starts_with(word));
     if numeric(first) || header || rows.take(20).any(numeric) {
-        return Ok(Content::Section(SectionKind::OutlineText, source));
+        return Ok(FileContent::Section(SectionKind::OutlineText, source));
     }
     Err(Fault::at(
         text,
@@ -125,7 +125,10 @@ mod tests {
             ("\n<?xml version=\"1.0\"?><svg/>", SectionKind::OutlineSvg),
         ] {
             let found = content_of(text.as_bytes(), None);
-            assert!(matches!(found, Ok(Content::Section(found, _)) if found == kind), "{text}");
+            assert!(
+                matches!(found, Ok(FileContent::Section(found, _)) if found == kind),
+                "{text}"
+            );
         }
         assert!(content_of(b"hello\nworld\n", None).is_err());
         assert!(content_of(b"# only a comment\n", None).is_err());

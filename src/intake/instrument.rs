@@ -2,21 +2,22 @@
 
 use std::path::{Path, PathBuf};
 
-use super::content_kind::{Content, content_of};
+use super::content_kind::{FileContent, content_of};
 use super::height_map::{
-    CutOptions, HeightMap, MapCuts, SurfaceContent, SurfaceFormat, cut, read_map_table, read_surface,
+    CutOptions, HeightMap, MapCuts, SurfaceContent, SurfaceFormat, cut,
+    read_surface,
 };
 use super::limits::{MAX_FILE_BYTES, check_file_size};
 use super::micrograph::{MicrographOptions, MicrographSection, read_micrograph};
+use super::plausibility::check_size;
 use super::provenance::{Provenance, SectionKind, sha256_hex};
 use super::read_error::{Fault, ReadError, ReadProblem};
-use super::plausibility::check_size;
 use super::section::{ReadOptions, UnitOption};
 use super::source_text::{SourceText, read_bytes};
 use super::step::Step;
 use super::trace::{
-    CorrectedTrace, CorrectionOptions, GrooveSection, RawTrace, SectionOptions,
-    TableOptions, correct, read_trace_table, sections,
+    CorrectedTrace, CorrectionOptions, GrooveSection, RawTrace, SectionOptions, TableOptions,
+    correct, read_trace_table, sections,
 };
 use crate::geometry::Outline;
 use crate::units::format_length;
@@ -110,10 +111,7 @@ pub struct Intake {
 ///
 /// # Errors
 /// [`ReadError`] when the file cannot be read, holds something else, or leaves a unit, a scale or a choice open.
-pub fn read_instrument(
-    path: &Path,
-    options: &ReadOptions,
-) -> Result<InstrumentReading, ReadError> {
+pub fn read_instrument(path: &Path, options: &ReadOptions) -> Result<InstrumentReading, ReadError> {
     let name = if path == Path::new("-") {
         "standard input".to_owned()
     } else {
@@ -140,7 +138,7 @@ pub fn instrument_from_bytes(
 
 /// Reads an instrument's file of which it is known what it holds.
 pub(crate) fn read_instrument_content(
-    content: Content,
+    content: FileContent,
     bytes: &[u8],
     path: &str,
     options: &ReadOptions,
@@ -167,27 +165,30 @@ struct Reader<'a> {
 }
 
 impl Reader<'_> {
-    fn read(&self, content: Content) -> Result<InstrumentReading, ReadError> {
+    fn read(&self, content: FileContent) -> Result<InstrumentReading, ReadError> {
         let options = &self.options.instrument;
         let (kind, encoding, raw) = match content {
-            Content::Section(kind, _) => {
+            FileContent::Section(kind, _) => {
                 let problem = ReadProblem::NotOfInstrument { kind: kind.word() };
                 return Err(ReadError::new(self.path, problem));
             }
-            Content::Picture => {
+            FileContent::Picture => {
                 let section = read_micrograph(self.bytes, &options.micrograph)
                     .map_err(|source| self.fault(source))?;
                 let (steps, warnings) = (section.steps.clone(), section.warnings.clone());
                 let data = InstrumentData::Micrograph(Box::new(section));
-                return Ok(self.reading(SectionKind::Micrograph, "binary", data, (steps, warnings)));
+                return Ok(self.reading(
+                    SectionKind::Micrograph,
+                    "binary",
+                    data,
+                    (steps, warnings),
+                ));
             }
-            Content::Trace(source) => (SectionKind::Trace, source.encoding, self.table(&source)?),
-            Content::Map(source) => {
-                let (map, warnings) = read_map_table(&source.text, &options.table)
-                    .map_err(|fault| fault.in_file(self.path))?;
-                (SectionKind::HeightMap, source.encoding, Raw::Map(map, warnings))
+            FileContent::Trace(source) => (SectionKind::Trace, source.encoding, self.table(&source)?),
+            FileContent::Map(source) => {
+                let _ = source; return Err(ReadError::new(self.path, ReadProblem::NotATrace));
             }
-            Content::Surface(format) => self.surface(format)?,
+            FileContent::Surface(format) => self.surface(format)?,
         };
         match raw {
             Raw::Trace(raw, warnings) => {
@@ -225,7 +226,9 @@ impl Reader<'_> {
             read_surface(self.bytes, format, unit).map_err(|source| self.fault(source))?;
         Ok(match content {
             SurfaceContent::Map(map) => (SectionKind::HeightMap, "binary", Raw::Map(map, warnings)),
-            SurfaceContent::Profile(raw) => (SectionKind::Trace, "binary", Raw::Trace(raw, warnings)),
+            SurfaceContent::Profile(raw) => {
+                (SectionKind::Trace, "binary", Raw::Trace(raw, warnings))
+            }
         })
     }
 
@@ -237,8 +240,8 @@ impl Reader<'_> {
             .iter()
             .map(|path| self.further_trace(path))
             .collect::<Result<_, _>>()?;
-        let corrected = correct(&raw, &repeats, &options.corrections)
-            .map_err(|source| self.fault(source))?;
+        let corrected =
+            correct(&raw, &repeats, &options.corrections).map_err(|source| self.fault(source))?;
         let mut how = options.sections.clone();
         if let Some(path) = &options.lid_trace {
             let lid = self.further_trace(path)?;
@@ -249,7 +252,8 @@ impl Reader<'_> {
         let grooves = sections(&corrected, &how).map_err(|source| self.fault(source))?;
         if !self.options.allow_any_size {
             for groove in &grooves {
-                check_size(&groove.outline, None, None).map_err(|p| ReadError::new(self.path, p))?;
+                check_size(&groove.outline, None, None)
+                    .map_err(|p| ReadError::new(self.path, p))?;
             }
         }
         Ok(TraceReading {
@@ -264,16 +268,16 @@ impl Reader<'_> {
     fn further_trace(&self, path: &Path) -> Result<RawTrace, ReadError> {
         let name = path.display().to_string();
         let bytes = read_bytes(path).map_err(|problem| ReadError::new(&name, problem))?;
-        let content = content_of(&bytes, Some(SectionKind::Trace))
-            .map_err(|fault| fault.in_file(&name))?;
+        let content =
+            content_of(&bytes, Some(SectionKind::Trace)).map_err(|fault| fault.in_file(&name))?;
         let reader = Reader {
             bytes: &bytes,
             path: &name,
             options: self.options,
         };
         let raw = match content {
-            Content::Trace(source) => reader.table(&source)?,
-            Content::Surface(format) => reader.surface(format)?.2,
+            FileContent::Trace(source) => reader.table(&source)?,
+            FileContent::Surface(format) => reader.surface(format)?.2,
             _ => return Err(ReadError::new(&name, ReadProblem::NotATrace)),
         };
         match raw {

@@ -50,7 +50,11 @@ impl InstrumentReading {
             [trace] => &trace.corrected.warnings[..],
             _ => &[],
         };
-        self.warnings.iter().chain(cuts).chain(corrections).collect()
+        self.warnings
+            .iter()
+            .chain(cuts)
+            .chain(corrections)
+            .collect()
     }
 
     /// What the file says besides, key and value.
@@ -141,10 +145,21 @@ impl InstrumentReading {
         let of_trace = |count: usize| if is_only { count } else { 0 };
         let corrected = &trace.corrected;
         let own_steps = corrected.steps.iter().skip(of_trace(corrected.steps.len()));
-        let own_warnings = corrected.warnings.iter().skip(of_trace(corrected.warnings.len()));
-        let steps = self.shared_steps().into_iter().chain(own_steps).chain(&groove.steps);
+        let own_warnings = corrected
+            .warnings
+            .iter()
+            .skip(of_trace(corrected.warnings.len()));
+        let steps = self
+            .shared_steps()
+            .into_iter()
+            .chain(own_steps)
+            .chain(&groove.steps);
         let steps: Vec<Step> = steps.cloned().collect();
-        let warnings = self.shared_warnings().into_iter().chain(own_warnings).chain(&groove.warnings);
+        let warnings = self
+            .shared_warnings()
+            .into_iter()
+            .chain(own_warnings)
+            .chain(&groove.warnings);
         let warnings: Vec<Warning> = warnings.cloned().collect();
         let alternatives = groove
             .lid_alternatives

@@ -50,7 +50,9 @@ pub use instrument::{
 };
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
 pub use micrograph::{
-    MicrographOptions, MicrographProblem, MicrographSection, is_picture, read_micrograph,
+    Channel, Denoise, HistogramSummary, LARGEST_PIXELS, Levels, MicrographOptions,
+    MicrographProblem, MicrographSection, PixelBox, PixelLoop, Preview, Region, RegionFound,
+    ScaleCandidate, Threshold, Tilt, Tone, is_picture, read_micrograph,
 };
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
@@ -60,11 +62,8 @@ pub use section_write::to_toml;
 pub use step::Step;
 pub use trace::{
     Change, ChangeKind, CorrectedTrace, CorrectionOptions, Decimal, GrooveProblem, GrooveSection,
-    Levelling, LidAlternative, LineFit, MAX_BOW, Profile, RawTrace, RepeatPlace, Repeatability,
-    StepHeight, TableAxis, TableKind, TableOptions, TableProblem, TraceProblem, Zone, correct,
-    step_height, table_kind, trace_from_bytes,
-};
-pub use trace::{
-    IsotropicFit, KOH_ANGLE, KohFit, LANDS_DIFFER, LidChoice, SLIVER, SectionOptions, THINNING,
-    Tip, TipFlank, TrenchNumbers, WallNumbers, sections,
+    IsotropicFit, KOH_ANGLE, KohFit, LANDS_DIFFER, Levelling, LidAlternative, LidChoice, LineFit,
+    MAX_BOW, Profile, RawTrace, RepeatPlace, Repeatability, SLIVER, SectionOptions, StepHeight,
+    THINNING, TableAxis, TableKind, TableOptions, TableProblem, Tip, TipFlank, TraceProblem,
+    TrenchNumbers, WallNumbers, Zone, correct, sections, step_height, table_kind, trace_from_bytes,
 };

@@ -2,7 +2,7 @@
 
 use std::path::Path;
 
-use super::content_kind::{Content, content_of};
+use super::content_kind::{FileContent, content_of};
 use super::instrument::{InstrumentOptions, Intake, read_instrument_content};
 use super::limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, check_file_size};
 use super::loop_nesting::assemble;
@@ -180,8 +180,9 @@ pub fn section_from_bytes(
         .map_err(|problem| ReadError::new(path, problem))?;
     let content = content_of(&bytes, options.as_kind).map_err(|fault| fault.in_file(path))?;
     match content {
-        Content::Section(kind, source) => read_content((kind, source), &bytes, path, options)
-            .map_err(|fault| fault.in_file(path)),
+        FileContent::Section(kind, source) => {
+            read_content((kind, source), &bytes, path, options).map_err(|fault| fault.in_file(path))
+        }
         other => read_instrument_content(other, &bytes, path, options)?.only_section(),
     }
 }

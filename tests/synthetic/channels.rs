@@ -139,12 +139,7 @@ pub struct Trouble {
 }
 
 /// Positions and heights, micrometres; NaN where there is none.
-pub fn measured(
-    channel: &Channel,
-    trouble: &Trouble,
-    step: f64,
-    dice: &mut Dice,
-) -> Vec<[f64; 2]> {
+pub fn measured(channel: &Channel, trouble: &Trouble, step: f64, dice: &mut Dice) -> Vec<[f64; 2]> {
     let land = 0.6 * channel.width;
     let length = channel.width + 2.0 * land;
     let start = dice.between(-3.0, 3.0) * channel.width;
@@ -206,7 +201,14 @@ pub fn written(rows: &[[f64; 2]], dialect: usize) -> Vec<u8> {
             }
         }
         2 => {
-            for head in ["Scan Settings", "", "Operator,nobody", "Speed,40 um/s", "", "Lateral um,Raw Nanometer,"] {
+            for head in [
+                "Scan Settings",
+                "",
+                "Operator,nobody",
+                "Speed,40 um/s",
+                "",
+                "Lateral um,Raw Nanometer,",
+            ] {
                 line(head.to_owned(), "\r\n");
             }
             for [x, z] in rows {

@@ -5,9 +5,15 @@
 //! where two fluid pixels meet at a corner only, the fluid is parted; regions are joined in the same way, so
 //! a region and its contour never disagree. For the same reason contours of two levels never cross.
 //!
+//! Linear interpolation between means over pixels is off by up to 0.09 pixels at edges that are sharper than a
+//! pixel, to either side in turn along the wall: areas come out right, but the perimeter 0.25 % long. There the
+//! greys of four pixels across the edge are added up instead ([`Crossing::Areas`]).
+//!
 //! # Source
 //! Lorensen, Cline (1987), "Marching cubes", SIGGRAPH 21, 163-169, doi:10.1145/37401.37422, in the
-//! plane (from memory).
+//! plane (from memory). Place of an edge from the sum of greys: Tabatabai, Mitchell (1984), "Edge location to
+//! subpixel values in digital imagery", IEEE Transactions on Pattern Analysis and Machine Intelligence 6, 188-201,
+//! doi:10.1109/TPAMI.1984.4767502 (moments of the same greys; from memory).
 //! # Accuracy
 //! See the tests of discs, ellipses and rectangles in `contour_tests`.
 
@@ -27,18 +33,37 @@ const LEFT: usize = 2;
 pub(super) struct Walk<'a> {
     grey: &'a Grey,
     marks: Vec<u8>,
-    level: f64,
+    crossing: Crossing,
 }
+
+/// How the place of the wall between two pixels is found.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) enum Crossing {
+    /// Where straight lines between the greys of the pixels meet a level, in counts.
+    Linear(f64),
+    /// For edges as sharp as pixels are, between levels of fluid and wall in counts: each pixel holds as much of
+    /// the fluid as its grey says, so that four pixels across the edge give its place exactly, wherever it
+    /// lies on the lattice; where four do not span the edge, as [`Crossing::Linear`] half-way.
+    Areas {
+        /// Level of the fluid.
+        fluid: f64,
+        /// Level of the wall.
+        wall: f64,
+    },
+}
+
+/// The two outer ones of the four pixels are pure within this share of the contrast.
+const PURE: f64 = 0.1;
 
 impl<'a> Walk<'a> {
     /// - `mask`: one for each pixel of the region, zero for others, as the rows of the picture; all
     ///   neighbours of the region must lie beyond the level, and none of its pixels on the picture's border
-    /// - `level`: in counts
-    pub(super) fn new(grey: &'a Grey, mask: Vec<u8>, level: f64) -> Self {
+    /// - `crossing`: how the wall is found between two pixels
+    pub(super) fn new(grey: &'a Grey, mask: Vec<u8>, crossing: Crossing) -> Self {
         Self {
             grey,
             marks: mask,
-            level,
+            crossing,
         }
     }
 
@@ -72,11 +97,34 @@ impl<'a> Walk<'a> {
         neighbour(pixel, side).is_some_and(|p| self.mark(p) & 1 == 1)
     }
 
-    /// Where the level lies between a pixel of the region and its neighbour.
+    /// Grey value of the pixel a number of steps from another; `None` outside the picture.
+    fn value(&self, [x, y]: [usize; 2], side: usize, steps: isize) -> Option<f64> {
+        let [dx, dy] = STEPS.get(side).copied()?;
+        let x = x.checked_add_signed(dx * steps)?;
+        let y = y.checked_add_signed(dy * steps)?;
+        (x < self.grey.width && y < self.grey.height).then(|| f64::from(self.grey.at(x, y)))
+    }
+
+    /// Where the wall lies between a pixel of the region and its neighbour.
     fn crossing(&self, pixel: [usize; 2], side: usize) -> [f64; 2] {
-        let inside = f64::from(self.grey.at(pixel[0], pixel[1]));
-        let outside = neighbour(pixel, side).map_or(0.0, |[x, y]| f64::from(self.grey.at(x, y)));
-        let share = (inside - self.level) / (inside - outside);
+        let [before, inside, outside, beyond] =
+            [-1, 0, 1, 2].map(|steps| self.value(pixel, side, steps));
+        let linear = |level: f64| match (inside, outside) {
+            (Some(a), Some(b)) => (a - level) / (a - b),
+            _ => f64::NAN,
+        };
+        let share = match (self.crossing, [before, inside, outside, beyond]) {
+            (Crossing::Areas { fluid, wall }, [Some(a), Some(b), Some(c), Some(d)]) => {
+                let [a, b, c, d] = [a, b, c, d].map(|v| (v - wall) / (fluid - wall));
+                if (a - 1.0).abs() <= PURE && d.abs() <= PURE {
+                    a + b + c + d - 1.5
+                } else {
+                    linear(f64::midpoint(fluid, wall))
+                }
+            }
+            (Crossing::Areas { fluid, wall }, _) => linear(f64::midpoint(fluid, wall)),
+            (Crossing::Linear(level), _) => linear(level),
+        };
         let share = if share.is_finite() {
             share.clamp(LEAST_SHARE, 1.0 - LEAST_SHARE)
         } else {

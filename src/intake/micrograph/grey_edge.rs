@@ -5,7 +5,7 @@
 //! perfectly sharp measures 1.0 pixels in this way, since each pixel is a mean over its square; only an edge
 //! above [`GREY_EDGE`] pixels leaves more room than that, and makes a reach.
 
-use super::contour::{Walk, signed_area};
+use super::contour::{Crossing, Walk, signed_area};
 use super::grey::Grey;
 use super::micrograph_section::PixelLoop;
 use super::regions::{Level, Regions};
@@ -54,10 +54,10 @@ impl EdgeProblem {
 pub(super) fn loops_above(
     grey: &Grey,
     mask: Vec<u8>,
-    counts: f64,
+    crossing: Crossing,
     least_area: f64,
 ) -> (Vec<PixelLoop>, Vec<PixelLoop>) {
-    let all = Walk::new(grey, mask, counts).loops();
+    let all = Walk::new(grey, mask, crossing).loops();
     all.into_iter()
         .partition(|points| signed_area(points).abs() >= least_area)
 }
@@ -103,7 +103,12 @@ pub(super) fn edge(
         .zip(&section.grey.values)
         .map(|(m, v)| m & u8::from(inner.is_fluid(*v)))
         .collect();
-    let (inner_loops, _) = loops_above(section.grey, inner_mask, inner.counts, section.least_area);
+    let (inner_loops, _) = loops_above(
+        section.grey,
+        inner_mask,
+        Crossing::Linear(inner.counts),
+        section.least_area,
+    );
     if !inner_loops.iter().any(|points| signed_area(points) > 0.0) {
         return Err(EdgeProblem::Vanishes);
     }
@@ -125,7 +130,12 @@ pub(super) fn edge(
     if joined as f64 > section.least_area {
         return Err(EdgeProblem::Joins);
     }
-    let (outer_loops, _) = loops_above(section.grey, outer_mask, outer.counts, section.least_area);
+    let (outer_loops, _) = loops_above(
+        section.grey,
+        outer_mask,
+        Crossing::Linear(outer.counts),
+        section.least_area,
+    );
     let width = (net_area(&outer_loops) - net_area(&inner_loops)) / section.perimeter;
     Ok(Edge {
         width,

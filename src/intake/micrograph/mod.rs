@@ -24,6 +24,8 @@ mod prepare;
 mod read;
 #[cfg(test)]
 mod read_tests;
+#[cfg(test)]
+mod refusal_tests;
 mod region_choice;
 mod regions;
 mod scale;

@@ -21,7 +21,7 @@ const LEAST_PIXELS: u64 = 100;
 /// Regions down to this share of the largest are of its size.
 const SIMILAR_SHARE: f64 = 0.25;
 /// The tone is clear if its largest region is this many times that of the other.
-const CLEAR_RATIO: f64 = 20.0;
+const CLEAR_RATIO: f64 = 10.0;
 /// Regions listed at most.
 const MOST_LISTED: usize = 20;
 

@@ -1,6 +1,6 @@
 //! The contour of the chosen region, at the level half-way between the greys beside its wall.
 
-use super::contour::{length, signed_area};
+use super::contour::{Crossing, length, signed_area};
 use super::grey::Grey;
 use super::grey_edge::{Edge, EdgeProblem, GREY_EDGE, Section, edge, loops_above, net_area};
 use super::micrograph_problem::MicrographProblem;
@@ -13,6 +13,11 @@ use crate::intake::limits::MAX_VERTICES;
 
 /// Passes in which level and width of the edge settle.
 const PASSES: usize = 3;
+/// A level is half-way within this share of the contrast.
+const HALF_WAY: f64 = 0.02;
+/// Largest noise of neighbours over the contrast at which four pixels give the place of a sharp edge better
+/// than two: they are free of the lattice, but carry the noise of four.
+const QUIET: f64 = 0.045;
 
 /// A region with its contour and what is known of its edge.
 #[derive(Debug)]
@@ -29,6 +34,8 @@ pub(super) struct Traced {
     pub(super) edge: Result<Edge, EdgeProblem>,
     /// Share of edge pixels without a grey in between.
     pub(super) jumps: f64,
+    /// Whether the edge is sharp and was placed by the sum of the greys across it.
+    pub(super) by_areas: bool,
 }
 
 impl Traced {
@@ -109,8 +116,22 @@ pub(super) fn traced(
         }
         distance = wanted;
     }
+    let is_sharp = found
+        .as_ref()
+        .is_ok_and(|edge| edge.standard_width <= GREY_EDGE);
+    let is_quiet = sides.noise <= QUIET * sides.contrast();
+    let is_half = (level.counts - sides.at(0.5)).abs() < HALF_WAY * sides.contrast();
+    let by_areas = is_sharp && is_half && is_quiet;
+    if by_areas {
+        let areas = Crossing::Areas {
+            fluid: sides.fluid,
+            wall: sides.wall,
+        };
+        pass = pass_of(grey, pass.mask, areas, least_area)?;
+    }
     Ok(Traced {
         level,
+        by_areas,
         jumps: share_of_jumps(grey, &pass.mask, &sides),
         sides,
         filled: (
@@ -132,7 +153,17 @@ fn pass(
     least_area: f64,
 ) -> Result<Pass, MicrographProblem> {
     let mask = regions.mask(label);
-    let (loops, filled) = loops_above(grey, mask.clone(), level.counts, least_area);
+    pass_of(grey, mask, Crossing::Linear(level.counts), least_area)
+}
+
+/// The contour of a mask.
+fn pass_of(
+    grey: &Grey,
+    mask: Vec<u8>,
+    crossing: Crossing,
+    least_area: f64,
+) -> Result<Pass, MicrographProblem> {
+    let (loops, filled) = loops_above(grey, mask.clone(), crossing, least_area);
     let vertices: usize = loops.iter().map(Vec::len).sum();
     if vertices > MAX_VERTICES {
         return Err(MicrographProblem::TooNoisy);

@@ -16,6 +16,8 @@ mod profile;
 mod section_notes;
 mod section_options;
 mod sections;
+#[cfg(test)]
+mod sections_tests;
 mod shape_fits;
 mod table_problem;
 mod thinning;

@@ -206,21 +206,30 @@ impl Arrangement {
             .fold(0.0, f64::max);
         let closed = (CLOSED * largest).max(64.0 * f64::EPSILON * size);
         for at in 0..self.positions.len() {
-            for side in 0..2 {
-                let mut around = (f64::NEG_INFINITY, f64::INFINITY);
-                for layer in 0..self.lower.len() {
-                    let mut low = self.lower[layer][at][side].max(around.0);
-                    let mut high = self.upper[layer][at][side].min(around.1);
-                    if high - low <= closed || !(low.is_finite() && high.is_finite()) {
-                        let level = if high.is_finite() { high } else { low };
-                        let level = if level.is_finite() { level } else { 0.0 };
-                        low = level.max(around.0).min(around.1);
-                        high = low;
-                    }
-                    self.lower[layer][at][side] = low;
-                    self.upper[layer][at][side] = high;
-                    around = (low, high);
+            let mut around = [[f64::NEG_INFINITY; 2], [f64::INFINITY; 2]];
+            for layer in 0..self.lower.len() {
+                let (low, high) = (&mut self.lower[layer][at], &mut self.upper[layer][at]);
+                for side in 0..2 {
+                    low[side] = low[side].max(around[0][side]);
+                    high[side] = high[side].min(around[1][side]);
                 }
+                // A jump of a rounding step is none.
+                if (low[0] - low[1]).abs() <= closed {
+                    *low = [low[0].max(low[1]); 2];
+                }
+                if (high[0] - high[1]).abs() <= closed {
+                    *high = [high[0].min(high[1]); 2];
+                }
+                for side in 0..2 {
+                    let (below, above) = (low[side], high[side]);
+                    if above - below <= closed || !(above.is_finite() && below.is_finite()) {
+                        let level = if above.is_finite() { above } else { below };
+                        let level = if level.is_finite() { level } else { 0.0 };
+                        low[side] = level.max(around[0][side]).min(around[1][side]);
+                        high[side] = low[side];
+                    }
+                }
+                around = [*low, *high];
             }
         }
     }
@@ -300,7 +309,7 @@ impl Arrangement {
             while points.len() > 1 && points.first() == points.last() {
                 points.pop();
             }
-            points
+            without_level_vertices(&points)
         };
         let all_points = ring(&|_, _| true);
         let x = |at: usize| self.positions[at];
@@ -336,4 +345,19 @@ impl Arrangement {
         }
         points
     }
+}
+
+/// The ring without vertices on level or upright stretches, which changes nothing at all.
+fn without_level_vertices(points: &[Point]) -> Vec<Point> {
+    let count = points.len();
+    let is_between = |index: usize| {
+        let [a, b, c] = [index + count - 1, index, index + 1].map(|i| points[i % count]);
+        let same = |axis: usize| {
+            a[axis].to_bits() == b[axis].to_bits() && b[axis].to_bits() == c[axis].to_bits()
+        };
+        let inside = |axis: usize| (a[axis] < b[axis]) == (b[axis] < c[axis]);
+        (same(1) && inside(0)) || (same(0) && inside(1))
+    };
+    let kept = (0..count).filter(|&index| !is_between(index));
+    kept.map(|index| points[index]).collect()
 }

@@ -74,6 +74,12 @@ pub(super) fn find(
         }
     }
     let flank = |(from, to): (usize, usize)| {
+        // The sample at the foot may have been read while the tip still hung on the flank.
+        let (from, to) = if z[from] < z[to] {
+            (from.saturating_sub(1), to)
+        } else {
+            (from, (to + 1).min(z.len() - 1))
+        };
         let inside = z[from..=to].iter();
         let low = inside.clone().copied().fold(f64::INFINITY, f64::min);
         let high = inside.copied().fold(f64::NEG_INFINITY, f64::max);

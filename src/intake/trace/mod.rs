@@ -28,6 +28,8 @@ mod scan;
 mod section_notes;
 mod section_options;
 mod sections;
+#[cfg(test)]
+mod sections_tests;
 mod shape_fits;
 mod spikes;
 mod step_height;

@@ -16,7 +16,7 @@ use crate::geometry::Point;
 pub const KOH_ANGLE: f64 = 0.955_316_618_124_509_3;
 
 /// Points along the wall.
-const POINTS: usize = 600;
+const POINTS: usize = 300;
 /// Rounds of the fits.
 const ROUNDS: usize = 60;
 
@@ -144,20 +144,23 @@ pub(super) fn isotropic(points: &[Point]) -> Option<IsotropicFit> {
         (depth - radius, aside / radius.max(f64::MIN_POSITIVE))
     };
     for _ in 0..ROUNDS {
-        let mut normal = Matrix3::<f64>::zeros();
-        let mut rest = Vector3::zeros();
+        // Moving a centre by 1 changes the distance by the sine of its side, the depth by 1; a point belongs
+        // to one side only.
+        let (mut squares, mut sums, mut rest) = ([0.0; 2], [0.0; 2], [0.0; 3]);
         for p in points {
             let (off, sine) = distance([left, right, depth], p);
-            // Moving a centre by 1 changes the distance by the sine of its side.
-            let row = Vector3::new(sine.min(0.0), sine.max(0.0), 1.0);
-            normal += row * row.transpose();
-            rest -= row * off;
+            let side = usize::from(sine > 0.0);
+            squares[side] += sine * sine;
+            sums[side] += sine;
+            rest[side] -= sine * off;
+            rest[2] -= off;
         }
         // A side without points leaves its centre where it is.
-        for index in 0..3 {
-            normal[(index, index)] += 1e-9 * points.len() as f64;
-        }
-        let step = normal.lu().solve(&rest)?;
+        let count = points.len() as f64;
+        let [a, b] = squares.map(|s| s + 1e-9 * count);
+        let [d, e] = sums;
+        let normal = Matrix3::new(a, 0.0, d, 0.0, b, e, d, e, count);
+        let step = normal.lu().solve(&Vector3::from(rest))?;
         left += step[0];
         right += step[1];
         depth += step[2];

@@ -244,7 +244,7 @@ mod tests {
         };
         let x: Vec<f64> = (0..400).map(|i| f64::from(i) * 0.25e-6).collect();
         let wall = |&p: &f64| {
-            if p <= 30e-6 || p >= 80e-6 {
+            if p < 30.1e-6 || p > 79.9e-6 {
                 0.0
             } else {
                 -10e-6
@@ -257,7 +257,7 @@ mod tests {
             z: read.clone(),
         };
         let back = take_back(&profile, tip);
-        let edge = x.iter().position(|&p| p >= 30e-6).unwrap();
+        let edge = x.iter().position(|&p| p > 29.9e-6).unwrap();
         // As read, the ball has begun to sink one sample past the edge only little; taken back, it fell by
         // the cone.
         assert!(read[edge + 1] > -0.01e-6 && back.height[edge + 1] < -0.3e-6);

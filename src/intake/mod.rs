@@ -36,7 +36,7 @@ mod toml_values;
 mod trace;
 mod wall_tables;
 
-pub use height_map::{HeightMap, MapProblem};
+pub use height_map::{HeightMap, MapProblem, map_from_bytes};
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
 pub use micrograph::MicrographProblem;
 pub use provenance::{Provenance, SectionKind};

@@ -4,7 +4,7 @@ use std::path::{Path, PathBuf};
 
 use super::content_kind::{FileContent, content_of};
 use super::height_map::{
-    CutOptions, HeightMap, MapCuts, SurfaceContent, SurfaceFormat, cut,
+    CutOptions, HeightMap, MapCuts, SurfaceContent, SurfaceFormat, cut, read_map_table,
     read_surface,
 };
 use super::limits::{MAX_FILE_BYTES, check_file_size};

@@ -42,7 +42,7 @@ mod wall_tables;
 
 pub use height_map::{
     CutOptions, HeightMap, MAX_MAP_POINTS, MapCut, MapCuts, MapProblem, SurfaceContent,
-    SurfaceFormat, cut, heights_csv, read_surface, surface_format,
+    SurfaceFormat, cut, heights_csv, map_from_bytes, read_surface, surface_format,
 };
 pub use instrument::{
     InstrumentData, InstrumentOptions, InstrumentReading, Intake, MapReading, TraceReading,

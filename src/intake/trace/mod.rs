@@ -73,3 +73,21 @@ pub(crate) use table_trace::read_trace_table;
 pub use table_trace::trace_from_bytes;
 pub use trace_problem::TraceProblem;
 pub use trench_numbers::{TrenchNumbers, WallNumbers};
+
+/// What the reader of height maps in text shares with the reader of traces.
+pub(in crate::intake) mod table {
+    pub(in crate::intake) use super::table_choice::{AxisUnit, axis_unit, bare, missing_unit};
+    pub(in crate::intake) use super::table_columns::Role;
+    pub(in crate::intake) use super::table_keys::KeptLength;
+    pub(in crate::intake) use super::table_kind::lists_points;
+    pub(in crate::intake) use super::table_layout::Layout;
+    pub(in crate::intake) use super::table_lines::{Line, fault};
+    pub(in crate::intake) use super::table_marks::Numbers;
+    pub(in crate::intake) use super::table_plausibility::check_span;
+    pub(in crate::intake) use super::table_trace::{check_step, cut_warning, table_text};
+}
+
+#[cfg(test)]
+mod table_robustness_tests;
+#[cfg(test)]
+mod table_tests;

@@ -6,9 +6,10 @@
 
 use super::table_columns::{NamedColumn, Role};
 use super::table_layout::Layout;
-use super::table_lines::shortened;
+use super::table_lines::{fault, shortened};
 use super::table_marks::Numbers;
 use super::table_options::TableOptions;
+use super::table_plausibility::likely_unit;
 use super::table_problem::{TableAxis, TableProblem};
 use super::table_units::{WrittenUnit, instrument_length};
 use crate::intake::delimited_text::offset_of;
@@ -65,7 +66,7 @@ pub(crate) fn column_asked(
         Some(index) => Ok(Some(index)),
         None => Err(TableProblem::NoSuchColumn {
             name: shortened(wanted),
-            known: layout.shown_columns(|_| true),
+            known: layout.shown_columns(0..layout.columns.len()),
         }
         .into()),
     }
@@ -135,7 +136,7 @@ fn by_names(
         (None, []) => None,
         (None, &[x]) => Some(x),
         (None, several) => {
-            let columns = layout.shown_columns(|index| several.contains(&index));
+            let columns = layout.shown_columns(several.iter().copied());
             return Err(TableProblem::SeveralPositions { columns }.into());
         }
     };
@@ -146,7 +147,7 @@ fn by_names(
     let x = x.or_else(|| unnamed_position(layout, z));
     let mut warnings = Vec::new();
     if !passed_over.is_empty() {
-        let shown = layout.shown_columns(|index| passed_over.contains(&index));
+        let shown = layout.shown_columns(passed_over.iter().copied());
         let chosen = layout.columns.get(z).map(|c| c.shown(z));
         warnings.push(Warning {
             code: Code::ChoiceMade,
@@ -173,7 +174,7 @@ fn named_height(
         && !with_role(&[Role::Height]).is_empty()
         && layout.columns.len() == 3
     {
-        return Err(TableProblem::PointsNotTrace.into());
+        return Err(TableProblem::AreaNotTrace.into());
     }
     let heights = with_role(&[Role::Height, Role::Depth]);
     let seconds = with_role(&[Role::Second]);
@@ -195,12 +196,12 @@ fn named_height(
                 return Ok((z, rest));
             }
             several => {
-                let columns = layout.shown_columns(|index| several.contains(&index));
+                let columns = layout.shown_columns(several.iter().copied());
                 return Err(TableProblem::SeveralHeights { columns }.into());
             }
         }
     }
-    let columns = layout.shown_columns(|_| true);
+    let columns = layout.shown_columns(0..layout.columns.len());
     Err(TableProblem::NoHeightColumn { columns }.into())
 }
 
@@ -255,7 +256,7 @@ fn by_places(
         (None, &[z]) => z,
         (None, []) => 0,
         (None, several) => {
-            let columns = layout.shown_columns(|index| several.contains(&index));
+            let columns = layout.shown_columns(several.iter().copied());
             return Err(TableProblem::SeveralHeights { columns }.into());
         }
     };
@@ -422,4 +423,30 @@ pub(crate) fn axis_unit(
 /// The unit of bare metres, for reading numbers before their unit is known.
 pub(crate) fn bare() -> UnitScale {
     length_scale("m").unwrap_or_else(|| UnitScale::from_factor(1.0))
+}
+
+/// The fault of a missing unit, with the one unit in which the numbers would be plausible.
+pub(crate) fn missing_unit(layout: &Layout<'_>, axis: TableAxis, index: usize) -> Fault {
+    let mut numbers = Numbers::new(layout.marks);
+    let mut fields = Vec::new();
+    let (mut low, mut high) = (f64::INFINITY, f64::NEG_INFINITY);
+    for line in layout.rows() {
+        let read = layout
+            .fields(line, &mut fields)
+            .ok()
+            .and_then(|()| numbers.read(fields.get(index)?, bare()).ok()?);
+        if let Some(value) = read {
+            (low, high) = (low.min(value), high.max(value));
+        }
+    }
+    let likely = (high > low)
+        .then(|| likely_unit(axis, high - low))
+        .flatten();
+    let problem = TableProblem::MissingUnit { axis, likely };
+    let column = layout.columns.get(index).filter(|c| !c.field.is_empty());
+    let offset = match column {
+        Some(column) => offset_of(layout.text, column.field),
+        None => layout.data.start,
+    };
+    fault(layout.text, offset, problem)
 }

@@ -280,6 +280,19 @@ fn key_of(text: &str) -> Option<Key> {
         .map(|(key, _)| *key)
 }
 
+/// Whether fields are a key for a unit and its value, such as `Z units,nm`, and name no columns.
+pub(crate) fn is_unit_key(fields: &[&str]) -> bool {
+    match fields {
+        [key, value] => {
+            matches!(
+                key_of(key),
+                Some(Key::PositionUnit | Key::HeightUnit | Key::Unit)
+            ) && unit_of(value).is_some()
+        }
+        _ => false,
+    }
+}
+
 /// A unit as the value of a key.
 fn unit_of(value: &str) -> Option<(String, UnitScale)> {
     let bare = value.trim().trim_matches(['(', ')', '[', ']']);

@@ -13,13 +13,14 @@ use super::table_units::WrittenUnit;
 use crate::intake::columns::Columns;
 use crate::intake::read_error::ReadProblem;
 use crate::units::UnitScale;
+use crate::warning::{Code, Warning};
 
 /// Rows from which positions that rise or fall throughout make a trace.
 const TRACE_FROM_ROWS: usize = 12;
 /// Smallest part of the places of a grid that a list of points must fill.
 const FILLED_GRID: f64 = 0.5;
-/// Most columns of a list of points or of a table with several heights.
-const MOST_NAMED_PLACES: usize = 3;
+/// Columns of a list of points.
+const COLUMNS_OF_POINTS: usize = 3;
 
 /// What a text table is.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -90,14 +91,16 @@ fn kind_of(layout: &Layout<'_>) -> Option<TableKind> {
     match (roles.len(), layout.is_named) {
         (1, _) => Some(TableKind::Trace),
         (2, _) => two_columns(layout),
-        (3, true) if has(Role::Position) && has(Role::Second) && has(Role::Height) => {
+        (COLUMNS_OF_POINTS, true)
+            if has(Role::Position) && has(Role::Second) && has(Role::Height) =>
+        {
             points(layout).then_some(TableKind::Points)
         }
         (_, true) if has(Role::Position) || has(Role::Height) || has(Role::Index) => {
             Some(TableKind::Trace)
         }
         (_, _) if has_area => Some(TableKind::Matrix),
-        (MOST_NAMED_PLACES, _) if points(layout) => Some(TableKind::Points),
+        (COLUMNS_OF_POINTS, _) if points(layout) => Some(TableKind::Points),
         _ => {
             let order = Order::of(layout, usize::from(counts_rows(layout, 0)));
             if order.is_monotone() && layout.data.rows >= TRACE_FROM_ROWS {
@@ -220,6 +223,41 @@ impl Order {
     fn is_monotone(&self) -> bool {
         self.moves && (self.rises || self.falls)
     }
+}
+
+/// Whether a table holds heights over an area.
+pub(crate) fn is_area(layout: &Layout<'_>) -> bool {
+    matches!(kind_of(layout), Some(TableKind::Matrix | TableKind::Points))
+}
+
+/// The warning that a table read as a trace could be a closed section as well: two plain columns, and
+/// nothing in the file that says what they are.
+pub(crate) fn outline_doubt(layout: &Layout<'_>) -> Option<Warning> {
+    let open = layout.columns.len() == 2
+        && !says_trace(layout)
+        && outline_can_be_read(layout)
+        && layout
+            .columns
+            .iter()
+            .all(|column| column.role != Role::Height);
+    open.then(|| Warning {
+        code: Code::ChoiceMade,
+        message: "nothing in the file says whether it is a trace or the outline of a section; it is read as a \
+                  trace because its positions rise or fall throughout"
+            .to_owned(),
+        advice: "read it with `--as outline` if it is the outline of a section".to_owned(),
+        numbers: Vec::new(),
+    })
+}
+
+/// Whether a table of heights over an area lists points rather than rows.
+pub(crate) fn lists_points(layout: &Layout<'_>) -> bool {
+    matches!(kind_of(layout), Some(TableKind::Points))
+        || (layout.is_named
+            && layout.columns.len() == COLUMNS_OF_POINTS
+            && [Role::Position, Role::Second, Role::Height]
+                .iter()
+                .all(|role| layout.columns.iter().any(|column| column.role == *role)))
 }
 
 /// Whether the first two columns place points on a grid that is filled at least by half.

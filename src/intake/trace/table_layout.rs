@@ -1,7 +1,9 @@
 //! The layout of a table: header, names and units of its columns, separator, decimal mark, rows.
 
+use std::collections::BTreeMap;
+
 use super::table_columns::{NamedColumn, are_units, names_columns, spaced_names};
-use super::table_keys::{Declared, key_and_value};
+use super::table_keys::{Declared, is_unit_key, key_and_value};
 use super::table_lines::{
     Line, Parts, Run, TextLine, fault, is_missing, rows, take_apart, without_comment,
 };
@@ -49,7 +51,7 @@ impl<'a> Layout<'a> {
         let marks = decide(text, &parts, options.decimal)?;
         let count = take_count(text, &mut parts, marks);
         let mut cut_line = parts.cut_line.map(|line| line.offset);
-        let width = widest(text, &parts, marks);
+        let width = usual_width(text, &parts, marks);
         if let Some(offset) = short_last_line(text, &parts, marks, width) {
             parts.data.end = offset;
             parts.data.rows = parts.data.rows.saturating_sub(1);
@@ -107,22 +109,21 @@ impl<'a> Layout<'a> {
         Err(TableProblem::TooManySamples { found, limit }.into())
     }
 
-    /// Names of all columns for messages.
-    pub(crate) fn shown_columns(&self, chosen: impl Fn(usize) -> bool) -> String {
+    /// Names of columns for messages, by their places.
+    pub(crate) fn shown_columns(&self, places: impl ExactSizeIterator<Item = usize>) -> String {
         const MOST_SHOWN: usize = 12;
-        let mut shown: Vec<String> = self
-            .columns
-            .iter()
-            .enumerate()
-            .filter(|(index, _)| chosen(*index))
-            .map(|(index, column)| match column.field {
-                "" => column.shown(index),
-                _ => format!("{} {}", index + 1, column.shown(index)),
+        let more = places.len().saturating_sub(MOST_SHOWN);
+        let mut shown: Vec<String> = places
+            .take(MOST_SHOWN)
+            .filter_map(|index| {
+                let column = self.columns.get(index)?;
+                Some(match column.field {
+                    "" => column.shown(index),
+                    _ => format!("{} {}", index + 1, column.shown(index)),
+                })
             })
             .collect();
-        if shown.len() > MOST_SHOWN {
-            let more = shown.len() - MOST_SHOWN;
-            shown.truncate(MOST_SHOWN);
+        if more > 0 {
             shown.push(format!("and {more} more"));
         }
         shown.join(", ")
@@ -157,15 +158,18 @@ fn take_count(text: &str, parts: &mut Parts<'_>, marks: Marks) -> Option<usize> 
     Some(count)
 }
 
-/// Most fields in one of the first rows.
-fn widest(text: &str, parts: &Parts<'_>, marks: Marks) -> usize {
+/// The number of fields most of the first rows have; of two equally frequent the larger.
+fn usual_width(text: &str, parts: &Parts<'_>, marks: Marks) -> usize {
     let mut fields = Vec::new();
-    let mut most = 1;
+    let mut widths: BTreeMap<usize, usize> = BTreeMap::new();
     for line in parts.rows(text).take(SAMPLE_ROWS) {
         marks.split(without_comment(line.content), &mut fields);
-        most = most.max(fields.len());
+        *widths.entry(fields.len().max(1)).or_default() += 1;
     }
-    most
+    widths
+        .into_iter()
+        .max_by_key(|(width, rows)| (*rows, *width))
+        .map_or(1, |(width, _)| width)
 }
 
 /// The byte offset of a last row that has no line end and fewer fields than the others.
@@ -202,7 +206,9 @@ impl<'a> Head<'a> {
             };
             if units.is_none() && are_units(&fields) {
                 units = Some(fields);
-            } else if names_columns(&fields) || asked_for(&fields, options) {
+            } else if (names_columns(&fields) && !is_unit_key(&fields))
+                || asked_for(&fields, options)
+            {
                 names = Some(fields);
             } else {
                 break;

@@ -102,7 +102,8 @@ impl Evidence {
             self.broken_comma_field |= part.contains([' ', '\t']);
             let signed = index % 2 == 1 && part.starts_with(['-', '+', '\u{2212}']);
             let body = part.trim_start_matches(['-', '+', '\u{2212}']);
-            self.four_whole &= !signed && body.bytes().all(|b| b.is_ascii_digit());
+            self.four_whole &=
+                !signed && !body.is_empty() && body.bytes().all(|b| b.is_ascii_digit());
         }
         self.four_whole &= parts == 4;
         let mut words = 0;

@@ -192,7 +192,12 @@ fn even_positions(x: &[f64], quantum: f64, declared: &Declared) -> Option<Even> 
         if high - low <= quantum + slack {
             let first = x.first().copied().unwrap_or_default();
             // The first position stays as written where the rounding allows it.
-            let origin = first.max(high - quantum / 2.0).min(low + quantum / 2.0);
+            let (lowest, highest) = (high - quantum / 2.0, low + quantum / 2.0);
+            let origin = if (lowest - slack..=highest + slack).contains(&first) {
+                first
+            } else {
+                first.max(lowest).min(highest)
+            };
             return Some(Even { origin, step, from });
         }
     }

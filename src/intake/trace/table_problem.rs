@@ -248,9 +248,12 @@ pub enum TableProblem {
         /// The one unit that would be plausible, where there is only one.
         likely: Option<&'static str>,
     },
-    /// A list of points where a trace is asked for.
-    #[error("the table lists points over an area (x, y and z), not heights along a line")]
-    PointsNotTrace,
+    /// Heights over an area where a trace is asked for.
+    #[error("the table holds heights over an area, not along a line")]
+    AreaNotTrace,
+    /// A trace where heights over an area are asked for.
+    #[error("the table holds heights along a line, not over an area")]
+    TraceNotArea,
     /// A matrix without the distance of its points.
     #[error("nothing says the distance of the points along {direction}")]
     NoSpacing {
@@ -372,9 +375,10 @@ impl TableProblem {
                 "keep one height for each position, or export positions with more decimals"
             }
             Self::NoHeights => "name the heights by `--z-column`, or check the measurement",
-            Self::PointsNotTrace => {
-                "it is read as a height map; or name the two columns by `--x-column` and `--z-column`"
+            Self::AreaNotTrace => {
+                "read it as a height map, or name two of its columns by `--x-column` and `--z-column`"
             }
+            Self::TraceNotArea => "read it as a trace",
             Self::NotALattice { .. } => "export the map on its rectangular grid",
             Self::PointWithoutPlace => "write numbers for x and y; only a height may be missing",
             Self::RepeatedPoint => "keep one height for each place",

@@ -6,16 +6,18 @@
 //! rebuilt only where their rounding explains their unevenness.
 
 use super::profile::{Profile, RawTrace};
-use super::table_choice::{Choice, axis_unit, bare, choose, counts_rows};
+use super::table_choice::{Choice, axis_unit, choose, counts_rows, missing_unit};
 use super::table_columns::Role;
 use super::table_keys::{KeptLength, tip_radius};
+use super::table_kind::{is_area, outline_doubt};
 use super::table_layout::Layout;
 use super::table_lines::{Line, fault};
 use super::table_marks::Numbers;
 use super::table_options::{Decimal, TableOptions};
-use super::table_plausibility::{check_span, likely_unit};
+use super::table_plausibility::check_span;
 use super::table_positions::{OrderWatch, RoundingWatch, compare, rebuild};
 use super::table_problem::{TableAxis, TableProblem};
+use super::table_units::WrittenUnit;
 use crate::intake::delimited_text::{Delimiter, offset_of};
 use crate::intake::limits::{MAX_FILE_BYTES, check_file_size};
 use crate::intake::read_error::{Fault, ReadError, ReadProblem};
@@ -72,6 +74,9 @@ pub(crate) fn read_trace_table(
     let layout = Layout::of(text, options)?;
     layout.check_samples(2)?;
     check_step(options.x_step)?;
+    if options.x_column.is_none() && options.z_column.is_none() && is_area(&layout) {
+        return Err(TableProblem::AreaNotTrace.into());
+    }
     let choice = choose(&layout, options)?;
     let units = Units::of(&layout, &choice, options)?;
     let samples = Samples::read(&layout, &units)?;
@@ -82,6 +87,7 @@ pub(crate) fn read_trace_table(
         options,
     };
     reading.warnings.extend(choice.warnings.iter().cloned());
+    reading.warnings.extend(outline_doubt(&layout));
     let profile = reading.profile(samples, &units)?;
     let (tip, tip_step) = tip_radius(&layout.metadata, layout.marks.decimal);
     reading.steps.extend(tip_step);
@@ -125,9 +131,11 @@ impl Units {
         // A count of samples is no position; with a step given, unnamed positions without unit are one.
         let x = choice.x.filter(|&index| {
             let column = layout.columns.get(index);
+            let is_bare = column.is_none_or(|c| c.field.is_empty() && c.unit == WrittenUnit::None);
             let is_index = column.is_some_and(|c| c.role == Role::Index)
                 || (options.x_step.is_some()
                     && options.x_column.is_none()
+                    && is_bare
                     && counts_rows(layout, index));
             !is_index
         });
@@ -155,32 +163,6 @@ impl Units {
             (_, _, None) => Err(missing_unit(layout, TableAxis::Heights, z)),
         }
     }
-}
-
-/// The fault of a missing unit, with the one unit in which the numbers would be plausible.
-pub(crate) fn missing_unit(layout: &Layout<'_>, axis: TableAxis, index: usize) -> Fault {
-    let mut numbers = Numbers::new(layout.marks);
-    let mut fields = Vec::new();
-    let (mut low, mut high) = (f64::INFINITY, f64::NEG_INFINITY);
-    for line in layout.rows() {
-        let read = layout
-            .fields(line, &mut fields)
-            .ok()
-            .and_then(|()| numbers.read(fields.get(index)?, bare()).ok()?);
-        if let Some(value) = read {
-            (low, high) = (low.min(value), high.max(value));
-        }
-    }
-    let likely = (high > low)
-        .then(|| likely_unit(axis, high - low))
-        .flatten();
-    let problem = TableProblem::MissingUnit { axis, likely };
-    let column = layout.columns.get(index).filter(|c| !c.field.is_empty());
-    let offset = match column {
-        Some(column) => offset_of(layout.text, column.field),
-        None => layout.data.start,
-    };
-    fault(layout.text, offset, problem)
 }
 
 /// Samples as read.
@@ -337,17 +319,20 @@ fn layout_steps(layout: &Layout<'_>, units: &Units, samples: &Samples) -> Vec<St
     steps
 }
 
+/// The warning about a last line that was left out.
+pub(crate) fn cut_warning(layout: &Layout<'_>) -> Option<Warning> {
+    let offset = layout.cut_line?;
+    let line = crate::intake::source_text::place_at(layout.text, offset).line;
+    Some(Warning {
+        code: Code::FileDefect,
+        message: format!("the last line, {line}, is cut off and was left out"),
+        advice: "check that the file is complete".to_owned(),
+        numbers: vec![("line", line as f64)],
+    })
+}
+
 fn layout_warnings(layout: &Layout<'_>, samples: &Samples) -> Vec<Warning> {
-    let mut warnings = Vec::new();
-    if let Some(offset) = layout.cut_line {
-        let line = crate::intake::source_text::place_at(layout.text, offset).line;
-        warnings.push(Warning {
-            code: Code::FileDefect,
-            message: format!("the last line, {line}, is cut off and was left out"),
-            advice: "check that the file is complete".to_owned(),
-            numbers: vec![("line", line as f64)],
-        });
-    }
+    let mut warnings: Vec<Warning> = cut_warning(layout).into_iter().collect();
     if samples.without_position > 0 {
         warnings.push(Warning {
             code: Code::FileDefect,

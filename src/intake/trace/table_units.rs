@@ -122,11 +122,14 @@ pub(crate) fn split_unit(field: &str) -> (&str, WrittenUnit<'_>) {
     if let Some((name, unit)) = bracketed(field) {
         return (name, written_unit(unit));
     }
+    let parted = |c: char| c.is_whitespace() || matches!(c, '_' | '/' | ':' | ',' | '.' | '-');
     let alone = written_unit(field);
-    if !matches!(alone, WrittenUnit::Unknown(_)) {
+    let is_one_word = !field.contains(parted);
+    if !matches!(alone, WrittenUnit::Unknown(_) | WrittenUnit::Destroyed(_))
+        || (is_one_word && matches!(alone, WrittenUnit::Destroyed(_)))
+    {
         return ("", alone);
     }
-    let parted = |c: char| c.is_whitespace() || matches!(c, '_' | '/' | ':' | ',' | '.' | '-');
     let Some((at, mark)) = field.char_indices().rev().find(|&(_, c)| parted(c)) else {
         return (field, WrittenUnit::None);
     };

@@ -7,6 +7,8 @@
 mod container;
 mod cut;
 mod cut_lines;
+#[cfg(test)]
+mod cut_tests;
 mod file_defects;
 mod groove_direction;
 mod groove_profile;

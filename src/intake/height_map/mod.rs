@@ -18,6 +18,8 @@ mod map_blocks;
 mod map_problem;
 mod sdf;
 mod sdf_binary;
+#[cfg(test)]
+mod sdf_tests;
 mod sdf_text;
 mod stored_number;
 mod surface;
@@ -27,6 +29,8 @@ mod surface_size;
 mod x3p;
 mod x3p_description;
 mod x3p_points;
+#[cfg(test)]
+mod x3p_tests;
 
 pub use cut::{CutOptions, MapCut, MapCuts, cut};
 pub use map_problem::MapProblem;

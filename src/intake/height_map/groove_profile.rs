@@ -96,10 +96,10 @@ impl FittedProfile {
     ///
     /// A small turn `d` moves the profile by `d (v - m)` at a point, where `m` is the mean `v` of all
     /// points with its `u`: their mean place is what the fit has taken already. `d` follows by least
-    /// squares from the heights left over and the slopes of the profile. Its uncertainty is from the
-    /// scatter of the equations between stripes along the direction, and between bands across it,
-    /// whichever is larger, since heights left over are alike within a groove and from point to point.
-    /// `None` where the profile has no slope.
+    /// squares from the heights left over and the slopes of the profile, together with a tilt along the
+    /// groove that the plane may have left. Its uncertainty is from the scatter of the equations between
+    /// stripes along the direction, and between bands across it, whichever is larger, since heights left
+    /// over are alike within a groove and from point to point. `None` where the profile has no slope.
     pub(super) fn turn(&self, points: &[HeightPoint]) -> Option<(f64, f64)> {
         let along = |p: &HeightPoint| self.along[0] * p[0] + self.along[1] * p[1];
         let direction = self.along[1].atan2(self.along[0]);
@@ -112,33 +112,78 @@ impl FittedProfile {
             });
         let stripe = (high - low) / PARTS as f64;
         let band = self.knot * self.values.len() as f64 / PARTS as f64;
-        let mut stripes = [[0.0; 2]; PARTS];
-        let mut bands = [[0.0; 2]; PARTS];
+        let mut stripes = [TurnEquations::default(); PARTS];
+        let mut bands = [TurnEquations::default(); PARTS];
         for p in points {
             let (u, v) = (self.across[0] * p[0] + self.across[1] * p[1], along(p));
             let (height, slope) = self.at(u);
-            let lever = slope * (v - means.at(u).0);
-            let parts = [-lever * (p[2] - height), lever * lever];
+            let lever = v - means.at(u).0;
+            let here = TurnEquations::of_point(slope, lever, p[2] - height);
             let places = [(v - low) / stripe, (u - self.first) / band];
             for (sums, place) in [&mut stripes, &mut bands].into_iter().zip(places) {
                 if let Some(sum) = sums.get_mut((place.max(0.0) as usize).min(PARTS - 1)) {
-                    sum[0] += parts[0];
-                    sum[1] += parts[1];
+                    *sum = sum.plus(&here);
                 }
             }
         }
-        let right: f64 = stripes.iter().map(|sum| sum[0]).sum();
-        let weight: f64 = stripes.iter().map(|sum| sum[1]).sum();
-        let turn = right / weight;
-        if !turn.is_finite() {
-            return None;
-        }
-        let scatter = |sums: &[[f64; 2]]| -> f64 {
-            let left = sums.iter().map(|sum| sum[0] - turn * sum[1]);
-            let used = sums.iter().filter(|sum| sum[1] > 0.0).count() as f64;
-            left.map(|e| e * e).sum::<f64>().sqrt() / weight * (used / (used - 1.0).max(1.0)).sqrt()
+        let none = TurnEquations::default();
+        let all = stripes.iter().fold(none, |sum, part| sum.plus(part));
+        let (turn, tilt) = all.solve(all.right)?;
+        let scatter = |parts: &[TurnEquations]| -> f64 {
+            let used = parts.iter().filter(|part| part.matrix[2] > 0.0).count() as f64;
+            let squares = parts.iter().map(|part| {
+                let left = part.left_over(turn, tilt);
+                all.solve(left).map_or(0.0, |(turn, _)| turn * turn)
+            });
+            (squares.sum::<f64>() * used / (used - 1.0).max(1.0)).sqrt()
         };
         Some((turn.atan(), scatter(&stripes).max(scatter(&bands))))
+    }
+}
+
+/// Normal equations of the turn `d` and the tilt `t`: height left over `= -d slope lever + t lever`.
+#[derive(Debug, Clone, Copy, Default)]
+struct TurnEquations {
+    /// Turn with turn, turn with tilt, tilt with tilt.
+    matrix: [f64; 3],
+    right: [f64; 2],
+}
+
+impl TurnEquations {
+    fn of_point(slope: f64, lever: f64, left: f64) -> Self {
+        let (by_turn, by_tilt) = (-slope * lever, lever);
+        Self {
+            matrix: [by_turn * by_turn, by_turn * by_tilt, by_tilt * by_tilt],
+            right: [by_turn * left, by_tilt * left],
+        }
+    }
+
+    fn plus(&self, other: &Self) -> Self {
+        Self {
+            matrix: [0, 1, 2].map(|k| self.matrix[k] + other.matrix[k]),
+            right: [0, 1].map(|k| self.right[k] + other.right[k]),
+        }
+    }
+
+    /// Turn and tilt for a right side; `None` where the slopes do not tell them apart.
+    fn solve(&self, right: [f64; 2]) -> Option<(f64, f64)> {
+        let [a, b, d] = self.matrix;
+        let determinant = a * d - b * b;
+        let solved = (
+            (right[0] * d - right[1] * b) / determinant,
+            (right[1] * a - right[0] * b) / determinant,
+        );
+        let clear = determinant > 1e-9 * a * d;
+        (clear && solved.0.is_finite() && solved.1.is_finite()).then_some(solved)
+    }
+
+    /// What a solution leaves of the right side.
+    fn left_over(&self, turn: f64, tilt: f64) -> [f64; 2] {
+        let [a, b, d] = self.matrix;
+        [
+            self.right[0] - a * turn - b * tilt,
+            self.right[1] - b * turn - d * tilt,
+        ]
     }
 }
 

@@ -127,7 +127,7 @@ fn median_slope(blocks: &MapBlocks) -> Option<Point> {
     centre.iter().all(|c| c.is_finite()).then_some(centre)
 }
 
-/// Height of the uppermost strong peak of the histogram, and half the width it is taken to have.
+/// Height of the uppermost strong peak of the histogram, and how far from it heights may belong to it.
 fn upper_level(heights: &[f64]) -> (f64, f64) {
     let mut sorted = heights.to_vec();
     sorted.sort_unstable_by(f64::total_cmp);
@@ -169,7 +169,12 @@ fn upper_level(heights: &[f64]) -> (f64, f64) {
             here >= STRONG_PEAK * highest && beside.all(|&other| here >= other)
         })
         .unwrap_or(CLASSES - 1);
-    (low + (peak as f64 + 0.5) * class, 5.0 * class)
+    // The upper side of the peak is free of flanks: half its height is reached at 1.18 standard deviations.
+    let half = 0.5 * smooth.get(peak).copied().unwrap_or(0.0);
+    let above = smooth.iter().skip(peak).take_while(|count| **count > half);
+    let half_width = above.count() as f64;
+    let reach = (BIWEIGHT / 1.18 * half_width).max(5.0);
+    (low + (peak as f64 + 0.5) * class, reach * class)
 }
 
 /// A plane fitted with biweights of the distance from it, repeated from a start.

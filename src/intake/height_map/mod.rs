@@ -7,6 +7,8 @@
 mod container;
 mod cut;
 mod cut_lines;
+#[cfg(test)]
+mod cut_tests;
 mod file_defects;
 mod groove_direction;
 mod groove_profile;
@@ -16,6 +18,8 @@ mod map_blocks;
 mod map_problem;
 mod sdf;
 mod sdf_binary;
+#[cfg(test)]
+mod sdf_tests;
 mod sdf_text;
 mod stored_number;
 mod map_table;
@@ -26,6 +30,8 @@ mod surface_size;
 mod x3p;
 mod x3p_description;
 mod x3p_points;
+#[cfg(test)]
+mod x3p_tests;
 
 pub use cut::{CutOptions, MapCut, MapCuts, cut};
 pub use map_problem::MapProblem;

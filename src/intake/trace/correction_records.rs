@@ -50,9 +50,9 @@ pub(super) fn repeats(trace: &mut CorrectedTrace, ground: Option<&Ground>) {
     }
     for place in &agreement.places {
         text.push_str(&format!(
-            "; shifted by {}, stretched by {}{}",
+            "; shifted by {}, by {} more or less from channel to channel{}",
             format_length(place.shift),
-            format_percent(place.stretch, 2),
+            format_length(0.5 * place.uneven),
             if place.is_reversed {
                 ", traced backwards"
             } else {

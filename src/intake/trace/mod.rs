@@ -9,6 +9,8 @@ mod corrected;
 mod correction_options;
 mod correction_records;
 mod corrections;
+#[cfg(test)]
+mod corrections_tests;
 mod groove_problem;
 mod groove_section;
 mod lands;

@@ -15,7 +15,7 @@ use super::profile::{Profile, Zone};
 use super::robust_line::bisquare;
 use super::step_height::indices;
 
-/// Points of each trace while all shifts are tried.
+/// Most points of each trace while all shifts are tried.
 const COARSE_POINTS: usize = 4096;
 
 /// Points while a place is refined.
@@ -79,15 +79,15 @@ pub(super) fn align(first: &Profile, repeat: &Profile, grooves: &[Zone]) -> Alig
     }
 }
 
-/// Where a repeat lies if it runs forwards, and the mean distance that remains.
+/// Where a repeat lies if it runs forwards, and the mean distance that remains, over the square of the
+/// share of the first trace on which it lies.
 fn place(first: &Profile, repeat: &Profile, grooves: &[Zone]) -> (Alignment, f64) {
-    let (start, correlation) = best_shift(first, repeat);
+    let (start, correlation, spacing) = best_shift(first, repeat);
     let whole = Zone {
         from: f64::NEG_INFINITY,
         to: f64::INFINITY,
     };
-    let length = extent(first).map_or(0.0, |(_, length)| length);
-    let shift = refined(first, repeat, whole, start, length / COARSE_POINTS as f64);
+    let shift = refined(first, repeat, whole, start, spacing);
     let mut shifts: Vec<(f64, f64)> = grooves
         .iter()
         .map(|groove| {
@@ -113,7 +113,10 @@ fn place(first: &Profile, repeat: &Profile, grooves: &[Zone]) -> (Alignment, f64
         is_reversed: false,
     };
     let places = alignment.places(&first.x);
-    let distance = mean_distance(&first.z, &heights_at(repeat, places.iter().copied()));
+    let heights = heights_at(repeat, places.iter().copied());
+    let share = heights.iter().filter(|z| z.is_finite()).count() as f64 / heights.len() as f64;
+    // A row of equal channels fits one pitch further on as well, but on less of the trace.
+    let distance = mean_distance(&first.z, &heights) / (share * share);
     (alignment, distance)
 }
 
@@ -152,14 +155,15 @@ pub(super) fn heights_at(profile: &Profile, places: impl Iterator<Item = f64>) -
         .collect()
 }
 
-/// The shift of the best correlation coefficient, and that coefficient.
-fn best_shift(first: &Profile, repeat: &Profile) -> (f64, f64) {
+/// The shift of the best correlation coefficient, that coefficient, and the step between shifts.
+fn best_shift(first: &Profile, repeat: &Profile) -> (f64, f64, f64) {
     let (Some((start, length)), Some((repeat_start, repeat_length))) =
         (extent(first), extent(repeat))
     else {
-        return (0.0, -1.0);
+        return (0.0, -1.0, 0.0);
     };
-    let spacing = length.max(repeat_length) / COARSE_POINTS as f64;
+    let points = first.x.len().max(repeat.x.len()).min(COARSE_POINTS);
+    let spacing = length.max(repeat_length) / points as f64;
     let even = |profile: &Profile, start: f64, length: f64| {
         let count = (length / spacing) as usize + 1;
         let places = (0..count).map(|k| start + k as f64 * spacing);
@@ -171,7 +175,8 @@ fn best_shift(first: &Profile, repeat: &Profile) -> (f64, f64) {
     let b = even(repeat, repeat_start, repeat_length);
     let (a_sums, b_sums) = (running_sums(&a), running_sums(&b));
     let least = (a.len().min(b.len()) / 2).max(2);
-    let mut best = (0.0, -1.0);
+    let mut best = (0.0, -1.0, spacing);
+    let mut least_rest = f64::INFINITY;
     let lowest = least as isize - b.len() as isize;
     let highest = a.len() as isize - least as isize;
     for lag in lowest..=highest {
@@ -197,9 +202,13 @@ fn best_shift(first: &Profile, repeat: &Profile) -> (f64, f64) {
         let covariance = products / n - pa[0] * pb[0];
         let spread = ((pa[1] - pa[0] * pa[0]) * (pb[1] - pb[0] * pb[0])).sqrt();
         let correlation = covariance / spread;
-        if correlation > best.1 {
+        // What does not correlate, over the square of the share that overlaps.
+        let share = n / a.len().min(b.len()) as f64;
+        let rest = (1.0 - correlation).max(1e-9) / (share * share);
+        if rest < least_rest {
+            least_rest = rest;
             let shift = start - repeat_start + lag as f64 * spacing;
-            best = (shift, correlation.min(1.0));
+            best = (shift, correlation.min(1.0), spacing);
         }
     }
     best

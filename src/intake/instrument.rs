@@ -184,9 +184,17 @@ impl Reader<'_> {
                     (steps, warnings),
                 ));
             }
-            FileContent::Trace(source) => (SectionKind::Trace, source.encoding, self.table(&source)?),
+            FileContent::Trace(source) => {
+                (SectionKind::Trace, source.encoding, self.table(&source)?)
+            }
             FileContent::Map(source) => {
-                let _ = source; return Err(ReadError::new(self.path, ReadProblem::NotATrace));
+                let (map, warnings) = read_map_table(&source.text, &options.table)
+                    .map_err(|fault| fault.in_file(self.path))?;
+                (
+                    SectionKind::HeightMap,
+                    source.encoding,
+                    Raw::Map(map, warnings),
+                )
             }
             FileContent::Surface(format) => self.surface(format)?,
         };

@@ -16,13 +16,13 @@ mod levelling;
 mod listed_points;
 mod map_blocks;
 mod map_problem;
+mod map_table;
 mod sdf;
 mod sdf_binary;
 #[cfg(test)]
 mod sdf_tests;
 mod sdf_text;
 mod stored_number;
-mod map_table;
 mod surface;
 mod surface_content;
 mod surface_format;
@@ -35,8 +35,8 @@ mod x3p_tests;
 
 pub use cut::{CutOptions, MapCut, MapCuts, cut};
 pub use map_problem::MapProblem;
+pub use map_table::map_from_bytes;
+pub(crate) use map_table::read_map_table;
 pub use surface::{HeightMap, MAX_MAP_POINTS, heights_csv};
 pub use surface_content::{SurfaceContent, read_surface};
 pub use surface_format::{SurfaceFormat, surface_format};
-pub use map_table::map_from_bytes;
-pub(crate) use map_table::read_map_table;

@@ -50,9 +50,9 @@ pub(super) fn repeats(trace: &mut CorrectedTrace, ground: Option<&Ground>) {
     }
     for place in &agreement.places {
         text.push_str(&format!(
-            "; shifted by {}, stretched by {}{}",
+            "; shifted by {}, by {} more or less from channel to channel{}",
             format_length(place.shift),
-            format_percent(place.stretch, 2),
+            format_length(0.5 * place.uneven),
             if place.is_reversed {
                 ", traced backwards"
             } else {
@@ -69,7 +69,7 @@ pub(super) fn repeats(trace: &mut CorrectedTrace, ground: Option<&Ground>) {
     let warning = ground.and_then(|ground| {
         let depth_sd = agreement.depth_sd.unwrap_or(0.0);
         let sd = agreement.reading_robust_sd;
-        let off = sd > (1.5 * ground.noise).max(0.002 * ground.depth) || depth_sd > 0.005 * ground.depth;
+        let off = sd > (1.5 * ground.noise).max(0.005 * ground.depth) || depth_sd > 0.005 * ground.depth;
         off.then(|| Warning {
             code: Code::RepeatScatter,
             message: format!(
@@ -188,6 +188,12 @@ pub(super) fn levelled(
             format_percent(WORST_LAND, 1)
         ));
     }
+    if fitted.bend > 0.0 {
+        text.push_str(&format!(
+            "; between two lands it may bend by {} more, which no land shows",
+            format_length(fitted.bend)
+        ));
+    }
     let slope = end_slope(trace);
     if slope.abs() > STEEP {
         text.push_str(&format!(
@@ -202,6 +208,7 @@ pub(super) fn levelled(
         ("rms_m", fitted.rms),
         ("worst_m", fitted.worst()),
         ("slope", slope),
+        ("bend_m", fitted.bend),
     ];
     numbers.extend(off_one_line.map(|worst| ("worst_on_one_line_m", worst)));
     trace

@@ -325,10 +325,10 @@ fn shrink(trace: &mut CorrectedTrace, shrinkage: [f64; 2]) {
         agreement.reading_sd *= up;
         agreement.reading_robust_sd *= up;
         agreement.depth_sd = agreement.depth_sd.map(|sd| sd * up);
-        agreement
-            .places
-            .iter_mut()
-            .for_each(|place| place.shift *= along);
+        for place in &mut agreement.places {
+            place.shift *= along;
+            place.uneven *= along;
+        }
     }
     records::shrunk(trace, shrinkage);
 }

@@ -21,6 +21,12 @@ const BESIDE_WALL: f64 = 0.1;
 /// Slow waves have crests of 0.4 to 0.5, V-grooves with lands of a sixth of their width 0.67.
 const LEVEL_WIDTH: f64 = 0.6;
 
+/// Lands are rounded if their middle half lies this much above their outer quarters, in depths.
+const ROUNDED: f64 = 0.04;
+
+/// A single hill whose flanks take more than this share of the trace from 25 to 75 % of its height is bow.
+const SLOW_WALL: f64 = 0.05;
+
 /// One land.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct Land {
@@ -54,6 +60,12 @@ pub(super) struct Ground {
 }
 
 impl Ground {
+    /// Depth times total width of lands, m^2.
+    fn weight(&self) -> f64 {
+        let widths = self.lands.iter().map(|land| land.flat.to - land.flat.from);
+        self.depth * widths.sum::<f64>()
+    }
+
     /// The lands without the parts next to walls.
     pub(super) fn zones(&self) -> Vec<Zone> {
         self.lands.iter().map(|land| land.zone).collect()
@@ -71,7 +83,8 @@ pub(super) fn find_lands(good: &Profile) -> Result<Ground, TraceProblem> {
         .zip(&good.z)
         .map(|(x, z)| z - slope * (x - start))
         .collect();
-    let mut ground = survey(&good.x, &level, noise)?;
+    let mut ground = survey(&good.x, &level, noise)
+        .map_err(|problem| one_level(good, noise).unwrap_or(problem))?;
     for _ in 0..2 {
         take_off(&good.x, &mut level, &ground.lands);
         match survey(&good.x, &level, noise) {
@@ -80,6 +93,25 @@ pub(super) fn find_lands(good: &Profile) -> Result<Ground, TraceProblem> {
         }
     }
     Ok(ground)
+}
+
+/// Whether nothing stands out of one straight line through all samples: the typical slope of noise is
+/// not known well enough to tell.
+fn one_level(good: &Profile, noise: f64) -> Option<TraceProblem> {
+    let line = robust_line(&good.x, &good.z, 100)?;
+    let rests: Vec<f64> = good
+        .x
+        .iter()
+        .zip(&good.z)
+        .map(|(x, z)| z - line.at(*x))
+        .collect();
+    let ranges = swing_ranges(&rests);
+    swing_thresholds(&ranges, noise, rests.len())
+        .is_empty()
+        .then(|| TraceProblem::NoChannel {
+            relief: ranges.first().copied().unwrap_or(0.0),
+            noise,
+        })
 }
 
 /// Takes off what the lands show of drift: straight from the middle of each to the middle of the next.
@@ -112,18 +144,30 @@ pub(super) fn piecewise(knots: &[(f64, f64)], x: &[f64]) -> Vec<f64> {
         .collect()
 }
 
-/// Lands at the first threshold that gives any.
+/// The lands that account for most: of all thresholds the one with the largest product of depth and total
+/// width of lands. Dust is higher than channels but narrow, ripple on a land is wide but low.
 fn survey(x: &[f64], z: &[f64], noise: f64) -> Result<Ground, TraceProblem> {
-    let mut heights = thinned(z, 20_000);
-    let relief = quantile(&mut heights, 0.99) - quantile(&mut heights, 0.01);
+    let mut best: Option<(f64, Ground)> = None;
     let mut first_problem = None;
-    for threshold in swing_thresholds(&swing_ranges(z), noise) {
+    for threshold in swing_thresholds(&swing_ranges(z), noise, z.len()) {
         match at_threshold(x, z, threshold) {
-            Ok(ground) => return Ok(ground),
+            Ok(ground) => {
+                let weight = ground.weight();
+                if best.as_ref().is_none_or(|(heaviest, _)| weight > *heaviest) {
+                    best = Some((weight, ground));
+                }
+            }
             Err(problem) => first_problem = first_problem.or(Some(problem)),
         }
     }
-    Err(first_problem.unwrap_or(TraceProblem::NoChannel { relief, noise }))
+    if let Some((_, ground)) = best {
+        return Ok(ground);
+    }
+    Err(first_problem.unwrap_or_else(|| {
+        let mut heights = thinned(z, 20_000);
+        let relief = quantile(&mut heights, 0.99) - quantile(&mut heights, 0.01);
+        TraceProblem::NoChannel { relief, noise }
+    }))
 }
 
 /// A wall: where it crosses half height, and how far it takes from 25 to 75 % of the depth.
@@ -180,6 +224,15 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
     }
     let depth = median(&mut depths);
     if lands.len() < 2 {
+        runs.retain(|run| run.is_finite());
+        let length = x[x.len() - 1] - x[0];
+        if median(&mut runs) > SLOW_WALL * length {
+            // A bow or a wave, not a ridge.
+            return Err(TraceProblem::NoChannel {
+                relief: threshold.max(depth),
+                noise: noise_of_neighbours(z),
+            });
+        }
         let height = if depth.is_finite() { depth } else { threshold };
         return Err(TraceProblem::NoGroove {
             ridges: lands.len(),
@@ -187,6 +240,7 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
         });
     }
     check_level(x, &lands, runs)?;
+    check_rounded(x, z, &lands, depth)?;
     Ok(described(x, &all, lands, depth))
 }
 
@@ -203,6 +257,31 @@ fn check_level(x: &[f64], lands: &[Land], mut runs: Vec<f64>) -> Result<(), Trac
     let level = median(&mut widths);
     if level < LEVEL_WIDTH * wall {
         return Err(TraceProblem::NoLand { level, wall });
+    }
+    Ok(())
+}
+
+/// Whether lands are the rounded crests of waves.
+fn check_rounded(x: &[f64], z: &[f64], lands: &[Land], depth: f64) -> Result<(), TraceProblem> {
+    let mut crests: Vec<f64> = lands
+        .iter()
+        .filter_map(|land| {
+            let first = x.partition_point(|x| *x < land.flat.from);
+            let last = x.partition_point(|x| *x <= land.flat.to);
+            let quarter = (last - first) / 4;
+            let mean = |from: usize, to: usize| {
+                let rests = (from..to).map(|k| z[k] - land.line.at(x[k]));
+                rests.sum::<f64>() / (to - from) as f64
+            };
+            (quarter > 0).then(|| {
+                let outer = mean(first, first + quarter) + mean(last - quarter, last);
+                mean(first + quarter, last - quarter) - 0.5 * outer
+            })
+        })
+        .collect();
+    let crest = median(&mut crests);
+    if crest > ROUNDED * depth {
+        return Err(TraceProblem::RoundLands { crest, depth });
     }
     Ok(())
 }

@@ -69,6 +69,9 @@ pub(super) struct Reference {
     pub(super) rms: f64,
     /// Distance of each zone as a whole from it, m.
     pub(super) offsets: Vec<f64>,
+    /// How far the reference may bend between two knots beyond a straight line, m: an eighth of the
+    /// largest second difference of neighbouring knots; zero for one polynomial.
+    pub(super) bend: f64,
     /// Where there are exactly two zones: how far the second lies above the line that prolongs the slope
     /// which both zones show, and the uncertainty of that, m.
     pub(super) second_above_first: Option<(f64, f64)>,
@@ -100,7 +103,7 @@ pub(super) fn fit_reference(
     local: bool,
     option: &'static str,
 ) -> Result<Reference, TraceProblem> {
-    let blocks = (20_000 / zones.len().max(1)).clamp(25, 300);
+    let blocks = (4000 / zones.len().max(1)).clamp(25, 150);
     let samples: Vec<ZoneSamples> = zones
         .iter()
         .map(|zone| zone_samples(good, *zone, options.fit, blocks, option))
@@ -125,6 +128,7 @@ pub(super) fn fit_reference(
         curve,
         rms: 0.0,
         offsets: Vec::new(),
+        bend: 0.0,
         second_above_first: second_above_first(&samples),
     };
     let (mut squares, mut count) = (0.0, 0.0);
@@ -140,7 +144,20 @@ pub(super) fn fit_reference(
         reference.offsets.push(sum / weight);
     }
     reference.rms = (squares / count).sqrt();
+    if let Curve::Pieces(knots) = &reference.curve {
+        reference.bend = largest_bend(knots);
+    }
     Ok(reference)
+}
+
+/// An eighth of the largest second difference: the height of an arc over the chord between two knots.
+fn largest_bend(knots: &[(f64, f64)]) -> f64 {
+    let bends = knots.windows(3).map(|three| {
+        let [(x0, z0), (x1, z1), (x2, z2)] = [three[0], three[1], three[2]];
+        let (before, after) = ((z1 - z0) / (x1 - x0), (z2 - z1) / (x2 - x1));
+        (after - before).abs() * 0.5 * (x2 - x0) / 8.0
+    });
+    bends.fold(0.0, f64::max)
 }
 
 /// Samples and own line of a zone.

@@ -10,6 +10,8 @@ mod corrected;
 mod correction_options;
 mod correction_records;
 mod corrections;
+#[cfg(test)]
+mod corrections_tests;
 mod flanks;
 mod groove_problem;
 mod groove_section;

@@ -1,7 +1,7 @@
 //! Repeated traces of one line: laid on each other, averaged, and what they say about repeatability.
 //!
-//! The first trace gives the positions. Each repeat is turned where it was traced backwards, shifted and
-//! stretched onto it, and lifted at each land to the height of the first there, so that different drift
+//! The first trace gives the positions. Each repeat is turned where it was traced backwards, shifted onto
+//! it channel by channel, and lifted at each land to the height of the first there, so that different drift
 //! does not count. Spikes are found in each trace by itself; a sample that is bad in one is the mean of the
 //! others.
 
@@ -20,11 +20,11 @@ use super::trace_problem::TraceProblem;
 pub struct RepeatPlace {
     /// Whether it was traced backwards.
     pub is_reversed: bool,
-    /// How far its first position (its last where it is reversed) lies from the first one of the first
-    /// trace, m.
+    /// What its positions lack to those of the first trace, m, typical value; positions count from its
+    /// end where it is reversed.
     pub shift: f64,
-    /// How much longer, relatively, the first trace reads the same stretch.
-    pub stretch: f64,
+    /// Largest difference of that shift between two channels, m: the stage does not move evenly.
+    pub uneven: f64,
     /// Correlation coefficient of the levelled heights.
     pub correlation: f64,
 }
@@ -99,9 +99,7 @@ fn laid_on(
         // Positions count from the last good sample, as they did for the alignment.
         profile = reversed(&profile);
     }
-    let scale = 1.0 / (1.0 + alignment.stretch);
-    let places = first.x.iter().map(|x| (x - alignment.shift) * scale);
-    let heights = heights_at(&profile, places);
+    let heights = heights_at(&profile, alignment.places(&first.x).into_iter());
     let lower: Vec<f64> = first.z.iter().zip(&heights).map(|(a, b)| a - b).collect();
     let zones = ground.map(Ground::zones).unwrap_or_default();
     let knots = land_heights(first, &lower, &zones);
@@ -152,12 +150,7 @@ pub(super) fn join(
                     source: Box::new(other),
                 },
             })?;
-        places.push(RepeatPlace {
-            is_reversed: alignment.is_reversed,
-            shift: alignment.shift,
-            stretch: alignment.stretch,
-            correlation: alignment.correlation,
-        });
+        places.push(described(&alignment));
         heights.push(laid);
     }
     let (reading_sd, reading_robust_sd) = reading_scatter(&base, &heights);
@@ -174,6 +167,19 @@ pub(super) fn join(
     })
 }
 
+/// Where a repeat was found, in short.
+fn described(alignment: &Alignment) -> RepeatPlace {
+    let mut shifts: Vec<f64> = alignment.shifts.iter().map(|(_, shift)| *shift).collect();
+    let lowest = shifts.iter().copied().fold(f64::INFINITY, f64::min);
+    let highest = shifts.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+    RepeatPlace {
+        is_reversed: alignment.is_reversed,
+        shift: median(&mut shifts),
+        uneven: highest - lowest,
+        correlation: alignment.correlation,
+    }
+}
+
 /// Aligns one repeat.
 fn place_repeat(
     base: &Profile,
@@ -186,14 +192,16 @@ fn place_repeat(
     scan.mark_narrow_spikes(options);
     let good = scan.good();
     let own = find_lands(&good).ok();
-    let alignment = align(level, &without_drift(&good, own.as_ref()));
+    let grooves = ground.map_or(&[][..], |ground| &ground.grooves);
+    let alignment = align(level, &without_drift(&good, own.as_ref()), grooves);
     if !(alignment.correlation >= LEAST_CORRELATION) {
         return Err(TraceProblem::RepeatDiffers {
             number: 0,
             correlation: alignment.correlation,
         });
     }
-    Ok((alignment, laid_on(base, &scan, &alignment, ground)))
+    let laid = laid_on(base, &scan, &alignment, ground);
+    Ok((alignment, laid))
 }
 
 /// Standard deviation of one reading, plain and robust.

@@ -9,7 +9,7 @@
 //! Overshoot beside a wall ("ears") is no spike, since one side of its window lies on the other level: it
 //! is left, and the lands are taken without the parts next to walls.
 
-use super::order_statistics::{MAD_TO_SD, median};
+use super::order_statistics::{MAD_TO_SD, median, noise_of_neighbours, scatter_about};
 use super::profile::Profile;
 
 /// Half width of the narrow window, samples: spikes of up to three samples.
@@ -39,7 +39,7 @@ pub(super) struct SpikeRule {
 pub(super) fn find_spikes(good: &Profile, rule: &SpikeRule) -> Vec<(usize, usize)> {
     let z = &good.z;
     let deviations = from_running_median(z, rule.half_window);
-    let noise = block_noise(&deviations);
+    let noise = block_noise(z, &deviations);
     let smallest = rule.smallest + 3.0 * quantum(z);
     let mut found: Vec<(usize, usize)> = Vec::new();
     let mut at = 0;
@@ -127,11 +127,16 @@ fn from_running_median(z: &[f64], half_window: usize) -> Vec<f64> {
         .collect()
 }
 
-/// Robust scatter of the distances, block by block, each block with its neighbours: the largest of three.
-fn block_noise(deviations: &[f64]) -> Vec<f64> {
+/// Noise block by block, each block with its neighbours the largest of three: robust scatter of the
+/// distances from the median, or from sample to sample where that is larger. A sample that is the median
+/// of its own window has no distance, so that the first alone would be too small.
+fn block_noise(z: &[f64], deviations: &[f64]) -> Vec<f64> {
     let single: Vec<f64> = deviations
         .chunks(NOISE_BLOCK)
-        .map(|block| MAD_TO_SD * median(&mut block.iter().map(|d| d.abs()).collect::<Vec<_>>()))
+        .zip(z.chunks(NOISE_BLOCK))
+        .map(|(deviations, heights)| {
+            scatter_about(&mut deviations.to_vec(), 0.0).max(noise_of_neighbours(heights))
+        })
         .collect();
     (0..single.len())
         .map(|k| {

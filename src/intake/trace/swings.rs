@@ -58,8 +58,11 @@ pub(super) fn swing_ranges(z: &[f64]) -> Vec<f64> {
 
 /// Heights that part lands and grooves from noise: in the widest gaps between the ranges of swings,
 /// the widest first, at most three.
-pub(super) fn swing_thresholds(ranges: &[f64], noise: f64) -> Vec<f64> {
-    let smallest = (8.0 * noise).max(1e-9 * ranges.first().copied().unwrap_or(0.0));
+///
+/// Normal noise of `n` samples spans about `2 sqrt(2 ln n)` standard deviations; only what is larger counts.
+pub(super) fn swing_thresholds(ranges: &[f64], noise: f64, samples: usize) -> Vec<f64> {
+    let span = 2.0 * (2.0 * (samples.max(2) as f64).ln()).sqrt();
+    let smallest = ((span + 2.0) * noise).max(1e-9 * ranges.first().copied().unwrap_or(0.0));
     let mut gaps: Vec<(f64, f64)> = Vec::new();
     for (k, &range) in ranges.iter().enumerate() {
         if !(range > smallest) {

@@ -79,6 +79,19 @@ pub enum TraceProblem {
         /// Length of a typical wall, m.
         wall: f64,
     },
+    /// The upper stretches are crests.
+    #[error(
+        "no land is level: the upper stretches are rounded, {} higher in their middle than towards \
+         their ends, where the trace goes {} down",
+        format_length(*crest),
+        format_length(*depth)
+    )]
+    RoundLands {
+        /// Typical height of the middle half over the outer quarters, m.
+        crest: f64,
+        /// Typical depth, m.
+        depth: f64,
+    },
     /// A stated zone does not lie on the trace.
     #[error(
         "the zone {}..{} of `{option}` does not lie on the trace, which runs from {} to {}",
@@ -219,7 +232,7 @@ impl TraceProblem {
                 "if the ridges are the channels (mould master, cast): --invert; else trace from land to \
                  land, or state the lands: --land-zones 0um..50um,200um..250um"
             }
-            Self::NoLand { .. } => {
+            Self::NoLand { .. } | Self::RoundLands { .. } => {
                 "state the lands: --land-zones 0um..50um,200um..250um; or trace farther beyond the channel"
             }
             Self::ZoneOutside { .. } | Self::ZoneEmpty { .. } | Self::NoZone { .. } => {
@@ -246,7 +259,10 @@ impl TraceProblem {
     /// Whether a unit, a scale or a choice is missing or in doubt, rather than the file being wrong.
     pub fn is_ambiguous(&self) -> bool {
         match self {
-            Self::NoGroove { .. } | Self::NoLand { .. } | Self::TooFar { .. } => true,
+            Self::NoGroove { .. }
+            | Self::NoLand { .. }
+            | Self::RoundLands { .. }
+            | Self::TooFar { .. } => true,
             Self::Repeat { source, .. } => source.is_ambiguous(),
             _ => false,
         }

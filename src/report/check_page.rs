@@ -191,9 +191,10 @@ fn one_panel(
     };
     let letter = char::from(b'A' + (index % 26) as u8);
     let turn = if index >= 26 { "A" } else { "" };
-    let title = format!("{turn}{letter}  {}", numbers::title(title));
-    let _ = write!(drawing.description, " Panel {}.", title.trim_end());
+    let title = format!("{turn}{letter}: {}", numbers::title(title));
+    let _ = write!(drawing.description, " Panel {title}.");
     frame.paragraph(drawing, &title, TextSize::Medium);
+    frame.y += 2.0;
     let begun = drawing.items.len();
     let drawn = match panel {
         Panel::Curves(p) => draw_curves(drawing, frame, p),

@@ -93,6 +93,9 @@ pub(super) fn arrow(drawing: &mut Drawing, [from, to]: [Point; 2]) -> Vec<Vec<Po
 
 /// The number beside an arrow, or farther away on a thin line; `false` without room.
 fn number(drawing: &mut Drawing, [from, to]: [Point; 2], text: &str, labels: &mut Labels) -> bool {
+    if text.trim().is_empty() {
+        return true;
+    }
     if text.chars().count() > LONGEST_TEXT {
         return false;
     }
@@ -113,16 +116,24 @@ fn number(drawing: &mut Drawing, [from, to]: [Point; 2], text: &str, labels: &mu
         (
             &[[0.0, -1.0], [0.0, 1.0]],
             &[[0.0, -2.4], [0.0, 2.4], [0.0, -4.0], [0.0, 4.0]],
-            &[[1.3, 0.0], [-1.3, 0.0]],
+            &[
+                [1.3, 0.0],
+                [-1.3, 0.0],
+                [1.3, 0.9],
+                [-1.3, 0.9],
+                [1.3, -0.9],
+                [-1.3, -0.9],
+            ],
         )
     };
     let on_it: &[Point] = &[0.5, 0.3, 0.7, 0.15, 0.85].map(along);
-    let tries = [
+    let tries: [(&[Point], &[Point], Cover); 6] = [
         (on_it, near, Cover::Nothing),
         (on_it, far, Cover::Nothing),
         (&[to, from], outward, Cover::Nothing),
         (on_it, near, Cover::Curves),
         (on_it, far, Cover::Curves),
+        (&[to, from], outward, Cover::Curves),
     ];
     let found = tries.into_iter().find_map(|(starts, offsets, cover)| {
         starts

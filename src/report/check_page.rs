@@ -122,10 +122,12 @@ fn heading(drawing: &mut Drawing, page: &mut Frame, picture: &CheckPicture) {
         n => format!("{n} {what}s"),
     };
     let mut words = format!(
-        "Check picture: from the instrument's file to the section in {} and {}",
+        "Check picture: from the instrument's file to the section in {}",
         plural(picture.panels.len(), "panel"),
-        plural(picture.notes.len(), "note"),
     );
+    if !picture.notes.is_empty() {
+        let _ = write!(words, " and {}", plural(picture.notes.len(), "note"));
+    }
     let warnings = picture.warnings.len();
     if warnings > 0 {
         let _ = write!(words, "; {} below", plural(warnings, "warning"));

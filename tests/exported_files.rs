@@ -7,6 +7,10 @@
 
 mod report_samples;
 
+#[path = "exported/check_picture.rs"]
+mod check_picture;
+#[path = "exported/check_samples.rs"]
+mod check_samples;
 #[path = "exported/field_files.rs"]
 mod field_files;
 #[path = "exported/json_and_csv.rs"]

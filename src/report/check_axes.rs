@@ -9,11 +9,13 @@ use crate::geometry::Point;
 /// Lines of ticks.
 pub(super) const GRID: Colour = [214, 214, 214];
 /// Largest height of a plot with stretched heights, px.
-const TALLEST: f64 = 340.0;
+const TALLEST: f64 = 420.0;
 /// Largest height of a plot at equal scale, px.
 const TALLEST_EQUAL: f64 = 460.0;
 /// Least height of a plot, px.
 const LEAST_HEIGHT: f64 = 140.0;
+/// Least height of what it shows, px.
+const LEAST_INNER: f64 = 60.0;
 /// Coordinates from here on count as missing, m.
 const FARTHEST: f64 = 1e9;
 /// No axis shows less, m.
@@ -48,9 +50,9 @@ impl Ranges {
     /// Takes a place in; what cannot be drawn is passed over.
     pub(super) fn add(&mut self, p: Point) {
         if is_place(p) {
-            for axis in 0..2 {
-                self.low[axis] = self.low[axis].min(p[axis]);
-                self.high[axis] = self.high[axis].max(p[axis]);
+            for (axis, value) in p.into_iter().enumerate() {
+                self.low[axis] = self.low[axis].min(value);
+                self.high[axis] = self.high[axis].max(value);
             }
         }
     }
@@ -61,7 +63,7 @@ impl Ranges {
 
     /// With an extent along both axes and a margin, as shares of the extent.
     pub(super) fn widened(mut self, margin: Point) -> Self {
-        for axis in 0..2 {
+        for (axis, share) in margin.into_iter().enumerate() {
             let (low, high) = (self.low[axis], self.high[axis]);
             let largest = low.abs().max(high.abs());
             let is_flat = high - low <= ROUNDING * largest;
@@ -70,7 +72,7 @@ impl Ranges {
             } else if is_flat {
                 0.5 * largest
             } else {
-                margin[axis] * (high - low)
+                share * (high - low)
             };
             let more = more.max(0.5 * (LEAST_EXTENT - (high - low)));
             self.low[axis] -= more;
@@ -84,14 +86,24 @@ impl Ranges {
     }
 }
 
-/// A plot of given width over ranges of positions and heights.
+/// Room around what a plot shows, px.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub(super) struct Reserve {
+    pub(super) top: f64,
+    pub(super) right: f64,
+    pub(super) bottom: f64,
+}
+
+/// A plot of given width over ranges of positions and heights and the room around them.
 ///
 /// `None` where the numbers leave what doubles can hold.
 pub(super) fn fitted(
     ranges: &Ranges,
     width: f64,
     equal: bool,
+    reserve: Reserve,
 ) -> Option<(Layout, Exaggeration, Ranges)> {
+    let width = width - reserve.right;
     let extent = ranges.extent();
     let [x, z] = extent;
     let equal = equal && Exaggeration::of(extent) == Exaggeration::None;
@@ -111,13 +123,19 @@ pub(super) fn fitted(
     let tallest = if equal { TALLEST_EQUAL } else { TALLEST };
     let fit = (width / (x * wide)).min(tallest / (z * tall));
     let scale = [fit * wide, fit * tall];
-    let size = [width, (z * scale[1]).clamp(LEAST_HEIGHT, tallest).ceil()];
+    let least = (LEAST_HEIGHT - reserve.top - reserve.bottom).max(LEAST_INNER);
+    let mut size = [width, (z * scale[1]).clamp(least, tallest).ceil()];
     let mut shown = *ranges;
     for axis in 0..2 {
         let more = 0.5 * (size[axis] / scale[axis] - extent[axis]);
         shown.low[axis] -= more;
         shown.high[axis] += more;
     }
+    shown.low[1] -= reserve.bottom / scale[1];
+    shown.high[1] += reserve.top / scale[1];
+    shown.high[0] += reserve.right / scale[0];
+    size[0] += reserve.right;
+    size[1] += reserve.top + reserve.bottom;
     let is_sound = scale.iter().all(|s| s.is_finite() && *s > 0.0);
     is_sound.then(|| {
         (
@@ -307,7 +325,7 @@ mod tests {
     #[test]
     fn stretches_are_round_and_the_plot_fills_its_width() {
         let wide = ranges([0.0, -20e-6], [10e-3, 2e-6]);
-        let (layout, exaggeration, _) = fitted(&wide, 960.0, false).unwrap();
+        let (layout, exaggeration, _) = fitted(&wide, 960.0, false, Reserve::default()).unwrap();
         assert_eq!(exaggeration, Exaggeration::Height(100.0));
         assert!((layout.scale[1] / layout.scale[0] - 100.0).abs() < 1e-9);
         assert!((layout.size[0] - 960.0).abs() < 1e-9);
@@ -315,12 +333,23 @@ mod tests {
             scale_words(exaggeration),
             "heights are stretched 100 times, x:z = 1:100"
         );
-        let (layout, exaggeration, shown) =
-            fitted(&ranges([0.0, 0.0], [1e-4, 1e-4]), 960.0, true).unwrap();
+        let (layout, exaggeration, shown) = fitted(
+            &ranges([0.0, 0.0], [1e-4, 1e-4]),
+            960.0,
+            true,
+            Reserve::default(),
+        )
+        .unwrap();
         assert_eq!(exaggeration, Exaggeration::None);
         assert!((layout.scale[0] / layout.scale[1] - 1.0).abs() < 1e-12);
         assert!(shown.low[0] < 0.0 && shown.high[0] > 1e-4);
-        let (_, deep, _) = fitted(&ranges([0.0, 0.0], [1e-6, 1e-4]), 960.0, true).unwrap();
+        let (_, deep, _) = fitted(
+            &ranges([0.0, 0.0], [1e-6, 1e-4]),
+            960.0,
+            true,
+            Reserve::default(),
+        )
+        .unwrap();
         assert!(matches!(deep, Exaggeration::Width(f) if f > 10.0));
     }
 
@@ -354,15 +383,15 @@ mod tests {
         flat.add([1.0, 0.0]);
         flat.add([f64::NAN, 5.0]);
         flat.add([1e300, -1e300]);
-        assert_eq!(flat.low, [1.0, 0.0]);
+        assert!((flat.low[0] - 1.0).abs() < 1e-12 && flat.high[0] < 1.1);
         let wide = flat.widened([0.0, 0.1]);
         assert!(wide.extent().iter().all(|e| *e > 0.0));
-        assert!(fitted(&wide, 960.0, false).is_some());
+        assert!(fitted(&wide, 960.0, false, Reserve::default()).is_some());
         let mut tiny = Ranges::new();
         tiny.add([1e-300, 0.0]);
         tiny.add([2e-300, 1.0]);
         let tiny = tiny.widened([0.0, 0.1]);
         assert!(tiny.extent()[0] >= LEAST_EXTENT);
-        assert!(fitted(&tiny, 960.0, true).is_some());
+        assert!(fitted(&tiny, 960.0, true, Reserve::default()).is_some());
     }
 }

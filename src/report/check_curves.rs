@@ -12,18 +12,21 @@ use super::check_lanes::{draw_lanes, draw_tints};
 use super::check_legend::{
     Legend, Sample, curve_style, draw_mark, draw_regions, mark_lines, region_style,
 };
+use super::check_outside::Outside;
 use super::check_page::Frame;
 use super::check_picture::{Curve, CurveKind, CurvePanel, Mark, MarkKind, RegionKind};
 use super::curve_thinning::{column_extremes, few_points};
 use super::drawing::{Anchor, Drawing, TextSize};
-use super::label_box::Labels;
+use super::label_box::{Cover, Labels};
 use super::line_style::closed;
 use super::numbers::title;
-use super::picture_layout::Layout;
+use super::picture_layout::{Exaggeration, Layout};
 use crate::geometry::Point;
 
 /// Room for numbers and names of lanes left of a plot, px.
-pub(super) const AXIS_ROOM: f64 = 124.0;
+const AXIS_ROOM: f64 = 124.0;
+/// Room for numbers left of a plot that has no lanes, px.
+pub(super) const NARROW_ROOM: f64 = 72.0;
 /// Room right of a plot, px.
 const RIGHT_ROOM: f64 = 20.0;
 /// Marks nearer than this to another of their kind are left out, px.
@@ -40,17 +43,21 @@ pub(super) fn draw_curves(
     panel: &CurvePanel,
 ) -> Result<(), String> {
     let ranges = ranges_of(panel).ok_or("no place in it has finite coordinates")?;
-    let width = (frame.width - AXIS_ROOM - RIGHT_ROOM).floor();
-    let (mut layout, exaggeration, shown) =
-        fitted(&ranges, width, panel.equal_scale).ok_or("its extent is beyond all numbers")?;
+    // A section needs no lanes and is not compared with the traces above it.
+    let room = if panel.bands.is_empty() && !panel.regions.is_empty() {
+        NARROW_ROOM
+    } else {
+        AXIS_ROOM
+    };
+    let width = (frame.width - room - RIGHT_ROOM).floor();
+    let outside = Outside::of(panel);
+    let (mut layout, exaggeration, shown) = fit_with_dimensions(panel, &ranges, width, &outside)
+        .ok_or("its extent is beyond all numbers")?;
     let words = scale_words(exaggeration);
     let _ = write!(drawing.description, " {words}.");
     frame.paragraph(drawing, &words, TextSize::Small);
-    frame.y += 22.0;
-    layout.at = [
-        (frame.left + AXIS_ROOM).round() as i32,
-        frame.y.round() as i32,
-    ];
+    frame.y += 28.0;
+    layout.at = [(frame.left + room).round() as i32, frame.y.round() as i32];
     let (x_unit, z_unit) = units(panel, &ranges);
     let x = Axis::new([shown.low[0], shown.high[0]], x_unit, layout.scale[0], true);
     let z = Axis::new(
@@ -70,7 +77,8 @@ pub(super) fn draw_curves(
     borders(drawing, &layout, panel);
     draw_frame(drawing, &layout);
     marks(drawing, &layout, &panel.marks, (&mut labels, &mut legend));
-    let unplaced = draw_dimensions(drawing, &layout, &panel.dimensions, &mut labels);
+    outside.draw(drawing, &layout, &ranges, &mut labels);
+    let unplaced = draw_dimensions(drawing, &layout, &outside.others, &mut labels);
     mark_labels(drawing, &layout, &panel.marks, &mut labels);
 
     let floor = top + layout.size[1];
@@ -78,7 +86,7 @@ pub(super) fn draw_curves(
     let end = draw_ticks(drawing, &layout, [&x, &z], base);
     let z_words = z.heading(&title(&panel.z_label));
     drawing.text(
-        [frame.left, top - 9.0],
+        [frame.left, top - 13.0],
         Anchor::Start,
         TextSize::Small,
         z_words,
@@ -86,9 +94,34 @@ pub(super) fn draw_curves(
     let x_words = x.heading(&title(&panel.x_label));
     let middle = [left + 0.5 * layout.size[0], end + 14.0];
     drawing.text(middle, Anchor::Middle, TextSize::Small, x_words);
-    frame.y = legend.draw(drawing, [left, end + 24.0], layout.size[0]) + 4.0;
+    let (legend_left, legend_width) = if panel.half_width {
+        (frame.left, frame.width)
+    } else {
+        (left, layout.size[0])
+    };
+    frame.y = legend.draw(drawing, [legend_left, end + 24.0], legend_width) + 4.0;
     tell_unplaced(drawing, frame, &unplaced);
     Ok(())
+}
+
+/// The plot with the room that dimensions outside the areas need.
+fn fit_with_dimensions(
+    panel: &CurvePanel,
+    ranges: &Ranges,
+    width: f64,
+    outside: &Outside<'_>,
+) -> Option<(Layout, Exaggeration, Ranges)> {
+    let mut reserve = outside.reserve();
+    let right = std::mem::take(&mut reserve.right);
+    let first = fitted(ranges, width, panel.equal_scale, reserve)?;
+    // What lies right of the areas may have room enough.
+    let free = (first.2.high[0] - outside.right_edge()) * first.0.scale[0];
+    reserve.right = (right - free.max(0.0)).clamp(0.0, 0.5 * width);
+    if reserve.right > 0.0 {
+        fitted(ranges, width, panel.equal_scale, reserve)
+    } else {
+        Some(first)
+    }
 }
 
 /// What has to be seen; `None` without any place.
@@ -114,7 +147,7 @@ fn ranges_of(panel: &CurvePanel) -> Option<Ranges> {
         ranges.add([band.to, height]);
     }
     let aside = if panel.regions.is_empty() { 0.0 } else { 0.02 };
-    Some(ranges.widened([aside, 0.08]))
+    Some(ranges.widened([aside, 0.1]))
 }
 
 /// Units of both axes; at equal scale they are one.
@@ -246,18 +279,25 @@ fn mark_labels(drawing: &mut Drawing, layout: &Layout, marks: &[Mark], labels: &
     for mark in named.take(MOST_MARK_LABELS) {
         let at = layout.page(mark.at);
         let text = title(&mark.label);
-        let offsets = [
-            [1.2, 0.0],
-            [0.0, -1.2],
-            [-1.2, 0.0],
-            [1.1, -1.0],
-            [-1.1, -1.0],
-            [0.0, 1.2],
-            [1.1, 1.0],
-            [-1.1, 1.0],
-        ];
-        if let Some([x, y]) = labels.place(at, &text, &offsets) {
+        if let Some([x, y]) = mark_place(labels, at, &text) {
             drawing.text([x, y + 5.0], Anchor::Middle, TextSize::Small, text);
         }
     }
+}
+
+/// A place beside a mark, clear of curves where there is one.
+fn mark_place(labels: &mut Labels, at: Point, text: &str) -> Option<Point> {
+    let offsets = [
+        [1.2, 0.0],
+        [0.0, -1.2],
+        [-1.2, 0.0],
+        [1.1, -1.0],
+        [-1.1, -1.0],
+        [0.0, 1.2],
+        [1.1, 1.0],
+        [-1.1, 1.0],
+    ];
+    labels
+        .place(at, text, &offsets, Cover::Nothing)
+        .or_else(|| labels.place(at, text, &offsets, Cover::Curves))
 }

@@ -5,8 +5,8 @@ use std::fmt::Write as _;
 use super::check_axes::is_place;
 use super::check_page::Frame;
 use super::check_picture::Dimension;
-use super::drawing::{Anchor, Drawing, INK, Item, PAPER, TextSize};
-use super::label_box::Labels;
+use super::drawing::{Drawing, INK, PAPER, TextSize};
+use super::label_box::{Cover, Labels, half_size, text_on_paper};
 use super::line_style::arrow_head;
 use super::numbers::title;
 use super::picture_layout::Layout;
@@ -18,16 +18,18 @@ const OUTSIDE: f64 = 26.0;
 const TAIL: f64 = 20.0;
 /// Half the length of the stroke at each end, px.
 const CAP: f64 = 6.0;
+/// A text nearer than this to its arrow needs no line, px.
+const NEAR: f64 = 12.0;
 /// Most lengths of one panel.
 const MOST_DIMENSIONS: usize = 60;
 /// Longest text beside an arrow, characters.
 const LONGEST_TEXT: usize = 60;
 
-/// Draws arrows and numbers; returns the texts for which there was no room.
+/// Draws arrows where the lengths are, with numbers beside; returns the texts for which there was no room.
 pub(super) fn draw_dimensions(
     drawing: &mut Drawing,
     layout: &Layout,
-    dimensions: &[Dimension],
+    dimensions: &[&Dimension],
     labels: &mut Labels,
 ) -> Vec<String> {
     let mut unplaced = Vec::new();
@@ -39,24 +41,24 @@ pub(super) fn draw_dimensions(
         }
         let can_be_drawn = is_place(dimension.from) && is_place(dimension.to);
         if can_be_drawn && index < MOST_DIMENSIONS {
-            let (from, to) = (layout.page(dimension.from), layout.page(dimension.to));
-            arrow(drawing, from, to, labels);
-            ends.push((from, to, text));
+            let ends_here = [layout.page(dimension.from), layout.page(dimension.to)];
+            labels.keep_clear(&arrow(drawing, ends_here));
+            ends.push((ends_here, text));
         } else {
             unplaced.push(text);
         }
     }
     // Words come when all arrows are there, so that they cover none.
-    for (from, to, text) in ends {
-        if !number(drawing, [from, to], &text, labels) {
+    for (ends, text) in ends {
+        if !number(drawing, ends, &text, labels) {
             unplaced.push(text);
         }
     }
     unplaced
 }
 
-/// One arrow line with strokes at its ends.
-fn arrow(drawing: &mut Drawing, from: Point, to: Point, labels: &mut Labels) {
+/// Draws an arrow line with strokes at its ends, on paper so that it shows on anything; returns its lines.
+pub(super) fn arrow(drawing: &mut Drawing, [from, to]: [Point; 2]) -> Vec<Vec<Point>> {
     let length = (to[0] - from[0]).hypot(to[1] - from[1]);
     let [dx, dy] = if length > 1e-6 {
         [(to[0] - from[0]) / length, (to[1] - from[1]) / length]
@@ -71,7 +73,7 @@ fn arrow(drawing: &mut Drawing, from: Point, to: Point, labels: &mut Labels) {
         ]
     };
     let is_short = length < OUTSIDE;
-    let shafts = if is_short {
+    let mut lines = if is_short {
         vec![
             vec![along(from, -TAIL), along(from, -6.0)],
             vec![along(to, 6.0), along(to, TAIL)],
@@ -80,56 +82,80 @@ fn arrow(drawing: &mut Drawing, from: Point, to: Point, labels: &mut Labels) {
     } else {
         vec![vec![along(from, 6.0), along(to, -6.0)]]
     };
-    let mut lines = shafts;
     lines.extend([cap(from), cap(to)]);
-    labels.keep_clear(&lines);
-    drawing.lines(lines.clone(), PAPER, 4.0);
-    drawing.lines(lines, INK, 1.4);
+    drawing.lines(lines.clone(), PAPER, 3.2);
     let side = if is_short { -1.0 } else { 1.0 };
     arrow_head(drawing, from, [-side * dx, -side * dy], INK);
     arrow_head(drawing, to, [side * dx, side * dy], INK);
+    drawing.lines(lines.clone(), INK, 1.4);
+    lines
 }
 
-/// The number beside an arrow; `false` without room.
+/// The number beside an arrow, or farther away on a thin line; `false` without room.
 fn number(drawing: &mut Drawing, [from, to]: [Point; 2], text: &str, labels: &mut Labels) -> bool {
+    if text.trim().is_empty() {
+        return true;
+    }
     if text.chars().count() > LONGEST_TEXT {
         return false;
     }
     let is_upright = (to[1] - from[1]).abs() > (to[0] - from[0]).abs();
-    let sides: &[Point] = if is_upright {
-        &[[1.0, 0.0], [-1.0, 0.0]]
-    } else {
-        &[[0.0, -1.0], [0.0, 1.0]]
-    };
-    let at = |share: f64| {
+    let along = |share: f64| {
         [
             from[0] + share * (to[0] - from[0]),
             from[1] + share * (to[1] - from[1]),
         ]
     };
-    let beyond: &[Point] = if is_upright {
-        &[[0.0, -1.8], [0.0, 1.8], [1.0, -2.2], [-1.0, -2.2]]
+    let (near, far, outward): (&[Point], &[Point], &[Point]) = if is_upright {
+        (
+            &[[1.0, 0.0], [-1.0, 0.0]],
+            &[[2.2, 0.0], [-2.2, 0.0], [3.0, 0.0], [-3.0, 0.0]],
+            &[[0.0, -1.8], [0.0, 1.8]],
+        )
     } else {
-        &[[1.4, 0.0], [-1.4, 0.0], [0.0, -2.2], [0.0, 2.2]]
+        (
+            &[[0.0, -1.0], [0.0, 1.0]],
+            &[[0.0, -2.4], [0.0, 2.4], [0.0, -4.0], [0.0, 4.0]],
+            &[
+                [1.3, 0.0],
+                [-1.3, 0.0],
+                [1.3, 0.9],
+                [-1.3, 0.9],
+                [1.3, -0.9],
+                [-1.3, -0.9],
+            ],
+        )
     };
-    let found = [0.5, 0.3, 0.7, 0.15, 0.85]
-        .iter()
-        .find_map(|&share| labels.place(at(share), text, sides))
-        .or_else(|| labels.place(to, text, beyond))
-        .or_else(|| labels.place(from, text, beyond));
-    let Some([x, y]) = found else { return false };
-    let half = 0.5 * TextSize::Small.width(text) + 3.0;
-    drawing.items.push(Item::Area {
-        loops: vec![vec![
-            [x - half, y - 8.0],
-            [x + half, y - 8.0],
-            [x + half, y + 8.0],
-            [x - half, y + 8.0],
-        ]],
-        fill: PAPER,
+    let on_it: &[Point] = &[0.5, 0.3, 0.7, 0.15, 0.85].map(along);
+    let tries: [(&[Point], &[Point], Cover); 6] = [
+        (on_it, near, Cover::Nothing),
+        (on_it, far, Cover::Nothing),
+        (&[to, from], outward, Cover::Nothing),
+        (on_it, near, Cover::Curves),
+        (on_it, far, Cover::Curves),
+        (&[to, from], outward, Cover::Curves),
+    ];
+    let found = tries.into_iter().find_map(|(starts, offsets, cover)| {
+        starts
+            .iter()
+            .find_map(|&start| Some((start, labels.place(start, text, offsets, cover)?)))
     });
-    drawing.text([x, y + 5.0], Anchor::Middle, TextSize::Small, text);
+    let Some((start, middle)) = found else {
+        return false;
+    };
+    leader(drawing, start, middle, text);
+    text_on_paper(drawing, middle, text);
     true
+}
+
+/// A thin line from an arrow to the border of its text, unless that is near.
+fn leader(drawing: &mut Drawing, start: Point, middle: Point, text: &str) {
+    let half = half_size(text);
+    let end =
+        [0, 1].map(|axis| start[axis].clamp(middle[axis] - half[axis], middle[axis] + half[axis]));
+    if (end[0] - start[0]).hypot(end[1] - start[1]) > NEAR {
+        drawing.lines(vec![vec![start, end]], INK, 0.8);
+    }
 }
 
 /// Names the lengths whose numbers found no room.

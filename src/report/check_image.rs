@@ -1,11 +1,13 @@
 //! Panels of a micrograph with what was found in it.
 
+use std::fmt::Write as _;
+
 use super::check_axes::is_place;
 use super::check_curves::{page_loops, with_left_out};
 use super::check_dimensions::{draw_dimensions, tell_unplaced};
 use super::check_legend::{CROP, HALO, Legend, Sample, bright_style, draw_seed};
 use super::check_page::Frame;
-use super::check_picture::{ImagePanel, Region};
+use super::check_picture::{Dimension, ImagePanel, Region};
 use super::drawing::{Anchor, Drawing, INK, Item, Raster, TextSize};
 use super::label_box::Labels;
 use super::line_style::closed;
@@ -52,10 +54,16 @@ pub(super) fn draw_image(
     let size = extent.map(|e| (e * scale).round().max(1.0));
     let scales = [size[0] / extent[0], size[1] / extent[1]];
     let mut layout = Layout::spanning(panel.origin, size, scales);
+    let means = if columns as f64 > size[0] || rows as f64 > size[1] {
+        ", drawn smaller by means"
+    } else {
+        ""
+    };
     let pixel = format!(
-        "{columns} x {rows} pixels of {}",
+        "{columns} x {rows} pixels of {}{means}",
         with_unit(edge, numbers::LENGTHS, 4)
     );
+    let _ = write!(drawing.description, " {pixel}.");
     frame.paragraph(drawing, &pixel, TextSize::Small);
     frame.y += 8.0;
     layout.at = [frame.left.round() as i32, frame.y.round() as i32];
@@ -75,7 +83,8 @@ pub(super) fn draw_image(
     );
     crop(drawing, &layout, panel.crop, &mut legend);
     seeds(drawing, &layout, &panel.seeds, &mut legend);
-    let unplaced = draw_dimensions(drawing, &layout, &panel.dimensions, &mut labels);
+    let dimensions: Vec<&Dimension> = panel.dimensions.iter().collect();
+    let unplaced = draw_dimensions(drawing, &layout, &dimensions, &mut labels);
     let beside = frame.width - size[0] - GAP;
     frame.y = top + size[1] + 18.0;
     scale_bar(drawing, frame, scale, size[0]);
@@ -203,10 +212,7 @@ mod tests {
         let grey: Vec<u8> = same.rgb.chunks(3).map(|p| p[0]).collect();
         assert_eq!(grey, panel.grey);
         let wide = shrunk(&panel, [8, 2]);
-        assert_eq!(
-            wide.rgb.get(..9).unwrap(),
-            [0, 0, 0, 0, 0, 0, 100, 100, 100]
-        );
+        assert_eq!(wide.rgb[..9], [0, 0, 0, 0, 0, 0, 100, 100, 100]);
         assert_eq!(covered(3, 4, 1), [0, 1]);
     }
 }

@@ -273,3 +273,67 @@ impl Legend {
         y + row
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn no_two_kinds_differ_by_colour_alone() {
+        let curves = [
+            CurveKind::Measured,
+            CurveKind::Repeat,
+            CurveKind::Corrected,
+            CurveKind::Reference,
+            CurveKind::Bridge,
+            CurveKind::Lid,
+            CurveKind::Alternative,
+            CurveKind::InnerReach,
+            CurveKind::OuterReach,
+        ];
+        let regions = [
+            RegionKind::OuterReach,
+            RegionKind::Section,
+            RegionKind::InnerReach,
+            RegionKind::Lid,
+        ];
+        let shapes: [Vec<LineStyle>; 3] = [
+            curves.map(curve_style).to_vec(),
+            regions.map(|r| region_style(r).1).to_vec(),
+            regions.map(bright_style).to_vec(),
+        ];
+        for styles in shapes {
+            for (index, a) in styles.iter().enumerate() {
+                for b in styles.iter().skip(index + 1) {
+                    let is_wider = (a.width - b.width).abs() >= 0.5;
+                    assert!(is_wider || a.dash != b.dash, "{a:?} {b:?}");
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn entries_wrap_within_the_width() {
+        let mut drawing = Drawing {
+            width: 400,
+            height: 400,
+            title: String::new(),
+            description: String::new(),
+            items: Vec::new(),
+        };
+        let mut legend = Legend::default();
+        for name in ["one", "two two two two two", "three", "x"] {
+            legend.add(Sample::Seed, name.repeat(9));
+            legend.add(Sample::Seed, name.repeat(9));
+        }
+        assert_eq!(legend.entries.len(), 4);
+        let end = legend.draw(&mut drawing, [10.0, 10.0], 200.0);
+        assert!(end > 10.0 + 4.0 * ROW);
+        for item in &drawing.items {
+            if let Item::Text { at, text, .. } = item {
+                assert!(at[0] + TextSize::Small.width(text) <= 210.0, "{text}");
+                assert!(at[1] < end);
+            }
+        }
+    }
+}

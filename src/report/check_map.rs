@@ -3,14 +3,14 @@
 use std::fmt::Write as _;
 
 use super::check_axes::{Axis, draw_frame, draw_ticks, is_place, scale_words, unit_of};
-use super::check_curves::AXIS_ROOM;
+use super::check_curves::NARROW_ROOM;
 use super::check_image::covered;
 use super::check_legend::{CUT, HALO, Legend, Sample, missing_tone};
 use super::check_page::Frame;
 use super::check_picture::{Cut, MapPanel};
 use super::colour_map::viridis;
 use super::drawing::{Anchor, Drawing, INK, Item, PAPER, Raster, TextSize};
-use super::label_box::Labels;
+use super::label_box::{Cover, Labels, text_on_paper};
 use super::numbers::{self, per_cent, title, with_unit};
 use super::picture_layout::{Exaggeration, Layout};
 use crate::geometry::Point;
@@ -92,13 +92,13 @@ pub(super) fn draw_map(
         ));
     }
     let heights = Heights::of(panel).ok_or("no height in it is finite")?;
-    let (mut layout, exaggeration) = placed(panel, frame.width - AXIS_ROOM - BAR_ROOM)
+    let (mut layout, exaggeration) = placed(panel, frame.width - NARROW_ROOM - BAR_ROOM)
         .ok_or("the distance of its points is no length")?;
     let size = layout.size.map(|s| s as usize);
-    caption(drawing, frame, panel, exaggeration);
-    frame.y += 22.0;
+    caption(drawing, frame, panel, (exaggeration, size));
+    frame.y += 28.0;
     layout.at = [
-        (frame.left + AXIS_ROOM).round() as i32,
+        (frame.left + NARROW_ROOM).round() as i32,
         frame.y.round() as i32,
     ];
     drawing.items.push(Item::Image {
@@ -109,15 +109,19 @@ pub(super) fn draw_map(
     let [left, top] = layout.at.map(f64::from);
     let low = layout.section([left, top + layout.size[1]]);
     let high = layout.section([left + layout.size[0], top]);
-    let unit = unit_of(0.0, high[0].max(high[1]));
-    let x = Axis::new([low[0], high[0]], unit, layout.scale[0], true);
-    let y = Axis::new([low[1], high[1]], unit, layout.scale[1], false);
+    let units = if exaggeration == Exaggeration::None {
+        [unit_of(0.0, high[0].max(high[1])); 2]
+    } else {
+        high.map(|h| unit_of(0.0, h))
+    };
+    let x = Axis::new([low[0], high[0]], units[0], layout.scale[0], true);
+    let y = Axis::new([low[1], high[1]], units[1], layout.scale[1], false);
     let mut legend = Legend::default();
     cuts(drawing, &layout, &panel.cuts, &mut legend);
     draw_frame(drawing, &layout);
     let bottom = top + layout.size[1];
     let end = draw_ticks(drawing, &layout, [&x, &y], bottom);
-    let heading = [left - 10.0, top - 9.0];
+    let heading = [left - 10.0, top - 13.0];
     drawing.text(heading, Anchor::End, TextSize::Small, y.heading("y"));
     let middle = [left + 0.5 * layout.size[0], end + 14.0];
     drawing.text(middle, Anchor::Middle, TextSize::Small, x.heading("x"));
@@ -134,7 +138,7 @@ pub(super) fn draw_map(
     if room > 260.0 {
         frame.y = frame.y.max(legend.draw(drawing, [beside, top], room));
     } else {
-        let width = frame.width - AXIS_ROOM;
+        let width = frame.width - NARROW_ROOM;
         frame.y = legend.draw(drawing, [left, frame.y], width);
     }
     range(drawing, frame, &heights);
@@ -163,7 +167,12 @@ fn placed(panel: &MapPanel, room: f64) -> Option<(Layout, Exaggeration)> {
     })
 }
 
-fn caption(drawing: &mut Drawing, frame: &mut Frame, panel: &MapPanel, exaggeration: Exaggeration) {
+fn caption(
+    drawing: &mut Drawing,
+    frame: &mut Frame,
+    panel: &MapPanel,
+    (exaggeration, size): (Exaggeration, [usize; 2]),
+) {
     let [columns, rows] = panel.size;
     let [dx, dy] = panel.spacing.map(|s| with_unit(s, numbers::LENGTHS, 4));
     let mut text = format!("{columns} x {rows} points, {dx} apart along x and {dy} along y");
@@ -173,6 +182,9 @@ fn caption(drawing: &mut Drawing, frame: &mut Frame, panel: &MapPanel, exaggerat
             .replace("widths", "lengths along x")
             .replace("x:z", "x:y");
         let _ = write!(text, "; {words}");
+    }
+    if columns > size[0] || rows > size[1] {
+        text.push_str("; each pixel shows the mean of the heights under it");
     }
     let _ = write!(drawing.description, " {text}.");
     frame.paragraph(drawing, &text, TextSize::Small);
@@ -239,12 +251,12 @@ fn colour_bar(drawing: &mut Drawing, heights: &Heights, [left, top]: Point, heig
             );
         }
         let words = axis.heading("height");
-        drawing.text([left, top - 9.0], Anchor::Start, TextSize::Small, words);
+        drawing.text([left, top - 13.0], Anchor::Start, TextSize::Small, words);
     } else {
         let all = with_unit(heights.low, numbers::LENGTHS, 4);
         let at = [right + 10.0, top + 0.5 * tall + 5.0];
         drawing.text(at, Anchor::Start, TextSize::Small, all);
-        drawing.text([left, top - 9.0], Anchor::Start, TextSize::Small, "height");
+        drawing.text([left, top - 13.0], Anchor::Start, TextSize::Small, "height");
     }
     let bottom = top + tall;
     let corners = vec![
@@ -362,19 +374,9 @@ fn cut_label(drawing: &mut Drawing, line: &[Point], text: &str, labels: &mut Lab
     let found = ends
         .into_iter()
         .flatten()
-        .find_map(|&end| labels.place(end, text, &offsets));
-    if let Some([x, y]) = found {
-        let half = 0.5 * TextSize::Small.width(text) + 3.0;
-        drawing.items.push(Item::Area {
-            loops: vec![vec![
-                [x - half, y - 8.0],
-                [x + half, y - 8.0],
-                [x + half, y + 8.0],
-                [x - half, y + 8.0],
-            ]],
-            fill: PAPER,
-        });
-        drawing.text([x, y + 5.0], Anchor::Middle, TextSize::Small, text);
+        .find_map(|&end| labels.place(end, text, &offsets, Cover::Curves));
+    if let Some(middle) = found {
+        text_on_paper(drawing, middle, text);
     }
 }
 

@@ -122,10 +122,12 @@ fn heading(drawing: &mut Drawing, page: &mut Frame, picture: &CheckPicture) {
         n => format!("{n} {what}s"),
     };
     let mut words = format!(
-        "Check picture: from the instrument's file to the section in {} and {}",
+        "Check picture: from the instrument's file to the section in {}",
         plural(picture.panels.len(), "panel"),
-        plural(picture.notes.len(), "note"),
     );
+    if !picture.notes.is_empty() {
+        let _ = write!(words, " and {}", plural(picture.notes.len(), "note"));
+    }
     let warnings = picture.warnings.len();
     if warnings > 0 {
         let _ = write!(words, "; {} below", plural(warnings, "warning"));
@@ -191,9 +193,10 @@ fn one_panel(
     };
     let letter = char::from(b'A' + (index % 26) as u8);
     let turn = if index >= 26 { "A" } else { "" };
-    let title = format!("{turn}{letter}  {}", numbers::title(title));
-    let _ = write!(drawing.description, " Panel {}.", title.trim_end());
+    let title = format!("{turn}{letter}: {}", numbers::title(title));
+    let _ = write!(drawing.description, " Panel {title}.");
     frame.paragraph(drawing, &title, TextSize::Medium);
+    frame.y += 2.0;
     let begun = drawing.items.len();
     let drawn = match panel {
         Panel::Curves(p) => draw_curves(drawing, frame, p),

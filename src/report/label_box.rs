@@ -1,6 +1,8 @@
 //! Boxes of texts on a page, and places for them where they cover nothing.
 
-use super::drawing::TextSize;
+use std::collections::BTreeSet;
+
+use super::drawing::{Anchor, Drawing, Item, PAPER, TextSize};
 use crate::geometry::Point;
 
 /// An upright box, px.
@@ -35,10 +37,19 @@ impl LabelBox {
 
 /// Free space around a text, px.
 const FREE: f64 = 3.0;
-/// Distance of drawn points that texts keep clear of, px.
-const STRIDE: f64 = 6.0;
-/// Most drawn points that texts keep clear of.
-const MOST_POINTS: usize = 30_000;
+/// Edge of the squares of the page that lines are noted in, px.
+const CELL: f64 = 4.0;
+/// Most steps along one set of lines.
+const MOST_STEPS: usize = 400_000;
+
+/// What a text may cover.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Cover {
+    /// Nothing.
+    Nothing,
+    /// Curves, but neither arrows nor marks nor texts.
+    Curves,
+}
 
 /// Texts within a frame, none over another, and over drawn lines only where there is no other place.
 #[derive(Debug)]
@@ -46,9 +57,38 @@ pub(super) struct Labels {
     frame: LabelBox,
     texts: Vec<LabelBox>,
     /// Arrows and marks, which no text may cover.
-    solid: Vec<Point>,
+    solid: Cells,
     /// Curves, which a text may cover if it must.
-    soft: Vec<Point>,
+    soft: Cells,
+}
+
+/// Squares of the page through which lines run.
+#[derive(Debug, Default)]
+struct Cells(BTreeSet<[i32; 2]>);
+
+impl Cells {
+    fn add(&mut self, lines: &[Vec<Point>], within: &LabelBox) {
+        let inside = along(lines)
+            .take(MOST_STEPS)
+            .filter(|&p| within.holds(p, CELL));
+        self.0.extend(inside.map(cell));
+    }
+
+    /// Whether a line runs through a box or nearer to it than `free` px.
+    fn meet(&self, text: &LabelBox, free: f64) -> bool {
+        let corner = |side: f64| {
+            cell([
+                text.middle[0] + side * (text.half[0] + free),
+                text.middle[1] + side * (text.half[1] + free),
+            ])
+        };
+        let ([left, top], [right, bottom]) = (corner(-1.0), corner(1.0));
+        (left..=right).any(|x| self.0.range([x, top]..=[x, bottom]).next().is_some())
+    }
+}
+
+fn cell(p: Point) -> [i32; 2] {
+    p.map(|v| (v / CELL).floor() as i32)
 }
 
 impl Labels {
@@ -60,55 +100,82 @@ impl Labels {
                 half: [0.5 * size[0], 0.5 * size[1]],
             },
             texts: Vec::new(),
-            solid: Vec::new(),
-            soft: Vec::new(),
+            solid: Cells::default(),
+            soft: Cells::default(),
         }
     }
 
     /// Keeps texts off lines where it can.
     pub(super) fn avoid(&mut self, lines: &[Vec<Point>]) {
-        let room = MOST_POINTS.saturating_sub(self.soft.len());
-        self.soft.extend(along(lines).take(room));
+        self.soft.add(lines, &self.frame);
     }
 
     /// Keeps texts off lines.
     pub(super) fn keep_clear(&mut self, lines: &[Vec<Point>]) {
-        let room = MOST_POINTS.saturating_sub(self.solid.len());
-        self.solid.extend(along(lines).take(room));
+        self.solid.add(lines, &self.frame);
+    }
+
+    /// Takes a place for a small text that is put there in any case.
+    pub(super) fn take(&mut self, middle: Point, text: &str) {
+        let half = half_size(text);
+        self.texts.push(LabelBox { middle, half });
     }
 
     /// The middle of a small text beside `at`: the first of `offsets` where it fits. An offset of one is half the
     /// size of the text and a gap.
-    pub(super) fn place(&mut self, at: Point, text: &str, offsets: &[Point]) -> Option<Point> {
-        let half = [0.5 * TextSize::Small.width(text) + 3.0, 8.0];
+    pub(super) fn place(
+        &mut self,
+        at: Point,
+        text: &str,
+        offsets: &[Point],
+        cover: Cover,
+    ) -> Option<Point> {
+        let half = half_size(text);
         let gap = 6.0;
-        let boxes = || {
-            offsets.iter().map(|o| LabelBox {
-                middle: [
-                    at[0] + o[0] * (half[0] + gap),
-                    at[1] + o[1] * (half[1] + gap),
-                ],
-                half,
-            })
-        };
+        let mut boxes = offsets.iter().map(|o| LabelBox {
+            middle: [
+                at[0] + o[0] * (half[0] + gap),
+                at[1] + o[1] * (half[1] + gap),
+            ],
+            half,
+        });
         let is_free = |b: &LabelBox| {
             self.frame.contains(b)
                 && !self.texts.iter().any(|t| t.meets(b, FREE))
-                && !self.solid.iter().any(|&p| b.holds(p, 1.0))
+                && !self.solid.meet(b, 0.0)
         };
-        let found = boxes()
-            .find(|b| is_free(b) && !self.soft.iter().any(|&p| b.holds(p, FREE)))
-            .or_else(|| boxes().find(is_free))?;
+        let is_clear = |b: &LabelBox| cover == Cover::Curves || !self.soft.meet(b, 1.0);
+        let found = boxes.find(|b| is_free(b) && is_clear(b))?;
         self.texts.push(found);
         Some(found.middle)
     }
+}
+
+/// Half the size of a small text on paper, px.
+pub(super) fn half_size(text: &str) -> Point {
+    [0.5 * TextSize::Small.width(text) + 3.0, 8.0]
+}
+
+/// Draws a small text on paper around its middle.
+pub(super) fn text_on_paper(drawing: &mut Drawing, middle: Point, text: &str) {
+    let ([x, y], [w, h]) = (middle, half_size(text));
+    drawing.items.push(Item::Area {
+        loops: vec![vec![
+            [x - w, y - h],
+            [x + w, y - h],
+            [x + w, y + h],
+            [x - w, y + h],
+        ]],
+        fill: PAPER,
+    });
+    drawing.text([x, y + 5.0], Anchor::Middle, TextSize::Small, text);
 }
 
 /// Points along lines.
 fn along(lines: &[Vec<Point>]) -> impl Iterator<Item = Point> + '_ {
     lines.iter().flat_map(|l| l.windows(2)).flat_map(|pair| {
         let (a, b) = (pair[0], pair[1]);
-        let count = ((b[0] - a[0]).hypot(b[1] - a[1]) / STRIDE).ceil().max(1.0);
+        let count = ((b[0] - a[0]).hypot(b[1] - a[1]) / CELL).ceil().max(1.0);
         (0..=count as usize).map(move |k| {
             let share = k as f64 / count;
             [a[0] + share * (b[0] - a[0]), a[1] + share * (b[1] - a[1])]
@@ -121,16 +188,19 @@ mod tests {
     use super::*;
 
     #[test]
-    fn texts_share_no_place_and_cover_a_curve_only_when_they_must() {
+    fn texts_share_no_place_and_cover_a_curve_only_where_they_may() {
         let mut labels = Labels::new([0.0, 0.0], [200.0, 100.0]);
         labels.avoid(&[vec![[0.0, 40.0], [200.0, 40.0]]]);
-        let offsets = [[0.0, -1.0], [0.0, 1.0], [0.0, -2.5]];
-        let first = labels.place([100.0, 54.0], "abc", &offsets).unwrap();
+        let mut place = |text: &str, offsets: &[Point], cover| {
+            labels.place([100.0, 54.0], text, offsets, cover)
+        };
+        let offsets = [[0.0, -1.0], [0.0, 1.0]];
+        let first = place("abc", &offsets, Cover::Nothing).unwrap();
         assert!(first[1] > 54.0, "the curve is above: {first:?}");
-        let second = labels.place([100.0, 54.0], "abc", &offsets).unwrap();
+        assert_eq!(place("abc", &offsets, Cover::Nothing), None);
+        let second = place("abc", &offsets, Cover::Curves).unwrap();
         assert!((second[1] - first[1]).abs() > 16.0);
-        labels.keep_clear(&[vec![[0.0, 20.0], [200.0, 20.0]]]);
-        assert_eq!(labels.place([100.0, 54.0], "abc", &offsets), None);
-        assert_eq!(labels.place([100.0, 50.0], &"x".repeat(99), &offsets), None);
+        assert_eq!(place("abc", &offsets, Cover::Curves), None);
+        assert_eq!(place(&"x".repeat(99), &[[0.0, -3.0]], Cover::Curves), None);
     }
 }

@@ -1,6 +1,6 @@
 //! How lines and areas differ: colour, width and dashes, and hatching.
 
-use super::drawing::{Colour, Drawing, Item};
+use super::drawing::{Colour, Drawing, Item, PAPER};
 use crate::geometry::Point;
 
 /// Most dashes of one line; a longer line gets longer dashes.
@@ -132,17 +132,19 @@ pub(super) fn hatched(loops: &[Vec<Point>], spacing: f64) -> Vec<Vec<Point>> {
     out
 }
 
-/// A filled triangle whose tip is at `tip` and which points along `direction` (of length one).
+/// A filled triangle on paper whose tip is at `tip` and which points along `direction` (of length one).
 pub(super) fn arrow_head(drawing: &mut Drawing, tip: Point, direction: Point, colour: Colour) {
     let (length, half) = (10.0, 3.6);
     let [dx, dy] = direction;
     let foot = [tip[0] - length * dx, tip[1] - length * dy];
+    let corners = vec![
+        tip,
+        [foot[0] - half * dy, foot[1] + half * dx],
+        [foot[0] + half * dy, foot[1] - half * dx],
+    ];
+    drawing.lines(closed(std::slice::from_ref(&corners)), PAPER, 1.8);
     drawing.items.push(Item::Area {
-        loops: vec![vec![
-            tip,
-            [foot[0] - half * dy, foot[1] + half * dx],
-            [foot[0] + half * dy, foot[1] - half * dx],
-        ]],
+        loops: vec![corners],
         fill: colour,
     });
 }

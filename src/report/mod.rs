@@ -9,6 +9,7 @@ mod check_image;
 mod check_lanes;
 mod check_legend;
 mod check_map;
+mod check_outside;
 mod check_page;
 mod check_picture;
 mod colour_map;

@@ -65,15 +65,22 @@ pub fn to_png(drawing: &Drawing) -> Result<Vec<u8>, PngError> {
     Ok(with_text(encode_rgb(&raster)?, &texts))
 }
 
-/// A raster as a PNG file of three bytes a pixel.
+/// A raster as a PNG file of three bytes a pixel, or of one where all are grey.
 pub(crate) fn encode_rgb(raster: &Raster) -> Result<Vec<u8>, PngError> {
     let (width, height) = (raster.columns as u32, raster.rows as u32);
     if width == 0 || height == 0 || raster.rgb.len() != 3 * raster.columns * raster.rows {
         return Err(PngError::Size { width, height });
     }
     let mut bytes = Vec::new();
-    PngEncoder::new_with_quality(&mut bytes, CompressionType::Default, FilterType::Adaptive)
-        .write_image(&raster.rgb, width, height, ExtendedColorType::Rgb8)?;
+    let encoder =
+        PngEncoder::new_with_quality(&mut bytes, CompressionType::Default, FilterType::Adaptive);
+    let is_grey = |p: &[u8]| p.iter().all(|v| p.first() == Some(v));
+    if raster.rgb.chunks_exact(3).all(is_grey) {
+        let grey: Vec<u8> = raster.rgb.iter().copied().step_by(3).collect();
+        encoder.write_image(&grey, width, height, ExtendedColorType::L8)?;
+    } else {
+        encoder.write_image(&raster.rgb, width, height, ExtendedColorType::Rgb8)?;
+    }
     Ok(bytes)
 }
 

@@ -337,7 +337,7 @@ fn image_panel(picture: &MicrographSection) -> ImagePanel {
         title: "The picture with the contour that was taken".to_owned(),
         size: [preview.width as usize, preview.height as usize],
         grey: preview.grey.clone(),
-        pixel_size: scale[0] * f64::from(preview.factor),
+        pixel_size: scale.map(|s| s * f64::from(preview.factor)),
         origin: [-f64::from(part.x) * scale[0], -below * scale[1]],
         outlines,
         crop: Some([[0.0, 0.0], size]),

@@ -41,9 +41,9 @@ pub(super) fn draw_image(
             "{found} grey values are no picture of {columns} x {rows} pixels"
         ));
     }
-    let edge = panel.pixel_size;
-    let extent = [columns as f64 * edge, rows as f64 * edge];
-    if !(edge > 0.0 && is_place(extent) && is_place(panel.origin)) {
+    let [across, up] = panel.pixel_size;
+    let extent = [columns as f64 * across, rows as f64 * up];
+    if !(across > 0.0 && up > 0.0 && is_place(extent) && is_place(panel.origin)) {
         return Err("the size of a pixel is no length".to_owned());
     }
     let widest = WIDEST.min(frame.width);
@@ -59,11 +59,13 @@ pub(super) fn draw_image(
     } else {
         ""
     };
-    let pixel = format!(
-        "{columns} x {rows} pixels of {}{means}",
-        with_unit(edge, numbers::LENGTHS, 4)
-    );
-    let _ = write!(drawing.description, " {pixel}.");
+    let length = |edge: f64| with_unit(edge, numbers::LENGTHS, 4);
+    let edge = if (across / up - 1.0).abs() < 1e-9 {
+        length(across)
+    } else {
+        format!("{} by {}", length(across), length(up))
+    };
+    let pixel = format!("{columns} x {rows} pixels of {edge}{means}");
     frame.paragraph(drawing, &pixel, TextSize::Small);
     frame.y += 8.0;
     layout.at = [frame.left.round() as i32, frame.y.round() as i32];

@@ -215,8 +215,8 @@ pub struct ImagePanel {
     pub size: [usize; 2],
     /// Grey values, 0 black to 255 white, row by row from the top.
     pub grey: Vec<u8>,
-    /// Edge of a pixel, m.
-    pub pixel_size: f64,
+    /// Width and height of a pixel, m.
+    pub pixel_size: [f64; 2],
     /// Where the lower left corner of the picture lies in the plane of the outlines, m.
     pub origin: Point,
     /// Outlines found.

@@ -219,13 +219,13 @@ fn nothing_to_draw_is_an_error_and_one_empty_panel_says_so_in_its_place() {
         page(Panel::Image(ImagePanel {
             size: [2, 2],
             grey: vec![1; 3],
-            pixel_size: 1e-6,
+            pixel_size: [1e-6; 2],
             ..ImagePanel::default()
         })),
         page(Panel::Image(ImagePanel {
             size: [2, 2],
             grey: vec![1; 4],
-            pixel_size: 0.0,
+            pixel_size: [0.0; 2],
             ..ImagePanel::default()
         })),
     ];
@@ -430,7 +430,7 @@ fn the_png_shows_map_colours_hatching_and_the_grey_picture_where_they_belong() {
     let image = ImagePanel {
         size: [2, 1],
         grey: vec![30, 220],
-        pixel_size: 1e-6,
+        pixel_size: [1e-6; 2],
         ..ImagePanel::default()
     };
     let png = check_picture_bytes(&page(Panel::Image(image)), PictureFormat::Png).unwrap();

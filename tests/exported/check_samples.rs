@@ -344,7 +344,7 @@ pub(crate) fn image_panel() -> ImagePanel {
         title: "Micrograph with the outline found in it".to_owned(),
         size,
         grey,
-        pixel_size: pixel,
+        pixel_size: [pixel; 2],
         origin: [0.0, 0.0],
         outlines: vec![
             region(

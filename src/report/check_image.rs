@@ -66,6 +66,7 @@ pub(super) fn draw_image(
         format!("{} by {}", length(across), length(up))
     };
     let pixel = format!("{columns} x {rows} pixels of {edge}{means}");
+    let _ = write!(drawing.description, " {pixel}.");
     frame.paragraph(drawing, &pixel, TextSize::Small);
     frame.y += 8.0;
     layout.at = [frame.left.round() as i32, frame.y.round() as i32];

@@ -71,13 +71,16 @@ impl<'a> Walk<'a> {
     /// way as drawn on the screen, so outer loops have positive area in these coordinates.
     pub(super) fn loops(&mut self) -> Vec<PixelLoop> {
         let mut loops = Vec::new();
-        let bit = 2 << LEFT;
+        let (bit, width) = (2 << LEFT, self.grey.width);
         for y in 0..self.grey.height {
-            for x in 0..self.grey.width {
-                let mark = self.mark([x, y]);
-                if mark & 1 == 1 && mark & bit == 0 && !self.is_inside([x, y], LEFT) {
+            let mut is_before = false;
+            for x in 0..width {
+                let mark = self.marks.get(y * width + x).copied().unwrap_or(0);
+                let is_inside = mark & 1 == 1;
+                if is_inside && !is_before && mark & bit == 0 {
                     loops.push(self.walk([x, y], LEFT));
                 }
+                is_before = is_inside;
             }
         }
         loops

@@ -5,14 +5,18 @@ use super::grey::Grey;
 use super::grey_edge::{Edge, EdgeProblem, GREY_EDGE, Section, edge, loops_above, net_area};
 use super::micrograph_problem::MicrographProblem;
 use super::micrograph_section::PixelLoop;
-use super::options::{MicrographOptions, Threshold};
+use super::options::{MicrographOptions, PixelBox, Threshold};
 use super::region_choice::Chosen;
 use super::regions::{Level, Regions};
-use super::wall_levels::{FIRST_DISTANCE, LAST_DISTANCE, Sides, measure, share_of_jumps};
+use super::wall_levels::{
+    FIRST_DISTANCE, LAST_DISTANCE, Sides, measure, share_of_jumps, width_by_slope,
+};
 use crate::intake::limits::MAX_VERTICES;
 
 /// Passes in which level and width of the edge settle.
 const PASSES: usize = 3;
+/// Pixels about the region that are looked at.
+const MARGIN: u32 = 100;
 /// A level is half-way within this share of the contrast.
 const HALF_WAY: f64 = 0.02;
 /// Largest noise of neighbours over the contrast at which four pixels give the place of a sharp edge better
@@ -49,6 +53,7 @@ impl Traced {
 }
 
 /// What one pass at a level gives.
+#[derive(Default)]
 struct Pass {
     mask: Vec<u8>,
     loops: Vec<PixelLoop>,
@@ -65,26 +70,27 @@ pub(super) fn traced(
     options: &MicrographOptions,
     least_area: f64,
 ) -> Result<Traced, MicrographProblem> {
-    let inner_pixel = chosen.regions.inner_pixel(chosen.label).unwrap_or((0, 0));
-    let mut level = chosen.level;
-    let mut pass = pass(grey, &chosen.regions, chosen.label, level, least_area)?;
-    let fallback = |level: Level| {
-        let [low, high] = chosen.classes.means;
-        let (fluid, wall) = if level.is_fluid(low as u16) {
-            (low, high)
-        } else {
-            (high, low)
-        };
-        Sides {
-            fluid,
-            wall,
-            noise: 0.0,
-        }
+    let window = Window::about(grey, chosen);
+    let grey = &window.grey;
+    let (mut level, inner_pixel) = (chosen.level, window.inner_pixel);
+    let mut pass = pass_at(grey, level, inner_pixel, least_area)?.unwrap_or_default();
+    let [low, high] = chosen.classes.means;
+    let (fluid, wall) = if level.is_fluid(low as u16) {
+        (low, high)
+    } else {
+        (high, low)
     };
-    let mut sides = fallback(level);
+    let mut sides = Sides {
+        fluid,
+        wall,
+        noise: 0.0,
+    };
     let mut found = Err(EdgeProblem::LevelOutside);
     let mut distance = FIRST_DISTANCE;
+    let mut width = width_by_slope(grey, &pass.loops, high - low);
     for _ in 0..PASSES {
+        let wanted = (2.0 * width).ceil().clamp(0.0, f64::from(LAST_DISTANCE)) as u8;
+        distance = distance.max(wanted);
         if let Some(measured) = measure(grey, &pass.mask, level, distance) {
             sides = measured;
         }
@@ -109,12 +115,11 @@ pub(super) fn traced(
             least_area,
         };
         found = edge(&section, &sides, options.reach_levels);
-        let width = found.as_ref().map_or(0.0, |edge| edge.standard_width);
-        let wanted = (2.0 * width).ceil().clamp(0.0, f64::from(LAST_DISTANCE)) as u8;
-        if wanted <= distance {
+        width = found.as_ref().map_or(0.0, |edge| edge.standard_width);
+        // The slope gives the width to about a third.
+        if 1.5 * width <= f64::from(distance) || distance == LAST_DISTANCE {
             break;
         }
-        distance = wanted;
     }
     let is_sharp = found
         .as_ref()
@@ -129,10 +134,16 @@ pub(super) fn traced(
         };
         pass = pass_of(grey, pass.mask, areas, least_area)?;
     }
+    let jumps = share_of_jumps(grey, &pass.loops, &sides);
+    window.move_back(&mut pass.loops);
+    if let Ok(edge) = &mut found {
+        window.move_back(&mut edge.inner);
+        window.move_back(&mut edge.outer);
+    }
     Ok(Traced {
         level,
         by_areas,
-        jumps: share_of_jumps(grey, &pass.mask, &sides),
+        jumps,
         sides,
         filled: (
             pass.filled.len(),
@@ -144,16 +155,45 @@ pub(super) fn traced(
     })
 }
 
-/// The contour of a region at a level.
-fn pass(
-    grey: &Grey,
-    regions: &Regions,
-    label: u32,
-    level: Level,
-    least_area: f64,
-) -> Result<Pass, MicrographProblem> {
-    let mask = regions.mask(label);
-    pass_of(grey, mask, Crossing::Linear(level.counts), least_area)
+/// The picture about a region, wide enough for its edge.
+struct Window {
+    grey: Grey,
+    offset: [f64; 2],
+    /// A pixel well inside the region.
+    inner_pixel: (usize, usize),
+}
+
+impl Window {
+    fn about(grey: &Grey, chosen: &Chosen) -> Self {
+        let (width, height) = (grey.width as u32, grey.height as u32);
+        let blob = chosen.regions.blob(chosen.label);
+        let (low, high) = blob.map_or(([0, 0], [width, height]), |blob| (blob.low, blob.high));
+        let [x, y] = low.map(|c| c.saturating_sub(MARGIN));
+        let right = high[0].saturating_add(MARGIN + 1).min(width);
+        let bottom = high[1].saturating_add(MARGIN + 1).min(height);
+        let part = PixelBox {
+            x,
+            y,
+            width: right - x,
+            height: bottom - y,
+        };
+        let (column, row) = chosen.regions.inner_pixel(chosen.label).unwrap_or((0, 0));
+        Self {
+            grey: grey.part(part),
+            offset: [f64::from(x), f64::from(y)],
+            inner_pixel: (
+                column.saturating_sub(x as usize),
+                row.saturating_sub(y as usize),
+            ),
+        }
+    }
+
+    /// Loops from pixels of the window to those of the part used.
+    fn move_back(&self, loops: &mut [PixelLoop]) {
+        for point in loops.iter_mut().flatten() {
+            *point = [point[0] + self.offset[0], point[1] + self.offset[1]];
+        }
+    }
 }
 
 /// The contour of a mask.
@@ -186,7 +226,9 @@ fn pass_at(
     let regions = Regions::find(grey, level).map_err(|_| MicrographProblem::TooNoisy)?;
     let label = regions.label_at(x, y);
     let closed = label.filter(|l| regions.blob(*l).is_some_and(|blob| !blob.touches_border));
-    closed
-        .map(|label| pass(grey, &regions, label, level, least_area))
+    let mask = closed.map(|label| regions.mask(label));
+    drop(regions);
+    let crossing = Crossing::Linear(level.counts);
+    mask.map(|mask| pass_of(grey, mask, crossing, least_area))
         .transpose()
 }

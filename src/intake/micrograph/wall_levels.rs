@@ -6,6 +6,7 @@
 
 use super::grey::Grey;
 use super::levels::Histogram;
+use super::micrograph_section::PixelLoop;
 use super::regions::Level;
 
 /// Distance of the bands from the edge without knowledge of its width, pixels.
@@ -38,41 +39,57 @@ impl Sides {
 
 /// City-block distance of each pixel from the nearest one on the other side, at most 255.
 fn distances(mask: &[u8], width: usize) -> Vec<u8> {
-    let n = mask.len();
-    let mut distance = vec![u8::MAX; n];
-    let mut relax = |i: usize, j: usize| {
-        if let (Some(a), Some(b)) = (mask.get(i), mask.get(j)) {
-            let step = if a == b {
-                distance
-                    .get(j)
-                    .copied()
-                    .unwrap_or(u8::MAX)
-                    .saturating_add(1)
-            } else {
-                1
-            };
-            if let Some(own) = distance.get_mut(i) {
-                *own = (*own).min(step);
-            }
-        }
-    };
-    for i in 0..n {
-        if !i.is_multiple_of(width) {
-            relax(i, i - 1);
-        }
-        if i >= width {
-            relax(i, i - width);
-        }
+    let mut distance = vec![u8::MAX; mask.len()];
+    let height = mask.len() / width;
+    for y in 0..height {
+        sweep_row(&mut distance, mask, width, y, y.checked_sub(1));
     }
-    for i in (0..n).rev() {
-        if !(i + 1).is_multiple_of(width) {
-            relax(i, i + 1);
-        }
-        if i + width < n {
-            relax(i, i + width);
-        }
+    for y in (0..height).rev() {
+        sweep_row(
+            &mut distance,
+            mask,
+            width,
+            y,
+            Some(y + 1).filter(|below| *below < height),
+        );
     }
     distance
+}
+
+/// Distances of a row from those of a neighbouring row and from each other, both ways.
+fn sweep_row(distance: &mut [u8], mask: &[u8], width: usize, y: usize, from: Option<usize>) {
+    let row_of = |y: usize| mask.get(y * width..(y + 1) * width).unwrap_or_default();
+    let step = |same: bool, distance: u8| if same { distance.saturating_add(1) } else { 1 };
+    let own_mask = row_of(y);
+    if let Some(other) = from {
+        let (low, high) = distance.split_at_mut(y.max(other) * width);
+        let (own, near) = if other < y {
+            (high.get_mut(..width), low.get(other * width..))
+        } else {
+            (low.get_mut(y * width..), high.get(..width).map(|row| &*row))
+        };
+        let (own, near) = (own.unwrap_or_default(), near.unwrap_or_default());
+        for (((d, n), m), k) in own.iter_mut().zip(near).zip(own_mask).zip(row_of(other)) {
+            *d = (*d).min(step(m == k, *n));
+        }
+    }
+    let own = distance
+        .get_mut(y * width..(y + 1) * width)
+        .unwrap_or_default();
+    let mut last: Option<(u8, u8)> = None;
+    for (d, &m) in own.iter_mut().zip(own_mask) {
+        if let Some((before, k)) = last {
+            *d = (*d).min(step(k == m, before));
+        }
+        last = Some((*d, m));
+    }
+    last = None;
+    for (d, &m) in own.iter_mut().zip(own_mask).rev() {
+        if let Some((before, k)) = last {
+            *d = (*d).min(step(k == m, before));
+        }
+        last = Some((*d, m));
+    }
 }
 
 /// Measures the levels in bands at a distance from the edge; `None` if a side has no pixels.
@@ -111,14 +128,17 @@ pub(super) fn measure(grey: &Grey, mask: &[u8], level: Level, distance: u8) -> O
     })
 }
 
+/// Most pixels whose noise is looked at.
+const NOISE_PIXELS: usize = 2_000_000;
+
 /// Scatter of the differences of neighbours along rows, away from the edge: 1.4826 times their median size, the
 /// standard deviation for a Gaussian; the larger of both sides.
 fn noise(grey: &Grey, mask: &[u8], distances: &[u8], from: u8) -> f64 {
+    let width = grey.width.max(1);
+    let every = mask.len().div_ceil(NOISE_PIXELS).max(1);
     let side = |inside: u8| {
-        let rows = mask
-            .chunks(grey.width.max(1))
-            .zip(distances.chunks(grey.width.max(1)));
-        let differences = rows.enumerate().flat_map(|(y, (mask, distances))| {
+        let rows = mask.chunks(width).zip(distances.chunks(width)).enumerate();
+        let differences = rows.step_by(every).flat_map(|(y, (mask, distances))| {
             let row = grey.row(y).windows(2).zip(mask.windows(2)).zip(distances);
             row.filter_map(move |((v, m), d)| match (v, m) {
                 ([a, b], [m, n])
@@ -135,30 +155,46 @@ fn noise(grey: &Grey, mask: &[u8], distances: &[u8], from: u8) -> f64 {
     side(0).max(side(1))
 }
 
-/// Share of the edge's pixel pairs that jump from one level to the other without a grey in between.
-pub(super) fn share_of_jumps(grey: &Grey, mask: &[u8], sides: &Sides) -> f64 {
+/// The two pixels between which a crossing lies, by the coordinate that is not half-way in a pixel.
+fn pair(grey: &Grey, [x, y]: [f64; 2]) -> [u16; 2] {
+    let is_centre = |c: f64| (c - c.floor() - 0.5).abs() < 1e-9;
+    let at = |x: f64, y: f64| grey.at(x.max(0.0) as usize, y.max(0.0) as usize);
+    if is_centre(x) {
+        [at(x, y - 0.5), at(x, y + 0.5)]
+    } else {
+        [at(x - 0.5, y), at(x + 0.5, y)]
+    }
+}
+
+/// Share of the contour's crossings that jump from one level to the other without a grey in between.
+pub(super) fn share_of_jumps(grey: &Grey, loops: &[PixelLoop], sides: &Sides) -> f64 {
     /// A grey is a level itself within this share of the contrast.
     const LEVEL_SHARE: f64 = 0.1;
-    let width = grey.width.max(1);
-    let is_near =
-        |v: u16, level: f64| (f64::from(v) - level).abs() <= LEVEL_SHARE * sides.contrast();
-    let (mut pairs, mut jumps) = (0_u64, 0_u64);
-    let mut pair = |i: usize, j: usize| {
-        if let (Some(1), Some(0)) = (mask.get(i), mask.get(j)) {
-            let value = |k: usize| grey.values.get(k).copied().unwrap_or(0);
-            pairs += 1;
-            jumps += u64::from(is_near(value(i), sides.fluid) && is_near(value(j), sides.wall));
-        }
+    let jumps = |v: u16, level: f64| (f64::from(v) - level).abs() <= LEVEL_SHARE * sides.contrast();
+    let is_jump = |[a, b]: [u16; 2]| {
+        jumps(a, sides.fluid) && jumps(b, sides.wall)
+            || jumps(b, sides.fluid) && jumps(a, sides.wall)
     };
-    for i in 0..mask.len() {
-        if mask.get(i) == Some(&1) {
-            pair(i, i + 1);
-            pair(i, i.wrapping_sub(1));
-            pair(i, i + width);
-            pair(i, i.wrapping_sub(width));
-        }
+    let points = || loops.iter().flatten();
+    let count = points().filter(|p| is_jump(pair(grey, **p))).count();
+    count as f64 / points().count().max(1) as f64
+}
+
+/// Width of the edge between 20 % and 80 % from the slope of the greys at the contour, for a first look, pixels.
+pub(super) fn width_by_slope(grey: &Grey, loops: &[PixelLoop], contrast: f64) -> f64 {
+    let slope = |p: &[f64; 2]| {
+        let at = |dx: f64, dy: f64| {
+            f64::from(grey.at((p[0] + dx).max(0.0) as usize, (p[1] + dy).max(0.0) as usize))
+        };
+        0.5 * (at(1.0, 0.0) - at(-1.0, 0.0)).hypot(at(0.0, 1.0) - at(0.0, -1.0))
+    };
+    let (mut sum, mut count) = (0.0, 0.0);
+    for p in loops.iter().flatten() {
+        sum += slope(p);
+        count += 1.0;
     }
-    jumps as f64 / pairs.max(1) as f64
+    let width = 0.6 * contrast * count / sum;
+    if width.is_finite() { width } else { 1.0 }
 }
 
 #[cfg(test)]
@@ -209,6 +245,9 @@ mod tests {
             "{sides:?}"
         );
         assert!((sides.at(0.5) - 5500.0).abs() < 10.0);
-        assert!(share_of_jumps(&grey, &mask, &sides) < 0.1);
+        let loops = vec![vec![[10.0, 30.5], [50.0, 31.5]]];
+        assert!(share_of_jumps(&grey, &loops, &sides) < 0.1);
+        let width = width_by_slope(&grey, &loops, sides.contrast());
+        assert!((1.5..2.5).contains(&width), "{width}");
     }
 }

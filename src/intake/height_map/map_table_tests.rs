@@ -1,5 +1,7 @@
 //! Height maps in text: matrices, lists of points, and what they must not be.
 
+#![expect(clippy::float_cmp, reason = "written digits are rounded once")]
+
 use super::*;
 use crate::intake::read_error::ReadProblem;
 

@@ -132,9 +132,8 @@ fn by_names(
         .filter(|index| Some(*index) != asked_z)
         .collect();
     let x = match (asked_x, positions.as_slice()) {
-        (Some(x), _) => Some(x),
+        (Some(x), _) | (None, &[x]) => Some(x),
         (None, []) => None,
-        (None, &[x]) => Some(x),
         (None, several) => {
             let columns = layout.shown_columns(several.iter().copied());
             return Err(TableProblem::SeveralPositions { columns }.into());
@@ -252,8 +251,7 @@ fn by_places(
         .filter(|index| Some(*index) != x && !(counts && *index == 0))
         .collect();
     let z = match (asked_z, left.as_slice()) {
-        (Some(z), _) => z,
-        (None, &[z]) => z,
+        (Some(z), _) | (None, &[z]) => z,
         (None, []) => 0,
         (None, several) => {
             let columns = layout.shown_columns(several.iter().copied());
@@ -310,12 +308,15 @@ impl Sampled {
 
     /// Whether the values count by ones from zero or one.
     fn is_index(&self) -> bool {
-        let starts =
-            matches!(self.values.first(), Some(Some(first)) if *first == 0.0 || *first == 1.0);
-        starts
+        let Some(Some(first)) = self.values.first() else {
+            return false;
+        };
+        let counted = |(index, value): (usize, &Option<f64>)| {
+            value.is_some_and(|value| value - first - index as f64 == 0.0)
+        };
+        (*first == 0.0 || first - 1.0 == 0.0)
             && self.values.len() > 1
-            && self.values.iter().all(Option::is_some)
-            && self.pairs().all(|(a, b)| b - a == 1.0)
+            && self.values.iter().enumerate().all(counted)
     }
 }
 

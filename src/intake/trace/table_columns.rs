@@ -234,17 +234,15 @@ fn joined_units(content: &str) -> Vec<&str> {
             WrittenUnit::Length(..) | WrittenUnit::Destroyed(_)
         ) || word.starts_with(['(', '[', '/']);
         let whole = joined.last().filter(|_| last_is_name && is_unit);
-        match whole.and_then(|last| content.get(start_of(last)..start_of(word) + word.len())) {
-            Some(whole) => {
-                joined.pop();
-                joined.push(whole);
-                // The unit may follow after `in`, which reads as inch.
-                last_is_name = word == "in";
-            }
-            None => {
-                joined.push(word);
-                last_is_name = true;
-            }
+        let whole = whole.and_then(|last| content.get(start_of(last)..start_of(word) + word.len()));
+        if let Some(whole) = whole {
+            joined.pop();
+            joined.push(whole);
+            // The unit may follow after `in`, which reads as inch.
+            last_is_name = word == "in";
+        } else {
+            joined.push(word);
+            last_is_name = true;
         }
     }
     joined

@@ -391,12 +391,12 @@ pub(crate) fn tip_radius(
             }),
             None => continue,
         };
-        return tip_step(radius, kept_length(radius, key_unit, decimal));
+        return tip_step(radius, kept_length(radius, key_unit, decimal).as_ref());
     }
     (None, None)
 }
 
-fn tip_step(written: &str, length: Option<KeptLength>) -> (Option<f64>, Option<Step>) {
+fn tip_step(written: &str, length: Option<&KeptLength>) -> (Option<f64>, Option<Step>) {
     let shown = shortened(written.trim());
     let unknown = |why: &str| {
         let text = format!(
@@ -405,7 +405,7 @@ fn tip_step(written: &str, length: Option<KeptLength>) -> (Option<f64>, Option<S
         (None, Some(Step::new("tip", text)))
     };
     match length {
-        Some(KeptLength::Metres(metres, _)) if TIP_RADII_METRES.contains(&metres) => {
+        Some(&KeptLength::Metres(metres, _)) if TIP_RADII_METRES.contains(&metres) => {
             let text = format!(
                 "the file gives the radius of the stylus tip as {}",
                 format_length(metres)
@@ -439,9 +439,9 @@ mod tests {
             .collect()
     }
 
-    fn metres(length: Option<KeptLength>) -> Option<f64> {
+    fn metres(length: Option<&KeptLength>) -> Option<f64> {
         match length {
-            Some(KeptLength::Metres(metres, _)) => Some(metres),
+            Some(&KeptLength::Metres(metres, _)) => Some(metres),
             _ => None,
         }
     }
@@ -457,8 +457,8 @@ mod tests {
             ("Length (um),12.5", "y_length [nm],2500"),
         ] {
             let found = Declared::of(&header(&[width, height]), Decimal::Point);
-            assert_eq!(metres(found.width), Some(12.5e-6), "{width}");
-            assert_eq!(metres(found.height), Some(2.5e-6), "{height}");
+            assert_eq!(metres(found.width.as_ref()), Some(12.5e-6), "{width}");
+            assert_eq!(metres(found.height.as_ref()), Some(2.5e-6), "{height}");
         }
         let scan = header(&[
             "Scan Parameters",

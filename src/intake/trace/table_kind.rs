@@ -178,7 +178,6 @@ fn outline_can_be_read(layout: &Layout<'_>) -> bool {
 struct Order {
     rises: bool,
     falls: bool,
-    moves: bool,
     is_missing_heights: bool,
 }
 
@@ -187,7 +186,6 @@ impl Order {
         let mut order = Self {
             rises: true,
             falls: true,
-            moves: false,
             is_missing_heights: false,
         };
         let one = UnitScale::from_factor(1.0);
@@ -210,7 +208,6 @@ impl Order {
             if let Some(last) = last {
                 order.rises &= value >= last;
                 order.falls &= value <= last;
-                order.moves |= value != last;
             }
             last = Some(value);
             if !order.rises && !order.falls {
@@ -221,13 +218,14 @@ impl Order {
     }
 
     fn is_monotone(&self) -> bool {
-        self.moves && (self.rises || self.falls)
+        self.rises != self.falls
     }
 }
 
 /// Whether a table holds heights over an area.
 pub(crate) fn is_area(layout: &Layout<'_>) -> bool {
-    matches!(kind_of(layout), Some(TableKind::Matrix | TableKind::Points))
+    layout.columns.len() >= COLUMNS_OF_POINTS
+        && matches!(kind_of(layout), Some(TableKind::Matrix | TableKind::Points))
 }
 
 /// The warning that a table read as a trace could be a closed section as well: two plain columns, and

@@ -247,7 +247,7 @@ impl<'a> Head<'a> {
 }
 
 /// The fields of a line that may name columns, `None` when their number does not fit.
-fn name_fields<'a>(line: TextLine<'a>, marks: Marks, width: usize) -> Option<Vec<&'a str>> {
+fn name_fields(line: TextLine<'_>, marks: Marks, width: usize) -> Option<Vec<&str>> {
     if is_missing(line.content) {
         return None;
     }

@@ -163,8 +163,42 @@ fn begins_like_number(content: &str) -> bool {
     body.starts_with(|c: char| c.is_ascii_digit())
 }
 
+/// How many numbers a line holds that is made of ASCII numbers and separators only; `None` for any other,
+/// which is looked at more closely. Most lines of a table are plain.
+fn plain_numbers(content: &str) -> Option<usize> {
+    let separates = |byte: u8| matches!(byte, b' ' | b'\t' | b',' | b';');
+    let (mut numbers, mut digits, mut last) = (0, false, b' ');
+    for &byte in content.as_bytes() {
+        let starts = separates(last);
+        // A word may end after a digit, or after a point behind digits.
+        let ends = digits && (last.is_ascii_digit() || last == b'.');
+        match byte {
+            b'0'..=b'9' => {
+                numbers += usize::from(!digits);
+                digits = true;
+            }
+            byte if separates(byte) => {
+                if !starts && !ends {
+                    return None;
+                }
+                digits = false;
+            }
+            b'-' | b'+' if starts || matches!(last, b'e' | b'E') => {}
+            b'.' if starts || ends || matches!(last, b'-' | b'+') => {}
+            b'e' | b'E' if ends => {}
+            _ => return None,
+        }
+        last = byte;
+    }
+    let ended = separates(last) || (digits && (last.is_ascii_digit() || last == b'.'));
+    (ended && numbers > 0).then_some(numbers)
+}
+
 /// What a line holds, whatever its separator and its decimal mark.
 pub(crate) fn line_kind(content: &str) -> LineKind {
+    if let Some(numbers) = plain_numbers(content) {
+        return LineKind::Numbers(numbers);
+    }
     let separators = |c: char| matches!(c, ' ' | '\t' | ',' | ';' | '"' | '\u{a0}');
     if content.trim_matches(separators).is_empty() {
         return LineKind::Blank;
@@ -431,6 +465,10 @@ mod tests {
             ("Ra,468.0 um", LineKind::Text),
             ("2031-05-04", LineKind::Text),
             ("1.000.541", LineKind::Numbers(1)),
+            (" +1. -.5e+3,2E5", LineKind::Numbers(3)),
+            ("1 .", LineKind::Text),
+            ("1 e5", LineKind::Text),
+            ("1e+", LineKind::Text),
         ] {
             assert_eq!(line_kind(line), kind, "{line}");
         }

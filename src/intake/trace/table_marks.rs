@@ -42,6 +42,10 @@ impl Marks {
 
 /// What the rows show.
 #[derive(Debug, Default)]
+#[expect(
+    clippy::struct_excessive_bools,
+    reason = "each is one thing that was seen in some row"
+)]
 struct Evidence {
     semicolon: bool,
     tab: bool,

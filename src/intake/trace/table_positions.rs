@@ -42,7 +42,7 @@ impl OrderWatch {
         offset: usize,
     ) -> Result<(), TableProblem> {
         if let Some(last) = self.last {
-            if x == last {
+            if x - last == 0.0 {
                 if self.repeated.is_none() {
                     self.repeated = Some((offset, shortened(written)));
                 }
@@ -207,7 +207,7 @@ fn even_positions(x: &[f64], quantum: f64, declared: &Declared) -> Option<Even> 
     let step = fitted_step(x);
     let (low, high) = offsets(x, step);
     (step > 0.0 && high - low <= FIT_BAND * quantum).then_some(Even {
-        origin: (low + high) / 2.0,
+        origin: f64::midpoint(low, high),
         step,
         from: "a straight line through them",
     })
@@ -252,7 +252,7 @@ pub(crate) fn compare(
         let tolerance = (LENGTH_TOLERANCE * length).max(2.0 * step) + rounding;
         if (length - span).abs() > tolerance {
             warnings.push(differs(
-                format!(
+                &format!(
                     "the header gives a length of {}, the data run over {}",
                     format_length(length),
                     format_length(span)
@@ -265,7 +265,7 @@ pub(crate) fn compare(
         let off = (declared_step - step).abs();
         if off > STEP_TOLERANCE * declared_step + rounding {
             warnings.push(differs(
-                format!(
+                &format!(
                     "the header gives samples {} apart, in the data they are {} apart on average ({} off)",
                     format_length(declared_step),
                     format_length(step),
@@ -279,14 +279,14 @@ pub(crate) fn compare(
         && count != samples
     {
         warnings.push(differs(
-            format!("the file says {count} samples, it holds {samples}"),
+            &format!("the file says {count} samples, it holds {samples}"),
             [("declared", count as f64), ("found", samples as f64)],
         ));
     }
     warnings
 }
 
-fn differs(message: String, numbers: [(&'static str, f64); 2]) -> Warning {
+fn differs(message: &str, numbers: [(&'static str, f64); 2]) -> Warning {
     Warning {
         code: Code::FileDefect,
         message: format!("{message}; the data are used"),
@@ -297,6 +297,8 @@ fn differs(message: String, numbers: [(&'static str, f64); 2]) -> Warning {
 
 #[cfg(test)]
 mod tests {
+    #![expect(clippy::float_cmp, reason = "exact powers of ten and equal positions")]
+
     use super::*;
 
     fn declared(width: Option<f64>, step: Option<f64>) -> Declared {

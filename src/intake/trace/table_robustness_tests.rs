@@ -112,7 +112,7 @@ proptest! {
         for (index, height) in heights.iter().enumerate() {
             let z = format!("{:.2}", f64::from(*height) / 100.0).replace('.', decimal);
             let x = format!("{index}.50").replace('.', decimal);
-            text.push_str(&format!("{x}{separator}{z}\n"));
+            text += &[x.as_str(), separator, &z, "\n"].concat();
         }
         let options = TableOptions { allow_any_size: true, ..TableOptions::default() };
         let (trace, _) = trace_from_bytes(text.into_bytes(), "text", &options).unwrap();

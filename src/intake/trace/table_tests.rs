@@ -1,5 +1,9 @@
 //! Dialects of trace tables, one after another; every file here is invented.
 
+#![expect(clippy::float_cmp, reason = "written digits are rounded once")]
+
+use std::fmt::Write as _;
+
 use super::table_kind::{TableKind, table_kind};
 use super::table_options::{Decimal, TableOptions};
 use super::table_problem::{TableAxis, TableProblem};
@@ -185,7 +189,7 @@ fn units_are_never_guessed() {
         TableProblem::UnknownUnit { .. }
     ));
     let conflict = with("x_um,z_nm\n0,1\n1,2\n2,3\n", |o| {
-        o.z_unit = Some("um".to_owned())
+        o.z_unit = Some("um".to_owned());
     });
     assert!(matches!(
         *conflict.unwrap_err().problem,
@@ -277,7 +281,7 @@ fn coarsely_rounded_positions_are_rebuilt() {
     let mut text = "Length,24.0 um\nLateral um,Raw nm\n".to_owned();
     for index in 0..100 {
         let x = (f64::from(index) * 2.4).round() / 10.0;
-        text.push_str(&format!("{x:.1},{}\n", index % 7));
+        writeln!(text, "{x:.1},{}", index % 7).unwrap();
     }
     let (read, warnings) = with(&text, |_| {}).unwrap();
     assert_eq!(warnings.len(), 1);
@@ -439,13 +443,15 @@ fn header_and_data_may_differ() {
 
 #[test]
 fn kinds_of_tables() {
-    let rising: String = (0..12).map(|i| format!("{i} {}\n", i % 3)).collect();
-    let points: String = (0..12)
-        .map(|i| format!("{} {} 5\n", i / 4, i % 4))
-        .collect();
+    let rows = |count: usize, row: fn(usize) -> String| -> String {
+        (0..count).map(row).collect::<Vec<String>>().join("\n")
+    };
+    let rising = rows(12, |i| format!("{i} {}", i % 3));
+    let few = rows(6, |i| format!("{i} {}", i % 3));
+    let points = rows(12, |i| format!("{} {} 5", i / 4, i % 4));
     for (text, kind) in [
         (rising.as_str(), Some(TableKind::Trace)),
-        (&rising[..rising.len() / 2], Some(TableKind::Outline)),
+        (few.as_str(), Some(TableKind::Outline)),
         (
             "x_um,y_um\n0,0\n10,0\n10,5\n0,5\n",
             Some(TableKind::Outline),

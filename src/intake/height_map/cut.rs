@@ -2,7 +2,7 @@
 
 use std::f64::consts::FRAC_PI_2;
 
-use super::cut_lines::{CutFrame, line_mean};
+use super::cut_lines::{CutFrame, LineMean, line_mean};
 use super::groove_direction::{GrooveDirection, find_direction, normalised};
 use super::levelling::{LandPlane, land_plane};
 use super::map_blocks::MapBlocks;
@@ -427,35 +427,8 @@ fn one_cut(
     let mean = line_mean(map, plane, frame, &stations, &distances);
     let ends = [distances.first(), distances.last()]
         .map(|distance| frame.point(place, distance.copied().unwrap_or(0.0)));
-    let gaps = mean.heights.iter().filter(|z| !z.is_finite()).count();
-    let spread = mean.spread.map_or_else(String::new, |spread| {
-        format!(
-            ", standard deviation between them {}",
-            format_length(spread)
-        )
-    });
-    let text = format!(
-        "cut at a right angle to the groove, station {} from the middle of the map, {} samples every {} \
-         interpolated bilinearly; mean of {} lines over {} of groove{spread}; {} samples of the lines \
-         missing and left out (at least {} lines behind each mean), {gaps} places without a height",
-        format_length(place),
-        distances.len(),
-        format_length(frame.step_across),
-        mean.rows,
-        format_length(average),
-        mean.missing,
-        mean.fewest
-    );
-    let step = Step::new("cut", text).with(&[
-        ("station_m", place),
-        ("average_m", average),
-        ("rows", mean.rows as f64),
-        ("missing_samples", mean.missing as f64),
-        ("missing_places", gaps as f64),
-        ("spread_m", mean.spread.unwrap_or(0.0)),
-    ]);
     let mut trace_steps = map.steps.clone();
-    trace_steps.push(step);
+    trace_steps.push(cut_step(&mean, frame, place, average));
     let positions = (0..distances.len()).map(|at| at as f64 * frame.step_across);
     Ok(MapCut {
         station: place,
@@ -475,4 +448,35 @@ fn one_cut(
         missing: mean.missing,
         spread: mean.spread,
     })
+}
+
+/// How a cut was made.
+fn cut_step(mean: &LineMean, frame: &CutFrame, place: f64, average: f64) -> Step {
+    let gaps = mean.heights.iter().filter(|z| !z.is_finite()).count();
+    let spread = mean.spread.map_or_else(String::new, |spread| {
+        format!(
+            ", standard deviation between them {}",
+            format_length(spread)
+        )
+    });
+    let text = format!(
+        "cut at a right angle to the groove, station {} from the middle of the map, {} samples every {} \
+         interpolated bilinearly; mean of {} lines over {} of groove{spread}; {} samples of the lines \
+         missing and left out (at least {} lines behind each mean), {gaps} places without a height",
+        format_length(place),
+        mean.heights.len(),
+        format_length(frame.step_across),
+        mean.rows,
+        format_length(average),
+        mean.missing,
+        mean.fewest
+    );
+    Step::new("cut", text).with(&[
+        ("station_m", place),
+        ("average_m", average),
+        ("rows", mean.rows as f64),
+        ("missing_samples", mean.missing as f64),
+        ("missing_places", gaps as f64),
+        ("spread_m", mean.spread.unwrap_or(0.0)),
+    ])
 }

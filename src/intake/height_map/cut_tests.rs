@@ -1,7 +1,5 @@
 //! Cuts of invented maps whose grooves are known.
 
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
-
 use super::{CutOptions, HeightMap, MapCut, MapProblem, cut};
 use crate::warning::Code;
 

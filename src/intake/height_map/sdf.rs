@@ -222,7 +222,7 @@ fn arrange(records: SdfRecords, defects: &mut FileDefects) -> Result<SurfaceCont
 }
 
 /// Reverses the order of rows.
-fn reverse_rows(heights: &mut Vec<f64>, columns: usize) {
+fn reverse_rows(heights: &mut [f64], columns: usize) {
     heights.reverse();
     for row in heights.chunks_mut(columns) {
         row.reverse();

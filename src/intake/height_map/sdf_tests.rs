@@ -1,7 +1,5 @@
 //! Invented SDF files, whole and spoilt.
 
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
-
 use super::{HeightMap, MapProblem, SurfaceContent, SurfaceFormat, read_surface, surface_format};
 
 const TEXT: &str = "aISO-1.0\r\nManufacID = invented\r\nCreateDate = 010120010000\r\n\

@@ -150,20 +150,19 @@ fn header_fields(
         if fields.len() >= MOST_HEADER_LINES {
             return Err(bad_line());
         }
-        let (key, value) = match line.split_once('=') {
-            Some(pair) => pair,
-            None => {
-                let pair = line
-                    .split_once(':')
-                    .or_else(|| line.split_once(char::is_whitespace))
-                    .filter(|(key, _)| known_key(key).is_some())
-                    .ok_or_else(bad_line)?;
-                defects.note(format!(
-                    "line {} of the header has no `=` between key and value",
-                    lines.number
-                ));
-                pair
-            }
+        let (key, value) = if let Some(pair) = line.split_once('=') {
+            pair
+        } else {
+            let pair = line
+                .split_once(':')
+                .or_else(|| line.split_once(char::is_whitespace))
+                .filter(|(key, _)| known_key(key).is_some())
+                .ok_or_else(bad_line)?;
+            defects.note(format!(
+                "line {} of the header has no `=` between key and value",
+                lines.number
+            ));
+            pair
         };
         let key = known_key(key).map_or_else(|| shortened(key.trim()), str::to_owned);
         if fields.iter().any(|(earlier, _)| *earlier == key) && KEYS.contains(&key.as_str()) {
@@ -217,14 +216,11 @@ fn header(
         }
     };
     check_codes(&code("Compression", defects), &code("CheckType", defects))?;
-    let number = match value("DataType") {
-        Some(text) => {
-            number_type(text, version).ok_or_else(|| bad("DataType", text, "a code from 0 to 7"))?
-        }
-        None => {
-            defects.note("the header has no `DataType`; numbers are taken as written");
-            StoredNumber::Float64
-        }
+    let number = if let Some(text) = value("DataType") {
+        number_type(text, version).ok_or_else(|| bad("DataType", text, "a code from 0 to 7"))?
+    } else {
+        defects.note("the header has no `DataType`; numbers are taken as written");
+        StoredNumber::Float64
     };
     let (along_x, along_y) = (count("NumPoints")?, count("NumProfiles")?);
     let scales = [scale("Xscale")?, scale("Yscale")?, scale("Zscale")?];

@@ -1,5 +1,7 @@
 //! The stored numbers of an x3p file, from its binary files or its data list.
 
+use std::fmt::Write as _;
+
 use md5::{Digest, Md5};
 
 use super::container::Container;
@@ -239,7 +241,11 @@ pub(super) fn check_md5(
     digest: &[u8],
     defects: &mut FileDefects,
 ) {
-    let actual: String = digest.iter().map(|byte| format!("{byte:02x}")).collect();
+    let mut actual = String::new();
+    for byte in digest {
+        // Writing to a String cannot fail.
+        let _ = write!(actual, "{byte:02x}");
+    }
     match stated.map(str::trim) {
         None | Some("") => defects.note(format!("the file states no MD5 check sum of its {what}")),
         Some(stated) if stated.eq_ignore_ascii_case(&actual) => {}

@@ -24,6 +24,9 @@ const LEVEL_WIDTH: f64 = 0.6;
 /// Lands are rounded if their middle half lies this much above their outer quarters, in depths.
 const ROUNDED: f64 = 0.04;
 
+/// Lands slope if they are steeper, against each other, than this share of a wall.
+const SLOPING: f64 = 0.25;
+
 /// A single hill whose flanks take more than this share of the trace from 25 to 75 % of its height is bow.
 const SLOW_WALL: f64 = 0.05;
 
@@ -239,13 +242,18 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
             height,
         });
     }
-    check_level(x, &lands, runs)?;
+    check_level(x, &lands, runs, depth)?;
     check_rounded(x, z, &lands, depth)?;
     Ok(described(x, &all, lands, depth))
 }
 
 /// Whether lands are wide against the walls beside them.
-fn check_level(x: &[f64], lands: &[Land], mut runs: Vec<f64>) -> Result<(), TraceProblem> {
+fn check_level(
+    x: &[f64],
+    lands: &[Land],
+    mut runs: Vec<f64>,
+    depth: f64,
+) -> Result<(), TraceProblem> {
     runs.retain(|run| run.is_finite());
     let spacing = (x[x.len() - 1] - x[0]) / x.len() as f64;
     let wall = if runs.is_empty() {
@@ -257,6 +265,14 @@ fn check_level(x: &[f64], lands: &[Land], mut runs: Vec<f64>) -> Result<(), Trac
     let level = median(&mut widths);
     if level < LEVEL_WIDTH * wall {
         return Err(TraceProblem::NoLand { level, wall });
+    }
+    // The slope of all lands together is tilt; an even number has no middle one.
+    let mean = lands.iter().map(|land| land.line.slope).sum::<f64>() / lands.len() as f64;
+    let steepness = lands.iter().map(|land| (land.line.slope - mean).abs());
+    let slope = median(&mut steepness.collect::<Vec<_>>());
+    if slope > SLOPING * 0.5 * depth / wall {
+        let crest = slope * level;
+        return Err(TraceProblem::RoundLands { crest, depth });
     }
     Ok(())
 }

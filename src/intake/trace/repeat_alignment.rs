@@ -22,7 +22,7 @@ const COARSE_POINTS: usize = 4096;
 const FINE_POINTS: usize = 10_000;
 
 /// Least correlation coefficient of two traces of one line.
-pub(super) const LEAST_CORRELATION: f64 = 0.8;
+pub(super) const LEAST_CORRELATION: f64 = 0.9;
 
 /// A repeat fits better backwards if that leaves less than this share of the distance.
 const CLEARLY_BETTER: f64 = 0.8;

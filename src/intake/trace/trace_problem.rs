@@ -79,15 +79,14 @@ pub enum TraceProblem {
         /// Length of a typical wall, m.
         wall: f64,
     },
-    /// The upper stretches are crests.
+    /// The upper stretches are crests or slopes.
     #[error(
-        "no land is level: the upper stretches are rounded, {} higher in their middle than towards \
-         their ends, where the trace goes {} down",
+        "no land is level: the upper stretches are rounded or slope, by {} where the trace goes {} down",
         format_length(*crest),
         format_length(*depth)
     )]
     RoundLands {
-        /// Typical height of the middle half over the outer quarters, m.
+        /// Typical height of the middle half over the outer quarters, or of one end over the other, m.
         crest: f64,
         /// Typical depth, m.
         depth: f64,

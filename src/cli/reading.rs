@@ -6,7 +6,7 @@ use clap::ArgMatches;
 
 use crate::flow::SolveOptions;
 use crate::intake::{
-    InstrumentData, InstrumentReading, ReadOptions, SectionKind, Step, heights_csv,
+    InstrumentReading, ReadOptions, SectionKind, Step, heights_csv, read_height_map,
     read_instrument, to_toml,
 };
 use crate::report::{
@@ -56,6 +56,7 @@ pub(super) fn run(kind: Kind, matches: &ArgMatches) -> Result<ExitStatus, Failur
     super::set_threads(matches)?;
     let request = Request::new(kind, matches)?;
     request.check_targets()?;
+    request.write_heights()?;
     let reading = read_instrument(&request.file, &request.read)?;
     input::refuse_foreign_options(&request.read, &reading.provenance)?;
     request.check_kind(&reading)?;
@@ -109,6 +110,20 @@ impl Request {
             .chain(&how.lid_trace)
             .map(PathBuf::as_path)
             .collect()
+    }
+
+    /// The heights of a map as read; they are of use even where no groove is found in them.
+    fn write_heights(&self) -> Result<(), Failure> {
+        let Some(path) = &self.heights else {
+            return Ok(());
+        };
+        let map = read_height_map(&self.file, &self.read)?;
+        let bytes = heights_csv(&map).into_bytes();
+        let inputs = output::Inputs {
+            files: &self.inputs(),
+            quiet: self.quiet,
+        };
+        output::deliver(vec![(path.clone(), bytes)], String::new(), None, &inputs)
     }
 
     /// A map given to `trace`, say, has a command of its own.
@@ -174,9 +189,6 @@ impl Request {
     ) -> Result<ExitStatus, Failure> {
         let document = self.document(reading, solved);
         let mut files = self.section_files(solved);
-        if let (Some(path), InstrumentData::Map(map)) = (&self.heights, &reading.data) {
-            files.push((path.clone(), heights_csv(&map.map).into_bytes()));
-        }
         if !self.pictures.is_empty() {
             let picture = check_picture(reading, &document);
             for (path, format) in &self.pictures {

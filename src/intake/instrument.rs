@@ -121,6 +121,31 @@ pub fn read_instrument(path: &Path, options: &ReadOptions) -> Result<InstrumentR
     instrument_from_bytes(&bytes, &name, options)
 }
 
+/// Reads a height map alone, without a look for grooves.
+///
+/// # Errors
+/// As [`read_instrument`]; also where the file holds no height map.
+pub fn read_height_map(path: &Path, options: &ReadOptions) -> Result<HeightMap, ReadError> {
+    let name = path.display().to_string();
+    let bytes = read_bytes(path).map_err(|problem| ReadError::new(&name, problem))?;
+    let content = content_of(&bytes, Some(SectionKind::HeightMap))
+        .map_err(|fault| fault.in_file(&name))?;
+    let reader = Reader {
+        bytes: &bytes,
+        path: &name,
+        options,
+    };
+    let raw = match content {
+        FileContent::Map(source) => reader.map_table(&source)?,
+        FileContent::Surface(format) => reader.surface(format)?.2,
+        _ => return Err(ReadError::new(&name, ReadProblem::NotAMap)),
+    };
+    match raw {
+        Raw::Map(map, _) => Ok(map),
+        Raw::Trace(..) => Err(ReadError::new(&name, ReadProblem::NotAMap)),
+    }
+}
+
 /// Reads the bytes of an instrument's file; `path` is for messages and provenance.
 ///
 /// # Errors
@@ -187,15 +212,11 @@ impl Reader<'_> {
             FileContent::Trace(source) => {
                 (SectionKind::Trace, source.encoding, self.table(&source)?)
             }
-            FileContent::Map(source) => {
-                let (map, warnings) = read_map_table(&source.text, &options.table)
-                    .map_err(|fault| fault.in_file(self.path))?;
-                (
-                    SectionKind::HeightMap,
-                    source.encoding,
-                    Raw::Map(map, warnings),
-                )
-            }
+            FileContent::Map(source) => (
+                SectionKind::HeightMap,
+                source.encoding,
+                self.map_table(&source)?,
+            ),
             FileContent::Surface(format) => self.surface(format)?,
         };
         match raw {
@@ -221,6 +242,12 @@ impl Reader<'_> {
         let (raw, warnings) = read_trace_table(&source.text, &self.options.instrument.table)
             .map_err(|fault| fault.in_file(self.path))?;
         Ok(Raw::Trace(raw, warnings))
+    }
+
+    fn map_table(&self, source: &SourceText) -> Result<Raw, ReadError> {
+        let (map, warnings) = read_map_table(&source.text, &self.options.instrument.table)
+            .map_err(|fault| fault.in_file(self.path))?;
+        Ok(Raw::Map(map, warnings))
     }
 
     fn surface(

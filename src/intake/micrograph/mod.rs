@@ -11,6 +11,8 @@ mod contour;
 mod data_bar;
 mod decode;
 mod denoise;
+#[cfg(test)]
+mod file_tests;
 mod grey;
 mod grey_edge;
 mod levels;

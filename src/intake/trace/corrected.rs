@@ -43,6 +43,11 @@ pub struct CorrectedTrace {
     pub lands: Vec<Zone>,
     /// Root mean square distance of the reference zones from the reference line, m.
     pub reference_rms: f64,
+    /// Whether heights were turned over: a tip then touched what is now the inside of the wall.
+    pub inverted: bool,
+    /// Share by which lengths along the trace and heights were made smaller; the tip touched the
+    /// measured size.
+    pub shrinkage: [f64; 2],
     /// Samples that were bridged.
     pub changes: Vec<Change>,
     /// What was done.

@@ -5,7 +5,11 @@
 //! angle may be: then both are taken from the edge to the foot. Slopes are chords over a fortieth of
 //! the depth, so that noise does not make a flank. Ends move outwards along the flank while it goes on;
 //! samples between two such stretches do not count as touched when they are fewer than
-//! [`FEWEST_SEGMENTS`] intervals.
+//! [`FEWEST_SEGMENTS`] intervals. At its foot a flank has one sample more, which may have been read while the tip
+//! still hung on the flank, and at its top one more where that is higher, so that the edge is between its ends.
+//!
+//! A trace that was turned over was touched from the other side: its flanks are looked for as they were
+//! measured, with foot and top exchanged.
 
 use super::grooves::Heights;
 
@@ -30,6 +34,8 @@ pub(super) struct Steep {
     pub(super) begin: f64,
     /// and goes on while it is this steep, rad.
     pub(super) go_on: f64,
+    /// Whether the trace was turned over after it was measured.
+    pub(super) is_inverted: bool,
 }
 
 /// A flank that shows the tip.
@@ -40,7 +46,8 @@ pub(super) struct Flank {
     pub(super) to: usize,
     /// Its angle against the level, rad.
     pub(super) angle: f64,
-    /// Whether it is deeper between its ends than at both of them: the floor was not touched.
+    /// Whether it is deeper between its ends than at both of them, as measured: what lies between two flanks
+    /// was not touched.
     pub(super) is_bottomless: bool,
 }
 
@@ -58,11 +65,13 @@ pub(super) fn find(
 ) -> Vec<Flank> {
     let first = samples.start;
     let x = heights.x.get(samples.clone()).unwrap_or_default();
+    let up = if steep.is_inverted { -1.0 } else { 1.0 };
     let z = heights.z.get(samples).unwrap_or_default();
+    let z: Vec<f64> = z.iter().map(|z| up * z).collect();
     if x.len() < 2 {
         return Vec::new();
     }
-    let mut is_flank = steep_intervals(x, z, steep, depth);
+    let mut is_flank = steep_intervals(x, &z, steep, depth);
     for (mark, shape) in is_flank.iter_mut().zip(tip_shape.iter().skip(first)) {
         *mark |= shape;
     }
@@ -74,11 +83,11 @@ pub(super) fn find(
         }
     }
     let flank = |(from, to): (usize, usize)| {
-        // The sample at the foot may have been read while the tip still hung on the flank.
+        let (before, after) = (from.saturating_sub(1), (to + 1).min(z.len() - 1));
         let (from, to) = if z[from] < z[to] {
-            (from.saturating_sub(1), to)
+            (before, if z[after] > z[to] { after } else { to })
         } else {
-            (from, (to + 1).min(z.len() - 1))
+            (if z[before] > z[from] { before } else { from }, after)
         };
         let inside = z[from..=to].iter();
         let low = inside.clone().copied().fold(f64::INFINITY, f64::min);

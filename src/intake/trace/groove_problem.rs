@@ -150,7 +150,7 @@ impl GrooveProblem {
             }
             Self::NoLands { .. } => {
                 "measure some way over the level surface on both sides of the channel, or state where \
-                 the lands are"
+                 the lands are with --land-zones"
                     .to_owned()
             }
             Self::NoGroove { .. } => {

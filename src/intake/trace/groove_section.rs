@@ -23,7 +23,7 @@ pub struct TipFlank {
     pub zone: Zone,
     /// Its angle against the level, rad.
     pub angle: f64,
-    /// Whether the floor between its ends was touched nowhere.
+    /// Whether nothing level was touched between two flanks.
     pub is_bottomless: bool,
 }
 
@@ -37,7 +37,7 @@ pub struct GrooveSection {
     /// The closed section, m, `y` upwards; positions are those of the trace.
     pub outline: Outline,
     /// The smallest and the largest section it could be; each side lies in the next exactly. `None` where
-    /// every flank was touched, or where a floor was not touched, so that there is no largest one.
+    /// every flank was touched, or where the floor was not, so that one of the two is not known.
     pub reach: Option<Reach>,
     /// The lid: its lower face over the section, from left to right.
     pub lid: Profile,

@@ -6,10 +6,11 @@ use super::corrected::CorrectedTrace;
 use super::flanks::{self, ANGLE_MARGIN, Flank, Steep};
 use super::groove_problem::GrooveProblem;
 use super::grooves::{self, Edges, Groove, Heights};
+use super::profile::Profile;
 use super::section_options::{SectionOptions, THINNING, Tip};
 use super::tip;
 use super::trench_numbers::TrenchNumbers;
-use super::wall_curves::{Line, WallCurves};
+use super::wall_curves::{Line, Stated, WallCurves};
 
 /// Flanks from this angle on may show a tip that is not stated, rad: cones of styli are 60 to 90 degrees wide, so
 /// their flanks 60 to 45 degrees steep (common practice, no source),
@@ -30,9 +31,12 @@ pub(super) struct Half<'a> {
     z: Cow<'a, [f64]>,
     tip_shape: Vec<bool>,
     tip: Option<Tip>,
+    /// Factors from measured to wanted lengths along the trace and heights.
+    factors: [f64; 2],
+    pub(super) is_inverted: bool,
     pub(super) grooves: Vec<Groove>,
     /// Largest distance between the heights as read and with the tip taken back, m.
-    pub(super) lowered: f64,
+    pub(super) moved: f64,
 }
 
 /// Why flanks count as tip shape.
@@ -71,24 +75,43 @@ impl<'a> Half<'a> {
             x: &profile.x,
             z: &profile.z,
         })?;
-        let back = tip.map(|tip| tip::take_back(profile, tip));
-        let (z, tip_shape) = match back {
-            Some(back) => (Cow::Owned(back.height), back.is_tip_shape),
+        // A share of all there is, or more, is refused where it is typed in.
+        let factor = |share: f64| if share < 1.0 { 1.0 - share } else { 1.0 };
+        let factors = trace.shrinkage.map(factor);
+        let (z, tip_shape) = match tip {
+            Some(tip) => {
+                let up = if trace.inverted {
+                    -factors[1]
+                } else {
+                    factors[1]
+                };
+                let measured = Profile {
+                    x: profile.x.iter().map(|x| x / factors[0]).collect(),
+                    z: profile.z.iter().map(|z| z / up).collect(),
+                };
+                let mut back = tip::take_back(&measured, tip);
+                for height in &mut back.height {
+                    *height *= up;
+                }
+                (Cow::Owned(back.height), back.is_tip_shape)
+            }
             None => (Cow::Borrowed(profile.z.as_slice()), Vec::new()),
         };
-        let lowered = profile
+        let moved = profile
             .z
             .iter()
             .zip(z.iter())
-            .fold(0.0, |m: f64, (a, b)| m.max(a - b));
+            .fold(0.0, |m: f64, (a, b)| m.max((a - b).abs()));
         let mut half = Self {
             whose,
             x: &profile.x,
             z,
             tip_shape,
             tip,
+            factors,
+            is_inverted: trace.inverted,
             grooves: Vec::new(),
-            lowered,
+            moved,
         };
         half.grooves = grooves::find(half.heights(), &trace.lands)?;
         Ok(half)
@@ -105,17 +128,23 @@ impl<'a> Half<'a> {
     /// The walls of a groove with edges.
     pub(super) fn walls(&self, groove: &Groove, edges: &Edges, options: &SectionOptions) -> Walls {
         let heights = self.heights();
-        let tolerance = options.simplify.unwrap_or(THINNING * groove.depth);
+        let stated = Stated {
+            walls: options.walls,
+            is_inverted: self.is_inverted,
+            tolerance: options.simplify.unwrap_or(THINNING * groove.depth),
+        };
         let (steep, grounds) = match self.tip {
             Some(tip) => {
-                let steepest = tip.steepest_flank();
+                let slope = tip.steepest_flank().tan() * self.factors[1] / self.factors[0];
+                let steepest = slope.atan();
                 let steep = Steep {
                     begin: (steepest - ANGLE_MARGIN).max(0.5 * steepest),
                     go_on: 0.5 * steepest,
+                    is_inverted: self.is_inverted,
                 };
                 (Some(steep), Grounds::Stated)
             }
-            None => (suspect(heights, edges, tolerance), Grounds::Suspected),
+            None => (suspect(heights, edges, stated), Grounds::Suspected),
         };
         let samples = edges.left_land.start..edges.right_land.end;
         let mut found = steep.map_or(Vec::new(), |steep| {
@@ -123,18 +152,18 @@ impl<'a> Half<'a> {
         });
         found.retain(|f| self.x[f.to] > edges.left.x && self.x[f.from] < edges.right.x);
         Walls {
-            curves: WallCurves::new(heights, edges, &found, options.walls, tolerance),
+            curves: WallCurves::new(heights, edges, &found, stated),
             edges: edges.clone(),
             flanks: found,
             grounds,
-            tolerance,
+            tolerance: stated.tolerance,
         }
     }
 }
 
 /// What counts as steep where both walls are straight and equally steep, as a tip would show them.
-fn suspect(heights: Heights<'_>, edges: &Edges, tolerance: f64) -> Option<Steep> {
-    let read = WallCurves::new(heights, edges, &[], None, tolerance).as_read;
+fn suspect(heights: Heights<'_>, edges: &Edges, stated: Stated) -> Option<Steep> {
+    let read = WallCurves::new(heights, edges, &[], stated).as_read;
     let numbers = TrenchNumbers::new(&read, Line::through(edges))?;
     let walls = [numbers.left_wall, numbers.right_wall];
     let suspicious = walls.iter().all(|wall| {
@@ -144,5 +173,6 @@ fn suspect(heights: Heights<'_>, edges: &Edges, tolerance: f64) -> Option<Steep>
     (suspicious && (left - right).abs() <= ANGLE_MARGIN).then(|| Steep {
         begin: left.min(right) - ANGLE_MARGIN,
         go_on: FLAT,
+        is_inverted: stated.is_inverted,
     })
 }

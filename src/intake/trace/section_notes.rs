@@ -56,17 +56,22 @@ fn groove_step(drawing: &Drawing<'_>, numbers: &TrenchNumbers) -> Step {
 fn tip_step(drawing: &Drawing<'_>) -> Option<Step> {
     let tip = drawing.options.tip?;
     let text = format!(
-        "the tip (radius {}, cone {}) was taken back by erosion, which lowers the surface by up to {}; no \
-         wall lies above it, and flanks from {} on are the shape of the tip",
+        "the tip (radius {}, cone {}) was taken back by erosion, which moves the surface by up to {}; no \
+         wall lies {} it, and flanks from {} on are the shape of the tip",
         format_length(tip.radius),
         degrees(tip.cone_angle),
-        format_length(drawing.ground.lowered),
+        format_length(drawing.ground.moved),
+        if drawing.ground.is_inverted {
+            "below"
+        } else {
+            "above"
+        },
         degrees(tip.steepest_flank()),
     );
     Some(Step::new("tip", text).with(&[
         ("tip_radius_m", tip.radius),
         ("tip_angle_deg", tip.cone_angle.to_degrees()),
-        ("lowered_by_at_most_m", drawing.ground.lowered),
+        ("moved_by_at_most_m", drawing.ground.moved),
         ("steepest_flank_deg", tip.steepest_flank().to_degrees()),
     ]))
 }
@@ -78,13 +83,17 @@ fn walls_step(drawing: &Drawing<'_>) -> Option<Step> {
         .any(|w| w.curves.stated != w.curves.as_read);
     let text = if changed {
         format!(
-            "flanks that show the tip were replaced by walls at {} from their upper ends down to the floor \
-             beside them",
-            degrees(angle)
+            "flanks that show the tip were replaced by walls at {} from {}",
+            degrees(angle),
+            if drawing.ground.is_inverted {
+                "the ends of the floor, which the tip touched on the ridge, up to the lands"
+            } else {
+                "their upper ends down to the floor beside them"
+            }
         )
     } else if drawing.is_bottomless() {
         format!(
-            "walls at {} were not drawn: no floor was touched that they could end on",
+            "walls at {} were not drawn: nothing level was touched that they could begin or end on",
             degrees(angle)
         )
     } else if drawing.has_tip_flanks() {
@@ -219,10 +228,16 @@ fn flank_warning(drawing: &Drawing<'_>) -> Option<Warning> {
         message += ", and so do KOH walls (54.74 deg)";
     }
     if drawing.is_bottomless() {
-        message +=
-            "; no floor was touched between them, so the section may be deeper than any bound";
+        message += if drawing.ground.is_inverted {
+            "; the ridge has no level top that was touched, so no smallest section is known"
+        } else {
+            "; no floor was touched between them, so the section may be deeper than any bound"
+        };
     }
     let advice = match (drawing.grounds(), drawing.is_bottomless()) {
+        (_, true) if drawing.ground.is_inverted => {
+            "K is an upper bound only: read the ridge in another way (a sharper tip, a cut)"
+        }
         (_, true) => {
             "K is a lower bound only: read the depth in another way (a wider test groove, a cut)"
         }
@@ -316,8 +331,15 @@ pub(super) fn reach_reason(drawing: &Drawing<'_>) -> String {
         Grounds::Stated => "flanks show the tip",
         Grounds::Suspected => "flanks may show a tip that was not stated",
     };
-    format!(
-        "{grounds}: smallest section over {read}, largest with upright walls from the outermost touched samples \
-         to the floor beside them (no undercut, no deeper floor under the flank)"
-    )
+    if drawing.ground.is_inverted {
+        format!(
+            "{grounds}: largest section over {read}, smallest with upright walls from the ends of the floor, \
+             which the tip touched on the ridge"
+        )
+    } else {
+        format!(
+            "{grounds}: smallest section over {read}, largest with upright walls from the outermost touched \
+             samples to the floor beside them (no undercut, no deeper floor under the flank)"
+        )
+    }
 }

@@ -9,8 +9,9 @@
 //!
 //! Where flanks show the tip, the smallest section has the surface as its wall, the largest one walls that
 //! fall straight down from the outermost touched samples (see `wall_curves` for what that takes for
-//! granted); the section itself lies between. All three are drawn by one routine (`closing`) that puts each
-//! inside the next exactly.
+//! granted); the section itself lies between. For a trace that was turned over (a master, a cast) it is the other
+//! way round: the surface makes the largest section, upright walls from the ends of the floor the smallest. All
+//! three are drawn by one routine (`closing`) that puts each inside the next exactly.
 
 use super::closing::{Layer, Part, close};
 use super::corrected::CorrectedTrace;
@@ -157,7 +158,7 @@ pub(super) struct Drawing<'a> {
 
 /// Which walls of the two halves.
 type Choice = fn(&WallCurves) -> Option<&Vec<Point>>;
-const OUTERMOST: Choice = |curves| curves.outermost.as_ref();
+const UPRIGHT: Choice = |curves| curves.upright.as_ref();
 const STATED: Choice = |curves| Some(&curves.stated);
 const AS_READ: Choice = |curves| Some(&curves.as_read);
 
@@ -239,7 +240,7 @@ impl Drawing<'_> {
 
     /// Whether the floor of either half was not touched.
     pub(super) fn is_bottomless(&self) -> bool {
-        self.halves().any(|walls| walls.curves.outermost.is_none())
+        self.halves().any(|walls| walls.curves.upright.is_none())
     }
 
     /// Why flanks count as tip shape.
@@ -258,13 +259,16 @@ impl Drawing<'_> {
 
     /// Outermost, stated and as-read section under a lid, without those that are the same.
     fn drawn(&self, lid: LidChoice, gap: f64) -> Result<Drawn, GrooveProblem> {
-        let has_outer = self.has_tip_flanks() && !self.is_bottomless();
-        let has_inner = has_outer && self.halves().any(|w| w.curves.stated != w.curves.as_read);
+        let upright = self.has_tip_flanks() && !self.is_bottomless();
+        let as_read = upright && self.halves().any(|w| w.curves.stated != w.curves.as_read);
+        let mut choices = [(upright, UPRIGHT), (true, STATED), (as_read, AS_READ)];
+        if self.ground.is_inverted {
+            choices.reverse();
+        }
+        let has_outer = choices[0].0;
         let mut layers = Vec::new();
-        for (wanted, choice) in [(has_outer, OUTERMOST), (true, STATED), (has_inner, AS_READ)] {
-            if wanted {
-                layers.extend(self.layer(choice, lid, gap)?);
-            }
+        for (_, choice) in choices.into_iter().filter(|(wanted, _)| *wanted) {
+            layers.extend(self.layer(choice, lid, gap)?);
         }
         let own = usize::from(has_outer).min(layers.len().saturating_sub(1));
         let parts = close(&layers);
@@ -370,9 +374,12 @@ impl Drawing<'_> {
         if inner.as_ref().is_some_and(|o| o.lumens.is_empty()) {
             return None;
         }
+        if inner.is_none() && outer.is_none() {
+            return None;
+        }
         Some(Reach {
             inner: inner.map(side),
-            outer: Some(side(outer?)),
+            outer: outer.map(side),
             reason: Some(section_notes::reach_reason(self)),
         })
     }

@@ -491,6 +491,78 @@ fn an_unknown_tip_is_suspected_where_both_flanks_are_straight_and_alike() {
 }
 
 #[test]
+fn a_master_read_by_a_cone_is_bracketed_from_the_other_side() {
+    for radius in [0.0, 2.0, 12.5] {
+        // A ridge of 100 um by 50 um, read, then turned over.
+        let ridge = trace(
+            400.0,
+            0.5,
+            |x| {
+                if (150.0..=250.0).contains(&x) {
+                    50.0
+                } else {
+                    0.0
+                }
+            },
+            &[[0.0, 100.0], [300.0, 400.0]],
+        );
+        let mut read = read_by(cone(radius), ridge);
+        read.inverted = true;
+        read.profile.z.iter_mut().for_each(|z| *z = -*z);
+        let with = |tip: Option<Tip>, walls: Option<f64>| {
+            let options = SectionOptions {
+                tip,
+                walls,
+                ..SectionOptions::default()
+            };
+            one(&read, &options)
+        };
+        let section = with(Some(cone(radius)), None);
+        assert_eq!(codes(&section), [Code::FlankIsTip]);
+        let reach = section.reach.as_ref().unwrap();
+        assert!(reach.outer.is_none());
+        let inner = reach.inner.as_ref().unwrap().outline.area() / UM / UM;
+        assert_close(inner, 5000.0, 1e-6);
+        assert!(section.outline.area() > 6000.0 * UM * UM);
+        let upright = with(Some(cone(radius)), Some(std::f64::consts::FRAC_PI_2));
+        assert_close(upright.outline.area(), 5000.0 * UM * UM, 1e-6);
+        let outer = upright.reach.unwrap().outer.unwrap().outline.area();
+        assert_close(outer, section.outline.area(), 1e-9);
+        let slanted = with(Some(cone(radius)), Some(80_f64.to_radians()));
+        let expected = 5000.0 + 50.0 * 50.0 / 80_f64.to_radians().tan();
+        assert_close(slanted.outline.area(), expected * UM * UM, 1e-6);
+        let unknown = with(None, None);
+        if radius < 3.0 {
+            let inner = unknown.reach.unwrap().inner.unwrap().outline.area() / UM / UM;
+            assert!(inner <= 5000.0 * (1.0 + 1e-9) && inner > 4000.0, "{inner}");
+        }
+    }
+}
+
+#[test]
+fn a_tip_touched_the_size_that_was_measured() {
+    let truth = groove(|x| if x > 0.0 && x < 100.0 { -50.0 } else { 0.0 });
+    let mut read = read_by(cone(2.0), truth);
+    for x in &mut read.profile.x {
+        *x *= 0.9;
+    }
+    for z in &mut read.profile.z {
+        *z *= 1.1;
+    }
+    for land in &mut read.lands {
+        (land.from, land.to) = (0.9 * land.from, 0.9 * land.to);
+    }
+    read.shrinkage = [0.1, -0.1];
+    let options = SectionOptions {
+        tip: Some(cone(2.0)),
+        ..SectionOptions::default()
+    };
+    let section = one(&read, &options);
+    let outer = section.reach.unwrap().outer.unwrap().outline.area();
+    assert_close(outer, 0.99 * 5000.0 * UM * UM, 1e-6);
+}
+
+#[test]
 fn a_floor_that_no_tip_touched_has_no_largest_section() {
     let truth = groove(|x| if x > 30.0 && x < 70.0 { -80.0 } else { 0.0 });
     for radius in [0.0, 5.0] {
@@ -654,9 +726,11 @@ fn assert_sound(section: &GrooveSection) {
         alternative.outline.iter().for_each(valid);
     }
     if let Some(reach) = &section.reach {
-        let outer = &reach.outer.as_ref().unwrap().outline;
-        valid(outer);
-        section.outline.proven_inside(outer).unwrap();
+        assert!(reach.inner.is_some() || reach.outer.is_some());
+        if let Some(outer) = &reach.outer {
+            valid(&outer.outline);
+            section.outline.proven_inside(&outer.outline).unwrap();
+        }
         if let Some(inner) = &reach.inner {
             valid(&inner.outline);
             inner.outline.proven_inside(&section.outline).unwrap();
@@ -689,8 +763,9 @@ fn any_options() -> impl Strategy<Value = SectionOptions> {
 fn any_trace() -> impl Strategy<Value = CorrectedTrace> {
     let heights = proptest::collection::vec(-30..4_i32, 4..80);
     let noise = proptest::collection::vec(-1.0..1.0_f64, 100);
-    (heights, noise, 0.0..0.3_f64, 0.0..2.0_f64, any::<bool>()).prop_map(
-        |(heights, noise, size, step, by_tip)| {
+    let kind = (any::<bool>(), any::<bool>());
+    (heights, noise, 0.0..0.3_f64, 0.0..2.0_f64, kind).prop_map(
+        |(heights, noise, size, step, (by_tip, inverted))| {
             let lands = if by_tip { 10 } else { 4 };
             let mut z = vec![0.0; lands];
             z.extend(heights.iter().map(|&h| f64::from(h.min(0)) + step));
@@ -708,6 +783,7 @@ fn any_trace() -> impl Strategy<Value = CorrectedTrace> {
             let trace = CorrectedTrace {
                 lands,
                 profile: Profile { x: x.clone(), z },
+                inverted,
                 ..CorrectedTrace::default()
             };
             if by_tip {

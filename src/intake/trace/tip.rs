@@ -17,6 +17,9 @@
 //! O(n log n) whatever the tip. Heights between samples are not looked at, which leaves `r` too high by less
 //! than one sample's slope, on the safe side.
 //!
+//! For a trace that was turned over afterwards this is done on the heights as measured: there the wall of the
+//! channel was touched from inside it, and nothing of it can lie below the surface that comes out.
+//!
 //! Source: J. S. Villarrubia (1997), Algorithms for scanned probe microscope image simulation, surface
 //! reconstruction, and tip estimation, J. Res. NIST 102, 425-454, doi:10.6028/jres.102.030 (his images are
 //! of hills, so his certainty map marks what is known of hills; the formulas are cited from memory).

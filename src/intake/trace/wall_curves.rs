@@ -1,10 +1,15 @@
-//! The walls of a groove as curves: as read, as stated, and the outermost that a trace allows.
+//! The walls of a groove as curves: as read, as stated, and upright.
 //!
-//! Between its touched ends a flank that shows the tip may lie anywhere below what was read. As the
-//! outermost wall it falls straight down from its upper end to the level of its lowest sample: this holds
+//! Between its touched ends a flank that shows the tip may lie anywhere below what was read. The wall
+//! farthest from that falls straight down from its upper end to the level of its lowest sample: this holds
 //! for walls without undercut whose floor is nowhere deeper under the flank than where it was touched beside it.
 //! With a stated wall angle it falls from its upper end at that angle to the same level, never above what
 //! was read.
+//!
+//! A trace that was turned over (a mould master, a cast) was touched from inside the channel's wall: the flank of
+//! the ridge may lie anywhere below what was read, and so the wall of the channel anywhere above. There
+//! the upright wall rises from the end of the floor, which is the edge of the ridge's top, and makes the *smallest*
+//! section; as read is the largest.
 
 use super::flanks::Flank;
 use super::grooves::{Edges, Heights};
@@ -38,21 +43,30 @@ pub(super) struct WallCurves {
     pub(super) as_read: Vec<Point>,
     /// As read with the flanks that show the tip as stated.
     pub(super) stated: Vec<Point>,
-    /// With these flanks as far out as they could be; `None` where a floor was not touched.
-    pub(super) outermost: Option<Vec<Point>>,
-    /// Samples inside, and vertices that are left of them.
+    /// With these flanks upright from the end that was touched first; `None` where there is none.
+    pub(super) upright: Option<Vec<Point>>,
+    /// Samples inside.
     pub(super) samples: usize,
 }
 
+/// What is stated about walls and polygon.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Stated {
+    /// Angle of the walls against the level, rad.
+    pub(super) walls: Option<f64>,
+    /// Whether the trace was turned over.
+    pub(super) is_inverted: bool,
+    /// Tolerance of thinning, m.
+    pub(super) tolerance: f64,
+}
+
 impl WallCurves {
-    /// - `walls`: stated angle against the level, rad
-    /// - `tolerance`: of thinning, m
+    /// The curves of a groove with some flanks that show the tip.
     pub(super) fn new(
         heights: Heights<'_>,
         edges: &Edges,
         flanks: &[Flank],
-        walls: Option<f64>,
-        tolerance: f64,
+        options: Stated,
     ) -> Self {
         let base = Line::through(edges);
         let inside = edges.inside.clone();
@@ -65,27 +79,38 @@ impl WallCurves {
                 .iter()
                 .any(|f| [f.from, f.to].contains(&sample(index)))
         };
-        let kept = thinning::kept(&points, is_end, tolerance);
+        let kept = thinning::kept(&points, is_end, options.tolerance);
         let thinned: Vec<Point> = kept.into_iter().map(|i| points[i]).collect();
         let as_read = below(&thinned, base);
         let mut stated = Rebuilt::new(&as_read);
-        let mut outermost = Rebuilt::new(&as_read);
+        let mut upright = Rebuilt::new(&as_read);
         for flank in flanks {
             let ends = [heights.x[flank.from], heights.x[flank.to]];
             let Some((first, last)) = between(&as_read, ends) else {
                 continue;
             };
             let read = &as_read[first..=last];
-            if let (Some(angle), false) = (walls, flank.is_bottomless) {
-                stated.replace(first, last, restored(read, angle));
+            if let (Some(angle), false) = (options.walls, flank.is_bottomless) {
+                let wall = if options.is_inverted {
+                    turned_over(restored(&turned_over(read.to_vec()), angle))
+                } else {
+                    restored(read, angle)
+                };
+                stated.replace(first, last, wall);
             }
-            outermost.replace(first, last, straight_down(read, ends, base));
+            let wall = if options.is_inverted {
+                let inside = [read[0][0], read[read.len() - 1][0]];
+                turned_over(straight_down(&turned_over(read.to_vec()), inside, base))
+            } else {
+                straight_down(read, ends, base)
+            };
+            upright.replace(first, last, wall);
         }
         let reached = !flanks.iter().any(|f| f.is_bottomless);
         Self {
             samples: inside.len(),
-            stated: stated.finish(),
-            outermost: reached.then(|| outermost.finish()),
+            stated: below(&stated.finish(), base),
+            upright: reached.then(|| below(&upright.finish(), base)),
             as_read,
         }
     }
@@ -148,11 +173,18 @@ fn below(points: &[Point], line: Line) -> Vec<Point> {
     cut
 }
 
+fn turned_over(mut points: Vec<Point>) -> Vec<Point> {
+    for point in &mut points {
+        point[1] = -point[1];
+    }
+    points
+}
+
 fn lowest(points: &[Point]) -> f64 {
     points.iter().fold(f64::INFINITY, |low, p| low.min(p[1]))
 }
 
-/// The outermost wall of a flank: from its upper end straight down to the level of its lowest vertex.
+/// The farthest wall of a flank: from its upper end straight down to the level of its lowest vertex.
 ///
 /// - `ends`: positions of the touched samples, which may lie beyond the edges, m
 fn straight_down(read: &[Point], ends: [f64; 2], base: Line) -> Vec<Point> {

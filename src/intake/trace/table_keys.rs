@@ -225,6 +225,8 @@ pub(crate) struct Declared {
     pub(crate) position_unit: Option<(String, UnitScale)>,
     /// Unit of heights.
     pub(crate) height_unit: Option<(String, UnitScale)>,
+    /// Whether both units come from a single key.
+    pub(crate) is_unit_shared: bool,
     /// Whether the header speaks of a scan along a line: a stylus, a distance of samples.
     pub(crate) is_scan: bool,
 }
@@ -255,6 +257,8 @@ impl Declared {
             }
         }
         found.is_scan |= found.step.is_some();
+        found.is_unit_shared =
+            unit.is_some() && found.position_unit.is_none() && found.height_unit.is_none();
         keep(&mut found.position_unit, unit.clone());
         keep(&mut found.height_unit, unit);
         found
@@ -280,17 +284,14 @@ fn key_of(text: &str) -> Option<Key> {
         .map(|(key, _)| *key)
 }
 
-/// Whether fields are a key for a unit and its value, such as `Z units,nm`, and name no columns.
-pub(crate) fn is_unit_key(fields: &[&str]) -> bool {
-    match fields {
-        [key, value] => {
-            matches!(
-                key_of(key),
-                Some(Key::PositionUnit | Key::HeightUnit | Key::Unit)
-            ) && unit_of(value).is_some()
-        }
-        _ => false,
-    }
+/// Whether a line is a key for a unit and its value, such as `Z units,nm`, and names no columns.
+pub(crate) fn is_unit_key(line: TextLine<'_>) -> bool {
+    let (key, value) = key_and_value(line);
+    let unit_key = matches!(
+        key_of(&key),
+        Some(Key::PositionUnit | Key::HeightUnit | Key::Unit)
+    );
+    unit_key && unit_of(&value).is_some()
 }
 
 /// A unit as the value of a key.

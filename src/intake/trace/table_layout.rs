@@ -34,6 +34,8 @@ pub(crate) struct Layout<'a> {
     pub(crate) is_named: bool,
     /// Number of samples by a count above the data or by the header.
     pub(crate) count: Option<usize>,
+    /// The count that stood above the data.
+    pub(crate) count_line: Option<usize>,
     /// Keys and values in file order.
     pub(crate) metadata: Vec<(String, String)>,
     /// What the header says of lengths and units.
@@ -49,7 +51,7 @@ impl<'a> Layout<'a> {
     pub(crate) fn of(text: &'a str, options: &TableOptions) -> Result<Self, Fault> {
         let mut parts = take_apart(text)?;
         let marks = decide(text, &parts, options.decimal)?;
-        let count = take_count(text, &mut parts, marks);
+        let count_line = take_count(text, &mut parts, marks);
         let mut cut_line = parts.cut_line.map(|line| line.offset);
         let width = usual_width(text, &parts, marks);
         if let Some(offset) = short_last_line(text, &parts, marks, width) {
@@ -71,7 +73,8 @@ impl<'a> Layout<'a> {
             data: parts.data,
             is_named: head.is_named,
             columns: head.columns,
-            count: count.or(declared.count),
+            count: count_line.or(declared.count),
+            count_line,
             declared,
             metadata,
             cut_line,
@@ -206,8 +209,7 @@ impl<'a> Head<'a> {
             };
             if units.is_none() && are_units(&fields) {
                 units = Some(fields);
-            } else if (names_columns(&fields) && !is_unit_key(&fields))
-                || asked_for(&fields, options)
+            } else if (names_columns(&fields) && !is_unit_key(*line)) || asked_for(&fields, options)
             {
                 names = Some(fields);
             } else {

@@ -60,7 +60,10 @@ struct Evidence {
     broken_comma_field: bool,
     /// A word between spaces that is no number with one decimal comma.
     broken_comma_word: bool,
-    /// Most commas in a row.
+    /// A decimal point.
+    point: bool,
+    /// Fewest and most commas in a row.
+    fewest_commas: usize,
     most_commas: usize,
     /// Every row has four whole numbers, the second and the fourth without sign.
     four_whole: bool,
@@ -70,6 +73,7 @@ impl Evidence {
     fn of<'a>(rows: impl Iterator<Item = &'a str>) -> Self {
         let mut seen = Self {
             four_whole: true,
+            fewest_commas: usize::MAX,
             ..Self::default()
         };
         for row in rows.take(SAMPLE_ROWS) {
@@ -98,6 +102,8 @@ impl Evidence {
             }
         }
         self.comma |= commas > 0;
+        self.point |= row.contains('.');
+        self.fewest_commas = self.fewest_commas.min(commas);
         self.most_commas = self.most_commas.max(commas);
         let mut parts = 0;
         for (index, part) in row.split(',').enumerate() {
@@ -169,11 +175,15 @@ pub(crate) fn decide(
     let by_comma = marks(Delimiter::Comma, Decimal::Point);
     let by_space = marks(Delimiter::Spaces, Decimal::Comma);
     let names = names_by_comma(parts);
+    // Whole numbers whose columns do not add up may be halves of numbers with decimal commas.
+    let uneven = seen.fewest_commas != seen.most_commas
+        || names.is_some_and(|names| names <= seen.most_commas);
     match option {
         Some(Decimal::Point) => Ok(by_comma),
         Some(Decimal::Comma) if seen.space || seen.most_commas == 1 => Ok(by_space),
         Some(Decimal::Comma) => Err(doubt(|text| TableProblem::DecimalIsSeparator { text })),
         None if seen.four_whole && names != Some(4) => Err(in_doubt()),
+        None if seen.broken_comma_word && uneven && !seen.point => Err(in_doubt()),
         None if seen.broken_comma_word => Ok(by_comma),
         None if names == Some(seen.most_commas + 1) => Ok(by_comma),
         None if seen.broken_comma_field || (names == Some(1) && !seen.space) => {
@@ -344,6 +354,8 @@ mod tests {
             "1,234 5,678\n",
             "0,5,1,2\n1,0,1,3\n",
             "0,5, 1,2\n",
+            "x_um,z_nm\n0,5,10\n1,10,5\n1,5,11\n",
+            "0,10\n0,5,10\n1,10,5\n",
         ] {
             assert_eq!(decided(text, None), None, "{text}");
         }

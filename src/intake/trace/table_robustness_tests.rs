@@ -59,14 +59,17 @@ fn some_options() -> [TableOptions; 4] {
 
 #[test]
 fn a_file_cut_at_any_byte_is_read_or_refused() {
-    for text in DIALECTS {
-        let mut wide = vec![0xff, 0xfe];
-        wide.extend(text.encode_utf16().flat_map(u16::to_le_bytes));
-        for bytes in [text.as_bytes(), &wide] {
-            for end in 0..=bytes.len() {
-                for options in some_options() {
-                    read_all(&bytes[..end], &options);
-                }
+    let mut files: Vec<Vec<u8>> = DIALECTS
+        .iter()
+        .map(|text| text.as_bytes().to_vec())
+        .collect();
+    let mut wide = vec![0xff, 0xfe];
+    wide.extend(DIALECTS[3].encode_utf16().flat_map(u16::to_le_bytes));
+    files.push(wide);
+    for bytes in files {
+        for end in 0..=bytes.len() {
+            for options in some_options() {
+                read_all(&bytes[..end], &options);
             }
         }
     }

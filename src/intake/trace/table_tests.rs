@@ -200,6 +200,13 @@ fn units_are_never_guessed() {
         *wrong.unwrap_err().problem,
         ReadProblem::UnitOption { .. }
     ));
+    let (read, warnings) = with("Unit: nm\n0;10\n500;20\n1000;-15\n", |_| {}).unwrap();
+    is_the_trace(&read, "one unit");
+    assert!(
+        warnings
+            .iter()
+            .any(|warning| warning.message.contains("one unit"))
+    );
     let volts = with("x_um,Signal (mV)\n0,1\n1,2\n2,3\n", |o| {
         o.z_column = Some("signal".to_owned());
         o.z_unit = Some("um".to_owned());
@@ -324,7 +331,13 @@ fn tables_without_positions_need_a_step() {
         TableProblem::StepNotPositive { .. }
     ));
     let counted = "Length: 1 um\nHeight (nm)\n3\n10\n20\n-15\n";
-    is_the_trace(&trace(counted), counted);
+    let (read, warnings) = with(counted, |_| {}).unwrap();
+    is_the_trace(&read, counted);
+    assert!(
+        warnings
+            .iter()
+            .any(|warning| warning.message.contains("count"))
+    );
     let blank = "Length: 1 um\nHeight (nm)\n10\n\n20\n-15\n";
     assert_eq!(
         (problem(blank), line_of(blank)),
@@ -409,7 +422,7 @@ fn broken_tables_name_the_line() {
     assert_eq!(line_of("x_um,z_nm\n0,1\nabc,2\n2,3\n3,4\n"), 3);
     assert_eq!(line_of("x_um,z_nm\n0,1\n1,2x\n2,3\n3,4\n"), 3);
     assert_eq!(line_of("x_um,z_nm\n0,1\n1,2\n2,3\n3,4x\n"), 5);
-    assert_eq!(line_of("x_um,z_nm\n0,1\n1,2,3\n2,3\n3,4\n"), 3);
+    assert_eq!(line_of("x_um,z_nm\n0.0,1\n1,2,3\n2,3\n3,4\n"), 3);
     assert_eq!(
         problem("x;z\n0 um;1 nm\n1 um;2 nm\n"),
         TableProblem::NoNumbers

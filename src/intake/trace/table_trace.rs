@@ -88,6 +88,7 @@ pub(crate) fn read_trace_table(
     };
     reading.warnings.extend(choice.warnings.iter().cloned());
     reading.warnings.extend(outline_doubt(&layout));
+    reading.warnings.extend(shared_unit(&units));
     let profile = reading.profile(samples, &units)?;
     let (tip, tip_step) = tip_radius(&layout.metadata, layout.marks.decimal);
     reading.steps.extend(tip_step);
@@ -104,6 +105,18 @@ pub(crate) fn read_trace_table(
         steps,
     };
     Ok((trace, warnings))
+}
+
+/// The warning that one unit of the header is taken for positions and heights.
+fn shared_unit(units: &Units) -> Option<Warning> {
+    let unit = units.shared.as_ref()?;
+    Some(Warning {
+        code: Code::ChoiceMade,
+        message: format!("the header gives one unit, {unit}; it is taken for positions and heights"),
+        advice: "give units by --x-unit and --z-unit after correcting the header, if one of them differs"
+            .to_owned(),
+        numbers: Vec::new(),
+    })
 }
 
 /// Refuses a distance of samples that is no length.
@@ -124,6 +137,8 @@ struct Units {
     z: (usize, UnitScale, String),
     /// Where the units were found.
     from: String,
+    /// The unit of the header that is taken for both.
+    shared: Option<String>,
 }
 
 impl Units {
@@ -145,17 +160,25 @@ impl Units {
         };
         let z_unit = axis_unit(layout, TableAxis::Heights, Some(choice.z), options)?;
         let z = choice.z;
+        let shared = match (&x_unit, &z_unit) {
+            (Some(x), Some(z)) if x.from == "header" && z.from == "header" => {
+                layout.declared.is_unit_shared.then(|| z.word.clone())
+            }
+            _ => None,
+        };
         match (x, x_unit, z_unit) {
             (Some(x), Some(x_unit), Some(z_unit)) => Ok(Self {
                 from: format!(
                     "positions in {} ({}), heights in {} ({})",
                     x_unit.word, x_unit.from, z_unit.word, z_unit.from
                 ),
+                shared,
                 x: Some((x, x_unit.scale, x_unit.word)),
                 z: (z, z_unit.scale, z_unit.word),
             }),
             (None, _, Some(z_unit)) => Ok(Self {
                 from: format!("heights in {} ({})", z_unit.word, z_unit.from),
+                shared,
                 x: None,
                 z: (z, z_unit.scale, z_unit.word),
             }),
@@ -298,6 +321,11 @@ fn layout_steps(layout: &Layout<'_>, units: &Units, samples: &Samples) -> Vec<St
         .with(&[("rows", layout.data.rows as f64)]),
     );
     steps.push(Step::new("units", units.from.clone()));
+    if let Some(count) = layout.count_line {
+        let text =
+            format!("the line `{count}` above the data is the number of samples, not one of them");
+        steps.push(Step::new("columns", text));
+    }
     if layout.rows_left_out > 0 {
         steps.push(Step::new(
             "columns",
@@ -333,6 +361,16 @@ pub(crate) fn cut_warning(layout: &Layout<'_>) -> Option<Warning> {
 
 fn layout_warnings(layout: &Layout<'_>, samples: &Samples) -> Vec<Warning> {
     let mut warnings: Vec<Warning> = cut_warning(layout).into_iter().collect();
+    if let (Some(count), 1) = (layout.count_line, layout.columns.len()) {
+        warnings.push(Warning {
+            code: Code::ChoiceMade,
+            message: format!(
+                "the first number, {count}, is the number of those below it; it is read as their count"
+            ),
+            advice: "if it is a height, put a line of text with its unit above it".to_owned(),
+            numbers: vec![("count", count as f64)],
+        });
+    }
     if samples.without_position > 0 {
         warnings.push(Warning {
             code: Code::FileDefect,

@@ -140,12 +140,17 @@ pub(crate) fn split_unit(field: &str) -> (&str, WrittenUnit<'_>) {
         .iter()
         .find_map(|joint| name.strip_suffix(joint)?.strip_suffix(char::is_whitespace));
     match written_unit(word) {
-        // A bare letter A after a space is the name of a channel as often as angstrom, and `in` is a word.
-        WrittenUnit::Length("A" | "in", _) if mark.is_whitespace() && in_words.is_none() => {
+        // A letter A without brackets is the name of a channel as often as angstrom, and `in` is a word.
+        WrittenUnit::Length("A", _) if mark != '/' && in_words.is_none() => {
             (field, WrittenUnit::None)
         }
-        WrittenUnit::OtherQuantity(_) if mark.is_whitespace() => (field, WrittenUnit::None),
-        WrittenUnit::Unknown(_) | WrittenUnit::None => (field, WrittenUnit::None),
+        WrittenUnit::Length("in", _) if mark.is_whitespace() && in_words.is_none() => {
+            (field, WrittenUnit::None)
+        }
+        // `z_min` is a smallest height, not one in minutes.
+        WrittenUnit::OtherQuantity(_) | WrittenUnit::Unknown(_) | WrittenUnit::None => {
+            (field, WrittenUnit::None)
+        }
         unit => (in_words.unwrap_or(name).trim_end(), unit),
     }
 }
@@ -199,6 +204,8 @@ mod tests {
     fn what_is_no_unit_of_length() {
         let unit = |field| split_unit(field).1;
         assert_eq!(unit("Channel A"), WrittenUnit::None);
+        assert_eq!(unit("Channel_A"), WrittenUnit::None);
+        assert_eq!(unit("z_min"), WrittenUnit::None);
         assert_eq!(unit("Raw"), WrittenUnit::None);
         assert_eq!(unit("built in"), WrittenUnit::None);
         assert_eq!(unit("Time (s)"), WrittenUnit::OtherQuantity("s"));

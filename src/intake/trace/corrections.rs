@@ -7,7 +7,7 @@ use super::bridging::{bridge, bridge_warning};
 use super::corrected::{Change, CorrectedTrace};
 use super::correction_options::{CorrectionOptions, Levelling};
 use super::correction_records as records;
-use super::lands::{Ground, find_lands};
+use super::lands::{Ground, find_lands, find_lands_roughly};
 use super::levelling::{Curve, Reference, fit_reference};
 use super::order_statistics::{median, thinned};
 use super::profile::{Profile, RawTrace, Zone};
@@ -98,13 +98,11 @@ fn found_ground(
             options.level,
             Levelling::Lands | Levelling::Line | Levelling::Local
         );
+    if let Ok(ground) = find_lands_roughly(&scan.good()) {
+        scan.mark_wider_spikes(options, &ground);
+    }
     match find_lands(&scan.good()) {
-        Ok(ground) => {
-            scan.mark_wider_spikes(options, &ground);
-            // Without the spikes the lands are what they are; the search cannot well fail now.
-            let again = find_lands(&scan.good()).unwrap_or(ground);
-            Ok(Some(again))
-        }
+        Ok(ground) => Ok(Some(ground)),
         Err(problem) if needed => Err(problem),
         Err(_) => Ok(None),
     }

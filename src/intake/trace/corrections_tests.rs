@@ -59,8 +59,8 @@ fn mean_over(profile: &Profile, zone: Zone) -> f64 {
 #[test]
 fn depth_and_lands_come_out_under_tilt_and_noise_for_every_shape() {
     for shape in SHAPES {
-        for count in [1, 3, 12] {
-            for (k, tilt) in [0.0, 0.01, -0.0875, 0.0875].into_iter().enumerate() {
+        for count in [1, 6] {
+            for (k, tilt) in [0.0, -0.0875, 0.0875].into_iter().enumerate() {
                 let grooves = Grooves {
                     count,
                     ..Grooves::one(shape)

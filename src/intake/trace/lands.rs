@@ -8,7 +8,7 @@
 use super::order_statistics::{half_sample_mode, median, noise_of_neighbours, quantile, thinned};
 use super::profile::{Profile, Zone};
 use super::robust_line::{Line, robust_line, typical_slope};
-use super::swings::{Stretch, stretches, swing_ranges, swing_thresholds};
+use super::swings::{Stretch, stretches, swing_thresholds};
 use super::trace_problem::{FEWEST_IN_ZONE, TraceProblem};
 
 /// Samples this near to the land, in depths, may belong to it while its line is sought.
@@ -29,6 +29,9 @@ const SLOPING: f64 = 0.25;
 
 /// A single hill whose flanks take more than this share of the trace from 25 to 75 % of its height is bow.
 const SLOW_WALL: f64 = 0.05;
+
+/// Samples of the thinned copy of a long trace.
+const THINNED: usize = 50_000;
 
 /// One land.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -69,6 +72,15 @@ impl Ground {
         self.depth * widths.sum::<f64>()
     }
 
+    /// Middle and height of each land over the reference of the search.
+    fn knots(&self) -> Vec<(f64, f64)> {
+        let knot = |land: &Land| {
+            let middle = 0.5 * (land.zone.from + land.zone.to);
+            (middle, land.line.at(middle))
+        };
+        self.lands.iter().map(knot).collect()
+    }
+
     /// The lands without the parts next to walls.
     pub(super) fn zones(&self) -> Vec<Zone> {
         self.lands.iter().map(|land| land.zone).collect()
@@ -76,26 +88,84 @@ impl Ground {
 }
 
 /// Finds the lands of a trace without missing points and without spikes.
+///
+/// Drift is followed on a thinned copy where there is one; the lands themselves are sought in all samples.
 pub(super) fn find_lands(good: &Profile) -> Result<Ground, TraceProblem> {
+    if let Some(coarse) = thinned_copy(good) {
+        let noise = noise_of_neighbours(&good.z);
+        let mut level = good.z.clone();
+        let found = drift_followed(&coarse).and_then(|(_, knots)| {
+            take_off(&good.x, &mut level, &knots);
+            survey(&good.x, &level, noise)
+        });
+        if found.is_ok() {
+            return found;
+        }
+    }
+    drift_followed(good).map(|(ground, _)| ground)
+}
+
+/// What stands out, in size and number; of long traces in a thinned copy where that shows it.
+pub(super) fn find_lands_roughly(good: &Profile) -> Result<Ground, TraceProblem> {
+    if let Some(coarse) = thinned_copy(good)
+        && let Ok((ground, _)) = drift_followed(&coarse)
+    {
+        return Ok(ground);
+    }
+    drift_followed(good).map(|(ground, _)| ground)
+}
+
+/// Medians of blocks of a long trace.
+fn thinned_copy(good: &Profile) -> Option<Profile> {
+    let size = good.x.len().div_ceil(THINNED);
+    (size > 1).then(|| Profile {
+        x: good
+            .x
+            .chunks(size)
+            .map(|block| block[block.len() / 2])
+            .collect(),
+        z: good
+            .z
+            .chunks(size)
+            .map(|block| median(&mut block.to_vec()))
+            .collect(),
+    })
+}
+
+/// Lands, and the drift that they show as knots of a broken line.
+fn drift_followed(good: &Profile) -> Result<(Ground, Vec<(f64, f64)>), TraceProblem> {
+    let (Some(&start), Some(&end)) = (good.x.first(), good.x.last()) else {
+        return Err(TraceProblem::NoChannel {
+            relief: 0.0,
+            noise: 0.0,
+        });
+    };
     let noise = noise_of_neighbours(&good.z);
     let slope = typical_slope(&good.x, &good.z);
-    let start = good.x.first().copied().unwrap_or(0.0);
-    let mut level: Vec<f64> = good
-        .x
-        .iter()
-        .zip(&good.z)
-        .map(|(x, z)| z - slope * (x - start))
-        .collect();
-    let mut ground = survey(&good.x, &level, noise)
-        .map_err(|problem| one_level(good, noise).unwrap_or(problem))?;
+    let mut knots = vec![(start, 0.0), (end, slope * (end - start))];
+    let mut level = good.z.clone();
+    take_off(&good.x, &mut level, &knots);
+    let first = survey(&good.x, &level, noise);
+    let mut ground = first.map_err(|problem| one_level(good, noise).unwrap_or(problem))?;
     for _ in 0..2 {
-        take_off(&good.x, &mut level, &ground.lands);
+        let rest = ground.knots();
+        take_off(&good.x, &mut level, &rest);
+        let middles: Vec<f64> = rest.iter().map(|(x, _)| *x).collect();
+        let before = piecewise(&knots, &middles);
+        let sum = rest
+            .iter()
+            .zip(before)
+            .map(|((x, z), before)| (*x, z + before));
+        let sum = sum.collect();
         match survey(&good.x, &level, noise) {
-            Ok(better) => ground = better,
+            Ok(better) => {
+                ground = better;
+                knots = sum;
+            }
             Err(_) => break,
         }
     }
-    Ok(ground)
+    Ok((ground, knots))
 }
 
 /// Whether nothing stands out of one straight line through all samples: the typical slope of noise is
@@ -108,25 +178,16 @@ fn one_level(good: &Profile, noise: f64) -> Option<TraceProblem> {
         .zip(&good.z)
         .map(|(x, z)| z - line.at(*x))
         .collect();
-    let ranges = swing_ranges(&rests);
-    swing_thresholds(&ranges, noise, rests.len())
+    let relief = rests.iter().copied().fold(f64::NEG_INFINITY, f64::max)
+        - rests.iter().copied().fold(f64::INFINITY, f64::min);
+    swing_thresholds(&rests, noise)
         .is_empty()
-        .then(|| TraceProblem::NoChannel {
-            relief: ranges.first().copied().unwrap_or(0.0),
-            noise,
-        })
+        .then_some(TraceProblem::NoChannel { relief, noise })
 }
 
-/// Takes off what the lands show of drift: straight from the middle of each to the middle of the next.
-fn take_off(x: &[f64], z: &mut [f64], lands: &[Land]) {
-    let knots: Vec<(f64, f64)> = lands
-        .iter()
-        .map(|land| {
-            let middle = 0.5 * (land.zone.from + land.zone.to);
-            (middle, land.line.at(middle))
-        })
-        .collect();
-    for (height, reference) in z.iter_mut().zip(piecewise(&knots, x)) {
+/// Takes a broken line off.
+fn take_off(x: &[f64], z: &mut [f64], knots: &[(f64, f64)]) {
+    for (height, reference) in z.iter_mut().zip(piecewise(knots, x)) {
         *height -= reference;
     }
 }
@@ -152,7 +213,7 @@ pub(super) fn piecewise(knots: &[(f64, f64)], x: &[f64]) -> Vec<f64> {
 fn survey(x: &[f64], z: &[f64], noise: f64) -> Result<Ground, TraceProblem> {
     let mut best: Option<(f64, Ground)> = None;
     let mut first_problem = None;
-    for threshold in swing_thresholds(&swing_ranges(z), noise, z.len()) {
+    for threshold in swing_thresholds(z, noise) {
         match at_threshold(x, z, threshold) {
             Ok(ground) => {
                 let weight = ground.weight();

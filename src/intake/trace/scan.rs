@@ -87,7 +87,9 @@ impl Scan {
     /// Marks spikes that come back within a fiftieth of the narrowest land or channel.
     pub(super) fn mark_wider_spikes(&mut self, options: &CorrectionOptions, ground: &Ground) {
         let smallest = SMALLEST_SPIKE * ground.depth;
-        self.mark(options, NARROW, smallest);
+        if smallest < 0.8 * SMALLEST_SPIKE * relief(&self.good()) {
+            self.mark(options, NARROW, smallest);
+        }
         let spacing = median(&mut thinned(&spacings(&self.profile.x), 100_000));
         let within = (WIDEST_SPIKE * ground.narrowest / spacing) as usize;
         if within.min(WIDEST) > NARROW {

@@ -31,8 +31,8 @@ fn turning_heights(z: &[f64]) -> Vec<f64> {
     turns
 }
 
-/// Ranges of all swings, smallest inside larger ones, in falling order.
-pub(super) fn swing_ranges(z: &[f64]) -> Vec<f64> {
+/// Ranges of all swings from `least` on, smallest inside larger ones, in falling order.
+pub(super) fn swing_ranges(z: &[f64], least: f64) -> Vec<f64> {
     let mut stack: Vec<f64> = Vec::new();
     let mut ranges = Vec::new();
     for height in turning_heights(z) {
@@ -52,17 +52,23 @@ pub(super) fn swing_ranges(z: &[f64]) -> Vec<f64> {
         }
     }
     ranges.extend(stack.windows(2).map(|pair| (pair[1] - pair[0]).abs()));
+    ranges.retain(|range| *range >= least);
     ranges.sort_by(|a, b| b.total_cmp(a));
     ranges
 }
 
+/// What noise alone does not reach: normal noise of `n` samples spans about `2 sqrt(2 ln n)` standard
+/// deviations, and two are added.
+fn noise_span(noise: f64, samples: usize) -> f64 {
+    (2.0 * (2.0 * (samples.max(2) as f64).ln()).sqrt() + 2.0) * noise
+}
+
 /// Heights that part lands and grooves from noise: in the widest gaps between the ranges of swings,
 /// the widest first, at most three.
-///
-/// Normal noise of `n` samples spans about `2 sqrt(2 ln n)` standard deviations; only what is larger counts.
-pub(super) fn swing_thresholds(ranges: &[f64], noise: f64, samples: usize) -> Vec<f64> {
-    let span = 2.0 * (2.0 * (samples.max(2) as f64).ln()).sqrt();
-    let smallest = ((span + 2.0) * noise).max(1e-9 * ranges.first().copied().unwrap_or(0.0));
+pub(super) fn swing_thresholds(z: &[f64], noise: f64) -> Vec<f64> {
+    let span = noise_span(noise, z.len());
+    let ranges = swing_ranges(z, 0.5 * span);
+    let smallest = span.max(1e-9 * ranges.first().copied().unwrap_or(0.0));
     let mut gaps: Vec<(f64, f64)> = Vec::new();
     for (k, &range) in ranges.iter().enumerate() {
         if !(range > smallest) {
@@ -152,8 +158,9 @@ mod tests {
     #[test]
     fn swings_inside_swings_are_counted_once() {
         let z = [0.0, 10.0, 4.0, 5.0, 4.5, 6.0, 0.0, 10.0, 10.0, 9.0];
-        let ranges = swing_ranges(&z);
+        let ranges = swing_ranges(&z, 0.4);
         assert_eq!(ranges.len(), 6);
+        assert_eq!(swing_ranges(&z, 0.6).len(), 5);
         for (found, expected) in ranges.iter().zip([10.0, 10.0, 10.0, 2.0, 1.0, 0.5]) {
             assert!((found - expected).abs() < 1e-12, "{ranges:?}");
         }

@@ -86,6 +86,7 @@ impl UnitScale {
             match exponent.saturating_add(self.power) {
                 -3 => buffer.push_str("-3"),
                 -6 => buffer.push_str("-6"),
+                -9 => buffer.push_str("-9"),
                 // Writing to a String cannot fail.
                 other => drop(write!(buffer, "{other}")),
             }

@@ -128,8 +128,8 @@ pub fn read_instrument(path: &Path, options: &ReadOptions) -> Result<InstrumentR
 pub fn read_height_map(path: &Path, options: &ReadOptions) -> Result<HeightMap, ReadError> {
     let name = path.display().to_string();
     let bytes = read_bytes(path).map_err(|problem| ReadError::new(&name, problem))?;
-    let content = content_of(&bytes, Some(SectionKind::HeightMap))
-        .map_err(|fault| fault.in_file(&name))?;
+    let content =
+        content_of(&bytes, Some(SectionKind::HeightMap)).map_err(|fault| fault.in_file(&name))?;
     let reader = Reader {
         bytes: &bytes,
         path: &name,

@@ -8,8 +8,10 @@
 //! do not change with the length of the trace, but have no second edge.
 //!
 //! The level of a land is the median of its samples within one width of the stretch from it. An edge
-//! is where the profile, followed outwards from the dip, first comes up to that level, interpolated between
-//! samples: what stands above the level beyond (an overshoot of the instrument) is outside.
+//! is where the profile, followed outwards from the dip, comes up to that level: what stands above the level
+//! beyond (an overshoot of the instrument) is outside. A land that bends or scatters may be reached far
+//! from the wall only, so from [`SHOULDER`] of the depth (or the scatter of the land) below it the wall is
+//! continued in a straight line.
 
 use std::ops::Range;
 
@@ -25,6 +27,10 @@ const NOISES: f64 = 5.0;
 const SHALLOWEST: f64 = 0.05;
 /// Fraction of the deepest place of its stretch at which a dip begins.
 const DIP: f64 = 0.1;
+/// Fraction of the depth below a land from which the wall is continued in a straight line.
+const SHOULDER: f64 = 0.002;
+/// Standard deviations of the land from which it is continued so where it scatters more.
+const SHOULDER_NOISES: f64 = 4.0;
 /// A groove is at least this deep, m: an atom.
 const ATOM: f64 = 1e-10;
 /// Area above the lands over area below them from which a trace shows ridges.
@@ -314,7 +320,7 @@ fn groove(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>, number: u
 
 /// The lands of a dip: the stretch's, or the samples that part it from the next dip.
 fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<Edges, String> {
-    let (x, z) = (heights.x, heights.z);
+    let z = heights.z;
     let cut_off =
         |side: &str| format!("is cut off by the {side} of the trace, or has no land there");
     let deepest = stretch.depth.iter().copied().fold(0.0, f64::max);
@@ -335,34 +341,135 @@ fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<
         dip.end..end_up
     };
     let (left_level, right_level) = (level(z, left_land.clone()), level(z, right_land.clone()));
-    let left_out = first_up_to(z, (left_land.start..dip.start).rev(), left_level)?;
-    let right_out = first_up_to(z, dip.end..right_land.end, right_level)?;
-    let inside = left_out + 1..right_out;
+    let shoulder = |land: &Range<usize>| {
+        let noise = SHOULDER_NOISES * scatter(z, std::slice::from_ref(land));
+        (SHOULDER * deepest).max(noise).min(0.5 * DIP * deepest)
+    };
+    let left = Wall {
+        heights,
+        level: left_level,
+        shoulder: shoulder(&left_land),
+    };
+    let right = Wall {
+        heights,
+        level: right_level,
+        shoulder: shoulder(&right_land),
+    };
+    let middle = dip.start.midpoint(dip.end);
+    let (left, first) = left.edge(
+        (left_land.start..dip.start).rev(),
+        (dip.start..middle, false),
+    )?;
+    let (right, last) = right.edge(dip.end..right_land.end, (middle..dip.end, true))?;
+    let inside = first..last + 1;
     if inside.len() < FEWEST_SAMPLES {
         return Err(format!(
             "has {} samples below its lands, fewer than {FEWEST_SAMPLES}",
             inside.len()
         ));
     }
-    let crossing = |out: usize, next: usize, level: f64| Edge {
-        x: x[out] + (z[out] - level) / (z[out] - z[next]) * (x[next] - x[out]),
-        z: level,
-    };
     Ok(Edges {
-        left: crossing(left_out, left_out + 1, left_level),
-        right: crossing(right_out, right_out - 1, right_level),
+        left,
+        right,
         inside,
         left_land,
         right_land,
     })
 }
 
-/// The first sample of a walk that comes up to a level.
-fn first_up_to(
-    z: &[f64],
-    mut walk: impl Iterator<Item = usize>,
+/// One side of a dip.
+#[derive(Debug, Clone, Copy)]
+struct Wall<'a> {
+    heights: Heights<'a>,
+    /// Level of its land, m.
     level: f64,
-) -> Result<usize, String> {
-    walk.find(|&i| z[i] >= level)
-        .ok_or_else(|| "does not come up to its land".to_owned())
+    /// Depth below it from which the wall is continued in a straight line, m.
+    shoulder: f64,
+}
+
+impl Wall<'_> {
+    /// The edge, and the last sample inside of it.
+    ///
+    /// - `walk`: samples outwards from the dip, to the far end of the land
+    /// - `within`: samples of the dip on this side, and whether they are walked backwards to go inwards
+    fn edge(
+        self,
+        walk: impl Iterator<Item = usize>,
+        (within, backwards): (Range<usize>, bool),
+    ) -> Result<(Edge, usize), String> {
+        let (x, z, level) = (self.heights.x, self.heights.z, self.level);
+        let mut inner = if backwards {
+            within.end.saturating_sub(1)
+        } else {
+            within.start
+        };
+        let mut passed = None;
+        for index in walk {
+            if z[index] >= level {
+                let up = self.crossing(index, inner, level);
+                let at = match passed {
+                    // The land is reached before the straight line would reach it.
+                    Some((continued, from)) if nearer(from, continued, up) => continued,
+                    _ => up,
+                };
+                let last = passed.map_or(inner, |(_, from)| from.0);
+                return Ok((Edge { x: at, z: level }, last));
+            }
+            if passed.is_none() && z[index] >= level - self.shoulder {
+                let near = self.crossing(index, inner, level - self.shoulder);
+                let deep = self.from_inside(inner, &within, backwards);
+                passed = deep.map(|deep| (2.0 * near - deep, (inner, x[inner])));
+            }
+            inner = index;
+        }
+        match passed {
+            Some((continued, from)) => Ok((
+                Edge {
+                    x: continued,
+                    z: level,
+                },
+                from.0,
+            )),
+            None => Err("does not come up to its land".to_owned()),
+        }
+    }
+
+    /// Where the profile crosses a height between two neighbouring samples.
+    fn crossing(self, out: usize, inner: usize, height: f64) -> f64 {
+        let (x, z) = (self.heights.x, self.heights.z);
+        let t = (z[out] - height) / (z[out] - z[inner]);
+        x[out] + t.clamp(0.0, 1.0) * (x[inner] - x[out])
+    }
+
+    /// Where the wall, followed inwards from a sample, first lies two shoulders deep.
+    fn from_inside(self, start: usize, within: &Range<usize>, backwards: bool) -> Option<f64> {
+        let z = self.heights.z;
+        let height = self.level - 2.0 * self.shoulder;
+        let mut outer = start;
+        if z[outer] <= height {
+            let out = if backwards {
+                outer + 1
+            } else {
+                outer.checked_sub(1)?
+            };
+            return Some(self.crossing(out, outer, height));
+        }
+        let inwards: Box<dyn Iterator<Item = usize>> = if backwards {
+            Box::new((within.start..start).rev())
+        } else {
+            Box::new(start + 1..within.end)
+        };
+        for index in inwards {
+            if z[index] <= height {
+                return Some(self.crossing(outer, index, height));
+            }
+            outer = index;
+        }
+        None
+    }
+}
+
+/// Whether a continued wall ends before the place where the land is reached, seen from a sample inside.
+fn nearer(from: (usize, f64), continued: f64, up: f64) -> bool {
+    (continued - from.1).abs() < (up - from.1).abs()
 }

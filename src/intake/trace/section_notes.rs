@@ -36,8 +36,8 @@ pub(super) fn steps(
 fn groove_step(drawing: &Drawing<'_>, numbers: &TrenchNumbers) -> Step {
     let edges = &drawing.walls.edges;
     let text = format!(
-        "groove {} of {}: from {} to {}, {} deep below the line through its edges, which are where the \
-         surface first comes up to the median height of each land",
+        "groove {} of {}: from {} to {}, {} deep below the line through its edges, which are where its \
+         walls come up to the median height of each land",
         drawing.groove.number,
         drawing.ground.grooves.len(),
         format_length(edges.left.x),

@@ -99,7 +99,7 @@ pub(crate) fn choose(layout: &Layout<'_>, options: &TableOptions) -> Result<Choi
                 "the column {} is called a depth; it is read as heights, larger numbers being higher",
                 column.shown(choice.z)
             ),
-            advice: "if its numbers grow downwards, turn the trace over".to_owned(),
+            advice: "if its numbers grow downwards, turn the trace over with --invert".to_owned(),
             numbers: Vec::new(),
         });
     }

@@ -188,7 +188,8 @@ fn a_v_has_no_floor_and_a_gaussian_its_area() {
     assert!(section.numbers.bottom_width < 1e-12);
     let gaussian = groove(|x| -20.0 * ((-(x - 50.0).powi(2) / 200.0).exp() - (-12.5_f64).exp()));
     let exact = 20.0 * (200.0 * std::f64::consts::PI).sqrt() * UM * UM;
-    assert_close(plain(&gaussian).outline.area(), exact, 1e-4);
+    // Its ends are cut where 0.2 % of the depth is left.
+    assert_close(plain(&gaussian).outline.area(), exact, 4e-4);
 }
 
 #[test]

@@ -1,7 +1,5 @@
 //! TIFF files made in memory: tags with scales, tilt and data bars, palettes, pages and kinds of samples.
 
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
-
 use std::io::Cursor;
 
 use tiff::encoder::colortype::{self, ColorType};

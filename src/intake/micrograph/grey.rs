@@ -47,7 +47,7 @@ impl Grey {
     }
 
     /// The count for a value of the file.
-    pub(super) fn from_file(&self, value: f64) -> f64 {
+    pub(super) fn counts_of(&self, value: f64) -> f64 {
         (value - self.offset) / self.unit
     }
 
@@ -147,6 +147,6 @@ mod tests {
         let fine = grey.clone().refined();
         assert_eq!(fine.values, [0, 65280]);
         assert!((fine.to_file(65280.0) - grey.to_file(255.0)).abs() < 1e-9);
-        assert!((fine.from_file(513.0) - 65280.0).abs() < 1e-9);
+        assert!((fine.counts_of(513.0) - 65280.0).abs() < 1e-9);
     }
 }

@@ -1,7 +1,5 @@
 //! What the outline of a picture is worth: against shapes whose size is known.
 
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
-
 use std::f64::consts::PI;
 
 use super::test_pictures::{Drawn, micrometre, read};

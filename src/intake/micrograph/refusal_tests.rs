@@ -1,7 +1,5 @@
 //! What is refused, and that nothing crashes.
 
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
-
 use image::ImageFormat;
 
 use super::test_pictures::{Drawn, micrometre};
@@ -146,166 +144,53 @@ fn pictures_without_a_wall_are_refused() {
 
 #[test]
 fn options_out_of_range_are_named() {
+    type Change = fn(&mut MicrographOptions);
     let drawn = Drawn::disc(64, [32.0, 32.0], 20.0);
-    let base = micrometre;
-    let cases: Vec<(MicrographOptions, &str)> = vec![
+    let cases: [(Change, &str); 21] = [
+        (|o| o.scale = None, "no scale"),
+        (|o| o.scale = Some(-1.0), "--scale"),
+        (|o| o.scale = Some(f64::NAN), "--scale"),
+        (|o| o.scale = Some(1.0), "outside 10 nm to 50 mm"),
+        (|o| o.tilt = Some(Tilt::Stage(0.0)), "--tilt"),
+        (|o| o.tilt = Some(Tilt::Face(f64::NAN)), "--tilt"),
+        (|o| o.crop = Some([0, 0, 65, 64]), "--crop"),
+        (|o| o.crop = Some([60, 60, 4, 4]), "4 x 4"),
+        (|o| o.page = Some(2), "no page 2"),
+        (|o| o.page = Some(0), "no page 0"),
+        (|o| o.reach_levels = [0.8, 0.2], "--reach-levels"),
+        (|o| o.denoise = Denoise::Median(99), "--denoise"),
+        (|o| o.threshold = Threshold::Value(1.0), "one side"),
+        (|o| o.threshold = Threshold::Value(f64::NAN), "--threshold"),
+        (|o| o.threshold = Threshold::Share(2.0), "--threshold"),
         (
-            MicrographOptions {
-                scale: None,
-                ..base()
-            },
-            "no scale",
-        ),
-        (
-            MicrographOptions {
-                scale: Some(-1.0),
-                ..base()
-            },
-            "--scale",
-        ),
-        (
-            MicrographOptions {
-                scale: Some(f64::NAN),
-                ..base()
-            },
-            "--scale",
-        ),
-        (
-            MicrographOptions {
-                scale: Some(1.0),
-                ..base()
-            },
-            "outside 10 nm to 50 mm",
-        ),
-        (
-            MicrographOptions {
-                tilt: Some(Tilt::Stage(0.0)),
-                ..base()
-            },
-            "--tilt",
-        ),
-        (
-            MicrographOptions {
-                tilt: Some(Tilt::Face(f64::NAN)),
-                ..base()
-            },
-            "--tilt",
-        ),
-        (
-            MicrographOptions {
-                crop: Some([0, 0, 65, 64]),
-                ..base()
-            },
-            "--crop",
-        ),
-        (
-            MicrographOptions {
-                crop: Some([60, 60, 4, 4]),
-                ..base()
-            },
-            "4 x 4",
-        ),
-        (
-            MicrographOptions {
-                page: Some(2),
-                ..base()
-            },
-            "no page 2",
-        ),
-        (
-            MicrographOptions {
-                page: Some(0),
-                ..base()
-            },
-            "no page 0",
-        ),
-        (
-            MicrographOptions {
-                reach_levels: [0.8, 0.2],
-                ..base()
-            },
-            "--reach-levels",
-        ),
-        (
-            MicrographOptions {
-                denoise: Denoise::Median(99),
-                ..base()
-            },
-            "--denoise",
-        ),
-        (
-            MicrographOptions {
-                threshold: Threshold::Value(1.0),
-                ..base()
-            },
-            "one side",
-        ),
-        (
-            MicrographOptions {
-                threshold: Threshold::Value(f64::NAN),
-                ..base()
-            },
-            "--threshold",
-        ),
-        (
-            MicrographOptions {
-                threshold: Threshold::Share(2.0),
-                ..base()
-            },
-            "--threshold",
-        ),
-        (
-            MicrographOptions {
-                threshold: "32,32:30,30".parse().unwrap(),
-                ..base()
-            },
+            |o| o.threshold = "32,32:30,30".parse().unwrap(),
             "same grey",
         ),
         (
-            MicrographOptions {
-                threshold: "32,32:99,1".parse().unwrap(),
-                ..base()
-            },
+            |o| o.threshold = "32,32:99,1".parse().unwrap(),
             "--threshold",
         ),
         (
-            MicrographOptions {
-                threshold: "32,32:2,2".parse().unwrap(),
-                fluid: Some(Tone::Bright),
-                ..base()
+            |o| {
+                o.threshold = "32,32:2,2".parse().unwrap();
+                o.fluid = Some(Tone::Bright);
             },
             "--fluid-is bright",
         ),
-        (
-            MicrographOptions {
-                simplify: Some(-1.0),
-                ..base()
-            },
-            "--simplify",
-        ),
-        (
-            MicrographOptions {
-                smallest_island: Some(f64::NAN),
-                ..base()
-            },
-            "--islands-above",
-        ),
-        (
-            MicrographOptions {
-                largest_pixels: 4095,
-                ..base()
-            },
-            "64 x 64",
-        ),
+        (|o| o.simplify = Some(-1.0), "--simplify"),
+        (|o| o.smallest_island = Some(f64::NAN), "--islands-above"),
+        (|o| o.largest_pixels = 4095, "64 x 64"),
     ];
-    for (options, text) in cases {
+    for (change, text) in cases {
+        let mut options = micrometre();
+        change(&mut options);
         let found = problem(&drawn, &options);
         assert!(found.to_string().contains(text), "{found}");
     }
     let large = MicrographOptions {
         scale: Some(1.0),
         allow_any_size: true,
-        ..base()
+        ..micrometre()
     };
     assert!(read_micrograph(&drawn.png(), &large).is_ok());
 }

@@ -167,13 +167,12 @@ pub(super) fn choose(
         let is_dark = f64::from(grey.at(x, y)) < first.classes.threshold;
         if is_dark { Tone::Dark } else { Tone::Bright }
     });
-    let (tone, regions) = match options.fluid.or(first.tone).or(tone_at_seed) {
-        Some(tone) => (tone, find(tone)?),
-        None => {
-            let found = clear_tone(part, find(Tone::Dark)?, find(Tone::Bright)?)?;
-            warnings.push(tone_warning(found.0));
-            found
-        }
+    let (tone, regions) = if let Some(tone) = options.fluid.or(first.tone).or(tone_at_seed) {
+        (tone, find(tone)?)
+    } else {
+        let found = clear_tone(part, find(Tone::Dark)?, find(Tone::Bright)?)?;
+        warnings.push(tone_warning(found.0));
+        found
     };
     let list = part.list(&regions, tone);
     let (index, blob) = match (options.region, seed.zip(seed_pixel)) {
@@ -236,7 +235,7 @@ fn first_level(
         }
     })?;
     let parted = |value: f64| {
-        histogram.parted_at(grey.from_file(value)).ok_or_else(|| {
+        histogram.parted_at(grey.counts_of(value)).ok_or_else(|| {
             MicrographProblem::ThresholdOutside {
                 threshold: value,
                 low: grey.to_file(histogram.quantile(0.0).unwrap_or(0.0)),

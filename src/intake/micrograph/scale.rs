@@ -172,14 +172,17 @@ fn largest_difference(sizes: &[[f64; 2]]) -> f64 {
 /// A candidate in words.
 fn described(candidate: &ScaleCandidate) -> String {
     let [x, y] = candidate.metres_per_pixel;
-    let mut text = format!("{}: {}", candidate.source, format_length(x));
-    if (y / x - 1.0).abs() > 1e-6 {
-        text.push_str(&format!(" by {}", format_length(y)));
-    }
-    if !candidate.note.is_empty() {
-        text.push_str(&format!(" ({})", candidate.note));
-    }
-    text
+    let height = if (y / x - 1.0).abs() > 1e-6 {
+        format!(" by {}", format_length(y))
+    } else {
+        String::new()
+    };
+    let note = if candidate.note.is_empty() {
+        String::new()
+    } else {
+        format!(" ({})", candidate.note)
+    };
+    format!("{}: {}{height}{note}", candidate.source, format_length(x))
 }
 
 /// All statements of the file, those that count most first.

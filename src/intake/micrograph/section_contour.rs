@@ -5,7 +5,7 @@ use super::grey::Grey;
 use super::grey_edge::{Edge, EdgeProblem, GREY_EDGE, Section, edge, loops_above, net_area};
 use super::micrograph_problem::MicrographProblem;
 use super::micrograph_section::PixelLoop;
-use super::options::{MicrographOptions, PixelBox, Threshold};
+use super::options::{MicrographOptions, PixelBox, Threshold, Tone};
 use super::region_choice::Chosen;
 use super::regions::{Level, Regions};
 use super::wall_levels::{
@@ -53,7 +53,6 @@ impl Traced {
 }
 
 /// What one pass at a level gives.
-#[derive(Default)]
 struct Pass {
     mask: Vec<u8>,
     loops: Vec<PixelLoop>,
@@ -73,21 +72,16 @@ pub(super) fn traced(
     let window = Window::about(grey, chosen);
     let grey = &window.grey;
     let (mut level, inner_pixel) = (chosen.level, window.inner_pixel);
-    let mut pass = pass_at(grey, level, inner_pixel, least_area)?.unwrap_or_default();
-    let [low, high] = chosen.classes.means;
-    let (fluid, wall) = if level.is_fluid(low as u16) {
-        (low, high)
-    } else {
-        (high, low)
-    };
-    let mut sides = Sides {
-        fluid,
-        wall,
-        noise: 0.0,
-    };
+    let first = pass_at(grey, level, inner_pixel, least_area)?;
+    let mut pass = first.ok_or(MicrographProblem::NoRegion {
+        tone: Some(level.tone),
+        least: 1,
+        cut_off: None,
+    })?;
+    let mut sides = class_sides(chosen);
     let mut found = Err(EdgeProblem::LevelOutside);
     let mut distance = FIRST_DISTANCE;
-    let mut width = width_by_slope(grey, &pass.loops, high - low);
+    let mut width = width_by_slope(grey, &pass.loops, sides.contrast());
     for _ in 0..PASSES {
         let wanted = (2.0 * width).ceil().clamp(0.0, f64::from(LAST_DISTANCE)) as u8;
         distance = distance.max(wanted);
@@ -121,12 +115,7 @@ pub(super) fn traced(
             break;
         }
     }
-    let is_sharp = found
-        .as_ref()
-        .is_ok_and(|edge| edge.standard_width <= GREY_EDGE);
-    let is_quiet = sides.noise <= QUIET * sides.contrast();
-    let is_half = (level.counts - sides.at(0.5)).abs() < HALF_WAY * sides.contrast();
-    let by_areas = is_sharp && is_half && is_quiet;
+    let by_areas = is_for_areas(&found, &sides, level);
     if by_areas {
         let areas = Crossing::Areas {
             fluid: sides.fluid,
@@ -153,6 +142,29 @@ pub(super) fn traced(
         loops: pass.loops,
         edge: found,
     })
+}
+
+/// Levels of fluid and wall from the means of the two classes, for a beginning.
+fn class_sides(chosen: &Chosen) -> Sides {
+    let [low, high] = chosen.classes.means;
+    let (fluid, wall) = match chosen.level.tone {
+        Tone::Dark => (low, high),
+        Tone::Bright => (high, low),
+    };
+    Sides {
+        fluid,
+        wall,
+        noise: 0.0,
+    }
+}
+
+/// Whether the greys across the edge give its place better than two pixels do.
+fn is_for_areas(edge: &Result<Edge, EdgeProblem>, sides: &Sides, level: Level) -> bool {
+    let contrast = sides.contrast();
+    let is_sharp = |edge: &Edge| edge.standard_width <= GREY_EDGE;
+    edge.as_ref().is_ok_and(is_sharp)
+        && sides.noise <= QUIET * contrast
+        && (level.counts - sides.at(0.5)).abs() < HALF_WAY * contrast
 }
 
 /// The picture about a region, wide enough for its edge.

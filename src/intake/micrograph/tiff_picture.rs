@@ -37,10 +37,10 @@ const WHITE_IS_ZERO: u64 = 0;
 const BLACK_IS_ZERO: u16 = 1;
 const PALETTE: u64 = 3;
 
-fn undecodable(reason: impl ToString) -> MicrographProblem {
+fn undecodable<T: std::fmt::Display>(reason: T) -> MicrographProblem {
     MicrographProblem::Undecodable {
         format: "TIFF",
-        reason: reason.to_string(),
+        reason: format!("{reason}"),
     }
 }
 
@@ -110,31 +110,29 @@ fn chosen_page<'a, 'b>(
     pages: &'a [Directory<'b>],
     asked: Option<usize>,
 ) -> Result<(usize, &'a Directory<'b>), MicrographProblem> {
-    let number = match asked {
-        Some(page) => page,
-        None => {
-            let full: Vec<usize> = (1..)
-                .zip(pages)
-                .filter(|(_, page)| page.whole(SUBFILE).unwrap_or(0) & 1 == 0)
-                .map(|(number, _)| number)
-                .collect();
-            match *full.as_slice() {
-                [] => 1,
-                [only] => only,
-                _ => {
-                    return Err(MicrographProblem::SeveralPages {
-                        pages: (1..).zip(pages).take(20).map(page_text).collect(),
-                    });
-                }
-            }
-        }
-    };
+    let number = asked.map_or_else(|| only_page(pages), Ok)?;
     let page = number.checked_sub(1).and_then(|index| pages.get(index));
     let page = page.ok_or(MicrographProblem::NoPage {
         page: number,
         count: pages.len(),
     })?;
     Ok((number, page))
+}
+
+/// The only page that is no reduction of another.
+fn only_page(pages: &[Directory<'_>]) -> Result<usize, MicrographProblem> {
+    let full: Vec<usize> = (1..)
+        .zip(pages)
+        .filter(|(_, page)| page.whole(SUBFILE).unwrap_or(0) & 1 == 0)
+        .map(|(number, _)| number)
+        .collect();
+    match *full.as_slice() {
+        [] => Ok(1),
+        [only] => Ok(only),
+        _ => Err(MicrographProblem::SeveralPages {
+            pages: (1..).zip(pages).take(20).map(page_text).collect(),
+        }),
+    }
 }
 
 fn page_text((number, page): (usize, &Directory<'_>)) -> String {
@@ -280,12 +278,14 @@ impl Raw {
                 grey.values = raw.chunks(samples).filter_map(shifted_16).collect();
                 grey.full_scale = [-32768.0, 32767.0];
             }
-            DecodingResult::U32(raw) => stretch(&raw, samples, |v| f64::from(v), &mut grey)?,
-            DecodingResult::I32(raw) => stretch(&raw, samples, |v| f64::from(v), &mut grey)?,
+            DecodingResult::U32(raw) => stretch(&raw, samples, f64::from, &mut grey)?,
+            DecodingResult::I32(raw) => stretch(&raw, samples, f64::from, &mut grey)?,
             DecodingResult::U64(raw) => stretch(&raw, samples, |v| v as f64, &mut grey)?,
             DecodingResult::I64(raw) => stretch(&raw, samples, |v| v as f64, &mut grey)?,
-            DecodingResult::F16(raw) => stretch(&raw, samples, |v| v.to_f64(), &mut grey)?,
-            DecodingResult::F32(raw) => stretch(&raw, samples, |v| f64::from(v), &mut grey)?,
+            DecodingResult::F16(raw) => {
+                stretch(&raw, samples, |v| f64::from(v.to_f32()), &mut grey)?;
+            }
+            DecodingResult::F32(raw) => stretch(&raw, samples, f64::from, &mut grey)?,
             DecodingResult::F64(raw) => stretch(&raw, samples, |v| v, &mut grey)?,
         }
         if grey.values.len() != self.width * self.height {

@@ -188,11 +188,12 @@ mod tests {
                     HorFieldsize=2e-5\r\nVerFieldsize=2.8e-5\r\n[EBeam]\r\nTiltCorrectionIsOn=yes\r\n\
                     [Stage]\r\nStageT=-0.9\r\n[Image]\r\nResolutionX=100\r\nResolutionY=70\r\n";
         let vendor = read_text(Some(text), None);
-        assert_eq!(vendor.sizes[0].metres_per_pixel, [2e-7, 4e-7]);
+        let [x, y] = vendor.sizes[0].metres_per_pixel;
+        assert!((x - 2e-7).abs() < 1e-15 && (y - 4e-7).abs() < 1e-15);
         let [x, y] = vendor.sizes[1].metres_per_pixel;
         assert!((x - 2e-7).abs() < 1e-15 && (y - 4e-7).abs() < 1e-15);
         assert_eq!(vendor.scan, Some([100, 70]));
-        assert_eq!(vendor.tilt.unwrap().0, -0.9);
+        assert!((vendor.tilt.unwrap().0 + 0.9).abs() < 1e-12);
         assert!(vendor.is_tilt_corrected);
         assert_eq!(vendor.metadata.len(), 9);
     }

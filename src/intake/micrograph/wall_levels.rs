@@ -66,7 +66,7 @@ fn sweep_row(distance: &mut [u8], mask: &[u8], width: usize, y: usize, from: Opt
         let (own, near) = if other < y {
             (high.get_mut(..width), low.get(other * width..))
         } else {
-            (low.get_mut(y * width..), high.get(..width).map(|row| &*row))
+            (low.get_mut(y * width..), high.get(..width))
         };
         let (own, near) = (own.unwrap_or_default(), near.unwrap_or_default());
         for (((d, n), m), k) in own.iter_mut().zip(near).zip(own_mask).zip(row_of(other)) {
@@ -209,8 +209,8 @@ mod tests {
         mask[24] = 1;
         let found = distances(&mask, width);
         for (i, &d) in found.iter().enumerate() {
-            let (x, y) = ((i % 7) as i32 - 3, (i / 7) as i32 - 3);
-            assert_eq!(i32::from(d), (x.abs() + y.abs()).max(1));
+            let (x, y) = ((i % 7).abs_diff(3), (i / 7).abs_diff(3));
+            assert_eq!(usize::from(d), (x + y).max(1));
         }
     }
 

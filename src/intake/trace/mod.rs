@@ -18,6 +18,8 @@ mod levelling;
 mod order_statistics;
 mod profile;
 mod profile_filter;
+#[cfg(test)]
+mod refusals_tests;
 mod repeat_alignment;
 mod repeats;
 mod robust_line;

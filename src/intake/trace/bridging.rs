@@ -11,8 +11,8 @@ use crate::warning::{Code, Warning};
 pub(super) fn bridge(profile: &mut Profile, is_spike: &[bool]) -> Vec<Change> {
     let mut changes = Vec::new();
     let mut before = 0;
-    for at in 0..profile.x.len() {
-        if is_spike[at] || profile.z[at].is_nan() {
+    for (at, &is_spike) in is_spike.iter().enumerate() {
+        if is_spike || profile.z[at].is_nan() {
             continue;
         }
         if at > before + 1 {
@@ -86,19 +86,16 @@ pub(super) fn bridge_warning(
     if gaps > 0 {
         parts.push(format!("{gaps} gap(s) ({missing} samples)"));
     }
-    let mut message = format!(
+    let mut message = vec![format!(
         "{} bridged by straight lines, the widest over {}",
         parts.join(" and "),
         format_length(doubts.widest)
-    );
+    )];
     if doubts.walls > 0 {
-        message.push_str(&format!("; {} of them over a wall", doubts.walls));
+        message.push(format!("{} of them over a wall", doubts.walls));
     }
     if doubts.wide > 0 {
-        message.push_str(&format!(
-            "; {} over more than half of a channel",
-            doubts.wide
-        ));
+        message.push(format!("{} over more than half of a channel", doubts.wide));
     }
     let advice = if doubts.walls + doubts.wide > 0 {
         "the wall or the floor there is a guess: measure again, or take another channel"
@@ -109,7 +106,7 @@ pub(super) fn bridge_warning(
     };
     Some(Warning {
         code: Code::SamplesBridged,
-        message,
+        message: message.join("; "),
         advice: advice.to_owned(),
         numbers: vec![
             ("spikes", spikes as f64),

@@ -87,7 +87,7 @@ impl CorrectionOptions {
     pub(super) fn check(&self) -> Result<(), TraceProblem> {
         let names = ["--shrink-x", "--shrink-z"];
         for (option, share) in names.into_iter().zip(self.shrinkage) {
-            if !(share.abs() <= 0.5) {
+            if !share.is_finite() || share.abs() > 0.5 {
                 return Err(TraceProblem::Shrinkage { option, share });
             }
         }

@@ -35,22 +35,21 @@ pub(super) fn repeats(trace: &mut CorrectedTrace, ground: Option<&Ground>) {
     let Some(agreement) = &trace.repeatability else {
         return;
     };
-    let mut text = format!(
+    let depth = agreement.depth_sd.map(|sd| {
+        let sd = format_length(sd);
+        format!(", the depth of a channel by {sd}")
+    });
+    let mut parts = vec![format!(
         "mean of {} traces on the positions of the first; one reading scatters by {} (robust), {} with \
-         walls and defects",
+         walls and defects{}",
         agreement.traces,
         format_length(agreement.reading_robust_sd),
-        format_length(agreement.reading_sd)
-    );
-    if let Some(sd) = agreement.depth_sd {
-        text.push_str(&format!(
-            ", the depth of a channel by {}",
-            format_length(sd)
-        ));
-    }
-    for place in &agreement.places {
-        text.push_str(&format!(
-            "; shifted by {}, by {} more or less from channel to channel{}",
+        format_length(agreement.reading_sd),
+        depth.unwrap_or_default()
+    )];
+    parts.extend(agreement.places.iter().map(|place| {
+        format!(
+            "shifted by {}, by {} more or less from channel to channel{}",
             format_length(place.shift),
             format_length(0.5 * place.uneven),
             if place.is_reversed {
@@ -58,8 +57,8 @@ pub(super) fn repeats(trace: &mut CorrectedTrace, ground: Option<&Ground>) {
             } else {
                 ""
             }
-        ));
-    }
+        )
+    }));
     let mut numbers = vec![
         ("traces", agreement.traces as f64),
         ("reading_sd_m", agreement.reading_sd),
@@ -89,7 +88,7 @@ pub(super) fn repeats(trace: &mut CorrectedTrace, ground: Option<&Ground>) {
             ],
         })
     });
-    let step = Step::new("repeats", text).with(&numbers);
+    let step = Step::new("repeats", parts.join("; ")).with(&numbers);
     trace.steps.push(step);
     trace.warnings.extend(warning);
 }
@@ -173,31 +172,30 @@ pub(super) fn levelled(
 ) {
     let zones = trace.reference_zones.len();
     let (what, how) = (curve_name(fitted, options), fit_name(options.fit));
-    let mut text = format!(
+    let mut text = vec![format!(
         "{what} through {zones} zone(s), {how}; it runs from {} to {}; the zones lie off it by {} (root mean \
          square), the worst by {}",
         format_length(trace.reference.first().copied().unwrap_or(0.0)),
         format_length(trace.reference.last().copied().unwrap_or(0.0)),
         format_length(fitted.rms),
         format_length(fitted.worst())
-    );
+    )];
     if let Some(worst) = off_one_line {
-        text.push_str(&format!(
-            "; one straight line would leave the worst land {} off, more than {} of the depth",
+        text.push(format!(
+            "one straight line would leave the worst land {} off, more than {} of the depth",
             format_length(worst),
             format_percent(WORST_LAND, 1)
         ));
     }
     if fitted.bend > 0.0 {
-        text.push_str(&format!(
-            "; between two lands it may bend by {} more, which no land shows",
+        text.push(format!(
+            "between two lands it may bend by {} more, which no land shows",
             format_length(fitted.bend)
         ));
     }
     let slope = end_slope(trace);
     if slope.abs() > STEEP {
-        text.push_str(&format!(
-            "; heights stay vertical: if the slope of {} is a tilt of the specimen, depths are {} too \
+        text.push(format!("heights stay vertical: if the slope of {} is a tilt of the specimen, depths are {} too \
              large and widths as much too small",
             format_percent(slope, 2),
             format_percent((1.0_f64).hypot(slope) - 1.0, 1)
@@ -213,7 +211,7 @@ pub(super) fn levelled(
     numbers.extend(off_one_line.map(|worst| ("worst_on_one_line_m", worst)));
     trace
         .steps
-        .push(Step::new("levelling", text).with(&numbers));
+        .push(Step::new("levelling", text.join("; ")).with(&numbers));
     let warning = residual_warning(fitted, off_one_line, options, depth);
     trace.warnings.extend(warning);
     trace
@@ -260,7 +258,7 @@ fn residual_warning(
 ) -> Option<Warning> {
     let is_local = matches!(fitted.curve, Curve::Pieces(_));
     let worst = off_one_line.unwrap_or(fitted.worst());
-    if !(worst > WORST_LAND * depth) {
+    if worst.is_nan() || worst <= WORST_LAND * depth {
         return None;
     }
     let (message, advice) = if is_local {

@@ -409,7 +409,7 @@ fn land_of(x: &[f64], z: &[f64], stretch: Stretch, low: f64) -> Option<Land> {
     sorted.sort_by(f64::total_cmp);
     let mode = half_sample_mode(&sorted);
     let depth = mode - low;
-    if !(depth > 0.0) {
+    if depth.is_nan() || depth <= 0.0 {
         return None;
     }
     let mut line = Line {

@@ -195,7 +195,7 @@ fn zone_samples(
             rests.map(|rest| bisquare(rest, scatter)).collect()
         }
     };
-    if !(weights.iter().sum::<f64>() > 0.0) {
+    if weights.iter().sum::<f64>() <= 0.0 {
         return Ok(ZoneSamples {
             weights: vec![1.0; x.len()],
             x: x.to_vec(),
@@ -304,7 +304,7 @@ fn solved(equations: &[NormalEquations], weights: &[f64], size: usize) -> Option
     let decomposition = matrix.svd(true, true);
     let largest = decomposition.singular_values.max();
     let smallest = decomposition.singular_values.min();
-    if !(smallest > 1e-11 * largest) {
+    if smallest.is_nan() || smallest <= 1e-11 * largest {
         return None;
     }
     let found = decomposition.solve(&right, 0.0).ok()?;

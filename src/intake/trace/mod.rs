@@ -23,6 +23,8 @@ mod lid;
 mod order_statistics;
 mod profile;
 mod profile_filter;
+#[cfg(test)]
+mod refusals_tests;
 mod repeat_alignment;
 mod repeats;
 mod robust_line;

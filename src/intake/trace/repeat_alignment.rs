@@ -177,16 +177,14 @@ fn best_shift(first: &Profile, repeat: &Profile) -> (f64, f64, f64) {
     let least = (a.len().min(b.len()) / 2).max(2);
     let mut best = (0.0, -1.0, spacing);
     let mut least_rest = f64::INFINITY;
-    let lowest = least as isize - b.len() as isize;
-    let highest = a.len() as isize - least as isize;
-    for lag in lowest..=highest {
-        // Sample k of the first lies on sample k - lag of the repeat.
-        let from = lag.max(0) as usize;
-        let to = (a.len() as isize).min(b.len() as isize + lag) as usize;
+    // From the last samples of the repeat on the first ones of the first trace to the reverse.
+    for step in 0..=(a.len() + b.len()).saturating_sub(2 * least) {
+        let from = (step + least).saturating_sub(b.len());
+        let shifted = b.len().saturating_sub(step + least);
+        let to = a.len().min(from + b.len() - shifted);
         if to < from + least {
             continue;
         }
-        let shifted = (from as isize - lag) as usize;
         let count = to - from;
         let products: f64 = a[from..to]
             .iter()
@@ -207,7 +205,8 @@ fn best_shift(first: &Profile, repeat: &Profile) -> (f64, f64, f64) {
         let rest = (1.0 - correlation).max(1e-9) / (share * share);
         if rest < least_rest {
             least_rest = rest;
-            let shift = start - repeat_start + lag as f64 * spacing;
+            let lag = from as f64 - shifted as f64;
+            let shift = start - repeat_start + lag * spacing;
             best = (shift, correlation.min(1.0), spacing);
         }
     }

@@ -194,7 +194,7 @@ fn place_repeat(
     let own = find_lands(&good).ok();
     let grooves = ground.map_or(&[][..], |ground| &ground.grooves);
     let alignment = align(level, &without_drift(&good, own.as_ref()), grooves);
-    if !(alignment.correlation >= LEAST_CORRELATION) {
+    if alignment.correlation.is_nan() || alignment.correlation < LEAST_CORRELATION {
         return Err(TraceProblem::RepeatDiffers {
             number: 0,
             correlation: alignment.correlation,

@@ -90,13 +90,13 @@ fn is_spike(
     } else {
         (SPIKE_SCATTERS, regional)
     };
-    if half < NARROW || !(size > smallest && size > weight * regional) {
+    if half < NARROW || size <= smallest || size <= weight * regional {
         return false;
     }
     let window = &z[at - half..=at + half];
     let centre = z[at] - deviations[at];
     let mut distances: Vec<f64> = window.iter().map(|z| (z - centre).abs()).collect();
-    if !(size > weight * MAD_TO_SD * median(&mut distances)) {
+    if size <= weight * MAD_TO_SD * median(&mut distances) {
         return false;
     }
     let side = (half / 3).max(1);

@@ -71,7 +71,7 @@ pub(super) fn swing_thresholds(z: &[f64], noise: f64) -> Vec<f64> {
     let smallest = span.max(1e-9 * ranges.first().copied().unwrap_or(0.0));
     let mut gaps: Vec<(f64, f64)> = Vec::new();
     for (k, &range) in ranges.iter().enumerate() {
-        if !(range > smallest) {
+        if range <= smallest {
             break;
         }
         let next = ranges

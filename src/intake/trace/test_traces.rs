@@ -1,6 +1,8 @@
 //! Invented traces for tests.
 
-use super::profile::{Profile, RawTrace};
+use super::profile::{Profile, RawTrace, Zone};
+use super::{CorrectedTrace, CorrectionOptions, correct};
+use crate::warning::Code;
 
 /// Repeatable normal noise.
 pub(in crate::intake) struct Noise(u64);
@@ -103,5 +105,65 @@ pub(super) fn raw(profile: Profile) -> RawTrace {
     RawTrace {
         profile,
         ..RawTrace::default()
+    }
+}
+
+pub(super) const SHAPES: [Shape; 4] = [Shape::Rectangle, Shape::Koh, Shape::Isotropic, Shape::Vee];
+
+/// What spoils a trace.
+#[derive(Debug, Clone, Copy, Default)]
+pub(super) struct Faults {
+    /// Slope, 1.
+    pub(super) tilt: f64,
+    /// Height of a parabola over the whole trace, m.
+    pub(super) bow: f64,
+    /// Amplitude of a wave and a half of drift over the whole trace, m.
+    pub(super) drift: f64,
+    /// Standard deviation of noise, m.
+    pub(super) noise: f64,
+}
+
+pub(super) fn spoilt(grooves: &Grooves, faults: Faults, seed: u64) -> RawTrace {
+    let mut noise = Noise::new(seed);
+    let mut profile = grooves.profile();
+    let length = grooves.length();
+    for (x, z) in profile.x.iter().zip(&mut profile.z) {
+        let u = x / length;
+        *z += faults.tilt * x
+            + 4.0 * faults.bow * u * (1.0 - u)
+            + faults.drift * (3.0 * std::f64::consts::PI * u).sin()
+            + faults.noise * noise.normal();
+    }
+    raw(profile)
+}
+
+pub(super) fn default_correct(raw: &RawTrace) -> CorrectedTrace {
+    correct(raw, &[], &CorrectionOptions::default()).unwrap()
+}
+
+pub(super) fn codes(trace: &CorrectedTrace) -> Vec<Code> {
+    trace.warnings.iter().map(|w| w.code).collect()
+}
+
+/// Mean height of the corrected trace over a zone.
+pub(super) fn mean_over(profile: &Profile, zone: Zone) -> f64 {
+    let inside = profile.x.iter().zip(&profile.z);
+    let inside: Vec<f64> = inside
+        .filter(|(x, _)| (zone.from..=zone.to).contains(*x))
+        .map(|(_, z)| *z)
+        .collect();
+    inside.iter().sum::<f64>() / inside.len() as f64
+}
+
+/// The depth of the middle third, against the same measure on the clean trace.
+pub(super) fn check_depths(trace: &CorrectedTrace, grooves: &Grooves, within: f64, case: &str) {
+    for step in &trace.step_heights {
+        let floor = step.zones[2];
+        let clean = -mean_over(&grooves.profile(), floor);
+        assert!(
+            (step.depth - clean).abs() < within * grooves.depth,
+            "{case}: {} for {clean}",
+            step.depth
+        );
     }
 }

@@ -9,7 +9,7 @@ mod channels;
 use channels::{Channel, Dice, KINDS, Trouble, measured, told, written};
 use etchwise::flow::{Goal, SolveOptions, solve_outline};
 use etchwise::geometry::Outline;
-use etchwise::intake::{ReadOptions, Section, section_from_bytes};
+use etchwise::intake::{ReadError, ReadOptions, Section, section_from_bytes};
 
 /// Channels in the test.
 const CHANNELS: usize = 200;
@@ -48,13 +48,10 @@ fn case(number: usize) -> (Channel, Trouble, usize, Vec<u8>) {
     (channel, trouble, dialect, bytes)
 }
 
-fn read(trouble: &Trouble, bytes: Vec<u8>) -> Section {
+fn read(trouble: &Trouble, bytes: Vec<u8>) -> Result<Section, ReadError> {
     let mut options = ReadOptions::default();
     options.instrument.corrections.bow = if trouble.bow == 0.0 { 1 } else { 2 };
-    match section_from_bytes(bytes, "invented", &options) {
-        Ok(section) => section,
-        Err(error) => panic!("{}", error.explain()),
-    }
+    section_from_bytes(bytes, "invented", &options)
 }
 
 #[test]
@@ -63,7 +60,14 @@ fn the_conductance_of_invented_channels_comes_out_of_their_files() {
     let mut failures = Vec::new();
     for number in 0..CHANNELS {
         let (channel, trouble, dialect, bytes) = case(number);
-        let section = read(&trouble, bytes);
+        let told = told(&channel, &trouble, dialect);
+        let section = match read(&trouble, bytes) {
+            Ok(section) => section,
+            Err(error) => {
+                failures.push(format!("{number}: {told}\n{}", error.explain()));
+                continue;
+            }
+        };
         let micrometre = |p: [f64; 2]| p.map(|c| c * 1e-6);
         let outline = channel.outline().into_iter().map(micrometre).collect();
         let truth = conductance(&Outline::single(outline));
@@ -83,7 +87,6 @@ fn the_conductance_of_invented_channels_comes_out_of_their_files() {
         let within = low * (1.0 - ALLOWED) <= truth && truth <= high * (1.0 + ALLOWED);
         // Every one of these traces shows its whole channel: no tip stands in the way.
         if off.abs() > ALLOWED || !within {
-            let told = told(&channel, &trouble, dialect);
             failures.push(format!(
                 "{number}: off by {off:.4}, within reach {within}: {told}"
             ));

@@ -7,9 +7,11 @@
 //! [`SHALLOWEST`] of the deepest one. Dips before the first and after the last land are counted, so that numbers
 //! do not change with the length of the trace, but have no second edge.
 //!
-//! The level of a land is the median of its samples within one width of the stretch from it. An edge
+//! The level of a land is the median of its samples within a quarter of the stretch's width from it. An edge
 //! is where the profile, followed outwards from the dip, first comes up to that level, interpolated between
-//! samples: what stands above the level beyond (an overshoot of the instrument) is outside.
+//! samples: what stands above the level beyond (an overshoot of the instrument) is outside. Where it stops
+//! rising below the level (by [`LEVEL_OFF`] over [`LOOK_AHEAD`] of the depth; a land that drifts), the edge
+//! is there, and the wall is drawn up to the level from the next sample.
 
 use std::ops::Range;
 
@@ -29,6 +31,13 @@ const DIP: f64 = 0.1;
 const ATOM: f64 = 1e-10;
 /// Area above the lands over area below them from which a trace shows ridges.
 const RIDGES: f64 = 3.0;
+/// Slope below which a profile no longer rises to its land, rad,
+const LEVEL_OFF: f64 = std::f64::consts::PI / 180.0;
+/// over this fraction of the depth and at least [`LOOK_AHEAD_SAMPLES`].
+const LOOK_AHEAD: f64 = 0.1;
+const LOOK_AHEAD_SAMPLES: usize = 4;
+/// Part of a stretch's width over which the level of a land is taken.
+const LEVEL_WIDTH: f64 = 0.25;
 /// Fewest samples of a land for its level, where it has them.
 const LEVEL_SAMPLES: usize = 16;
 
@@ -202,8 +211,7 @@ fn scatter(z: &[f64], lands: &[Range<usize>]) -> f64 {
     median(&mut distances) / 0.6745
 }
 
-/// The end of a land next to a stretch: within one width of the stretch, and not fewer than
-/// [`LEVEL_SAMPLES`].
+/// The end of a land next to a stretch: within a width of it, and not fewer than [`LEVEL_SAMPLES`].
 fn end_of(x: &[f64], land: &Range<usize>, width: f64, is_left: bool) -> Range<usize> {
     if is_left {
         let near = x.partition_point(|&p| p < x[land.end - 1] - width);
@@ -225,7 +233,7 @@ fn stretches(heights: Heights<'_>, lands: &[Range<usize>]) -> Vec<Stretch> {
         if samples.is_empty() {
             continue;
         }
-        let width = x[samples.end - 1] - x[samples.start];
+        let width = LEVEL_WIDTH * (x[samples.end - 1] - x[samples.start]);
         let left = left.map(|land| end_of(x, land, width, true));
         let right = right.map(|land| end_of(x, land, width, false));
         let place = |land: &Option<Range<usize>>, at: fn(&Range<usize>) -> usize| {
@@ -335,8 +343,27 @@ fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<
         dip.end..end_up
     };
     let (left_level, right_level) = (level(z, left_land.clone()), level(z, right_land.clone()));
-    let left_out = first_up_to(z, (left_land.start..dip.start).rev(), left_level)?;
-    let right_out = first_up_to(z, dip.end..right_land.end, right_level)?;
+    let depth = deepest_of(stretch, dip);
+    let walks = (
+        Walk {
+            x,
+            z,
+            level: left_level,
+            ahead: LOOK_AHEAD * depth,
+            step: -1,
+            last: left_land.start,
+        },
+        Walk {
+            x,
+            z,
+            level: right_level,
+            ahead: LOOK_AHEAD * depth,
+            step: 1,
+            last: right_land.end - 1,
+        },
+    );
+    let (left, left_out) = walks.0.edge(dip.start)?;
+    let (right, right_out) = walks.1.edge(dip.end - 1)?;
     let inside = left_out + 1..right_out;
     if inside.len() < FEWEST_SAMPLES {
         return Err(format!(
@@ -344,25 +371,77 @@ fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<
             inside.len()
         ));
     }
-    let crossing = |out: usize, next: usize, level: f64| Edge {
-        x: x[out] + (z[out] - level) / (z[out] - z[next]) * (x[next] - x[out]),
-        z: level,
-    };
     Ok(Edges {
-        left: crossing(left_out, left_out + 1, left_level),
-        right: crossing(right_out, right_out - 1, right_level),
+        left,
+        right,
         inside,
         left_land,
         right_land,
     })
 }
 
-/// The first sample of a walk that comes up to a level.
-fn first_up_to(
-    z: &[f64],
-    mut walk: impl Iterator<Item = usize>,
+fn deepest_of(stretch: &Stretch, samples: &Range<usize>) -> f64 {
+    let begin = stretch.samples.start;
+    let depths = stretch
+        .depth
+        .get(samples.start - begin..samples.end - begin);
+    depths
+        .unwrap_or_default()
+        .iter()
+        .copied()
+        .fold(0.0, f64::max)
+}
+
+/// A way along the profile, outwards from a dip.
+struct Walk<'a> {
+    x: &'a [f64],
+    z: &'a [f64],
+    /// Level of the land, m.
     level: f64,
-) -> Result<usize, String> {
-    walk.find(|&i| z[i] >= level)
-        .ok_or_else(|| "does not come up to its land".to_owned())
+    /// How far is looked ahead, m.
+    ahead: f64,
+    /// -1 to the left, 1 to the right.
+    step: isize,
+    /// Last sample of the land.
+    last: usize,
+}
+
+impl Walk<'_> {
+    /// The edge on the way from a sample of the dip, and the sample on or just outside it.
+    fn edge(&self, from: usize) -> Result<(Edge, usize), String> {
+        let mut at = from;
+        while at != self.last {
+            let next = at.wrapping_add_signed(self.step);
+            if self.z[next] >= self.level {
+                let along = (self.level - self.z[at]) / (self.z[next] - self.z[at]);
+                let x = self.x[at] + along * (self.x[next] - self.x[at]);
+                return Ok((Edge { x, z: self.level }, next));
+            }
+            at = next;
+            if at != from && !self.rises(at) {
+                let edge = Edge {
+                    x: self.x[at],
+                    z: self.level,
+                };
+                return Ok((edge, at));
+            }
+        }
+        Err("does not come up to its land".to_owned())
+    }
+
+    /// Whether the profile goes on rising beyond a sample.
+    fn rises(&self, at: usize) -> bool {
+        let x = self.x;
+        let far = if self.step > 0 {
+            let far = x.partition_point(|&p| p < x[at] + self.ahead);
+            far.max(at + LOOK_AHEAD_SAMPLES).min(self.last)
+        } else {
+            let far = x
+                .partition_point(|&p| p <= x[at] - self.ahead)
+                .saturating_sub(1);
+            far.min(at.saturating_sub(LOOK_AHEAD_SAMPLES))
+                .max(self.last)
+        };
+        self.z[far] - self.z[at] >= LEVEL_OFF.tan() * (x[far] - x[at]).abs()
+    }
 }

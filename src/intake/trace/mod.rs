@@ -9,9 +9,17 @@ mod corrected;
 mod flanks;
 mod groove_problem;
 mod groove_section;
+#[cfg(test)]
+mod groove_traces_tests;
 mod grooves;
 mod half;
+#[cfg(test)]
+mod half_tests;
+#[cfg(test)]
+mod hostile_traces_tests;
 mod lid;
+#[cfg(test)]
+mod lid_tests;
 mod profile;
 mod section_notes;
 mod section_options;

@@ -361,3 +361,57 @@ fn without_level_vertices(points: &[Point]) -> Vec<Point> {
     let kept = (0..count).filter(|&index| !is_between(index));
     kept.map(|index| points[index]).collect()
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::geometry::Outline;
+
+    fn outline(parts: &[Part]) -> Outline {
+        let all = parts.iter().map(|p| Outline::single(p.points.clone()));
+        Outline {
+            lumens: all.flat_map(|o| o.lumens).collect(),
+        }
+    }
+
+    #[test]
+    fn parts_that_would_share_a_point_are_cut_apart() {
+        let upper = vec![[0.0, 0.0], [8.0, 0.0]];
+        let lower = vec![[0.0, 0.0], [2.0, -3.0], [4.0, 0.0], [6.0, -3.0], [8.0, 0.0]];
+        let found = close(&[Layer { lower, upper }]);
+        assert_eq!(found[0].len(), 2);
+        let both = outline(&found[0]);
+        assert!(both.is_valid(), "{}", both.problems());
+        assert!((both.area() - 12.0).abs() < 1e-4);
+    }
+
+    #[test]
+    fn a_curve_through_the_lid_leaves_exact_parts_on_both_sides() {
+        let upper = vec![[0.0, 0.0], [8.0, 0.0]];
+        let lower = vec![[0.0, 0.0], [0.0, -2.0], [4.0, 2.0], [8.0, -2.0], [8.0, 0.0]];
+        let found = close(&[Layer { lower, upper }]);
+        let spans: Vec<[f64; 2]> = found[0].iter().map(|p| p.span).collect();
+        assert_eq!(spans, [[0.0, 2.0], [6.0, 8.0]]);
+        assert_eq!(found[0][0].points, [[0.0, -2.0], [2.0, 0.0], [0.0, 0.0]]);
+    }
+
+    #[test]
+    fn layers_that_differ_by_rounding_lie_in_each_other_exactly() {
+        let walls = |foot: f64| {
+            vec![
+                [0.1, 0.3],
+                [0.1 + foot, -0.7],
+                [0.9, -0.7 - foot],
+                [1.3, 0.3],
+            ]
+        };
+        let layer = |foot: f64| Layer {
+            lower: walls(foot),
+            upper: vec![[0.1, 0.1], [1.3, 0.07]],
+        };
+        let found = close(&[layer(0.1), layer(0.1 + 1e-16), layer(0.1)]);
+        let all: Vec<Outline> = found.iter().map(|parts| outline(parts)).collect();
+        assert!(all[2].proven_inside(&all[1]).is_ok());
+        assert!(all[1].proven_inside(&all[0]).is_ok());
+    }
+}

@@ -7,11 +7,11 @@
 //! [`SHALLOWEST`] of the deepest one. Dips before the first and after the last land are counted, so that numbers
 //! do not change with the length of the trace, but have no second edge.
 //!
-//! The level of a land is the median of its samples within one width of the stretch from it. An edge
-//! is where the profile, followed outwards from the dip, comes up to that level: what stands above the level
-//! beyond (an overshoot of the instrument) is outside. A land that bends or scatters may be reached far
-//! from the wall only, so from [`SHOULDER`] of the depth (or the scatter of the land) below it the wall is
-//! continued in a straight line.
+//! The level of a land is the median of its samples within a quarter of the stretch's width from it. An edge
+//! is where the profile, followed outwards from the dip, first comes up to that level, interpolated between
+//! samples: what stands above the level beyond (an overshoot of the instrument) is outside. Where it stops
+//! rising below the level (by [`LEVEL_OFF`] over [`LOOK_AHEAD`] of the depth; a land that drifts), the edge
+//! is there, and the wall is drawn up to the level from the next sample.
 
 use std::ops::Range;
 
@@ -27,14 +27,17 @@ const NOISES: f64 = 5.0;
 const SHALLOWEST: f64 = 0.05;
 /// Fraction of the deepest place of its stretch at which a dip begins.
 const DIP: f64 = 0.1;
-/// Fraction of the depth below a land from which the wall is continued in a straight line.
-const SHOULDER: f64 = 0.002;
-/// Standard deviations of the land from which it is continued so where it scatters more.
-const SHOULDER_NOISES: f64 = 4.0;
 /// A groove is at least this deep, m: an atom.
 const ATOM: f64 = 1e-10;
 /// Area above the lands over area below them from which a trace shows ridges.
 const RIDGES: f64 = 3.0;
+/// Slope below which a profile no longer rises to its land, rad,
+const LEVEL_OFF: f64 = std::f64::consts::PI / 180.0;
+/// over this fraction of the depth and at least [`LOOK_AHEAD_SAMPLES`].
+const LOOK_AHEAD: f64 = 0.1;
+const LOOK_AHEAD_SAMPLES: usize = 4;
+/// Part of a stretch's width over which the level of a land is taken.
+const LEVEL_WIDTH: f64 = 0.25;
 /// Fewest samples of a land for its level, where it has them.
 const LEVEL_SAMPLES: usize = 16;
 
@@ -208,8 +211,7 @@ fn scatter(z: &[f64], lands: &[Range<usize>]) -> f64 {
     median(&mut distances) / 0.6745
 }
 
-/// The end of a land next to a stretch: within one width of the stretch, and not fewer than
-/// [`LEVEL_SAMPLES`].
+/// The end of a land next to a stretch: within a width of it, and not fewer than [`LEVEL_SAMPLES`].
 fn end_of(x: &[f64], land: &Range<usize>, width: f64, is_left: bool) -> Range<usize> {
     if is_left {
         let near = x.partition_point(|&p| p < x[land.end - 1] - width);
@@ -231,7 +233,7 @@ fn stretches(heights: Heights<'_>, lands: &[Range<usize>]) -> Vec<Stretch> {
         if samples.is_empty() {
             continue;
         }
-        let width = x[samples.end - 1] - x[samples.start];
+        let width = LEVEL_WIDTH * (x[samples.end - 1] - x[samples.start]);
         let left = left.map(|land| end_of(x, land, width, true));
         let right = right.map(|land| end_of(x, land, width, false));
         let place = |land: &Option<Range<usize>>, at: fn(&Range<usize>) -> usize| {
@@ -320,7 +322,7 @@ fn groove(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>, number: u
 
 /// The lands of a dip: the stretch's, or the samples that part it from the next dip.
 fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<Edges, String> {
-    let z = heights.z;
+    let (x, z) = (heights.x, heights.z);
     let cut_off =
         |side: &str| format!("is cut off by the {side} of the trace, or has no land there");
     let deepest = stretch.depth.iter().copied().fold(0.0, f64::max);
@@ -341,27 +343,28 @@ fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<
         dip.end..end_up
     };
     let (left_level, right_level) = (level(z, left_land.clone()), level(z, right_land.clone()));
-    let shoulder = |land: &Range<usize>| {
-        let noise = SHOULDER_NOISES * scatter(z, std::slice::from_ref(land));
-        (SHOULDER * deepest).max(noise).min(0.5 * DIP * deepest)
-    };
-    let left = Wall {
-        heights,
-        level: left_level,
-        shoulder: shoulder(&left_land),
-    };
-    let right = Wall {
-        heights,
-        level: right_level,
-        shoulder: shoulder(&right_land),
-    };
-    let middle = dip.start.midpoint(dip.end);
-    let (left, first) = left.edge(
-        (left_land.start..dip.start).rev(),
-        (dip.start..middle, false),
-    )?;
-    let (right, last) = right.edge(dip.end..right_land.end, (middle..dip.end, true))?;
-    let inside = first..last + 1;
+    let depth = deepest_of(stretch, dip);
+    let walks = (
+        Walk {
+            x,
+            z,
+            level: left_level,
+            ahead: LOOK_AHEAD * depth,
+            step: -1,
+            last: left_land.start,
+        },
+        Walk {
+            x,
+            z,
+            level: right_level,
+            ahead: LOOK_AHEAD * depth,
+            step: 1,
+            last: right_land.end - 1,
+        },
+    );
+    let (left, left_out) = walks.0.edge(dip.start)?;
+    let (right, right_out) = walks.1.edge(dip.end - 1)?;
+    let inside = left_out + 1..right_out;
     if inside.len() < FEWEST_SAMPLES {
         return Err(format!(
             "has {} samples below its lands, fewer than {FEWEST_SAMPLES}",
@@ -377,99 +380,68 @@ fn edges(heights: Heights<'_>, stretch: &Stretch, dip: &Range<usize>) -> Result<
     })
 }
 
-/// One side of a dip.
-#[derive(Debug, Clone, Copy)]
-struct Wall<'a> {
-    heights: Heights<'a>,
-    /// Level of its land, m.
+fn deepest_of(stretch: &Stretch, samples: &Range<usize>) -> f64 {
+    let begin = stretch.samples.start;
+    let depths = stretch
+        .depth
+        .get(samples.start - begin..samples.end - begin);
+    depths
+        .unwrap_or_default()
+        .iter()
+        .copied()
+        .fold(0.0, f64::max)
+}
+
+/// A way along the profile, outwards from a dip.
+struct Walk<'a> {
+    x: &'a [f64],
+    z: &'a [f64],
+    /// Level of the land, m.
     level: f64,
-    /// Depth below it from which the wall is continued in a straight line, m.
-    shoulder: f64,
+    /// How far is looked ahead, m.
+    ahead: f64,
+    /// -1 to the left, 1 to the right.
+    step: isize,
+    /// Last sample of the land.
+    last: usize,
 }
 
-impl Wall<'_> {
-    /// The edge, and the last sample inside of it.
-    ///
-    /// - `walk`: samples outwards from the dip, to the far end of the land
-    /// - `within`: samples of the dip on this side, and whether they are walked backwards to go inwards
-    fn edge(
-        self,
-        walk: impl Iterator<Item = usize>,
-        (within, backwards): (Range<usize>, bool),
-    ) -> Result<(Edge, usize), String> {
-        let (x, z, level) = (self.heights.x, self.heights.z, self.level);
-        let mut inner = if backwards {
-            within.end.saturating_sub(1)
-        } else {
-            within.start
-        };
-        let mut passed = None;
-        for index in walk {
-            if z[index] >= level {
-                let up = self.crossing(index, inner, level);
-                let at = match passed {
-                    // The land is reached before the straight line would reach it.
-                    Some((continued, from)) if nearer(from, continued, up) => continued,
-                    _ => up,
+impl Walk<'_> {
+    /// The edge on the way from a sample of the dip, and the sample on or just outside it.
+    fn edge(&self, from: usize) -> Result<(Edge, usize), String> {
+        let mut at = from;
+        while at != self.last {
+            let next = at.wrapping_add_signed(self.step);
+            if self.z[next] >= self.level {
+                let along = (self.level - self.z[at]) / (self.z[next] - self.z[at]);
+                let x = self.x[at] + along * (self.x[next] - self.x[at]);
+                return Ok((Edge { x, z: self.level }, next));
+            }
+            at = next;
+            if at != from && !self.rises(at) {
+                let edge = Edge {
+                    x: self.x[at],
+                    z: self.level,
                 };
-                let last = passed.map_or(inner, |(_, from)| from.0);
-                return Ok((Edge { x: at, z: level }, last));
+                return Ok((edge, at));
             }
-            if passed.is_none() && z[index] >= level - self.shoulder {
-                let near = self.crossing(index, inner, level - self.shoulder);
-                let deep = self.from_inside(inner, &within, backwards);
-                passed = deep.map(|deep| (2.0 * near - deep, (inner, x[inner])));
-            }
-            inner = index;
         }
-        match passed {
-            Some((continued, from)) => Ok((
-                Edge {
-                    x: continued,
-                    z: level,
-                },
-                from.0,
-            )),
-            None => Err("does not come up to its land".to_owned()),
-        }
+        Err("does not come up to its land".to_owned())
     }
 
-    /// Where the profile crosses a height between two neighbouring samples.
-    fn crossing(self, out: usize, inner: usize, height: f64) -> f64 {
-        let (x, z) = (self.heights.x, self.heights.z);
-        let t = (z[out] - height) / (z[out] - z[inner]);
-        x[out] + t.clamp(0.0, 1.0) * (x[inner] - x[out])
-    }
-
-    /// Where the wall, followed inwards from a sample, first lies two shoulders deep.
-    fn from_inside(self, start: usize, within: &Range<usize>, backwards: bool) -> Option<f64> {
-        let z = self.heights.z;
-        let height = self.level - 2.0 * self.shoulder;
-        let mut outer = start;
-        if z[outer] <= height {
-            let out = if backwards {
-                outer + 1
-            } else {
-                outer.checked_sub(1)?
-            };
-            return Some(self.crossing(out, outer, height));
-        }
-        let inwards: Box<dyn Iterator<Item = usize>> = if backwards {
-            Box::new((within.start..start).rev())
+    /// Whether the profile goes on rising beyond a sample.
+    fn rises(&self, at: usize) -> bool {
+        let x = self.x;
+        let far = if self.step > 0 {
+            let far = x.partition_point(|&p| p < x[at] + self.ahead);
+            far.max(at + LOOK_AHEAD_SAMPLES).min(self.last)
         } else {
-            Box::new(start + 1..within.end)
+            let far = x
+                .partition_point(|&p| p <= x[at] - self.ahead)
+                .saturating_sub(1);
+            far.min(at.saturating_sub(LOOK_AHEAD_SAMPLES))
+                .max(self.last)
         };
-        for index in inwards {
-            if z[index] <= height {
-                return Some(self.crossing(outer, index, height));
-            }
-            outer = index;
-        }
-        None
+        self.z[far] - self.z[at] >= LEVEL_OFF.tan() * (x[far] - x[at]).abs()
     }
-}
-
-/// Whether a continued wall ends before the place where the land is reached, seen from a sample inside.
-fn nearer(from: (usize, f64), continued: f64, up: f64) -> bool {
-    (continued - from.1).abs() < (up - from.1).abs()
 }

@@ -19,6 +19,8 @@ const SUSPECT_FROM: f64 = 45.0 * std::f64::consts::PI / 180.0;
 const SUSPECT_TO: f64 = 80.0 * std::f64::consts::PI / 180.0;
 /// when they are straight within this fraction of the depth.
 const STRAIGHT: f64 = 0.02;
+/// The two may differ by this much, rad: the two sides of real tips do (common practice, no source).
+const ALIKE: f64 = 10.0 * std::f64::consts::PI / 180.0;
 /// A flank that may show a tip ends where it is flatter than this, rad.
 const FLAT: f64 = 5.0 * std::f64::consts::PI / 180.0;
 
@@ -44,7 +46,7 @@ pub(super) struct Half<'a> {
 pub(super) enum Grounds {
     /// The stated tip cannot show steeper ones.
     Stated,
-    /// No tip is stated, and both flanks are straight and equally steep.
+    /// No tip is stated, and both flanks are straight and alike.
     Suspected,
 }
 
@@ -161,7 +163,7 @@ impl<'a> Half<'a> {
     }
 }
 
-/// What counts as steep where both walls are straight and equally steep, as a tip would show them.
+/// What counts as steep where both walls are straight and alike, as a tip would show them.
 fn suspect(heights: Heights<'_>, edges: &Edges, stated: Stated) -> Option<Steep> {
     let read = WallCurves::new(heights, edges, &[], stated).as_read;
     let numbers = TrenchNumbers::new(&read, Line::through(edges))?;
@@ -170,7 +172,7 @@ fn suspect(heights: Heights<'_>, edges: &Edges, stated: Stated) -> Option<Steep>
         (SUSPECT_FROM..SUSPECT_TO).contains(&wall.angle) && wall.rms <= STRAIGHT * numbers.depth
     });
     let [left, right] = walls.map(|wall| wall.angle);
-    (suspicious && (left - right).abs() <= ANGLE_MARGIN).then(|| Steep {
+    (suspicious && (left - right).abs() <= ALIKE).then(|| Steep {
         begin: left.min(right) - ANGLE_MARGIN,
         go_on: FLAT,
         is_inverted: stated.is_inverted,

@@ -15,12 +15,24 @@ mod corrections_tests;
 mod flanks;
 mod groove_problem;
 mod groove_section;
+#[cfg(test)]
+mod groove_traces_tests;
 mod grooves;
 mod half;
+<<<<<<< HEAD
 mod lands;
 mod levelling;
 mod lid;
 mod order_statistics;
+=======
+#[cfg(test)]
+mod half_tests;
+#[cfg(test)]
+mod hostile_traces_tests;
+mod lid;
+#[cfg(test)]
+mod lid_tests;
+>>>>>>> groove
 mod profile;
 mod profile_filter;
 #[cfg(test)]

@@ -36,8 +36,8 @@ pub(super) fn steps(
 fn groove_step(drawing: &Drawing<'_>, numbers: &TrenchNumbers) -> Step {
     let edges = &drawing.walls.edges;
     let text = format!(
-        "groove {} of {}: from {} to {}, {} deep below the line through its edges, which are where its \
-         walls come up to the median height of each land",
+        "groove {} of {}: from {} to {}, {} deep below the line through its edges, which are where the \
+         surface comes up to the median height of the nearby land, or levels off below it",
         drawing.groove.number,
         drawing.ground.grooves.len(),
         format_length(edges.left.x),
@@ -218,7 +218,7 @@ fn flank_warning(drawing: &Drawing<'_>) -> Option<Warning> {
             places(drawing, flanks)
         ),
         Grounds::Suspected => format!(
-            "both flanks are straight and equally steep ({}): the cone of a stylus reads so whatever the \
+            "both flanks are straight and alike ({}): the cone of a stylus reads so whatever the \
              wall",
             places(drawing, flanks)
         ),

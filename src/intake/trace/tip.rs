@@ -247,10 +247,10 @@ mod tests {
         };
         let x: Vec<f64> = (0..400).map(|i| f64::from(i) * 0.25e-6).collect();
         let wall = |&p: &f64| {
-            if p < 30.1e-6 || p > 79.9e-6 {
-                0.0
-            } else {
+            if (30.1e-6..=79.9e-6).contains(&p) {
                 -10e-6
+            } else {
+                0.0
             }
         };
         let surface: Vec<f64> = x.iter().map(wall).collect();

@@ -31,6 +31,8 @@ pub struct WallNumbers {
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct TrenchNumbers {
     /// From edge to edge, m.
+    pub opening_width: f64,
+    /// Between the straight lines through the walls, at the lands, m.
     pub top_width: f64,
     /// At half of the largest depth, m.
     pub middle_width: f64,
@@ -38,7 +40,7 @@ pub struct TrenchNumbers {
     pub bottom_width: f64,
     /// Largest depth, m.
     pub depth: f64,
-    /// Mean depth over the middle third of the top width, m.
+    /// Mean depth over the middle third of the opening, m.
     pub floor_depth: f64,
     /// Left wall.
     pub left_wall: WallNumbers,
@@ -46,7 +48,7 @@ pub struct TrenchNumbers {
     pub right_wall: WallNumbers,
     /// Middle width less the mean of top and bottom width, m: positive for bowed walls.
     pub bow: f64,
-    /// Largest depth over top width.
+    /// Largest depth over opening width.
     pub aspect_ratio: f64,
     /// Area below the line through the edges, m^2.
     pub area: f64,
@@ -62,8 +64,8 @@ impl TrenchNumbers {
         let depths: Vec<Point> = walls.iter().map(|&[x, z]| [x, base.at(x) - z]).collect();
         let depth = depths.iter().fold(0.0, |d: f64, p| d.max(p[1]));
         let (first, last) = (depths.first()?[0], depths.last()?[0]);
-        let top_width = last - first;
-        if !(depth > 0.0 && top_width > 0.0) {
+        let opening_width = last - first;
+        if !(depth > 0.0 && opening_width > 0.0) {
             return None;
         }
         let mirrored: Vec<Point> = depths.iter().rev().map(|&[x, d]| [-x, d]).collect();
@@ -76,10 +78,12 @@ impl TrenchNumbers {
         };
         let half = |wall: &[Point]| first_at(wall, &[0.5 * depth]).first().copied();
         let middle_width = -half(&mirrored)? - half(&depths)?;
+        let top_width = right_wall.top - left_wall.top;
         let bottom_width = (right_wall.foot - left_wall.foot).max(0.0);
-        let third = top_width / 3.0;
+        let third = opening_width / 3.0;
         let points = shape_fits::along(&depths);
         Some(Self {
+            opening_width,
             top_width,
             middle_width,
             bottom_width,
@@ -88,7 +92,7 @@ impl TrenchNumbers {
             left_wall,
             right_wall,
             bow: middle_width - 0.5 * (top_width + bottom_width),
-            aspect_ratio: depth / top_width,
+            aspect_ratio: depth / opening_width,
             area: area_between(&depths, first, last),
             koh: shape_fits::koh(&points),
             isotropic: shape_fits::isotropic(&points),

@@ -15,7 +15,7 @@ use crate::units::{format_length, format_percent, format_significant};
 use crate::warning::{Code, Warning};
 
 /// Blocks each way on which the direction is found, and the plane.
-const DIRECTION_BLOCKS: usize = 1024;
+const DIRECTION_BLOCKS: usize = 512;
 const PLANE_BLOCKS: usize = 256;
 /// Fewest points each way for a direction, and with a stated one.
 const LEAST_POINTS: usize = 8;

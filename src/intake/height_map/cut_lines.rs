@@ -3,11 +3,16 @@
 //! Heights between points are interpolated bilinearly. Nearer methods need more neighbours, so that a
 //! missing point would spread, and they overshoot beside steep flanks.
 
+use rayon::iter::ParallelIterator;
+use rayon::slice::ParallelSlice;
+
 use super::surface::HeightMap;
 use crate::geometry::Point;
 
 /// Weight below which a neighbour does not count, so that a sample on a point needs that point only.
 const NO_WEIGHT: f64 = 1e-9;
+/// Places of a cut that one thread sums.
+const PLACES_AT_A_TIME: usize = 64;
 
 /// A frame with its middle on the middle of the map.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -148,24 +153,14 @@ pub(super) fn line_mean(
     stations: &[f64],
     distances: &[f64],
 ) -> LineMean {
-    let mut sums = vec![[0.0, 0.0, 0.0]; distances.len()];
-    let mut missing = 0;
-    for &station in stations {
-        for (sum, &distance) in sums.iter_mut().zip(distances) {
-            let point = frame.point(station, distance);
-            let height = interpolated(map, point);
-            if height.is_finite() {
-                let level = height - plane[0] - plane[1] * point[0] - plane[2] * point[1];
-                // Welford's update keeps small deviations of large heights.
-                sum[2] += 1.0;
-                let step = level - sum[0];
-                sum[0] += step / sum[2];
-                sum[1] += step * (level - sum[0]);
-            } else {
-                missing += 1;
-            }
-        }
-    }
+    // Each place is summed by one thread in the order of the lines, so that results do not depend on the
+    // number of threads.
+    let parts: Vec<(Vec<PlaceSum>, usize)> = distances
+        .par_chunks(PLACES_AT_A_TIME)
+        .map(|distances| sums_of_lines(map, plane, frame, stations, distances))
+        .collect();
+    let missing = parts.iter().map(|(_, missing)| missing).sum();
+    let sums: Vec<PlaceSum> = parts.into_iter().flat_map(|(sums, _)| sums).collect();
     let filled = sums.iter().filter(|sum| sum[2] > 0.0);
     let fewest = filled.map(|sum| sum[2] as usize).min().unwrap_or(0);
     let (squares, freedoms) = sums
@@ -186,6 +181,38 @@ pub(super) fn line_mean(
     }
 }
 
+/// Mean, sum of squared deviations, and number of samples at a place of the cut.
+type PlaceSum = [f64; 3];
+
+/// Sums over the lines at some places, and the samples that are missing.
+fn sums_of_lines(
+    map: &HeightMap,
+    plane: [f64; 3],
+    frame: &CutFrame,
+    stations: &[f64],
+    distances: &[f64],
+) -> (Vec<PlaceSum>, usize) {
+    let mut sums = vec![[0.0; 3]; distances.len()];
+    let mut missing = 0;
+    for &station in stations {
+        for (sum, &distance) in sums.iter_mut().zip(distances) {
+            let point = frame.point(station, distance);
+            let height = interpolated(map, point);
+            if height.is_finite() {
+                let level = height - plane[0] - plane[1] * point[0] - plane[2] * point[1];
+                // Welford's update keeps small deviations of large heights.
+                sum[2] += 1.0;
+                let step = level - sum[0];
+                sum[0] += step / sum[2];
+                sum[1] += step * (level - sum[0]);
+            } else {
+                missing += 1;
+            }
+        }
+    }
+    (sums, missing)
+}
+
 /// Height between the points of the map; NaN where a neighbour with weight is missing.
 fn interpolated(map: &HeightMap, point: Point) -> f64 {
     let place = |axis: usize| {
@@ -195,15 +222,27 @@ fn interpolated(map: &HeightMap, point: Point) -> f64 {
         (cell, position - cell as f64)
     };
     let ((column, part_x), (row, part_y)) = (place(0), place(1));
-    let corners = [
-        (0, 0, (1.0 - part_x) * (1.0 - part_y)),
-        (1, 0, part_x * (1.0 - part_y)),
-        (0, 1, (1.0 - part_x) * part_y),
-        (1, 1, part_x * part_y),
-    ];
-    corners
-        .into_iter()
-        .filter(|(_, _, weight)| *weight > NO_WEIGHT)
-        .map(|(right, up, weight)| weight * map.height(column + right, row + up))
-        .sum()
+    let start = row * map.size[0] + column;
+    let beside = |row_start: usize| {
+        let left = map.heights.get(row_start).copied().unwrap_or(f64::NAN);
+        if part_x <= NO_WEIGHT {
+            return left;
+        }
+        let right = map.heights.get(row_start + 1).copied().unwrap_or(f64::NAN);
+        if part_x >= 1.0 - NO_WEIGHT {
+            return right;
+        }
+        left + part_x * (right - left)
+    };
+    let lower = if part_y >= 1.0 - NO_WEIGHT {
+        0.0
+    } else {
+        (1.0 - part_y) * beside(start)
+    };
+    let upper = if part_y <= NO_WEIGHT {
+        0.0
+    } else {
+        part_y * beside(start + map.size[0])
+    };
+    lower + upper
 }

@@ -186,27 +186,36 @@ fn mark_missing(
 impl Columns {
     /// Adds one stored number of an axis as a coordinate.
     fn push(&mut self, place: usize, value: f64, axis: &Axis) {
-        let coordinate = value.mul_add(axis.increment, axis.offset);
-        let coordinate = if coordinate.is_finite() {
-            coordinate
-        } else {
-            f64::NAN
-        };
         if let Some(column) = self.axes.get_mut(place) {
-            column.push(coordinate);
+            column.push(coordinate(value, axis));
         }
     }
 
     /// Adds whole records.
     fn push_records(&mut self, bytes: &[u8], record: usize, stored: &[usize], axes: &[Axis; 3]) {
-        for record in bytes.chunks_exact(record) {
-            let mut rest = record;
-            for &place in stored {
-                let number = axes[place].number;
-                self.push(place, number.decode(rest), &axes[place]);
-                rest = rest.get(number.bytes()..).unwrap_or_default();
+        let mut start = 0;
+        for &place in stored {
+            let axis = &axes[place];
+            let end = start + axis.number.bytes();
+            let numbers = bytes.chunks_exact(record).map(|record| {
+                let field = record.get(start..end).unwrap_or_default();
+                coordinate(axis.number.decode(field), axis)
+            });
+            if let Some(column) = self.axes.get_mut(place) {
+                column.extend(numbers);
             }
+            start = end;
         }
+    }
+}
+
+/// The coordinate of a stored number; NaN where it is not finite.
+fn coordinate(value: f64, axis: &Axis) -> f64 {
+    let coordinate = value * axis.increment + axis.offset;
+    if coordinate.is_finite() {
+        coordinate
+    } else {
+        f64::NAN
     }
 }
 

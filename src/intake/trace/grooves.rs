@@ -27,6 +27,9 @@ const NOISES: f64 = 5.0;
 const SHALLOWEST: f64 = 0.05;
 /// Fraction of the deepest place of its stretch at which a dip begins.
 const DIP: f64 = 0.1;
+/// Fraction of the depth at which a dip begins to which a profile must come back up between two dips:
+/// noise on a wall would part them otherwise.
+const COMES_BACK: f64 = 0.5;
 /// A groove is at least this deep, m: an atom.
 const ATOM: f64 = 1e-10;
 /// Area above the lands over area below them from which a trace shows ridges.
@@ -275,14 +278,18 @@ fn dips(stretch: &Stretch, needed: f64) -> Vec<Range<usize>> {
     let deepest = stretch.depth.iter().copied().fold(0.0, f64::max);
     let begins = (DIP * deepest).max(0.5 * needed);
     let mut dips: Vec<Range<usize>> = Vec::new();
+    // Samples since the last dip that came back up.
+    let mut up = 0;
     for (index, &depth) in stretch.depth.iter().enumerate() {
         if depth <= begins {
+            up += usize::from(depth <= COMES_BACK * begins);
             continue;
         }
         match dips.last_mut() {
-            Some(last) if index - last.end < FEWEST_SAMPLES => last.end = index + 1,
+            Some(last) if up < FEWEST_SAMPLES => last.end = index + 1,
             _ => dips.push(index..index + 1),
         }
+        up = 0;
     }
     let depth_of = |dip: &Range<usize>| {
         stretch.depth[dip.clone()]

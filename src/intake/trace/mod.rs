@@ -19,20 +19,16 @@ mod groove_section;
 mod groove_traces_tests;
 mod grooves;
 mod half;
-<<<<<<< HEAD
-mod lands;
-mod levelling;
-mod lid;
-mod order_statistics;
-=======
 #[cfg(test)]
 mod half_tests;
 #[cfg(test)]
 mod hostile_traces_tests;
+mod lands;
+mod levelling;
 mod lid;
 #[cfg(test)]
 mod lid_tests;
->>>>>>> groove
+mod order_statistics;
 mod profile;
 mod profile_filter;
 #[cfg(test)]

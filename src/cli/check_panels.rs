@@ -47,9 +47,12 @@ pub(super) fn check_picture(
         .map(|w| w.message.clone())
         .collect();
     for section in &document.sections {
-        let of = |text: &str| match single {
-            true => text.to_owned(),
-            false => format!("channel {}: {text}", section.number),
+        let of = |text: &str| {
+            if single {
+                text.to_owned()
+            } else {
+                format!("channel {}: {text}", section.number)
+            }
         };
         notes.extend(section.steps.iter().map(|s| of(s.text)));
         warnings.extend(section.warnings.iter().map(|w| of(&w.message)));

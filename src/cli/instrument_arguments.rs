@@ -388,9 +388,8 @@ fn kinds_of(name: &str) -> &'static [Kind] {
     let is_in = |rows: &[Row]| rows.iter().any(|row| row.0 == name);
     match name {
         "name" | "simplify" => &[Kind::Trace, Kind::Map, Kind::Image],
-        "y-step" => &[Kind::Map],
+        "y-step" | "no-plane" => &[Kind::Map],
         "repeat" | "lid-trace" | "lid-offset" => &[Kind::Trace],
-        "no-plane" => &[Kind::Map],
         "tilt-corrected" | "allow-large" => &[Kind::Image],
         _ if is_in(&MAP) => &[Kind::Map],
         _ if is_in(&PICTURE) => &[Kind::Image],

@@ -31,13 +31,13 @@ struct Request {
     file: PathBuf,
     read: ReadOptions,
     settings: Vec<(String, String)>,
+    /// Where the section file goes, as typed.
     output: Option<PathBuf>,
-    to_standard_output: bool,
     pictures: Vec<(PathBuf, PictureFormat)>,
     heights: Option<PathBuf>,
     solves: bool,
-    json: bool,
-    ascii: bool,
+    /// `None` for one JSON object.
+    text: Option<TextOptions>,
     quiet: bool,
     deny_warnings: bool,
 }
@@ -71,19 +71,19 @@ impl Request {
         if read.as_kind.is_none() {
             read.as_kind = SectionKind::from_word(kind.word());
         }
-        let typed = matches.get_one::<PathBuf>("output");
         Ok(Self {
             kind,
             file: input::file(matches),
             read,
             settings: settings(matches),
-            output: output::target(matches),
-            to_standard_output: typed.is_some_and(|path| path == Path::new("-")),
+            output: matches.get_one::<PathBuf>("output").cloned(),
             pictures: output::pictures(matches, "picture")?,
             heights: matches.get_one::<PathBuf>("heights").cloned(),
             solves: !matches.get_flag("no-solve"),
-            json: matches.get_flag("json"),
-            ascii: matches.get_flag("ascii"),
+            text: (!matches.get_flag("json")).then_some(TextOptions {
+                ascii: matches.get_flag("ascii"),
+                verbose: false,
+            }),
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
         })
@@ -93,13 +93,18 @@ impl Request {
     fn check_targets(&self) -> Result<(), Failure> {
         let pictures = self.pictures.iter().map(|(path, _)| path.as_path());
         let targets: Vec<&Path> = self
-            .output
-            .as_deref()
+            .section_target()
             .into_iter()
             .chain(self.heights.as_deref())
             .chain(pictures)
             .collect();
         Ok(check_targets(&targets, &self.inputs())?)
+    }
+
+    /// The section file, where it is a file.
+    fn section_target(&self) -> Option<&Path> {
+        let path = self.output.as_deref();
+        path.filter(|path| *path != Path::new("-"))
     }
 
     /// Every file that is read, so that none is written over.
@@ -198,20 +203,15 @@ impl Request {
                 ));
             }
         }
-        let options = TextOptions {
-            ascii: self.ascii,
-            verbose: false,
+        let text = match self.text {
+            None => report::reading_json(&document).map_err(Failure::not_printed)?,
+            Some(options) => report::reading_text(&document, options),
         };
-        let text = if self.json {
-            report::reading_json(&document).map_err(Failure::not_printed)?
-        } else {
-            report::reading_text(&document, options)
-        };
-        let text = if self.to_standard_output {
+        let text = if self.output.as_deref() == Some(Path::new("-")) {
             if !self.quiet {
                 output::talk(&text);
             }
-            self.section_text(solved)?
+            Self::section_text(solved)?
         } else {
             text
         };
@@ -232,7 +232,7 @@ impl Request {
     }
 
     /// The section file for standard output.
-    fn section_text(&self, solved: &[Solved]) -> Result<String, Failure> {
+    fn section_text(solved: &[Solved]) -> Result<String, Failure> {
         match solved {
             [one] => Ok(one.section_file()),
             several => Err(Failure::usage(
@@ -247,12 +247,12 @@ impl Request {
 
     /// Section files, numbered where there are several.
     fn section_files(&self, solved: &[Solved]) -> Vec<(PathBuf, Vec<u8>)> {
-        let Some(path) = &self.output else {
+        let Some(path) = self.section_target() else {
             return Vec::new();
         };
         let file = |(index, one): (usize, &Solved)| {
             let path = match solved.len() {
-                1 => path.clone(),
+                1 => path.to_owned(),
                 _ => numbered(path, index + 1),
             };
             (path, one.section_file().into_bytes())

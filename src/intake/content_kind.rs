@@ -8,7 +8,7 @@ use super::read_error::{Fault, ReadProblem};
 use super::source_text::SourceText;
 use super::trace::{TableKind, table_kind};
 
-/// FileContent of a file, decoded where it is text.
+/// What is in a file, decoded where it is text.
 #[derive(Debug)]
 pub(crate) enum FileContent {
     /// A section file, an outline in columns, or a drawing.

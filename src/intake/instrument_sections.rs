@@ -68,17 +68,15 @@ impl InstrumentReading {
 
     /// The sections, in the order of the cuts and along the trace.
     pub fn sections(&self) -> Vec<Section> {
-        match &self.data {
-            InstrumentData::Micrograph(picture) => vec![self.of_picture(picture)],
-            _ => {
-                let several = self.traces().iter().map(TraceReading::len).sum::<usize>() > 1;
-                let grooves = |trace: &TraceReading| {
-                    let of = |groove| self.of_groove(trace, groove, several);
-                    trace.grooves.iter().map(of).collect::<Vec<_>>()
-                };
-                self.traces().iter().flat_map(grooves).collect()
-            }
+        if let InstrumentData::Micrograph(picture) = &self.data {
+            return vec![self.of_picture(picture)];
         }
+        let several = self.traces().iter().map(TraceReading::len).sum::<usize>() > 1;
+        let grooves = |trace: &TraceReading| {
+            let of = |groove| self.of_groove(trace, groove, several);
+            trace.grooves.iter().map(of).collect::<Vec<_>>()
+        };
+        self.traces().iter().flat_map(grooves).collect()
     }
 
     /// The only section.

@@ -171,6 +171,10 @@ pub fn read_section(path: &Path, options: &ReadOptions) -> Result<Section, ReadE
 /// let section = section_from_bytes(table, "table.csv", &ReadOptions::default()).unwrap();
 /// assert!((section.outline.area() / 5e-9 - 1.0).abs() < 1e-12);
 /// ```
+#[expect(
+    clippy::needless_pass_by_value,
+    reason = "callers hand over what they read and are done with it"
+)]
 pub fn section_from_bytes(
     bytes: Vec<u8>,
     path: &str,

@@ -308,7 +308,7 @@ fn try_all(bytes: &[u8]) {
                 unit,
                 svg_scale,
                 allow_any_size: true,
-                keep_non_finite: false,
+                ..ReadOptions::default()
             };
             let keep = ReadOptions {
                 keep_non_finite: true,

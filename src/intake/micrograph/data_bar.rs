@@ -15,6 +15,8 @@ const BAR_SHARE: [f64; 2] = [0.015, 0.25];
 /// Least share of a row that holds the commonest value: in a bar, and at most in the rows above it.
 const DRAWN_SHARE: f64 = 0.5;
 const SCANNED_SHARE: f64 = 0.3;
+/// Rows in and below a bar that may be otherwise: a strip of the picture below a framed bar, large letters.
+const MOST_MISSED: usize = 4;
 /// Rows above the bar that are looked at.
 const ROWS_ABOVE: usize = 16;
 /// Fewest rows and columns that are used.
@@ -136,15 +138,19 @@ fn bar_rows(grey: &Grey) -> Option<u32> {
     let height = grey.height;
     let most = (BAR_SHARE[1] * height as f64) as usize;
     let mut sorted = Vec::new();
-    let mut bar = 0;
-    for y in (height.saturating_sub(most + 1)..height).rev() {
+    let (mut bar, mut missed) = (0, 0);
+    for (count, y) in (height.saturating_sub(most + 1)..height).rev().enumerate() {
         let (_, share) = commonest(grey.row(y), &mut sorted);
-        if share < DRAWN_SHARE {
+        if share >= DRAWN_SHARE {
+            (bar, missed) = (count + 1, 0);
+        } else {
+            missed += 1;
+        }
+        if missed > MOST_MISSED {
             break;
         }
-        bar += 1;
     }
-    if (bar as f64) < BAR_SHARE[0] * height as f64 || bar > most || bar < 3 {
+    if (bar as f64) < BAR_SHARE[0] * height as f64 || bar > most || bar <= MOST_MISSED {
         return None;
     }
     let top = height - bar;
@@ -193,6 +199,21 @@ mod tests {
         let found = part(&scan_with_bar(0), None, None).unwrap();
         assert_eq!(found.crop.height, 120);
         assert!(found.warning.is_none());
+    }
+
+    #[test]
+    fn a_framed_bar_with_a_strip_of_the_picture_below_is_found() {
+        let mut grey = scan_with_bar(16);
+        let scan = scan_with_bar(0);
+        let strip = 100 * (120 - 2);
+        grey.values[strip..].copy_from_slice(&scan.values[strip..]);
+        let found = part(&grey, None, None).unwrap();
+        assert_eq!(found.crop.height, 104);
+        assert!(
+            found.step.text.contains("last 16 rows"),
+            "{}",
+            found.step.text
+        );
     }
 
     #[test]

@@ -30,7 +30,7 @@ pub(super) struct Edge {
 pub(super) enum EdgeProblem {
     /// The level of the contour does not lie between the two.
     LevelOutside,
-    /// At the outer level the section reaches the border.
+    /// At the outer level the section reaches the border of what is looked at.
     ReachesBorder,
     /// At the outer level the section runs together with another region.
     Joins,
@@ -43,7 +43,7 @@ impl EdgeProblem {
     pub(super) fn text(self) -> &'static str {
         match self {
             Self::LevelOutside => "the level of the contour does not lie between the two levels",
-            Self::ReachesBorder => "at the outer level the section reaches the border",
+            Self::ReachesBorder => "at the outer level the section runs out into its surroundings",
             Self::Joins => "at the outer level the section runs together with another region",
             Self::Vanishes => "at the inner level nothing of the section is left",
         }

@@ -38,11 +38,6 @@ impl Histogram {
         Self { counts, total }
     }
 
-    /// Number of pixels.
-    pub(super) fn total(&self) -> u64 {
-        self.total
-    }
-
     /// Counts that occur, with how often, rising.
     fn present(&self) -> impl Iterator<Item = (f64, f64)> + '_ {
         self.counts

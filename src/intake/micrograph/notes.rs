@@ -220,8 +220,8 @@ impl Notes<'_> {
         let excess = perimeter_excess(traced);
         if excess > PERIMETER_EXCESS {
             let message = format!(
-                "noise of neighbouring pixels, {} of the contrast, makes the contour rough: its perimeter is about \
-                 {} too long",
+                "noise of neighbouring pixels ({} of the contrast) and the lattice of pixels make the contour rough: \
+                 its perimeter is about {} too long",
                 format_percent(traced.sides.noise / traced.sides.contrast(), 2),
                 format_percent(excess, 2)
             );

@@ -15,6 +15,8 @@ pub(super) const FIRST_DISTANCE: u8 = 3;
 pub(super) const LAST_DISTANCE: u8 = 80;
 /// Width of the bands, pixels.
 const BAND: u8 = 9;
+/// Fewest pixels of a band, unless there are no more.
+const LEAST_IN_BAND: u64 = 64;
 
 /// Levels beside the edge, in counts.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -110,16 +112,31 @@ pub(super) fn measure(grey: &Grey, mask: &[u8], level: Level, distance: u8) -> O
             .filter(|((_, m), d)| **m == 1 && **d >= inner)
             .map(|((v, _), _)| *v),
     );
-    // Where walls are thin the band moves towards the edge until it holds as many pixels as a ring of it.
-    let wall = (1..=distance).rev().find_map(|from| {
-        let band = from..=from.saturating_add(BAND);
-        let histogram = Histogram::of(
-            pixels()
-                .filter(|((v, m), d)| **m == 0 && band.contains(*d) && !level.is_fluid(**v))
-                .map(|((v, _), _)| *v),
-        );
-        (histogram.total() >= 64 || from == 1 && histogram.total() > 0).then_some(histogram)
-    })?;
+    // Where walls are thin the band moves towards the edge until it holds enough pixels.
+    let is_wall = |v: u16, m: u8| m == 0 && !level.is_fluid(v);
+    let mut rings = [0_u64; 256];
+    for ((v, m), d) in pixels() {
+        if is_wall(*v, *m)
+            && let Some(ring) = rings.get_mut(usize::from(*d))
+        {
+            *ring += 1;
+        }
+    }
+    let band = |from: u8| from..=from.saturating_add(BAND);
+    let holds = |from: u8| -> u64 {
+        let from_to = band(from);
+        let rings = rings.get(usize::from(*from_to.start())..=usize::from(*from_to.end()));
+        rings.unwrap_or_default().iter().sum()
+    };
+    let from = (1..=distance)
+        .rev()
+        .find(|from| holds(*from) >= LEAST_IN_BAND);
+    let band = band(from.unwrap_or(1));
+    let wall = Histogram::of(
+        pixels()
+            .filter(|((v, m), d)| is_wall(**v, **m) && band.contains(*d))
+            .map(|((v, _), _)| *v),
+    );
     let noise = noise(grey, mask, &distances, inner);
     Some(Sides {
         fluid: fluid.quantile(0.5)?,

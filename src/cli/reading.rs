@@ -321,7 +321,11 @@ impl Solved {
         self.alternatives = alternatives(&self.checked.section, &flow, &options);
         self.conductance = Some(ConductanceRecord {
             value: flow.conductance,
-            proven: flow.bracket.as_ref().ok().copied(),
+            proven: flow
+                .bracket
+                .as_ref()
+                .ok()
+                .map(|proven| [proven.low, proven.high]),
             within_reach: within,
         });
         Ok(())

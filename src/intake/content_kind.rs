@@ -8,6 +8,9 @@ use super::read_error::{Fault, ReadProblem};
 use super::source_text::SourceText;
 use super::trace::{TableKind, table_kind};
 
+/// Fewest rows of a table that is taken for a trace or a map without being asked to.
+const SMALL_TABLE: usize = 12;
+
 /// What is in a file, decoded where it is text.
 #[derive(Debug)]
 pub(crate) enum FileContent {
@@ -70,6 +73,8 @@ fn text_content(source: SourceText) -> Result<FileContent, Fault> {
         return Ok(FileContent::Section(SectionKind::SectionFile, source));
     }
     match table_kind(text) {
+        // So few rows may as well be a polygon with a mistake in it, which its own reader names.
+        Some(TableKind::Trace | TableKind::Matrix | TableKind::Points) if is_small(text) => {}
         Some(TableKind::Trace) => return Ok(FileContent::Trace(source)),
         Some(TableKind::Matrix | TableKind::Points) => return Ok(FileContent::Map(source)),
         Some(TableKind::Outline) => {
@@ -94,6 +99,14 @@ fn text_content(source: SourceText) -> Result<FileContent, Fault> {
         None,
         ReadProblem::UnknownContent,
     ))
+}
+
+/// Whether a table has fewer than a dozen rows and nothing but column names above them.
+fn is_small(text: &str) -> bool {
+    let lines = text.lines().map(str::trim).filter(|line| !line.is_empty());
+    let rows = lines.clone().filter(|line| looks_numeric(line)).count();
+    let above = lines.take_while(|line| !looks_numeric(line)).count();
+    rows < SMALL_TABLE && above <= 1
 }
 
 /// Whether a line is a table head or begins with a key and an equals sign.

@@ -5,7 +5,6 @@
 use super::document::SourceRecord;
 use crate::geometry::Outline;
 use crate::measured::Estimate;
-use crate::proof::Bracket;
 use crate::warning::Warning;
 
 /// One thing that was decided or done.
@@ -51,7 +50,7 @@ pub struct ConductanceRecord {
     /// Best value, m^4.
     pub value: Estimate,
     /// Proven range for the outline as given, m^4.
-    pub proven: Option<Bracket>,
+    pub proven: Option<[f64; 2]>,
     /// Proven low value of the inner and high value of the outer section, m^4.
     pub within_reach: Option<[f64; 2]>,
 }

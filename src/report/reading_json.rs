@@ -146,7 +146,7 @@ struct ConductanceView {
 
 impl ConductanceView {
     fn new(record: &ConductanceRecord) -> Self {
-        let bounds = record.proven.map(|b| (b.low, b.high));
+        let bounds = record.proven.map(|[low, high]| (low, high));
         let value = || Quantity::estimate(record.value, "m^4");
         Self {
             quantity: value().between(bounds),

@@ -160,11 +160,12 @@ fn conductance(record: &ConductanceRecord, reason: Option<&str>) -> String {
         "K, best value".to_owned(),
         format!("{} m^4", significant(value.value, 6)),
     ]);
-    if let Some(proven) = record.proven {
+    if let Some([low, high]) = record.proven {
+        let width = 2.0 * (high - low) / (high + low);
         table.row([
             "K, proven".to_owned(),
-            range(proven.low, proven.high),
-            format!("{} wide", per_cent(proven.relative_width())),
+            range(low, high),
+            format!("{} wide", per_cent(width)),
         ]);
     }
     if let Some([low, high]) = record.within_reach {

@@ -107,7 +107,10 @@ fn grids_inputs_and_outputs_without_sense_are_refused_with_what_to_type() {
         ("--cells-across many", &["'many'", "--cells-across"]),
         ("--threads 0", &["1..=256"]),
         ("--threads 65535", &["1..=256"]),
-        ("--as picture", &["`picture`", "section, outline or svg"]),
+        (
+            "--as picture",
+            &["`picture`", "section, outline, svg, trace, map or image"],
+        ),
         ("--unit furlong", &["furlong"]),
         ("--unit 0um", &["0"]),
         ("--scale 1um", &["--scale is for drawings", "`outline`"]),

@@ -95,13 +95,18 @@ fn is_spike(
     }
     let window = &z[at - half..=at + half];
     let centre = z[at] - deviations[at];
-    let mut distances: Vec<f64> = window.iter().map(|z| (z - centre).abs()).collect();
-    if size <= weight * MAD_TO_SD * median(&mut distances) {
-        return false;
-    }
     let side = (half / 3).max(1);
     let left = median(&mut window[..side].to_vec());
     let right = median(&mut window[window.len() - side..].to_vec());
+    // On a flank the slope itself would count as scatter.
+    let slope = (right - left) / (window.len() - side) as f64;
+    let level = |k: usize| centre + slope * (k as f64 - half as f64);
+    let mut distances: Vec<f64> = (0..window.len())
+        .map(|k| (window[k] - level(k)).abs())
+        .collect();
+    if size <= weight * MAD_TO_SD * median(&mut distances) {
+        return false;
+    }
     (left - centre).abs() <= 0.5 * size && (right - centre).abs() <= 0.5 * size
 }
 

@@ -335,6 +335,21 @@ fn few_zones_warning(zones: usize, degree: u8) -> Warning {
     }
 }
 
+/// Shoulders without a level part.
+pub(super) fn crests_warning(ground: &Ground) -> Warning {
+    Warning {
+        code: Code::ReferenceResidual,
+        message: format!(
+            "no land is level: the lid is taken to lie on the crests of the {} shoulders, and the trace is levelled \
+             on them",
+            ground.zones().len()
+        ),
+        advice: "state where the lid lies: --land-zones, --lid left or right; measure farther beyond the channel"
+            .to_owned(),
+        numbers: vec![("depth_m", ground.depth)],
+    }
+}
+
 /// Spikes and gaps.
 pub(super) fn bridges(trace: &mut CorrectedTrace, scan: &Scan, options: &CorrectionOptions) {
     let of_kind = |kind| trace.changes.iter().filter(move |c| c.kind == kind);

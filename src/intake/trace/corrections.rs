@@ -74,6 +74,9 @@ pub fn correct(
     trace.lands = lands(&scan, ground.as_ref(), options)?;
     records::repeats(&mut trace, ground.as_ref());
     records::lands(&mut trace, ground.as_ref(), options);
+    if let Some(ground) = ground.as_ref().filter(|ground| ground.are_crests) {
+        trace.warnings.push(records::crests_warning(ground));
+    }
     let grooves = channels(&trace.lands, ground.as_ref(), options);
     take_reference(&mut trace, &scan, options, depth)?;
     trace.noise_sd = ground.as_ref().map_or(0.0, |ground| ground.noise);

@@ -30,6 +30,16 @@ const SLOPING: f64 = 0.25;
 /// A single hill whose flanks take more than this share of the trace from 25 to 75 % of its height is bow.
 const SLOW_WALL: f64 = 0.05;
 
+/// Neighbouring lands lie on one level within this share of the depth, as a median.
+const ALTERNATING: f64 = 0.5;
+
+/// The crest of a rounded land: what lies within this share of the depth of its highest sample.
+const CREST: f64 = 0.02;
+
+/// Walls beside rounded lands take at most this share of the trace from 25 to 75 % of the depth; a wave and
+/// a half over the whole trace takes a ninth.
+const CREST_WALL: f64 = 0.095;
+
 /// Samples of the thinned copy of a long trace.
 const THINNED: usize = 50_000;
 
@@ -63,6 +73,8 @@ pub(super) struct Ground {
     pub(super) narrowest: f64,
     /// Whether the trace both starts and ends below.
     pub(super) ends_low: bool,
+    /// Whether no land is level, so that the crests of the shoulders stand for them.
+    pub(super) are_crests: bool,
 }
 
 impl Ground {
@@ -212,9 +224,11 @@ pub(super) fn piecewise(knots: &[(f64, f64)], x: &[f64]) -> Vec<f64> {
 /// width of lands. Dust is higher than channels but narrow, ripple on a land is wide but low.
 fn survey(x: &[f64], z: &[f64], noise: f64) -> Result<Ground, TraceProblem> {
     let mut best: Option<(f64, Ground)> = None;
+    let mut on_crests = None;
     let mut first_problem = None;
     for threshold in swing_thresholds(z, noise) {
         match at_threshold(x, z, threshold) {
+            Ok(ground) if ground.are_crests => on_crests = on_crests.or(Some(ground)),
             Ok(ground) => {
                 let weight = ground.weight();
                 if best.as_ref().is_none_or(|(heaviest, _)| weight > *heaviest) {
@@ -224,7 +238,7 @@ fn survey(x: &[f64], z: &[f64], noise: f64) -> Result<Ground, TraceProblem> {
             Err(problem) => first_problem = first_problem.or(Some(problem)),
         }
     }
-    if let Some((_, ground)) = best {
+    if let Some(ground) = best.map(|(_, ground)| ground).or(on_crests) {
         return Ok(ground);
     }
     Err(first_problem.unwrap_or_else(|| {
@@ -287,6 +301,7 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
         lands.push(land);
     }
     let depth = median(&mut depths);
+    drop_floors(&mut lands, depth);
     if lands.len() < 2 {
         runs.retain(|run| run.is_finite());
         let length = x[x.len() - 1] - x[0];
@@ -303,25 +318,111 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
             height,
         });
     }
-    check_level(x, &lands, runs, depth)?;
-    check_rounded(x, z, &lands, depth)?;
-    Ok(described(x, &all, lands, depth))
+    if alternating(&lands, depth) {
+        return Err(TraceProblem::NoChannel {
+            relief: threshold.max(depth),
+            noise: noise_of_neighbours(z),
+        });
+    }
+    let wall = typical_wall(x, &runs);
+    let level = check_level(&lands, wall, depth).and_then(|()| check_rounded(x, z, &lands, depth));
+    let Err(problem) = level else {
+        return Ok(described(x, &all, lands, depth));
+    };
+    // Shoulders without a level part: a flat lid lies on their crests.
+    let crests = crests(x, z, &all, depth);
+    let is_fast = wall <= CREST_WALL * (x[x.len() - 1] - x[0]);
+    if !is_fast || crests.len() < lands.len() {
+        return Err(problem);
+    }
+    Ok(Ground {
+        are_crests: true,
+        ..described(x, &all, crests, depth)
+    })
 }
 
-/// Whether lands are wide against the walls beside them.
-fn check_level(
-    x: &[f64],
-    lands: &[Land],
-    mut runs: Vec<f64>,
-    depth: f64,
-) -> Result<(), TraceProblem> {
-    runs.retain(|run| run.is_finite());
+/// Drops lands that lie far below those beside them: ripple on the floor of a channel.
+fn drop_floors(lands: &mut Vec<Land>, depth: f64) {
+    let far = ALTERNATING * depth;
+    while lands.len() > 2 {
+        let below = |k: usize| {
+            let level = lands[k].line.level;
+            let before = k.checked_sub(1).map(|k| lands[k].line.level);
+            let after = lands.get(k + 1).map(|land| land.line.level);
+            let lower = before
+                .into_iter()
+                .chain(after)
+                .fold(f64::INFINITY, f64::min);
+            lower - level
+        };
+        let Some(worst) = (0..lands.len()).max_by(|&a, &b| below(a).total_cmp(&below(b))) else {
+            return;
+        };
+        // A negative or missing depth says nothing.
+        if !(below(worst) > far) {
+            return;
+        }
+        lands.remove(worst);
+    }
+}
+
+/// Whether every other land lies a good part of the depth lower: floors were taken for lands.
+fn alternating(lands: &[Land], depth: f64) -> bool {
+    let steps = lands.windows(2).map(|pair| {
+        let [a, b] = [pair[0].line, pair[1].line];
+        (a.level - b.level).abs()
+    });
+    let mut steps: Vec<f64> = steps.collect();
+    steps.len() > 2 && median(&mut steps) > ALTERNATING * depth
+}
+
+/// The top of each upper stretch: the samples around its highest one within [`CREST`] of the depth.
+fn crests(x: &[f64], z: &[f64], all: &[Stretch], depth: f64) -> Vec<Land> {
+    let crest = |stretch: &Stretch| {
+        let samples = stretch.from..stretch.to;
+        let top = samples.clone().max_by(|&a, &b| z[a].total_cmp(&z[b]))?;
+        let is_top = |k: &usize| z[*k] >= z[top] - CREST * depth;
+        let mut first = (stretch.from..=top).rev().take_while(is_top).last()?;
+        let mut last = (top..stretch.to).take_while(is_top).last()?;
+        while last + 1 < first + FEWEST_IN_ZONE + 1 {
+            if first == stretch.from && last + 1 == stretch.to {
+                return None;
+            }
+            first = first.saturating_sub(1).max(stretch.from);
+            last = (last + 1).min(stretch.to - 1);
+        }
+        let heights = &z[first..=last];
+        let zone = Zone {
+            from: x[first],
+            to: x[last],
+        };
+        Some(Land {
+            flat: zone,
+            zone,
+            line: Line {
+                middle: 0.5 * (zone.from + zone.to),
+                level: heights.iter().sum::<f64>() / heights.len() as f64,
+                slope: 0.0,
+                scatter: noise_of_neighbours(heights),
+            },
+        })
+    };
+    all.iter().filter(|s| s.high).filter_map(crest).collect()
+}
+
+/// How far walls take from 25 to 75 % of the depth, m.
+fn typical_wall(x: &[f64], runs: &[f64]) -> f64 {
+    let mut runs: Vec<f64> = runs.iter().copied().filter(|run| run.is_finite()).collect();
     let spacing = (x[x.len() - 1] - x[0]) / x.len() as f64;
-    let wall = if runs.is_empty() {
+    if runs.is_empty() {
         spacing
     } else {
         median(&mut runs).max(spacing)
-    };
+    }
+}
+
+/// Whether lands are wide against the walls beside them.
+fn check_level(lands: &[Land], wall: f64, depth: f64) -> Result<(), TraceProblem> {
     let mut widths: Vec<f64> = lands.iter().map(|l| l.flat.to - l.flat.from).collect();
     let level = median(&mut widths);
     if level < LEVEL_WIDTH * wall {
@@ -394,6 +495,7 @@ fn described(x: &[f64], all: &[Stretch], lands: Vec<Land>, depth: f64) -> Ground
         ridge_width: (!ridges.is_empty()).then(|| median(&mut ridges)),
         groove_width: median(&mut gaps),
         narrowest,
+        are_crests: false,
         ends_low: all.first().is_some_and(|s| !s.high) && all.last().is_some_and(|s| !s.high),
         lands,
     }
@@ -446,7 +548,13 @@ fn land_of(x: &[f64], z: &[f64], stretch: Stretch, low: f64) -> Option<Land> {
         from: xs[first],
         to: xs[last],
     };
-    let inset = BESIDE_WALL * (flat.to - flat.from);
+    // Too few samples would be left of a short one.
+    let is_short = last - first < 2 * FEWEST_IN_ZONE;
+    let inset = if is_short {
+        0.0
+    } else {
+        BESIDE_WALL * (flat.to - flat.from)
+    };
     let zone = Zone {
         from: flat.from + if stretch.from > 0 { inset } else { 0.0 },
         to: flat.to - if stretch.to < z.len() { inset } else { 0.0 },

@@ -195,7 +195,13 @@ fn take_reference(
     let x = &scan.profile.x;
     let (zones, option) = match &options.level {
         Levelling::Lands | Levelling::Line | Levelling::Local => {
-            (trace.lands.clone(), "--land-zones")
+            let is_stated = options.lands.is_some();
+            let option = if is_stated {
+                "--land-zones"
+            } else {
+                "the lands found"
+            };
+            (trace.lands.clone(), option)
         }
         Levelling::Zones(zones) => (checked_zones(scan, zones, "--level-on")?, "--level-on"),
         Levelling::Ends => (end_zones(x), "--level ends"),

@@ -38,7 +38,7 @@ const CREST: f64 = 0.02;
 
 /// Walls beside rounded lands take at most this share of the trace from 25 to 75 % of the depth; a wave and
 /// a half over the whole trace takes a ninth.
-const CREST_WALL: f64 = 0.095;
+const CREST_WALL: f64 = 0.08;
 
 /// Samples of the thinned copy of a long trace.
 const THINNED: usize = 50_000;
@@ -253,16 +253,24 @@ fn wall_run(x: &[f64], z: &[f64], crossing: usize, levels: (f64, f64)) -> f64 {
     let (low, high) = levels;
     let lower = low + 0.25 * (high - low);
     let upper = low + 0.75 * (high - low);
-    let side = |forwards: bool, wanted: &dyn Fn(f64) -> bool| {
-        let hit = if forwards {
-            (crossing..z.len()).find(|&k| wanted(z[k]))
+    // Between samples, since a wall may take few of them.
+    let side = |forwards: bool, level: f64, is_up: bool| {
+        let wanted = |z: f64| if is_up { z >= level } else { z <= level };
+        let (hit, before) = if forwards {
+            let hit = (crossing..z.len()).find(|&k| wanted(z[k]))?;
+            (hit, hit.checked_sub(1)?)
         } else {
-            (0..crossing).rev().find(|&k| wanted(z[k]))
+            let hit = (0..crossing).rev().find(|&k| wanted(z[k]))?;
+            (hit, hit + 1)
         };
-        hit.map(|k| x[k])
+        if before >= z.len() {
+            return None;
+        }
+        let share = (level - z[before]) / (z[hit] - z[before]);
+        Some(x[before] + share.clamp(0.0, 1.0) * (x[hit] - x[before]))
     };
     let falls = crossing > 0 && z.get(crossing).is_some_and(|&z1| z[crossing - 1] > z1);
-    let ends = [side(!falls, &|z| z >= upper), side(falls, &|z| z <= lower)];
+    let ends = [side(!falls, upper, true), side(falls, lower, false)];
     match ends {
         [Some(a), Some(b)] => (a - b).abs(),
         _ => f64::NAN,
@@ -341,7 +349,7 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
     })
 }
 
-/// Drops lands that lie far below those beside them: ripple on the floor of a channel.
+/// Drops lands that lie far below one beside them, the lowest first: ripple on the floor of a channel.
 fn drop_floors(lands: &mut Vec<Land>, depth: f64) {
     let far = ALTERNATING * depth;
     while lands.len() > 2 {
@@ -349,17 +357,15 @@ fn drop_floors(lands: &mut Vec<Land>, depth: f64) {
             let level = lands[k].line.level;
             let before = k.checked_sub(1).map(|k| lands[k].line.level);
             let after = lands.get(k + 1).map(|land| land.line.level);
-            let lower = before
-                .into_iter()
-                .chain(after)
-                .fold(f64::INFINITY, f64::min);
-            lower - level
+            let higher = before.into_iter().chain(after).fold(level, f64::max);
+            higher - level
         };
         let Some(worst) = (0..lands.len()).max_by(|&a, &b| below(a).total_cmp(&below(b))) else {
             return;
         };
         // A negative or missing depth says nothing.
-        if !(below(worst) > far) {
+        let deepest = below(worst);
+        if deepest.is_nan() || far.is_nan() || deepest <= far {
             return;
         }
         lands.remove(worst);

@@ -3,15 +3,15 @@
 use std::f64::consts::TAU;
 use std::fmt::Write as _;
 
-/// Numbers that look random and are the same on every run (SplitMix64; Steele, Lea, Flood 2014, from memory).
-pub struct Dice(u64);
+/// Numbers that look random and are the same on every run (`SplitMix64`; Steele, Lea, Flood 2014, from memory).
+pub(crate) struct Dice(u64);
 
 impl Dice {
-    pub fn new(seed: u64) -> Self {
+    pub(crate) fn new(seed: u64) -> Self {
         Self(seed)
     }
 
-    pub fn next(&mut self) -> u64 {
+    pub(crate) fn next(&mut self) -> u64 {
         self.0 = self.0.wrapping_add(0x9e37_79b9_7f4a_7c15);
         let mut z = self.0;
         z = (z ^ (z >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);
@@ -19,16 +19,16 @@ impl Dice {
         z ^ (z >> 31)
     }
 
-    pub fn between(&mut self, low: f64, high: f64) -> f64 {
+    pub(crate) fn between(&mut self, low: f64, high: f64) -> f64 {
         low + (high - low) * (self.next() >> 11) as f64 / (1_u64 << 53) as f64
     }
 
-    pub fn below(&mut self, n: usize) -> usize {
+    pub(crate) fn below(&mut self, n: usize) -> usize {
         (self.next() % n as u64) as usize
     }
 
     /// Of the normal distribution with standard deviation 1 (G. E. P. Box and M. E. Muller 1958).
-    pub fn normal(&mut self) -> f64 {
+    pub(crate) fn normal(&mut self) -> f64 {
         let (a, b) = (self.between(1e-300, 1.0), self.between(0.0, 1.0));
         (-2.0 * a.ln()).sqrt() * (TAU * b).cos()
     }
@@ -36,7 +36,7 @@ impl Dice {
 
 /// Shapes that a trace can hold: one depth for each place.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Kind {
+pub(crate) enum Kind {
     Rectangle,
     Trapezoid,
     Koh,
@@ -49,7 +49,7 @@ pub enum Kind {
     Triangle,
 }
 
-pub const KINDS: [Kind; 10] = [
+pub(crate) const KINDS: [Kind; 10] = [
     Kind::Rectangle,
     Kind::Trapezoid,
     Kind::Koh,
@@ -64,14 +64,14 @@ pub const KINDS: [Kind; 10] = [
 
 /// A channel, micrometres.
 #[derive(Debug, Clone, Copy)]
-pub struct Channel {
-    pub kind: Kind,
-    pub width: f64,
-    pub depth: f64,
+pub(crate) struct Channel {
+    pub(crate) kind: Kind,
+    pub(crate) width: f64,
+    pub(crate) depth: f64,
 }
 
 impl Channel {
-    pub fn random(kind: Kind, dice: &mut Dice) -> Self {
+    pub(crate) fn random(kind: Kind, dice: &mut Dice) -> Self {
         let width = dice.between(40.0, 400.0);
         let aspect = dice.between(0.1, 0.5);
         let depth = match kind {
@@ -85,7 +85,7 @@ impl Channel {
     }
 
     /// Depth at a distance from the middle of the lid; 0 outside.
-    pub fn depth_at(&self, x: f64) -> f64 {
+    pub(crate) fn depth_at(&self, x: f64) -> f64 {
         let (half, d) = (0.5 * self.width, self.depth);
         let from_edge = half - x.abs();
         if from_edge <= 0.0 {
@@ -93,11 +93,10 @@ impl Channel {
         }
         let u = x.abs() / half;
         match self.kind {
-            Kind::Rectangle => d,
+            Kind::Isotropic if from_edge < d => (d * d - (d - from_edge).powi(2)).sqrt(),
+            Kind::Rectangle | Kind::Isotropic => d,
             Kind::Trapezoid => d.min(from_edge * 75_f64.to_radians().tan()),
             Kind::Koh | Kind::KohV => d.min(from_edge * 2.0_f64.sqrt()),
-            Kind::Isotropic if from_edge < d => (d * d - (d - from_edge).powi(2)).sqrt(),
-            Kind::Isotropic => d,
             Kind::Gaussian => d * (-4.0 * u * u).exp() - d * (-4.0_f64).exp() * u * u,
             Kind::Parabola => d * (1.0 - u * u),
             Kind::Segment => {
@@ -110,13 +109,13 @@ impl Channel {
     }
 
     /// The true outline, micrometres: lid at zero, a point for every step of angle or place.
-    pub fn outline(&self) -> Vec<[f64; 2]> {
+    pub(crate) fn outline(&self) -> Vec<[f64; 2]> {
         let half = 0.5 * self.width;
         let n = 1500;
         let mut points = vec![[-half, 0.0]];
         for k in 0..=n {
             // Dense where curved walls end upright.
-            let x = -half * (TAU / 2.0 * k as f64 / n as f64).cos();
+            let x = -half * (TAU / 2.0 * f64::from(k) / f64::from(n)).cos();
             let inside = x.clamp(-half * (1.0 - 1e-9), half * (1.0 - 1e-9));
             points.push([inside, -self.depth_at(inside)]);
         }
@@ -127,19 +126,24 @@ impl Channel {
 
 /// What stands between a channel and its trace.
 #[derive(Debug, Clone, Copy, Default)]
-pub struct Trouble {
+pub(crate) struct Trouble {
     /// Slope of the part under the instrument.
-    pub tilt: f64,
+    pub(crate) tilt: f64,
     /// Height of an arch over the whole trace, micrometres.
-    pub bow: f64,
+    pub(crate) bow: f64,
     /// Standard deviation of the noise, micrometres.
-    pub noise: f64,
-    pub spikes: usize,
-    pub missing: usize,
+    pub(crate) noise: f64,
+    pub(crate) spikes: usize,
+    pub(crate) missing: usize,
 }
 
 /// Positions and heights, micrometres; NaN where there is none.
-pub fn measured(channel: &Channel, trouble: &Trouble, step: f64, dice: &mut Dice) -> Vec<[f64; 2]> {
+pub(crate) fn measured(
+    channel: &Channel,
+    trouble: &Trouble,
+    step: f64,
+    dice: &mut Dice,
+) -> Vec<[f64; 2]> {
     let land = 0.6 * channel.width;
     let length = channel.width + 2.0 * land;
     let start = dice.between(-3.0, 3.0) * channel.width;
@@ -173,7 +177,7 @@ pub fn measured(channel: &Channel, trouble: &Trouble, step: f64, dice: &mut Dice
 }
 
 /// The rows as the bytes of a file, in one of eight dialects.
-pub fn written(rows: &[[f64; 2]], dialect: usize) -> Vec<u8> {
+pub(crate) fn written(rows: &[[f64; 2]], dialect: usize) -> Vec<u8> {
     let mut text = String::new();
     let heights = |z: f64, missing: &str, factor: f64, decimals: usize| {
         if z.is_nan() {
@@ -230,7 +234,7 @@ pub fn written(rows: &[[f64; 2]], dialect: usize) -> Vec<u8> {
         6 => {
             line("\u{b5}m \u{b5}m".to_owned(), "\n");
             for [x, z] in rows.iter().filter(|row| !row[1].is_nan()) {
-                line(format!("  {x:.6e}   {:.6e}", z), "\n");
+                line(format!("  {x:.6e}   {z:.6e}"), "\n");
             }
         }
         _ => {
@@ -254,7 +258,7 @@ pub fn written(rows: &[[f64; 2]], dialect: usize) -> Vec<u8> {
 }
 
 /// A line of what was put into a case, for messages.
-pub fn told(channel: &Channel, trouble: &Trouble, dialect: usize) -> String {
+pub(crate) fn told(channel: &Channel, trouble: &Trouble, dialect: usize) -> String {
     let mut text = String::new();
     // Writing to a String cannot fail.
     let _ = write!(text, "{channel:?} {trouble:?} dialect {dialect}");

@@ -1,7 +1,7 @@
 //! Height maps: from heights over an area to traces across its grooves.
 //!
-//! [`surface_format`] tells the kind of file, [`read_surface`] reads it into a [`HeightMap`] in metres (or
-//! a trace, where it has one row), and [`cut`] levels the map, finds the direction of its groove and gives
+//! [`surface_format()`] tells the kind of file, [`read_surface`] reads it into a [`HeightMap`] in metres (or
+//! a trace, where it has one row), and [`cut()`] levels the map, finds the direction of its groove and gives
 //! traces at a right angle to it.
 
 mod container;

@@ -14,7 +14,7 @@ use crate::warning::{Code, Warning};
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::instrument_arguments::is_for;
-use super::instrument_options::instrument;
+use super::instrument_options::{check_unit, instrument};
 
 /// Problems shown with an outline that cannot be solved.
 const PROBLEMS_SHOWN: usize = 5;
@@ -66,10 +66,7 @@ pub(super) fn read_options(matches: &ArgMatches) -> Result<ReadOptions, Failure>
         })?);
     }
     if let Some(unit) = matches.get_one::<String>("unit") {
-        // Either a unit or the length of one unit.
-        if units::length_unit(unit).is_none() {
-            units::parse_length(unit).map_err(|error| Failure::option("unit", &error))?;
-        }
+        check_unit("unit", unit)?;
         options.unit = Some(unit.clone());
     }
     if let Some(text) = matches.get_one::<String>("scale") {

@@ -27,10 +27,18 @@ pub(super) fn instrument(
     matches: &ArgMatches,
     read: &ReadOptions,
 ) -> Result<InstrumentOptions, Failure> {
+    let (corrections, sections) = (corrections(matches)?, sections(matches)?);
+    // What makes no sense for any file is wrong usage, not the file's fault.
+    corrections
+        .check()
+        .map_err(|problem| Failure::usage(&problem, &problem.hint()))?;
+    sections
+        .check()
+        .map_err(|problem| Failure::usage(&problem, &problem.hint()))?;
     Ok(InstrumentOptions {
         table: table(matches, read)?,
-        corrections: corrections(matches)?,
-        sections: sections(matches)?,
+        corrections,
+        sections,
         cuts: cuts(matches)?,
         micrograph: micrograph(matches, read)?,
         repeats: paths(matches, "repeat"),
@@ -78,6 +86,25 @@ fn typed(matches: &ArgMatches, name: &str) -> Option<String> {
     Some(words.join(", "))
 }
 
+/// Refuses what is neither a unit of length nor the length of one unit.
+pub(super) fn check_unit(option: &str, unit: &str) -> Result<(), Failure> {
+    if units::length_unit(unit).is_some() {
+        return Ok(());
+    }
+    // Text without a number in front is meant as a unit.
+    let is_length = unit
+        .trim_start()
+        .starts_with(|c: char| c.is_ascii_digit() || c == '.');
+    let length = if is_length {
+        unit.to_owned()
+    } else {
+        format!("1 {unit}")
+    };
+    units::parse_length(&length)
+        .map(|_| ())
+        .map_err(|error| Failure::option(option, &error))
+}
+
 fn word<'a>(matches: &'a ArgMatches, name: &str) -> Option<&'a str> {
     matches.get_one::<String>(name).map(String::as_str)
 }
@@ -101,10 +128,8 @@ fn length(matches: &ArgMatches, name: &str) -> Result<Option<f64>, Failure> {
 
 fn table(matches: &ArgMatches, read: &ReadOptions) -> Result<TableOptions, Failure> {
     for name in ["x-unit", "z-unit"] {
-        if let Some(unit) = word(matches, name)
-            && units::length_unit(unit).is_none()
-        {
-            units::parse_length(unit).map_err(|error| Failure::option(name, &error))?;
+        if let Some(unit) = word(matches, name) {
+            check_unit(name, unit)?;
         }
     }
     let text = |name| word(matches, name).map(str::to_owned);

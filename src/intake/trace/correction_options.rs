@@ -84,7 +84,10 @@ impl Default for CorrectionOptions {
 
 impl CorrectionOptions {
     /// Whether the numbers make sense whatever the trace.
-    pub(super) fn check(&self) -> Result<(), TraceProblem> {
+    ///
+    /// # Errors
+    /// The option that does not.
+    pub fn check(&self) -> Result<(), TraceProblem> {
         let names = ["--shrink-x", "--shrink-z"];
         for (option, share) in names.into_iter().zip(self.shrinkage) {
             if !share.is_finite() || share.abs() > 0.5 {

@@ -20,6 +20,10 @@ use super::trace_problem::{FEWEST_IN_ZONE, TraceProblem};
 /// Largest distance of a land from one straight line, in depths, before the line is taken land by land.
 pub(super) const WORST_LAND: f64 = 0.01;
 
+/// Most scatter of one reading, in depths, of traces that repeat each other: their mean is no trace of a
+/// channel beyond that.
+const MOST_SCATTER: f64 = 0.2;
+
 /// Corrects a trace: spikes and missing points bridged, levelled, repeats averaged, every step recorded.
 ///
 /// - `raw`: positions and heights as the instrument wrote them, m; heights that are not finite are missing
@@ -71,6 +75,14 @@ pub fn correct(
     let depth = ground
         .as_ref()
         .map_or_else(|| relief(&scan.good()), |g| g.depth);
+    if let (Some(agreement), Some(ground)) = (&trace.repeatability, &ground)
+        && agreement.reading_robust_sd > MOST_SCATTER * ground.depth
+    {
+        return Err(TraceProblem::RepeatsScatter {
+            scatter: agreement.reading_robust_sd,
+            depth: ground.depth,
+        });
+    }
     trace.lands = lands(&scan, ground.as_ref(), options)?;
     records::repeats(&mut trace, ground.as_ref());
     records::lands(&mut trace, ground.as_ref(), options);

@@ -73,7 +73,10 @@ pub const THINNING: f64 = 1e-5;
 
 impl SectionOptions {
     /// Refuses values that mean nothing.
-    pub(super) fn check(&self) -> Result<(), GrooveProblem> {
+    ///
+    /// # Errors
+    /// The option with such a value.
+    pub fn check(&self) -> Result<(), GrooveProblem> {
         let refuse = |option: &'static str, value: f64, allowed: &'static str| {
             Err(GrooveProblem::Option {
                 option,

@@ -194,6 +194,18 @@ pub enum TraceProblem {
         /// Best correlation coefficient.
         correlation: f64,
     },
+    /// Traces that are said to be repeats scatter like different ones.
+    #[error(
+        "the traces do not repeat each other: one reading scatters by {}, and the channel is {} deep",
+        format_length(*scatter),
+        format_length(*depth)
+    )]
+    RepeatsScatter {
+        /// Robust standard deviation of one reading, m.
+        scatter: f64,
+        /// Depth of the channel in their mean, m.
+        depth: f64,
+    },
     /// Something is wrong with a repeat.
     #[error("repeat {number}: {source}")]
     Repeat {
@@ -248,7 +260,7 @@ impl TraceProblem {
             }
             Self::NotALength { .. } => "give a length with its unit, such as 0.2um",
             Self::Cutoff { .. } => "choose a cut-off between the two, or leave --cutoff out",
-            Self::RepeatDiffers { .. } => {
+            Self::RepeatDiffers { .. } | Self::RepeatsScatter { .. } => {
                 "give repeats of the same line only, in either direction; evaluate others as traces of \
                  their own"
             }

@@ -41,6 +41,20 @@ pub(super) fn option(name: &'static str, value: &'static str, help: &'static str
     Arg::new(name).long(name).value_name(value).help(help)
 }
 
+/// An option that names pictures to write; it may come more than once.
+fn picture_option(
+    name: &'static str,
+    help: &'static str,
+    long: &'static str,
+    heading: &'static str,
+) -> Arg {
+    option(name, "FILE", help)
+        .long_help(long)
+        .action(ArgAction::Append)
+        .value_parser(value_parser!(std::path::PathBuf))
+        .help_heading(heading)
+}
+
 pub(super) fn flag(name: &'static str, help: &'static str) -> Arg {
     Arg::new(name)
         .long(name)
@@ -146,17 +160,8 @@ fn reading(kind: Kind) -> Command {
                 .help_heading(heading),
         )
         .arg(
-            Arg::new("picture")
-                .long("picture")
-                .value_name("FILE")
-                .action(ArgAction::Append)
-                .value_parser(value_parser!(std::path::PathBuf))
-                .help("Write the check picture, .png or .svg")
-                .long_help(
-                    "Write the picture that shows what was done: data, zones, fit, corrections, lid, outline; the \
-                     ending says .png or .svg. May be given more than once. Example: --picture check.png",
-                )
-                .help_heading(heading),
+            picture_option("picture", "Write the check picture, .png or .svg", "Write the picture that shows what was done: data, zones, fit, corrections, lid, outline; the \
+                     ending says .png or .svg. May be given more than once. Example: --picture check.png", heading),
         )
         .arg(
             Arg::new("heights")
@@ -224,18 +229,9 @@ fn solve() -> Command {
                 .help_heading(heading),
         )
         .arg(
-            Arg::new("picture")
-                .long("picture")
-                .value_name("FILE")
-                .action(ArgAction::Append)
-                .value_parser(value_parser!(std::path::PathBuf))
-                .help("Write a picture of the velocity, .png or .svg")
-                .long_help(
-                    "Write a picture of the velocity with contour lines, wall, scale bar and colour \
+            picture_option("picture", "Write a picture of the velocity, .png or .svg", "Write a picture of the velocity with contour lines, wall, scale bar and colour \
                      bar; the ending says .png or .svg. May be given more than once. Example: \
-                     --picture wafer.png",
-                )
-                .help_heading(heading),
+                     --picture wafer.png", heading),
         )
 }
 
@@ -255,17 +251,8 @@ fn wall_options(command: Command, heading: &'static str) -> Command {
                 .help_heading(heading),
         )
         .arg(
-            Arg::new("wall-picture")
-                .long("wall-picture")
-                .value_name("FILE")
-                .action(ArgAction::Append)
-                .value_parser(value_parser!(std::path::PathBuf))
-                .help("Write a picture of the wall shear, .png or .svg")
-                .long_help(
-                    "Write a picture of the wall shear along the developed wall; the ending says .png \
-                     or .svg. May be given more than once. Example: --wall-picture shear.png",
-                )
-                .help_heading(heading),
+            picture_option("wall-picture", "Write a picture of the wall shear, .png or .svg", "Write a picture of the wall shear along the developed wall; the ending says .png \
+                     or .svg. May be given more than once. Example: --wall-picture shear.png", heading),
         )
 }
 
@@ -372,18 +359,9 @@ fn sensitivity() -> Command {
                 .help_heading(heading),
         )
         .arg(
-            Arg::new("picture")
-                .long("picture")
-                .value_name("FILE")
-                .action(ArgAction::Append)
-                .value_parser(value_parser!(std::path::PathBuf))
-                .help("Write a picture of the wall, .png or .svg")
-                .long_help(
-                    "Write a picture of the wall coloured by its local sensitivity, with numbers; the \
+            picture_option("picture", "Write a picture of the wall, .png or .svg", "Write a picture of the wall coloured by its local sensitivity, with numbers; the \
                      ending says .png or .svg. May be given more than once. Example: --picture \
-                     wafer.png",
-                )
-                .help_heading(heading),
+                     wafer.png", heading),
         )
 }
 

@@ -19,6 +19,7 @@ mod instrument_sections;
 mod limits;
 mod loop_nesting;
 pub mod micrograph;
+mod order_statistics;
 mod outline_svg;
 mod outline_text;
 mod plausibility;

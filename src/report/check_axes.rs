@@ -303,7 +303,12 @@ pub(super) fn draw_ticks(
 /// Draws the border of a plot.
 pub(super) fn draw_frame(drawing: &mut Drawing, layout: &Layout) {
     let [left, top] = layout.at.map(f64::from);
-    let [right, bottom] = [left + layout.size[0], top + layout.size[1]];
+    draw_border(drawing, [left, top], layout.size);
+}
+
+/// Draws a border around a rectangle of the page.
+pub(super) fn draw_border(drawing: &mut Drawing, [left, top]: Point, [width, height]: [f64; 2]) {
+    let [right, bottom] = [left + width, top + height];
     let corners = vec![
         [left, top],
         [right, top],

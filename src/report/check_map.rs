@@ -2,7 +2,9 @@
 
 use std::fmt::Write as _;
 
-use super::check_axes::{Axis, draw_frame, draw_ticks, is_place, scale_words, unit_of};
+use super::check_axes::{
+    Axis, draw_border, draw_frame, draw_ticks, is_place, scale_words, unit_of,
+};
 use super::check_curves::NARROW_ROOM;
 use super::check_image::covered;
 use super::check_legend::{CUT, HALO, Legend, Sample, missing_tone};
@@ -258,16 +260,8 @@ fn colour_bar(drawing: &mut Drawing, heights: &Heights, [left, top]: Point, heig
         drawing.text(at, Anchor::Start, TextSize::Small, all);
         drawing.text([left, top - 13.0], Anchor::Start, TextSize::Small, "height");
     }
-    let bottom = top + tall;
-    let corners = vec![
-        [left, top],
-        [right, top],
-        [right, bottom],
-        [left, bottom],
-        [left, top],
-    ];
-    drawing.lines(vec![corners], INK, 1.0);
-    bottom + 14.0
+    draw_border(drawing, [left, top], [BAR_WIDTH, tall]);
+    top + tall + 14.0
 }
 
 /// Where the colours end before the heights do.

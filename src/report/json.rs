@@ -12,7 +12,7 @@ use super::document::{SolveDocument, SourceRecord};
 use super::json_accuracy::AccuracyView;
 use super::json_film::FilmView;
 use super::json_reach::ReachView;
-use super::json_values::{Bracketed, Number, Quantity, maybe, place};
+use super::json_values::{Bracketed, Number, Quantity, maybe, place, pretty};
 use super::json_wall::Shear;
 use super::reading_json::{AlternativeView, StepView};
 use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
@@ -26,9 +26,7 @@ pub const SCHEMA: &str = "etchwise/1";
 /// # Errors
 /// The error of the serialiser; it has no cause in the data, since keys are text and numbers finite.
 pub fn to_json(document: &SolveDocument<'_>) -> Result<String, serde_json::Error> {
-    let mut text = serde_json::to_string_pretty(&Root::new(document))?;
-    text.push('\n');
-    Ok(text)
+    pretty(&Root::new(document))
 }
 
 #[derive(Serialize)]

@@ -6,6 +6,13 @@ use crate::flow::SectionFlow;
 use crate::geometry::Point;
 use crate::measured::Estimate;
 
+/// A value as pretty-printed JSON with a closing line feed.
+pub(super) fn pretty(value: &impl Serialize) -> Result<String, serde_json::Error> {
+    let mut text = serde_json::to_string_pretty(value)?;
+    text.push('\n');
+    Ok(text)
+}
+
 /// A number or null.
 #[derive(Serialize)]
 #[serde(untagged)]

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::json::{Source, WarningView};
-use super::json_values::{Number, Quantity, place};
+use super::json_values::{Number, Quantity, place, pretty};
 use super::reading_document::{
     AlternativeRecord, ConductanceRecord, MeasureRecord, ReadingDocument, SectionRecord, StepRecord,
 };
@@ -30,9 +30,7 @@ pub fn reading_json(document: &ReadingDocument<'_>) -> Result<String, serde_json
             .map(|w| WarningView::new((*w).clone()))
             .collect(),
     };
-    let mut text = serde_json::to_string_pretty(&root)?;
-    text.push('\n');
-    Ok(text)
+    pretty(&root)
 }
 
 #[derive(Serialize)]

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::json::{Grid, Source, WarningView};
-use super::json_values::{Bracketed, Number, Quantity, place};
+use super::json_values::{Bracketed, Number, Quantity, place, pretty};
 use super::sensitivity_document::SensitivityDocument;
 use crate::measured::Estimate;
 use crate::study::{Check, FirstOrderRange, Measure, SECOND_ORDER_SHARE, Sensitivity};
@@ -18,9 +18,7 @@ pub const SENSITIVITY_SCHEMA: &str = "etchwise-sensitivity/1";
 /// # Errors
 /// The error of the serialiser; it has no cause in the data, since keys are text and numbers finite.
 pub fn sensitivity_json(document: &SensitivityDocument<'_>) -> Result<String, serde_json::Error> {
-    let mut text = serde_json::to_string_pretty(&Root::new(document))?;
-    text.push('\n');
-    Ok(text)
+    pretty(&Root::new(document))
 }
 
 #[derive(Serialize)]

@@ -10,6 +10,7 @@
 
 use super::map_blocks::{HeightPoint, MapBlocks};
 use crate::geometry::Point;
+use crate::intake::order_statistics::{median, scatter_about};
 
 /// Classes of the histogram of heights.
 const CLASSES: usize = 200;
@@ -19,8 +20,6 @@ const TAIL: f64 = 0.005;
 const STRONG_PEAK: f64 = 0.4;
 /// Tuning constant of the biweight, in standard deviations (95 % efficiency for normal errors).
 const BIWEIGHT: f64 = 4.685;
-/// Standard deviation of normal errors over their median absolute value.
-const MEDIAN_TO_SIGMA: f64 = 1.4826;
 /// Repetitions of each weighted fit; they settle within ten.
 const REPEATS: usize = 15;
 /// Extent of the points used against that of the map below which their plane is not trusted, in standard
@@ -214,12 +213,12 @@ fn weighted_fit(points: &[HeightPoint], start: [f64; 3], limit: f64) -> [f64; 3]
 
 /// Standard deviation of the points near a plane, from their median distance.
 fn spread_around(points: &[HeightPoint], plane: [f64; 3], reach: f64) -> f64 {
-    let mut near: Vec<f64> = points
-        .iter()
-        .map(|p| distance(p, plane).abs())
-        .filter(|d| *d < reach)
-        .collect();
-    MEDIAN_TO_SIGMA * median(&mut near)
+    let distances = points.iter().map(|p| distance(p, plane));
+    let mut near: Vec<f64> = distances.filter(|d| d.abs() < reach).collect();
+    if near.is_empty() {
+        return 0.0;
+    }
+    scatter_about(&mut near, 0.0)
 }
 
 /// Whether the points spread widely enough in every direction to carry a plane.
@@ -240,13 +239,4 @@ fn reaches_far(used: &[&HeightPoint], blocks: &MapBlocks) -> bool {
     let half = 0.5 * (m[0] + m[2]);
     let smaller = half - (0.5 * (m[0] - m[2])).hypot(m[1]);
     smaller.max(0.0).sqrt() >= LEAST_EXTENT
-}
-
-/// The median; zero of nothing.
-fn median(values: &mut [f64]) -> f64 {
-    if values.is_empty() {
-        return 0.0;
-    }
-    let middle = values.len() / 2;
-    *values.select_nth_unstable_by(middle, f64::total_cmp).1
 }

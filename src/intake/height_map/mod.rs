@@ -22,6 +22,8 @@ mod sdf_binary;
 #[cfg(test)]
 mod sdf_tests;
 mod sdf_text;
+#[cfg(test)]
+mod spoilt_bytes;
 mod stored_number;
 mod surface;
 mod surface_content;

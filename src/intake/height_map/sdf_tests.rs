@@ -1,5 +1,6 @@
 //! Invented SDF files, whole and spoilt.
 
+use super::spoilt_bytes::spoilt;
 use super::{HeightMap, MapProblem, SurfaceContent, SurfaceFormat, read_surface, surface_format};
 
 const TEXT: &str = "aISO-1.0\r\nManufacID = invented\r\nCreateDate = 010120010000\r\n\
@@ -279,21 +280,12 @@ fn only_surface_files_are_recognised() {
 #[test]
 fn cut_and_flipped_files_never_panic() {
     let data: Vec<u8> = (0..6_i16).flat_map(i16::to_le_bytes).collect();
-    let mut random: u64 = 1;
     for whole in [TEXT.as_bytes().to_vec(), binary("bISO-2.0", 5, &data)] {
         for end in 0..whole.len() {
             let _ = read_surface(&whole[..end], SurfaceFormat::Sdf, None);
             let _ = surface_format(&whole[..end]);
         }
-        for _ in 0..2000 {
-            let mut spoilt = whole.clone();
-            for _ in 0..3 {
-                random = random
-                    .wrapping_mul(6_364_136_223_846_793_005)
-                    .wrapping_add(99);
-                let place = (random >> 20) as usize % spoilt.len();
-                spoilt[place] ^= (random >> 12) as u8 | 1;
-            }
+        for spoilt in spoilt(&whole, 2000) {
             let _ = read_surface(&spoilt, SurfaceFormat::Sdf, Some(1.0));
         }
     }

@@ -5,6 +5,7 @@ use std::io::{Cursor, Write};
 use md5::{Digest, Md5};
 use zip::write::{SimpleFileOptions, ZipWriter};
 
+use super::spoilt_bytes::spoilt;
 use super::{
     HeightMap, MapProblem, SurfaceContent, SurfaceFormat, heights_csv, read_surface, surface_format,
 };
@@ -425,19 +426,11 @@ fn cut_and_flipped_files_never_panic() {
         );
         let _ = surface_format(&whole[..end]);
     }
-    let mut random: u64 = 1;
-    for _ in 0..1500 {
-        let mut spoilt = whole.clone();
-        for _ in 0..3 {
-            random = random
-                .wrapping_mul(6_364_136_223_846_793_005)
-                .wrapping_add(99);
-            let place = (random >> 20) as usize % spoilt.len();
-            spoilt[place] ^= (random >> 12) as u8 | 1;
-        }
+    for spoilt in spoilt(&whole, 1500) {
         let _ = read_surface(&spoilt, SurfaceFormat::X3p, Some(1.0));
     }
     // The description alone, so that the container's own check sum does not catch it first.
+    let mut random: u64 = 1;
     for at in 0..xml.len() {
         let cut = xml.get(..at).unwrap_or("");
         assert!(read(&file(cut, &[(DATA, &data)])).is_err(), "{at}");

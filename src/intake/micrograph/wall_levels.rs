@@ -8,6 +8,7 @@ use super::grey::Grey;
 use super::levels::Histogram;
 use super::micrograph_section::PixelLoop;
 use super::regions::Level;
+use crate::intake::order_statistics::MAD_TO_SD;
 
 /// Distance of the bands from the edge without knowledge of its width, pixels.
 pub(super) const FIRST_DISTANCE: u8 = 3;
@@ -167,7 +168,7 @@ fn noise(grey: &Grey, mask: &[u8], distances: &[u8], from: u8) -> f64 {
             })
         });
         let histogram = Histogram::of(differences);
-        1.4826 * histogram.quantile(0.5).unwrap_or(0.0)
+        MAD_TO_SD * histogram.quantile(0.5).unwrap_or(0.0)
     };
     side(0).max(side(1))
 }

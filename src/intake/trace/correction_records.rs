@@ -3,10 +3,10 @@
 use super::corrected::{ChangeKind, CorrectedTrace};
 use super::correction_options::{CorrectionOptions, Levelling, LineFit};
 use super::corrections::WORST_LAND;
-use super::lands::Ground;
+use super::lands::{CREST, Ground};
 use super::levelling::{Curve, Reference};
-use super::order_statistics::median;
 use super::scan::Scan;
+use crate::intake::order_statistics::median;
 use crate::intake::step::Step;
 use crate::units::{format_length, format_percent, format_significant};
 use crate::warning::{Code, Warning};
@@ -336,18 +336,20 @@ fn few_zones_warning(zones: usize, degree: u8) -> Warning {
 }
 
 /// Shoulders without a level part.
-pub(super) fn crests_warning(ground: &Ground) -> Warning {
-    Warning {
+pub(super) fn crests_warning(ground: &Ground) -> Option<Warning> {
+    let problem = ground.not_level.as_ref()?;
+    Some(Warning {
         code: Code::ReferenceResidual,
         message: format!(
-            "no land is level: the lid is taken to lie on the crests of the {} shoulders, and the trace is levelled \
-             on them",
-            ground.zones().len()
+            "{problem}; the lid is taken to lie on the crests of the {} shoulders, what lies within {} of the \
+             depth of their highest samples, and the trace is levelled on them",
+            ground.zones().len(),
+            format_percent(CREST, 2)
         ),
         advice: "state where the lid lies: --land-zones, --lid left or right; measure farther beyond the channel"
             .to_owned(),
         numbers: vec![("depth_m", ground.depth)],
-    }
+    })
 }
 
 /// Spikes and gaps.

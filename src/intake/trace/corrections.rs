@@ -9,13 +9,13 @@ use super::correction_options::{CorrectionOptions, Levelling};
 use super::correction_records as records;
 use super::lands::{Ground, find_lands, find_lands_roughly};
 use super::levelling::{Curve, Reference, fit_reference};
-use super::order_statistics::{median, thinned};
 use super::profile::{Profile, RawTrace, Zone};
 use super::profile_filter::gaussian;
 use super::repeats;
 use super::scan::{Scan, relief, spacings};
 use super::step_height::{StepHeight, indices, step_height};
 use super::trace_problem::{FEWEST_IN_ZONE, TraceProblem};
+use crate::intake::order_statistics::{median, thinned};
 
 /// Largest distance of a land from one straight line, in depths, before the line is taken land by land.
 pub(super) const WORST_LAND: f64 = 0.01;
@@ -86,9 +86,8 @@ pub fn correct(
     trace.lands = lands(&scan, ground.as_ref(), options)?;
     records::repeats(&mut trace, ground.as_ref());
     records::lands(&mut trace, ground.as_ref(), options);
-    if let Some(ground) = ground.as_ref().filter(|ground| ground.are_crests) {
-        trace.warnings.push(records::crests_warning(ground));
-    }
+    let crests = ground.as_ref().and_then(records::crests_warning);
+    trace.warnings.extend(crests);
     let grooves = channels(&trace.lands, ground.as_ref(), options);
     take_reference(&mut trace, &scan, options, depth)?;
     trace.noise_sd = ground.as_ref().map_or(0.0, |ground| ground.noise);

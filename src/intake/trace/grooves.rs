@@ -17,6 +17,7 @@ use std::ops::Range;
 
 use super::groove_problem::GrooveProblem;
 use super::profile::Zone;
+use crate::intake::order_statistics::{median, scatter_about};
 use crate::units::format_length;
 
 /// Fewest samples below the land for a groove, and of a stretch that parts two grooves.
@@ -188,15 +189,6 @@ fn land_samples(x: &[f64], zones: &[Zone]) -> Vec<Range<usize>> {
     joined
 }
 
-/// The upper median: one of the values.
-fn median(values: &mut [f64]) -> f64 {
-    let middle = values.len() / 2;
-    if values.is_empty() {
-        return 0.0;
-    }
-    *values.select_nth_unstable_by(middle, f64::total_cmp).1
-}
-
 /// Level of some samples, m.
 pub(super) fn level(z: &[f64], samples: Range<usize>) -> f64 {
     median(&mut z.get(samples).unwrap_or_default().to_vec())
@@ -208,10 +200,9 @@ fn scatter(z: &[f64], lands: &[Range<usize>]) -> f64 {
     for land in lands {
         let middle = level(z, land.clone());
         let land = z.get(land.clone()).unwrap_or_default();
-        distances.extend(land.iter().map(|h| (h - middle).abs()));
+        distances.extend(land.iter().map(|h| h - middle));
     }
-    // A normal distribution has half its values within 0.6745 standard deviations.
-    median(&mut distances) / 0.6745
+    scatter_about(&mut distances, 0.0)
 }
 
 /// The end of a land next to a stretch: within a width of it, and not fewer than [`LEVEL_SAMPLES`].

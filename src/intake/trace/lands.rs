@@ -5,11 +5,13 @@
 //! upper stretch the most frequent height and a robust line through the samples near it give the land; it
 //! ends where samples leave that line. What the lands say about drift is taken off and the search repeated.
 
-use super::order_statistics::{half_sample_mode, median, noise_of_neighbours, quantile, thinned};
 use super::profile::{Profile, Zone};
 use super::robust_line::{Line, robust_line, typical_slope};
 use super::swings::{Stretch, stretches, swing_thresholds};
 use super::trace_problem::{FEWEST_IN_ZONE, TraceProblem};
+use crate::intake::order_statistics::{
+    half_sample_mode, median, noise_of_neighbours, quantile, thinned,
+};
 
 /// Samples this near to the land, in depths, may belong to it while its line is sought.
 const NEAR_LAND: f64 = 0.15;
@@ -34,7 +36,7 @@ const SLOW_WALL: f64 = 0.05;
 const ALTERNATING: f64 = 0.5;
 
 /// The crest of a rounded land: what lies within this share of the depth of its highest sample.
-const CREST: f64 = 0.02;
+pub(super) const CREST: f64 = 0.02;
 
 /// Walls beside rounded lands take at most this share of the trace from 25 to 75 % of the depth; a wave and
 /// a half over the whole trace takes a ninth.
@@ -73,8 +75,8 @@ pub(super) struct Ground {
     pub(super) narrowest: f64,
     /// Whether the trace both starts and ends below.
     pub(super) ends_low: bool,
-    /// Whether no land is level, so that the crests of the shoulders stand for them.
-    pub(super) are_crests: bool,
+    /// Why no land is level, where the crests of the shoulders stand for them.
+    pub(super) not_level: Option<TraceProblem>,
 }
 
 impl Ground {
@@ -228,7 +230,7 @@ fn survey(x: &[f64], z: &[f64], noise: f64) -> Result<Ground, TraceProblem> {
     let mut first_problem = None;
     for threshold in swing_thresholds(z, noise) {
         match at_threshold(x, z, threshold) {
-            Ok(ground) if ground.are_crests => on_crests = on_crests.or(Some(ground)),
+            Ok(ground) if ground.not_level.is_some() => on_crests = on_crests.or(Some(ground)),
             Ok(ground) => {
                 let weight = ground.weight();
                 if best.as_ref().is_none_or(|(heaviest, _)| weight > *heaviest) {
@@ -344,7 +346,7 @@ fn at_threshold(x: &[f64], z: &[f64], threshold: f64) -> Result<Ground, TracePro
         return Err(problem);
     }
     Ok(Ground {
-        are_crests: true,
+        not_level: Some(problem),
         ..described(x, &all, crests, depth)
     })
 }
@@ -501,7 +503,7 @@ fn described(x: &[f64], all: &[Stretch], lands: Vec<Land>, depth: f64) -> Ground
         ridge_width: (!ridges.is_empty()).then(|| median(&mut ridges)),
         groove_width: median(&mut gaps),
         narrowest,
-        are_crests: false,
+        not_level: None,
         ends_low: all.first().is_some_and(|s| !s.high) && all.last().is_some_and(|s| !s.high),
         lands,
     }

@@ -24,11 +24,12 @@ mod half_tests;
 #[cfg(test)]
 mod hostile_traces_tests;
 mod lands;
+#[cfg(test)]
+mod lands_tests;
 mod levelling;
 mod lid;
 #[cfg(test)]
 mod lid_tests;
-mod order_statistics;
 mod profile;
 mod profile_filter;
 #[cfg(test)]
@@ -60,7 +61,7 @@ mod table_problem;
 mod table_trace;
 mod table_units;
 #[cfg(test)]
-mod test_traces;
+pub(in crate::intake) mod test_traces;
 mod thinning;
 mod tip;
 mod trace_problem;

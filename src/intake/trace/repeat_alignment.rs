@@ -10,10 +10,10 @@
 use nalgebra::{Matrix2, Vector2};
 
 use super::lands::piecewise;
-use super::order_statistics::scatter_about;
 use super::profile::{Profile, Zone};
 use super::robust_line::bisquare;
 use super::step_height::indices;
+use crate::intake::order_statistics::scatter_about;
 
 /// Most points of each trace while all shifts are tried.
 const COARSE_POINTS: usize = 4096;

@@ -7,13 +7,13 @@
 
 use super::correction_options::CorrectionOptions;
 use super::lands::{Ground, find_lands, piecewise};
-use super::order_statistics::{median, scatter_about};
 use super::profile::{Profile, RawTrace, Zone};
 use super::repeat_alignment::{Alignment, LEAST_CORRELATION, align, heights_at, reversed};
 use super::robust_line::robust_line;
 use super::scan::Scan;
 use super::step_height::{indices, step_height};
 use super::trace_problem::TraceProblem;
+use crate::intake::order_statistics::{median, scatter_about};
 
 /// Where one repeat was found.
 #[derive(Debug, Clone, Copy, PartialEq)]

@@ -4,7 +4,7 @@
 //! half of the points may be anything. Siegel (1982), *Robust regression using repeated medians*,
 //! Biometrika 69, 242; from memory. Its cost is quadratic, so it works on medians of blocks.
 
-use super::order_statistics::{median, scatter_about};
+use crate::intake::order_statistics::{median, scatter_about};
 
 /// Where the bisquare weight of a residual falls to zero, in robust standard deviations (95 % efficient
 /// for normal scatter; from memory).

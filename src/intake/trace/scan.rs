@@ -2,11 +2,11 @@
 
 use super::correction_options::CorrectionOptions;
 use super::lands::Ground;
-use super::order_statistics::{median, quantile, thinned};
 use super::profile::Profile;
 use super::robust_line::typical_slope;
 use super::spikes::{NARROW, SpikeRule, WIDEST, find_spikes};
 use super::trace_problem::{FEWEST_SAMPLES, TraceProblem};
+use crate::intake::order_statistics::{median, quantile, thinned};
 
 /// Positions and heights beyond this are no trace, m.
 const FARTHEST: f64 = 1e3;

@@ -9,8 +9,8 @@
 //! Overshoot beside a wall ("ears") is no spike, since one side of its window lies on the other level: it
 //! is left, and the lands are taken without the parts next to walls.
 
-use super::order_statistics::{MAD_TO_SD, median, noise_of_neighbours, scatter_about};
 use super::profile::Profile;
+use crate::intake::order_statistics::{MAD_TO_SD, median, noise_of_neighbours, scatter_about};
 
 /// Half width of the narrow window, samples: spikes of up to three samples.
 pub(super) const NARROW: usize = 3;

@@ -1,10 +1,10 @@
 //! Medians, robust scatter and the mode of a set of heights.
 
 /// Ratio of the standard deviation of normal scatter to its median absolute deviation.
-pub(super) const MAD_TO_SD: f64 = 1.4826;
+pub(crate) const MAD_TO_SD: f64 = 1.4826;
 
 /// The value below which `share` of the values lie; NaN where there is none. The order is lost.
-pub(super) fn quantile(values: &mut [f64], share: f64) -> f64 {
+pub(crate) fn quantile(values: &mut [f64], share: f64) -> f64 {
     let Some(last) = values.len().checked_sub(1) else {
         return f64::NAN;
     };
@@ -15,12 +15,12 @@ pub(super) fn quantile(values: &mut [f64], share: f64) -> f64 {
 }
 
 /// The median; NaN where there is no value. The order is lost.
-pub(super) fn median(values: &mut [f64]) -> f64 {
+pub(crate) fn median(values: &mut [f64]) -> f64 {
     quantile(values, 0.5)
 }
 
 /// Robust standard deviation about a centre: 1.4826 times the median distance from it. The values are lost.
-pub(super) fn scatter_about(values: &mut [f64], centre: f64) -> f64 {
+pub(crate) fn scatter_about(values: &mut [f64], centre: f64) -> f64 {
     for value in values.iter_mut() {
         *value = (*value - centre).abs();
     }
@@ -28,7 +28,7 @@ pub(super) fn scatter_about(values: &mut [f64], centre: f64) -> f64 {
 }
 
 /// At most about `count` of the values, evenly taken.
-pub(super) fn thinned(values: &[f64], count: usize) -> Vec<f64> {
+pub(crate) fn thinned(values: &[f64], count: usize) -> Vec<f64> {
     let stride = values.len().div_ceil(count.max(1)).max(1);
     values.iter().copied().step_by(stride).collect()
 }
@@ -37,7 +37,7 @@ pub(super) fn thinned(values: &[f64], count: usize) -> Vec<f64> {
 ///
 /// Half of the values that span the shortest range are kept, again and again. Bickel and Fruehwirth (2006),
 /// *On a fast, robust estimator of the mode*, Comput. Stat. Data Anal. 50, 3500; from memory.
-pub(super) fn half_sample_mode(sorted: &[f64]) -> f64 {
+pub(crate) fn half_sample_mode(sorted: &[f64]) -> f64 {
     let mut kept = sorted;
     while kept.len() > 3 {
         let half = kept.len().div_ceil(2);
@@ -55,7 +55,7 @@ pub(super) fn half_sample_mode(sorted: &[f64]) -> f64 {
 /// Noise from sample to sample, m: robust scatter of second differences, divided by `sqrt(6)`.
 ///
 /// Slopes drop out; heights that the instrument has smoothed give too small a value.
-pub(super) fn noise_of_neighbours(z: &[f64]) -> f64 {
+pub(crate) fn noise_of_neighbours(z: &[f64]) -> f64 {
     let stride = (z.len() / 200_000).max(1);
     let mut bends: Vec<f64> = z
         .windows(3)

@@ -261,9 +261,10 @@ fn dimensions(groove: &GrooveSection) -> Vec<Dimension> {
     let deepest = inside
         .filter(|&(&x, _)| from <= x && x <= to)
         .min_by(|a, b| (a.1 - base(*a.0)).total_cmp(&(b.1 - base(*b.0))));
+    let top = base(from).max(base(to));
     let mut found = vec![Dimension {
-        from: [from, base(from)],
-        to: [to, base(to)],
+        from: [from, top],
+        to: [to, top],
         text: format!("width {}", format_length(numbers.top_width)),
     }];
     if let Some((&x, &z)) = deepest {

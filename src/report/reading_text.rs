@@ -139,12 +139,16 @@ fn measures(section: &SectionRecord<'_>) -> Table {
     table
 }
 
+/// Lengths below this are rounding, m: a hundredth of an atom.
+const LEAST_LENGTH: f64 = 1e-12;
+
 /// A number with a unit of sensible size, or why there is none.
 fn measured(measure: &MeasureRecord) -> String {
     let Some(value) = measure.value else {
         return format!("none: {}", measure.absent_because);
     };
     match measure.unit {
+        "m" if value.abs() < LEAST_LENGTH => "0 m".to_owned(),
         "m" => with_unit(value, numbers::LENGTHS, 5),
         "m^2" => with_unit(value, numbers::AREAS, 5),
         "rad" => format!("{} deg", significant(value.to_degrees(), 5)),

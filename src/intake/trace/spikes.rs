@@ -100,14 +100,16 @@ fn is_spike(
     let right = median(&mut window[window.len() - side..].to_vec());
     // On a flank the slope itself would count as scatter.
     let slope = (right - left) / (window.len() - side) as f64;
-    let level = |k: usize| centre + slope * (k as f64 - half as f64);
+    let middle = 0.5 * (left + right);
+    let level = |k: usize| middle + slope * (k as f64 - half as f64);
     let mut distances: Vec<f64> = (0..window.len())
         .map(|k| (window[k] - level(k)).abs())
         .collect();
     if size <= weight * MAD_TO_SD * median(&mut distances) {
         return false;
     }
-    (left - centre).abs() <= 0.5 * size && (right - centre).abs() <= 0.5 * size
+    // Both sides on one level, or on one flank: an ear beside a wall has a side far below.
+    (middle - centre).abs() <= 0.5 * size && (left - right).abs() <= 2.0 * size
 }
 
 /// Distance of each sample from the median of the window about it; windows shrink towards the ends.
@@ -221,6 +223,31 @@ mod tests {
         }
         let found = find_spikes(&profile, &RULE);
         assert_eq!(found, [(100, 101), (400, 403), (430, 432), (700, 703)]);
+    }
+
+    #[test]
+    fn spikes_on_a_flank_are_found_too() {
+        let mut noise = Noise::new(3);
+        // A land, then the flank.
+        let flank = (0..300).map(|k| -0.3 * f64::from((k - 80).max(0)));
+        let z: Vec<f64> = flank.map(|z| z + 1e-3 * noise.normal()).collect();
+        let x: Vec<f64> = (0..300).map(f64::from).collect();
+        for (size, samples) in [(1.2, 1), (-1.2, 1), (4.0, 2), (-4.0, 2)] {
+            let mut spoilt = z.clone();
+            for height in &mut spoilt[120..120 + samples] {
+                *height += size;
+            }
+            let good = Profile {
+                x: x.clone(),
+                z: spoilt,
+            };
+            let rule = SpikeRule {
+                half_window: NARROW,
+                smallest: 0.1,
+                is_stated: false,
+            };
+            assert_eq!(find_spikes(&good, &rule), [(120, 120 + samples)], "{size}");
+        }
     }
 
     #[test]

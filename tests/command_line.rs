@@ -22,6 +22,8 @@ mod draw;
 mod film_reach;
 #[path = "command_line/help.rs"]
 mod help;
+#[path = "command_line/instruments.rs"]
+mod instruments;
 #[path = "command_line/json_contract.rs"]
 mod json_contract;
 #[path = "command_line/outputs.rs"]

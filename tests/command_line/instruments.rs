@@ -32,7 +32,7 @@ fn shipped(name: &str) -> String {
 
 #[test]
 fn a_trace_is_solved_as_its_section_is() {
-    let folder = Folder::with("a.csv", &groove("x_um,z_nm", 1e3));
+    let folder = Folder::with("a.csv", groove("x_um,z_nm", 1e3));
     let direct = folder.line("solve a.csv --json --quiet");
     assert_eq!(direct.status, 0, "{}", direct.err);
     let written = folder.line("trace a.csv -o a.toml --quiet --no-solve");
@@ -55,7 +55,7 @@ fn a_trace_is_solved_as_its_section_is() {
 
 #[test]
 fn a_section_file_goes_through_a_pipe() {
-    let folder = Folder::with("a.csv", &groove("x_um,z_um", 1.0));
+    let folder = Folder::with("a.csv", groove("x_um,z_um", 1.0));
     let run = folder.line("trace a.csv -o - --no-solve");
     assert_eq!(run.status, 0);
     assert!(
@@ -67,16 +67,17 @@ fn a_section_file_goes_through_a_pipe() {
 
 #[test]
 fn no_unit_is_guessed_and_no_choice_made_in_silence() {
-    let two: String = groove("x_um,z_um", 1.0)
-        .lines()
-        .skip(1)
-        .map(|line| {
-            let (x, z) = line.split_once(',').unwrap();
-            format!("{},{z}\n", x.parse::<f64>().unwrap() + 300.0)
-        })
-        .collect();
-    let two = groove("x_um,z_um", 1.0) + &two;
-    let folder = Folder::with("bare.csv", &groove("x,z", 1.0));
+    let mut two = groove("x_um,z_um", 1.0);
+    for line in groove("x_um,z_um", 1.0).lines().skip(1) {
+        let (x, z) = line.split_once(',').unwrap();
+        two.extend([
+            &(x.parse::<f64>().unwrap() + 300.0).to_string(),
+            ",",
+            z,
+            "\n",
+        ]);
+    }
+    let folder = Folder::with("bare.csv", groove("x,z", 1.0));
     std::fs::write(folder.path("two.csv"), two).unwrap();
     std::fs::write(folder.path("a.csv"), groove("x_um,z_um", 1.0)).unwrap();
     for (line, status, parts) in [
@@ -106,7 +107,7 @@ fn lids_on_lands_of_different_height_are_compared() {
         101..200 => format!("{k},-30\n"),
         _ => format!("{k},-2\n"),
     });
-    let folder = Folder::with("a.csv", &format!("x_um,z_um\n{}", rows.collect::<String>()));
+    let folder = Folder::with("a.csv", format!("x_um,z_um\n{}", rows.collect::<String>()));
     let result = json(&folder.line("solve a.csv --level none --json --quiet").out);
     let others = result["alternatives"].as_array().unwrap();
     let change = |option: &str| {
@@ -212,7 +213,7 @@ fn maps_and_pictures_of_the_shipped_kind_come_out_as_they_were_made() {
 
 #[test]
 fn settings_are_told_on_standard_error_only() {
-    let folder = Folder::with("a.csv", &groove("x_um,z_um", 1.0));
+    let folder = Folder::with("a.csv", groove("x_um,z_um", 1.0));
     let run = folder.line("solve a.csv --json --quiet --show-settings --cutoff 8um");
     assert_eq!(run.status, 0, "{}", run.err);
     assert!(

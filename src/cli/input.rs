@@ -34,6 +34,15 @@ pub(super) fn file(matches: &ArgMatches) -> PathBuf {
         .unwrap_or_default()
 }
 
+/// Every file that is read, so that none is written over.
+pub(super) fn files_read<'a>(file: &'a Path, options: &'a ReadOptions) -> Vec<&'a Path> {
+    let how = &options.instrument;
+    let further = how.repeats.iter().chain(&how.lid_trace);
+    std::iter::once(file)
+        .chain(further.map(PathBuf::as_path))
+        .collect()
+}
+
 /// The section's own name, or that of its file.
 pub(super) fn section_name(section: &Section, file: &Path) -> String {
     section.name.clone().unwrap_or_else(|| {

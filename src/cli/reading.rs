@@ -98,23 +98,16 @@ impl Request {
             .chain(self.heights.as_deref())
             .chain(pictures)
             .collect();
-        Ok(check_targets(&targets, &self.inputs())?)
+        Ok(check_targets(
+            &targets,
+            &input::files_read(&self.file, &self.read),
+        )?)
     }
 
     /// The section file, where it is a file.
     fn section_target(&self) -> Option<&Path> {
         let path = self.output.as_deref();
         path.filter(|path| *path != Path::new("-"))
-    }
-
-    /// Every file that is read, so that none is written over.
-    fn inputs(&self) -> Vec<&Path> {
-        let how = &self.read.instrument;
-        std::iter::once(&self.file)
-            .chain(&how.repeats)
-            .chain(&how.lid_trace)
-            .map(PathBuf::as_path)
-            .collect()
     }
 
     /// The heights of a map as read; they are of use even where no groove is found in them.
@@ -125,7 +118,7 @@ impl Request {
         let map = read_height_map(&self.file, &self.read)?;
         let bytes = heights_csv(&map).into_bytes();
         let inputs = output::Inputs {
-            files: &self.inputs(),
+            files: &input::files_read(&self.file, &self.read),
             quiet: self.quiet,
         };
         output::deliver(vec![(path.clone(), bytes)], String::new(), None, &inputs)
@@ -216,7 +209,7 @@ impl Request {
             text
         };
         let inputs = output::Inputs {
-            files: &self.inputs(),
+            files: &input::files_read(&self.file, &self.read),
             quiet: self.quiet,
         };
         output::deliver(files, text, None, &inputs)?;

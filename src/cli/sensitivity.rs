@@ -5,6 +5,7 @@ use std::path::{Path, PathBuf};
 use clap::ArgMatches;
 
 use crate::flow::{SolveOptions, SolvedSection, WallReport};
+use crate::intake::ReadOptions;
 use crate::report::{
     self, PictureFormat, SensitivityDocument, SolveDocument, check_targets, vtk_paths,
 };
@@ -20,6 +21,7 @@ use super::output::{self, Format, Inputs};
 /// What was asked for, no file opened yet.
 struct Request {
     file: PathBuf,
+    read: ReadOptions,
     solve: SolveOptions,
     study: SensitivityOptions,
     format: Format,
@@ -32,10 +34,9 @@ struct Request {
 
 pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     super::set_threads(matches)?;
-    let read = read_options(matches)?;
     let request = Request::new(matches)?;
     request.check_targets()?;
-    let checked = checked_section(&request.file, &read)?;
+    let checked = checked_section(&request.file, &request.read)?;
     say_settings(matches);
     let solved = solve_for_sensitivity(&checked.outline, &request.solve)?;
     request.answer(&checked, &solved)
@@ -45,6 +46,7 @@ impl Request {
     fn new(matches: &ArgMatches) -> Result<Self, Failure> {
         Ok(Self {
             file: input::file(matches),
+            read: read_options(matches)?,
             solve: SolveOptions {
                 cells_across: matches.get_one::<f64>("cells-across").copied(),
                 ..SolveOptions::default()
@@ -74,7 +76,10 @@ impl Request {
             .chain(self.wall.as_deref())
             .chain(pictures)
             .collect();
-        Ok(check_targets(&targets, &[&self.file])?)
+        Ok(check_targets(
+            &targets,
+            &input::files_read(&self.file, &self.read),
+        )?)
     }
 
     fn answer(
@@ -111,7 +116,7 @@ impl Request {
             Format::Csv => report::sensitivity_csv(&document).map_err(Failure::not_printed)?,
         };
         let inputs = Inputs {
-            files: &[&self.file],
+            files: &input::files_read(&self.file, &self.read),
             quiet: self.quiet,
         };
         output::deliver(files, text, self.output.as_deref(), &inputs)?;

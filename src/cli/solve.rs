@@ -159,7 +159,10 @@ impl Request {
             .chain(pictures)
             .collect();
         let targets: Vec<&Path> = targets.iter().map(PathBuf::as_path).collect();
-        Ok(check_targets(&targets, &[&self.file])?)
+        Ok(check_targets(
+            &targets,
+            &input::files_read(&self.file, &self.read),
+        )?)
     }
 
     fn answer(
@@ -278,7 +281,7 @@ impl Request {
         self.add_wall_files(document, &mut files)?;
         let text = self.main_output(document)?;
         let inputs = Inputs {
-            files: &[&self.file],
+            files: &input::files_read(&self.file, &self.read),
             quiet: self.quiet,
         };
         output::deliver(files, text, self.output.as_deref(), &inputs)

@@ -89,6 +89,11 @@ fn no_unit_is_guessed_and_no_choice_made_in_silence() {
         ("trace a.csv --tip-radius -1um", 2, &["--tip-radius"]),
         ("trace a.csv --z-unit furlong", 2, &["furlong", "um"]),
         ("trace a.csv -o a.csv", 3, &["a.csv", "input"]),
+        (
+            "solve a.csv --repeat bare.csv -o bare.csv",
+            3,
+            &["bare.csv", "input"],
+        ),
         ("image a.csv --scale 1um", 3, &["PNG"]),
         ("trace a.csv --level-on 5um..1um", 2, &["--level-on"]),
     ] {

@@ -33,6 +33,9 @@ pub enum FluidError {
         /// Its unit.
         unit: &'static str,
     },
+    /// The properties are known at one temperature only.
+    #[error("the properties of the fluid were given as numbers, at one temperature only")]
+    OneTemperature,
     /// A formula was asked outside its range.
     #[error(
         "{fluid}: the {quantity} {value} {unit} is outside {low} to {high} {unit} of {formula}"
@@ -62,6 +65,7 @@ impl FluidError {
             Self::NotPositive { quantity, .. } => {
                 format!("give a {quantity} above zero, with its unit")
             }
+            Self::OneTemperature => "give viscosity and density at the temperature itself".to_owned(),
             Self::OutOfRange { quantity, .. } => format!(
                 "check the unit of the {quantity}, or give viscosity and density of the fluid yourself"
             ),
@@ -262,6 +266,26 @@ impl Fluid {
             }
         }
         Ok(())
+    }
+
+    /// Whether the viscosity is known over temperature.
+    pub fn knows_temperatures(&self) -> bool {
+        self.is_water() || self.source == AIR_SOURCE
+    }
+
+    /// The same fluid at another temperature; a gas at the same pressure.
+    ///
+    /// - `temperature`: K, within the range of the fluid's formula
+    ///
+    /// # Errors
+    /// [`FluidError::OutOfRange`] outside that range, [`FluidError::OneTemperature`] for a fluid given by its
+    /// numbers.
+    pub fn at_temperature(&self, temperature: f64) -> Result<Self, FluidError> {
+        if self.is_water() {
+            return Self::water(temperature);
+        }
+        let state = self.gas_state().ok_or(FluidError::OneTemperature)?;
+        Self::dry_air(temperature, state.pressure)
     }
 
     /// Whether the properties are those of [`Fluid::water`].

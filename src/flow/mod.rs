@@ -24,6 +24,7 @@ mod solve_outline;
 mod solve_warnings;
 mod solved_grids;
 mod tangents;
+mod temperature_law;
 mod validity_range;
 mod wall_balance;
 mod wall_cells;
@@ -49,6 +50,7 @@ pub use section_flow::{
 pub use shortcuts::{ShortcutRow, shortcuts};
 pub use solve_cost::{LevelCost, SolveCost, StageCost};
 pub use solve_outline::{DEFAULT_MEMORY, FlowError, SolveOptions, SolvedSection, solve_outline};
+pub use temperature_law::{LAW_ERROR, MOST_COEFFICIENTS, TemperatureLaw, TemperatureLawError};
 pub use validity_range::{outside_validity, validity_warnings};
 pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};
 pub use wall_statistics::{

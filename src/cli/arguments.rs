@@ -3,6 +3,7 @@
 use clap::{Arg, ArgAction, Command, value_parser};
 
 use super::accuracy_options::accuracy_options;
+use super::card_arguments::card;
 use super::instrument_arguments::{Kind, Shown, instrument_options, show_settings};
 use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
 
@@ -35,6 +36,7 @@ pub fn command() -> Command {
         .subcommand(check())
         .subcommand(draw())
         .subcommand(sensitivity())
+        .subcommand(card())
 }
 
 pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
@@ -133,7 +135,7 @@ fn input(command: Command) -> Command {
 }
 
 /// The input file with the options for instruments, which only the long help lists.
-fn any_input(command: Command) -> Command {
+pub(super) fn any_input(command: Command) -> Command {
     show_settings(instrument_options(input(command), Shown::InLongHelp))
 }
 
@@ -256,7 +258,7 @@ fn wall_options(command: Command, heading: &'static str) -> Command {
         )
 }
 
-fn film_options(command: Command) -> Command {
+pub(super) fn film_options(command: Command) -> Command {
     let film = "Film on the walls";
     command
         .arg(
@@ -294,12 +296,22 @@ fn cells_across() -> Arg {
 }
 
 /// How and where the main result is printed.
-fn result(command: Command) -> Command {
+pub(super) fn result(command: Command) -> Command {
     let heading = "Output";
     common(command)
         .arg(
             flag("csv", "Print a CSV table, unit in every head")
                 .conflicts_with("json")
+                .help_heading(heading),
+        )
+        .arg(
+            option("csv-locale", "DIALECT", "Dialect of tables: plain, eu [default: plain]")
+                .value_parser(["plain", "eu"])
+                .long_help(
+                    "Dialect of tables: plain, commas and decimal points (RFC 4180); eu, semicolons and decimal \
+                     commas, with a byte order mark, for spreadsheets set to it. Default: plain. Example: --csv \
+                     --csv-locale eu",
+                )
                 .help_heading(heading),
         )
         .arg(
@@ -365,8 +377,9 @@ fn sensitivity() -> Command {
         )
 }
 
-fn fluid_options(command: Command) -> Command {
-    let fluid = "Fluid and operating point";
+/// A fluid without an operating point.
+pub(super) fn fluid_only(command: Command) -> Command {
+    let fluid = "Fluid";
     let entry = |name, value, help, long| {
         option(name, value, help)
             .long_help(long)
@@ -408,6 +421,17 @@ fn fluid_options(command: Command) -> Command {
             "Density of another fluid, such as 1050kg/m^3",
             "Density, above 0, with its unit; needed for the Reynolds number. Example: --density 1050kg/m^3",
         ))
+}
+
+/// A fluid and its operating point.
+fn fluid_options(command: Command) -> Command {
+    let heading = "Operating point";
+    let entry = |name, value, help, long| {
+        option(name, value, help)
+            .long_help(long)
+            .help_heading(heading)
+    };
+    fluid_only(command)
         .arg(entry(
             "length",
             "L",

@@ -77,7 +77,7 @@ pub(super) fn say_settings(matches: &ArgMatches) {
 }
 
 /// What was typed for an option; empty for a switch.
-fn typed(matches: &ArgMatches, name: &str) -> Option<String> {
+pub(super) fn typed(matches: &ArgMatches, name: &str) -> Option<String> {
     if matches.value_source(name) != Some(ValueSource::CommandLine) {
         return None;
     }

@@ -6,6 +6,8 @@
 
 mod accuracy_options;
 mod arguments;
+mod card;
+mod card_arguments;
 mod check;
 mod check_panels;
 mod draw;
@@ -52,6 +54,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("check", matches)) => check::run(matches),
         Some(("draw", matches)) => draw::run(matches),
         Some(("sensitivity", matches)) => sensitivity::run(matches),
+        Some(("card", matches)) => card::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

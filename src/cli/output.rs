@@ -5,7 +5,7 @@ use std::path::{Path, PathBuf};
 
 use clap::ArgMatches;
 
-use crate::report::{OutputFile, PictureFormat, TextOptions, write_files};
+use crate::report::{CsvError, CsvLocale, OutputFile, PictureFormat, TextOptions, write_files};
 
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
@@ -36,7 +36,7 @@ pub(super) fn target(matches: &ArgMatches) -> Option<PathBuf> {
 pub(super) enum Format {
     Text(TextOptions),
     Json,
-    Csv,
+    Csv(CsvLocale),
 }
 
 impl Format {
@@ -44,7 +44,7 @@ impl Format {
         if matches.get_flag("json") {
             Self::Json
         } else if matches.get_flag("csv") {
-            Self::Csv
+            Self::Csv(csv_locale(matches))
         } else {
             Self::Text(TextOptions {
                 ascii: matches.get_flag("ascii"),
@@ -52,6 +52,24 @@ impl Format {
             })
         }
     }
+}
+
+/// Dialect of the tables.
+pub(super) fn csv_locale(matches: &ArgMatches) -> CsvLocale {
+    match matches.get_one::<String>("csv-locale") {
+        Some(word) if word == "eu" => CsvLocale::Eu,
+        _ => CsvLocale::Plain,
+    }
+}
+
+/// A table in the dialect asked for.
+pub(super) fn in_locale(
+    table: Result<String, CsvError>,
+    locale: CsvLocale,
+) -> Result<String, Failure> {
+    table
+        .and_then(|table| locale.apply(&table))
+        .map_err(Failure::not_printed)
 }
 
 /// The pictures that an option asks for, each with its kind.

@@ -8,7 +8,7 @@ use crate::geometry::curves::CHORD_TOLERANCE;
 use crate::geometry::{Film, FilmOn, FilmReport, Filmed, Outline};
 use crate::intake::Section;
 use crate::report::AlternativeRecord;
-use crate::study::{Reach, ReachSides, under_assumption};
+use crate::study::{Reach, ReachSides, solve_for_sensitivity, under_assumption};
 use crate::units;
 
 use super::failure::Failure;
@@ -100,12 +100,21 @@ impl Sections {
 
     /// Solves the section; its proven high value also holds for the lumens that the film left out.
     pub(super) fn solve(&self, options: &SolveOptions) -> Result<SolvedSection, Failure> {
-        let mut solved = solve_outline(&self.outline, options)?;
+        Ok(self.with_left_out(solve_outline(&self.outline, options)?))
+    }
+
+    /// The same on a grid fine enough for integrals over the wall.
+    pub(super) fn solve_for_walls(&self, options: &SolveOptions) -> Result<SolvedSection, Failure> {
+        Ok(self.with_left_out(solve_for_sensitivity(&self.outline, options)?))
+    }
+
+    /// Adds what the film left out to the proven high value.
+    fn with_left_out(&self, mut solved: SolvedSection) -> SolvedSection {
         let left_out = self.film.as_ref().map_or(0.0, |f| f.conductance_left_out);
         if let Ok(bracket) = &mut solved.flow.bracket {
             bracket.high += left_out;
         }
-        Ok(solved)
+        solved
     }
 
     /// Solves the inner and outer section, where they are given.

@@ -113,7 +113,7 @@ impl Request {
         let text = match &self.format {
             Format::Text(options) => report::sensitivity_text(&document, *options),
             Format::Json => report::sensitivity_json(&document).map_err(Failure::not_printed)?,
-            Format::Csv => report::sensitivity_csv(&document).map_err(Failure::not_printed)?,
+            Format::Csv(locale) => output::in_locale(report::sensitivity_csv(&document), *locale)?,
         };
         let inputs = Inputs {
             files: &input::files_read(&self.file, &self.read),

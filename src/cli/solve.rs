@@ -11,7 +11,7 @@ use crate::flow::{
 use crate::geometry::Film;
 use crate::intake::ReadOptions;
 use crate::report::{
-    self, AlternativeRecord, PictureFormat, ReachRecord, SolveDocument, SourceRecord,
+    self, AlternativeRecord, CsvLocale, PictureFormat, ReachRecord, SolveDocument, SourceRecord,
     check_targets, legacy_vtk_path, vtk_paths,
 };
 use crate::study::Reach;
@@ -47,6 +47,7 @@ struct Request {
     vtk: Option<VtkRequest>,
     pictures: Vec<(PathBuf, PictureFormat)>,
     wall_csv: Option<PathBuf>,
+    csv_locale: CsvLocale,
     wall_pictures: Vec<(PathBuf, PictureFormat)>,
     quiet: bool,
     deny_warnings: bool,
@@ -138,6 +139,7 @@ impl Request {
             vtk: vtk(matches)?,
             pictures: output::pictures(matches, "picture")?,
             wall_csv: matches.get_one::<PathBuf>("wall-csv").cloned(),
+            csv_locale: output::csv_locale(matches),
             wall_pictures: output::pictures(matches, "wall-picture")?,
             quiet: matches.get_flag("quiet"),
             deny_warnings: matches.get_flag("deny-warnings"),
@@ -294,7 +296,7 @@ impl Request {
         files: &mut Vec<(PathBuf, Vec<u8>)>,
     ) -> Result<(), Failure> {
         if let Some(path) = &self.wall_csv {
-            let text = report::wall_csv(document).map_err(Failure::not_printed)?;
+            let text = output::in_locale(report::wall_csv(document), self.csv_locale)?;
             files.push((path.clone(), text.into_bytes()));
         }
         for (path, format) in &self.wall_pictures {
@@ -310,7 +312,7 @@ impl Request {
         match &self.format {
             Format::Text(options) => Ok(report::to_text(document, *options)),
             Format::Json => report::to_json(document).map_err(Failure::not_printed),
-            Format::Csv => report::to_csv(&[*document]).map_err(Failure::not_printed),
+            Format::Csv(locale) => output::in_locale(report::to_csv(&[*document]), *locale),
         }
     }
 }

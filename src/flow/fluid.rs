@@ -65,7 +65,9 @@ impl FluidError {
             Self::NotPositive { quantity, .. } => {
                 format!("give a {quantity} above zero, with its unit")
             }
-            Self::OneTemperature => "give viscosity and density at the temperature itself".to_owned(),
+            Self::OneTemperature => {
+                "give viscosity and density at the temperature itself".to_owned()
+            }
             Self::OutOfRange { quantity, .. } => format!(
                 "check the unit of the {quantity}, or give viscosity and density of the fluid yourself"
             ),

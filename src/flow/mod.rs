@@ -51,7 +51,9 @@ pub use shortcuts::{ShortcutRow, shortcuts};
 pub use solve_cost::{LevelCost, SolveCost, StageCost};
 pub use solve_outline::{DEFAULT_MEMORY, FlowError, SolveOptions, SolvedSection, solve_outline};
 pub use temperature_law::{LAW_ERROR, MOST_COEFFICIENTS, TemperatureLaw, TemperatureLawError};
-pub use validity_range::{outside_validity, validity_warnings};
+pub use validity_range::{
+    ENTRANCE_SHARE, NOT_LAMINAR, outside_validity, pressure_limit, validity_warnings,
+};
 pub use wall_curve::{CurvePoint, LoopCurve, PointKind, SINGULAR_LENGTH, WallCurve, WallPlace};
 pub use wall_statistics::{
     PERCENTILES, SingularCorner, WHOLE_WALL, WallPart, WallReport, WallStatistics,

@@ -177,7 +177,10 @@ fn least_squares(points: &[(f64, f64)], terms: usize) -> Vec<f64> {
     matrix
         .svd(true, true)
         .solve(&right, f64::EPSILON)
-        .map_or_else(|_| vec![0.0; terms], |found| found.iter().copied().collect())
+        .map_or_else(
+            |_| vec![0.0; terms],
+            |found| found.iter().copied().collect(),
+        )
 }
 
 #[cfg(test)]

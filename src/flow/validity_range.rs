@@ -15,9 +15,9 @@ use super::section_flow::SectionFlow;
 /// measured rise of Cornish (1928), Proc. R. Soc. Lond. A 120, 691, begins near 1800 (his figures read).
 const NEARLY_TURBULENT: f64 = 1800.0;
 /// Reynolds number on the hydraulic diameter above which flow is not taken as laminar (textbook; from memory).
-const NOT_LAMINAR: f64 = 2000.0;
+pub const NOT_LAMINAR: f64 = 2000.0;
 /// Share of the length that the entrance may take.
-const ENTRANCE_SHARE: f64 = 0.1;
+pub const ENTRANCE_SHARE: f64 = 0.1;
 /// Share of the absolute pressure that a gas may lose before its density change counts.
 const GAS_DROP_SHARE: f64 = 0.1;
 /// Mach number above which density changes with velocity count (about 0.5 %; textbook).
@@ -39,6 +39,19 @@ const WATER_HEAT_CAPACITY: f64 = 4180.0;
 const FRICTION_HEATING: f64 = 1.0;
 /// Temperature from which a fluid can scald, K (60 C).
 const HOT: f64 = 333.15;
+
+/// Largest pressure drop for which the properties of a fluid hold, Pa; `None` where it is not known.
+///
+/// Water: where its properties at 1e5 Pa are off by about half a per cent. A gas of known state: a tenth of
+/// its absolute pressure, beyond which its density changes along the channel.
+pub fn pressure_limit(fluid: &Fluid) -> Option<f64> {
+    if fluid.is_water() {
+        return Some(WATER_PRESSURE);
+    }
+    fluid
+        .gas_state()
+        .map(|state| GAS_DROP_SHARE * state.pressure)
+}
 
 /// Warnings about the use of a solved section with a fluid and, when there is one, at an operating point.
 ///

@@ -2,6 +2,11 @@
 //!
 //! Every format is a view of one [`SolveDocument`].
 
+mod card_csv;
+mod card_document;
+mod card_json;
+mod card_modelica;
+mod card_text;
 mod check_axes;
 mod check_curves;
 mod check_dimensions;
@@ -15,6 +20,7 @@ mod check_picture;
 mod colour_map;
 mod contour;
 mod csv;
+mod csv_locale;
 mod curve_thinning;
 mod document;
 mod drawing;
@@ -54,12 +60,18 @@ mod wall_csv;
 mod wall_picture;
 mod write;
 
+pub use card_csv::card_csv;
+pub use card_document::{CardDocument, CardRecord, FailedCard};
+pub use card_json::{CARD_JSON_SCHEMA, CARD_SCHEMA, card_json};
+pub use card_modelica::card_modelica;
+pub use card_text::card_text;
 pub use check_page::{check_picture_bytes, draw_check};
 pub use check_picture::{
     Band, BandKind, CheckPicture, Curve, CurveKind, CurvePanel, Cut, Dimension, ImagePanel,
     MapPanel, Mark, MarkKind, Panel, Region, RegionKind,
 };
 pub use csv::{CsvError, to_csv};
+pub use csv_locale::CsvLocale;
 pub use document::{ReachRecord, Scale, SolveDocument, SourceRecord};
 pub use drawing::{Anchor, Colour, Drawing, Item, Raster, TextSize};
 pub use json::{SCHEMA, to_json};

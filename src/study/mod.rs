@@ -1,6 +1,7 @@
 //! Questions over one or many sections that each take several solves or their derivatives.
 
 mod assumptions;
+mod card;
 mod facing;
 mod moved_outline;
 mod reach;
@@ -10,6 +11,10 @@ mod wall_motion;
 mod wall_motion_cases;
 
 pub use assumptions::{Assumption, under_assumption};
+pub use card::{
+    CardError, CardLimits, CardRequest, CardSensitivity, SectionCard, ShearPerFlow, Stated,
+    StatedUncertainty, Uncertainty, UncertaintyPart, VISCOSITY_INPUT,
+};
 pub use moved_outline::{MovedOutline, moved_outline};
 pub use reach::{Reach, ReachBound, ReachError, ReachSide, ReachSides};
 pub use resolve_check::{Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE};

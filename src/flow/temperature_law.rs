@@ -95,7 +95,7 @@ impl TemperatureLaw {
             .temperature
             .filter(|_| fluid.knows_temperatures())
             .ok_or(TemperatureLawError::OneTemperature)?;
-        if !(low < high) {
+        if low.partial_cmp(&high) != Some(std::cmp::Ordering::Less) {
             return Err(TemperatureLawError::NoRange { low, high });
         }
         if !(low..=high).contains(&reference) {
@@ -170,9 +170,11 @@ fn chebyshev_points([low, high]: [f64; 2]) -> impl Iterator<Item = f64> {
 
 /// Coefficients of `x`, `x^2`, and so on.
 fn least_squares(points: &[(f64, f64)], terms: usize) -> Vec<f64> {
-    let matrix = DMatrix::from_fn(points.len(), terms, |row, column| {
-        points[row].0.powi(column as i32 + 1)
-    });
+    // Column by column: x, x^2, and so on.
+    let powers = (1..)
+        .take(terms)
+        .flat_map(|power| points.iter().map(move |p| p.0.powi(power)));
+    let matrix = DMatrix::from_iterator(points.len(), terms, powers);
     let right = DVector::from_iterator(points.len(), points.iter().map(|p| p.1));
     matrix
         .svd(true, true)

@@ -66,6 +66,7 @@ pub fn correct(
     };
     let mut scan = Scan::new(&raw.profile, options)?;
     records::orientation(&mut trace, &scan, options);
+    scan.refuse_straight()?;
     scan.mark_narrow_spikes(options);
     if !repeats.is_empty() {
         let agreement = repeats::join(&mut scan, repeats, options)?;

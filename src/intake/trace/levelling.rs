@@ -251,7 +251,10 @@ fn polynomial(samples: &[ZoneSamples], degree: usize, fit: LineFit) -> Option<Po
         );
         let scatter = spread(&rests, f64::MIN_POSITIVE);
         let typical = samples.iter().map(|s| s.line.scatter).fold(0.0, f64::max);
-        let scatter = scatter.max(typical);
+        // Rounding of exact data is no reason to leave a zone out.
+        let highest = samples.iter().map(|s| s.line.level.abs());
+        let least = 1e-12 * highest.fold(0.0, f64::max);
+        let scatter = scatter.max(typical).max(least);
         weights = rests.iter().map(|rest| bisquare(*rest, scatter)).collect();
         for _ in 0..10 {
             found = solved(&equations, &weights, size)?;

@@ -55,6 +55,14 @@ pub enum TraceProblem {
         /// Noise from sample to sample, m.
         noise: f64,
     },
+    /// All heights lie on one straight line.
+    #[error("{}", straight_words(*rise, *length))]
+    Straight {
+        /// Height of its end over its start, m.
+        rise: f64,
+        /// Length of the trace, m.
+        length: f64,
+    },
     /// There is relief, but nothing that goes down between two lands.
     #[error(
         "no channel lies between two lands: the trace holds {ridges} ridge(s) or step(s) of about {}",
@@ -216,6 +224,20 @@ pub enum TraceProblem {
     },
 }
 
+/// A trace without relief, in words.
+fn straight_words(rise: f64, length: f64) -> String {
+    if rise.abs() <= 0.0 {
+        return "all heights of the trace are the same: it holds no channel".to_owned();
+    }
+    let way = if rise > 0.0 { "rises" } else { "falls" };
+    format!(
+        "the trace is one straight line that {way} by {} over {}, and nothing departs from it by more than \
+         the rounding of the heights: it holds no channel",
+        format_length(rise.abs()),
+        format_length(length)
+    )
+}
+
 impl TraceProblem {
     /// What the user can do, in one sentence.
     pub fn hint(&self) -> String {
@@ -238,6 +260,10 @@ impl TraceProblem {
             Self::NoChannel { .. } => {
                 "check that the trace crosses the channel; a channel this shallow is found when its \
                  lands are stated: --land-zones 0um..50um,200um..250um"
+            }
+            Self::Straight { .. } => {
+                "check that the trace crosses the channel and that the heights were taken from the right \
+                 column: --z-column names another one"
             }
             Self::NoGroove { .. } => {
                 "if the ridges are the channels (mould master, cast): --invert; else trace from land to \

@@ -428,7 +428,7 @@ fn a_straight_trace_is_refused_in_plain_words() {
         ] {
             let problem = refused(slope, step, options);
             assert!(problem.to_string().contains(words), "{problem}");
-            assert!(problem.hint().contains("--z-column"));
+            assert!(problem.hint().contains("--z-column says"));
         }
     }
 }

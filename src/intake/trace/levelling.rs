@@ -86,6 +86,12 @@ impl Reference {
         }
     }
 
+    /// Largest difference of two neighbouring zones in their distance from the line, m.
+    pub(super) fn largest_step(&self) -> f64 {
+        let steps = self.offsets.windows(2).map(|pair| pair[1] - pair[0]);
+        steps.fold(0.0, |largest, step| largest.max(step.abs()))
+    }
+
     /// Largest distance of a zone from the line, m.
     pub(super) fn worst(&self) -> f64 {
         self.offsets.iter().fold(0.0, |worst, o| worst.max(o.abs()))

@@ -17,6 +17,9 @@ const SMALLEST_SPIKE: f64 = 0.005;
 /// Widest spike, in widths of the narrowest land or channel.
 const WIDEST_SPIKE: f64 = 0.02;
 
+/// Relief that is none, m: a hundredth of an atom.
+pub(super) const NO_RELIEF: f64 = 1e-12;
+
 /// Steps of the smallest height over a whole trace from which a slope counts as a staircase of rounding.
 const FEWEST_STAIRS: f64 = 5.0;
 
@@ -108,7 +111,7 @@ impl Scan {
         let step = steps.filter(|s| *s > 0.0).fold(f64::INFINITY, f64::min);
         let is_staircase = relief <= 1.5 * step && range >= FEWEST_STAIRS * step;
         let highest = good.z.iter().fold(0.0_f64, |most, z| most.max(z.abs()));
-        if is_staircase || relief <= 1e-12 * highest {
+        if is_staircase || relief <= (1e-12 * highest).max(NO_RELIEF) {
             let (rise, length) = (high - low, to - from);
             return Err(TraceProblem::Straight { rise, length });
         }

@@ -251,7 +251,7 @@ fn a_single_spike_on_a_land_is_listed_and_no_warning() {
             .contains("from 49.00")
     );
     // The same samples missing on the wall may move the section.
-    let spoilt = groove("x_um,z_um", 1.0).replace("\n100,0\n", "\n100,\n");
+    let spoilt = groove("x_um,z_um", 1.0).replace("\n100,0\n", "\n100,nan\n");
     let folder = Folder::with("a.csv", spoilt);
     let run = folder.line("trace a.csv --no-solve --deny-warnings");
     assert_eq!(run.status, 1, "{}", run.err);

@@ -222,7 +222,7 @@ const MAP: [Row; 3] = [
         "average",
         "LENGTH",
         "Length of groove averaged for a cut",
-        "Length of groove over which each cut is averaged, 0 or above. Default: 0 at a station, all that is \
+        "Length of groove over which each cut is averaged, above 0. Default: one line at a station, all that is \
          there without one. Example: --average 50um",
     ),
     (

@@ -232,10 +232,23 @@ fn cuts(matches: &ArgMatches) -> Result<CutOptions, Failure> {
         .collect::<Result<_, _>>()?;
     Ok(CutOptions {
         stations,
-        average: quantity(matches, "average", units::parse_length)?,
-        direction: quantity(matches, "groove-direction", units::parse_angle)?,
+        average: above_zero(matches, "average", "20um")?,
+        direction: direction(matches)?,
         level: !matches.get_flag("no-plane"),
     })
+}
+
+/// The direction of a groove, not more than a full turn: beyond that the number was hardly meant so, and
+/// its last digits decide.
+fn direction(matches: &ArgMatches) -> Result<Option<f64>, Failure> {
+    let angle = quantity(matches, "groove-direction", units::parse_angle)?;
+    if angle.is_some_and(|angle| angle.abs() > std::f64::consts::TAU) {
+        return Err(Failure::usage(
+            "--groove-direction: the angle is more than a full turn",
+            "count it anticlockwise from the x axis, for example --groove-direction 26deg",
+        ));
+    }
+    Ok(angle)
 }
 
 /// A value that is read by its own rules.

@@ -6,8 +6,7 @@ use clap::ArgMatches;
 
 use crate::flow::SolveOptions;
 use crate::intake::{
-    InstrumentReading, ReadOptions, SectionKind, Step, heights_csv, read_height_map,
-    read_instrument, to_toml,
+    InstrumentReading, ReadOptions, SectionKind, Step, heights_csv, read_instrument, to_toml,
 };
 use crate::report::{
     self, AlternativeRecord, ConductanceRecord, MeasureRecord, PictureFormat, ReadingDocument,
@@ -56,8 +55,12 @@ pub(super) fn run(kind: Kind, matches: &ArgMatches) -> Result<ExitStatus, Failur
     super::set_threads(matches)?;
     let request = Request::new(kind, matches)?;
     request.check_targets()?;
-    request.write_heights()?;
-    let reading = read_instrument(&request.file, &request.read)?;
+    let mut heights = None;
+    let reading = read_instrument(&request.file, &request.read, &mut |map| {
+        heights = request.heights.as_ref().map(|_| heights_csv(map));
+    });
+    request.write_heights(heights)?;
+    let reading = reading?;
     input::refuse_foreign_options(&request.read, &reading.provenance)?;
     request.check_kind(&reading)?;
     say_settings(matches);
@@ -111,17 +114,16 @@ impl Request {
     }
 
     /// The heights of a map as read; they are of use even where no groove is found in them.
-    fn write_heights(&self) -> Result<(), Failure> {
-        let Some(path) = &self.heights else {
+    fn write_heights(&self, table: Option<String>) -> Result<(), Failure> {
+        let (Some(path), Some(table)) = (&self.heights, table) else {
             return Ok(());
         };
-        let map = read_height_map(&self.file, &self.read)?;
-        let bytes = heights_csv(&map).into_bytes();
         let inputs = output::Inputs {
             files: &input::files_read(&self.file, &self.read),
             quiet: self.quiet,
         };
-        output::deliver(vec![(path.clone(), bytes)], String::new(), None, &inputs)
+        let files = vec![(path.clone(), table.into_bytes())];
+        output::deliver(files, String::new(), None, &inputs)
     }
 
     /// A map given to `trace`, say, has a command of its own.

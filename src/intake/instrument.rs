@@ -109,41 +109,23 @@ pub struct Intake {
 
 /// Reads the file of an instrument, or standard input when the path is `-`.
 ///
+/// A height map is shown to `see_map` as it was read, before grooves are looked for: its heights are of use
+/// even where none is found.
+///
 /// # Errors
 /// [`ReadError`] when the file cannot be read, holds something else, or leaves a unit, a scale or a choice open.
-pub fn read_instrument(path: &Path, options: &ReadOptions) -> Result<InstrumentReading, ReadError> {
+pub fn read_instrument(
+    path: &Path,
+    options: &ReadOptions,
+    see_map: &mut dyn FnMut(&HeightMap),
+) -> Result<InstrumentReading, ReadError> {
     let name = if path == Path::new("-") {
         "standard input".to_owned()
     } else {
         path.display().to_string()
     };
     let bytes = read_bytes(path).map_err(|problem| ReadError::new(&name, problem))?;
-    instrument_from_bytes(&bytes, &name, options)
-}
-
-/// Reads a height map alone, without a look for grooves.
-///
-/// # Errors
-/// As [`read_instrument`]; also where the file holds no height map.
-pub fn read_height_map(path: &Path, options: &ReadOptions) -> Result<HeightMap, ReadError> {
-    let name = path.display().to_string();
-    let bytes = read_bytes(path).map_err(|problem| ReadError::new(&name, problem))?;
-    let content =
-        content_of(&bytes, Some(SectionKind::HeightMap)).map_err(|fault| fault.in_file(&name))?;
-    let reader = Reader {
-        bytes: &bytes,
-        path: &name,
-        options,
-    };
-    let raw = match content {
-        FileContent::Map(source) => reader.map_table(&source)?,
-        FileContent::Surface(format) => reader.surface(format)?.2,
-        _ => return Err(ReadError::new(&name, ReadProblem::NotAMap)),
-    };
-    match raw {
-        Raw::Map(map, _) => Ok(map),
-        Raw::Trace(..) => Err(ReadError::new(&name, ReadProblem::NotAMap)),
-    }
+    read_bytes_seeing_map(&bytes, &name, options, see_map)
 }
 
 /// Reads the bytes of an instrument's file; `path` is for messages and provenance.
@@ -155,10 +137,25 @@ pub fn instrument_from_bytes(
     path: &str,
     options: &ReadOptions,
 ) -> Result<InstrumentReading, ReadError> {
+    read_bytes_seeing_map(bytes, path, options, &mut |_| {})
+}
+
+/// Reads the bytes of an instrument's file and shows a height map as it was read.
+fn read_bytes_seeing_map(
+    bytes: &[u8],
+    path: &str,
+    options: &ReadOptions,
+    see_map: &mut dyn FnMut(&HeightMap),
+) -> Result<InstrumentReading, ReadError> {
     check_file_size(bytes.len() as u64, MAX_FILE_BYTES)
         .map_err(|problem| ReadError::new(path, problem))?;
     let content = content_of(bytes, options.as_kind).map_err(|fault| fault.in_file(path))?;
-    read_instrument_content(content, bytes, path, options)
+    let reader = Reader {
+        bytes,
+        path,
+        options,
+    };
+    reader.read(content, see_map)
 }
 
 /// Reads an instrument's file of which it is known what it holds.
@@ -173,7 +170,7 @@ pub(crate) fn read_instrument_content(
         path,
         options,
     }
-    .read(content)
+    .read(content, &mut |_| {})
 }
 
 /// A trace, a map or a picture that was read but not yet worked on.
@@ -190,7 +187,11 @@ struct Reader<'a> {
 }
 
 impl Reader<'_> {
-    fn read(&self, content: FileContent) -> Result<InstrumentReading, ReadError> {
+    fn read(
+        &self,
+        content: FileContent,
+        see_map: &mut dyn FnMut(&HeightMap),
+    ) -> Result<InstrumentReading, ReadError> {
         let options = &self.options.instrument;
         let (kind, encoding, raw) = match content {
             FileContent::Section(kind, _) => {
@@ -227,6 +228,7 @@ impl Reader<'_> {
                 Ok(self.reading(kind, encoding, data, (steps, warnings)))
             }
             Raw::Map(map, warnings) => {
+                see_map(&map);
                 let steps = map.steps.clone();
                 let data = InstrumentData::Map(Box::new(self.map(map)?));
                 Ok(self.reading(kind, encoding, data, (steps, warnings)))

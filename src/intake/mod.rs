@@ -47,7 +47,7 @@ pub use height_map::{
 };
 pub use instrument::{
     InstrumentData, InstrumentOptions, InstrumentReading, Intake, MapReading, TraceReading,
-    instrument_from_bytes, read_height_map, read_instrument,
+    instrument_from_bytes, read_instrument,
 };
 pub use limits::{MAX_FILE_BYTES, MAX_MARKUP_BYTES, MAX_VERTICES};
 pub use micrograph::{

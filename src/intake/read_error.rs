@@ -246,9 +246,6 @@ pub enum ReadProblem {
     /// Something else where a trace is needed.
     #[error("this is not a trace")]
     NotATrace,
-    /// Something else where a height map is needed.
-    #[error("this is not a height map")]
-    NotAMap,
     /// Several sections where one is needed.
     #[error("there are {} channels: {}", list.len(), several(list))]
     SeveralSections {

@@ -44,7 +44,6 @@ impl ReadProblem {
             Self::NotOfInstrument { .. } => {
                 "solve it as it is with `etchwise solve`, or say what it is by --as trace, map or image"
             }
-            Self::NotAMap => "a profile in one line is read by `etchwise trace`",
             Self::NotATrace => "give a trace in columns or a profile in an x3p or sdf file",
             Self::SeveralSections { is_map: false, .. } => {
                 "choose one by its number, for example --groove 1; `etchwise trace` writes a section file for each"

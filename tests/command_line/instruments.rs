@@ -217,6 +217,48 @@ fn maps_and_pictures_of_the_shipped_kind_come_out_as_they_were_made() {
 }
 
 #[test]
+fn heights_of_a_map_without_a_groove_are_written_all_the_same() {
+    let rows = "1.5 1.5 1.5 1.5 1.5 1.5 1.5 1.5 1.5 1.5\n".repeat(12);
+    let head = "# Width: 100 um\n# Height: 100 um\n# Value units: um\n";
+    let folder = Folder::with("flat.txt", format!("{head}{rows}"));
+    let run = folder.line("map flat.txt --heights h.csv --no-solve");
+    assert_eq!(run.status, 3, "{}", run.err);
+    assert!(run.err.contains("no groove direction"), "{}", run.err);
+    let table = std::fs::read_to_string(folder.path("h.csv")).unwrap();
+    assert_eq!(table.lines().count(), 12);
+    for number in table.lines().flat_map(|line| line.split(',')) {
+        assert!((number.parse::<f64>().unwrap() - 1.5e-6).abs() < 1e-18);
+    }
+}
+
+#[test]
+fn a_single_spike_on_a_land_is_listed_and_no_warning() {
+    let spoilt = groove("x_um,z_um", 1.0).replace("\n50,0\n", "\n50,4\n");
+    let folder = Folder::with("a.csv", spoilt);
+    let run = folder.line("trace a.csv --json --quiet --no-solve --deny-warnings --picture a.svg");
+    assert_eq!(run.status, 0, "{}{}", run.out, run.err);
+    let result = json(&run.out);
+    let steps = result["steps"].as_array().unwrap();
+    let bridge = steps.iter().find(|step| step["what"] == "bridge").unwrap();
+    assert!((bound(bridge, "/numbers/from_m") - 49e-6).abs() < 1e-12);
+    assert!((bound(bridge, "/numbers/size_m") - 4e-6).abs() < 1e-12);
+    let text = bridge["text"].as_str().unwrap();
+    assert!(text.contains("spike of 1 sample(s), 4.000"), "{text}");
+    assert!(
+        folder
+            .line("trace a.csv --no-solve")
+            .out
+            .contains("from 49.00")
+    );
+    // The same samples missing on the wall may move the section.
+    let spoilt = groove("x_um,z_um", 1.0).replace("\n100,0\n", "\n100,nan\n");
+    let folder = Folder::with("a.csv", spoilt);
+    let run = folder.line("trace a.csv --no-solve --deny-warnings");
+    assert_eq!(run.status, 1, "{}", run.err);
+    assert!(run.out.contains("samples_bridged"), "{}", run.out);
+}
+
+#[test]
 fn settings_are_told_on_standard_error_only() {
     let folder = Folder::with("a.csv", groove("x_um,z_um", 1.0));
     let run = folder.line("solve a.csv --json --quiet --show-settings --cutoff 8um");

@@ -124,7 +124,7 @@ pub enum MapProblem {
         what: &'static str,
     },
     /// There are more heights than the file declares.
-    #[error("the file declares {expected} {what} and holds {found}")]
+    #[error("the file declares {expected} {what} and holds more: {found} were found")]
     TooMany {
         /// How many there are.
         found: usize,

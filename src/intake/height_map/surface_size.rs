@@ -47,7 +47,8 @@ pub(super) fn check_metres(surface: &SurfaceSize) -> Result<(), MapProblem> {
                 && SPANS.contains(&(surface.span * metres))
         })
     });
-    if !(SMALLEST..=limit).contains(&largest) || !SPACINGS.contains(&surface.spacing) {
+    let is_thin = surface.size.iter().any(|&s| s > 0.0 && s < SMALLEST);
+    if !(SMALLEST..=limit).contains(&largest) || is_thin || !SPACINGS.contains(&surface.spacing) {
         return Err(MapProblem::ImplausibleSize {
             size: surface.size,
             spacing: surface.spacing,
@@ -93,6 +94,13 @@ mod tests {
         assert_eq!(likely(1e-3, 1e-6, 26.0), None);
         // Heights scaled down twice.
         assert_eq!(likely(478e-6, 645e-9, 6e-13), None);
+        // One side far too small.
+        let thin = SurfaceSize {
+            size: [1e-3, 1e-300],
+            spacing: 2e-6,
+            span: 30e-6,
+        };
+        assert!(check_metres(&thin).is_err());
         let plausible = SurfaceSize {
             size: [1e-3, 1e-3],
             spacing: 2e-6,

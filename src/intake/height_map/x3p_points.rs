@@ -120,7 +120,7 @@ fn linked(
         return Err(MapProblem::TooMany {
             found: points,
             expected: count,
-            what: "points or more",
+            what: "points",
         });
     }
     check_count(points, count)?;

@@ -151,7 +151,8 @@ pub enum MicrographProblem {
     },
     /// A stated threshold has all pixels on one side.
     #[error(
-        "the threshold {threshold} has all pixels on one side: grey values run from {low} to {high}"
+        "the threshold {} has all pixels on one side: grey values run from {low} to {high}",
+        format_significant(*threshold, 6)
     )]
     ThresholdOutside {
         /// The threshold.

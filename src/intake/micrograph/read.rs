@@ -10,7 +10,7 @@ use super::region_choice::{Part, choose};
 use super::section_contour::traced;
 use crate::geometry::Outline;
 use crate::intake::section_reach::{Reach, ReachSection};
-use crate::units::{format_percent, format_significant};
+use crate::units::{format_length, format_percent, format_significant};
 
 /// Islands below this are filled unless asked otherwise, pixels.
 const SMALLEST_ISLAND: f64 = 30.0;
@@ -72,6 +72,7 @@ pub fn read_micrograph(
     let tolerance = options.simplify.map_or(TOLERANCE, |metres| {
         metres / metres_per_pixel[0].max(metres_per_pixel[1])
     });
+    check_simplify(options, &traced.loops, tolerance)?;
     let sides = traced
         .grey_edge()
         .map(|edge| [edge.inner.as_slice(), edge.outer.as_slice()]);
@@ -151,6 +152,36 @@ fn reach_of(
         )),
     };
     (Some(reach), [inner.loops, outer.loops])
+}
+
+/// Largest `--simplify`, as a fraction of the smaller side of the section: beyond that it is the tolerance
+/// that makes the section.
+const SIMPLIFY_LIMIT: f64 = 0.02;
+
+/// Refuses a stated tolerance, here in pixels, that is not small against the section.
+fn check_simplify(
+    options: &MicrographOptions,
+    loops: &[PixelLoop],
+    tolerance: f64,
+) -> Result<(), MicrographProblem> {
+    let Some(stated) = options.simplify else {
+        return Ok(());
+    };
+    let side = |axis: usize| {
+        let places = loops.iter().flatten().map(|point| point[axis]);
+        let (low, high) = places.fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), p| {
+            (low.min(p), high.max(p))
+        });
+        high - low
+    };
+    if tolerance <= SIMPLIFY_LIMIT * side(0).min(side(1)) {
+        return Ok(());
+    }
+    Err(MicrographProblem::OptionRange {
+        option: "--simplify",
+        value: format_length(stated),
+        range: "at most a fiftieth of the smaller side of the section",
+    })
 }
 
 /// Refuses a section of implausible size.

@@ -146,7 +146,7 @@ fn pictures_without_a_wall_are_refused() {
 fn options_out_of_range_are_named() {
     type Change = fn(&mut MicrographOptions);
     let drawn = Drawn::disc(64, [32.0, 32.0], 20.0);
-    let cases: [(Change, &str); 21] = [
+    let cases: [(Change, &str); 22] = [
         (|o| o.scale = None, "no scale"),
         (|o| o.scale = Some(-1.0), "--scale"),
         (|o| o.scale = Some(f64::NAN), "--scale"),
@@ -178,6 +178,7 @@ fn options_out_of_range_are_named() {
             "--fluid-is bright",
         ),
         (|o| o.simplify = Some(-1.0), "--simplify"),
+        (|o| o.simplify = Some(1.0), "--simplify"),
         (|o| o.smallest_island = Some(f64::NAN), "--islands-above"),
         (|o| o.largest_pixels = 4095, "64 x 64"),
     ];

@@ -2,7 +2,8 @@
 
 use super::corrected::{Change, ChangeKind};
 use super::profile::{Profile, Zone};
-use crate::units::format_length;
+use crate::intake::step::Step;
+use crate::units::{format_length, format_percent};
 use crate::warning::{Code, Warning};
 
 /// Bridges every run of samples that is missing (NaN) or marked.
@@ -51,24 +52,108 @@ fn bridge_run(profile: &mut Profile, before: usize, after: usize) -> Change {
     }
 }
 
-/// What bridges may have hidden.
+/// A bridge lies on a wall if the heights at its ends differ by more than this share of the depth.
+const ON_WALL: f64 = 0.05;
+
+/// A bridge is wide if it replaces more than this share of the width of the narrowest channel.
+const WIDE: f64 = 0.05;
+
+/// Bridges are many if they replace more than this share of the samples of one channel, or of the trace.
+const MANY: f64 = 0.05;
+
+/// Bridges that are listed one by one; the rest is summed up.
+const LISTED: usize = 20;
+
+impl Change {
+    /// Length that the replaced samples stand for, m: without the one spacing more from end to end.
+    fn replaced(&self) -> f64 {
+        let samples = self.samples as f64;
+        (self.zone.to - self.zone.from) * samples / (samples + 1.0)
+    }
+}
+
+/// What of the trace bridges can have moved.
+#[derive(Debug, Clone, Copy, PartialEq)]
 struct Doubts {
-    /// Bridges over a wall, widest.
-    walls: usize,
-    /// Bridges over more than half of a channel.
+    /// Bridges on a wall.
+    on_walls: usize,
+    /// Bridges that replace too much of a channel's width.
     wide: usize,
-    /// The widest bridge, m.
+    /// Largest share of samples bridged, of a channel or of the trace.
+    share: f64,
+    /// The widest bridge from end to end, m.
     widest: f64,
 }
 
-/// The warning about bridges, if there are any.
+impl Doubts {
+    /// Whether bridges can have moved the result.
+    fn matter(&self) -> bool {
+        self.on_walls + self.wide > 0 || self.share > MANY
+    }
+}
+
+/// The list of bridges, one step each: the widest and highest, in their order along the trace.
+pub(super) fn bridge_list(changes: &[Change]) -> Vec<Step> {
+    let mut order: Vec<&Change> = changes.iter().collect();
+    order.sort_by(|a, b| {
+        let widths = b.samples.cmp(&a.samples);
+        widths.then(b.size.abs().total_cmp(&a.size.abs()))
+    });
+    let rest = order.split_off(order.len().min(LISTED));
+    order.sort_by(|a, b| a.zone.from.total_cmp(&b.zone.from));
+    let mut steps: Vec<Step> = order.into_iter().map(listed).collect();
+    if let Some(largest) = rest.first() {
+        let samples: usize = rest.iter().map(|c| c.samples).sum();
+        let text = format!(
+            "and {} more of at most {} sample(s) each, {samples} in all; the check picture marks them",
+            rest.len(),
+            largest.samples
+        );
+        let numbers = [("more", rest.len() as f64), ("samples", samples as f64)];
+        steps.push(Step::new("bridges", text).with(&numbers));
+    }
+    steps
+}
+
+/// One bridge with its place and size.
+fn listed(change: &Change) -> Step {
+    let what = match change.kind {
+        ChangeKind::Spike => {
+            let side = if change.size < 0.0 { "below" } else { "above" };
+            let size = format_length(change.size.abs());
+            format!("spike of {} sample(s), {size} {side}", change.samples)
+        }
+        ChangeKind::Missing => format!("gap of {} sample(s)", change.samples),
+    };
+    let Zone { from, to } = change.zone;
+    let text = format!(
+        "{what} the straight line from {} to {}",
+        format_length(from),
+        format_length(to)
+    );
+    let text = match change.kind {
+        ChangeKind::Spike => text,
+        ChangeKind::Missing => text.replacen("the straight", "bridged by the straight", 1),
+    };
+    Step::new("bridge", text).with(&[
+        ("from_m", from),
+        ("to_m", to),
+        ("samples", change.samples as f64),
+        ("size_m", change.size),
+    ])
+}
+
+/// The warning about bridges, where they can have moved the result: one lies on a wall ([`ON_WALL`]), is
+/// wide beside the channels ([`WIDE`]), or they are many ([`MANY`]). Where no channel is known, no bridge
+/// is known to be narrow, and every one counts as wide.
 pub(super) fn bridge_warning(
     changes: &[Change],
     profile: &Profile,
     grooves: &[Zone],
     depth: f64,
 ) -> Option<Warning> {
-    if changes.is_empty() {
+    let doubts = doubts(changes, profile, grooves, depth);
+    if !doubts.matter() {
         return None;
     }
     let count = |kind| {
@@ -78,7 +163,6 @@ pub(super) fn bridge_warning(
     };
     let (spikes, spike_samples) = count(ChangeKind::Spike);
     let (gaps, missing) = count(ChangeKind::Missing);
-    let doubts = doubts(changes, profile, grooves, depth);
     let mut parts = Vec::new();
     if spikes > 0 {
         parts.push(format!("{spikes} spike(s) ({spike_samples} samples)"));
@@ -86,65 +170,100 @@ pub(super) fn bridge_warning(
     if gaps > 0 {
         parts.push(format!("{gaps} gap(s) ({missing} samples)"));
     }
-    let mut message = vec![format!(
-        "{} bridged by straight lines, the widest over {}",
-        parts.join(" and "),
-        format_length(doubts.widest)
-    )];
-    if doubts.walls > 0 {
-        message.push(format!("{} of them over a wall", doubts.walls));
-    }
-    if doubts.wide > 0 {
-        message.push(format!("{} over more than half of a channel", doubts.wide));
-    }
-    let advice = if doubts.walls + doubts.wide > 0 {
-        "the wall or the floor there is a guess: measure again, or take another channel"
-    } else if spikes > 0 {
-        "look at the list of changes; --keep-spikes leaves spikes, --spike-size sets their height"
-    } else {
-        "look at the list of changes"
-    };
     Some(Warning {
         code: Code::SamplesBridged,
-        message: message.join("; "),
-        advice: advice.to_owned(),
+        message: format!(
+            "{} bridged by straight lines, which may move the section: {}",
+            parts.join(" and "),
+            doubts.words(grooves.is_empty())
+        ),
+        advice: if doubts.on_walls + doubts.wide > 0 {
+            "the wall or the floor there is a guess: measure again, or take another channel; the steps \
+             list the bridges"
+        } else {
+            "the steps list the bridges; --keep-spikes leaves spikes, --spike-size sets their height"
+        }
+        .to_owned(),
         numbers: vec![
             ("spikes", spikes as f64),
             ("spike_samples", spike_samples as f64),
             ("gaps", gaps as f64),
             ("missing_samples", missing as f64),
             ("widest_m", doubts.widest),
-            ("over_walls", doubts.walls as f64),
-            ("over_half_a_channel", doubts.wide as f64),
+            ("on_walls", doubts.on_walls as f64),
+            ("wide", doubts.wide as f64),
+            ("largest_share", doubts.share),
         ],
     })
 }
 
+impl Doubts {
+    /// What may have moved the section.
+    fn words(&self, no_channel: bool) -> String {
+        let mut found = Vec::new();
+        if self.on_walls > 0 {
+            found.push(format!(
+                "{} on a wall (ends differ in height by more than {} of the depth)",
+                self.on_walls,
+                format_percent(ON_WALL, 2)
+            ));
+        }
+        if self.wide > 0 {
+            let limit = if no_channel {
+                "no channel is known to set them against".to_owned()
+            } else {
+                let limit = format_percent(WIDE, 2);
+                format!("more than {limit} of the narrowest channel's width")
+            };
+            found.push(format!(
+                "{} wide ({limit}), the widest over {}",
+                self.wide,
+                format_length(self.widest)
+            ));
+        }
+        if self.share > MANY {
+            found.push(format!(
+                "{} of the samples of one channel or of the trace",
+                format_percent(self.share, 3)
+            ));
+        }
+        found.join("; ")
+    }
+}
+
 fn doubts(changes: &[Change], profile: &Profile, grooves: &[Zone], depth: f64) -> Doubts {
-    let height = |x: f64| {
-        let at = profile.x.partition_point(|p| *p < x);
-        profile.z.get(at).copied().unwrap_or(f64::NAN)
+    let index = |x: f64| profile.x.partition_point(|p| *p < x);
+    let height = |x: f64| profile.z.get(index(x)).copied().unwrap_or(f64::NAN);
+    let widths = grooves.iter().map(|groove| groove.to - groove.from);
+    let narrowest = widths.fold(f64::INFINITY, f64::min);
+    let limit = if narrowest.is_finite() {
+        WIDE * narrowest
+    } else {
+        0.0
     };
+    let is_within = |value: f64, limit: f64| value <= limit;
+    let samples: usize = changes.iter().map(|c| c.samples).sum();
     let mut found = Doubts {
-        walls: 0,
+        on_walls: 0,
         wide: 0,
+        share: samples as f64 / profile.x.len().max(1) as f64,
         widest: 0.0,
     };
     for change in changes {
-        let zone = change.zone;
-        found.widest = found.widest.max(zone.to - zone.from);
-        if (height(zone.from) - height(zone.to)).abs() > 0.3 * depth {
-            found.walls += 1;
-        }
-        let first = grooves.partition_point(|groove| groove.to <= zone.from);
-        let crossed = grooves[first..].iter().take_while(|g| g.from < zone.to);
-        let covers = |groove: &Zone| {
-            let part = zone.to.min(groove.to) - zone.from.max(groove.from);
-            part > 0.5 * (groove.to - groove.from)
-        };
-        if crossed.into_iter().any(covers) {
-            found.wide += 1;
-        }
+        let Zone { from, to } = change.zone;
+        found.widest = found.widest.max(to - from);
+        let rise = (height(from) - height(to)).abs();
+        found.on_walls += usize::from(!is_within(rise, ON_WALL * depth));
+        found.wide += usize::from(!is_within(change.replaced(), limit));
+    }
+    for groove in grooves {
+        let first = changes.partition_point(|c| c.zone.to <= groove.from);
+        let inside = changes[first..]
+            .iter()
+            .take_while(|c| c.zone.from < groove.to);
+        let bridged: usize = inside.map(|c| c.samples).sum();
+        let all = index(groove.to).saturating_sub(index(groove.from)).max(1);
+        found.share = found.share.max(bridged as f64 / all as f64);
     }
     found
 }
@@ -176,12 +295,61 @@ mod tests {
         );
         let grooves = [Zone { from: 1.0, to: 7.0 }];
         let warning = bridge_warning(&changes, &profile, &grooves, 9.0).unwrap();
-        assert!(
-            warning.message.contains("1 of them over a wall"),
-            "{}",
-            warning.message
-        );
-        assert!(warning.message.contains("more than half of a channel"));
+        assert!(warning.message.contains("2 on a wall"), "{warning:?}");
+        assert!(warning.message.contains("3 wide"), "{warning:?}");
         assert!(bridge_warning(&[], &profile, &grooves, 9.0).is_none());
+    }
+
+    /// A trough of 100 samples, 9 deep, between lands of 200, with samples made missing.
+    fn with_gaps(gaps: &[(usize, usize)]) -> (Vec<Change>, Profile) {
+        let mut profile = Profile {
+            x: (0..500).map(f64::from).collect(),
+            z: (0..500)
+                .map(|k| if (200..300).contains(&k) { -9.0 } else { 0.0 })
+                .collect(),
+        };
+        for &(at, samples) in gaps {
+            profile.z[at..at + samples].fill(f64::NAN);
+        }
+        let changes = bridge(&mut profile, &[false; 500]);
+        (changes, profile)
+    }
+
+    #[test]
+    fn only_bridges_that_can_move_the_section_are_a_warning() {
+        let grooves = [Zone {
+            from: 199.0,
+            to: 300.0,
+        }];
+        let warned = |gaps: &[(usize, usize)], grooves: &[Zone]| {
+            let (changes, profile) = with_gaps(gaps);
+            bridge_warning(&changes, &profile, grooves, 9.0)
+        };
+        assert!(warned(&[(50, 1), (250, 5), (400, 3)], &grooves).is_none());
+        for (gaps, words) in [
+            (&[(199, 1)][..], "1 on a wall"),
+            (&[(250, 6)], "1 wide"),
+            (&[(50, 6)], "1 wide"),
+            (&[(220, 2), (240, 2), (260, 2)], "5.94 % of the samples"),
+        ] {
+            let warning = warned(gaps, &grooves).unwrap();
+            assert!(warning.message.contains(words), "{warning:?}");
+        }
+        let unknown = warned(&[(50, 1)], &[]).unwrap();
+        assert!(unknown.message.contains("no channel is known"));
+    }
+
+    #[test]
+    fn every_bridge_is_listed_up_to_twenty() {
+        let gaps: Vec<_> = (0..25)
+            .map(|k| (4 + 4 * k, 1 + usize::from(k == 24)))
+            .collect();
+        let (changes, _) = with_gaps(&gaps);
+        let steps = bridge_list(&changes);
+        assert_eq!(steps.len(), LISTED + 1);
+        assert!(steps[19].text.contains("gap of 2 sample(s)"), "{steps:?}");
+        assert!(steps[19].numbers.contains(&("from_m", 99.0)));
+        assert!(steps[20].text.contains("and 5 more"));
+        assert!(bridge_list(&changes[..20]).len() == 20 && bridge_list(&[]).is_empty());
     }
 }

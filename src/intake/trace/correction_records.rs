@@ -1,5 +1,6 @@
 //! The sentences, numbers and warnings that go with each correction.
 
+use super::bridging::bridge_list;
 use super::corrected::{ChangeKind, CorrectedTrace};
 use super::correction_options::{CorrectionOptions, Levelling, LineFit};
 use super::corrections::WORST_LAND;
@@ -389,6 +390,7 @@ pub(super) fn bridges(trace: &mut CorrectedTrace, scan: &Scan, options: &Correct
         let numbers = [("gaps", gaps as f64), ("samples", samples as f64)];
         trace.steps.push(Step::new("missing", text).with(&numbers));
     }
+    trace.steps.extend(bridge_list(&trace.changes));
 }
 
 /// What the filter changed.

@@ -20,6 +20,10 @@ use crate::intake::order_statistics::{median, thinned};
 /// Largest distance of a land from one straight line, in depths, before the line is taken land by land.
 pub(super) const WORST_LAND: f64 = 0.01;
 
+/// Step from one land to the next, in depths off one straight line, from which lands that were found are
+/// taken for ledges on the walls of larger channels. Drift of instruments stays far below it.
+const UNEVEN_LANDS: f64 = 2.0;
+
 /// Most scatter of one reading, in depths, of traces that repeat each other: their mean is no trace of a
 /// channel beyond that.
 const MOST_SCATTER: f64 = 0.2;
@@ -66,6 +70,7 @@ pub fn correct(
     };
     let mut scan = Scan::new(&raw.profile, options)?;
     records::orientation(&mut trace, &scan, options);
+    scan.refuse_straight()?;
     scan.mark_narrow_spikes(options);
     if !repeats.is_empty() {
         let agreement = repeats::join(&mut scan, repeats, options)?;
@@ -228,6 +233,10 @@ fn take_reference(
         let mut off_one_line = None;
         let may_switch = options.level == Levelling::Lands && options.bow == 1 && zones.len() > 2;
         if may_switch && fitted.worst() > WORST_LAND * depth {
+            let step = fitted.largest_step();
+            if step > UNEVEN_LANDS * depth && options.lands.is_none() {
+                return Err(TraceProblem::UnevenLands { step, depth });
+            }
             off_one_line = Some(fitted.worst());
             fitted = fit_reference(&good, &zones, options, true, option)?;
         }

@@ -3,7 +3,10 @@
 use super::test_traces::{
     Faults, Grooves, SHAPES, Shape, check_depths, codes, default_correct, mean_over, spoilt,
 };
-use super::{ChangeKind, CorrectionOptions, Levelling, LineFit, TraceProblem, Zone, correct};
+use super::{
+    ChangeKind, CorrectionOptions, Levelling, LineFit, Profile, RawTrace, TraceProblem, Zone,
+    correct,
+};
 use crate::warning::Code;
 
 #[test]
@@ -142,7 +145,17 @@ fn spikes_and_gaps_are_listed_bridged_and_do_not_move_the_depth() {
     );
     assert!((found.changes[0].size - 5e-6).abs() < 0.3e-6);
     assert!((found.changes[1].size + 3e-6).abs() < 0.3e-6);
-    assert_eq!(codes(&found), [Code::SamplesBridged]);
+    // Away from the walls and few: listed, no warning.
+    assert_eq!(codes(&found), []);
+    let list = found.steps.iter().filter(|s| s.what == "bridge");
+    let places: Vec<_> = list.map(|s| s.numbers[0]).collect();
+    assert_eq!(places.len(), 3);
+    assert!(
+        places
+            .iter()
+            .zip(&found.changes)
+            .all(|(p, c)| *p == ("from_m", c.zone.from))
+    );
     assert_eq!(found.profile.x.len(), trace.profile.x.len() - 1);
     assert_eq!(found.raw.x, found.profile.x);
     assert_eq!(found.reference.len(), found.profile.x.len());
@@ -169,19 +182,13 @@ fn a_gap_over_a_wall_or_most_of_a_channel_is_told() {
     let found = default_correct(&trace);
     let warning = &found.warnings[0];
     assert_eq!(warning.code, Code::SamplesBridged);
-    assert!(
-        warning.numbers.contains(&("over_walls", 1.0)),
-        "{warning:?}"
-    );
+    assert!(warning.numbers.contains(&("on_walls", 1.0)), "{warning:?}");
     for z in &mut trace.profile.z[310..450] {
         *z = f64::NAN;
     }
     let found = default_correct(&trace);
     let numbers = &found.warnings[0].numbers;
-    assert!(
-        numbers.contains(&("over_half_a_channel", 1.0)),
-        "{numbers:?}"
-    );
+    assert!(numbers.contains(&("wide", 1.0)), "{numbers:?}");
 }
 
 #[test]
@@ -378,5 +385,73 @@ fn the_filter_says_what_it_changed_and_nothing_else_smooths() {
         };
         let problem = correct(&trace, &[], &options).unwrap_err();
         assert!(matches!(problem, TraceProblem::Cutoff { .. }));
+    }
+}
+
+#[test]
+fn a_straight_trace_is_refused_in_plain_words() {
+    let x: Vec<f64> = (0..=400).map(|k| 1e-6 * f64::from(k)).collect();
+    let refused = |slope: f64, step: f64, options: &CorrectionOptions| {
+        let heights = x.iter().map(|x| 7.5e-6 + slope * x);
+        let rounded = heights.map(|z| {
+            if step > 0.0 {
+                step * (z / step).round()
+            } else {
+                z
+            }
+        });
+        let profile = Profile {
+            z: rounded.collect(),
+            x: x.clone(),
+        };
+        let raw = RawTrace {
+            profile,
+            ..RawTrace::default()
+        };
+        correct(&raw, &[], options).unwrap_err()
+    };
+    let stated = CorrectionOptions {
+        level: Levelling::None,
+        ..CorrectionOptions::default()
+    };
+    for options in [&CorrectionOptions::default(), &stated] {
+        for (slope, step, words) in [
+            (0.0, 0.0, "all heights of the trace are the same"),
+            (
+                0.02,
+                0.0,
+                "one straight line that rises by 8.000 µm over 400.0 µm",
+            ),
+            (-0.02, 0.0, "falls by 8.000 µm"),
+            (0.0137, 1e-8, "one straight line that rises by 5.480 µm"),
+            (0.001, 1e-8, "one straight line that rises by 400.0 nm"),
+        ] {
+            let problem = refused(slope, step, options);
+            assert!(problem.to_string().contains(words), "{problem}");
+            assert!(problem.hint().contains("--z-column says"));
+        }
+    }
+}
+
+#[test]
+fn clean_channels_without_any_scatter_are_levelled() {
+    for tilt in [0.0, 0.01, -0.07] {
+        let mut profile = Grooves {
+            count: 5,
+            ..Grooves::one(Shape::Rectangle)
+        }
+        .profile();
+        for (x, z) in profile.x.iter().zip(&mut profile.z) {
+            *z += tilt * x;
+        }
+        let raw = RawTrace {
+            profile,
+            ..RawTrace::default()
+        };
+        let found = default_correct(&raw);
+        assert_eq!(found.step_heights.len(), 5);
+        for step in &found.step_heights {
+            assert!((step.depth - 30e-6).abs() < 1e-9, "{tilt} {step:?}");
+        }
     }
 }

@@ -1,6 +1,6 @@
 //! What can be wrong with a trace when its channels become sections.
 
-use crate::units::format_length;
+use crate::units::{format_length, format_significant};
 
 /// What is wrong with a trace when its channels become sections.
 ///
@@ -9,7 +9,7 @@ use crate::units::format_length;
 #[non_exhaustive]
 pub enum GrooveProblem {
     /// A stated value means nothing.
-    #[error("{option}: {value} is not possible: {allowed}")]
+    #[error("{option}: {} is not possible: {allowed}", option_value(option, *value))]
     Option {
         /// Which option.
         option: &'static str,
@@ -137,6 +137,14 @@ fn lands_found(lands: usize) -> String {
         0 => "no land was".to_owned(),
         1 => "only one land was".to_owned(),
         n => format!("{n} lands were"),
+    }
+}
+
+/// The value of an option with its unit.
+fn option_value(option: &str, value: f64) -> String {
+    match option {
+        "--tip-angle" | "--walls" => format!("{} deg", format_significant(value, 4)),
+        _ => format_length(value),
     }
 }
 

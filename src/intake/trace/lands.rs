@@ -567,6 +567,13 @@ fn land_of(x: &[f64], z: &[f64], stretch: Stretch, low: f64) -> Option<Land> {
         from: flat.from + if stretch.from > 0 { inset } else { 0.0 },
         to: flat.to - if stretch.to < z.len() { inset } else { 0.0 },
     };
+    // Uneven samples may leave a part without any.
+    let inside = xs.iter().filter(|x| (zone.from..=zone.to).contains(*x));
+    let zone = if inside.count() < FEWEST_IN_ZONE {
+        flat
+    } else {
+        zone
+    };
     Some(Land { flat, zone, line })
 }
 

@@ -86,6 +86,12 @@ impl Reference {
         }
     }
 
+    /// Largest difference of two neighbouring zones in their distance from the line, m.
+    pub(super) fn largest_step(&self) -> f64 {
+        let steps = self.offsets.windows(2).map(|pair| pair[1] - pair[0]);
+        steps.fold(0.0, |largest, step| largest.max(step.abs()))
+    }
+
     /// Largest distance of a zone from the line, m.
     pub(super) fn worst(&self) -> f64 {
         self.offsets.iter().fold(0.0, |worst, o| worst.max(o.abs()))
@@ -251,7 +257,10 @@ fn polynomial(samples: &[ZoneSamples], degree: usize, fit: LineFit) -> Option<Po
         );
         let scatter = spread(&rests, f64::MIN_POSITIVE);
         let typical = samples.iter().map(|s| s.line.scatter).fold(0.0, f64::max);
-        let scatter = scatter.max(typical);
+        // Rounding of exact data is no reason to leave a zone out.
+        let highest = samples.iter().map(|s| s.line.level.abs());
+        let least = 1e-12 * highest.fold(0.0, f64::max);
+        let scatter = scatter.max(typical).max(least);
         weights = rests.iter().map(|rest| bisquare(*rest, scatter)).collect();
         for _ in 0..10 {
             found = solved(&equations, &weights, size)?;

@@ -38,7 +38,11 @@ fn one_level_is_no_channel_whatever_its_bow() {
         level: Levelling::Ends,
         ..CorrectionOptions::default()
     };
-    let trace = spoilt(&flat, Faults::default(), 1);
+    let faults = Faults {
+        noise: 0.1e-6,
+        ..Faults::default()
+    };
+    let trace = spoilt(&flat, faults, 1);
     let levelled = correct(&trace, &[], &options).unwrap();
     assert!(levelled.lands.is_empty() && levelled.step_heights.is_empty());
 }
@@ -251,4 +255,52 @@ fn a_million_samples_of_noise_have_no_channel() {
         matches!(problem, Err(TraceProblem::NoChannel { .. })),
         "{problem:?}"
     );
+}
+
+#[test]
+fn ledges_on_the_wall_of_a_channel_that_is_cut_off_are_no_lands() {
+    // Invented: a wide channel of 50 um, cut off on the left, with ledges of 20 um behind ripples of 4.7 um.
+    let ledges = [-17.5, -44.7, -31.7, -9.3, 5.8];
+    let height = |x: f64| {
+        let ledge = ((x / 100.0) as usize).min(4);
+        let part = x - 100.0 * ledge as f64;
+        let (here, next) = (ledges[ledge], ledges[(ledge + 1).min(4)]);
+        if part < 20.0 || ledge == 4 {
+            return here;
+        }
+        let turn = std::f64::consts::PI * (part - 20.0) / 80.0;
+        here + (next - here) * 0.5 * (1.0 - turn.cos()) - 4.7 * turn.sin()
+    };
+    let mut refused = 0;
+    for seed in 0..12 {
+        let mut noise = Noise::new(seed);
+        let x: Vec<f64> = (0..220).map(|k| 2.0 * f64::from(k)).collect();
+        let z = x
+            .iter()
+            .map(|&x| 1e-6 * (height(x) + 0.05 * noise.normal()));
+        let profile = Profile {
+            z: z.collect(),
+            x: x.iter().map(|x| 1e-6 * x).collect(),
+        };
+        let trace = RawTrace {
+            profile,
+            ..RawTrace::default()
+        };
+        match correct(&trace, &[], &CorrectionOptions::default()) {
+            Err(problem @ TraceProblem::UnevenLands { step, depth }) => {
+                assert!(step > 20e-6 && depth < 10e-6, "{problem}");
+                assert!(problem.is_ambiguous() && problem.hint().contains("--level local"));
+                let local = CorrectionOptions {
+                    level: Levelling::Local,
+                    ..CorrectionOptions::default()
+                };
+                assert!(correct(&trace, &[], &local).is_ok());
+                refused += 1;
+            }
+            // Seen as the wide channel instead.
+            Ok(found) => assert!(found.lands.len() < 4, "{seed}: {:?}", found.lands),
+            Err(other) => panic!("{seed}: {other}"),
+        }
+    }
+    assert!(refused > 3, "{refused}");
 }

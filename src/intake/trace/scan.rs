@@ -3,7 +3,7 @@
 use super::correction_options::CorrectionOptions;
 use super::lands::Ground;
 use super::profile::Profile;
-use super::robust_line::typical_slope;
+use super::robust_line::{robust_line, typical_slope};
 use super::spikes::{NARROW, SpikeRule, WIDEST, find_spikes};
 use super::trace_problem::{FEWEST_SAMPLES, TraceProblem};
 use crate::intake::order_statistics::{median, quantile, thinned};
@@ -16,6 +16,12 @@ const SMALLEST_SPIKE: f64 = 0.005;
 
 /// Widest spike, in widths of the narrowest land or channel.
 const WIDEST_SPIKE: f64 = 0.02;
+
+/// Relief that is none, m: a hundredth of an atom.
+pub(super) const NO_RELIEF: f64 = 1e-12;
+
+/// Steps of the smallest height over a whole trace from which a slope counts as a staircase of rounding.
+const FEWEST_STAIRS: f64 = 5.0;
 
 /// A trace with its marks.
 #[derive(Debug, Clone)]
@@ -76,6 +82,40 @@ impl Scan {
             x: kept.iter().map(|&k| self.profile.x[k]).collect(),
             z: kept.iter().map(|&k| self.profile.z[k]).collect(),
         }
+    }
+
+    /// Refuses a trace whose samples all lie on one straight line, to within the rounding of its heights.
+    ///
+    /// Heights rounded on a slope form a staircase whose smallest step is the rounding; a channel as
+    /// deep as one such step is not in the numbers. Level lands have no staircase to judge by, and then
+    /// only heights that are all the same, or straight to the accuracy of the arithmetic, are refused.
+    pub(super) fn refuse_straight(&self) -> Result<(), TraceProblem> {
+        let good = self.good();
+        let ends = (good.x.first(), good.x.last(), good.z.first(), good.z.last());
+        let (Some(&from), Some(&to), Some(&low), Some(&high)) = ends else {
+            return Ok(());
+        };
+        let Some(line) = robust_line(&good.x, &good.z, 100) else {
+            return Ok(());
+        };
+        let spread = |values: &mut dyn Iterator<Item = f64>| {
+            let (least, most) = values.fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), z| {
+                (a.min(z), b.max(z))
+            });
+            most - least
+        };
+        let mut rests = good.x.iter().zip(&good.z).map(|(x, z)| z - line.at(*x));
+        let relief = spread(&mut rests);
+        let range = spread(&mut good.z.iter().copied());
+        let steps = good.z.windows(2).map(|pair| (pair[1] - pair[0]).abs());
+        let step = steps.filter(|s| *s > 0.0).fold(f64::INFINITY, f64::min);
+        let is_staircase = relief <= 1.5 * step && range >= FEWEST_STAIRS * step;
+        let highest = good.z.iter().fold(0.0_f64, |most, z| most.max(z.abs()));
+        if is_staircase || relief <= (1e-12 * highest).max(NO_RELIEF) {
+            let (rise, length) = (high - low, to - from);
+            return Err(TraceProblem::Straight { rise, length });
+        }
+        Ok(())
     }
 
     /// Marks spikes of up to three samples, before it is known what is land and what is channel.

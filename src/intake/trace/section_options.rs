@@ -71,7 +71,23 @@ pub struct SectionOptions {
 /// nothing is stated: moves K by at most about three times as much.
 pub const THINNING: f64 = 1e-5;
 
+/// Largest `--simplify`, as a fraction of the depth of a groove: beyond that it is the tolerance that makes
+/// the section.
+const SIMPLIFY_LIMIT: f64 = 0.02;
+
 impl SectionOptions {
+    /// Refuses a tolerance of the polygon that is not small against a groove.
+    pub(super) fn check_simplify(&self, depth: f64) -> Result<(), GrooveProblem> {
+        match self.simplify {
+            Some(value) if value > SIMPLIFY_LIMIT * depth => Err(GrooveProblem::Option {
+                option: "--simplify",
+                value,
+                allowed: "at most a fiftieth of the depth of the groove",
+            }),
+            _ => Ok(()),
+        }
+    }
+
     /// Refuses values that mean nothing.
     ///
     /// # Errors
@@ -120,7 +136,7 @@ impl SectionOptions {
         }
         match self.simplify {
             Some(value) if !(value.is_finite() && value >= 0.0) => {
-                refuse("simplify", value, "a length of zero or more")
+                refuse("--simplify", value, "a length of zero or more")
             }
             _ => Ok(()),
         }

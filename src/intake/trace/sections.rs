@@ -78,6 +78,7 @@ pub fn sections(
     let grooves = chosen(&ground, options.groove)?;
     let mut found = Vec::with_capacity(grooves.len());
     for (groove, edges) in grooves {
+        options.check_simplify(groove.depth)?;
         let opposite = match &other {
             Some(other) => Some(opposite(&ground, other, groove, options)?),
             None => None,

@@ -297,6 +297,13 @@ fn options_out_of_range_are_refused_by_name() {
             },
             "--lid-gap",
         ),
+        (
+            SectionOptions {
+                simplify: Some(1.0),
+                ..SectionOptions::default()
+            },
+            "--simplify: 1.000 m is not possible: at most a fiftieth of the depth",
+        ),
     ];
     for (options, name) in cases {
         let problem = sections(&trace, &options).unwrap_err();

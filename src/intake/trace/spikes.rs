@@ -24,6 +24,12 @@ const SPIKE_SCATTERS: f64 = 6.0;
 /// Samples over which the noise is taken together.
 const NOISE_BLOCK: usize = 1000;
 
+/// Jumps of one size from which that size counts as the resolution of the heights.
+const TOGGLES: usize = 4;
+
+/// Sizes within this share of each other are the same.
+const SAME_SIZE: f64 = 0.01;
+
 /// What counts as a spike.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct SpikeRule {
@@ -40,7 +46,11 @@ pub(super) fn find_spikes(good: &Profile, rule: &SpikeRule) -> Vec<(usize, usize
     let z = &good.z;
     let deviations = from_running_median(z, rule.half_window);
     let noise = block_noise(z, &deviations);
-    let smallest = rule.smallest + 3.0 * quantum(z);
+    let smallest = if rule.is_stated {
+        rule.smallest
+    } else {
+        rule.smallest + 3.0 * resolution(z)
+    };
     let mut found: Vec<(usize, usize)> = Vec::new();
     let mut at = 0;
     while at < z.len() {
@@ -153,11 +163,32 @@ fn block_noise(z: &[f64], deviations: &[f64]) -> Vec<f64> {
         .collect()
 }
 
-/// Smallest step between heights: the resolution of the instrument, or rounding.
-fn quantum(z: &[f64]) -> f64 {
-    let steps = z.windows(2).map(|w| (w[1] - w[0]).abs());
-    let smallest = steps.filter(|s| *s > 0.0).fold(f64::INFINITY, f64::min);
-    if smallest.is_finite() { smallest } else { 0.0 }
+/// Resolution of the heights, m: the smallest size of the samples that stand alone by [`TOGGLES`] times
+/// the same amount between straight neighbours; zero where there are none.
+///
+/// Heights kept in steps jump up and down by one step here and there. The steps of a ramp or a wall are no
+/// resolution: they do not come back, and one spike is not repeated to the last digit.
+fn resolution(z: &[f64]) -> f64 {
+    let highest = z.iter().fold(0.0_f64, |high, z| high.max(z.abs()));
+    // Below this, differences are rounding of the arithmetic.
+    let rounding = 1e-12 * highest;
+    let sizes = || {
+        z.windows(5).filter_map(move |w| {
+            let bend = |k: usize| w[k - 1] - 2.0 * w[k] + w[k + 1];
+            let size = 0.5 * bend(2).abs();
+            let is_alone = [bend(1), bend(3)]
+                .iter()
+                .all(|side| (side + 0.5 * bend(2)).abs() <= SAME_SIZE * size);
+            (is_alone && size > rounding).then_some(size)
+        })
+    };
+    let smallest = sizes().fold(f64::INFINITY, f64::min);
+    let same = sizes().filter(|size| *size <= (1.0 + SAME_SIZE) * smallest);
+    if same.count() >= TOGGLES {
+        smallest
+    } else {
+        0.0
+    }
 }
 
 #[cfg(test)]
@@ -268,6 +299,30 @@ mod tests {
         };
         assert!(find_spikes(&coarse, &rule).is_empty());
         assert!(find_spikes(&Profile::default(), &RULE).is_empty());
+    }
+
+    #[test]
+    fn the_slope_of_a_clean_trace_is_not_its_resolution() {
+        // 0.1 um from sample to sample on the land, and a spike of 0.5 um.
+        let mut clean = Grooves::one(Shape::Rectangle).profile();
+        for (k, z) in clean.z.iter_mut().enumerate() {
+            *z += 0.1e-6 * k as f64;
+        }
+        assert!(resolution(&clean.z).abs() <= 0.0);
+        clean.z[100] += 0.5e-6;
+        assert!(resolution(&clean.z).abs() <= 0.0);
+        assert_eq!(find_spikes(&clean, &RULE), [(100, 101)]);
+        let mut noise = Noise::new(3);
+        let step = 0.05e-6;
+        let rounded = clean
+            .z
+            .iter()
+            .map(|z| step * ((z + 0.03e-6 * noise.normal()) / step).round());
+        let found = resolution(&rounded.collect::<Vec<_>>());
+        assert!((found - step).abs() < 0.01 * step, "{found}");
+        let noisy: Vec<f64> = (0..100_000).map(|_| noise.normal()).collect();
+        assert!(resolution(&noisy).abs() <= 0.0);
+        assert!(resolution(&[]).abs() <= 0.0);
     }
 
     #[test]

@@ -384,6 +384,16 @@ pub(crate) fn axis_unit(
     };
     let table = |problem: TableProblem| ReadProblem::Table { source: problem };
     let in_file = match (unit, header, &asked) {
+        (WrittenUnit::Length(word, scale), Some((other, theirs)), None)
+            if !layout.declared.is_unit_shared && !is_same_unit(*scale, *theirs) =>
+        {
+            let problem = TableProblem::UnitConflict {
+                axis,
+                column: shortened(word),
+                header: shortened(other),
+            };
+            return Err(at_column(table(problem)));
+        }
         (WrittenUnit::Length(word, scale), ..) => Some(((*word).to_owned(), *scale, "column")),
         (WrittenUnit::OtherQuantity(unit), ..) => {
             let problem = TableProblem::NotALength {
@@ -419,6 +429,11 @@ pub(crate) fn axis_unit(
         })),
         (None, None) => Ok(None),
     }
+}
+
+/// Whether two units are the same length, in whatever spelling.
+fn is_same_unit(a: UnitScale, b: UnitScale) -> bool {
+    (a.factor() / b.factor() - 1.0).abs() <= 1e-9
 }
 
 /// The unit of bare metres, for reading numbers before their unit is known.

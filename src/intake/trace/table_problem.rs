@@ -147,6 +147,16 @@ pub enum TableProblem {
         /// The unit as written.
         unit: String,
     },
+    /// The column line and the header name different units.
+    #[error("the unit of the {axis} is `{column}` in the column line and `{header}` in the header")]
+    UnitConflict {
+        /// Which axis.
+        axis: TableAxis,
+        /// Unit of the column.
+        column: String,
+        /// Unit of the header.
+        header: String,
+    },
     /// A column of another quantity.
     #[error("the column `{column}` is in `{unit}`, which is no length, and cannot be the {axis}")]
     NotALength {
@@ -296,6 +306,10 @@ impl TableProblem {
                 axis.unit_option(),
                 axis.example()
             ),
+            Self::UnitConflict { axis, column, .. } => format!(
+                "add `{} {column}` if the column line is right; else correct the unit in the column line",
+                axis.unit_option()
+            ),
             Self::DestroyedLength { option, .. } => {
                 format!("give the length itself: add `{option} \"0.5 um\"`")
             }
@@ -396,6 +410,7 @@ impl TableProblem {
                 | Self::DestroyedUnit { .. }
                 | Self::DestroyedLength { .. }
                 | Self::UnknownUnit { .. }
+                | Self::UnitConflict { .. }
                 | Self::NotALength { .. }
                 | Self::SeveralHeights { .. }
                 | Self::SeveralPositions { .. }

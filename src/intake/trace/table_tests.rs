@@ -184,6 +184,25 @@ fn units_are_never_guessed() {
             ..
         }
     ));
+    // The file names two units for one column.
+    let both = problem("x (um),z (um) [nm]\n0,1\n1,2\n2,3\n");
+    assert!(
+        matches!(&both, TableProblem::UnknownUnit { unit, .. } if unit == "(um) [nm]"),
+        "{both:?}"
+    );
+    let rows = "x_um,z_um\n0,1\n1,2\n2,3\n";
+    let conflict = problem(&format!("z unit: nm\n{rows}"));
+    assert!(
+        matches!(&conflict, TableProblem::UnitConflict { header, .. } if header == "nm"),
+        "{conflict:?}"
+    );
+    assert!(conflict.is_ambiguous() && conflict.hint().contains("--z-unit um"));
+    assert!(with(&format!("z unit: micron\n{rows}"), |_| {}).is_ok());
+    assert!(
+        with(&format!("z unit: nm\n{rows}"), |o| o.z_unit =
+            Some("um".to_owned()))
+        .is_ok()
+    );
     assert!(matches!(
         problem("x (ft),z (nm)\n0,1\n1,2\n2,3\n"),
         TableProblem::UnknownUnit { .. }

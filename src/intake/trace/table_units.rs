@@ -120,7 +120,17 @@ fn is_destroyed(word: &str) -> bool {
 pub(crate) fn split_unit(field: &str) -> (&str, WrittenUnit<'_>) {
     let field = field.trim().trim_matches('"').trim();
     if let Some((name, unit)) = bracketed(field) {
-        return (name, written_unit(unit));
+        let written = written_unit(unit);
+        // `z (um) [nm]` does not say which of the two it is.
+        if let Some((bare, other)) = bracketed(name)
+            && let (WrittenUnit::Length(_, a), WrittenUnit::Length(_, b)) =
+                (&written, written_unit(other))
+            && a.factor().total_cmp(&b.factor()).is_ne()
+        {
+            let both = field.get(bare.len()..).unwrap_or(field).trim();
+            return (bare, WrittenUnit::Unknown(both));
+        }
+        return (name, written);
     }
     let parted = |c: char| c.is_whitespace() || matches!(c, '_' | '/' | ':' | ',' | '.' | '-');
     let alone = written_unit(field);

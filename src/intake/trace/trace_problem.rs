@@ -1,6 +1,7 @@
 //! What can be wrong with a trace when it is corrected.
 
 use super::correction_options::MAX_BOW;
+use super::scan::NO_RELIEF;
 use crate::units::{format_length, format_percent};
 
 /// Fewest samples of a trace that is corrected.
@@ -55,6 +56,14 @@ pub enum TraceProblem {
         /// Noise from sample to sample, m.
         noise: f64,
     },
+    /// All heights lie on one straight line.
+    #[error("{}", straight_words(*rise, *length))]
+    Straight {
+        /// Height of its end over its start, m.
+        rise: f64,
+        /// Length of the trace, m.
+        length: f64,
+    },
     /// There is relief, but nothing that goes down between two lands.
     #[error(
         "no channel lies between two lands: the trace holds {ridges} ridge(s) or step(s) of about {}",
@@ -88,6 +97,19 @@ pub enum TraceProblem {
     RoundLands {
         /// Typical height of the middle half over the outer quarters, or of one end over the other, m.
         crest: f64,
+        /// Typical depth, m.
+        depth: f64,
+    },
+    /// Neighbouring lands differ in height by more than the channels are deep.
+    #[error(
+        "neighbouring lands differ in height by up to {} from a straight line, more than twice the \
+         depth of the channels ({}): these are rather steps on the walls of larger channels that the trace does not hold whole",
+        format_length(*step),
+        format_length(*depth)
+    )]
+    UnevenLands {
+        /// Largest difference of two neighbouring lands, m.
+        step: f64,
         /// Typical depth, m.
         depth: f64,
     },
@@ -216,6 +238,20 @@ pub enum TraceProblem {
     },
 }
 
+/// A trace without relief, in words.
+fn straight_words(rise: f64, length: f64) -> String {
+    if rise.abs() <= NO_RELIEF {
+        return "all heights of the trace are the same: it holds no channel".to_owned();
+    }
+    let way = if rise > 0.0 { "rises" } else { "falls" };
+    format!(
+        "the trace is one straight line that {way} by {} over {}, and nothing departs from it by more than \
+         the rounding of the heights: it holds no channel",
+        format_length(rise.abs()),
+        format_length(length)
+    )
+}
+
 impl TraceProblem {
     /// What the user can do, in one sentence.
     pub fn hint(&self) -> String {
@@ -239,12 +275,20 @@ impl TraceProblem {
                 "check that the trace crosses the channel; a channel this shallow is found when its \
                  lands are stated: --land-zones 0um..50um,200um..250um"
             }
+            Self::Straight { .. } => {
+                "check that the trace, or the cut through the map, crosses the channel; of a table, --z-column \
+                 says which column holds the heights"
+            }
             Self::NoGroove { .. } => {
                 "if the ridges are the channels (mould master, cast): --invert; else trace from land to \
                  land, or state the lands: --land-zones 0um..50um,200um..250um"
             }
             Self::NoLand { .. } | Self::RoundLands { .. } => {
                 "state the lands: --land-zones 0um..50um,200um..250um; or trace farther beyond the channel"
+            }
+            Self::UnevenLands { .. } => {
+                "measure from land to land across the whole channel, or state its lands: --land-zones \
+                 0um..50um,200um..250um; if the lands found are right, say so with --level local"
             }
             Self::ZoneOutside { .. } | Self::ZoneEmpty { .. } | Self::NoZone { .. } => {
                 "give zones with a unit, from..to, in positions of the file: 0um..50um,200um..250um"
@@ -273,6 +317,7 @@ impl TraceProblem {
             Self::NoGroove { .. }
             | Self::NoLand { .. }
             | Self::RoundLands { .. }
+            | Self::UnevenLands { .. }
             | Self::TooFar { .. } => true,
             Self::Repeat { source, .. } => source.is_ambiguous(),
             _ => false,

@@ -14,6 +14,8 @@ mod answers;
 mod bad_input;
 #[path = "command_line/bad_options.rs"]
 mod bad_options;
+#[path = "command_line/card.rs"]
+mod card;
 #[path = "command_line/check.rs"]
 mod check;
 #[path = "command_line/draw.rs"]

@@ -116,7 +116,7 @@ impl<'a> Root<'a> {
                 .iter()
                 .map(|i| (i.name, IdentityView::new(i)))
                 .collect(),
-            fluid: FluidView::new(document),
+            fluid: document.fluid.map(FluidView::new),
             resistance_per_length: maybe(document.resistance_per_length(), "Pa s/m^4", no_fluid)
                 .between(
                     document
@@ -327,7 +327,7 @@ impl IdentityView {
 }
 
 #[derive(Serialize)]
-struct FluidView<'a> {
+pub(super) struct FluidView<'a> {
     name: &'a str,
     temperature: Quantity,
     viscosity: Quantity,
@@ -336,14 +336,14 @@ struct FluidView<'a> {
 }
 
 impl<'a> FluidView<'a> {
-    fn new(document: &SolveDocument<'a>) -> Option<Self> {
-        document.fluid.map(|f| Self {
+    pub(super) fn new(f: &'a Fluid) -> Self {
+        Self {
             name: &f.name,
             temperature: Quantity::optional(f.temperature, "K", "no temperature was given"),
             viscosity: Quantity::real(f.viscosity, "Pa s"),
             density: Quantity::optional(f.density, "kg/m^3", "no density was given"),
             source: &f.source,
-        })
+        }
     }
 }
 

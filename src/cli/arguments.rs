@@ -4,6 +4,7 @@ use clap::{Arg, ArgAction, Command, value_parser};
 
 use super::accuracy_options::accuracy_options;
 use super::instrument_arguments::{Kind, Shown, instrument_options, show_settings};
+use super::response_arguments::response_options;
 use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
 
 /// Printed below the help of the program.
@@ -35,6 +36,7 @@ pub fn command() -> Command {
         .subcommand(check())
         .subcommand(draw())
         .subcommand(sensitivity())
+        .subcommand(card())
 }
 
 pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
@@ -365,8 +367,19 @@ fn sensitivity() -> Command {
         )
 }
 
-fn fluid_options(command: Command) -> Command {
-    let fluid = "Fluid and operating point";
+fn card() -> Command {
+    let command = Command::new("card")
+        .about("Hand over a table and a formula of the conductance to a network model")
+        .after_help(
+            "Example: etchwise card koh_groove --vary depth=20..40um \\\n  \
+             --vary opening=60..120um --picture response.png",
+        );
+    result(response_options(fluid_only(any_input(command))))
+}
+
+/// A fluid without an operating point.
+fn fluid_only(command: Command) -> Command {
+    let fluid = "Fluid";
     let entry = |name, value, help, long| {
         option(name, value, help)
             .long_help(long)
@@ -408,6 +421,17 @@ fn fluid_options(command: Command) -> Command {
             "Density of another fluid, such as 1050kg/m^3",
             "Density, above 0, with its unit; needed for the Reynolds number. Example: --density 1050kg/m^3",
         ))
+}
+
+/// A fluid and its operating point.
+fn fluid_options(command: Command) -> Command {
+    let heading = "Operating point";
+    let entry = |name, value, help, long| {
+        option(name, value, help)
+            .long_help(long)
+            .help_heading(heading)
+    };
+    fluid_only(command)
         .arg(entry(
             "length",
             "L",

@@ -15,7 +15,7 @@ use super::json_reach::ReachView;
 use super::json_values::{Bracketed, Number, Quantity, maybe, place, pretty};
 use super::json_wall::Shear;
 use super::reading_json::{AlternativeView, StepView};
-use crate::flow::{Identity, SectionFlow, ShortcutRow, SolverReport};
+use crate::flow::{Fluid, Identity, SectionFlow, ShortcutRow, SolverReport};
 use crate::warning::Warning;
 
 /// Name and version of this contract.

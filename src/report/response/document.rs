@@ -3,7 +3,9 @@
 use crate::flow::Fluid;
 use crate::report::document::SourceRecord;
 use crate::report::numbers::{self, significant};
-use crate::study::{ParameterUnit, ResponseOptions, ResponseParameter, ResponsePoint, ResponseTable};
+use crate::study::{
+    ParameterUnit, ResponseOptions, ResponseParameter, ResponsePoint, ResponseTable,
+};
 use crate::warning::Warning;
 
 /// Everything an output of a response table may show.

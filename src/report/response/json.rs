@@ -52,7 +52,10 @@ impl<'a> Root<'a> {
             absent_because.insert("source", "a nominal kind is no file");
         }
         if document.fluid.is_none() {
-            absent_because.insert("fluid", "no fluid was given; R' = mu / K with its viscosity mu");
+            absent_because.insert(
+                "fluid",
+                "no fluid was given; R' = mu / K with its viscosity mu",
+            );
         }
         let fixed = document.fixed.iter();
         let pairs = || table.parameters.iter().zip(&table.trends);
@@ -64,7 +67,12 @@ impl<'a> Root<'a> {
             source: document.source.map(Source::new),
             fixed_parameters: fixed.map(|(n, v)| (n.as_str(), v.as_str())).collect(),
             fluid: document.fluid.map(FluidView::new),
-            parameters: table.parameters.iter().enumerate().map(Parameter::new).collect(),
+            parameters: table
+                .parameters
+                .iter()
+                .enumerate()
+                .map(Parameter::new)
+                .collect(),
             formula: Formula::new(document),
             errors: Errors::new(document),
             monotonicity: pairs().map(|(p, t)| Monotonicity::new(p, t)).collect(),

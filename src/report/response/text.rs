@@ -45,9 +45,9 @@ fn ranges(document: &ResponseDocument<'_>, units: &[ShownUnit]) -> String {
         table.row([one_line(name), format!("{}, fixed", one_line(value))]);
     }
     if let Some(fluid) = document.fluid {
-        let temperature = fluid.temperature.map_or(String::new(), |t| {
-            format!(" at {} K", significant(t, 5))
-        });
+        let temperature = fluid
+            .temperature
+            .map_or(String::new(), |t| format!(" at {} K", significant(t, 5)));
         let viscosity = significant(fluid.viscosity, 6);
         table.row([
             "fluid".to_owned(),
@@ -107,9 +107,7 @@ fn accuracy(document: &ResponseDocument<'_>) -> String {
     ]);
     rows.row([
         "proven range of K, widest".to_owned(),
-        errors
-            .proven_width
-            .map_or("none".to_owned(), per_cent),
+        errors.proven_width.map_or("none".to_owned(), per_cent),
         "holds at the points of the table, not between them".to_owned(),
     ]);
     format!(
@@ -148,11 +146,13 @@ fn trend_line(parameter: &ResponseParameter, trend: &TrendCheck, unit: ShownUnit
     let [low, high] = trend.slopes.map(|s| significant(s * size, 4));
     let verdict = match trend.expected {
         None => "nothing general is known".to_owned(),
-        Some(expected) if trend.holds() => format!("as it must ({}): ", expected.word())
-            + &format!(
-                "at all {} places of the fit and in all {} pairs of the table",
-                trend.places, trend.pairs
-            ),
+        Some(expected) if trend.holds() => {
+            format!("as it must ({}): ", expected.word())
+                + &format!(
+                    "at all {} places of the fit and in all {} pairs of the table",
+                    trend.places, trend.pairs
+                )
+        }
         Some(expected) => format!(
             "it must be {}: not so at {} of {} places of the fit, by up to {} of K, and in {} of {} pairs of the \
              table",
@@ -164,7 +164,10 @@ fn trend_line(parameter: &ResponseParameter, trend: &TrendCheck, unit: ShownUnit
             trend.pairs
         ),
     };
-    format!("K {found} with {name}, {verdict}; {slope} {low} to {high}{per}. {}", trend.because)
+    format!(
+        "K {found} with {name}, {verdict}; {slope} {low} to {high}{per}. {}",
+        trend.because
+    )
 }
 
 fn formula(document: &ResponseDocument<'_>, units: &[ShownUnit]) -> String {

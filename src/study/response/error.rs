@@ -181,7 +181,9 @@ impl ResponseError {
             },
             Self::NoMotion { known, .. } => format!("to vary: {known}"),
             Self::NotAMeasure { parameter, .. } => {
-                format!("fix it with --with {parameter}=..., and vary a length, an angle or a ratio")
+                format!(
+                    "fix it with --with {parameter}=..., and vary a length, an angle or a ratio"
+                )
             }
             Self::NegativeFilm { .. } => {
                 "begin at 0um; walls that recede are --vary over_etch=0..2um".to_owned()

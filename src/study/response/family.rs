@@ -331,9 +331,9 @@ pub fn fixed_values<'a>(
 /// Refuses names that the kind does not have, before anything is varied.
 fn check_names(spec: &NominalSpec) -> Result<(), NominalError> {
     match spec.outline() {
-        Err(
-            error @ (NominalError::UnknownParameter { .. } | NominalError::UnknownKind { .. }),
-        ) => Err(error),
+        Err(error @ (NominalError::UnknownParameter { .. } | NominalError::UnknownKind { .. })) => {
+            Err(error)
+        }
         _ => Ok(()),
     }
 }

@@ -132,7 +132,8 @@ impl ResponseParameter {
 const INSIDE: &str = "a larger value gives a section that holds the smaller one (or the reverse, where K falls), and \
                       conductance grows with the section";
 /// Why nothing is expected.
-const OPEN: &str = "neither of two such sections need hold the other, so physics asks for nothing here";
+const OPEN: &str =
+    "neither of two such sections need hold the other, so physics asks for nothing here";
 /// Why a stretch raises `K`: the stretched field in the Ritz quotient gives at least the stretch times `K`.
 const STRETCHED: &str = "stretching a section by s >= 1 along one axis raises K at least s times (energy of the stretched field)";
 

@@ -177,7 +177,7 @@ impl Request {
             Some(kind) => Failure {
                 text: format!(
                     "{}\nhelp: did you mean the nominal kind `{kind}`?",
-                    failure.text
+                    failure.text.trim_end()
                 ),
                 ..failure
             },
@@ -250,7 +250,7 @@ fn fixed_failure(error: NominalError) -> Failure {
 impl From<ResponseError> for Failure {
     fn from(error: ResponseError) -> Self {
         let status = match &error {
-            ResponseError::Point { source, .. } => match source {
+            ResponseError::Point { source, .. } => match source.as_ref() {
                 PointError::Film(_) | PointError::Crossed => ExitStatus::OutsideValidity,
                 PointError::Flow(inner) => Self::from(inner.clone()).status,
                 PointError::Unfinished => ExitStatus::NotSolved,

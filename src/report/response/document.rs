@@ -88,7 +88,7 @@ impl ShownUnit {
     pub(super) fn of(parameter: &ResponseParameter) -> Self {
         let largest = parameter.low.abs().max(parameter.high.abs());
         let (name, size) = match parameter.unit {
-            ParameterUnit::Length => numbers::fitting_unit(0.2 * largest, numbers::LENGTHS),
+            ParameterUnit::Length => numbers::fitting_unit(largest, numbers::LENGTHS),
             ParameterUnit::Angle => ("deg", 1_f64.to_radians()),
             ParameterUnit::One => ("", 1.0),
         };

@@ -3,6 +3,8 @@
 //! Everything is drawn from the formula; squares mark the sections that were solved for the table. Colour never stands
 //! alone: lines at round values repeat it, with their numbers on them.
 
+use std::fmt::Write as _;
+
 use super::document::{ResponseDocument, ShownUnit};
 use super::map::Shown;
 use super::plot::{AxisOf, MAP_NODES, Panel, solved_mark};
@@ -168,14 +170,15 @@ impl<'a> Page<'a> {
             .collect();
         let mut what = self.shown.heading.clone();
         if let Some(fluid) = document.fluid {
-            what.push_str(&format!(
+            let _ = write!(
+                what,
                 ", {} with mu = {} Pa s",
                 one_line(&fluid.name),
                 significant(fluid.viscosity, 5)
-            ));
+            );
         }
         if !fixed.is_empty() {
-            what.push_str(&format!("; {}", fixed.join(", ")));
+            let _ = write!(what, "; {}", fixed.join(", "));
         }
         let errors = &document.table.errors;
         let error = format!(
@@ -232,24 +235,21 @@ impl<'a> Page<'a> {
                 .iter()
                 .map(|&k| self.shown.value(k))
                 .collect();
-            match second {
-                Some(y) => {
-                    let marks = self.marks(grid.third);
-                    panel.map(&mut self.drawing, y, &values, &marks, index == 0);
-                }
-                None => {
-                    let places = spread(x.0.low, x.0.high, CURVE_PLACES);
-                    let curve: Vec<[f64; 2]> = places
-                        .into_iter()
-                        .zip(values)
-                        .map(|(p, v)| [p, v])
-                        .collect();
-                    let solved = self.document.table.points.iter();
-                    let marks: Vec<[f64; 2]> = solved
-                        .map(|p| [p.values[0], self.shown.value(p.conductance.value)])
-                        .collect();
-                    panel.curve(&mut self.drawing, &curve, &marks);
-                }
+            if let Some(y) = second {
+                let marks = self.marks(grid.third);
+                panel.map(&mut self.drawing, y, &values, &marks, index == 0);
+            } else {
+                let places = spread(x.0.low, x.0.high, CURVE_PLACES);
+                let curve: Vec<[f64; 2]> = places
+                    .into_iter()
+                    .zip(values)
+                    .map(|(p, v)| [p, v])
+                    .collect();
+                let solved = self.document.table.points.iter();
+                let marks: Vec<[f64; 2]> = solved
+                    .map(|p| [p.values[0], self.shown.value(p.conductance.value)])
+                    .collect();
+                panel.curve(&mut self.drawing, &curve, &marks);
             }
         }
         self.y += size[1] + BELOW;

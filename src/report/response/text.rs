@@ -5,7 +5,7 @@ use super::formula::{POLYNOMIALS, factors, scaled_text};
 use crate::report::numbers::{self, one_line, per_cent, significant};
 use crate::report::table::{Align, Table, paragraph};
 use crate::report::text::{TextOptions, counted, part, title, warnings};
-use crate::study::{NUMERICAL_SHARE, ResponseParameter, TrendCheck, slope_unit};
+use crate::study::{NUMERICAL_SHARE, ParameterScale, ResponseParameter, TrendCheck};
 
 /// Most points along each parameter in the text, by the number of parameters.
 const SHOWN: [usize; 3] = [9, 5, 3];
@@ -134,27 +134,26 @@ fn trend_line(parameter: &ResponseParameter, trend: &TrendCheck, unit: ShownUnit
     let name = one_line(&parameter.name);
     let found = trend.found.map_or("rises and falls", |t| t.word());
     // Slopes in the parameter itself are shown in its unit.
-    let (slope, size) = match slope_unit(parameter) {
-        "1" if parameter.low > 0.0 => (format!("dlnK/dln({name})"), 1.0),
-        _ => (format!("dlnK/d({name})"), unit.size),
-    };
-    let per = if size == 1.0 || unit.name.is_empty() {
-        String::new()
+    let is_linear = parameter.scale() == ParameterScale::Linear;
+    let (slope, size) = if is_linear {
+        (format!("dlnK/d({name})"), unit.size)
     } else {
+        (format!("dlnK/dln({name})"), 1.0)
+    };
+    let per = if is_linear && !unit.name.is_empty() {
         format!(" per {}", unit.name)
+    } else {
+        String::new()
     };
     let [low, high] = trend.slopes.map(|s| significant(s * size, 4));
     let verdict = match trend.expected {
-        None => "nothing general is known".to_owned(),
-        Some(expected) if trend.holds() => {
-            format!("as it must ({}): ", expected.word())
-                + &format!(
-                    "at all {} places of the fit and in all {} pairs of the table",
-                    trend.places, trend.pairs
-                )
-        }
+        None => "no rule asks for either".to_owned(),
+        Some(_) if trend.holds() => format!(
+            "as it must: at all {} places of the fit and in all {} pairs of the table",
+            trend.places, trend.pairs
+        ),
         Some(expected) => format!(
-            "it must be {}: not so at {} of {} places of the fit, by up to {} of K, and in {} of {} pairs of the \
+            "but it {} by rule: not so at {} of {} places of the fit, by up to {} of K, and in {} of {} pairs of the \
              table",
             expected.word(),
             trend.wrong_places,
@@ -165,7 +164,7 @@ fn trend_line(parameter: &ResponseParameter, trend: &TrendCheck, unit: ShownUnit
         ),
     };
     format!(
-        "K {found} with {name}, {verdict}; {slope} {low} to {high}{per}. {}",
+        "K {found} with {name}, {verdict}; {slope} {low} to {high}{per}. Rule: {}.",
         trend.because
     )
 }
@@ -175,7 +174,7 @@ fn formula(document: &ResponseDocument<'_>, units: &[ShownUnit]) -> String {
     let mut text = "Formula\n  ln(K / m^4) = sum of coefficient times polynomials".to_owned();
     text.push_str(", R' = mu / K\n");
     for (axis, parameter) in document.table.parameters.iter().enumerate() {
-        text.push_str(&format!("  {}\n", scaled_text(axis, parameter)));
+        text.extend(["  ", &scaled_text(axis, parameter), "\n"]);
     }
     text.push_str(&paragraph("  ", POLYNOMIALS));
     let mut table = Table::new(&[Align::Right, Align::Left]);

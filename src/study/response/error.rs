@@ -108,7 +108,7 @@ pub enum ResponseError {
         /// The values of the parameters.
         place: String,
         /// What is wrong there.
-        source: PointError,
+        source: Box<PointError>,
     },
     /// The fit could not be worked out.
     #[error("the least-squares fit failed: {reason}")]
@@ -156,10 +156,15 @@ impl ResponseError {
                 parameter,
                 example,
                 source,
-            } => format!(
-                "write for example --vary {parameter}={example}; {}",
-                source.hint()
-            ),
+            } => match source {
+                UnitError::NoUnit { .. } => {
+                    format!("write the unit, for example --vary {parameter}={example}")
+                }
+                _ => format!(
+                    "write for example --vary {parameter}={example}; {}",
+                    source.hint()
+                ),
+            },
             Self::NotRelative { parameter, .. } if parameter == "scale" => {
                 "write it in per cent, for example --vary scale=-2..2%".to_owned()
             }

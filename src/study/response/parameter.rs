@@ -128,12 +128,12 @@ impl ResponseParameter {
     }
 }
 
-/// Why `K` must rise or fall: the section at one value lies in the section at the other.
-const INSIDE: &str = "a larger value gives a section that holds the smaller one (or the reverse, where K falls), and \
-                      conductance grows with the section";
+/// Why `K` must rise.
+const HOLDS: &str = "the section at a larger value holds the one at a smaller value, and conductance grows with the section";
+/// Why `K` must fall.
+const LIES_IN: &str = "the section at a larger value lies in the one at a smaller value, and conductance grows with the section";
 /// Why nothing is expected.
-const OPEN: &str =
-    "neither of two such sections need hold the other, so physics asks for nothing here";
+const OPEN: &str = "neither of two such sections need hold the other";
 /// Why a stretch raises `K`: the stretched field in the Ritz quotient gives at least the stretch times `K`.
 const STRETCHED: &str = "stretching a section by s >= 1 along one axis raises K at least s times (energy of the stretched field)";
 
@@ -189,9 +189,9 @@ pub(super) fn nominal_trend(kind: &str, parameter: &str) -> (Option<Trend>, &'st
             .any(|(k, names)| (*k == kind || *k == "*") && names.contains(&parameter))
     };
     if listed(&GROWING) {
-        (Some(Trend::Rises), INSIDE)
+        (Some(Trend::Rises), HOLDS)
     } else if listed(&SHRINKING) {
-        (Some(Trend::Falls), INSIDE)
+        (Some(Trend::Falls), LIES_IN)
     } else {
         (None, OPEN)
     }
@@ -200,9 +200,9 @@ pub(super) fn nominal_trend(kind: &str, parameter: &str) -> (Option<Trend>, &'st
 /// What `K` must do with a wall motion, and why.
 pub(super) fn motion_trend(case: &str) -> (Option<Trend>, &'static str) {
     match case {
-        "film" => (Some(Trend::Falls), INSIDE),
+        "film" => (Some(Trend::Falls), LIES_IN),
         "depth" | "width" | "scale" => (Some(Trend::Rises), STRETCHED),
-        _ => (Some(Trend::Rises), INSIDE),
+        _ => (Some(Trend::Rises), HOLDS),
     }
 }
 

@@ -115,7 +115,7 @@ impl<'a> Search<'a> {
     fn error_at(&self, values: &[f64], source: PointError) -> ResponseError {
         ResponseError::Point {
             place: self.family.place(values),
-            source,
+            source: Box::new(source),
         }
     }
 
@@ -243,7 +243,7 @@ impl<'a> Search<'a> {
             for axis in (0..degrees.len()).filter(|&a| degrees[a] + 1 < table.nodes[a]) {
                 let mut higher = degrees.clone();
                 higher[axis] += 1;
-                let misfit = self.misfit(table, &higher)?;
+                let misfit = misfit(table, &higher)?;
                 if next.as_ref().is_none_or(|(least, _)| misfit < *least) {
                     next = Some((misfit, higher));
                 }
@@ -255,7 +255,7 @@ impl<'a> Search<'a> {
                 }
                 (_, Some(found)) => {
                     let highest: Vec<usize> = table.nodes.iter().map(|n| n - 1).collect();
-                    return Ok((found, self.fit(table, &highest, 0.0)?));
+                    return Ok((found, fit(table, &highest, 0.0)?));
                 }
                 (_, None) => {
                     return Err(ResponseError::Fit {
@@ -266,31 +266,6 @@ impl<'a> Search<'a> {
         }
     }
 
-    fn fit(
-        &self,
-        table: &Table,
-        degrees: &[usize],
-        slack: f64,
-    ) -> Result<ChebyshevFit, ResponseError> {
-        let tensor = Tensor {
-            axes: &table.axes,
-            values: &table.logarithms,
-        };
-        ChebyshevFit::new(tensor, degrees, slack)
-    }
-
-    /// Largest difference between the logarithms of table and fit.
-    fn misfit(&self, table: &Table, degrees: &[usize]) -> Result<f64, ResponseError> {
-        let fit = self.fit(table, degrees, 0.0)?;
-        let off = indices(&table.nodes)
-            .zip(&table.logarithms)
-            .map(|(index, ln_k)| {
-                let place: Vec<f64> = index.iter().zip(&table.axes).map(|(&k, a)| a[k]).collect();
-                (fit.value(&place) - ln_k).abs()
-            });
-        Ok(off.fold(0.0, f64::max))
-    }
-
     /// A fit with all its errors.
     fn judged(
         &self,
@@ -299,7 +274,7 @@ impl<'a> Search<'a> {
         degrees: &[usize],
     ) -> Result<Found, ResponseError> {
         let slack = LEFT_OUT * self.options.fit_error;
-        let fit = self.fit(table, degrees, slack)?;
+        let fit = fit(table, degrees, slack)?;
         let with_fit = |points: &[ResponsePoint]| -> Vec<ResponsePoint> {
             let fitted = |p: &ResponsePoint| {
                 let pairs = self.family.parameters.iter().zip(&p.values);
@@ -342,4 +317,25 @@ impl<'a> Search<'a> {
             proven_width: widths.map(|w| w.into_iter().fold(0.0, f64::max)),
         }
     }
+}
+
+/// The least-squares fit of a table.
+fn fit(table: &Table, degrees: &[usize], slack: f64) -> Result<ChebyshevFit, ResponseError> {
+    let tensor = Tensor {
+        axes: &table.axes,
+        values: &table.logarithms,
+    };
+    ChebyshevFit::new(tensor, degrees, slack)
+}
+
+/// Largest difference between the logarithms of table and fit.
+fn misfit(table: &Table, degrees: &[usize]) -> Result<f64, ResponseError> {
+    let fit = fit(table, degrees, 0.0)?;
+    let off = indices(&table.nodes)
+        .zip(&table.logarithms)
+        .map(|(index, ln_k)| {
+            let place: Vec<f64> = index.iter().zip(&table.axes).map(|(&k, a)| a[k]).collect();
+            (fit.value(&place) - ln_k).abs()
+        });
+    Ok(off.fold(0.0, f64::max))
 }

@@ -116,7 +116,7 @@ fn largest_fall(values: &[f64], shape: &[usize], axis: usize) -> f64 {
     let length = shape[axis];
     let mut largest = 0.0_f64;
     for start in 0..values.len() {
-        if (start / step) % length != 0 {
+        if !(start / step).is_multiple_of(length) {
             continue;
         }
         let mut highest = f64::NEG_INFINITY;

@@ -216,10 +216,14 @@ impl PointError {
                 | NominalError::BareNumber {
                     parameter, example, ..
                 } => format!("write for example --with \"{parameter}={example}\""),
-                _ => format!(
-                    "{}; change the range or the fixed value so that this corner is left out",
+                NominalError::OutOfRange { .. }
+                | NominalError::PostMeets { .. }
+                | NominalError::PostOutside { .. }
+                | NominalError::NoArea { .. } => format!(
+                    "{}; change the range or the fixed value so that this place is left out",
                     error.hint()
                 ),
+                _ => error.hint(),
             },
             Self::Crossed => {
                 "narrow the ranges: so large a motion closes or crosses the walls".to_owned()

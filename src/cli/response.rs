@@ -73,7 +73,7 @@ impl Request {
         let [least, most] = FIT_ERRORS;
         if !(least..=most).contains(&fit_error) {
             return Err(Failure::usage(
-                format!("--fit-error: {fit_error} is outside {least:e} to {most}"),
+                format!("--fit-error {fit_error} is outside {least:e} to {most}"),
                 "give a share such as 0.1%, 200ppm or 1e-3",
             ));
         }

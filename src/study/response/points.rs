@@ -55,7 +55,9 @@ mod tests {
         for (k, t) in coarse.iter().enumerate() {
             assert!((t - fine[2 * k]).abs() < 1e-15);
         }
-        assert_eq!((coarse[0], coarse[2], coarse[4]), (-1.0, 0.0, 1.0));
+        for (found, exact) in [(coarse[0], -1.0), (coarse[2], 0.0), (coarse[4], 1.0_f64)] {
+            assert_eq!(found.to_bits(), exact.to_bits());
+        }
     }
 
     #[test]

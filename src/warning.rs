@@ -49,6 +49,12 @@ pub enum Code {
     SensitivitySingular,
     /// First-order predictions and new solves differ.
     SensitivityMismatch,
+    /// The formula of a response table is off by more than was asked for.
+    FitNotReached,
+    /// The formula of a response table falls where it must rise, or the reverse.
+    NotMonotone,
+    /// Lumens or islands come and go within the ranges of a response table.
+    ShapeChanges,
     /// The file breaks its own format or standard, and was read all the same.
     FileDefect,
     /// Positions or lengths in the file contradict each other.
@@ -94,6 +100,9 @@ impl Code {
             Self::FieldThinned => "field_thinned",
             Self::SensitivitySingular => "sensitivity_singular",
             Self::SensitivityMismatch => "sensitivity_mismatch",
+            Self::FitNotReached => "fit_not_reached",
+            Self::NotMonotone => "not_monotone",
+            Self::ShapeChanges => "shape_changes",
             Self::FileDefect => "file_defect",
             Self::PositionsRebuilt => "positions_rebuilt",
             Self::SamplesBridged => "samples_bridged",

@@ -24,6 +24,7 @@ use super::input::{self, CheckedSection, checked_section, read_options};
 use super::instrument_options::{say_settings, typed};
 use super::output::{self, Format, Inputs};
 use super::quantities::fluid;
+use super::response;
 use super::sections::{Sections, film};
 
 /// Temperatures between which `R(T)` holds where none are given, K.
@@ -61,6 +62,9 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     if matches.get_flag("print-schema") {
         output::print(CARD_JSON_SCHEMA)?;
         return Ok(ExitStatus::Done);
+    }
+    if matches.contains_id("vary") {
+        return response::run(matches);
     }
     super::set_threads(matches)?;
     let request = Request::new(matches)?;

@@ -4,9 +4,24 @@ use clap::{Arg, ArgAction, Command, value_parser};
 
 use super::accuracy_options::accuracy_options;
 use super::arguments::{any_input, film_options, flag, fluid_only, option, result};
+use super::response_arguments::response_options;
 
 /// Heading of the options of its own.
 const HEADING: &str = "Card";
+
+/// Options that mean nothing for a response table.
+const NOT_WITH_VARY: [&str; 10] = [
+    "cells-across",
+    "estimate",
+    "film",
+    "max-memory",
+    "max-seconds",
+    "modelica",
+    "print-schema",
+    "temperature-range",
+    "tolerance",
+    "uncertainty",
+];
 
 /// `card`: coefficients of sections for a network model.
 pub(super) fn card() -> Command {
@@ -14,15 +29,24 @@ pub(super) fn card() -> Command {
         .about("Hand over coefficients of sections to a network model")
         .after_help(
             "Examples: etchwise card wafer.toml --fluid water --temperature 25C --json -o wafer.card.json\n          \
-             etchwise card a.toml b.toml --fluid water --temperature 25C --csv",
+             etchwise card a.toml b.toml --fluid water --temperature 25C --csv\n          \
+             etchwise card koh_groove --vary depth=20..40um --vary opening=60..120um",
         );
     let command = accuracy_options(fluid_only(film_options(any_input(command))));
-    own_options(result(command)).mut_arg("file", |file| {
-        file.num_args(1..)
-            .action(ArgAction::Append)
-            .required(false)
-            .required_unless_present("print-schema")
-    })
+    response_options(own_options(result(command)))
+        .mut_arg("file", |file| {
+            file.num_args(1..)
+                .action(ArgAction::Append)
+                .required(false)
+                .required_unless_present("print-schema")
+                .help("Files of sections or instruments; with --vary one file or kind")
+                .long_help(
+                    "Section files, outlines, SVG drawings or files of instruments, one card each; - for standard \
+                     input. With --vary one of them, or a kind of section as in `etchwise draw`.",
+                )
+        })
+        // A response table has its own grid, accuracy and outputs.
+        .mut_arg("vary", |vary| vary.conflicts_with_all(NOT_WITH_VARY))
 }
 
 fn own_options(command: Command) -> Command {

@@ -20,6 +20,8 @@ mod measures;
 mod output;
 mod quantities;
 mod reading;
+mod response;
+mod response_arguments;
 mod sections;
 mod sensitivity;
 mod solve;

@@ -99,7 +99,7 @@ impl<'a> Card<'a> {
             kind: "section",
             source: record.source.map(Source::new),
             settings,
-            fluid: FluidView::of(record.fluid),
+            fluid: FluidView::new(record.fluid),
             conductance: Quantity::bracketed(flow),
             resistance_per_length: Resistance::new(card),
             uncertainty: card.uncertainty.as_ref().map(|found| UncertaintyView {

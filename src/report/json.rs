@@ -116,7 +116,7 @@ impl<'a> Root<'a> {
                 .iter()
                 .map(|i| (i.name, IdentityView::new(i)))
                 .collect(),
-            fluid: document.fluid.map(FluidView::of),
+            fluid: document.fluid.map(FluidView::new),
             resistance_per_length: maybe(document.resistance_per_length(), "Pa s/m^4", no_fluid)
                 .between(
                     document
@@ -336,13 +336,13 @@ pub(super) struct FluidView<'a> {
 }
 
 impl<'a> FluidView<'a> {
-    pub(super) fn of(fluid: &'a Fluid) -> Self {
+    pub(super) fn new(f: &'a Fluid) -> Self {
         Self {
-            name: &fluid.name,
-            temperature: Quantity::optional(fluid.temperature, "K", "no temperature was given"),
-            viscosity: Quantity::real(fluid.viscosity, "Pa s"),
-            density: Quantity::optional(fluid.density, "kg/m^3", "no density was given"),
-            source: &fluid.source,
+            name: &f.name,
+            temperature: Quantity::optional(f.temperature, "K", "no temperature was given"),
+            viscosity: Quantity::real(f.viscosity, "Pa s"),
+            density: Quantity::optional(f.density, "kg/m^3", "no density was given"),
+            source: &f.source,
         }
     }
 }

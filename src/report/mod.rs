@@ -40,6 +40,7 @@ mod png;
 mod reading_document;
 mod reading_json;
 mod reading_text;
+mod response;
 mod sensitivity_csv;
 mod sensitivity_document;
 mod sensitivity_json;
@@ -82,6 +83,10 @@ pub use reading_document::{
 };
 pub use reading_json::reading_json;
 pub use reading_text::{reading_text, settings_text};
+pub use response::{
+    RESPONSE_SCHEMA, ResponseDocument, draw_response, formula_text, response_csv, response_json,
+    response_picture, response_text,
+};
 pub use sensitivity_csv::sensitivity_csv;
 pub use sensitivity_document::SensitivityDocument;
 pub use sensitivity_json::{SENSITIVITY_SCHEMA, sensitivity_json};

@@ -6,6 +6,7 @@ mod facing;
 mod moved_outline;
 mod reach;
 mod resolve_check;
+mod response;
 mod sensitivity;
 mod wall_motion;
 mod wall_motion_cases;
@@ -15,9 +16,16 @@ pub use card::{
     CardError, CardLimits, CardRequest, CardSensitivity, SectionCard, ShearPerFlow, Stated,
     StatedUncertainty, Uncertainty, UncertaintyPart, VISCOSITY_INPUT,
 };
-pub use moved_outline::{MovedOutline, moved_outline};
+pub use moved_outline::{MovedOutline, moved_outline, outline_moved_by};
 pub use reach::{Reach, ReachBound, ReachError, ReachSide, ReachSides};
 pub use resolve_check::{Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE};
+pub use response::{
+    ChebyshevFit, DEFAULT_FIT_ERROR, DEFAULT_FRESH_POINTS, FIT_ERRORS, FRESH_POINTS, FitTerm,
+    MOST_PARAMETERS, NUMERICAL_SHARE, ParameterScale, ParameterUnit, PointError, RangeText,
+    ResponseError, ResponseErrors, ResponseFamily, ResponseOptions, ResponseParameter,
+    ResponsePoint, ResponseTable, Trend, TrendCheck, fixed_values, kind_name, response_table,
+    slope_unit,
+};
 pub use sensitivity::{
     Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study, solve_for_sensitivity,
 };

@@ -1,6 +1,6 @@
-//! The outline after a finite change of a [`WallMotion`].
+//! The outline after a finite change of one [`WallMotion`] or several.
 //!
-//! Edges move on their lines and neighbours meet again where the moved lines cross (a mitre), so angles are
+//! The displacements of several motions are added edge by edge. Edges move on their lines and neighbours meet again where the moved lines cross (a mitre), so angles are
 //! kept where both move alike. Where a wall that moves ends on a smooth stretch, the lines would cross far
 //! away; there the wall gets a step as high as the change. For small changes only: the result is checked.
 
@@ -33,9 +33,23 @@ pub fn moved_outline(
     motion: &WallMotion,
     change: f64,
 ) -> Result<MovedOutline, NoCheck> {
+    outline_moved_by(outline, &[(motion, change)])
+}
+
+/// The outline after several motions at once: each wall goes by the sum of their displacements.
+///
+/// - `outline`: oriented, as the motions were made for
+/// - `changes`: each motion with its change, in its unit
+///
+/// # Errors
+/// As [`moved_outline`].
+pub fn outline_moved_by(
+    outline: &Outline,
+    changes: &[(&WallMotion, f64)],
+) -> Result<MovedOutline, NoCheck> {
     let (mut index, mut highest_step) = (0, 0.0_f64);
     let mut next = |wall: &Loop| {
-        let (moved, step) = moved_loop(wall, motion, index, change);
+        let (moved, step) = moved_loop(wall, changes, index);
         index += 1;
         highest_step = highest_step.max(step);
         moved
@@ -65,27 +79,36 @@ pub fn moved_outline(
 }
 
 /// The loop and the height of its highest step, m.
-fn moved_loop(wall: &Loop, motion: &WallMotion, index: usize, change: f64) -> (Loop, f64) {
+fn moved_loop(wall: &Loop, changes: &[(&WallMotion, f64)], index: usize) -> (Loop, f64) {
     let normals = outward_normals(wall);
     let n = wall.points.len();
     let mut points = Vec::with_capacity(n);
     let mut highest = 0.0_f64;
     for (k, &p) in wall.points.iter().enumerate() {
         let before = (k + n - 1) % n;
-        let shifted = |v: Point| [p[0] + change * v[0], p[1] + change * v[1]];
+        let shifted = |v: Point| [p[0] + v[0], p[1] + v[1]];
         let sides = [before, k].map(|edge| {
             let normal = normals[edge];
-            (normal, motion.velocity(index, edge, p, normal))
-        });
-        let edges = [motion.edge(index, before), motion.edge(index, k)];
-        match (edges, vertex_velocity(sides)) {
-            ([EdgeMotion::Follows(a), EdgeMotion::Follows(b)], _) if a == b => {
-                points.push(shifted(sides[0].1));
+            let mut by = [0.0; 2];
+            for (motion, change) in changes {
+                let v = motion.velocity(index, edge, p, normal);
+                by = [by[0] + change * v[0], by[1] + change * v[1]];
             }
+            (normal, by)
+        });
+        // Both sides go with the same fields: so does the vertex, also where it hardly turns.
+        let goes_along = changes.iter().all(|(motion, _)| {
+            match [before, k].map(|edge| motion.edge(index, edge)) {
+                [EdgeMotion::Follows(a), EdgeMotion::Follows(b)] => a == b,
+                [a, b] => a == EdgeMotion::Rests && b == EdgeMotion::Rests,
+            }
+        });
+        match (goes_along, vertex_velocity(sides)) {
+            (true, _) => points.push(shifted(sides[0].1)),
             (_, Some(v)) => points.push(shifted(v)),
             (_, None) => {
                 let [(_, a), (_, b)] = sides;
-                highest = highest.max(change.abs() * (b[0] - a[0]).hypot(b[1] - a[1]));
+                highest = highest.max((b[0] - a[0]).hypot(b[1] - a[1]));
                 points.extend([a, b].map(shifted));
             }
         }

@@ -222,10 +222,12 @@ fn words(text: &str) -> Vec<String> {
         let mut word = String::from(c);
         if c == '"' {
             loop {
-                match rest.next().expect("a string is not closed") {
+                // A string that is not closed ends here.
+                let c = rest.next().unwrap();
+                assert_ne!(c, '\n', "a string over two lines: {word}");
+                match c {
                     '\\' => word.extend(rest.next()),
                     '"' => break,
-                    '\n' => panic!("a string over two lines: {word}"),
                     c => word.push(c),
                 }
             }

@@ -35,6 +35,7 @@ pub fn command() -> Command {
         .subcommand(check())
         .subcommand(draw())
         .subcommand(sensitivity())
+        .subcommand(super::route_arguments::route())
 }
 
 pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
@@ -42,7 +43,7 @@ pub(super) fn option(name: &'static str, value: &'static str, help: &'static str
 }
 
 /// An option that names pictures to write; it may come more than once.
-fn picture_option(
+pub(super) fn picture_option(
     name: &'static str,
     help: &'static str,
     long: &'static str,
@@ -294,7 +295,7 @@ fn cells_across() -> Arg {
 }
 
 /// How and where the main result is printed.
-fn result(command: Command) -> Command {
+pub(super) fn result(command: Command) -> Command {
     let heading = "Output";
     common(command)
         .arg(
@@ -365,8 +366,12 @@ fn sensitivity() -> Command {
         )
 }
 
-fn fluid_options(command: Command) -> Command {
-    let fluid = "Fluid and operating point";
+/// Heading of the fluid and what drives it.
+pub(super) const FLUID: &str = "Fluid and operating point";
+
+/// The fluid alone.
+pub(super) fn fluid_only(command: Command) -> Command {
+    let fluid = FLUID;
     let entry = |name, value, help, long| {
         option(name, value, help)
             .long_help(long)
@@ -408,6 +413,15 @@ fn fluid_options(command: Command) -> Command {
             "Density of another fluid, such as 1050kg/m^3",
             "Density, above 0, with its unit; needed for the Reynolds number. Example: --density 1050kg/m^3",
         ))
+}
+
+fn fluid_options(command: Command) -> Command {
+    let entry = |name, value, help, long| {
+        option(name, value, help)
+            .long_help(long)
+            .help_heading(FLUID)
+    };
+    fluid_only(command)
         .arg(entry(
             "length",
             "L",

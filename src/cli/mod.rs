@@ -18,6 +18,8 @@ mod measures;
 mod output;
 mod quantities;
 mod reading;
+mod route;
+mod route_arguments;
 mod sections;
 mod sensitivity;
 mod solve;
@@ -52,6 +54,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("check", matches)) => check::run(matches),
         Some(("draw", matches)) => draw::run(matches),
         Some(("sensitivity", matches)) => sensitivity::run(matches),
+        Some(("route", matches)) => route::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

@@ -73,11 +73,11 @@ pub struct Scale {
 }
 
 /// The caution printed wherever a pressure appears.
-const PRESSURE_CAUTION: &str = "A resistance is not a pressure rating: bonded chips and fittings can burst. \
+pub(super) const PRESSURE_CAUTION: &str = "A resistance is not a pressure rating: bonded chips and fittings can burst. \
 The results hold for fully developed laminar flow in a rigid section.";
 
 /// What to do about [`PRESSURE_CAUTION`].
-const PRESSURE_ADVICE: &str = "They do not replace proof testing, local codes, the device maker's limits \
+pub(super) const PRESSURE_ADVICE: &str = "They do not replace proof testing, local codes, the device maker's limits \
 or the judgement of a qualified person.";
 
 impl<'a> SolveDocument<'a> {

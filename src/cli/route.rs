@@ -32,6 +32,7 @@ struct Request {
     file: PathBuf,
     most_stations: usize,
     spread: Option<f64>,
+    least_between: usize,
     solve: SolveOptions,
     fluid: Option<Fluid>,
     drives: Vec<Drive>,
@@ -53,6 +54,7 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let options = RouteOptions {
         solve: request.solve,
         field_nodes: request.vtk.as_ref().map(|_| FIELD_NODES),
+        least_between: request.least_between,
         ..RouteOptions::default()
     };
     let route = solve_route(&design, &options)?;
@@ -111,6 +113,9 @@ impl Request {
                 .get_one::<u32>("max-stations")
                 .map_or(MAX_STATIONS, |&n| n as usize),
             spread,
+            least_between: matches
+                .get_one::<u8>("sections-between")
+                .map_or(1, |&n| usize::from(n)),
             solve: solve_options(matches)?,
             fluid,
             drives,

@@ -42,6 +42,15 @@ pub(super) fn route() -> Command {
                      the route file gives none: 0 to 0.5, as 5% or 0.05. Default: none. Example: --spread 5%",
                 )
                 .help_heading("Input"),
+        )
+        .arg(
+            option("sections-between", "N", "Least sections put between two nominal stations")
+                .value_parser(value_parser!(u8).range(1..=63))
+                .long_help(
+                    "Sections solved between two stations whose dimensions are interpolated, at least; 1 to 63. The                      integral needs few, and has them; more make the proven range narrower. Default: 1. Example: \
+                     --sections-between 15",
+                )
+                .help_heading("Accuracy"),
         );
     output(result(accuracy_options(drive(fluid_only(command)))))
 }

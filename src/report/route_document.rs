@@ -130,7 +130,8 @@ impl RouteDocument<'_> {
                 || "between stations".to_owned(),
                 |station| format!("station {}", station + 1),
             );
-            let at = numbers::with_unit(branch.begin + point.position, numbers::LENGTHS, 4);
+            let reach = branch.begin.abs() + branch.length;
+            let at = numbers::length_on(branch.begin + point.position, reach);
             out.push_str(&format!(", {station}, at {at}"));
         }
         out

@@ -86,7 +86,7 @@ impl<'a> Root<'a> {
             integral: Quantity::estimate(route.integral, "1/m^3").between(bounds),
             resistance,
             bounds_absent_because: route.bounds.as_ref().err().map(String::as_str),
-            bounds_assume: "the wall moves one way only from each section to the next",
+            bounds_assume: "the wall moves one way only from each section to the next, up to shifts of whole sections",
             length: Quantity::real(route.length(), "m"),
             volume: Quantity::real(route.volume(), "m^3"),
             wall_area: Quantity::real(route.wall_area(), "m^2"),

@@ -125,9 +125,12 @@ fn how(document: &RouteDocument<'_>) -> String {
         let text = format!("dimensions not interpolated: {}", numbers::one_line(reason));
         out.push_str(&paragraph("  ", &text));
     }
+    if route.bounds.is_err() {
+        out.push_str(&proven_segments(document));
+    }
     let proof = match &route.bounds {
-        Ok(_) => "The proven values hold if the wall moves one way only from each section to the next, each being \
-             proven to lie inside its neighbour or around it."
+        Ok(_) => "The proven values hold if the wall moves one way only from each section to the next (whole sections \
+             may shift sideways), each being proven to lie inside its neighbour or around it."
             .to_owned(),
         Err(why) => format!("No proven value of R: {}.", numbers::one_line(why)),
     };
@@ -137,6 +140,33 @@ fn how(document: &RouteDocument<'_>) -> String {
         "Steps, bends and junctions between segments have no resistance of their own here.",
     ));
     out
+}
+
+/// Segments with proven values where the route as a whole has none.
+fn proven_segments(document: &RouteDocument<'_>) -> String {
+    let mu = document.fluid.map(|fluid| fluid.viscosity);
+    let mut table = Table::new(&[Align::Left, Align::Left, Align::Left]);
+    for segment in &document.route.segments {
+        let Ok((low, high)) = segment.bounds else {
+            continue;
+        };
+        let unit = if mu.is_some() { "Pa s/m\u{b3}" } else { "1/m\u{b3}" };
+        let [a, b] = [low, high].map(|v| significant(v * mu.unwrap_or(1.0), 6));
+        table.row([
+            format!("proven of segment {}", numbers::title(&segment.name)),
+            format!("{a} to {b} {unit}"),
+            format!("{} wide", per_cent(2.0 * (high - low) / (high + low))),
+        ]);
+    }
+    table.print(2)
+}
+
+/// A pressure with its unit; what rounding leaves at the outlet is nothing.
+fn pressure(value: f64) -> String {
+    if value < 1e-6 {
+        return "0 Pa".to_owned();
+    }
+    with_unit(value, numbers::PRESSURES, 5)
 }
 
 fn flow(document: &RouteDocument<'_>, operation: &RouteOperation) -> String {
@@ -299,11 +329,11 @@ fn stations(document: &RouteDocument<'_>, is_long: bool) -> String {
                 let mu = document.fluid.map(|f| f.viscosity);
                 table.row([
                     numbers::title(&name),
-                    with_unit(branch.begin + point.position, numbers::LENGTHS, 4),
+                    numbers::length_on(branch.begin + point.position, branch.begin.abs() + branch.length),
                     significant(flow.conductance.value, 6),
                     with_unit(flow.geometry.area, numbers::AREAS, 4),
                     mu.map_or(String::new(), |mu| significant(mu / flow.conductance.value, 5)),
-                    at.map_or(String::new(), |at| with_unit(at.pressure, numbers::PRESSURES, 5)),
+                    at.map_or(String::new(), |at| pressure(at.pressure)),
                     at.map_or(String::new(), |at| format!("{} Pa", significant(at.local.wall_shear_max, 4))),
                     numbers::title(document.section_label(point.flow)),
                 ]);

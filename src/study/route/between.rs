@@ -12,7 +12,9 @@ use crate::geometry::Outline;
 use crate::measured::Estimate;
 
 /// Orders tried, each with the points of the one before.
-const ORDERS: [usize; 4] = [2, 4, 8, 16];
+const ORDERS: [usize; 6] = [2, 4, 8, 16, 32, 64];
+/// Order after which a mean that has not settled is given up.
+const LAST_ORDER: usize = 16;
 
 /// The rule that was used.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -85,13 +87,20 @@ impl Ends<'_> {
             Interpolation::Automatic => Some(LawOfK::CubeRoot),
             Interpolation::Dimensions => None,
         };
-        match (self.outlines(&chebyshev_points(ORDERS[3])), law) {
+        match (self.outlines(&chebyshev_points(self.highest())), law) {
             (Ok(outlines), _) => self
                 .by_dimensions(&outlines)
                 .map_err(|error| Err((first, error))),
             (Err(reason), Some(law)) => Ok(self.by_law(law, Some(reason.to_string()))),
             (Err(reason), None) => Err(Ok(reason.to_string())),
         }
+    }
+
+    /// Order that may be needed: to settle, or for as many sections as were asked for.
+    fn highest(&self) -> usize {
+        let asked = self.options.least_between;
+        let enough = ORDERS.into_iter().find(|order| *order > asked);
+        enough.unwrap_or(ORDERS[5]).max(LAST_ORDER)
     }
 
     fn flow(&self, index: usize) -> &RouteFlow {
@@ -176,7 +185,7 @@ impl Ends<'_> {
         at[highest] = Some(self.ends[1]);
         let mut before: Option<f64> = None;
         let mut found = None;
-        for order in ORDERS {
+        for order in ORDERS.into_iter().filter(|order| *order <= highest) {
             let step = highest / order;
             let missing: Vec<usize> = (0..=order)
                 .map(|j| j * step)
@@ -195,7 +204,7 @@ impl Ends<'_> {
             let nodes: Vec<(f64, usize)> = chebyshev_points(order).into_iter().zip(indices).collect();
             let way = self.sampled(nodes, before);
             before = Some(way.mean_inverse.value);
-            let is_done = way.is_converged;
+            let is_done = way.is_converged && order > self.options.least_between;
             found = Some(way);
             if is_done {
                 break;
@@ -249,12 +258,12 @@ impl Ends<'_> {
             let [a, b] = [a, b].map(|index| self.flow(index));
             let is_rising = a.flow.geometry.area <= b.flow.geometry.area;
             let (small, large) = if is_rising { (a, b) } else { (b, a) };
-            let factor = nested(&small.outline, &large.outline)
+            let inside = nested(&small.outline, &large.outline)
                 .map_err(|why| format!("the smaller section is not inside the larger one: {why}"))?;
             let small = small.flow.bracket.as_ref().map_err(ToString::to_string)?;
             let large = large.flow.bracket.as_ref().map_err(ToString::to_string)?;
             low += (to - from) / large.high;
-            high += (to - from) / (small.low * factor);
+            high += (to - from) / (small.low * inside.factor);
         }
         Ok((low, high))
     }

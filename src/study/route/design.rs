@@ -68,6 +68,9 @@ pub struct RouteOptions {
     pub solve: SolveOptions,
     /// Relative change of the integral of `1/K` at which no more sections are put between two stations.
     pub integral_tolerance: f64,
+    /// Sections to put between two stations at least where dimensions are interpolated, at most 63: more make the
+    /// proven range narrower.
+    pub least_between: usize,
     /// Nodes of the field that is kept of every section, for files; `None` keeps none.
     pub field_nodes: Option<usize>,
 }
@@ -77,6 +80,7 @@ impl Default for RouteOptions {
         Self {
             solve: SolveOptions::default(),
             integral_tolerance: INTEGRAL_TOLERANCE,
+            least_between: 1,
             field_nodes: None,
         }
     }

@@ -25,6 +25,6 @@ pub use design::{
     StationDesign,
 };
 pub use interpolation::{Interpolation, LawOfK};
-pub use nesting::{SHRINKING, nested};
+pub use nesting::{Nested, SHRINKING, nested};
 pub use operation::{BranchOperation, PointOperation, PointPlace, RouteOperation, SegmentOperation};
 pub use spread::{DRAWS, RouteSpread, SegmentSpread, ShareSpread, route_spread};

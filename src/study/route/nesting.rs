@@ -1,34 +1,54 @@
 //! Which of two stations lies inside the other, proven.
 
-use crate::geometry::Outline;
+use crate::geometry::{Outline, Point};
 
 /// Share by which the smaller section is shrunk about its centroid where the proof fails by rounding alone.
 ///
 /// Its proven low value then counts times `(1 - SHRINKING)^4`, which is exact.
 pub const SHRINKING: f64 = 1e-7;
 
-/// Factor on the proven low conductance of `small`, given that it lies inside `large`: 1, or that of the slightly
-/// shrunk section.
+/// One section lies inside another.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Nested {
+    /// Factor on the proven low conductance of the smaller: 1, or that of the slightly shrunk section.
+    pub factor: f64,
+    /// By how much the smaller was shifted within its plane to lie inside, m.
+    pub shift: Point,
+}
+
+/// Proves that `small` lies inside `large`: as given, slightly shrunk, or shifted within its plane as well.
 ///
-/// `K(small) >= K(shrunk) = (1 - s)^4 K(small)`, and a section around the shrunk one has at least as much.
+/// `K(small) >= K(shrunk) = (1 - s)^4 K(small)`, and a section around the shrunk one has at least as much; a shift
+/// changes no conductance. Shifts tried: lids level and centroids above each other; centroids on each other.
 ///
 /// # Errors
-/// Why `small` is not inside `large`, in words with the place.
-pub fn nested(small: &Outline, large: &Outline) -> Result<f64, String> {
+/// Why `small` is not inside `large`, in words with the place, as given.
+pub fn nested(small: &Outline, large: &Outline) -> Result<Nested, String> {
     let Err(escape) = small.proven_inside(large) else {
-        return Ok(1.0);
+        return Ok(Nested {
+            factor: 1.0,
+            shift: [0.0; 2],
+        });
     };
-    let [x, y] = small.centroid();
+    let ([x, y], [to_x, to_y]) = (small.centroid(), large.centroid());
+    let top = |outline: &Outline| outline.bounds().map_or(0.0, |(_, high)| high[1]);
+    let level = [to_x - x, top(large) - top(small)];
+    let centred = [to_x - x, to_y - y];
     let shrunk = small
         .clone()
         .shifted([-x, -y])
-        .scaled(1.0 - SHRINKING)
-        .shifted([x, y]);
-    // The shift back rounds by 1e-16 of the coordinates; SHRINKING is far above that.
-    match shrunk.proven_inside(large) {
-        Ok(()) => Ok((1.0 - 2.0 * SHRINKING).powi(4)),
-        Err(_) => Err(escape.to_string()),
+        .scaled(1.0 - SHRINKING);
+    for shift in [[0.0; 2], level, centred] {
+        // Shifts round by 1e-16 of the coordinates; SHRINKING is far above that.
+        let moved = shrunk.clone().shifted([x + shift[0], y + shift[1]]);
+        if moved.proven_inside(large).is_ok() {
+            return Ok(Nested {
+                factor: (1.0 - 2.0 * SHRINKING).powi(4),
+                shift,
+            });
+        }
     }
+    Err(escape.to_string())
 }
 
 #[cfg(test)]
@@ -48,5 +68,14 @@ mod tests {
             assert!(nested(&small, &large).is_ok(), "{k}");
             assert!(nested(&large, &small).is_err(), "{k}");
         }
+    }
+
+    #[test]
+    fn a_section_drawn_elsewhere_is_shifted_into_its_neighbour() {
+        let away = groove(20.0).shifted([1e-3, 2e-3]);
+        let found = nested(&away, &groove(30.0)).unwrap();
+        assert!((found.shift[0] + 1e-3).abs() < 1e-9 && found.factor < 1.0);
+        let same = nested(&groove(20.0), &groove(20.0)).unwrap();
+        assert!((same.factor - 1.0).abs() < 1e-15);
     }
 }

@@ -28,6 +28,8 @@ mod instruments;
 mod json_contract;
 #[path = "command_line/outputs.rs"]
 mod outputs;
+#[path = "command_line/route.rs"]
+mod route;
 #[path = "command_line/sensitivity.rs"]
 mod sensitivity;
 #[path = "command_line/shipped.rs"]

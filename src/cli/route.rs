@@ -69,7 +69,11 @@ fn drives(matches: &ArgMatches) -> Result<Vec<Drive>, Failure> {
         return Ok(vec![Drive::PressureDrop(drop)]);
     }
     let mut found = Vec::new();
-    for typed in matches.get_many::<String>("flow-rate").into_iter().flatten() {
+    for typed in matches
+        .get_many::<String>("flow-rate")
+        .into_iter()
+        .flatten()
+    {
         let rate = units::parse_flow_rate(typed).map_err(|e| Failure::option("flow-rate", &e))?;
         if !(rate.is_finite() && rate > 0.0) {
             return Err(Failure::usage(
@@ -142,7 +146,10 @@ impl Request {
             } else {
                 String::new()
             };
-            [with(&format!("{middle}.vtu")), with(&format!("{middle}.vtp"))]
+            [
+                with(&format!("{middle}.vtu")),
+                with(&format!("{middle}.vtp")),
+            ]
         });
         (steps.collect(), with(".pvd"))
     }
@@ -244,7 +251,10 @@ impl Request {
             }
         }
         let spread = route_spread(route);
-        let stem = self.file.file_stem().map(|s| s.to_string_lossy().into_owned());
+        let stem = self
+            .file
+            .file_stem()
+            .map(|s| s.to_string_lossy().into_owned());
         let name = file.name.clone().or(stem).unwrap_or_default();
         let sections: Vec<RouteSectionRecord> = file.sections.iter().map(record).collect();
         let settings = self.settings();
@@ -332,7 +342,10 @@ impl Request {
         for (operation, [fluid, wall]) in document.operations.iter().zip(steps) {
             listed.push((operation.flow_rate, name(&fluid), name(&wall)));
             files.push((fluid, report::route_vtu(document, operation)?.into_bytes()));
-            files.push((wall, report::route_wall_vtp(document, operation)?.into_bytes()));
+            files.push((
+                wall,
+                report::route_wall_vtp(document, operation)?.into_bytes(),
+            ));
         }
         files.push((collection, report::route_pvd(&listed).into_bytes()));
         Ok(files)

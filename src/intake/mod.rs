@@ -60,8 +60,8 @@ pub use micrograph::{
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
 pub use route_file::{
-    FileBranch, FileSection, FileSegment, FileStation, INTERPOLATION_WORDS, MAX_STATIONS, RouteFile,
-    read_route, route_from_bytes,
+    FileBranch, FileSection, FileSegment, FileStation, INTERPOLATION_WORDS, MAX_STATIONS,
+    RouteFile, read_route, route_from_bytes,
 };
 pub use route_problem::{MAX_PARALLEL, MAX_SPREAD, RouteProblem};
 pub use section::{Extras, ReadOptions, Section, read_section, section_from_bytes};

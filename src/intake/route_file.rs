@@ -363,8 +363,9 @@ impl Reader<'_> {
         if let Some(value) = table.get("spread") {
             let expected = "a share in quotes, such as \"5 %\"";
             let word = string(self.text, value, "spread", expected)?;
-            let spread = parse_fraction(word)
-                .map_err(|source| fault(self.text, value, "spread", ReadProblem::Unit { source }))?;
+            let spread = parse_fraction(word).map_err(|source| {
+                fault(self.text, value, "spread", ReadProblem::Unit { source })
+            })?;
             if !(0.0..=MAX_SPREAD).contains(&spread) {
                 return Err(self.refuse(value, "spread", RouteProblem::Spread { spread }));
             }
@@ -431,30 +432,27 @@ impl Reader<'_> {
         name: String,
         inherited: &Inherited,
     ) -> Result<FileBranch, Fault> {
-        let stations = match table.get("station") {
-            Some(value) => {
-                for second in ["length", "section", "nominal"] {
-                    if let Some(value) = table.get(second) {
-                        let first = "station";
-                        let problem = RouteProblem::Both { first, second };
-                        return Err(self.refuse(value, second, problem));
-                    }
+        let stations = if let Some(value) = table.get("station") {
+            for second in ["length", "section", "nominal"] {
+                if let Some(value) = table.get(second) {
+                    let first = "station";
+                    let problem = RouteProblem::Both { first, second };
+                    return Err(self.refuse(value, second, problem));
                 }
-                self.stations(value)?
             }
-            None => {
-                let Some(value) = table.get("length") else {
-                    let (first, second) = ("station", "length");
-                    let problem = RouteProblem::Neither { first, second };
-                    return Err(self.refuse(item, field, problem));
-                };
-                let length = self.length(value, "length")?;
-                if length <= 0.0 {
-                    return Err(self.refuse(value, "length", RouteProblem::NotPositive { length }));
-                }
-                let section = self.section(item, table, field)?;
-                [0.0, length].map(|at| FileStation { at, section }).to_vec()
+            self.stations(value)?
+        } else {
+            let Some(value) = table.get("length") else {
+                let (first, second) = ("station", "length");
+                let problem = RouteProblem::Neither { first, second };
+                return Err(self.refuse(item, field, problem));
+            };
+            let length = self.length(value, "length")?;
+            if length <= 0.0 {
+                return Err(self.refuse(value, "length", RouteProblem::NotPositive { length }));
             }
+            let section = self.section(item, table, field)?;
+            [0.0, length].map(|at| FileStation { at, section }).to_vec()
         };
         Ok(FileBranch {
             name,
@@ -492,7 +490,11 @@ impl Reader<'_> {
                     return Err(self.refuse(at_value, "at", problem));
                 }
                 if at - before <= 1e-12 * at.abs().max(before.abs()) {
-                    return Err(self.refuse(at_value, "at", RouteProblem::SamePlace { number, at }));
+                    return Err(self.refuse(
+                        at_value,
+                        "at",
+                        RouteProblem::SamePlace { number, at },
+                    ));
                 }
             }
             let section = self.section(item, table, "station")?;
@@ -531,7 +533,12 @@ impl Reader<'_> {
     }
 
     fn section_of_file(&mut self, value: &Value<'_>) -> Result<usize, Fault> {
-        let written = string(self.text, value, "section", "the path of a section file in quotes")?;
+        let written = string(
+            self.text,
+            value,
+            "section",
+            "the path of a section file in quotes",
+        )?;
         if written == "-" {
             return Err(self.refuse(value, "section", RouteProblem::StandardInput));
         }

@@ -87,7 +87,11 @@ pub enum RouteProblem {
     #[error("`parallel` must be a whole number from 1 to {MAX_PARALLEL}")]
     Parallel,
     /// A spread outside its limits.
-    #[error("the spread is {}; from 0 to {} (relative standard uncertainty of K) is taken", spread, MAX_SPREAD)]
+    #[error(
+        "the spread is {}; from 0 to {} (relative standard uncertainty of K) is taken",
+        spread,
+        MAX_SPREAD
+    )]
     Spread {
         /// As a share.
         spread: f64,

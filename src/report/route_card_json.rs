@@ -33,16 +33,16 @@ pub enum RouteCardError {
 /// [`RouteCardError`] without a fluid.
 pub fn route_card_json(document: &RouteDocument<'_>) -> Result<String, RouteCardError> {
     let fluid = document.fluid.ok_or(RouteCardError::NoFluid)?;
-    let cards = Cards {
+    let root = Root {
         schema: CARD_SCHEMA,
         tool_version: env!("CARGO_PKG_VERSION"),
         cards: [RouteCard::new(document, fluid)],
     };
-    Ok(pretty(&cards)?)
+    Ok(pretty(&root)?)
 }
 
 #[derive(Serialize)]
-struct Cards<'a> {
+struct Root<'a> {
     schema: &'static str,
     tool_version: &'static str,
     cards: [RouteCard<'a>; 1],
@@ -150,7 +150,11 @@ impl<'a> RouteCard<'a> {
             name: document.name,
             kind: "route",
             source: document.source.map(Source::new),
-            settings: document.settings.iter().map(|(k, v)| (*k, v.as_str())).collect(),
+            settings: document
+                .settings
+                .iter()
+                .map(|(k, v)| (*k, v.as_str()))
+                .collect(),
             fluid: CardFluid {
                 name: &fluid.name,
                 source: &fluid.source,
@@ -189,7 +193,8 @@ impl Sensitivity {
     /// Only the scale of all sections is known without more solves: `R` goes with its power -4 at a fixed length.
     fn of_route() -> Self {
         let absent = |unit| {
-            let why = "it differs from section to section; `etchwise sensitivity` gives it for each";
+            let why =
+                "it differs from section to section; `etchwise sensitivity` gives it for each";
             Quantity::optional(None, unit, why)
         };
         Self {
@@ -241,7 +246,11 @@ fn validity(document: &RouteDocument<'_>, fluid: &Fluid) -> Validity {
     let highest = fluid.density.map(|rho| REYNOLDS_HIGH / (rho * per_rate));
     Validity {
         reynolds_high: Quantity::real(REYNOLDS_HIGH, "1"),
-        flow_rate_high: Quantity::optional(highest, "m^3/s", "the density of the fluid is not known"),
+        flow_rate_high: Quantity::optional(
+            highest,
+            "m^3/s",
+            "the density of the fluid is not known",
+        ),
         entrance: "fully developed flow; entrances, steps, bends and junctions are not in the resistance",
         temperature_low: Quantity::optional(fluid.temperature, "K", NO_TEMPERATURE),
         temperature_high: Quantity::optional(fluid.temperature, "K", NO_TEMPERATURE),

@@ -132,7 +132,7 @@ impl RouteDocument<'_> {
             );
             let reach = branch.begin.abs() + branch.length;
             let at = numbers::length_on(branch.begin + point.position, reach);
-            out.push_str(&format!(", {station}, at {at}"));
+            out.extend([", ", &station, ", at ", &at]);
         }
         out
     }

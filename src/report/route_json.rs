@@ -66,7 +66,11 @@ impl<'a> Root<'a> {
                 absent_because.insert(key, why);
             }
         };
-        absent(document.source.is_none(), "source", "the route was built in code");
+        absent(
+            document.source.is_none(),
+            "source",
+            "the route was built in code",
+        );
         absent(document.fluid.is_none(), "fluid", NO_FLUID);
         absent(document.spread.is_none(), "spread", NO_SPREAD);
         absent(document.operations.is_empty(), "operating_points", NO_FLOW);
@@ -80,7 +84,11 @@ impl<'a> Root<'a> {
             tool_version: env!("CARGO_PKG_VERSION"),
             name: document.name,
             source: document.source.map(Source::new),
-            settings: document.settings.iter().map(|(k, v)| (*k, v.as_str())).collect(),
+            settings: document
+                .settings
+                .iter()
+                .map(|(k, v)| (*k, v.as_str()))
+                .collect(),
             sections: SectionView::all(document),
             fluid: document.fluid.map(FluidView::new),
             integral: Quantity::estimate(route.integral, "1/m^3").between(bounds),
@@ -263,7 +271,10 @@ struct SegmentView<'a> {
 impl<'a> SegmentView<'a> {
     fn new(document: &'a RouteDocument<'a>, index: usize) -> Option<Self> {
         let segment: &RouteSegment = document.route.segments.get(index)?;
-        let operation = document.operations.first().and_then(|o| o.segments.get(index));
+        let operation = document
+            .operations
+            .first()
+            .and_then(|o| o.segments.get(index));
         let spread = document.spread.and_then(|s| s.segments.get(index));
         let bounds = segment.bounds.as_ref().ok().copied();
         let mu = document.fluid.map(|f| f.viscosity);
@@ -274,7 +285,8 @@ impl<'a> SegmentView<'a> {
                     .between(bounds.map(|(low, high)| (mu * low, mu * high)))
             },
         );
-        let pressure = |k: usize| Quantity::optional(operation.map(|o| o.pressures[k]), "Pa", NO_FLOW);
+        let pressure =
+            |k: usize| Quantity::optional(operation.map(|o| o.pressures[k]), "Pa", NO_FLOW);
         Some(Self {
             name: &segment.name,
             integral: Quantity::estimate(segment.integral, "1/m^3").between(bounds),
@@ -346,7 +358,11 @@ impl<'a> BranchView<'a> {
             entrance_share: Quantity::optional(
                 entrance.flatten(),
                 "1",
-                if entrance.is_none() { NO_FLOW } else { NO_DENSITY },
+                if entrance.is_none() {
+                    NO_FLOW
+                } else {
+                    NO_DENSITY
+                },
             ),
             stretches: branch
                 .ways
@@ -356,7 +372,12 @@ impl<'a> BranchView<'a> {
                     interpolation: way.used.word(),
                     dimensions_absent_because: way.why.as_deref(),
                     integral: Quantity::estimate(scaled(way.mean_inverse, *length), "1/m^3")
-                        .between(way.bounds.as_ref().ok().map(|(a, b)| (a * length, b * length))),
+                        .between(
+                            way.bounds
+                                .as_ref()
+                                .ok()
+                                .map(|(a, b)| (a * length, b * length)),
+                        ),
                     bounds_absent_because: way.bounds.as_ref().err().map(String::as_str),
                     sections: Quantity::count(way.nodes.len()),
                 })

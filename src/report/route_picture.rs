@@ -4,6 +4,8 @@
 //! their own, named at their ends. Stations are dots. Without a fluid `1/K` is shown instead, without a flow it
 //! alone.
 
+use std::fmt::Write as _;
+
 use super::drawing::{Anchor, Colour, Drawing, INK, Item, PAPER, TextSize};
 use super::line_style::dashed;
 use super::numbers::{self, significant, with_unit};
@@ -144,16 +146,21 @@ impl RoutePage<'_> {
             significant(document.route.volume() / 1e-9, 4)
         );
         if let Some(resistance) = document.resistance() {
-            what.push_str(&format!(", R = {} Pa s/m\u{b3}", significant(resistance.value, 5)));
+            let _ = write!(
+                what,
+                ", R = {} Pa s/m\u{b3}",
+                significant(resistance.value, 5)
+            );
         }
         if let Some(operation) = document.operations.first() {
-            what.push_str(&format!(
+            let _ = write!(
+                what,
                 "; at {}: pressure drop {}, largest wall shear {} Pa ({})",
                 with_unit(operation.flow_rate, numbers::FLOW_RATES, 4),
                 with_unit(operation.pressure_drop, numbers::PRESSURES, 4),
                 significant(operation.shear_max, 4),
                 document.place(operation.shear_at)
-            ));
+            );
         }
         self.drawing.title = format!("route {name} along its length");
         self.drawing.description = format!("{name}: {what}.");
@@ -167,7 +174,11 @@ impl RoutePage<'_> {
     fn bounds(&self) -> Vec<f64> {
         let mut at = vec![0.0];
         for segment in &self.document.route.segments {
-            let longest = segment.branches.iter().map(|b| b.length).fold(0.0, f64::max);
+            let longest = segment
+                .branches
+                .iter()
+                .map(|b| b.length)
+                .fold(0.0, f64::max);
             at.push(at.last().copied().unwrap_or(0.0) + longest);
         }
         at
@@ -180,7 +191,7 @@ impl RoutePage<'_> {
             let count: usize = segment.branches.iter().map(|b| b.count).sum();
             let mut name = numbers::title(&segment.name);
             if count > 1 {
-                name.push_str(&format!(" (x{count})"));
+                let _ = write!(name, " (x{count})");
             }
             let (from, to) = (self.x(pair[0]), self.x(pair[1]));
             let most = ((to - from - 6.0) / TextSize::Small.advance()).max(0.0) as usize;
@@ -207,7 +218,10 @@ impl RoutePage<'_> {
                     .and_then(|o| o.segments.get(s)?.branches.get(b));
                 let value = |index: usize| {
                     let at = operation.and_then(|o| o.points.get(index));
-                    let k = document.route.flows[branch.points[index].flow].flow.conductance.value;
+                    let k = document.route.flows[branch.points[index].flow]
+                        .flow
+                        .conductance
+                        .value;
                     match shown {
                         Shown::Pressure => at.map_or(0.0, |at| at.pressure),
                         Shown::Shear => at.map_or(0.0, |at| at.local.wall_shear_max),
@@ -226,13 +240,23 @@ impl RoutePage<'_> {
                         marks.push([place(index), value(index)]);
                     }
                     let way = point.station.and_then(|station| branch.ways.get(station));
-                    let Some((Between { used: UsedRule::Law(law), .. }, _)) = way else {
+                    let Some((
+                        Between {
+                            used: UsedRule::Law(law),
+                            ..
+                        },
+                        _,
+                    )) = way
+                    else {
                         continue;
                     };
                     if index + 1 < branch.points.len() {
                         let ends = [index, index + 1];
                         let k = ends.map(|i| {
-                            document.route.flows[branch.points[i].flow].flow.conductance.value
+                            document.route.flows[branch.points[i].flow]
+                                .flow
+                                .conductance
+                                .value
                         });
                         points.extend(curve(shown, *law, k, ends.map(|i| [place(i), value(i)])));
                     }
@@ -261,7 +285,11 @@ impl RoutePage<'_> {
             }
             Shown::Shear => {
                 let (unit, size) = numbers::fitting_unit(top, numbers::PRESSURES);
-                ("largest wall shear at the solved sections", unit.to_owned(), size)
+                (
+                    "largest wall shear at the solved sections",
+                    unit.to_owned(),
+                    size,
+                )
             }
             Shown::ResistancePerLength | Shown::Inverse => {
                 let power = top.log10().floor() as i32;
@@ -284,7 +312,8 @@ impl RoutePage<'_> {
         let (levels, step) = ticks::levels(reach / size, MOST_TICKS);
         for value in std::iter::once(0.0).chain(levels) {
             let y = height(value * size);
-            self.drawing.lines(vec![vec![[left, y], [right, y]]], GRID, 1.0);
+            self.drawing
+                .lines(vec![vec![[left, y], [right, y]]], GRID, 1.0);
             let label = ticks::label(value, step);
             self.drawing
                 .text([left - 10.0, y + 5.0], Anchor::End, TextSize::Small, label);
@@ -294,10 +323,17 @@ impl RoutePage<'_> {
             let line = dashed(&[[x, self.y], [x, floor]], &[4.0, 4.0]);
             self.drawing.lines(line, INK, 0.8);
         }
-        self.drawing
-            .lines(vec![vec![[left, self.y], [left, floor], [right, floor]]], INK, 1.0);
+        self.drawing.lines(
+            vec![vec![[left, self.y], [left, floor], [right, floor]]],
+            INK,
+            1.0,
+        );
         for line in &lines {
-            let page: Vec<Point> = line.points.iter().map(|p| [self.x(p[0]), height(p[1])]).collect();
+            let page: Vec<Point> = line
+                .points
+                .iter()
+                .map(|p| [self.x(p[0]), height(p[1])])
+                .collect();
             let style = line.branch % BRANCHES.len();
             let drawn = if DASHES[style].is_empty() {
                 vec![page]
@@ -356,7 +392,13 @@ impl RoutePage<'_> {
 
     /// Which line is which branch, and what dots are.
     fn notes(&mut self) {
-        for segment in self.document.route.segments.iter().filter(|s| s.branches.len() > 1) {
+        for segment in self
+            .document
+            .route
+            .segments
+            .iter()
+            .filter(|s| s.branches.len() > 1)
+        {
             self.y += 6.0;
             self.paragraph(
                 &format!("branches of segment {}:", numbers::title(&segment.name)),
@@ -365,7 +407,10 @@ impl RoutePage<'_> {
             for (index, branch) in segment.branches.iter().enumerate() {
                 self.y += TextSize::Medium.line_height();
                 let style = index % BRANCHES.len();
-                let sample = [[MARGIN + 10.0, self.y - 10.0], [MARGIN + 74.0, self.y - 10.0]];
+                let sample = [
+                    [MARGIN + 10.0, self.y - 10.0],
+                    [MARGIN + 74.0, self.y - 10.0],
+                ];
                 let drawn = if DASHES[style].is_empty() {
                     vec![sample.to_vec()]
                 } else {
@@ -386,7 +431,8 @@ impl RoutePage<'_> {
                     (shear: straight)";
         self.paragraph(text, TextSize::Small);
         if !self.document.operations.is_empty() {
-            let text = "A resistance is not a pressure rating: bonded chips and fittings can burst.";
+            let text =
+                "A resistance is not a pressure rating: bonded chips and fittings can burst.";
             self.paragraph(text, TextSize::Small);
         }
     }

@@ -52,22 +52,35 @@ fn whole(document: &RouteDocument<'_>) -> String {
             &mut table,
             "resistance R",
             stated(resistance, "Pa s/m\u{b3}"),
-            format!("{} mbar min/\u{b5}L", significant(resistance.value / MBAR_MIN_PER_UL, 5)),
+            format!(
+                "{} mbar min/\u{b5}L",
+                significant(resistance.value / MBAR_MIN_PER_UL, 5)
+            ),
         );
     }
     match (&route.bounds, document.resistance_bounds()) {
-        (Err(_), _) => row(&mut table, "R, proven", "none, see below".to_owned(), String::new()),
+        (Err(_), _) => row(
+            &mut table,
+            "R, proven",
+            "none, see below".to_owned(),
+            String::new(),
+        ),
         (Ok((low, high)), bounds) => {
-            let (name, (a, b), unit) = bounds.map_or(
-                ("R / mu, proven", (*low, *high), "1/m\u{b3}"),
-                |bounds| ("R, proven", bounds, "Pa s/m\u{b3}"),
-            );
+            let (name, (a, b), unit) = bounds
+                .map_or(("R / mu, proven", (*low, *high), "1/m\u{b3}"), |bounds| {
+                    ("R, proven", bounds, "Pa s/m\u{b3}")
+                });
             let value = format!("{} to {} {unit}", significant(a, 6), significant(b, 6));
             let width = 2.0 * (high - low) / (high + low);
             row(&mut table, name, value, format!("{} wide", per_cent(width)));
         }
     }
-    let metres = |v: f64| (format!("{} m", significant(v, 6)), with_unit(v, numbers::LENGTHS, 5));
+    let metres = |v: f64| {
+        (
+            format!("{} m", significant(v, 6)),
+            with_unit(v, numbers::LENGTHS, 5),
+        )
+    };
     let (si, also) = metres(route.length());
     row(&mut table, "length, along the longest branches", si, also);
     let volume = route.volume();
@@ -101,7 +114,10 @@ fn how(document: &RouteDocument<'_>) -> String {
         }
     };
     count(UsedRule::Constant, "the same section at both ends");
-    count(UsedRule::Dimensions, "dimensions in proportion, sections in between solved");
+    count(
+        UsedRule::Dimensions,
+        "dimensions in proportion, sections in between solved",
+    );
     for law in LawOfK::ALL {
         count(UsedRule::Law(law), law.meaning());
     }
@@ -150,7 +166,11 @@ fn proven_segments(document: &RouteDocument<'_>) -> String {
         let Ok((low, high)) = segment.bounds else {
             continue;
         };
-        let unit = if mu.is_some() { "Pa s/m\u{b3}" } else { "1/m\u{b3}" };
+        let unit = if mu.is_some() {
+            "Pa s/m\u{b3}"
+        } else {
+            "1/m\u{b3}"
+        };
         let [a, b] = [low, high].map(|v| significant(v * mu.unwrap_or(1.0), 6));
         table.row([
             format!("proven of segment {}", numbers::title(&segment.name)),
@@ -204,7 +224,12 @@ fn flow(document: &RouteDocument<'_>, operation: &RouteOperation) -> String {
         v.map_or_else(|| "not known without a density".to_owned(), f)
     };
     let reynolds = shown(operation.reynolds_max, &|v| significant(v, 4));
-    row(&mut table, "largest Reynolds number on Dh", reynolds, String::new());
+    row(
+        &mut table,
+        "largest Reynolds number on Dh",
+        reynolds,
+        String::new(),
+    );
     let share = shown(operation.entrance_share, &per_cent);
     row(
         &mut table,
@@ -247,7 +272,15 @@ fn series(document: &RouteDocument<'_>) -> String {
 fn split(document: &RouteDocument<'_>) -> String {
     let route = document.route;
     let is_spread = document.spread.is_some();
-    let mut heads = vec!["segment", "branch", "of", "length", "share of R", "share of flow", "residence"];
+    let mut heads = vec![
+        "segment",
+        "branch",
+        "of",
+        "length",
+        "share of R",
+        "share of flow",
+        "residence",
+    ];
     if is_spread {
         heads.extend(["u(share)/share", "by draws", "u(R)/R"]);
     }
@@ -262,7 +295,11 @@ fn split(document: &RouteDocument<'_>) -> String {
             let first = b == 0;
             let of_flow = operation.and_then(|o| o.segments.get(s)?.branches.get(b));
             let mut cells = vec![
-                if first { numbers::title(&segment.name) } else { String::new() },
+                if first {
+                    numbers::title(&segment.name)
+                } else {
+                    String::new()
+                },
                 numbers::title(&branch.name),
                 branch.count.to_string(),
                 with_unit(branch.length, numbers::LENGTHS, 4),
@@ -272,17 +309,26 @@ fn split(document: &RouteDocument<'_>) -> String {
                     String::new()
                 },
                 format!("{} %", significant(100.0 * branch.share, 4)),
-                of_flow.map_or_else(String::new, |o| with_unit(o.residence_time, numbers::TIMES, 4)),
+                of_flow.map_or_else(String::new, |o| {
+                    with_unit(o.residence_time, numbers::TIMES, 4)
+                }),
             ];
             let spread = document.spread.and_then(|spread| spread.segments.get(s));
             if let Some((of_segment, share)) = spread.and_then(|s| Some((s, s.shares.get(b)?))) {
                 cells.extend([per_cent(share.linear), per_cent(share.drawn)]);
-                cells.push(if first { per_cent(of_segment.linear) } else { String::new() });
+                cells.push(if first {
+                    per_cent(of_segment.linear)
+                } else {
+                    String::new()
+                });
             }
             table.row(cells);
         }
     }
-    let mut out = part("Segments in series, branches beside each other (share of one)", &table);
+    let mut out = part(
+        "Segments in series, branches beside each other (share of one)",
+        &table,
+    );
     if let Some(spread) = document.spread {
         let text = format!(
             "Spread of K between branches, independent: u(R)/R of the route is {} (first order), {} by {} draws; \
@@ -304,8 +350,21 @@ fn stations(document: &RouteDocument<'_>, is_long: bool) -> String {
     columns.push(Align::Left);
     let mut table = Table::new(&columns);
     let is_flowing = !document.operations.is_empty();
-    let (third, fourth) = if is_flowing { ("pressure", "largest shear") } else { ("", "") };
-    table.row(["segment", "at", "K / m^4", "area", "R' / (Pa s/m^4)", third, fourth, "section"]);
+    let (third, fourth) = if is_flowing {
+        ("pressure", "largest shear")
+    } else {
+        ("", "")
+    };
+    table.row([
+        "segment",
+        "at",
+        "K / m^4",
+        "area",
+        "R' / (Pa s/m^4)",
+        third,
+        fourth,
+        "section",
+    ]);
     let mut left_out = 0;
     let mut rows = 0;
     for (s, segment) in route.segments.iter().enumerate() {
@@ -329,12 +388,19 @@ fn stations(document: &RouteDocument<'_>, is_long: bool) -> String {
                 let mu = document.fluid.map(|f| f.viscosity);
                 table.row([
                     numbers::title(&name),
-                    numbers::length_on(branch.begin + point.position, branch.begin.abs() + branch.length),
+                    numbers::length_on(
+                        branch.begin + point.position,
+                        branch.begin.abs() + branch.length,
+                    ),
                     significant(flow.conductance.value, 6),
                     with_unit(flow.geometry.area, numbers::AREAS, 4),
-                    mu.map_or(String::new(), |mu| significant(mu / flow.conductance.value, 5)),
+                    mu.map_or(String::new(), |mu| {
+                        significant(mu / flow.conductance.value, 5)
+                    }),
                     at.map_or(String::new(), |at| pressure(at.pressure)),
-                    at.map_or(String::new(), |at| format!("{} Pa", significant(at.local.wall_shear_max, 4))),
+                    at.map_or(String::new(), |at| {
+                        format!("{} Pa", significant(at.local.wall_shear_max, 4))
+                    }),
                     numbers::title(document.section_label(point.flow)),
                 ]);
             }

@@ -26,6 +26,8 @@ const PLANE_NODES: f64 = 2600.0;
 const FILE_NODES: f64 = 4e6;
 /// Nodes along one side of a plane, least and most.
 const SIDE_NODES: [f64; 2] = [9.0, 321.0];
+/// Fluid share below which a cell is solid: what rounding leaves of sums that cancel.
+const LEAST_FRACTION: f64 = 1e-9;
 /// Room between branches, in widths of the widest section.
 const BRANCH_PITCH: f64 = 1.5;
 
@@ -55,7 +57,11 @@ pub(super) fn placed<'a>(document: &RouteDocument<'a>) -> Vec<Placed<'a>> {
                 offset: [(b as f64 - middle) * pitch, z],
             });
         }
-        z += segment.branches.iter().map(|b| b.length).fold(0.0, f64::max);
+        z += segment
+            .branches
+            .iter()
+            .map(|b| b.length)
+            .fold(0.0, f64::max);
     }
     all
 }
@@ -185,7 +191,7 @@ impl Mesh {
                 for i in 0..columns - 1 {
                     let cell = j * (columns - 1) + i;
                     let fraction = 0.5 * (cells(step - 1, cell) + cells(step, cell));
-                    if fraction <= 0.0 {
+                    if fraction <= LEAST_FRACTION {
                         continue;
                     }
                     let at = j * columns + i;
@@ -283,7 +289,8 @@ fn plane(
         [0, 1].map(|k| ((p[k] - low[k]) / step[k]).clamp(0.0, cells[k]))
     };
     let edges = outline.loops().enumerate().flat_map(|(loop_index, wall)| {
-        wall.edges().map(move |(start, end)| (loop_index, start, end))
+        wall.edges()
+            .map(move |(start, end)| (loop_index, start, end))
     });
     let edges = edges.map(|(loop_index, start, end)| WallEdge {
         start: place(start),

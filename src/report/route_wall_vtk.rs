@@ -65,7 +65,11 @@ struct End<'a> {
 impl End<'_> {
     /// The same section at another place along the channel.
     fn moved(&self, z: f64, pressure: f64) -> Self {
-        Self { z, pressure, ..*self }
+        Self {
+            z,
+            pressure,
+            ..*self
+        }
     }
 
     fn curves(&self) -> &[LoopCurve] {
@@ -107,12 +111,7 @@ impl Walls {
     }
 
     /// Quadrilaterals around one loop.
-    fn strip(
-        &mut self,
-        ends: [(&End<'_>, &LoopCurve); 2],
-        rings: &[[f64; 2]],
-        place: &Placed<'_>,
-    ) {
+    fn strip(&mut self, ends: [(&End<'_>, &LoopCurve); 2], rings: &[[f64; 2]], place: &Placed<'_>) {
         let first = self.shear.len() as u64;
         for ring in rings {
             for ((end, curve), &arc) in ends.iter().zip(ring) {
@@ -191,7 +190,10 @@ fn rings(a: &LoopCurve, b: &LoopCurve) -> Vec<[f64; 2]> {
     };
     let mut rings = Vec::new();
     for k in 0..count {
-        let ways = [stretch(&knots_a, k, length_a), stretch(&knots_b, k, length_b)];
+        let ways = [
+            stretch(&knots_a, k, length_a),
+            stretch(&knots_b, k, length_b),
+        ];
         let share = (ways[0] / length_a).max(ways[1] / length_b);
         let pieces = (share * PIECES as f64).ceil().max(1.0) as usize;
         for piece in 0..pieces {

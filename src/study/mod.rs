@@ -15,10 +15,11 @@ pub use moved_outline::{MovedOutline, moved_outline};
 pub use reach::{Reach, ReachBound, ReachError, ReachSide, ReachSides};
 pub use resolve_check::{Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE};
 pub use route::{
-    Between, BranchDesign, BranchOperation, DRAWS, Interpolation, LawOfK, Nested, PointOperation, PointPlace,
-    Route, RouteBranch, RouteDesign, RouteError, RouteFlow, RouteOperation, RouteOptions, RoutePoint,
-    RouteSection, RouteSegment, RouteSpread, SHRINKING, SegmentDesign, SegmentOperation, SegmentSpread,
-    ShareSpread, StationDesign, UsedRule, nested, route_spread, solve_route,
+    Between, BranchDesign, BranchOperation, DRAWS, Interpolation, LawOfK, Nested, PointOperation,
+    PointPlace, Route, RouteBranch, RouteDesign, RouteError, RouteFlow, RouteOperation,
+    RouteOptions, RoutePoint, RouteSection, RouteSegment, RouteSpread, SHRINKING, SegmentDesign,
+    SegmentOperation, SegmentSpread, ShareSpread, StationDesign, UsedRule, nested, route_spread,
+    solve_route,
 };
 pub use sensitivity::{
     Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study, solve_for_sensitivity,

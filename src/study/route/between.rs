@@ -64,7 +64,7 @@ pub struct Between {
 }
 
 /// The two ends and all flows solved so far; sections in between are added.
-pub(super) struct Ends<'a> {
+pub(super) struct Stretch<'a> {
     /// Indices of the sections, which are those of their flows.
     pub(super) ends: [usize; 2],
     pub(super) sections: &'a [RouteSection],
@@ -72,7 +72,7 @@ pub(super) struct Ends<'a> {
     pub(super) options: &'a RouteOptions,
 }
 
-impl Ends<'_> {
+impl Stretch<'_> {
     /// The way by a rule; `Err(Ok)` is why dimensions that were asked for cannot be interpolated.
     pub(super) fn between(
         &mut self,
@@ -201,7 +201,8 @@ impl Ends<'_> {
                 self.flows.push(flow?);
             }
             let indices = at.iter().step_by(step).flatten().copied();
-            let nodes: Vec<(f64, usize)> = chebyshev_points(order).into_iter().zip(indices).collect();
+            let nodes: Vec<(f64, usize)> =
+                chebyshev_points(order).into_iter().zip(indices).collect();
             let way = self.sampled(nodes, before);
             before = Some(way.mean_inverse.value);
             let is_done = way.is_converged && order > self.options.least_between;
@@ -258,8 +259,9 @@ impl Ends<'_> {
             let [a, b] = [a, b].map(|index| self.flow(index));
             let is_rising = a.flow.geometry.area <= b.flow.geometry.area;
             let (small, large) = if is_rising { (a, b) } else { (b, a) };
-            let inside = nested(&small.outline, &large.outline)
-                .map_err(|why| format!("the smaller section is not inside the larger one: {why}"))?;
+            let inside = nested(&small.outline, &large.outline).map_err(|why| {
+                format!("the smaller section is not inside the larger one: {why}")
+            })?;
             let small = small.flow.bracket.as_ref().map_err(ToString::to_string)?;
             let large = large.flow.bracket.as_ref().map_err(ToString::to_string)?;
             low += (to - from) / large.high;

@@ -4,7 +4,7 @@ use std::collections::BTreeMap;
 
 use rayon::prelude::*;
 
-use super::between::{Between, Ends};
+use super::between::{Between, Stretch};
 use super::design::{
     BranchDesign, RouteDesign, RouteError, RouteOptions, RouteSection, SegmentDesign,
 };
@@ -276,8 +276,12 @@ impl Builder<'_> {
                 })?;
             let last = way.nodes.len() - 1;
             let skipped = usize::from(index > 0);
-            for (j, (&(share, flow), to)) in
-                way.nodes.iter().zip(&way.inverse_to).enumerate().skip(skipped)
+            for (j, (&(share, flow), to)) in way
+                .nodes
+                .iter()
+                .zip(&way.inverse_to)
+                .enumerate()
+                .skip(skipped)
             {
                 let station = match j {
                     0 => Some(index),
@@ -325,7 +329,7 @@ impl Builder<'_> {
         if let Some(way) = self.ways.get(&key) {
             return Ok(way.clone());
         }
-        let way = Ends {
+        let way = Stretch {
             ends,
             sections: self.sections,
             flows: &mut self.flows,
@@ -402,8 +406,7 @@ impl Route {
             });
             law.inverse(k0, k1, 1.0) * length
         };
-        let branch =
-            |b: &RouteBranch| b.count as f64 / b.ways.iter().map(way).sum::<f64>();
+        let branch = |b: &RouteBranch| b.count as f64 / b.ways.iter().map(way).sum::<f64>();
         self.segments
             .iter()
             .map(|s| 1.0 / s.branches.iter().map(branch).sum::<f64>())

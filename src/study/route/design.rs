@@ -2,8 +2,8 @@
 
 use super::interpolation::Interpolation;
 use crate::flow::{FlowError, SolveOptions};
-use crate::geometry::{NotBetween, Outline};
 use crate::geometry::nominal::{NominalError, NominalSpec};
+use crate::geometry::{NotBetween, Outline};
 
 /// Relative accuracy of the integral of `1/K` between stations whose dimensions are interpolated.
 const INTEGRAL_TOLERANCE: f64 = 2e-6;
@@ -110,7 +110,9 @@ pub enum RouteError {
         error: FlowError,
     },
     /// Dimensions were to be interpolated where they cannot be.
-    #[error("segment `{segment}`: dimensions cannot be interpolated from station {station} to the next: {reason}")]
+    #[error(
+        "segment `{segment}`: dimensions cannot be interpolated from station {station} to the next: {reason}"
+    )]
     NotBetween {
         /// Name of the segment.
         segment: String,

@@ -21,10 +21,11 @@ mod spread;
 pub use between::{Between, UsedRule};
 pub use branch::{Route, RouteBranch, RouteFlow, RoutePoint, RouteSegment, solve_route};
 pub use design::{
-    BranchDesign, RouteDesign, RouteError, RouteOptions, RouteSection, SegmentDesign,
-    StationDesign,
+    BranchDesign, RouteDesign, RouteError, RouteOptions, RouteSection, SegmentDesign, StationDesign,
 };
 pub use interpolation::{Interpolation, LawOfK};
 pub use nesting::{Nested, SHRINKING, nested};
-pub use operation::{BranchOperation, PointOperation, PointPlace, RouteOperation, SegmentOperation};
+pub use operation::{
+    BranchOperation, PointOperation, PointPlace, RouteOperation, SegmentOperation,
+};
 pub use spread::{DRAWS, RouteSpread, SegmentSpread, ShareSpread, route_spread};

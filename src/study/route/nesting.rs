@@ -34,10 +34,7 @@ pub fn nested(small: &Outline, large: &Outline) -> Result<Nested, String> {
     let top = |outline: &Outline| outline.bounds().map_or(0.0, |(_, high)| high[1]);
     let level = [to_x - x, top(large) - top(small)];
     let centred = [to_x - x, to_y - y];
-    let shrunk = small
-        .clone()
-        .shifted([-x, -y])
-        .scaled(1.0 - SHRINKING);
+    let shrunk = small.clone().shifted([-x, -y]).scaled(1.0 - SHRINKING);
     for shift in [[0.0; 2], level, centred] {
         // Shifts round by 1e-16 of the coordinates; SHRINKING is far above that.
         let moved = shrunk.clone().shifted([x + shift[0], y + shift[1]]);

@@ -200,7 +200,10 @@ impl RouteOperation {
     }
 
     /// Of every segment the point with the highest velocity for its size, at the pressure drop of the route.
-    fn worst_points<'a>(&self, route: &'a Route) -> Vec<(&'a str, &'a SectionFlow, OperatingPoint)> {
+    fn worst_points<'a>(
+        &self,
+        route: &'a Route,
+    ) -> Vec<(&'a str, &'a SectionFlow, OperatingPoint)> {
         let mut worst = Vec::new();
         for (segment, operation) in route.segments.iter().zip(&self.segments) {
             let all = segment.branches.iter().zip(&operation.branches);

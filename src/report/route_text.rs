@@ -153,7 +153,8 @@ fn how(document: &RouteDocument<'_>) -> String {
     out.push_str(&paragraph("  ", &proof));
     out.push_str(&paragraph(
         "  ",
-        "Steps, bends and junctions between segments have no resistance of their own here.",
+        "Where K goes by a law, area and perimeter are straight between stations. Steps, bends and junctions \
+         between segments have no resistance of their own here.",
     ));
     out
 }

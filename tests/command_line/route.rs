@@ -257,25 +257,49 @@ fn hostile_names_stay_text_in_every_output() {
     assert!(!csv.out.contains('\u{1b}'));
 }
 
-/// Each bad file with its status and what the message must say.
-#[test]
-fn bad_route_files_name_the_line_and_the_key() {
+fn constant(rest: &str) -> String {
+    format!("[[segment]]\nname = \"s\"\n{rest}\n")
+}
+
+fn stations(positions: &[&str]) -> String {
     let station =
-        |at: &str| format!("[[segment.station]]\nat = {at}\nsection = \"section.toml\"\n");
-    let two = |a: &str, b: &str| format!("[[segment]]\nname = \"s\"\n{}{}", station(a), station(b));
-    let constant = |rest: &str| format!("[[segment]]\nname = \"s\"\n{rest}\n");
-    let good = "length = \"1 mm\"\nsection = \"section.toml\"";
-    let cases: Vec<(String, &[&str])> = vec![
-        (String::new(), &["empty"]),
-        ("name = \"x\"\n".to_owned(), &["no segment"]),
-        ("segment = []\n".to_owned(), &["no segment", "route.toml:1"]),
+        |at: &&str| format!("[[segment.station]]\nat = {at}\nsection = \"section.toml\"\n");
+    constant(&positions.iter().map(station).collect::<String>())
+}
+
+const GOOD: &str = "length = \"1 mm\"\nsection = \"section.toml\"";
+
+/// Every file ends with status 3, all the words in its message, and nothing on standard output.
+fn refused(cases: &[(String, &[&str])]) {
+    for (text, words) in cases {
+        let folder = folder(text);
+        let run = folder.line("route route.toml");
+        assert_eq!(run.status, 3, "{text}\n{}", run.err);
+        for word in *words {
+            assert!(run.err.contains(word), "{word}\n{text}\n{}", run.err);
+        }
+        assert!(
+            run.err.contains("help: ") && run.out.is_empty(),
+            "{}",
+            run.err
+        );
+    }
+}
+
+#[test]
+fn stations_and_lengths_that_cannot_be_name_the_line_and_the_key() {
+    refused(&[
         (
-            two("\"5 mm\"", "\"2 mm\""),
+            stations(&["\"5 mm\"", "\"2 mm\""]),
             &["route.toml:7", "at:", "before station 1"],
         ),
-        (two("\"2 mm\"", "\"2 mm\""), &["both at", "two"]),
-        (two("5", "6"), &["route.toml:4", "length with its unit"]),
-        (two("\"5\"", "\"6\""), &["route.toml:4", "unit"]),
+        (stations(&["\"2 mm\"", "\"2 mm\""]), &["both at", "two"]),
+        (
+            stations(&["5", "6"]),
+            &["route.toml:4", "length with its unit"],
+        ),
+        (stations(&["\"5\"", "\"6\""]), &["route.toml:4", "unit"]),
+        (stations(&["\"1 mm\""]), &["one station"]),
         (
             constant("length = \"0 mm\"\nsection = \"section.toml\""),
             &["route.toml:3", "above zero"],
@@ -288,6 +312,12 @@ fn bad_route_files_name_the_line_and_the_key() {
             constant("section = \"section.toml\""),
             &["neither `station` nor `length`"],
         ),
+    ]);
+}
+
+#[test]
+fn sections_that_cannot_be_read_name_the_line_and_the_file() {
+    refused(&[
         (
             constant("length = \"1 mm\""),
             &["neither `section` nor `nominal`"],
@@ -302,49 +332,40 @@ fn bad_route_files_name_the_line_and_the_key() {
         ),
         (constant("length = \"1 mm\"\nsection = \"-\""), &["`-`"]),
         (
-            constant(&format!("{good}\n{}", constant(good))),
-            &["route.toml:6", "`s` is used for two segments"],
-        ),
-        (
-            constant(&format!("{good}\nparallel = 0")),
-            &["`parallel`", "1 to 10000"],
-        ),
-        (
-            constant(&format!("{good}\nspread = \"90 %\"")),
-            &["spread", "0.5"],
-        ),
-        (
-            constant(&format!("{good}\nspread = 0.05")),
-            &["spread", "quotes"],
-        ),
-        (
-            constant(&format!("{good}\ninterpolation = \"linear\"")),
-            &["interpolation", "cube_root"],
-        ),
-        (
-            constant(&format!("{good}\nlenght = \"1 mm\"")),
-            &["lenght", "did you mean `length`"],
-        ),
-        (format!("[[segment]]\n{good}\n"), &["no `name`"]),
-        (constant(&station("\"1 mm\"")), &["one station"]),
-        (
             constant("length = \"1 mm\"\nnominal = { kind = \"rectangle\", width = \"1 um\" }"),
             &["route.toml:4", "height"],
         ),
-    ];
-    for (text, words) in cases {
-        let folder = folder(&text);
-        let run = folder.line("route route.toml");
-        assert_eq!(run.status, 3, "{text}\n{}", run.err);
-        for word in words {
-            assert!(run.err.contains(word), "{word}\n{text}\n{}", run.err);
-        }
-        assert!(
-            run.err.contains("help: ") && run.out.is_empty(),
-            "{}",
-            run.err
-        );
-    }
+    ]);
+}
+
+#[test]
+fn names_counts_and_words_that_cannot_be_name_the_line_and_the_key() {
+    let with = |line: &str| constant(&[GOOD, line].join("\n"));
+    refused(&[
+        (String::new(), &["empty"]),
+        ("name = \"x\"\n".to_owned(), &["no segment"]),
+        ("segment = []\n".to_owned(), &["no segment", "route.toml:1"]),
+        (format!("[[segment]]\n{GOOD}\n"), &["no `name`"]),
+        (
+            with(&constant(GOOD)),
+            &["route.toml:6", "`s` is used for two segments"],
+        ),
+        (with("parallel = 0"), &["`parallel`", "1 to 10000"]),
+        (with("spread = \"90 %\""), &["spread", "0.5"]),
+        (with("spread = 0.05"), &["spread", "quotes"]),
+        (
+            with("interpolation = \"linear\""),
+            &["interpolation", "cube_root"],
+        ),
+        (
+            with("lenght = \"1 mm\""),
+            &["lenght", "did you mean `length`"],
+        ),
+        (
+            with("[[segment.station]]\nat = \"0 mm\""),
+            &["both `station` and `length`"],
+        ),
+    ]);
 }
 
 #[test]
@@ -373,9 +394,12 @@ fn a_section_file_with_problems_is_named() {
 fn too_many_stations_are_refused_unless_allowed() {
     let mut text = "[[segment]]\nname = \"s\"\n".to_owned();
     for k in 0..600 {
-        text.push_str(&format!(
-            "[[segment.station]]\nat = \"{k} mm\"\nsection = \"section.toml\"\n"
-        ));
+        let station = [
+            "[[segment.station]]\nat = \"",
+            &k.to_string(),
+            " mm\"\nsection = \"section.toml\"\n",
+        ];
+        text.extend(station);
     }
     let folder = folder(&text);
     let run = folder.line("route route.toml");

@@ -237,7 +237,8 @@ fn hostile_names_stay_text_in_every_output() {
         .replace("chip", name)
         .replace("\"left\"", &format!("\"{name}\""));
     let folder = folder(&route);
-    let line = format!("route route.toml {COARSE} {WATER} --picture p.svg --card c.json --vtk v");
+    let line =
+        format!("route route.toml {COARSE} {WATER} --picture p.svg --card c.json --vtk v&<x>");
     let run = folder.line(&line);
     assert_eq!(run.status, 0, "{}", run.err);
     assert!(!run.out.contains('\u{1b}') && !run.err.contains('\u{1b}'));

@@ -39,6 +39,10 @@ use crate::units::{parse_fraction, parse_length};
 
 /// Stations that a route may have where nothing else is said.
 pub const MAX_STATIONS: usize = 500;
+/// Shortest way between two stations, m.
+const LEAST_METRES: f64 = 1e-9;
+/// Farthest position, m.
+const MOST_METRES: f64 = 1e3;
 /// The rules of interpolation between stations, as route files write them.
 pub const INTERPOLATION_WORDS: [&str; 6] = [
     "automatic",
@@ -216,7 +220,8 @@ pub fn route_from_bytes(
     let sha256 = sha256_hex(&bytes);
     let source = SourceText::decode(bytes).map_err(whole)?;
     if source.text.trim().is_empty() {
-        return Err(whole(ReadProblem::Empty));
+        let source = RouteProblem::Empty;
+        return Err(whole(ReadProblem::Route { source }));
     }
     let mut reader = Reader {
         text: &source.text,
@@ -405,7 +410,7 @@ impl Reader<'_> {
             branches.push(self.branch((item, table), "branch", name, &inherited)?);
         }
         if branches.is_empty() {
-            return Err(self.refuse(value, "branch", RouteProblem::Empty));
+            return Err(self.refuse(value, "branch", RouteProblem::NoBranch));
         }
         Ok(branches)
     }
@@ -451,6 +456,9 @@ impl Reader<'_> {
             if length <= 0.0 {
                 return Err(self.refuse(value, "length", RouteProblem::NotPositive { length }));
             }
+            if length < LEAST_METRES {
+                return Err(self.refuse(value, "length", RouteProblem::Outside { length }));
+            }
             let section = self.section(item, table, field)?;
             [0.0, length].map(|at| FileStation { at, section }).to_vec()
         };
@@ -466,8 +474,12 @@ impl Reader<'_> {
     fn length(&self, value: &Value<'_>, key: &str) -> Result<f64, Fault> {
         let expected = "a length with its unit in quotes, such as \"5 mm\"";
         let written = string(self.text, value, key, expected)?;
-        parse_length(written)
-            .map_err(|source| fault(self.text, value, key, ReadProblem::Unit { source }))
+        let length = parse_length(written)
+            .map_err(|source| fault(self.text, value, key, ReadProblem::Unit { source }))?;
+        if length.abs() > MOST_METRES {
+            return Err(self.refuse(value, key, RouteProblem::Outside { length }));
+        }
+        Ok(length)
     }
 
     fn stations(&mut self, value: &Value<'_>) -> Result<Vec<FileStation>, Fault> {
@@ -489,7 +501,7 @@ impl Reader<'_> {
                     let problem = RouteProblem::OutOfOrder { number, at, before };
                     return Err(self.refuse(at_value, "at", problem));
                 }
-                if at - before <= 1e-12 * at.abs().max(before.abs()) {
+                if at - before < LEAST_METRES {
                     return Err(self.refuse(
                         at_value,
                         "at",

@@ -14,6 +14,15 @@ pub enum RouteProblem {
     /// There is no segment.
     #[error("the route has no segment")]
     Empty,
+    /// A list of branches holds none.
+    #[error("there is no branch")]
+    NoBranch,
+    /// A length or position beyond all channels.
+    #[error("{} is outside what a channel can have: lengths from 1 nm, positions within 1 km", format_length(*length))]
+    Outside {
+        /// The length, m.
+        length: f64,
+    },
     /// A name is used twice.
     #[error("the name `{name}` is used for two {of}")]
     SameName {
@@ -122,6 +131,8 @@ impl RouteProblem {
     pub(super) fn hint(&self) -> String {
         match self {
             Self::Empty => "add a [[segment]] with `name`, `length` and `section`".to_owned(),
+            Self::NoBranch => "add a [[segment.branch]], or take `branch` out".to_owned(),
+            Self::Outside { .. } => "check the number and its unit".to_owned(),
             Self::SameName { .. } => "give each its own name".to_owned(),
             Self::NoName => "write a name".to_owned(),
             Self::OutOfOrder { .. } => {

@@ -245,6 +245,10 @@ fn hostile_names_stay_text_in_every_output() {
     let svg = folder.read("p.svg");
     assert!(!svg.contains("<b>") && !svg.contains('\u{1b}'));
     assert!(roxmltree::Document::parse(&svg).is_ok());
+    let collection = folder.read("v&<x>.pvd");
+    let collection = roxmltree::Document::parse(&collection).unwrap();
+    let mut files = collection.descendants().filter_map(|n| n.attribute("file"));
+    assert_eq!(files.next(), Some("v&<x>.vtu"));
     let card: Value = serde_json::from_str(&folder.read("c.json")).unwrap();
     assert!(
         card["cards"][0]["name"]
@@ -310,6 +314,10 @@ fn stations_and_lengths_that_cannot_be_name_the_line_and_the_key() {
             &["above zero"],
         ),
         (
+            constant("length = \"1e9 m\"\nsection = \"section.toml\""),
+            &["route.toml:3", "1 km"],
+        ),
+        (
             constant("section = \"section.toml\""),
             &["neither `station` nor `length`"],
         ),
@@ -343,7 +351,8 @@ fn sections_that_cannot_be_read_name_the_line_and_the_file() {
 fn names_counts_and_words_that_cannot_be_name_the_line_and_the_key() {
     let with = |line: &str| constant(&[GOOD, line].join("\n"));
     refused(&[
-        (String::new(), &["empty"]),
+        (String::new(), &["no segment"]),
+        (constant("branch = []"), &["no branch"]),
         ("name = \"x\"\n".to_owned(), &["no segment"]),
         ("segment = []\n".to_owned(), &["no segment", "route.toml:1"]),
         (format!("[[segment]]\n{GOOD}\n"), &["no `name`"]),

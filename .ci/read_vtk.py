@@ -4,7 +4,7 @@
 Usage: read_vtk.py FILE... [--json RESULT.json]
 
 .vti and .vtp files are read with vtk and pyvista, legacy .vtk files with vtk, pyvista and meshio (which
-knows no image XML). Checked: array names and lengths, units, finite values, zeros and the ghost flag on
+knows no image XML). The .vtu of a route is read with all three, its .vtp by vtk and pyvista, its .pvd by pyvista. Checked: array names and lengths, units, finite values, zeros and the ghost flag on
 solid cells, unit normals, closed polylines, and that every reader sees the same numbers. With --json the
 sums must agree with the machine output: the sum of phi with K, the mean wall shear with A/P, the units
 with each other. Needs the packages vtk, pyvista and meshio. Exit status 1 when anything is wrong.
@@ -34,6 +34,10 @@ UNITS = {
     "corner": ("1",),
     "wall": ("1",),
     "sensitivity": ("1/m^2",),
+    "pressure": ("Pa",),
+    "segment": ("1",),
+    "branch": ("1",),
+    "parallel": ("1",),
 }
 problems = []
 
@@ -133,6 +137,9 @@ def check_wall(path, result):
     """A .vtp file."""
     wall = read_with(vtk.vtkXMLPolyDataReader(), path)
     found = arrays(wall.GetPointData())
+    if wall.GetNumberOfPolys():
+        check_route_wall(path, wall, result)
+        return
     for name in ("wall_shear", "normal", "arc_length", "loop", "corner", "wall"):
         if name not in found:
             check(False, path, f"array {name} is missing")
@@ -169,6 +176,83 @@ def check_wall(path, result):
     print(f"{path}: {len(loops)} loops, {wall.GetNumberOfPoints()} points, wall_shear in {unit_of(found['wall_shear'])}")
 
 
+def check_route_wall(path, wall, result):
+    """The .vtp file of a route: closed bands of quadrilaterals that front out of the fluid."""
+    found, on_cells = arrays(wall.GetPointData()), arrays(wall.GetCellData())
+    if not ({"wall_shear", "pressure"} <= set(found) and {"segment", "branch"} <= set(on_cells)):
+        check(False, path, f"arrays are {sorted(found)} and {sorted(on_cells)}")
+        return
+    check_units(path, {**found, **on_cells})
+    shear, pressure = (vtk_to_numpy(found[name]) for name in ("wall_shear", "pressure"))
+    check(np.isfinite(shear).all() and (shear >= 0).all(), path, "a wall shear is negative or not finite")
+    check(np.isfinite(pressure).all() and (pressure >= 0).all(), path, "a pressure is negative or not finite")
+    other = pyvista.read(path)
+    check(other.n_cells == wall.GetNumberOfPolys(), path, "not only quadrilaterals")
+    check(np.array_equal(np.asarray(other.point_data["wall_shear"]), shear), path, "pyvista and vtk disagree")
+    # Ends are open, so the divergence theorem holds across: the integral of x n_x over the walls is the volume.
+    sized = other.compute_cell_sizes(length=False, volume=False)
+    area = float(np.asarray(sized.cell_data["Area"]).sum())
+    normals = other.compute_normals(point_normals=False, cell_normals=True, consistent_normals=False,
+                                    auto_orient_normals=False, split_vertices=False)
+    centres = other.cell_centers().points
+    flux = float((centres[:, 1] * np.asarray(normals.cell_data["Normals"])[:, 1] * np.asarray(sized.cell_data["Area"])).sum())
+    check(flux > 0, path, "walls front into the fluid")
+    if result:
+        shown = sum(b["wall_area"]["value"] for s in result["segments"] for b in s["branches"])
+        check(close(area, shown, 0.03), path, f"wall area is {area}, expected {shown}")
+        volume = sum(b["volume"]["value"] for s in result["segments"] for b in s["branches"])
+        check(close(flux, volume, 0.03), path, f"volume within the walls is {flux}, expected {volume}")
+        top = result["operating_points"][0]["wall_shear_max"]["value"]
+        check(0.9 * top <= shear.max() <= top * (1 + 1e-9), path, f"largest shear is {shear.max()}, expected {top}")
+    print(f"{path}: {other.n_cells} quadrilaterals, wall_shear in {unit_of(found['wall_shear'])}")
+
+
+def check_route(path, result):
+    """The .vtu file of a route."""
+    grid = read_with(vtk.vtkXMLUnstructuredGridReader(), path)
+    found, on_cells = arrays(grid.GetPointData()), arrays(grid.GetCellData())
+    for names, there in ((("velocity", "phi", "pressure"), found), (("fluid_fraction", "segment", "branch", "parallel"), on_cells)):
+        if not set(names) <= set(there):
+            check(False, path, f"arrays are {sorted(there)}")
+            return
+    check_units(path, {**found, **on_cells})
+    values = {name: vtk_to_numpy(a) for name, a in {**found, **on_cells}.items()}
+    for name, v in values.items():
+        check(np.isfinite(v).all() and (v >= 0).all(), path, f"array {name} is negative or not finite")
+    share = values["fluid_fraction"]
+    check(((share > 0) & (share <= 1)).all(), path, "fluid_fraction leaves 0 to 1")
+    other, mesh = pyvista.read(path), meshio.read(path)
+    check(set(other.celltypes) == {12}, path, "not only hexahedra")
+    for name in ("velocity", "phi", "pressure"):
+        check(np.array_equal(np.asarray(other.point_data[name]), values[name]), path, f"pyvista and vtk disagree on {name}")
+        check(np.array_equal(mesh.point_data[name].ravel(), values[name]), path, f"meshio and vtk disagree on {name}")
+    sizes = np.asarray(other.compute_cell_sizes(length=False, area=False).cell_data["Volume"])
+    check((sizes > 0).all(), path, "a hexahedron is turned inside out")
+    if result:
+        volume = sum(b["volume"]["value"] for s in result["segments"] for b in s["branches"])
+        check(close((sizes * share).sum(), volume, 0.02), path, f"volume is {(sizes * share).sum()}, expected {volume}")
+        # Mean velocity times volume is flow rate times length.
+        velocity = np.asarray(other.point_data_to_cell_data().cell_data["velocity"])
+        carried = sum(b["flow_rate"]["value"] * b["length"]["value"] for s in result["segments"] for b in s["branches"])
+        check(close((velocity * sizes).sum(), carried, 0.06), path, f"flow times length is {(velocity * sizes).sum()}, expected {carried}")
+        drop = result["operating_points"][0]["pressure_drop"]["value"]
+        check(close(values["pressure"].max(), drop, 1e-9), path, "the pressure at the inlet is not the drop")
+    print(f"{path}: {other.n_cells} hexahedra, velocity in {unit_of(found['velocity'])}, read by vtk, pyvista and meshio")
+
+
+def check_collection(path, result):
+    """A .pvd file: every step has a fluid and a wall that can be read."""
+    reader = pyvista.get_reader(path)
+    for step in reader.time_values:
+        reader.set_active_time_value(step)
+        blocks = reader.read()
+        check(len(blocks) == 2 and all(block.n_cells for block in blocks), path, f"step {step} lacks a file")
+    if result:
+        rates = [o["flow_rate"]["value"] for o in result["operating_points"]]
+        check(np.allclose(sorted(reader.time_values), sorted(rates), rtol=1e-12), path, "steps are not the flow rates")
+    print(f"{path}: {len(reader.time_values)} steps")
+
+
 def check_legacy(path, result):
     """A legacy .vtk file, which meshio reads too."""
     image = read_with(vtk.vtkStructuredPointsReader(), path)
@@ -202,11 +286,11 @@ def main():
     if options.json:
         with open(options.json, encoding="utf-8") as file:
             result = json.load(file)
-    kinds = {"vti": check_image, "vtp": check_wall, "vtk": check_legacy}
+    kinds = {"vti": check_image, "vtp": check_wall, "vtk": check_legacy, "vtu": check_route, "pvd": check_collection}
     for path in options.files:
         kind = kinds.get(path.rsplit(".", 1)[-1])
         if kind is None:
-            check(False, path, "neither .vti nor .vtp nor .vtk")
+            check(False, path, "neither .vti, .vtp, .vtk, .vtu nor .pvd")
             continue
         try:
             kind(path, result)

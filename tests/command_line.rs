@@ -32,6 +32,10 @@ mod json_contract;
 mod outputs;
 #[path = "command_line/response.rs"]
 mod response;
+#[path = "command_line/route.rs"]
+mod route;
+#[path = "command_line/schemas.rs"]
+mod schemas;
 #[path = "command_line/sensitivity.rs"]
 mod sensitivity;
 #[path = "command_line/shipped.rs"]

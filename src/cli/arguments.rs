@@ -37,6 +37,7 @@ pub fn command() -> Command {
         .subcommand(draw())
         .subcommand(sensitivity())
         .subcommand(card())
+        .subcommand(super::route_arguments::route())
 }
 
 pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {
@@ -44,7 +45,7 @@ pub(super) fn option(name: &'static str, value: &'static str, help: &'static str
 }
 
 /// An option that names pictures to write; it may come more than once.
-fn picture_option(
+pub(super) fn picture_option(
     name: &'static str,
     help: &'static str,
     long: &'static str,
@@ -423,13 +424,15 @@ pub(super) fn fluid_only(command: Command) -> Command {
         ))
 }
 
+/// Heading of what drives a channel.
+pub(super) const OPERATING_POINT: &str = "Operating point";
+
 /// A fluid and its operating point.
 fn fluid_options(command: Command) -> Command {
-    let heading = "Operating point";
     let entry = |name, value, help, long| {
         option(name, value, help)
             .long_help(long)
-            .help_heading(heading)
+            .help_heading(OPERATING_POINT)
     };
     fluid_only(command)
         .arg(entry(

@@ -23,12 +23,9 @@ use super::failure::Failure;
 use super::input::{self, CheckedSection, checked_section, read_options};
 use super::instrument_options::{say_settings, typed};
 use super::output::{self, Format, Inputs};
-use super::quantities::fluid;
+use super::quantities::{fluid, temperature_range};
 use super::response;
 use super::sections::{Sections, film};
-
-/// Temperatures between which `R(T)` holds where none are given, K.
-const TEMPERATURES: [f64; 2] = [278.15, 333.15];
 
 /// What was asked for, no file opened yet.
 struct Request {
@@ -111,7 +108,7 @@ impl Request {
             read: read_options(matches)?,
             solve: solve_options(matches)?,
             film: film(matches)?,
-            temperatures: temperatures(matches, &fluid)?,
+            temperatures: temperature_range(matches, &fluid)?,
             uncertainties: uncertainties(matches)?,
             settings: settings(matches),
             format: Format::of(matches),
@@ -251,40 +248,6 @@ impl Request {
             return ExitStatus::OutsideLimit;
         }
         ExitStatus::Done
-    }
-}
-
-/// The temperatures of the law: as typed, else the usual ones, widened to the fluid's own.
-fn temperatures(matches: &ArgMatches, fluid: &Fluid) -> Result<[f64; 2], Failure> {
-    let Some(text) = matches.get_one::<String>("temperature-range") else {
-        let [low, high] = TEMPERATURES;
-        let own = fluid.temperature.unwrap_or(low);
-        return Ok([low.min(own), high.max(own)]);
-    };
-    if !fluid.knows_temperatures() {
-        return Err(Failure::usage(
-            "--temperature-range is for --fluid water and air: a viscosity as given holds at one temperature",
-            "leave it out",
-        ));
-    }
-    let example = "write for example --temperature-range 10C..40C";
-    let Some((low, high)) = text.split_once("..") else {
-        return Err(Failure::usage(
-            format!("--temperature-range: `{text}` is no range"),
-            example,
-        ));
-    };
-    let parse = |end: &str| {
-        units::parse_temperature(end.trim())
-            .map_err(|error| Failure::option("temperature-range", &error))
-    };
-    let range = [parse(low)?, parse(high)?];
-    match crate::flow::TemperatureLaw::of(fluid, range) {
-        Ok(_) => Ok(range),
-        Err(error) => Err(Failure::usage(
-            format!("--temperature-range {text}: {error}"),
-            example,
-        )),
     }
 }
 

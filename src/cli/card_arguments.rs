@@ -49,6 +49,13 @@ pub(super) fn card() -> Command {
         .mut_arg("vary", |vary| vary.conflicts_with_all(NOT_WITH_VARY))
 }
 
+/// Temperatures of `R(T)`.
+pub(super) fn temperature_range() -> Arg {
+    option("temperature-range", "LOW..HIGH", "Temperatures of R(T) [default: 5C..60C]").long_help("Temperatures between which the resistance over temperature must hold, each with its unit; the \
+             fluid's own temperature lies between them. Default: 5C..60C, wider where the fluid is colder or \
+             hotter. Example: --temperature-range 10C..40C")
+}
+
 fn own_options(command: Command) -> Command {
     let entry = |name, value, help, long| -> Arg {
         option(name, value, help)
@@ -56,14 +63,7 @@ fn own_options(command: Command) -> Command {
             .help_heading(HEADING)
     };
     command
-        .arg(entry(
-            "temperature-range",
-            "LOW..HIGH",
-            "Temperatures of R(T) [default: 5C..60C]",
-            "Temperatures between which the resistance over temperature must hold, each with its unit; the \
-             fluid's own temperature lies between them. Default: 5C..60C, wider where the fluid is colder or \
-             hotter. Example: --temperature-range 10C..40C",
-        ))
+        .arg(temperature_range().help_heading(HEADING))
         .arg(
             entry(
                 "uncertainty",

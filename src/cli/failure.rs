@@ -7,7 +7,7 @@ use crate::geometry::{FilmError, NominalError};
 use crate::grid::ResolutionError;
 use crate::intake::ReadError;
 use crate::report::{PictureError, VtkError, WriteError};
-use crate::study::ReachError;
+use crate::study::{ReachError, RouteError};
 use crate::units::UnitError;
 
 use super::exit_status::ExitStatus;
@@ -103,6 +103,16 @@ impl From<ReachError> for Failure {
             }
             _ => Self::new(ExitStatus::Unreadable, &error, &error.hint()),
         }
+    }
+}
+
+impl From<RouteError> for Failure {
+    fn from(error: RouteError) -> Self {
+        let status = match &error {
+            RouteError::Flow { error, .. } => Self::from(error.clone()).status,
+            _ => ExitStatus::Unreadable,
+        };
+        Self::new(status, &error, &error.hint())
     }
 }
 

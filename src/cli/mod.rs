@@ -22,6 +22,8 @@ mod quantities;
 mod reading;
 mod response;
 mod response_arguments;
+mod route;
+mod route_arguments;
 mod sections;
 mod sensitivity;
 mod solve;
@@ -57,6 +59,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("draw", matches)) => draw::run(matches),
         Some(("sensitivity", matches)) => sensitivity::run(matches),
         Some(("card", matches)) => card::run(matches),
+        Some(("route", matches)) => route::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

@@ -2,13 +2,16 @@
 
 use clap::ArgMatches;
 
-use crate::flow::Fluid;
+use crate::flow::{Fluid, TemperatureLaw};
 use crate::units::{self, UnitError};
 
 use super::failure::Failure;
 
 /// Standard atmosphere, Pa (ISO 2533:1975; from memory).
 const ATMOSPHERE: f64 = 101_325.0;
+
+/// Temperatures between which `R(T)` holds where none are given, K.
+const TEMPERATURES: [f64; 2] = [278.15, 333.15];
 
 /// Reads an option with a unit.
 pub(super) fn quantity(
@@ -83,5 +86,39 @@ pub(super) fn fluid(matches: &ArgMatches) -> Result<Option<Fluid>, Failure> {
             "add --fluid water, --fluid air or --viscosity",
         )),
         (None, None) => Ok(None),
+    }
+}
+
+/// The temperatures of the law: as typed, else the usual ones, widened to the fluid's own.
+pub(super) fn temperature_range(matches: &ArgMatches, fluid: &Fluid) -> Result<[f64; 2], Failure> {
+    let Some(text) = matches.get_one::<String>("temperature-range") else {
+        let [low, high] = TEMPERATURES;
+        let own = fluid.temperature.unwrap_or(low);
+        return Ok([low.min(own), high.max(own)]);
+    };
+    if !fluid.knows_temperatures() {
+        return Err(Failure::usage(
+            "--temperature-range is for --fluid water and air: a viscosity as given holds at one temperature",
+            "leave it out",
+        ));
+    }
+    let example = "write for example --temperature-range 10C..40C";
+    let Some((low, high)) = text.split_once("..") else {
+        return Err(Failure::usage(
+            format!("--temperature-range: `{text}` is no range"),
+            example,
+        ));
+    };
+    let parse = |end: &str| {
+        units::parse_temperature(end.trim())
+            .map_err(|error| Failure::option("temperature-range", &error))
+    };
+    let range = [parse(low)?, parse(high)?];
+    match TemperatureLaw::of(fluid, range) {
+        Ok(_) => Ok(range),
+        Err(error) => Err(Failure::usage(
+            format!("--temperature-range {text}: {error}"),
+            example,
+        )),
     }
 }

@@ -24,7 +24,8 @@ pub use named_wall::{
     DIRECTION_NAMES, FARTHEST, NamedWall, NamedWallError, WallStretch, wall_stretches,
 };
 pub use nominal::{
-    KindInfo, NominalError, NominalSpec, ParameterInfo, Quantity, SpecValue, kinds, modifiers,
+    KindInfo, NominalError, NominalSpec, NotBetween, ParameterInfo, Quantity, SpecValue, kinds,
+    modifiers,
 };
 pub(crate) use outline::distance;
 pub use outline::{Loop, Lumen, Outline, Point};

@@ -26,6 +26,8 @@ mod plausibility;
 mod provenance;
 mod read_error;
 mod read_hints;
+mod route_file;
+mod route_problem;
 mod section;
 mod section_file;
 mod section_reach;
@@ -57,6 +59,11 @@ pub use micrograph::{
 };
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
+pub use route_file::{
+    FileBranch, FileSection, FileSegment, FileStation, INTERPOLATION_WORDS, MAX_STATIONS,
+    RouteFile, read_route, route_from_bytes,
+};
+pub use route_problem::{MAX_PARALLEL, MAX_SPREAD, RouteProblem};
 pub use section::{Extras, ReadOptions, Section, read_section, section_from_bytes};
 pub use section_reach::{Reach, ReachSection};
 pub use section_write::to_toml;

@@ -2,6 +2,7 @@
 
 use super::height_map::MapProblem;
 use super::micrograph::MicrographProblem;
+use super::route_problem::RouteProblem;
 use super::trace::{GrooveProblem, TableProblem, TraceProblem};
 use crate::geometry::NamedWallError;
 use crate::geometry::nominal::NominalError;
@@ -283,6 +284,12 @@ pub enum ReadProblem {
     Micrograph {
         /// What is wrong with it.
         source: MicrographProblem,
+    },
+    /// A route cannot be used.
+    #[error("{source}")]
+    Route {
+        /// What is wrong with it.
+        source: RouteProblem,
     },
     /// The drawing is not SVG.
     #[error("not a valid SVG drawing: {message}")]

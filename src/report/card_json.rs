@@ -241,7 +241,7 @@ impl<'a> Reach<'a> {
 }
 
 #[derive(Serialize)]
-struct Law {
+pub(super) struct Law {
     formula: String,
     reference_temperature: Quantity,
     temperature_low: Quantity,
@@ -251,7 +251,7 @@ struct Law {
 }
 
 impl Law {
-    fn new(law: &TemperatureLaw) -> Self {
+    pub(super) fn new(law: &TemperatureLaw) -> Self {
         Self {
             formula: law.formula(),
             reference_temperature: Quantity::real(law.reference, "K"),

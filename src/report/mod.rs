@@ -41,6 +41,14 @@ mod reading_document;
 mod reading_json;
 mod reading_text;
 mod response;
+mod route_card_json;
+mod route_csv;
+mod route_document;
+mod route_json;
+mod route_picture;
+mod route_text;
+mod route_vtk;
+mod route_wall_vtk;
 mod sensitivity_csv;
 mod sensitivity_document;
 mod sensitivity_json;
@@ -87,6 +95,14 @@ pub use response::{
     RESPONSE_SCHEMA, ResponseDocument, draw_response, formula_text, response_csv, response_json,
     response_picture, response_text,
 };
+pub use route_card_json::{RouteCardError, route_card_json};
+pub use route_csv::route_csv;
+pub use route_document::{RouteDocument, RouteSectionRecord};
+pub use route_json::{ROUTE_JSON_SCHEMA, ROUTE_SCHEMA, route_json};
+pub use route_picture::{draw_route, route_picture};
+pub use route_text::route_text;
+pub use route_vtk::{route_pvd, route_vtu};
+pub use route_wall_vtk::route_wall_vtp;
 pub use sensitivity_csv::sensitivity_csv;
 pub use sensitivity_document::SensitivityDocument;
 pub use sensitivity_json::{SENSITIVITY_SCHEMA, sensitivity_json};

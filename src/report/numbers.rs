@@ -100,6 +100,12 @@ pub(crate) fn place(at: [f64; 2], extent: [f64; 2], digits: usize) -> String {
     )
 }
 
+/// A position in the unit that fits the length it is on.
+pub(crate) fn length_on(position: f64, length: f64) -> String {
+    let (name, size) = fitting_unit(position.abs().max(length), LENGTHS);
+    format!("{} {name}", significant(position / size, 4))
+}
+
 /// A relative quantity in per cent with two digits, for example `0.0012 %`, plain down to a part in 1e10.
 pub(crate) fn per_cent(relative: f64) -> String {
     let value = 100.0 * relative;

@@ -57,6 +57,9 @@ pub enum VtkError {
     /// There are no wall samples.
     #[error("the result holds no wall samples, so there is no wall to export")]
     NoWall,
+    /// A section of a route was solved without keeping its field.
+    #[error("a section was solved without its field, so there is nothing to export")]
+    NoField,
     /// The writer library refused.
     #[error("the file for the viewer could not be built: {reason}")]
     Writer {
@@ -281,7 +284,7 @@ fn check_field(field: &DenseField) -> Result<(), VtkError> {
     check_finite("fluid_fraction", field.fluid_fraction.iter().copied())
 }
 
-fn check_finite(
+pub(super) fn check_finite(
     array: &'static str,
     values: impl IntoIterator<Item = f64>,
 ) -> Result<(), VtkError> {
@@ -292,11 +295,11 @@ fn check_finite(
 }
 
 /// The active scalars of their kind.
-fn scalars(name: &str, data: IOBuffer) -> Attribute {
+pub(super) fn scalars(name: &str, data: IOBuffer) -> Attribute {
     Attribute::DataArray(DataArray::scalars(name, 1).with_data(data))
 }
 
-fn array(name: &str, components: u32, data: IOBuffer) -> Attribute {
+pub(super) fn array(name: &str, components: u32, data: IOBuffer) -> Attribute {
     Attribute::DataArray(DataArray::new(name, components).with_data(data))
 }
 
@@ -318,7 +321,7 @@ fn closed_lines(loops: &[LoopCurve]) -> VertexNumbers {
 }
 
 /// The data set as XML, little-endian inline binary.
-fn xml(data: DataSet) -> Result<String, VtkError> {
+pub(super) fn xml(data: DataSet) -> Result<String, VtkError> {
     let refused = |reason: String| VtkError::Writer { reason };
     let vtk = Vtk {
         version: Version::new_xml(1, 0),
@@ -334,7 +337,7 @@ fn xml(data: DataSet) -> Result<String, VtkError> {
 }
 
 /// The text with the unit of each named array put before the end of its element.
-fn with_units(xml: &str, units: &[(&str, &str)]) -> String {
+pub(super) fn with_units(xml: &str, units: &[(&str, &str)]) -> String {
     let closing = "</DataArray>";
     let mut out = String::with_capacity(xml.len() + 120 * units.len());
     for piece in xml.split_inclusive(closing) {

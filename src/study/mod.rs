@@ -7,6 +7,7 @@ mod moved_outline;
 mod reach;
 mod resolve_check;
 mod response;
+mod route;
 mod sensitivity;
 mod wall_motion;
 mod wall_motion_cases;
@@ -25,6 +26,13 @@ pub use response::{
     ResponseError, ResponseErrors, ResponseFamily, ResponseOptions, ResponseParameter,
     ResponsePoint, ResponseTable, Trend, TrendCheck, fixed_values, kind_name, response_table,
     slope_unit,
+};
+pub use route::{
+    Between, BranchDesign, BranchOperation, DRAWS, Interpolation, LawOfK, Nested, PointOperation,
+    PointPlace, Route, RouteBranch, RouteDesign, RouteError, RouteFlow, RouteOperation,
+    RouteOptions, RoutePoint, RouteSection, RouteSegment, RouteSpread, SHRINKING, SegmentDesign,
+    SegmentOperation, SegmentSpread, ShareSpread, StationDesign, UsedRule, nested, route_spread,
+    solve_route,
 };
 pub use sensitivity::{
     Sensitivity, SensitivityOptions, SensitivityStudy, sensitivity_study, solve_for_sensitivity,

@@ -83,40 +83,6 @@ fn the_law_of_temperature_gives_the_viscosity_of_the_release() {
 }
 
 #[test]
-fn every_card_meets_its_schema_and_a_wrong_one_does_not() {
-    let folder = Folder::with("a.csv", RECTANGLE);
-    let text = folder.line("card --print-schema");
-    assert_eq!((text.status, text.err.as_str()), (0, ""));
-    let schema: Value = serde_json::from_str(&text.out).unwrap();
-    let validator = jsonschema::validator_for(&schema).unwrap();
-    let meets = |record: &Value, what: &str| {
-        let errors: Vec<String> = validator
-            .iter_errors(record)
-            .map(|error| format!("{}: {error}", error.instance_path()))
-            .collect();
-        assert!(errors.is_empty(), "{what}: {errors:?}");
-    };
-    let reach = shape("made/stylus_groove.toml");
-    for line in [
-        format!("card a.csv {WATER} --json --uncertainty depth=0.3um"),
-        "card a.csv --viscosity 5mPa.s --cells-across 32 --json".to_owned(),
-        "card a.csv --fluid air --temperature 20C --cells-across 32 --json".to_owned(),
-        format!("card a.csv {WATER} --json --film 1um"),
-        format!(
-            "card {reach} a.csv --viscosity 1mPa.s --density 1000kg/m^3 --cells-across 32 --json"
-        ),
-    ] {
-        meets(&folder.json(&line), &line);
-    }
-    let mut wrong = folder.json(&format!("card a.csv {WATER} --json"));
-    wrong["cards"][0]["resistance_per_length"]["unit"] = "kPa".into();
-    assert!(!validator.is_valid(&wrong));
-    wrong["cards"][0]["resistance_per_length"] =
-        serde_json::json!({ "value": null, "unit": "Pa s/m^4" });
-    assert!(!validator.is_valid(&wrong));
-}
-
-#[test]
 fn stated_uncertainties_become_one_of_the_resistance() {
     let folder = Folder::with("a.csv", RECTANGLE);
     let record = folder.json(&format!(

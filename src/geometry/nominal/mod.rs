@@ -22,6 +22,7 @@ mod round;
 mod rounded;
 mod shape;
 mod spec;
+mod spec_between;
 mod spec_text;
 mod straight;
 #[cfg(test)]
@@ -30,3 +31,4 @@ mod tests;
 pub use error::{Amount, NominalError};
 pub use kinds::{KindInfo, ParameterInfo, Quantity, kinds, modifiers, post_parameters};
 pub use spec::{NominalSpec, SpecValue};
+pub use spec_between::NotBetween;

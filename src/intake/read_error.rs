@@ -2,6 +2,7 @@
 
 use super::height_map::MapProblem;
 use super::micrograph::MicrographProblem;
+use super::network_problem::NetworkProblem;
 use super::trace::{GrooveProblem, TableProblem, TraceProblem};
 use crate::geometry::NamedWallError;
 use crate::geometry::nominal::NominalError;
@@ -286,6 +287,12 @@ pub enum ReadProblem {
     Micrograph {
         /// What is wrong with it.
         source: MicrographProblem,
+    },
+    /// The file of a net, or a card that it names, cannot be used.
+    #[error("{source}")]
+    Network {
+        /// What is wrong with it.
+        source: NetworkProblem,
     },
     /// The drawing is not SVG.
     #[error("not a valid SVG drawing: {message}")]

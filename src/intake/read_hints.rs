@@ -14,6 +14,7 @@ impl ReadProblem {
             Self::Groove { source } => source.hint(),
             Self::Map { source } => source.hint(),
             Self::Micrograph { source } => source.hint(),
+            Self::Network { source } => source.hint(),
             Self::UnknownKey { nearest, known, .. } => match nearest {
                 Some(word) => format!("did you mean `{word}`?"),
                 None => format!("known keys: {known}"),

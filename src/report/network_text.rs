@@ -93,8 +93,14 @@ fn equivalent(document: &NetworkDocument<'_>) -> Option<String> {
         "R".to_owned(),
         format!("{} Pa s/m^3", significant(found.resistance, 7)),
     ]);
+    let mut factors = document.solution.temperature_factors.iter();
+    let label = if factors.all(|factor| *factor == 1.0) {
+        "proven for the cards as given"
+    } else {
+        "proven for cards and laws as given"
+    };
     table.row([
-        "proven for the cards as given".to_owned(),
+        label.to_owned(),
         match found.proven {
             Some((low, high)) => format!(
                 "{} to {} Pa s/m^3 ({})",
@@ -116,6 +122,9 @@ fn equivalent(document: &NetworkDocument<'_>) -> Option<String> {
 
 /// A value with its standard uncertainty in the same unit.
 fn with_u(value: f64, units: &[numbers::Unit], found: Option<&OutputUncertainty>) -> [String; 2] {
+    if value == 0.0 && found.is_none_or(|one| one.u == 0.0) {
+        return ["0".to_owned(), "-".to_owned()];
+    }
     let (name, size) = numbers::fitting_unit(value, units);
     [
         format!("{} {name}", significant(value / size, 5)),
@@ -155,8 +164,13 @@ fn nodes(document: &NetworkDocument<'_>, most: usize) -> String {
         let state = &document.solution.nodes[index];
         let found = uncertainties.nodes[index];
         let is_flow = found.is_some_and(|one| matches!(one.output, NetOutput::Inflow(_)));
-        let [pressure, of_pressure] = with_u(state.pressure, numbers::PRESSURES, found);
-        let [inflow, of_inflow] = with_u(state.inflow, numbers::FLOW_RATES, found);
+        let (for_pressure, for_flow) = if is_flow {
+            (None, found)
+        } else {
+            (found, None)
+        };
+        let [pressure, of_pressure] = with_u(state.pressure, numbers::PRESSURES, for_pressure);
+        let [inflow, of_inflow] = with_u(state.inflow, numbers::FLOW_RATES, for_flow);
         table.row([
             title(&node.name),
             condition_word(node.condition).to_owned(),
@@ -261,7 +275,7 @@ fn walls(document: &NetworkDocument<'_>, most: usize) -> String {
             title(&channel.name),
             shear(state.wall_shear_mean),
             shear(state.wall_shear_max),
-            format!("{} uL", significant(state.volume * 1e9, 4)),
+            format!("{} \u{b5}L", significant(state.volume * 1e9, 4)),
             time(state.residence_time),
             time(state.time_constant),
             if beyond.is_empty() {
@@ -318,6 +332,12 @@ fn uncertainty(document: &NetworkDocument<'_>, found: &NetworkUncertainty, most:
                 per_cent(difference.abs()),
                 per_cent(error)
             );
+            if found.is_beyond_first_order() {
+                said.push_str(
+                    " The difference is more than chance: over such uncertainties the net is not linear, so take the \
+                     samples.",
+                );
+            }
         }
         _ => said.push_str("No samples were drawn: --samples N draws N."),
     }

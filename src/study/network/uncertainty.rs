@@ -18,6 +18,11 @@ const MOST_OUTPUTS: u64 = 500;
 /// Multiplications spent on samples where no number of them is asked for.
 const SAMPLE_WORK: u64 = 300_000_000;
 
+/// Relative uncertainty below which there is nothing but rounding to compare.
+const ROUNDING: f64 = 1e-9;
+/// Standard errors of sampling beyond which a difference between samples and first order is no chance.
+const BEYOND_CHANCE: f64 = 5.0;
+
 /// A result that has an uncertainty.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum NetOutput {
@@ -69,10 +74,10 @@ pub struct OutputUncertainty {
 }
 
 impl OutputUncertainty {
-    /// Standard deviation of the samples over the uncertainty to first order, less 1.
+    /// Standard deviation of the samples over the uncertainty to first order, less 1; `None` where both are rounding.
     pub fn difference(&self) -> Option<f64> {
         let sampled = self.sampled?;
-        (self.u > 0.0).then(|| sampled.u / self.u - 1.0)
+        (self.u > ROUNDING * self.value.abs()).then(|| sampled.u / self.u - 1.0)
     }
 }
 
@@ -99,6 +104,12 @@ impl NetworkUncertainty {
             .iter()
             .filter_map(OutputUncertainty::difference);
         all.max_by(|a, b| a.abs().total_cmp(&b.abs()))
+    }
+
+    /// Whether samples and first order differ by more than chance explains; the samples are right then.
+    pub fn is_beyond_first_order(&self) -> bool {
+        let difference = self.largest_difference().zip(self.sampling_error());
+        difference.is_some_and(|(difference, error)| difference.abs() > BEYOND_CHANCE * error)
     }
 
     /// Relative standard error of a standard deviation from so many samples: `1 / sqrt(2 (n - 1))`.

@@ -20,6 +20,7 @@ mod instrument_sections;
 mod limits;
 mod loop_nesting;
 pub mod micrograph;
+mod network_entry;
 mod network_file;
 mod network_problem;
 mod order_statistics;

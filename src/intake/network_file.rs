@@ -27,20 +27,16 @@ use std::path::{Path, PathBuf};
 
 use toml::de::{DeTable, DeValue};
 
-use super::card_file::{CardContent, CardKind, cards, one_line};
+use super::card_file::{CardContent, CardFluid, CardKind, cards};
 use super::limits::{MAX_MARKUP_BYTES, check_file_size};
+use super::network_entry::{Entry, Names, at, entries, measured, name_of, written};
 use super::network_problem::NetworkProblem;
 use super::provenance::sha256_hex;
 use super::read_error::{Fault, ReadError, ReadProblem};
 use super::source_text::{SourceText, place_at, read_bytes};
-use super::toml_values::{Value, check_keys, parse, string, wrong_type};
-use crate::units::spelling::nearest;
-use crate::units::{
-    UnitError, parse_flow_rate, parse_fraction, parse_length, parse_pressure, parse_temperature,
-};
+use super::toml_values::{Value, check_keys, parse, string};
+use crate::units::{parse_flow_rate, parse_length, parse_pressure, parse_temperature};
 
-/// Longest name, characters.
-const LONGEST_NAME: usize = 200;
 /// Most channels side by side.
 const MOST_PARALLEL: i64 = 1_000_000;
 /// Relative difference up to which two properties of a fluid are the same.
@@ -166,34 +162,11 @@ fn limited_bytes(path: &Path) -> Result<Vec<u8>, ReadProblem> {
     Ok(bytes)
 }
 
-/// Places of names that are taken.
-struct Names {
-    what: &'static str,
-    places: HashMap<String, (usize, usize)>,
-}
-
 /// One net on its way.
 struct Reader<'a> {
     text: &'a str,
     path: &'a str,
     folder: &'a Path,
-}
-
-/// One `[[...]]` table.
-struct Entry<'a, 'i> {
-    text: &'a str,
-    value: &'a Value<'i>,
-    table: &'a DeTable<'i>,
-    head: &'static str,
-}
-
-fn at(text: &str, value: &Value<'_>, source: NetworkProblem) -> Fault {
-    Fault::at(
-        text,
-        value.span().start,
-        None,
-        ReadProblem::Network { source },
-    )
 }
 
 impl Reader<'_> {
@@ -211,7 +184,15 @@ impl Reader<'_> {
         let name = whole("name").map(|value| name_of(text, value)).transpose();
         let name = name.map_err(|fault| self.in_file(fault))?;
         let temperature = whole("temperature")
-            .map(|value| measured(text, value, "temperature", "\"30 C\"", parse_temperature))
+            .map(|value| {
+                measured(
+                    text,
+                    value,
+                    "temperature",
+                    "a temperature in quotes, such as \"30 C\"",
+                    parse_temperature,
+                )
+            })
             .transpose()
             .map_err(|fault| self.in_file(fault))?;
         let mut taken = Names::new("card");
@@ -374,9 +355,7 @@ fn same_fluid(
     if a.name == b.name && is_same {
         return Ok(());
     }
-    let words = |fluid: &super::card_file::CardFluid| {
-        format!("{} of {:.6e} Pa s", fluid.name, fluid.viscosity)
-    };
+    let words = |fluid: &CardFluid| format!("{} of {:.6e} Pa s", fluid.name, fluid.viscosity);
     Err(at(
         entry.text,
         entry.value,
@@ -389,165 +368,6 @@ fn same_fluid(
     ))
 }
 
-/// The tables of a list that must not be empty.
-fn entries<'a, 'i>(
-    text: &'a str,
-    table: &'a DeTable<'i>,
-    key: &'static str,
-    head: &'static str,
-) -> Result<Vec<Entry<'a, 'i>>, Fault> {
-    let Some(value) = table.get(key) else {
-        let source = NetworkProblem::None { what: key };
-        return Err(ReadProblem::Network { source }.into());
-    };
-    let expected = "a list of tables, each with its head in double brackets";
-    let list = value
-        .get_ref()
-        .as_array()
-        .ok_or_else(|| wrong_type(text, value, key, expected))?;
-    if list.is_empty() {
-        return Err(at(text, value, NetworkProblem::None { what: key }));
-    }
-    list.iter()
-        .map(|value| {
-            let table = value.get_ref().as_table();
-            let table = table.ok_or_else(|| wrong_type(text, value, key, expected))?;
-            Ok(Entry {
-                text,
-                value,
-                table,
-                head,
-            })
-        })
-        .collect()
-}
-
-/// A name: one line, neither empty nor very long.
-fn name_of(text: &str, value: &Value<'_>) -> Result<String, Fault> {
-    let name = one_line(string(text, value, "name", "a text in quotes")?);
-    let found = name.trim().chars().count();
-    if found == 0 || found > LONGEST_NAME {
-        let limit = LONGEST_NAME;
-        return Err(at(text, value, NetworkProblem::NameLength { found, limit }));
-    }
-    Ok(name.trim().to_owned())
-}
-
-/// A value with its unit, in quotes.
-fn measured(
-    text: &str,
-    value: &Value<'_>,
-    key: &'static str,
-    example: &'static str,
-    read: impl Fn(&str) -> Result<f64, UnitError>,
-) -> Result<f64, Fault> {
-    let DeValue::String(written) = value.get_ref() else {
-        return Err(wrong_type(text, value, key, with_example(example)));
-    };
-    read(written).map_err(|source| {
-        Fault::at(
-            text,
-            value.span().start,
-            Some(key),
-            ReadProblem::Unit { source },
-        )
-    })
-}
-
-/// What a value must be.
-fn with_example(example: &'static str) -> &'static str {
-    match example {
-        "\"30 C\"" => "a temperature in quotes, such as \"30 C\"",
-        "\"20 kPa\"" => "a pressure in quotes, such as \"20 kPa\"",
-        "\"2 uL/min\"" => "a flow rate in quotes, such as \"2 uL/min\"",
-        "\"20 mm\"" => "a length in quotes, such as \"20 mm\"",
-        _ => "a share in quotes, such as \"2 %\"",
-    }
-}
-
-impl Names {
-    fn new(what: &'static str) -> Self {
-        Self {
-            what,
-            places: HashMap::new(),
-        }
-    }
-
-    /// The place of a name.
-    fn find(&self, text: &str, value: &Value<'_>) -> Result<usize, Fault> {
-        let name = name_of(text, value)?;
-        if let Some(&(index, _)) = self.places.get(&name) {
-            return Ok(index);
-        }
-        let mut known: Vec<&str> = self.places.keys().map(String::as_str).collect();
-        known.sort_unstable();
-        let source = NetworkProblem::Unknown {
-            what: self.what,
-            nearest: nearest(&name, &known).map(str::to_owned),
-            name,
-        };
-        Err(at(text, value, source))
-    }
-}
-
-impl<'a, 'i> Entry<'a, 'i> {
-    fn check(&self, known: &[&str]) -> Result<(), Fault> {
-        check_keys(self.text, self.table, self.head, known)
-    }
-
-    fn required(&self, key: &'static str) -> Result<&'a Value<'i>, Fault> {
-        self.table.get(key).ok_or_else(|| {
-            let problem = ReadProblem::MissingKey {
-                key,
-                table: self.head,
-            };
-            Fault::at(self.text, self.value.span().start, None, problem)
-        })
-    }
-
-    /// The name, which nothing of the kind has yet.
-    fn own_name(&self, names: &mut Names) -> Result<String, Fault> {
-        let value = self.required("name")?;
-        let name = name_of(self.text, value)?;
-        if let Some((_, offset)) = names.places.get(&name) {
-            let source = NetworkProblem::Duplicate {
-                what: names.what,
-                line: place_at(self.text, *offset).line,
-                name,
-            };
-            return Err(at(self.text, value, source));
-        }
-        let index = names.places.len();
-        names
-            .places
-            .insert(name.clone(), (index, value.span().start));
-        Ok(name)
-    }
-
-    /// A relative uncertainty, zero where there is none.
-    fn share(&self, key: &'static str) -> Result<f64, Fault> {
-        let Some(value) = self.table.get(key) else {
-            return Ok(0.0);
-        };
-        let share = measured(self.text, value, key, "\"2 %\"", parse_fraction)?;
-        if (0.0..1.0).contains(&share) {
-            return Ok(share);
-        }
-        Err(at(
-            self.text,
-            value,
-            NetworkProblem::NotAShare {
-                text: self.written(value),
-            },
-        ))
-    }
-
-    /// A value as it stands in the file.
-    fn written(&self, value: &Value<'_>) -> String {
-        value.get_ref().as_str().map(one_line).unwrap_or_default()
-    }
-}
-
 fn node(entry: &Entry<'_, '_>, names: &mut Names) -> Result<NetworkFileNode, Fault> {
     entry.check(&["name", "pressure", "inflow"])?;
     let name = entry.own_name(names)?;
@@ -558,14 +378,14 @@ fn node(entry: &Entry<'_, '_>, names: &mut Names) -> Result<NetworkFileNode, Fau
             text,
             value,
             "pressure",
-            "\"20 kPa\"",
+            "a pressure in quotes, such as \"20 kPa\"",
             parse_pressure,
         )?),
         (None, Some(value)) => NetworkFileCondition::Inflow(measured(
             text,
             value,
             "inflow",
-            "\"2 uL/min\"",
+            "a flow rate in quotes, such as \"2 uL/min\"",
             parse_flow_rate,
         )?),
         (Some(_), Some(value)) => return Err(at(text, value, NetworkProblem::TwoConditions)),
@@ -632,11 +452,17 @@ fn length(entry: &Entry<'_, '_>, card: Option<&NetworkFileCard>) -> Result<Optio
             NetworkProblem::LengthRefused { card: name() },
         )),
         (Some(value), _) => {
-            let length = measured(text, value, "length", "\"20 mm\"", parse_length)?;
+            let length = measured(
+                text,
+                value,
+                "length",
+                "a length in quotes, such as \"20 mm\"",
+                parse_length,
+            )?;
             if length > 0.0 {
                 Ok(Some(length))
             } else {
-                let written = entry.written(value);
+                let written = written(value);
                 Err(at(
                     text,
                     value,

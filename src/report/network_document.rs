@@ -39,9 +39,14 @@ pub struct NetworkDocument<'a> {
 pub(super) fn condition_word(condition: NodeCondition) -> &'static str {
     match condition {
         NodeCondition::Pressure(_) => "pressure",
-        NodeCondition::Inflow(q) if q == 0.0 => "none",
+        NodeCondition::Inflow(0.0) => "none",
         NodeCondition::Inflow(_) => "inflow",
     }
+}
+
+/// Whether a card's law is in force: the factor of one at its own temperature is exactly 1.
+pub(super) fn is_moved(factor: f64) -> bool {
+    factor.total_cmp(&1.0).is_ne()
 }
 
 /// Word for the direction of a flow.
@@ -89,7 +94,7 @@ impl<'a> NetworkDocument<'a> {
         let factors = self.solution.temperature_factors.iter();
         let laws = cards
             .zip(factors)
-            .filter(|(_, factor)| **factor != 1.0)
+            .filter(|(_, factor)| is_moved(**factor))
             .filter_map(|(card, _)| Some(card.law.as_ref()?.largest_relative_error));
         if let Some(error) = laws.reduce(f64::max) {
             notes.push(format!(

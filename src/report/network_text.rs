@@ -2,7 +2,7 @@
 
 use std::fmt::Write as _;
 
-use super::network_document::{NetworkDocument, condition_word};
+use super::network_document::{NetworkDocument, condition_word, is_moved};
 use super::numbers::{self, one_line, per_cent, significant, title, with_unit};
 use super::table::{Align, Table, paragraph};
 use super::text::{TextOptions, part, warnings};
@@ -94,10 +94,10 @@ fn equivalent(document: &NetworkDocument<'_>) -> Option<String> {
         format!("{} Pa s/m^3", significant(found.resistance, 7)),
     ]);
     let mut factors = document.solution.temperature_factors.iter();
-    let label = if factors.all(|factor| *factor == 1.0) {
-        "proven for the cards as given"
-    } else {
+    let label = if factors.any(|factor| is_moved(*factor)) {
         "proven for cards and laws as given"
+    } else {
+        "proven for the cards as given"
     };
     table.row([
         label.to_owned(),

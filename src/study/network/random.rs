@@ -1,6 +1,6 @@
 //! Repeatable random numbers: the same seed gives the same numbers on every machine.
 //!
-//! SplitMix64 (G. L. Steele, D. Lea, C. H. Flood 2014, Fast splittable pseudorandom number generators, OOPSLA, 453;
+//! `SplitMix64` (G. L. Steele, D. Lea, C. H. Flood 2014, Fast splittable pseudorandom number generators, OOPSLA, 453;
 //! constants from memory, checked by the published first outputs of its reference code for seed 0), and the pairs of
 //! Box and Muller (1958), A note on the generation of random normal deviates, Ann. Math. Stat. 29, 610 (from memory).
 

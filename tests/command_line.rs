@@ -28,6 +28,8 @@ mod help;
 mod instruments;
 #[path = "command_line/json_contract.rs"]
 mod json_contract;
+#[path = "command_line/network.rs"]
+mod network;
 #[path = "command_line/outputs.rs"]
 mod outputs;
 #[path = "command_line/response.rs"]

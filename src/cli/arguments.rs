@@ -5,6 +5,7 @@ use clap::{Arg, ArgAction, Command, value_parser};
 use super::accuracy_options::accuracy_options;
 use super::card_arguments::card;
 use super::instrument_arguments::{Kind, Shown, instrument_options, show_settings};
+use super::network_arguments::network;
 use crate::geometry::{ParameterInfo, Quantity, kinds, modifiers};
 
 /// Printed below the help of the program.
@@ -38,6 +39,7 @@ pub fn command() -> Command {
         .subcommand(sensitivity())
         .subcommand(card())
         .subcommand(super::route_arguments::route())
+        .subcommand(network())
 }
 
 pub(super) fn option(name: &'static str, value: &'static str, help: &'static str) -> Arg {

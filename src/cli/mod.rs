@@ -17,6 +17,8 @@ mod input;
 mod instrument_arguments;
 mod instrument_options;
 mod measures;
+mod network;
+mod network_arguments;
 mod output;
 mod quantities;
 mod reading;
@@ -60,6 +62,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Some(("sensitivity", matches)) => sensitivity::run(matches),
         Some(("card", matches)) => card::run(matches),
         Some(("route", matches)) => route::run(matches),
+        Some(("network", matches)) => network::run(matches),
         _ => Err(Failure::usage(
             "no command was given",
             "type `etchwise --help` for the commands",

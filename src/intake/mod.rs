@@ -9,6 +9,7 @@
     reason = "intake is the layer that reads files"
 )]
 
+mod card_file;
 mod columns;
 mod content_kind;
 mod curve_flatten;
@@ -19,6 +20,9 @@ mod instrument_sections;
 mod limits;
 mod loop_nesting;
 pub mod micrograph;
+mod network_entry;
+mod network_file;
+mod network_problem;
 mod order_statistics;
 mod outline_svg;
 mod outline_text;
@@ -43,6 +47,7 @@ mod toml_values;
 mod trace;
 mod wall_tables;
 
+pub use card_file::{CardContent, CardFluid, CardKind, CardLaw};
 pub use height_map::{
     CutOptions, HeightMap, MAX_MAP_POINTS, MapCut, MapCuts, MapProblem, SurfaceContent,
     SurfaceFormat, cut, heights_csv, map_from_bytes, read_surface, surface_format,
@@ -57,6 +62,11 @@ pub use micrograph::{
     MicrographProblem, MicrographSection, PixelBox, PixelLoop, Preview, Region, RegionFound,
     ScaleCandidate, Threshold, Tilt, Tone, is_picture, read_micrograph,
 };
+pub use network_file::{
+    NetworkFile, NetworkFileCard, NetworkFileChannel, NetworkFileCondition, NetworkFileNode,
+    read_network,
+};
+pub use network_problem::NetworkProblem;
 pub use provenance::{Provenance, SectionKind};
 pub use read_error::{Place, ReadError, ReadErrorKind, ReadProblem};
 pub use route_file::{

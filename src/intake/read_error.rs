@@ -2,6 +2,7 @@
 
 use super::height_map::MapProblem;
 use super::micrograph::MicrographProblem;
+use super::network_problem::NetworkProblem;
 use super::route_problem::RouteProblem;
 use super::trace::{GrooveProblem, TableProblem, TraceProblem};
 use crate::geometry::NamedWallError;
@@ -290,6 +291,12 @@ pub enum ReadProblem {
     Route {
         /// What is wrong with it.
         source: RouteProblem,
+    },
+    /// The file of a net, or a card that it names, cannot be used.
+    #[error("{source}")]
+    Network {
+        /// What is wrong with it.
+        source: NetworkProblem,
     },
     /// The drawing is not SVG.
     #[error("not a valid SVG drawing: {message}")]

@@ -15,6 +15,7 @@ impl ReadProblem {
             Self::Map { source } => source.hint(),
             Self::Micrograph { source } => source.hint(),
             Self::Route { source } => source.hint(),
+            Self::Network { source } => source.hint(),
             Self::UnknownKey { nearest, known, .. } => match nearest {
                 Some(word) => format!("did you mean `{word}`?"),
                 None => format!("known keys: {known}"),

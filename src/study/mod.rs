@@ -4,6 +4,7 @@ mod assumptions;
 mod card;
 mod facing;
 mod moved_outline;
+mod network;
 mod reach;
 mod resolve_check;
 mod response;
@@ -18,6 +19,12 @@ pub use card::{
     StatedUncertainty, Uncertainty, UncertaintyPart, VISCOSITY_INPUT,
 };
 pub use moved_outline::{MovedOutline, moved_outline, outline_moved_by};
+pub use network::{
+    BALANCE_TOLERANCE, BeyondLimit, CardExtent, ChannelState, DEFAULT_SAMPLES,
+    EquivalentResistance, FEWEST_SAMPLES, MassBalance, NetCard, NetCardLimits, NetChannel, NetNode,
+    NetOutput, Network, NetworkError, NetworkSolution, NetworkUncertainty, NodeCondition,
+    NodeState, NormalSource, OutputUncertainty, SampleOptions, Sampled,
+};
 pub use reach::{Reach, ReachBound, ReachError, ReachSide, ReachSides};
 pub use resolve_check::{Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE};
 pub use response::{

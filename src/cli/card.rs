@@ -96,8 +96,8 @@ impl Request {
             .flatten()
             .cloned()
             .collect();
-        let from_stdin = files.iter().filter(|f| f.as_path() == Path::new("-"));
-        if from_stdin.count() > 1 {
+        let unnamed = files.iter().filter(|f| f.as_path() == Path::new("-"));
+        if unnamed.count() > 1 {
             return Err(Failure::usage(
                 "standard input (-) is named more than once",
                 "name it once; each section needs a file of its own",

@@ -135,9 +135,9 @@ impl Network {
 
     /// Uncertainty of the results of a solved net; `None` where none is stated.
     ///
-    /// First order: `u^2 = sum over cards (u_card sum of dy/dlnR_j of its channels)^2 + sum over channels
-    /// (u_j dy/dlnR_j)^2` (Guide to the expression of uncertainty in measurement, JCGM 100:2008, 5.2, from memory).
-    /// Different cards count as independent.
+    /// First order: `u^2 = sum over parts (u_part sum of dy/dlnR_j of its channels)^2 + sum over channels
+    /// (u_j dy/dlnR_j)^2`, the parts being the own uncertainty of each card and the further one of each entry (Guide to the expression of uncertainty in measurement, JCGM 100:2008, 5.2, from memory).
+    /// Different cards count as independent; entries of one and the same card share its own uncertainty.
     pub fn uncertainty(
         &self,
         solution: &NetworkSolution,
@@ -180,6 +180,12 @@ impl Network {
         })
     }
 
+    /// One more than the largest number of an origin.
+    pub(super) fn origins(&self) -> usize {
+        let numbers = self.cards.iter().map(|card| card.origin + 1);
+        numbers.max().unwrap_or(0)
+    }
+
     /// All results: resistance, inflows, flows of channels at given pressures, other flows, pressures.
     fn outputs(&self, solution: &NetworkSolution) -> Vec<NetOutput> {
         let is_given =
@@ -210,12 +216,13 @@ impl Network {
             of_cards[channel.card] += slope;
             own += (channel.bundle_spread() * slope).powi(2);
         }
-        let common: f64 = self
-            .cards
-            .iter()
-            .zip(of_cards)
-            .map(|(card, slope)| (card.common() * slope).powi(2))
-            .sum();
+        let mut of_origins = vec![0.0; self.origins()];
+        let mut common = 0.0;
+        for (card, slope) in self.cards.iter().zip(of_cards) {
+            of_origins[card.origin] += card.own_uncertainty.unwrap_or(0.0) * slope;
+            common += (card.common_uncertainty * slope).powi(2);
+        }
+        common += of_origins.iter().map(|part| part * part).sum::<f64>();
         let square = common + own;
         OutputUncertainty {
             output,

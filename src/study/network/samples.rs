@@ -72,7 +72,7 @@ fn drawn(network: &Network, solution: &NetworkSolution, seed: u64) -> Vec<f64> {
 }
 
 /// Channels at the node of an inflow, with 1 where they begin there and -1 where they end.
-fn ends(network: &Network, output: NetOutput) -> Vec<(usize, f64)> {
+pub(super) fn ends(network: &Network, output: NetOutput) -> Vec<(usize, f64)> {
     let NetOutput::Inflow(node) = output else {
         return Vec::new();
     };

@@ -12,11 +12,11 @@ pub const DEFAULT_SAMPLES: usize = 1000;
 /// Fewest samples that say anything.
 pub const FEWEST_SAMPLES: usize = 10;
 /// Multiplications spent on derivatives before results are left out, and fewest and most results.
-const LINEAR_WORK: u64 = 200_000_000;
+const LINEAR_WORK: u64 = 100_000_000;
 const FEWEST_OUTPUTS: u64 = 20;
 const MOST_OUTPUTS: u64 = 500;
 /// Multiplications spent on samples where no number of them is asked for.
-const SAMPLE_WORK: u64 = 300_000_000;
+const SAMPLE_WORK: u64 = 120_000_000;
 
 /// Relative uncertainty below which there is nothing but rounding to compare.
 const ROUNDING: f64 = 1e-9;
@@ -148,13 +148,16 @@ impl Network {
         }
         let all = self.outputs(solution);
         let all_outputs = all.len();
-        let work = solution.topology.structure.work.max(1) + self.channels.len() as u64;
-        let most = (LINEAR_WORK / work).clamp(FEWEST_OUTPUTS, MOST_OUTPUTS) as usize;
+        let structure = &solution.topology.structure;
+        let channels = self.channels.len() as u64;
+        let work = structure.work + channels;
+        let of_one = 2 * structure.columns.len() as u64 + channels;
+        let most = (LINEAR_WORK / of_one.max(1)).clamp(FEWEST_OUTPUTS, MOST_OUTPUTS) as usize;
         let covered: Vec<NetOutput> = all.into_iter().take(most).collect();
         let wanted = options.count.unwrap_or(DEFAULT_SAMPLES);
         let affordable = match options.count {
             Some(count) => count,
-            None => wanted.min((SAMPLE_WORK / work) as usize),
+            None => wanted.min((SAMPLE_WORK / work.max(1)) as usize),
         };
         let count = if affordable < FEWEST_SAMPLES {
             0

@@ -3,7 +3,7 @@
 
 use etchwise::study::{
     BeyondLimit, CardExtent, NetCard, NetCardLimits, NetChannel, NetNode, NetOutput, Network,
-    NetworkError, NodeCondition, NormalSource, SampleOptions,
+    NetworkError, NodeCondition, NormalSource, OutputUncertainty, SampleOptions,
 };
 use etchwise::warning::Code;
 use nalgebra::{DMatrix, DVector};
@@ -24,6 +24,7 @@ fn card(name: &str, proven: f64) -> NetCard {
         shear_mean: Some(3.2e10),
         shear_max: Some(4.3e10),
         own_uncertainty: None,
+        origin: 0,
         common_uncertainty: 0.0,
         limits: NetCardLimits {
             reynolds: Some(2000.0),
@@ -145,9 +146,11 @@ fn random_net(seed: u64) -> Network {
         let step = 1 + (source.bits() % (nodes as u64 - 1)) as usize;
         channels.push((from, (from + step) % nodes, 0.01 * source.normal().exp()));
     }
+    // Half of the nets have two outlets at the same pressure.
+    let middle = if seed.is_multiple_of(2) { 0.0 } else { 1e3 };
     let mut network = net(
         nodes,
-        &[(0, 3e4), (nodes / 2, 1e3), (nodes - 1, 0.0)],
+        &[(0, 3e4), (nodes / 2, middle), (nodes - 1, 0.0)],
         &channels,
     );
     network.nodes[1].condition = NodeCondition::Inflow(1e-10 * source.normal());
@@ -371,6 +374,7 @@ fn uncertain() -> Network {
     network.cards[0].common_uncertainty = 0.02;
     network.cards.push(NetCard {
         common_uncertainty: 0.03,
+        origin: 1,
         ..card("other", 1e-3)
     });
     network.channels[3].card = 1;
@@ -469,6 +473,27 @@ fn samples_agree_with_first_order_and_repeat_bit_for_bit() {
             _ => assert_close(one.u / one.value.abs(), 0.01_f64.hypot(0.02), 1e-12),
         }
     }
+    // Two entries of one card are that card: nothing changes. Of two cards, the split moves.
+    let split = |origin: usize| {
+        let mut two = common.clone();
+        two.cards[0].common_uncertainty = 0.0;
+        two.cards[1] = NetCard {
+            origin,
+            ..two.cards[0].clone()
+        };
+        two.channels[3].card = 1;
+        let solved = two.solve().unwrap();
+        let found = two.uncertainty(&solved, options).unwrap().outputs;
+        let pressure = |one: &&OutputUncertainty| one.output == NetOutput::Pressure(1);
+        *found.iter().find(pressure).unwrap()
+    };
+    let (one, two) = (split(0), split(1));
+    assert!(
+        one.u < 1e-12 * one.value && two.u > 1e-4 * two.value,
+        "{one:?} {two:?}"
+    );
+    assert!(one.sampled.unwrap().u < 1e-9 * one.value, "{one:?}");
+    assert_close(two.sampled.unwrap().u, two.u, 0.06);
     let mut exact = common;
     exact
         .cards

@@ -191,7 +191,11 @@ fn network(file: &NetworkFile, path: &Path) -> Network {
         name: file.name.clone().unwrap_or_else(stem),
         fluid: fluid.unwrap_or_default(),
         temperature: file.temperature,
-        cards: file.cards.iter().map(card).collect(),
+        cards: file
+            .cards
+            .iter()
+            .map(|one| card(one, origin(&file.cards, one)))
+            .collect(),
         nodes: file
             .nodes
             .iter()
@@ -220,7 +224,15 @@ fn network(file: &NetworkFile, path: &Path) -> Network {
     }
 }
 
-fn card(card: &NetworkFileCard) -> NetCard {
+/// Place of the first entry that is the same card of the same file.
+fn origin(cards: &[NetworkFileCard], card: &NetworkFileCard) -> usize {
+    let same = |other: &NetworkFileCard| {
+        other.sha256 == card.sha256 && other.content.name == card.content.name
+    };
+    cards.iter().position(same).unwrap_or(0)
+}
+
+fn card(card: &NetworkFileCard, origin: usize) -> NetCard {
     let content: &CardContent = &card.content;
     let fluid = &content.fluid;
     NetCard {
@@ -238,6 +250,7 @@ fn card(card: &NetworkFileCard) -> NetCard {
         shear_mean: content.shear_mean,
         shear_max: content.shear_max,
         own_uncertainty: content.relative_uncertainty,
+        origin,
         common_uncertainty: card.common,
         limits: NetCardLimits {
             reynolds: content.reynolds_high,

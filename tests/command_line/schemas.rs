@@ -2,7 +2,7 @@
 
 use serde_json::Value;
 
-use crate::{Folder, RECTANGLE, shape};
+use crate::{Folder, RECTANGLE, shape, value};
 
 const WATER: &str = "--fluid water --temperature 25C --cells-across 32";
 
@@ -91,4 +91,71 @@ fn response_tables_meet_their_schema() {
     ] {
         schema.is_met_by(&folder.json(line), line);
     }
+}
+
+/// The commands in the head of a shipped net: words behind `etchwise`, and the file that they make.
+fn makers(net: &str) -> Vec<(Vec<String>, String)> {
+    net.lines()
+        .filter_map(|line| {
+            line.trim_start_matches(['#', ' '])
+                .strip_prefix("etchwise ")
+        })
+        .map(|line| {
+            let words: Vec<String> = line.split_whitespace().map(str::to_owned).collect();
+            let made = words.last().cloned().unwrap_or_default();
+            (words, made)
+        })
+        .collect()
+}
+
+#[test]
+fn shipped_cards_are_what_their_commands_make_now() {
+    let net = std::fs::read_to_string(shape("networks/chip.toml")).unwrap();
+    let made = makers(&net);
+    assert_eq!(made.len(), 2);
+    for (words, name) in made {
+        let folder = Folder::new();
+        let words: Vec<String> = words
+            .into_iter()
+            .map(|word| match word.strip_prefix("shapes/") {
+                Some(file) => shape(file),
+                None => word,
+            })
+            .collect();
+        let words: Vec<&str> = words.iter().map(String::as_str).collect();
+        let run = folder.run(&words);
+        assert_eq!(run.status, 0, "{name}: {}", run.err);
+        let fresh: Value = serde_json::from_str(&folder.read(&name)).unwrap();
+        let shipped = std::fs::read_to_string(shape(&format!("networks/{name}"))).unwrap();
+        let shipped: Value = serde_json::from_str(&shipped).unwrap();
+        Schema::of("card").is_met_by(&shipped, &name);
+        for path in [
+            "/resistance_per_length",
+            "/resistance",
+            "/volume_per_length",
+            "/volume",
+            "/temperature_law/coefficients/0",
+        ] {
+            let [a, b] = [&fresh, &shipped].map(|all| value(&all["cards"][0], path));
+            assert_eq!(a.is_nan(), b.is_nan(), "{name} {path}");
+            assert!(
+                a.is_nan() || (a / b - 1.0).abs() < 1e-9,
+                "{name} {path}: {a} {b}"
+            );
+        }
+        let [a, b] = [&fresh, &shipped].map(|all| all["cards"][0]["source"]["sha256"].clone());
+        assert_eq!(a, b, "{name}");
+    }
+}
+
+#[test]
+fn nets_meet_their_schema_and_the_one_they_print_is_the_one_that_is_shipped() {
+    let folder = Folder::new();
+    let schema = Schema::of("network");
+    for net in ["chip", "manifold"] {
+        let line = format!("network {} --json", shape(&format!("networks/{net}.toml")));
+        schema.is_met_by(&folder.json(&line), &line);
+    }
+    let printed = folder.json("network --print-schema");
+    assert!(printed["$schema"].is_string());
 }

@@ -87,16 +87,32 @@ impl Eliminated {
         self.sums.iter().all(|s| s.is_finite() && *s > 0.0)
     }
 
-    /// Pressures for given inflows and pressures of the kept nodes.
-    ///
-    /// - `inflows`: of each node in the order of elimination, m^3/s
-    /// - `kept`: pressures of the kept nodes, Pa
-    pub(super) fn pressures(
+    /// Pressures alone, in the order of elimination, the kept ones last: far cheaper in meshed nets than with differences,
+    /// which lose digits where two pressures are nearly equal.
+    pub(super) fn plain_pressures(
         &self,
         structure: &Structure,
-        mut inflows: Vec<f64>,
+        inflows: Vec<f64>,
         kept: &[f64],
-    ) -> Pressures {
+    ) -> Vec<f64> {
+        let n = structure.unknowns;
+        let inflows = self.passed_on(structure, inflows);
+        let mut found = vec![0.0; n];
+        found.extend_from_slice(kept);
+        for node in (0..n).rev() {
+            let range = structure.links(node);
+            let row = structure.columns[range.clone()].iter();
+            let sum: f64 = row
+                .zip(&self.conductances[range])
+                .map(|(&other, g)| g * found[other as usize])
+                .sum();
+            found[node] = (inflows[node] + sum) / self.sums[node];
+        }
+        found
+    }
+
+    /// Inflows with those of the nodes before, which pass theirs on when they go.
+    fn passed_on(&self, structure: &Structure, mut inflows: Vec<f64>) -> Vec<f64> {
         let n = structure.unknowns;
         for node in 0..n {
             if inflows[node] == 0.0 {
@@ -113,6 +129,21 @@ impl Eliminated {
                 }
             }
         }
+        inflows
+    }
+
+    /// Pressures for given inflows and pressures of the kept nodes.
+    ///
+    /// - `inflows`: of each node in the order of elimination, m^3/s
+    /// - `kept`: pressures of the kept nodes, Pa
+    pub(super) fn pressures(
+        &self,
+        structure: &Structure,
+        inflows: Vec<f64>,
+        kept: &[f64],
+    ) -> Pressures {
+        let n = structure.unknowns;
+        let inflows = self.passed_on(structure, inflows);
         // Pressures are means of those around; with the lowest at zero means do not cancel.
         let lowest = kept.iter().copied().fold(f64::INFINITY, f64::min);
         let lowest = if lowest.is_finite() { lowest } else { 0.0 };

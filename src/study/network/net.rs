@@ -47,6 +47,9 @@ pub struct NetCard {
     pub shear_max: Option<f64>,
     /// Standard relative uncertainty of the resistance that the card states.
     pub own_uncertainty: Option<f64>,
+    /// Number of the card that it comes from: cards of a net with the same number are one and the same card, so their own
+    /// uncertainty moves together.
+    pub origin: usize,
     /// Further standard relative uncertainty that all channels of the card have in common.
     pub common_uncertainty: f64,
     /// Up to where the card holds.

@@ -13,6 +13,10 @@ pub const BALANCE_TOLERANCE: f64 = 1e-9;
 /// Share of the largest flow below which a node's flow does not count as one.
 const LEAST_FLOW: f64 = 1e-6;
 
+/// Multiplications of an elimination up to which the ends of the proven range are solved for; beyond, the cards furthest
+/// from their values stand for all.
+const MOST_WORK: u64 = 50_000_000;
+
 /// A limit of its card that a channel is beyond.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum BeyondLimit {
@@ -323,26 +327,37 @@ fn equivalent(
     eliminated: &Eliminated,
     elements: &[Element],
 ) -> Result<Option<EquivalentResistance>, NetworkError> {
-    let &[first, second] = topology.kept.as_slice() else {
+    let Some(between) = topology.two_ends() else {
         return Ok(None);
     };
     if eliminated.between <= 0.0 {
         return Ok(None);
     }
-    let low: Option<Vec<f64>> = elements.iter().map(|e| Some(1.0 / e.proven?.0)).collect();
-    let high: Option<Vec<f64>> = elements.iter().map(|e| Some(1.0 / e.proven?.1)).collect();
-    let proven = match low.zip(high) {
-        Some((low, high)) => {
-            let rounding = topology.rounding();
-            let low = 1.0 / topology.eliminate(&low)?.between;
-            let high = 1.0 / topology.eliminate(&high)?.between;
-            Some((low * (1.0 - rounding), high * (1.0 + rounding)))
+    let resistance = 1.0 / eliminated.between;
+    let proven: Option<Vec<(f64, f64)>> = elements.iter().map(|e| e.proven).collect();
+    let rounding = topology.rounding();
+    let proven = match proven {
+        Some(proven) if topology.structure.work <= MOST_WORK => {
+            let end = |end: &dyn Fn(&(f64, f64)) -> f64| -> Result<f64, NetworkError> {
+                let conductances: Vec<f64> = proven.iter().map(|p| 1.0 / end(p)).collect();
+                Ok(1.0 / topology.eliminate(&conductances)?.between)
+            };
+            Some((end(&|p| p.0)?, end(&|p| p.1)?))
+        }
+        // All resistances between the same two multiples of themselves: so is the whole.
+        Some(proven) => {
+            let ratios = proven.iter().zip(elements);
+            let (low, high) = ratios.fold((f64::INFINITY, 0.0_f64), |(low, high), (p, e)| {
+                (low.min(p.0 / e.resistance), high.max(p.1 / e.resistance))
+            });
+            Some((resistance * low, resistance * high))
         }
         None => None,
     };
+    let proven = proven.map(|(low, high)| (low * (1.0 - rounding), high * (1.0 + rounding)));
     Ok(Some(EquivalentResistance {
-        between: [first, second],
-        resistance: 1.0 / eliminated.between,
+        between,
+        resistance,
         proven,
     }))
 }

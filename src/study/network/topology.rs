@@ -1,10 +1,12 @@
 //! Which nodes are found, which are given, and whether every part of the net has a pressure.
 
+use std::collections::HashMap;
+
 use sprs::{CsMat, TriMat};
 
 use super::NetworkError;
 use super::elimination::{Eliminated, Pressures};
-use super::net::{Network, NodeCondition};
+use super::net::{NetNode, Network, NodeCondition};
 use super::structure::Structure;
 
 /// Most links of the eliminated net: 16 bytes each with their working copies, 1 GB in all.
@@ -14,10 +16,12 @@ const MOST_LINKS: usize = 30_000_000;
 #[derive(Debug)]
 pub(super) struct Topology {
     pub(super) structure: Structure,
-    /// For each node its number, nodes of given pressure last.
+    /// For each node its number, nodes of given pressure last; more than two of these with the same pressure share one.
     number: Vec<usize>,
-    /// Nodes of given pressure in the order of their numbers.
+    /// The first node of given pressure of each such number, in their order.
     pub(super) kept: Vec<usize>,
+    /// Nodes of given pressure.
+    given: usize,
     /// For each channel its link and whether the link begins at the channel's end; `None` between two kept nodes.
     links: Vec<Option<(usize, bool)>>,
 }
@@ -33,15 +37,8 @@ pub(super) struct State {
 impl Topology {
     pub(super) fn new(network: &Network, conductances: &[f64]) -> Result<Self, NetworkError> {
         check_parts(network)?;
-        let is_kept =
-            |node: usize| matches!(network.nodes[node].condition, NodeCondition::Pressure(_));
-        let (kept, free): (Vec<usize>, Vec<usize>) =
-            (0..network.nodes.len()).partition(|&node| is_kept(node));
-        let mut number = vec![0; network.nodes.len()];
-        for (place, &node) in free.iter().chain(&kept).enumerate() {
-            number[node] = place;
-        }
-        let matrix = conductance_matrix(network, &number, conductances);
+        let (number, unknowns, kept) = numbers(network);
+        let matrix = conductance_matrix(network, &number, unknowns + kept.len(), conductances);
         let mut pairs = Vec::new();
         for (row, line) in matrix.outer_iterator().enumerate() {
             let later = line.iter().map(|(column, _)| column);
@@ -51,7 +48,7 @@ impl Topology {
                     .map(|column| (row as u32, column as u32)),
             );
         }
-        let structure = Structure::new(free.len(), network.nodes.len(), &pairs, MOST_LINKS)?;
+        let structure = Structure::new(unknowns, unknowns + kept.len(), &pairs, MOST_LINKS)?;
         let links = network
             .channels
             .iter()
@@ -59,10 +56,19 @@ impl Topology {
             .collect();
         Ok(Self {
             structure,
+            given: network.nodes.len() - unknowns,
             number,
             kept,
             links,
         })
+    }
+
+    /// The nodes of given pressure, where there are exactly two.
+    pub(super) fn two_ends(&self) -> Option<[usize; 2]> {
+        match self.kept.as_slice() {
+            &[first, second] if self.given == 2 => Some([first, second]),
+            _ => None,
+        }
     }
 
     /// Eliminates with the conductance of each channel, m^3/(s Pa).
@@ -91,13 +97,7 @@ impl Topology {
         inflows: &[f64],
         kept: &[f64],
     ) -> State {
-        let unknowns = self.structure.unknowns;
-        let mut ordered = vec![0.0; unknowns];
-        for (node, &inflow) in inflows.iter().enumerate() {
-            if self.number[node] < unknowns {
-                ordered[self.structure.position[self.number[node]] as usize] = inflow;
-            }
-        }
+        let ordered = self.ordered(inflows);
         let found: Pressures = eliminated.pressures(&self.structure, ordered, kept);
         let pressures: Vec<f64> = self
             .number
@@ -117,6 +117,35 @@ impl Topology {
         State { pressures, drops }
     }
 
+    /// Drops of all channels as differences of pressures: cheap, for derivatives.
+    pub(super) fn plain_drops(
+        &self,
+        network: &Network,
+        eliminated: &Eliminated,
+        inflows: &[f64],
+        kept: &[f64],
+    ) -> Vec<f64> {
+        let ordered = self.ordered(inflows);
+        let found = eliminated.plain_pressures(&self.structure, ordered, kept);
+        let at = |node: usize| found[self.structure.position[self.number[node]] as usize];
+        let channels = network.channels.iter();
+        channels
+            .map(|channel| at(channel.from) - at(channel.to))
+            .collect()
+    }
+
+    /// Inflows of free nodes in the order of elimination.
+    fn ordered(&self, inflows: &[f64]) -> Vec<f64> {
+        let unknowns = self.structure.unknowns;
+        let mut ordered = vec![0.0; unknowns];
+        for (&number, &inflow) in self.number.iter().zip(inflows) {
+            if number < unknowns {
+                ordered[self.structure.position[number] as usize] = inflow;
+            }
+        }
+        ordered
+    }
+
     /// Bound of the relative rounding error of the conductance between two kept nodes.
     ///
     /// Taking out a node with `d` links makes every conductance wrong by at most `(d + 2) eps / 2` of itself.
@@ -129,9 +158,50 @@ impl Topology {
     }
 }
 
+/// The number of each node, how many are free, and the first node of each kept number.
+///
+/// Two nodes of given pressure keep a number each, since the resistance between them is asked for. More of them are one
+/// node where their pressure is the same: hundreds of open outlets then cost no more than one.
+fn numbers(network: &Network) -> (Vec<usize>, usize, Vec<usize>) {
+    let pressure = |node: &NetNode| match node.condition {
+        NodeCondition::Pressure(p) => Some(p),
+        NodeCondition::Inflow(_) => None,
+    };
+    let given = network
+        .nodes
+        .iter()
+        .filter(|n| pressure(n).is_some())
+        .count();
+    let unknowns = network.nodes.len() - given;
+    let mut kept = Vec::new();
+    let mut of_pressure: HashMap<u64, usize> = HashMap::new();
+    let mut free = 0;
+    let mut number = Vec::with_capacity(network.nodes.len());
+    for (index, node) in network.nodes.iter().enumerate() {
+        number.push(match pressure(node) {
+            None => {
+                free += 1;
+                free - 1
+            }
+            Some(p) => {
+                let key = if given > 2 { p.to_bits() } else { index as u64 };
+                *of_pressure.entry(key).or_insert_with(|| {
+                    kept.push(index);
+                    unknowns + kept.len() - 1
+                })
+            }
+        });
+    }
+    (number, unknowns, kept)
+}
+
 /// The matrix of conductances with their negative sums on the diagonal, rows by `number`.
-fn conductance_matrix(network: &Network, number: &[usize], conductances: &[f64]) -> CsMat<f64> {
-    let size = number.len();
+fn conductance_matrix(
+    network: &Network,
+    number: &[usize],
+    size: usize,
+    conductances: &[f64],
+) -> CsMat<f64> {
     let mut triplets = TriMat::with_capacity((size, size), 4 * conductances.len());
     for (channel, &g) in network.channels.iter().zip(conductances) {
         let (a, b) = (number[channel.from], number[channel.to]);

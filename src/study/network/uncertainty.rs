@@ -12,11 +12,11 @@ pub const DEFAULT_SAMPLES: usize = 1000;
 /// Fewest samples that say anything.
 pub const FEWEST_SAMPLES: usize = 10;
 /// Multiplications spent on derivatives before results are left out, and fewest and most results.
-const LINEAR_WORK: u64 = 200_000_000;
+const LINEAR_WORK: u64 = 100_000_000;
 const FEWEST_OUTPUTS: u64 = 20;
 const MOST_OUTPUTS: u64 = 500;
 /// Multiplications spent on samples where no number of them is asked for.
-const SAMPLE_WORK: u64 = 300_000_000;
+const SAMPLE_WORK: u64 = 120_000_000;
 
 /// Relative uncertainty below which there is nothing but rounding to compare.
 const ROUNDING: f64 = 1e-9;
@@ -135,9 +135,9 @@ impl Network {
 
     /// Uncertainty of the results of a solved net; `None` where none is stated.
     ///
-    /// First order: `u^2 = sum over cards (u_card sum of dy/dlnR_j of its channels)^2 + sum over channels
-    /// (u_j dy/dlnR_j)^2` (Guide to the expression of uncertainty in measurement, JCGM 100:2008, 5.2, from memory).
-    /// Different cards count as independent.
+    /// First order: `u^2 = sum over parts (u_part sum of dy/dlnR_j of its channels)^2 + sum over channels
+    /// (u_j dy/dlnR_j)^2`, the parts being the own uncertainty of each card and the further one of each entry (Guide to the expression of uncertainty in measurement, JCGM 100:2008, 5.2, from memory).
+    /// Different cards count as independent; entries of one and the same card share its own uncertainty.
     pub fn uncertainty(
         &self,
         solution: &NetworkSolution,
@@ -148,13 +148,16 @@ impl Network {
         }
         let all = self.outputs(solution);
         let all_outputs = all.len();
-        let work = solution.topology.structure.work.max(1) + self.channels.len() as u64;
-        let most = (LINEAR_WORK / work).clamp(FEWEST_OUTPUTS, MOST_OUTPUTS) as usize;
+        let structure = &solution.topology.structure;
+        let channels = self.channels.len() as u64;
+        let work = structure.work + channels;
+        let of_one = 2 * structure.columns.len() as u64 + channels;
+        let most = (LINEAR_WORK / of_one.max(1)).clamp(FEWEST_OUTPUTS, MOST_OUTPUTS) as usize;
         let covered: Vec<NetOutput> = all.into_iter().take(most).collect();
         let wanted = options.count.unwrap_or(DEFAULT_SAMPLES);
         let affordable = match options.count {
             Some(count) => count,
-            None => wanted.min((SAMPLE_WORK / work) as usize),
+            None => wanted.min((SAMPLE_WORK / work.max(1)) as usize),
         };
         let count = if affordable < FEWEST_SAMPLES {
             0
@@ -178,6 +181,12 @@ impl Network {
             samples_wanted: wanted,
             seed: options.seed,
         })
+    }
+
+    /// One more than the largest number of an origin.
+    pub(super) fn origins(&self) -> usize {
+        let numbers = self.cards.iter().map(|card| card.origin + 1);
+        numbers.max().unwrap_or(0)
     }
 
     /// All results: resistance, inflows, flows of channels at given pressures, other flows, pressures.
@@ -210,12 +219,13 @@ impl Network {
             of_cards[channel.card] += slope;
             own += (channel.bundle_spread() * slope).powi(2);
         }
-        let common: f64 = self
-            .cards
-            .iter()
-            .zip(of_cards)
-            .map(|(card, slope)| (card.common() * slope).powi(2))
-            .sum();
+        let mut of_origins = vec![0.0; self.origins()];
+        let mut common = 0.0;
+        for (card, slope) in self.cards.iter().zip(of_cards) {
+            of_origins[card.origin] += card.own_uncertainty.unwrap_or(0.0) * slope;
+            common += (card.common_uncertainty * slope).powi(2);
+        }
+        common += of_origins.iter().map(|part| part * part).sum::<f64>();
         let square = common + own;
         OutputUncertainty {
             output,

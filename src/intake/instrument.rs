@@ -331,7 +331,8 @@ impl Reader<'_> {
         let mut traces = Vec::new();
         for cut in &mut cuts.cuts {
             let name = several.then(|| format!("station {}", format_length(cut.station)));
-            traces.push(self.trace(std::mem::take(&mut cut.trace), name)?);
+            let trace = self.trace(std::mem::take(&mut cut.trace), name);
+            traces.push(trace.map_err(|error| error.in_cut(cuts.direction))?);
         }
         Ok(MapReading { map, cuts, traces })
     }

@@ -274,6 +274,14 @@ pub enum ReadProblem {
         /// What is wrong with it.
         source: GrooveProblem,
     },
+    /// A cut through a height map gives no section.
+    #[error("{source}; the cut runs across grooves at {direction} against the x axis of the map")]
+    Cut {
+        /// Direction of the grooves.
+        direction: String,
+        /// What is wrong with it.
+        source: Box<ReadProblem>,
+    },
     /// A height map cannot be used.
     #[error("{source}")]
     Map {
@@ -361,6 +369,20 @@ impl ReadError {
         }
     }
 
+    /// The same for a cut through a map; what the map itself says is not lost.
+    ///
+    /// - `direction`: of the grooves against the x axis, rad
+    pub(crate) fn in_cut(self, direction: f64) -> Self {
+        let problem = ReadProblem::Cut {
+            direction: format!("{:.1} degrees", direction.to_degrees()),
+            source: self.problem,
+        };
+        Self {
+            problem: Box::new(problem),
+            ..self
+        }
+    }
+
     /// Place before the message.
     fn prefix(&self) -> String {
         match &self.place {
@@ -375,7 +397,11 @@ impl ReadError {
 
     /// Whether the file is unreadable or its unit in doubt; both end with exit status 3.
     pub fn exit_kind(&self) -> ReadErrorKind {
-        let in_doubt = match &*self.problem {
+        let mut problem = &*self.problem;
+        while let ReadProblem::Cut { source, .. } = problem {
+            problem = source;
+        }
+        let in_doubt = match problem {
             ReadProblem::Table { source } => source.is_ambiguous(),
             ReadProblem::Trace { source } => source.is_ambiguous(),
             ReadProblem::Groove { source } => source.is_ambiguous(),

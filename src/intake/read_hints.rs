@@ -12,6 +12,7 @@ impl ReadProblem {
             Self::Table { source } => source.hint(),
             Self::Trace { source } => source.hint(),
             Self::Groove { source } => source.hint(),
+            Self::Cut { source, .. } => source.hint(),
             Self::Map { source } => source.hint(),
             Self::Micrograph { source } => source.hint(),
             Self::Route { source } => source.hint(),

@@ -222,6 +222,8 @@ fn heights_of_a_map_without_a_groove_are_written_all_the_same() {
     let head = "# Width: 100 um\n# Height: 100 um\n# Value units: um\n";
     let folder = Folder::with("flat.txt", format!("{head}{rows}"));
     let run = folder.line("map flat.txt --heights h.csv --no-solve");
+    // What the map itself says is told all the same.
+    assert!(run.err.contains("degrees against the x axis"), "{}", run.err);
     assert_eq!(run.status, 3, "{}", run.err);
     assert!(run.err.contains("no groove direction"), "{}", run.err);
     let table = std::fs::read_to_string(folder.path("h.csv")).unwrap();

@@ -222,8 +222,6 @@ fn heights_of_a_map_without_a_groove_are_written_all_the_same() {
     let head = "# Width: 100 um\n# Height: 100 um\n# Value units: um\n";
     let folder = Folder::with("flat.txt", format!("{head}{rows}"));
     let run = folder.line("map flat.txt --heights h.csv --no-solve");
-    // What the map itself says is told all the same.
-    assert!(run.err.contains("degrees against the x axis"), "{}", run.err);
     assert_eq!(run.status, 3, "{}", run.err);
     assert!(run.err.contains("no groove direction"), "{}", run.err);
     let table = std::fs::read_to_string(folder.path("h.csv")).unwrap();
@@ -231,6 +229,19 @@ fn heights_of_a_map_without_a_groove_are_written_all_the_same() {
     for number in table.lines().flat_map(|line| line.split(',')) {
         assert!((number.parse::<f64>().unwrap() - 1.5e-6).abs() < 1e-18);
     }
+}
+
+#[test]
+fn a_cut_that_gives_no_section_says_how_the_grooves_of_its_map_run() {
+    // One step and no more: the groove goes on beyond the map.
+    let row = format!("{}{}\n", "1 ".repeat(30), "4 ".repeat(30));
+    let head = "# Width: 60 um\n# Height: 40 um\n# Value units: um\n";
+    let folder = Folder::with("step.txt", format!("{head}{}", row.repeat(40)));
+    let run = folder.line("map step.txt");
+    assert_eq!(run.status, 3, "{}", run.err);
+    let words = "the cut runs across grooves at 90.0 degrees against the x axis";
+    assert!(run.err.contains(words), "{}", run.err);
+    assert!(run.err.contains("help: "), "{}", run.err);
 }
 
 #[test]

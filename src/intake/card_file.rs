@@ -92,7 +92,8 @@ pub struct CardContent {
 pub(super) fn cards(bytes: Vec<u8>) -> Result<Vec<CardContent>, Fault> {
     let source = SourceText::decode(bytes)?;
     if source.text.trim().is_empty() {
-        return Err(ReadProblem::Empty.into());
+        let message = "the file is empty".to_owned();
+        return Err(of(NetworkProblem::Json { message }));
     }
     let root: Value = serde_json::from_str(&source.text).map_err(|e| bad_json(&source.text, &e))?;
     match root.get("schema") {

@@ -119,7 +119,7 @@ fn element(
     let scale = factor * times / count;
     let resistance = card.resistance * scale;
     if !(is_positive(resistance) && is_positive(1.0 / resistance)) {
-        return Err("its resistance is not above zero");
+        return Err("its resistance is zero, negative, or out of the range of numbers");
     }
     if !(is_positive(card.volume) && is_positive(card.wall_area)) {
         return Err("its card has no volume or no wall");

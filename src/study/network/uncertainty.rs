@@ -16,7 +16,7 @@ const LINEAR_WORK: u64 = 100_000_000;
 const FEWEST_OUTPUTS: u64 = 20;
 const MOST_OUTPUTS: u64 = 500;
 /// Multiplications spent on samples where no number of them is asked for.
-const SAMPLE_WORK: u64 = 120_000_000;
+const SAMPLE_WORK: u64 = 200_000_000;
 
 /// Relative uncertainty below which there is nothing but rounding to compare.
 const ROUNDING: f64 = 1e-9;

@@ -404,7 +404,7 @@ pub(super) fn fluid_only(command: Command) -> Command {
             "Temperature, such as 25C or 298.15K",
             "Temperature of the fluid, with its unit. Water: -20 to 110 C at 0.1 MPa. \
              Example: --temperature 25C",
-        ))
+        ).allow_hyphen_values(true))
         .arg(entry(
             "gas-pressure",
             "P",

@@ -27,6 +27,9 @@ use super::quantities::{fluid, temperature_range};
 use super::response;
 use super::sections::{Sections, film};
 
+/// Options that mean nothing without `--vary`.
+const ONLY_WITH_VARY: [&str; 4] = ["with", "fit-error", "fresh-points", "picture"];
+
 /// What was asked for, no file opened yet.
 struct Request {
     files: Vec<PathBuf>,
@@ -63,6 +66,15 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     if matches.contains_id("vary") {
         return response::run(matches);
     }
+    if let Some(name) = ONLY_WITH_VARY
+        .into_iter()
+        .find(|name| typed(matches, name).is_some())
+    {
+        return Err(Failure::usage(
+            format!("--{name} is for response tables"),
+            "add --vary NAME=LOW..HIGH, or leave it out",
+        ));
+    }
     super::set_threads(matches)?;
     let request = Request::new(matches)?;
     request.check_targets()?;
@@ -80,7 +92,11 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
             }
         }
     }
-    request.answer(&made, &failed)
+    match failed.first() {
+        // Nothing to hand over, so nothing is written.
+        Some((_, failure)) if made.is_empty() => Ok(failure.status),
+        _ => request.answer(&made, &failed),
+    }
 }
 
 impl Request {

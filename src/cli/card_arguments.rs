@@ -53,7 +53,7 @@ pub(super) fn card() -> Command {
 pub(super) fn temperature_range() -> Arg {
     option("temperature-range", "LOW..HIGH", "Temperatures of R(T) [default: 5C..60C]").long_help("Temperatures between which the resistance over temperature must hold, each with its unit; the \
              fluid's own temperature lies between them. Default: 5C..60C, wider where the fluid is colder or \
-             hotter. Example: --temperature-range 10C..40C")
+             hotter. Example: --temperature-range 10C..40C").allow_hyphen_values(true)
 }
 
 fn own_options(command: Command) -> Command {

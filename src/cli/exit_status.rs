@@ -19,6 +19,21 @@ pub enum ExitStatus {
     NotSolved = 5,
 }
 
+impl ExitStatus {
+    /// What to say where a result was given and does not hold as asked.
+    pub(super) fn why_no_result(self) -> Option<&'static str> {
+        match self {
+            Self::OutsideValidity => {
+                Some("status 4: outside the model's validity; the warnings in the result say why")
+            }
+            Self::NotSolved => {
+                Some("status 5: not solved to the asked accuracy; the result says what was reached")
+            }
+            _ => None,
+        }
+    }
+}
+
 impl From<ExitStatus> for ExitCode {
     fn from(status: ExitStatus) -> Self {
         Self::from(status as u8)

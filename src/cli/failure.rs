@@ -137,7 +137,7 @@ impl From<OperatingPointError> for Failure {
 impl From<WriteError> for Failure {
     fn from(error: WriteError) -> Self {
         let status = match error {
-            WriteError::NamedTwice { .. } => ExitStatus::Usage,
+            WriteError::NamedTwice { .. } | WriteError::IsDash => ExitStatus::Usage,
             _ => ExitStatus::Unreadable,
         };
         Self::new(status, &error, "")

@@ -69,7 +69,12 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         )),
     };
     match outcome {
-        Ok(status) => status.into(),
+        Ok(status) => {
+            if let Some(why) = status.why_no_result() {
+                output::talk(why);
+            }
+            status.into()
+        }
         Err(failure) => {
             failure.print();
             failure.status.into()

@@ -78,7 +78,7 @@ impl FluidError {
 /// Source text of water; also how a [`Fluid`] is known to be water.
 const WATER_SOURCE: &str =
     "IAPWS SR6-08(2011), liquid water at 0.1 MPa (viscosity and density formulas)";
-/// Temperatures between which IAPWS SR6-08 holds, K, both ends excluded.
+/// Temperatures between which IAPWS SR6-08 holds, K.
 const WATER_RANGE: [f64; 2] = [253.15, 383.15];
 /// Melting temperature of ice at 1e5 Pa, K, to the digits used here.
 pub(crate) const WATER_FREEZES: f64 = 273.15;
@@ -122,7 +122,7 @@ impl Fluid {
     /// Viscosity `mu = 280.68 t^-1.9 + 511.45 t^-7.7 + 61.131 t^-19.6 + 0.45903 t^-40` in uPa s with
     /// `t = T / 300 K`; density from the companion formula for the specific volume.
     ///
-    /// - `temperature`: K, above 253.15 and below 383.15; below 273.15 and above 372.76 the liquid is
+    /// - `temperature`: K, 253.15 to 383.15; below 273.15 and above 372.76 the liquid is
     ///   metastable, which [`super::validity_warnings`] says
     ///
     /// # Source
@@ -140,7 +140,9 @@ impl Fluid {
     /// ```
     pub fn water(temperature: f64) -> Result<Self, FluidError> {
         let [low, high] = WATER_RANGE;
-        if !(temperature > low && temperature < high) {
+        // Ends given in degrees Celsius are off by rounding.
+        let rounding = 1e-9;
+        if !(temperature >= low - rounding && temperature <= high + rounding) {
             return Err(FluidError::OutOfRange {
                 fluid: "water",
                 quantity: "temperature",
@@ -393,11 +395,11 @@ mod tests {
 
     #[test]
     fn water_outside_its_range_is_an_error_with_the_range() {
-        for temperature in [253.15, 383.15, 25.0, f64::NAN, f64::INFINITY] {
+        for temperature in [253.14, 383.16, 25.0, f64::NAN, f64::INFINITY] {
             let error = Fluid::water(temperature).unwrap_err();
             assert!(error.to_string().contains("253.15 to 383.15 K"), "{error}");
         }
-        assert!(Fluid::water(253.16).is_ok() && Fluid::water(383.14).is_ok());
+        assert!(Fluid::water(273.15 - 20.0).is_ok() && Fluid::water(273.15 + 110.0).is_ok());
     }
 
     #[test]

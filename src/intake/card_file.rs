@@ -239,6 +239,9 @@ impl<'a> Part<'a> {
         if uncertainty.is_some_and(|u| u < 0.0) {
             return Err(key(&self.path("u"), "it is negative"));
         }
+        if uncertainty.is_some_and(|u| u > value.abs()) {
+            return Err(key(&self.path("u"), "it is larger than the value itself"));
+        }
         Ok(Some(Number {
             value,
             proven,

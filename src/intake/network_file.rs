@@ -39,6 +39,10 @@ use crate::units::{parse_flow_rate, parse_length, parse_pressure, parse_temperat
 
 /// Most channels side by side.
 const MOST_PARALLEL: i64 = 1_000_000;
+/// Largest pressure, Pa, inflow, m^3/s, and length, m, that are no slip of the unit.
+const MOST_PRESSURE: f64 = 1e11;
+const MOST_INFLOW: f64 = 1e3;
+const MOST_LENGTH: f64 = 1e6;
 /// Relative difference up to which two properties of a fluid are the same.
 const SAME_PROPERTY: f64 = 1e-6;
 /// Difference up to which two temperatures are the same, K.
@@ -374,20 +378,18 @@ fn node(entry: &Entry<'_, '_>, names: &mut Names) -> Result<NetworkFileNode, Fau
     let text = entry.text;
     let condition = match (entry.table.get("pressure"), entry.table.get("inflow")) {
         (None, None) => NetworkFileCondition::Free,
-        (Some(value), None) => NetworkFileCondition::Pressure(measured(
-            text,
-            value,
-            "pressure",
-            "a pressure in quotes, such as \"20 kPa\"",
-            parse_pressure,
-        )?),
-        (None, Some(value)) => NetworkFileCondition::Inflow(measured(
-            text,
-            value,
-            "inflow",
-            "a flow rate in quotes, such as \"2 uL/min\"",
-            parse_flow_rate,
-        )?),
+        (Some(value), None) => {
+            let wanted = "a pressure in quotes, such as \"20 kPa\"";
+            let pressure = measured(text, value, "pressure", wanted, parse_pressure)?;
+            within(text, value, pressure, MOST_PRESSURE, "100 GPa")?;
+            NetworkFileCondition::Pressure(pressure)
+        }
+        (None, Some(value)) => {
+            let wanted = "a flow rate in quotes, such as \"2 uL/min\"";
+            let inflow = measured(text, value, "inflow", wanted, parse_flow_rate)?;
+            within(text, value, inflow, MOST_INFLOW, "1000 m^3/s")?;
+            NetworkFileCondition::Inflow(inflow)
+        }
         (Some(_), Some(value)) => return Err(at(text, value, NetworkProblem::TwoConditions)),
     };
     Ok(NetworkFileNode {
@@ -431,6 +433,25 @@ fn channel(
     })
 }
 
+/// Refuses a value beyond anything that a channel can have: a slip of the unit or of the exponent.
+fn within(
+    text: &str,
+    value: &Value<'_>,
+    found: f64,
+    most: f64,
+    limit: &'static str,
+) -> Result<(), Fault> {
+    if found.abs() <= most {
+        return Ok(());
+    }
+    let written = written(value);
+    let problem = NetworkProblem::TooLarge {
+        text: written,
+        limit,
+    };
+    Err(at(text, value, problem))
+}
+
 fn whole_number(value: &Value<'_>) -> Option<u32> {
     let DeValue::Integer(integer) = value.get_ref() else {
         return None;
@@ -459,6 +480,7 @@ fn length(entry: &Entry<'_, '_>, card: Option<&NetworkFileCard>) -> Result<Optio
                 "a length in quotes, such as \"20 mm\"",
                 parse_length,
             )?;
+            within(text, value, length, MOST_LENGTH, "1000 km")?;
             if length > 0.0 {
                 Ok(Some(length))
             } else {

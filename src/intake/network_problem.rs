@@ -59,6 +59,14 @@ pub enum NetworkProblem {
         /// The text.
         text: String,
     },
+    /// A value that no channel has.
+    #[error("`{text}` is beyond {limit}")]
+    TooLarge {
+        /// The text.
+        text: String,
+        /// The limit.
+        limit: &'static str,
+    },
     /// A relative uncertainty outside 0 to 100 %.
     #[error("the relative uncertainty `{text}` is not from 0 up to below 100 %")]
     NotAShare {
@@ -159,6 +167,7 @@ impl NetworkProblem {
             Self::SelfLoop { .. } => "name two different nodes in `from` and `to`",
             Self::TwoConditions => "keep one of the two: the other follows from it",
             Self::NotPositive { .. } => "write for example length = \"20 mm\"",
+            Self::TooLarge { .. } => "check the number and its unit",
             Self::NotAShare { .. } => "write for example \"3 %\"",
             Self::Parallel => "write for example parallel = 4, or leave it out for one channel",
             Self::LengthNeeded { .. } => "add for example length = \"20 mm\"",

@@ -11,8 +11,9 @@ use std::fmt::Write as _;
 use super::card_document::{CardDocument, CardRecord};
 use super::numbers::one_line;
 
-/// Keywords of the language, which no name may be (specification, section 2.3.3), and our own names.
-const TAKEN: [&str; 66] = [
+/// Keywords of the language (specification, section 2.3.3), its built-in functions and types, which a model of that
+/// name would hide from the others, and our own names.
+const TAKEN: [&str; 111] = [
     "algorithm",
     "and",
     "annotation",
@@ -79,6 +80,51 @@ const TAKEN: [&str; 66] = [
     "Boolean",
     "String",
     "Port",
+    "abs",
+    "acos",
+    "asin",
+    "atan",
+    "atan2",
+    "cardinality",
+    "ceil",
+    "change",
+    "cos",
+    "cosh",
+    "delay",
+    "div",
+    "edge",
+    "exp",
+    "floor",
+    "homotopy",
+    "integer",
+    "log",
+    "log10",
+    "max",
+    "min",
+    "mod",
+    "noEvent",
+    "ones",
+    "pre",
+    "product",
+    "reinit",
+    "rem",
+    "sample",
+    "semiLinear",
+    "sign",
+    "sin",
+    "sinh",
+    "size",
+    "smooth",
+    "sqrt",
+    "sum",
+    "tan",
+    "tanh",
+    "terminal",
+    "terminate",
+    "zeros",
+    "AssertionLevel",
+    "StateSelect",
+    "EtchwiseCards",
 ];
 
 /// Longest identifier made of a name, characters.
@@ -339,6 +385,7 @@ mod tests {
                 "wafer_7",
                 "wafer_7_2",
                 "section_model",
+                "section_exp",
                 "section_7up",
                 "section__",
                 "section_",

@@ -23,6 +23,9 @@ pub enum WriteError {
         /// The target.
         path: PathBuf,
     },
+    /// A dash where a file is needed.
+    #[error("`-` names no file here: standard output takes the main result only; name a file")]
+    IsDash,
     /// The target is a folder.
     #[error("`{}` is a folder; name a file in it", path.display())]
     IsFolder {
@@ -187,6 +190,9 @@ fn refused(path: &Path, source: io::Error) -> WriteError {
 /// Follows links and refuses what must not or cannot be a target.
 fn resolve(path: &Path, inputs: &[&Path]) -> Result<Target, WriteError> {
     let owned = || path.to_owned();
+    if path == Path::new("-") {
+        return Err(WriteError::IsDash);
+    }
     let metadata = match fs::metadata(path) {
         Ok(metadata) => metadata,
         Err(e) if e.kind() == io::ErrorKind::NotFound => return new_target(path),

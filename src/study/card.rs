@@ -140,6 +140,14 @@ pub enum CardError {
         /// Names that there are.
         known: String,
     },
+    /// Inputs so extreme that the resistance leaves the range of numbers.
+    #[error(
+        "the resistance per length comes out as {value} Pa s/m^4, outside the range of numbers"
+    )]
+    OutOfNumbers {
+        /// The value.
+        value: f64,
+    },
     /// An uncertainty in the wrong kind of unit.
     #[error("the uncertainty of `{input}` must be {wanted}")]
     WrongMeasure {
@@ -155,6 +163,9 @@ impl CardError {
     pub fn hint(&self) -> String {
         match self {
             Self::NoSuchInput { .. } => "name one of these".to_owned(),
+            Self::OutOfNumbers { .. } => {
+                "check the unit of the viscosity and of the section".to_owned()
+            }
             Self::WrongMeasure { input, wanted } => {
                 let value = if wanted.contains("angle") {
                     "0.5deg"
@@ -222,6 +233,9 @@ impl SectionCard {
         } = *request;
         let k = flow.conductance;
         let value = fluid.viscosity / k.value;
+        if !(value.is_finite() && value > 0.0) {
+            return Err(CardError::OutOfNumbers { value });
+        }
         let area = flow.geometry.area;
         let per_flow = |per_gradient: f64| per_gradient * value;
         let uncertainty = (!uncertainties.is_empty())

@@ -83,6 +83,27 @@ fn the_law_of_temperature_gives_the_viscosity_of_the_release() {
 }
 
 #[test]
+fn both_ends_of_the_temperatures_of_water_are_taken() {
+    let folder = Folder::with("a.csv", RECTANGLE);
+    for (options, code) in [
+        (
+            "--temperature -20C --temperature-range -20C..60C",
+            "fluid_range",
+        ),
+        (
+            "--temperature 110C --temperature-range 5C..110C",
+            "fluid_range",
+        ),
+    ] {
+        let record = folder.json(&format!(
+            "card a.csv --fluid water {options} --cells-across 16 --json"
+        ));
+        let warnings = card(&record)["warnings"].as_array().unwrap();
+        assert!(warnings.iter().any(|w| w["code"] == code), "{options}");
+    }
+}
+
+#[test]
 fn stated_uncertainties_become_one_of_the_resistance() {
     let folder = Folder::with("a.csv", RECTANGLE);
     let record = folder.json(&format!(
@@ -357,6 +378,15 @@ fn what_makes_no_card_is_refused_before_any_file_is_written() {
             &["must be a share"],
         ),
         ("--viscosity 1mPa.s - -", &["standard input"]),
+        (
+            "--viscosity 1mPa.s --picture a.png",
+            &["--picture", "--vary"],
+        ),
+        (
+            "--viscosity 1mPa.s --fit-error 1%",
+            &["--fit-error", "--vary"],
+        ),
+        ("--viscosity 1e300Pa.s", &["outside the range of numbers"]),
         ("--viscosity 1mPa.s --csv --csv-locale us", &["eu"]),
     ] {
         let line = format!("card a.csv {options} -o out.json --modelica out.mo --cells-across 16");
@@ -366,6 +396,12 @@ fn what_makes_no_card_is_refused_before_any_file_is_written() {
     folder
         .line("card a.csv --viscosity 1mPa.s --modelica a.csv")
         .assert_error(3, &["a.csv", "input"]);
+    folder
+        .line("card a.csv --viscosity 1mPa.s --modelica -")
+        .assert_error(2, &["`-` names no file"]);
+    // Nothing to hand over: nothing is written.
+    let run = folder.line("card no.csv none.csv --viscosity 1mPa.s -o b.json --modelica b.mo");
+    assert_eq!((run.status, folder.names()), (3, vec!["a.csv".to_owned()]));
     folder
         .line("card a.csv --viscosity 1mPa.s -o b.json --modelica b.json")
         .assert_error(2, &["two outputs"]);

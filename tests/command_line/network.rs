@@ -244,7 +244,19 @@ fn the_temperature_of_the_net_moves_resistances_by_the_law_of_the_card() {
 }
 
 /// What is changed to what, the place of the error, and words of it.
-const WRONG: [[&str; 4]; 16] = [
+const WRONG: [[&str; 4]; 18] = [
+    [
+        "\"10 mm\"",
+        "\"1e300 m\"",
+        "net.toml:21:10",
+        "beyond 1000 km",
+    ],
+    [
+        "\"20 kPa\"",
+        "\"1e300 Pa\"",
+        "net.toml:10:12",
+        "beyond 100 GPa",
+    ],
     [
         "name = \"outlet\"",
         "name = \"middle\"",
@@ -362,6 +374,11 @@ fn cards_of_another_version_fluid_or_form_are_refused() {
         ("\"name\": \"water\"", "\"name\": \"oil\"", "is for water"),
         ("\"schema\"", "schema", "own.json:2:"),
         ("Pa s/m^4", "Pa s/m^3", "must be `Pa s/m^4`"),
+        (
+            "\"u\": ",
+            "\"u\": 1e300, \"was\": ",
+            "larger than the value",
+        ),
     ] {
         assert!(text.contains(from), "{from}");
         let run = with_card(&text.replacen(from, to, 1)).line("network net.toml");

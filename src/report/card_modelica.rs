@@ -371,6 +371,7 @@ mod tests {
             "wafer 7",
             "wafer_7",
             "model",
+            "exp",
             "7up",
             "\u{b5}",
             "",

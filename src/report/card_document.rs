@@ -1,6 +1,6 @@
 //! The one document behind every output of `card`.
 
-use super::document::{PRESSURE_ADVICE, PRESSURE_CAUTION, ReachRecord, SourceRecord};
+use super::document::{ReachRecord, SourceRecord, pressure_caution};
 use crate::flow::{Fluid, SectionFlow};
 use crate::study::SectionCard;
 use crate::warning::{Code, Warning};
@@ -54,18 +54,16 @@ impl CardRecord<'_> {
             .chain(self.warnings)
             .cloned()
             .collect();
-        let caution = |message: &str, advice: &str| Warning {
+        all.push(Warning {
             code: Code::Caution,
-            message: message.to_owned(),
-            advice: advice.to_owned(),
+            message: "The card holds for a rigid section: channels in soft elastomers widen under pressure, and \
+                      their resistance then falls with it."
+                .to_owned(),
+            advice: "For soft walls measure the section under pressure, or the resistance at the pressure of use."
+                .to_owned(),
             numbers: Vec::new(),
-        };
-        all.push(caution(
-            "The card holds for a rigid section: channels in soft elastomers widen under pressure, and their \
-             resistance then falls with it.",
-            "For soft walls measure the section under pressure, or the resistance at the pressure of use.",
-        ));
-        all.push(caution(PRESSURE_CAUTION, PRESSURE_ADVICE));
+        });
+        all.push(pressure_caution());
         all
     }
 

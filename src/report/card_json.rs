@@ -123,11 +123,7 @@ impl<'a> Card<'a> {
                 .map(|one| (one.name, Sensitivity::new(one)))
                 .collect(),
             validity: Validity::new(&card.limits, card.temperature_law.as_ref().ok()),
-            warnings: record
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(record.all_warnings()),
             absent_because: absent_parts(record),
         }
     }
@@ -166,8 +162,6 @@ struct Resistance {
     #[serde(flatten)]
     quantity: Quantity,
     #[serde(skip_serializing_if = "Option::is_none")]
-    u: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
     bracket_absent_because: Option<&'static str>,
 }
 
@@ -176,9 +170,9 @@ impl Resistance {
         let r = card.resistance_per_length;
         let u = card.uncertainty.as_ref();
         Self {
-            quantity: Quantity::estimate(r, "Pa s/m^4").between(card.proven),
-            u: u.map(|u| u.of_log_resistance * r.value)
-                .filter(|u| u.is_finite()),
+            quantity: Quantity::estimate(r, "Pa s/m^4")
+                .between(card.proven)
+                .with_u(u.map(|u| u.of_log_resistance * r.value)),
             bracket_absent_because: card.proven.is_none().then_some(NO_BRACKET),
         }
     }

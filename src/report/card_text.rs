@@ -5,7 +5,7 @@ use std::fmt::Write as _;
 use super::card_document::{CardDocument, CardRecord};
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::table::{Align, Table, paragraph};
-use super::text::{TextOptions, part, title, warnings};
+use super::text::{TextOptions, finished, part, title, warnings};
 use crate::flow::PERCENTILES;
 use crate::study::{Stated, UncertaintyPart};
 
@@ -29,12 +29,7 @@ pub fn card_text(document: &CardDocument<'_>, options: TextOptions) -> String {
         }
         parts.push(text);
     }
-    let text = parts.join("\n");
-    if options.ascii {
-        numbers::to_ascii(&text)
-    } else {
-        text
-    }
+    finished(&parts, options)
 }
 
 /// One line a card.

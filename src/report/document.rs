@@ -73,12 +73,22 @@ pub struct Scale {
 }
 
 /// The caution printed wherever a pressure appears.
-pub(super) const PRESSURE_CAUTION: &str = "A resistance is not a pressure rating: bonded chips and fittings can burst. \
+const PRESSURE_CAUTION: &str = "A resistance is not a pressure rating: bonded chips and fittings can burst. \
 The results hold for fully developed laminar flow in a rigid section.";
 
 /// What to do about [`PRESSURE_CAUTION`].
-pub(super) const PRESSURE_ADVICE: &str = "They do not replace proof testing, local codes, the device maker's limits \
+const PRESSURE_ADVICE: &str = "They do not replace proof testing, local codes, the device maker's limits \
 or the judgement of a qualified person.";
+
+/// The caution wherever a pressure or a resistance is handed over.
+pub(super) fn pressure_caution() -> Warning {
+    Warning {
+        code: Code::Caution,
+        message: PRESSURE_CAUTION.to_owned(),
+        advice: PRESSURE_ADVICE.to_owned(),
+        numbers: Vec::new(),
+    }
+}
 
 impl<'a> SolveDocument<'a> {
     /// A document with a solved section and nothing else.
@@ -175,12 +185,7 @@ impl<'a> SolveDocument<'a> {
             .collect();
         let cautioned = all.iter().any(|w| w.code == Code::Caution);
         if self.operating_point.is_some() && !cautioned {
-            all.push(Warning {
-                code: Code::Caution,
-                message: PRESSURE_CAUTION.to_owned(),
-                advice: PRESSURE_ADVICE.to_owned(),
-                numbers: Vec::new(),
-            });
+            all.push(pressure_caution());
         }
         all
     }

@@ -136,11 +136,7 @@ impl<'a> Root<'a> {
                 .iter()
                 .map(AlternativeView::new)
                 .collect(),
-            warnings: document
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(document.all_warnings()),
             absent_because: absent_parts(document),
         }
     }
@@ -428,6 +424,10 @@ pub(super) struct WarningView {
 }
 
 impl WarningView {
+    pub(super) fn all(warnings: Vec<Warning>) -> Vec<Self> {
+        warnings.into_iter().map(Self::new).collect()
+    }
+
     pub(super) fn new(warning: Warning) -> Self {
         Self {
             code: warning.code.as_str(),

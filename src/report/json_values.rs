@@ -33,6 +33,9 @@ pub(super) struct Quantity {
     pub(super) high: Option<Number>,
     #[serde(skip_serializing_if = "Option::is_none")]
     pub(super) estimated_error: Option<Number>,
+    /// Standard uncertainty.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub(super) u: Option<Number>,
     #[serde(skip_serializing_if = "Option::is_none")]
     pub(super) absent_because: Option<String>,
 }
@@ -64,6 +67,7 @@ impl Quantity {
             low: None,
             high: None,
             estimated_error: None,
+            u: None,
             absent_because: (!value.is_finite())
                 .then(|| "the computed value is not finite".to_owned()),
         }
@@ -77,6 +81,7 @@ impl Quantity {
                 low: None,
                 high: None,
                 estimated_error: None,
+                u: None,
                 absent_because: Some(reason.to_owned()),
             },
             |v| Self::real(v, unit),
@@ -90,6 +95,7 @@ impl Quantity {
             low: None,
             high: None,
             estimated_error: None,
+            u: None,
             absent_because: None,
         }
     }
@@ -98,6 +104,14 @@ impl Quantity {
         Self {
             estimated_error: Some(Number::real(estimate.error)),
             ..Self::real(estimate.value, unit)
+        }
+    }
+
+    /// The same with its standard uncertainty, where one is known.
+    pub(super) fn with_u(self, u: Option<f64>) -> Self {
+        Self {
+            u: u.map(Number::real),
+            ..self
         }
     }
 

@@ -1,6 +1,6 @@
 //! The one document behind every output of `network`.
 
-use super::document::{PRESSURE_ADVICE, PRESSURE_CAUTION, SourceRecord};
+use super::document::{SourceRecord, pressure_caution};
 use super::numbers::{one_line, per_cent};
 use crate::study::{
     NetOutput, Network, NetworkSolution, NetworkUncertainty, NodeCondition, OutputUncertainty,
@@ -78,12 +78,7 @@ impl<'a> NetworkDocument<'a> {
                 });
             }
         }
-        all.push(Warning {
-            code: Code::Caution,
-            message: PRESSURE_CAUTION.to_owned(),
-            advice: PRESSURE_ADVICE.to_owned(),
-            numbers: Vec::new(),
-        });
+        all.push(pressure_caution());
         all
     }
 

@@ -7,7 +7,7 @@ use std::collections::BTreeMap;
 use serde::Serialize;
 
 use super::json::{Source, WarningView};
-use super::json_values::{Number, Quantity, pretty};
+use super::json_values::{Quantity, pretty};
 use super::network_document::{NetworkDocument, condition_word, direction_word};
 use crate::study::{
     BeyondLimit, CardExtent, NetOutput, NetworkUncertainty, NodeCondition, OutputUncertainty,
@@ -95,32 +95,15 @@ impl<'a> Root<'a> {
                 .uncertainty
                 .map(|found| UncertaintyView::new(document, found)),
             notes: document.notes(),
-            warnings: document
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(document.all_warnings()),
             absent_because,
         }
     }
 }
 
-/// A quantity with its standard uncertainty.
-#[derive(Serialize)]
-struct Uncertain {
-    #[serde(flatten)]
-    quantity: Quantity,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    u: Option<Number>,
-}
-
-impl Uncertain {
-    fn new(quantity: Quantity, found: Option<&OutputUncertainty>) -> Self {
-        Self {
-            quantity,
-            u: found.map(|one| Number::real(one.u)),
-        }
-    }
+/// A quantity with the standard uncertainty that was found for it.
+fn uncertain(quantity: Quantity, found: Option<&OutputUncertainty>) -> Quantity {
+    quantity.with_u(found.map(|one| one.u))
 }
 
 #[derive(Serialize)]
@@ -160,7 +143,7 @@ impl<'a> CardView<'a> {
 #[derive(Serialize)]
 struct Equivalent<'a> {
     between: [&'a str; 2],
-    resistance: Uncertain,
+    resistance: Quantity,
     #[serde(skip_serializing_if = "Option::is_none")]
     bracket_absent_because: Option<&'static str>,
 }
@@ -173,7 +156,7 @@ impl<'a> Equivalent<'a> {
         let none = "a card has no proven range";
         Some(Self {
             between: found.between.map(|node| nodes[node].name.as_str()),
-            resistance: Uncertain::new(quantity, document.of(NetOutput::Resistance)),
+            resistance: uncertain(quantity, document.of(NetOutput::Resistance)),
             bracket_absent_because: found.proven.is_none().then_some(none),
         })
     }
@@ -192,8 +175,8 @@ struct Balance<'a> {
 struct NodeView<'a> {
     name: &'a str,
     given: &'static str,
-    pressure: Uncertain,
-    inflow: Uncertain,
+    pressure: Quantity,
+    inflow: Quantity,
     imbalance: Quantity,
 }
 
@@ -212,8 +195,8 @@ impl<'a> NodeView<'a> {
         Self {
             name: &node.name,
             given: condition_word(node.condition),
-            pressure: Uncertain::new(Quantity::real(state.pressure, "Pa"), of_pressure),
-            inflow: Uncertain::new(Quantity::real(state.inflow, "m^3/s"), of_inflow),
+            pressure: uncertain(Quantity::real(state.pressure, "Pa"), of_pressure),
+            inflow: uncertain(Quantity::real(state.inflow, "m^3/s"), of_inflow),
             imbalance: Quantity::real(state.imbalance, "m^3/s"),
         }
     }
@@ -227,7 +210,7 @@ struct ChannelView<'a> {
     card: &'a str,
     parallel: Quantity,
     length: Quantity,
-    flow: Uncertain,
+    flow: Quantity,
     direction: &'static str,
     pressure_drop: Quantity,
     resistance: Quantity,
@@ -264,7 +247,7 @@ impl<'a> ChannelView<'a> {
             card: &card.name,
             parallel: Quantity::count(channel.parallel as usize),
             length: Quantity::optional(channel.length.or(card.length), "m", no_length),
-            flow: Uncertain::new(Quantity::real(state.flow, "m^3/s"), found),
+            flow: uncertain(Quantity::real(state.flow, "m^3/s"), found),
             direction: direction_word(state.flow),
             pressure_drop: Quantity::real(state.pressure_drop, "Pa"),
             resistance: Quantity::real(state.resistance, "Pa s/m^3").between(state.proven),
@@ -326,7 +309,7 @@ impl UncertaintyView {
 struct OutputView {
     kind: &'static str,
     name: String,
-    result: Uncertain,
+    result: Quantity,
     common_share: Quantity,
     sampled: Option<SampledView>,
     #[serde(skip_serializing_if = "Option::is_none")]
@@ -353,7 +336,7 @@ impl OutputView {
         Self {
             kind,
             name,
-            result: Uncertain::new(Quantity::real(one.value, unit), Some(one)),
+            result: uncertain(Quantity::real(one.value, unit), Some(one)),
             common_share: Quantity::real(one.common_share, "1"),
             sampled: one.sampled.map(|sampled| SampledView {
                 mean: Quantity::real(sampled.mean, unit),

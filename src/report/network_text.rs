@@ -5,7 +5,7 @@ use std::fmt::Write as _;
 use super::network_document::{NetworkDocument, condition_word, is_moved};
 use super::numbers::{self, one_line, per_cent, significant, title, with_unit};
 use super::table::{Align, Table, paragraph};
-use super::text::{TextOptions, part, warnings};
+use super::text::{TextOptions, finished, part, warnings};
 use crate::study::{BeyondLimit, NetOutput, NetworkUncertainty, OutputUncertainty};
 
 /// Rows of a table that are shown without `--verbose`.
@@ -42,12 +42,7 @@ pub fn network_text(document: &NetworkDocument<'_>, options: TextOptions) -> Str
         parts.push(format!("Notes\n{notes}"));
     }
     parts.extend(warnings(&document.all_warnings()));
-    let text = parts.join("\n");
-    if options.ascii {
-        numbers::to_ascii(&text)
-    } else {
-        text
-    }
+    finished(&parts, options)
 }
 
 fn head(document: &NetworkDocument<'_>) -> String {

@@ -6,7 +6,7 @@ use serde::Serialize;
 
 use super::card_json::{CARD_SCHEMA, Law};
 use super::json::{FluidView, Source, WarningView};
-use super::json_values::{Number, Quantity, pretty};
+use super::json_values::{Quantity, pretty};
 use super::route_document::RouteDocument;
 use crate::flow::{Fluid, NOT_LAMINAR};
 
@@ -54,7 +54,7 @@ struct RouteCard<'a> {
     settings: BTreeMap<&'static str, &'a str>,
     fluid: FluidView<'a>,
     length: Quantity,
-    resistance: WithUncertainty,
+    resistance: Quantity,
     inertance: Quantity,
     volume: Quantity,
     wall_area: Quantity,
@@ -65,15 +65,6 @@ struct RouteCard<'a> {
     validity: Validity,
     warnings: Vec<WarningView>,
     absent_because: BTreeMap<&'static str, &'static str>,
-}
-
-/// A quantity with its standard uncertainty.
-#[derive(Serialize)]
-struct WithUncertainty {
-    #[serde(flatten)]
-    quantity: Quantity,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    u: Option<Number>,
 }
 
 #[derive(Serialize)]
@@ -115,7 +106,7 @@ impl<'a> RouteCard<'a> {
             )
             .between(document.resistance_bounds());
         let value = fluid.viscosity * route.integral.value;
-        let spread = document.spread.map(|s| Number::real(s.linear * value));
+        let spread = document.spread.map(|s| s.linear * value);
         let mut absent_because = BTreeMap::new();
         if document.temperature_law.is_none() {
             absent_because.insert("temperature_law", NO_TEMPERATURE);
@@ -144,10 +135,7 @@ impl<'a> RouteCard<'a> {
                 .collect(),
             fluid: FluidView::new(fluid),
             length: Quantity::real(route.length(), "m"),
-            resistance: WithUncertainty {
-                quantity: resistance,
-                u: spread,
-            },
+            resistance: resistance.with_u(spread),
             inertance: of_density(route.inertance(), "kg/m^4"),
             volume: Quantity::real(route.volume(), "m^3"),
             wall_area: Quantity::real(route.wall_area(), "m^2"),
@@ -160,11 +148,7 @@ impl<'a> RouteCard<'a> {
             wall_shear_per_flow_rate: shear(document, fluid),
             log_resistance_sensitivity: Sensitivity::of_route(),
             validity: validity(document, fluid),
-            warnings: document
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(document.all_warnings()),
             absent_because,
         }
     }

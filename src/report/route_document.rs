@@ -1,6 +1,6 @@
 //! The one document behind every output of `route`.
 
-use super::document::{PRESSURE_ADVICE, PRESSURE_CAUTION, SourceRecord};
+use super::document::{SourceRecord, pressure_caution};
 use super::numbers;
 use crate::flow::{Fluid, TemperatureLaw};
 use crate::measured::Estimate;
@@ -93,12 +93,7 @@ impl RouteDocument<'_> {
         }
         let has_caution = all.iter().any(|w| w.code == Code::Caution);
         if !self.operations.is_empty() && !has_caution {
-            all.push(Warning {
-                code: Code::Caution,
-                message: PRESSURE_CAUTION.to_owned(),
-                advice: PRESSURE_ADVICE.to_owned(),
-                numbers: Vec::new(),
-            });
+            all.push(pressure_caution());
         }
         all
     }

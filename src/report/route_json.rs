@@ -122,11 +122,7 @@ impl<'a> Root<'a> {
             segments: (0..route.segments.len())
                 .filter_map(|index| SegmentView::new(document, index))
                 .collect(),
-            warnings: document
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(document.all_warnings()),
             absent_because,
         }
     }

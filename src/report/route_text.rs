@@ -3,7 +3,7 @@
 use super::numbers::{self, MBAR_MIN_PER_UL, per_cent, significant, with_unit};
 use super::route_document::RouteDocument;
 use super::table::{Align, Table, paragraph};
-use super::text::{TextOptions, counted, part, title, value_table, warnings};
+use super::text::{TextOptions, counted, finished, part, title, value_table, warnings};
 use crate::measured::Estimate;
 use crate::study::{LawOfK, RouteOperation, UsedRule};
 
@@ -24,12 +24,7 @@ pub fn route_text(document: &RouteDocument<'_>, options: TextOptions) -> String 
     parts.push(split(document));
     parts.push(stations(document, options.verbose));
     parts.extend(warnings(&document.all_warnings()));
-    let text = parts.join("\n");
-    if options.ascii {
-        numbers::to_ascii(&text)
-    } else {
-        text
-    }
+    finished(&parts, options)
 }
 
 fn row(table: &mut Table, what: &str, value: String, also: String) {

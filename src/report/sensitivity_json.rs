@@ -83,11 +83,7 @@ impl<'a> Root<'a> {
                 cells_across: Quantity::real(cells, "1"),
                 conductance: Quantity::real(k, "m^4"),
             }),
-            warnings: document
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(document.all_warnings()),
             absent_because,
         }
     }

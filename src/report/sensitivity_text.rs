@@ -5,7 +5,7 @@ use std::fmt::Write as _;
 use super::numbers::{self, per_cent, significant, with_unit};
 use super::sensitivity_document::{SensitivityDocument, Step};
 use super::table::{Align, Table, paragraph};
-use super::text::{TextOptions, part, title, warnings};
+use super::text::{TextOptions, finished, part, title, warnings};
 use crate::study::{Check, FirstOrderRange, SECOND_ORDER_SHARE, Sensitivity};
 
 /// The document as text, ended by a line feed.
@@ -21,12 +21,7 @@ pub fn sensitivity_text(document: &SensitivityDocument<'_>, options: TextOptions
         parts.push(second_order(document));
     }
     parts.extend(warnings(&document.all_warnings()));
-    let text = parts.join("\n");
-    if options.ascii {
-        numbers::to_ascii(&text)
-    } else {
-        text
-    }
+    finished(&parts, options)
 }
 
 fn conductance(document: &SensitivityDocument<'_>) -> String {

@@ -48,6 +48,11 @@ pub fn to_text(document: &SolveDocument<'_>, options: TextOptions) -> String {
     parts.push(identities(flow, options.verbose));
     parts.push(evidence(flow, options.verbose));
     parts.extend(warnings(&document.all_warnings()));
+    finished(&parts, options)
+}
+
+/// The parts of a text view, a blank line between them, in the characters asked for.
+pub(super) fn finished(parts: &[String], options: TextOptions) -> String {
     let text = parts.join("\n");
     if options.ascii {
         numbers::to_ascii(&text)

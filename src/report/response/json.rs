@@ -87,11 +87,7 @@ impl<'a> Root<'a> {
                     "1",
                 ),
             },
-            warnings: document
-                .all_warnings()
-                .into_iter()
-                .map(WarningView::new)
-                .collect(),
+            warnings: WarningView::all(document.all_warnings()),
             absent_because,
         }
     }

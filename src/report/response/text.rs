@@ -2,9 +2,9 @@
 
 use super::document::{ResponseDocument, ShownUnit};
 use super::formula::{POLYNOMIALS, factors, scaled_text};
-use crate::report::numbers::{self, one_line, per_cent, significant};
+use crate::report::numbers::{one_line, per_cent, significant};
 use crate::report::table::{Align, Table, paragraph};
-use crate::report::text::{TextOptions, counted, part, title, warnings};
+use crate::report::text::{TextOptions, counted, finished, part, title, warnings};
 use crate::study::{NUMERICAL_SHARE, ParameterScale, ResponseParameter, TrendCheck};
 
 /// Most points along each parameter in the text, by the number of parameters.
@@ -22,12 +22,7 @@ pub fn response_text(document: &ResponseDocument<'_>, options: TextOptions) -> S
         points(document, &units, options.verbose),
     ];
     parts.extend(warnings(&document.all_warnings()));
-    let text = parts.join("\n");
-    if options.ascii {
-        numbers::to_ascii(&text)
-    } else {
-        text
-    }
+    finished(&parts, options)
 }
 
 fn ranges(document: &ResponseDocument<'_>, units: &[ShownUnit]) -> String {

@@ -16,20 +16,25 @@ pub enum CsvLocale {
 }
 
 /// Heads of columns that hold text, whatever it looks like.
-const TEXT_HEADS: [&str; 22] = [
+const TEXT_HEADS: [&str; 27] = [
     "absent_because",
+    "beyond_limits",
     "branch",
     "card",
     "case",
     "change_unit",
     "channel",
+    "direction",
     "film_on",
     "fluid",
     "from",
+    "given",
+    "interpolation_to_next",
     "kind",
     "name",
     "node",
     "reason",
+    "route",
     "section",
     "segment",
     "source_kind",
@@ -94,5 +99,19 @@ impl CsvLocale {
         let bytes = writer.into_inner().map_err(|e| unfinished(e.to_string()))?;
         let text = String::from_utf8(bytes).map_err(|e| unfinished(e.to_string()))?;
         Ok(format!("\u{feff}{text}"))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn names_that_look_like_numbers_keep_their_point() {
+        for head in ["route", "segment", "channel", "node", "section", "name"] {
+            let table = format!("{head},length_m\r\n1.5,1.5\r\n");
+            let found = CsvLocale::Eu.apply(&table).unwrap();
+            assert_eq!(found, format!("\u{feff}{head};length_m\r\n1.5;1,5\r\n"));
+        }
     }
 }

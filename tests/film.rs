@@ -8,9 +8,11 @@
 
 use std::f64::consts::{FRAC_PI_2, PI, TAU};
 
+use etchwise::flow::{Goal, SolveOptions, solve_outline};
 use etchwise::geometry::{
     Film, FilmError, FilmOn, Filmed, Loop, Lumen, Outline, Point, SegmentTree,
 };
+use etchwise::warning::Code;
 use proptest::prelude::*;
 
 fn film(outline: &Outline, thickness: f64) -> Filmed {
@@ -382,7 +384,15 @@ fn a_tiny_pocket_is_left_out_and_bounded() {
         [4.995, 4.0],
         [0.0, 4.0],
     ];
-    let filmed = film(&Outline::single(pocket), 0.006);
+    let section = Outline::single(pocket);
+    let all = Film {
+        thickness: 0.006,
+        on: FilmOn::All,
+    };
+    let kept = all.applied_within(&section, 1e-13).unwrap();
+    assert_eq!(kept.report.lumens, [1, 2]);
+    assert_eq!(kept.report.lumens_left_out, 0);
+    let filmed = film(&section, 0.006);
     assert_eq!(filmed.report.lumens, [1, 1]);
     assert_eq!(filmed.report.lumens_left_out, 1);
     // Up to two arcs about the corners of the neck.
@@ -391,6 +401,33 @@ fn a_tiny_pocket_is_left_out_and_bounded() {
     let area = 0.008 * 0.014 - 2.0 * (under(0.005) - under(0.001));
     assert!(off(filmed.report.area_left_out, area) < 1e-3);
     assert!(off(filmed.report.conductance_left_out, area * area / (8.0 * PI)) < 2e-3);
+}
+
+#[test]
+fn what_is_left_out_counts_against_the_tolerance() {
+    let square = Outline::single(rectangle(0.0, 0.0, 1e-4, 1e-4));
+    let options = SolveOptions {
+        goal: Goal::Proven(5e-3),
+        memory_limit: 3e6,
+        ..SolveOptions::default()
+    };
+    let whole = solve_outline(&square, &options).unwrap().flow;
+    assert!(whole.accuracy.is_met);
+    // A hundredth of K might be missing: no grid can prove K to half of that.
+    let left_out = 0.01 * whole.conductance.value;
+    let options = SolveOptions {
+        conductance_left_out: left_out,
+        ..options
+    };
+    let flow = solve_outline(&square, &options).unwrap().flow;
+    assert!(!flow.accuracy.is_met);
+    let proven = flow.bracket.unwrap();
+    assert!(proven.high - proven.low > left_out && proven.low < whole.conductance.value);
+    assert!(
+        flow.warnings
+            .iter()
+            .any(|w| w.code == Code::AccuracyNotReached)
+    );
 }
 
 #[test]

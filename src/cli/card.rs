@@ -159,7 +159,7 @@ impl Request {
     /// Reads and solves one section.
     fn made(&self, file: &Path) -> Result<Made, Failure> {
         let checked = checked_section(file, &self.read)?;
-        let sections = Sections::new(&checked, self.film.as_ref())?;
+        let sections = Sections::new(&checked, self.film.as_ref(), self.solve.goal.asked())?;
         let solved = sections.solve_for_walls(&self.solve)?;
         let reach = sections.reach(&solved.flow, &self.solve)?;
         // Named stretches are places on the wall without the film.

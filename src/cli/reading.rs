@@ -309,7 +309,7 @@ impl Solved {
     /// Solves the section, the two of its reach, and the other assumptions.
     fn add_conductance(&mut self) -> Result<(), Failure> {
         let options = SolveOptions::default();
-        let sections = Sections::new(&self.checked, None)?;
+        let sections = Sections::new(&self.checked, None, options.goal.asked())?;
         let flow = sections.solve(&options)?.flow;
         let reach = sections.reach(&flow, &options)?;
         let within = reach.and_then(|reach| Some([reach.low()?, reach.high()?]));

@@ -5,7 +5,7 @@ use clap::ArgMatches;
 
 use crate::flow::{SectionFlow, SolveOptions, SolvedSection, solve_outline};
 use crate::geometry::curves::CHORD_TOLERANCE;
-use crate::geometry::{Film, FilmOn, FilmReport, Filmed, Outline};
+use crate::geometry::{Film, FilmOn, FilmReport, Filmed, NEGLIGIBLE_LUMENS, Outline};
 use crate::intake::Section;
 use crate::report::AlternativeRecord;
 use crate::study::{Reach, ReachSides, solve_for_sensitivity, under_assumption};
@@ -14,6 +14,9 @@ use crate::units;
 use super::failure::Failure;
 use super::input::{CheckedSection, refuse_problems};
 use super::quantities::{positive, quantity};
+
+/// Share of the tolerance that lumens left out under a film may take.
+const LEFT_OUT_OF_TOLERANCE: f64 = 0.05;
 
 /// What is to be solved.
 pub(super) struct Sections {
@@ -44,7 +47,13 @@ pub(super) fn film(matches: &ArgMatches) -> Result<Option<Film>, Failure> {
 
 impl Sections {
     /// Checks the reach and applies the film to all sections.
-    pub(super) fn new(checked: &CheckedSection, film: Option<&Film>) -> Result<Self, Failure> {
+    ///
+    /// - `tolerance`: of the conductance; what the film may leave out stays far below
+    pub(super) fn new(
+        checked: &CheckedSection,
+        film: Option<&Film>,
+        tolerance: f64,
+    ) -> Result<Self, Failure> {
         let mut sections = Self {
             outline: checked.outline.clone(),
             film: None,
@@ -54,10 +63,11 @@ impl Sections {
         let Some(film) = film else {
             return Ok(sections);
         };
+        let negligible = NEGLIGIBLE_LUMENS.min(LEFT_OUT_OF_TOLERANCE * tolerance);
         if let Some(sides) = &mut sections.reach {
-            sides.put_under(film, &checked.outline)?;
+            sides.put_under(film, &checked.outline, negligible)?;
         }
-        let Filmed { outline, report } = film.applied_to(&checked.outline)?;
+        let Filmed { outline, report } = film.applied_within(&checked.outline, negligible)?;
         sections.outline = outline;
         sections.film = Some(report);
         sections.prove_reach().map_err(|failure| {
@@ -100,21 +110,21 @@ impl Sections {
 
     /// Solves the section; its proven high value also holds for the lumens that the film left out.
     pub(super) fn solve(&self, options: &SolveOptions) -> Result<SolvedSection, Failure> {
-        Ok(self.with_left_out(solve_outline(&self.outline, options)?))
+        Ok(solve_outline(&self.outline, &self.with_left_out(options))?)
     }
 
     /// The same on a grid fine enough for integrals over the wall.
     pub(super) fn solve_for_walls(&self, options: &SolveOptions) -> Result<SolvedSection, Failure> {
-        Ok(self.with_left_out(solve_for_sensitivity(&self.outline, options)?))
+        let options = self.with_left_out(options);
+        Ok(solve_for_sensitivity(&self.outline, &options)?)
     }
 
-    /// Adds what the film left out to the proven high value.
-    fn with_left_out(&self, mut solved: SolvedSection) -> SolvedSection {
-        let left_out = self.film.as_ref().map_or(0.0, |f| f.conductance_left_out);
-        if let Ok(bracket) = &mut solved.flow.bracket {
-            bracket.high += left_out;
+    /// With what the film left out, for the proven high value.
+    fn with_left_out(&self, options: &SolveOptions) -> SolveOptions {
+        SolveOptions {
+            conductance_left_out: self.film.as_ref().map_or(0.0, |f| f.conductance_left_out),
+            ..*options
         }
-        solved
     }
 
     /// Solves the inner and outer section, where they are given.
@@ -142,13 +152,20 @@ impl Sides {
 
     /// Puts both under a film, the inner one a little thicker, the outer one a little thinner than the
     /// section's: by more than the chords of round new walls, which then cannot cross.
-    fn put_under(&mut self, film: &Film, section: &Outline) -> Result<(), Failure> {
+    fn put_under(
+        &mut self,
+        film: &Film,
+        section: &Outline,
+        negligible: f64,
+    ) -> Result<(), Failure> {
         let (low, high) = section.bounds().unwrap_or_default();
         let side = (high[0] - low[0]).min(high[1] - low[1]);
         let margin = (4.0 * CHORD_TOLERANCE * side).min(0.2 * film.thickness);
         let under = |outline: &Option<Outline>, thickness: f64, word: &str| {
             let film = Film { thickness, ..*film };
-            let filmed = outline.as_ref().map(|o| film.applied_to(o)).transpose();
+            let outline = outline.as_ref();
+            let filmed = outline.map(|o| film.applied_within(o, negligible));
+            let filmed = filmed.transpose();
             filmed.map_err(|error| Failure::from(error).of(&format!("reach, {word} section")))
         };
         let inner = under(&self.inner, film.thickness + margin, "inner")?;

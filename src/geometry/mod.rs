@@ -18,7 +18,7 @@ mod wall_edges;
 
 pub use containment::{Escape, EscapeKind};
 pub use corners::{Corner, corners};
-pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed};
+pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed, NEGLIGIBLE_LUMENS};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use named_wall::{
     DIRECTION_NAMES, FARTHEST, NamedWall, NamedWallError, WallStretch, wall_stretches,

@@ -148,15 +148,22 @@ impl Reach {
         sides.prove_around(section)?;
         let solved = |outline: Option<&Outline>, side: ReachSide| match outline {
             None => Ok(ReachBound::new(flow, false)),
-            Some(outline) => solve_outline(outline, options)
-                .map(|solved| ReachBound::new(&solved.flow, true))
-                .map_err(|error| ReachError::Flow { side, error }),
+            Some(outline) => {
+                let conductance_left_out = match side {
+                    ReachSide::Inner => 0.0,
+                    ReachSide::Outer => sides.conductance_left_out,
+                };
+                let options = SolveOptions {
+                    conductance_left_out,
+                    ..*options
+                };
+                solve_outline(outline, &options)
+                    .map(|solved| ReachBound::new(&solved.flow, true))
+                    .map_err(|error| ReachError::Flow { side, error })
+            }
         };
         let inner = solved(sides.inner, ReachSide::Inner)?;
-        let mut outer = solved(sides.outer, ReachSide::Outer)?;
-        if let (true, Ok(bracket)) = (outer.is_given, &mut outer.bracket) {
-            bracket.high += sides.conductance_left_out;
-        }
+        let outer = solved(sides.outer, ReachSide::Outer)?;
         Ok(Self { inner, outer })
     }
 

@@ -40,8 +40,8 @@ const JOINT: f64 = 1e-9;
 const FIRST_LOOK: f64 = 1e-4;
 /// Loops with a smaller share of the area of the section are rounding, not fluid.
 const SLIVER: f64 = 1e-12;
-/// Share of the conductance that lumens left out may have at most.
-const NEGLIGIBLE: f64 = 1e-6;
+/// Share of the conductance that lumens left out may have at most, unless another is asked for.
+pub const NEGLIGIBLE_LUMENS: f64 = 1e-6;
 
 /// Which walls carry the film.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -207,6 +207,16 @@ impl Film {
     /// # Ok::<(), etchwise::geometry::FilmError>(())
     /// ```
     pub fn applied_to(&self, outline: &Outline) -> Result<Filmed, FilmError> {
+        self.applied_within(outline, NEGLIGIBLE_LUMENS)
+    }
+
+    /// As [`Film::applied_to`], with another limit for what is left out.
+    ///
+    /// - `negligible`: share of the conductance that lumens left out may have at most together
+    ///
+    /// # Errors
+    /// As [`Film::applied_to`].
+    pub fn applied_within(&self, outline: &Outline, negligible: f64) -> Result<Filmed, FilmError> {
         let thickness = self.thickness;
         if !(thickness.is_finite() && thickness > 0.0) {
             return Err(FilmError::NotPositive { thickness });
@@ -231,7 +241,7 @@ impl Film {
         for (attempt, nudge) in NUDGES.into_iter().enumerate() {
             let mut used = *self;
             used.thickness *= 1.0 + nudge;
-            match used.attempt(&outline, &walls, attempt == 0) {
+            match used.attempt(&outline, &walls, negligible, attempt == 0) {
                 Ok(mut filmed) => {
                     filmed.report.film = *self;
                     return Ok(filmed);
@@ -246,7 +256,13 @@ impl Film {
         })
     }
 
-    fn attempt(&self, outline: &Outline, walls: &Walls, blends: bool) -> Result<Filmed, Trouble> {
+    fn attempt(
+        &self,
+        outline: &Outline,
+        walls: &Walls,
+        negligible: f64,
+        blends: bool,
+    ) -> Result<Filmed, Trouble> {
         let is_everywhere = self.on == FilmOn::All;
         let reach = self.thickness * walls.scale;
         let surface = if is_everywhere {
@@ -259,19 +275,16 @@ impl Film {
         let chains = chains(&parts, joint).map_err(|_| Trouble::Check("its walls do not close"))?;
         let polygons = polygons(&parts, &chains, blends, joint)?;
         let most = outline.area() * walls.scale * walls.scale;
-        let count = polygons.len();
-        let loops: Vec<Vec<Point>> = polygons
+        let (loops, slivers): (Vec<_>, Vec<_>) = polygons
             .into_iter()
-            .filter(|points| points.len() >= 3 && area(points).abs() > SLIVER * most)
-            .collect();
-        let slivers = count - loops.len();
+            .partition(|points| points.len() >= 3 && area(points).abs() > SLIVER * most);
         if loops.is_empty() {
             return Err(self.nothing_left(outline));
         }
         self.check_vertices(walls, &surface, &loops)?;
-        let nested = nested(loops, walls)?;
+        let nested = nested(loops, walls)?.without_negligible(negligible);
         let mut filmed = self.reported(outline, walls, nested)?;
-        filmed.report.lumens_left_out += slivers;
+        filmed.report.add_slivers(&slivers, walls.scale);
         check_area(outline, &filmed, &surface, walls)?;
         Ok(filmed)
     }
@@ -314,9 +327,15 @@ impl Film {
         Ok(())
     }
 
-    /// Leaves out what is negligible and counts.
-    fn reported(&self, before: &Outline, walls: &Walls, nested: Nested) -> Result<Filmed, Trouble> {
-        let (nested, left_out) = nested.without_negligible();
+    /// The section and what became of it.
+    ///
+    /// - `nested`, `left_out`: lumens that remain, and those too small to matter
+    fn reported(
+        &self,
+        before: &Outline,
+        walls: &Walls,
+        (nested, left_out): (Nested, Nested),
+    ) -> Result<Filmed, Trouble> {
         let count = before.lumens.len();
         let mut remaining = vec![0_usize; count];
         for &lumen in nested.from.iter().chain(&left_out.from) {
@@ -356,6 +375,18 @@ impl Film {
             vertices: outline.loops().map(|l| l.points.len()).sum(),
         };
         Ok(Filmed { outline, report })
+    }
+}
+
+impl FilmReport {
+    /// Counts lumens that are hardly more than rounding; what they conduct at most counts all the same.
+    fn add_slivers(&mut self, slivers: &[Vec<Point>], scale: f64) {
+        let areas = slivers.iter().map(|points| area(points) / (scale * scale));
+        for lumen in areas.filter(|a| *a > 0.0) {
+            self.lumens_left_out += 1;
+            self.area_left_out += lumen;
+            self.conductance_left_out += saint_venant(lumen);
+        }
     }
 }
 
@@ -485,7 +516,7 @@ impl Nested {
     }
 
     /// Splits off the smallest lumens that together cannot matter.
-    fn without_negligible(self) -> (Self, Self) {
+    fn without_negligible(self, negligible: f64) -> (Self, Self) {
         let areas = self.areas();
         let mut order: Vec<usize> = (0..areas.len()).collect();
         order.sort_by(|&a, &b| areas[a].total_cmp(&areas[b]));
@@ -502,7 +533,7 @@ impl Nested {
                 largest_inscribed_circle(&lumen).map_or(0.0, |circle| circle.radius)
             };
             // A circle inside has no more conductance than the lumen: pi r^4 / 8.
-            let allowed = NEGLIGIBLE * std::f64::consts::PI * radius.powi(4) / 8.0;
+            let allowed = negligible * std::f64::consts::PI * radius.powi(4) / 8.0;
             let mut sum = 0.0;
             for &index in smaller {
                 sum += saint_venant(areas[index]);

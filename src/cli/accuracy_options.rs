@@ -100,7 +100,7 @@ fn checked(tolerance: f64) -> Result<f64, Failure> {
         return Ok(tolerance);
     }
     Err(Failure::usage(
-        format!("--tolerance: {tolerance} is outside {LEAST_TOLERANCE:e} to 1"),
+        format!("--tolerance: {tolerance:e} is outside {LEAST_TOLERANCE:e} to 1"),
         "give a share such as 0.1%, 200ppm or 1e-4",
     ))
 }

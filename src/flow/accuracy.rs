@@ -173,9 +173,22 @@ pub(super) fn refine(
             best = solved;
         }
     }
-    let is_met = goal.is_met(&best.flow);
-    let flow = &mut best.flow;
-    flow.accuracy.goal = Some(goal);
+    judge(&mut best.flow, outline, options, stop, seconds);
+    Ok(best)
+}
+
+/// Says whether the goal is met, what else stopped the search, and what going on would cost.
+///
+/// - `seconds`: what the last grid took, s
+pub(super) fn judge(
+    flow: &mut SectionFlow,
+    outline: &Outline,
+    options: &SolveOptions,
+    stop: Option<Stop>,
+    seconds: f64,
+) {
+    let is_met = options.goal.is_met(flow);
+    flow.accuracy.goal = Some(options.goal);
     flow.accuracy.is_met = is_met;
     flow.accuracy.stop = stop.filter(|_| !is_met);
     flow.accuracy.further = further(outline, flow);
@@ -183,7 +196,6 @@ pub(super) fn refine(
         let warning = not_reached(flow, options, seconds);
         flow.warnings.push(warning);
     }
-    Ok(best)
 }
 
 /// Cells across of the first grid: fewer where memory or time is short.
@@ -195,8 +207,14 @@ fn first_cells(outline: &Outline, diameter: f64, options: &SolveOptions) -> f64 
         let least = HASTY_CELLS_ACROSS / FIRST_CELLS_ACROSS;
         (limit * NODES_PER_SECOND / nodes).sqrt().max(least)
     });
+    let mut cells = FIRST_CELLS_ACROSS * by_memory.min(by_time).min(1.0);
+    // The share of the wall falls more slowly than that of the nodes.
+    while cells > LEAST_CELLS_ACROSS
+        && memory_needed(outline, diameter / cells.floor()) > options.memory_limit
+    {
+        cells *= 0.9;
+    }
     // With what does not even allow the coarsest grid, that one is refused with its figures.
-    let cells = FIRST_CELLS_ACROSS * by_memory.min(by_time).min(1.0);
     cells.floor().max(LEAST_CELLS_ACROSS)
 }
 

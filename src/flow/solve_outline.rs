@@ -8,7 +8,7 @@ use crate::proof::bracket;
 use crate::solve::Field;
 use crate::warning::{Code, Warning};
 
-use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, refine};
+use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, judge, refine};
 use super::assemble::{assemble, finish};
 use super::field::DenseField;
 use super::grid_integrals::GridIntegrals;
@@ -120,6 +120,39 @@ impl SolvedSection {
             seconds: start.elapsed().as_secs_f64(),
         });
         self
+    }
+
+    /// The section on a finer grid, judged by the goal of the search that found this one.
+    ///
+    /// `None` where the grid is foreseen to need more memory or time than `options` allow, and where it does not
+    /// reach the goal though this one does.
+    ///
+    /// - `spent`: time used so far, s
+    pub(crate) fn on_finer_grid(
+        &self,
+        cells_across: f64,
+        options: &SolveOptions,
+        spent: f64,
+    ) -> Option<Self> {
+        let grid = &self.flow.grid;
+        let finer = cells_across / grid.cells_across;
+        let foreseen = self.flow.solver.seconds * finer * finer;
+        if options
+            .time_limit
+            .is_some_and(|limit| spent + foreseen > limit)
+        {
+            return None;
+        }
+        let start = Instant::now();
+        let diameter = grid.inscribed_diameter;
+        let mut solved = solve_at(&self.outline, diameter, cells_across, options).ok()?;
+        if let Some(goal) = self.flow.accuracy.goal {
+            let (stop, seconds) = (self.flow.accuracy.stop, start.elapsed().as_secs_f64());
+            let options = SolveOptions { goal, ..*options };
+            judge(&mut solved.flow, &self.outline, &options, stop, seconds);
+        }
+        let is_worse = self.flow.accuracy.is_met && !solved.flow.accuracy.is_met;
+        (!is_worse).then(|| solved.finished())
     }
 
     /// The outline that was solved, oriented.

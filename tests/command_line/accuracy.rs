@@ -99,6 +99,36 @@ fn a_limit_stops_the_search_with_the_best_range_so_far() {
 }
 
 #[test]
+fn a_little_memory_gives_the_range_of_a_coarse_grid() {
+    let folder = Folder::with("a.csv", ANGLE);
+    for limit in ["300kB", "500kB", "1MB"] {
+        let record = json(
+            &folder,
+            &format!("--max-memory {limit} --tolerance 1e-8"),
+            5,
+        );
+        assert_eq!(record["accuracy"]["stopped_by"], "memory", "{limit}");
+        assert!(number(&record, "/conductance/low") < number(&record, "/conductance/high"));
+    }
+}
+
+#[test]
+fn a_card_that_misses_the_tolerance_says_so() {
+    let folder = Folder::with("a.csv", ANGLE);
+    for limit in ["--max-seconds 0.001", "--max-memory 2MB"] {
+        let run = folder.line(&format!(
+            "card a.csv --fluid water --temperature 25C --tolerance 1e-8 {limit}"
+        ));
+        assert_eq!(run.status, 5, "{limit}: {}{}", run.out, run.err);
+        assert!(
+            run.out.contains("accuracy_not_reached"),
+            "{limit}: {}",
+            run.out
+        );
+    }
+}
+
+#[test]
 fn less_memory_than_the_coarsest_grid_needs_is_an_error_with_figures() {
     let folder = Folder::with("a.csv", ANGLE);
     let run = folder.line("solve a.csv --max-memory 1kB");

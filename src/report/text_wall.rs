@@ -79,7 +79,10 @@ fn definition(report: &WallReport) -> String {
     if report.singular_corners.is_empty() {
         format!("{directions}.")
     } else {
-        format!("{directions}; * touches a re-entrant corner.")
+        format!(
+            "{directions}; * touches a re-entrant corner: the largest value there is a mean beside it, \
+             which percentiles may exceed."
+        )
     }
 }
 

@@ -113,6 +113,15 @@ fn a_little_memory_gives_the_range_of_a_coarse_grid() {
 }
 
 #[test]
+fn beside_a_corner_the_largest_shear_is_said_to_be_a_mean() {
+    let folder = Folder::with("a.csv", ANGLE);
+    let run = folder.line("solve a.csv --cells-across 32");
+    let words: Vec<&str> = run.out.split_whitespace().collect();
+    let text = words.join(" ");
+    assert!(text.contains("which percentiles may exceed"), "{text}");
+}
+
+#[test]
 fn a_card_that_misses_the_tolerance_says_so() {
     let folder = Folder::with("a.csv", ANGLE);
     for limit in ["--max-seconds 0.001", "--max-memory 2MB"] {

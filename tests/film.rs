@@ -404,6 +404,20 @@ fn a_tiny_pocket_is_left_out_and_bounded() {
 }
 
 #[test]
+fn a_film_of_any_thickness_is_told_in_few_digits() {
+    let square = Outline::single(rectangle(0.0, 0.0, 1e-4, 1e-4));
+    for (thickness, told) in [
+        (6e-5, "film is 60 um thick"),
+        (1e300, "film is 1e306 um thick"),
+    ] {
+        let on = FilmOn::All;
+        let error = Film { thickness, on }.applied_to(&square).unwrap_err();
+        assert!(matches!(error, FilmError::Closed { .. }));
+        assert!(error.to_string().contains(told), "{error}");
+    }
+}
+
+#[test]
 fn what_is_left_out_counts_against_the_tolerance() {
     let square = Outline::single(rectangle(0.0, 0.0, 1e-4, 1e-4));
     let options = SolveOptions {

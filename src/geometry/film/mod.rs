@@ -396,10 +396,16 @@ fn largest_radius(outline: &Outline) -> f64 {
     circles.map(|c| c.radius).fold(0.0, f64::max)
 }
 
-/// In micrometres, six digits.
-fn micrometres(metres: f64) -> f64 {
-    let written = format!("{:.5e}", metres * 1e6);
-    written.parse().unwrap_or(f64::NAN)
+/// In micrometres, six digits, with a power of ten where it would be long.
+fn micrometres(metres: f64) -> String {
+    let micro = metres * 1e6;
+    let written = format!("{micro:.5e}");
+    let rounded = written.parse().unwrap_or(micro);
+    if (1e-4..1e9).contains(&rounded) {
+        format!("{rounded}")
+    } else {
+        format!("{rounded:e}")
+    }
 }
 
 /// An attempt that led to no result.

@@ -404,6 +404,20 @@ fn a_tiny_pocket_is_left_out_and_bounded() {
 }
 
 #[test]
+fn what_is_hardly_more_than_rounding_is_left_out_and_bounded() {
+    // Beside a channel of 10 by 10, a square of which a film of 0.1 leaves 1e-6 by 1e-6.
+    let side = 0.2 + 1e-6;
+    let mut section = Outline::single(rectangle(0.0, 0.0, 10.0, 10.0));
+    let beside = Outline::single(rectangle(20.0, 0.0, side, side));
+    section.lumens.extend(beside.lumens);
+    let filmed = film(&section, 0.1);
+    assert_eq!(filmed.outline.lumens.len(), 1);
+    assert_eq!(filmed.report.lumens_left_out, 1);
+    assert!(off(filmed.report.area_left_out, 1e-12) < 1e-6);
+    assert!(off(filmed.report.conductance_left_out, 1e-24 / (8.0 * PI)) < 1e-6);
+}
+
+#[test]
 fn a_film_of_any_thickness_is_told_in_few_digits() {
     let square = Outline::single(rectangle(0.0, 0.0, 1e-4, 1e-4));
     for (thickness, told) in [

@@ -99,8 +99,13 @@ fn checked(tolerance: f64) -> Result<f64, Failure> {
     if (LEAST_TOLERANCE..=1.0).contains(&tolerance) {
         return Ok(tolerance);
     }
+    let shown = if tolerance == 0.0 || tolerance.abs() >= 1e-4 {
+        format!("{tolerance}")
+    } else {
+        format!("{tolerance:e}")
+    };
     Err(Failure::usage(
-        format!("--tolerance: {tolerance:e} is outside {LEAST_TOLERANCE:e} to 1"),
+        format!("--tolerance: {shown} is outside {LEAST_TOLERANCE:e} to 1"),
         "give a share such as 0.1%, 200ppm or 1e-4",
     ))
 }

@@ -288,16 +288,6 @@ pub(super) fn film_options(command: Command) -> Command {
         )
 }
 
-fn cells_across() -> Arg {
-    option("cells-across", "N", "Cells across the smallest lumen")
-        .value_parser(value_parser!(f64))
-        .long_help(
-            "Cells across the largest circle that fits into the smallest lumen: the short side of a \
-             rectangle, the gap of an annulus. At least 4. Default: at least 128, and as many as the \
-             identities of the wall shear need. Example: --cells-across 128",
-        )
-}
-
 /// How and where the main result is printed.
 pub(super) fn result(command: Command) -> Command {
     let heading = "Output";
@@ -350,11 +340,11 @@ fn sensitivity() -> Command {
         .after_help(
             "Example: etchwise sensitivity wafer.toml --picture sensitivity.png\n\n\
              Cases: scale, depth, width, over-etch, film, single walls, wall angle, lid gap; what\n\
-             exactly moves is printed with the result.",
+             exactly moves is printed with the result. Without --cells-across the grid has at least\n\
+             128 cells across, and as many as the tolerance and the identities of the wall shear need.",
         );
     let heading = "Output";
-    result(any_input(command))
-        .arg(cells_across())
+    result(accuracy_options(any_input(command)))
         .arg(
             flag("no-check", "Do not check the cases by new solves").long_help(
                 "Do not check the cases by solving the section again with its walls moved either way. \

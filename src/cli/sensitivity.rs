@@ -12,6 +12,7 @@ use crate::report::{
 use crate::study::{SensitivityOptions, sensitivity_study, solve_for_sensitivity};
 use crate::warning::Code;
 
+use super::accuracy_options::solve_options;
 use super::exit_status::ExitStatus;
 use super::failure::Failure;
 use super::input::{self, CheckedSection, checked_section, read_options};
@@ -47,10 +48,7 @@ impl Request {
         Ok(Self {
             file: input::file(matches),
             read: read_options(matches)?,
-            solve: SolveOptions {
-                cells_across: matches.get_one::<f64>("cells-across").copied(),
-                ..SolveOptions::default()
-            },
+            solve: solve_options(matches)?,
             study: SensitivityOptions {
                 check: !matches.get_flag("no-check"),
             },
@@ -124,7 +122,8 @@ impl Request {
             .all_warnings()
             .iter()
             .any(|warning| warning.code != Code::Caution);
-        Ok(if !solved.flow.solver.converged {
+        let flow = &solved.flow;
+        Ok(if !(flow.solver.converged && flow.accuracy.is_met) {
             ExitStatus::NotSolved
         } else if self.deny_warnings && is_warned {
             ExitStatus::OutsideLimit

@@ -65,10 +65,8 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     let request = Request::new(matches)?;
     request.check_targets()?;
     let checked = checked_section(&request.file, &request.read)?;
-    let sections = {
-        let tolerance = request.solve.goal.asked();
-        Sections::new(&checked, request.film.as_ref(), tolerance)?
-    };
+    let tolerance = request.solve.goal.asked();
+    let sections = Sections::new(&checked, request.film.as_ref(), tolerance)?;
     let solved = sections.solve(&request.solve)?;
     if matches.get_flag("trace") {
         output::talk(&report::cost_text(solved.cost()));

@@ -157,10 +157,7 @@ pub(super) fn refine(
         }
         let foreseen = seconds * (next / cells).powi(2);
         let spent = start.elapsed().as_secs_f64();
-        if options
-            .time_limit
-            .is_some_and(|limit| spent + foreseen > limit)
-        {
+        if options.is_out_of_time(spent + foreseen) {
             stop = Some(Stop::Time);
             break;
         }

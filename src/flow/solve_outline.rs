@@ -55,6 +55,15 @@ impl Default for SolveOptions {
     }
 }
 
+impl SolveOptions {
+    /// Whether a search would then have taken longer than allowed.
+    ///
+    /// - `seconds`: from its start, s
+    pub(super) fn is_out_of_time(&self, seconds: f64) -> bool {
+        self.time_limit.is_some_and(|limit| seconds > limit)
+    }
+}
+
 /// Why a section was not solved.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
@@ -137,10 +146,7 @@ impl SolvedSection {
         let grid = &self.flow.grid;
         let finer = cells_across / grid.cells_across;
         let foreseen = self.flow.solver.seconds * finer * finer;
-        if options
-            .time_limit
-            .is_some_and(|limit| spent + foreseen > limit)
-        {
+        if options.is_out_of_time(spent + foreseen) {
             return None;
         }
         let start = Instant::now();

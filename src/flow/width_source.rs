@@ -137,7 +137,8 @@ fn excess(tiles: &[Tile], total: f64, around: &[(u32, u32)]) -> f64 {
     chosen.sort_unstable();
     chosen.dedup();
     let rest = tiles.len() - chosen.len();
-    let inside: f64 = chosen.iter().map(|&k| tiles[k].1).sum();
+    // The sum of nothing would be minus zero.
+    let inside = chosen.iter().fold(0.0, |sum, &k| sum + tiles[k].1);
     if total <= 0.0 || rest == 0 {
         return 0.0;
     }

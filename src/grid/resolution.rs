@@ -10,6 +10,11 @@ pub const BYTES_PER_NODE: f64 = 24.0;
 const BYTES_PER_CROSSING: f64 = 1500.0;
 /// Memory of one vertex of the outline, bytes: 250 seen at 100 000 vertices.
 const BYTES_PER_VERTEX: f64 = 400.0;
+/// Most fluid nodes of a grid: their numbers have 32 bits.
+const MOST_NODES: f64 = (u32::MAX / 2) as f64;
+/// How much longer than wide a section is whose conductance parallel plates give within a per cent: from here they are
+/// offered instead of a grid. `1 - 0.63 / slenderness` is the leading correction (White, Viscous Fluid Flow, from memory).
+const PLATE_SLENDERNESS: f64 = 63.0;
 /// Fewest cells across the largest circle of the smallest lumen that can be asked for.
 pub const LEAST_CELLS_ACROSS: f64 = 4.0;
 
@@ -64,14 +69,28 @@ impl ResolutionError {
         match self {
             Self::TooLarge {
                 cells_across,
+                nodes,
                 bytes,
                 limit,
+                slenderness,
                 ..
             } => {
                 // Nodes go with the square of the cells across.
-                let fits = (cells_across * (limit / bytes).sqrt()).floor();
+                let share = (limit / bytes).min(MOST_NODES / nodes);
+                let fits = (cells_across * share.sqrt()).floor();
                 if fits >= LEAST_CELLS_ACROSS {
                     format!("use --cells-across {fits} or less")
+                } else if *slenderness < PLATE_SLENDERNESS {
+                    // Rounded up, so that what is advised is enough.
+                    let (unit, name) = if *bytes < 1e7 {
+                        (1e3, "kB")
+                    } else {
+                        (1e6, "MB")
+                    };
+                    format!(
+                        "raise --max-memory to {} {name} or more",
+                        (bytes / unit).ceil()
+                    )
                 } else {
                     "solve the lumens one by one, or a shorter piece of the section; the formula for \
                      parallel plates is close at this slenderness (--shortcuts on a wider section)"
@@ -126,7 +145,7 @@ pub fn spacing(
     let spacing = inscribed_diameter / cells_across;
     let nodes = outline.area() / (spacing * spacing);
     let bytes = memory_needed(outline, spacing);
-    if bytes > memory_limit || nodes > f64::from(u32::MAX / 2) {
+    if bytes > memory_limit || nodes > MOST_NODES {
         return Err(ResolutionError::TooLarge {
             cells_across,
             inscribed_diameter,

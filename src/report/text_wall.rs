@@ -130,7 +130,8 @@ fn corners(document: &SolveDocument<'_>, report: &WallReport) -> Vec<String> {
     let more = report.singular_corners.len().saturating_sub(CORNERS_SHOWN);
     if more > 0 {
         lines.push(format!(
-            "And {more} more re-entrant corners; --json lists them all."
+            "And {more} more re-entrant corner{}; --json lists them all.",
+            if more == 1 { "" } else { "s" }
         ));
     }
     lines

@@ -32,6 +32,8 @@ const BAND_HEIGHT: f64 = 26.0;
 const MOST_SHEAR_TICKS: usize = 8;
 /// Most ticks of arc length over the whole width.
 const MOST_LENGTH_TICKS: usize = 12;
+/// Distance of convex corners, px, below which their squares touch and dips between them cannot be seen.
+const CROWDED: f64 = 6.0;
 /// Share of the largest value that the plot reaches beyond it.
 const HEADROOM: f64 = 0.12;
 /// The curve.
@@ -338,15 +340,7 @@ impl<'a> Plot<'a> {
 
     /// The curve of a loop on the page, cut where it leaves the plot.
     fn pieces(&self, index: usize, along: &LoopCurve) -> Vec<Vec<Point>> {
-        let shear = |p: &CurvePoint| match p.kind {
-            PointKind::SingularCorner => f64::INFINITY,
-            _ => p.shear_per_gradient,
-        };
-        let mut points: Vec<(f64, f64)> = along
-            .points
-            .iter()
-            .map(|p| (p.arc_length, shear(p)))
-            .collect();
+        let mut points = drawn(&along.points, CROWDED / self.per_metre);
         // Without a corner on the first vertex the curve has no point there.
         if points.first().is_some_and(|p| p.0 > 0.0) {
             let value = along.shear_at(0.0);
@@ -453,10 +447,12 @@ impl<'a> Plot<'a> {
             .flat_map(|l| &l.points)
             .any(|p| p.kind == PointKind::ConvexCorner);
         if convex {
-            self.paragraph(
-                "Squares: convex corners, where the shear is zero.",
-                TextSize::Small,
-            );
+            let mut note = "Squares: convex corners, where the shear is zero.".to_owned();
+            let crowded = |l: &LoopCurve| drawn(&l.points, CROWDED / self.per_metre).len();
+            if curve.loops.iter().any(|l| crowded(l) < l.points.len()) {
+                note.push_str(" Between corners that touch here only the largest value is drawn.");
+            }
+            self.paragraph(&note, TextSize::Small);
         }
         if !self.report.singular_corners.is_empty() {
             let note = format!(
@@ -473,7 +469,95 @@ impl<'a> Plot<'a> {
     }
 }
 
+/// Arc length and shear of the points that are drawn. Between convex corners closer than `crowded` that is the largest
+/// value alone: a digitised round corner would be a solid block of lines up from zero and down again.
+fn drawn(points: &[CurvePoint], crowded: f64) -> Vec<(f64, f64)> {
+    let shear = |p: &CurvePoint| match p.kind {
+        PointKind::SingularCorner => f64::INFINITY,
+        _ => p.shear_per_gradient,
+    };
+    let stretches: Vec<&[CurvePoint]> = points
+        .split_inclusive(|p| p.kind == PointKind::ConvexCorner)
+        .collect();
+    let mut found: Vec<(f64, f64)> = Vec::with_capacity(points.len());
+    let mut corner: Option<f64> = None;
+    let mut after_crowd = false;
+    for stretch in stretches {
+        let Some(last) = stretch.last() else { continue };
+        let is_bounded = last.kind == PointKind::ConvexCorner;
+        let is_crowded =
+            is_bounded && corner.is_some_and(|start| last.arc_length - start < crowded);
+        if is_crowded {
+            let inner = &stretch[..stretch.len() - 1];
+            let largest = inner.iter().max_by(|a, b| shear(a).total_cmp(&shear(b)));
+            found.extend(largest.map(|p| (p.arc_length, shear(p))));
+        } else {
+            if after_crowd {
+                // The corner where the crowd ends is a zero of this stretch.
+                found.extend(corner.map(|s| (s, 0.0)));
+            }
+            found.extend(stretch.iter().map(|p| (p.arc_length, shear(p))));
+        }
+        after_crowd = is_crowded;
+        corner = is_bounded.then_some(last.arc_length);
+    }
+    found
+}
+
 /// What a shear per gradient in a unit of length becomes when multiplied by Pa/m.
 fn shear_of_length(unit: &str) -> String {
     format!("{}Pa", unit.strip_suffix('m').unwrap_or_default())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn point(arc_length: f64, shear: f64, kind: PointKind) -> CurvePoint {
+        CurvePoint {
+            arc_length,
+            at: [arc_length, 0.0],
+            normal: [0.0, -1.0],
+            shear_per_gradient: shear,
+            kind,
+        }
+    }
+
+    #[test]
+    fn between_crowded_corners_only_the_largest_value_is_drawn() {
+        let corner = |s| point(s, 0.0, PointKind::ConvexCorner);
+        let on = |s, v| point(s, v, PointKind::Regular);
+        let along = [
+            corner(0.0),
+            on(5.0, 9.0),
+            corner(10.0),
+            on(10.2, 3.0),
+            on(10.5, 4.0),
+            corner(11.0),
+            on(11.5, 5.0),
+            corner(12.0),
+            on(17.0, 8.0),
+            corner(22.0),
+        ];
+        let ends = [(0.0, 0.0), (5.0, 9.0), (10.0, 0.0)];
+        let others = [(12.0, 0.0), (17.0, 8.0), (22.0, 0.0)];
+        let expected = [&ends[..], &[(10.5, 4.0), (11.5, 5.0)], &others].concat();
+        assert_eq!(drawn(&along, 2.0), expected);
+        let all: Vec<(f64, f64)> = along
+            .iter()
+            .map(|p| (p.arc_length, p.shear_per_gradient))
+            .collect();
+        assert_eq!(drawn(&along, 0.5), all);
+    }
+
+    #[test]
+    fn a_singular_corner_is_drawn_without_bound_and_ends_no_crowd() {
+        let along = [
+            point(0.0, 0.0, PointKind::ConvexCorner),
+            point(0.5, 7.0, PointKind::SingularCorner),
+            point(1.0, 0.0, PointKind::ConvexCorner),
+        ];
+        assert_eq!(drawn(&along, 2.0), [(0.0, 0.0), (0.5, f64::INFINITY)]);
+        assert_eq!(drawn(&along, 0.1)[1], (0.5, f64::INFINITY));
+    }
 }

@@ -144,6 +144,28 @@ fn less_memory_than_the_coarsest_grid_needs_is_an_error_with_figures() {
     assert_eq!(run.status, 5);
     assert!(run.out.is_empty());
     assert!(run.err.contains("bytes"), "{}", run.err);
+    // What it advises is enough.
+    let advice = run.err.split("raise --max-memory to ").nth(1);
+    let limit = advice.and_then(|text| text.split(" or more").next());
+    let limit = limit.unwrap_or_default().replace(' ', "");
+    assert!(limit.ends_with("kB"), "{}", run.err);
+    let record = json(&folder, &format!("--max-memory {limit}"), 5);
+    assert!(number(&record, "/conductance/low") < number(&record, "/conductance/high"));
+}
+
+#[test]
+fn sensitivities_take_a_tolerance_and_say_when_it_is_missed() {
+    let folder = Folder::with("a.csv", ANGLE);
+    let run = |options: &str| folder.line(&format!("sensitivity a.csv --no-check {options}"));
+    for limit in ["--max-seconds 0.001", "--max-memory 2MB"] {
+        let run = run(&format!("--tolerance 1e-8 {limit}"));
+        assert_eq!(run.status, 5, "{limit}: {}{}", run.out, run.err);
+        assert!(run.out.contains("accuracy_not_reached"), "{}", run.out);
+    }
+    let met = run("--tolerance 1%");
+    assert_eq!(met.status, 0, "{}{}", met.out, met.err);
+    assert!(!met.out.contains("accuracy_not_reached"), "{}", met.out);
+    assert_eq!(run("--tolerance 1% --cells-across 64").status, 2);
 }
 
 #[test]
@@ -153,7 +175,8 @@ fn what_is_no_tolerance_or_limit_is_refused() {
         ("--tolerance 0", "--tolerance"),
         ("--tolerance=-1%", "--tolerance"),
         ("--tolerance 200%", "--tolerance"),
-        ("--tolerance 1e-10", "--tolerance"),
+        ("--tolerance 1e-10", "--tolerance: 1e-10 is outside"),
+        ("--tolerance 1e-30%", "--tolerance: 1e-32 is outside"),
         ("--tolerance nan", "--tolerance"),
         ("--tolerance 1um", "fraction"),
         ("--tolerance 0,1%", "comma"),

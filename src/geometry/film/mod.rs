@@ -370,8 +370,9 @@ impl Film {
             lumens_vanished: remaining.iter().filter(|&&n| n == 0).count(),
             lumens_split: remaining.iter().filter(|&&n| n > 1).count(),
             lumens_left_out: left_areas.len(),
-            area_left_out: left_areas.iter().sum(),
-            conductance_left_out: left_areas.iter().map(|&a| saint_venant(a)).sum(),
+            // The sum of nothing would be minus zero.
+            area_left_out: left_areas.iter().fold(0.0, |sum, a| sum + a),
+            conductance_left_out: left_areas.iter().fold(0.0, |sum, &a| sum + saint_venant(a)),
             vertices: outline.loops().map(|l| l.points.len()).sum(),
         };
         Ok(Filmed { outline, report })

@@ -29,6 +29,22 @@ pub struct ResponseFamily {
     made: Made,
 }
 
+/// One section of a family.
+pub(super) struct FamilyMember {
+    pub(super) outline: Outline,
+    /// What tiny lumens under a film, which are not in the outline, conduct at most, m^4.
+    pub(super) conductance_left_out: f64,
+}
+
+impl FamilyMember {
+    fn whole(outline: Outline) -> Self {
+        Self {
+            outline,
+            conductance_left_out: 0.0,
+        }
+    }
+}
+
 /// How a section comes about.
 #[derive(Debug, Clone, PartialEq)]
 enum Made {
@@ -114,6 +130,11 @@ impl ResponseFamily {
     /// # Errors
     /// [`PointError`] where there is no such section.
     pub fn outline(&self, values: &[f64]) -> Result<Outline, PointError> {
+        Ok(self.member(values)?.outline)
+    }
+
+    /// The same with what a film left out of it.
+    pub(super) fn member(&self, values: &[f64]) -> Result<FamilyMember, PointError> {
         match &self.made {
             Made::Nominal(spec) => {
                 let mut spec = spec.clone();
@@ -124,7 +145,7 @@ impl ResponseFamily {
                     };
                     spec.values.insert(parameter.name.clone(), written);
                 }
-                Ok(spec.outline()?)
+                Ok(FamilyMember::whole(spec.outline()?))
             }
             Made::Moved { outline, motions } => {
                 let (mut changes, mut film) = (Vec::new(), 0.0);
@@ -274,7 +295,7 @@ fn moved(
     outline: &Outline,
     changes: &[(&WallMotion, f64)],
     film: f64,
-) -> Result<Outline, PointError> {
+) -> Result<FamilyMember, PointError> {
     let outline = if changes.iter().any(|(_, change)| *change != 0.0) {
         outline_moved_by(outline, changes)
             .map_err(|_| PointError::Crossed)?
@@ -287,9 +308,13 @@ fn moved(
             thickness: film,
             on: FilmOn::All,
         };
-        return Ok(film.applied_to(&outline)?.outline);
+        let filmed = film.applied_to(&outline)?;
+        return Ok(FamilyMember {
+            outline: filmed.outline,
+            conductance_left_out: filmed.report.conductance_left_out,
+        });
     }
-    Ok(outline)
+    Ok(FamilyMember::whole(outline))
 }
 
 /// Fixed values of a nominal kind from texts `NAME=VALUE`; sections and lists in their brackets.
@@ -335,5 +360,42 @@ fn check_names(spec: &NominalSpec) -> Result<(), NominalError> {
             Err(error)
         }
         _ => Ok(()),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn what_a_film_cuts_off_and_leaves_out_stays_known() {
+        // A pocket of 0.2 um behind a neck of 0.1 um, on a channel of 100 by 40 um; micrometres.
+        let pocket = [
+            [0.0, 0.0],
+            [100.0, 0.0],
+            [100.0, 40.0],
+            [50.05, 40.0],
+            [50.05, 41.0],
+            [50.1, 41.0],
+            [50.1, 41.2],
+            [49.9, 41.2],
+            [49.9, 41.0],
+            [49.95, 41.0],
+            [49.95, 40.0],
+            [0.0, 40.0],
+        ];
+        let outline = Outline::single(pocket.map(|p| p.map(|x| x * 1e-6)).to_vec());
+        let ranges = [RangeText::read("film=0.01..0.06um").unwrap()];
+        let family = ResponseFamily::moved(&outline, &[], &ranges).unwrap();
+        let open = family.member(&[0.01e-6]).unwrap();
+        assert_eq!(open.conductance_left_out.to_bits(), 0.0_f64.to_bits());
+        let closed = family.member(&[0.06e-6]).unwrap();
+        assert_eq!(closed.outline.lumens.len(), 1);
+        // 0.08 by 0.14 um less what is below two arcs about the corners of the neck; K is at most A^2 / (8 pi).
+        let t = 0.06e-6_f64;
+        let under = |u: f64| 0.5 * (u * (t * t - u * u).sqrt() + t * t * (u / t).asin());
+        let area = 0.08e-6 * 0.14e-6 - 2.0 * (under(0.05e-6) - under(0.01e-6));
+        let most = area * area / (8.0 * std::f64::consts::PI);
+        assert!((closed.conductance_left_out / most - 1.0).abs() < 2e-3);
     }
 }

@@ -5,12 +5,11 @@ use std::collections::BTreeMap;
 use rayon::prelude::*;
 
 use super::error::{PointError, ResponseError};
-use super::family::ResponseFamily;
+use super::family::{FamilyMember, ResponseFamily};
 use super::fit::{ChebyshevFit, Tensor, indices};
 use super::points::{chebyshev_points, fresh_points};
 use super::{NUMERICAL_SHARE, ResponseErrors, ResponseOptions, ResponsePoint};
 use crate::flow::{Goal, NearbySections, SolveOptions, solve_outline};
-use crate::geometry::Outline;
 
 /// Points along each parameter of the first table.
 const FIRST_NODES: usize = 5;
@@ -62,7 +61,7 @@ impl<'a> Search<'a> {
         let corners = indices(&vec![2; axes]);
         let scaled = corners.map(|index| index.iter().map(|&k| 2.0 * k as f64 - 1.0).collect());
         for place in scaled.collect::<Vec<Vec<f64>>>() {
-            search.outline(&search.values(&place))?;
+            search.member(&search.values(&place))?;
         }
         Ok(search)
     }
@@ -119,8 +118,8 @@ impl<'a> Search<'a> {
         }
     }
 
-    fn outline(&self, values: &[f64]) -> Result<Outline, ResponseError> {
-        let made = self.family.outline(values);
+    fn member(&self, values: &[f64]) -> Result<FamilyMember, ResponseError> {
+        let made = self.family.member(values);
         made.map_err(|source| self.error_at(values, source))
     }
 
@@ -144,14 +143,14 @@ impl<'a> Search<'a> {
                 (key(&index), self.values(&place))
             })
             .collect();
-        let outlines: Vec<Outline> = missing
+        let members: Vec<FamilyMember> = missing
             .par_iter()
-            .map(|(_, values)| self.outline(values))
+            .map(|(_, values)| self.member(values))
             .collect::<Result<_, _>>()?;
         let new: Vec<Result<ResponsePoint, ResponseError>> = missing
             .par_iter()
-            .zip(&outlines)
-            .map(|((_, values), outline)| self.solve(values, outline))
+            .zip(&members)
+            .map(|((_, values), member)| self.solve(values, member))
             .collect();
         for ((key, _), point) in missing.into_iter().zip(new) {
             solved.insert(key, point?);
@@ -168,12 +167,13 @@ impl<'a> Search<'a> {
     }
 
     /// Solves a section of the table, with its proven range.
-    fn solve(&self, values: &[f64], outline: &Outline) -> Result<ResponsePoint, ResponseError> {
+    fn solve(&self, values: &[f64], member: &FamilyMember) -> Result<ResponsePoint, ResponseError> {
         let options = SolveOptions {
             goal: Goal::Estimated(self.tolerance),
+            conductance_left_out: member.conductance_left_out,
             ..SolveOptions::default()
         };
-        let flow = match solve_outline(outline, &options) {
+        let mut flow = match solve_outline(&member.outline, &options) {
             Ok(solved) => solved.flow,
             Err(error) => return Err(self.error_at(values, error.into())),
         };
@@ -181,32 +181,38 @@ impl<'a> Search<'a> {
         if !(flow.solver.converged && k.is_finite() && k > 0.0) {
             return Err(self.error_at(values, PointError::Unfinished));
         }
+        flow.conductance.error += member.conductance_left_out;
         Ok(ResponsePoint::new(values.to_vec(), &flow))
     }
 
     /// Solves the fresh points: `K` alone, without its proven range, where a grid for neighbours is good enough.
     fn solve_fresh(&self) -> Result<Vec<ResponsePoint>, ResponseError> {
         let places = &self.fresh_scaled;
-        let made: Vec<(Vec<f64>, Outline)> = places
+        let made: Vec<(Vec<f64>, FamilyMember)> = places
             .par_iter()
             .map(|scaled| {
                 let values = self.values(scaled);
-                let outline = self.outline(&values)?;
-                Ok((values, outline))
+                let member = self.member(&values)?;
+                Ok((values, member))
             })
             .collect::<Result<_, _>>()?;
         let middle = self.values(&vec![0.0; self.family.parameters.len()]);
-        let reference = self.outline(&middle)?;
+        let reference = self.member(&middle)?.outline;
         let nearby = NearbySections::new(&reference, self.tolerance)
             .map_err(|error| self.error_at(&middle, error.into()))?;
         let solved: Vec<Result<ResponsePoint, ResponseError>> = made
             .par_iter()
-            .map(|(values, outline)| {
+            .map(|(values, member)| {
+                let FamilyMember {
+                    outline,
+                    conductance_left_out,
+                } = member;
                 let found = nearby.conductance(outline);
                 let good = found.ok().filter(|k| k.relative() <= self.tolerance);
-                let Some(conductance) = good else {
-                    return self.solve(values, outline);
+                let Some(mut conductance) = good else {
+                    return self.solve(values, member);
                 };
+                conductance.error += conductance_left_out;
                 let islands = outline.lumens.iter().map(|l| l.islands.len()).sum();
                 Ok(ResponsePoint {
                     values: values.clone(),

@@ -19,6 +19,9 @@ const RUNS: usize = 5;
 /// Fluid nodes above which a case is run once only.
 const LARGE: usize = 5_000_000;
 
+/// Cells across of the grid that the error of `K` alone is measured against.
+const REFERENCE_CELLS: f64 = 1500.0;
+
 type Fallible<T> = Result<T, Box<dyn Error>>;
 
 fn shipped(file: &str) -> Fallible<Outline> {
@@ -186,6 +189,43 @@ fn to_accuracy(sections: &[(&str, Outline)]) -> Fallible<()> {
     Ok(())
 }
 
+/// Time until `K` alone is within a tolerance by its estimate, on a grid that is known, and how far off it then is.
+fn alone(sections: &[(&str, Outline)]) -> Fallible<()> {
+    println!("\n## K alone, as for neighbours; one thread\n");
+    println!(
+        "| section | asked | cells across | to find the grid, ms | K, ms | estimated error | off |"
+    );
+    println!("|---|---|---|---|---|---|---|");
+    for (name, outline) in sections {
+        let truth = at(outline, REFERENCE_CELLS)?.flow.conductance.value;
+        for asked in [1e-3, 1e-4, 1e-5, 1e-6] {
+            let start = Instant::now();
+            let nearby = NearbySections::new(outline, asked)?;
+            let search = start.elapsed().as_secs_f64();
+            if nearby.cells_across() > 0.5 * REFERENCE_CELLS {
+                continue;
+            }
+            let mut seconds = Vec::new();
+            let mut last = None;
+            for _ in 0..RUNS {
+                let start = Instant::now();
+                last = Some(nearby.conductance(outline)?);
+                seconds.push(start.elapsed().as_secs_f64());
+            }
+            let Some(k) = last else { continue };
+            println!(
+                "| {name} | {asked:.0e} | {:.0} | {:.2} | {:.2} | {:.1e} | {:.1e} |",
+                nearby.cells_across(),
+                1e3 * search,
+                1e3 * median(seconds),
+                k.relative(),
+                (k.value / truth - 1.0).abs(),
+            );
+        }
+    }
+    Ok(())
+}
+
 /// One thread against two.
 fn threads(outline: &Outline) -> Fallible<()> {
     println!("\n## Two threads against one, 4 million fluid nodes\n");
@@ -255,6 +295,7 @@ fn main() -> Fallible<()> {
     let one = rayon::ThreadPoolBuilder::new().num_threads(1).build()?;
     one.install(|| stages(&sections, quick).map_err(|e| e.to_string()))?;
     one.install(|| to_accuracy(&sections).map_err(|e| e.to_string()))?;
+    one.install(|| alone(&sections).map_err(|e| e.to_string()))?;
     threads(&rectangle(1e-4))?;
     many()
 }

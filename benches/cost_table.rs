@@ -193,9 +193,9 @@ fn to_accuracy(sections: &[(&str, Outline)]) -> Fallible<()> {
 fn alone(sections: &[(&str, Outline)]) -> Fallible<()> {
     println!("\n## K alone, as for neighbours; one thread\n");
     println!(
-        "| section | asked | cells across | to find the grid, ms | K, ms | estimated error | off |"
+        "| section | asked | cells across | to find the grid, ms | K, ms | allocations | estimated error | off |"
     );
-    println!("|---|---|---|---|---|---|---|");
+    println!("|---|---|---|---|---|---|---|---|");
     for (name, outline) in sections {
         let truth = at(outline, REFERENCE_CELLS)?.flow.conductance.value;
         for asked in [1e-3, 1e-4, 1e-5, 1e-6] {
@@ -213,11 +213,15 @@ fn alone(sections: &[(&str, Outline)]) -> Fallible<()> {
                 seconds.push(start.elapsed().as_secs_f64());
             }
             let Some(k) = last else { continue };
+            let memory = allocation_counter::measure(|| {
+                std::hint::black_box(nearby.conductance(outline).ok());
+            });
             println!(
-                "| {name} | {asked:.0e} | {:.0} | {:.2} | {:.2} | {:.1e} | {:.1e} |",
+                "| {name} | {asked:.0e} | {:.0} | {:.2} | {:.2} | {} | {:.1e} | {:.1e} |",
                 nearby.cells_across(),
                 1e3 * search,
                 1e3 * median(seconds),
+                memory.count_total,
                 k.relative(),
                 (k.value / truth - 1.0).abs(),
             );

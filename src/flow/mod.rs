@@ -30,6 +30,7 @@ mod wall_balance;
 mod wall_cells;
 mod wall_curve;
 mod wall_flux;
+mod wall_layer;
 mod wall_path;
 mod wall_quadrature;
 mod wall_shear;

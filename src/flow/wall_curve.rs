@@ -92,7 +92,7 @@ impl WallCurve {
         samples: &[WallSample],
         spacing: f64,
     ) -> Self {
-        Self::with_laws(outline, corners, samples, spacing, |_, _| None).with_points()
+        Self::with_laws(outline, corners, samples, &[], spacing, |_, _| None).with_points()
     }
 
     /// The curve with the laws of some corners known, still without its points.
@@ -102,6 +102,7 @@ impl WallCurve {
         outline: &Outline,
         corners: &[Vec<Corner>],
         samples: &[WallSample],
+        fine: &[Vec<(f64, f64)>],
         spacing: f64,
         laws: impl Fn(usize, usize) -> Option<[CornerLaw; 2]>,
     ) -> Self {
@@ -120,7 +121,10 @@ impl WallCurve {
                 let length = path.length();
                 let corners = corners.get(index).map_or(&[][..], Vec::as_slice);
                 let own_laws: Vec<_> = (0..corners.len()).map(|k| laws(index, k)).collect();
-                let stretches = stretches(&path, corners, &own_laws, &own, spacing);
+                let stretches = {
+                    let fine = fine.get(index).map_or(&[][..], Vec::as_slice);
+                    stretches(&path, corners, &own_laws, (&own, fine), spacing)
+                };
                 LoopCurve {
                     points: Vec::new(),
                     path,
@@ -192,7 +196,7 @@ fn stretches(
     path: &WallPath,
     corners: &[Corner],
     laws: &[Option<[CornerLaw; 2]>],
-    samples: &[(f64, f64)],
+    (samples, fine): (&[(f64, f64)], &[(f64, f64)]),
     spacing: f64,
 ) -> Vec<Stretch> {
     let total = path.length();
@@ -217,15 +221,18 @@ fn stretches(
             if length <= 0.0 {
                 length += total;
             }
-            let own: Vec<(f64, f64)> = [0.0, total]
-                .iter()
-                .flat_map(|turn| {
-                    let low = samples.partition_point(|s| s.0 + turn - start <= 0.0);
-                    let high = samples.partition_point(|s| s.0 + turn - start < length);
-                    let here = samples.get(low..high).unwrap_or(&[]);
-                    here.iter().map(move |&(s, v)| (s + turn - start, v))
-                })
-                .collect();
+            let within = |all: &[(f64, f64)]| -> Vec<(f64, f64)> {
+                [0.0, total]
+                    .into_iter()
+                    .flat_map(|turn| {
+                        let low = all.partition_point(|s| s.0 + turn - start <= 0.0);
+                        let high = all.partition_point(|s| s.0 + turn - start < length);
+                        let here = all.get(low..high).unwrap_or(&[]);
+                        here.iter().map(move |&(s, v)| (s + turn - start, v))
+                    })
+                    .collect()
+            };
+            let (own, fine) = (within(samples), within(fine));
             let fallback = if own.is_empty() {
                 nearest(start + 0.5 * length)
             } else {
@@ -237,7 +244,7 @@ fn stretches(
                 both.and_then(|pair| pair.get(side)).cloned()
             };
             let given = [side(k, 0), side(k + 1, 1)];
-            Stretch::between(start, length, angles, &own, given, (spacing, fallback))
+            Stretch::between(start, length, angles, &own, &fine, given, (spacing, fallback))
         })
         .collect()
 }

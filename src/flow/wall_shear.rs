@@ -15,7 +15,9 @@ use super::corner_law::CornerLaw;
 use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::WallCurve;
 use super::wall_flux::wall_fluxes;
+use super::wall_layer::WallLayer;
 use super::wall_path::WallPath;
+use super::wall_stretch::SHORT;
 
 /// Turning from which a vertex or a small arc counts as a corner.
 pub(crate) const CORNER_TURNING: f64 = 10.0 * std::f64::consts::PI / 180.0;
@@ -105,8 +107,26 @@ pub(crate) fn wall_curve(
     samples: &[WallSample],
 ) -> (WallCurve, f64) {
     let walls = walls(outline, lattice, corners);
-    let curve = WallCurve::with_laws(outline, corners, samples, lattice.spacing, |l, c| {
-        walls.get(l)?.singular_laws((lattice, mask, phi), c)
+    let laws: Vec<Vec<Option<[CornerLaw; 2]>>> = walls
+        .iter()
+        .map(|wall| {
+            let count = wall.corners.len();
+            (0..count)
+                .map(|c| wall.singular_laws((lattice, mask, phi), c))
+                .collect()
+        })
+        .collect();
+    let paths: Vec<&WallPath> = walls.iter().map(|wall| &wall.path).collect();
+    let wanted = |l: usize, c: usize| walls[l].needs_layer(c, &laws[l], lattice.spacing);
+    let layer = WallLayer::new((lattice, mask, phi), &paths, corners, &wanted);
+    let by_place = |l: usize, arc: f64| {
+        let c = walls[l].corners.partition_point(|c| c.arc_length < arc);
+        wanted(l, c)
+    };
+    let typical = outline.area() / outline.wetted_perimeter();
+    let fine = layer.shear(&by_place, typical);
+    let curve = WallCurve::with_laws(outline, corners, samples, &fine, lattice.spacing, |l, c| {
+        laws.get(l)?.get(c)?.clone()
     });
     let at_wall = |loop_index: usize, arc_length: f64| -> Option<Point> {
         let wall: &Wall = walls.get(loop_index)?;
@@ -115,7 +135,6 @@ pub(crate) fn wall_curve(
         let shear = curve.loops.get(loop_index)?.shear_at(s);
         shear.is_finite().then(|| normal.map(|c| -shear * c))
     };
-    let paths: Vec<&WallPath> = walls.iter().map(|wall| &wall.path).collect();
     let fluxes = wall_fluxes((lattice, mask, phi), &paths, outline.area(), &at_wall);
     let (balanced, plain) = curve.balanced(&fluxes);
     (balanced.with_points(), plain)
@@ -226,6 +245,19 @@ fn sample(
 }
 
 impl Wall<'_> {
+    fn needs_layer(&self, index: usize, laws: &[Option<[CornerLaw; 2]>], spacing: f64) -> bool {
+        let count = self.corners.len();
+        if self.corners[index].turning >= 0.0 {
+            return false;
+        }
+        let gap = |from: usize, to: usize| {
+            let gap = self.corners[to].arc_length - self.corners[from].arc_length;
+            if gap > 0.0 { gap } else { gap + self.path.length() }
+        };
+        let room = gap((index + count - 1) % count, index).min(gap(index, (index + 1) % count));
+        laws[index].is_none() || room < SHORT * spacing
+    }
+
     /// Laws of a re-entrant corner from the nodes around it.
     fn singular_laws(
         &self,

@@ -27,7 +27,7 @@ const LAW_NEAR: f64 = 8.0;
 /// Half the step of the difference that gives the slope of a law, in pieces.
 const SLOPE_STEP: f64 = 1e-3;
 /// Length, in spacings, below which a stretch is short.
-const SHORT: f64 = 14.0;
+pub(super) const SHORT: f64 = 14.0;
 /// Half width of the smoothing, in spacings.
 const SMOOTHING: f64 = 2.5;
 /// Least number of samples in the smoothing.
@@ -115,6 +115,7 @@ impl Stretch {
         length: f64,
         angles: [f64; 2],
         samples: &[(f64, f64)],
+        fine: &[(f64, f64)],
         given: [Option<CornerLaw>; 2],
         (spacing, fallback): (f64, f64),
     ) -> Self {
@@ -127,18 +128,22 @@ impl Stretch {
             };
             spacings * spacing
         });
-        let inner: Vec<(f64, f64)> = samples
+        let near = |s: f64| fine.iter().any(|f| (f.0 - s).abs() < 0.6 * spacing);
+        let mut inner: Vec<(f64, f64)> = samples
             .iter()
             .copied()
+            .filter(|&(s, _)| !near(s))
+            .chain(fine.iter().copied())
             .filter(|&(s, _)| s >= unresolved[0] && length - s >= unresolved[1])
             .collect();
+        inner.sort_by(|a, b| a.0.total_cmp(&b.0));
         if length < SHORT * spacing || inner.len() < LEAST_SAMPLES {
             return Self {
                 start,
                 length,
                 zone: [0.5 * length; 2],
                 leading: Some(leading),
-                shape: short(length, leading, samples, spacing, fallback),
+                shape: short(length, leading, samples, fine, spacing, fallback),
             };
         }
         let law = |end: usize| {
@@ -152,7 +157,14 @@ impl Stretch {
                 .map(|&(s, v)| (if end == 0 { s } else { length - s }, v))
                 .filter(|&(r, _)| r <= reach)
                 .collect();
-            if leading[end] < 0.0 {
+            let close: Vec<(f64, f64)> = fine
+                .iter()
+                .map(|&(s, v)| (if end == 0 { s } else { length - s }, v))
+                .filter(|&(r, _)| r <= reach)
+                .collect();
+            if leading[end] < 0.0 && !close.is_empty() {
+                CornerLaw::through(angles[end], spacing, &close)
+            } else if leading[end] < 0.0 {
                 CornerLaw::power(angles[end], spacing, &from_end)
             } else {
                 CornerLaw::fit(angles[end], spacing, &from_end)
@@ -366,6 +378,7 @@ fn short(
     length: f64,
     leading: [f64; 2],
     samples: &[(f64, f64)],
+    fine: &[(f64, f64)],
     spacing: f64,
     fallback: f64,
 ) -> Shape {
@@ -383,6 +396,14 @@ fn short(
         used = vec![(0.5 * length, fallback)];
     }
     let basis = |s: f64| ends([s / length, 1.0 - s / length], powers);
+    if !fine.is_empty() {
+        let near = |s: f64| fine.iter().any(|f| (f.0 - s).abs() < spacing);
+        let mut places: Vec<(f64, f64)> = fine.to_vec();
+        places.extend(away(spacing).into_iter().filter(|&(s, _)| !near(s)));
+        places.sort_by(|a, b| a.0.total_cmp(&b.0));
+        let places = places.into_iter().map(|(s, v)| (s / length, v / basis(s))).collect();
+        return Shape::Short { powers, places };
+    }
     if length < STEADY * spacing {
         // One sample beside a corner must not decide the middle.
         let (sum, of_basis) = used

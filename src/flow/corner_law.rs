@@ -108,13 +108,13 @@ impl CornerLaw {
         }
     }
 
-    /// The leading powers of a re-entrant corner fitted to shear close to it that is free of the grid's error.
+    /// The leading powers of a corner fitted to shear close to it that is free of the grid's error.
     pub(crate) fn through(angle: f64, unit: f64, samples: &[(f64, f64)]) -> Self {
         let law = Self::of_terms(angle, unit, &[], 0.0);
         let step = law.leading + 1.0;
         let exponents = [step - 1.0, step, 2.0 * step - 1.0];
         let count = exponents.len().min(samples.len());
-        let weight = |r: f64| r.powf(-law.leading);
+        let weight = |r: f64| r.powf(-law.leading.min(0.0));
         let matrix = DMatrix::from_fn(samples.len(), count, |row, column| {
             let r = samples[row].0 / unit;
             weight(r) * r.powf(exponents[column])

@@ -26,32 +26,32 @@ use crate::solve::Field;
 use super::wall_path::WallPath;
 
 /// Ends of panels from a corner, spacings; beyond, one spacing each.
-const GRADED: [f64; 6] = [0.0, 0.12, 0.4, 0.9, 1.6, 2.5];
+const GRADED: [f64; 11] = [0.0, 0.06,0.12, 0.24, 0.4,0.6, 0.9, 1.2,1.6, 2.0,2.5];
 /// Places of the function from a corner, spacings; beyond, two spacings each. All are ends of panels.
 const PLACES: [f64; 4] = [0.0, 0.4, 1.6, 3.5];
 /// Distance from a corner up to which its power stands in the shear, spacings.
 const POWER_REACH: f64 = 8.0;
 /// Farthest from a corner that shear is given, spacings.
-const REACH: f64 = 5.0;
+
 /// Longest way between corners of one window, spacings.
-const GROUP: f64 = 7.0;
+
 /// From the ends of what a window gives to the end of its wall, and of its nodes, spacings.
-const MARGIN: f64 = 8.0;
-const NODE_MARGIN: f64 = 6.0;
+
+
 /// Distances of the nodes from the wall, spacings.
-const NEAREST: f64 = 2.0;
-const FARTHEST: f64 = 6.0;
+
+
 /// Nearest node to a re-entrant corner, spacings.
-const FROM_CORNER: f64 = 3.0;
+
 /// Depth behind the wall where zero is asked for: in spacings and as a share of the distance to a corner.
-const DEPTH: f64 = 0.5;
-const DEPTH_SHARE: f64 = 0.4;
+
+
 /// Degree of the harmonic polynomial.
-const DEGREE: usize = 7;
+
 /// Weight of a zero behind the wall against a node.
-const ZERO_WEIGHT: f64 = 3.0;
+
 /// Weight that keeps values near that of the whole window.
-const RIDGE: f64 = 1e-3;
+
 
 /// A straight piece of the wall, in spacings.
 struct Panel {
@@ -115,6 +115,7 @@ struct Singular {
     angle: f64,
     /// Distance along the wall to the corners before and after, spacings, and whether shear is given there too.
     gaps: [(f64, bool); 2],
+    singular: bool,
 }
 
 /// Distances of the panels' ends, or of the places, along a stretch with or without corners at its ends.
@@ -166,7 +167,7 @@ impl<'a> WallLayer<'a> {
                 let next = (k + 1) % n;
                 let power = |c: &Corner| (PI / c.fluid_angle().min(1.95 * PI) - 1.0).min(1.0);
                 layer.add_part(loop_index, own[k].arc_length, gap(k), [power(&own[k]), power(&own[next])]);
-                if own[k].turning < 0.0 {
+                {
                     let before = (k + n - 1) % n;
                     let at = layer.in_spacings(own[k].at);
                     let chord = |way: f64| {
@@ -181,6 +182,7 @@ impl<'a> WallLayer<'a> {
                         at,
                         first,
                         angle: (last - first).rem_euclid(TAU),
+                        singular: own[k].turning < 0.0,
                         gaps: [(gap(before), wanted(loop_index, before)), (gap(k), wanted(loop_index, next))],
                     });
                 }
@@ -196,8 +198,8 @@ impl<'a> WallLayer<'a> {
     fn add_part(&mut self, loop_index: usize, start: f64, length: f64, powers: [f64; 2]) {
         let h = self.lattice.spacing;
         let first = self.parts.last().map_or(0, |p| p.first + p.places.len());
-        let part = Part { loop_index, start, length, powers, places: breaks(length, &PLACES, 2.0), first };
-        let mut ends = breaks(length, &GRADED, 1.0);
+        let part = Part { loop_index, start, length, powers, places: breaks(length, &PLACES, knob("HAT", 2.0)), first };
+        let mut ends = breaks(length, &GRADED, knob("STEP", 0.5));
         ends.extend(&part.places);
         ends.sort_by(f64::total_cmp);
         ends.dedup_by(|a, b| *a - *b < 1e-3 * length.min(1.0));
@@ -228,7 +230,7 @@ impl<'a> WallLayer<'a> {
             let mut end = k + 1;
             let h = self.lattice.spacing;
             while end < chosen.len() && chosen[end].loop_index == chosen[k].loop_index
-                && (chosen[end].arc_length - chosen[k].arc_length) / h <= GROUP {
+                && (chosen[end].arc_length - chosen[k].arc_length) / h <= knob("GROUP", 7.0) {
                 end += 1;
             }
             let group = &chosen[k..end];
@@ -248,20 +250,20 @@ impl<'a> WallLayer<'a> {
     fn window(&self, group: &[&Singular], typical: f64) -> Option<Vec<(f64, f64)>> {
         let h = self.lattice.spacing;
         let (first, last) = (group.first()?, group.last()?);
-        let reach = |(gap, both): (f64, bool)| if both { REACH.min(0.5 * gap) } else { REACH.min(gap) };
+        let reach = |(gap, both): (f64, bool)| if both { knob("REACH", 5.0).min(0.5 * gap) } else { knob("REACH", 5.0).min(gap) };
         let (low, high) = (first.arc_length - reach(first.gaps[0]) * h, last.arc_length + reach(last.gaps[1]) * h);
         let path = self.paths[first.loop_index];
         let centre = self.in_spacings(path.position(0.5 * (low + high)));
         let half = [low, high, first.arc_length, last.arc_length].iter().map(|&s| distance(centre, self.in_spacings(path.position(s)))).fold(0.0, f64::max);
         let normal = path.chord_normal(low, high);
-        let radius = half + MARGIN;
+        let radius = half + knob("MARGIN", 8.0);
         let near = |p: Point, r: f64| distance(p, centre) <= r;
         let panels: Vec<&Panel> = self.panels.iter().filter(|p| near(p.ends[0], radius) && near(p.ends[1], radius)).collect();
         let mut columns: Vec<usize> = panels.iter().flat_map(|p| p.parts.map(|(k, _)| k)).collect();
         columns.sort_unstable();
         columns.dedup();
-        let corners: Vec<&Singular> = self.corners.iter().filter(|c| near(c.at, half + NODE_MARGIN)).collect();
-        let window = Window { panels, columns, corners, centre, normal, radius, rows: half + NODE_MARGIN };
+        let corners: Vec<&Singular> = self.corners.iter().filter(|c| c.singular && near(c.at, half + knob("NODE_MARGIN", 6.0))).collect();
+        let window = Window { panels, columns, corners, centre, normal, radius, rows: half + knob("NODE_MARGIN", 6.0) };
         let values = window.solve(self, typical)?;
         // Shear at the ends and middles of the panels.
         let mut found = Vec::new();
@@ -284,6 +286,13 @@ impl<'a> WallLayer<'a> {
         }
         Some(found)
     }
+}
+
+fn knob(name: &str, default: f64) -> f64 {
+    use std::sync::{Mutex, OnceLock};
+    static M: OnceLock<Mutex<std::collections::HashMap<String, f64>>> = OnceLock::new();
+    let m = M.get_or_init(|| Mutex::new(std::collections::HashMap::new()));
+    *m.lock().unwrap().entry(name.to_owned()).or_insert_with(|| std::env::var(name).ok().and_then(|v| v.parse().ok()).unwrap_or(default))
 }
 
 struct Window<'a> {
@@ -314,20 +323,20 @@ impl Window<'_> {
 
     fn solve(&self, layer: &WallLayer, typical: f64) -> Option<Vec<f64>> {
         let own = self.columns.len();
-        let count = own + 2 * DEGREE + 1 + self.corners.len();
+        let count = own + 2 * (knob("DEGREE", 5.0) as usize) + 1 + self.corners.len();
         let mut system = Rows { count: 0, matrix: DMatrix::zeros(count, count), right: DVector::zeros(count) };
         let mut row = vec![0.0; count];
         // Behind the wall.
         for panel in &self.panels {
             let part = &layer.parts[panel.stretch];
             let s = 0.5 * (panel.from + panel.to);
-            let depth = DEPTH.min(DEPTH_SHARE * s.min(part.length - s));
+            let depth = knob("DEPTH", 0.5).min(knob("DEPTH_SHARE", 0.4) * s.min(part.length - s));
             let [a, b] = panel.ends;
             let length = distance(a, b);
             let n = [(b[1] - a[1]) / length, (a[0] - b[0]) / length];
             let at = [0.5 * (a[0] + b[0]) + depth * n[0], 0.5 * (a[1] + b[1]) + depth * n[1]];
             if let Some((known, _)) = self.fill(at, &mut row, false) {
-                let weight = ZERO_WEIGHT * length.sqrt() * self.fade(at) ;
+                let weight = knob("ZERO_WEIGHT", 5.0) * length.sqrt() * self.fade(at) ;
                 system.add(&row, known, weight);
             }
         }
@@ -339,19 +348,19 @@ impl Window<'_> {
         for j in range(1) {
             for i in range(0) {
                 let at = [f64::from(i), f64::from(j)];
-                if (i + j) % 2 == 1 || distance(at, self.centre) > self.rows { continue; }
+                if ((i + j) % 2 == 1 && knob("CHECK", 1.0) > 0.5) || distance(at, self.centre) > self.rows { continue; }
                 let Some((colour, node)) = layer.mask.node_at(i, j) else { continue };
                 let Some(&value) = layer.phi.colour[colour as usize].get(node as usize) else { continue };
-                if self.corners.iter().any(|c| distance(c.at, at) < FROM_CORNER) { continue; }
+                if self.corners.iter().any(|c| distance(c.at, at) < knob("FROM_CORNER", 3.0)) { continue; }
                 if let Some((known, nearest)) = self.fill(at, &mut row, true) {
-                    if nearest < NEAREST || nearest > FARTHEST { continue; }
+                    if nearest < knob("NEAREST", 2.0) || nearest > knob("FARTHEST", 6.0) { continue; }
                     system.add(&row, known + value - self.particular(at), self.fade(at));
                     nodes += 1;
                 }
             }
         }
         if nodes < count / 2 { return None; }
-        let scale = RIDGE * RIDGE;
+        let scale = knob("RIDGE", 1e-3) * knob("RIDGE", 1e-3);
         for k in 0..count {
             let diagonal = system.matrix[(k, k)];
             if k < own {
@@ -409,7 +418,7 @@ impl Window<'_> {
         let z = [(at[0] - self.centre[0]) / self.radius, (at[1] - self.centre[1]) / self.radius];
         let mut power = [1.0, 0.0];
         row[own] = 1.0;
-        for k in 0..DEGREE {
+        for k in 0..(knob("DEGREE", 5.0) as usize) {
             power = [power[0] * z[0] - power[1] * z[1], power[0] * z[1] + power[1] * z[0]];
             row[own + 1 + 2 * k] = power[0];
             row[own + 2 + 2 * k] = power[1];
@@ -419,8 +428,8 @@ impl Window<'_> {
                 let (x, y) = (at[0] - c.at[0], at[1] - c.at[1]);
                 let step = PI / c.angle;
                 let theta = (y.atan2(x) - c.first).rem_euclid(TAU);
-                if theta < c.angle {
-                    row[own + 2 * DEGREE + 1 + k] = x.hypot(y).powf(-step) * (step * theta).sin();
+                if theta < c.angle && knob("DUAL", 1.0) > 0.5 {
+                    row[own + 2 * (knob("DEGREE", 5.0) as usize) + 1 + k] = x.hypot(y).powf(-step) * (step * theta).sin();
                 }
             }
         }

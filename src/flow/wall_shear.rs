@@ -10,7 +10,7 @@ use crate::geometry::{Corner, Outline, Point, corners};
 use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_UP, Colour, Lattice, Mask, NO_EDGE, NO_NODE, WallNode};
 use crate::solve::Field;
 
-use super::corner_field::corner_laws;
+use super::corner_field::{corner_laws, is_wedge};
 use super::corner_law::CornerLaw;
 use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::WallCurve;
@@ -245,17 +245,26 @@ fn sample(
 }
 
 impl Wall<'_> {
+    /// Whether the shear beside a corner has to come from the layer: no law describes it.
     fn needs_layer(&self, index: usize, laws: &[Option<[CornerLaw; 2]>], spacing: f64) -> bool {
         let count = self.corners.len();
-        if self.corners[index].turning >= 0.0 {
-            return false;
-        }
         let gap = |from: usize, to: usize| {
             let gap = self.corners[to].arc_length - self.corners[from].arc_length;
             if gap > 0.0 { gap } else { gap + self.path.length() }
         };
-        let room = gap((index + count - 1) % count, index).min(gap(index, (index + 1) % count));
-        laws[index].is_none() || room < SHORT * spacing
+        let (before, after) = ((index + count - 1) % count, (index + 1) % count);
+        let gaps = [gap(before, index), gap(index, after)];
+        let room = gaps[0].min(gaps[1]);
+        let corner = &self.corners[index];
+        if corner.turning < 0.0 {
+            return laws[index].is_none() || room < SHORT * spacing;
+        }
+        let beside = |k: usize, gap: f64| {
+            gap < SHORT * spacing && self.corners[k].turning < 0.0
+        };
+        let mode = std::env::var("CONVEX").map_or(3, |v| v.parse::<i32>().unwrap_or(3));
+        (mode & 1 == 1 && (beside(before, gaps[0]) || beside(after, gaps[1])))
+            || (mode & 2 == 2 && !is_wedge(&self.path, corner, (0.45 * room).min(12.0 * spacing), spacing))
     }
 
     /// Laws of a re-entrant corner from the nodes around it.

@@ -120,8 +120,13 @@ impl Stretch {
         (spacing, fallback): (f64, f64),
     ) -> Self {
         let leading = angles.map(|angle| CornerLaw::fit(angle, spacing, &[]).leading);
+        let is_fine = |end: usize| {
+            let from_end = |s: f64| if end == 0 { s } else { length - s };
+            fine.iter().any(|f| from_end(f.0) < 0.5 * spacing)
+        };
         let unresolved = [0, 1].map(|end| {
             let spacings = match (leading[end] < 0.0, &given[end]) {
+                (false, _) if is_fine(end) => NEAREST_SINGULAR,
                 (false, _) => UNRESOLVED,
                 (true, Some(_)) => UNRESOLVED_SINGULAR,
                 (true, None) => NEAREST_SINGULAR,
@@ -160,9 +165,9 @@ impl Stretch {
             let close: Vec<(f64, f64)> = fine
                 .iter()
                 .map(|&(s, v)| (if end == 0 { s } else { length - s }, v))
-                .filter(|&(r, _)| r <= reach)
+                .filter(|&(r, _)| r <= reach.min(SINGULAR_REACH * spacing))
                 .collect();
-            if leading[end] < 0.0 && !close.is_empty() {
+            if is_fine(end) {
                 CornerLaw::through(angles[end], spacing, &close)
             } else if leading[end] < 0.0 {
                 CornerLaw::power(angles[end], spacing, &from_end)

@@ -116,6 +116,13 @@ pub(crate) fn corner_laws(
     Some([side(1.0), side(-1.0)])
 }
 
+/// Whether both sides of a corner stay near a straight or gently bent line over a distance, m.
+pub(crate) fn is_wedge(path: &WallPath, corner: &Corner, reach: f64, spacing: f64) -> bool {
+    let reach = reach / spacing;
+    reach > 2.0 * SHORT_CHORD
+        && Wedge::new(path, corner, reach, spacing).describes(path, corner, reach)
+}
+
 impl Wedge {
     fn new(path: &WallPath, corner: &Corner, reach: f64, spacing: f64) -> Self {
         // Direction at the corner and its change with the distance, from two chords.

@@ -108,6 +108,31 @@ impl CornerLaw {
         }
     }
 
+    /// The leading powers of a corner fitted to shear close to it that is free of the grid's error.
+    pub(crate) fn through(angle: f64, unit: f64, samples: &[(f64, f64)]) -> Self {
+        let law = Self::of_terms(angle, unit, &[], 0.0);
+        let step = law.leading + 1.0;
+        let exponents = [step - 1.0, step, 2.0 * step - 1.0];
+        let count = exponents.len().min(samples.len());
+        let weight = |r: f64| r.powf(-law.leading.min(0.0));
+        let matrix = DMatrix::from_fn(samples.len(), count, |row, column| {
+            let r = samples[row].0 / unit;
+            weight(r) * r.powf(exponents[column])
+        });
+        let wanted = DVector::from_fn(samples.len(), |row, _| {
+            let (r, v) = samples[row];
+            weight(r / unit) * (v - law.particular(r))
+        });
+        let Ok(found) = matrix.svd(true, true).solve(&wanted, 1e-9) else {
+            return Self::power(angle, unit, samples);
+        };
+        let at = |k: usize| found.get(k).copied().unwrap_or(0.0);
+        Self {
+            powers: vec![[at(0), at(1)], [at(2), 0.0]],
+            ..law
+        }
+    }
+
     /// The law with known powers.
     ///
     /// - `powers`: coefficients of the powers `k pi/omega - 1` and `k pi/omega` of `r / unit`, m; those that are

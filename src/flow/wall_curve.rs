@@ -14,7 +14,7 @@ use super::wall_flux::WallFlux;
 use super::wall_path::WallPath;
 use super::wall_quadrature::GAUSS_2;
 use super::wall_statistics::WallReport;
-use super::wall_stretch::Stretch;
+use super::wall_stretch::{Samples, Stretch};
 
 /// Length beside a singular corner over which the mean stands for the shear, in hydraulic diameters.
 pub const SINGULAR_LENGTH: f64 = 0.05;
@@ -82,6 +82,36 @@ pub struct WallPlace {
     pub normal: Point,
 }
 
+/// What is known of the shear along the wall.
+pub(crate) struct ShearSources<'a> {
+    /// Slopes along lattice lines, sorted by loop and arc length.
+    pub(crate) samples: &'a [WallSample],
+    /// Of every loop, arc lengths and shear beside corners that are free of the grid's error, sorted, m.
+    pub(crate) layer: &'a [Vec<(f64, f64)>],
+    /// Of every loop and corner, the laws of the sides after and before it where they are known.
+    pub(crate) laws: &'a [Vec<Option<[CornerLaw; 2]>>],
+}
+
+/// The same of one loop, slopes as arc length and shear.
+struct LoopSources<'a> {
+    slopes: Vec<(f64, f64)>,
+    layer: &'a [(f64, f64)],
+    laws: &'a [Option<[CornerLaw; 2]>],
+}
+
+impl ShearSources<'_> {
+    fn of_loop(&self, index: usize) -> LoopSources<'_> {
+        let first = self.samples.partition_point(|s| s.loop_index < index);
+        let end = self.samples.partition_point(|s| s.loop_index <= index);
+        let own = self.samples[first..end].iter();
+        LoopSources {
+            slopes: own.map(|s| (s.arc_length, s.shear_per_gradient)).collect(),
+            layer: self.layer.get(index).map_or(&[], Vec::as_slice),
+            laws: self.laws.get(index).map_or(&[], Vec::as_slice),
+        }
+    }
+}
+
 impl WallCurve {
     /// The curve from samples.
     ///
@@ -92,35 +122,30 @@ impl WallCurve {
         samples: &[WallSample],
         spacing: f64,
     ) -> Self {
-        Self::with_laws(outline, corners, samples, spacing, |_, _| None).with_points()
+        let sources = ShearSources {
+            samples,
+            layer: &[],
+            laws: &[],
+        };
+        Self::from_sources(outline, corners, &sources, spacing).with_points()
     }
 
-    /// The curve with the laws of some corners known, still without its points.
-    ///
-    /// - `laws`: of the sides after and before a corner, from the indices of loop and corner
-    pub(crate) fn with_laws(
+    /// The curve from all that is known of the shear, still without its points.
+    pub(crate) fn from_sources(
         outline: &Outline,
         corners: &[Vec<Corner>],
-        samples: &[WallSample],
+        sources: &ShearSources<'_>,
         spacing: f64,
-        laws: impl Fn(usize, usize) -> Option<[CornerLaw; 2]>,
     ) -> Self {
         let singular_length = SINGULAR_LENGTH * 4.0 * outline.area() / outline.wetted_perimeter();
         let loops: Vec<LoopCurve> = outline
             .loops()
             .enumerate()
             .map(|(index, wall)| {
-                let first = samples.partition_point(|s| s.loop_index < index);
-                let end = samples.partition_point(|s| s.loop_index <= index);
-                let own: Vec<(f64, f64)> = samples[first..end]
-                    .iter()
-                    .map(|s| (s.arc_length, s.shear_per_gradient))
-                    .collect();
                 let path = WallPath::new(wall);
                 let length = path.length();
                 let corners = corners.get(index).map_or(&[][..], Vec::as_slice);
-                let own_laws: Vec<_> = (0..corners.len()).map(|k| laws(index, k)).collect();
-                let stretches = stretches(&path, corners, &own_laws, &own, spacing);
+                let stretches = stretches(&path, corners, &sources.of_loop(index), spacing);
                 LoopCurve {
                     points: Vec::new(),
                     path,
@@ -191,10 +216,10 @@ impl WallCurve {
 fn stretches(
     path: &WallPath,
     corners: &[Corner],
-    laws: &[Option<[CornerLaw; 2]>],
-    samples: &[(f64, f64)],
+    sources: &LoopSources<'_>,
     spacing: f64,
 ) -> Vec<Stretch> {
+    let samples = &sources.slopes;
     let total = path.length();
     if corners.is_empty() {
         return vec![Stretch::closed(total, samples, spacing)];
@@ -217,23 +242,32 @@ fn stretches(
             if length <= 0.0 {
                 length += total;
             }
-            let own: Vec<(f64, f64)> = [0.0, total]
-                .iter()
-                .flat_map(|turn| {
-                    let low = samples.partition_point(|s| s.0 + turn - start <= 0.0);
-                    let high = samples.partition_point(|s| s.0 + turn - start < length);
-                    let here = samples.get(low..high).unwrap_or(&[]);
-                    here.iter().map(move |&(s, v)| (s + turn - start, v))
-                })
-                .collect();
-            let fallback = if own.is_empty() {
+            let within = |all: &[(f64, f64)]| -> Vec<(f64, f64)> {
+                [0.0, total]
+                    .into_iter()
+                    .flat_map(|turn| {
+                        let low = all.partition_point(|s| s.0 + turn - start <= 0.0);
+                        let high = all.partition_point(|s| s.0 + turn - start < length);
+                        let here = all.get(low..high).unwrap_or(&[]);
+                        here.iter().map(move |&(s, v)| (s + turn - start, v))
+                    })
+                    .collect()
+            };
+            let own = Samples {
+                slopes: within(samples),
+                layer: within(sources.layer),
+            };
+            let fallback = if own.slopes.is_empty() {
                 nearest(start + 0.5 * length)
             } else {
                 0.0
             };
             let angles = [from.fluid_angle(), to.fluid_angle()];
             let side = |corner: usize, side: usize| {
-                let both = laws.get(corner % corners.len()).and_then(Option::as_ref);
+                let both = sources
+                    .laws
+                    .get(corner % corners.len())
+                    .and_then(Option::as_ref);
                 both.and_then(|pair| pair.get(side)).cloned()
             };
             let given = [side(k, 0), side(k + 1, 1)];

@@ -1,6 +1,6 @@
 //! Integrals of the wall shear and of its square along the wall.
 //!
-//! Every stretch between corners is cut at the pieces of the curve and, where a weight depends on the edge, at
+//! Every stretch between corners is cut at the pieces of the curve, at its kinks and, where a weight depends on the edge, at
 //! the vertices of the outline; on each part the rule of Gauss with four points is used, with two or one on
 //! parts far shorter than the spacing. Beside a corner, where shear to the power `n`
 //! behaves like `r^a` with `a = n (pi/omega - 1) > -1`, it is used in `t = r^(1/m)` with
@@ -182,6 +182,7 @@ impl LoopCurve {
         let pieces = (low / step).floor() as usize..=count.min((high / step).ceil() as usize);
         breaks.extend(pieces.map(|k| step * k as f64));
         breaks.extend([stretch.zone[0], stretch.length - stretch.zone[1]]);
+        breaks.extend(stretch.kinks());
         let vertices = self.path.vertices();
         for turn in [0.0, total] {
             let from = vertices.partition_point(|&v| v + turn <= stretch.start + low);

@@ -10,12 +10,14 @@ use crate::geometry::{Corner, Outline, Point, corners};
 use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_UP, Colour, Lattice, Mask, NO_EDGE, NO_NODE, WallNode};
 use crate::solve::Field;
 
-use super::corner_field::corner_laws;
+use super::corner_field::{corner_laws, is_wedge};
 use super::corner_law::CornerLaw;
 use super::section_flow::{WallSample, WallShear};
-use super::wall_curve::WallCurve;
+use super::wall_curve::{ShearSources, WallCurve};
 use super::wall_flux::wall_fluxes;
+use super::wall_layer::layer_samples;
 use super::wall_path::WallPath;
+use super::wall_stretch::{LAW_REACH, LAW_SHARE, SHORT};
 
 /// Turning from which a vertex or a small arc counts as a corner.
 pub(crate) const CORNER_TURNING: f64 = 10.0 * std::f64::consts::PI / 180.0;
@@ -105,9 +107,24 @@ pub(crate) fn wall_curve(
     samples: &[WallSample],
 ) -> (WallCurve, f64) {
     let walls = walls(outline, lattice, corners);
-    let curve = WallCurve::with_laws(outline, corners, samples, lattice.spacing, |l, c| {
-        walls.get(l)?.singular_laws((lattice, mask, phi), c)
-    });
+    let paths: Vec<&WallPath> = walls.iter().map(|wall| &wall.path).collect();
+    let laws: Vec<Vec<_>> = walls
+        .iter()
+        .map(|wall| wall.laws((lattice, mask, phi)))
+        .collect();
+    let wanted: Vec<Vec<bool>> = walls
+        .iter()
+        .zip(&laws)
+        .map(|(wall, laws)| wall.needs_layer(laws, lattice.spacing))
+        .collect();
+    let typical = outline.area() / outline.wetted_perimeter();
+    let layer = layer_samples((lattice, mask, phi), &paths, corners, &wanted, typical);
+    let sources = ShearSources {
+        samples,
+        layer: &layer,
+        laws: &laws,
+    };
+    let curve = WallCurve::from_sources(outline, corners, &sources, lattice.spacing);
     let at_wall = |loop_index: usize, arc_length: f64| -> Option<Point> {
         let wall: &Wall = walls.get(loop_index)?;
         let s = arc_length.rem_euclid(wall.path.length());
@@ -115,7 +132,6 @@ pub(crate) fn wall_curve(
         let shear = curve.loops.get(loop_index)?.shear_at(s);
         shear.is_finite().then(|| normal.map(|c| -shear * c))
     };
-    let paths: Vec<&WallPath> = walls.iter().map(|wall| &wall.path).collect();
     let fluxes = wall_fluxes((lattice, mask, phi), &paths, outline.area(), &at_wall);
     let (balanced, plain) = curve.balanced(&fluxes);
     (balanced.with_points(), plain)
@@ -226,21 +242,54 @@ fn sample(
 }
 
 impl Wall<'_> {
-    /// Laws of a re-entrant corner from the nodes around it.
-    fn singular_laws(
-        &self,
-        solution: (&Lattice, &Mask, &Field),
-        index: usize,
-    ) -> Option<[CornerLaw; 2]> {
-        let corner = self.corners.get(index).filter(|c| c.turning < 0.0)?;
-        let (total, count) = (self.path.length(), self.corners.len());
-        let gap = |from: usize, to: usize| {
-            let gap = self.corners[to].arc_length - self.corners[from].arc_length;
-            if gap > 0.0 { gap } else { gap + total }
+    /// Wall from every corner to the next, m.
+    fn gaps(&self) -> Vec<f64> {
+        let next = self.corners.iter().cycle().skip(1);
+        let gap = |(corner, next): (&Corner, &Corner)| {
+            let gap = next.arc_length - corner.arc_length;
+            if gap > 0.0 {
+                gap
+            } else {
+                gap + self.path.length()
+            }
         };
-        let (before, after) = ((index + count - 1) % count, (index + 1) % count);
-        let room = gap(before, index).min(gap(index, after));
-        corner_laws(solution, &self.path, corner, room)
+        self.corners.iter().zip(next).map(gap).collect()
+    }
+
+    /// Laws of the re-entrant corners from the nodes around them.
+    fn laws(&self, solution: (&Lattice, &Mask, &Field)) -> Vec<Option<[CornerLaw; 2]>> {
+        let gaps = self.gaps();
+        let before = gaps.last().into_iter().chain(&gaps);
+        let rooms = gaps.iter().zip(before).map(|(a, b)| a.min(*b));
+        self.corners
+            .iter()
+            .zip(rooms)
+            .map(|(corner, room)| {
+                let is_re_entrant = corner.turning < 0.0;
+                is_re_entrant
+                    .then(|| corner_laws(solution, &self.path, corner, room))
+                    .flatten()
+            })
+            .collect()
+    }
+
+    /// Whether the shear beside each corner has to come from the layer, as no law describes it.
+    fn needs_layer(&self, laws: &[Option<[CornerLaw; 2]>], spacing: f64) -> Vec<bool> {
+        let (gaps, count) = (self.gaps(), self.corners.len());
+        let is_beside =
+            |corner: usize, gap: f64| gap < SHORT * spacing && self.corners[corner].turning < 0.0;
+        let needs = |k: usize| {
+            let (before, after) = ((k + count - 1) % count, (k + 1) % count);
+            let room = gaps[before].min(gaps[k]);
+            if self.corners[k].turning < 0.0 {
+                return laws[k].is_none() || room < SHORT * spacing;
+            }
+            let reach = (LAW_SHARE * room).min(LAW_REACH * spacing);
+            is_beside(before, gaps[before])
+                || is_beside(after, gaps[k])
+                || !is_wedge(&self.path, &self.corners[k], reach, spacing)
+        };
+        (0..count).map(needs).collect()
     }
 
     /// Unit normal out of the fluid, from the chord over one spacing that stays between corners; `None` so

@@ -4,7 +4,8 @@
 //! distances from the nodes. Beside the corners the law of the corner holds ([`CornerLaw`]); what the laws
 //! leave of the samples is smoothed by quadratics over two and a half spacings to either side, and a cubic
 //! runs through the smoothed values. On a stretch too short for that the samples are interpolated after
-//! division by the leading powers of both corners.
+//! division by the leading powers of both corners. Where the layer on the wall (module `wall_layer`) gives the
+//! shear beside a corner, that stands for the slopes and the law goes through it.
 
 use nalgebra::{Matrix3, Vector3};
 
@@ -19,15 +20,21 @@ const NEAREST_SINGULAR: f64 = 1.0;
 /// Distance, in spacings, up to which samples decide the leading power of such a corner.
 const SINGULAR_REACH: f64 = 4.0;
 /// Distance from a convex corner, in spacings, up to which samples decide its law.
-const LAW_REACH: f64 = 12.0;
+pub(super) const LAW_REACH: f64 = 12.0;
 /// The same as a share of the stretch.
-const LAW_SHARE: f64 = 0.45;
+pub(super) const LAW_SHARE: f64 = 0.45;
 /// Distance from a corner, in pieces, from which its law is replaced by cubics, within 1e-6 of it.
 const LAW_NEAR: f64 = 8.0;
 /// Half the step of the difference that gives the slope of a law, in pieces.
 const SLOPE_STEP: f64 = 1e-3;
 /// Length, in spacings, below which a stretch is short.
-const SHORT: f64 = 14.0;
+pub(super) const SHORT: f64 = 14.0;
+/// Distance from a corner, in spacings, within which there must be a sample of the layer for a law from it.
+const AT_CORNER: f64 = 0.5;
+/// Distance from a sample of the layer, in spacings, within which slopes are left out.
+const SAME_AS_LAYER: f64 = 0.6;
+/// The same on a short stretch.
+const SAME_ON_SHORT: f64 = 1.0;
 /// Half width of the smoothing, in spacings.
 const SMOOTHING: f64 = 2.5;
 /// Least number of samples in the smoothing.
@@ -71,6 +78,36 @@ enum Shape {
     },
 }
 
+/// Distance from the start of a stretch and shear there, sorted, m.
+pub(crate) struct Samples {
+    /// From slopes along lattice lines.
+    pub(crate) slopes: Vec<(f64, f64)>,
+    /// From the layer on the wall beside corners: free of the grid's error.
+    pub(crate) layer: Vec<(f64, f64)>,
+}
+
+impl Samples {
+    /// Those of the layer up to a distance from an end, by the distance from it.
+    fn layer_beside(&self, end: usize, length: f64, reach: f64) -> Vec<(f64, f64)> {
+        let from_end = |&(s, v): &(f64, f64)| (if end == 0 { s } else { length - s }, v);
+        let beside = self.layer.iter().map(from_end).filter(|s| s.0 < reach);
+        beside.collect()
+    }
+
+    /// Those of the layer and the slopes that are not nearer to any of them than a distance.
+    fn merged(&self, distance: f64) -> Vec<(f64, f64)> {
+        let is_far = |&&(s, _): &&(f64, f64)| {
+            let next = self.layer.partition_point(|l| l.0 < s);
+            let near = self.layer[next.saturating_sub(1)..].iter().take(2);
+            near.into_iter().all(|l| (l.0 - s).abs() >= distance)
+        };
+        let slopes = self.slopes.iter().filter(is_far).copied();
+        let mut all: Vec<(f64, f64)> = slopes.chain(self.layer.iter().copied()).collect();
+        all.sort_by(|a, b| a.0.total_cmp(&b.0));
+        all
+    }
+}
+
 impl Stretch {
     /// A closed loop without corners.
     ///
@@ -107,31 +144,32 @@ impl Stretch {
 
     /// A stretch between two corners with the given fluid angles.
     ///
-    /// - `samples`: distance from the start and shear, sorted, m
     /// - `given`: laws of the corners that are known already
     /// - `spacing`: of the lattice, m; `fallback`: shear where there is no sample, m
     pub(crate) fn between(
         start: f64,
         length: f64,
         angles: [f64; 2],
-        samples: &[(f64, f64)],
+        samples: &Samples,
         given: [Option<CornerLaw>; 2],
         (spacing, fallback): (f64, f64),
     ) -> Self {
         let leading = angles.map(|angle| CornerLaw::fit(angle, spacing, &[]).leading);
+        let has_layer = [0, 1].map(|end| {
+            let beside = samples.layer_beside(end, length, AT_CORNER * spacing);
+            !beside.is_empty()
+        });
         let unresolved = [0, 1].map(|end| {
             let spacings = match (leading[end] < 0.0, &given[end]) {
+                (false, _) if has_layer[end] => NEAREST_SINGULAR,
                 (false, _) => UNRESOLVED,
                 (true, Some(_)) => UNRESOLVED_SINGULAR,
                 (true, None) => NEAREST_SINGULAR,
             };
             spacings * spacing
         });
-        let inner: Vec<(f64, f64)> = samples
-            .iter()
-            .copied()
-            .filter(|&(s, _)| s >= unresolved[0] && length - s >= unresolved[1])
-            .collect();
+        let mut inner = samples.merged(SAME_AS_LAYER * spacing);
+        inner.retain(|&(s, _)| s >= unresolved[0] && length - s >= unresolved[1]);
         if length < SHORT * spacing || inner.len() < LEAST_SAMPLES {
             return Self {
                 start,
@@ -152,7 +190,11 @@ impl Stretch {
                 .map(|&(s, v)| (if end == 0 { s } else { length - s }, v))
                 .filter(|&(r, _)| r <= reach)
                 .collect();
-            if leading[end] < 0.0 {
+            if has_layer[end] {
+                let reach = reach.min(SINGULAR_REACH * spacing);
+                let beside = samples.layer_beside(end, length, reach);
+                CornerLaw::through(angles[end], spacing, &beside)
+            } else if leading[end] < 0.0 {
                 CornerLaw::power(angles[end], spacing, &from_end)
             } else {
                 CornerLaw::fit(angles[end], spacing, &from_end)
@@ -179,6 +221,15 @@ impl Stretch {
             Shape::Smooth { pieces, .. } => pieces.len(),
             Shape::Short { .. } => pieces(self.length, 0.5 * spacing),
         }
+    }
+
+    /// Distances from the start at which the slope of the curve jumps, m.
+    pub(crate) fn kinks(&self) -> impl Iterator<Item = f64> {
+        let places = match &self.shape {
+            Shape::Smooth { .. } => &[][..],
+            Shape::Short { places, .. } => places,
+        };
+        places.iter().map(|place| place.0 * self.length)
     }
 
     /// Shear at a distance from the start, m; without bound towards a re-entrant corner.
@@ -362,18 +413,12 @@ fn between_places(places: &[(f64, f64)], at: f64) -> f64 {
 }
 
 /// The samples of a short stretch over both leading powers.
-fn short(
-    length: f64,
-    leading: [f64; 2],
-    samples: &[(f64, f64)],
-    spacing: f64,
-    fallback: f64,
-) -> Shape {
+fn short(length: f64, leading: [f64; 2], samples: &Samples, spacing: f64, fallback: f64) -> Shape {
     // Beside an acute corner the linear particular part leads.
     let powers = leading.map(|e| e.min(1.0));
     let away = |least: f64| -> Vec<(f64, f64)> {
         let far = |s: &&(f64, f64)| s.0.min(length - s.0) >= least;
-        samples.iter().filter(far).copied().collect()
+        samples.slopes.iter().filter(far).copied().collect()
     };
     let mut used = away(spacing);
     if used.len() < 2 {
@@ -383,6 +428,18 @@ fn short(
         used = vec![(0.5 * length, fallback)];
     }
     let basis = |s: f64| ends([s / length, 1.0 - s / length], powers);
+    if !samples.layer.is_empty() {
+        let places = Samples {
+            slopes: away(spacing),
+            layer: samples.layer.clone(),
+        }
+        .merged(SAME_ON_SHORT * spacing);
+        let places = places.into_iter().map(|(s, v)| (s / length, v / basis(s)));
+        return Shape::Short {
+            powers,
+            places: places.collect(),
+        };
+    }
     if length < STEADY * spacing {
         // One sample beside a corner must not decide the middle.
         let (sum, of_basis) = used

@@ -1,50 +1,50 @@
 //! From the solved grids to the answers of a section.
 
 use crate::geometry::{Corner, Outline};
-use crate::grid::{Lattice, Mask};
 use crate::measured::Estimate;
-use crate::proof::{Bracket, ProofError};
-use crate::solve::Field;
+use crate::proof::Bracket;
 
 use super::accuracy::Accuracy;
+use super::attempt::{Attempt, WallAnswer};
 use super::extrapolation::extrapolate;
-use super::grid_integrals::GridIntegrals;
 use super::identities::identities;
 use super::range_extrapolation::from_ranges;
 use super::section_flow::{
-    GridReport, LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
+    LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
 };
 use super::solve_warnings::{ISLAND_CELLS, warnings};
 use super::solved_grids::{GridAnswer, SolvedGrids};
 use super::tangents::tangents;
-use super::wall_shear::{wall_curve, wall_samples, without_curve};
-use super::width_source::width_source;
+use super::wall_curve::WallCurve;
+use super::wall_shear::without_curve;
 
 /// Fluid angle, radians, from which the term of a corner is removed by extrapolation: its exponent there
 /// is 3.6.
 const WIDE_CORNER: f64 = 100.0 * std::f64::consts::PI / 180.0;
 
-/// The answers but for the curve of the wall shear, the identities and the warnings, which are only worth
-/// their time on the grid that is kept; see [`finish`].
+/// The answers, from the grid that is kept.
+///
+/// - `conductance`: best value, m^4
 pub(super) fn assemble(
     outline: &Outline,
-    grids: &SolvedGrids,
-    bracket: Result<Bracket, ProofError>,
-    grid: GridReport,
-    seconds: f64,
+    attempt: &Attempt,
+    conductance: Estimate,
+    wall: WallAnswer,
 ) -> SectionFlow {
+    let Attempt {
+        grids,
+        grid,
+        bracket,
+        ..
+    } = attempt;
     let SolvedGrids {
         lattice,
-        mask,
-        phi,
         corners,
         answers,
         ..
     } = grids;
     let geometry = geometry(outline);
     let h = grid.spacing;
-    let samples = wall_samples(outline, (lattice, mask, phi), corners);
-    let conductance = best_conductance(outline, grids, &samples, bracket.ok());
     let over_grids = |of: &dyn Fn(&GridAnswer) -> f64| {
         let values: Vec<f64> = useful(answers).iter().map(of).collect();
         to_limit(outline, grids, &values)
@@ -55,9 +55,9 @@ pub(super) fn assemble(
     let finest = answers.first().map(|a| a.integrals).unwrap_or_default();
     let (area, diameter) = (geometry.area, geometry.hydraulic_diameter);
     let fanning_dh = diameter * diameter * area / (2.0 * conductance.value);
-    SectionFlow {
+    let mut flow = SectionFlow {
         conductance,
-        bracket,
+        bracket: *bracket,
         conductance_finest_grid: finest.conductance * h.powi(4),
         fanning_dh,
         darcy_dh: 4.0 * fanning_dh,
@@ -71,49 +71,47 @@ pub(super) fn assemble(
         },
         momentum_factor: ratio(square, conductance, 2, area),
         kinetic_energy_factor: ratio(cube, conductance, 3, area * area),
-        wall_shear: without_curve(outline, corners, samples),
-        solver: solver_report(answers, h, seconds),
-        grid,
+        wall_shear: without_curve(outline, corners, wall.samples),
+        solver: solver_report(answers, h, attempt.seconds),
+        grid: grid.clone(),
         geometry,
         identities: Vec::new(),
         accuracy: Accuracy {
-            source: width_source(lattice, mask, phi, corners),
+            source: attempt.source,
             ..Accuracy::default()
         },
         warnings: Vec::new(),
-    }
+    };
+    finish(&mut flow, outline, grids, (wall.curve, wall.plain));
+    flow
 }
 
-/// Adds the curve of the wall shear, the identities, and the warnings before those that are there.
+/// Adds the curve of the wall shear, the identities and the warnings.
 ///
-/// - `finest`: integrals of the finest grid, lattice units
-pub(super) fn finish(
+/// - `curve`: with its mean before it was balanced
+fn finish(
     flow: &mut SectionFlow,
     outline: &Outline,
-    (lattice, mask, phi): (&Lattice, &Mask, &Field),
-    corners: &[Vec<Corner>],
-    finest: GridIntegrals,
+    grids: &SolvedGrids,
+    (curve, plain): (WallCurve, f64),
 ) {
     let shear = &mut flow.wall_shear;
-    let solution = (lattice, mask, phi);
-    let (curve, plain) = wall_curve(outline, solution, corners, &shear.samples);
     if let Some(largest) = curve.largest() {
         shear.max_per_gradient = largest.shear_per_gradient;
         shear.max_at = largest.at;
     }
     shear.curve = curve;
     let h = flow.grid.spacing;
+    let finest = grids.answers.first().map(|a| a.integrals);
     flow.identities = identities(
         outline,
-        corners,
+        &grids.corners,
         (&shear.curve, plain),
         flow.conductance.value,
-        (finest, h.powi(4)),
+        (finest.unwrap_or_default(), h.powi(4)),
         flow.grid.cells_across,
     );
-    let mut all = warnings(flow, small_islands(outline, h), mask.pinned.len());
-    all.append(&mut flow.warnings);
-    flow.warnings = all;
+    flow.warnings = warnings(flow, small_islands(outline, h), grids.mask.pinned.len());
 }
 
 /// Answers of the grids that extrapolation uses: grids with hardly any nodes say nothing about the limit.
@@ -137,11 +135,13 @@ fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64]) -> Estimate 
 }
 
 /// Best value of `K`, m^4, from the sequence of grids and the proven ranges.
+///
+/// - `ranges`: proven, and that of the second grid, m^4
 pub(super) fn best_conductance(
     outline: &Outline,
     grids: &SolvedGrids,
     samples: &[WallSample],
-    proven: Option<Bracket>,
+    [proven, coarse]: [Option<Bracket>; 2],
 ) -> Estimate {
     let spacing = grids.lattice.spacing;
     let curved = tangents(outline, samples, spacing);
@@ -162,8 +162,7 @@ pub(super) fn best_conductance(
         return extrapolated;
     };
     let is_re_entrant = leading_exponent(&grids.corners).is_some_and(|p| p < 2.0);
-    grids
-        .coarse_range
+    coarse
         .and_then(|coarse| from_ranges(extrapolated, proven, coarse, is_re_entrant))
         .unwrap_or_else(|| within(extrapolated, proven, is_re_entrant))
 }

@@ -2,6 +2,7 @@
 
 mod accuracy;
 mod assemble;
+mod attempt;
 mod chords;
 pub mod closed_form;
 mod corner_alignment;

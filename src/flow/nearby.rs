@@ -155,9 +155,13 @@ fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Estima
     let solution = (&grids.lattice, &grids.mask, &grids.phi);
     let samples = wall_samples(outline, solution, &grids.corners);
     // Only wide corners call for the proven range.
-    let proven = grids
-        .coarse_range
-        .and_then(|_| bracket(&grids.lattice, &grids.mask, &grids.phi).ok());
+    let coarse = grids.coarse_range(outline);
+    let proven = coarse.and_then(|_| bracket(&grids.lattice, &grids.mask, &grids.phi).ok());
     let proven = proven.map(|range| range.scaled(grids.lattice.spacing.powi(4)));
-    Ok(best_conductance(outline, &grids, &samples, proven))
+    Ok(best_conductance(
+        outline,
+        &grids,
+        &samples,
+        [proven, coarse],
+    ))
 }

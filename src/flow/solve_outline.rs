@@ -2,19 +2,17 @@
 
 use std::time::Instant;
 
-use crate::geometry::{Corner, Outline, largest_inscribed_circle};
-use crate::grid::{Lattice, Mask, ResolutionError, spacing};
-use crate::proof::bracket;
+use crate::geometry::{Outline, largest_inscribed_circle};
+use crate::grid::{Lattice, Mask, ResolutionError};
 use crate::solve::Field;
 use crate::warning::{Code, Warning};
 
 use super::accuracy::{DEFAULT_TOLERANCE, Goal, further, judge, refine};
-use super::assemble::{assemble, finish};
+use super::attempt::Attempt;
 use super::field::DenseField;
-use super::grid_integrals::GridIntegrals;
-use super::section_flow::{GridReport, SectionFlow};
-use super::solve_cost::{SolveCost, StageClock, StageCost};
-use super::solved_grids::{WIDE_EXPONENT, solve_grids};
+use super::section_flow::SectionFlow;
+use super::solve_cost::SolveCost;
+use super::solved_grids::SolvedGrids;
 
 /// Estimated relative error of `K` from which a grid that was asked for is called rough.
 const ROUGH: f64 = 1e-3;
@@ -106,29 +104,24 @@ pub struct SolvedSection {
     mask: Mask,
     phi: Field,
     cost: SolveCost,
-    corners: Vec<Vec<Corner>>,
-    /// Of the finest grid, lattice units.
-    integrals: GridIntegrals,
 }
 
 impl SolvedSection {
-    /// With the curve of the wall shear and what depends on it.
-    fn finished(mut self) -> Self {
-        let start = Instant::now();
-        let solution = (&self.lattice, &self.mask, &self.phi);
-        let finest = self.integrals;
-        finish(
-            &mut self.flow,
-            &self.outline,
-            solution,
-            &self.corners,
-            finest,
-        );
-        self.cost.stages.push(StageCost {
-            name: "wall shear",
-            seconds: start.elapsed().as_secs_f64(),
-        });
-        self
+    /// - `flow`: read off the grids
+    pub(super) fn new(
+        flow: SectionFlow,
+        outline: Outline,
+        grids: SolvedGrids,
+        cost: SolveCost,
+    ) -> Self {
+        Self {
+            flow,
+            outline,
+            cost,
+            lattice: grids.lattice,
+            mask: grids.mask,
+            phi: grids.phi,
+        }
     }
 
     /// The section on a finer grid, judged by the goal of the search that found this one.
@@ -151,14 +144,15 @@ impl SolvedSection {
         }
         let start = Instant::now();
         let diameter = grid.inscribed_diameter;
-        let mut solved = solve_at(&self.outline, diameter, cells_across, options).ok()?;
+        let attempt = Attempt::new(&self.outline, diameter, cells_across, options).ok()?;
+        let mut solved = attempt.answered(&self.outline);
         if let Some(goal) = self.flow.accuracy.goal {
             let (stop, seconds) = (self.flow.accuracy.stop, start.elapsed().as_secs_f64());
             let options = SolveOptions { goal, ..*options };
             judge(&mut solved.flow, &self.outline, &options, stop, seconds);
         }
         let is_worse = self.flow.accuracy.is_met && !solved.flow.accuracy.is_met;
-        (!is_worse).then(|| solved.finished())
+        (!is_worse).then_some(solved)
     }
 
     /// The outline that was solved, oriented.
@@ -207,14 +201,13 @@ pub fn solve_outline(
         .iter()
         .map(|lumen| largest_inscribed_circle(lumen).map_or(0.0, |circle| 2.0 * circle.radius))
         .fold(f64::INFINITY, f64::min);
-    let attempt = |cells: f64| solve_at(&outline, diameter, cells, options);
     let Some(cells) = options.cells_across else {
-        return refine(&outline, diameter, options, attempt).map(SolvedSection::finished);
+        return refine(&outline, diameter, options);
     };
-    let mut solved = attempt(cells)?;
+    let mut solved = Attempt::new(&outline, diameter, cells, options)?.answered(&outline);
     solved.flow.accuracy.further = further(&outline, &solved.flow);
     warn_if_rough(&mut solved.flow, ROUGH);
-    Ok(solved.finished())
+    Ok(solved)
 }
 
 /// Adds a warning where the estimated error of `K` is above a limit.
@@ -232,53 +225,4 @@ fn warn_if_rough(flow: &mut SectionFlow, limit: f64) {
             numbers: vec![("reached", reached), ("asked", limit)],
         });
     }
-}
-
-fn solve_at(
-    outline: &Outline,
-    diameter: f64,
-    cells_across: f64,
-    options: &SolveOptions,
-) -> Result<SolvedSection, FlowError> {
-    let start = Instant::now();
-    let mut clock = StageClock::start();
-    let asked = spacing(outline, diameter, cells_across, options.memory_limit)?;
-    let grids = solve_grids(
-        outline,
-        asked,
-        cells_across,
-        options.grid_offset,
-        WIDE_EXPONENT,
-        &mut clock,
-    )?;
-    let seconds = start.elapsed().as_secs_f64();
-    clock.lap();
-    let bracket = bracket(&grids.lattice, &grids.mask, &grids.phi).map(|b| {
-        let mut proven = b.scaled(grids.lattice.spacing.powi(4));
-        proven.high += options.conductance_left_out;
-        proven
-    });
-    clock.end("proof");
-    let grid = GridReport {
-        spacing: grids.lattice.spacing,
-        fluid_nodes: grids.mask.nodes(),
-        cells_across: diameter / grids.lattice.spacing,
-        inscribed_diameter: diameter,
-    };
-    let flow = assemble(outline, &grids, bracket, grid, seconds);
-    clock.end("answers");
-    Ok(SolvedSection {
-        flow,
-        outline: outline.clone(),
-        lattice: grids.lattice,
-        mask: grids.mask,
-        phi: grids.phi,
-        cost: clock.cost(),
-        corners: grids.corners,
-        integrals: grids
-            .answers
-            .first()
-            .map(|a| a.integrals)
-            .unwrap_or_default(),
-    })
 }

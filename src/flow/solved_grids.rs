@@ -39,8 +39,28 @@ pub(super) struct SolvedGrids {
     pub(super) misfit: f64,
     /// Finest first.
     pub(super) answers: Vec<GridAnswer>,
-    /// Proven range of the second grid, m^4, where corners make a second witness welcome.
-    pub(super) coarse_range: Option<Bracket>,
+    /// The second grid where corners make a second witness welcome.
+    second: Option<SecondGrid>,
+}
+
+/// A grid of twice the spacing.
+struct SecondGrid {
+    mask: Mask,
+    /// Its solution, in units of its own spacing squared.
+    phi: Field,
+    /// Place of the finest lattice, in units of the finest spacing.
+    offset: [f64; 2],
+}
+
+impl SolvedGrids {
+    /// Proven range of the second grid, m^4, where it is welcome.
+    pub(super) fn coarse_range(&self, outline: &Outline) -> Option<Bracket> {
+        let SecondGrid { mask, phi, offset } = self.second.as_ref()?;
+        let spacing = 2.0 * self.lattice.spacing;
+        let lattice = Lattice::new(outline, spacing, offset.map(|o| 0.5 * o));
+        let range = bracket(&lattice, mask, phi).ok()?;
+        Some(range.scaled(spacing.powi(4)))
+    }
 }
 
 /// Solves the grids of a section.
@@ -48,7 +68,7 @@ pub(super) struct SolvedGrids {
 /// - `asked`: spacing of the finest, m; up to an eighth smaller where corners are put on nodes
 /// - `cells_across`: about, decides how far the iteration goes
 /// - `offset`: place of the lattice where it is given
-/// - `wide`: exponent of the widest corner below which the range of the second grid is worked out
+/// - `wide`: exponent of the widest corner below which the range of the second grid is welcome
 pub(super) fn solve_grids(
     outline: &Outline,
     asked: f64,
@@ -76,15 +96,12 @@ pub(super) fn solve_grids(
         second,
     } = solve_sequence(&lattice, cells_across, is_wide, clock)
         .ok_or(FlowError::NoFluidNode { spacing })?;
-    let coarse_range = second.and_then(|phi| {
-        let coarse = Lattice::new(outline, 2.0 * spacing, fitted.offset.map(|o| 0.5 * o));
-        let range = bracket(&coarse, &hierarchy.grids.get(1)?.mask, &phi).ok()?;
-        Some(range.scaled(coarse.spacing.powi(4)))
+    let (mask, phi, second_mask) = hierarchy.into_two_finest();
+    let second = second.zip(second_mask).map(|(phi, mask)| SecondGrid {
+        mask,
+        phi,
+        offset: fitted.offset,
     });
-    if is_wide {
-        clock.end("range of the second grid");
-    }
-    let (mask, phi) = hierarchy.into_finest();
     Ok(SolvedGrids {
         lattice,
         mask,
@@ -92,7 +109,7 @@ pub(super) fn solve_grids(
         corners,
         misfit: fitted.misfit,
         answers,
-        coarse_range,
+        second,
     })
 }
 

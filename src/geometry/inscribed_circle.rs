@@ -154,13 +154,14 @@ impl Search {
     /// somewhere else.
     fn first_circles(&mut self) {
         let count = self.edges.len();
-        let length = |edge: &usize| {
-            let [a, b] = self.edges.ends(*edge);
-            distance(a, b)
-        };
         let mut chosen: Vec<usize> = (0..count).collect();
         if count > FIRST_CIRCLES {
-            let longest_first = |e: &usize, f: &usize| length(f).total_cmp(&length(e));
+            let length = |edge: usize| {
+                let [a, b] = self.edges.ends(edge);
+                distance(a, b)
+            };
+            let lengths: Vec<f64> = (0..count).map(length).collect();
+            let longest_first = |e: &usize, f: &usize| lengths[*f].total_cmp(&lengths[*e]);
             chosen.select_nth_unstable_by(FIRST_CIRCLES / 8, longest_first);
             chosen.truncate(FIRST_CIRCLES / 8);
             // Multiples of the golden ratio meet no pattern of the wall in step.

@@ -51,13 +51,22 @@ impl Loop {
 
     /// Edges as pairs of end points, in order, the closing edge last.
     pub fn edges(&self) -> impl Iterator<Item = (Point, Point)> + '_ {
-        let next = self.points.iter().cycle().skip(1);
-        self.points.iter().zip(next).map(|(&a, &b)| (a, b))
+        let closing = self.points.last().zip(self.points.first());
+        let pairs = self.points.array_windows();
+        let open = pairs.map(|&[a, b]| (a, b));
+        open.chain(closing.map(|(&a, &b)| (a, b)))
     }
 
     /// Area with sign: positive when the loop turns anticlockwise, m^2.
     pub fn signed_area(&self) -> f64 {
-        self.signed_area_and_moments().0
+        let Some(&o) = self.points.first() else {
+            return 0.0;
+        };
+        let from = |p: Point| [p[0] - o[0], p[1] - o[1]];
+        self.edges().fold(0.0, |area, (a, b)| {
+            let (a, b) = (from(a), from(b));
+            area + 0.5 * (a[0] * b[1] - b[0] * a[1])
+        })
     }
 
     /// Length of the loop, m.
@@ -150,14 +159,15 @@ impl Outline {
 
     /// Lower left and upper right corner of the bounding box, m; `None` without vertices.
     pub fn bounds(&self) -> Option<(Point, Point)> {
-        let mut points = self.loops().flat_map(|l| l.points.iter());
-        let &first = points.next()?;
-        Some(points.fold((first, first), |(low, high), p| {
-            (
-                [low[0].min(p[0]), low[1].min(p[1])],
-                [high[0].max(p[0]), high[1].max(p[1])],
-            )
-        }))
+        let &first = self.loops().find_map(|wall| wall.points.first())?;
+        let (mut low, mut high) = (first, first);
+        for p in self.loops().flat_map(|wall| &wall.points) {
+            for axis in 0..2 {
+                low[axis] = low[axis].min(p[axis]);
+                high[axis] = high[axis].max(p[axis]);
+            }
+        }
+        Some((low, high))
     }
 
     /// Centroid of the flow area, m.

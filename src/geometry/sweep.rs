@@ -34,6 +34,14 @@ struct OnLine {
     edge: usize,
 }
 
+impl OnLine {
+    /// Lowest and highest point.
+    fn heights(&self) -> [f64; 2] {
+        let (a, b) = (self.left[1], self.right[1]);
+        if a < b { [a, b] } else { [b, a] }
+    }
+}
+
 struct Sweep<'a> {
     edges: &'a WallEdges,
     line: BTreeSet<OnLine>,
@@ -80,6 +88,14 @@ impl Sweep<'_> {
         let both = [self.edges.previous(vertex), vertex].map(|edge| self.on_line(edge));
         let here = self.edges.start[vertex];
         let ends_here = |e: &OnLine| order(e.right, here) == Ordering::Equal;
+        if !both.iter().any(|e| self.aside[e.edge]) {
+            let [first, second] = both;
+            match [ends_here(&first), ends_here(&second)] {
+                [true, false] => return self.go_on(&first, second),
+                [false, true] => return self.go_on(&second, first),
+                _ => {}
+            }
+        }
         for edge in both.iter().filter(|e| ends_here(e)) {
             if !self.aside[edge.edge] {
                 self.leave(edge);
@@ -140,16 +156,36 @@ impl Sweep<'_> {
 
     fn leave(&mut self, edge: &OnLine) {
         self.line.remove(edge);
-        let Some(below) = self.below(edge) else {
-            return;
-        };
-        while let Some(above) = self.above(edge) {
-            if !self.touch(&below, &above) {
+        if let Some(below) = self.below(edge) {
+            self.close(&below, edge);
+        }
+    }
+
+    /// Tests the edges on both sides of where one was taken out.
+    fn close(&mut self, below: &OnLine, taken_out: &OnLine) {
+        while let Some(above) = self.above(taken_out) {
+            if !self.touch(below, &above) {
                 return;
             }
             self.line.remove(&above);
             self.set_aside(above.edge);
         }
+    }
+
+    /// One edge ends where another begins, which takes its place between the same neighbours.
+    fn go_on(&mut self, ending: &OnLine, beginning: OnLine) {
+        self.line.remove(ending);
+        let neighbours = [self.below(ending), self.above(ending)];
+        for neighbour in neighbours.into_iter().flatten() {
+            if self.touch(&neighbour, &beginning) {
+                self.set_aside(beginning.edge);
+                if let [Some(below), Some(_)] = neighbours {
+                    self.close(&below, ending);
+                }
+                return;
+            }
+        }
+        self.line.insert(beginning);
     }
 
     /// At the leftmost vertex of a loop: its direction of travel, and the loop it lies in, from the
@@ -178,6 +214,14 @@ impl Ord for OnLine {
     fn cmp(&self, other: &Self) -> Ordering {
         if self.edge == other.edge {
             return Ordering::Equal;
+        }
+        // The sweep line meets both, so heights that do not overlap decide.
+        let ([low, high], [other_low, other_high]) = (self.heights(), other.heights());
+        if high < other_low {
+            return Ordering::Less;
+        }
+        if other_high < low {
+            return Ordering::Greater;
         }
         let side = match order(self.left, other.left) {
             Ordering::Equal => Ordering::Equal,

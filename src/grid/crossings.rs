@@ -38,6 +38,11 @@ impl LineCrossings {
         self.starts.len() - 1
     }
 
+    /// Number of crossings of all lines.
+    pub(super) fn count(&self) -> usize {
+        self.items.len()
+    }
+
     /// Crossings of one line in rising order.
     pub fn line(&self, index: usize) -> &[Crossing] {
         &self.items[self.starts[index]..self.starts[index + 1]]
@@ -82,15 +87,52 @@ impl LineCrossings {
 
 /// Lines `c` with `min(a, b) <= c < max(a, b)`, clipped to `0..lines`.
 fn span(a: f64, b: f64, lines: usize) -> std::ops::Range<usize> {
-    let first = a.min(b).ceil().max(0.0) as usize;
-    let end = a.max(b).ceil().max(0.0) as usize;
+    let first = line_from(a.min(b));
+    let end = line_from(a.max(b));
     first.min(lines)..end.min(lines)
+}
+
+/// The first line not below a place.
+fn line_from(at: f64) -> usize {
+    rounded_up(at).max(0.0) as usize
+}
+
+/// The largest whole number not above a place in the lattice. `f64::floor` is a call into a library on processors
+/// that every x86-64 program must reckon with, which shows where it is made for every vertex.
+pub(super) fn rounded_down(at: f64) -> f64 {
+    let whole = at as i64 as f64;
+    if whole > at { whole - 1.0 } else { whole }
+}
+
+/// The least whole number not below a place in the lattice.
+pub(super) fn rounded_up(at: f64) -> f64 {
+    let whole = at as i64 as f64;
+    if whole < at { whole + 1.0 } else { whole }
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
     use crate::geometry::Outline;
+
+    #[test]
+    fn rounding_agrees_with_that_of_the_library() {
+        for at in [
+            0.0,
+            0.25,
+            1.0,
+            1.5,
+            3.999_999_999,
+            -1e-9,
+            -0.5,
+            -2.0,
+            -2.5,
+            1e9 + 0.5,
+        ] {
+            assert!((rounded_down(at) - at.floor()).abs() <= 0.0, "{at}");
+            assert!((rounded_up(at) - at.ceil()).abs() <= 0.0, "{at}");
+        }
+    }
 
     #[test]
     fn crossings_of_a_diamond_come_in_pairs_and_in_place() {

@@ -9,9 +9,9 @@
 //! grid's and both see the same crossings: the wall never moves between grids. Arms end at the exact
 //! crossing with the outline. A node closer to the wall than [`ON_WALL`] counts as wall.
 
-use super::crossings::LineCrossings;
+use super::crossings::{LineCrossings, rounded_down};
 use super::lattice::Lattice;
-use super::runs::{Cut, collect_runs, nodes_at_vertices, nodes_on_wall, number, pins};
+use super::runs::{Cut, collect_runs, in_order, nodes_at_vertices, nodes_on_wall, number, pins};
 
 /// Distance in lattice units below which a node counts as lying on the wall.
 pub(super) const ON_WALL: f64 = 1e-6;
@@ -178,7 +178,9 @@ impl Mask {
         removed.extend(pinned.iter().map(|&(i, j)| (j, i, NO_EDGE)));
         removed.sort_unstable();
         removed.dedup_by_key(|r| (r.0, r.1));
-        let mut cuts = Vec::new();
+        // A crossing of a row cuts one arm, of a column mostly two.
+        let most_cuts = (rows.count() + 2 * columns.count()) / stride as usize + 16;
+        let mut cuts = Vec::with_capacity(most_cuts);
         let (mut runs, row_start) = collect_runs(rows, stride, &removed, &mut cuts);
         let count = number(&mut runs);
         let mut mask = Self {
@@ -194,13 +196,7 @@ impl Mask {
         };
         mask.cut_columns(columns, &mut cuts);
         mask.cut_uncovered(&mut cuts);
-        cuts.sort_unstable_by(|a, b| {
-            (a.run, a.i, a.direction)
-                .cmp(&(b.run, b.i, b.direction))
-                .then(a.arm.total_cmp(&b.arm))
-                .then(a.edge.cmp(&b.edge))
-        });
-        mask.classify(&cuts);
+        mask.classify(&in_order(&cuts, mask.runs.len()));
         mask
     }
 
@@ -278,6 +274,20 @@ impl Mask {
         wall.get(index)
     }
 
+    /// The same where its row is known, whose few wall nodes are quickly searched.
+    pub(crate) fn wall_node_in_row(
+        &self,
+        colour: Colour,
+        node: u32,
+        row: u32,
+    ) -> Option<&WallNode> {
+        let c = colour as usize;
+        let [at, next] = self.starts.get(row as usize..)?.first_chunk()?;
+        let wall = self.wall[c].get(at.wall[c] as usize..next.wall[c] as usize)?;
+        let index = wall.binary_search_by_key(&node, |w| w.node).ok()?;
+        wall.get(index)
+    }
+
     /// Cuts from the crossings of the lattice columns.
     fn cut_columns(&self, columns: &LineCrossings, cuts: &mut Vec<Cut>) {
         let scale = 1.0 / f64::from(self.stride);
@@ -285,7 +295,7 @@ impl Mask {
             let i = line as u32 / self.stride;
             for crossing in columns.line(line) {
                 let at = crossing.at * scale;
-                let below = at.floor();
+                let below = rounded_down(at);
                 let mut push = |row: f64, direction: usize, arm: f64| {
                     if row < 0.0 {
                         return;
@@ -306,7 +316,7 @@ impl Mask {
                 push(below + 1.0, ARM_DOWN, below + 1.0 - at);
                 // A crossing on a node takes that node out of the fluid; the arms of both its
                 // neighbours end there.
-                let nearest = at.round();
+                let nearest = rounded_down(at + 0.5);
                 if (at - nearest).abs() < ON_WALL * scale {
                     push(nearest - 1.0, ARM_UP, 1.0);
                     push(nearest + 1.0, ARM_DOWN, 1.0);
@@ -365,6 +375,11 @@ impl Mask {
     fn classify(&mut self, cuts: &[Cut]) {
         let mut next_cut = 0;
         let rows = self.rows();
+        self.starts.reserve(rows + 1);
+        for colour in 0..2 {
+            self.segments[colour].reserve(2 * self.runs.len());
+            self.wall[colour].reserve(cuts.len() / 2);
+        }
         for row in 0..rows {
             let [first, end] = [self.row_start[row], self.row_start[row + 1]];
             self.open_row(first as usize);
@@ -398,7 +413,8 @@ impl Mask {
             if next == NO_NODE {
                 return NO_NODE;
             }
-            match self.wall_node(colour.other(), next) {
+            let row = [j, j, j.wrapping_sub(1), j + 1][arm];
+            match self.wall_node_in_row(colour.other(), next, row) {
                 Some(wall) => wall.neighbour[arm],
                 None => self
                     .node_at(ends[arm].0, ends[arm].1)

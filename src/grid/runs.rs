@@ -1,10 +1,11 @@
 //! Rows of fluid nodes from the crossings of the lattice rows, and nodes that lie on the wall.
 
-use super::crossings::LineCrossings;
+use super::crossings::{LineCrossings, rounded_down, rounded_up};
 use super::lattice::Lattice;
 use super::mask::{ARM_LEFT, ARM_RIGHT, Colour, ON_WALL, Run};
 
 /// An arm cut by the wall, before grouping by node.
+#[derive(Debug, Clone, Copy)]
 pub(super) struct Cut {
     pub(super) run: u32,
     pub(super) i: u32,
@@ -13,13 +14,39 @@ pub(super) struct Cut {
     pub(super) edge: u32,
 }
 
+/// Cuts in order of run, column, direction, arm and edge. They come nearly in order within their runs, so these are
+/// counted and the few cuts of each sorted.
+pub(super) fn in_order(cuts: &[Cut], runs: usize) -> Vec<Cut> {
+    let mut next = vec![0_u32; runs + 1];
+    for cut in cuts {
+        next[cut.run as usize + 1] += 1;
+    }
+    for run in 0..runs {
+        next[run + 1] += next[run];
+    }
+    let mut sorted = cuts.to_vec();
+    for &cut in cuts {
+        let place = &mut next[cut.run as usize];
+        sorted[*place as usize] = cut;
+        *place += 1;
+    }
+    for of_run in sorted.chunk_by_mut(|a, b| a.run == b.run) {
+        of_run.sort_by(|a, b| {
+            let places = (a.i, a.direction).cmp(&(b.i, b.direction));
+            let arms = places.then_with(|| a.arm.total_cmp(&b.arm));
+            arms.then_with(|| a.edge.cmp(&b.edge))
+        });
+    }
+    sorted
+}
+
 /// Nodes that a column crossing puts on the wall, as (row, column, edge).
 pub(super) fn nodes_on_wall(columns: &LineCrossings, stride: u32) -> Vec<(u32, u32, u32)> {
     let mut nodes = Vec::new();
     let step = f64::from(stride);
     for line in (0..columns.lines()).step_by(stride as usize) {
         for crossing in columns.line(line) {
-            let nearest = (crossing.at / step).round();
+            let nearest = rounded_down(crossing.at / step + 0.5);
             if (crossing.at - nearest * step).abs() < ON_WALL {
                 nodes.push((nearest as u32, line as u32 / stride, crossing.edge));
             }
@@ -31,10 +58,11 @@ pub(super) fn nodes_on_wall(columns: &LineCrossings, stride: u32) -> Vec<(u32, u
 /// Nodes on a vertex of the outline, as (row, column, edge): a corner that juts into the fluid may miss the lines
 /// through its node by rounding, on both sides, and yet lie on it.
 pub(super) fn nodes_at_vertices(lattice: &Lattice, stride: u32) -> Vec<(u32, u32, u32)> {
-    let step = f64::from(stride);
+    let (step, share) = (f64::from(stride), 1.0 / f64::from(stride));
     let near = |v: f64| {
-        let nearest = (v / step).round();
-        ((v - nearest * step).abs() < ON_WALL && nearest >= 0.0).then_some(nearest as u32)
+        // Rounds down, since nothing here is far below zero.
+        let nearest = (v * share + 0.5) as u32;
+        ((v - f64::from(nearest) * step).abs() < ON_WALL).then_some(nearest)
     };
     let vertices = lattice.edges.iter().enumerate();
     vertices
@@ -81,16 +109,17 @@ pub(super) fn collect_runs(
 ) -> (Vec<Run>, Vec<u32>) {
     let scale = 1.0 / f64::from(stride);
     let margin = ON_WALL * scale;
-    let mut runs = Vec::new();
-    let mut row_start = vec![0];
+    let lines = rows.lines() / stride as usize + 1;
+    let (mut runs, mut row_start) = (Vec::with_capacity(lines), Vec::with_capacity(lines + 1));
+    row_start.push(0);
     let mut next_removed = 0;
     for (j, line) in (0..rows.lines()).step_by(stride as usize).enumerate() {
         let from = next_removed + removed[next_removed..].partition_point(|r| (r.0 as usize) < j);
         next_removed = from + removed[from..].partition_point(|r| r.0 as usize == j);
         let gone = &removed[from..next_removed];
         for [left, right] in rows.line(line).as_chunks().0 {
-            let first = (left.at * scale + margin).ceil().max(0.0);
-            let last = (right.at * scale - margin).floor();
+            let first = rounded_up(left.at * scale + margin).max(0.0);
+            let last = rounded_down(right.at * scale - margin);
             if last < first {
                 continue;
             }

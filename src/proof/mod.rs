@@ -46,6 +46,9 @@ use crate::solve::Field;
 /// Relative amount by which bounds are widened for rounding: sums of up to 1e8 terms of one sign, added in groups.
 const ROUNDING: f64 = 1e-11;
 
+/// Nodes whose bounds take about as long as one edge of the outline, counted low.
+const EDGE_IN_NODES: usize = 10;
+
 /// Why there is no bound.
 #[derive(Debug, Clone, Copy, PartialEq, thiserror::Error)]
 #[non_exhaustive]
@@ -100,6 +103,11 @@ impl Bracket {
     }
 }
 
+/// Whether bounds on this grid take long enough for a second thread.
+pub(crate) fn is_long(lattice: &Lattice, mask: &Mask) -> bool {
+    mask.nodes() + EDGE_IN_NODES * lattice.edges.len() >= PARALLEL_NODES
+}
+
 /// The bracket for nodal values `phi`, in units of the lattice spacing to the fourth power.
 ///
 /// It holds for any nodal values; good ones make it narrow.
@@ -109,10 +117,10 @@ impl Bracket {
 pub fn bracket(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result<Bracket, ProofError> {
     let low = || lower_bound::lower_bound(lattice, mask, phi);
     let high = || upper_bound::upper_bound(lattice, mask, phi);
-    let (low, high) = if mask.nodes() < PARALLEL_NODES {
-        (low(), high())
-    } else {
+    let (low, high) = if is_long(lattice, mask) {
         rayon::join(low, high)
+    } else {
+        (low(), high())
     };
     let (low, high) = (low?, high?);
     if low <= high {

@@ -4,6 +4,8 @@
 //! values ([`Share`]). The nodes of these squares are numbered anew, in order of their rows, and each has its
 //! couplings to the eight nodes around it in one place.
 
+use rayon::prelude::*;
+
 use crate::grid::Mask;
 use crate::solve::Field;
 
@@ -17,6 +19,11 @@ use super::triangulation::{Division, Triangle, Vertex};
 const ROUNDS: usize = 2;
 /// Times each value is improved in a round.
 const SWEEPS: usize = 3;
+/// Sum of the squares of the numbers of vertices from which polygons are divided on several threads: some
+/// milliseconds on one.
+const PARALLEL_WORK: usize = 150_000;
+/// Fewest polygons that one thread takes at a time.
+const LEAST_TOGETHER: usize = 64;
 /// Marks a corner that is not a fluid node.
 pub(super) const NONE: u32 = u32::MAX;
 
@@ -193,30 +200,54 @@ impl<'a> NearWall<'a> {
     /// Divides every polygon; the nodes of those that cannot be divided are set to zero and held there, after
     /// which they need no division.
     fn divide(&mut self) {
+        let count = self.polygons.len();
+        let mut shares = std::mem::take(&mut self.shares);
+        shares.clear();
+        if self.is_long_to_divide() {
+            let each = (0..count).into_par_iter().with_min_len(LEAST_TOGETHER);
+            let divided: Vec<Option<Share>> = each
+                .map_init(Division::default, |division, k| self.share(division, k))
+                .collect();
+            // The first one that cannot be divided holds nodes of those after it.
+            shares.extend(divided.into_iter().map_while(|share| share));
+        }
         let mut division = Division::default();
-        self.shares.clear();
-        for (polygon, nodes) in self.polygons.iter().zip(&self.polygon_nodes) {
-            let vertices = polygon.vertices.iter().map(|&(at, node)| {
-                let corner = node.map(|_| corner_at(at));
-                let place = corner.map_or(NONE, |corner| nodes[corner]) as usize;
-                Vertex {
-                    at,
-                    node: corner.filter(|_| !self.is_held[place]),
-                    value: self.values.get(place).copied().unwrap_or(0.0),
-                }
-            });
-            let mut share = Share::default();
-            let is_divided =
-                !polygon.has_hole && division.divide(vertices, |triangle| share.add(triangle));
-            if !is_divided {
-                share = Share::default();
-                for &node in nodes.iter().filter(|&&n| n != NONE) {
+        for index in shares.len()..count {
+            let share = self.share(&mut division, index);
+            if share.is_none() {
+                let nodes = self.polygon_nodes[index];
+                for node in nodes.into_iter().filter(|&n| n != NONE) {
                     self.values[node as usize] = 0.0;
                     self.is_held[node as usize] = true;
                 }
             }
-            self.shares.push(share);
+            shares.push(share.unwrap_or_default());
         }
+        self.shares = shares;
+    }
+
+    /// Whether dividing the polygons, cubic in their vertices up to a limit, is worth several threads.
+    fn is_long_to_divide(&self) -> bool {
+        let vertices = self.polygons.iter().map(|polygon| polygon.vertices.len());
+        vertices.map(|n| n * n).sum::<usize>() >= PARALLEL_WORK
+    }
+
+    /// Integrals over one polygon; `None` where it cannot be divided.
+    fn share(&self, division: &mut Division, index: usize) -> Option<Share> {
+        let (polygon, nodes) = (&self.polygons[index], &self.polygon_nodes[index]);
+        let vertices = polygon.vertices.iter().map(|&(at, node)| {
+            let corner = node.map(|_| corner_at(at));
+            let place = corner.map_or(NONE, |corner| nodes[corner]) as usize;
+            Vertex {
+                at,
+                node: corner.filter(|_| !self.is_held[place]),
+                value: self.values.get(place).copied().unwrap_or(0.0),
+            }
+        });
+        let mut share = Share::default();
+        let is_divided =
+            !polygon.has_hole && division.divide(vertices, |triangle| share.add(triangle));
+        is_divided.then_some(share)
     }
 
     /// Sets one value so that twice the volume less the energy is largest.

@@ -130,6 +130,9 @@ impl Division {
         for i in 0..n - 1 {
             best[i * n + i + 1].0 = 0.0;
         }
+        // From here on all vertices are on the wall.
+        let last_node = polygon.iter().rposition(|v| v.node.is_some());
+        let solid_from = last_node.map_or(0, |node| node + 1);
         for gap in 2..n {
             for i in 0..n - gap {
                 let j = i + gap;
@@ -137,9 +140,16 @@ impl Division {
                 let mut least = (f64::INFINITY, 0);
                 for (k, third) in polygon.iter().enumerate().take(j).skip(i + 1) {
                     let parts = best[i * n + k].0 + best[k * n + j].0;
+                    if parts.is_infinite() {
+                        continue;
+                    }
                     let whole = parts + costs.of(third);
                     if whole < least.0 {
                         least = (whole, k);
+                        if i >= solid_from {
+                            // Divisions without a node cost nothing, or are not possible.
+                            break;
+                        }
                     }
                 }
                 best[i * n + j] = least;

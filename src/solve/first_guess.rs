@@ -6,7 +6,7 @@
 //! discretisation error; the linear interpolation of the corrections would leave `h^2` and need four to
 //! six. Even fine nodes get their values from the sweep that follows.
 
-use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, Colour, Mask, NO_NODE, WallNode};
+use crate::grid::{ARM_DOWN, ARM_LEFT, ARM_RIGHT, ARM_UP, Colour, Mask, NO_NODE, WallNode};
 
 /// Weights half way between the inner two of four equidistant points (common practice).
 const INNER: f64 = 9.0 / 16.0;
@@ -171,8 +171,13 @@ impl Guess<'_> {
     /// Whether the line from the second to the third node away is free of walls.
     fn is_joined(&self, w: &WallNode, direction: usize) -> bool {
         let second = w.beyond[direction];
+        let row = match direction {
+            ARM_DOWN => w.j.wrapping_sub(2),
+            ARM_UP => w.j + 2,
+            _ => w.j,
+        };
         self.fine
-            .wall_node(Colour::Odd, second)
+            .wall_node_in_row(Colour::Odd, second, row)
             .is_none_or(|wall| wall.neighbour[direction] != NO_NODE)
     }
 

@@ -135,9 +135,16 @@ impl Hierarchy {
 
     /// The fluid nodes and the solution of the finest grid; the rest is dropped.
     pub fn into_finest(self) -> (Mask, Field) {
+        let (mask, phi, _) = self.into_two_finest();
+        (mask, phi)
+    }
+
+    /// The same with the nodes of the second grid, which has twice the spacing.
+    pub(crate) fn into_two_finest(self) -> (Mask, Field, Option<Mask>) {
         let mut grids = self.grids;
+        let second = (grids.len() > 1).then(|| grids.swap_remove(1).mask);
         let finest = grids.swap_remove(0);
-        (finest.mask, finest.phi)
+        (finest.mask, finest.phi, second)
     }
 }
 

@@ -49,12 +49,13 @@ struct ByRow<T> {
 }
 
 impl<T> ByRow<T> {
-    fn new(rows: usize) -> Self {
+    /// - `entries`: about how many single weights there will be
+    fn new(rows: usize, entries: usize) -> Self {
         let mut starts = Vec::with_capacity(rows + 1);
         starts.push([0; 2]);
         Self {
-            segments: Vec::new(),
-            entries: Vec::new(),
+            segments: Vec::with_capacity(rows),
+            entries: Vec::with_capacity(entries),
             starts,
         }
     }
@@ -83,9 +84,10 @@ pub(crate) struct Transfer {
 
 impl Transfer {
     pub(crate) fn new(fine: &Mask, coarse: &Mask) -> Self {
+        let at_wall: usize = fine.wall.iter().map(Vec::len).sum();
         let mut transfer = Self {
-            restriction: ByRow::new(coarse.rows()),
-            prolongation: ByRow::new(fine.rows()),
+            restriction: ByRow::new(coarse.rows(), 3 * at_wall),
+            prolongation: ByRow::new(fine.rows(), 2 * at_wall),
         };
         transfer.plan_restriction(fine, coarse);
         for row in 0..fine.rows() as u32 {
@@ -195,7 +197,8 @@ impl Transfer {
                 let Some((colour, node)) = fine.node_at(x, y) else {
                     continue;
                 };
-                let (weight, diagonal) = node_weights(fine, colour, node);
+                let wall = fine.wall_node_in_row(colour, node, y);
+                let (weight, diagonal) = wall.map_or(([1.0; 4], 4.0), weights);
                 let across = line_weight(fine, [i, y], to_row);
                 let along = line_weight(fine, [x, j], to_column);
                 let total = (weight[to_column] * across + weight[to_row] * along) / diagonal;
@@ -275,11 +278,12 @@ impl Transfer {
 
     /// One odd fine node from its coarse neighbours along `arm` and the opposite arm.
     fn prolong_single(&mut self, fine: &Mask, coarse: &Mask, at: [u32; 2], arm: usize) {
-        let Some((_, node)) = fine.node_at(at[0], at[1]) else {
+        let Some((colour, node)) = fine.node_at(at[0], at[1]) else {
             return;
         };
+        let wall = fine.wall_node_in_row(colour, node, at[1]);
         for direction in [arm, opposite(arm)] {
-            let weight = line_weight(fine, at, direction);
+            let weight = wall.map_or(0.5, |wall| share(wall, direction));
             let end = match direction {
                 ARM_LEFT => [at[0].wrapping_sub(1), at[1]],
                 ARM_RIGHT => [at[0] + 1, at[1]],
@@ -346,23 +350,20 @@ fn line_of(mask: &Mask, i: u32, j: u32, len: u32) -> Option<u32> {
     (i + len <= run.end()).then_some(run.natural + i - run.first)
 }
 
-fn node_weights(mask: &Mask, colour: Colour, node: u32) -> ([f64; 4], f64) {
-    mask.wall_node(colour, node)
-        .map_or(([1.0; 4], 4.0), weights)
-}
-
 /// Weight of the neighbour along `direction` in the value linear along that line.
 fn line_weight(mask: &Mask, at: [u32; 2], direction: usize) -> f64 {
     let Some((colour, node)) = mask.node_at(at[0], at[1]) else {
         return 0.0;
     };
-    let share = |w: &WallNode| {
-        if w.neighbour[direction] == NO_NODE {
-            0.0
-        } else {
-            let away = w.arm[opposite(direction)];
-            away / (w.arm[direction] + away)
-        }
-    };
-    mask.wall_node(colour, node).map_or(0.5, share)
+    let wall = mask.wall_node_in_row(colour, node, at[1]);
+    wall.map_or(0.5, |wall| share(wall, direction))
+}
+
+/// The same at a wall node.
+fn share(wall: &WallNode, direction: usize) -> f64 {
+    if wall.neighbour[direction] == NO_NODE {
+        return 0.0;
+    }
+    let away = wall.arm[opposite(direction)];
+    away / (wall.arm[direction] + away)
 }

@@ -313,7 +313,7 @@ impl Solved {
         let flow = sections.solve(&options)?.flow;
         let reach = sections.reach(&flow, &options)?;
         let within = reach.and_then(|reach| Some([reach.low()?, reach.high()?]));
-        self.alternatives = alternatives(&self.checked.section, &flow, &options);
+        self.alternatives = alternatives(&self.checked.section, None, &flow, &options);
         self.conductance = Some(ConductanceRecord {
             value: flow.conductance,
             proven: flow

@@ -8,7 +8,7 @@ use crate::geometry::curves::CHORD_TOLERANCE;
 use crate::geometry::{Film, FilmOn, FilmReport, Filmed, NEGLIGIBLE_LUMENS, Outline};
 use crate::intake::Section;
 use crate::report::AlternativeRecord;
-use crate::study::{Reach, ReachSides, solve_for_sensitivity, under_assumption};
+use crate::study::{Assumption, Reach, ReachSides, solve_for_sensitivity, under_assumption};
 use crate::units;
 
 use super::failure::Failure;
@@ -63,7 +63,7 @@ impl Sections {
         let Some(film) = film else {
             return Ok(sections);
         };
-        let negligible = NEGLIGIBLE_LUMENS.min(LEFT_OUT_OF_TOLERANCE * tolerance);
+        let negligible = negligible(tolerance);
         if let Some(sides) = &mut sections.reach {
             sides.put_under(film, &checked.outline, negligible)?;
         }
@@ -179,26 +179,36 @@ impl Sides {
     }
 }
 
-/// What the section would conduct under the other assumptions that an instrument's file allows.
+/// Share of the conductance that a film may leave out.
+fn negligible(tolerance: f64) -> f64 {
+    NEGLIGIBLE_LUMENS.min(LEFT_OUT_OF_TOLERANCE * tolerance)
+}
+
+/// What the section would conduct under the other assumptions that an instrument's file allows, with the film on where
+/// there is one.
 pub(super) fn alternatives(
     section: &Section,
+    film: Option<&Film>,
     flow: &SectionFlow,
     options: &SolveOptions,
 ) -> Vec<AlternativeRecord> {
+    let conductance = |outline: &Option<Outline>| {
+        let outline = outline.as_ref().ok_or("it leaves no section")?;
+        let (mut outline, _) = outline.clone().without_duplicate_vertices();
+        if let Some(film) = film {
+            let filmed = film.applied_within(&outline, negligible(options.goal.asked()));
+            outline = filmed.map_err(|error| error.to_string())?.outline;
+        }
+        Ok(under_assumption(&outline, flow.conductance, options))
+    };
     let of = |(option, outline): &(String, Option<Outline>)| {
-        let Some(outline) = outline else {
-            return AlternativeRecord {
-                option: option.clone(),
-                conductance: Err("it leaves no section".to_owned()),
-                relative_change: None,
-            };
-        };
-        let (outline, _) = outline.clone().without_duplicate_vertices();
-        let found = under_assumption(&outline, flow.conductance, options);
+        let found = conductance(outline);
+        let relative_change = found.as_ref().ok().and_then(|found| found.relative_change);
+        let solved = |found: Assumption| found.conductance.map_err(|error| error.to_string());
         AlternativeRecord {
             option: option.clone(),
-            conductance: found.conductance.map_err(|error| error.to_string()),
-            relative_change: found.relative_change,
+            conductance: found.and_then(solved),
+            relative_change,
         }
     };
     section.intake.alternatives.iter().map(of).collect()

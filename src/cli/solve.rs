@@ -73,10 +73,8 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     }
     let reach = sections.reach(&solved.flow, &request.solve)?;
     say_settings(matches);
-    let others = match &request.film {
-        Some(_) => Vec::new(),
-        None => alternatives(&checked.section, &solved.flow, &request.solve),
-    };
+    let film = request.film.as_ref();
+    let others = alternatives(&checked.section, film, &solved.flow, &request.solve);
     request.answer(&checked, &sections, &solved, reach.as_ref(), &others)
 }
 

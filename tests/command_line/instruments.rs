@@ -113,16 +113,23 @@ fn lids_on_lands_of_different_height_are_compared() {
         _ => format!("{k},-2\n"),
     });
     let folder = Folder::with("a.csv", format!("x_um,z_um\n{}", rows.collect::<String>()));
-    let result = json(&folder.line("solve a.csv --level none --json --quiet").out);
-    let others = result["alternatives"].as_array().unwrap();
-    let change = |option: &str| {
+    let solved = |film: &str| {
+        let line = format!("solve a.csv --level none --json --quiet {film}");
+        json(&folder.line(&line).out)
+    };
+    let change = |result: &Value, option: &str| {
+        let others = result["alternatives"].as_array().unwrap();
         let row = others.iter().find(|row| row["option"] == option).unwrap();
         value(row, "/relative_change")
     };
-    assert!(
-        change("--lid left") > 0.05 && change("--lid right") < -0.05,
-        "{others:?}"
-    );
+    let result = solved("");
+    let [left, right] = ["--lid left", "--lid right"].map(|option| change(&result, option));
+    assert!(left > 0.05 && right < -0.05, "{left} {right}");
+    // A film leaves less depth, of which the same difference is a larger share.
+    let filmed = solved("--film 3um");
+    let [thin_left, thin_right] = ["--lid left", "--lid right"].map(|o| change(&filmed, o));
+    assert!(thin_left > 1.05 * left, "{thin_left} {left}");
+    assert!(thin_right < 1.05 * right, "{thin_right} {right}");
     let warnings = result["warnings"].as_array().unwrap();
     assert!(warnings.iter().any(|w| w["code"] == "lands_differ"));
 }

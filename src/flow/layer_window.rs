@@ -34,8 +34,6 @@ const RIDGE: f64 = 1e-3;
 const OTHER_RIDGE: f64 = 1e-8;
 /// Nodes per unknown below which they are too few.
 const LEAST_NODES: f64 = 0.5;
-/// Panels above which a window holds more wall than its nodes can tell apart.
-const MOST_PANELS: usize = 400;
 
 /// Where a window lies; spacings.
 pub(super) struct Frame {
@@ -160,9 +158,6 @@ impl<'a> Window<'a> {
         from_corner: impl Fn(&Panel) -> f64,
         typical: f64,
     ) -> Option<Vec<f64>> {
-        if self.sources.len() > MOST_PANELS {
-            return None;
-        }
         let (own, width) = (self.places.len(), self.width());
         let mut rows = Rows {
             width,

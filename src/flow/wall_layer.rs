@@ -10,8 +10,8 @@
 //! `q` is the leading powers of the corners times a factor that is linear between a few places of each
 //! stretch (module `layer_panel`); these factors and the polynomial are fitted by least squares to the nodes and to
 //! the zero just behind the wall (module `layer_window`). So the wall as it is decides how the shear goes from corner
-//! to corner, whatever bends and neighbours it has, and the nodes decide how large it is. Where a window has too few
-//! nodes or the fit gives a shear that is not positive, the slopes stand.
+//! to corner, whatever bends and neighbours it has, and the nodes decide how large it is. Where a window has too much
+//! wall or too few nodes, or the fit gives a shear that is not positive, the slopes stand.
 //!
 //! Source: the identity is Green's; asking for zero in the solid is the null-field method (P. C. Waterman
 //! 1965), both from memory.
@@ -41,6 +41,8 @@ const NODE_MARGIN: f64 = 6.0;
 const NEAREST: f64 = 0.02;
 /// Distance along the sides of a corner that gives their directions, spacings.
 const CHORD: f64 = 2.0;
+/// Panels above which a window holds more wall than its nodes can tell apart.
+const MOST_PANELS: usize = 400;
 /// Width of the squares that panels and corners are sorted into, spacings.
 const SQUARE: f64 = 16.0;
 
@@ -79,20 +81,23 @@ impl Squares {
         (coordinate / SQUARE).floor() as i64
     }
 
-    /// Indices of what may lie within a distance of a place, in order.
-    fn near(&self, centre: Point, radius: f64) -> Vec<usize> {
+    /// Indices of what lies within a distance of a place, in order; `None` where these are more than a number.
+    fn near(
+        &self,
+        (centre, radius): (Point, f64),
+        most: usize,
+        lies: impl Fn(usize) -> bool,
+    ) -> Option<Vec<usize>> {
         let range = |axis: usize| {
             let [low, high] = [-radius, radius].map(|r| Self::square(centre[axis] + r));
             low..=high
         };
-        let mut found: Vec<usize> = range(1)
-            .flat_map(|j| range(0).map(move |i| [i, j]))
-            .filter_map(|square| self.0.get(&square))
-            .flatten()
-            .copied()
-            .collect();
+        let squares = range(1).flat_map(|j| range(0).map(move |i| [i, j]));
+        let all = squares.filter_map(|square| self.0.get(&square)).flatten();
+        let inside = all.copied().filter(|&index| lies(index));
+        let mut found: Vec<usize> = inside.take(most.saturating_add(1)).collect();
         found.sort_unstable();
-        found
+        (found.len() <= most).then_some(found)
     }
 }
 
@@ -228,7 +233,11 @@ impl<'a> WallLayer<'a> {
             wall_radius: half + WALL_MARGIN,
             node_radius: half + NODE_MARGIN,
         };
-        let window = Window::new(&frame, self.panels_near(&frame), self.corners_near(&frame));
+        let window = Window::new(
+            &frame,
+            self.panels_near(&frame)?,
+            self.corners_near(&frame)?,
+        );
         let behind = |panel: &Panel| {
             let s = 0.5 * (panel.span[0] + panel.span[1]);
             s.min(self.stretches[panel.stretch].length - s)
@@ -259,22 +268,24 @@ impl<'a> WallLayer<'a> {
         Some(found)
     }
 
-    fn panels_near(&self, frame: &Frame) -> Vec<&Panel> {
+    /// `None` where the window holds more wall than its nodes can tell apart.
+    fn panels_near(&self, frame: &Frame) -> Option<Vec<&Panel>> {
         let is_inside = |at: Point| distance(at, frame.centre) <= frame.wall_radius;
-        let near = self.panel_squares.near(frame.centre, frame.wall_radius);
-        near.into_iter()
-            .map(|index| &self.panels[index])
-            .filter(|panel| panel.ends.iter().all(|&end| is_inside(end)))
-            .collect()
+        let lies = |index: usize| self.panels[index].ends.into_iter().all(is_inside);
+        let circle = (frame.centre, frame.wall_radius);
+        let near = self.panel_squares.near(circle, MOST_PANELS, lies)?;
+        Some(near.into_iter().map(|index| &self.panels[index]).collect())
     }
 
-    /// Re-entrant corners.
-    fn corners_near(&self, frame: &Frame) -> Vec<&LayerCorner> {
-        let near = self.corner_squares.near(frame.centre, frame.node_radius);
-        near.into_iter()
-            .map(|index| &self.corners[index])
-            .filter(|c| c.is_re_entrant && distance(c.at, frame.centre) <= frame.node_radius)
-            .collect()
+    /// Re-entrant corners; `None` where they are more than panels may be.
+    fn corners_near(&self, frame: &Frame) -> Option<Vec<&LayerCorner>> {
+        let lies = |index: usize| {
+            let corner = &self.corners[index];
+            corner.is_re_entrant && distance(corner.at, frame.centre) <= frame.node_radius
+        };
+        let circle = (frame.centre, frame.node_radius);
+        let near = self.corner_squares.near(circle, MOST_PANELS, lies)?;
+        Some(near.into_iter().map(|index| &self.corners[index]).collect())
     }
 }
 

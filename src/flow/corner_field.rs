@@ -190,7 +190,7 @@ impl Wedge {
         phi: &Field,
         reach: f64,
     ) -> (Vec<(f64, f64, f64)>, f64) {
-        let centre = [0, 1].map(|axis| (self.at[axis] - lattice.origin[axis]) / self.spacing);
+        let centre = lattice.coordinates(self.at);
         let range = |axis: usize| {
             let low = (centre[axis] - reach).ceil().max(0.0) as u32;
             low..=(centre[axis] + reach).floor().max(0.0) as u32

@@ -23,7 +23,7 @@ const LARGEST_SINGULAR: f64 = 2.0;
 /// Leading exponent below which a convex corner is not acute; 1 at the right angle.
 const RIGHT_ANGLE: f64 = 1.001;
 /// Largest fluid angle, radians: a crack is no corner of a section.
-const LARGEST_ANGLE: f64 = 1.95 * PI;
+pub(super) const LARGEST_ANGLE: f64 = 1.95 * PI;
 /// Difference from a right angle, radians, below which the logarithm stands for the difference of powers.
 const RESONANCE: f64 = 1e-4;
 

@@ -7,7 +7,9 @@
 use std::f64::consts::{PI, TAU};
 
 use crate::geometry::{Corner, Point, distance};
+use crate::grid::Lattice;
 
+use super::corner_law::LARGEST_ANGLE;
 use super::wall_path::WallPath;
 
 /// Ends of panels from a corner, spacings.
@@ -22,8 +24,6 @@ const PLACE_STEP: f64 = 2.0;
 const SAME_END: f64 = 1e-3;
 /// Distance from a corner up to which its power stands in the shear, spacings.
 const POWER_REACH: f64 = 8.0;
-/// Largest fluid angle, radians: a crack is no corner of a section.
-const LARGEST_ANGLE: f64 = 1.95 * PI;
 /// Distance from the middle of a panel, in its lengths, from which the expansion about the middle is used.
 const FAR: f64 = 4.0;
 
@@ -95,18 +95,15 @@ impl LayerStretch {
         [(index - 1, 1.0 - t), (index, t)]
     }
 
-    /// Its panels; `path` is that of its loop, `in_spacings` takes places to those of the lattice.
-    pub(super) fn panels(
-        &self,
-        stretch: usize,
-        (path, spacing): (&WallPath, f64),
-        in_spacings: impl Fn(Point) -> Point,
-    ) -> Vec<Panel> {
+    /// Its panels.
+    ///
+    /// - `stretch`: its index; `path`: of its loop
+    pub(super) fn panels(&self, stretch: usize, path: &WallPath, lattice: &Lattice) -> Vec<Panel> {
         let mut ends = breaks(self.length, &GRADED, STEP);
         ends.extend(&self.places);
         ends.sort_by(f64::total_cmp);
         ends.dedup_by(|a, b| *a - *b < SAME_END * self.length.min(1.0));
-        let at = |s: f64| in_spacings(path.position(self.start + s * spacing));
+        let at = |s: f64| lattice.coordinates(path.position(self.start + s * lattice.spacing));
         let panel = |pair: &[f64]| {
             let [from, to] = [pair[0], pair[1]];
             let mean = self.mean_weight(from, to);

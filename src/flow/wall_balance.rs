@@ -6,6 +6,8 @@
 //! the whole wall is exact, while the curve between the marks stays what it was. Around a re-entrant corner,
 //! where differences of nodes are no fluxes, the factor is the same over several spacings.
 
+use super::wall_path::way_forward;
+
 /// Distance of the marks, in spacings.
 const MARKS: f64 = 4.0;
 /// Distance from a re-entrant corner up to which the factor is the same, in spacings: nearer to it the fluxes
@@ -46,8 +48,7 @@ impl BalanceFactor {
         }
         let gap = |k: usize| {
             let next = singular[(k + 1) % singular.len()];
-            let gap = next - singular[k];
-            if gap > 0.0 { gap } else { gap + length }
+            way_forward(singular[k], next, length)
         };
         // Once round from the first corner, or from the first vertex.
         let mut around: Vec<(f64, usize)> = Vec::new();

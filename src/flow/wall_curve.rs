@@ -11,7 +11,7 @@ use super::corner_law::CornerLaw;
 use super::section_flow::WallSample;
 use super::wall_balance::BalanceFactor;
 use super::wall_flux::WallFlux;
-use super::wall_path::WallPath;
+use super::wall_path::{WallPath, way_forward};
 use super::wall_quadrature::GAUSS_2;
 use super::wall_statistics::WallReport;
 use super::wall_stretch::{Samples, Stretch};
@@ -238,10 +238,7 @@ fn stretches(
         .map(|k| {
             let (from, to) = (&corners[k], &corners[(k + 1) % corners.len()]);
             let start = from.arc_length;
-            let mut length = to.arc_length - start;
-            if length <= 0.0 {
-                length += total;
-            }
+            let length = way_forward(start, to.arc_length, total);
             let within = |all: &[(f64, f64)]| -> Vec<(f64, f64)> {
                 [0.0, total]
                     .into_iter()

@@ -27,7 +27,7 @@ use crate::solve::Field;
 
 use super::layer_panel::{LayerStretch, Panel};
 use super::layer_window::{Frame, Window};
-use super::wall_path::WallPath;
+use super::wall_path::{WallPath, way_forward};
 
 /// Longest way between the first and the last corner of one window, spacings.
 const GROUP: f64 = 7.0;
@@ -137,8 +137,6 @@ impl<'a> WallLayer<'a> {
         wanted: &[Vec<bool>],
     ) -> Self {
         let lattice = solution.0;
-        let in_spacings =
-            |at: Point| [0, 1].map(|axis| (at[axis] - lattice.origin[axis]) / lattice.spacing);
         let mut stretches: Vec<LayerStretch> = Vec::new();
         let mut panels = Vec::new();
         let mut layer_corners = Vec::new();
@@ -147,18 +145,17 @@ impl<'a> WallLayer<'a> {
                 path,
                 corners: &corners[loop_index],
                 wanted: &wanted[loop_index],
-                spacing: lattice.spacing,
+                lattice,
             };
             for (ends, start, length) in along.stretches() {
                 let first = stretches.last().map_or(0, LayerStretch::next_first);
                 let place = (start, length, lattice.spacing);
                 let stretch = LayerStretch::new(loop_index, ends, place, first);
-                let along = (*path, lattice.spacing);
-                panels.extend(stretch.panels(stretches.len(), along, in_spacings));
+                panels.extend(stretch.panels(stretches.len(), path, lattice));
                 stretches.push(stretch);
             }
             let count = along.corners.len();
-            layer_corners.extend((0..count).map(|k| along.corner(loop_index, k, in_spacings)));
+            layer_corners.extend((0..count).map(|k| along.corner(loop_index, k)));
         }
         Self {
             solution,
@@ -169,11 +166,6 @@ impl<'a> WallLayer<'a> {
             corner_squares: Squares::new(layer_corners.iter().map(|c| c.at)),
             corners: layer_corners,
         }
-    }
-
-    fn in_spacings(&self, at: Point) -> Point {
-        let lattice = self.solution.0;
-        [0, 1].map(|axis| (at[axis] - lattice.origin[axis]) / lattice.spacing)
     }
 
     fn samples(&self, typical: f64) -> Vec<Vec<(f64, f64)>> {
@@ -216,12 +208,13 @@ impl<'a> WallLayer<'a> {
 
     /// Arc lengths, m, and shear, spacings, beside a few neighbouring corners.
     fn window(&self, group: &[&LayerCorner], typical: f64) -> Option<Vec<(f64, f64)>> {
-        let spacing = self.solution.0.spacing;
+        let lattice = self.solution.0;
+        let spacing = lattice.spacing;
         let (first, last) = (group.first()?, group.last()?);
         let path = self.paths[first.loop_index];
         let low = first.arc_length - first.reach[0] * spacing;
         let high = last.arc_length + last.reach[1] * spacing;
-        let at = |s: f64| self.in_spacings(path.position(s));
+        let at = |s: f64| lattice.coordinates(path.position(s));
         let centre = at(0.5 * (low + high));
         let half = [low, high, first.arc_length, last.arc_length]
             .map(|s| distance(centre, at(s)))
@@ -294,19 +287,15 @@ struct AlongLoop<'a> {
     path: &'a WallPath,
     corners: &'a [Corner],
     wanted: &'a [bool],
-    spacing: f64,
+    lattice: &'a Lattice,
 }
 
 impl<'a> AlongLoop<'a> {
     /// From a corner to the next, m.
     fn gap(&self, index: usize) -> f64 {
         let next = &self.corners[(index + 1) % self.corners.len()];
-        let gap = next.arc_length - self.corners[index].arc_length;
-        if gap > 0.0 {
-            gap
-        } else {
-            gap + self.path.length()
-        }
+        let from = self.corners[index].arc_length;
+        way_forward(from, next.arc_length, self.path.length())
     }
 
     /// Corners at the ends, start and length of every stretch, m.
@@ -323,20 +312,17 @@ impl<'a> AlongLoop<'a> {
             .collect()
     }
 
-    fn corner(
-        &self,
-        loop_index: usize,
-        index: usize,
-        in_spacings: impl Fn(Point) -> Point,
-    ) -> LayerCorner {
+    fn corner(&self, loop_index: usize, index: usize) -> LayerCorner {
+        let spacing = self.lattice.spacing;
         let count = self.corners.len();
         let (before, after) = ((index + count - 1) % count, (index + 1) % count);
-        let gaps = [self.gap(before), self.gap(index)].map(|gap| gap / self.spacing);
+        let gaps = [self.gap(before), self.gap(index)].map(|gap| gap / spacing);
         let corner = &self.corners[index];
-        let at = in_spacings(corner.at);
+        let at = self.lattice.coordinates(corner.at);
         let direction = |way: f64, gap: f64| {
-            let r = way * CHORD.min(0.5 * gap) * self.spacing;
-            let p = in_spacings(self.path.position(corner.arc_length + r));
+            let r = way * CHORD.min(0.5 * gap) * spacing;
+            let position = self.path.position(corner.arc_length + r);
+            let p = self.lattice.coordinates(position);
             (p[1] - at[1]).atan2(p[0] - at[0])
         };
         let (first, last) = (direction(1.0, gaps[1]), direction(-1.0, gaps[0]));

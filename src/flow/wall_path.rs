@@ -93,6 +93,14 @@ impl WallPath {
     }
 }
 
+/// Length of the way along a loop from one arc length forward to another, m; from a place to itself, once round.
+///
+/// - `total`: length of the loop, m
+pub(super) fn way_forward(from: f64, to: f64, total: f64) -> f64 {
+    let way = to - from;
+    if way > 0.0 { way } else { way + total }
+}
+
 /// Unit vector to the right of the way from `a` to `b`.
 fn right_of(a: Point, b: Point) -> Option<Point> {
     let (x, y) = (b[0] - a[0], b[1] - a[1]);

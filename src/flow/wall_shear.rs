@@ -16,7 +16,7 @@ use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::{ShearSources, WallCurve};
 use super::wall_flux::wall_fluxes;
 use super::wall_layer::layer_samples;
-use super::wall_path::WallPath;
+use super::wall_path::{WallPath, way_forward};
 use super::wall_stretch::{LAW_REACH, LAW_SHARE, SHORT};
 
 /// Turning from which a vertex or a small arc counts as a corner.
@@ -246,12 +246,7 @@ impl Wall<'_> {
     fn gaps(&self) -> Vec<f64> {
         let next = self.corners.iter().cycle().skip(1);
         let gap = |(corner, next): (&Corner, &Corner)| {
-            let gap = next.arc_length - corner.arc_length;
-            if gap > 0.0 {
-                gap
-            } else {
-                gap + self.path.length()
-            }
+            way_forward(corner.arc_length, next.arc_length, self.path.length())
         };
         self.corners.iter().zip(next).map(gap).collect()
     }

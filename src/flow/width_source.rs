@@ -81,18 +81,18 @@ pub(crate) fn width_source(
         [column, row].map(|k| (f64::from(k) + 0.5) * f64::from(TILE) - 0.5)
     };
     let sharp = || corners.iter().flatten().filter(|c| c.turning < 0.0);
-    let on_lattice =
-        |at: Point| [0, 1].map(|axis: usize| (at[axis] - lattice.origin[axis]) / lattice.spacing);
     let near_corners: Vec<(u32, u32)> = sharp()
         .map(|corner| {
-            let [x, y] = on_lattice(corner.at).map(|v| (v + 0.5).max(0.0) as u32 / TILE);
+            let [x, y] = lattice
+                .coordinates(corner.at)
+                .map(|v| (v + 0.5).max(0.0) as u32 / TILE);
             (y, x)
         })
         .collect();
     let share = excess(&tiles, total, &[worst]);
     let centre = middle(worst);
     let distance = |corner: &&Corner| {
-        let [x, y] = on_lattice(corner.at);
+        let [x, y] = lattice.coordinates(corner.at);
         (x - centre[0]).hypot(y - centre[1])
     };
     let nearest = sharp().min_by(|a, b| distance(a).total_cmp(&distance(b)));

@@ -92,4 +92,9 @@ impl Lattice {
             self.origin[1] + self.spacing * at[1],
         ]
     }
+
+    /// The same point in lattice units, from its position, m.
+    pub fn coordinates(&self, position: Point) -> Point {
+        [0, 1].map(|axis| (position[axis] - self.origin[axis]) / self.spacing)
+    }
 }

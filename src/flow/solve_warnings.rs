@@ -54,8 +54,8 @@ pub(super) fn warnings(
             code: Code::ShearSingular,
             message: format!(
                 "{count} re-entrant corner(s), the first at ({:.3}, {:.3}) \u{b5}m: the wall shear of the \
-                 sharp outline has no bound there; the largest value given takes its mean over {:.3} \u{b5}m \
-                 beside each of them",
+                 sharp outline has no bound there; the largest value given takes its mean over up to \
+                 {:.3} \u{b5}m beside each of them",
                 x * 1e6,
                 y * 1e6,
                 flow.wall_shear.curve.singular_length * 1e6

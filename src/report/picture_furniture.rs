@@ -178,7 +178,7 @@ impl Page<'_> {
         let bound = if flow.wall_shear.singular_corners.is_empty() {
             ""
         } else {
-            " (no bound at sharp re-entrant corners; the mean over 0.05 Dh beside each is what counts)"
+            " (no bound at sharp re-entrant corners; the mean over up to 0.05 Dh beside each is what counts)"
         };
         let shear = format!(
             "largest wall shear: {shear}{bound}, at {}",

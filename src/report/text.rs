@@ -249,7 +249,7 @@ pub(super) fn shear_place(flow: &SectionFlow) -> [String; 3] {
         String::new()
     } else {
         format!(
-            "no bound at {}: mean over {} beside it",
+            "no bound at {}: mean over up to {} beside it",
             counted(corners, "re-entrant corner", "re-entrant corners"),
             with_unit(flow.wall_shear.curve.singular_length, numbers::LENGTHS, 3)
         )

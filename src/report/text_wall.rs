@@ -119,8 +119,8 @@ fn corners(document: &SolveDocument<'_>, report: &WallReport) -> Vec<String> {
                 .walls
                 .map(|w| report.walls.get(w).map_or_else(String::new, |s| short_name(&s.name)));
             format!(
-                "Re-entrant corner at {}: no bound; mean over {} (0.05 Dh) beside it {before} {unit} \
-                 ({first}) and {after} {unit} ({second}).",
+                "Re-entrant corner at {}: no bound; mean over {} (0.05 Dh), or half the way to the next \
+                 corner if that is less, beside it {before} {unit} ({first}) and {after} {unit} ({second}).",
                 numbers::place(corner.at, extent, 4),
                 with_unit(length, numbers::LENGTHS, 4),
                 unit = scale.unit,

@@ -457,7 +457,8 @@ impl<'a> Plot<'a> {
         if !self.report.singular_corners.is_empty() {
             let note = format!(
                 "Triangles: re-entrant corners. The shear of a sharp one has no bound; the curve is cut \
-                 off at {} {}. Bars: the mean over {} (0.05 Dh) on either side.",
+                 off at {} {}. Bars: the mean over {} (0.05 Dh), or half the way to the next corner if that \
+                 is less, on either side.",
                 significant(self.top * self.factor, 4),
                 self.unit,
                 with_unit(curve.singular_length, numbers::LENGTHS, 4),

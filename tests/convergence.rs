@@ -195,3 +195,33 @@ fn the_plain_conductance_converges_with_order_1_9_or_more() {
         }
     }
 }
+
+/// The estimate is no bound, but a value more than twice as far off must stay a rarity, on grids of any fineness.
+#[test]
+fn estimated_errors_are_seldom_below_half_of_the_true_ones() {
+    // What the last digits of the reference values leave open, relative.
+    let unknown = 6e-8;
+    let (mut all, mut below) = (0, Vec::new());
+    for (spec, reference, _) in SMOOTH {
+        let section = outline(spec);
+        for cells in [20.0, 28.0, 40.0, 56.0, 80.0, 112.0] {
+            for offset in offsets().take(6) {
+                let flow = solve(&section, cells, Some(offset));
+                let off = (flow.fanning_dh / reference - 1.0).abs() - unknown;
+                let claimed = flow.conductance.relative();
+                all += 1;
+                if claimed < 0.5 * off {
+                    below.push(format!(
+                        "{spec}, {cells} cells, {offset:?}: {off:.1e} off, {claimed:.1e} claimed"
+                    ));
+                }
+            }
+        }
+    }
+    assert!(
+        below.is_empty(),
+        "{} of {all}:\n{}",
+        below.len(),
+        below.join("\n")
+    );
+}

@@ -8,7 +8,7 @@ use super::accuracy::Accuracy;
 use super::attempt::{Attempt, WallAnswer};
 use super::extrapolation::extrapolate;
 use super::identities::identities;
-use super::range_extrapolation::from_ranges;
+use super::range_extrapolation::{from_ranges, within};
 use super::section_flow::{
     LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
 };
@@ -117,7 +117,7 @@ fn finish(
 /// Answers of the grids that extrapolation uses: grids with hardly any nodes say nothing about the limit.
 fn useful(answers: &[GridAnswer]) -> &[GridAnswer] {
     let count = answers.iter().take_while(|a| a.nodes >= 9).count().max(1);
-    answers.get(..count.min(3)).unwrap_or(answers)
+    answers.get(..count.min(4)).unwrap_or(answers)
 }
 
 /// Best value from one number of every useful grid.
@@ -165,31 +165,6 @@ pub(super) fn best_conductance(
     coarse
         .and_then(|coarse| from_ranges(extrapolated, proven, coarse, is_re_entrant))
         .unwrap_or_else(|| within(extrapolated, proven, is_re_entrant))
-}
-
-/// The best value is never outside the proven bounds, nor its error larger than they allow; an extrapolated
-/// value less sure than the middle between them gives way to that.
-///
-/// - `is_re_entrant`: there are re-entrant corners: nearly flat ones next to them can make the extrapolated values
-///   agree by accident, so that the middle is called as a second witness (`tests/invariants.rs` keeps such a
-///   star: eight vertices, 48 cells, best value 8.4e-5 off, estimated 1e-6)
-fn within(mut best: Estimate, proven: Bracket, is_re_entrant: bool) -> Estimate {
-    let half = 0.5 * (proven.high - proven.low);
-    if is_re_entrant {
-        best.error = best.error.max((best.value - proven.low - half).abs());
-    }
-    if best.error > half {
-        return Estimate {
-            value: proven.low + half,
-            error: half,
-        };
-    }
-    let value = best.value.clamp(proven.low, proven.high);
-    let farthest = (value - proven.low).max(proven.high - value);
-    Estimate {
-        value,
-        error: best.error.min(farthest),
-    }
 }
 
 /// `moment * factor / K^power` with its error.

@@ -14,8 +14,11 @@ use crate::measured::Estimate;
 /// terms left over fall at least like `h^2.5` (measured: `tests/convergence.rs`), so that the error is at
 /// most 1/(2^2.5 - 1) of the change, here doubled.
 const SHARE: f64 = 0.4;
-/// Share of the removed term that is added to the error where there are obtuse corners.
-const OBTUSE_SHARE: f64 = 0.03;
+/// Share of the change before the last one that is the least error: noise of `h^3` falls by 64 over two grids, and
+/// the noise of the coarser grid is the larger part of it.
+const EARLIER_SHARE: f64 = 0.05;
+/// Share of the removed term that is added to the error, against accidents of both changes.
+const REMOVED_SHARE: f64 = 0.003;
 /// Share of the removed term by which it varies where a re-entrant corner misses the nodes altogether.
 const MISFIT_SHARE: f64 = 1.0;
 /// Rounding and iteration error of a solved grid, relative.
@@ -42,24 +45,27 @@ pub(crate) fn extrapolate(values: &[f64], exponent: Option<f64>, misfit: f64) ->
             let best = remove(*fine, *coarse, exponent.map_or(2.0, |p| p.min(2.0)));
             with_error(best, best - fine)
         }
-        ([fine, middle, coarse, ..], _) => {
+        ([fine, middle, coarse, rest @ ..], _) => {
             let leading = exponent.unwrap_or(2.0);
             let leading = leading.min(2.0);
             let (first, second) = (
                 remove(*fine, *middle, leading),
                 remove(*middle, *coarse, leading),
             );
-            let change = (first - second).abs();
             let (best, error) = match exponent {
-                None => (first, SHARE * change),
-                // At an obtuse corner the constant of the next term depends on where the lines pass it.
-                Some(p) if p > 2.0 => (first, SHARE * change + OBTUSE_SHARE * (first - fine).abs()),
-                Some(_) => {
+                Some(p) if p <= 2.0 => {
                     let best = remove(first, second, 2.0);
                     (
                         best,
                         (best - first).abs() + MISFIT_SHARE * misfit * (first - fine).abs(),
                     )
+                }
+                _ => {
+                    let earlier = rest.first().map_or(0.0, |coarser| {
+                        (second - remove(*coarse, *coarser, leading)).abs()
+                    });
+                    let change = (SHARE * (first - second).abs()).max(EARLIER_SHARE * earlier);
+                    (first, change + REMOVED_SHARE * (first - fine).abs())
                 }
             };
             if in_order(*fine - middle, *middle - coarse, leading) {

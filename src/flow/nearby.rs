@@ -26,8 +26,6 @@ use super::wall_shear::wall_samples;
 const FIRST_CELLS_ACROSS: f64 = 16.0;
 /// Share of the tolerance that the reference has to meet, so that its neighbours do as well.
 const SHARE: f64 = 0.5;
-/// Power of the spacing with which the estimated error falls at least.
-const ORDER: f64 = 2.5;
 /// Least and most by which the next grid is finer.
 const FINER: [f64; 2] = [1.1, 2.0];
 /// Grids tried.
@@ -86,7 +84,8 @@ impl NearbySections {
             if error <= SHARE * tolerance {
                 break;
             }
-            let finer = (error / (SHARE * tolerance)).powf(1.0 / ORDER);
+            // The estimated error falls with the third power of the spacing mostly.
+            let finer = (error / (SHARE * tolerance)).cbrt();
             cells *= finer.clamp(FINER[0], FINER[1]);
         }
         let spacing = grid::spacing(&outline, diameter, cells, DEFAULT_MEMORY)?;

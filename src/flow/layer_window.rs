@@ -26,8 +26,10 @@ const FROM_CORNER: f64 = 3.0;
 /// Depth behind the wall where zero is asked for, spacings, and as a share of the distance to a corner.
 const DEPTH: f64 = 0.5;
 const DEPTH_SHARE: f64 = 0.4;
+/// Panels per zero.
+const PANELS_PER_ZERO: usize = 2;
 /// Weight of a zero behind one spacing of wall against a node.
-const ZERO_WEIGHT: f64 = 5.0;
+const ZERO_WEIGHT: f64 = 6.0;
 /// Weight that keeps the factors near the typical shear, against a node.
 const RIDGE: f64 = 1e-3;
 /// The same for the other unknowns, as a share of their part in the normal equations.
@@ -175,7 +177,7 @@ impl<'a> Window<'a> {
             let right = known + value - self.frame.particular(at);
             rows.add(&row, right, self.frame.fade(at));
         }
-        for panel in self.panels() {
+        for panel in self.panels().step_by(PANELS_PER_ZERO) {
             let depth = DEPTH.min(DEPTH_SHARE * from_corner(panel));
             let (middle, normal) = (panel.middle(), panel.normal());
             let at = [0, 1].map(|axis| middle[axis] + depth * normal[axis]);

@@ -16,6 +16,7 @@ mod grid_integrals;
 mod identities;
 mod layer_panel;
 mod layer_window;
+mod many;
 mod nearby;
 mod operating_point;
 mod peak;

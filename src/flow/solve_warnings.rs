@@ -86,10 +86,7 @@ pub(super) fn warnings(
 /// Where the fluxes beside the wall could not be balanced, so that the curve is that of the slopes.
 fn unbalanced(flow: &SectionFlow) -> Option<Warning> {
     let loops = &flow.wall_shear.curve.loops;
-    let received: f64 = loops
-        .iter()
-        .map(|along| along.integral(0.0, along.length()))
-        .sum();
+    let received: f64 = loops.iter().map(|along| along.received).sum();
     let off = received / flow.geometry.area - 1.0;
     (off.is_nan() || off.abs() > BALANCED).then(|| Warning {
         code: Code::IdentityFailed,

@@ -40,6 +40,8 @@ pub struct LoopCurve {
     pub(crate) spacing: f64,
     /// What the curve of the stretches is multiplied by.
     pub(crate) factor: BalanceFactor,
+    /// Integral of the curve once round, m^2, as it was balanced.
+    pub(crate) received: f64,
 }
 
 /// One point of the curve.
@@ -152,6 +154,7 @@ impl WallCurve {
                     stretches,
                     spacing,
                     factor: BalanceFactor::with_marks(length, f64::INFINITY, &[]),
+                    received: f64::NAN,
                 }
             })
             .collect();
@@ -318,6 +321,8 @@ impl LoopCurve {
         if !wanted.is_empty() {
             self.factor.fit(&curve, &wanted);
         }
+        let factor = &self.factor;
+        self.received = curve.iter().map(|&(s, part)| part * factor.at(s)).sum();
         curve.iter().map(|part| part.1).sum()
     }
 

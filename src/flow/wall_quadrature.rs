@@ -6,6 +6,7 @@
 //! behaves like `r^a` with `a = n (pi/omega - 1) > -1`, it is used in `t = r^(1/m)` with
 //! `m = 4/(a + 1)`: the integrand is then smooth.
 
+use super::many::map_many;
 use super::wall_curve::{LoopCurve, WallCurve, WallPlace};
 use super::wall_stretch::Stretch;
 
@@ -42,13 +43,19 @@ impl WallCurve {
     ///
     /// - `power`: 1 or 2
     /// - `weight`: smooth along each edge of the outline
-    pub fn integrate(&self, power: i32, weight: impl Fn(&WallPlace) -> f64) -> f64 {
-        (0..self.loops.len())
-            .map(|index| {
-                let length = self.loops[index].length();
-                self.integrate_stretch(index, 0.0, length, power, &weight)
-            })
-            .sum()
+    pub fn integrate(&self, power: i32, weight: impl Fn(&WallPlace) -> f64 + Sync) -> f64 {
+        let whole = |(loop_index, curve): (usize, &LoopCurve)| {
+            let sums = map_many(&curve.stretches, |stretch| {
+                let mut sum = Sum::new(curve, loop_index, &weight);
+                let ends = (0.0, stretch.length);
+                curve.along(stretch, ends, power, true, &mut |abscissa| {
+                    sum.add(abscissa);
+                });
+                sum.value
+            });
+            sums.iter().sum::<f64>()
+        };
+        self.loops.iter().enumerate().map(whole).sum()
     }
 
     /// The same along one loop from one arc length forward to another, m; past the first vertex where
@@ -64,24 +71,46 @@ impl WallCurve {
         let Some(curve) = self.loops.get(loop_index) else {
             return 0.0;
         };
-        let mut sum = 0.0;
-        let mut place = WallPlace {
-            loop_index,
-            arc_length: 0.0,
-            at: [0.0; 2],
-            normal: [0.0; 2],
-        };
-        let mut edge = usize::MAX;
-        curve.visit((from, to), power, true, &mut |abscissa| {
-            if edge != abscissa.edge {
-                edge = abscissa.edge;
-                place.normal = curve.path.edge_normal(edge);
-            }
-            place.arc_length = abscissa.arc_length;
-            place.at = curve.path.on_edge_at(edge, abscissa.arc_length);
-            sum += abscissa.weighted * weight(&place);
-        });
-        sum
+        let mut sum = Sum::new(curve, loop_index, &weight);
+        curve.visit((from, to), power, true, &mut |abscissa| sum.add(abscissa));
+        sum.value
+    }
+}
+
+/// A weighted sum along one loop.
+struct Sum<'a, W> {
+    curve: &'a LoopCurve,
+    weight: &'a W,
+    edge: usize,
+    place: WallPlace,
+    value: f64,
+}
+
+impl<'a, W: Fn(&WallPlace) -> f64> Sum<'a, W> {
+    fn new(curve: &'a LoopCurve, loop_index: usize, weight: &'a W) -> Self {
+        Self {
+            curve,
+            weight,
+            edge: usize::MAX,
+            place: WallPlace {
+                loop_index,
+                arc_length: 0.0,
+                at: [0.0; 2],
+                normal: [0.0; 2],
+            },
+            value: 0.0,
+        }
+    }
+
+    fn add(&mut self, abscissa: Abscissa) {
+        let path = &self.curve.path;
+        if self.edge != abscissa.edge {
+            self.edge = abscissa.edge;
+            self.place.normal = path.edge_normal(self.edge);
+        }
+        self.place.arc_length = abscissa.arc_length;
+        self.place.at = path.on_edge_at(self.edge, abscissa.arc_length);
+        self.value += abscissa.weighted * (self.weight)(&self.place);
     }
 }
 

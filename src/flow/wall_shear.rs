@@ -12,6 +12,7 @@ use crate::solve::Field;
 
 use super::corner_field::{corner_laws, is_wedge};
 use super::corner_law::CornerLaw;
+use super::many::map_many;
 use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::{ShearSources, WallCurve};
 use super::wall_flux::wall_fluxes;
@@ -256,16 +257,13 @@ impl Wall<'_> {
         let gaps = self.gaps();
         let before = gaps.last().into_iter().chain(&gaps);
         let rooms = gaps.iter().zip(before).map(|(a, b)| a.min(*b));
-        self.corners
-            .iter()
-            .zip(rooms)
-            .map(|(corner, room)| {
-                let is_re_entrant = corner.turning < 0.0;
-                is_re_entrant
-                    .then(|| corner_laws(solution, &self.path, corner, room))
-                    .flatten()
-            })
-            .collect()
+        let cases: Vec<(&Corner, f64)> = self.corners.iter().zip(rooms).collect();
+        map_many(&cases, |&(corner, room)| {
+            let is_re_entrant = corner.turning < 0.0;
+            is_re_entrant
+                .then(|| corner_laws(solution, &self.path, corner, room))
+                .flatten()
+        })
     }
 
     /// Whether the shear beside each corner has to come from the layer, as no law describes it.

@@ -8,6 +8,7 @@
 
 use crate::geometry::{DIRECTION_NAMES, Outline, Point, WallStretch};
 
+use super::many::map_many;
 use super::wall_curve::{LoopCurve, PointKind, WallCurve};
 
 /// Percentiles that are worked out, per cent of the wall's length.
@@ -266,14 +267,12 @@ struct Measured {
 /// Every part in turn.
 fn measured_parts(curve: &WallCurve, parts: &[WallPart]) -> Vec<Measured> {
     let singular: Vec<Vec<f64>> = curve.loops.iter().map(LoopCurve::singular_places).collect();
-    parts
-        .iter()
-        .filter_map(|part| {
-            let along = curve.loops.get(part.loop_index)?;
-            let singular = singular.get(part.loop_index)?;
-            Some(measure(along, part, singular, curve.singular_length))
-        })
-        .collect()
+    let measured = map_many(parts, |part| {
+        let along = curve.loops.get(part.loop_index)?;
+        let singular = singular.get(part.loop_index)?;
+        Some(measure(along, part, singular, curve.singular_length))
+    });
+    measured.into_iter().flatten().collect()
 }
 
 /// Statistics over some parts.

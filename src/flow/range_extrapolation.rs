@@ -79,10 +79,12 @@ pub(super) fn within(extrapolated: Estimate, proven: Bracket, is_re_entrant: boo
     let half = 0.5 * (proven.high - proven.low);
     let middle = proven.low + half;
     let away = value - middle;
+    let mut least_sure = LEAST_SURE[1];
     if is_re_entrant {
         error = error.max(away.abs());
+        least_sure = LEAST_SURE[0];
     }
-    if error > LEAST_SURE[usize::from(!is_re_entrant)] * half {
+    if error > least_sure * half {
         return Estimate {
             value: middle,
             error: half,

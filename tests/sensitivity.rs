@@ -6,13 +6,14 @@
 #![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
 
 use std::path::Path;
+use std::time::Instant;
 
 use etchwise::flow::closed_form::{concentric_annulus, rectangle};
 use etchwise::flow::{SolveOptions, solve_outline};
 use etchwise::geometry::{NamedWall, NominalSpec, Outline, wall_stretches};
 use etchwise::intake::{ReadOptions, read_section};
 use etchwise::study::{
-    FirstOrderRange, Sensitivity, SensitivityOptions, SensitivityStudy, moved_outline,
+    FirstOrderRange, NoCheck, Sensitivity, SensitivityOptions, SensitivityStudy, moved_outline,
     sensitivity_study, solve_for_sensitivity, wall_motions,
 };
 use etchwise::warning::Code;
@@ -68,7 +69,11 @@ fn l_shape() -> Outline {
 
 fn study(outline: &Outline, check: bool) -> SensitivityStudy {
     let solved = solve_for_sensitivity(outline, &SolveOptions::default()).unwrap();
-    sensitivity_study(&solved, &[], SensitivityOptions { check })
+    let options = SensitivityOptions {
+        check,
+        ..SensitivityOptions::default()
+    };
+    sensitivity_study(&solved, &[], options)
 }
 
 fn relative(study: &SensitivityStudy, name: &str) -> f64 {
@@ -317,7 +322,7 @@ fn a_section_without_a_floor_says_so() {
         &SolveOptions::default(),
     )
     .unwrap();
-    let triangle = sensitivity_study(&solved, &[], SensitivityOptions { check: false });
+    let triangle = sensitivity_study(&solved, &[], SensitivityOptions::default());
     for study in [study, triangle] {
         assert!(study.case("floor").is_none());
         let [none] = &study.absent[..] else {
@@ -349,7 +354,11 @@ fn a_wall_with_a_name_has_a_case_of_its_own() {
     ];
     let walls = wall_stretches(&outline, &named).unwrap();
     let solved = solve_for_sensitivity(&outline, &SolveOptions::default()).unwrap();
-    let study = sensitivity_study(&solved, &walls, SensitivityOptions { check: true });
+    let options = SensitivityOptions {
+        check: true,
+        ..SensitivityOptions::default()
+    };
+    let study = sensitivity_study(&solved, &walls, options);
     let heated = study.case("wall heated").unwrap();
     let bank = study.case("wall bank").unwrap();
     for case in [heated, bank] {
@@ -360,4 +369,20 @@ fn a_wall_with_a_name_has_a_case_of_its_own() {
     let sides = relative(&study, "floor") + relative(&study, "left");
     assert_close(both, sides, 1e-6);
     assert!(heated.relative > bank.relative);
+}
+
+#[test]
+fn checks_that_would_end_too_late_are_not_begun() {
+    let solved = solve_for_sensitivity(&drawn(DRAWN[1]), &SolveOptions::default()).unwrap();
+    let options = SensitivityOptions {
+        check: true,
+        until: Some(Instant::now()),
+    };
+    let study = sensitivity_study(&solved, &[], options);
+    assert!(study.check_grid.is_none());
+    assert!(!study.cases.is_empty());
+    for case in &study.cases {
+        assert_eq!(case.check, Err(NoCheck::Time), "{}", case.name);
+        assert!(case.relative.is_finite(), "{}", case.name);
+    }
 }

@@ -168,7 +168,7 @@ impl Request {
             None => &checked.section.walls[..],
         };
         let walls = WallReport::new(solved.outline(), &solved.flow.wall_shear.curve, named);
-        let study = sensitivity_study(&solved, named, SensitivityOptions { check: false });
+        let study = sensitivity_study(&solved, named, SensitivityOptions::default());
         let asked = CardRequest {
             fluid: &self.fluid,
             temperatures: self.temperatures,

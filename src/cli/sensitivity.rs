@@ -1,6 +1,7 @@
 //! `etchwise sensitivity`: what small changes of the wall do.
 
 use std::path::{Path, PathBuf};
+use std::time::{Duration, Instant};
 
 use clap::ArgMatches;
 
@@ -39,8 +40,9 @@ pub(super) fn run(matches: &ArgMatches) -> Result<ExitStatus, Failure> {
     request.check_targets()?;
     let checked = checked_section(&request.file, &request.read)?;
     say_settings(matches);
+    let until = request.until(Instant::now());
     let solved = solve_for_sensitivity(&checked.outline, &request.solve)?;
-    request.answer(&checked, &solved)
+    request.answer(&checked, &solved, until)
 }
 
 impl Request {
@@ -51,6 +53,7 @@ impl Request {
             solve: solve_options(matches)?,
             study: SensitivityOptions {
                 check: !matches.get_flag("no-check"),
+                until: None,
             },
             format: Format::of(matches),
             output: output::target(matches),
@@ -80,12 +83,23 @@ impl Request {
         )?)
     }
 
+    /// When the time allowed ends; `None` for no limit, as for one beyond what clocks count.
+    fn until(&self, start: Instant) -> Option<Instant> {
+        let allowed = Duration::try_from_secs_f64(self.solve.time_limit?).ok()?;
+        start.checked_add(allowed)
+    }
+
     fn answer(
         &self,
         checked: &CheckedSection,
         solved: &SolvedSection,
+        until: Option<Instant>,
     ) -> Result<ExitStatus, Failure> {
-        let study = sensitivity_study(solved, &checked.section.walls, self.study);
+        let options = SensitivityOptions {
+            until,
+            ..self.study
+        };
+        let study = sensitivity_study(solved, &checked.section.walls, options);
         let name = input::section_name(&checked.section, &self.file);
         let document = SensitivityDocument {
             source: Some(input::source_record(&checked.section.provenance)),

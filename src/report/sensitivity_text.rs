@@ -6,7 +6,9 @@ use super::numbers::{self, per_cent, significant, with_unit};
 use super::sensitivity_document::{SensitivityDocument, Step};
 use super::table::{Align, Table, paragraph};
 use super::text::{TextOptions, finished, part, title, warnings};
-use crate::study::{Check, FirstOrderRange, SECOND_ORDER_SHARE, Sensitivity};
+use crate::study::{
+    Check, FirstOrderRange, NoCheck, SECOND_ORDER_SHARE, Sensitivity, SensitivityStudy,
+};
 
 /// The document as text, ended by a line feed.
 pub fn sensitivity_text(document: &SensitivityDocument<'_>, options: TextOptions) -> String {
@@ -81,8 +83,10 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
             per_cent(SECOND_ORDER_SHARE)
         );
     } else {
-        explained.push_str(
-            " Nothing was solved again (--no-check), so where the second order matters is not known.",
+        let why = unchecked_because(document.study);
+        let _ = write!(
+            explained,
+            " Nothing was solved again ({why}), so where the second order matters is not known."
         );
     }
     format!(
@@ -93,6 +97,18 @@ fn changes(document: &SensitivityDocument<'_>) -> String {
         ),
         paragraph("  ", &explained)
     )
+}
+
+/// Why no case was checked, in brackets behind saying so.
+fn unchecked_because(study: &SensitivityStudy) -> String {
+    let reasons = study
+        .cases
+        .iter()
+        .filter_map(|case| case.check.as_ref().err());
+    match reasons.into_iter().next() {
+        Some(NoCheck::NotAsked) | None => "--no-check".to_owned(),
+        Some(reason) => reason.to_string(),
+    }
 }
 
 fn change_row(case: &Sensitivity, step: Step, is_first: bool) -> Vec<String> {

@@ -210,7 +210,7 @@ impl SectionCard {
     /// let a = 100e-6;
     /// let square = Outline::single(vec![[0.0, 0.0], [a, 0.0], [a, a], [0.0, a]]);
     /// let solved = solve_for_sensitivity(&square, &SolveOptions::default())?;
-    /// let study = sensitivity_study(&solved, &[], SensitivityOptions { check: false });
+    /// let study = sensitivity_study(&solved, &[], SensitivityOptions::default());
     /// let walls = WallReport::new(solved.outline(), &solved.flow.wall_shear.curve, &[]);
     /// let water = Fluid::water(298.15)?;
     /// let request =

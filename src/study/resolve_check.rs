@@ -80,6 +80,9 @@ pub enum NoCheck {
     /// It was not asked for.
     #[error("the check was not asked for")]
     NotAsked,
+    /// The time allowed was used up.
+    #[error("the time allowed (--max-seconds) is used up")]
+    Time,
     /// The moved outline is not one.
     #[error("the outline crosses itself when its walls move by the step of the check")]
     Outline,
@@ -101,6 +104,8 @@ pub(super) struct Base<'a> {
     pub(super) diameter: f64,
     /// Estimated relative error of `K`.
     pub(super) relative_error: f64,
+    /// What its solve took, s.
+    pub(super) seconds: f64,
 }
 
 impl Base<'_> {

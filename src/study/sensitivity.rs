@@ -7,7 +7,7 @@
 //!
 //! Accuracy: within 1e-3 of central differences of new solves, `tests/sensitivity.rs`.
 
-use std::time::Instant;
+use std::time::{Duration, Instant};
 
 use rayon::prelude::*;
 
@@ -37,10 +37,22 @@ const MOST_CHECK_NODES: f64 = 3e5;
 const CHECK_TOLERANCE: f64 = 5e-3;
 
 /// What to study.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub struct SensitivityOptions {
     /// Whether each case is checked by new solves.
     pub check: bool,
+    /// No new solve is begun that is foreseen to end later than this.
+    pub until: Option<Instant>,
+}
+
+impl SensitivityOptions {
+    /// Whether work that takes this long, s, would end too late; `None` for no limit.
+    fn is_too_late_by(&self, seconds: f64) -> bool {
+        let left = self
+            .until
+            .map(|end| end.saturating_duration_since(Instant::now()));
+        left.is_some_and(|left| left <= Duration::from_secs_f64(seconds))
+    }
 }
 
 /// One case: a change of the wall and what it does.
@@ -162,7 +174,7 @@ fn wall_error(flow: &SectionFlow) -> f64 {
 /// let a = 100e-6;
 /// let square = Outline::single(vec![[0.0, 0.0], [a, 0.0], [a, a], [0.0, a]]);
 /// let solved = solve_for_sensitivity(&square, &SolveOptions::default())?;
-/// let study = sensitivity_study(&solved, &[], SensitivityOptions { check: false });
+/// let study = sensitivity_study(&solved, &[], SensitivityOptions::default());
 /// let depth = study.case("depth").map_or(0.0, |case| case.relative);
 /// assert!((depth - 2.0).abs() < 2e-3);
 /// # Ok::<(), etchwise::flow::FlowError>(())
@@ -183,7 +195,10 @@ pub fn sensitivity_study(
             Err(none) => absent.push(none),
         }
     }
-    let base = options.check.then(|| base(solved, &outline)).transpose();
+    let base = options
+        .check
+        .then(|| base(solved, &outline, options))
+        .transpose();
     let cases: Vec<Sensitivity> = motions
         .par_iter()
         .map(|motion| {
@@ -197,6 +212,9 @@ pub fn sensitivity_study(
                 relative: conductance / k,
                 gross: gross / k,
                 check: match &base {
+                    Ok(Some(base)) if options.is_too_late_by(2.0 * base.seconds) => {
+                        Err(NoCheck::Time)
+                    }
                     Ok(Some(base)) => base.check(motion),
                     Ok(None) => Err(NoCheck::NotAsked),
                     Err(error) => Err(error.clone()),
@@ -223,20 +241,30 @@ pub fn sensitivity_study(
 }
 
 /// The unmoved section on the grid of the checks.
-fn base<'a>(solved: &SolvedSection, outline: &'a Outline) -> Result<Base<'a>, NoCheck> {
+fn base<'a>(
+    solved: &SolvedSection,
+    outline: &'a Outline,
+    limits: SensitivityOptions,
+) -> Result<Base<'a>, NoCheck> {
     let grid = &solved.flow.grid;
     let coarser = (MOST_CHECK_NODES / grid.fluid_nodes as f64).sqrt().min(1.0);
     let cells_across = (grid.cells_across * coarser).min(MOST_CHECK_CELLS);
+    let share = (cells_across / grid.cells_across).powi(2);
+    if limits.is_too_late_by(share * solved.cost().seconds()) {
+        return Err(NoCheck::Time);
+    }
     let options = SolveOptions {
         cells_across: Some(cells_across),
         ..SolveOptions::default()
     };
+    let start = Instant::now();
     let k = solve_outline(outline, &options)?.flow.conductance;
     Ok(Base {
         outline,
         cells_across,
         conductance: k.value,
         relative_error: k.relative(),
+        seconds: start.elapsed().as_secs_f64(),
         diameter: grid.inscribed_diameter,
     })
 }

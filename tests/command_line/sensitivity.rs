@@ -33,6 +33,16 @@ fn text_names_every_case_says_what_moves_and_how_it_was_checked() {
     let plain = folder.line("sensitivity a.csv --no-check");
     assert!(!plain.out.contains("off by        +/-"), "{}", plain.out);
     assert!(plain.out.contains("(--no-check)"), "{}", plain.out);
+    let hasty = folder.line("sensitivity a.csv --max-seconds 1e-9");
+    assert_eq!(hasty.status, 5, "{}", hasty.err);
+    assert!(
+        hasty.out.contains("(--max-seconds) is used"),
+        "{}",
+        hasty.out
+    );
+    let patient = folder.line("sensitivity a.csv --max-seconds 1e300");
+    assert_eq!(patient.status, 0, "{}", patient.err);
+    assert!(patient.out.contains("off by"), "{}", patient.out);
 }
 
 #[test]

@@ -85,7 +85,7 @@ pub(super) fn pictures(
         .collect()
 }
 
-/// The begin of the names of files for viewers, if they are asked for.
+/// The begin of the names of files for viewers, if they are asked for; an extension of one of them is left out.
 pub(super) fn vtk_prefix(matches: &ArgMatches) -> Result<Option<PathBuf>, Failure> {
     let Some(prefix) = matches.get_one::<PathBuf>("vtk").cloned() else {
         return Ok(None);
@@ -97,7 +97,17 @@ pub(super) fn vtk_prefix(matches: &ArgMatches) -> Result<Option<PathBuf>, Failur
             "give the begin of the file names, for example --vtk out/wafer",
         ));
     }
-    Ok(Some(prefix))
+    let is_file = prefix.extension().is_some_and(|extension| {
+        let viewers = ["vti", "vtp", "vtk", "vtu", "pvd"];
+        viewers
+            .iter()
+            .any(|known| extension.eq_ignore_ascii_case(known))
+    });
+    Ok(Some(if is_file {
+        prefix.with_extension("")
+    } else {
+        prefix
+    }))
 }
 
 /// What must not be overwritten, and whether files are told of.

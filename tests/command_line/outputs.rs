@@ -14,6 +14,14 @@ fn results_go_to_standard_output_and_talk_to_standard_error() {
     assert_eq!(run.err, "wrote a.vti\nwrote a.vtp\nwrote a.png\n");
     let quiet = folder.line("solve a.csv --json --picture a.png --vtk a -q");
     assert_eq!(quiet.err, "");
+    // A dot in the begin of a name stays; the extension of a viewer's file is not doubled.
+    for (asked, written) in [("b.vti", "b"), ("c.VTP", "c"), ("run1.2", "run1.2")] {
+        let run = folder.line(&format!("solve a.csv --json --vtk {asked}"));
+        assert_eq!(
+            run.err,
+            format!("wrote {written}.vti\nwrote {written}.vtp\n")
+        );
+    }
     let file = folder.line("solve a.csv --json -o a.json");
     assert_eq!(
         (file.out.as_str(), file.err.as_str()),

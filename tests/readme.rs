@@ -233,7 +233,7 @@ fn every_file_and_folder_named_is_there() {
 fn every_option_named_is_one_of_the_program() {
     let text = readme();
     let mut known = BTreeSet::from(["--".to_owned(), "--release".to_owned()]);
-    for name in ["path", "example", "bench", "help"] {
+    for name in ["path", "profile", "example", "bench", "help"] {
         known.insert(format!("--{name}"));
     }
     collect_options(&etchwise::cli::command(), &mut known);

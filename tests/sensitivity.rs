@@ -69,11 +69,12 @@ fn l_shape() -> Outline {
 
 fn study(outline: &Outline, check: bool) -> SensitivityStudy {
     let solved = solve_for_sensitivity(outline, &SolveOptions::default()).unwrap();
-    let options = SensitivityOptions {
-        check,
-        ..SensitivityOptions::default()
-    };
-    sensitivity_study(&solved, &[], options)
+    sensitivity_study(&solved, &[], options(check))
+}
+
+/// Without a limit on time.
+fn options(check: bool) -> SensitivityOptions {
+    SensitivityOptions { check, until: None }
 }
 
 fn relative(study: &SensitivityStudy, name: &str) -> f64 {
@@ -322,7 +323,7 @@ fn a_section_without_a_floor_says_so() {
         &SolveOptions::default(),
     )
     .unwrap();
-    let triangle = sensitivity_study(&solved, &[], SensitivityOptions::default());
+    let triangle = sensitivity_study(&solved, &[], options(false));
     for study in [study, triangle] {
         assert!(study.case("floor").is_none());
         let [none] = &study.absent[..] else {
@@ -354,11 +355,7 @@ fn a_wall_with_a_name_has_a_case_of_its_own() {
     ];
     let walls = wall_stretches(&outline, &named).unwrap();
     let solved = solve_for_sensitivity(&outline, &SolveOptions::default()).unwrap();
-    let options = SensitivityOptions {
-        check: true,
-        ..SensitivityOptions::default()
-    };
-    let study = sensitivity_study(&solved, &walls, options);
+    let study = sensitivity_study(&solved, &walls, options(true));
     let heated = study.case("wall heated").unwrap();
     let bank = study.case("wall bank").unwrap();
     for case in [heated, bank] {

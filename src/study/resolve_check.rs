@@ -80,8 +80,8 @@ pub enum NoCheck {
     /// It was not asked for.
     #[error("the check was not asked for")]
     NotAsked,
-    /// The time allowed was used up.
-    #[error("the time allowed (--max-seconds) is used up")]
+    /// The time allowed does not suffice.
+    #[error("the new solves would end after --max-seconds")]
     Time,
     /// The moved outline is not one.
     #[error("the outline crosses itself when its walls move by the step of the check")]

@@ -7,7 +7,7 @@
 //!
 //! Accuracy: within 1e-3 of central differences of new solves, `tests/sensitivity.rs`.
 
-use std::time::{Duration, Instant};
+use std::time::Instant;
 
 use rayon::prelude::*;
 
@@ -51,7 +51,7 @@ impl SensitivityOptions {
         let left = self
             .until
             .map(|end| end.saturating_duration_since(Instant::now()));
-        left.is_some_and(|left| left <= Duration::from_secs_f64(seconds))
+        left.is_some_and(|left| left.as_secs_f64() <= seconds)
     }
 }
 
@@ -362,4 +362,20 @@ fn warnings(solved: &SolvedSection, cases: &[Sensitivity]) -> Vec<Warning> {
         });
     }
     found
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use std::time::Duration;
+
+    #[test]
+    fn only_work_that_would_end_after_the_limit_is_too_late() {
+        let within = |until| SensitivityOptions { check: true, until };
+        assert!(!within(None).is_too_late_by(f64::MAX));
+        let hour = within(Instant::now().checked_add(Duration::from_secs(3600)));
+        assert!(!hour.is_too_late_by(60.0));
+        assert!(hour.is_too_late_by(3601.0));
+        assert!(within(Some(Instant::now())).is_too_late_by(0.0));
+    }
 }

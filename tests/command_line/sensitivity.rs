@@ -36,7 +36,7 @@ fn text_names_every_case_says_what_moves_and_how_it_was_checked() {
     let hasty = folder.line("sensitivity a.csv --max-seconds 1e-9");
     assert_eq!(hasty.status, 5, "{}", hasty.err);
     assert!(
-        hasty.out.contains("(--max-seconds) is used"),
+        hasty.out.contains("would end after --max-seconds"),
         "{}",
         hasty.out
     );

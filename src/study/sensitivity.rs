@@ -373,7 +373,7 @@ mod tests {
     fn only_work_that_would_end_after_the_limit_is_too_late() {
         let within = |until| SensitivityOptions { check: true, until };
         assert!(!within(None).is_too_late_by(f64::MAX));
-        let hour = within(Instant::now().checked_add(Duration::from_secs(3600)));
+        let hour = within(Instant::now().checked_add(Duration::from_hours(1)));
         assert!(!hour.is_too_late_by(60.0));
         assert!(hour.is_too_late_by(3601.0));
         assert!(within(Some(Instant::now())).is_too_late_by(0.0));

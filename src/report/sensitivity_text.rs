@@ -191,15 +191,26 @@ fn evidence(document: &SensitivityDocument<'_>) -> String {
     };
     table.row(["grid of the new solves".to_owned(), solves, remark]);
     let mut out = part("Evidence", &table);
-    for case in &study.cases {
-        if let (Err(reason), Some(_)) = (&case.check, study.check_grid) {
-            out.push_str(&paragraph(
-                "  ",
-                &format!("{} is not checked: {reason}.", case.name),
-            ));
-        }
+    for (reason, names) in unchecked(study) {
+        let are = if names.len() == 1 { "is" } else { "are" };
+        let told = format!("{} {are} not checked: {reason}.", names.join(", "));
+        out.push_str(&paragraph("  ", &told));
     }
     out
+}
+
+/// Cases without a check where others have one, by the reason.
+fn unchecked(study: &SensitivityStudy) -> Vec<(String, Vec<&str>)> {
+    let mut found: Vec<(String, Vec<&str>)> = Vec::new();
+    for case in study.cases.iter().filter(|_| study.check_grid.is_some()) {
+        let Err(reason) = &case.check else { continue };
+        let reason = reason.to_string();
+        match found.iter_mut().find(|(known, _)| *known == reason) {
+            Some((_, names)) => names.push(&case.name),
+            None => found.push((reason, vec![&case.name])),
+        }
+    }
+    found
 }
 
 /// The new solves in numbers.

@@ -6,7 +6,7 @@ use crate::proof::Bracket;
 
 use super::accuracy::Accuracy;
 use super::attempt::{Attempt, WallAnswer};
-use super::extrapolation::extrapolate;
+use super::extrapolation::{LOOSE, extrapolate};
 use super::identities::identities;
 use super::range_extrapolation::{from_ranges, within};
 use super::section_flow::{
@@ -162,9 +162,11 @@ pub(super) fn best_conductance(
         return extrapolated;
     };
     let is_re_entrant = leading_exponent(&grids.corners).is_some_and(|p| p < 2.0);
-    coarse
-        .and_then(|coarse| from_ranges(extrapolated, proven, coarse, is_re_entrant))
-        .unwrap_or_else(|| within(extrapolated, proven, is_re_entrant))
+    let is_one_law = is_re_entrant && grids.misfit <= LOOSE;
+    match coarse {
+        Some(coarse) => from_ranges(extrapolated, proven, coarse, is_one_law),
+        None => within(extrapolated, proven, is_re_entrant),
+    }
 }
 
 /// `moment * factor / K^power` with its error.

@@ -164,7 +164,10 @@ pub(super) fn best_conductance(
     let is_re_entrant = leading_exponent(&grids.corners).is_some_and(|p| p < 2.0);
     let is_one_law = is_re_entrant && grids.misfit <= LOOSE;
     match coarse {
-        Some(coarse) => from_ranges(extrapolated, proven, coarse, is_one_law),
+        Some(coarse) => {
+            let diameter = 4.0 * outline.area() / outline.wetted_perimeter();
+            from_ranges(extrapolated, proven, coarse, is_one_law, diameter / spacing)
+        }
         None => within(extrapolated, proven, is_re_entrant),
     }
 }

@@ -24,8 +24,9 @@ use super::wall_shear::wall_samples;
 
 /// Cells across the smallest lumen that the search for the grid starts from.
 const FIRST_CELLS_ACROSS: f64 = 16.0;
-/// Share of the tolerance that the reference has to meet, so that its neighbours do as well.
-const SHARE: f64 = 0.5;
+/// Share of the tolerance that the reference has to meet, so that its neighbours do as well: where the estimated error is
+/// a difference between grids, which varies from neighbour to neighbour, and where it is a part of a proven range.
+const SHARES: [f64; 2] = [0.5, 0.8];
 /// Least and most by which the next grid is finer.
 const FINER: [f64; 2] = [1.1, 2.0];
 /// Grids tried.
@@ -80,12 +81,20 @@ impl NearbySections {
         let mut cells = FIRST_CELLS_ACROSS;
         for _ in 0..MOST_GRIDS {
             let spacing = grid::spacing(&outline, diameter, cells, DEFAULT_MEMORY)?;
-            let error = estimate(&outline, spacing, cells)?.relative();
-            if error <= SHARE * tolerance {
+            let found = estimate(&outline, spacing, cells)?;
+            let (error, aim) = (
+                found.value.relative(),
+                tolerance * SHARES[usize::from(found.is_from_ranges)],
+            );
+            if error <= aim {
                 break;
             }
-            // The estimated error falls with the third power of the spacing mostly.
-            let finer = (error / (SHARE * tolerance)).cbrt();
+            // An estimated error falls with the third power of the spacing mostly, a range with the second or less.
+            let finer = if found.is_from_ranges {
+                (error / aim).sqrt()
+            } else {
+                (error / aim).cbrt()
+            };
             cells *= finer.clamp(FINER[0], FINER[1]);
         }
         let spacing = grid::spacing(&outline, diameter, cells, DEFAULT_MEMORY)?;
@@ -112,14 +121,14 @@ impl NearbySections {
         let outline = outline.clone().oriented();
         let size = positive_area(&outline)?.sqrt();
         let mut finer = 1.0;
-        let mut best = estimate(&outline, size / self.size_in_spacings, self.cells_across)?;
+        let mut best = estimate(&outline, size / self.size_in_spacings, self.cells_across)?.value;
         for _ in 0..NEIGHBOUR_GRIDS {
             if best.relative() <= self.tolerance {
                 break;
             }
             finer *= NEIGHBOUR_FINER;
             let spacing = size / (self.size_in_spacings * finer);
-            let next = estimate(&outline, spacing, self.cells_across * finer)?;
+            let next = estimate(&outline, spacing, self.cells_across * finer)?.value;
             if next.error < best.error {
                 best = next;
             }
@@ -142,7 +151,14 @@ fn positive_area(outline: &Outline) -> Result<f64, FlowError> {
     Ok(area)
 }
 
-fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Estimate, FlowError> {
+/// Best value of `K`, m^4.
+struct Found {
+    value: Estimate,
+    /// Whether the proven ranges of two grids gave it.
+    is_from_ranges: bool,
+}
+
+fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Found, FlowError> {
     let grids = solve_grids(
         outline,
         spacing,
@@ -157,10 +173,8 @@ fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Estima
     let coarse = grids.coarse_range(outline);
     let proven = coarse.and_then(|_| bracket(&grids.lattice, &grids.mask, &grids.phi).ok());
     let proven = proven.map(|range| range.scaled(grids.lattice.spacing.powi(4)));
-    Ok(best_conductance(
-        outline,
-        &grids,
-        &samples,
-        [proven, coarse],
-    ))
+    Ok(Found {
+        value: best_conductance(outline, &grids, &samples, [proven, coarse]),
+        is_from_ranges: proven.is_some(),
+    })
 }

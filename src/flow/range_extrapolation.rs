@@ -16,9 +16,9 @@
 //! # Accuracy
 //! Usual shares and parts of the half width were set on 2122 cases (rough discs and grooves of 60 to 1000 vertices, stars,
 //! L shapes, polygons, trapezoids, ellipses, rounded and convex sections, 32 to 512 cells, against 1500 or 2000)
-//! and tried on 2898 others (ridges with up to 20 corners as well, 8 to 330 cells). There the estimated error is below half
-//! of the true one in 8 cases, at least 0.38 of it, and from 36 cells on below the true one in 39 of 1708; the value is off by a
-//! quarter of the estimated error in the median. `tests/rough_estimates.rs` keeps such sections.
+//! and tried on 2898 others (ridges with up to 20 corners as well, 8 to 330 cells). There, still without [`COARSE`], the
+//! estimated error is below half of the true one in 8 cases, at least 0.38 of it, and from 36 cells on below the true one in 39 of
+//! 1708; the value is off by a quarter of the estimated error in the median. `tests/rough_estimates.rs` keeps such sections.
 
 use crate::measured::Estimate;
 use crate::proof::Bracket;
@@ -43,6 +43,8 @@ const RESERVE: f64 = 0.1;
 const APART: [f64; 2] = [0.15, 0.25];
 /// See [`APART`].
 const SLOW: f64 = 2.0;
+/// Cells across at which that part is twice as large.
+const COARSE: f64 = 8.0;
 /// Half widths up to which an estimated error leaves an extrapolated value its place, with re-entrant corners and
 /// without, see [`within`].
 const LEAST_SURE: [f64; 2] = [1.0, 2.0];
@@ -55,11 +57,13 @@ const OUTSIDE: f64 = 0.5;
 /// - `proven`, `coarse`: ranges of a grid and of one with twice its spacing
 /// - `is_one_law`: the leading term of both is that of re-entrant corners on their nodes: both witnesses then keep it
 ///   exactly, so that the share is no noise
+/// - `cells_across`: spacings in the hydraulic diameter
 pub(super) fn from_ranges(
     extrapolated: Estimate,
     proven: Bracket,
     coarse: Bracket,
     is_one_law: bool,
+    cells_across: f64,
 ) -> Estimate {
     let (width, coarse_width) = (proven.high - proven.low, coarse.high - coarse.low);
     let ratio = coarse_width / width;
@@ -81,7 +85,7 @@ pub(super) fn from_ranges(
             error: difference + RESERVE * half,
         };
     }
-    let part = APART[usize::from(ratio < SLOW)] + likely.cut;
+    let part = APART[usize::from(ratio < SLOW)] * (1.0 + COARSE / cells_across) + likely.cut;
     Estimate {
         value,
         error: part.min(1.0) * half,
@@ -187,11 +191,21 @@ mod tests {
             range(1.0, 0.034, 0.066),
             range(1.0, 0.0748, 0.1452),
             false,
+            1e9,
         );
         assert!((found.value - 1.0).abs() < 1e-14);
-        assert!((found.error - 0.15 * 0.05).abs() < 1e-14);
+        assert!((found.error - 0.15 * 0.05).abs() < 1e-9);
+        let [proven, coarse] = [range(1.0, 0.034, 0.066), range(1.0, 0.0748, 0.1452)];
+        let found = from_ranges(far, proven, coarse, false, COARSE);
+        assert!((found.error - 0.3 * 0.05).abs() < 1e-14);
         // As steep as smooth walls leave it, any share is believed.
-        let steep = from_ranges(far, range(1.0, 0.09, 0.01), range(1.0, 0.63, 0.07), false);
+        let steep = from_ranges(
+            far,
+            range(1.0, 0.09, 0.01),
+            range(1.0, 0.63, 0.07),
+            false,
+            1e9,
+        );
         assert!((steep.value - 1.0).abs() < 1e-14);
     }
 
@@ -230,7 +244,7 @@ mod tests {
             range(f64::NAN, 0.1, 0.1),
             range(1.0, 0.0, 0.0),
         ] {
-            let found = from_ranges(far, range(1.0, 0.02, 0.01), coarse, false);
+            let found = from_ranges(far, range(1.0, 0.02, 0.01), coarse, false, 1e9);
             assert!((found.value - 0.995).abs() < 1e-14, "{coarse:?}");
             assert!((found.error - 0.015).abs() < 1e-14, "{coarse:?}");
         }
@@ -243,7 +257,7 @@ mod tests {
             error: 0.1,
         };
         let (proven, coarse) = (range(1.0, 0.034, 0.066), range(1.0, 0.0748, 0.1452));
-        let found = from_ranges(near, proven, coarse, false);
+        let found = from_ranges(near, proven, coarse, false, 1e9);
         assert!((found.value - 1.0001).abs() < 1e-15);
         assert!(found.error > 0.005 && found.error < 0.0052);
     }

@@ -69,6 +69,7 @@ mod text_reach;
 mod text_wall;
 mod ticks;
 mod vtk;
+mod wall_crowds;
 mod wall_csv;
 mod wall_picture;
 mod write;

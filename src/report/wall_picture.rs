@@ -2,7 +2,8 @@
 //! length, the walls as a band below, corners marked, round ticks with units.
 //!
 //! At a singular corner the curve is cut off at the top of the plot, and a bar shows its mean over the
-//! stated length on either side.
+//! stated length on either side. Where such corners crowd the mean over a length that can be seen stands for all that
+//! (module `wall_crowds`).
 
 use super::document::SolveDocument;
 use super::drawing::{Anchor, Colour, Drawing, INK, Item, PAPER, TextSize};
@@ -15,7 +16,8 @@ use super::svg::to_svg;
 use super::table::wrapped;
 use super::text_wall::short_name;
 use super::ticks;
-use crate::flow::{CurvePoint, LoopCurve, PointKind, WallReport};
+use super::wall_crowds::{Crowd, crowds, leaves_out, lines, running_mean};
+use crate::flow::{LoopCurve, PointKind, SingularCorner, WallReport};
 use crate::geometry::Point;
 
 /// Width of the plot, px.
@@ -34,6 +36,14 @@ const MOST_SHEAR_TICKS: usize = 8;
 const MOST_LENGTH_TICKS: usize = 12;
 /// Distance of convex corners, px, below which their squares touch and dips between them cannot be seen.
 const CROWDED: f64 = 6.0;
+/// Distance of corners, px, below which re-entrant ones are a crowd: their marks touch.
+const CROWDED_SINGULAR: f64 = 12.0;
+/// Length on either side over which the mean is drawn there, px.
+const REACH: f64 = 12.0;
+/// Thickness of the line over a crowd, px.
+const CROWD_LINE: f64 = 5.0;
+/// Widest part of a wall, px, that is drawn without lines at its ends.
+const NARROW_WALL: f64 = 3.0;
 /// Share of the largest value that the plot reaches beyond it.
 const HEADROOM: f64 = 0.12;
 /// The curve.
@@ -87,6 +97,7 @@ pub fn draw_wall(
     plot.mean();
     plot.curves();
     plot.corners();
+    plot.crowd_lines();
     plot.notes();
     plot.drawing.height = (plot.y + MARGIN).ceil() as u32;
     Ok(plot.drawing)
@@ -101,6 +112,8 @@ struct Plot<'a> {
     per_metre: f64,
     /// Where each loop begins, px.
     starts: Vec<f64>,
+    /// Crowds of re-entrant corners of each loop.
+    crowds: Vec<Vec<Crowd>>,
     /// Upper end of the plot, m of shear per gradient.
     top: f64,
     /// Shown value per metre of shear per gradient, and its unit.
@@ -130,7 +143,12 @@ impl<'a> Plot<'a> {
         } else {
             numbers::LENGTHS
         };
-        let (name, size) = numbers::fitting_unit(report.whole.max * scale, units);
+        let crowds: Vec<Vec<Crowd>> = loops
+            .iter()
+            .map(|along| crowds(&along.points, CROWDED_SINGULAR / per_metre))
+            .collect();
+        let largest = shown_largest(document, report, &crowds, REACH / per_metre);
+        let (name, size) = numbers::fitting_unit(largest * scale, units);
         Self {
             document,
             report,
@@ -143,7 +161,8 @@ impl<'a> Plot<'a> {
             },
             per_metre,
             starts,
-            top: (1.0 + HEADROOM) * report.whole.max,
+            crowds,
+            top: (1.0 + HEADROOM) * largest,
             factor: scale / size,
             unit: name.to_owned(),
             ceiling: 0.0,
@@ -304,8 +323,10 @@ impl<'a> Plot<'a> {
                 loops: vec![area],
                 fill,
             });
-            self.drawing
-                .lines(vec![vec![[from, top], [from, bottom]]], INK, 0.8);
+            if to - from > NARROW_WALL {
+                self.drawing
+                    .lines(vec![vec![[from, top], [from, bottom]]], INK, 0.8);
+            }
             let name = self
                 .report
                 .walls
@@ -340,15 +361,15 @@ impl<'a> Plot<'a> {
 
     /// The curve of a loop on the page, cut where it leaves the plot.
     fn pieces(&self, index: usize, along: &LoopCurve) -> Vec<Vec<Point>> {
-        let mut points = drawn(&along.points, CROWDED / self.per_metre);
-        // Without a corner on the first vertex the curve has no point there.
-        if points.first().is_some_and(|p| p.0 > 0.0) {
-            let value = along.shear_at(0.0);
-            points.insert(0, (0.0, value));
-            points.push((along.length(), value));
-        } else if points.last().is_some_and(|p| p.0 < along.length()) {
-            points.push((along.length(), along.shear_at(0.0)));
-        }
+        let (near, reach) = (CROWDED / self.per_metre, REACH / self.per_metre);
+        lines(along, &self.crowds[index], near, reach)
+            .iter()
+            .flat_map(|line| self.cut(index, line))
+            .collect()
+    }
+
+    /// A line on the page, cut where it leaves the plot.
+    fn cut(&self, index: usize, points: &[(f64, f64)]) -> Vec<Vec<Point>> {
         let mut pieces = vec![Vec::new()];
         for pair in points.windows(2) {
             let (a, b) = (pair[0], pair[1]);
@@ -382,27 +403,16 @@ impl<'a> Plot<'a> {
     /// Marks of corners: a small square for a convex one, a triangle and two bars for a singular one.
     fn corners(&mut self) {
         let curve = &self.document.flow.wall_shear.curve;
-        let base = self.floor();
-        for (index, along) in curve.loops.iter().enumerate() {
-            for point in along
-                .points
-                .iter()
-                .filter(|p| p.kind == PointKind::ConvexCorner)
-            {
-                let [x, _] = self.page(index, point.arc_length, 0.0);
-                let square = vec![
-                    [x - 3.0, base - 3.0],
-                    [x + 3.0, base - 3.0],
-                    [x + 3.0, base + 3.0],
-                    [x - 3.0, base + 3.0],
-                ];
-                self.drawing.items.push(Item::Area {
-                    loops: vec![square],
-                    fill: INK,
-                });
-            }
+        for square in self.squares() {
+            self.drawing.items.push(Item::Area {
+                loops: vec![square],
+                fill: INK,
+            });
         }
         for corner in &self.report.singular_corners {
+            if self.is_crowded(corner.loop_index, corner.arc_length) {
+                continue;
+            }
             let total = curve.loops[corner.loop_index].length();
             let reach = curve.singular_length;
             for (k, side) in [-1.0, 1.0].into_iter().enumerate() {
@@ -429,6 +439,49 @@ impl<'a> Plot<'a> {
         }
     }
 
+    /// The marks of convex corners.
+    fn squares(&self) -> Vec<Vec<Point>> {
+        let base = self.floor();
+        let loops = &self.document.flow.wall_shear.curve.loops;
+        let places = loops.iter().enumerate().flat_map(|(index, along)| {
+            let corners = along.points.iter().filter(move |p| {
+                p.kind == PointKind::ConvexCorner && !self.is_crowded(index, p.arc_length)
+            });
+            corners.map(move |p| self.page(index, p.arc_length, 0.0)[0])
+        });
+        let ends = [[-3.0, -3.0], [3.0, -3.0], [3.0, 3.0], [-3.0, 3.0]];
+        places
+            .map(|x| ends.map(|[dx, dy]| [x + dx, base + dy]).to_vec())
+            .collect()
+    }
+
+    fn is_crowded(&self, index: usize, arc_length: f64) -> bool {
+        self.crowds[index].iter().any(|c| c.holds(arc_length))
+    }
+
+    /// A line along the top over every crowd.
+    fn crowd_lines(&mut self) {
+        let mut areas = Vec::new();
+        for (index, own) in self.crowds.iter().enumerate() {
+            for crowd in own {
+                let [left, right] = [crowd.from, crowd.to].map(|s| self.page(index, s, 0.0)[0]);
+                let (top, bottom) = (self.ceiling, self.ceiling + CROWD_LINE);
+                areas.push(vec![
+                    [left, top],
+                    [right, top],
+                    [right, bottom],
+                    [left, bottom],
+                ]);
+            }
+        }
+        if !areas.is_empty() {
+            self.drawing.items.push(Item::Area {
+                loops: areas,
+                fill: SINGULAR,
+            });
+        }
+    }
+
     fn notes(&mut self) {
         let curve = &self.document.flow.wall_shear.curve;
         let start = curve.loops.first().map_or([0.0; 2], |l| l.position(0.0));
@@ -441,28 +494,59 @@ impl<'a> Plot<'a> {
             ),
             TextSize::Small,
         );
-        let convex = curve
-            .loops
-            .iter()
-            .flat_map(|l| &l.points)
-            .any(|p| p.kind == PointKind::ConvexCorner);
-        if convex {
-            let mut note = "Squares: convex corners, where the shear is zero.".to_owned();
-            let crowded = |l: &LoopCurve| drawn(&l.points, CROWDED / self.per_metre).len();
-            if curve.loops.iter().any(|l| crowded(l) < l.points.len()) {
-                note.push_str(" Between corners that touch here only the largest value is drawn.");
-            }
-            self.paragraph(&note, TextSize::Small);
+        self.convex_note();
+        self.singular_notes();
+    }
+
+    fn convex_note(&mut self) {
+        let loops = &self.document.flow.wall_shear.curve.loops;
+        let is_drawn = loops.iter().enumerate().any(|(index, along)| {
+            along
+                .points
+                .iter()
+                .any(|p| p.kind == PointKind::ConvexCorner && !self.is_crowded(index, p.arc_length))
+        });
+        if !is_drawn {
+            return;
         }
-        if !self.report.singular_corners.is_empty() {
-            let note = format!(
+        let mut note = "Squares: convex corners, where the shear is zero.".to_owned();
+        if loops
+            .iter()
+            .any(|l| leaves_out(l, CROWDED / self.per_metre))
+        {
+            note.push_str(" Between corners that touch here only the largest value is drawn.");
+        }
+        self.paragraph(&note, TextSize::Small);
+    }
+
+    fn singular_notes(&mut self) {
+        let crowded: usize = self.crowds.iter().flatten().map(|c| c.singular).sum();
+        let all = &self.report.singular_corners;
+        let is_drawn = |c: &&SingularCorner| !self.is_crowded(c.loop_index, c.arc_length);
+        let mut notes = Vec::new();
+        if all.iter().any(|corner| is_drawn(&corner)) {
+            notes.push(format!(
                 "Triangles: re-entrant corners. The shear of a sharp one has no bound; the curve is cut \
                  off at {} {}. Bars: the mean over {} (0.05 Dh), or half the way to the next corner if that \
                  is less, on either side.",
                 significant(self.top * self.factor, 4),
                 self.unit,
-                with_unit(curve.singular_length, numbers::LENGTHS, 4),
-            );
+                with_unit(
+                    self.document.flow.wall_shear.curve.singular_length,
+                    numbers::LENGTHS,
+                    4
+                ),
+            ));
+        }
+        if crowded > 0 {
+            notes.push(format!(
+                "Below the thick line at the top {crowded} re-entrant corners stand too close together to be \
+                 drawn: the curve is a mean over {} to either side there, weighted with a triangle. The \
+                 largest value above is a mean beside one corner and may not be seen here.",
+                with_unit(REACH / self.per_metre, numbers::LENGTHS, 3),
+            ));
+        }
+        for note in notes {
             self.drawing.description.push(' ');
             self.drawing.description.push_str(&note);
             self.paragraph(&note, TextSize::Small);
@@ -470,95 +554,37 @@ impl<'a> Plot<'a> {
     }
 }
 
-/// Arc length and shear of the points that are drawn. Between convex corners closer than `crowded` that is the largest
-/// value alone: a digitised round corner would be a solid block of lines up from zero and down again.
-fn drawn(points: &[CurvePoint], crowded: f64) -> Vec<(f64, f64)> {
-    let shear = |p: &CurvePoint| match p.kind {
-        PointKind::SingularCorner => f64::INFINITY,
-        _ => p.shear_per_gradient,
-    };
-    let stretches: Vec<&[CurvePoint]> = points
-        .split_inclusive(|p| p.kind == PointKind::ConvexCorner)
-        .collect();
-    let mut found: Vec<(f64, f64)> = Vec::with_capacity(points.len());
-    let mut corner: Option<f64> = None;
-    let mut after_crowd = false;
-    for stretch in stretches {
-        let Some(last) = stretch.last() else { continue };
-        let is_bounded = last.kind == PointKind::ConvexCorner;
-        let is_crowded =
-            is_bounded && corner.is_some_and(|start| last.arc_length - start < crowded);
-        if is_crowded {
-            let inner = &stretch[..stretch.len() - 1];
-            let largest = inner.iter().max_by(|a, b| shear(a).total_cmp(&shear(b)));
-            found.extend(largest.map(|p| (p.arc_length, shear(p))));
-        } else {
-            if after_crowd {
-                // The corner where the crowd ends is a zero of this stretch.
-                found.extend(corner.map(|s| (s, 0.0)));
-            }
-            found.extend(stretch.iter().map(|p| (p.arc_length, shear(p))));
-        }
-        after_crowd = is_crowded;
-        corner = is_bounded.then_some(last.arc_length);
+/// The largest shear per gradient that is drawn, m.
+///
+/// - `reach`: of the mean through crowds, m
+fn shown_largest(
+    document: &SolveDocument<'_>,
+    report: &WallReport,
+    crowds: &[Vec<Crowd>],
+    reach: f64,
+) -> f64 {
+    if crowds.iter().all(Vec::is_empty) {
+        return report.whole.max;
     }
-    found
+    let curve = &document.flow.wall_shear.curve;
+    let mut largest: f64 = 0.0;
+    for (along, own) in curve.loops.iter().zip(crowds) {
+        let outside = along
+            .bounded(curve.singular_length)
+            .filter(|p| !own.iter().any(|crowd| crowd.holds(p.arc_length)));
+        let means = own
+            .iter()
+            .flat_map(|crowd| running_mean(along, crowd, reach))
+            .map(|mean| mean.1);
+        largest = outside
+            .map(|p| p.shear_per_gradient)
+            .chain(means)
+            .fold(largest, f64::max);
+    }
+    largest
 }
 
 /// What a shear per gradient in a unit of length becomes when multiplied by Pa/m.
 fn shear_of_length(unit: &str) -> String {
     format!("{}Pa", unit.strip_suffix('m').unwrap_or_default())
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    fn point(arc_length: f64, shear: f64, kind: PointKind) -> CurvePoint {
-        CurvePoint {
-            arc_length,
-            at: [arc_length, 0.0],
-            normal: [0.0, -1.0],
-            shear_per_gradient: shear,
-            kind,
-        }
-    }
-
-    #[test]
-    fn between_crowded_corners_only_the_largest_value_is_drawn() {
-        let corner = |s| point(s, 0.0, PointKind::ConvexCorner);
-        let on = |s, v| point(s, v, PointKind::Regular);
-        let along = [
-            corner(0.0),
-            on(5.0, 9.0),
-            corner(10.0),
-            on(10.2, 3.0),
-            on(10.5, 4.0),
-            corner(11.0),
-            on(11.5, 5.0),
-            corner(12.0),
-            on(17.0, 8.0),
-            corner(22.0),
-        ];
-        let ends = [(0.0, 0.0), (5.0, 9.0), (10.0, 0.0)];
-        let others = [(12.0, 0.0), (17.0, 8.0), (22.0, 0.0)];
-        let expected = [&ends[..], &[(10.5, 4.0), (11.5, 5.0)], &others].concat();
-        assert_eq!(drawn(&along, 2.0), expected);
-        let all: Vec<(f64, f64)> = along
-            .iter()
-            .map(|p| (p.arc_length, p.shear_per_gradient))
-            .collect();
-        assert_eq!(drawn(&along, 0.5), all);
-    }
-
-    #[test]
-    fn a_singular_corner_is_drawn_without_bound_and_ends_no_crowd() {
-        let along = [
-            point(0.0, 0.0, PointKind::ConvexCorner),
-            point(0.5, 7.0, PointKind::SingularCorner),
-            point(1.0, 0.0, PointKind::ConvexCorner),
-        ];
-        assert_eq!(drawn(&along, 2.0), [(0.0, 0.0), (0.5, f64::INFINITY)]);
-        assert_eq!(drawn(&along, 0.1)[1], (0.5, f64::INFINITY));
-    }
 }

@@ -62,6 +62,39 @@ fn the_wall_shear_goes_to_a_table_and_a_picture() {
 }
 
 #[test]
+fn crowded_re_entrant_corners_are_one_line_and_a_mean_in_the_picture() {
+    // A lid like a saw; one step in the floor stands alone.
+    let teeth = (1..100).rev().map(|tooth| {
+        let x = 3.0 * f64::from(tooth);
+        format!("{},98\n{x},96\n", x + 1.5)
+    });
+    let lid: String = teeth.collect();
+    let rows = format!("x_um,y_um\n0,0\n150,0\n150,-20\n300,-20\n300,100\n{lid}0,100\n");
+    let folder = Folder::with("saw.csv", &rows);
+    let run = folder.line("solve saw.csv --cells-across 48 --wall-picture saw.svg");
+    assert_eq!(run.status, 0, "{}", run.err);
+    let text = folder.read("saw.svg");
+    let tree = roxmltree::Document::parse(&text).unwrap();
+    let of = |node: &roxmltree::Node<'_, '_>, name: &str, value: &str| {
+        node.attribute(name)
+            .is_some_and(|v| v.eq_ignore_ascii_case(value))
+    };
+    let curve: Vec<_> = tree
+        .descendants()
+        .filter(|n| of(n, "stroke", "#005a9c"))
+        .collect();
+    assert_eq!(curve.len(), 1);
+    // One path each of the crowd's line and the triangles beside the step: not one for each tooth.
+    let marks = tree
+        .descendants()
+        .filter(|n| of(n, "fill", "#b03000"))
+        .count();
+    assert!((2..=4).contains(&marks), "{marks} marks");
+    assert!(text.contains("re-entrant corners stand too close together"));
+    assert!(text.contains("Triangles: re-entrant corners"));
+}
+
+#[test]
 fn a_dash_is_standard_input_and_standard_output() {
     let folder = Folder::new();
     let run = folder.run_with(&["solve", "-", "--json"], RECTANGLE);

@@ -4,7 +4,7 @@
 //! a measured rough wall, the curve goes to infinity and back all the time and says nothing; there the mean over
 //! a length that can be seen is drawn instead.
 
-use crate::flow::{CurvePoint, LoopCurve, PointKind};
+use crate::flow::{CurvePoint, LoopCurve, PointKind, WallCurve};
 
 /// Re-entrant corners from which a crowd is drawn as a mean.
 const LEAST_SINGULAR: usize = 3;
@@ -58,7 +58,7 @@ pub(super) fn crowds(points: &[CurvePoint], near: f64) -> Vec<Crowd> {
 /// go up and down with every corner that enters or leaves it.
 ///
 /// - `reach`: half the base of the triangle, m
-pub(super) fn running_mean(along: &LoopCurve, crowd: &Crowd, reach: f64) -> Vec<(f64, f64)> {
+fn running_mean(along: &LoopCurve, crowd: &Crowd, reach: f64) -> Vec<(f64, f64)> {
     let length = crowd.to - crowd.from;
     let reach = reach.min(0.5 * along.length());
     let count = (MEANS_PER_REACH * length / reach).ceil().max(1.0);
@@ -122,6 +122,25 @@ pub(super) fn lines(
     }
     found.retain(|line| line.len() > 1);
     found
+}
+
+/// The largest shear per gradient that is drawn, m.
+///
+/// - `crowds`: of every loop; `reach`: of the mean, m
+pub(super) fn largest_shown(curve: &WallCurve, crowds: &[Vec<Crowd>], reach: f64) -> f64 {
+    let mut largest: f64 = 0.0;
+    for (along, own) in curve.loops.iter().zip(crowds) {
+        let outside = along
+            .bounded(curve.singular_length)
+            .filter(|p| !own.iter().any(|crowd| crowd.holds(p.arc_length)))
+            .map(|p| p.shear_per_gradient);
+        let means = own
+            .iter()
+            .flat_map(|crowd| running_mean(along, crowd, reach))
+            .map(|mean| mean.1);
+        largest = outside.chain(means).fold(largest, f64::max);
+    }
+    largest
 }
 
 /// Whether a loop has points that are left out where convex corners crowd.

@@ -16,7 +16,7 @@ use super::svg::to_svg;
 use super::table::wrapped;
 use super::text_wall::short_name;
 use super::ticks;
-use super::wall_crowds::{Crowd, crowds, leaves_out, lines, running_mean};
+use super::wall_crowds::{Crowd, crowds, largest_shown, leaves_out, lines};
 use crate::flow::{LoopCurve, PointKind, SingularCorner, WallReport};
 use crate::geometry::Point;
 
@@ -44,6 +44,8 @@ const REACH: f64 = 12.0;
 const CROWD_LINE: f64 = 5.0;
 /// Widest part of a wall, px, that is drawn without lines at its ends.
 const NARROW_WALL: f64 = 3.0;
+/// Widest loop, px, that is drawn without sides and ticks.
+const NARROW_LOOP: f64 = 16.0;
 /// Share of the largest value that the plot reaches beyond it.
 const HEADROOM: f64 = 0.12;
 /// The curve.
@@ -147,7 +149,11 @@ impl<'a> Plot<'a> {
             .iter()
             .map(|along| crowds(&along.points, CROWDED_SINGULAR / per_metre))
             .collect();
-        let largest = shown_largest(document, report, &crowds, REACH / per_metre);
+        let largest = if crowds.iter().all(Vec::is_empty) {
+            report.whole.max
+        } else {
+            largest_shown(&document.flow.wall_shear.curve, &crowds, REACH / per_metre)
+        };
         let (name, size) = numbers::fitting_unit(largest * scale, units);
         Self {
             document,
@@ -248,11 +254,7 @@ impl<'a> Plot<'a> {
             }
         }
         let head = self.ceiling - 8.0;
-        let label = if is_pressure {
-            format!("wall shear / {}", self.unit)
-        } else {
-            format!("shear per gradient / {}", self.unit)
-        };
+        let label = self.axis_name();
         self.drawing
             .text([MARGIN, head], Anchor::Start, TextSize::Small, label);
         if is_pressure {
@@ -274,33 +276,10 @@ impl<'a> Plot<'a> {
         };
         let base = self.floor() + BAND_HEIGHT;
         for (index, along) in loops.iter().enumerate() {
-            let length = along.length() / size;
-            let count = (length / step * (1.0 + 1e-9)).floor() as usize;
-            for k in 0..=count {
-                let value = step * k as f64;
-                let [x, _] = self.page(index, value * size, 0.0);
-                self.drawing
-                    .lines(vec![vec![[x, base], [x, base + 6.0]]], INK, 1.0);
-                let label = ticks::label(value, step);
-                let at = [x, base + 20.0];
-                self.drawing
-                    .text(at, Anchor::Middle, TextSize::Small, label);
-            }
-            let (low, high) = (
-                self.page(index, 0.0, 0.0),
-                self.page(index, along.length(), 0.0),
-            );
-            let sides = vec![
-                vec![[low[0], base], [low[0], self.ceiling]],
-                vec![[high[0], base], [high[0], self.ceiling]],
-                vec![low, high],
-            ];
-            self.drawing.lines(sides, INK, 1.0);
-            if loops.len() > 1 && TextSize::Small.width("loop 00") < high[0] - low[0] {
-                let at = [0.5 * (low[0] + high[0]), self.ceiling - 8.0];
-                let label = format!("loop {}", index + 1);
-                self.drawing
-                    .text(at, Anchor::Middle, TextSize::Small, label);
+            let [low, high] = [0.0, along.length()].map(|s| self.page(index, s, 0.0));
+            self.drawing.lines(vec![vec![low, high]], INK, 1.0);
+            if high[0] - low[0] > NARROW_LOOP {
+                self.loop_ticks(index, along.length(), (size, step));
             }
         }
         self.y = base + 44.0;
@@ -309,6 +288,44 @@ impl<'a> Plot<'a> {
         self.drawing
             .text(at, Anchor::Middle, TextSize::Small, label);
         self.y += 14.0;
+    }
+
+    /// Ticks, sides and name of a loop.
+    ///
+    /// - `size`: of the unit, m; `step`: between ticks, in that unit
+    fn loop_ticks(&mut self, index: usize, length: f64, (size, step): (f64, f64)) {
+        let base = self.floor() + BAND_HEIGHT;
+        let count = (length / size / step * (1.0 + 1e-9)).floor() as usize;
+        for k in 0..=count {
+            let value = step * k as f64;
+            let [x, _] = self.page(index, value * size, 0.0);
+            self.drawing
+                .lines(vec![vec![[x, base], [x, base + 6.0]]], INK, 1.0);
+            let (label, at) = (ticks::label(value, step), [x, base + 20.0]);
+            self.drawing
+                .text(at, Anchor::Middle, TextSize::Small, label);
+        }
+        let [low, high] = [0.0, length].map(|s| self.page(index, s, 0.0)[0]);
+        let sides = [low, high].map(|x| vec![[x, base], [x, self.ceiling]]);
+        self.drawing.lines(sides.to_vec(), INK, 1.0);
+        let name = format!("loop {}", index + 1);
+        let middle = 0.5 * (low + high);
+        let half = 0.5 * TextSize::Small.width(&name);
+        // The name of the axis comes first.
+        let axis = MARGIN + TextSize::Small.width(&self.axis_name());
+        let is_room = 2.0 * half < high - low && middle - half > axis + LOOP_GAP / 2.0;
+        if self.starts.len() > 1 && is_room {
+            let at = [middle, self.ceiling - 8.0];
+            self.drawing.text(at, Anchor::Middle, TextSize::Small, name);
+        }
+    }
+
+    fn axis_name(&self) -> String {
+        let what = match self.document.operating_point {
+            Some(_) => "wall shear",
+            None => "shear per gradient",
+        };
+        format!("{what} / {}", self.unit)
     }
 
     /// The band of walls below the axis.
@@ -520,11 +537,11 @@ impl<'a> Plot<'a> {
     }
 
     fn singular_notes(&mut self) {
-        let crowded: usize = self.crowds.iter().flatten().map(|c| c.singular).sum();
         let all = &self.report.singular_corners;
-        let is_drawn = |c: &&SingularCorner| !self.is_crowded(c.loop_index, c.arc_length);
+        let is_crowded = |c: &&SingularCorner| self.is_crowded(c.loop_index, c.arc_length);
+        let crowded = all.iter().filter(is_crowded).count();
         let mut notes = Vec::new();
-        if all.iter().any(|corner| is_drawn(&corner)) {
+        if crowded < all.len() {
             notes.push(format!(
                 "Triangles: re-entrant corners. The shear of a sharp one has no bound; the curve is cut \
                  off at {} {}. Bars: the mean over {} (0.05 Dh), or half the way to the next corner if that \
@@ -541,7 +558,7 @@ impl<'a> Plot<'a> {
         if crowded > 0 {
             notes.push(format!(
                 "Below the thick line at the top {crowded} re-entrant corners stand too close together to be \
-                 drawn: the curve is a mean over {} to either side there, weighted with a triangle. The \
+                 drawn: the curve is a mean over up to {} to either side there, weighted with a triangle. The \
                  largest value above is a mean beside one corner and may not be seen here.",
                 with_unit(REACH / self.per_metre, numbers::LENGTHS, 3),
             ));
@@ -552,36 +569,6 @@ impl<'a> Plot<'a> {
             self.paragraph(&note, TextSize::Small);
         }
     }
-}
-
-/// The largest shear per gradient that is drawn, m.
-///
-/// - `reach`: of the mean through crowds, m
-fn shown_largest(
-    document: &SolveDocument<'_>,
-    report: &WallReport,
-    crowds: &[Vec<Crowd>],
-    reach: f64,
-) -> f64 {
-    if crowds.iter().all(Vec::is_empty) {
-        return report.whole.max;
-    }
-    let curve = &document.flow.wall_shear.curve;
-    let mut largest: f64 = 0.0;
-    for (along, own) in curve.loops.iter().zip(crowds) {
-        let outside = along
-            .bounded(curve.singular_length)
-            .filter(|p| !own.iter().any(|crowd| crowd.holds(p.arc_length)));
-        let means = own
-            .iter()
-            .flat_map(|crowd| running_mean(along, crowd, reach))
-            .map(|mean| mean.1);
-        largest = outside
-            .map(|p| p.shear_per_gradient)
-            .chain(means)
-            .fold(largest, f64::max);
-    }
-    largest
 }
 
 /// What a shear per gradient in a unit of length becomes when multiplied by Pa/m.

@@ -90,7 +90,7 @@ fn crowded_re_entrant_corners_are_one_line_and_a_mean_in_the_picture() {
         .filter(|n| of(n, "fill", "#b03000"))
         .count();
     assert!((2..=4).contains(&marks), "{marks} marks");
-    assert!(text.contains("re-entrant corners stand too close together"));
+    assert!(text.contains("99 re-entrant corners stand too close together"));
     assert!(text.contains("Triangles: re-entrant corners"));
 }
 

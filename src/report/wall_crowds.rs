@@ -28,8 +28,8 @@ impl Crowd {
 
 /// Crowds of a loop in order.
 ///
-/// - `near`: distance of corners below which they cannot be told apart, m
-pub(super) fn crowds(points: &[CurvePoint], near: f64) -> Vec<Crowd> {
+/// - `near`: distance of corners below which they cannot be told apart, m; `length`: of the loop, m
+pub(super) fn crowds(points: &[CurvePoint], near: f64, length: f64) -> Vec<Crowd> {
     let mut found: Vec<Crowd> = Vec::new();
     // A corner is there twice, once for either side.
     let mut last: Option<f64> = None;
@@ -51,6 +51,15 @@ pub(super) fn crowds(points: &[CurvePoint], near: f64) -> Vec<Crowd> {
         last = Some(s);
     }
     found.retain(|crowd| crowd.singular >= LEAST_SINGULAR);
+    for crowd in &mut found {
+        // Nothing can be seen either between a crowd and the ends of the axis.
+        if crowd.from < near {
+            crowd.from = 0.0;
+        }
+        if crowd.to > length - near {
+            crowd.to = length;
+        }
+    }
     found
 }
 
@@ -220,8 +229,12 @@ mod tests {
             to: 3.0,
             singular: 3,
         };
-        assert_eq!(crowds(&along, 0.6), [expected]);
-        assert_eq!(crowds(&along, 0.4), []);
+        assert_eq!(crowds(&along, 0.6, 9.0), [expected]);
+        assert_eq!(crowds(&along, 0.4, 9.0), []);
+        let [wide] = crowds(&along, 1.1, 4.0)[..] else {
+            panic!("one crowd");
+        };
+        assert_eq!((wide.from, wide.to), (0.0, 4.0));
         assert!(expected.holds(3.0) && !expected.holds(3.1));
     }
 

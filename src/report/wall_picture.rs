@@ -147,7 +147,7 @@ impl<'a> Plot<'a> {
         };
         let crowds: Vec<Vec<Crowd>> = loops
             .iter()
-            .map(|along| crowds(&along.points, CROWDED_SINGULAR / per_metre))
+            .map(|along| crowds(&along.points, CROWDED_SINGULAR / per_metre, along.length()))
             .collect();
         let largest = if crowds.iter().all(Vec::is_empty) {
             report.whole.max

@@ -46,6 +46,7 @@ pub(super) fn accuracy_options(command: Command) -> Command {
                  Example: --cells-across 128",
             )
             .value_parser(value_parser!(f64))
+            .allow_negative_numbers(true)
             .conflicts_with_all(["tolerance", "estimate"]),
         )
         .arg(entry(
@@ -63,7 +64,8 @@ pub(super) fn accuracy_options(command: Command) -> Command {
                 "No finer grid is begun that is foreseen to end later than this, in seconds, above 0; the \
                  first grid is always solved. Default: no limit. Example: --max-seconds 10",
             )
-            .value_parser(value_parser!(f64)),
+            .value_parser(value_parser!(f64))
+            .allow_negative_numbers(true),
         )
 }
 
@@ -73,8 +75,8 @@ pub(super) fn solve_options(matches: &ArgMatches) -> Result<SolveOptions, Failur
         quantity(matches, "tolerance", parse_fraction)?.map_or(Ok(DEFAULT_TOLERANCE), checked)?;
     let memory = quantity(matches, "max-memory", parse_bytes)?;
     positive(matches, "max-memory", memory, "2GB")?;
-    let seconds = matches.get_one::<f64>("max-seconds").copied();
-    if let Some(s) = seconds.filter(|s| !(s.is_finite() && *s > 0.0)) {
+    let seconds = finite(matches, "max-seconds", "10")?;
+    if let Some(s) = seconds.filter(|s| *s <= 0.0) {
         return Err(Failure::usage(
             format!("--max-seconds: {s} is not above zero"),
             "give a positive number of seconds, for example --max-seconds 10",
@@ -82,7 +84,7 @@ pub(super) fn solve_options(matches: &ArgMatches) -> Result<SolveOptions, Failur
     }
     let defaults = SolveOptions::default();
     Ok(SolveOptions {
-        cells_across: matches.get_one::<f64>("cells-across").copied(),
+        cells_across: finite(matches, "cells-across", "128")?,
         goal: if matches.get_flag("estimate") {
             Goal::Estimated(tolerance)
         } else {
@@ -92,6 +94,17 @@ pub(super) fn solve_options(matches: &ArgMatches) -> Result<SolveOptions, Failur
         time_limit: seconds,
         ..defaults
     })
+}
+
+/// A plain number, as typed; beyond the range of a double it is infinite.
+fn finite(matches: &ArgMatches, name: &str, example: &str) -> Result<Option<f64>, Failure> {
+    match matches.get_one::<f64>(name).copied() {
+        Some(value) if !value.is_finite() => Err(Failure::usage(
+            format!("--{name}: {value} is not a finite number"),
+            &format!("give a finite number, for example --{name} {example}"),
+        )),
+        value => Ok(value),
+    }
 }
 
 /// A tolerance within its bounds.

@@ -184,7 +184,20 @@ fn what_is_no_tolerance_or_limit_is_refused() {
         ("--max-memory 0GB", "--max-memory"),
         ("--max-memory 5Gb", "GB"),
         ("--max-seconds 0", "--max-seconds"),
-        ("--max-seconds nan", "--max-seconds"),
+        ("--max-seconds -1", "--max-seconds: -1 is not above zero"),
+        (
+            "--max-seconds nan",
+            "--max-seconds: NaN is not a finite number",
+        ),
+        (
+            "--max-seconds 1e400",
+            "--max-seconds: inf is not a finite number",
+        ),
+        (
+            "--cells-across nan",
+            "--cells-across: NaN is not a finite number",
+        ),
+        ("--cells-across -3", "-3 cells across"),
         ("--tolerance 1% --cells-across 64", "cannot be used with"),
         ("--estimate --cells-across 64", "cannot be used with"),
     ] {

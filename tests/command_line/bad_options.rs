@@ -102,7 +102,7 @@ fn grids_inputs_and_outputs_without_sense_are_refused_with_what_to_type() {
         ("--cells-across 0", &["0 cells", "the least is 4"]),
         ("--cells-across=-5", &["-5 cells", "the least is 4"]),
         ("--cells-across NaN", &["NaN is not a finite number"]),
-        ("--cells-across inf", &["inf cells"]),
+        ("--cells-across inf", &["inf is not a finite number"]),
         ("--cells-across 3.99", &["3.99 cells"]),
         ("--cells-across many", &["'many'", "--cells-across"]),
         ("--threads 0", &["1..=256"]),

@@ -186,26 +186,15 @@ mod tests {
             error: 0.2,
         };
         // Widths fall by 2.2, and the value is at 0.34 of them.
-        let found = from_ranges(
-            far,
-            range(1.0, 0.034, 0.066),
-            range(1.0, 0.0748, 0.1452),
-            false,
-            1e9,
-        );
+        let [proven, coarse] = [range(1.0, 0.034, 0.066), range(1.0, 0.0748, 0.1452)];
+        let found = from_ranges(far, proven, coarse, false, 1e9);
         assert!((found.value - 1.0).abs() < 1e-14);
         assert!((found.error - 0.15 * 0.05).abs() < 1e-9);
-        let [proven, coarse] = [range(1.0, 0.034, 0.066), range(1.0, 0.0748, 0.1452)];
         let found = from_ranges(far, proven, coarse, false, COARSE);
         assert!((found.error - 0.3 * 0.05).abs() < 1e-14);
         // As steep as smooth walls leave it, any share is believed.
-        let steep = from_ranges(
-            far,
-            range(1.0, 0.09, 0.01),
-            range(1.0, 0.63, 0.07),
-            false,
-            1e9,
-        );
+        let [proven, coarse] = [range(1.0, 0.09, 0.01), range(1.0, 0.63, 0.07)];
+        let steep = from_ranges(far, proven, coarse, false, 1e9);
         assert!((steep.value - 1.0).abs() < 1e-14);
     }
 

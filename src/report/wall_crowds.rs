@@ -16,8 +16,8 @@ const MEANS_PER_REACH: f64 = 6.0;
 pub(super) struct Crowd {
     pub(super) from: f64,
     pub(super) to: f64,
-    /// Re-entrant corners in it.
-    pub(super) singular: usize,
+    /// Re-entrant corners in it; one on the first vertex of a loop may count twice.
+    singular: usize,
 }
 
 impl Crowd {
@@ -152,9 +152,12 @@ pub(super) fn largest_shown(curve: &WallCurve, crowds: &[Vec<Crowd>], reach: f64
     largest
 }
 
-/// Whether a loop has points that are left out where convex corners crowd.
-pub(super) fn leaves_out(along: &LoopCurve, near: f64) -> bool {
-    shown(&along.points, near).len() < along.points.len()
+/// Whether a loop has points outside of its crowds that are left out because convex corners stand close.
+pub(super) fn leaves_out(along: &LoopCurve, crowds: &[Crowd], near: f64) -> bool {
+    along
+        .points
+        .split(|p| crowds.iter().any(|crowd| crowd.holds(p.arc_length)))
+        .any(|points| shown(points, near).len() < points.len())
 }
 
 /// Arc length and shear of the points that are drawn. Between convex corners closer than `near` that is the largest

@@ -527,10 +527,9 @@ impl<'a> Plot<'a> {
             return;
         }
         let mut note = "Squares: convex corners, where the shear is zero.".to_owned();
-        if loops
-            .iter()
-            .any(|l| leaves_out(l, CROWDED / self.per_metre))
-        {
+        let near = CROWDED / self.per_metre;
+        let mut of_loops = loops.iter().zip(&self.crowds);
+        if of_loops.any(|(along, own)| leaves_out(along, own, near)) {
             note.push_str(" Between corners that touch here only the largest value is drawn.");
         }
         self.paragraph(&note, TextSize::Small);

@@ -15,10 +15,8 @@ use super::numbering::Numbering;
 use super::square_energy::{COUPLINGS, Square};
 use super::triangulation::{Division, Triangle, Vertex};
 
-/// Rounds of dividing and improving.
-const ROUNDS: usize = 2;
-/// Times each value is improved in a round.
-const SWEEPS: usize = 3;
+/// Times each value is improved.
+const SWEEPS: usize = 2;
 /// Sum of the squares of the numbers of vertices from which polygons are divided on several threads: some
 /// milliseconds on one.
 const PARALLEL_WORK: usize = 150_000;
@@ -176,23 +174,21 @@ impl<'a> NearWall<'a> {
         }
     }
 
-    /// Divides the cut squares and improves the values of their nodes, a few times in turn.
+    /// Divides the cut squares and improves the values of their nodes.
     pub(super) fn improve(&mut self) {
-        for _ in 0..ROUNDS {
-            self.divide();
-            let mut rows = self.rows.clone();
-            for (share, nodes) in self.shares.iter().zip(&self.polygon_nodes) {
-                for (corner, couplings) in share.energy.iter().enumerate() {
-                    if let Some(row) = row_at(&mut rows, &self.row_of, nodes[corner]) {
-                        row.pull += share.volume[corner];
-                        row.add(corner, nodes, couplings);
-                    }
+        self.divide();
+        let mut rows = std::mem::take(&mut self.rows);
+        for (share, nodes) in self.shares.iter().zip(&self.polygon_nodes) {
+            for (corner, couplings) in share.energy.iter().enumerate() {
+                if let Some(row) = row_at(&mut rows, &self.row_of, nodes[corner]) {
+                    row.pull += share.volume[corner];
+                    row.add(corner, nodes, couplings);
                 }
             }
-            for _ in 0..SWEEPS {
-                for row in &rows {
-                    self.improve_node(row);
-                }
+        }
+        for _ in 0..SWEEPS {
+            for row in &rows {
+                self.improve_node(row);
             }
         }
     }

@@ -11,6 +11,8 @@ use crate::geometry::Point;
 
 /// Vertices up to which every division is considered.
 const ALL_DIVISIONS: usize = 14;
+/// Vertices up to which every division is considered at once.
+const FEW: usize = 5;
 /// Area below which a triangle counts as flat, square cells: far above the rounding of coordinates.
 const FLAT: f64 = 1e-13;
 
@@ -89,10 +91,17 @@ impl Division {
     ) -> bool {
         self.polygon.clear();
         self.polygon.extend(polygon);
-        let Some(first) = self.polygon.iter().position(|v| v.node.is_some()) else {
-            return true;
+        let starts_with_node = |k: usize| {
+            let before = self.polygon[(k + self.polygon.len() - 1) % self.polygon.len()];
+            self.polygon[k].node.is_some() && before.node.is_none()
         };
-        self.polygon.rotate_left(first);
+        let first = (0..self.polygon.len()).find(|&k| starts_with_node(k));
+        let has_node = || self.polygon.iter().any(|v| v.node.is_some());
+        match first {
+            Some(first) => self.polygon.rotate_left(first),
+            None if has_node() => {}
+            None => return true,
+        }
         if !self.find() {
             self.polygon = without_pockets(&self.polygon);
             if !self.find() {
@@ -110,11 +119,9 @@ impl Division {
 
     fn find(&mut self) -> bool {
         self.triples.clear();
-        if self.polygon.len() <= ALL_DIVISIONS {
-            self.best_division()
-        } else {
-            self.ladder()
-        }
+        let n = self.polygon.len();
+        let is_done = n > FEW && self.ladder();
+        is_done || n <= ALL_DIVISIONS && self.best_division()
     }
 
     /// The division of least cost of a small polygon.
@@ -198,9 +205,11 @@ impl Division {
                 let along_nodes = j.checked_sub(1).map_or(f64::INFINITY, |j0| {
                     best[i * nodes + j0].0 + own([wall_at(i), j0, j])
                 });
+                let across_nodes = j.checked_sub(2).map_or(f64::INFINITY, |j0| {
+                    best[i * nodes + j0].0 + own([wall_at(i), j0, j]) + own([j0, j0 + 1, j])
+                });
                 if (i, j) != (0, 0) {
-                    let is_along_wall = usize::from(along_wall <= along_nodes);
-                    best[i * nodes + j] = (along_wall.min(along_nodes), is_along_wall);
+                    best[i * nodes + j] = least([along_nodes, along_wall, across_nodes]);
                 }
             }
         }
@@ -209,15 +218,34 @@ impl Division {
             return false;
         }
         while (i, j) != (0, 0) {
-            if best[i * nodes + j].1 == 1 {
-                self.triples.push([wall_at(i), wall_at(i - 1), j]);
-                i -= 1;
-            } else {
-                self.triples.push([wall_at(i), j - 1, j]);
-                j -= 1;
+            match best[i * nodes + j].1 {
+                0 => {
+                    self.triples.push([wall_at(i), j - 1, j]);
+                    j -= 1;
+                }
+                1 => {
+                    self.triples.push([wall_at(i), wall_at(i - 1), j]);
+                    i -= 1;
+                }
+                _ => {
+                    self.triples.extend([[wall_at(i), j - 2, j], [j - 2, j - 1, j]]);
+                    j -= 2;
+                }
             }
         }
         true
+    }
+}
+
+/// The least of some costs, and which one it is.
+fn least(costs: [f64; 3]) -> (f64, usize) {
+    let [a, b, c] = costs;
+    if b <= a && b <= c {
+        (b, 1)
+    } else if a <= c {
+        (a, 0)
+    } else {
+        (c, 2)
     }
 }
 

@@ -228,7 +228,8 @@ impl Division {
                     i -= 1;
                 }
                 _ => {
-                    self.triples.extend([[wall_at(i), j - 2, j], [j - 2, j - 1, j]]);
+                    self.triples
+                        .extend([[wall_at(i), j - 2, j], [j - 2, j - 1, j]]);
                     j -= 2;
                 }
             }

@@ -15,6 +15,7 @@ use crate::solve::Field;
 
 use super::layer_panel::{Panel, Potential};
 use super::wall_layer::LayerCorner;
+use super::wall_path::taken_round;
 
 /// Degree of the harmonic polynomial.
 const DEGREE: usize = 5;
@@ -227,13 +228,22 @@ impl<'a> Window<'a> {
             if self.corners.iter().any(is_near) {
                 return None;
             }
-            let squares = self.panels().map(|panel| panel.square_of_distance(at));
-            let nearest = squares.fold(f64::INFINITY, f64::min).sqrt();
-            (NEAREST..=FARTHEST)
-                .contains(&nearest)
-                .then_some((at, *value))
+            self.is_good_distance(at).then_some((at, *value))
         })
         .collect()
+    }
+
+    /// Whether a node lies neither too near to the wall nor too far from it.
+    fn is_good_distance(&self, at: Point) -> bool {
+        let mut is_within_reach = false;
+        for panel in self.panels() {
+            let square = panel.square_of_distance(at);
+            if square < NEAREST * NEAREST {
+                return false;
+            }
+            is_within_reach |= square <= FARTHEST * FARTHEST;
+        }
+        is_within_reach
     }
 
     /// The part of the layer and of the polynomial in the potential at a place; returns what is known of it.
@@ -268,7 +278,7 @@ impl<'a> Window<'a> {
         for (error, corner) in errors.iter_mut().zip(&self.corners) {
             let (x, y) = (at[0] - corner.at[0], at[1] - corner.at[1]);
             let step = PI / corner.angle;
-            let theta = (y.atan2(x) - corner.first).rem_euclid(TAU);
+            let theta = taken_round(y.atan2(x) - corner.first, TAU);
             if theta < corner.angle {
                 *error = x.hypot(y).powf(-step) * (step * theta).sin();
             }

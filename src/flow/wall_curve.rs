@@ -11,7 +11,7 @@ use super::corner_law::CornerLaw;
 use super::section_flow::WallSample;
 use super::wall_balance::BalanceFactor;
 use super::wall_flux::WallFlux;
-use super::wall_path::{WallPath, way_forward};
+use super::wall_path::{WallPath, taken_round, way_forward};
 use super::wall_quadrature::GAUSS_2;
 use super::wall_statistics::WallReport;
 use super::wall_stretch::{Samples, Stretch};
@@ -229,7 +229,7 @@ fn stretches(
     }
     let nearest = |s: f64| {
         let apart = |a: f64| {
-            let d = (a - s).rem_euclid(total);
+            let d = taken_round(a - s, total);
             d.min(total - d)
         };
         samples
@@ -329,7 +329,7 @@ impl LoopCurve {
     /// Shear per gradient at an arc length, m; without bound at a singular corner.
     pub fn shear_at(&self, arc_length: f64) -> f64 {
         let total = self.length();
-        let s = arc_length.rem_euclid(total);
+        let s = taken_round(arc_length, total);
         let after = self.stretches.partition_point(|stretch| stretch.start <= s);
         // Before the first corner the last stretch runs on.
         let (stretch, s) = match after.checked_sub(1) {
@@ -350,7 +350,7 @@ impl LoopCurve {
         if !(bend < 0.0 && shift.abs() <= 1.0) {
             return *point;
         }
-        let arc_length = (point.arc_length + shift * self.spacing).rem_euclid(self.length());
+        let arc_length = taken_round(point.arc_length + shift * self.spacing, self.length());
         let value = self.shear_at(arc_length);
         if value <= here {
             return *point;
@@ -399,7 +399,7 @@ impl LoopCurve {
         let singular = self.singular_places();
         self.points.iter().filter(move |point| {
             let far = |corner: &f64| {
-                let apart = (corner - point.arc_length).rem_euclid(total);
+                let apart = taken_round(corner - point.arc_length, total);
                 apart.min(total - apart) >= length
             };
             let after = singular.partition_point(|&s| s < point.arc_length);
@@ -440,7 +440,7 @@ impl LoopCurve {
                 distances.insert(0, 0.0);
             }
             points.extend(distances.into_iter().map(|distance| {
-                let arc_length = (stretch.start + distance).rem_euclid(total);
+                let arc_length = taken_round(stretch.start + distance, total);
                 let point = CurvePoint {
                     arc_length,
                     at: self.path.position(arc_length),
@@ -472,7 +472,7 @@ impl LoopCurve {
         } else {
             (stretch.start, length)
         };
-        let inside = (arc_length + 1e-6 * beside).rem_euclid(total);
+        let inside = taken_round(arc_length + 1e-6 * beside, total);
         let singular = leading < 0.0;
         let (from, to) = (
             arc_length.min(arc_length + beside),

@@ -27,7 +27,7 @@ use crate::solve::Field;
 
 use super::layer_panel::{LayerStretch, Panel};
 use super::layer_window::{Frame, Window};
-use super::wall_path::{WallPath, way_forward};
+use super::wall_path::{WallPath, taken_round, way_forward};
 
 /// Longest way between the first and the last corner of one window, spacings.
 const GROUP: f64 = 7.0;
@@ -180,7 +180,7 @@ impl<'a> WallLayer<'a> {
         for (loop_index, samples) in windows {
             let total = self.paths[loop_index].length();
             let samples = samples.into_iter();
-            found[loop_index].extend(samples.map(|(s, v)| (s.rem_euclid(total), v * spacing)));
+            found[loop_index].extend(samples.map(|(s, v)| (taken_round(s, total), v * spacing)));
         }
         for own in &mut found {
             own.sort_by(|a, b| a.0.total_cmp(&b.0));

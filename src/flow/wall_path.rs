@@ -71,7 +71,7 @@ impl WallPath {
 
     /// Place at any arc length, which is taken round the loop.
     pub(crate) fn position(&self, arc_length: f64) -> Point {
-        let s = arc_length.rem_euclid(self.length());
+        let s = taken_round(arc_length, self.length());
         let edge = self.edge_at(s);
         let (a, b) = self.edge(edge);
         let length = self.arc[edge + 1] - self.arc[edge];
@@ -87,7 +87,7 @@ impl WallPath {
     /// where the chord has no length.
     pub(crate) fn chord_normal(&self, low: f64, high: f64) -> Point {
         right_of(self.position(low), self.position(high)).unwrap_or_else(|| {
-            let middle = (0.5 * (low + high)).rem_euclid(self.length());
+            let middle = taken_round(0.5 * (low + high), self.length());
             self.edge_normal(self.edge_at(middle))
         })
     }
@@ -99,6 +99,19 @@ impl WallPath {
 pub(super) fn way_forward(from: f64, to: f64, total: f64) -> f64 {
     let way = to - from;
     if way > 0.0 { way } else { way + total }
+}
+
+/// An arc length taken round a loop, from zero to its length, or an angle round a circle.
+///
+/// The remainder of a division takes hundreds of instructions, and nearly all arc lengths are there already.
+pub(super) fn taken_round(arc_length: f64, total: f64) -> f64 {
+    if (0.0..total).contains(&arc_length) {
+        arc_length
+    } else if -total < arc_length && arc_length < 0.0 {
+        arc_length + total
+    } else {
+        arc_length.rem_euclid(total)
+    }
 }
 
 /// Unit vector to the right of the way from `a` to `b`.

@@ -8,6 +8,7 @@
 
 use super::many::map_many;
 use super::wall_curve::{LoopCurve, WallCurve, WallPlace};
+use super::wall_path::taken_round;
 use super::wall_stretch::Stretch;
 
 /// Places and weights of Gauss's rules on -1 to 1.
@@ -168,7 +169,7 @@ impl LoopCurve {
         let mut edge = usize::MAX;
         for part in self.breaks(stretch, low, high, by_edge).windows(2) {
             let (a, b) = (part[0], part[1]);
-            let middle = (stretch.start + 0.5 * (a + b)).rem_euclid(total);
+            let middle = taken_round(stretch.start + 0.5 * (a + b), total);
             let offset = middle - 0.5 * (a + b);
             if by_edge {
                 let holds = |k: usize| {

@@ -17,7 +17,7 @@ use super::section_flow::{WallSample, WallShear};
 use super::wall_curve::{ShearSources, WallCurve};
 use super::wall_flux::wall_fluxes;
 use super::wall_layer::layer_samples;
-use super::wall_path::{WallPath, way_forward};
+use super::wall_path::{WallPath, taken_round, way_forward};
 use super::wall_stretch::{LAW_REACH, LAW_SHARE, SHORT};
 
 /// Turning from which a vertex or a small arc counts as a corner.
@@ -128,7 +128,7 @@ pub(crate) fn wall_curve(
     let curve = WallCurve::from_sources(outline, corners, &sources, lattice.spacing);
     let at_wall = |loop_index: usize, arc_length: f64| -> Option<Point> {
         let wall: &Wall = walls.get(loop_index)?;
-        let s = arc_length.rem_euclid(wall.path.length());
+        let s = taken_round(arc_length, wall.path.length());
         let normal = wall.normal(s, lattice.spacing)?;
         let shear = curve.loops.get(loop_index)?.shear_at(s);
         shear.is_finite().then(|| normal.map(|c| -shear * c))

@@ -10,6 +10,7 @@ use crate::geometry::{DIRECTION_NAMES, Outline, Point, WallStretch};
 
 use super::many::map_many;
 use super::wall_curve::{LoopCurve, PointKind, WallCurve};
+use super::wall_path::taken_round;
 
 /// Percentiles that are worked out, per cent of the wall's length.
 pub const PERCENTILES: [f64; 5] = [5.0, 25.0, 50.0, 75.0, 95.0];
@@ -128,7 +129,7 @@ impl WallReport {
                 let nudge = 1e-9 * total;
                 let sides = [arc_length - nudge, arc_length + nudge];
                 let walls =
-                    sides.map(|s| self.wall_at(loop_index, s.rem_euclid(total)).unwrap_or(0));
+                    sides.map(|s| self.wall_at(loop_index, taken_round(s, total)).unwrap_or(0));
                 for (mean, wall) in means.into_iter().zip(walls) {
                     for statistics in self
                         .walls
@@ -347,7 +348,7 @@ fn measure(along: &LoopCurve, part: &WallPart, singular: &[f64], singular_length
             .flatten()
             .filter_map(|&k| singular.get(k))
             .any(|corner| {
-                let apart = (corner - place).rem_euclid(total);
+                let apart = taken_round(corner - place, total);
                 apart.min(total - apart) < singular_length
             });
         if !near && value > found.max {

@@ -243,7 +243,7 @@ impl Stretch {
             Shape::Smooth { laws, pieces, near } => {
                 let count = pieces.len();
                 let at = s / self.length * count as f64;
-                let k = (at.floor().max(0.0) as usize).min(count - 1);
+                let k = (at.max(0.0) as usize).min(count - 1);
                 let mut value = cubic(&pieces[k], at - k as f64);
                 if let Some(laws) = laws {
                     if k < near[0] {

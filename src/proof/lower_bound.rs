@@ -79,7 +79,9 @@ impl WholeSquares {
     /// - `divided`: squares that are divided
     fn new(mask: &Mask, phi: &Field, divided: &CellRows) -> Self {
         let mut all = Self::default();
-        for rows in by_blocks(mask, -1, |rows| Self::of_rows(mask, phi, divided, rows)) {
+        for rows in by_blocks(mask, -1, |rows, memory| {
+            Self::of_rows((mask, phi), divided, rows, memory)
+        }) {
             all.count += rows.count;
             all.volume += rows.volume;
             all.energy += rows.energy;
@@ -88,8 +90,13 @@ impl WholeSquares {
         all
     }
 
-    fn of_rows(mask: &Mask, phi: &Field, divided: &CellRows, rows: Range<i64>) -> Self {
-        let nodes = RowValues::new(mask, phi, rows.start - 1..rows.end + 2);
+    fn of_rows(
+        (mask, phi): (&Mask, &Field),
+        divided: &CellRows,
+        rows: Range<i64>,
+        memory: &mut Vec<f64>,
+    ) -> Self {
+        let nodes = RowValues::new(mask, phi, rows.start - 1..rows.end + 2, memory);
         let mut found = Self::default();
         let (mut spans, mut near_wall) = (Vec::new(), Vec::new());
         for row in rows {

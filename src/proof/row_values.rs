@@ -19,10 +19,11 @@ const BLOCK_ROWS: i64 = 4;
 /// Results of some work on each block of rows, in order of the rows.
 ///
 /// - `first`: first row, at most 0; rows up to the last of the grid follow
+/// - `work`: on some rows, with memory for [`RowValues`]
 pub(super) fn by_blocks<T: Send>(
     mask: &Mask,
     first: i64,
-    work: impl Fn(Range<i64>) -> T + Send + Sync,
+    work: impl Fn(Range<i64>, &mut Vec<f64>) -> T + Send + Sync,
 ) -> Vec<T> {
     let mut blocks: Vec<Range<i64>> = Vec::new();
     let (mut from, mut nodes) = (first, 0);
@@ -38,9 +39,13 @@ pub(super) fn by_blocks<T: Send>(
         }
     }
     if mask.nodes() >= PARALLEL_NODES {
-        blocks.into_par_iter().map(work).collect()
+        let each = blocks.into_par_iter();
+        each.map_init(Vec::new, |memory, rows| work(rows, memory))
+            .collect()
     } else {
-        blocks.into_iter().map(work).collect()
+        let mut memory = Vec::new();
+        let each = blocks.into_iter();
+        each.map(|rows| work(rows, &mut memory)).collect()
     }
 }
 
@@ -49,12 +54,19 @@ pub(super) struct RowValues<'a> {
     mask: &'a Mask,
     /// Row-by-row number of the first value.
     first: usize,
-    values: Vec<f64>,
+    values: &'a [f64],
 }
 
 impl<'a> RowValues<'a> {
     /// The rows of a range that the grid has.
-    pub(super) fn new(mask: &'a Mask, phi: &Field, rows: Range<i64>) -> Self {
+    ///
+    /// - `memory`: what it holds is overwritten
+    pub(super) fn new(
+        mask: &'a Mask,
+        phi: &Field,
+        rows: Range<i64>,
+        memory: &'a mut Vec<f64>,
+    ) -> Self {
         let start = |row: i64| {
             let row = usize::try_from(row).unwrap_or(0).min(mask.rows());
             mask.row_start.get(row).map_or(0, |&k| k as usize)
@@ -62,9 +74,13 @@ impl<'a> RowValues<'a> {
         let runs = &mask.runs[start(rows.start)..start(rows.end)];
         let first = runs.first().map_or(0, |run| run.natural as usize);
         let count = runs.iter().map(|run| run.len as usize).sum();
-        let mut values = Vec::with_capacity(count);
+        if memory.len() < count {
+            memory.resize(count, 0.0);
+        }
+        let values = &mut memory[..count];
         for run in runs {
-            append(&mut values, run, phi);
+            let from = run.natural as usize - first;
+            copy_run(&mut values[from..from + run.len as usize], run, phi);
         }
         Self {
             mask,
@@ -105,8 +121,8 @@ impl<'a> RowValues<'a> {
     }
 }
 
-/// Appends the values of a run in order of its columns.
-fn append(values: &mut Vec<f64>, run: &Run, phi: &Field) {
+/// The values of a run in order of its columns.
+fn copy_run(values: &mut [f64], run: &Run, phi: &Field) {
     let half = |column: u32, n: u32| {
         let (colour, node) = run.node(column);
         let from = node as usize;
@@ -120,9 +136,7 @@ fn append(values: &mut Vec<f64>, run: &Run, phi: &Field) {
     } else {
         &[]
     };
-    let from = values.len();
-    values.resize(from + run.len as usize, 0.0);
-    let (pairs, rest) = values[from..].as_chunks_mut();
+    let (pairs, rest) = values.as_chunks_mut();
     for ((pair, &a), &b) in pairs.iter_mut().zip(own).zip(other) {
         *pair = [a, b];
     }

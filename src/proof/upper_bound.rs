@@ -223,15 +223,16 @@ impl<'a> Flux<'a> {
     /// Energy of the whole cells away from the wall; those beside cut cells are collected in the band.
     fn whole_energy(&mut self) -> f64 {
         let mut total = 0.0;
-        for rows in by_blocks(self.mask, 0, |rows| self.whole_rows(rows)) {
+        for rows in by_blocks(self.mask, 0, |rows, memory| self.whole_rows(rows, memory)) {
             total += rows.energy;
             self.band.extend(rows.band);
         }
         total
     }
 
-    fn whole_rows(&self, rows: Range<i64>) -> WholeRows {
-        let nodes = RowValues::new(self.mask, self.nodal.phi, rows.start - 1..rows.end + 1);
+    fn whole_rows(&self, rows: Range<i64>, memory: &mut Vec<f64>) -> WholeRows {
+        let around = rows.start - 1..rows.end + 1;
+        let nodes = RowValues::new(self.mask, self.nodal.phi, around, memory);
         let mut found = WholeRows::default();
         let mut near_wall = Vec::new();
         for j in rows {

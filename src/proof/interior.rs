@@ -72,7 +72,7 @@ fn group_of_squares(rows: [&[f64]; 4]) -> [f64; 2] {
 
 fn add_squares(sum: &mut [[f64; LANES]; 2], [r0, r1, r2, r3]: [&[f64; LANES + 3]; 4]) {
     let [mut rise, mut bend, mut pair] = [[0.0; LANES + 1]; 3];
-    for l in 0..LANES + 1 {
+    for l in 0..=LANES {
         rise[l] = r2[l + 1] - r1[l + 1];
         pair[l] = r2[l + 1] + r1[l + 1];
         bend[l] = pair[l] - (r0[l + 1] + r3[l + 1]);

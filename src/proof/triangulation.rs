@@ -415,9 +415,13 @@ mod tests {
             node([1.0, 0.0], 1, 0.09),
             node([0.0, 1.0], 3, 0.09),
         ];
-        let mut division = Division::default();
-        division.polygon = vec![nodes[2], nodes[0], nodes[1]];
-        division.polygon.extend(arc);
+        let mut division = Division {
+            polygon: [nodes[2], nodes[0], nodes[1]]
+                .into_iter()
+                .chain(arc)
+                .collect(),
+            ..Division::default()
+        };
         let cost = |division: &Division| -> f64 {
             let triples = division.triples.iter();
             let each = triples.map(|t| t.map(|k| division.polygon[k]));

@@ -6,6 +6,8 @@
 
 /// Cells worked on together.
 const LANES: usize = 8;
+/// Grid lines beside and between them.
+const LINES: usize = LANES + 1;
 
 /// Terms added up before they are added to the rest.
 const GROUP: usize = 1024;
@@ -71,8 +73,8 @@ fn group_of_squares(rows: [&[f64]; 4]) -> [f64; 2] {
 }
 
 fn add_squares(sum: &mut [[f64; LANES]; 2], [r0, r1, r2, r3]: [&[f64; LANES + 3]; 4]) {
-    let [mut rise, mut bend, mut pair] = [[0.0; LANES + 1]; 3];
-    for l in 0..=LANES {
+    let [mut rise, mut bend, mut pair] = [[0.0; LINES]; 3];
+    for l in 0..LINES {
         rise[l] = r2[l + 1] - r1[l + 1];
         pair[l] = r2[l + 1] + r1[l + 1];
         bend[l] = pair[l] - (r0[l + 1] + r3[l + 1]);
@@ -157,13 +159,13 @@ fn add_cells(
     sum: &mut [f64; LANES],
     [below, centre, above]: [&[f64; LANES + 2]; 3],
     west: f64,
-) -> [f64; LANES + 1] {
+) -> [f64; LINES] {
     let [mut souths, mut norths, mut across] = [[0.0; LANES + 2]; 3];
     for l in 0..LANES + 2 {
         (souths[l], norths[l]) = (centre[l] - below[l], above[l] - centre[l]);
         across[l] = above[l] - below[l];
     }
-    let mut sides = [west; LANES + 1];
+    let mut sides = [west; LINES];
     for l in 0..LANES {
         sides[l + 1] = sides[l] - (1.0 + (norths[l + 1] - souths[l + 1]));
     }

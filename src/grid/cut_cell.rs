@@ -26,6 +26,9 @@ pub(crate) const WEST: usize = 3;
 /// Corners of a cell in its own coordinates, anticlockwise from the lower left.
 pub(crate) const CORNERS: [Point; 4] = [[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]];
 
+/// Places around a cell nearer to each other than this may be in the wrong order by rounding.
+const SAME_PLACE: f64 = 1e-9;
+
 /// Column and row of a cell; cell `(c, r)` spans `c..c+1` by `r..r+1`, shifted by the shift of the cutting.
 pub(crate) type CellIndex = (i64, i64);
 
@@ -323,7 +326,7 @@ impl Joined {
                 let chain = &chains[current];
                 let inside = points[chain.points.clone()].iter();
                 self.points.extend(inside.map(|p| local(cell, p)));
-                let after = chains.partition_point(|c| c.start < chain.end);
+                let after = next_start(chains, chain.end, points);
                 let next = if after == chains.len() { 0 } else { after };
                 let until = chains[next].start + if after == chains.len() { 4.0 } else { 0.0 };
                 self.walk_sides(from, chain.end, until, &mut corners);
@@ -401,6 +404,47 @@ impl Joined {
         }
         self.place_hole(self.regions.len() - 1, points)
     }
+}
+
+/// Number of starts before an end.
+///
+/// Starts and ends take turns around a cell. Where both walls of a sliver cross a side so near to each other that their
+/// order may be rounding, that decides which of the two is the first.
+fn next_start(chains: &[Chain], end: f64, points: &[Point]) -> usize {
+    let after = chains.partition_point(|c| c.start < end);
+    let is_near = |k: usize| {
+        let start = chains.get(k).map_or(f64::INFINITY, |c| c.start);
+        (start - end).abs() < SAME_PLACE
+    };
+    if !is_near(after) && !after.checked_sub(1).is_some_and(is_near) {
+        return after;
+    }
+    let ends_before = chains.iter().filter(|c| c.end < end).count();
+    ends_before + usize::from(is_start_first(chains, points))
+}
+
+/// Whether the first start of a cell comes before the first end.
+fn is_start_first(chains: &[Chain], points: &[Point]) -> bool {
+    let starts: Vec<f64> = chains.iter().map(|c| c.start).collect();
+    let mut ends: Vec<f64> = chains.iter().map(|c| c.end).collect();
+    ends.sort_by(f64::total_cmp);
+    // By how much places are out of turn.
+    let defect = |first: &[f64], second: &[f64]| {
+        let pairs = first.iter().zip(second).map(|(a, b)| a - b);
+        let next = second.iter().zip(&first[1..]).map(|(b, a)| b - a);
+        pairs.chain(next).fold(0.0, f64::max)
+    };
+    let (start_first, end_first) = (defect(&starts, &ends), defect(&ends, &starts));
+    if start_first.max(end_first) < SAME_PLACE {
+        // The sliver is all there is: solid, with the cell around it, unless it turns as the fluid does or only touches
+        // the side.
+        let cell = chains[0].cell;
+        let sliver = points[chains[0].points.clone()].iter();
+        let sliver: Vec<Point> = sliver.map(|p| local(cell, p)).collect();
+        let extent = |p: &Point| (p[0] - sliver[0][0]).abs() + (p[1] - sliver[0][1]).abs();
+        return signed_area(&sliver) <= 0.0 && sliver.iter().any(|p| extent(p) > 0.0);
+    }
+    start_first < end_first
 }
 
 /// A point in the coordinates of a cell.
@@ -522,5 +566,46 @@ mod tests {
             .count();
         assert!(twice >= 5, "{twice}");
         assert!(shared_parts(&cut).is_ok());
+    }
+
+    #[test]
+    fn slivers_that_end_on_a_node_are_cut_though_their_walls_cross_a_side_at_one_place() {
+        // Knives of solid from each side, thinner than what can be told apart just above their tips.
+        let thin = 2e-8;
+        let outline = Outline::single(vec![
+            [0.0, 0.0],
+            [8.0, 0.0],
+            [8.0 + thin, 5.0],
+            [8.0 + 2.0 * thin, 0.0],
+            [20.0, 0.0],
+            [20.0, 8.0],
+            [15.0, 8.0 + thin],
+            [20.0, 8.0 + 2.0 * thin],
+            [20.0, 20.0],
+            [12.0, 20.0],
+            [12.0 - thin, 15.0],
+            [12.0 - 2.0 * thin, 20.0],
+            [0.0, 20.0],
+            [0.0, 12.0],
+            [5.0, 12.0 - thin],
+            [0.0, 12.0 - 2.0 * thin],
+        ])
+        .oriented();
+        for offset in [[0.0, 0.0], [thin, thin], [1.0 - thin, 1.0 - thin]] {
+            let lattice = Lattice::new(&outline, 1.0, offset);
+            for shift in [
+                [0.0, 0.0],
+                [1.37e-7, 2.11e-7],
+                [1.37e-7 - 0.5, 2.11e-7 - 0.5],
+            ] {
+                let cut = cut_cells(&lattice, shift).unwrap();
+                assert!(shared_parts(&cut).is_ok(), "{offset:?} {shift:?}");
+                let rest = outline.area() - cut.area();
+                assert!(
+                    (rest - rest.round()).abs() < 1e-9,
+                    "{offset:?} {shift:?} {rest}"
+                );
+            }
+        }
     }
 }

@@ -572,25 +572,18 @@ mod tests {
     fn slivers_that_end_on_a_node_are_cut_though_their_walls_cross_a_side_at_one_place() {
         // Knives of solid from each side, thinner than what can be told apart just above their tips.
         let thin = 2e-8;
-        let outline = Outline::single(vec![
+        let mut side = [
             [0.0, 0.0],
             [8.0, 0.0],
             [8.0 + thin, 5.0],
             [8.0 + 2.0 * thin, 0.0],
-            [20.0, 0.0],
-            [20.0, 8.0],
-            [15.0, 8.0 + thin],
-            [20.0, 8.0 + 2.0 * thin],
-            [20.0, 20.0],
-            [12.0, 20.0],
-            [12.0 - thin, 15.0],
-            [12.0 - 2.0 * thin, 20.0],
-            [0.0, 20.0],
-            [0.0, 12.0],
-            [5.0, 12.0 - thin],
-            [0.0, 12.0 - 2.0 * thin],
-        ])
-        .oriented();
+        ];
+        let mut points = Vec::new();
+        for _ in 0..4 {
+            points.extend(side);
+            side = side.map(|[x, y]| [20.0 - y, x]);
+        }
+        let outline = Outline::single(points).oriented();
         for offset in [[0.0, 0.0], [thin, thin], [1.0 - thin, 1.0 - thin]] {
             let lattice = Lattice::new(&outline, 1.0, offset);
             for shift in [

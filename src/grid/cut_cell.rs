@@ -413,8 +413,9 @@ impl Joined {
 fn next_start(chains: &[Chain], end: f64, points: &[Point]) -> usize {
     let after = chains.partition_point(|c| c.start < end);
     let is_near = |k: usize| {
-        let start = chains.get(k).map_or(f64::INFINITY, |c| c.start);
-        (start - end).abs() < SAME_PLACE
+        chains
+            .get(k)
+            .is_some_and(|c| (c.start - end).abs() < SAME_PLACE)
     };
     if !is_near(after) && !after.checked_sub(1).is_some_and(is_near) {
         return after;
@@ -425,8 +426,8 @@ fn next_start(chains: &[Chain], end: f64, points: &[Point]) -> usize {
 
 /// Whether the first start of a cell comes before the first end.
 fn is_start_first(chains: &[Chain], points: &[Point]) -> bool {
-    let starts: Vec<f64> = chains.iter().map(|c| c.start).collect();
-    let mut ends: Vec<f64> = chains.iter().map(|c| c.end).collect();
+    let [starts, mut ends] = [|c: &Chain| c.start, |c: &Chain| c.end]
+        .map(|place| chains.iter().map(place).collect::<Vec<f64>>());
     ends.sort_by(f64::total_cmp);
     // By how much places are out of turn.
     let defect = |first: &[f64], second: &[f64]| {
@@ -439,8 +440,8 @@ fn is_start_first(chains: &[Chain], points: &[Point]) -> bool {
         // The sliver is all there is: solid, with the cell around it, unless it turns as the fluid does or only touches
         // the side.
         let cell = chains[0].cell;
-        let sliver = points[chains[0].points.clone()].iter();
-        let sliver: Vec<Point> = sliver.map(|p| local(cell, p)).collect();
+        let sliver = &points[chains[0].points.clone()];
+        let sliver: Vec<Point> = sliver.iter().map(|p| local(cell, p)).collect();
         let extent = |p: &Point| (p[0] - sliver[0][0]).abs() + (p[1] - sliver[0][1]).abs();
         return signed_area(&sliver) <= 0.0 && sliver.iter().any(|p| extent(p) > 0.0);
     }
@@ -559,11 +560,8 @@ mod tests {
         .oriented();
         let lattice = Lattice::new(&parted, 1.0, [0.25, 0.25]);
         let cut = cut_cells(&lattice, [0.0, 0.0]).unwrap();
-        let twice = cut
-            .regions
-            .windows(2)
-            .filter(|p| p[0].cell == p[1].cell)
-            .count();
+        let pairs = cut.regions.windows(2);
+        let twice = pairs.filter(|p| p[0].cell == p[1].cell).count();
         assert!(twice >= 5, "{twice}");
         assert!(shared_parts(&cut).is_ok());
     }

@@ -437,11 +437,9 @@ fn is_start_first(chains: &[Chain], points: &[Point]) -> bool {
     };
     let (start_first, end_first) = (defect(&starts, &ends), defect(&ends, &starts));
     if start_first.max(end_first) < SAME_PLACE {
-        // The sliver is all there is: solid, with the cell around it, unless it turns as the fluid does or only touches
-        // the side.
-        let cell = chains[0].cell;
-        let sliver = &points[chains[0].points.clone()];
-        let sliver: Vec<Point> = sliver.iter().map(|p| local(cell, p)).collect();
+        // The sliver is all there is: solid in a cell, unless it turns as the fluid does or has no extent.
+        let sliver = points[chains[0].points.clone()].iter();
+        let sliver: Vec<Point> = sliver.map(|p| local(chains[0].cell, p)).collect();
         let extent = |p: &Point| (p[0] - sliver[0][0]).abs() + (p[1] - sliver[0][1]).abs();
         return signed_area(&sliver) <= 0.0 && sliver.iter().any(|p| extent(p) > 0.0);
     }

@@ -6,7 +6,8 @@
 
 use crate::geometry::Point;
 use crate::grid::{
-    CORNERS, CellIndex, Lattice, NORTH, exit_from_cell, next_cell, opposite_side, position_around,
+    CORNERS, CellIndex, Lattice, NORTH, exit_from_cell, next_cell, next_start, opposite_side,
+    position_around,
 };
 
 use super::wall_path::WallPath;
@@ -149,7 +150,8 @@ pub(super) fn regions(chains: &[Chain]) -> Option<Vec<Region<'_>>> {
             let chain = &chains[current];
             region.chains.push(chain);
             region.area += chain.area;
-            let after = chains.partition_point(|c| c.start < chain.end);
+            let is_solid = || chains[0].area <= 0.0 && chains[0].to > chains[0].from;
+            let after = next_start(chains, |c| [c.start, c.end], chain.end, is_solid);
             let (next, turn) = if after == chains.len() {
                 (0, 4.0)
             } else {

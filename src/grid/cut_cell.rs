@@ -14,6 +14,7 @@ use crate::geometry::Point;
 
 use super::cell_rows::CellRows;
 use super::lattice::Lattice;
+use super::turns::next_start;
 
 /// Sides of a cell, anticlockwise from the lower one.
 pub(crate) const SOUTH: usize = 0;
@@ -25,9 +26,6 @@ pub(crate) const NORTH: usize = 2;
 pub(crate) const WEST: usize = 3;
 /// Corners of a cell in its own coordinates, anticlockwise from the lower left.
 pub(crate) const CORNERS: [Point; 4] = [[0.0, 0.0], [1.0, 0.0], [1.0, 1.0], [0.0, 1.0]];
-
-/// Places around a cell nearer to each other than this may be in the wrong order by rounding.
-const SAME_PLACE: f64 = 1e-9;
 
 /// Column and row of a cell; cell `(c, r)` spans `c..c+1` by `r..r+1`, shifted by the shift of the cutting.
 pub(crate) type CellIndex = (i64, i64);
@@ -326,7 +324,8 @@ impl Joined {
                 let chain = &chains[current];
                 let inside = points[chain.points.clone()].iter();
                 self.points.extend(inside.map(|p| local(cell, p)));
-                let after = next_start(chains, chain.end, points);
+                let is_solid = || is_solid_sliver(&chains[0], points);
+                let after = next_start(chains, |c| [c.start, c.end], chain.end, is_solid);
                 let next = if after == chains.len() { 0 } else { after };
                 let until = chains[next].start + if after == chains.len() { 4.0 } else { 0.0 };
                 self.walk_sides(from, chain.end, until, &mut corners);
@@ -406,44 +405,15 @@ impl Joined {
     }
 }
 
-/// Number of starts before an end.
-///
-/// Starts and ends take turns around a cell. Where both walls of a sliver cross a side so near to each other that their
-/// order may be rounding, that decides which of the two is the first.
-fn next_start(chains: &[Chain], end: f64, points: &[Point]) -> usize {
-    let after = chains.partition_point(|c| c.start < end);
-    let is_near = |k: usize| {
-        chains
-            .get(k)
-            .is_some_and(|c| (c.start - end).abs() < SAME_PLACE)
-    };
-    if !is_near(after) && !after.checked_sub(1).is_some_and(is_near) {
-        return after;
-    }
-    let ends_before = chains.iter().filter(|c| c.end < end).count();
-    ends_before + usize::from(is_start_first(chains, points))
-}
-
-/// Whether the first start of a cell comes before the first end.
-fn is_start_first(chains: &[Chain], points: &[Point]) -> bool {
-    let [starts, mut ends] = [|c: &Chain| c.start, |c: &Chain| c.end]
-        .map(|place| chains.iter().map(place).collect::<Vec<f64>>());
-    ends.sort_by(f64::total_cmp);
-    // By how much places are out of turn.
-    let defect = |first: &[f64], second: &[f64]| {
-        let pairs = first.iter().zip(second).map(|(a, b)| a - b);
-        let next = second.iter().zip(&first[1..]).map(|(b, a)| b - a);
-        pairs.chain(next).fold(0.0, f64::max)
-    };
-    let (start_first, end_first) = (defect(&starts, &ends), defect(&ends, &starts));
-    if start_first.max(end_first) < SAME_PLACE {
-        // The sliver is all there is: solid in a cell, unless it turns as the fluid does or has no extent.
-        let sliver = points[chains[0].points.clone()].iter();
-        let sliver: Vec<Point> = sliver.map(|p| local(chains[0].cell, p)).collect();
-        let extent = |p: &Point| (p[0] - sliver[0][0]).abs() + (p[1] - sliver[0][1]).abs();
-        return signed_area(&sliver) <= 0.0 && sliver.iter().any(|p| extent(p) > 0.0);
-    }
-    start_first < end_first
+/// Whether a chain that ends where it starts goes round something solid in its cell; one that only touches a side
+/// does not.
+fn is_solid_sliver(chain: &Chain, points: &[Point]) -> bool {
+    let points: Vec<Point> = points[chain.points.clone()]
+        .iter()
+        .map(|p| local(chain.cell, p))
+        .collect();
+    let extent = |p: &Point| (p[0] - points[0][0]).abs() + (p[1] - points[0][1]).abs();
+    signed_area(&points) <= 0.0 && points.iter().any(|p| extent(p) > 0.0)
 }
 
 /// A point in the coordinates of a cell.

@@ -8,6 +8,7 @@ mod lattice;
 mod mask;
 mod resolution;
 mod runs;
+mod turns;
 
 /// Fluid nodes below which all work on a grid stays on one thread: starting threads takes some milliseconds, as
 /// long as the whole solve of such a grid.
@@ -26,3 +27,4 @@ pub use mask::{
     WallNode,
 };
 pub use resolution::{BYTES_PER_NODE, LEAST_CELLS_ACROSS, ResolutionError, memory_needed, spacing};
+pub(crate) use turns::next_start;

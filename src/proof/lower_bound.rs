@@ -48,8 +48,7 @@ pub(super) fn lower_bound(lattice: &Lattice, mask: &Mask, phi: &Field) -> Result
     let divided = CellRows::new(polygons.iter().map(|polygon| polygon.cell));
     let whole = WholeSquares::new(mask, phi, &divided);
     check_area(lattice, cut.area() + (whole.count + foot_squares) as f64)?;
-    let mut near_wall = NearWall::new(mask, phi, &polygons, &whole.near_wall);
-    near_wall.improve();
+    let near_wall = NearWall::new(mask, phi, &polygons, &whole.near_wall).improved();
     let [volume, energy] = near_wall.integrals();
     let (volume, energy) = (whole.volume + volume, whole.energy + energy);
     if energy > 0.0 {

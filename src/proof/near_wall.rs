@@ -175,7 +175,8 @@ impl<'a> NearWall<'a> {
     }
 
     /// Divides the cut squares and improves the values of their nodes.
-    pub(super) fn improve(&mut self) {
+    #[must_use]
+    pub(super) fn improved(mut self) -> Self {
         self.divide();
         let mut rows = std::mem::take(&mut self.rows);
         for (share, nodes) in self.shares.iter().zip(&self.polygon_nodes) {
@@ -191,6 +192,7 @@ impl<'a> NearWall<'a> {
                 self.improve_node(row);
             }
         }
+        self
     }
 
     /// Divides every polygon; the nodes of those that cannot be divided are set to zero and held there, after

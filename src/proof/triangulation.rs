@@ -4,9 +4,9 @@
 //! where the velocity is zero. Any division into triangles between its vertices gives an admissible velocity,
 //! linear on each; the one with the least energy against its volume is found by dynamic programming, among
 //! ladders between the nodes and the wall where that is smooth (linear in its vertices, and hardly ever worse) or
-//! has many vertices, else among all. A division whose triangles all turn anticlockwise covers a simple polygon exactly once (the map from the
-//! abstract triangles keeps orientation and is one to one on the boundary), so checking the signs of the areas
-//! is all the proof it needs.
+//! has many vertices, else among all. A division whose triangles all turn anticlockwise covers a simple polygon
+//! exactly once (the map from the abstract triangles keeps orientation and is one to one on the boundary), so
+//! checking the signs of the areas is all the proof it needs.
 
 use crate::geometry::Point;
 

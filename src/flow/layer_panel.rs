@@ -152,7 +152,7 @@ pub(super) struct Potential {
 
 impl Panel {
     /// `None` without length.
-    fn new(stretch: usize, span: [f64; 2], ends: [Point; 2]) -> Option<Self> {
+    pub(super) fn new(stretch: usize, span: [f64; 2], ends: [Point; 2]) -> Option<Self> {
         let length = distance(ends[0], ends[1]);
         (length > 0.0).then(|| Self {
             stretch,

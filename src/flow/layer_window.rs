@@ -13,6 +13,7 @@ use crate::geometry::{Point, distance};
 use crate::grid::{Lattice, Mask};
 use crate::solve::Field;
 
+use super::layer_cluster::{Cluster, Expansion, Source, clusters};
 use super::layer_panel::{Panel, Potential};
 use super::wall_layer::LayerCorner;
 use super::wall_path::taken_round;
@@ -66,21 +67,11 @@ impl Frame {
     }
 }
 
-/// A panel with what the window knows of it.
-struct Source<'a> {
-    panel: &'a Panel,
-    /// Columns of its places with their shares.
-    columns: [(usize, f64); 2],
-    /// The particular part at its start, its change along it, and its slope out of the fluid in the middle.
-    start: f64,
-    change: f64,
-    slope: f64,
-}
-
 /// The wall and the corners around a few corners.
 pub(super) struct Window<'a> {
     frame: &'a Frame,
     sources: Vec<Source<'a>>,
+    clusters: Vec<Cluster>,
     /// Indices of the places, in order.
     places: Vec<usize>,
     corners: Vec<&'a LayerCorner>,
@@ -130,9 +121,11 @@ impl<'a> Window<'a> {
                 slope: -frame.off(panel.middle()) * along,
             }
         };
+        let sources: Vec<Source<'a>> = panels.into_iter().map(source).collect();
         Self {
             frame,
-            sources: panels.into_iter().map(source).collect(),
+            clusters: clusters(&sources),
+            sources,
             places,
             corners,
         }
@@ -172,8 +165,10 @@ impl<'a> Window<'a> {
         if (nodes.len() as f64) < LEAST_NODES * width as f64 {
             return None;
         }
+        let expand = |cluster| Expansion::new(cluster, self.sources_of(cluster));
+        let expansions: Vec<Expansion> = self.clusters.iter().map(expand).collect();
         for (at, value) in nodes {
-            let known = self.fill(at, &mut row);
+            let known = self.fill(&expansions, at, &mut row);
             self.fill_errors(at, &mut row);
             let right = known + value - self.frame.particular(at);
             rows.add(&row, right, self.frame.fade(at));
@@ -182,7 +177,7 @@ impl<'a> Window<'a> {
             let depth = DEPTH.min(DEPTH_SHARE * from_corner(panel));
             let (middle, normal) = (panel.middle(), panel.normal());
             let at = [0, 1].map(|axis| middle[axis] + depth * normal[axis]);
-            let known = self.fill(at, &mut row);
+            let known = self.fill(&expansions, at, &mut row);
             let weight = ZERO_WEIGHT * panel.length.sqrt() * self.frame.fade(at);
             rows.add(&row, known, weight);
         }
@@ -236,25 +231,43 @@ impl<'a> Window<'a> {
     /// Whether a node lies neither too near to the wall nor too far from it.
     fn is_good_distance(&self, at: Point) -> bool {
         let mut is_within_reach = false;
-        for panel in self.panels() {
-            let square = panel.square_of_distance(at);
-            if square < NEAREST * NEAREST {
-                return false;
+        for cluster in &self.clusters {
+            if cluster.is_beyond(at, FARTHEST) {
+                continue;
             }
-            is_within_reach |= square <= FARTHEST * FARTHEST;
+            for source in self.sources_of(cluster) {
+                let square = source.panel.square_of_distance(at);
+                if square < NEAREST * NEAREST {
+                    return false;
+                }
+                is_within_reach |= square <= FARTHEST * FARTHEST;
+            }
         }
         is_within_reach
     }
 
+    fn sources_of(&self, cluster: &Cluster) -> &[Source<'a>] {
+        self.sources.get(cluster.sources.clone()).unwrap_or(&[])
+    }
+
     /// The part of the layer and of the polynomial in the potential at a place; returns what is known of it.
-    fn fill(&self, at: Point, row: &mut [f64]) -> f64 {
+    ///
+    /// - `expansions`: of the clusters
+    fn fill(&self, expansions: &[Expansion], at: Point, row: &mut [f64]) -> f64 {
         row.fill(0.0);
         let mut known = 0.0;
-        for source in &self.sources {
-            let Potential { single, double } = source.panel.potential(at);
-            known += source.start * double[0] + source.change * double[1] - single * source.slope;
-            for (column, share) in source.columns {
-                row[column] += share * single;
+        for (cluster, expansion) in self.clusters.iter().zip(expansions) {
+            if let Some(far) = expansion.potential(at, row) {
+                known += far;
+                continue;
+            }
+            for source in self.sources_of(cluster) {
+                let Potential { single, double } = source.panel.potential(at);
+                known +=
+                    source.start * double[0] + source.change * double[1] - single * source.slope;
+                for (column, share) in source.columns {
+                    row[column] += share * single;
+                }
             }
         }
         let frame = self.frame;

@@ -14,6 +14,7 @@ mod field;
 mod fluid;
 mod grid_integrals;
 mod identities;
+mod layer_cluster;
 mod layer_panel;
 mod layer_window;
 mod many;

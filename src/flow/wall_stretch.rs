@@ -396,7 +396,13 @@ fn smoothed(samples: &[(f64, f64)], at: f64, spacing: f64) -> f64 {
 
 /// Both leading powers at given distances from the ends, as shares of the length; one in the middle.
 fn ends(share: [f64; 2], powers: [f64; 2]) -> f64 {
-    (2.0 * share[0]).powf(powers[0]) * (2.0 * share[1]).powf(powers[1])
+    let twice = share.map(|s| 2.0 * s);
+    if twice[0] > 0.0 && twice[1] > 0.0 {
+        // Of one exponential: half the cost of two powers.
+        (powers[0] * twice[0].ln() + powers[1] * twice[1].ln()).exp()
+    } else {
+        twice[0].powf(powers[0]) * twice[1].powf(powers[1])
+    }
 }
 
 /// Value at a place among sorted ones: linear between them, constant beyond.

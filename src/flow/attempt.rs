@@ -15,7 +15,7 @@ use super::assemble::{assemble, best_conductance};
 use super::section_flow::{GridReport, WallSample};
 use super::solve_cost::StageClock;
 use super::solve_outline::{FlowError, SolveOptions, SolvedSection};
-use super::solved_grids::{SolvedGrids, WIDE_EXPONENT, solve_grids};
+use super::solved_grids::{Purpose, SolvedGrids, solve_grids};
 use super::wall_curve::WallCurve;
 use super::wall_shear::{wall_curve, wall_samples};
 use super::width_source::{WidthSource, width_source};
@@ -68,7 +68,7 @@ impl Attempt {
             asked,
             cells_across,
             options.grid_offset,
-            WIDE_EXPONENT,
+            Purpose::Field,
             &mut clock,
         )?;
         let seconds = start.elapsed().as_secs_f64();

@@ -19,7 +19,7 @@ use crate::proof::bracket;
 use super::assemble::best_conductance;
 use super::solve_cost::StageClock;
 use super::solve_outline::{DEFAULT_MEMORY, FlowError};
-use super::solved_grids::solve_grids;
+use super::solved_grids::{Purpose, solve_grids};
 use super::wall_shear::wall_samples;
 
 /// Cells across the smallest lumen that the search for the grid starts from.
@@ -31,9 +31,6 @@ const SHARES: [f64; 2] = [0.5, 0.8];
 const FINER: [f64; 2] = [1.1, 2.0];
 /// Grids tried.
 const MOST_GRIDS: usize = 12;
-/// Exponent of the widest corner below which the proven ranges are asked, from 135 degrees: here only where the
-/// energy alone could mislead, because proofs cost more than solves.
-const FLAT_EXPONENT: f64 = 8.0 / 3.0;
 /// How much finer a neighbour is solved that does not meet the tolerance, and how often.
 const NEIGHBOUR_FINER: f64 = 1.4;
 /// See [`NEIGHBOUR_FINER`].
@@ -164,7 +161,7 @@ fn estimate(outline: &Outline, spacing: f64, cells_across: f64) -> Result<Found,
         spacing,
         cells_across,
         None,
-        FLAT_EXPONENT,
+        Purpose::ConductanceAlone,
         &mut StageClock::start(),
     )?;
     let solution = (&grids.lattice, &grids.mask, &grids.phi);

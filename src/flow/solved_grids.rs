@@ -16,8 +16,41 @@ use super::wall_shear::corners_of;
 /// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
 /// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.1;
+/// Residual as a share of that of the first guess, which is large where walls are rough or corners re-entrant. What is
+/// left in `K` goes with the square of the share as well: below a thousandth of its estimated error.
+const START_SHARE: f64 = 0.005;
 /// Exponent of the widest corner below which the proven ranges are asked as well: from 106 degrees.
-pub(super) const WIDE_EXPONENT: f64 = 3.4;
+const WIDE_EXPONENT: f64 = 3.4;
+/// The same from 135 degrees, for `K` alone: only where the energy alone could mislead, because proofs cost more than
+/// solves.
+const FLAT_EXPONENT: f64 = 8.0 / 3.0;
+
+/// What grids are solved for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Purpose {
+    /// The field and all that is read from it.
+    Field,
+    /// `K` and nothing else.
+    ConductanceAlone,
+}
+
+impl Purpose {
+    fn wide_exponent(self) -> f64 {
+        match self {
+            Self::Field => WIDE_EXPONENT,
+            Self::ConductanceAlone => FLAT_EXPONENT,
+        }
+    }
+
+    /// Residual at which a grid is solved, as a share of that of the first guess.
+    fn start_share(self) -> f64 {
+        match self {
+            Self::Field => START_SHARE,
+            // The search for a grid ends at 16 to 40 cells, where already the last digits decide which one it is.
+            Self::ConductanceAlone => 0.0,
+        }
+    }
+}
 
 /// What one grid of the sequence said.
 pub(super) struct GridAnswer {
@@ -66,15 +99,15 @@ impl SolvedGrids {
 /// Solves the grids of a section.
 ///
 /// - `asked`: spacing of the finest, m; up to an eighth smaller where corners are put on nodes
-/// - `cells_across`: about, decides how far the iteration goes
+/// - `cells_across`: about
 /// - `offset`: place of the lattice where it is given
-/// - `wide`: exponent of the widest corner below which the range of the second grid is welcome
+/// - `purpose`: decides how far the iteration goes and whether the range of the second grid is welcome
 pub(super) fn solve_grids(
     outline: &Outline,
     asked: f64,
     cells_across: f64,
     offset: Option<[f64; 2]>,
-    wide: f64,
+    purpose: Purpose,
     clock: &mut StageClock,
 ) -> Result<SolvedGrids, FlowError> {
     let corners = corners_of(outline, asked);
@@ -88,13 +121,13 @@ pub(super) fn solve_grids(
     };
     let spacing = fitted.spacing;
     clock.end("corners and place of the grid");
-    let is_wide = leading_exponent(&corners).is_some_and(|p| p < wide);
+    let is_wide = leading_exponent(&corners).is_some_and(|p| p < purpose.wide_exponent());
     let lattice = Lattice::new(outline, spacing, fitted.offset);
     let Sequence {
         hierarchy,
         answers,
         second,
-    } = solve_sequence(&lattice, cells_across, is_wide, clock)
+    } = solve_sequence(&lattice, (cells_across, purpose), is_wide, clock)
         .ok_or(FlowError::NoFluidNode { spacing })?;
     let (mask, phi, second_mask) = hierarchy.into_two_finest();
     let second = second.zip(second_mask).map(|(phi, mask)| SecondGrid {
@@ -125,7 +158,7 @@ struct Sequence {
 /// Solves every grid of the sequence.
 fn solve_sequence(
     lattice: &Lattice,
-    cells_across: f64,
+    (cells_across, purpose): (f64, Purpose),
     wants_second: bool,
     clock: &mut StageClock,
 ) -> Option<Sequence> {
@@ -139,7 +172,7 @@ fn solve_sequence(
         most_cycles: 100,
     };
     let (mut answers, mut second) = (Vec::new(), None);
-    hierarchy.solve(control, |grid, solved| {
+    hierarchy.solve_to_share(control, purpose.start_share(), |grid, solved| {
         let seconds = clock.lap();
         clock.add("solve", seconds);
         clock.level(LevelCost {

@@ -45,7 +45,20 @@ impl Hierarchy {
     ///
     /// - `inspect`: called with each grid and its evidence as soon as it is solved, coarsest first; later
     ///   cycles on finer grids reuse the coarse fields for corrections
-    pub fn solve(&mut self, control: SolveControl, mut inspect: impl FnMut(&Grid, Solved)) {
+    pub fn solve(&mut self, control: SolveControl, inspect: impl FnMut(&Grid, Solved)) {
+        self.solve_to_share(control, 0.0, inspect);
+    }
+
+    /// The same, but a grid also counts as solved where its residual is below a share of that of its first guess.
+    ///
+    /// The first guess differs from the solution by about what the grid changes in the answer of the one before, so that
+    /// share compares what the iteration leaves with the error of discretisation, however rough the wall is.
+    pub fn solve_to_share(
+        &mut self,
+        control: SolveControl,
+        share: f64,
+        mut inspect: impl FnMut(&Grid, Solved),
+    ) {
         for level in (0..self.grids.len()).rev() {
             let grid = &mut self.grids[level];
             grid.source = GridSource::Uniform(f64::from(grid.mask.stride).powi(2));
@@ -53,7 +66,7 @@ impl Hierarchy {
                 self.solve_coarsest(control)
             } else {
                 self.ascend(level, Lift::Replace);
-                self.solve_grid(level, control)
+                self.solve_grid(level, control, share)
             };
             inspect(&self.grids[level], solved);
         }
@@ -72,8 +85,12 @@ impl Hierarchy {
         }
     }
 
-    fn solve_grid(&mut self, level: usize, control: SolveControl) -> Solved {
+    fn solve_grid(&mut self, level: usize, control: SolveControl, share: f64) -> Solved {
         let start = self.descend(level, Start::Present);
+        let control = SolveControl {
+            residual: control.residual.max(share * start),
+            ..control
+        };
         let (mut residual, mut cycles, mut slow) = (start, 0, 0);
         let mut accelerated = false;
         while residual > control.residual && cycles < control.most_cycles {

@@ -249,3 +249,35 @@ fn rectangle(h: f64, w: f64) -> f64 {
         .sum();
     w * h.powi(3) / 12.0 * (1.0 - 192.0 * h / (std::f64::consts::PI.powi(5) * w) * sum)
 }
+
+#[test]
+fn beside_many_corners_the_iteration_ends_sooner_and_loses_next_to_nothing() {
+    let radii: Vec<f64> = (0..60).map(|k| 1.0 - 0.06 * f64::from(k % 2)).collect();
+    let lattice = Lattice::new(&Outline::single(star(&radii)), 0.02, [0.3, 0.6]);
+    let (rows, columns) = (
+        LineCrossings::rows(&lattice),
+        LineCrossings::columns(&lattice),
+    );
+    let control = SolveControl {
+        residual: 1e-7,
+        most_cycles: 60,
+    };
+    let solved = |share: f64| {
+        let mut hierarchy = Hierarchy::new(&lattice, &rows, &columns).unwrap();
+        let mut finest = None;
+        hierarchy.solve_to_share(control, share, |_, found| finest = Some(found));
+        let sum: f64 = hierarchy.grids[0].phi.colour.iter().flatten().sum();
+        (finest.unwrap(), sum)
+    };
+    let ((far, whole), (near, early)) = (solved(0.0), solved(0.005));
+    assert!(far.converged && far.residual <= control.residual, "{far:?}");
+    assert!(
+        near.converged && near.residual > control.residual,
+        "{near:?}"
+    );
+    assert!(
+        near.cycles >= 1 && near.cycles < far.cycles,
+        "{near:?} {far:?}"
+    );
+    assert!((early / whole - 1.0).abs() < 1e-4, "{early} {whole}");
+}

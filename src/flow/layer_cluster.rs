@@ -15,7 +15,7 @@ use std::ops::Range;
 
 use crate::geometry::{Point, distance};
 
-use super::layer_panel::Panel;
+use super::layer_panel::{Panel, Potential};
 use super::wall_quadrature::GAUSS_4;
 
 /// Largest distance within a cluster from its first place, spacings.
@@ -36,6 +36,17 @@ pub(super) struct Source<'a> {
     pub(super) start: f64,
     pub(super) change: f64,
     pub(super) slope: f64,
+}
+
+impl Source<'_> {
+    /// Adds its potential at a place to a row; returns what is known of it.
+    pub(super) fn potential(&self, at: Point, row: &mut [f64]) -> f64 {
+        let Potential { single, double } = self.panel.potential(at);
+        for (column, share) in self.columns {
+            row[column] += share * single;
+        }
+        self.start * double[0] + self.change * double[1] - single * self.slope
+    }
 }
 
 /// Panels next to each other.
@@ -195,7 +206,6 @@ fn dot(a: &[f64; TERMS], b: &[f64; TERMS]) -> f64 {
 
 #[cfg(test)]
 mod tests {
-    use super::super::layer_panel::Potential;
     use super::*;
 
     /// A bent wall of panels of changing lengths, each with columns, shares and a particular part of its own.
@@ -221,19 +231,6 @@ mod tests {
             }
         };
         panels.iter().enumerate().map(of).collect()
-    }
-
-    /// The row of one place and what is known there, panel by panel.
-    fn by_panels(own: &[Source<'_>], at: Point, row: &mut [f64]) -> f64 {
-        let mut known = 0.0;
-        for source in own {
-            let Potential { single, double } = source.panel.potential(at);
-            known += source.start * double[0] + source.change * double[1] - source.slope * single;
-            for (column, share) in source.columns {
-                row[column] += share * single;
-            }
-        }
-        known
     }
 
     #[test]
@@ -273,7 +270,10 @@ mod tests {
                         cluster.centre[1] + r * angle.sin(),
                     ];
                     let (mut fast, mut slow) = ([0.0; 8], [0.0; 8]);
-                    let known = by_panels(own, at, &mut slow);
+                    let known: f64 = own
+                        .iter()
+                        .map(|source| source.potential(at, &mut slow))
+                        .sum();
                     let found = expansion.potential(at, &mut fast);
                     let off = |a: f64, b: f64| assert!((a - b).abs() < tolerance, "{a} {b}");
                     off(found.unwrap_or(f64::NAN), known);

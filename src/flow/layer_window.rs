@@ -14,7 +14,7 @@ use crate::grid::{Lattice, Mask};
 use crate::solve::Field;
 
 use super::layer_cluster::{Cluster, Expansion, Source, clusters};
-use super::layer_panel::{Panel, Potential};
+use super::layer_panel::Panel;
 use super::wall_layer::LayerCorner;
 use super::wall_path::taken_round;
 
@@ -262,12 +262,7 @@ impl<'a> Window<'a> {
                 continue;
             }
             for source in self.sources_of(cluster) {
-                let Potential { single, double } = source.panel.potential(at);
-                known +=
-                    source.start * double[0] + source.change * double[1] - single * source.slope;
-                for (column, share) in source.columns {
-                    row[column] += share * single;
-                }
+                known += source.potential(at, row);
             }
         }
         let frame = self.frame;

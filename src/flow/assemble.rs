@@ -8,7 +8,7 @@ use super::accuracy::Accuracy;
 use super::attempt::{Attempt, WallAnswer};
 use super::extrapolation::{LOOSE, extrapolate};
 use super::identities::identities;
-use super::range_extrapolation::{from_ranges, within};
+use super::range_extrapolation::{Law, from_ranges, within};
 use super::section_flow::{
     LevelReport, Peak, SectionFlow, SectionGeometry, SolverReport, WallSample,
 };
@@ -161,14 +161,17 @@ pub(super) fn best_conductance(
     let Some(proven) = proven else {
         return extrapolated;
     };
-    let is_re_entrant = leading_exponent(&grids.corners).is_some_and(|p| p < 2.0);
-    let is_one_law = is_re_entrant && grids.misfit <= LOOSE;
+    let re_entrant = leading_exponent(&grids.corners).filter(|p| *p < 2.0);
     match coarse {
         Some(coarse) => {
+            let law = Law {
+                re_entrant,
+                is_one: re_entrant.is_some() && grids.misfit <= LOOSE,
+            };
             let diameter = 4.0 * outline.area() / outline.wetted_perimeter();
-            from_ranges(extrapolated, proven, coarse, is_one_law, diameter / spacing)
+            from_ranges(extrapolated, [proven, coarse], law, diameter / spacing)
         }
-        None => within(extrapolated, proven, is_re_entrant),
+        None => within(extrapolated, proven, re_entrant.is_some()),
     }
 }
 

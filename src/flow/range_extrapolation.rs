@@ -27,6 +27,17 @@ use crate::proof::Bracket;
 const LEAST_RATIO: f64 = 1.1;
 /// Usual place of the true value in the range, as a share of its width, by the ratio of the widths; linear between.
 const USUAL_SHARE: [(f64, f64); 4] = [(1.6, 0.45), (2.2, 0.34), (3.6, 0.54), (5.5, 0.655)];
+/// The same by the exponent `2 pi / omega` of the widest re-entrant corner.
+const USUAL_BY_EXPONENT: [(f64, f64); 8] = [
+    (1.15, 0.32),
+    (1.35, 0.33),
+    (1.42, 0.45),
+    (1.5, 0.49),
+    (1.6, 0.53),
+    (1.75, 0.57),
+    (1.9, 0.61),
+    (2.05, 0.62),
+];
 /// Farthest from the usual share that the share of the two grids is followed.
 const AWAY: f64 = 0.15;
 /// Ratios of the widths from which the usual share says less and less, and nothing: there is no noise to mend.
@@ -43,26 +54,34 @@ const RESERVE: f64 = 0.1;
 const APART: [f64; 2] = [0.15, 0.25];
 /// See [`APART`].
 const SLOW: f64 = 2.0;
-/// Cells across at which that part is twice as large.
-const COARSE: f64 = 8.0;
+/// Cells across at which that part is twice as large, with re-entrant corners and without.
+const COARSE: [f64; 2] = [14.0, 8.0];
 /// Half widths up to which an estimated error leaves an extrapolated value its place, with re-entrant corners and
 /// without, see [`within`].
 const LEAST_SURE: [f64; 2] = [1.0, 2.0];
 /// Place, in half widths from the middle, of a value that was extrapolated to outside of the range.
 const OUTSIDE: f64 = 0.5;
 
+/// What the corners of a section say of the way in which its ranges narrow.
+#[derive(Debug, Clone, Copy, Default)]
+pub(super) struct Law {
+    /// Exponent `2 pi / omega` of the widest corner, where that is re-entrant.
+    pub(super) re_entrant: Option<f64>,
+    /// The leading term of both ranges is that of re-entrant corners on their nodes: both witnesses then keep it
+    /// exactly, so that the share is no noise.
+    pub(super) is_one: bool,
+}
+
 /// The best value and its estimated error; the middle and half the width where the ranges do not follow a law.
 ///
 /// - `extrapolated`: the other witness
 /// - `proven`, `coarse`: ranges of a grid and of one with twice its spacing
-/// - `is_one_law`: the leading term of both is that of re-entrant corners on their nodes: both witnesses then keep it
-///   exactly, so that the share is no noise
+/// - `law`: what the corners say
 /// - `cells_across`: spacings in the hydraulic diameter
 pub(super) fn from_ranges(
     extrapolated: Estimate,
-    proven: Bracket,
-    coarse: Bracket,
-    is_one_law: bool,
+    [proven, coarse]: [Bracket; 2],
+    law: Law,
     cells_across: f64,
 ) -> Estimate {
     let (width, coarse_width) = (proven.high - proven.low, coarse.high - coarse.low);
@@ -75,17 +94,18 @@ pub(super) fn from_ranges(
             error: half,
         };
     }
-    let likely = LikelyShare::new(share, ratio, is_one_law);
+    let likely = LikelyShare::new(share, ratio, law);
     let value = proven.low + likely.share * width;
     let difference = (extrapolated.value - (proven.low + share * width)).abs();
-    let agreement = AGREEMENT[usize::from(!is_one_law)] * half;
+    let agreement = AGREEMENT[usize::from(!law.is_one)] * half;
     if difference <= agreement && (extrapolated.value - value).abs() <= NEAR * half {
         return Estimate {
             value: extrapolated.value.clamp(proven.low, proven.high),
             error: difference + RESERVE * half,
         };
     }
-    let part = APART[usize::from(ratio < SLOW)] * (1.0 + COARSE / cells_across) + likely.cut;
+    let coarse = COARSE[usize::from(law.re_entrant.is_none())] / cells_across;
+    let part = APART[usize::from(ratio < SLOW)] * (1.0 + coarse) + likely.cut;
     Estimate {
         value,
         error: part.min(1.0) * half,
@@ -103,13 +123,16 @@ impl LikelyShare {
     /// The share of the two grids, drawn to the usual one.
     ///
     /// - `ratio`: of the widths of both ranges
-    fn new(share: f64, ratio: f64, is_one_law: bool) -> Self {
-        let usual = usual_share(ratio);
+    fn new(share: f64, ratio: f64, law: Law) -> Self {
+        let by_ratio = between(&USUAL_SHARE, ratio);
+        let usual = law.re_entrant.map_or(by_ratio, |exponent| {
+            0.5 * (by_ratio + between(&USUAL_BY_EXPONENT, exponent))
+        });
         let steep = ((ratio - STEEP[0]) / (STEEP[1] - STEEP[0])).clamp(0.0, 1.0);
         // Without limit where it is steep.
         let away = AWAY / (1.0 - steep);
         let followed = share.clamp(usual - away, usual + away);
-        let trust = if is_one_law { 1.0 } else { 0.5 * (1.0 + steep) };
+        let trust = if law.is_one { 1.0 } else { 0.5 * (1.0 + steep) };
         Self {
             share: (usual + trust * (followed - usual)).clamp(0.0, 1.0),
             cut: (share - followed).abs(),
@@ -117,16 +140,18 @@ impl LikelyShare {
     }
 }
 
-/// Linear between the places of [`USUAL_SHARE`], the nearest one beyond.
-fn usual_share(ratio: f64) -> f64 {
-    let [first, .., last] = USUAL_SHARE;
-    let between = USUAL_SHARE.windows(2).find_map(|pair| match pair {
-        [a, b] if (a.0..=b.0).contains(&ratio) => {
-            Some(a.1 + (ratio - a.0) / (b.0 - a.0) * (b.1 - a.1))
-        }
+/// Linear between the places of a table, the nearest one beyond.
+fn between(table: &[(f64, f64)], at: f64) -> f64 {
+    let inside = table.windows(2).find_map(|pair| match pair {
+        [a, b] if (a.0..=b.0).contains(&at) => Some(a.1 + (at - a.0) / (b.0 - a.0) * (b.1 - a.1)),
         _ => None,
     });
-    between.unwrap_or(if ratio < first.0 { first.1 } else { last.1 })
+    let nearest = match table {
+        [first, ..] if at < first.0 => first.1,
+        [.., last] => last.1,
+        [] => 0.0,
+    };
+    inside.unwrap_or(nearest)
 }
 
 /// The best value is never outside the proven range, nor its error larger than that allows; a value much less sure
@@ -187,21 +212,33 @@ mod tests {
         };
         // Widths fall by 2.2, and the value is at 0.34 of them.
         let [proven, coarse] = [range(1.0, 0.034, 0.066), range(1.0, 0.0748, 0.1452)];
-        let found = from_ranges(far, proven, coarse, false, 1e9);
+        let found = from_ranges(far, [proven, coarse], Law::default(), 1e9);
         assert!((found.value - 1.0).abs() < 1e-14);
         assert!((found.error - 0.15 * 0.05).abs() < 1e-9);
-        let found = from_ranges(far, proven, coarse, false, COARSE);
+        let found = from_ranges(far, [proven, coarse], Law::default(), COARSE[1]);
+        assert!((found.error - 0.3 * 0.05).abs() < 1e-14);
+        // A corner of 270 degrees has it at 0.33, which is half of what is expected then.
+        let law = Law {
+            re_entrant: Some(1.35),
+            is_one: false,
+        };
+        let found = from_ranges(far, [proven, coarse], law, COARSE[0]);
+        assert!((found.value - 1.0 + 0.0025 * 0.1).abs() < 1e-14);
         assert!((found.error - 0.3 * 0.05).abs() < 1e-14);
         // As steep as smooth walls leave it, any share is believed.
         let [proven, coarse] = [range(1.0, 0.09, 0.01), range(1.0, 0.63, 0.07)];
-        let steep = from_ranges(far, proven, coarse, false, 1e9);
+        let steep = from_ranges(far, [proven, coarse], Law::default(), 1e9);
         assert!((steep.value - 1.0).abs() < 1e-14);
     }
 
     #[test]
     fn an_unusual_share_is_followed_half_the_way_and_not_far() {
-        let likely_share = |share: f64, ratio: f64, is_one_law: bool| {
-            LikelyShare::new(share, ratio, is_one_law).share
+        let likely_share = |share: f64, ratio: f64, is_one: bool| {
+            let law = Law {
+                re_entrant: None,
+                is_one,
+            };
+            LikelyShare::new(share, ratio, law).share
         };
         for (share, followed) in [(0.40, 0.37), (0.49, 0.415), (0.9, 0.415), (-3.0, 0.265)] {
             assert!(
@@ -217,8 +254,8 @@ mod tests {
             last = next;
         }
         assert!((last - 0.95).abs() < 1e-14);
-        assert!(LikelyShare::new(0.48, 2.2, false).cut.abs() < 1e-14);
-        assert!((LikelyShare::new(0.9, 2.2, false).cut - 0.41).abs() < 1e-14);
+        assert!(LikelyShare::new(0.48, 2.2, Law::default()).cut.abs() < 1e-14);
+        assert!((LikelyShare::new(0.9, 2.2, Law::default()).cut - 0.41).abs() < 1e-14);
     }
 
     #[test]
@@ -233,7 +270,7 @@ mod tests {
             range(f64::NAN, 0.1, 0.1),
             range(1.0, 0.0, 0.0),
         ] {
-            let found = from_ranges(far, range(1.0, 0.02, 0.01), coarse, false, 1e9);
+            let found = from_ranges(far, [range(1.0, 0.02, 0.01), coarse], Law::default(), 1e9);
             assert!((found.value - 0.995).abs() < 1e-14, "{coarse:?}");
             assert!((found.error - 0.015).abs() < 1e-14, "{coarse:?}");
         }
@@ -246,7 +283,7 @@ mod tests {
             error: 0.1,
         };
         let (proven, coarse) = (range(1.0, 0.034, 0.066), range(1.0, 0.0748, 0.1452));
-        let found = from_ranges(near, proven, coarse, false, 1e9);
+        let found = from_ranges(near, [proven, coarse], Law::default(), 1e9);
         assert!((found.value - 1.0001).abs() < 1e-15);
         assert!(found.error > 0.005 && found.error < 0.0052);
     }

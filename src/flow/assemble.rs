@@ -6,7 +6,7 @@ use crate::proof::Bracket;
 
 use super::accuracy::Accuracy;
 use super::attempt::{Attempt, WallAnswer};
-use super::extrapolation::{LOOSE, extrapolate};
+use super::extrapolation::{LOOSE, extrapolate, least_share};
 use super::identities::identities;
 use super::range_extrapolation::{Law, from_ranges, within};
 use super::section_flow::{
@@ -123,7 +123,12 @@ fn useful(answers: &[GridAnswer]) -> &[GridAnswer] {
 /// Best value from one number of every useful grid.
 fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64]) -> Estimate {
     let exponent = leading_exponent(&grids.corners);
-    let mut estimate = extrapolate(values, exponent, grids.misfit);
+    let least_share = least_share(
+        convex_angles(&grids.corners),
+        grids.facet_turning,
+        cells_across(outline, grids),
+    );
+    let mut estimate = extrapolate(values, exponent, grids.misfit, least_share);
     if let (Some(fine), true) = (
         values.first(),
         small_islands(outline, grids.lattice.spacing) > 0,
@@ -168,11 +173,26 @@ pub(super) fn best_conductance(
                 re_entrant,
                 is_one: re_entrant.is_some() && grids.misfit <= LOOSE,
             };
-            let diameter = 4.0 * outline.area() / outline.wetted_perimeter();
-            from_ranges(extrapolated, [proven, coarse], law, diameter / spacing)
+            from_ranges(
+                extrapolated,
+                [proven, coarse],
+                law,
+                cells_across(outline, grids),
+            )
         }
         None => within(extrapolated, proven, re_entrant.is_some()),
     }
+}
+
+/// Spacings in the hydraulic diameter.
+fn cells_across(outline: &Outline, grids: &SolvedGrids) -> f64 {
+    4.0 * outline.area() / (outline.wetted_perimeter() * grids.lattice.spacing)
+}
+
+/// Fluid angles of the corners that are not re-entrant, radians.
+fn convex_angles(corners: &[Vec<Corner>]) -> impl Iterator<Item = f64> {
+    let all = corners.iter().flatten().map(Corner::fluid_angle);
+    all.filter(|angle| *angle < std::f64::consts::PI)
 }
 
 /// `moment * factor / K^power` with its error.

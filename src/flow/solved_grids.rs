@@ -1,6 +1,6 @@
 //! All grids of a section solved, in one place of the lattice or several: what every answer is read from.
 
-use crate::geometry::{Corner, Outline};
+use crate::geometry::{Corner, Outline, facet_turning};
 use crate::grid::{Lattice, LineCrossings, Mask};
 use crate::proof::{Bracket, bracket};
 use crate::solve::{Field, Hierarchy, SolveControl, Solved};
@@ -11,7 +11,7 @@ use super::grid_integrals::GridIntegrals;
 use super::peak::{GridPeak, peak};
 use super::solve_cost::{LevelCost, StageClock};
 use super::solve_outline::FlowError;
-use super::wall_shear::corners_of;
+use super::wall_shear::{CORNER_TURNING, corners_of};
 
 /// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
 /// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
@@ -68,6 +68,8 @@ pub(super) struct SolvedGrids {
     pub(super) mask: Mask,
     pub(super) phi: Field,
     pub(super) corners: Vec<Vec<Corner>>,
+    /// Turning per facet of curved walls, radians.
+    pub(super) facet_turning: f64,
     /// How far re-entrant corners miss the nodes, 0 to 1.
     pub(super) misfit: f64,
     /// Finest first.
@@ -140,6 +142,10 @@ pub(super) fn solve_grids(
         mask,
         phi,
         corners,
+        facet_turning: outline
+            .loops()
+            .map(|wall| facet_turning(wall, CORNER_TURNING))
+            .sum(),
         misfit: fitted.misfit,
         answers,
         second,

@@ -91,6 +91,14 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
     found
 }
 
+/// Turning per vertex, radians, where a loop is a curve cut into straight pieces, weighted with the turning itself and
+/// as a share of a full turn: `sum(turning^2) / (2 pi)` over the vertices that turn by less than `corner_turning`.
+pub(crate) fn facet_turning(wall: &Loop, corner_turning: f64) -> f64 {
+    let squares = turnings(wall).into_iter().map(|(_, t)| t * t);
+    let facets = squares.filter(|square| *square < corner_turning * corner_turning);
+    facets.sum::<f64>() / std::f64::consts::TAU
+}
+
 /// Moves a corner to the vertex that makes up more than half of its turning, if one in its window does:
 /// every window that holds such a vertex between even arcs turns alike.
 fn to_sharp_vertex(
@@ -208,6 +216,8 @@ mod tests {
         };
         assert!(corners(&circle(1.0), 0.02, 0.2).is_empty());
         assert!(corners(&circle(1.0), 0.5, 0.2).is_empty());
+        let facets = facet_turning(&circle(1.0), 0.2);
+        assert!((facets - 0.5_f64.to_radians()).abs() < 1e-9);
         let rounded = Loop::new(
             std::iter::once([10.0, -10.0])
                 .chain((0..=90).map(|k| {
@@ -220,5 +230,8 @@ mod tests {
         let found = corners(&rounded, 1.0, 0.2);
         assert_eq!(found.len(), 4);
         assert!((found[1].turning.to_degrees() - 90.0).abs() < 1.0);
+        // A quarter of the turning is in facets of one degree, the rest in corners.
+        let facets = facet_turning(&rounded, 0.2);
+        assert!((facets - 0.25_f64.to_radians()).abs() < 1e-4, "{facets}");
     }
 }

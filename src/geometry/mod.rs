@@ -17,6 +17,7 @@ mod validity;
 mod wall_edges;
 
 pub use containment::{Escape, EscapeKind};
+pub(crate) use corners::facet_turning;
 pub use corners::{Corner, corners};
 pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed, NEGLIGIBLE_LUMENS};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};

@@ -54,13 +54,25 @@ fn neighbours_agree_with_fine_solves_within_their_stated_errors() {
 
 #[test]
 fn re_entrant_corners_have_errors_that_hold_as_well() {
-    let nearby = NearbySections::new(&ridged(40e-6), 2e-3).unwrap();
+    let mut shares = Vec::new();
     for depth in [39e-6, 40e-6, 40.7e-6] {
-        let found = nearby.conductance(&ridged(depth)).unwrap();
-        let off = found.value / conductance_at(&ridged(depth), 300.0) - 1.0;
-        assert!(off.abs() <= found.relative() + 1e-5, "{off:e} {found:?}");
-        assert!(found.relative() <= 2e-3, "{found:?}");
+        let outline = ridged(depth);
+        let fine = conductance_at(&outline, 300.0);
+        // Tolerances that differ by little lead to other grids: none is right by luck, and an estimate may be one in
+        // twenty times a little too small.
+        for tolerance in [
+            2.5e-3, 2.05e-3, 2e-3, 1.999e-3, 1.99e-3, 1.95e-3, 1e-3, 5e-4,
+        ] {
+            let nearby = NearbySections::new(&ridged(40e-6), tolerance).unwrap();
+            let found = nearby.conductance(&outline).unwrap();
+            assert!(found.relative() <= tolerance, "{found:?}");
+            let off = (found.value / fine - 1.0).abs() - 1e-5;
+            assert!(off <= 1.5 * found.relative(), "{off:e} {found:?}");
+            shares.push(off / found.relative());
+        }
     }
+    shares.sort_by(f64::total_cmp);
+    assert!(shares[shares.len() * 19 / 20] <= 1.0, "{shares:.2?}");
 }
 
 #[test]

@@ -38,6 +38,12 @@ const USUAL_BY_EXPONENT: [(f64, f64); 8] = [
     (1.9, 0.61),
     (2.05, 0.62),
 ];
+/// Place of the true value in that part of the width that falls faster than the leading term of re-entrant corners.
+const SECOND_SHARE: f64 = 0.6;
+/// Most of the leading term that this part is taken to be.
+const MOST_SECOND: f64 = 1.0;
+/// Exponents of the leading term between which both cease to be told apart.
+const SECOND_APART: [f64; 2] = [1.6, 1.8];
 /// Farthest from the usual share that the share of the two grids is followed.
 const AWAY: f64 = 0.15;
 /// Ratios of the widths from which the usual share says less and less, and nothing: there is no noise to mend.
@@ -72,6 +78,24 @@ pub(super) struct Law {
     pub(super) is_one: bool,
 }
 
+impl Law {
+    /// Share without what the second term does to it, where one law leads.
+    ///
+    /// With the exponent `p` of the leading term known, the ratio of the widths says how much of the width falls
+    /// faster, whatever its own exponent: with `e = (ratio - 2^p) / (2^p - 1)` the true value is at
+    /// `share - e (t - share)`, `t` being its place in the second part ([`SECOND_SHARE`]).
+    fn without_second_term(self, share: f64, ratio: f64) -> f64 {
+        let Some(exponent) = self.re_entrant.filter(|_| self.is_one) else {
+            return share;
+        };
+        let leading = exponent.exp2();
+        let second = ((ratio - leading) / (leading - 1.0)).clamp(0.0, MOST_SECOND);
+        let [from, to] = SECOND_APART;
+        let apart = ((to - exponent) / (to - from)).clamp(0.0, 1.0);
+        share - apart * second * (SECOND_SHARE - share)
+    }
+}
+
 /// The best value and its estimated error; the middle and half the width where the ranges do not follow a law.
 ///
 /// - `extrapolated`: the other witness
@@ -87,6 +111,7 @@ pub(super) fn from_ranges(
     let (width, coarse_width) = (proven.high - proven.low, coarse.high - coarse.low);
     let ratio = coarse_width / width;
     let share = (proven.low - coarse.low) / (coarse_width - width);
+    let share = law.without_second_term(share, ratio);
     let half = 0.5 * width;
     if !(ratio >= LEAST_RATIO && share.is_finite()) {
         return Estimate {
@@ -229,6 +254,38 @@ mod tests {
         let [proven, coarse] = [range(1.0, 0.09, 0.01), range(1.0, 0.63, 0.07)];
         let steep = from_ranges(far, [proven, coarse], Law::default(), 1e9);
         assert!((steep.value - 1.0).abs() < 1e-14);
+    }
+
+    #[test]
+    fn what_falls_faster_than_the_leading_term_of_one_law_is_told_apart() {
+        let p = 4.0_f64 / 3.0;
+        let law = Law {
+            re_entrant: Some(p),
+            is_one: true,
+        };
+        let far = Estimate {
+            value: 1.1,
+            error: 0.2,
+        };
+        // The value is at a quarter of the part of the corner and at the usual place of the other, of any exponent.
+        for (second, q) in [(0.0, 2.0), (0.02, 2.0), (0.04, 2.5), (0.06, 2.0)] {
+            let at = |h: f64| {
+                let (first, second) = (0.1 * h.powf(p), second * h.powf(q));
+                let below = 0.25 * first + SECOND_SHARE * second;
+                range(1.0, below, first + second - below)
+            };
+            let found = from_ranges(far, [at(1.0), at(2.0)], law, 1e9);
+            assert!(
+                (found.value - 1.0).abs() < 1e-14,
+                "{second}, {q}: {found:?}"
+            );
+        }
+        let [flat, several] = [(Some(1.85), true), (Some(p), false)].map(|(re_entrant, is_one)| {
+            let law = Law { re_entrant, is_one };
+            law.without_second_term(0.4, 4.0)
+        });
+        assert!((flat - 0.4).abs() < 1e-14 && (several - 0.4).abs() < 1e-14);
+        assert!((law.without_second_term(0.4, 50.0) - 0.2).abs() < 1e-14);
     }
 
     #[test]

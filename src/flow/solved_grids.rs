@@ -13,12 +13,14 @@ use super::solve_cost::{LevelCost, StageClock};
 use super::solve_outline::FlowError;
 use super::wall_shear::{CORNER_TURNING, corners_of};
 
-/// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error. What it leaves in `K`
-/// goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
+/// Residual as a share of `1 / cells_across^2`: about a tenth of the truncation error of the field. What it leaves in
+/// `K` goes with its square (`grid_integrals`), below 1e-9, so that extrapolation is not disturbed.
 const RESIDUAL_SHARE: f64 = 0.1;
 /// Residual as a share of that of the first guess, which is large where walls are rough or corners re-entrant. What is
 /// left in `K` goes with the square of the share as well: below a thousandth of its estimated error.
 const START_SHARE: f64 = 0.005;
+/// The same two for `K` alone: because of the square, more may stay.
+const ALONE_SHARES: [f64; 2] = [1.0, 0.02];
 /// Exponent of the widest corner below which the proven ranges are asked as well: from 106 degrees.
 const WIDE_EXPONENT: f64 = 3.4;
 /// The same from 135 degrees, for `K` alone: only where the energy alone could mislead, because proofs cost more than
@@ -42,12 +44,11 @@ impl Purpose {
         }
     }
 
-    /// Residual at which a grid is solved, as a share of that of the first guess.
-    fn start_share(self) -> f64 {
+    /// Residuals at which a grid is solved, as shares of `1 / cells_across^2` and of that of the first guess.
+    fn residual_shares(self) -> [f64; 2] {
         match self {
-            Self::Field => START_SHARE,
-            // The search for a grid ends at 16 to 40 cells, where already the last digits decide which one it is.
-            Self::ConductanceAlone => 0.0,
+            Self::Field => [RESIDUAL_SHARE, START_SHARE],
+            Self::ConductanceAlone => ALONE_SHARES,
         }
     }
 }
@@ -173,12 +174,13 @@ fn solve_sequence(
     clock.end("crossings");
     let mut hierarchy = Hierarchy::new(lattice, &rows, &columns)?;
     clock.end("grids and transfers");
+    let [share, start_share] = purpose.residual_shares();
     let control = SolveControl {
-        residual: RESIDUAL_SHARE / (cells_across * cells_across),
+        residual: share / (cells_across * cells_across),
         most_cycles: 100,
     };
     let (mut answers, mut second) = (Vec::new(), None);
-    hierarchy.solve_to_share(control, purpose.start_share(), |grid, solved| {
+    hierarchy.solve_to_share(control, start_share, |grid, solved| {
         let seconds = clock.lap();
         clock.add("solve", seconds);
         clock.level(LevelCost {

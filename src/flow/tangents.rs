@@ -10,7 +10,7 @@
 //! error for extrapolation (K of a ring with inner radius a tenth of the outer, 128 cells: from 3e-5 to
 //! 1e-6 over ten places of the grid).
 
-use crate::geometry::{Outline, Point, distance};
+use crate::geometry::{Loop, Outline, Point, distance, turning_at};
 
 use super::section_flow::WallSample;
 
@@ -77,7 +77,7 @@ pub(crate) fn tangents(outline: &Outline, samples: &[WallSample], spacing: f64) 
                     continue;
                 }
                 let near = nearest(&samples[first..end], arc);
-                found.extend(tangent(points, k, axis, spacing, near));
+                found.extend(tangent(wall, k, axis, spacing, near));
             }
             arc += distance(here, after);
         }
@@ -101,9 +101,10 @@ fn nearest(samples: &[WallSample], arc: f64) -> f64 {
 }
 
 /// The tangent point at vertex `k` if the wall around it is a smooth curve.
-fn tangent(points: &[Point], k: usize, axis: usize, spacing: f64, shear: f64) -> Option<Tangent> {
+fn tangent(wall: &Loop, k: usize, axis: usize, spacing: f64, shear: f64) -> Option<Tangent> {
+    let points = &wall.points;
     let n = points.len();
-    let curvature = curvature(points, k, REACH * spacing)?;
+    let curvature = curvature(wall, k, REACH * spacing)?;
     let here = points[k][axis];
     let (before, after) = (points[(k + n - 1) % n][axis], points[(k + 1) % n][axis]);
     Some(Tangent {
@@ -115,18 +116,11 @@ fn tangent(points: &[Point], k: usize, axis: usize, spacing: f64, shear: f64) ->
     })
 }
 
-/// Turning of the wall at a vertex, positive to the left.
-fn turn(points: &[Point], k: usize) -> f64 {
-    let n = points.len();
-    let (a, b, c) = (points[(k + n - 1) % n], points[k % n], points[(k + 1) % n]);
-    let (u, v) = ([b[0] - a[0], b[1] - a[1]], [c[0] - b[0], c[1] - b[1]]);
-    (u[0] * v[1] - u[1] * v[0]).atan2(u[0] * v[0] + u[1] * v[1])
-}
-
 /// Curvature of the wall around vertex `k`, 1/m, if it is smooth over `reach` to either side.
-fn curvature(points: &[Point], k: usize, reach: f64) -> Option<f64> {
+fn curvature(wall: &Loop, k: usize, reach: f64) -> Option<f64> {
+    let points = &wall.points;
     let n = points.len();
-    let own = turn(points, k);
+    let own = turning_at(wall, k);
     let (mut turning, mut largest, mut vertices) = (own, own.abs(), 1);
     for forward in [true, false] {
         let (mut j, mut walked) = (k, 0.0);
@@ -140,7 +134,7 @@ fn curvature(points: &[Point], k: usize, reach: f64) -> Option<f64> {
             if walked > reach {
                 break;
             }
-            let angle = turn(points, next);
+            let angle = turning_at(wall, next);
             turning += angle;
             largest = f64::max(largest, angle.abs());
             vertices += 1;

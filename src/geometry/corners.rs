@@ -94,9 +94,11 @@ pub fn corners(wall: &Loop, window: f64, least_turning: f64) -> Vec<Corner> {
 /// Turning per vertex, radians, where a loop is a curve cut into straight pieces, weighted with the turning itself and
 /// as a share of a full turn: `sum(turning^2) / (2 pi)` over the vertices that turn by less than `corner_turning`.
 pub(crate) fn facet_turning(wall: &Loop, corner_turning: f64) -> f64 {
-    let squares = turnings(wall).into_iter().map(|(_, t)| t * t);
-    let facets = squares.filter(|square| *square < corner_turning * corner_turning);
-    facets.sum::<f64>() / std::f64::consts::TAU
+    let n = wall.points.len();
+    let facets = (0..n)
+        .map(|k| turning_at(wall, k).abs())
+        .filter(|turning| *turning < corner_turning);
+    facets.map(|turning| turning * turning).sum::<f64>() / std::f64::consts::TAU
 }
 
 /// Moves a corner to the vertex that makes up more than half of its turning, if one in its window does:
@@ -142,23 +144,62 @@ fn turnings(wall: &Loop) -> Vec<(f64, f64)> {
     let mut arc = 0.0;
     (0..n)
         .map(|k| {
-            let (a, b, c) = (
-                wall.points[(k + n - 1) % n],
-                wall.points[k],
-                wall.points[(k + 1) % n],
-            );
-            let (ux, uy) = (b[0] - a[0], b[1] - a[1]);
-            let (vx, vy) = (c[0] - b[0], c[1] - b[1]);
-            let entry = (arc, (ux * vy - uy * vx).atan2(ux * vx + uy * vy));
-            arc += distance(b, c);
+            let entry = (arc, turning_at(wall, k));
+            arc += distance(wall.points[k], wall.points[(k + 1) % n]);
             entry
         })
         .collect()
 }
 
+/// Turning angle of vertex `k`, radians, positive to the left.
+pub(crate) fn turning_at(wall: &Loop, k: usize) -> f64 {
+    let n = wall.points.len();
+    let (a, b, c) = (
+        wall.points[if k == 0 { n - 1 } else { k - 1 }],
+        wall.points[k],
+        wall.points[if k + 1 == n { 0 } else { k + 1 }],
+    );
+    let (ux, uy) = (b[0] - a[0], b[1] - a[1]);
+    let (vx, vy) = (c[0] - b[0], c[1] - b[1]);
+    angle_of(ux * vx + uy * vy, ux * vy - uy * vx)
+}
+
+/// Angle of the vector `(x, y)`; outlines have many vertices that hardly turn, for which the first terms of the series
+/// are exact.
+fn angle_of(x: f64, y: f64) -> f64 {
+    const FLAT: f64 = 0.02;
+    if y.abs() >= FLAT * x {
+        return y.atan2(x);
+    }
+    let t = y / x;
+    let q = t * t;
+    t * (1.0 - q * (1.0 / 3.0 - q * (1.0 / 5.0 - q * (1.0 / 7.0 - q / 9.0))))
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn small_angles_are_those_of_the_library() {
+        for k in -4000..4000 {
+            let t = 1e-5 * f64::from(k);
+            let (x, y) = (3.0 * t.cos(), 3.0 * t.sin());
+            assert!(
+                (angle_of(x, y) - y.atan2(x)).abs() <= 4e-18_f64.max(2.3e-16 * t.abs()),
+                "{t}"
+            );
+        }
+        for (x, y) in [
+            (0.0, 0.0),
+            (-1.0, 1e-9),
+            (0.0, -1.0),
+            (-1.0, -1.0),
+            (f64::NAN, 1.0),
+        ] {
+            assert_eq!(angle_of(x, y).to_bits(), y.atan2(x).to_bits());
+        }
+    }
 
     #[test]
     fn an_l_shape_has_five_convex_corners_and_one_re_entrant_one() {

@@ -17,8 +17,8 @@ mod validity;
 mod wall_edges;
 
 pub use containment::{Escape, EscapeKind};
-pub(crate) use corners::facet_turning;
 pub use corners::{Corner, corners};
+pub(crate) use corners::{facet_turning, turning_at};
 pub use film::{Film, FilmError, FilmOn, FilmReport, Filmed, NEGLIGIBLE_LUMENS};
 pub use inscribed_circle::{Circle, RADIUS_TOLERANCE, largest_inscribed_circle};
 pub use named_wall::{

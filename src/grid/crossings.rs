@@ -63,12 +63,17 @@ impl LineCrossings {
         let mut items = vec![empty; starts[lines]];
         for (index, edge) in lattice.edges.iter().enumerate() {
             let (from, to) = (edge.start, edge.end);
+            let met = span(from[across], to[across], lines);
+            if met.is_empty() {
+                // As most edges of outlines with many vertices.
+                continue;
+            }
             let slope = (to[1 - across] - from[1 - across]) / (to[across] - from[across]);
             let (low, high) = (
                 from[1 - across].min(to[1 - across]),
                 from[1 - across].max(to[1 - across]),
             );
-            for line in span(from[across], to[across], lines) {
+            for line in met {
                 items[next[line]] = Crossing {
                     // Clamped: on a nearly parallel edge rounding must not leave the edge.
                     at: (from[1 - across] + (line as f64 - from[across]) * slope).clamp(low, high),
@@ -87,14 +92,17 @@ impl LineCrossings {
 
 /// Lines `c` with `min(a, b) <= c < max(a, b)`, clipped to `0..lines`.
 fn span(a: f64, b: f64, lines: usize) -> std::ops::Range<usize> {
-    let first = line_from(a.min(b));
-    let end = line_from(a.max(b));
-    first.min(lines)..end.min(lines)
+    let (a, b) = (line_from(a), line_from(b));
+    a.min(b).min(lines)..a.max(b).min(lines)
 }
 
 /// The first line not below a place.
 fn line_from(at: f64) -> usize {
-    rounded_up(at).max(0.0) as usize
+    let whole = at as i64;
+    whole
+        .saturating_add(i64::from((whole as f64) < at))
+        .max(0)
+        .unsigned_abs() as usize
 }
 
 /// The largest whole number not above a place in the lattice. `f64::floor` is a call into a library on processors

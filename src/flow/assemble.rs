@@ -126,7 +126,7 @@ fn to_limit(outline: &Outline, grids: &SolvedGrids, values: &[f64]) -> Estimate 
     let least_share = least_share(
         convex_angles(&grids.corners),
         grids.facet_turning,
-        cells_across(outline, grids),
+        grids.cells_in_diameter,
     );
     let mut estimate = extrapolate(values, exponent, grids.misfit, least_share);
     if let (Some(fine), true) = (
@@ -173,20 +173,10 @@ pub(super) fn best_conductance(
                 re_entrant,
                 is_one: re_entrant.is_some() && grids.misfit <= LOOSE,
             };
-            from_ranges(
-                extrapolated,
-                [proven, coarse],
-                law,
-                cells_across(outline, grids),
-            )
+            from_ranges(extrapolated, [proven, coarse], law, grids.cells_in_diameter)
         }
         None => within(extrapolated, proven, re_entrant.is_some()),
     }
-}
-
-/// Spacings in the hydraulic diameter.
-fn cells_across(outline: &Outline, grids: &SolvedGrids) -> f64 {
-    4.0 * outline.area() / (outline.wetted_perimeter() * grids.lattice.spacing)
 }
 
 /// Fluid angles of the corners that are not re-entrant, radians.

@@ -69,6 +69,8 @@ pub(super) struct SolvedGrids {
     pub(super) mask: Mask,
     pub(super) phi: Field,
     pub(super) corners: Vec<Vec<Corner>>,
+    /// Spacings in the hydraulic diameter.
+    pub(super) cells_in_diameter: f64,
     /// Turning per facet of curved walls, radians.
     pub(super) facet_turning: f64,
     /// How far re-entrant corners miss the nodes, 0 to 1.
@@ -143,6 +145,7 @@ pub(super) fn solve_grids(
         mask,
         phi,
         corners,
+        cells_in_diameter: 4.0 * outline.area() / (outline.wetted_perimeter() * spacing),
         facet_turning: outline
             .loops()
             .map(|wall| facet_turning(wall, CORNER_TURNING))
